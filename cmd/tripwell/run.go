@@ -1,0 +1,67 @@
+package main
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"io"
+
+	"github.com/alecthomas/kong"
+)
+
+// cli is every command with its flags; one file per command holds its Run.
+type cli struct {
+	Version versionCmd `cmd:"" help:"Print the program's version."`
+}
+
+// env is what a command may touch beside its flags.
+type env struct {
+	ctx            context.Context
+	stdin          io.Reader
+	stdout, stderr io.Writer
+}
+
+// usageError is wrong use of a command: exit code 2.
+type usageError struct{ err error }
+
+func (e usageError) Error() string { return e.err.Error() }
+func (e usageError) Unwrap() error { return e.err }
+
+// exitCode gives 0 done, 1 failed, 2 wrong use.
+func exitCode(err error) int {
+	var u usageError
+	switch {
+	case err == nil:
+		return 0
+	case errors.As(err, &u):
+		return 2
+	}
+	return 1
+}
+
+// run parses args and runs the command they name.
+func run(ctx context.Context, args []string, stdin io.Reader, stdout, stderr io.Writer) error {
+	var c cli
+	exited := false
+	p, err := kong.New(&c,
+		kong.Name("tripwell"),
+		kong.Description("Records of ground-fault and receptacle testing that work where there is no signal."),
+		kong.Writers(stdout, stderr),
+		kong.Exit(func(int) { exited = true }),
+		kong.ConfigureHelp(kong.HelpOptions{Compact: true}),
+	)
+	if err != nil {
+		return fmt.Errorf("commands: %w", err)
+	}
+	if len(args) == 0 {
+		args = []string{"--help"}
+	}
+	k, err := p.Parse(args)
+	if exited {
+		return nil
+	}
+	if err != nil {
+		return usageError{fmt.Errorf("%w (see tripwell --help)", err)}
+	}
+	return k.Run(&env{ctx: ctx, stdin: stdin, stdout: stdout, stderr: stderr})
+}

@@ -1,0 +1,420 @@
+package store
+
+import (
+	"context"
+	"encoding/json"
+	"io"
+	"iter"
+	"time"
+
+	"tripwell/forms"
+)
+
+// ---- opening ---------------------------------------------------------------------------------------------------
+
+// Options of Open. Now is the only clock the store knows.
+type Options struct {
+	Now    func() time.Time
+	Create bool   // make the store when DIR holds none (temp file, rename, folder sync)
+	Demo   bool   // with Create: marks the store DEMO for ever; without: refuse a store that is no demo store
+	URL    string // label address (https://host); kept in the directory at first creation or when given
+}
+
+// Open opens DIR/book.db (0600, lock time-out 1 s). The caller closes it.
+func Open(dir string, o Options) (*Store, error) { panic("contract") }
+
+// Store is one organisation's book, its read models and its directory.
+type Store struct{}
+
+func (s *Store) Close() error          { panic("contract") }
+func (s *Store) ID() string            { panic("contract") } // store id = its installation id
+func (s *Store) Epoch() int            { panic("contract") }
+func (s *Store) Demo() bool            { panic("contract") }
+func (s *Store) URL() string           { panic("contract") } // "" when none was given
+func (s *Store) Now() time.Time        { panic("contract") }
+func (s *Store) SetURL(u string) error { panic("contract") }
+
+// ---- writing ---------------------------------------------------------------------------------------------------
+
+// Draft is a record to be made here, by an office page or a command. The store gives it from, n, clock and, where
+// empty, id and at.
+type Draft struct {
+	ID      string // UUID; pages carry it so that posting twice is harmless
+	Kind    string
+	Log     string
+	Subject string
+	At      time.Time
+	By      string
+	Body    any
+}
+
+// Append makes records of the drafts and appends them in one transaction, in order. Forms refuse: a draft that breaks
+// a rule returns *Error and nothing of the call is written.
+func (s *Store) Append(ctx context.Context, drafts ...Draft) ([]Receipt, error) { panic("contract") }
+
+// Incoming is one record from elsewhere: the exact bytes its author made, and what earlier holders say.
+type Incoming struct {
+	Record []byte
+	Held   []Held
+}
+
+// Held says that a store had the record before us.
+type Held struct {
+	Store    string    `json:"store"`
+	Received time.Time `json:"received"`
+}
+
+// Sender is who pushes: the installation its token names (FORMATS 19). Sent is the sender's own clock at sending, for
+// the measured offset; zero when it did not say.
+type Sender struct {
+	Installation string
+	Via          string
+	Sent         time.Time
+	Owner        bool // the socket of whoever owns the folder
+}
+
+// Push takes records from elsewhere; one receipt for each, in order. An error means nothing was decided: send again.
+func (s *Store) Push(ctx context.Context, from Sender, batch []Incoming) ([]Receipt, error) {
+	panic("contract")
+}
+
+// Receipt is what became of one record: stored | already | held | refused.
+type Receipt struct {
+	ID    string `json:"id"`
+	State string `json:"state"`
+	Store string `json:"store"`
+	Epoch int    `json:"epoch"`
+	Log   string `json:"log,omitempty"`
+	Pos   int64  `json:"pos,omitempty"`
+	Code  string `json:"code,omitempty"`
+	Text  string `json:"text,omitempty"`
+}
+
+// Ask gives receipts of ids without bodies; unknown ids are left out.
+func (s *Store) Ask(scope Scope, ids []string) ([]Receipt, error) { panic("contract") }
+
+// Pull gives records of one log after a cursor, as their exact bytes.
+func (s *Store) Pull(scope Scope, log, after string, limit int) (Pulled, error) { panic("contract") }
+
+// Pulled is one page of a log. Snapshot: the cursor is of another store or epoch. NotYours: the log is not allowed.
+type Pulled struct {
+	Records  []PulledRecord `json:"records"`
+	Next     string         `json:"next"`
+	More     bool           `json:"more"`
+	BackedUp int64          `json:"backed_up"`
+	Snapshot bool           `json:"snapshot,omitempty"`
+	NotYours bool           `json:"not_yours,omitempty"`
+}
+
+// PulledRecord holds the exact bytes of stamp and record as JSON strings.
+type PulledRecord struct {
+	Pos    int64  `json:"pos"`
+	Stamp  string `json:"stamp"`
+	Record string `json:"record"`
+}
+
+// ---- reading ---------------------------------------------------------------------------------------------------
+
+// Scope is who asks and what they may see. Every read needs one; a site outside it is not_found.
+type Scope struct {
+	Person string
+	Role   string // manager | crew | auditor | owner
+	All    bool
+	Sites  []string // site ids
+}
+
+// May reports whether the scope covers a site.
+func (sc Scope) May(site string) bool {
+	if sc.All {
+		return true
+	}
+	for _, s := range sc.Sites {
+		if s == site {
+			return true
+		}
+	}
+	return false
+}
+
+// View runs fn over one read transaction. Nothing handed out points into the store's file.
+func (s *Store) View(scope Scope, fn func(v *View) error) error { panic("contract") }
+
+// View reads the store as it stood at one moment, within one scope.
+type View struct{}
+
+// Site is a site with its merged fields.
+type Site struct {
+	ID, Code, Name, Zone, Address string
+	Standard                      string // NEC | IEC
+	Conflicts                     []Conflict
+}
+
+// Location loads the site's time zone, UTC where it is unknown.
+func (s Site) Location() *time.Location { panic("contract") }
+
+// Conflict is a value that lost to a concurrent one (FORMATS 5).
+type Conflict struct {
+	Field, Value, Winner string
+	By                   string
+	At                   time.Time
+	Record               string
+}
+
+// SiteSums counts one site on one day.
+type SiteSums struct {
+	Site       Site
+	Devices    int
+	Overdue    int
+	DueSoon    int // due within the 31 days after the day asked for, the day included
+	Failed     int // devices whose last test of some task is a fail
+	NextDay    forms.Day
+	NextTask   string
+	LastFailed []DeviceRow // at most 5, newest first
+}
+
+// Place is where a fixed device sits. Name is the spot ("Pantry, by the sink").
+type Place struct {
+	ID, Site, Building, Floor, Room, Name string
+	Order                                 float64 // walking order within the room
+	CriticalLoad                          string
+}
+
+// Label gives "Ground floor · Kitchen" style context without the spot's name.
+func (p Place) Context() string { panic("contract") }
+
+// DeviceRow is a device as lists show it.
+type DeviceRow struct {
+	ID, Site, SiteCode, Kind, Tag string
+	Place                         Place
+	Panel, Circuit                string // "LP-2", "14"
+	Make, Model                   string
+	RatingA, RatedResidualMA      float64
+	Installed                     forms.Day
+	Retired                       bool
+	Last                          map[string]LastTest // by task
+	Due                           []Due
+}
+
+// LastTest is the newest entry of a task that says something, not-tested included.
+type LastTest struct {
+	Entry  string
+	Day    forms.Day
+	Result string
+}
+
+// Due is one date of one device. State is decided for the day asked: upcoming | due | in-grace | overdue | never-tested.
+type Due struct {
+	Task  string
+	Due   forms.Day
+	Last  forms.Day // NoDay: never
+	State string
+	Plan  string
+}
+
+// Device is everything the device page shows.
+type Device struct {
+	DeviceRow
+	SiteName  string
+	Fields    map[string]any // merged register fields
+	Conflicts []Conflict
+	Earlier   []DeviceRow // earlier devices of the same place
+	TagClash  []string    // other live bindings of the same tag (subject ids)
+}
+
+// Entry is one test with all that was said of it since.
+type Entry struct {
+	ID, Device, Site string
+	Form, Task       string
+	Day              forms.Day // test day in the site's zone (FORMATS 6)
+	At, Received     time.Time
+	By, From         string
+	ReadBy, TypedBy  string
+	Source           string // phone | office | paper | spreadsheet | instrument-file | imported
+	Imported         bool
+	Note             string
+	Log              string
+	Pos              int64
+	Body             forms.Entry   // after corrections
+	Verdict          forms.Verdict // under the limit revision in force on the test day
+	LimitSet         string
+	LimitRev         int
+	Shown            *Shown
+	Flags            []Flag
+	Corrections      []Correction // oldest first; the last by (clock, id) is in force
+	Withdrawn        *Correction
+	Original         forms.Entry
+}
+
+// Shown is what the phone told the tester.
+type Shown struct {
+	Result   string `json:"result"`
+	LimitRev int    `json:"limit_rev"`
+	Judge    int    `json:"judge"`
+}
+
+// Correction is a later record about an entry.
+type Correction struct {
+	Record   string
+	By       string
+	At       time.Time
+	Reason   string
+	Body     forms.Entry
+	InForce  bool
+	Received time.Time
+}
+
+// Flag is something to look at that is no verdict: code names a word "flag.CODE", Detail fills it in.
+// Codes: clock (device clock off), late (received long after), differs-shown, differs-register, calibration-expired,
+// no-instrument, access-ended, n-gap, n-reused.
+type Flag struct{ Code, Detail string }
+
+// DueRow is a due date with the device it belongs to, for lists.
+type DueRow struct {
+	Device DeviceRow
+	Due
+}
+
+// DueAsk filters a due list. Until NoDay = all dates.
+type DueAsk struct {
+	On    forms.Day
+	Until forms.Day
+	Site  string // id; "" = all of the scope
+	Task  string
+	Limit int // 0 = all
+}
+
+func (v *View) Sites() ([]Site, error)                               { panic("contract") }
+func (v *View) Site(idOrCode string) (Site, error)                   { panic("contract") }
+func (v *View) SiteSums(site string, on forms.Day) (SiteSums, error) { panic("contract") }
+func (v *View) Devices(site string) iter.Seq2[DeviceRow, error]      { panic("contract") } // walking order: building, floor, room, order, name (natural numbers)
+func (v *View) Device(id string, on forms.Day) (Device, error)       { panic("contract") }
+func (v *View) Places(site string) ([]Place, error)                  { panic("contract") }
+func (v *View) Entries(device string) ([]Entry, error)               { panic("contract") } // newest first
+func (v *View) Entry(id string) (Entry, error)                       { panic("contract") }
+func (v *View) SiteEntries(site string, from, to forms.Day) iter.Seq2[Entry, error] {
+	panic("contract")
+}                                                                  // by test day, then position; NoDay = open end
+func (v *View) Due(ask DueAsk) iter.Seq2[DueRow, error]            { panic("contract") } // by date
+func (v *View) Tag(tag string) ([]TagHolder, error)                { panic("contract") }
+func (v *View) Forms() ([]*forms.Form, error)                      { panic("contract") } // newest revision of each
+func (v *View) LimitSets() ([]*forms.LimitSet, error)              { panic("contract") } // every revision, by id then revision
+func (v *View) Plans() ([]*forms.Plan, error)                      { panic("contract") }
+func (v *View) Instruments() ([]Instrument, error)                 { panic("contract") }
+func (v *View) Logs() ([]LogHead, error)                           { panic("contract") }
+func (v *View) Record(id string) (record, stamp []byte, err error) { panic("contract") }
+func (v *View) Refused() ([]Refusal, error)                        { panic("contract") }
+func (v *View) PersonName(id string) string                        { panic("contract") } // from the directory; "" unknown
+
+// TagHolder is one live binding of a tag: a place (with its present device) or a portable item.
+type TagHolder struct {
+	Subject, Site, Device string
+}
+
+// Instrument is a test instrument with its merged fields.
+type Instrument struct {
+	ID, Name, Serial string
+	CalibrationDue   forms.Day
+	Accuracy         map[string]forms.Accuracy
+	Ramp             *forms.Ramp
+	Retired          bool
+}
+
+// LogHead is the size and RFC 6962 root of one log.
+type LogHead struct {
+	Log  string `json:"log"`
+	Size int64  `json:"size"`
+	Root string `json:"root"` // base64
+}
+
+// Refusal is a record kept in quarantine.
+type Refusal struct {
+	Record, SHA256, From, Code, Text, Log string
+	N                                     int64
+	Received                              time.Time
+	Bytes                                 []byte
+}
+
+// ---- proof and repair ------------------------------------------------------------------------------------------
+
+// Finding of Check: what is wrong and where.
+type CheckReport struct {
+	Records, Logs, Refused int64
+	ViewHash               string
+	Head                   string // signed note text, when one can be signed
+	Problems               []string
+}
+
+// Check reads the whole store in one read transaction: file structure, every record against its leaf and its place,
+// every log's root, ids, n, quarantine, and the read models against a rebuild. progress may be nil.
+func (s *Store) Check(ctx context.Context, progress func(done, total int64)) (CheckReport, error) {
+	panic("contract")
+}
+
+// Rebuild computes all read models anew from the book and writes them in one go.
+func (s *Store) Rebuild(ctx context.Context, progress func(done, total int64)) error {
+	panic("contract")
+}
+
+// ViewHash is the SHA-256 over (key, value) of every read-model bucket.
+func (s *Store) ViewHash() (string, error) { panic("contract") }
+
+// SignedHead signs the present head (note with origin tripwell/org/store/epoch) and keeps it; a store shorter than
+// what it once signed returns *Error code conflict and signs nothing.
+func (s *Store) SignedHead() (string, error) { panic("contract") }
+
+// WriteTo copies a consistent image of the file.
+func (s *Store) Backup(w io.Writer) (int64, error) { panic("contract") }
+
+// ---- directory (outside the book) --------------------------------------------------------------------------------
+
+// Person is someone who may sign in; the book knows the id and role only.
+type Person struct {
+	ID, Name, Role string // manager | crew | auditor
+	All            bool
+	Sites          []string
+	Active         bool
+	Contact        string
+}
+
+func (p Person) Scope() Scope { panic("contract") }
+
+func (s *Store) People() ([]Person, error)        { panic("contract") }
+func (s *Store) Person(id string) (Person, error) { panic("contract") }
+func (s *Store) PutPerson(ctx context.Context, by string, p Person) (Person, error) {
+	panic("contract")
+} // also appends person.set and grant.set; empty ID = new
+
+// NewLink makes a one-time sign-in link token for a person; only its SHA-256 is kept.
+func (s *Store) NewLink(person string, valid time.Duration) (token string, err error) {
+	panic("contract")
+}
+func (s *Store) LinkPerson(token string) (Person, error) { panic("contract") } // does not spend
+func (s *Store) SpendLink(ctx context.Context, token string) (session string, err error) {
+	panic("contract")
+}                                                     // compare and swap; appends signed.in
+func (s *Store) Session(token string) (Person, error) { panic("contract") }
+func (s *Store) EndSession(token string) error        { panic("contract") }
+
+// Enrol gives an installation a bearer token for the signed-in person; appends installation.enrolled. Enrolling again replaces the token.
+func (s *Store) Enrol(ctx context.Context, person, installation string) (token string, err error) {
+	panic("contract")
+}
+
+// Bearer says who holds an installation token.
+func (s *Store) Bearer(token string) (installation string, p Person, err error) { panic("contract") }
+
+// MintTags draws n new tags nobody holds and appends tags.minted.
+func (s *Store) MintTags(ctx context.Context, by string, n int) ([]string, error) { panic("contract") }
+
+// ---- errors ------------------------------------------------------------------------------------------------------
+
+// Error is a refusal a person can act on. Code is one of a closed list; Text is a whole sentence: what is wrong, then what to do.
+type Error struct {
+	Code  string `json:"code"`
+	Field string `json:"field,omitempty"`
+	Text  string `json:"text"`
+}
+
+func (e *Error) Error() string { return e.Text }
+
+var _ = json.RawMessage(nil)

@@ -305,6 +305,67 @@ func (v *View) Record(id string) (record, stamp []byte, err error) { panic("cont
 func (v *View) Refused() ([]Refusal, error)                        { panic("contract") }
 func (v *View) PersonName(id string) string                        { panic("contract") } // from the directory; "" unknown
 
+// Snapshot is what a phone takes along of one site, read in one transaction with the cursor that continues it.
+type Snapshot struct {
+	Site        SnapshotSite      `json:"site"`
+	Cursor      string            `json:"cursor"`
+	AsOf        time.Time         `json:"as_of"`
+	Today       forms.Day         `json:"today"`
+	Places      []SnapshotPlace   `json:"places"`
+	Devices     []SnapshotDevice  `json:"devices"` // walking order
+	Forms       []*forms.Form     `json:"forms"`
+	LimitSets   []*forms.LimitSet `json:"limit_sets"` // revision in force today of each
+	Instruments []Instrument      `json:"instruments"`
+}
+
+type SnapshotSite struct {
+	ID       string `json:"id"`
+	Code     string `json:"code"`
+	Name     string `json:"name"`
+	Zone     string `json:"zone"`
+	Standard string `json:"standard"`
+}
+
+type SnapshotPlace struct {
+	ID           string `json:"id"`
+	Building     string `json:"building,omitempty"`
+	Floor        string `json:"floor,omitempty"`
+	Room         string `json:"room,omitempty"`
+	Name         string `json:"name"`
+	CriticalLoad string `json:"critical_load,omitempty"`
+}
+
+type SnapshotDevice struct {
+	ID      string         `json:"id"`
+	Kind    string         `json:"kind"`
+	Place   string         `json:"place,omitempty"`
+	Tag     string         `json:"tag,omitempty"`
+	Panel   string         `json:"panel,omitempty"`
+	Circuit string         `json:"circuit,omitempty"`
+	Supply  string         `json:"supply,omitempty"`
+	Fields  map[string]any `json:"fields"`
+	// Last by task: newest test, with its numbers for the dashed mark on the scale.
+	Last map[string]SnapshotLast `json:"last,omitempty"`
+	Due  []SnapshotDue           `json:"due,omitempty"`
+}
+
+type SnapshotLast struct {
+	Entry    string             `json:"entry"`
+	Day      forms.Day          `json:"day"`
+	Result   string             `json:"result"`
+	Readings map[string]float64 `json:"readings,omitempty"`
+}
+
+type SnapshotDue struct {
+	Task  string    `json:"task"`
+	Due   forms.Day `json:"due"`
+	Last  forms.Day `json:"last,omitempty"`
+	State string    `json:"state"`
+}
+
+// Snapshot reads what a phone takes along of a site.
+func (v *View) Snapshot(site string, on forms.Day) (Snapshot, error) { panic("contract") }
+
 // TagHolder is one live binding of a tag: a place (with its present device) or a portable item.
 type TagHolder struct {
 	Subject, Site, Device string

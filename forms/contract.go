@@ -126,17 +126,3 @@ type LimitSet struct {
 	Revision int    `json:"revision"`
 	InForce  Day    `json:"in_force"`
 }
-
-// Plan says what is tested how often.
-type Plan struct {
-	ID       string   `json:"plan"`
-	Revision int      `json:"revision"`
-	Task     string   `json:"task"`
-	Kinds    []string `json:"kinds"`
-	Every    string   `json:"every"` // ISO 8601 duration
-	Duty     string   `json:"duty"`  // not-to-exceed | once-each-period
-	Grace    string   `json:"grace,omitempty"`
-	InForce  Day      `json:"in_force"`
-	Source   string   `json:"source"`
-	Status   string   `json:"status"`
-}

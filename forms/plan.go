@@ -1,0 +1,155 @@
+package forms
+
+import (
+	"encoding/json"
+	"fmt"
+	"slices"
+	"time"
+)
+
+// Duties of a plan: what its interval promises.
+const (
+	NotToExceed    = "not-to-exceed"    // never more than the interval between two tests
+	OnceEachPeriod = "once-each-period" // one test in each calendar period
+)
+
+// Ways a plan counts.
+const (
+	Rolling  = "rolling"  // from the day of the last test
+	Calendar = "calendar" // by calendar periods
+)
+
+// Plan says what is tested how often; data, not code (forms/data/plans).
+type Plan struct {
+	ID       string   `json:"plan"`
+	Revision int      `json:"revision"`
+	Task     string   `json:"task"`
+	Kinds    []string `json:"kinds"`
+	Every    string   `json:"every"`           // ISO 8601 duration
+	Duty     string   `json:"duty"`            // not-to-exceed | once-each-period
+	Count    string   `json:"count,omitempty"` // rolling | calendar; follows from the duty when empty
+	Grace    string   `json:"grace,omitempty"` // ISO 8601 duration; once-each-period only
+	InForce  Day      `json:"in_force"`
+	Source   string   `json:"source"`
+	Status   string   `json:"status"`
+}
+
+// ParsePlan reads one plan and checks it. Unknown members are left for newer programs.
+func ParsePlan(raw []byte) (*Plan, error) {
+	p := &Plan{InForce: NoDay}
+	if err := json.Unmarshal(raw, p); err != nil {
+		return nil, fmt.Errorf("plan is not readable: %w", err)
+	}
+	return p, p.Check()
+}
+
+// Check says what is wrong with a plan, or nil.
+func (p *Plan) Check() error {
+	fail := func(format string, a ...any) error {
+		return fmt.Errorf("plan %s: "+format, append([]any{p.ID}, a...)...)
+	}
+	switch {
+	case p.ID == "" || p.Task == "":
+		return fmt.Errorf("a plan needs an id and a task")
+	case p.Revision < 1:
+		return fail("revision is %d; revisions count from 1", p.Revision)
+	case p.InForce == NoDay:
+		return fail("in_force is missing: give the first day it applies")
+	}
+	every, err := ParseInterval(p.Every)
+	if err != nil {
+		return fail("every: %w", err)
+	}
+	if every.Zero() {
+		return fail("every is %s, which is no time at all", p.Every)
+	}
+	grace, err := p.grace()
+	if err != nil {
+		return fail("grace: %w", err)
+	}
+	switch p.Duty {
+	case NotToExceed:
+		if p.Count == Calendar {
+			return fail("a not-to-exceed interval cannot be counted by calendar periods: a test on 2 January and one on 30 June " +
+				"fit two calendar quarters and lie 179 days apart; count it rolling, or make the duty once-each-period")
+		}
+		if !grace.Zero() {
+			return fail("a not-to-exceed interval has no grace: shorten the interval instead")
+		}
+	case OnceEachPeriod:
+		if p.Count == Rolling {
+			return fail("once-each-period is counted by calendar periods; for a rolling date make the duty not-to-exceed")
+		}
+		if !wholePeriods(every) {
+			return fail("%s does not divide the calendar: use P1D, P1W, P1M, P2M, P3M, P4M, P6M or whole years", p.Every)
+		}
+	default:
+		return fail("duty is %q; it must be %s or %s", p.Duty, NotToExceed, OnceEachPeriod)
+	}
+	if p.Count != "" && p.Count != Rolling && p.Count != Calendar {
+		return fail("count is %q; it must be %s or %s", p.Count, Rolling, Calendar)
+	}
+	return nil
+}
+
+func (p *Plan) grace() (Interval, error) {
+	if p.Grace == "" {
+		return Interval{}, nil
+	}
+	return ParseInterval(p.Grace)
+}
+
+// Covers reports whether the plan asks its task of a device kind. A kind that does not have the task is never covered,
+// whatever the plan lists: a receptacle without a TEST button has no button date.
+func (p *Plan) Covers(kind string) bool {
+	return slices.Contains(p.Kinds, kind) && HasTask(kind, p.Task)
+}
+
+func wholePeriods(i Interval) bool {
+	switch {
+	case i.Months == 0:
+		return i.Days == 1 || i.Days == 7
+	case i.Days != 0:
+		return false
+	}
+	return 12%i.Months == 0 || i.Months%12 == 0
+}
+
+// period gives the first and last day of the calendar period that holds d. Months are counted from January of year 0,
+// so that quarters and half-years start in January and periods of n years start in years divisible by n; weeks run from
+// Monday to Sunday (ISO 8601).
+func (i Interval) period(d Day) (first, last Day) {
+	if i.Months == 0 {
+		if i.Days == 7 {
+			// 1970-01-01 was a Thursday: day -3 was a Monday.
+			first = d - Day(floorMod(int(d)+3, 7))
+			return first, first + 6
+		}
+		return d, d
+	}
+	y, m, _ := d.Time().Date()
+	index := y*12 + int(m) - 1
+	index -= floorMod(index, i.Months)
+	first = Date(0, time.January, 1).AddMonths(index)
+	return first, first.AddMonths(i.Months) - 1
+}
+
+func floorMod(a, n int) int { return ((a % n) + n) % n }
+
+// tasksOf lists the tasks each device kind has: a TEST button to press, something to measure with an instrument, contacts
+// to check. Kinds not listed have none.
+var tasksOf = map[string][]string{
+	"gfci-receptacle":      {"button", "instrument", "receptacle"},
+	"gfci-breaker":         {"button", "instrument"},
+	"portable-gfci":        {"button", "instrument"},
+	"protected-receptacle": {"receptacle"},
+	"receptacle":           {"receptacle"},
+	"hospital-receptacle":  {"receptacle"},
+	"cord-set":             {"instrument", "receptacle"},
+	"plug-in-equipment":    {"instrument", "receptacle"},
+	"rcd":                  {"button", "instrument"},
+	"rcbo":                 {"button", "instrument"},
+}
+
+// HasTask reports whether a device kind has a task at all.
+func HasTask(kind, task string) bool { return slices.Contains(tasksOf[kind], task) }

@@ -1,0 +1,110 @@
+package server
+
+import (
+	"bytes"
+	"compress/gzip"
+	"crypto/sha256"
+	"encoding/hex"
+	"fmt"
+	"io/fs"
+	"net/http"
+	"path"
+	"strings"
+
+	"github.com/labstack/echo/v4"
+)
+
+// assets are the files a browser may fetch, under /assets/HASH/NAME with one hash over all of them. The whole tree moves
+// when one file does, so ES modules import each other by relative names and always get the files they were written with,
+// and every answer can be cached for ever. An address with another hash is not found: to give today's file for yesterday's
+// address would put the wrong bytes into a cache that never asks again.
+type assets struct {
+	hash  string
+	files map[string]asset
+}
+
+type asset struct {
+	kind          string
+	plain, packed []byte // packed is nil where gzip does not pay
+}
+
+var assetKinds = map[string]string{
+	".css": "text/css; charset=utf-8", ".mjs": "text/javascript; charset=utf-8", ".js": "text/javascript; charset=utf-8",
+	".json": "application/json", ".svg": "image/svg+xml", ".png": "image/png", ".txt": "text/plain; charset=utf-8",
+	".webmanifest": "application/manifest+json", ".woff2": "font/woff2", ".wasm": "application/wasm",
+}
+
+func readAssets(tree fs.FS) (*assets, error) {
+	a := &assets{files: map[string]asset{}}
+	sum := sha256.New()
+	err := fs.WalkDir(tree, ".", func(name string, d fs.DirEntry, err error) error {
+		if err != nil || d.IsDir() {
+			return err
+		}
+		kind, known := assetKinds[path.Ext(name)]
+		if !known {
+			return fmt.Errorf("assets: %s has a file type nobody named", name)
+		}
+		raw, err := fs.ReadFile(tree, name)
+		if err != nil {
+			return err
+		}
+		fmt.Fprintf(sum, "%s %d\n", name, len(raw))
+		sum.Write(raw)
+		packed, err := gzipped(raw)
+		if err != nil {
+			return fmt.Errorf("assets: %s: %w", name, err)
+		}
+		a.files[name] = asset{kind: kind, plain: raw, packed: packed}
+		return nil
+	})
+	a.hash = hex.EncodeToString(sum.Sum(nil))[:16]
+	return a, err
+}
+
+func gzipped(raw []byte) ([]byte, error) {
+	var b bytes.Buffer
+	w, err := gzip.NewWriterLevel(&b, gzip.BestCompression)
+	if err != nil {
+		return nil, err
+	}
+	if _, err := w.Write(raw); err != nil {
+		return nil, err
+	}
+	if err := w.Close(); err != nil {
+		return nil, err
+	}
+	if b.Len() > len(raw)*9/10 {
+		return nil, nil //nolint:nilnil // not worth packing
+	}
+	return b.Bytes(), nil
+}
+
+// root is the folder of all assets, for the field client: /assets/HASH/.
+func (a *assets) root() string { return "/assets/" + a.hash + "/" }
+
+// path gives the address of one asset; a name that is not embedded is a fault of the page that asks.
+func (a *assets) path(name string) (string, error) {
+	if _, ok := a.files[name]; !ok {
+		return "", fmt.Errorf("asset %s is not embedded", name)
+	}
+	return a.root() + name, nil
+}
+
+// assetShow answers /assets/HASH/NAME.
+func (s *Server) assetShow(c echo.Context) error {
+	hash, name, _ := strings.Cut(c.Param("*"), "/")
+	file, ok := s.assets.files[name]
+	if !ok || hash != s.assets.hash {
+		return refuse(codeNotFound, "", "This file is of another version of the program. Load the page again.")
+	}
+	h := c.Response().Header()
+	h.Set("Cache-Control", "public, max-age=31536000, immutable")
+	h.Set("Vary", "Accept-Encoding")
+	body := file.plain
+	if file.packed != nil && strings.Contains(c.Request().Header.Get("Accept-Encoding"), "gzip") {
+		h.Set("Content-Encoding", "gzip")
+		body = file.packed
+	}
+	return c.Blob(http.StatusOK, file.kind, body)
+}

@@ -105,6 +105,15 @@ func wrongOf(err error) (w Wrong, fault bool) {
 	return Wrong{Code: codeInternal, Ref: ref, Text: "Something went wrong here. Reference " + ref + "."}, true
 }
 
+// told is what the caller is told of an error; a fault goes to the log with its reference.
+func (s *Server) told(c echo.Context, err error) Wrong {
+	w, fault := wrongOf(err)
+	if fault {
+		s.log.Error("fault", "ref", w.Ref, "method", c.Request().Method, "route", c.Path(), "err", err)
+	}
+	return w
+}
+
 // fail answers every error a handler returned.
 func (s *Server) fail(err error, c echo.Context) {
 	if c.Response().Committed {
@@ -113,10 +122,7 @@ func (s *Server) fail(err error, c echo.Context) {
 	if errors.Is(err, context.Canceled) && c.Request().Context().Err() != nil {
 		return // nobody is listening any more
 	}
-	w, fault := wrongOf(err)
-	if fault {
-		s.log.Error("fault", "ref", w.Ref, "method", c.Request().Method, "route", c.Path(), "err", err)
-	}
+	w := s.told(c, err)
 	c.Response().Header().Set("Cache-Control", "no-store")
 	if w.Code == codeBusy || w.Code == codeUnavailable {
 		c.Response().Header().Set("Retry-After", strconv.Itoa(retryAfterSeconds))

@@ -49,20 +49,25 @@ func sendBytes(c echo.Context, status int, kind string, body []byte) error {
 // toPage sends a browser to a path of ours after a form was taken.
 func toPage(c echo.Context, path string) error { return c.Redirect(http.StatusSeeOther, path) }
 
-// download sends a file as it is made. What fails before the first byte is answered as any error; what fails later breaks
-// the connection, so that nobody takes half a file for a whole one.
+// download sends a file as it is made.
 func (s *Server) download(c echo.Context, kind, name string, write func(io.Writer) error) error {
+	c.Response().Header().Set("Content-Disposition", mime.FormatMediaType("attachment", map[string]string{"filename": name}))
+	return s.stream(c, kind, write)
+}
+
+// stream sends bytes as they are made. What fails before the first byte is answered as any error; what fails later breaks
+// the connection, so that nobody takes half a file for a whole one.
+func (s *Server) stream(c echo.Context, kind string, write func(io.Writer) error) error {
 	h := c.Response().Header()
 	h.Set("Content-Type", kind)
-	h.Set("Content-Disposition", mime.FormatMediaType("attachment", map[string]string{"filename": name}))
 	h.Set("Cache-Control", "no-store")
 	err := write(&flowing{w: c.Response(), ctl: http.NewResponseController(c.Response())})
 	switch {
 	case err == nil && !c.Response().Committed:
-		return c.NoContent(http.StatusOK)
+		c.Response().WriteHeader(http.StatusOK)
 	case err != nil && c.Response().Committed:
 		if c.Request().Context().Err() == nil {
-			s.log.Error("download broken off", "route", c.Path(), "err", err)
+			s.log.Error("answer broken off", "route", c.Path(), "err", err)
 		}
 		panic(http.ErrAbortHandler)
 	case err != nil:

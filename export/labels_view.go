@@ -1,0 +1,83 @@
+package export
+
+import (
+	"net/url"
+	"strings"
+
+	"tripwell/store"
+)
+
+// LabelAsk says which labels.
+type LabelAsk struct {
+	Site string // id or code; "" = every site of the scope
+	URL  string // label address of the store (https://host)
+	Demo bool
+}
+
+// LabelsOf reads the labels of a store within a scope, in walking order.
+func LabelsOf(s *store.Store, scope store.Scope, site string) (labels []Label, err error) {
+	err = s.View(scope, func(v *store.View) error {
+		labels, err = LabelsFromView(v, LabelAsk{Site: site, URL: s.URL(), Demo: s.Demo()})
+		return err
+	})
+	return labels, err
+}
+
+// LabelsFromView gives the labels of all devices in service that have a tag, in walking order.
+func LabelsFromView(v *store.View, ask LabelAsk) ([]Label, error) {
+	host, err := labelHost(ask.URL)
+	if err != nil {
+		return nil, err
+	}
+	sites, err := sitesOf(v, ask.Site)
+	if err != nil {
+		return nil, err
+	}
+	var labels []Label
+	for line, err := range deviceLines(v, sites) {
+		if err != nil {
+			return nil, err
+		}
+		if d := line.Device; d.Tag != "" && !d.Retired {
+			labels = append(labels, deviceLabel(d, host, ask.Demo))
+		}
+	}
+	return labels, nil
+}
+
+func deviceLabel(d store.DeviceRow, host string, demo bool) Label {
+	tag := strings.ToUpper(strings.ReplaceAll(d.Tag, "-", ""))
+	l := Label{Tag: tag, Address: "HTTPS://" + host + "/T/" + tag, Spot: d.Place.Name, Context: roomText(d.Place), Demo: demo}
+	switch {
+	case d.Panel != "" && d.Circuit != "":
+		l.Circuit = d.Panel + " / " + d.Circuit
+	default:
+		l.Circuit = d.Panel + d.Circuit
+	}
+	if l.Spot == "" {
+		l.Spot = joinSpace(d.Make, d.Model)
+	}
+	return l
+}
+
+func roomText(p store.Place) string {
+	var parts []string
+	for _, s := range []string{p.Room, p.Floor, p.Building} {
+		if s != "" {
+			parts = append(parts, s)
+		}
+	}
+	return strings.Join(parts, " · ")
+}
+
+// labelHost is the host (and port) of the label address, in upper case.
+func labelHost(address string) (string, error) {
+	if address == "" {
+		return "", &store.Error{Code: "invalid", Field: "url", Text: "Labels need the address that phones will open: start the server once with --url https://your.host."}
+	}
+	u, err := url.Parse(address)
+	if err != nil || !strings.EqualFold(u.Scheme, "https") || u.Host == "" || strings.Trim(u.Path, "/") != "" || u.RawQuery != "" || u.User != nil {
+		return "", &store.Error{Code: "invalid", Field: "url", Text: "The address on labels must look like https://your.host, without a path; this store holds " + address + ". Start the server once with a better --url."}
+	}
+	return strings.ToUpper(u.Host), nil
+}

@@ -1,0 +1,238 @@
+package export
+
+import (
+	"fmt"
+	"strconv"
+	"time"
+
+	"github.com/xuri/excelize/v2"
+
+	"tripwell/forms"
+)
+
+// sheetRows is the most rows a sheet holds (ECMA-376 as every reader limits it). What is beyond goes on a further sheet.
+const sheetRows = excelize.TotalRows
+
+// cellKind says what a column holds; the whole column carries the matching style.
+type cellKind int
+
+const (
+	textCell   cellKind = iota
+	dayCell             // civil date
+	timeCell            // date and time of day, local to the site
+	numberCell          // measured or rated figure
+	countCell           // whole number
+	verdictCell
+)
+
+type column struct {
+	key   string // words sheet.col.KEY
+	width float64
+	kind  cellKind
+}
+
+// sheet streams rows into one worksheet. A row is built cell by cell from the left: row, then text, day, … in the order
+// of the columns, then end.
+type sheet struct {
+	book  *book
+	key   string // words sheet.name.KEY
+	name  string
+	part  int
+	cols  []column
+	sw    *excelize.StreamWriter
+	head  int // row of the headings
+	last  int // last row written
+	total int // data rows over all parts
+	cells []any
+}
+
+// open makes the worksheet ready for rows. Everything excelize would lose after the first row or after Flush is set
+// here first: panes, widths, print titles, page set-up, header and footer.
+func (s *sheet) open() error {
+	b := s.book
+	if err := b.pageSetup(s.name); err != nil {
+		return fmt.Errorf("sheet %s: %w", s.name, err)
+	}
+	s.head, s.last = 1, 0
+	if b.demo {
+		s.head = 2
+	}
+	titles := fmt.Sprintf("'%s'!$1:$%d", s.name, s.head)
+	if err := b.file.SetDefinedName(&excelize.DefinedName{Name: "_xlnm.Print_Titles", RefersTo: titles, Scope: s.name}); err != nil {
+		return fmt.Errorf("sheet %s: %w", s.name, err)
+	}
+	sw, err := b.file.NewStreamWriter(s.name)
+	if err != nil {
+		return fmt.Errorf("sheet %s: %w", s.name, err)
+	}
+	s.sw = sw
+	if err := sw.SetPanes(&excelize.Panes{Freeze: true, YSplit: s.head, TopLeftCell: "A" + strconv.Itoa(s.head+1), ActivePane: "bottomLeft"}); err != nil {
+		return fmt.Errorf("sheet %s: %w", s.name, err)
+	}
+	for i, c := range s.cols {
+		if err := sw.SetColWidth(i+1, i+1, c.width); err != nil {
+			return fmt.Errorf("sheet %s: %w", s.name, err)
+		}
+		if err := sw.SetColStyle(i+1, i+1, b.styles.of[c.kind]); err != nil {
+			return fmt.Errorf("sheet %s: %w", s.name, err)
+		}
+	}
+	return s.headings()
+}
+
+func (s *sheet) headings() error {
+	b := s.book
+	if b.demo {
+		if err := s.put(excelize.Cell{StyleID: b.styles.demo, Value: b.say("sheet.demo")}); err != nil {
+			return err
+		}
+	}
+	row := make([]any, len(s.cols))
+	for i, c := range s.cols {
+		row[i] = excelize.Cell{StyleID: b.styles.heading, Value: b.say("sheet.col." + c.key)}
+	}
+	return s.put(row...)
+}
+
+func (s *sheet) put(cells ...any) error {
+	if err := s.sw.SetRow("A"+strconv.Itoa(s.last+1), cells); err != nil {
+		return fmt.Errorf("sheet %s, row %d: %w", s.name, s.last+1, err)
+	}
+	s.last++
+	return nil
+}
+
+// row begins a row.
+func (s *sheet) row() *sheet {
+	s.cells = s.cells[:0]
+	return s
+}
+
+func (s *sheet) text(v string) *sheet {
+	if v == "" {
+		return s.skip()
+	}
+	s.cells = append(s.cells, cellText(v))
+	return s
+}
+
+func (s *sheet) skip() *sheet {
+	s.cells = append(s.cells, nil)
+	return s
+}
+
+// serialDay is the spreadsheet's count of days (1900 date system) for 1970-01-01.
+const serialDay = 25569
+
+// firstSerialDay is 1900-03-01: before it the count of days is off by one for a leap day that never was.
+const firstSerialDay = forms.Day(61 - serialDay)
+
+func (s *sheet) day(d forms.Day) *sheet {
+	switch {
+	case d == forms.NoDay:
+		return s.skip()
+	case d < firstSerialDay:
+		return s.text(d.String())
+	}
+	s.cells = append(s.cells, int(d)+serialDay)
+	return s
+}
+
+// time writes wall-clock time in a site's zone; a spreadsheet knows no zone, so a zone column stands beside it.
+func (s *sheet) time(t time.Time, zone *time.Location) *sheet {
+	if t.IsZero() {
+		return s.skip()
+	}
+	t = t.In(zone)
+	d := forms.DayOf(t)
+	if d < firstSerialDay {
+		return s.text(t.Format(time.DateTime))
+	}
+	h, m, sec := t.Clock()
+	s.cells = append(s.cells, float64(int(d)+serialDay)+float64(h*3600+m*60+sec)/86400)
+	return s
+}
+
+func (s *sheet) number(v float64) *sheet {
+	if v != v || v > 1e300 || v < -1e300 {
+		return s.text(strconv.FormatFloat(v, 'g', -1, 64))
+	}
+	s.cells = append(s.cells, v)
+	return s
+}
+
+// rating writes a figure of the register, where 0 means not known.
+func (s *sheet) rating(v float64) *sheet {
+	if v == 0 {
+		return s.skip()
+	}
+	return s.number(v)
+}
+
+func (s *sheet) figure(v *float64) *sheet {
+	if v == nil {
+		return s.skip()
+	}
+	return s.number(*v)
+}
+
+func (s *sheet) count(n int64) *sheet {
+	s.cells = append(s.cells, n)
+	return s
+}
+
+// verdict writes the word; the cell's style adds shape and colour, so that filters see the word alone.
+func (s *sheet) verdict(code string) *sheet {
+	if code == "" {
+		return s.skip()
+	}
+	s.cells = append(s.cells, excelize.Cell{StyleID: s.book.styles.verdict(code), Value: s.book.word("verdict", code)})
+	return s
+}
+
+// end writes the row, on a further sheet where this one is full.
+func (s *sheet) end() error {
+	if len(s.cells) != len(s.cols) {
+		return fmt.Errorf("sheet %s: a row of %d cells under %d headings", s.name, len(s.cells), len(s.cols))
+	}
+	if s.last == sheetRows {
+		if err := s.further(); err != nil {
+			return err
+		}
+	}
+	s.total++
+	s.book.progress()
+	return s.put(s.cells...)
+}
+
+func (s *sheet) further() error {
+	if err := s.close(); err != nil {
+		return err
+	}
+	s.part++
+	s.name = s.book.say("sheet.name."+s.key) + " " + strconv.Itoa(s.part)
+	if _, err := s.book.file.NewSheet(s.name); err != nil {
+		return fmt.Errorf("sheet %s: %w", s.name, err)
+	}
+	return s.open()
+}
+
+// close adds the table with its filter over what was written and flushes; nothing may be set afterwards.
+func (s *sheet) close() error {
+	to, err := excelize.CoordinatesToCellName(len(s.cols), max(s.last, s.head+1))
+	if err != nil {
+		return fmt.Errorf("sheet %s: %w", s.name, err)
+	}
+	stripes := false
+	err = s.sw.AddTable(&excelize.Table{
+		Range: "A" + strconv.Itoa(s.head) + ":" + to, Name: fmt.Sprintf("tripwell_%s_%d", s.key, s.part),
+		StyleName: "TableStyleLight1", ShowRowStripes: &stripes,
+	})
+	if err != nil {
+		return fmt.Errorf("sheet %s: table: %w", s.name, err)
+	}
+	if err := s.sw.Flush(); err != nil {
+		return fmt.Errorf("sheet %s: %w", s.name, err)
+	}
+	return nil
+}

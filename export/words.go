@@ -1,0 +1,163 @@
+package export
+
+import (
+	"encoding/json"
+	"fmt"
+	"maps"
+	"slices"
+	"strconv"
+	"strings"
+
+	"tripwell/store"
+)
+
+// word looks a code up in a section of the catalogue; a code without a word is shown as it is.
+func (b *book) word(section, code string) string {
+	if code == "" {
+		return ""
+	}
+	key := section + "." + code
+	if w, ok := b.named[key]; ok {
+		return w
+	}
+	w := code
+	if b.words.Has(key) {
+		w = b.words.Say(key)
+	}
+	b.named[key] = w
+	return w
+}
+
+// readingName is the name of a reading without its unit.
+func (b *book) readingName(code string) string {
+	key := "reading." + code + ".name"
+	if w, ok := b.named[key]; ok {
+		return w
+	}
+	w := strings.ReplaceAll(code, "_", " ")
+	if b.words.Has(key) {
+		w = b.words.Say(key)
+	}
+	b.named[key] = w
+	return w
+}
+
+// option is an answer in words.
+func (b *book) option(code, value string) string {
+	for _, key := range []string{"option." + code + "." + value, "option." + value, "sheet." + value} {
+		if b.words.Has(key) {
+			return b.words.Say(key)
+		}
+	}
+	return value
+}
+
+// conditions puts the conditions of a series reading in words: "Multiple 5, Phase 180".
+func (b *book) conditions(at map[string]any) string {
+	if len(at) == 0 {
+		return ""
+	}
+	var parts []string
+	for _, k := range slices.Sorted(maps.Keys(at)) {
+		v := fmt.Sprint(at[k])
+		if s, ok := at[k].(string); ok {
+			v = b.option(k, s)
+		}
+		parts = append(parts, b.readingName(k)+" "+v)
+	}
+	return strings.Join(parts, ", ")
+}
+
+// fixedUnits are the units that a reading's code ends with; a value always stands in its code's own unit.
+var fixedUnits = []string{"mohm", "ma", "ms", "ohm", "v", "pct", "g", "a", "deg"}
+
+var unitWords = map[string]string{"mohm": "Mohm", "ma": "mA", "v": "V", "pct": "%", "a": "A"}
+
+func (b *book) unit(code string) string {
+	if code == "multiple" {
+		return b.word("unit", "×")
+	}
+	_, end, _ := cutLast(code, "_")
+	if !slices.Contains(fixedUnits, end) {
+		return ""
+	}
+	if u, ok := unitWords[end]; ok {
+		end = u
+	}
+	return b.word("unit", end)
+}
+
+func cutLast(s, sep string) (before, after string, found bool) {
+	if i := strings.LastIndex(s, sep); i >= 0 {
+		return s[:i], s[i+len(sep):], true
+	}
+	return s, "", false
+}
+
+// value says what was read: a number where there is one, else words (">310", "open ground", "not measured: no access").
+func (b *book) value(code string, raw json.RawMessage) (number *float64, text string) {
+	if len(raw) == 0 {
+		return nil, ""
+	}
+	switch c := raw[0]; {
+	case c == '-' || c >= '0' && c <= '9':
+		if v, err := strconv.ParseFloat(string(raw), 64); err == nil {
+			return &v, ""
+		}
+	case c == '"':
+		var s string
+		if json.Unmarshal(raw, &s) == nil {
+			return nil, b.option(code, s)
+		}
+	case c == '{':
+		var r struct {
+			Above, Below *float64
+			NoTrip       bool `json:"no_trip"`
+			Missing      string
+			Value        json.RawMessage
+		}
+		if json.Unmarshal(raw, &r) == nil {
+			switch {
+			case r.Missing != "":
+				return nil, b.say("sheet.not_measured", "why", b.word("missing", r.Missing))
+			case r.Above != nil:
+				return nil, ">" + figureText(*r.Above)
+			case r.Below != nil:
+				return nil, "<" + figureText(*r.Below)
+			case r.NoTrip:
+				return nil, b.say("sheet.no_trip")
+			case len(r.Value) > 0 && r.Value[0] != '{':
+				return b.value(code, r.Value)
+			}
+		}
+	}
+	return nil, string(raw)
+}
+
+func figureText(v float64) string { return strconv.FormatFloat(v, 'f', -1, 64) }
+
+// place is where a device sits, from the building down to the spot.
+func placeText(p store.Place) string {
+	var parts []string
+	for _, s := range []string{p.Building, p.Floor, p.Room, p.Name} {
+		if s != "" {
+			parts = append(parts, s)
+		}
+	}
+	return strings.Join(parts, " · ")
+}
+
+// tagText shows a tag in groups: K7QM2P3 → K7Q-M2P-3.
+func tagText(tag string) string {
+	if len(tag) != 7 || strings.ContainsAny(tag, "- ") {
+		return tag
+	}
+	return tag[:3] + "-" + tag[3:6] + "-" + tag[6:]
+}
+
+func limitRevision(set string, rev int) string {
+	if set == "" {
+		return ""
+	}
+	return set + " r" + strconv.Itoa(rev)
+}

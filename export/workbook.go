@@ -1,0 +1,197 @@
+package export
+
+import (
+	"fmt"
+	"io"
+	"iter"
+	"time"
+
+	"github.com/xuri/excelize/v2"
+
+	"tripwell/forms"
+	"tripwell/static"
+	"tripwell/store"
+)
+
+// WorkbookSource is everything that goes into a workbook: values for the cover, sequences for the long sheets. A
+// sequence is read once, row by row, and never held.
+type WorkbookSource struct {
+	Organisation string // name of the organisation, "" when none is known
+	Sites        []store.Site
+	AllSites     bool      // the whole organisation, not a choice of sites
+	From, To     forms.Day // by test day, both included; NoDay: open
+	AsOf         time.Time // when the store was read
+	Store        string    // store id
+	Epoch        int
+	Demo         bool
+	Logs         []LogLine
+	Head         string // signed head text, "" when there is none
+	Refused      int    // records in quarantine
+
+	Devices iter.Seq2[DeviceLine, error] // walking order
+	Entries iter.Seq2[EntryLine, error]  // by site, test day, position
+	Due     iter.Seq2[DueLine, error]
+	Limits  []LimitLine
+
+	PersonName func(id string) string // from the directory, "" unknown; may be nil
+	Progress   func(rows int)         // called now and then with the rows written so far; may be nil
+}
+
+// LogLine is the size and root of one log, with its site's code ("" for org and office).
+type LogLine struct {
+	store.LogHead
+	SiteCode string
+}
+
+// DeviceLine is a device with its site.
+type DeviceLine struct {
+	Site   store.Site
+	Device store.DeviceRow
+}
+
+// DueLine is a due date with its site.
+type DueLine struct {
+	Site store.Site
+	store.DueRow
+}
+
+// EntryLine is one entry with what its row says in words.
+type EntryLine struct {
+	store.Entry
+	Site       store.Site
+	Zone       *time.Location
+	DeviceRow  store.DeviceRow
+	ByName     string // from the directory, the id where it is unknown
+	ReadName   string // who read the instrument, "" when it is the same person
+	TypedName  string
+	Instrument string     // name and serial
+	Replaced   []Replaced // readings that a correction replaced, oldest first
+}
+
+// Replaced is what stood before a correction, with its verdict under the same limits: it never disappears.
+type Replaced struct {
+	Body    forms.Entry
+	Verdict forms.Verdict
+}
+
+// LimitLine is one limit of one revision of a limit set.
+type LimitLine struct {
+	Set         string
+	Revision    int
+	InForce     forms.Day
+	ID, Reading string
+	Limit       string // in words: "at most 1 ohm"
+	Level       string
+	When        string
+	Source      string
+	Status      string
+}
+
+// book is the workbook being written.
+type book struct {
+	file   *excelize.File
+	words  *static.Words
+	styles sheetStyles
+	demo   bool
+	src    *WorkbookSource
+	rows   int
+	named  map[string]string // words looked up by section and code
+	used   map[string]bool   // limit set revisions that judged an entry
+}
+
+// progressRows is how often Progress is told.
+const progressRows = 2000
+
+func (b *book) progress() {
+	if b.rows++; b.src.Progress != nil && b.rows%progressRows == 0 {
+		b.src.Progress(b.rows)
+	}
+}
+
+func (b *book) say(key string, pairs ...any) string { return b.words.Say(key, pairs...) }
+
+// Workbook writes the auditor's workbook: Cover, Register, Entries, Readings, Flags, Due, Limits. Rows are streamed, so
+// memory does not grow with their number.
+func Workbook(w io.Writer, src WorkbookSource) (err error) {
+	words, err := static.ReadWords("en")
+	if err != nil {
+		return fmt.Errorf("workbook: %w", err)
+	}
+	f := excelize.NewFile()
+	defer func() {
+		if e := f.Close(); e != nil && err == nil {
+			err = fmt.Errorf("workbook: temporary files: %w", e)
+		}
+	}()
+	f.SetZipWriter(func(io.Writer) excelize.ZipWriter { return newDirectZip(w) })
+	b := &book{file: f, words: words, demo: src.Demo, src: &src, named: map[string]string{}, used: map[string]bool{}}
+	if b.styles, err = makeStyles(f); err != nil {
+		return err
+	}
+	if err := b.write(); err != nil {
+		return fmt.Errorf("workbook: %w", err)
+	}
+	// The zip writer above already sends every part to w; excelize's own buffer stays empty.
+	if err := f.Write(io.Discard); err != nil {
+		return fmt.Errorf("workbook: %w", err)
+	}
+	return nil
+}
+
+// sheetOrder is the order of the sheets by key.
+var sheetOrder = []string{"cover", "register", "entries", "readings", "flags", "due", "limits"}
+
+func (b *book) write() error {
+	for i, key := range sheetOrder {
+		name := b.say("sheet.name." + key)
+		if i == 0 {
+			if err := b.file.SetSheetName("Sheet1", name); err != nil {
+				return err
+			}
+			continue
+		}
+		if _, err := b.file.NewSheet(name); err != nil {
+			return err
+		}
+	}
+	if err := b.docProps(); err != nil {
+		return err
+	}
+	for _, part := range []func() error{b.register, b.entries, b.due, b.limits, b.cover} {
+		if err := part(); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+func (b *book) sheet(key string, cols []column) (*sheet, error) {
+	s := &sheet{book: b, key: key, name: b.say("sheet.name." + key), part: 1, cols: cols, cells: make([]any, 0, len(cols))}
+	return s, s.open()
+}
+
+// docProps gives the file its own dates, so that the same source makes the same properties.
+func (b *book) docProps() error {
+	at := b.src.AsOf.UTC().Format(time.RFC3339)
+	return b.file.SetDocProps(&excelize.DocProperties{
+		Title: b.say("sheet.title"), Creator: "Tripwell", LastModifiedBy: "Tripwell", Created: at, Modified: at, Language: "en",
+		Identifier: b.src.Store,
+	})
+}
+
+// pageSetup makes a sheet print on landscape pages, one page wide, with its name, the page number and the DEMO mark.
+func (b *book) pageSetup(name string) error {
+	fit, wide, tall, landscape := true, 1, 0, "landscape"
+	if err := b.file.SetSheetProps(name, &excelize.SheetPropsOptions{FitToPage: &fit}); err != nil {
+		return err
+	}
+	if err := b.file.SetPageLayout(name, &excelize.PageLayoutOptions{Orientation: &landscape, FitToWidth: &wide, FitToHeight: &tall}); err != nil {
+		return err
+	}
+	right := ""
+	if b.demo {
+		right = "&R&B" + b.say("sheet.demo_mark")
+	}
+	foot := "&L" + b.say("sheet.footer_as_of", "at", b.src.AsOf.UTC().Format("2006-01-02 15:04")) + "&R" + b.say("sheet.footer_page", "page", "&P", "pages", "&N")
+	return b.file.SetHeaderFooter(name, &excelize.HeaderFooterOptions{OddHeader: "&L" + b.say("sheet.title") + "&C&A" + right, OddFooter: foot})
+}

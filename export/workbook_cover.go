@@ -1,0 +1,115 @@
+package export
+
+import (
+	"strconv"
+	"strings"
+
+	"github.com/xuri/excelize/v2"
+
+	"tripwell/forms"
+)
+
+// cover writes the first sheet: whose records, which, as of when, how to prove them, and what they do not prove. It is
+// written last because it names the limit revisions the entries were judged with.
+func (b *book) cover() error {
+	name := b.say("sheet.name.cover")
+	if err := b.pageSetup(name); err != nil {
+		return err
+	}
+	sw, err := b.file.NewStreamWriter(name)
+	if err != nil {
+		return err
+	}
+	for i, width := range []float64{30, 110} {
+		if err := sw.SetColWidth(i+1, i+1, width); err != nil {
+			return err
+		}
+	}
+	for i, line := range b.coverLines() {
+		style := b.styles.wrapped
+		if line.fixed {
+			style = b.styles.fixed
+		}
+		cells := []any{excelize.Cell{StyleID: b.styles.label, Value: cellText(line.label)}, excelize.Cell{StyleID: style, Value: cellText(line.text)}}
+		if line.style != 0 {
+			cells = []any{excelize.Cell{StyleID: line.style, Value: cellText(line.label)}}
+		}
+		if err := sw.SetRow("A"+strconv.Itoa(i+1), cells); err != nil {
+			return err
+		}
+	}
+	return sw.Flush()
+}
+
+// coverLine is a label and what it says; with a style of its own it is a line across.
+type coverLine struct {
+	label, text string
+	fixed       bool
+	style       int
+}
+
+func (b *book) coverLines() []coverLine {
+	src := b.src
+	lines := []coverLine{{label: b.say("sheet.title"), style: b.styles.title}}
+	if b.demo {
+		lines = append(lines, coverLine{label: b.say("sheet.demo"), style: b.styles.demo})
+	}
+	add := func(key, text string) {
+		lines = append(lines, coverLine{label: b.say("sheet.cover." + key), text: text})
+	}
+	if src.Organisation != "" {
+		add("organisation", src.Organisation)
+	}
+	scope := b.say("sheet.cover.scope_some", "n", len(src.Sites))
+	if src.AllSites {
+		scope = b.say("sheet.cover.scope_all", "n", len(src.Sites))
+	}
+	add("scope", scope)
+	add("sites", b.siteList())
+	add("period", b.period())
+	add("as_of", src.AsOf.UTC().Format("2006-01-02 15:04:05")+" UTC")
+	add("rows", b.say("sheet.cover.rows_text", "rows", b.rows))
+	add("store", src.Store)
+	add("epoch", strconv.Itoa(src.Epoch))
+	add("judge", strconv.Itoa(forms.JudgeVersion))
+	add("revisions", strings.Join(b.revisions(), "\n"))
+	for _, l := range src.Logs {
+		log := l.Log
+		if l.SiteCode != "" {
+			log = l.SiteCode + " (" + l.Log + ")"
+		}
+		lines = append(lines, coverLine{label: b.say("sheet.cover.log"), text: b.say("sheet.cover.log_text", "log", log, "size", l.Size, "root", l.Root)})
+	}
+	head := coverLine{label: b.say("sheet.cover.head"), text: strings.TrimRight(src.Head, "\n"), fixed: true}
+	if src.Head == "" {
+		head.text, head.fixed = b.say("sheet.cover.no_head"), false
+	}
+	lines = append(lines, head)
+	add("proves", b.say("sheet.cover.proves_text"))
+	add("proves_not", b.say("sheet.cover.proves_not_text"))
+	add("imported", b.say("sheet.cover.imported_text"))
+	add("not_included", b.say("sheet.cover.not_included_text", "n", src.Refused))
+	add("caution", b.say("sheet.cover.caution_text"))
+	return lines
+}
+
+func (b *book) siteList() string {
+	var list []string
+	for _, s := range b.src.Sites {
+		list = append(list, b.say("sheet.cover.site", "code", s.Code, "name", s.Name, "zone", s.Zone))
+	}
+	return strings.Join(list, "\n")
+}
+
+func (b *book) period() string {
+	from, to := b.src.From, b.src.To
+	switch {
+	case from == forms.NoDay && to == forms.NoDay:
+		return b.say("sheet.cover.period_all")
+	case from == forms.NoDay:
+		return b.say("sheet.cover.period_to", "to", to)
+	case to == forms.NoDay:
+		return b.say("sheet.cover.period_from", "from", from)
+	}
+	return b.say("sheet.cover.period_both", "from", from, "to", to)
+}

@@ -1,0 +1,259 @@
+package export
+
+import (
+	"io"
+	"iter"
+	"time"
+
+	"tripwell/forms"
+	"tripwell/static"
+	"tripwell/store"
+)
+
+// WorkbookAsk says which part of a store goes into a workbook.
+type WorkbookAsk struct {
+	Site         string    // id or code; "" = every site of the scope
+	From, To     forms.Day // test days, both included; NoDay: open
+	Now          time.Time // the moment of the workbook; decides what is due
+	Organisation string
+	Store        string // store id
+	Epoch        int
+	Demo         bool
+	AllSites     bool   // the scope covers the whole organisation
+	Head         string // signed head text, "" without one
+	Progress     func(rows int)
+}
+
+// WorkbookOf signs a head, reads the store at one moment within a scope and writes the workbook: the one way the
+// command and the office page make it.
+func WorkbookOf(w io.Writer, s *store.Store, scope store.Scope, ask WorkbookAsk) error {
+	// Signed before the read begins: a transaction that writes must not wait inside one that reads. The head may
+	// therefore stand a few records before the sizes on the cover, never after.
+	head, err := s.SignedHead()
+	if err != nil {
+		return err
+	}
+	ask.Head, ask.Store, ask.Epoch, ask.Demo = head, s.ID(), s.Epoch(), s.Demo()
+	if ask.Now.IsZero() {
+		ask.Now = s.Now()
+	}
+	ask.AllSites = scope.All && ask.Site == ""
+	return s.View(scope, func(v *store.View) error {
+		src, err := FromView(v, ask)
+		if err != nil {
+			return err
+		}
+		return Workbook(w, src)
+	})
+}
+
+// FromView describes the workbook of a view. The sequences read the view while the workbook is written, so it must be
+// written before the view ends.
+func FromView(v *store.View, ask WorkbookAsk) (WorkbookSource, error) {
+	src := WorkbookSource{
+		Organisation: ask.Organisation, AllSites: ask.AllSites, From: ask.From, To: ask.To, AsOf: ask.Now, Store: ask.Store, Epoch: ask.Epoch,
+		Demo: ask.Demo, Head: ask.Head, Progress: ask.Progress, PersonName: v.PersonName,
+	}
+	var err error
+	if src.Sites, err = sitesOf(v, ask.Site); err != nil {
+		return src, err
+	}
+	if src.Logs, err = logLines(v, src.Sites, ask.Site == ""); err != nil {
+		return src, err
+	}
+	refused, err := v.Refused()
+	if err != nil {
+		return src, err
+	}
+	src.Refused = countRefused(refused, src.Sites, ask.Site == "")
+	sets, err := v.LimitSets()
+	if err != nil {
+		return src, err
+	}
+	words, err := static.ReadWords("en")
+	if err != nil {
+		return src, err
+	}
+	if src.Limits, err = limitLines(words, sets); err != nil {
+		return src, err
+	}
+	src.Devices = deviceLines(v, src.Sites)
+	src.Due = dueLines(v, src.Sites, ask.Now)
+	reader := entryReader{view: v, ask: ask, sets: map[string]*forms.LimitSet{}}
+	for _, set := range sets {
+		reader.sets[limitRevision(set.ID, set.Revision)] = set
+	}
+	src.Entries, err = reader.lines(src.Sites)
+	return src, err
+}
+
+func sitesOf(v *store.View, site string) ([]store.Site, error) {
+	if site == "" {
+		return v.Sites()
+	}
+	s, err := v.Site(site)
+	return []store.Site{s}, err
+}
+
+func logLines(v *store.View, sites []store.Site, all bool) ([]LogLine, error) {
+	heads, err := v.Logs()
+	if err != nil {
+		return nil, err
+	}
+	codes := siteCodes(sites)
+	var lines []LogLine
+	for _, h := range heads {
+		code, ours := codes[h.Log]
+		if ours || all || h.Log == "org" {
+			lines = append(lines, LogLine{h, code})
+		}
+	}
+	return lines, nil
+}
+
+func siteCodes(sites []store.Site) map[string]string {
+	codes := make(map[string]string, len(sites))
+	for _, s := range sites {
+		codes[s.ID] = s.Code
+	}
+	return codes
+}
+
+func countRefused(refused []store.Refusal, sites []store.Site, all bool) (n int) {
+	codes := siteCodes(sites)
+	for _, r := range refused {
+		if _, ours := codes[r.Log]; ours || all {
+			n++
+		}
+	}
+	return n
+}
+
+func deviceLines(v *store.View, sites []store.Site) iter.Seq2[DeviceLine, error] {
+	return func(yield func(DeviceLine, error) bool) {
+		for _, site := range sites {
+			for d, err := range v.Devices(site.ID) {
+				if !yield(DeviceLine{site, d}, err) || err != nil {
+					return
+				}
+			}
+		}
+	}
+}
+
+// dueLines asks each site for its own day: near midnight two zones have two.
+func dueLines(v *store.View, sites []store.Site, now time.Time) iter.Seq2[DueLine, error] {
+	return func(yield func(DueLine, error) bool) {
+		for _, site := range sites {
+			ask := store.DueAsk{On: forms.DayOf(now.In(site.Location())), Until: forms.NoDay, Site: site.ID}
+			for d, err := range v.Due(ask) {
+				if !yield(DueLine{site, d}, err) || err != nil {
+					return
+				}
+			}
+		}
+	}
+}
+
+// entryReader puts what an entry's row says in words beside the entry.
+type entryReader struct {
+	view        *store.View
+	ask         WorkbookAsk
+	instruments map[string]string
+	sets        map[string]*forms.LimitSet // by set and revision
+}
+
+func (r *entryReader) lines(sites []store.Site) (iter.Seq2[EntryLine, error], error) {
+	instruments, err := r.view.Instruments()
+	if err != nil {
+		return nil, err
+	}
+	r.instruments = make(map[string]string, len(instruments))
+	for _, i := range instruments {
+		r.instruments[i.ID] = joinSpace(i.Name, i.Serial)
+	}
+	return func(yield func(EntryLine, error) bool) {
+		for _, site := range sites {
+			if !r.site(site, yield) {
+				return
+			}
+		}
+	}, nil
+}
+
+// site holds the devices of one site at a time.
+func (r *entryReader) site(site store.Site, yield func(EntryLine, error) bool) bool {
+	devices := map[string]store.DeviceRow{}
+	for d, err := range r.view.Devices(site.ID) {
+		if err != nil {
+			yield(EntryLine{}, err)
+			return false
+		}
+		d.Due, d.Last = nil, nil
+		devices[d.ID] = d
+	}
+	zone, today := site.Location(), forms.DayOf(r.ask.Now.In(site.Location()))
+	for e, err := range r.view.SiteEntries(site.ID, r.ask.From, r.ask.To) {
+		if err != nil {
+			yield(EntryLine{}, err)
+			return false
+		}
+		row, ok := devices[e.Device]
+		if !ok {
+			// A retired device, or one whose registration has not arrived: its entries still count.
+			if d, err := r.view.Device(e.Device, today); err == nil {
+				row = d.DeviceRow
+			}
+			row.Due, row.Last = nil, nil
+			devices[e.Device] = row
+		}
+		if !yield(r.line(e, site, zone, row), nil) {
+			return false
+		}
+	}
+	return true
+}
+
+func (r *entryReader) line(e store.Entry, site store.Site, zone *time.Location, row store.DeviceRow) EntryLine {
+	line := EntryLine{Entry: e, Site: site, Zone: zone, DeviceRow: row}
+	line.ByName, line.ReadName, line.TypedName = r.person(e.By), r.person(e.ReadBy), r.person(e.TypedBy)
+	if id := e.Body.Given.Instrument; id != "" {
+		if line.Instrument = r.instruments[id]; line.Instrument == "" {
+			line.Instrument = id
+		}
+	}
+	line.Replaced = r.replaced(e)
+	return line
+}
+
+func (r *entryReader) person(id string) string {
+	if name := r.view.PersonName(id); name != "" {
+		return name
+	}
+	return id
+}
+
+// replaced judges again, under the same limits, what each correction took out of force.
+func (r *entryReader) replaced(e store.Entry) []Replaced {
+	if len(e.Corrections) == 0 {
+		return nil
+	}
+	bodies := []forms.Entry{e.Original}
+	for _, c := range e.Corrections {
+		if !c.InForce {
+			bodies = append(bodies, c.Body)
+		}
+	}
+	out := make([]Replaced, len(bodies))
+	for i, body := range bodies {
+		out[i] = Replaced{Body: body, Verdict: r.judge(body, e)}
+	}
+	return out
+}
+
+func joinSpace(a, b string) string {
+	if a != "" && b != "" {
+		return a + " " + b
+	}
+	return a + b
+}

@@ -45,10 +45,16 @@ func codePath(address string, x, y, box, pageH float64) ([]byte, float64, error)
 	if !ok {
 		return nil, 0, &store.Error{Code: "invalid", Field: "url", Text: fmt.Sprintf("The address %s makes a code too fine to print on this label. Start the server with a shorter --url.", address)}
 	}
-	path := make([]byte, 0, 40*len(rows)*len(rows)/4)
+	// One transformation lays a grid of modules on the page, its origin at the symbol's top left corner and y downwards,
+	// so that every rectangle is four small whole numbers.
 	inset := module * quietModules
+	path := append(make([]byte, 0, 4096), "q "...)
+	for _, v := range []float64{module, 0, 0, -module, x + inset, pageH - y - inset} {
+		path = strconv.AppendFloat(path, math.Round(v*mmPoint*10000)/10000, 'f', -1, 64)
+		path = append(path, ' ')
+	}
+	path = append(path, "cm\n"...)
 	for r, row := range rows {
-		top := y + inset + float64(r)*module
 		for c := 0; c < len(row); c++ {
 			if !row[c] {
 				continue
@@ -57,16 +63,16 @@ func codePath(address string, x, y, box, pageH float64) ([]byte, float64, error)
 			for c < len(row) && row[c] {
 				c++
 			}
-			path = appendRect(path, x+inset+float64(from)*module, top, float64(c-from)*module, module, pageH)
+			path = appendRect(path, from, r, c-from, 1)
 		}
 	}
-	return append(path, 'f'), side, nil
+	return append(path, "f Q"...), side, nil
 }
 
-// appendRect appends one rectangle in PDF's own units, whose origin is the bottom left corner of the page.
-func appendRect(path []byte, x, y, w, h, pageH float64) []byte {
-	for _, v := range []float64{x, pageH - y - h, w, h} {
-		path = strconv.AppendFloat(path, math.Round(v*mmPoint*10000)/10000, 'f', -1, 64)
+// appendRect appends one rectangle in the units of the grid.
+func appendRect(path []byte, sides ...int) []byte {
+	for _, v := range sides {
+		path = strconv.AppendInt(path, int64(v), 10)
 		path = append(path, ' ')
 	}
 	return append(path, "re\n"...)

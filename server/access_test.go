@@ -1,0 +1,210 @@
+package server
+
+import (
+	"net/http"
+	"net/http/httptest"
+	"net/url"
+	"strings"
+	"testing"
+	"time"
+)
+
+func TestLink_OnlyPostSpendsItAndOnlyOnce(t *testing.T) {
+	r := newRig(t, 0)
+	token, err := r.store.NewLink(r.manager.ID, time.Hour)
+	must(t, err)
+	b := browser(t)
+	for range 3 {
+		if res := r.open(b, "/in/"+token); res.status != 200 || res.header.Get("Set-Cookie") != "" {
+			t.Fatalf("GET: got %d, cookie %q; want the page and no cookie", res.status, res.header.Get("Set-Cookie"))
+		}
+	}
+	res := r.submit(b, "/in/"+token, "")
+	if res.status != 303 || res.header.Get("Location") != "/" {
+		t.Fatalf("POST: got %d to %q, want 303 to /", res.status, res.header.Get("Location"))
+	}
+	cookie := res.header.Get("Set-Cookie")
+	for _, want := range []string{"HttpOnly", "SameSite=Lax", "Path=/"} {
+		if !strings.Contains(cookie, want) {
+			t.Errorf("cookie %q lacks %s", cookie, want)
+		}
+	}
+	if strings.Contains(cookie, token) {
+		t.Error("the session is the link's own token")
+	}
+	if res := r.submit(browser(t), "/in/"+token, ""); res.status != 404 {
+		t.Errorf("second POST: got %d, want 404", res.status)
+	}
+	if res := r.open(browser(t), "/in/"+token); res.status != 404 {
+		t.Errorf("GET of a used link: got %d, want 404", res.status)
+	}
+}
+
+func TestLink_CrewBeginsInTheFieldAndNextStaysHere(t *testing.T) {
+	r := newRig(t, 0)
+	for next, want := range map[string]string{"": "/field", "/t/K7QM2P3": "/t/K7QM2P3", "//evil.example/": "/field", "https://evil.example/": "/field", `/\evil.example`: "/field", "/\tx": "/field", "javascript:alert(1)": "/field"} {
+		token, err := r.store.NewLink(r.crew.ID, time.Hour)
+		must(t, err)
+		res := r.submit(browser(t), "/in/"+token, url.Values{"next": {next}}.Encode())
+		if got := res.header.Get("Location"); got != want {
+			t.Errorf("next %q: got %q, want %q", next, got, want)
+		}
+	}
+}
+
+func TestLink_PastedLinkIsTaken(t *testing.T) {
+	r := newRig(t, 0)
+	token, err := r.store.NewLink(r.crew.ID, time.Hour)
+	must(t, err)
+	for _, pasted := range []string{token, " " + token + "\n", "https://tripwell.example/in/" + token, "https://tripwell.example/in/" + token + "?next=%2Ffield"} {
+		res := r.submit(browser(t), "/in", url.Values{"link": {pasted}}.Encode())
+		if got, want := res.header.Get("Location"), "/in/"+token; res.status != 303 || got != want {
+			t.Errorf("%q: got %d %q, want %q", pasted, res.status, got, want)
+		}
+	}
+	if res := r.submit(browser(t), "/in", url.Values{"link": {"hello"}}.Encode()); res.status != 400 || !strings.Contains(res.body, `aria-invalid="true"`) {
+		t.Errorf("nonsense: got %d, want the page again with the problem beside the field", res.status)
+	}
+}
+
+func TestLink_WrongOnesNeverLockACrewOut(t *testing.T) {
+	r := newRig(t, 0)
+	b := browser(t)
+	var last answer
+	for range 30 {
+		last = r.submit(b, "/in/"+strings.Repeat("A", 26), "")
+	}
+	if last.status != http.StatusTooManyRequests || last.header.Get("Retry-After") == "" {
+		t.Errorf("after 30 wrong links: got %d, want 429 with Retry-After", last.status)
+	}
+	r.signIn(r.crew) // from the same address
+}
+
+func TestSession_EndsOnSignOut(t *testing.T) {
+	r := newRig(t, 0)
+	b := r.signIn(r.crew)
+	if res := r.open(b, "/field"); res.status != 200 {
+		t.Fatalf("signed in: got %d", res.status)
+	}
+	stolen := b.Jar.Cookies(mustURL(t, r.url))
+	if res := r.submit(b, "/out", ""); res.status != 303 {
+		t.Fatalf("sign out: got %d", res.status)
+	}
+	again := browser(t)
+	again.Jar.SetCookies(mustURL(t, r.url), stolen)
+	if res := r.open(again, "/field"); res.status != 303 || !strings.HasPrefix(res.header.Get("Location"), "/in") {
+		t.Errorf("the old cookie after signing out: got %d, want the sign-in page", res.status)
+	}
+}
+
+func mustURL(t testing.TB, s string) *url.URL {
+	u, err := url.Parse(s)
+	must(t, err)
+	return u
+}
+
+func TestSession_CookieKeepsItsPromisesBeyondLoopback(t *testing.T) {
+	cases := []struct {
+		name, remote, host string
+		header             []string
+		want               string
+		secure             bool
+	}{
+		{"plain http on loopback", "127.0.0.1:5000", "127.0.0.1:8080", nil, cookieNameLocal, false},
+		{"localhost by name", "[::1]:5000", "localhost:8080", nil, cookieNameLocal, false},
+		{"another machine", "192.0.2.7:5000", "192.0.2.1:8080", nil, cookieName, true},
+		{"loopback host from another machine", "192.0.2.7:5000", "127.0.0.1:8080", nil, cookieName, true},
+		{"behind a proxy on this machine", "127.0.0.1:5000", "tripwell.example", nil, cookieName, true},
+		{"behind a proxy that rewrites the host", "127.0.0.1:5000", "127.0.0.1:8080", []string{"X-Forwarded-Proto", "https"}, cookieName, true},
+	}
+	for _, c := range cases {
+		req := httptest.NewRequest(http.MethodPost, "/in/x", nil)
+		req.RemoteAddr, req.Host = c.remote, c.host
+		if c.header != nil {
+			req.Header.Set(c.header[0], c.header[1])
+		}
+		got := newSessionCookie(req, "secret")
+		if got.Name != c.want || got.Secure != c.secure || !got.HttpOnly || got.SameSite != http.SameSiteLaxMode {
+			t.Errorf("%s: got %s, want %s", c.name, got, c.want)
+		}
+	}
+}
+
+func TestGuard_AnotherSitesFormIsRefused(t *testing.T) {
+	r := newRig(t, 0)
+	b := r.signIn(r.manager)
+	for _, header := range [][2]string{{"Sec-Fetch-Site", "cross-site"}, {"Origin", "https://evil.example"}} {
+		req, err := http.NewRequest(http.MethodPost, r.url+"/out", nil)
+		must(t, err)
+		req.Header.Set(header[0], header[1])
+		wantWrong(t, r.do(b, req), 403, "forbidden")
+	}
+	if res := r.open(b, "/field"); res.status != 200 {
+		t.Errorf("still signed in: got %d, want 200", res.status)
+	}
+}
+
+func TestGuard_EveryAnswerCarriesTheHeaders(t *testing.T) {
+	r := newRig(t, 0)
+	for _, path := range []string{"/in", "/nothing-here", "/exchange/logs", "/t/K7QM2P3"} {
+		res := r.open(browser(t), path)
+		policy := res.header.Get("Content-Security-Policy")
+		if !strings.Contains(policy, "default-src 'none'") || strings.Contains(policy, "unsafe") {
+			t.Errorf("%s: got policy %q", path, policy)
+		}
+		if res.header.Get("X-Content-Type-Options") != "nosniff" {
+			t.Errorf("%s: lacks nosniff", path)
+		}
+	}
+	if got := r.open(browser(t), "/in").header.Get("Cache-Control"); got != "no-store" {
+		t.Errorf("a page: got Cache-Control %q, want no-store", got)
+	}
+}
+
+func TestTag_KnownAndUnknownLookAlikeSignedOut(t *testing.T) {
+	r := newRig(t, 1)
+	tags, err := r.store.MintTags(t.Context(), r.manager.ID, 1)
+	must(t, err)
+	known := r.open(browser(t), "/t/"+tags[0])
+	unknown := r.open(browser(t), "/t/ZZZZZZZ")
+	if known.status != unknown.status || strings.ReplaceAll(known.header.Get("Location"), tags[0], "ZZZZZZZ") != unknown.header.Get("Location") || known.body != unknown.body {
+		t.Errorf("known: %d %v; unknown: %d %v", known.status, known.header, unknown.status, unknown.header)
+	}
+	page := r.open(browser(t), known.header.Get("Location"))
+	if page.status != 200 || !strings.Contains(page.body, `action="/in"`) {
+		t.Errorf("got %d, want the sign-in page", page.status)
+	}
+}
+
+// Every route against every role: who is let in is exactly what the table says.
+func TestRoutes_OnlyWhoTheTableNamesGetsIn(t *testing.T) {
+	r := newRig(t, 1)
+	browsers := map[who]*http.Client{crew: r.signIn(r.crew), manager: r.signIn(r.manager), auditor: r.signIn(r.auditor)}
+	for _, route := range publicRoutes() {
+		if route.who == anyone {
+			continue
+		}
+		path := strings.NewReplacer(":", "", "*", "x").Replace(route.path)
+		for role, b := range browsers {
+			req, err := http.NewRequest(route.method, r.url+path, nil)
+			must(t, err)
+			req.Header.Set("Sec-Fetch-Site", "same-origin")
+			res := r.do(b, req)
+			in := res.status != 401 && res.status != 403
+			if want := route.who&role != 0; in != want {
+				t.Errorf("%s %s as role %d: got %d, want let in %v", route.method, route.path, role, res.status, want)
+			}
+		}
+		req, err := http.NewRequest(route.method, r.url+path, nil)
+		must(t, err)
+		req.Header.Set("Sec-Fetch-Site", "same-origin")
+		if res := r.do(browser(t), req); res.status != 401 {
+			t.Errorf("%s %s signed out: got %d, want 401", route.method, route.path, res.status)
+		}
+	}
+	for _, route := range publicRoutes() {
+		if route.method == post && route.who&auditor != 0 {
+			t.Errorf("%s %s: an auditor only reads", route.method, route.path)
+		}
+	}
+}

@@ -83,15 +83,11 @@ func (s *Server) exchangePull(c echo.Context) error {
 	if log == "" {
 		return refuse(codeInvalid, "log", "No log is named. Ask for one of those GET /exchange/logs lists.")
 	}
-	limit := pullRecords
-	if text := c.QueryParam("limit"); text != "" {
-		n, err := strconv.Atoi(text)
-		if err != nil || n < 1 {
-			return refuse(codeInvalid, "limit", "The limit is no whole number above 0. Ask for 1 to "+strconv.Itoa(pullRecords)+" records.")
-		}
-		limit = min(n, pullRecords)
+	limit, err := countParam(c, "limit", pullRecords)
+	if err != nil {
+		return err
 	}
-	pulled, err := s.store.Pull(scope(c), log, c.QueryParam("after"), limit)
+	pulled, err := s.store.Pull(scope(c), log, c.QueryParam("after"), min(limit, pullRecords))
 	if err != nil {
 		return err
 	}

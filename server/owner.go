@@ -6,6 +6,7 @@ import (
 	"encoding/json"
 	"io"
 	"net/http"
+	"strconv"
 	"time"
 
 	"github.com/labstack/echo/v4"
@@ -19,6 +20,8 @@ func ownerRoutes() []route {
 	return []route{
 		{get, "/own/info", owner, (*Server).ownInfo, 0},
 		{get, "/own/due", owner, (*Server).ownDue, 0},
+		{get, "/own/workbook", owner, (*Server).ownWorkbook, 0},
+		{get, "/own/labels", owner, (*Server).ownLabels, 0},
 		{get, "/own/check", owner, (*Server).ownCheck, 0},
 		{post, "/own/rebuild", owner, (*Server).ownRebuild, 0},
 	}
@@ -135,6 +138,55 @@ func dayParam(c echo.Context, name string) (forms.Day, error) {
 		return forms.NoDay, refuse(codeInvalid, name, err.Error()+".")
 	}
 	return d, nil
+}
+
+// countParam reads a whole number from 1; absent is what it stands for without one.
+func countParam(c echo.Context, name string, absent int) (int, error) {
+	text := c.QueryParam(name)
+	if text == "" {
+		return absent, nil
+	}
+	n, err := strconv.Atoi(text)
+	if err != nil || n < 1 {
+		return 0, refuse(codeInvalid, name, "This is no whole number from 1. Write it in digits.")
+	}
+	return n, nil
+}
+
+// ownWorkbook streams the workbook. Query: site (id or code), from and to (test days), by (person).
+func (s *Server) ownWorkbook(c echo.Context) error {
+	by, err := s.ownBy(c)
+	if err != nil {
+		return err
+	}
+	return s.sendWorkbook(c, ownerScope, by)
+}
+
+// ownLabels sends label sheets. Query: site (id or code), sheet, start (first label of the first sheet), by (person).
+func (s *Server) ownLabels(c echo.Context) error {
+	by, err := s.ownBy(c)
+	if err != nil {
+		return err
+	}
+	return s.sendLabels(c, ownerScope, by)
+}
+
+// ownBy is in whose name a command acts: the person asked for with by, else the first manager of all sites.
+func (s *Server) ownBy(c echo.Context) (string, error) {
+	if id := c.QueryParam("by"); id != "" {
+		p, err := s.store.Person(id)
+		return p.ID, err
+	}
+	people, err := s.store.People()
+	if err != nil {
+		return "", err
+	}
+	for _, p := range people {
+		if p.Active && p.All && p.Role == "manager" {
+			return p.ID, nil
+		}
+	}
+	return "", refuse(codeConflict, "by", "There is no manager of all sites yet. Start the server and open the first manager's sign-in link, or name a person with --by.")
 }
 
 func (s *Server) ownCheck(c echo.Context) error {

@@ -1,0 +1,374 @@
+package forms
+
+import (
+	"encoding/json"
+	"fmt"
+	"strconv"
+
+	"github.com/go-json-experiment/json/jsontext"
+)
+
+// judging is one entry being judged.
+type judging struct {
+	facts
+	findings []Finding
+	seen     uint64          // codes already judged, by their place in codes
+	missed   map[string]bool // conditions already reported missing
+	ended    bool
+}
+
+// Judge judges an entry of a form under a limit set. It never refuses readings (Check does): what it cannot understand
+// counts as not given, and what is required and not given makes the entry incomplete. The error is an *Error: a decision
+// rule this judge does not know.
+func Judge(form *Form, set *LimitSet, e Entry) (Verdict, error) {
+	if set.Rule != "" && set.Rule != "simple" {
+		return Verdict{}, invalid("limit_set", fmt.Sprintf(
+			"The limit set %q decides by the rule %q, which this version does not know. Use a newer version, or a set whose rule is simple.", set.ID, set.Rule))
+	}
+	j := judging{facts: facts{form: form, set: set, e: &e}, findings: make([]Finding, 0, 20)}
+	j.needs()
+	j.fieldLimits()
+	form.asks(func(a ask) bool { j.ask(a); return true })
+	for i := range codes {
+		j.code(i)
+	}
+	v := Verdict{Result: resultOf(j.findings), Findings: j.findings}
+	if v.Result != Fail && j.nothingTested() {
+		v.Result = NotTested
+	}
+	return v, nil
+}
+
+// needs reports what must be known of the device and is not.
+func (j *judging) needs() {
+	for _, name := range j.form.Needs {
+		if j.field(name) == nil {
+			j.miss(name, nil, "", "missing.of_device")
+		}
+	}
+}
+
+// fieldLimits judges fields of the device.
+func (j *judging) fieldLimits() {
+	for i := range j.set.Limits {
+		l := &j.set.Limits[i]
+		if l.Field == "" || !j.all(l.When) {
+			continue
+		}
+		r := Reading{Value: j.field(l.Field)}
+		if r.Value == nil {
+			continue
+		}
+		j.limit(l, &Code{Code: l.Field, Unit: l.Unit}, &r)
+	}
+}
+
+// ask judges what was answered to one question and reports what was not.
+func (j *judging) ask(a ask) {
+	i, known := codeAt[a.Reading]
+	if !known || !j.all(a.When) {
+		return
+	}
+	j.code(i)
+	if j.ended {
+		return
+	}
+	if !j.closed(a.step) {
+		j.required(a)
+	}
+	if s, ok := j.answer(a.Reading).(string); ok && len(a.Ends) > 0 {
+		for _, end := range a.Ends {
+			j.ended = j.ended || s == end
+		}
+	}
+}
+
+// required reports an answer that is required and missing, under every condition it is required under.
+func (j *judging) required(a ask) {
+	bySeries := false
+	if a.Series && j.form.Series != nil {
+		for i := range j.form.Series.Conditions {
+			c := &j.form.Series.Conditions[i]
+			if c.AnyOf[0] != a.Reading || !j.all(c.When) {
+				continue
+			}
+			bySeries = true
+			if !j.taken(c) {
+				j.missUnder(c)
+			}
+		}
+	}
+	if !a.Required || bySeries || j.given(a.Reading) || a.Or != "" && j.givenAnywhere(a.Or) || a.Series && j.givenAnywhere(a.Reading) {
+		return
+	}
+	r, _ := j.reading(a.Reading)
+	j.miss(a.Reading, nil, r.Missing, "")
+}
+
+// givenAnywhere reports whether a reading is given in the entry or under any condition.
+func (j *judging) givenAnywhere(code string) bool {
+	if j.given(code) {
+		return true
+	}
+	for i := range j.e.Series {
+		if r, ok := j.e.Series[i].Readings[code]; ok && r.Given() {
+			return true
+		}
+	}
+	return false
+}
+
+// taken reports whether one of a condition's readings was taken at that condition, in the series or beside it.
+func (j *judging) taken(c *SeriesCondition) bool {
+	for _, code := range c.AnyOf {
+		for i := range j.e.Series {
+			item := &j.e.Series[i]
+			if r, ok := item.Readings[code]; ok && r.Given() && fits(&codes[codeAt[code]], &r) && matches(item.At, c.At) {
+				return true
+			}
+		}
+		if j.given(code) && j.baseAt(c.At) {
+			return true
+		}
+	}
+	return false
+}
+
+// baseAt reports whether the entry's own readings were taken at the conditions ("multiple":1 among the readings).
+func (j *judging) baseAt(at map[string]any) bool {
+	for code, want := range at {
+		if r, ok := j.e.Readings[code]; !ok || r.Value != want {
+			return false
+		}
+	}
+	return true
+}
+
+// matches reports whether an item was taken at all conditions wanted.
+func matches(at, want map[string]any) bool {
+	for code, v := range want {
+		if at[code] != v {
+			return false
+		}
+	}
+	return true
+}
+
+// missUnder reports a reading missing under a condition, with the reason given there or for the reading as a whole.
+func (j *judging) missUnder(c *SeriesCondition) {
+	reason := ""
+	for _, code := range c.AnyOf {
+		if r := j.e.Readings[code]; reason == "" {
+			reason = r.Missing
+		}
+		for i := range j.e.Series {
+			if r := j.e.Series[i].Readings[code]; r.Missing != "" && matches(j.e.Series[i].At, c.At) {
+				reason = r.Missing
+			}
+		}
+	}
+	j.findings = append(j.findings, Finding{Reading: c.AnyOf[0], At: c.At, Verdict: Missing, Level: Must, Reason: reason, Text: missingText(reason)})
+}
+
+func missingText(reason string) string {
+	if reason == "" {
+		reason = "none"
+	}
+	return "missing." + reason
+}
+
+// miss reports once that something is missing.
+func (j *judging) miss(code string, at map[string]any, reason, text string) {
+	if at == nil {
+		if j.missed[code] {
+			return
+		}
+		if j.missed == nil {
+			j.missed = map[string]bool{}
+		}
+		j.missed[code] = true
+	}
+	if text == "" {
+		text = missingText(reason)
+	}
+	j.findings = append(j.findings, Finding{Reading: code, At: at, Verdict: Missing, Level: Must, Reason: reason, Text: text})
+}
+
+// code judges a reading of the entry and, in their order, those taken under conditions; each code once.
+func (j *judging) code(i int) {
+	c := &codes[i]
+	if j.seen&(1<<i) != 0 {
+		return
+	}
+	j.seen |= 1 << i
+	if r, ok := j.reading(c.Code); ok && r.Missing == "" {
+		j.limits(c, &r)
+	}
+	for k := range j.e.Series {
+		j.item = &j.e.Series[k]
+		if r, ok := j.item.Readings[c.Code]; ok && fits(c, &r) {
+			if r = settled(r); r.Missing == "" {
+				j.limits(c, &r)
+			}
+		}
+	}
+	j.item = nil
+}
+
+// limits holds a reading against every limit on it, must before watch.
+func (j *judging) limits(c *Code, r *Reading) {
+	for _, level := range [...]string{Must, WatchOnly} {
+		for i := range j.set.Limits {
+			if l := &j.set.Limits[i]; l.Reading == c.Code && l.Level == level && j.all(l.When) {
+				j.limit(l, c, r)
+			}
+		}
+	}
+}
+
+// limit adds the finding of one limit on one reading.
+func (j *judging) limit(l *Limit, c *Code, r *Reading) {
+	a := j.apply(l, r)
+	f := Finding{Reading: c.Code, Unit: a.Unit, Limit: a.Limit, Level: l.Level, Source: l.Source}
+	unit := c.Unit
+	if a.Unit != "" {
+		unit = a.Unit
+	}
+	f.Value = rawValue(r, c.Unit, unit)
+	if j.item != nil {
+		f.At = j.item.At
+	}
+	if a.Lacks != "" {
+		j.miss(a.Lacks, f.At, "", "")
+	}
+	if a.Text != "" {
+		f.Verdict, f.Text = NotJudged, a.Text
+	} else {
+		j.decide(l, c, r, &a, unit, &f)
+	}
+	j.findings = append(j.findings, f)
+}
+
+// decide gives a finding its verdict, and its text where that is not a pass.
+func (j *judging) decide(l *Limit, c *Code, r *Reading, a *Applied, unit string, f *Finding) {
+	outcome, text := other, l.Text
+	switch {
+	case a.NoTrip:
+		outcome = proveNoTrip(r)
+	case a.Limit != nil:
+		outcome = prove(a.Limit, r, c.Unit, unit)
+	}
+	if special, ok := l.Texts[textOf(r)]; ok {
+		text = special
+	}
+	if l.Gauge != nil {
+		var why string
+		if outcome, why = gaugeProof(l, j.e.Given.Gauge, outcome); why != "" {
+			text = why
+		}
+	} else if outcome == unproven {
+		text = "limit.stopped_before"
+		if r.Below != nil {
+			text = "limit.not_proven"
+		}
+	}
+	switch {
+	case outcome == inside:
+		f.Verdict = Pass
+		return
+	case l.Level == WatchOnly:
+		f.Verdict = Watch
+	case outcome == unproven:
+		f.Verdict = ConditionalFail
+	case outcome == low && (l.Loads || a.low):
+		f.Verdict, f.Severity, text = Fail, Nuisance, "limit.trips_low"
+		if j.answer("loads_disconnected") == "no" {
+			f.Verdict, f.Severity, text = Watch, "", "limit.trips_low_with_loads"
+		}
+	case outcome == high && l.Ramp != "" && j.rampExplains(r):
+		f.Verdict, text = ConditionalFail, "limit.ramp_over_reads"
+	default:
+		f.Verdict, f.Severity = Fail, l.Severity
+		if a.NoTrip {
+			text = "limit.must_not_trip"
+		}
+	}
+	f.Text = text
+}
+
+func textOf(r *Reading) string { s, _ := r.Text(); return s }
+
+// rampExplains reports whether a device inside the curve could show this current on the instrument's ramp.
+func (j *judging) rampExplains(r *Reading) bool {
+	rate := j.e.Given.Ramp.Rate()
+	if rate <= 0 {
+		return false
+	}
+	most := ClassARampMA(rate)
+	if r.Above != nil {
+		return *r.Above < most
+	}
+	v, ok := r.Float()
+	return ok && v <= most
+}
+
+// nothingTested reports that a reason was given for what is missing and no test of the device was made, or that the
+// circuit ahead of a dead device is dead.
+func (j *judging) nothingTested() bool {
+	reason, dead, tested := false, false, false
+	note := func(code string, r Reading) {
+		r = settled(r)
+		i, ok := codeAt[code]
+		if !ok {
+			return
+		}
+		reason = reason || r.Missing != ""
+		dead = dead || r.Missing == "circuit-dead"
+		tested = tested || codes[i].Test && r.Given() && fits(&codes[i], &r)
+	}
+	for code, r := range j.e.Readings {
+		note(code, r)
+	}
+	for i := range j.e.Series {
+		for code, r := range j.e.Series[i].Readings {
+			note(code, r)
+		}
+	}
+	if dead && j.answer("found") == "no-power" {
+		return true
+	}
+	return reason && !tested && resultOf(j.findings) == Incomplete
+}
+
+// rawValue is a reading as findings show it.
+func rawValue(r *Reading, own, unit string) json.RawMessage {
+	switch {
+	case r.NoTrip:
+		return json.RawMessage(`"no-trip"`)
+	case r.Above != nil:
+		return append(appendNumber([]byte(`{"above":`), *r.Above), '}')
+	case r.Below != nil:
+		return append(appendNumber([]byte(`{"below":`), *r.Below), '}')
+	}
+	if s, ok := r.Text(); ok {
+		raw, err := jsontext.AppendQuote(make([]byte, 0, len(s)+2), s)
+		if err != nil {
+			raw = []byte(`""`) // not UTF-8, which no decoder here lets through
+		}
+		return raw
+	}
+	v, _ := r.figure(own, unit)
+	return appendNumber(make([]byte, 0, 12), v)
+}
+
+// appendNumber writes a number as JavaScript does.
+func appendNumber(dst []byte, v float64) []byte {
+	if v == 0 || v >= 1e-6 && v < 1e21 {
+		return strconv.AppendFloat(dst, v, 'f', -1, 64)
+	}
+	raw, err := json.Marshal(v)
+	if err != nil {
+		return append(dst, "null"...)
+	}
+	return append(dst, raw...)
+}

@@ -2,145 +2,12 @@ package store
 
 import (
 	"context"
-	"encoding/json"
 	"io"
 	"iter"
 	"time"
 
 	"tripwell/forms"
 )
-
-// ---- opening ---------------------------------------------------------------------------------------------------
-
-// Options of Open. Now is the only clock the store knows.
-type Options struct {
-	Now    func() time.Time
-	Create bool   // make the store when DIR holds none (temp file, rename, folder sync)
-	Demo   bool   // with Create: marks the store DEMO for ever; without: refuse a store that is no demo store
-	URL    string // label address (https://host); kept in the directory at first creation or when given
-}
-
-// Open opens DIR/book.db (0600, lock time-out 1 s). The caller closes it.
-func Open(dir string, o Options) (*Store, error) { panic("contract") }
-
-// Store is one organisation's book, its read models and its directory.
-type Store struct{}
-
-func (s *Store) Close() error          { panic("contract") }
-func (s *Store) ID() string            { panic("contract") } // store id = its installation id
-func (s *Store) Epoch() int            { panic("contract") }
-func (s *Store) Demo() bool            { panic("contract") }
-func (s *Store) URL() string           { panic("contract") } // "" when none was given
-func (s *Store) Now() time.Time        { panic("contract") }
-func (s *Store) SetURL(u string) error { panic("contract") }
-
-// ---- writing ---------------------------------------------------------------------------------------------------
-
-// Draft is a record to be made here, by an office page or a command. The store gives it from, n, clock and, where
-// empty, id and at.
-type Draft struct {
-	ID      string // UUID; pages carry it so that posting twice is harmless
-	Kind    string
-	Log     string
-	Subject string
-	At      time.Time
-	By      string
-	Body    any
-}
-
-// Append makes records of the drafts and appends them in one transaction, in order. Forms refuse: a draft that breaks
-// a rule returns *Error and nothing of the call is written.
-func (s *Store) Append(ctx context.Context, drafts ...Draft) ([]Receipt, error) { panic("contract") }
-
-// Incoming is one record from elsewhere: the exact bytes its author made, and what earlier holders say.
-type Incoming struct {
-	Record []byte
-	Held   []Held
-}
-
-// Held says that a store had the record before us.
-type Held struct {
-	Store    string    `json:"store"`
-	Received time.Time `json:"received"`
-}
-
-// Sender is who pushes: the installation its token names (FORMATS 19). Sent is the sender's own clock at sending, for
-// the measured offset; zero when it did not say.
-type Sender struct {
-	Installation string
-	Via          string
-	Sent         time.Time
-	Owner        bool // the socket of whoever owns the folder
-}
-
-// Push takes records from elsewhere; one receipt for each, in order. An error means nothing was decided: send again.
-func (s *Store) Push(ctx context.Context, from Sender, batch []Incoming) ([]Receipt, error) {
-	panic("contract")
-}
-
-// Receipt is what became of one record: stored | already | held | refused.
-type Receipt struct {
-	ID    string `json:"id"`
-	State string `json:"state"`
-	Store string `json:"store"`
-	Epoch int    `json:"epoch"`
-	Log   string `json:"log,omitempty"`
-	Pos   int64  `json:"pos,omitempty"`
-	Code  string `json:"code,omitempty"`
-	Text  string `json:"text,omitempty"`
-}
-
-// Ask gives receipts of ids without bodies; unknown ids are left out.
-func (s *Store) Ask(scope Scope, ids []string) ([]Receipt, error) { panic("contract") }
-
-// Pull gives records of one log after a cursor, as their exact bytes.
-func (s *Store) Pull(scope Scope, log, after string, limit int) (Pulled, error) { panic("contract") }
-
-// Pulled is one page of a log. Snapshot: the cursor is of another store or epoch. NotYours: the log is not allowed.
-type Pulled struct {
-	Records  []PulledRecord `json:"records"`
-	Next     string         `json:"next"`
-	More     bool           `json:"more"`
-	BackedUp int64          `json:"backed_up"`
-	Snapshot bool           `json:"snapshot,omitempty"`
-	NotYours bool           `json:"not_yours,omitempty"`
-}
-
-// PulledRecord holds the exact bytes of stamp and record as JSON strings.
-type PulledRecord struct {
-	Pos    int64  `json:"pos"`
-	Stamp  string `json:"stamp"`
-	Record string `json:"record"`
-}
-
-// ---- reading ---------------------------------------------------------------------------------------------------
-
-// Scope is who asks and what they may see. Every read needs one; a site outside it is not_found.
-type Scope struct {
-	Person string
-	Role   string // manager | crew | auditor | owner
-	All    bool
-	Sites  []string // site ids
-}
-
-// May reports whether the scope covers a site.
-func (sc Scope) May(site string) bool {
-	if sc.All {
-		return true
-	}
-	for _, s := range sc.Sites {
-		if s == site {
-			return true
-		}
-	}
-	return false
-}
-
-// View runs fn over one read transaction. Nothing handed out points into the store's file.
-func (s *Store) View(scope Scope, fn func(v *View) error) error { panic("contract") }
-
-// View reads the store as it stood at one moment, within one scope.
-type View struct{}
 
 // Site is a site with its merged fields.
 type Site struct {
@@ -293,17 +160,13 @@ func (v *View) Entries(device string) ([]Entry, error)               { panic("co
 func (v *View) Entry(id string) (Entry, error)                       { panic("contract") }
 func (v *View) SiteEntries(site string, from, to forms.Day) iter.Seq2[Entry, error] {
 	panic("contract")
-}                                                                  // by test day, then position; NoDay = open end
-func (v *View) Due(ask DueAsk) iter.Seq2[DueRow, error]            { panic("contract") } // by date
-func (v *View) Tag(tag string) ([]TagHolder, error)                { panic("contract") }
-func (v *View) Forms() ([]*forms.Form, error)                      { panic("contract") } // newest revision of each
-func (v *View) LimitSets() ([]*forms.LimitSet, error)              { panic("contract") } // every revision, by id then revision
-func (v *View) Plans() ([]*forms.Plan, error)                      { panic("contract") }
-func (v *View) Instruments() ([]Instrument, error)                 { panic("contract") }
-func (v *View) Logs() ([]LogHead, error)                           { panic("contract") }
-func (v *View) Record(id string) (record, stamp []byte, err error) { panic("contract") }
-func (v *View) Refused() ([]Refusal, error)                        { panic("contract") }
-func (v *View) PersonName(id string) string                        { panic("contract") } // from the directory; "" unknown
+}                                                       // by test day, then position; NoDay = open end
+func (v *View) Due(ask DueAsk) iter.Seq2[DueRow, error] { panic("contract") } // by date
+func (v *View) Tag(tag string) ([]TagHolder, error)     { panic("contract") }
+func (v *View) Forms() ([]*forms.Form, error)           { panic("contract") } // newest revision of each
+func (v *View) LimitSets() ([]*forms.LimitSet, error)   { panic("contract") } // every revision, by id then revision
+func (v *View) Plans() ([]*forms.Plan, error)           { panic("contract") }
+func (v *View) Instruments() ([]Instrument, error)      { panic("contract") }
 
 // Snapshot is what a phone takes along of one site, read in one transaction with the cursor that continues it.
 type Snapshot struct {
@@ -380,21 +243,6 @@ type Instrument struct {
 	Retired          bool
 }
 
-// LogHead is the size and RFC 6962 root of one log.
-type LogHead struct {
-	Log  string `json:"log"`
-	Size int64  `json:"size"`
-	Root string `json:"root"` // base64
-}
-
-// Refusal is a record kept in quarantine.
-type Refusal struct {
-	Record, SHA256, From, Code, Text, Log string
-	N                                     int64
-	Received                              time.Time
-	Bytes                                 []byte
-}
-
 // ---- proof and repair ------------------------------------------------------------------------------------------
 
 // Finding of Check: what is wrong and where.
@@ -425,57 +273,3 @@ func (s *Store) SignedHead() (string, error) { panic("contract") }
 
 // WriteTo copies a consistent image of the file.
 func (s *Store) Backup(w io.Writer) (int64, error) { panic("contract") }
-
-// ---- directory (outside the book) --------------------------------------------------------------------------------
-
-// Person is someone who may sign in; the book knows the id and role only.
-type Person struct {
-	ID, Name, Role string // manager | crew | auditor
-	All            bool
-	Sites          []string
-	Active         bool
-	Contact        string
-}
-
-func (p Person) Scope() Scope { panic("contract") }
-
-func (s *Store) People() ([]Person, error)        { panic("contract") }
-func (s *Store) Person(id string) (Person, error) { panic("contract") }
-func (s *Store) PutPerson(ctx context.Context, by string, p Person) (Person, error) {
-	panic("contract")
-} // also appends person.set and grant.set; empty ID = new
-
-// NewLink makes a one-time sign-in link token for a person; only its SHA-256 is kept.
-func (s *Store) NewLink(person string, valid time.Duration) (token string, err error) {
-	panic("contract")
-}
-func (s *Store) LinkPerson(token string) (Person, error) { panic("contract") } // does not spend
-func (s *Store) SpendLink(ctx context.Context, token string) (session string, err error) {
-	panic("contract")
-}                                                     // compare and swap; appends signed.in
-func (s *Store) Session(token string) (Person, error) { panic("contract") }
-func (s *Store) EndSession(token string) error        { panic("contract") }
-
-// Enrol gives an installation a bearer token for the signed-in person; appends installation.enrolled. Enrolling again replaces the token.
-func (s *Store) Enrol(ctx context.Context, person, installation string) (token string, err error) {
-	panic("contract")
-}
-
-// Bearer says who holds an installation token.
-func (s *Store) Bearer(token string) (installation string, p Person, err error) { panic("contract") }
-
-// MintTags draws n new tags nobody holds and appends tags.minted.
-func (s *Store) MintTags(ctx context.Context, by string, n int) ([]string, error) { panic("contract") }
-
-// ---- errors ------------------------------------------------------------------------------------------------------
-
-// Error is a refusal a person can act on. Code is one of a closed list; Text is a whole sentence: what is wrong, then what to do.
-type Error struct {
-	Code  string `json:"code"`
-	Field string `json:"field,omitempty"`
-	Text  string `json:"text"`
-}
-
-func (e *Error) Error() string { return e.Text }
-
-var _ = json.RawMessage(nil)

@@ -1,0 +1,111 @@
+// Package store keeps one organisation's book, the read models folded from it and the directory of people, in one bbolt
+// file. Book and read models change in the same transaction. No *bbolt.Tx and no byte that points into the file leaves
+// the package, and pages never scan the book.
+//
+// Buckets and keys (integers big-endian; id = the 16 bytes of a UUID; seq = place in the whole book, from 1; ord = number
+// of a log, given in book order; pos = place in a log, from 1):
+//
+//	book: written once, never changed
+//	  rec    seq 8                      → ord 4 | pos 8 | stamp length 2 | stamp | record
+//	  id     id 16                      → seq 8
+//	  log    ord 4 | pos 8              → seq 8 | hashes stored with this leaf, 32 each, level 0 first
+//	  logs   log name                   → ord 4 | size 8 | right edge of the tree, 32 each
+//	  names  ord 4                      → log name
+//	  quar   seq 8 of record.refused    → length 2 | sentence | the exact bytes refused
+//	  quarsha SHA-256 32                → seq 8 of record.refused
+//	  meta   store, org, epoch, demo, format, clock, model
+//	counted from the book, computed anew by Rebuild
+//	  count  installation 16 | ord 4    → runs of n seen: (from 8, to 8)…
+//	  reused installation 16 | ord 4 | n 8 | id 16 → nothing: this record used an n that was taken
+//	  taken  tag 7                      → nothing: minted or bound once
+//	  grant  person 16 | seq 8          → JSON of accessFact: a role, sites, or an installation that person enrolled
+//	read models: see fold.go
+//	directory: outside book and trees, really deleted
+//	  dir_person  person 16             → JSON
+//	  dir_link    SHA-256 of token 32   → JSON
+//	  dir_session SHA-256 of token 32   → JSON
+//	  dir_token   SHA-256 of token 32   → JSON
+//	  dir_inst    installation 16       → SHA-256 of its token 32
+//	  dir_setting name                  → value
+//
+// The keys of rec, log and quar arrive in order and their pages are filled to 95 %.
+package store
+
+import (
+	"encoding/binary"
+
+	"tripwell/store/record"
+)
+
+var (
+	bktRec     = []byte("rec")
+	bktID      = []byte("id")
+	bktLog     = []byte("log")
+	bktLogs    = []byte("logs")
+	bktNames   = []byte("names")
+	bktQuar    = []byte("quar")
+	bktQuarSHA = []byte("quarsha")
+	bktMeta    = []byte("meta")
+
+	bktCount  = []byte("count")
+	bktReused = []byte("reused")
+	bktGrant  = []byte("grant")
+	bktTaken  = []byte("taken")
+
+	bktPerson  = []byte("dir_person")
+	bktLink    = []byte("dir_link")
+	bktSession = []byte("dir_session")
+	bktToken   = []byte("dir_token")
+	bktInst    = []byte("dir_inst")
+	bktSetting = []byte("dir_setting")
+)
+
+var bookBuckets = [][]byte{bktRec, bktID, bktLog, bktLogs, bktNames, bktQuar, bktQuarSHA, bktMeta}
+var countBuckets = [][]byte{bktCount, bktReused, bktGrant, bktTaken}
+var directoryBuckets = [][]byte{bktPerson, bktLink, bktSession, bktToken, bktInst, bktSetting}
+
+// Names in meta and dir_setting.
+var (
+	metaStore  = []byte("store")
+	metaOrg    = []byte("org")
+	metaEpoch  = []byte("epoch")
+	metaDemo   = []byte("demo")
+	metaFormat = []byte("format")
+	metaClock  = []byte("clock")
+	metaModel  = []byte("model")
+	settingURL = []byte("url")
+)
+
+// formatVersion of the file; a newer one is refused.
+const formatVersion = 1
+
+func key32(n uint32) []byte { return binary.BigEndian.AppendUint32(nil, n) }
+func key64(n uint64) []byte { return binary.BigEndian.AppendUint64(nil, n) }
+
+func readKey64(b []byte) uint64 {
+	if len(b) < 8 {
+		return 0
+	}
+	return binary.BigEndian.Uint64(b)
+}
+
+// idKey gives the 16 bytes of an id that a record carries, and nil for anything else.
+func idKey(id string) []byte {
+	b, ok := record.IDBytes(id)
+	if !ok {
+		return nil
+	}
+	return b[:]
+}
+
+func logKey(ord uint32, pos int64) []byte {
+	return binary.BigEndian.AppendUint64(binary.BigEndian.AppendUint32(make([]byte, 0, 12), ord), uint64(pos))
+}
+
+func countKey(installation string, ord uint32) []byte {
+	return binary.BigEndian.AppendUint32(append(make([]byte, 0, 20), idKey(installation)...), ord)
+}
+
+func reusedKey(installation string, ord uint32, n int64, id string) []byte {
+	return append(binary.BigEndian.AppendUint64(countKey(installation, ord), uint64(n)), idKey(id)...)
+}

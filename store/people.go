@@ -1,0 +1,179 @@
+package store
+
+import (
+	"cmp"
+	"context"
+	"encoding/json"
+	"fmt"
+	"slices"
+	"strings"
+
+	"go.etcd.io/bbolt"
+
+	"tripwell/store/record"
+)
+
+// Person is someone who may sign in; the book knows the id and role only.
+type Person struct {
+	ID, Name, Role string // manager | crew | auditor
+	All            bool
+	Sites          []string
+	Active         bool
+	Contact        string
+}
+
+// Scope is what the person may see; nothing once they are no longer active.
+func (p Person) Scope() Scope {
+	if !p.Active {
+		return Scope{Person: p.ID, Role: p.Role}
+	}
+	return Scope{Person: p.ID, Role: p.Role, All: p.All, Sites: p.Sites}
+}
+
+// People lists everybody, by name.
+func (s *Store) People() ([]Person, error) {
+	var all []Person
+	err := s.view(func(tx *bbolt.Tx) error {
+		return tx.Bucket(bktPerson).ForEach(func(_, v []byte) error {
+			var p Person
+			if err := json.Unmarshal(v, &p); err != nil {
+				return fmt.Errorf("person: %w", err)
+			}
+			all = append(all, p)
+			return nil
+		})
+	})
+	slices.SortFunc(all, func(a, b Person) int { return cmp.Or(cmp.Compare(a.Name, b.Name), cmp.Compare(a.ID, b.ID)) })
+	return all, err
+}
+
+// Person gives one person.
+func (s *Store) Person(id string) (p Person, err error) {
+	err = s.view(func(tx *bbolt.Tx) error {
+		p, err = readPerson(tx, id)
+		return err
+	})
+	return p, err
+}
+
+func readPerson(tx *bbolt.Tx, id string) (p Person, err error) {
+	key := idKey(id)
+	var v []byte
+	if key != nil {
+		v = tx.Bucket(bktPerson).Get(key)
+	}
+	if v == nil {
+		return p, &Error{Code: "not_found", Field: "person", Text: "There is no such person here. Choose one from the list of people."}
+	}
+	if err := json.Unmarshal(v, &p); err != nil {
+		return p, fmt.Errorf("person %s: %w", id, err)
+	}
+	return p, nil
+}
+
+// PersonName gives a name from the directory, "" where there is none.
+func (v *View) PersonName(id string) string {
+	p, err := readPerson(v.tx, id)
+	if err != nil {
+		return ""
+	}
+	return p.Name
+}
+
+// PutPerson keeps a person (empty ID = new) and appends person.set and grant.set by whoever does it: a manager of all
+// sites, or the store's own id for the owner of the folder. What is in force already is not written again.
+func (s *Store) PutPerson(ctx context.Context, by string, p Person) (Person, error) {
+	p.Name = strings.TrimSpace(p.Name)
+	if p.Name == "" {
+		return Person{}, &Error{Code: "invalid", Field: "name", Text: "A person needs a name, or at least what they are called on a round, such as Crew 1."}
+	}
+	if p.Role != "manager" && p.Role != "crew" && p.Role != "auditor" {
+		return Person{}, &Error{Code: "invalid", Field: "role", Text: "A person is manager, crew or auditor. Choose one of these."}
+	}
+	for _, site := range p.Sites {
+		if !record.IsID(site) {
+			return Person{}, &Error{Code: "invalid", Field: "sites", Text: "One of the sites chosen is none of this store's. Choose sites from the list."}
+		}
+	}
+	if p.ID == "" {
+		p.ID = newID(s.now())
+	} else if !record.IsID(p.ID) {
+		return Person{}, &Error{Code: "invalid", Field: "id", Text: "The person's id is no UUID of version 7 or 8 in lower case."}
+	}
+	if by == "" {
+		by = s.id
+	}
+	p.Sites = slices.Compact(slices.Sorted(slices.Values(p.Sites)))
+	err := s.do(ctx, 2, func(g *group) error {
+		old, err := readPerson(g.tx, p.ID)
+		known := err == nil
+		if known && old.Role == p.Role && old.All == p.All && old.Active == p.Active && slices.Equal(old.Sites, p.Sites) {
+			return g.putJSON(bktPerson, idKey(p.ID), p)
+		}
+		if known && old.Role == "manager" && old.All && old.Active && (p.Role != "manager" || !p.All || !p.Active) {
+			if last, err := lastManager(g.tx, p.ID); err != nil || last {
+				return cmp.Or(err, error(&Error{Code: "conflict", Field: "role", Text: "This is the last manager of all sites. Make somebody else one first, so that the store can still be run."}))
+			}
+		}
+		_, err = g.appendDrafts([]Draft{
+			{Kind: "person.set", Log: record.Org, Subject: p.ID, By: by, Body: mustJSON(map[string]any{"role": p.Role, "active": p.Active})},
+			{Kind: "grant.set", Log: record.Office, Subject: p.ID, By: by, Body: mustJSON(map[string]any{"role": p.Role, "all": p.All, "sites": append([]string{}, p.Sites...), "active": p.Active})},
+		})
+		if err != nil {
+			return err
+		}
+		return g.putJSON(bktPerson, idKey(p.ID), p)
+	})
+	if err != nil {
+		return Person{}, err
+	}
+	return p, nil
+}
+
+// lastManager reports whether nobody but this person is an active manager of all sites.
+func lastManager(tx *bbolt.Tx, id string) (bool, error) {
+	last := true
+	err := tx.Bucket(bktPerson).ForEach(func(_, v []byte) error {
+		var p Person
+		if err := json.Unmarshal(v, &p); err != nil {
+			return fmt.Errorf("person: %w", err)
+		}
+		last = last && (p.ID == id || !p.Active || !p.All || p.Role != "manager")
+		return nil
+	})
+	return last, err
+}
+
+// mustJSON marshals a body made of texts, flags and lists of texts.
+func mustJSON(v any) json.RawMessage {
+	b, err := encodeBody(v)
+	if err != nil {
+		panic(err) // cannot happen: see above
+	}
+	return b
+}
+
+// putJSON writes a directory entry.
+func (g *group) putJSON(bucket, key []byte, v any) error {
+	b, err := json.Marshal(v)
+	if err != nil {
+		return fmt.Errorf("write %s: %w", bucket, err)
+	}
+	return g.put(bucket, key, b)
+}
+
+func (g *group) put(bucket, key, value []byte) error {
+	g.changes++
+	if err := g.tx.Bucket(bucket).Put(key, value); err != nil {
+		return fmt.Errorf("write %s: %w", bucket, err)
+	}
+	return nil
+}
+
+func (g *group) drop(bucket, key []byte) error {
+	g.changes++
+	if err := g.tx.Bucket(bucket).Delete(key); err != nil {
+		return fmt.Errorf("drop from %s: %w", bucket, err)
+	}
+	return nil
+}

@@ -1,0 +1,163 @@
+package store
+
+import (
+	"bytes"
+	"encoding/binary"
+	"encoding/json"
+	"fmt"
+	"slices"
+	"time"
+
+	"tripwell/store/record"
+)
+
+// accessFact is something the book says about what a person may do, and when the store heard of it.
+type accessFact struct {
+	At           int64    `json:"at"`             // received, ms
+	Role         string   `json:"role,omitempty"` // of a grant
+	All          bool     `json:"all,omitempty"`
+	Sites        []string `json:"sites,omitempty"`
+	Active       bool     `json:"active,omitempty"`
+	Installation string   `json:"installation,omitempty"` // enrolled by the person
+	Revoked      string   `json:"revoked,omitempty"`      // installation
+}
+
+func (a accessFact) covers(log string) bool {
+	return a.Active && (a.All || slices.Contains(a.Sites, log))
+}
+
+// facts gives what the book says of a person, oldest first.
+func (g *group) facts(person string) ([]accessFact, error) {
+	if f, ok := g.access[person]; ok {
+		return f, nil
+	}
+	var all []accessFact
+	prefix := idKey(person)
+	c := g.tx.Bucket(bktGrant).Cursor()
+	for k, v := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, v = c.Next() {
+		var f accessFact
+		if err := json.Unmarshal(v, &f); err != nil {
+			return nil, fmt.Errorf("access of %s: %w", person, err)
+		}
+		all = append(all, f)
+	}
+	g.access[person] = all
+	return all, nil
+}
+
+// noteAccess keeps what a record says about access.
+func (g *group) noteAccess(r *record.Record, stamp record.Stamp) error {
+	var f accessFact
+	person := r.Subject
+	switch r.Kind {
+	case "grant.set":
+		if err := json.Unmarshal(r.Body, &f); err != nil {
+			return fmt.Errorf("access in %s: %w", r.ID, err)
+		}
+	case "installation.enrolled":
+		if err := json.Unmarshal(r.Body, &f); err != nil {
+			return fmt.Errorf("access in %s: %w", r.ID, err)
+		}
+		person = r.By
+	default:
+		return nil
+	}
+	f.At = stamp.Received.UnixMilli()
+	before, err := g.facts(person)
+	if err != nil {
+		return err
+	}
+	v, err := json.Marshal(f)
+	if err != nil {
+		return fmt.Errorf("access in %s: %w", r.ID, err)
+	}
+	g.access[person] = append(before, f)
+	if err := g.tx.Bucket(bktGrant).Put(binary.BigEndian.AppendUint64(idKey(person), g.seq), v); err != nil {
+		return fmt.Errorf("write access of %s: %w", person, err)
+	}
+	return nil
+}
+
+// crewKinds are what crew may write in the log of a site they have.
+var crewKinds = map[string]bool{
+	"entry.made": true, "entry.corrected": true, "entry.withdrawn": true,
+	"place.registered": true, "place.set": true, "panel.set": true, "circuit.set": true,
+	"device.registered": true, "device.set": true, "device.retired": true, "device.replaced": true,
+	"tag.bound": true, "tag.freed": true, "round.made": true, "round.set": true, "round.closed": true,
+	"defect.opened": true, "defect.noted": true, "defect.made_safe": true, "defect.assigned": true,
+	"defect.repaired": true, "defect.closed": true, "defect.reopened": true,
+}
+
+// storeKinds are made by a store of what happened to it, and taken from nobody else.
+var storeKinds = map[string]bool{
+	"record.refused": true, "record.admitted": true, "record.sealed": true, "person.set": true, "tags.minted": true,
+	"grant.set": true, "signed.in": true, "export.taken": true, "installation.enrolled": true, "installation.revoked": true,
+	"book.restored": true,
+}
+
+// permit is the one place that decides who may write what. It looks at the time of the work: access that held at some
+// time between a record's at and its arrival is enough; what ended in between is a flag, never a refusal.
+func (g *group) permit(from Sender, r *record.Record, received time.Time) (*record.Fault, error) {
+	if from.Owner {
+		return nil, nil
+	}
+	own := from.Installation == g.s.id
+	if r.From != from.Installation {
+		return no("from", "The record was made on another device than the one that sent it. Send it from the device it was made on, or load its rescue file as the owner of the store."), nil
+	}
+	if own && r.By == g.s.id {
+		return nil, nil // the owner, by a command
+	}
+	if !own && storeKinds[r.Kind] {
+		return no("kind", "Records of kind "+r.Kind+" are written by the store itself and taken from no device."), nil
+	}
+	facts, err := g.facts(r.By)
+	if err != nil {
+		return nil, err
+	}
+	if !own && !slices.ContainsFunc(facts, func(f accessFact) bool { return f.Installation == from.Installation }) {
+		return no("by", "The person named in the record never signed in on this device. Sign in on it, then send the record again."), nil
+	}
+	if !grantsIn(facts, r, received, func(f accessFact) bool { return mayWrite(f, r) }) {
+		return no("by", "The person named in the record may not write "+r.Kind+" in this log. A manager of all sites can give them the site or the role."), nil
+	}
+	return nil, nil
+}
+
+func no(field, sentence string) *record.Fault {
+	return &record.Fault{Code: "not_permitted", Field: field, Text: sentence}
+}
+
+func mayWrite(f accessFact, r *record.Record) bool {
+	switch record.LogClass(r.Log) {
+	case record.Org, record.Office:
+		switch r.Kind {
+		case "signed.in", "installation.enrolled", "installation.revoked", "export.taken":
+			return f.Active // everybody signs in, enrols a phone, takes what they may see
+		}
+		return f.Active && f.All && f.Role == "manager"
+	}
+	if !f.covers(r.Log) {
+		return false
+	}
+	return f.Role == "manager" || f.Role == "crew" && crewKinds[r.Kind]
+}
+
+// grantsIn reports whether any grant in force between the record's at and its arrival satisfies may.
+func grantsIn(facts []accessFact, r *record.Record, received time.Time, may func(accessFact) bool) bool {
+	from, to := r.At.UnixMilli(), received.UnixMilli()
+	from = min(from, to)
+	for i := len(facts) - 1; i >= 0; i-- { // newest first
+		f := facts[i]
+		if f.Role == "" || f.At > to {
+			continue
+		}
+		if may(f) {
+			return true
+		}
+		if f.At <= from {
+			return false // what came before this grant had ended
+		}
+	}
+	return false
+}

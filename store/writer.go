@@ -1,0 +1,138 @@
+package store
+
+import (
+	"context"
+	"errors"
+	"fmt"
+
+	"go.etcd.io/bbolt"
+)
+
+const (
+	queueLength = 128   // jobs waiting; a full queue answers busy
+	groupLimit  = 2_000 // records of a group; the last job may go over it
+)
+
+// job is one call that changes the store. run decides it inside the group's transaction and may run more than once: it
+// must set, not add to, what it answers. An error of run concerns this job alone.
+type job struct {
+	size int
+	run  func(g *group) error
+	err  error
+	done chan struct{}
+}
+
+var errBusy = &Error{Code: "busy", Text: "The store is busy. Nothing was kept; send the same again in a moment."}
+
+// do queues a job and waits for its answer. When ctx ends first the job may still be done: all jobs can be sent again.
+func (s *Store) do(ctx context.Context, size int, run func(g *group) error) error {
+	j := &job{size: size, run: run, done: make(chan struct{})}
+	s.mu.RLock()
+	if s.closed {
+		s.mu.RUnlock()
+		return errClosed
+	}
+	select {
+	case s.queue <- j:
+		s.mu.RUnlock()
+	default:
+		s.mu.RUnlock()
+		return errBusy
+	}
+	select {
+	case <-j.done:
+		return j.err
+	case <-ctx.Done():
+		return fmt.Errorf("waiting for the store: %w", ctx.Err())
+	}
+}
+
+// write is the one writer: it takes what is queued, commits it together, answers all.
+func (s *Store) write() {
+	defer close(s.written)
+	for j := range s.queue {
+		jobs, n := []*job{j}, j.size
+	take:
+		for n < groupLimit {
+			select {
+			case more, ok := <-s.queue:
+				if !ok {
+					break take
+				}
+				jobs, n = append(jobs, more), n+more.size
+			default:
+				break take
+			}
+		}
+		s.commit(jobs)
+		for _, j := range jobs {
+			close(j.done)
+		}
+	}
+}
+
+// spoilt is a job that failed after it had changed something: the group is done again without it.
+type spoilt struct {
+	job *job
+	err error
+}
+
+func (e *spoilt) Error() string { return e.err.Error() }
+
+// commit decides a group in one transaction.
+func (s *Store) commit(jobs []*job) {
+	for len(jobs) > 0 {
+		err := s.update(jobs)
+		var one *spoilt
+		if errors.As(err, &one) {
+			one.job.err = one.err
+			rest := make([]*job, 0, len(jobs))
+			for _, j := range jobs {
+				if j != one.job {
+					rest = append(rest, j)
+				}
+			}
+			jobs = rest
+			continue
+		}
+		if err != nil {
+			for _, j := range jobs {
+				j.err = &Error{Code: "unavailable", Text: "The store could not be written (" + err.Error() + "). Nothing of this was kept; send it again when the disk has room and works."}
+			}
+		}
+		return
+	}
+}
+
+func (s *Store) update(jobs []*job) error {
+	err := s.db.Update(func(tx *bbolt.Tx) error {
+		g := newGroup(s, tx)
+		for _, j := range jobs {
+			before := g.changes
+			j.err = j.run(g)
+			if j.err != nil && g.changes != before {
+				return &spoilt{j, j.err}
+			}
+		}
+		if g.changes == 0 {
+			return errNothing
+		}
+		if err := g.flush(); err != nil {
+			return err
+		}
+		if s.faults.commit != nil {
+			return s.faults.commit()
+		}
+		return nil
+	})
+	if errors.Is(err, errNothing) {
+		return nil
+	}
+	if err == nil && s.faults.answer != nil {
+		return s.faults.answer()
+	}
+	return err
+}
+
+// errNothing ends a transaction that changes nothing without two flushes of the disk.
+var errNothing = errors.New("nothing to write")

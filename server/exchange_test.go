@@ -153,7 +153,9 @@ func quoted(t testing.TB, s string) string {
 	return string(b)
 }
 
-func quotedRaw(s string) string { return `"` + strings.NewReplacer(`\`, `\\`, `"`, `\"`).Replace(s) + `"` }
+func quotedRaw(s string) string {
+	return `"` + strings.NewReplacer(`\`, `\\`, `"`, `\"`).Replace(s) + `"`
+}
 
 func TestPush_BadBatchesAreToldAndDecideNothing(t *testing.T) {
 	r := newRig(t, 1)

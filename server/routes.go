@@ -40,8 +40,8 @@ func publicRoutes() []route {
 		{get, "/T/:tag", anyone, (*Server).tagOpen, 0},
 
 		// field client
-		{get, "/field", crew | manager, (*Server).fieldShow, 0},
-		{get, "/field/*", crew | manager, (*Server).fieldShow, 0},
+		{get, "/field", anyone, (*Server).fieldShow, 0},
+		{get, "/field/*", anyone, (*Server).fieldShow, 0},
 
 		// exchange
 		{post, "/exchange/enrol", crew | manager, (*Server).exchangeEnrol, 0},

@@ -7,6 +7,8 @@ import (
 	"net/url"
 	"strings"
 	"time"
+
+	"tripwell/store"
 )
 
 // The session cookie. Over plain http on loopback a browser does not send cookies with Secure in every case, and the
@@ -14,7 +16,7 @@ import (
 const (
 	cookieName      = "__Host-tripwell"
 	cookieNameLocal = "tripwell"
-	cookieAge       = 180 * 24 * time.Hour // the store ends sessions earlier by its own rule
+	cookieAge       = store.SessionLife
 )
 
 // plainLoopback reports a request over plain http from this machine to a loopback address, with no proxy between: a

@@ -40,7 +40,9 @@ func (s *Server) tagOpen(c echo.Context) error {
 	return toPage(c, "/devices/"+device)
 }
 
-// fieldShow is the field client's shell; the client reads the rest of the address itself.
+// fieldShow is the field client's shell; the client reads the rest of the address itself. The shell holds nothing of
+// anybody's: an enrolled phone works by its own token long after the browser's session has ended, and a phone that is not
+// enrolled is told 401 by the exchange and sends its reader to /in?next=/field.
 func (s *Server) fieldShow(c echo.Context) error {
 	return s.page(c, http.StatusOK, "field.html", s.frame(c, "Tripwell", "field"))
 }

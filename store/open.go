@@ -10,6 +10,7 @@ import (
 	"strconv"
 	"strings"
 	"sync"
+	"sync/atomic"
 	"time"
 
 	"go.etcd.io/bbolt"
@@ -44,6 +45,7 @@ type Store struct {
 	queue   chan *job
 	written chan struct{} // closed when the writer has ended
 	heads   sync.Mutex    // one signing at a time
+	groups  atomic.Int64  // committed since opening
 
 	faults faults
 }

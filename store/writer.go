@@ -71,6 +71,10 @@ func (s *Store) write() {
 	}
 }
 
+// Groups counts the transactions committed since the store was opened: records through groups says how many arrivals
+// share one flush of the disk.
+func (s *Store) Groups() int64 { return s.groups.Load() }
+
 // spoilt is a job that failed after it had changed something: the group is done again without it.
 type spoilt struct {
 	job *job
@@ -127,6 +131,9 @@ func (s *Store) update(jobs []*job) error {
 	})
 	if errors.Is(err, errNothing) {
 		return nil
+	}
+	if err == nil {
+		s.groups.Add(1)
 	}
 	if err == nil && s.faults.answer != nil {
 		return s.faults.answer()

@@ -1,0 +1,29 @@
+// Days and moments as the crew reads them. Days are YYYY-MM-DD texts, which also compare as they are. Pure.
+
+/** The day of a moment in a time zone. */
+export function dayIn(ms, zone) {
+  try {
+    return new Intl.DateTimeFormat("en-CA", { timeZone: zone || "UTC", year: "numeric", month: "2-digit", day: "2-digit" }).format(ms);
+  } catch {
+    return new Date(ms).toISOString().slice(0, 10); // a zone this browser does not know
+  }
+}
+
+/** "Mon 30 Nov 2026"; the year only where it is not this one. */
+export function showDay(app, day) {
+  const [y, m, d] = String(day).split("-").map(Number);
+  if (!y) return "";
+  const thisYear = dayIn(app.now()).slice(0, 4) === String(y);
+  return new Intl.DateTimeFormat("en-GB", { weekday: "short", day: "numeric", month: "short", ...(thisYear ? {} : { year: "numeric" }), timeZone: "UTC" })
+    .format(Date.UTC(y, m - 1, d)).replace(",", "");
+}
+
+/** "09:12", or "Mon 30 Nov, 09:12" for another day; in the phone's own zone, which is where the reader stands. */
+export function showMoment(app, ms) {
+  const at = new Date(ms), now = new Date(app.now());
+  const time = at.toLocaleTimeString("en-GB", { hour: "2-digit", minute: "2-digit" });
+  return at.toDateString() === now.toDateString() ? time : `${showDay(app, localDay(at))}, ${time}`;
+}
+
+const two = (n) => String(n).padStart(2, "0");
+const localDay = (d) => `${d.getFullYear()}-${two(d.getMonth() + 1)}-${two(d.getDate())}`;

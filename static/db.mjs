@@ -1,0 +1,121 @@
+// The phone's two databases. `tray` holds what is ours alone: who we are, the counters, the records and the drafts; no
+// reset ever drops it. `along` holds copies of the server's data and may be dropped whole. Every write is strict: the
+// promise resolves when the transaction is complete on disk, and rejects when it is aborted.
+
+import { openDB, unwrap } from "./vendor/idb.mjs";
+
+const STRICT = { durability: "strict" };
+
+function openTray() {
+  return openDB("tray", 1, {
+    upgrade(db) {
+      db.createObjectStore("me"); // one value per name
+      db.createObjectStore("counter"); // log → n of the last record made here
+      const records = db.createObjectStore("records", { keyPath: "id" });
+      records.createIndex("state", "state");
+      db.createObjectStore("drafts", { keyPath: "key" });
+    },
+  });
+}
+
+function openAlong() {
+  return openDB("along", 1, {
+    upgrade(db) {
+      db.createObjectStore("sites", { keyPath: "log" });
+    },
+  });
+}
+
+/**
+ * A connection that is opened when first needed and opened again once when the browser has dropped it (which happens to
+ * pages that were long in the background). use(fn) gives fn an open database; fn must be safe to run twice.
+ */
+function connection(open) {
+  let opening = null;
+  const get = () => (opening ??= open().then((db) => {
+    unwrap(db).addEventListener("close", () => { opening = null; });
+    unwrap(db).addEventListener("versionchange", () => { db.close(); opening = null; });
+    return db;
+  }).catch((e) => { opening = null; throw e; }));
+  return async function use(fn) {
+    try {
+      return await fn(await get());
+    } catch (e) {
+      if (e?.name !== "InvalidStateError" && e?.name !== "UnknownError") throw e;
+      opening = null;
+      return fn(await get());
+    }
+  };
+}
+
+/** The `tray` database as the client uses it. */
+export function trayDB() {
+  const use = connection(openTray);
+  const write = (store, fn) => use(async (db) => {
+    const tx = db.transaction(store, "readwrite", STRICT);
+    const [result] = await Promise.all([fn(tx.store), tx.done]);
+    return result;
+  });
+  const change = (id, fields) => write("records", async (store) => {
+    const row = await store.get(id);
+    if (row) await store.put({ ...row, ...fields });
+  });
+  return {
+    me: (name) => use((db) => db.get("me", name)),
+    setMe: (name, value) => write("me", (store) => store.put(value, name)),
+
+    drafts: () => use((db) => db.getAll("drafts")),
+    putDraft: (draft) => write("drafts", (store) => store.put(draft)),
+    dropDraft: (key) => write("drafts", (store) => store.delete(key)),
+
+    /** What pages show: all that is not yet in a copy of the server's data. */
+    records: () => use(async (db) => (await Promise.all(["waiting", "refused", "sent"].map((s) => db.getAllFromIndex("records", "state", s)))).flat()),
+    waiting: () => use((db) => db.getAllFromIndex("records", "state", "waiting")).then((rows) => rows.sort((a, b) => a.saved - b.saved || (a.id < b.id ? -1 : 1))),
+    settle: (id, receipt, at) => change(id, { state: "sent", receipt, sent_at: at }),
+    /** Sent records that the copy of their site holds by now are only kept from here on. */
+    cover: (ids) => write("records", async (store) => {
+      for (const id of ids) {
+        const row = await store.get(id);
+        if (row?.state === "sent") await store.put({ ...row, state: "kept" });
+      }
+    }),
+    refuse: (id, receipt) => change(id, { state: "refused", receipt }),
+    /** Drops kept records sent before a moment; what waits, was refused or is in no copy yet is never touched. */
+    forget: (before) => write("records", async (store) => {
+      for (let c = await store.index("state").openCursor("kept"); c; c = await c.continue()) if (c.value.sent_at < before) await c.delete();
+    }),
+
+    /**
+     * Makes one record and keeps it: counter, stamp and record change in one strict transaction, so n has no gap and no
+     * double. make({n, clock, installation, person}) → {row, clock} must not wait for anything.
+     */
+    keep: (log, draftKey, make) => use(async (db) => {
+      const tx = db.transaction(["me", "counter", "records", "drafts"], "readwrite", STRICT);
+      try {
+        const me = tx.objectStore("me"), counter = tx.objectStore("counter");
+        const [installation, person, clock, last] = await Promise.all([me.get("installation"), me.get("person"), me.get("clock"), counter.get(log)]);
+        const n = (last ?? 0) + 1;
+        const made = make({ n, clock, installation, person });
+        await Promise.all([
+          counter.put(n, log), me.put(made.clock, "clock"),
+          tx.objectStore("records").add(made.row), tx.objectStore("drafts").delete(draftKey), tx.done,
+        ]);
+        return made.row;
+      } catch (e) {
+        try { tx.abort(); } catch { /* already over */ }
+        await tx.done.catch(() => {});
+        throw e;
+      }
+    }),
+  };
+}
+
+/** The `along` database: one row per site, {log, taken, snapshot}; the cursor is inside, so both change at once. */
+export function alongDB() {
+  const use = connection(openAlong);
+  return {
+    sites: () => use((db) => db.getAll("sites")),
+    put: (row) => use((db) => db.put("sites", row)),
+    drop: (log) => use((db) => db.delete("sites", log)),
+  };
+}

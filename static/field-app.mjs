@@ -1,0 +1,169 @@
+// The state of the field client and everything that changes it. Storage, network, clock, timers and the record maker are
+// passed in; views read what this gives and call its actions. What the server holds is never changed here: own entries
+// are laid over the copy when it is read.
+
+import { draftKey, isTouched, newDraft, withAnswers, withSeries } from "./draft.mjs";
+import { dayIn, showMoment } from "./days.mjs";
+import { entryBody, givenOf, readInstrument, summaryOf } from "./entry.mjs";
+import { walk } from "./flow.mjs";
+import { dueNow, nextDue, overlay, placeInRound, withOwn } from "./list.mjs";
+import { about, aboutAt, judgeWalked, limitSetFor } from "./judging.mjs";
+import { backQuestions, leavesOff, stillOff } from "./still-off.mjs";
+import { bareTag, toTest } from "./route.mjs";
+import { titleOf } from "./field-parts.mjs";
+
+/** parts: {tray, say, draw(app), go(hash), now, make(kind, log, subject, body, at, facts), keepSending()}. */
+export function fieldApp(parts) {
+  const { tray, say, draw, go, now } = parts;
+  const state = { me: {}, sites: new Map(), records: [], drafts: new Map(), route: { page: "sites" }, line: "empty", offset: 0, busy: true, saving: false, saved: null, trouble: null, persisted: undefined };
+  let views = new Map(); // site log → the copy with own entries laid over
+
+  const changed = () => { views = new Map(); draw(app); };
+  const corrected = () => now() + (state.offset ?? 0);
+
+  function siteView(log) {
+    if (!views.has(log)) {
+      const row = state.sites.get(log);
+      views.set(log, row ? readSite(row, state.records, dayIn(corrected(), row.snapshot.site.zone)) : null);
+    }
+    return views.get(log);
+  }
+
+  function findDevice(id) {
+    for (const log of state.sites.keys()) {
+      const site = siteView(log), device = site.byId.get(id);
+      if (device) return { site, device, place: site.places.get(device.place) };
+    }
+    return null;
+  }
+
+  const formsFor = (site, device) => site.snapshot.forms.filter((f) => f.kinds.includes(device.kind));
+  /** A draft's form as it is put now; null when its device is not on this phone. */
+  function walkOf(draft) {
+    const found = findDevice(draft.device);
+    const form = found && formsFor(found.site, found.device).find((f) => f.task === draft.task);
+    return form ? walk(form, draft, givenOf({ device: found.device, form, limitSet: null, instrument: null })) : null;
+  }
+
+  /** Drafts are kept at every keystroke; typing never waits for it, and a failure is said at once. */
+  function putDraft(draft) {
+    state.drafts.set(draft.key, draft);
+    changed();
+    tray.putDraft(draft).then(() => {
+      if (state.trouble === say("field.draft_not_kept")) { state.trouble = null; draw(app); }
+    }, () => { state.trouble = say("field.draft_not_kept"); draw(app); });
+  }
+
+  function openTest(id, task) {
+    const found = findDevice(id);
+    const form = found && formsFor(found.site, found.device).find((f) => f.task === task);
+    if (!form) return null;
+    const { site, device, place } = found;
+    const instruments = (site.snapshot.instruments ?? []).map(readInstrument).filter((i) => !i.retired);
+    const remembered = instruments.some((i) => i.id === state.me.instrument) ? state.me.instrument : null;
+    const draft = state.drafts.get(draftKey(id, task)) ?? newDraft({ device: id, task, log: site.log, form: form.form, instrument: remembered, now: now() });
+    const instrument = instruments.find((i) => i.id === draft.instrument) ?? null;
+    const limitSet = limitSetFor(device, form, site.snapshot.limit_sets);
+    const given = givenOf({ device, form, limitSet, instrument: form.task === "button" ? null : instrument });
+    const walked = walk(form, draft, given, limitSet?.assume);
+    if (leavesOff(draft, walked)) walked.open.push(...backQuestions(walked).slice(-1).filter((ask) => !walked.open.some((o) => o.ask === ask)).map((ask) => ({ id: ask.reading, ask })));
+    const judged = { form, limitSet, given };
+    const verdict = judgeWalked(judged, walked);
+    const last = device.last?.[task];
+    return {
+      site, device, place, form, draft, instruments, limitSet, given, walked, verdict, today: site.today,
+      round: placeInRound(site.devices, id, task, site.today), next: nextDue(site.devices, id, task, site.today),
+      about: (ask) => ({ ...about(judged, walked, verdict, ask), last: last?.readings?.[ask.reading], lastDay: last?.day }),
+      aboutAt: (ask, at) => aboutAt(judged, walked, verdict, ask, at),
+    };
+  }
+
+  /** Keeps the entry, strictly; only then is it called saved. */
+  async function save(test) {
+    if (state.saving) return;
+    state.saving = true;
+    draw(app);
+    const { site, device, form, draft, given, walked, verdict } = test;
+    const at = now(), day = dayIn(corrected(), site.snapshot.site.zone);
+    const title = titleOf(app, device, test.place);
+    try {
+      const row = await tray.keep(site.log, draft.key, (facts) => {
+        const body = entryBody({ form, given, readings: walked.readings, series: walked.series, person: facts.person, note: draft.note.trim(),
+          shown: { result: verdict.result, limit_rev: given.limit_rev ?? 0, judge: parts.judgeVersion } });
+        const made = parts.make({ kind: "entry.made", log: site.log, subject: device.id, at, body, offset: state.offset ?? 0, ...facts });
+        return { clock: made.clock, row: { id: made.id, log: site.log, record: made.record, state: "waiting", saved: at,
+          summary: { ...summaryOf({ entry: made.id, device: device.id, task: form.task, day, result: verdict.result, readings: walked.readings }), title } } };
+      });
+      state.records.push(row);
+      state.drafts.delete(draft.key);
+      state.saved = { what: title, result: verdict.result };
+      state.trouble = null;
+      state.saving = false;
+      views = new Map();
+      go(test.next ? toTest(test.next.id, form.task) : `#/site/${encodeURIComponent(site.snapshot.site.code)}`, { keep: true });
+      parts.keepSending();
+    } catch (e) {
+      state.saving = false;
+      state.trouble = say(e?.name === "QuotaExceededError" ? "field.full" : "field.not_kept");
+      changed();
+    }
+  }
+
+  const app = {
+    say, state, now, openTest, findDevice, formsFor, save, changed,
+    corrected,
+    get off() {
+      return stillOff([...state.drafts.values()], walkOf).map((o) => {
+        const found = findDevice(o.device);
+        return { href: toTest(o.device, o.task), what: found ? titleOf(app, found.device, found.place) : "", since: showMoment(app, o.since) };
+      });
+    },
+    get tray() {
+      const count = (s) => state.records.filter((r) => r.state === s).length;
+      return { waiting: count("waiting"), refused: count("refused") };
+    },
+    /** Sites this person has, with what is known of each. */
+    sites() {
+      return (state.me.logs ?? []).filter((l) => l.code).map((l) => {
+        const view = state.sites.has(l.log) ? siteView(l.log) : null;
+        return { log: l.log, code: l.code, name: l.name, taken: view?.taken, devices: view?.devices.length ?? 0,
+          due: view ? view.devices.filter((d) => dueNow(d, view.today).length > 0).length : 0 };
+      });
+    },
+    siteByCode(code) {
+      for (const [log, row] of state.sites) if (row.snapshot.site.code.toLowerCase() === code.toLowerCase()) return siteView(log);
+      return null;
+    },
+    deviceByTag(tag) {
+      for (const log of state.sites.keys()) {
+        const device = siteView(log).devices.find((d) => d.tag && bareTag(d.tag) === tag);
+        if (device) return device;
+      }
+      return null;
+    },
+    route(route, keepSaved) {
+      state.route = route;
+      if (!keepSaved) state.saved = null;
+      draw(app);
+    },
+    answers: (draft, answers, more) => putDraft({ ...withAnswers(draft, answers, now()), ...more }),
+    seriesAnswer: (draft, at, code, answer) => putDraft(withSeries(draft, at, code, answer, now())),
+    note: (draft, note) => putDraft({ ...draft, note, changed: now() }),
+    instrument(draft, id) {
+      state.me.instrument = id;
+      tray.setMe("instrument", id).catch(() => {}); // only a convenience; the draft below keeps the choice of this test
+      putDraft({ ...draft, instrument: id });
+    },
+    sendNow: () => parts.keepSending(),
+    touched: isTouched,
+  };
+  return app;
+}
+
+/** A site's copy as the pages read it. */
+function readSite(row, records, today) {
+  const { snapshot } = row;
+  const own = overlay(records.filter((r) => r.log === row.log));
+  const devices = snapshot.devices.map((d) => (own.has(d.id) ? withOwn(d, own.get(d.id)) : d));
+  return { log: row.log, taken: row.taken, snapshot, today, devices, byId: new Map(devices.map((d) => [d.id, d])), places: new Map(snapshot.places.map((p) => [p.id, p])) };
+}

@@ -1,0 +1,101 @@
+// One question, one row: choices, yes or no, or a number with its unit, limit, scale and verdict under it.
+
+import { html } from "./vendor/htm-preact.mjs";
+import { Mark, markOf } from "./field-parts.mjs";
+import { Scale } from "./field-scale.mjs";
+import { limitWords, outsideWords, unitWord } from "./limit-words.mjs";
+import { readAnswer, unitOf } from "./answer.mjs";
+import { showNumber } from "./number.mjs";
+
+const REASONS = ["no-access", "circuit-dead", "unsafe", "no-instrument", "not-testable", "other"];
+
+/**
+ * props: app, ask, answer, set(answer), findings (of this reading, most telling first), bounds (of the limit that decides,
+ * known before anything is typed), last (last time's value), lastDay, title (replaces the question's text).
+ */
+export function Ask(props) {
+  const { app, ask, answer, set, title, id = ask.reading } = props;
+  const { say } = app;
+  const words = title ?? say(`reading.${ask.reading}.ask`);
+  const numeric = ask.type === "number";
+  return html`<section class="ask" id=${`ask-${id}`}>
+    <div class="q-line">
+      ${numeric ? html`<label class="q" for=${`in-${id}`}>${words}</label>` : html`<span class="q" id=${`q-${id}`}>${words}</span>`}
+      ${!answer?.missing && html`<button type="button" class="skip" onClick=${() => set({ missing: "" })}>${say("field.not_measured")}</button>`}
+    </div>
+    ${answer?.missing !== undefined ? html`<${Missing} ...${props} id=${id} />`
+      : numeric ? html`<${NumberField} ...${props} id=${id} />`
+      : html`<${Choices} ...${props} id=${id} />`}
+    <${Found} ...${props} />
+  </section>`;
+}
+
+/** Why there is no answer. */
+function Missing({ app, answer, set, id }) {
+  const { say } = app;
+  return html`<div class="pick" role="group" aria-labelledby=${`q-${id}`}>
+    ${REASONS.map((r) => html`<button type="button" key=${r} aria-pressed=${String(answer.missing === r)} onClick=${() => set({ missing: r })}>${say(`missing.${r}`)}</button>`)}
+    <button type="button" class="plain" onClick=${() => set(undefined)}>${say("field.measure_after_all")}</button>
+  </div>`;
+}
+
+function Choices({ app, ask, answer, set, id }) {
+  const { say } = app;
+  const options = ask.type === "yes-no" ? ["yes", "no"] : ask.options;
+  const word = (o) => (say.has(`option.${ask.reading}.${o}`) ? say(`option.${ask.reading}.${o}`) : say.has(`option.${o}`) ? say(`option.${o}`) : say(`field.${o}`));
+  return html`<div class="pick" role="group" aria-labelledby=${`q-${id}`}>
+    ${options.map((o) => html`<button type="button" key=${o} aria-pressed=${String(answer?.pick === o)}
+      onClick=${() => set(answer?.pick === o ? undefined : { pick: o })}>${word(o)}</button>`)}
+    ${(ask.offer_missing ?? []).map((r) => html`<button type="button" key=${r} aria-pressed="false" onClick=${() => set({ missing: r })}>${say(`missing.${r}`)}</button>`)}
+  </div>`;
+}
+
+function NumberField({ app, ask, answer, set, bounds, findings, last, lastDay, id }) {
+  const { say } = app;
+  const own = unitOf(ask), units = ask.units ?? [own], unit = answer?.unit ?? own;
+  const { reading, error } = readAnswer(ask, answer);
+  const put = (change) => {
+    const next = { typed: "", unit, ...answer, ...change };
+    set(next.typed.trim() === "" && !next.gave_up ? undefined : next);
+  };
+  return html`
+    <div class="entry">
+      <input id=${`in-${id}`} inputmode="decimal" autocomplete="off" enterkeyhint="next" value=${answer?.typed ?? ""}
+        placeholder=${answer?.gave_up ? say("field.stopped_at") : ""} aria-invalid=${error ? "true" : null} aria-describedby=${`under-${id}`}
+        onInput=${(e) => put({ typed: e.currentTarget.value })} />
+      ${units.length > 1
+        ? html`<div class="units" role="group" aria-label=${say("field.unit")}>${units.map((u) => html`<button type="button" key=${u} aria-pressed=${String(u === unit)} onClick=${() => put({ unit: u })}>${unitWord(say, u)}</button>`)}</div>`
+        : html`<span class="unit">${unitWord(say, own)}</span>`}
+    </div>
+    ${ask.bound && html`<button type="button" class="bound" aria-pressed=${String(Boolean(answer?.gave_up))} onClick=${() => put({ gave_up: !answer?.gave_up })}>${say(boundWord(say, ask))}</button>`}
+    ${answer?.gave_up && html`<p class="hint">${say("field.stopped_hint", { unit: unitWord(say, unit) })}</p>`}
+    ${ask.scale && html`<${Scale} scale=${ask.scale} bounds=${bounds} value=${reading?.value ?? reading?.above ?? reading?.below}
+      beyond=${reading?.above !== undefined ? "above" : reading?.below !== undefined ? "below" : null} last=${last}
+      colour=${markOf(findings[0]?.verdict)} label=${scaleLabel(say, ask, own, bounds, reading, last)} />`}
+    <div id=${`under-${id}`}>
+      ${error && html`<p class="bad">${say(`field.number.${error}`)}</p>`}
+      <div class="under">
+        ${reading && findings[0] && html`<${Mark} verdict=${findings[0].verdict}>${outsideWords(say, findings[0], own, reading)}<//>`}
+        <span class="quiet">${[bounds && limitWords(say, bounds, own, bounds.level), last !== undefined && say("field.last", { value: showNumber(last), unit: unitWord(say, own), day: lastDay ?? "" })].filter(Boolean).join(" · ")}</span>
+      </div>
+    </div>`;
+}
+
+const boundWord = (say, ask) => (say.has(`field.gave_up.${ask.reading}`) ? `field.gave_up.${ask.reading}` : "field.gave_up.other");
+
+function scaleLabel(say, ask, own, bounds, reading, last) {
+  const shown = reading?.value ?? reading?.above ?? reading?.below;
+  return [shown !== undefined ? `${showNumber(shown)} ${unitWord(say, own)}` : say("field.nothing_typed"),
+    say("field.scale_from_to", { from: showNumber(ask.scale.from), to: showNumber(ask.scale.to) }),
+    bounds && limitWords(say, bounds, own, bounds.level),
+    last !== undefined && say("field.last", { value: showNumber(last), unit: unitWord(say, own), day: "" })].filter(Boolean).join("; ");
+}
+
+/** What the limits say of it: verdict of a choice, and what to do. */
+function Found({ app, ask, findings, answer }) {
+  if (!answer || answer.missing !== undefined) return null;
+  const telling = findings.filter((f) => !["pass", "missing"].includes(f.verdict));
+  return html`
+    ${ask.type !== "number" && telling[0] && html`<div class="under"><${Mark} verdict=${telling[0].verdict}>${app.say(`verdict.${telling[0].verdict}`)}<//></div>`}
+    ${telling.filter((f) => f.text).map((f) => html`<p class="todo" key=${f.text}>${app.say(f.text)}</p>`)}`;
+}

@@ -1,0 +1,75 @@
+// Small parts every page of the field client uses: the head, the foot with what is kept on the phone, marks of a verdict.
+
+import { html } from "./vendor/htm-preact.mjs";
+import { showTag } from "./route.mjs";
+
+/** Which mark a result or a finding's verdict is drawn with; the word stands beside it always. */
+const MARKS = {
+  pass: "pass", watch: "watch", "conditional-pass": "watch", "conditional-fail": "watch", fail: "fail",
+  incomplete: "none", missing: "none", "not-tested": "none", "not-judged": "none",
+};
+
+export const markOf = (verdict) => MARKS[verdict] ?? "none";
+
+const SHAPES = {
+  pass: html`<circle cx="5" cy="5" r="5" fill="currentColor" />`,
+  watch: html`<path d="M5 0 L10 10 H0Z" fill="currentColor" />`,
+  fail: html`<path d="M5 0 L10 5 L5 10 L0 5Z" fill="currentColor" />`,
+  none: html`<circle cx="5" cy="5" r="4" fill="none" stroke="currentColor" stroke-width="1.5" stroke-dasharray="2 1.6" />`,
+};
+
+/** Word, shape and colour of a verdict. */
+export function Mark({ verdict, children }) {
+  const mark = markOf(verdict);
+  return html`<span class=${`v ${mark}`}><svg viewBox="0 0 10 10" aria-hidden="true">${SHAPES[mark]}</svg><span>${children}</span></span>`;
+}
+
+/** Head of a page: where we are, said first. */
+export function Where({ app, title, tag, context, progress, back }) {
+  return html`<header class="where">
+    ${back && html`<a class="back" href=${back}>${app.say("field.back")}</a>`}
+    <div class="line"><h1>${title}</h1>${tag && html`<span class="tag">${showTag(tag)}</span>`}</div>
+    ${(context || progress) && html`<div class="line quiet"><span>${context}</span><span class="keep">${progress}</span></div>`}
+    <${StillOff} app=${app} />
+    <${Notices} app=${app} />
+  </header>`;
+}
+
+/** What is switched off and not reported back on, on every page. */
+function StillOff({ app }) {
+  return app.off.map((off) => html`<a class="off" href=${off.href} key=${off.href}>
+    ${app.say("field.still_off", { what: off.what, since: off.since })}</a>`);
+}
+
+function Notices({ app }) {
+  const { say, state } = app;
+  const minutes = Math.round(Math.abs(state.offset ?? 0) / 60_000);
+  return html`
+    ${Math.abs(state.offset ?? 0) > 120_000 && html`<p class="notice" role="status">${say(state.offset > 0 ? "field.clock_behind" : "field.clock_ahead", { minutes, n: minutes })}</p>`}
+    ${state.line === "signed-out" && html`<p class="notice" role="status">${say("field.signed_out")} <a href=${`/in?next=${encodeURIComponent("/field" + (globalThis.location?.hash ?? ""))}`}>${say("field.sign_in")}</a></p>`}
+    ${state.trouble && html`<p class="notice bad" role="alert">${state.trouble}</p>`}
+    ${state.saved && html`<p class="saved" role="status"><${Mark} verdict=${state.saved.result}>${say(`verdict.${state.saved.result}`)}<//> ${say("field.saved", { what: state.saved.what })}</p>`}`;
+}
+
+/** Foot of every page: what is kept on this phone, and the one main button where the page has one. */
+export function Foot({ app, children }) {
+  const { say, tray } = app;
+  const lines = [];
+  if (app.state.line === "unreached") lines.push(say("field.no_signal"));
+  if (tray.refused > 0) lines.push(say("field.refused_count", { n: tray.refused }));
+  const kept = tray.waiting > 0 ? say("field.kept", { n: tray.waiting }) : say("field.all_sent");
+  return html`<footer class="foot"><a class="tray" href="#/tray">${lines.map((l) => html`<span key=${l}>${l}<br /></span>`)}<b>${kept}</b></a>${children}</footer>`;
+}
+
+/** Context of a device: floor and room, kind, panel and circuit. */
+export function contextOf(app, device, place) {
+  const where = [place?.building, place?.floor, place?.room].filter((x) => x && x !== place?.name);
+  return [...where, app.say(`kind.${device.kind}`), circuitOf(device)].filter(Boolean).join(" · ");
+}
+
+export const circuitOf = (device) => [device.panel, device.circuit].filter(Boolean).join(" / ");
+
+/** What a device is called on the phone: the spot it sits in, else where it is kept, else its kind. */
+export function titleOf(app, device, place) {
+  return place?.name || device.fields?.where || app.say(`kind.${device.kind}`);
+}

@@ -1,0 +1,158 @@
+// The page of one test: the form's steps in their order, judged as it is typed, and the one button that saves it.
+
+import { html, useEffect, useState } from "./vendor/htm-preact.mjs";
+import { Ask } from "./field-ask.mjs";
+import { contextOf, Foot, Mark, titleOf, Where } from "./field-parts.mjs";
+import { fillMissing, quickAnswers, rowId } from "./flow.mjs";
+import { conditionKey, isTouched, seriesAnswers } from "./draft.mjs";
+import { toDevice } from "./route.mjs";
+import { showNumber } from "./number.mjs";
+import { showDay } from "./days.mjs";
+
+const REASONS = ["no-access", "circuit-dead", "unsafe", "no-instrument", "not-testable", "other"];
+
+/** props: app, test — what app.openTest(device, task) gives. */
+export function TestPage({ app, test }) {
+  const { say } = app;
+  const { device, place, form, draft, walked } = test;
+  const [detailed, setDetailed] = useState(!form.quick || draft.detailed === true);
+  const [asked, setAsked] = useState(false); // Save was pressed while questions were open
+  useEffect(() => { setDetailed(!form.quick || draft.detailed === true); setAsked(false); scrollTo(0, 0); }, [draft.key]);
+  const set = (answers, more) => app.answers(draft, answers, more);
+  const quickDone = form.quick && sameAnswers(draft.answers, quickAnswers(form));
+  const open = walked.open.length;
+  const ready = isTouched(draft) && open === 0 && walked.broken.length === 0;
+  const fill = (reason) => {
+    const { answers, series } = fillMissing(walked, draft, reason);
+    set(answers, { series });
+  };
+  const save = () => {
+    if (ready) return app.save(test);
+    setAsked(true);
+    const id = walked.broken[0] ?? walked.open[0]?.id;
+    requestAnimationFrame(() => (document.getElementById(`ask-${id}`) ?? document.querySelector("main")).scrollIntoView({ block: "center" }));
+  };
+  return html`
+    <${Where} app=${app} title=${titleOf(app, device, place)} tag=${device.tag} context=${contextOf(app, device, place)}
+      progress=${test.round.of > 1 ? say("field.place_in_round", { n: test.round.n, of: test.round.of }) : ""} back=${toDevice(device.id)} />
+    <main>
+      <h2 class="task">${say(`task.${form.task}`)}</h2>
+      <${CriticalLoad} app=${app} place=${place} />
+      ${form.quick && !detailed
+        ? html`<${Quick} app=${app} form=${form} done=${quickDone} set=${set} open=${() => { setDetailed(true); set({}, { detailed: true }); }} />`
+        : html`
+          ${usesInstrument(form) && html`<${Instruments} app=${app} draft=${draft} instruments=${test.instruments} today=${test.today} />`}
+          ${walked.steps.map((step) => html`<${Step} app=${app} key=${step.step} step=${step} test=${test} set=${set} />`)}`}
+      ${(detailed || quickDone) && html`<${Summary} app=${app} test=${test} open=${open} />`}
+      ${detailed && open > 0 && (isTouched(draft) || asked) && html`<${Rest} app=${app} open=${open} asked=${asked} fill=${fill} />`}
+      ${(detailed || quickDone) && html`<section class="ask"><label class="q" for="note">${say("field.note")}</label>
+        <textarea id="note" rows="2" value=${draft.note} onInput=${(e) => app.note(draft, e.currentTarget.value)}></textarea></section>`}
+    </main>
+    <${Foot} app=${app}><button type="button" class="big go" aria-disabled=${String(!ready)} disabled=${app.state.saving} onClick=${save}>${say(test.next ? "field.save_next" : "field.save")}</button><//>`;
+}
+
+const sameAnswers = (a, b) => Object.keys(a).length === Object.keys(b).length && Object.keys(b).every((k) => a[k]?.pick === b[k].pick);
+
+const usesInstrument = (form) => form.steps.some((s) => s.asks.some((a) => a.type === "number"));
+
+function CriticalLoad({ app, place }) {
+  return place?.critical_load ? html`<p class="caution"><b>${app.say("field.critical_load", { load: place.critical_load })}</b> ${app.say("field.critical_load_do")}</p>` : null;
+}
+
+/** The one-tap form: one button writes exactly the answers it states. */
+function Quick({ app, form, done, set, open }) {
+  const { say } = app;
+  const cautions = [...new Set(form.steps.flatMap((s) => s.cautions ?? []))];
+  return html`<section class="ask quick">
+    ${cautions.map((c) => html`<p class="caution" key=${c}>${say(`caution.${c}`)}</p>`)}
+    <button type="button" class="big one-tap" aria-pressed=${String(Boolean(done))} onClick=${() => set(done ? {} : quickAnswers(form))}>${say(form.quick.text)}</button>
+    <details class="writes"><summary>${say("field.quick_writes")}</summary><dl>${Object.entries(form.quick.readings).map(([code, value]) => html`
+      <div key=${code}><dt>${say(`reading.${code}.ask`)}</dt><dd>${answerWord(say, code, value)}</dd></div>`)}</dl></details>
+    <button type="button" class="big" onClick=${open}>${say("field.something_else")}</button>
+  </section>`;
+}
+
+const answerWord = (say, code, value) => [`option.${code}.${value}`, `option.${value}`, `field.${value}`].map((k) => (say.has(k) ? say(k) : null)).find(Boolean) ?? value;
+
+function Instruments({ app, draft, instruments, today }) {
+  const { say } = app;
+  const chosen = instruments.find((i) => i.id === draft.instrument);
+  const expired = chosen?.calibration_due && chosen.calibration_due < today;
+  return html`<section class="ask"><label class="q" for="instrument">${say("field.instrument")}</label>
+    <select id="instrument" value=${draft.instrument ?? ""} onChange=${(e) => app.instrument(draft, e.currentTarget.value || null)}>
+      <option value="">${say("field.no_instrument")}</option>
+      ${instruments.map((i) => html`<option key=${i.id} value=${i.id}>${[i.name, i.serial].filter(Boolean).join(" · ")}</option>`)}
+    </select>
+    ${chosen?.calibration_due && html`<div class="under quiet">${expired
+      ? html`<${Mark} verdict="watch">${say("field.calibration_expired", { day: showDay(app, chosen.calibration_due) })}<//>`
+      : say("field.calibrated_until", { day: showDay(app, chosen.calibration_due) })}</div>`}
+  </section>`;
+}
+
+function Step({ app, step, test, set }) {
+  const { say } = app;
+  const { draft } = test;
+  return html`<div class="step">
+    <h3>${say(`step.${step.step}`)}</h3>
+    ${step.cautions.map((c) => html`<p class="caution" key=${c}>${say(`caution.${c}`)}</p>`)}
+    ${step.closed && html`<p class="closed">${say(step.closed)}</p>`}
+    ${step.asks.map((ask) => html`<${Ask} app=${app} key=${ask.reading} ask=${ask} answer=${draft.answers[ask.reading]}
+      set=${(a) => set(withOne(draft.answers, ask.reading, a))} title=${titleAt(app, ask, test)} ...${test.about(ask)} />`)}
+    ${step.series.map((row) => html`<${Condition} app=${app} key=${conditionKey(row.at)} row=${row} test=${test} />`)}
+  </div>`;
+}
+
+function withOne(answers, code, answer) {
+  const next = { ...answers };
+  if (answer === undefined) delete next[code];
+  else next[code] = answer;
+  return next;
+}
+
+/** The trip time is asked "at 6.8 mA", since its limit belongs to that current. */
+function titleAt(app, ask, test) {
+  const current = test.walked.readings.test_current_ma?.value;
+  if (ask.reading !== "trip_time_ms" || typeof current !== "number") return undefined;
+  return app.say("field.at_current", { what: app.say(`reading.${ask.reading}.ask`), current: showNumber(current) });
+}
+
+/** The questions put again under one of the form's conditions. */
+function Condition({ app, row, test }) {
+  const { at, asks } = row;
+  return html`<div class="condition"><h4>${conditionWords(app.say, at, test.given)}</h4>
+    ${asks.map((ask) => html`<${Ask} app=${app} key=${ask.reading} id=${rowId(at, ask)} ask=${ask} answer=${seriesAnswers(test.draft, at)[ask.reading]}
+      set=${(a) => app.seriesAnswer(test.draft, at, ask.reading, a)} ...${test.aboutAt(ask, at)} />`)}
+  </div>`;
+}
+
+/** "5 × 30 mA, starting at 180°", "Upper face". */
+export function conditionWords(say, at, given) {
+  const parts = [];
+  if (at.multiple !== undefined) parts.push(say("field.condition.multiple", { multiple: at.multiple === 0.5 ? "½" : showNumber(at.multiple), ma: given.rated_residual_ma ? showNumber(at.multiple * given.rated_residual_ma) : "?" }));
+  if (at.phase_deg !== undefined) parts.push(say("field.condition.phase", { deg: at.phase_deg }));
+  if (at.waveform !== undefined) parts.push(say(`option.waveform.${at.waveform}`));
+  if (at.face !== undefined) parts.push(say(`field.condition.face_${at.face.replaceAll("-", "_")}`));
+  return parts.join(", ");
+}
+
+/** One reason for everything that is left. */
+function Rest({ app, open, asked, fill }) {
+  const { say } = app;
+  return html`<section class=${asked ? "ask rest asked" : "ask rest"} id="open">
+    <span class="q" id="q-rest">${say("field.open_count", { n: open })}</span>
+    <p class="hint">${say("field.rest_hint")}</p>
+    <div class="pick" role="group" aria-labelledby="q-rest">${REASONS.map((r) => html`<button type="button" key=${r} onClick=${() => fill(r)}>${say(`missing.${r}`)}</button>`)}</div>
+  </section>`;
+}
+
+/** The result so far, and each thing that is not inside its limit. */
+function Summary({ app, test, open }) {
+  const { say } = app;
+  const { result, findings } = test.verdict;
+  if (!isTouched(test.draft)) return null;
+  const telling = findings.filter((f) => !["pass", "not-judged"].includes(f.verdict) && !(f.verdict === "missing" && open > 0));
+  return html`<section class=${`result ${result}`} aria-live="polite">
+    <h2>${open > 0 && result === "incomplete" ? html`<${Mark} verdict="incomplete">${say("field.open_count", { n: open })}<//>` : html`<${Mark} verdict=${result}>${say(`verdict.${result}`)}<//>`}</h2>
+    ${telling.length > 0 && html`<ul>${telling.map((f, i) => html`<li key=${i}><${Mark} verdict=${f.verdict}>${say(`reading.${f.reading}.name`)}${f.at ? ` (${conditionWords(say, f.at, test.given)})` : ""}<//> ${f.text ? say(f.text) : say(`verdict.${f.verdict}`)}</li>`)}</ul>`}
+  </section>`;
+}

@@ -1,0 +1,105 @@
+// Starts the field client: opens the databases, reads the words, wires state, exchange and pages together. The only
+// module that touches the page's globals beside db.mjs and the views.
+
+import { html, render } from "./vendor/htm-preact.mjs";
+import { alongDB, trayDB } from "./db.mjs";
+import { exchange } from "./exchange.mjs";
+import { fieldApp } from "./field-app.mjs";
+import { DevicePage, DevicesPage, LostPage, SitesPage, TrayPage } from "./field-lists.mjs";
+import { TestPage } from "./field-test.mjs";
+import { JudgeVersion } from "./judge.mjs";
+import { makeEntryRecord, newId } from "./making.mjs";
+import { parseRoute, toDevice } from "./route.mjs";
+import { sending } from "./sending.mjs";
+import { syncing } from "./syncing.mjs";
+import { speaker } from "./words.mjs";
+
+const root = document.getElementById("field");
+const now = () => Date.now();
+
+/** The page of a route; the app is read anew at every drawing. */
+function Page({ app }) {
+  const { say } = app, { route } = app.state;
+  switch (route.page) {
+    case "site": {
+      const site = app.siteByCode(route.code);
+      return site ? html`<${DevicesPage} app=${app} site=${site} key=${site.log} />` : html`<${LostPage} app=${app} text=${say("field.site_not_here")} />`;
+    }
+    case "device": {
+      const found = app.findDevice(route.device);
+      return found ? html`<${DevicePage} app=${app} ...${found} />` : html`<${LostPage} app=${app} text=${say("field.device_not_here")} />`;
+    }
+    case "test": {
+      const test = app.openTest(route.device, route.task);
+      return test ? html`<${TestPage} app=${app} test=${test} />` : html`<${LostPage} app=${app} text=${say("field.device_not_here")} />`;
+    }
+    case "tag":
+      return html`<${LostPage} app=${app} text=${say("field.tag_not_here")} />`;
+    case "tray":
+      return html`<${TrayPage} app=${app} />`;
+    default:
+      return html`<${SitesPage} app=${app} />`;
+  }
+}
+
+async function start() {
+  const say = speaker(await (await fetch(new URL("./words/en.json", import.meta.url))).json());
+  const tray = trayDB(), along = alongDB();
+  let keepSaved = false, drawing = false;
+  const draw = (app) => {
+    if (drawing) return;
+    drawing = true; // many changes in one turn are drawn once
+    queueMicrotask(() => {
+      drawing = false;
+      followTag(app);
+      render(html`<${Page} app=${app} />`, root);
+    });
+  };
+  const go = (hash, { keep = false } = {}) => {
+    keepSaved = keep;
+    if (location.hash === hash) onRoute();
+    else location.hash = hash;
+  };
+  const app = fieldApp({ tray, say, draw, go, now, make: makeEntryRecord, judgeVersion: JudgeVersion, keepSending: () => sender.kick() });
+  const run = syncing({ state: app.state, tray, along, net: exchange({ fetch: (...a) => fetch(...a), now }), now, newId: () => newId(now()), changed: app.changed });
+  const sender = sending({ run: () => alone(run), later: (fn, ms) => setTimeout(fn, ms), cancel: clearTimeout, random: Math.random });
+  const onRoute = () => {
+    app.route(parseRoute(location.hash, location.pathname), keepSaved);
+    keepSaved = false;
+    scrollTo(0, 0);
+  };
+
+  await readKept(app.state, tray, along);
+  addEventListener("hashchange", onRoute);
+  addEventListener("online", () => sender.kick());
+  document.addEventListener("visibilitychange", () => { if (document.visibilityState === "visible") sender.kick(); });
+  onRoute();
+  sender.kick();
+  app.state.persisted = await navigator.storage?.persist?.().catch(() => false);
+}
+
+/** Opens what a label names as soon as its site is on the phone. */
+function followTag(app) {
+  if (app.state.route.page !== "tag") return;
+  const device = app.deviceByTag(app.state.route.tag);
+  if (device) location.replace(toDevice(device.id));
+}
+
+async function readKept(state, tray, along) {
+  for (const name of ["installation", "token", "person", "logs", "instrument", "offset"]) state.me[name] = await tray.me(name);
+  state.offset = state.me.offset ?? 0;
+  for (const row of await along.sites()) state.sites.set(row.log, row);
+  state.records = await tray.records();
+  for (const draft of await tray.drafts()) state.drafts.set(draft.key, draft);
+}
+
+/** One page at a time sends for all open ones, where the browser can say so. */
+function alone(run) {
+  if (!navigator.locks) return run();
+  return navigator.locks.request("tripwell-exchange", { ifAvailable: true }, (lock) => (lock ? run() : { state: "busy", retryAfter: 5 }));
+}
+
+start().catch((e) => {
+  root.textContent = root.dataset.failed;
+  console.error(e);
+});

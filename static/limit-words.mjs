@@ -1,0 +1,40 @@
+// A limit and what lies outside it, in words. Pure.
+
+import { showNumber } from "./number.mjs";
+
+const NNBSP = "\u202f";
+
+/** How a unit is written. */
+export const unitWord = (say, unit) => (unit && say.has(`unit.${unit}`) ? say(`unit.${unit}`) : unit ?? "");
+
+export const withUnit = (say, value, unit) => `${showNumber(value)}${NNBSP}${unitWord(say, unit)}`;
+
+/** "at most 4 677 ms", "4 to 6 mA", "at least 115 g, recommendation". */
+export function limitWords(say, bounds, unit, level) {
+  const { min, max } = bounds;
+  let text = "";
+  if (min !== undefined && max !== undefined) text = say("field.limit.between", { min: showNumber(min), max: withUnit(say, max, unit) });
+  else if (max !== undefined) text = say("field.limit.at_most", { max: withUnit(say, max, unit) });
+  else if (min !== undefined) text = say("field.limit.at_least", { min: withUnit(say, min, unit) });
+  return text && level === "watch" ? say("field.limit.recommended", { limit: text }) : text;
+}
+
+/** "Inside the limit", "Outside: 0.4 mA too high", "Outside what is recommended", … for a number's finding. */
+export function outsideWords(say, finding, unit, reading) {
+  const { verdict, limit } = finding;
+  if (verdict === "fail") {
+    const by = excess(limit, reading.value);
+    if (by === null) return say("field.outside");
+    const way = by < 0 ? "low" : unit === "ms" ? "slow" : "high";
+    return say(`field.outside_by.${way}`, { by: withUnit(say, Math.abs(by), unit) });
+  }
+  return say.has(`field.number_verdict.${verdict}`) ? say(`field.number_verdict.${verdict}`) : say(`verdict.${verdict}`);
+}
+
+/** How far a value lies outside: negative below min, null when that is no number. */
+function excess(limit, value) {
+  if (typeof value !== "number" || !limit) return null;
+  if (limit.max !== undefined && value > limit.max) return value - limit.max;
+  if (limit.min !== undefined && value < limit.min) return value - limit.min;
+  return null;
+}

@@ -1,0 +1,36 @@
+// Addresses within the field page: #/site/CODE, #/device/ID, #/test/ID/TASK, #tag=K7QM2P3 (what a label's address
+// /t/TAG becomes). Pure.
+
+/** parseRoute(hash, path) → {page, …}; the path counts only when it is a label's address and the hash says nothing. */
+export function parseRoute(hash, path = "") {
+  let h = hash.replace(/^#/, "");
+  try {
+    h = decodeURIComponent(h);
+  } catch {
+    h = "";
+  }
+  const labelled = /^\/t\/([0-9a-z-]{6,12})\/?$/i.exec(path);
+  if (h.startsWith("tag=")) return { page: "tag", tag: bareTag(h.slice(4)) };
+  const [, page, a, b] = h.split("/");
+  if (page === "site" && a) return { page, code: a };
+  if (page === "device" && a) return { page, device: a };
+  if (page === "test" && a && b) return { page, device: a, task: b };
+  if (page === "tray") return { page };
+  if (!h && labelled) return { page: "tag", tag: bareTag(labelled[1]) };
+  return { page: "sites" };
+}
+
+export const toSite = (code) => `#/site/${encodeURIComponent(code)}`;
+export const toDevice = (id) => `#/device/${id}`;
+export const toTest = (id, task) => `#/test/${id}/${task}`;
+
+/** A tag as it is compared: hyphens and spaces dropped, capitals, I and L read as 1, O as 0 (Crockford). */
+export function bareTag(text) {
+  return text.toUpperCase().replace(/[^0-9A-Z]/g, "").replace(/[IL]/g, "1").replace(/O/g, "0");
+}
+
+/** A tag as it is shown: three, three, one, with hyphens that do not break. */
+export function showTag(tag) {
+  const t = bareTag(tag ?? "");
+  return t.length === 7 ? `${t.slice(0, 3)}\u2011${t.slice(3, 6)}\u2011${t.slice(6)}` : t;
+}

@@ -1,0 +1,109 @@
+// One round of exchange: say who we are, send what waits, then take fresh copies of the sites. Storage and network are
+// passed in. Losing the right to a site drops its copy, never what waits. Pure.
+
+import { drain } from "./tray.mjs";
+
+const FRESH = 10 * 60_000; // a copy younger than this is taken again only when something of ours went to its site
+const KEEP_SENT = 180 * 86_400_000; // acknowledged records stay this long, so that a restored server can be refilled
+
+/**
+ * syncing({state, tray, along, net, now, newId, changed}) → run(), which gives {state, retryAfter} for sending.mjs.
+ * state is the app's: me, sites, records, line, offset, busy.
+ */
+export function syncing({ state, tray, along, net, now, newId, changed }) {
+  async function remember(name, value) {
+    state.me[name] = value;
+    await tray.setMe(name, value);
+  }
+
+  function note(answer) {
+    if (answer.offset !== null && answer.offset !== undefined) {
+      state.offset = answer.offset;
+      if (Math.abs(answer.offset - (state.me.offset ?? 0)) > 2000) remember("offset", answer.offset).catch(() => {});
+    }
+    return answer;
+  }
+
+  async function enrol() {
+    if (!state.me.installation) await remember("installation", newId());
+    const answer = note(await net.enrol(state.me.installation));
+    if (!answer.ok) return answer;
+    await remember("person", answer.body.person.id);
+    await remember("logs", answer.body.logs);
+    await remember("token", answer.body.token);
+    return answer;
+  }
+
+  /** Calls with our token; one that is no longer good is replaced once, by the session of this browser. */
+  async function withToken(call) {
+    if (!state.me.token) {
+      const enrolled = await enrol();
+      if (!enrolled.ok) return enrolled;
+    }
+    const answer = note(await call(state.me.token));
+    if (answer.status !== 401) return answer;
+    const enrolled = await enrol();
+    return enrolled.ok ? note(await call(state.me.token)) : enrolled;
+  }
+
+  const storage = {
+    waiting: () => tray.waiting(),
+    settle: (id, receipt) => tray.settle(id, receipt, now()),
+    refuse: (id, receipt) => tray.refuse(id, receipt),
+  };
+
+  async function refreshSites() {
+    const listed = await withToken((token) => net.logs(token));
+    if (!listed.ok) return listed;
+    await remember("logs", listed.body.logs);
+    const mine = new Set(listed.body.logs.map((l) => l.log));
+    for (const log of state.sites.keys()) if (!mine.has(log)) await dropSite(log);
+    for (const { log, code } of listed.body.logs) {
+      if (!code || !wanted(log)) continue;
+      const answer = await refreshSite(log);
+      if (!answer.ok && answer.status !== 403 && answer.status !== 404) return answer;
+    }
+    return listed;
+  }
+
+  function wanted(log) {
+    const row = state.sites.get(log);
+    return !row || now() - row.taken > FRESH || state.records.some((r) => r.log === log && r.state === "sent");
+  }
+
+  async function refreshSite(log) {
+    const held = state.records.filter((r) => r.log === log && r.state === "sent").map((r) => r.id);
+    const answer = await withToken((token) => net.snapshot(token, log));
+    if (answer.status === 403 || answer.status === 404) await dropSite(log);
+    if (!answer.ok) return answer;
+    const row = { log, taken: now(), snapshot: answer.body };
+    await along.put(row);
+    state.sites.set(log, row);
+    if (held.length > 0) await tray.cover(held);
+    state.records = await tray.records();
+    changed();
+    return answer;
+  }
+
+  async function dropSite(log) {
+    await along.drop(log);
+    state.sites.delete(log);
+    changed();
+  }
+
+  return async function run() {
+    state.busy = true;
+    const sent = await drain({ storage, send: (body) => withToken((token) => net.push(token, body)), sentAt: () => new Date(now()).toISOString() });
+    state.records = await tray.records();
+    let line = sent.state;
+    if (line === "empty") {
+      await tray.forget(now() - KEEP_SENT);
+      const fresh = await refreshSites();
+      line = fresh.ok ? "empty" : fresh.status === 0 ? "unreached" : fresh.status === 401 ? "signed-out" : "trouble";
+    }
+    state.line = line;
+    state.busy = false;
+    changed();
+    return { state: line, retryAfter: sent.retryAfter };
+  };
+}

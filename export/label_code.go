@@ -31,16 +31,24 @@ func codeSize(modules int, box float64) (module, side float64, ok bool) {
 	return module, module * float64(modules+2*quietModules), dots >= moduleDotsMin
 }
 
+// CodeBitmap encodes an address: rows of modules, true is dark, without the quiet zone of 4 modules that must surround it.
+func CodeBitmap(address string) ([][]bool, error) {
+	q, err := qrcode.New(address, qrcode.Medium)
+	if err != nil {
+		return nil, &store.Error{Code: "invalid", Field: "url", Text: fmt.Sprintf("The address %s is too long for a code. Start the server with a shorter --url.", cut(address))}
+	}
+	q.DisableBorder = true
+	return q.Bitmap(), nil
+}
+
 // codePath draws the code of an address as one PDF path: a rectangle for each run of dark modules of a row, filled
 // together so that no hairline shows between rows. (x, y) is the top left corner of the quiet zone on a page of height
 // pageH, box the side it must fit in, all in mm.
 func codePath(address string, x, y, box, pageH float64) ([]byte, float64, error) {
-	q, err := qrcode.New(address, qrcode.Medium)
+	rows, err := CodeBitmap(address)
 	if err != nil {
-		return nil, 0, &store.Error{Code: "invalid", Field: "url", Text: fmt.Sprintf("The address %s is too long for a code. Start the server with a shorter --url.", address)}
+		return nil, 0, err
 	}
-	q.DisableBorder = true
-	rows := q.Bitmap()
 	module, side, ok := codeSize(len(rows), box)
 	if !ok {
 		return nil, 0, &store.Error{Code: "invalid", Field: "url", Text: fmt.Sprintf("The address %s makes a code too fine to print on this label. Start the server with a shorter --url.", address)}

@@ -2,22 +2,25 @@ package export
 
 import (
 	"net/url"
+	"slices"
 	"strings"
 
 	"tripwell/store"
+	"tripwell/store/record"
 )
 
 // LabelAsk says which labels.
 type LabelAsk struct {
-	Site string // id or code; "" = every site of the scope
-	URL  string // label address of the store (https://host)
-	Demo bool
+	Site    string   // id or code; "" = every site of the scope
+	Devices []string // ids; empty = all
+	URL     string   // label address of the store (https://host)
+	Demo    bool
 }
 
-// LabelsOf reads the labels of a store within a scope, in walking order.
-func LabelsOf(s *store.Store, scope store.Scope, site string) (labels []Label, err error) {
+// LabelsOf reads the labels of a store within a scope, in walking order: of a site ("" = all), or of some devices of it.
+func LabelsOf(s *store.Store, scope store.Scope, site string, devices ...string) (labels []Label, err error) {
 	err = s.View(scope, func(v *store.View) error {
-		labels, err = LabelsFromView(v, LabelAsk{Site: site, URL: s.URL(), Demo: s.Demo()})
+		labels, err = LabelsFromView(v, LabelAsk{Site: site, Devices: devices, URL: s.URL(), Demo: s.Demo()})
 		return err
 	})
 	return labels, err
@@ -38,7 +41,9 @@ func LabelsFromView(v *store.View, ask LabelAsk) ([]Label, error) {
 		if err != nil {
 			return nil, err
 		}
-		if d := line.Device; d.Tag != "" && !d.Retired {
+		d := line.Device
+		wanted := len(ask.Devices) == 0 || slices.Contains(ask.Devices, d.ID)
+		if wanted && d.Tag != "" && !d.Retired {
 			labels = append(labels, deviceLabel(d, host, ask.Demo))
 		}
 	}
@@ -46,8 +51,7 @@ func LabelsFromView(v *store.View, ask LabelAsk) ([]Label, error) {
 }
 
 func deviceLabel(d store.DeviceRow, host string, demo bool) Label {
-	tag := strings.ToUpper(strings.ReplaceAll(d.Tag, "-", ""))
-	l := Label{Tag: tag, Address: "HTTPS://" + host + "/T/" + tag, Spot: d.Place.Name, Context: roomText(d.Place), Demo: demo}
+	l := Label{Tag: d.Tag, Address: record.TagAddress("HTTPS://"+host, d.Tag), Spot: d.Place.Name, Context: roomText(d.Place), Demo: demo}
 	switch {
 	case d.Panel != "" && d.Circuit != "":
 		l.Circuit = d.Panel + " / " + d.Circuit

@@ -3,11 +3,10 @@ package export
 import (
 	"encoding/json"
 	"fmt"
-	"maps"
-	"slices"
 	"strconv"
 	"strings"
 
+	"tripwell/forms"
 	"tripwell/store"
 )
 
@@ -58,7 +57,7 @@ func (b *book) conditions(at map[string]any) string {
 		return ""
 	}
 	var parts []string
-	for _, k := range slices.Sorted(maps.Keys(at)) {
+	for _, k := range sortedKeys(at) {
 		v := fmt.Sprint(at[k])
 		if s, ok := at[k].(string); ok {
 			v = b.option(k, s)
@@ -68,30 +67,10 @@ func (b *book) conditions(at map[string]any) string {
 	return strings.Join(parts, ", ")
 }
 
-// fixedUnits are the units that a reading's code ends with; a value always stands in its code's own unit.
-var fixedUnits = []string{"mohm", "ma", "ms", "ohm", "v", "pct", "g", "a", "deg"}
-
-var unitWords = map[string]string{"mohm": "Mohm", "ma": "mA", "v": "V", "pct": "%", "a": "A"}
-
+// unit is the unit a reading's value is in, "" for answers.
 func (b *book) unit(code string) string {
-	if code == "multiple" {
-		return b.word("unit", "×")
-	}
-	_, end, _ := cutLast(code, "_")
-	if !slices.Contains(fixedUnits, end) {
-		return ""
-	}
-	if u, ok := unitWords[end]; ok {
-		end = u
-	}
-	return b.word("unit", end)
-}
-
-func cutLast(s, sep string) (before, after string, found bool) {
-	if i := strings.LastIndex(s, sep); i >= 0 {
-		return s[:i], s[i+len(sep):], true
-	}
-	return s, "", false
+	c, _ := forms.CodeOf(code)
+	return b.word("unit", c.Unit)
 }
 
 // value says what was read: a number where there is one, else words (">310", "open ground", "not measured: no access").
@@ -107,6 +86,9 @@ func (b *book) value(code string, raw json.RawMessage) (number *float64, text st
 	case c == '"':
 		var s string
 		if json.Unmarshal(raw, &s) == nil {
+			if s == "no-trip" {
+				return nil, b.say("sheet.no_trip")
+			}
 			return nil, b.option(code, s)
 		}
 	case c == '{':

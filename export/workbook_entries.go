@@ -2,6 +2,7 @@ package export
 
 import (
 	"bytes"
+	"cmp"
 	"encoding/json"
 	"maps"
 	"slices"
@@ -190,6 +191,9 @@ func (b *book) bodyRows(s *sheet, e EntryLine, body forms.Entry, verdict forms.V
 		f := &verdict.Findings[i]
 		spoken[f.Reading+b.conditions(f.At)] = true
 		number, text := b.value(f.Reading, f.Value)
+		if f.Reason != "" {
+			number, text = nil, b.say("sheet.not_measured", "why", b.word("missing", f.Reason))
+		}
 		if f.Value == nil && f.At == nil {
 			number, text = b.reading(f.Reading, body.Readings[f.Reading])
 		}
@@ -204,13 +208,13 @@ func (b *book) bodyRows(s *sheet, e EntryLine, body forms.Entry, verdict forms.V
 		number, text := b.reading(code, r)
 		return b.findingRow(s, e, &forms.Finding{Reading: code, At: at}, number, text, status)
 	}
-	for _, code := range slices.Sorted(maps.Keys(body.Readings)) {
+	for _, code := range inFormOrder(body.Readings) {
 		if err := rest(code, nil, body.Readings[code]); err != nil {
 			return err
 		}
 	}
 	for _, series := range body.Series {
-		for _, code := range slices.Sorted(maps.Keys(series.Readings)) {
+		for _, code := range inFormOrder(series.Readings) {
 			if err := rest(code, series.At, series.Readings[code]); err != nil {
 				return err
 			}
@@ -222,12 +226,14 @@ func (b *book) bodyRows(s *sheet, e EntryLine, body forms.Entry, verdict forms.V
 func (b *book) findingRow(s *sheet, e EntryLine, f *forms.Finding, number *float64, text, status string) error {
 	s.row().text(e.ID).text(e.Site.Code).text(tagText(e.DeviceRow.Tag)).text(placeText(e.DeviceRow.Place)).text(b.word("task", e.Task)).
 		day(e.Day).text(b.readingName(f.Reading)).text(b.conditions(f.At)).figure(number).text(text)
-	if number == nil && text == "" || b.unit(f.Reading) == "" {
-		s.skip()
-	} else {
-		s.text(b.unit(f.Reading))
+	unit := b.unit(f.Reading)
+	if f.Unit != "" {
+		unit = b.word("unit", f.Unit)
 	}
-	s.verdict(f.Verdict)
+	if number == nil && (text == "" || text[0] != '>' && text[0] != '<') && f.Limit == nil {
+		unit = ""
+	}
+	s.text(unit).verdict(f.Verdict)
 	if f.Limit == nil {
 		s.skip().skip().skip()
 	} else {
@@ -238,7 +244,7 @@ func (b *book) findingRow(s *sheet, e EntryLine, f *forms.Finding, number *float
 		rev = limitRevision(e.LimitSet, e.LimitRev)
 	}
 	meaning := ""
-	if f.Text != "" && f.Verdict != forms.Pass && b.words.Has(f.Text) {
+	if f.Text != "" && b.words.Has(f.Text) {
 		meaning = b.say(f.Text)
 	}
 	return s.text(b.word("sheet.level", f.Level)).text(rev).text(f.Source).text(meaning).text(b.say("sheet." + status)).end()
@@ -262,6 +268,22 @@ func (b *book) person(id string) string {
 		}
 	}
 	return id
+}
+
+// codeOrder is the place of every reading code in the order of the form.
+var codeOrder = func() map[string]int {
+	order := map[string]int{}
+	for i, c := range forms.Codes() {
+		order[c.Code] = i + 1
+	}
+	return order
+}()
+
+// inFormOrder gives the codes of readings in the order forms ask them, unknown ones first by name.
+func inFormOrder(readings map[string]forms.Reading) []string {
+	return slices.SortedFunc(maps.Keys(readings), func(a, b string) int {
+		return cmp.Or(cmp.Compare(codeOrder[a], codeOrder[b]), cmp.Compare(a, b))
+	})
 }
 
 // revisions are the limit set revisions that judged an entry of the workbook, sorted.

@@ -1,9 +1,6 @@
 package export
 
 import (
-	"encoding/json"
-	"fmt"
-	"maps"
 	"slices"
 	"strings"
 
@@ -12,95 +9,121 @@ import (
 )
 
 // limitLines puts every limit of every revision in words.
-func limitLines(words *static.Words, sets []*forms.LimitSet) ([]LimitLine, error) {
+func limitLines(words *static.Words, sets []*forms.LimitSet) []LimitLine {
 	b := &book{words: words, named: map[string]string{}}
 	var lines []LimitLine
 	for _, set := range sets {
-		raw, err := json.Marshal(set)
-		if err != nil {
-			return nil, fmt.Errorf("limit set %s: %w", set.ID, err)
-		}
-		var data struct {
-			Limits []map[string]any `json:"limits"`
-		}
-		if err := json.Unmarshal(raw, &data); err != nil {
-			return nil, fmt.Errorf("limit set %s: %w", set.ID, err)
-		}
-		for _, l := range data.Limits {
-			line := LimitLine{Set: set.ID, Revision: set.Revision, InForce: set.InForce}
-			line.ID, line.Reading, line.Level = said(l["id"]), said(l["reading"]), said(l["level"])
-			line.Source, line.Status = said(l["source"]), said(l["status"])
-			line.Limit, line.When = b.limitText(l), b.whenText(l["when"])
-			lines = append(lines, line)
+		for i := range set.Limits {
+			l := &set.Limits[i]
+			lines = append(lines, LimitLine{
+				Set: set.ID, Revision: set.Revision, InForce: set.InForce, ID: l.ID, Reading: l.Reading + l.Field,
+				Limit: b.limitText(l), When: b.whenText(l.When), Level: l.Level, Source: l.Source, Status: l.Status,
+			})
 		}
 	}
-	return lines, nil
+	return lines
 }
 
-func said(v any) string {
-	if v == nil {
-		return ""
-	}
-	return fmt.Sprint(v)
-}
-
-// limitText says a limit in words; shapes without words of their own are shown as their data.
-func (b *book) limitText(l map[string]any) string {
-	code := said(l["reading"])
-	lo, hi, unit := l["min"], l["max"], b.unit(code)
-	switch {
-	case lo != nil && hi != nil:
-		return strings.TrimSpace(b.say("sheet.limit_range", "min", lo, "max", hi, "unit", unit))
-	case lo != nil:
-		return strings.TrimSpace(b.say("sheet.limit_min", "min", lo, "unit", unit))
-	case hi != nil:
-		return strings.TrimSpace(b.say("sheet.limit_max", "max", hi, "unit", unit))
-	}
-	if list, ok := l["one_of"].([]any); ok {
-		values := make([]string, len(list))
-		for i, v := range list {
-			values[i] = said(v)
-		}
-		return b.say("sheet.limit_one_of", "values", b.oneOf(code, values))
-	}
+// limitText says a limit in words.
+func (b *book) limitText(l *forms.Limit) string {
+	code := l.Reading + l.Field
 	var parts []string
-	for _, k := range slices.Sorted(maps.Keys(l)) {
-		if slices.Contains([]string{"id", "reading", "level", "source", "status", "text", "when", "unit", "severity"}, k) {
-			continue
+	add := func(text string) {
+		if text != "" {
+			parts = append(parts, text)
 		}
-		raw, _ := json.Marshal(l[k])
-		parts = append(parts, k+" "+strings.Trim(string(raw), `"`))
 	}
-	return strings.Join(parts, ", ")
+	unit := b.unit(code)
+	add(b.boundsText(code, forms.Bounds{Min: l.Min, Max: l.Max, OneOf: l.OneOf}, unit))
+	for _, u := range sortedKeys(l.ByUnit) {
+		add(b.boundsText(code, l.ByUnit[u], b.word("unit", u)))
+	}
+	if l.Curve != "" {
+		add(b.word("sheet.curve", l.Curve))
+	}
+	if l.OfRated != nil {
+		add(b.boundsText(code, *l.OfRated, b.say("sheet.of_rated")))
+	}
+	if l.OverRated != 0 {
+		add(b.say("sheet.over_rated", "figure", figureText(l.OverRated), "unit", unit))
+	}
+	for _, r := range l.ByMultiple {
+		text := b.say("sheet.no_trip")
+		if !r.NoTrip {
+			text = b.boundsText(code, forms.Bounds{Min: r.Min, Max: r.Max}, unit)
+		}
+		add(b.say("sheet.at_multiple", "multiple", figureText(r.Multiple), "limit", text))
+	}
+	for _, u := range sortedKeys(l.Gauge) {
+		add(b.say("sheet.gauge", "figure", figureText(l.Gauge[u]), "unit", b.word("unit", u)))
+	}
+	if l.Flag {
+		add(b.say("sheet.flagged"))
+	}
+	return strings.Join(parts, "; ")
+}
+
+func (b *book) boundsText(code string, l forms.Bounds, unit string) string {
+	switch {
+	case l.Min != nil && l.Max != nil:
+		return b.say("sheet.limit_range", "min", figureText(*l.Min), "max", figureText(*l.Max), "unit", unit)
+	case l.Min != nil:
+		return b.say("sheet.limit_min", "min", figureText(*l.Min), "unit", unit)
+	case l.Max != nil:
+		return b.say("sheet.limit_max", "max", figureText(*l.Max), "unit", unit)
+	case len(l.OneOf) > 0:
+		return b.say("sheet.limit_one_of", "values", b.oneOf(code, l.OneOf))
+	}
+	return ""
 }
 
 // whenText says under which conditions a limit applies.
-func (b *book) whenText(v any) string {
-	list, _ := v.([]any)
+func (b *book) whenText(when []forms.Condition) string {
 	var parts []string
-	for _, item := range list {
-		cond, _ := item.(map[string]any)
-		subject := said(cond["reading"])
-		if subject == "" {
-			subject = said(cond["field"])
+	for _, c := range when {
+		subject := c.Reading + c.Field
+		add := func(how, what string) {
+			parts = append(parts, strings.TrimSpace(b.readingName(subject)+" "+b.word("sheet.when", how)+" "+what))
 		}
-		for _, k := range slices.Sorted(maps.Keys(cond)) {
-			if k != "reading" && k != "field" {
-				parts = append(parts, b.readingName(subject)+" "+b.word("sheet.when", k)+" "+b.optionList(subject, cond[k]))
+		if c.Is != nil {
+			add("is", b.values(subject, c.Is))
+		}
+		if c.Not != nil {
+			add("not", b.values(subject, c.Not))
+		}
+		for _, n := range []struct {
+			how  string
+			than *float64
+		}{{"at_least", c.AtLeast}, {"at_most", c.AtMost}, {"above", c.Above}, {"below", c.Below}} {
+			if n.than != nil {
+				add(n.how, figureText(*n.than))
 			}
+		}
+		if c.Missing {
+			add("missing", "")
 		}
 	}
 	return strings.Join(parts, "; ")
 }
 
-func (b *book) optionList(code string, v any) string {
-	list, ok := v.([]any)
-	if !ok {
-		return b.option(code, said(v))
+func (b *book) values(code string, list forms.OneOf) string {
+	var texts []string
+	for _, v := range list {
+		switch v := v.(type) {
+		case float64:
+			texts = append(texts, figureText(v))
+		case string:
+			texts = append(texts, b.option(code, v))
+		}
 	}
-	values := make([]string, len(list))
-	for i, v := range list {
-		values[i] = b.option(code, said(v))
+	return strings.Join(texts, ", ")
+}
+
+func sortedKeys[V any](m map[string]V) []string {
+	keys := make([]string, 0, len(m))
+	for k := range m {
+		keys = append(keys, k)
 	}
-	return strings.Join(values, ", ")
+	slices.Sort(keys)
+	return keys
 }

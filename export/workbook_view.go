@@ -74,12 +74,10 @@ func FromView(v *store.View, ask WorkbookAsk) (WorkbookSource, error) {
 	if err != nil {
 		return src, err
 	}
-	if src.Limits, err = limitLines(words, sets); err != nil {
-		return src, err
-	}
+	src.Limits = limitLines(words, sets)
 	src.Devices = deviceLines(v, src.Sites)
 	src.Due = dueLines(v, src.Sites, ask.Now)
-	reader := entryReader{view: v, ask: ask, sets: map[string]*forms.LimitSet{}}
+	reader := entryReader{view: v, ask: ask, sets: map[string]*forms.LimitSet{}, forms: map[string]*forms.Form{}}
 	for _, set := range sets {
 		reader.sets[limitRevision(set.ID, set.Revision)] = set
 	}
@@ -161,9 +159,17 @@ type entryReader struct {
 	ask         WorkbookAsk
 	instruments map[string]string
 	sets        map[string]*forms.LimitSet // by set and revision
+	forms       map[string]*forms.Form
 }
 
 func (r *entryReader) lines(sites []store.Site) (iter.Seq2[EntryLine, error], error) {
+	list, err := r.view.Forms()
+	if err != nil {
+		return nil, err
+	}
+	for _, f := range list {
+		r.forms[f.ID] = f
+	}
 	instruments, err := r.view.Instruments()
 	if err != nil {
 		return nil, err

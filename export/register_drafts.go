@@ -1,0 +1,301 @@
+package export
+
+import (
+	"fmt"
+	"strings"
+
+	"tripwell/store"
+)
+
+// RegisterPlan is what an import will append, before it does.
+type RegisterPlan struct {
+	Rows       []RowDrafts
+	Problems   []RowProblem
+	NeedTag    []TagWant // fixed devices and portable items in the file that will have no tag
+	Added      int
+	Changed    int
+	Unchanged  int
+	SitesAdded int
+}
+
+// RowDrafts are the records of one row; they are appended together.
+type RowDrafts struct {
+	Line   int
+	Drafts []store.Draft
+}
+
+// TagWant is a place or portable item without a tag.
+type TagWant struct{ Log, Subject string }
+
+// RegisterDrafts turns rows into records: what is new is registered under ids made from its key, what differs becomes
+// field changes, what is the same becomes nothing. It reads the view and writes nothing.
+func RegisterDrafts(v *store.View, by string, rows []RegisterRow, ask RegisterAsk) (RegisterPlan, error) {
+	k, err := readKnown(v, rows, ask.Now)
+	if err != nil {
+		return RegisterPlan{}, err
+	}
+	return planRegister(k, by, rows), nil
+}
+
+type registerPlanner struct {
+	*known
+	by    string
+	plan  RegisterPlan
+	lines map[string]int // line a key was first seen on
+	order map[string]int // walking order given so far, by room
+	first map[string]RegisterRow
+	out   []store.Draft
+}
+
+func planRegister(k *known, by string, rows []RegisterRow) RegisterPlan {
+	p := &registerPlanner{known: k, by: by, lines: map[string]int{}, order: map[string]int{}, first: siteFacts(rows)}
+	for _, row := range rows {
+		p.row(row)
+	}
+	return p.plan
+}
+
+// siteFacts gathers what any row of a site says of the site: sheets often fill it in once.
+func siteFacts(rows []RegisterRow) map[string]RegisterRow {
+	facts := map[string]RegisterRow{}
+	for _, r := range rows {
+		f := facts[r.Site]
+		for _, part := range []struct{ into, from *string }{
+			{&f.SiteName, &r.SiteName}, {&f.Zone, &r.Zone}, {&f.Standard, &r.Standard}, {&f.Address, &r.Address},
+		} {
+			if *part.into == "" {
+				*part.into = *part.from
+			}
+		}
+		facts[r.Site] = f
+	}
+	return facts
+}
+
+func (p *registerPlanner) row(row RegisterRow) {
+	p.out = nil
+	wrong := func(column, value, text string) {
+		p.plan.Problems = append(p.plan.Problems, RowProblem{Line: row.Line, Column: column, Value: cut(value), Text: text, Skipped: true})
+	}
+	site, isNew, text := p.site(row)
+	if text != "" {
+		wrong("zone", "", text)
+		return
+	}
+	key := site.ID + "\x1f" + row.key()
+	if line, twice := p.lines[key]; twice {
+		wrong("place", fieldText(row.Place, "name"), fmt.Sprintf("Line %d already names a device at this place. Give each its own place, or its own circuit at a panel.", line))
+		return
+	}
+	d := p.device(site, key, &row)
+	if d.gone {
+		wrong("place", fieldText(row.Place, "name"), "The device of this row was retired. Register its successor on the device's page.")
+		return
+	}
+	if holder := p.tags[row.Tag]; row.Tag != "" && holder != "" && holder != d.tagged {
+		wrong("tag", row.Tag, "This tag is bound to another place already. Correct it, or leave it empty.")
+		return
+	}
+	p.lines[key] = row.Line
+	if isNew {
+		p.sites[row.Site] = site
+		p.plan.SitesAdded++
+	}
+	p.place(site, d, &row)
+	p.circuit(site, d, &row)
+	p.register(site, d, &row)
+	p.tag(site, d, &row)
+	p.count(d, row.Line)
+}
+
+func (p *registerPlanner) count(d *rowDevice, line int) {
+	switch {
+	case d.was == nil:
+		p.plan.Added++
+	case len(p.out) > 0:
+		p.plan.Changed++
+	default:
+		p.plan.Unchanged++
+	}
+	if len(p.out) > 0 {
+		p.plan.Rows = append(p.plan.Rows, RowDrafts{Line: line, Drafts: p.out})
+	}
+}
+
+// site finds the site of a row or drafts its registration.
+func (p *registerPlanner) site(row RegisterRow) (site store.Site, isNew bool, text string) {
+	if s, ok := p.sites[row.Site]; ok {
+		return s, false, ""
+	}
+	f := p.first[row.Site]
+	if f.Zone == "" {
+		return site, false, fmt.Sprintf("The site %s is new, and its time zone is not stated in any of its rows. Fill in zone, such as America/Chicago.", row.Site)
+	}
+	site = store.Site{ID: importID("site", row.Site), Code: row.Site, Name: f.SiteName, Zone: f.Zone, Standard: f.Standard, Address: f.Address}
+	if site.Name == "" {
+		site.Name = row.Site
+	}
+	set := map[string]any{"code": site.Code, "name": site.Name, "zone": site.Zone}
+	for name, v := range map[string]string{"standard": site.Standard, "address": site.Address} {
+		if v != "" {
+			set[name] = v
+		}
+	}
+	p.add(site.ID, "site.registered", site.ID, site.ID, set)
+	return site, true, ""
+}
+
+// rowDevice is the device of a row: as it is known, or as it will be.
+type rowDevice struct {
+	id, place string
+	was       *store.Device // nil: new
+	tagged    string        // subject that carries the tag
+	gone      bool
+}
+
+func (p *registerPlanner) device(site store.Site, key string, row *RegisterRow) *rowDevice {
+	kind := fieldText(row.Device, "kind")
+	d := &rowDevice{id: importID("device", row.Site, row.key()), was: p.devices[key]}
+	if d.was == nil {
+		d.was = p.byID[d.id]
+	}
+	if d.was == nil && p.gone(d.id) {
+		d.gone = true
+	}
+	if d.was != nil {
+		d.id, d.place = d.was.ID, d.was.Place.ID
+	}
+	if !isPortable(kind) && d.place == "" {
+		d.place = importID("place", row.Site, row.key())
+	}
+	d.tagged = d.place
+	if isPortable(kind) {
+		d.tagged = d.id
+	}
+	return d
+}
+
+// place drafts the place of a fixed device; a portable item only notes where it is.
+func (p *registerPlanner) place(site store.Site, d *rowDevice, row *RegisterRow) {
+	if d.place == "" {
+		var parts []string
+		for _, n := range []string{"building", "floor", "room", "name"} {
+			if s := fieldText(row.Place, n); s != "" {
+				parts = append(parts, s)
+			}
+		}
+		if len(parts) > 0 {
+			row.Device["where"] = strings.Join(parts, " · ")
+		}
+		return
+	}
+	if d.was != nil && d.was.Place.ID != "" {
+		w := d.was.Place
+		have := map[string]any{"building": w.Building, "floor": w.Floor, "room": w.Room, "name": w.Name, "order": w.Order, "critical_load": w.CriticalLoad}
+		p.change("place.set", site.ID, d.place, row.Place, have)
+		return
+	}
+	if row.Place["name"] == nil && isAtPanel(fieldText(row.Device, "kind")) {
+		row.Place["name"] = strings.Trim(row.Panel+" / "+row.CircuitNo, " /")
+	}
+	if row.Place["order"] == nil {
+		room := strings.ToLower(strings.Join([]string{site.ID, fieldText(row.Place, "building"), fieldText(row.Place, "floor"), fieldText(row.Place, "room")}, "\x1f"))
+		p.order[room]++
+		row.Place["order"] = float64(p.order[room])
+	}
+	p.add(d.place, "place.registered", site.ID, d.place, row.Place)
+}
+
+// circuit drafts panel and circuit where they are new or their fields differ.
+func (p *registerPlanner) circuit(site store.Site, d *rowDevice, row *RegisterRow) {
+	if row.Panel == "" {
+		return
+	}
+	panelKey := circuitKey(site.ID, row.Panel, "")
+	panel, ok := p.panels[panelKey]
+	if !ok {
+		panel = importID("panel", row.Site, strings.ToLower(row.Panel))
+		p.panels[panelKey] = panel
+		if id := importID("panel.set", row.Site, strings.ToLower(row.Panel)); !p.done(id) {
+			p.add(id, "panel.set", site.ID, panel, map[string]any{"name": row.Panel})
+		}
+	}
+	if row.CircuitNo == "" {
+		return
+	}
+	key := circuitKey(site.ID, row.Panel, row.CircuitNo)
+	c, ok := p.circuits[key]
+	if !ok {
+		c = knownCircuit{id: importID("circuit", row.Site, strings.ToLower(row.Panel), strings.ToLower(row.CircuitNo))}
+		id := importID("circuit.set", row.Site, strings.ToLower(row.Panel), strings.ToLower(row.CircuitNo))
+		if !p.done(id) {
+			set := map[string]any{"panel": panel, "numbers": row.CircuitNo}
+			for n, v := range row.Circuit {
+				set[n] = v
+			}
+			p.add(id, "circuit.set", site.ID, c.id, set)
+			c.fields = set
+		}
+		p.circuits[key] = c
+	}
+	if c.fields != nil {
+		p.change("circuit.set", site.ID, c.id, row.Circuit, c.fields)
+	}
+	row.Device["circuit"] = c.id
+}
+
+// register drafts the device itself.
+func (p *registerPlanner) register(site store.Site, d *rowDevice, row *RegisterRow) {
+	if d.was != nil {
+		p.change("device.set", site.ID, d.id, row.Device, d.was.Fields)
+		return
+	}
+	if d.place != "" {
+		row.Device["place"] = d.place
+	}
+	p.add(d.id, "device.registered", site.ID, d.id, row.Device)
+}
+
+// tag binds the tag of a row, or notes that there is none.
+func (p *registerPlanner) tag(site store.Site, d *rowDevice, row *RegisterRow) {
+	has := ""
+	if d.was != nil {
+		has = d.was.Tag
+	}
+	switch {
+	case row.Tag == "" && has == "":
+		p.plan.NeedTag = append(p.plan.NeedTag, TagWant{site.ID, d.tagged})
+	case row.Tag != "" && row.Tag != has:
+		if has != "" {
+			p.draft("", "tag.freed", site.ID, d.tagged, map[string]any{"tag": has})
+		}
+		id := importID("tag.bound", row.Site, row.key(), row.Tag)
+		if d.was != nil {
+			id = "" // bound a second time, perhaps back to an earlier tag: a record of its own
+		}
+		p.draft(id, "tag.bound", site.ID, d.tagged, map[string]any{"tag": row.Tag})
+		p.tags[row.Tag] = d.tagged
+	}
+}
+
+// change drafts the wanted fields that differ.
+func (p *registerPlanner) change(kind, log, subject string, want, have map[string]any) {
+	set := map[string]any{}
+	for name, v := range want {
+		if !sameValue(v, have[name]) {
+			set[name] = v
+			have[name] = v
+		}
+	}
+	if len(set) > 0 {
+		p.add("", kind, log, subject, set)
+	}
+}
+
+func (p *registerPlanner) add(id, kind, log, subject string, set map[string]any) {
+	p.draft(id, kind, log, subject, map[string]any{"set": set})
+}
+
+func (p *registerPlanner) draft(id, kind, log, subject string, body map[string]any) {
+	p.out = append(p.out, store.Draft{ID: id, Kind: kind, Log: log, Subject: subject, By: p.by, Body: body})
+}

@@ -1,0 +1,154 @@
+package export
+
+import (
+	"encoding/json"
+	"errors"
+	"strings"
+	"time"
+
+	"tripwell/forms"
+	"tripwell/store"
+	"tripwell/store/record"
+)
+
+// orgKey begins the key of every imported id. A store is one organisation, and the same file must make the same ids on
+// any of its servers, so it names the organisation by a constant.
+const orgKey = "org"
+
+// placeKey is what a row is known by within its site: where it is; at a panel also the circuit, because several devices
+// share one place there; a portable item by its serial, else its tag, else its place. Letter case does not count.
+func placeKey(kind, building, floor, room, spot, panel, circuit, serial, tag string) string {
+	parts := []string{"at", building, floor, room, spot}
+	switch {
+	case isPortable(kind) && serial != "":
+		parts = []string{"serial", serial}
+	case isPortable(kind) && tag != "":
+		parts = []string{"tag", tag}
+	case isAtPanel(kind):
+		parts = append(parts, panel, circuit)
+	}
+	return strings.ToLower(strings.Join(parts, "\x1f"))
+}
+
+func (row *RegisterRow) key() string {
+	spot := fieldText(row.Place, "name")
+	return placeKey(fieldText(row.Device, "kind"), fieldText(row.Place, "building"), fieldText(row.Place, "floor"),
+		fieldText(row.Place, "room"), spot, row.Panel, row.CircuitNo, fieldText(row.Device, "serial"), row.Tag)
+}
+
+func fieldText(m map[string]any, name string) string {
+	s, _ := m[name].(string)
+	return s
+}
+
+// known is what the store holds of the sites a register names.
+type known struct {
+	sites    map[string]store.Site // by code in capitals
+	devices  map[string]*store.Device
+	byID     map[string]*store.Device
+	circuits map[string]knownCircuit // by site, panel and number
+	panels   map[string]string       // by site and panel
+	tags     map[string]string       // subject a tag is bound to
+	gone     func(id string) bool    // a device that is registered and no longer in service
+	done     func(id string) bool    // a record of this id is in the book
+}
+
+type knownCircuit struct {
+	id     string
+	fields map[string]any
+}
+
+func circuitKey(site, panel, no string) string {
+	return strings.ToLower(site + "\x1f" + panel + "\x1f" + no)
+}
+
+// readKnown looks up what is there already, by code and by key, before anything is made.
+func readKnown(v *store.View, rows []RegisterRow, now time.Time) (*known, error) {
+	k := &known{
+		sites: map[string]store.Site{}, devices: map[string]*store.Device{}, byID: map[string]*store.Device{},
+		circuits: map[string]knownCircuit{}, panels: map[string]string{}, tags: map[string]string{},
+	}
+	sites, err := v.Sites()
+	if err != nil {
+		return nil, err
+	}
+	named := map[string]bool{}
+	for _, r := range rows {
+		named[r.Site] = true
+	}
+	for _, s := range sites {
+		code := strings.ToUpper(s.Code)
+		if !named[code] {
+			continue
+		}
+		k.sites[code] = s
+		if err := k.readSite(v, s, forms.DayOf(now.In(s.Location()))); err != nil {
+			return nil, err
+		}
+	}
+	for _, r := range rows {
+		if err := k.readTag(v, r.Tag); err != nil {
+			return nil, err
+		}
+	}
+	k.gone = func(id string) bool {
+		_, err := v.Device(id, forms.DayOf(now))
+		return err == nil
+	}
+	k.done = func(id string) bool {
+		_, _, err := v.Record(id)
+		return err == nil
+	}
+	return k, nil
+}
+
+func (k *known) readSite(v *store.View, s store.Site, today forms.Day) error {
+	for row, err := range v.Devices(s.ID) {
+		if err != nil {
+			return err
+		}
+		if row.Retired {
+			continue
+		}
+		d, err := v.Device(row.ID, today)
+		if err != nil {
+			return err
+		}
+		k.byID[d.ID] = &d
+		serial := fieldText(d.Fields, "serial")
+		k.devices[s.ID+"\x1f"+placeKey(d.Kind, d.Place.Building, d.Place.Floor, d.Place.Room, d.Place.Name, d.Panel, d.Circuit, serial, d.Tag)] = &d
+		if id := fieldText(d.Fields, "circuit"); id != "" && d.Circuit != "" {
+			k.circuits[circuitKey(s.ID, d.Panel, d.Circuit)] = knownCircuit{id: id}
+		}
+	}
+	return nil
+}
+
+func (k *known) readTag(v *store.View, tag string) error {
+	if tag == "" {
+		return nil
+	}
+	holders, err := v.Tag(tag)
+	var refused *store.Error
+	if err != nil && !(errors.As(err, &refused) && refused.Code == "not_found") {
+		return err
+	}
+	for _, h := range holders {
+		k.tags[tag] = h.Subject
+	}
+	return nil
+}
+
+// sameValue compares a wanted field with what the register holds, whatever number type it was read as.
+func sameValue(a, b any) bool {
+	if a == b {
+		return true
+	}
+	x, errX := json.Marshal(a)
+	y, errY := json.Marshal(b)
+	return errX == nil && errY == nil && string(x) == string(y)
+}
+
+func importID(parts ...string) string {
+	return record.NamedID(append([]string{orgKey}, parts...)...)
+}

@@ -1,8 +1,6 @@
 package server
 
 import (
-	"bytes"
-	"compress/gzip"
 	"crypto/sha256"
 	"encoding/hex"
 	"fmt"
@@ -11,6 +9,7 @@ import (
 	"path"
 	"strings"
 
+	"github.com/klauspost/compress/gzip"
 	"github.com/labstack/echo/v4"
 )
 
@@ -51,33 +50,18 @@ func readAssets(tree fs.FS) (*assets, error) {
 		}
 		fmt.Fprintf(sum, "%s %d\n", name, len(raw))
 		sum.Write(raw)
-		packed, err := gzipped(raw)
+		packed, err := gzipped(raw, gzip.BestCompression)
 		if err != nil {
 			return fmt.Errorf("assets: %s: %w", name, err)
+		}
+		if len(packed) > len(raw)*9/10 {
+			packed = nil
 		}
 		a.files[name] = asset{kind: kind, plain: raw, packed: packed}
 		return nil
 	})
 	a.hash = hex.EncodeToString(sum.Sum(nil))[:16]
 	return a, err
-}
-
-func gzipped(raw []byte) ([]byte, error) {
-	var b bytes.Buffer
-	w, err := gzip.NewWriterLevel(&b, gzip.BestCompression)
-	if err != nil {
-		return nil, err
-	}
-	if _, err := w.Write(raw); err != nil {
-		return nil, err
-	}
-	if err := w.Close(); err != nil {
-		return nil, err
-	}
-	if b.Len() > len(raw)*9/10 {
-		return nil, nil //nolint:nilnil // not worth packing
-	}
-	return b.Bytes(), nil
 }
 
 // root is the folder of all assets, for the field client: /assets/HASH/.

@@ -94,7 +94,7 @@ func (s *Server) exchangePull(c echo.Context) error {
 	if pulled.Records == nil {
 		pulled.Records = []store.PulledRecord{}
 	}
-	return s.sendJSON(c, 200, pullAnswer{Pulled: pulled, Now: s.now()})
+	return s.sendLongJSON(c, 200, pullAnswer{Pulled: pulled, Now: s.now()})
 }
 
 type askRequest struct {
@@ -140,7 +140,7 @@ func (s *Server) exchangeSnapshot(c echo.Context) error {
 	if err != nil {
 		return err
 	}
-	return s.sendJSON(c, 200, snap)
+	return s.sendLongJSON(c, 200, snap)
 }
 
 type personRow struct {

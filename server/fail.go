@@ -117,6 +117,7 @@ func (s *Server) told(c echo.Context, err error) Wrong {
 // fail answers every error a handler returned.
 func (s *Server) fail(err error, c echo.Context) {
 	if c.Response().Committed {
+		s.log.Error("fault after the answer began", "method", c.Request().Method, "route", c.Path(), "err", err)
 		return
 	}
 	if errors.Is(err, context.Canceled) && c.Request().Context().Err() != nil {

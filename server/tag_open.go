@@ -7,6 +7,7 @@ import (
 	"github.com/labstack/echo/v4"
 
 	"tripwell/store"
+	"tripwell/store/record"
 )
 
 // tagOpen answers the address printed on a label. Signed out, a known and an unknown tag look alike: the store is not
@@ -16,15 +17,31 @@ func (s *Server) tagOpen(c echo.Context) error {
 	if p.ID == "" {
 		return s.toSignIn(c)
 	}
-	tag := c.Param("tag")
+	tag, ok := record.ParseTag(c.Param("tag"))
 	if p.Role == "crew" {
-		return toPage(c, "/field#tag="+url.QueryEscape(tag))
+		if !ok {
+			tag = c.Param("tag")
+		}
+		return toPage(c, "/field#tag="+url.PathEscape(tag))
 	}
-	var device string
-	err := s.store.View(scope(c), func(v *store.View) error {
+	if !ok {
+		return errNoTag
+	}
+	device, err := s.deviceOfTag(scope(c), tag)
+	if err != nil {
+		return err
+	}
+	return toPage(c, "/devices/"+device)
+}
+
+var errNoTag = refuse(codeNotFound, "tag", "No device on your sites has this tag. Check its seven characters, or bind it to a device first.")
+
+// deviceOfTag gives the device a tag leads to. Where two hold the same tag the page of the first shows the clash.
+func (s *Server) deviceOfTag(sc store.Scope, tag string) (device string, err error) {
+	err = s.store.View(sc, func(v *store.View) error {
 		holders, err := v.Tag(tag)
 		if err != nil {
-			return err
+			return refusedAs(err, codeNotFound, errNoTag.Error())
 		}
 		for _, h := range holders {
 			if h.Device != "" {
@@ -32,12 +49,9 @@ func (s *Server) tagOpen(c echo.Context) error {
 				return nil
 			}
 		}
-		return refuse(codeNotFound, "tag", "No device on your sites has this tag. Check its seven characters, or bind it to a device first.")
+		return errNoTag
 	})
-	if err != nil {
-		return refusedAs(err, codeNotFound, "No device on your sites has this tag. Check its seven characters, or bind it to a device first.")
-	}
-	return toPage(c, "/devices/"+device)
+	return device, err
 }
 
 // fieldShow is the field client's shell; the client reads the rest of the address itself. The shell holds nothing of

@@ -1,0 +1,127 @@
+package main
+
+import (
+	"go/parser"
+	"go/token"
+	"io/fs"
+	"os"
+	"path"
+	"path/filepath"
+	"slices"
+	"strconv"
+	"strings"
+	"testing"
+)
+
+// rooms is the layer table of DEVELOPERS.md: for each package what of ours it may import. Tests of a package are held
+// too, except that they may import what only tests do.
+var rooms = map[string][]string{
+	"forms":        {},
+	"static":       {},
+	"store/record": {},
+	"store/proof":  {"store/record"},
+	"store":        {"forms", "store/record", "store/proof"},
+	"store/demo":   {"forms", "store/record", "store"},
+	"export":       {"forms", "static", "store", "store/record"},
+	"server":       {"forms", "static", "store", "store/record", "store/proof", "export"},
+	"cmd/tripwell": {"forms", "static", "store", "store/record", "store/proof", "store/demo", "export", "server"},
+}
+
+// onlyIn says which single room may use a library; a prefix of the import path names it.
+var onlyIn = map[string][]string{
+	"github.com/labstack/echo":       {"server"},
+	"go.etcd.io/bbolt":               {"store"},
+	"github.com/xuri/excelize":       {"export"},
+	"github.com/skip2/go-qrcode":     {"export"},
+	"codeberg.org/go-pdf/fpdf":       {"export"},
+	"github.com/alecthomas/kong":     {"cmd/tripwell"},
+	"github.com/schollz/progressbar": {"cmd/tripwell"},
+}
+
+// pure rooms do no I/O and know no clock of their own.
+var pure = map[string][]string{
+	"forms":        {"net", "net/http", "os", "os/exec", "math/rand", "math/rand/v2", "crypto/rand", "database/sql"},
+	"store/record": {"net", "net/http", "os", "os/exec", "math/rand", "math/rand/v2", "crypto/rand"},
+}
+
+func TestLayers_ImportsRunOneWay(t *testing.T) {
+	root := filepath.Join("..", "..")
+	seen := map[string]bool{}
+	err := filepath.WalkDir(root, func(file string, entry fs.DirEntry, err error) error {
+		if err != nil {
+			return err
+		}
+		if entry.IsDir() {
+			if name := entry.Name(); name != ".." && (strings.HasPrefix(name, ".") || name == "node_modules" || name == "testdata") {
+				return fs.SkipDir
+			}
+			return nil
+		}
+		if !strings.HasSuffix(file, ".go") {
+			return nil
+		}
+		rel, err := filepath.Rel(root, file)
+		if err != nil {
+			return err
+		}
+		room := path.Dir(filepath.ToSlash(rel))
+		seen[room] = true
+		checkImports(t, room, file)
+		return nil
+	})
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, room := range []string{"forms", "store", "store/record", "store/demo", "export", "server", "static", "cmd/tripwell"} {
+		if !seen[room] {
+			t.Errorf("no Go file found in %s: the test looks in the wrong folder", room)
+		}
+	}
+}
+
+// checkImports holds one file against the tables.
+func checkImports(t *testing.T, room, file string) {
+	t.Helper()
+	allowed, known := rooms[room]
+	if !known {
+		t.Errorf("%s: package %s stands in no row of the layer table: add it there and in DEVELOPERS.md, or put the file elsewhere", file, room)
+		return
+	}
+	parsed, err := parser.ParseFile(token.NewFileSet(), file, nil, parser.ImportsOnly)
+	if err != nil {
+		t.Error(err)
+		return
+	}
+	test := strings.HasSuffix(file, "_test.go")
+	for _, spec := range parsed.Imports {
+		name, err := strconv.Unquote(spec.Path.Value)
+		if err != nil {
+			t.Error(err)
+			continue
+		}
+		if ours, ok := strings.CutPrefix(name, "tripwell/"); ok && ours != room && !slices.Contains(allowed, ours) && !test {
+			t.Errorf("%s imports %s: the layer table lets %s import %v of ours", file, ours, room, allowed)
+		}
+		for library, homes := range onlyIn {
+			if (name == library || strings.HasPrefix(name, library+"/")) && !slices.Contains(homes, room) && !test {
+				t.Errorf("%s imports %s, which belongs in %v only", file, name, homes)
+			}
+		}
+		if slices.Contains(pure[room], name) && !test {
+			t.Errorf("%s imports %s: %s is pure", file, name, room)
+		}
+	}
+}
+
+// The table in DEVELOPERS.md must name every room that the test holds.
+func TestLayers_TableIsWritten(t *testing.T) {
+	raw, err := os.ReadFile(filepath.Join("..", "..", "DEVELOPERS.md"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	for room := range rooms {
+		if !strings.Contains(string(raw), "| `"+room+"` |") {
+			t.Errorf("DEVELOPERS.md has no row for %s", room)
+		}
+	}
+}

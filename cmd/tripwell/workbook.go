@@ -1,0 +1,42 @@
+package main
+
+import (
+	"io"
+	"net/url"
+)
+
+type workbookCmd struct {
+	folder
+	author
+	outFile
+	Site string `name:"site" placeholder:"CODE" help:"Only this site; all sites when left out."`
+	period
+}
+
+// Help gives an example.
+func (workbookCmd) Help() string {
+	return "Writes the workbook an auditor gets: cover, register, entries, readings, flags, dates and limits. That it was taken is itself recorded.\n\nExample:\n\n    tripwell workbook -o kiln-lane-2026.xlsx --data /srv/tripwell --site KILN-LANE --from 2026-01-01 --to 2026-12-31"
+}
+
+// Run writes the workbook to the file.
+func (c workbookCmd) Run(e *env) error {
+	if err := c.period.check(); err != nil {
+		return err
+	}
+	d, err := e.openDoor(c.Data)
+	if err != nil {
+		return err
+	}
+	defer d.close()
+	query := url.Values{}
+	setIf(query, "site", c.Site)
+	setIf(query, "from", c.From.text())
+	setIf(query, "to", c.To.text())
+	setIf(query, "by", c.By)
+	body, err := d.get(e.ctx, "/owner/workbook", query)
+	if err != nil {
+		return err
+	}
+	defer body.Close()
+	return c.write(e, func(w io.Writer) error { return copyOut(e, w, body, "workbook") })
+}

@@ -26,18 +26,15 @@ func (c labelsCmd) Run(e *env) error {
 	if c.Start < 1 {
 		return usageError{fmt.Errorf("--start %d: labels on a sheet are counted from 1", c.Start)}
 	}
-	d, err := e.openDoor(c.Data)
-	if err != nil {
-		return err
-	}
-	defer d.close()
 	query := url.Values{"sheet": {c.Sheet}, "start": {strconv.Itoa(c.Start)}}
 	setIf(query, "site", c.Site)
 	setIf(query, "by", c.By)
-	body, err := d.get(e.ctx, "/owner/labels", query)
-	if err != nil {
-		return err
-	}
-	defer body.Close()
-	return c.write(e, func(w io.Writer) error { return copyOut(e, w, body, "labels") })
+	return e.with(c.Data, func(d *door) error {
+		body, err := d.get("/own/labels", query)
+		if err != nil {
+			return err
+		}
+		defer body.Close()
+		return c.write(e, func(w io.Writer) error { return copyOut(e, w, body, "labels") })
+	})
 }

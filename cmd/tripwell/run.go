@@ -11,7 +11,14 @@ import (
 
 // cli is every command with its flags; one file per command holds its Run.
 type cli struct {
-	Version versionCmd `cmd:"" help:"Print the program's version."`
+	Demo     demoCmd     `cmd:"" help:"Serve an invented organisation on this machine, to try things out."`
+	Serve    serveCmd    `cmd:"" help:"Serve a store."`
+	Due      dueCmd      `cmd:"" help:"List what is due or overdue."`
+	Workbook workbookCmd `cmd:"" help:"Write the workbook an auditor gets."`
+	Labels   labelsCmd   `cmd:"" help:"Write sheets of labels."`
+	Check    checkCmd    `cmd:"" help:"Read the whole store and say whether anything is wrong."`
+	Rebuild  rebuildCmd  `cmd:"" help:"Compute all lists anew from the records."`
+	Version  versionCmd  `cmd:"" help:"Print the program's version."`
 }
 
 // env is what a command may touch beside its flags.

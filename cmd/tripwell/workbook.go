@@ -23,20 +23,17 @@ func (c workbookCmd) Run(e *env) error {
 	if err := c.period.check(); err != nil {
 		return err
 	}
-	d, err := e.openDoor(c.Data)
-	if err != nil {
-		return err
-	}
-	defer d.close()
 	query := url.Values{}
 	setIf(query, "site", c.Site)
 	setIf(query, "from", c.From.text())
 	setIf(query, "to", c.To.text())
 	setIf(query, "by", c.By)
-	body, err := d.get(e.ctx, "/owner/workbook", query)
-	if err != nil {
-		return err
-	}
-	defer body.Close()
-	return c.write(e, func(w io.Writer) error { return copyOut(e, w, body, "workbook") })
+	return e.with(c.Data, func(d *door) error {
+		body, err := d.get("/own/workbook", query)
+		if err != nil {
+			return err
+		}
+		defer body.Close()
+		return c.write(e, func(w io.Writer) error { return copyOut(e, w, body, "workbook") })
+	})
 }

@@ -129,11 +129,11 @@ func (d *device) measured(f fate, sinceFirst forms.Day, in *instrument, r *rand.
 		tripReading = number(10*math.Round(10*trip)/10, 0, "mA")
 	}
 	known := map[string]forms.Reading{
-		"trip_current_ma":  tripReading,
-		"test_current_ma":  number(test, 1, "mA"),
-		"trip_time_ms":     number(share*tripLimitMS(test), 0, "ms"),
-		"ground_ohm":       number(d.groundOhm*scatter(0.06), 2, "ohm"),
-		"voltage_v":        number(119.4+2.6*(2*r.Float64()-1), 1, "V"),
+		"trip_current_ma": tripReading,
+		"test_current_ma": number(test, 1, "mA"),
+		"trip_time_ms":    number(share*tripLimitMS(test), 0, "ms"),
+		"ground_ohm":      number(d.groundOhm*scatter(0.06), 2, "ohm"),
+		"voltage_v":       number(119.4+2.6*(2*r.Float64()-1), 1, "V"),
 	}
 	if d.residualMA > 0 {
 		known["trip_current_ma"] = number(d.residualMA*(0.66+0.2*r.Float64()), 1, "mA")
@@ -181,4 +181,3 @@ func (d *device) faces(f fate, r *rand.Rand) []forms.SeriesReading {
 		{At: map[string]any{"face": "lower"}, Readings: map[string]forms.Reading{"retention_g": number(d.retention(f, r), 0, "g")}},
 	}
 }
-

@@ -23,8 +23,9 @@ const LabelURL = "https://demo.tripwell.example"
 // Months is how far back the entries go.
 const Months = 14
 
-// Build makes a demo store in dir, which must hold none, with entries until the day before now, and closes it.
-func Build(ctx context.Context, dir string, now time.Time) error {
+// Build makes a demo store in dir, which must hold none, with entries until the day before now, and closes it. progress
+// hears how many days are done of how many; it may be nil.
+func Build(ctx context.Context, dir string, now time.Time, progress func(done, total int)) error {
 	today := forms.DayOf(now.UTC())
 	first := firstOfMonth(today, -Months)
 	b := &builder{
@@ -36,7 +37,10 @@ func Build(ctx context.Context, dir string, now time.Time) error {
 		return fmt.Errorf("demo store: %w", err)
 	}
 	b.store = s
-	if err := b.all(); err != nil {
+	if progress == nil {
+		progress = func(int, int) {}
+	}
+	if err := b.all(progress); err != nil {
 		_ = s.Close()
 		return fmt.Errorf("demo organisation: %w", err)
 	}
@@ -81,7 +85,7 @@ func (b *builder) on(at time.Time, act func() error) {
 }
 
 // all sets the organisation up and walks through its days. Acts may put further events on later days.
-func (b *builder) all() error {
+func (b *builder) all(progress func(done, total int)) error {
 	b.events = map[forms.Day][]event{}
 	if err := b.setUp(); err != nil {
 		return err
@@ -97,6 +101,7 @@ func (b *builder) all() error {
 		if err := b.live(day); err != nil {
 			return fmt.Errorf("%s: %w", day, err)
 		}
+		progress(int(day-b.first)+setupDays+1, int(b.today-b.first)+setupDays)
 	}
 	return nil
 }

@@ -63,11 +63,7 @@ func (b *builder) setPeople() error {
 		for _, code := range codes {
 			p.Sites = append(p.Sites, siteID(at, code))
 		}
-		by := b.manager.ID
-		if by == "" {
-			by = p.ID
-		}
-		p, err := b.store.PutPerson(b.ctx, by, p)
+		p, err := b.store.PutPerson(b.ctx, b.manager.ID, p)
 		if err != nil {
 			return p, fmt.Errorf("person %s: %w", name, err)
 		}

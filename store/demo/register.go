@@ -180,8 +180,8 @@ func (b *builder) setSites() error {
 		drafts := []store.Draft{{Kind: "site.registered", Subject: s.id, Body: set(
 			"code", plan.code, "name", plan.name, "zone", plan.zone, "standard", "NEC", "address", plan.address)}}
 		drafts = append(drafts, b.wiringDrafts(s)...)
-		for i, sp := range plan.spots {
-			d := newDevice(at, s, sp, i)
+		for _, sp := range plan.spots {
+			d := newDevice(at, s, sp)
 			d.tag, tags = tags[0], tags[1:]
 			s.devices = append(s.devices, d)
 			drafts = append(drafts, d.registerDrafts()...)
@@ -253,7 +253,7 @@ func circuitID(s *site, sp spot) string {
 }
 
 // newDevice gives the device at a spot its hidden nature.
-func newDevice(at time.Time, s *site, sp spot, i int) *device {
+func newDevice(at time.Time, s *site, sp spot) *device {
 	key := []string{"device", s.code, sp.building, sp.floor, sp.room, sp.name}
 	r := chance(key...)
 	d := &device{spot: sp, site: s, id: newID(at, key...), place: newID(at, append([]string{"place"}, key...)...), last: map[string]forms.Day{}}
@@ -268,7 +268,6 @@ func newDevice(at time.Time, s *site, sp spot, i int) *device {
 	if sp.story == "pantry" {
 		d.installed = forms.Date(2021, time.March, 9)
 	}
-	_ = i
 	return d
 }
 

@@ -11,6 +11,7 @@ import (
 
 	"github.com/labstack/echo/v4"
 
+	"tripwell/export"
 	"tripwell/forms"
 	"tripwell/store"
 )
@@ -22,6 +23,7 @@ func ownerRoutes() []route {
 		{get, "/own/due", owner, (*Server).ownDue, 0},
 		{get, "/own/workbook", owner, (*Server).ownWorkbook, 0},
 		{get, "/own/labels", owner, (*Server).ownLabels, 0},
+		{post, "/own/import/register", owner, (*Server).ownImportRegister, importLimit},
 		{get, "/own/check", owner, (*Server).ownCheck, 0},
 		{post, "/own/rebuild", owner, (*Server).ownRebuild, 0},
 	}
@@ -169,6 +171,22 @@ func (s *Server) ownLabels(c echo.Context) error {
 		return err
 	}
 	return s.sendLabels(c, ownerScope, by)
+}
+
+// ownImportRegister takes a register as CSV in the body and answers as work does; its report is export.ImportReport.
+// Query: by (person), tags=new (give every place of the file without a tag a new one).
+func (s *Server) ownImportRegister(c echo.Context) error {
+	by, err := s.ownBy(c)
+	if err != nil {
+		return err
+	}
+	var also []export.ImportOption
+	if c.QueryParam("tags") == "new" {
+		also = append(also, export.MintTags)
+	}
+	return s.work(c, func(ctx context.Context, progress func(done, total int64)) (any, error) {
+		return export.ImportRegister(ctx, s.store, by, c.Request().Body, func(done, total int) { progress(int64(done), int64(total)) }, also...)
+	})
 }
 
 // ownBy is in whose name a command acts: the person asked for with by, else the first manager of all sites.

@@ -1,8 +1,6 @@
 package store
 
 import (
-	"context"
-	"io"
 	"iter"
 	"time"
 
@@ -242,34 +240,3 @@ type Instrument struct {
 	Ramp             *forms.Ramp
 	Retired          bool
 }
-
-// ---- proof and repair ------------------------------------------------------------------------------------------
-
-// Finding of Check: what is wrong and where.
-type CheckReport struct {
-	Records, Logs, Refused int64
-	ViewHash               string
-	Head                   string // signed note text, when one can be signed
-	Problems               []string
-}
-
-// Check reads the whole store in one read transaction: file structure, every record against its leaf and its place,
-// every log's root, ids, n, quarantine, and the read models against a rebuild. progress may be nil.
-func (s *Store) Check(ctx context.Context, progress func(done, total int64)) (CheckReport, error) {
-	panic("contract")
-}
-
-// Rebuild computes all read models anew from the book and writes them in one go.
-func (s *Store) Rebuild(ctx context.Context, progress func(done, total int64)) error {
-	panic("contract")
-}
-
-// ViewHash is the SHA-256 over (key, value) of every read-model bucket.
-func (s *Store) ViewHash() (string, error) { panic("contract") }
-
-// SignedHead signs the present head (note with origin tripwell/org/store/epoch) and keeps it; a store shorter than
-// what it once signed returns *Error code conflict and signs nothing.
-func (s *Store) SignedHead() (string, error) { panic("contract") }
-
-// WriteTo copies a consistent image of the file.
-func (s *Store) Backup(w io.Writer) (int64, error) { panic("contract") }

@@ -89,13 +89,7 @@ func (g *group) accept(r *record.Record, stamp record.Stamp, line []byte, leaf p
 	g.fresh[id] = fresh{g.seq, r.Raw, r.Log, pos}
 	g.order = append(g.order, id)
 	g.clock = max(g.clock, r.Clock)
-	if err := g.count(r, l.ord); err != nil {
-		return 0, err
-	}
-	if err := g.noteAccess(r, stamp); err != nil {
-		return 0, err
-	}
-	if err := g.noteTags(r); err != nil {
+	if err := g.note(r, stamp, l.ord); err != nil {
 		return 0, err
 	}
 	if err := g.recs.Put(key64(g.seq), g.recValue(l.ord, pos, line, r.Raw)); err != nil {
@@ -105,6 +99,17 @@ func (g *group) accept(r *record.Record, stamp record.Stamp, line []byte, leaf p
 		return 0, fmt.Errorf("append leaf %s: %w", r.ID, err)
 	}
 	return pos, nil
+}
+
+// note keeps what is counted from a record.
+func (g *group) note(r *record.Record, stamp record.Stamp, ord uint32) error {
+	if err := g.count(r, ord); err != nil {
+		return err
+	}
+	if err := g.noteAccess(r, stamp); err != nil {
+		return err
+	}
+	return g.noteTags(r)
 }
 
 // room gives n bytes that stay as they are until the transaction ends (bbolt keeps values by reference).

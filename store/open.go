@@ -1,6 +1,7 @@
 package store
 
 import (
+	"context"
 	"crypto/rand"
 	"errors"
 	"fmt"
@@ -47,6 +48,8 @@ type Store struct {
 	heads   sync.Mutex    // one signing at a time
 	groups  atomic.Int64  // committed since opening
 
+	rebuilding atomic.Bool // read models are being computed anew
+
 	faults faults
 }
 
@@ -76,6 +79,9 @@ func Open(dir string, o Options) (*Store, error) {
 	}
 	s := &Store{db: db, dir: dir, now: o.Now, queue: make(chan *job, queueLength), written: make(chan struct{})}
 	if err := s.start(o); err != nil {
+		return nil, errors.Join(err, db.Close())
+	}
+	if err := s.refresh(); err != nil {
 		return nil, errors.Join(err, db.Close())
 	}
 	go s.write()
@@ -123,6 +129,25 @@ func (s *Store) start(o Options) error {
 		}
 		return nil
 	})
+}
+
+// refresh rebuilds read models of another version of the program, or whose rebuild was cut off, and removes what a check
+// left behind when it was killed.
+func (s *Store) refresh() error {
+	for _, path := range leftovers(s.dir) {
+		if err := os.Remove(path); err != nil {
+			return fmt.Errorf("remove %s: %w", path, err)
+		}
+	}
+	stale := false
+	err := s.db.View(func(tx *bbolt.Tx) error {
+		stale = readKey64(tx.Bucket(bktMeta).Get(metaModel)) != modelVersion
+		return nil
+	})
+	if err == nil && stale {
+		err = rebuild(context.Background(), s, s.db, nil)
+	}
+	return err
 }
 
 // create makes the file under another name, fills it, and renames it: a power cut leaves a whole store or none.
@@ -268,6 +293,10 @@ func (s *Store) view(fn func(tx *bbolt.Tx) error) error {
 	if s.closed {
 		s.mu.RUnlock()
 		return errClosed
+	}
+	if s.rebuilding.Load() {
+		s.mu.RUnlock()
+		return errRebuilding
 	}
 	tx, err := s.db.Begin(false)
 	s.mu.RUnlock()

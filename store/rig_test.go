@@ -52,6 +52,13 @@ func (r *rig) finish() {
 		_ = r.Store.Close()
 		return
 	}
+	report, err := r.Check(context.Background(), nil)
+	if err != nil {
+		r.Errorf("check: %v", err)
+	}
+	for _, p := range report.Problems {
+		r.Errorf("check: %s", p)
+	}
 	if err := r.Store.Close(); err != nil {
 		r.Error(err)
 	}

@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"slices"
 
 	"go.etcd.io/bbolt"
 )
@@ -18,6 +19,7 @@ const (
 type job struct {
 	size int
 	run  func(g *group) error
+	own  func() error // instead of run: something that makes its own transactions while nobody else writes
 	err  error
 	done chan struct{}
 }
@@ -26,7 +28,15 @@ var errBusy = &Error{Code: "busy", Text: "The store is busy. Nothing was kept; s
 
 // do queues a job and waits for its answer. When ctx ends first the job may still be done: all jobs can be sent again.
 func (s *Store) do(ctx context.Context, size int, run func(g *group) error) error {
-	j := &job{size: size, run: run, done: make(chan struct{})}
+	return s.enqueue(ctx, &job{size: size, run: run, done: make(chan struct{})})
+}
+
+// alone runs something that makes its own transactions, while nobody else writes.
+func (s *Store) alone(ctx context.Context, own func() error) error {
+	return s.enqueue(ctx, &job{size: groupLimit, own: own, done: make(chan struct{})})
+}
+
+func (s *Store) enqueue(ctx context.Context, j *job) error {
 	s.mu.RLock()
 	if s.closed {
 		s.mu.RUnlock()
@@ -64,7 +74,12 @@ func (s *Store) write() {
 				break take
 			}
 		}
-		s.commit(jobs)
+		s.commit(slices.DeleteFunc(slices.Clone(jobs), func(j *job) bool { return j.own != nil }))
+		for _, j := range jobs {
+			if j.own != nil {
+				j.err = j.own()
+			}
+		}
 		for _, j := range jobs {
 			close(j.done)
 		}

@@ -4,8 +4,6 @@ import (
 	"encoding/json"
 	"fmt"
 	"strconv"
-
-	"github.com/go-json-experiment/json/jsontext"
 )
 
 // judging is one entry being judged.
@@ -351,11 +349,7 @@ func rawValue(r *Reading, own, unit string) json.RawMessage {
 		return append(appendNumber([]byte(`{"below":`), *r.Below), '}')
 	}
 	if s, ok := r.Text(); ok {
-		raw, err := jsontext.AppendQuote(make([]byte, 0, len(s)+2), s)
-		if err != nil {
-			raw = []byte(`""`) // not UTF-8, which no decoder here lets through
-		}
-		return raw
+		return appendString(make([]byte, 0, len(s)+2), s)
 	}
 	v, _ := r.figure(own, unit)
 	return appendNumber(make([]byte, 0, 12), v)

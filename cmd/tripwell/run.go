@@ -18,6 +18,8 @@ type cli struct {
 	Labels   labelsCmd   `cmd:"" help:"Write sheets of labels."`
 	Check    checkCmd    `cmd:"" help:"Read the whole store and say whether anything is wrong."`
 	Rebuild  rebuildCmd  `cmd:"" help:"Compute all lists anew from the records."`
+	Verdict  verdictCmd  `cmd:"" help:"Judge tests given as JSON lines."`
+	Forms    formsCmd    `cmd:"" help:"List device kinds, forms, readings and limits."`
 	Version  versionCmd  `cmd:"" help:"Print the program's version."`
 }
 

@@ -15,7 +15,7 @@ export function limitSetFor(device, form, sets) {
   return sets.find((s) => s.limit_set === wanted) ?? sets.find((s) => s.kinds.includes(device.kind)) ?? null;
 }
 
-const run = ({ form, limitSet, given }, readings, series) => judge({ form: form.form, given, readings, series }, form, limitSet);
+const run = ({ form, limitSet, given }, readings, series) => judge(form, limitSet, { given, readings, series });
 
 /** The verdict of what a walked form has so far. judged: {form, limitSet, given}. */
 export const judgeWalked = (judged, walked) => run(judged, walked.readings, walked.series);

@@ -2,7 +2,9 @@ package main
 
 import (
 	"fmt"
+	"io"
 	"net/http"
+	"net/url"
 
 	"tripwell/store"
 )
@@ -20,7 +22,7 @@ func (checkCmd) Help() string {
 func (c checkCmd) Run(e *env) error {
 	return e.with(c.Data, func(d *door) error {
 		var report store.CheckReport
-		if err := e.follow(d, http.MethodGet, "/own/check", "check", &report); err != nil {
+		if err := e.follow(d, http.MethodGet, "/own/check", nil, nil, "check", &report); err != nil {
 			return err
 		}
 		fmt.Fprintf(e.stdout, "%d records in %d logs, %d refused and kept aside.\nLists %s\n", report.Records, report.Logs, report.Refused, report.ViewHash)
@@ -39,10 +41,10 @@ func (c checkCmd) Run(e *env) error {
 }
 
 // follow runs something long on the store with a bar on the terminal.
-func (e *env) follow(d *door, method, path, what string, report any) error {
+func (e *env) follow(d *door, method, path string, query url.Values, body io.Reader, what string, report any) error {
 	bar := e.bar(-1, what)
 	defer func() { _ = bar.Finish() }()
-	return wrongFlag(d.Follow(e.ctx, method, path, nil, nil, func(done, total int64) {
+	return wrongFlag(d.Follow(e.ctx, method, path, query, body, func(done, total int64) {
 		if total > 0 && bar.GetMax64() != total {
 			bar.ChangeMax64(total)
 		}

@@ -20,7 +20,7 @@ func (rebuildCmd) Help() string {
 func (c rebuildCmd) Run(e *env) error {
 	return e.with(c.Data, func(d *door) error {
 		var report server.Rebuilt
-		if err := e.follow(d, http.MethodPost, "/own/rebuild", "rebuild", &report); err != nil {
+		if err := e.follow(d, http.MethodPost, "/own/rebuild", nil, nil, "rebuild", &report); err != nil {
 			return err
 		}
 		_, err := fmt.Fprintf(e.stdout, "Rebuilt. Lists %s\n", report.ViewHash)

@@ -13,6 +13,7 @@ import (
 type cli struct {
 	Demo     demoCmd     `cmd:"" help:"Serve an invented organisation on this machine, to try things out."`
 	Serve    serveCmd    `cmd:"" help:"Serve a store."`
+	Import   importCmd   `cmd:"" help:"Take in what exists elsewhere."`
 	Due      dueCmd      `cmd:"" help:"List what is due or overdue."`
 	Workbook workbookCmd `cmd:"" help:"Write the workbook an auditor gets."`
 	Labels   labelsCmd   `cmd:"" help:"Write sheets of labels."`

@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"io"
+	"strings"
 	"time"
 
 	"tripwell/store"
@@ -15,10 +16,20 @@ type RegisterAsk struct {
 }
 
 // ImportOption is something an import does besides.
-type ImportOption int
+type ImportOption func(*importing)
+
+type importing struct {
+	mintTags bool
+	site     string
+}
 
 // MintTags gives every place and portable item of the file that has no tag a new one.
-const MintTags ImportOption = iota + 1
+var MintTags ImportOption = func(i *importing) { i.mintTags = true }
+
+// SiteOfRows is the code of the site that rows which name none belong to.
+func SiteOfRows(code string) ImportOption {
+	return func(i *importing) { i.site = strings.ToUpper(strings.TrimSpace(code)) }
+}
 
 // ImportReport counts what an import did.
 type ImportReport struct {
@@ -40,7 +51,14 @@ const importBatch = 500
 // the sites. The same file a second time adds nothing. Rows with a problem are left out and named in the report; an
 // import that stopped half way is simply run again. progress may be nil.
 func ImportRegister(ctx context.Context, s *store.Store, by string, r io.Reader, progress func(done, total int), also ...ImportOption) (ImportReport, error) {
-	rows, problems, err := ReadRegisterCSV(r)
+	var how importing
+	for _, o := range also {
+		o(&how)
+	}
+	if how.site != "" && !isSiteCode(how.site) {
+		return ImportReport{}, &store.Error{Code: "invalid", Field: "site", Text: "A site code has 2 to 12 letters, digits or hyphens, such as ELM-4."}
+	}
+	rows, problems, err := readRegister(r, how.site)
 	if err != nil {
 		return ImportReport{Problems: problems}, err
 	}
@@ -61,11 +79,9 @@ func ImportRegister(ctx context.Context, s *store.Store, by string, r io.Reader,
 	if report.Records, err = appendRows(ctx, s, plan.Rows, progress); err != nil {
 		return report, err
 	}
-	for _, o := range also {
-		if o == MintTags {
-			if report.Tags, err = mintTags(ctx, s, by, plan.NeedTag); err != nil {
-				return report, err
-			}
+	if how.mintTags {
+		if report.Tags, err = mintTags(ctx, s, by, plan.NeedTag); err != nil {
+			return report, err
 		}
 	}
 	return report, nil

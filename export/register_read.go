@@ -46,7 +46,10 @@ type RowProblem struct {
 // ReadRegisterCSV reads a register: UTF-8 with or without a byte order mark, columns parted by comma, semicolon or tab,
 // headings in the first line. Rows with a problem are left out and named; the others come back in order. The error is
 // for files that are no register at all.
-func ReadRegisterCSV(r io.Reader) ([]RegisterRow, []RowProblem, error) {
+func ReadRegisterCSV(r io.Reader) ([]RegisterRow, []RowProblem, error) { return readRegister(r, "") }
+
+// readRegister reads a register whose rows that name no site are of the given one; "" = every row must name its own.
+func readRegister(r io.Reader, site string) ([]RegisterRow, []RowProblem, error) {
 	raw, err := registerText(r)
 	if err != nil {
 		return nil, nil, err
@@ -57,7 +60,7 @@ func ReadRegisterCSV(r io.Reader) ([]RegisterRow, []RowProblem, error) {
 	if err != nil {
 		return nil, nil, &store.Error{Code: "invalid", Field: "file", Text: "The first line of the file cannot be read as headings. Save the sheet as CSV (UTF-8) with the headings in its first line."}
 	}
-	columns, problems, err := readHeadings(head)
+	columns, problems, err := readHeadings(head, site != "")
 	if err != nil {
 		return nil, problems, err
 	}
@@ -81,7 +84,7 @@ func ReadRegisterCSV(r io.Reader) ([]RegisterRow, []RowProblem, error) {
 		if blankRow(cells) {
 			continue
 		}
-		row, bads := readRow(line, columns, cells)
+		row, bads := readRow(line, site, columns, cells)
 		problems = append(problems, bads...)
 		if len(bads) == 0 {
 			rows = append(rows, row)
@@ -124,7 +127,7 @@ func blankRow(cells []string) bool {
 }
 
 // readHeadings finds the columns; one that is not known is named and not read.
-func readHeadings(head []string) ([]*registerColumn, []RowProblem, error) {
+func readHeadings(head []string, siteGiven bool) ([]*registerColumn, []RowProblem, error) {
 	columns := make([]*registerColumn, len(head))
 	seen := map[string]bool{}
 	var problems []RowProblem
@@ -141,15 +144,15 @@ func readHeadings(head []string) ([]*registerColumn, []RowProblem, error) {
 		}
 	}
 	for _, must := range []string{"site", "kind"} {
-		if !seen[must] {
+		if !seen[must] && !(must == "site" && siteGiven) {
 			return nil, problems, &store.Error{Code: "invalid", Field: "file", Text: fmt.Sprintf("The file has no column %q. Its first line must hold the headings, at least site and kind.", must)}
 		}
 	}
 	return columns, problems, nil
 }
 
-func readRow(line int, columns []*registerColumn, cells []string) (RegisterRow, []RowProblem) {
-	row := RegisterRow{Line: line, Place: map[string]any{}, Circuit: map[string]any{}, Device: map[string]any{}}
+func readRow(line int, site string, columns []*registerColumn, cells []string) (RegisterRow, []RowProblem) {
+	row := RegisterRow{Line: line, Site: site, Place: map[string]any{}, Circuit: map[string]any{}, Device: map[string]any{}}
 	var problems []RowProblem
 	wrong := func(column, value, text string) {
 		problems = append(problems, RowProblem{Line: line, Column: column, Value: cut(value), Text: text, Skipped: true})

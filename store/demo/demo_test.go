@@ -184,3 +184,21 @@ func TestBuild_SameAgain(t *testing.T) {
 		}
 	}
 }
+
+func TestBuild_StoreIsWhole(t *testing.T) {
+	s := built(t, endDay)
+	if !s.Demo() {
+		t.Error("the store is not marked as a demo")
+	}
+	report, err := s.Check(context.Background(), nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, p := range report.Problems {
+		t.Error(p)
+	}
+	if report.Refused != 0 {
+		t.Errorf("%d records refused, want 0", report.Refused)
+	}
+	t.Logf("%d records in %d logs", report.Records, report.Logs)
+}

@@ -7,7 +7,6 @@ import (
 	"math/rand/v2"
 	"net"
 	"net/http"
-	"os"
 	"os/exec"
 	"path/filepath"
 	"sync"
@@ -34,7 +33,7 @@ func TestKill_NoAcknowledgedRecordIsLost(t *testing.T) {
 	r := newRig(t, killDevices)
 	phones := make([]*killPhone, killPhones)
 	for i := range phones {
-		phones[i] = &killPhone{handset: r.enrol(r.crew)}
+		phones[i] = &killPhone{handset: r.handset(r.crew)}
 	}
 	must(t, r.store.Close())
 	binary := buildTripwell(t)
@@ -151,7 +150,6 @@ func buildTripwell(t *testing.T) string {
 	t.Helper()
 	binary := filepath.Join(t.TempDir(), "tripwell")
 	build := exec.Command("go", "build", "-o", binary, "tripwell/cmd/tripwell")
-	build.Env = append(os.Environ(), "CGO_ENABLED=0")
 	if out, err := build.CombinedOutput(); err != nil {
 		t.Fatalf("build: %v\n%s", err, out)
 	}

@@ -62,10 +62,8 @@ func benchLoad(b *testing.B, r *rig) []benchRound {
 	phones := make([]*handset, benchClients)
 	transport := &http.Transport{MaxIdleConnsPerHost: benchClients}
 	for i := range phones {
-		phones[i] = &handset{r: r, url: r.url, client: &http.Client{Transport: transport}, installation: newID(), person: r.crew.ID}
-		var err error
-		phones[i].token, err = r.store.Enrol(b.Context(), r.crew.ID, phones[i].installation)
-		must(b, err)
+		phones[i] = r.handset(r.crew)
+		phones[i].client = &http.Client{Transport: transport}
 	}
 	rounds := make([]benchRound, benchRounds)
 	next := 0

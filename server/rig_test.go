@@ -256,6 +256,16 @@ func (r *rig) enrol(p store.Person) *handset {
 	return h
 }
 
+// handset enrols without a browser.
+func (r *rig) handset(p store.Person) *handset {
+	r.t.Helper()
+	h := &handset{r: r, url: r.url, client: &http.Client{Timeout: 30 * time.Second}, installation: newID(), person: p.ID}
+	var err error
+	h.token, err = r.store.Enrol(context.Background(), p.ID, h.installation)
+	must(r.t, err)
+	return h
+}
+
 // envelope is a record before it becomes bytes.
 type envelope struct {
 	ID      string `json:"id"`

@@ -152,7 +152,12 @@ func checkSeries(name string, v []byte) *Fault {
 			if value[0] != '{' {
 				return fault("bad_body", name+".at", "The conditions of %q must be an object.", name)
 			}
-			return nil
+			return members(value, func(_ string, condition []byte) *Fault {
+				if !isScalar(condition) {
+					return fault("bad_body", name+".at", "The conditions of %q must be numbers, texts, true or false.", name)
+				}
+				return nil
+			})
 		})
 	})
 }
@@ -171,41 +176,43 @@ func checkReading(name, code string, v []byte) *Fault {
 	default:
 		return nil
 	}
-	says := false
+	says := 0
 	f := members(v, func(m string, value []byte) *Fault {
+		says++
 		switch m {
 		case "value":
-			says = true
-			if value[0] == '{' || value[0] == '[' || value[0] == 'n' {
+			if !isScalar(value) {
 				return bad("has a value that is neither a number, a text, nor true or false")
 			}
 		case "above", "below":
-			says = true
 			if !isNumber(value) {
 				return bad("has a bound that is no number")
 			}
 		case "no_trip":
-			says = true
 			if value[0] != 't' {
 				return bad("has a no_trip that is not true")
 			}
 		case "missing":
-			says = true
 			if value[0] != '"' || len(value) == 2 {
 				return bad("is missing without a reason")
 			}
 		case "typed", "unit":
+			says--
 			if value[0] != '"' {
 				return bad("has a " + m + " that is no text")
 			}
+		default:
+			return bad("has a member that is none of typed, unit, value, above, below, no_trip and missing")
 		}
 		return nil
 	})
-	if f == nil && !says {
-		return bad("says neither a value, a bound nor why it is missing")
+	if f == nil && says != 1 {
+		return bad("must say exactly one thing: a value, a bound, or why it is missing")
 	}
 	return f
 }
+
+func isScalar(v []byte) bool { return v[0] != '{' && v[0] != '[' && v[0] != 'n' }
 
 // checkMeaning holds the rules of single kinds that a table of members does not say.
 func (r *Record) checkMeaning() *Fault {
@@ -227,8 +234,7 @@ func (r *Record) checkMeaning() *Fault {
 		}
 	case "entry.imported":
 		body := bodyOf(r.Body)
-		_, readings := body["readings"]
-		if !readings && (len(text(orNull(body["day"]))) == 0 || len(text(orNull(body["result"]))) == 0) {
+		if orNull(body["readings"])[0] != '{' && (len(text(orNull(body["day"]))) == 0 || len(text(orNull(body["result"]))) == 0) {
 			return fault("bad_body", "readings", "An imported entry needs its readings, or a day and a result.")
 		}
 	case "entry.corrected", "entry.withdrawn":

@@ -25,7 +25,7 @@ func checkBytes(raw []byte) *Fault {
 	defer decoders.Put(d)
 	d.Reset(bytes.NewBuffer(raw))
 	v, err := d.ReadValue()
-	if err == nil && len(bytes.TrimSpace(d.UnreadBuffer())) > 0 {
+	if err == nil && len(bytes.Trim(d.UnreadBuffer(), " \t")) > 0 {
 		return fault("malformed", "", "The record is followed by something else on its line. Send each record as one line of JSON.")
 	}
 	if errors.Is(err, jsontext.ErrDuplicateName) {

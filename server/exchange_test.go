@@ -13,7 +13,7 @@ import (
 
 func TestPush_StoresTheExactBytesAndPullGivesThemBack(t *testing.T) {
 	r := newRig(t, 2)
-	h := r.enrol(r.crew)
+	h := r.handset(r.crew)
 	// 4.50 and the bare < > & must come back as they were sent: the record is its bytes, not its meaning.
 	rec := h.entry(r.devices[0], 4.5).bytes(t)
 	rec = strings.Replace(rec, `"value":119.4`, `"value":119.40`, 1)
@@ -68,7 +68,7 @@ func (h *handset) pullAll(log string) []store.PulledRecord {
 
 func TestPush_OneBadRecordNeverSpoilsItsNeighbours(t *testing.T) {
 	r := newRig(t, 2)
-	h := r.enrol(r.crew)
+	h := r.handset(r.crew)
 	good := func() string { return h.entry(r.devices[0], 4.5).bytes(t) }
 	elsewhere := newID()
 	r.append(store.Draft{Kind: "site.registered", Log: elsewhere, Subject: elsewhere, Body: set{"set": set{"code": "OTHER", "name": "Ottermoor Swim Hall", "zone": "UTC", "standard": "NEC"}}})
@@ -114,7 +114,7 @@ func TestPush_OneBadRecordNeverSpoilsItsNeighbours(t *testing.T) {
 			if got[0].State != "stored" || got[2].State != "stored" {
 				t.Errorf("neighbours: got %s and %s, want both stored", got[0].State, got[2].State)
 			}
-			if res := h.fetch("/exchange/logs"); res.status != http.StatusOK {
+			if res := h.fetch("/exchange/people"); res.status != http.StatusOK {
 				t.Errorf("afterwards: got %d, want the server up", res.status)
 			}
 		})
@@ -124,7 +124,7 @@ func TestPush_OneBadRecordNeverSpoilsItsNeighbours(t *testing.T) {
 // Bytes that are no UTF-8 belong to one record; the batch still goes through and the damage is kept as it came.
 func TestPush_DamagedTextIsKeptAsItCame(t *testing.T) {
 	r := newRig(t, 1)
-	h := r.enrol(r.crew)
+	h := r.handset(r.crew)
 	good := h.entry(r.devices[0], 4.5).bytes(t)
 	damaged := strings.Replace(h.entry(r.devices[0], 4.5).bytes(t), `"sound"`, "\"so\xffnd\"", 1)
 	body := `{"protocol":1,"records":[{"record":` + quoted(t, good) + `},{"record":` + quotedRaw(damaged) + `},{"record":"half a pair \ud83d here"}]}`
@@ -159,7 +159,7 @@ func quotedRaw(s string) string {
 
 func TestPush_BadBatchesAreToldAndDecideNothing(t *testing.T) {
 	r := newRig(t, 1)
-	h := r.enrol(r.crew)
+	h := r.handset(r.crew)
 	many := make([]string, 501)
 	for i := range many {
 		many[i] = `{}`
@@ -201,13 +201,23 @@ type unsized struct{ r *strings.Reader }
 
 func (u unsized) Read(p []byte) (int, error) { return u.r.Read(p) }
 
-func TestPush_AnswerLostAfterCommitCostsOneRepeat(t *testing.T) {
+func TestPush_ALostRequestOrAnswerCostsOneRepeat(t *testing.T) {
 	r := newRig(t, 1)
-	h := r.enrol(r.crew)
+	h := r.handset(r.crew)
 	cut := newLine(t, strings.TrimPrefix(r.url, "http://"))
 	h.url = cut.url()
 	h.client = &http.Client{Transport: &http.Transport{DisableKeepAlives: true}}
+	first := h.entry(r.devices[0], 4.4).bytes(t)
+	cut.deaf.Store(true)
+	if _, err := h.client.Do(h.request(http.MethodPost, "/exchange/push", pushBody(t, first))); err == nil || cut.cuts.Load() == 0 {
+		t.Fatal("the request came through a cut line")
+	}
+	cut.deaf.Store(false)
+	if got := h.push(first)[0]; got.State != "stored" {
+		t.Errorf("after a lost request: got %+v, want stored", got)
+	}
 	records := []string{h.entry(r.devices[0], 4.5).bytes(t), h.entry(r.devices[0], 4.6).bytes(t)}
+	cut.cuts.Store(0)
 	cut.swallow.Store(true)
 	if _, err := h.client.Do(h.request(http.MethodPost, "/exchange/push", pushBody(t, records...))); err == nil {
 		t.Fatal("the answer came through a cut line")
@@ -287,7 +297,7 @@ func TestExchange_ShowsOnlyTheSitesGiven(t *testing.T) {
 
 func TestExchange_StrangeCursorAsksForASnapshot(t *testing.T) {
 	r := newRig(t, 1)
-	h := r.enrol(r.crew)
+	h := r.handset(r.crew)
 	res := h.fetch("/exchange/pull?" + url.Values{"log": {r.site}, "after": {newID() + ".7.12"}}.Encode())
 	if !strings.Contains(res.body, `"snapshot":true`) && res.status != 400 {
 		t.Errorf("got %d %s, want snapshot", res.status, res.body)

@@ -12,6 +12,7 @@ type line struct {
 	l       net.Listener
 	to      string
 	swallow atomic.Bool // answers do not get through: the connection is cut when the first byte of one arrives
+	deaf    atomic.Bool // nothing gets to the server: the connection is cut when the first byte of a request arrives
 	cuts    atomic.Int64
 }
 
@@ -42,8 +43,14 @@ func (p *line) carry(phone net.Conn) {
 		return
 	}
 	defer there.Close()
-	go func() { _, _ = io.Copy(there, phone) }()
 	buf := make([]byte, 32<<10)
+	if p.deaf.Load() {
+		if n, _ := phone.Read(buf); n > 0 {
+			p.cuts.Add(1)
+		}
+		return
+	}
+	go func() { _, _ = io.Copy(there, phone) }()
 	for {
 		n, err := there.Read(buf)
 		if n > 0 && p.swallow.Load() {

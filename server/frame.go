@@ -17,19 +17,19 @@ var pageFiles embed.FS
 
 // Frame is what the layout shows around every page. A page's struct embeds it; everything in it is ready to print.
 type Frame struct {
-	Title  string    // of the browser's tab
-	Here   string    // which entry of the masthead is this one: overview, sites, dates, or "" for none
-	Name   string    // of the person signed in; "" = nobody
-	Role   string    // manager | crew | auditor
-	Today  forms.Day // of the server; sites have their own
-	Demo   bool      // invented data, said on every page
-	Change bool      // the reader may change things: show what leads to forms
+	Title  string // of the browser's tab
+	Here   string // which entry of the masthead is this one: overview, sites, dates, or "" for none
+	Name   string // of the person signed in; "" = nobody
+	Role   string // manager | crew | auditor
+	Today  string // of the server, with its weekday; sites have their own
+	Demo   bool   // invented data, said on every page
+	Change bool   // the reader may change things: show what leads to forms
 }
 
 // frame fills the Frame of the request's caller.
 func (s *Server) frame(c echo.Context, title, here string) Frame {
 	p := person(c)
-	return Frame{Title: title, Here: here, Name: p.Name, Role: p.Role, Today: forms.DayOf(s.store.Now()), Demo: s.store.Demo(), Change: p.Role == "manager"}
+	return Frame{Title: title, Here: here, Name: p.Name, Role: p.Role, Today: s.ink().longDay(forms.DayOf(s.store.Now())), Demo: s.store.Demo(), Change: p.Role == "manager"}
 }
 
 // readPages parses server/pages once. layout.html and files whose names begin with _ are parts of every page; every other

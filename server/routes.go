@@ -52,6 +52,40 @@ func publicRoutes() []route {
 		{get, "/exchange/people", phone, (*Server).exchangePeople, 0},
 		{get, "/exchange/snapshot", phone, (*Server).exchangeSnapshot, 0},
 
-		// office
+		// office: reading
+		{get, "/", signed, (*Server).overviewShow, 0},
+		{get, "/sites", signed, (*Server).sitesShow, 0},
+		{get, "/sites/:site", signed, (*Server).siteShow, 0},
+		{get, "/devices/:device", signed, (*Server).deviceShow, 0},
+		{get, "/entries/:entry", signed, (*Server).entryShow, 0},
+		{get, "/records/:record", signed, (*Server).recordShow, 0},
+		{get, "/dates", signed, (*Server).datesShow, 0},
+		{get, "/set-up", signed, (*Server).setupShow, 0},
+		{get, "/limits/:set", signed, (*Server).limitsShow, 0},
+		{get, "/downloads", office, (*Server).downloadsShow, 0},
+		{get, "/workbook.xlsx", office, (*Server).workbookTake, 0},
+		{get, "/labels.pdf", office, (*Server).labelsTake, 0},
+
+		// office: changing
+		{get, "/sites/new", manager, (*Server).siteNew, 0},
+		{post, "/sites", manager, (*Server).siteCreate, 0},
+		{get, "/sites/:site/edit", manager, (*Server).siteEdit, 0},
+		{post, "/sites/:site/edit", manager, (*Server).siteUpdate, 0},
+		{get, "/sites/:site/devices/new", manager, (*Server).deviceNew, 0},
+		{post, "/sites/:site/devices", manager, (*Server).deviceCreate, 0},
+		{get, "/devices/:device/edit", manager, (*Server).deviceEdit, 0},
+		{post, "/devices/:device/edit", manager, (*Server).deviceUpdate, 0},
+		{get, "/devices/:device/retire", manager, (*Server).deviceRetireAsk, 0},
+		{post, "/devices/:device/retire", manager, (*Server).deviceRetire, 0},
+		{get, "/instruments/new", manager, (*Server).instrumentNew, 0},
+		{post, "/instruments", manager, (*Server).instrumentCreate, 0},
+		{get, "/instruments/:instrument", manager, (*Server).instrumentEdit, 0},
+		{post, "/instruments/:instrument", manager, (*Server).instrumentUpdate, 0},
+		{get, "/people", manager, (*Server).peopleShow, 0},
+		{get, "/people/new", manager, (*Server).personNew, 0},
+		{post, "/people", manager, (*Server).personCreate, 0},
+		{get, "/people/:person", manager, (*Server).personEdit, 0},
+		{post, "/people/:person", manager, (*Server).personUpdate, 0},
+		{post, "/people/:person/link", manager, (*Server).personLink, 0},
 	}
 }

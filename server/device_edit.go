@@ -1,0 +1,396 @@
+package server
+
+import (
+	"cmp"
+	"slices"
+	"strconv"
+	"strings"
+
+	"github.com/labstack/echo/v4"
+
+	"tripwell/forms"
+	"tripwell/store"
+	"tripwell/store/record"
+)
+
+// Fields of a device form by whose record they belong to. The names are those of the register.
+var (
+	placeTexts    = []string{"building", "floor", "room", "name", "critical_load", "whom_to_tell"}
+	deviceTexts   = []string{"make", "model", "serial", "note"}
+	deviceFigures = []string{"rating_a", "nominal_v", "rated_residual_ma"}
+)
+
+func (s *Server) deviceNew(c echo.Context) error {
+	site, err := s.siteOf(c)
+	if err != nil {
+		return err
+	}
+	values := map[string]string{"kind": forms.GFCIReceptacle}
+	if id := c.QueryParam("after"); id != "" {
+		before, _, err := s.deviceAt(c, id)
+		if err != nil {
+			return err
+		}
+		values = s.successor(before)
+	}
+	f, err := s.blankForm(values)
+	if err != nil {
+		return err
+	}
+	return s.formBack(c, f, s.deviceForm(c, site, nil, f))
+}
+
+// successor is what a new device has in common with the one it replaces: place, kind and circuit.
+func (s *Server) successor(before store.Device) map[string]string {
+	all := s.deviceValues(before)
+	out := map[string]string{"place": before.Place.ID}
+	for _, name := range []string{"kind", "building", "floor", "room", "name", "order", "critical_load", "whom_to_tell", "panel", "circuit", "rating_a", "rated_residual_ma", "nominal_v", "equipment_ground"} {
+		out[name] = all[name]
+	}
+	return out
+}
+
+func (s *Server) deviceCreate(c echo.Context) error {
+	site, err := s.siteOf(c)
+	if err != nil {
+		return err
+	}
+	f, err := s.typedForm(c)
+	if err != nil {
+		return err
+	}
+	subject := f.id(subjectField)
+	in := s.deviceInput(f)
+	tag := s.tagInput(f)
+	if f.ok() {
+		drafts, err := s.newDeviceDrafts(c, site, f, in, tag)
+		if err == nil {
+			err = s.append(c, drafts...)
+		}
+		if err == nil {
+			return toPage(c, "/devices/"+subject)
+		}
+		if err := f.takeRefusal(err); err != nil {
+			return err
+		}
+	}
+	return s.formBack(c, f, s.deviceForm(c, site, nil, f))
+}
+
+// deviceInput is what a device form said, by record.
+type deviceInput struct {
+	place, device, circuit map[string]any
+	panel, numbers         string
+	moved                  bool // panel or circuit was changed
+}
+
+// deviceInput reads what a device form may change.
+func (s *Server) deviceInput(f *typedForm) deviceInput {
+	k := s.ink()
+	in := deviceInput{place: map[string]any{}, device: map[string]any{}, circuit: map[string]any{}}
+	f.needed("name", k.say("office.device.spot"), 120)
+	for _, name := range placeTexts {
+		f.setText(in.place, name, name, f.line(name, 200))
+	}
+	f.setFigure(in.place, "order", "order", f.figure("order"))
+	f.setText(in.device, "kind", "kind", f.choice("kind", forms.Kinds()...))
+	for _, name := range deviceTexts {
+		f.setText(in.device, name, name, f.line(name, 500))
+	}
+	for _, name := range deviceFigures {
+		f.setFigure(in.device, name, name, f.figure(name))
+	}
+	installed := f.date("installed")
+	f.setText(in.device, "installed", "installed", installed.String())
+	f.setText(in.device, "equipment_ground", "equipment_ground", f.choice("equipment_ground", "", "yes", "none-permitted"))
+	if f.changed("delayed") {
+		in.device["delayed"] = f.Get("delayed") == "yes"
+	}
+	in.panel, in.numbers = f.line("panel", 40), f.line("circuit", 40)
+	in.moved = f.changed("panel") || f.changed("circuit")
+	if (in.panel == "") != (in.numbers == "") {
+		f.refuse("circuit", k.say("office.device.circuit_unset"))
+	}
+	if v := f.figure("breaker_a"); v != nil {
+		in.circuit["breaker_a"] = *v
+	}
+	if v := f.choice("supply", "", "grounded", "isolated"); v != "" {
+		in.circuit["supply"] = v
+	}
+	if len(in.circuit) > 0 && in.numbers == "" {
+		f.refuse("circuit", k.say("office.device.circuit_unset"))
+	}
+	return in
+}
+
+// tagInput reads the tag of a new device's label: one that is there, or "new" for one to be drawn.
+func (s *Server) tagInput(f *typedForm) string {
+	typed := strings.ReplaceAll(f.line("tag", 40), hyphen, "-")
+	if f.Get("mint") == "yes" {
+		if typed != "" {
+			f.refuse("tag", s.words.Say("office.device.tag_both"))
+		}
+		return "new"
+	}
+	if typed == "" {
+		return ""
+	}
+	tag, ok := record.ParseTag(typed)
+	if !ok {
+		f.refuse("tag", s.words.Say("office.form.tag"))
+	}
+	return tag
+}
+
+func (s *Server) newDeviceDrafts(c echo.Context, site store.Site, f *typedForm, in deviceInput, tag string) ([]store.Draft, error) {
+	first, subject := f.Get(recordField), f.Get(subjectField)
+	place, placeKind := f.Get("place"), "place.set"
+	if place == "" {
+		place, placeKind = record.NamedID(subject, "place"), "place.registered"
+	} else if err := s.placeHere(c, site, place); err != nil {
+		return nil, err
+	}
+	drafts, circuit, err := s.circuitDrafts(c, site, first, in)
+	if err != nil {
+		return nil, err
+	}
+	in.device["place"] = place
+	if circuit != "" {
+		in.device["circuit"] = circuit
+	}
+	if len(in.place) > 0 {
+		drafts = append(drafts, store.Draft{ID: record.NamedID(first, "place"), Kind: placeKind, Log: site.ID, Subject: place, Body: f.setBody(in.place)})
+	}
+	drafts = append(drafts, store.Draft{ID: first, Kind: "device.registered", Log: site.ID, Subject: subject, Body: f.setBody(in.device)})
+	if tag == "new" {
+		if tag, err = s.drawTag(c, first); err != nil {
+			return nil, err
+		}
+	}
+	if tag != "" {
+		drafts = append(drafts, store.Draft{ID: record.NamedID(first, "tag"), Kind: "tag.bound", Log: site.ID, Subject: place, Body: map[string]any{"tag": tag}})
+	}
+	return drafts, nil
+}
+
+// drawTag mints a tag for a form; a form that comes twice draws none the second time.
+func (s *Server) drawTag(c echo.Context, first string) (string, error) {
+	receipts, err := s.store.Ask(scope(c), []string{first})
+	if err != nil || len(receipts) > 0 {
+		return "", err
+	}
+	tags, err := s.store.MintTags(c.Request().Context(), person(c).ID, 1)
+	if err != nil {
+		return "", err
+	}
+	return tags[0], nil
+}
+
+// placeHere refuses a place of another site.
+func (s *Server) placeHere(c echo.Context, site store.Site, place string) error {
+	return s.store.View(scope(c), func(v *store.View) error {
+		places, err := v.Places(site.ID)
+		if err == nil && !slices.ContainsFunc(places, func(p store.Place) bool { return p.ID == place }) {
+			return refuse(codeInvalid, "", s.words.Say("office.form.broken"))
+		}
+		return err
+	})
+}
+
+// circuitDrafts finds the circuit a form names, or makes it with its panel. What the form says of the breaker and the
+// supply is set on it either way.
+func (s *Server) circuitDrafts(c echo.Context, site store.Site, first string, in deviceInput) (drafts []store.Draft, circuit string, err error) {
+	if in.numbers == "" {
+		return nil, "", nil
+	}
+	panel := ""
+	err = s.store.View(scope(c), func(v *store.View) error {
+		for d, err := range v.Devices(site.ID) {
+			if err != nil {
+				return err
+			}
+			if !strings.EqualFold(d.Panel, in.panel) || !strings.EqualFold(d.Circuit, in.numbers) {
+				continue
+			}
+			full, err := v.Device(d.ID, s.today(site))
+			if err != nil {
+				return err
+			}
+			if circuit, _ = full.Fields["circuit"].(string); circuit != "" {
+				return nil
+			}
+		}
+		return nil
+	})
+	if err != nil {
+		return nil, "", err
+	}
+	set := in.circuit
+	if circuit == "" {
+		panel = record.NamedID(site.ID, "panel", strings.ToUpper(in.panel))
+		circuit = record.NamedID(site.ID, "circuit", strings.ToUpper(in.panel), strings.ToUpper(in.numbers))
+		set["panel"], set["numbers"] = panel, in.numbers
+		drafts = append(drafts, store.Draft{ID: record.NamedID(first, "panel"), Kind: "panel.set", Log: site.ID, Subject: panel, Body: map[string]any{"set": map[string]any{"name": in.panel}}})
+	}
+	if len(set) > 0 {
+		drafts = append(drafts, store.Draft{ID: record.NamedID(first, "circuit"), Kind: "circuit.set", Log: site.ID, Subject: circuit, Body: map[string]any{"set": set}})
+	}
+	return drafts, circuit, nil
+}
+
+func (s *Server) deviceEdit(c echo.Context) error {
+	d, site, err := s.deviceAt(c, c.Param("device"))
+	if err != nil {
+		return err
+	}
+	f, err := s.editForm(s.deviceValues(d), d.Conflicts)
+	if err != nil {
+		return err
+	}
+	return s.formBack(c, f, s.deviceForm(c, site, &d, f))
+}
+
+func (s *Server) deviceUpdate(c echo.Context) error {
+	d, site, err := s.deviceAt(c, c.Param("device"))
+	if err != nil {
+		return err
+	}
+	f, err := s.typedForm(c)
+	if err != nil {
+		return err
+	}
+	first := f.id(recordField)
+	in := s.deviceInput(f)
+	f.meanwhile(s.deviceValues(d))
+	if f.ok() {
+		drafts, err := s.changedDeviceDrafts(c, site, d, f, in, first)
+		if err == nil && len(drafts) > 0 {
+			err = s.append(c, drafts...)
+		}
+		if err == nil {
+			return toPage(c, "/devices/"+d.ID)
+		}
+		if err := f.takeRefusal(err); err != nil {
+			return err
+		}
+	}
+	return s.formBack(c, f, s.deviceForm(c, site, &d, f))
+}
+
+func (s *Server) changedDeviceDrafts(c echo.Context, site store.Site, d store.Device, f *typedForm, in deviceInput, first string) ([]store.Draft, error) {
+	drafts, circuit, err := s.circuitDrafts(c, site, first, in)
+	if err != nil {
+		return nil, err
+	}
+	if in.moved {
+		if in.device["circuit"] = nil; circuit != "" {
+			in.device["circuit"] = circuit
+		}
+	}
+	if d.Place.ID == "" && len(in.place) > 0 {
+		place := record.NamedID(first, "place-of")
+		in.device["place"] = place
+		drafts = append(drafts, store.Draft{ID: record.NamedID(first, "place"), Kind: "place.registered", Log: site.ID, Subject: place, Body: f.setBody(in.place)})
+	} else if len(in.place) > 0 {
+		drafts = append(drafts, store.Draft{ID: record.NamedID(first, "place"), Kind: "place.set", Log: site.ID, Subject: d.Place.ID, Body: f.setBody(in.place)})
+	}
+	if len(in.device) > 0 {
+		drafts = append(drafts, store.Draft{ID: first, Kind: "device.set", Log: site.ID, Subject: d.ID, Body: f.setBody(in.device)})
+	}
+	return drafts, nil
+}
+
+// deviceValues are a device's fields as its form shows them.
+func (s *Server) deviceValues(d store.Device) map[string]string {
+	text := func(name string) string { v, _ := d.Fields[name].(string); return v }
+	out := map[string]string{
+		"building": d.Place.Building, "floor": d.Place.Floor, "room": d.Place.Room, "name": cmp.Or(d.Place.Name, text("where")), "critical_load": d.Place.CriticalLoad,
+		"panel": d.Panel, "circuit": d.Circuit, "kind": d.Kind, "equipment_ground": text("equipment_ground"), "installed": text("installed"), "delayed": "", "order": "",
+	}
+	if d.Place.Order != 0 {
+		out["order"] = plainFigure(d.Place.Order)
+	}
+	for _, name := range deviceTexts {
+		out[name] = text(name)
+	}
+	for _, name := range deviceFigures {
+		if v, ok := d.Fields[name].(float64); ok {
+			out[name] = plainFigure(v)
+		} else {
+			out[name] = ""
+		}
+	}
+	if v, _ := d.Fields["delayed"].(bool); v {
+		out["delayed"] = "yes"
+	}
+	return out
+}
+
+// plainFigure writes a figure the way it is typed.
+func plainFigure(v float64) string { return strconv.FormatFloat(v, 'f', -1, 64) }
+
+// deviceAt reads a device within the caller's scope, with its site.
+func (s *Server) deviceAt(c echo.Context, id string) (d store.Device, site store.Site, err error) {
+	err = s.store.View(scope(c), func(v *store.View) (err error) {
+		if d, err = v.Device(id, forms.DayOf(s.store.Now())); err != nil {
+			return err
+		}
+		site, err = v.Site(d.Site)
+		return err
+	})
+	return d, site, err
+}
+
+// deviceForm is the page of a new device, or of one that is there.
+func (s *Server) deviceForm(c echo.Context, site store.Site, d *store.Device, f *typedForm) formPage {
+	k := s.ink()
+	q := func(name string, more ...func(*field)) field {
+		out := field{Name: name, Label: k.say("office.device.ask." + name), Unit: fieldUnits[name]}
+		if k.words.Has("office.device.hint." + name) {
+			out.Hint = k.say("office.device.hint." + name)
+		}
+		if fieldUnits[name] != "" || name == "order" {
+			out.Type = "number"
+		}
+		for _, m := range more {
+			m(&out)
+		}
+		return out
+	}
+	needed := func(f *field) { f.Required = true }
+	kinds := make([]option, 0, len(forms.Kinds()))
+	for _, kind := range forms.Kinds() {
+		kinds = append(kinds, option{Value: kind, Text: k.named("kind", kind)})
+	}
+	p := formPage{
+		Frame: s.frame(c, k.say("office.device.new"), "sites"), Crumbs: []link{{Href: siteHref(site), Text: site.Name}},
+		Heading: k.say("office.device.new_head", "site", site.Name), Action: siteHref(site) + "/devices", Submit: k.say("office.device.save_new"), Cancel: siteHref(site),
+		Groups: []fieldGroup{
+			{Legend: k.say("office.device.group_place"), Fields: []field{q("building"), q("floor"), q("room"), q("name", needed), q("order"), q("critical_load"), q("whom_to_tell")}},
+			{Legend: k.say("office.device.group_device"), Fields: []field{
+				q("kind", needed, func(f *field) { f.Options = kinds }), q("make"), q("model"), q("serial"), q("rating_a"), q("nominal_v"), q("rated_residual_ma"),
+				q("installed", func(f *field) { f.Type = "date" }),
+				q("equipment_ground", func(f *field) {
+					f.Options = optional(k.say("office.device.not_said"), "yes", k.say("office.device.ground_yes"), "none-permitted", k.say("office.device.ground_none"))
+				}),
+				q("delayed", func(f *field) { f.Type = "check" }), q("note", func(f *field) { f.Type, f.Wide = "text-area", true }),
+			}},
+			{Legend: k.say("office.device.group_supply"), Fields: []field{q("panel"), q("circuit"), q("breaker_a"), q("supply", func(f *field) {
+				f.Options = optional(k.say("office.device.not_said"), "grounded", k.say("office.device.supply_grounded"), "isolated", k.say("office.device.supply_isolated"))
+			})}},
+		},
+	}
+	if d != nil {
+		p.Frame, p.Heading = s.frame(c, k.say("office.device.edit"), "sites"), k.say("office.device.edit_head", "spot", s.spot(d.DeviceRow))
+		p.Crumbs = append(p.Crumbs, link{Href: "/devices/" + d.ID, Text: s.spot(d.DeviceRow)})
+		p.Action, p.Submit, p.Cancel = "/devices/"+d.ID+"/edit", k.say("office.device.save"), "/devices/"+d.ID
+		return p
+	}
+	if place := f.Get("place"); place != "" {
+		p.Hidden = append(p.Hidden, hidden{"place", place})
+		p.Lead = k.say("office.device.move_hint")
+		return p
+	}
+	p.Groups = append(p.Groups, fieldGroup{Legend: k.say("office.device.group_label"), Fields: []field{q("tag"), q("mint", func(f *field) { f.Type = "check" })}})
+	return p
+}

@@ -1,0 +1,397 @@
+package server
+
+import (
+	"cmp"
+	"net/http"
+	"slices"
+	"strconv"
+	"strings"
+
+	"github.com/labstack/echo/v4"
+
+	"tripwell/export"
+	"tripwell/forms"
+	"tripwell/store"
+	"tripwell/store/record"
+)
+
+// devicePage is one device with everything that was ever said of it.
+type devicePage struct {
+	Frame
+	Crumbs                      []link
+	Heading, Tag, What, Retired string
+	Last                        mark
+	Next                        []dated
+	Conflicts                   []conflictLine
+	Clash                       string
+	Columns                     []column
+	Entries                     []entryRow
+	Facts                       []fact
+	Actions                     []link
+	Label                       *label
+	NoLabel                     string
+	Earlier                     []link
+}
+
+// dated is a sentence about a date; Late when the date has passed.
+type dated struct {
+	Text string
+	Late bool
+}
+
+// column is a column of readings in a device's entries; only columns that have a reading are shown.
+type column struct {
+	Text string
+	Num  bool
+}
+
+// entryRow is one entry of a device; Cells follow the page's columns.
+type entryRow struct {
+	Href, Day, Task string
+	Cells           []string
+	Verdict         mark
+	Why, By         string
+}
+
+// fact is one named value.
+type fact struct {
+	Name, Value string
+	Mono        bool // an id
+}
+
+func (s *Server) deviceShow(c echo.Context) error {
+	view := devicePage{Frame: s.frame(c, s.words.Say("office.device.title"), "sites")}
+	err := s.store.View(scope(c), func(v *store.View) error {
+		row, err := v.Device(c.Param("device"), forms.DayOf(s.store.Now()))
+		if err != nil {
+			return err
+		}
+		site, err := v.Site(row.Site)
+		if err != nil {
+			return err
+		}
+		if row, err = v.Device(row.ID, s.today(site)); err != nil {
+			return err
+		}
+		return s.buildDevice(v, site, row, &view)
+	})
+	if err != nil {
+		return err
+	}
+	if view.Label != nil && !may(c, office) {
+		view.Label.Sheet = "" // downloads are not open to crew
+	}
+	return s.page(c, http.StatusOK, "device.html", view)
+}
+
+func (s *Server) buildDevice(v *store.View, site store.Site, d store.Device, view *devicePage) error {
+	entries, err := v.Entries(d.ID)
+	if err != nil {
+		return err
+	}
+	names, err := instrumentNames(v)
+	if err != nil {
+		return err
+	}
+	k, today := s.ink(), s.today(site)
+	view.Title = s.spot(d.DeviceRow)
+	view.Heading, view.Tag, view.What = view.Title, k.tag(d.Tag), s.whatItIs(d.DeviceRow)
+	view.Crumbs = []link{{Href: siteHref(site), Text: site.Name}}
+	if context := d.Place.Context(); context != "" {
+		view.Crumbs = append(view.Crumbs, link{Text: context})
+	}
+	view.Last = k.verdict("")
+	if task, last, ok := lastStanding(d.DeviceRow); ok {
+		view.Last = k.verdict(last.Result)
+		view.Last.Word += ": " + lowerFirst(k.named("task", task)) + ", " + k.near(last.Day, today)
+	}
+	if view.Next = s.nextDates(d.DeviceRow, today); d.Retired {
+		view.Next, view.Retired = nil, k.say("office.device.retired")
+	}
+	view.Conflicts = s.conflicts(v, d.Conflicts, today)
+	if len(d.TagClash) > 0 {
+		view.Clash = k.say("office.device.clash", "tag", view.Tag)
+	}
+	s.entryTable(v, entries, names, view)
+	view.Facts = s.deviceFacts(d)
+	s.labelOf(d, view)
+	for _, e := range d.Earlier {
+		view.Earlier = append(view.Earlier, link{Href: "/devices/" + e.ID, Text: s.earlier(e)})
+	}
+	if view.Change {
+		view.Actions = []link{{Href: "/devices/" + d.ID + "/edit", Text: k.say("office.device.edit")}}
+		if !d.Retired {
+			view.Actions = append(view.Actions, link{Href: "/devices/" + d.ID + "/retire", Text: k.say("office.device.retire")})
+		}
+	}
+	return nil
+}
+
+// whatItIs is the line under a device's heading: GFCI receptacle, 20 A · LP-2 / 14 · installed 3 Mar 2021.
+func (s *Server) whatItIs(d store.DeviceRow) string {
+	text := joined(s.kindAndRating(d), circuit(d))
+	if d.Installed != forms.NoDay && d.Installed != 0 {
+		text = joined(text, s.words.Say("office.device.installed", "day", s.ink().day(d.Installed)))
+	}
+	return text
+}
+
+func (s *Server) earlier(d store.DeviceRow) string {
+	text := joined(s.kindAndRating(d), strings.TrimSpace(d.Make+" "+d.Model))
+	if d.Installed != forms.NoDay && d.Installed != 0 {
+		text = joined(text, s.words.Say("office.device.installed", "day", s.ink().day(d.Installed)))
+	}
+	return text
+}
+
+// nextDates says each date of a device in a sentence, the passed ones first.
+func (s *Server) nextDates(d store.DeviceRow, today forms.Day) []dated {
+	k := s.ink()
+	if len(d.Due) == 0 {
+		return []dated{{Text: k.say("office.device.no_dates")}}
+	}
+	var out []dated
+	for _, due := range d.Due {
+		key := map[string]string{"overdue": "office.device.next_overdue", "in-grace": "office.device.next_grace"}[due.State]
+		if due.Due == forms.NoDay {
+			key = "office.device.next_never"
+		}
+		out = append(out, dated{Text: k.say(cmp.Or(key, "office.device.next"), "task", k.named("task", due.Task), "day", k.near(due.Due, today)), Late: due.State == "overdue"})
+	}
+	slices.SortStableFunc(out, func(a, b dated) int { return cmp.Compare(b2i(b.Late), b2i(a.Late)) })
+	return out
+}
+
+func b2i(b bool) int {
+	if b {
+		return 1
+	}
+	return 0
+}
+
+// tableReadings are the readings a device's entries are compared by, in the order of the work.
+var tableReadings = []string{"trip_current_ma", "trip_time_ms", "wiring", "ground_ohm", "retention_g", "voltage_v"}
+
+// entryTable fills the entries with the columns at least one of them has a reading for.
+func (s *Server) entryTable(v *store.View, entries []store.Entry, instruments map[string]string, view *devicePage) {
+	k := s.ink()
+	cells := make([]map[string]string, len(entries))
+	used := map[string]bool{}
+	for i, e := range entries {
+		cells[i] = map[string]string{}
+		for _, code := range tableReadings {
+			if text := s.tableCell(e, code); text != "" {
+				cells[i][code], used[code] = text, true
+			}
+		}
+	}
+	var codes []string
+	for _, code := range tableReadings {
+		if used[code] {
+			codes = append(codes, code)
+			view.Columns = append(view.Columns, column{Text: k.reading(code), Num: unitOf(code) != ""})
+		}
+	}
+	for i, e := range entries {
+		row := entryRow{Href: "/entries/" + e.ID, Day: k.day(e.Day), Task: k.named("task", e.Task), Verdict: k.verdict(e.Verdict.Result), By: s.testedBy(v, e)}
+		if name := instruments[e.Body.Given.Instrument]; name != "" {
+			row.By = k.say("office.device.by_with", "by", row.By, "instrument", name)
+		}
+		if e.Verdict.Result == forms.NotTested {
+			row.Why = lowerFirst(whyNot(k, e.Body))
+		}
+		if e.Withdrawn != nil {
+			row.Verdict, row.Why = mark{"none", k.say("office.entry.withdrawn_short")}, ""
+		}
+		for _, code := range codes {
+			row.Cells = append(row.Cells, cells[i][code])
+		}
+		view.Entries = append(view.Entries, row)
+	}
+}
+
+// tableCell writes one reading of an entry for the table; a trip time stands with the current it was measured at. Of a
+// series the worst finding's reading stands for all.
+func (s *Server) tableCell(e store.Entry, code string) string {
+	k := s.ink()
+	r, ok := e.Body.Readings[code]
+	if !ok {
+		if at := worstOfSeries(e, code); at >= 0 {
+			return k.value(code, e.Body.Series[at].Readings[code]) + " " + s.conditions(e.Body.Series[at].At)
+		}
+		return ""
+	}
+	if r.Missing != "" {
+		return ""
+	}
+	text := k.value(code, r)
+	if current, ok := e.Body.Readings["test_current_ma"]; ok && code == "trip_time_ms" && current.Missing == "" {
+		text = k.say("office.device.at_current", "time", text, "current", k.value("test_current_ma", current))
+	}
+	return text
+}
+
+// worstOfSeries finds the series reading of a code with the worst finding, −1 where there is none.
+func worstOfSeries(e store.Entry, code string) int {
+	found, worst := -1, -1
+	for i, one := range e.Body.Series {
+		r, ok := one.Readings[code]
+		if !ok || r.Missing != "" {
+			continue
+		}
+		bad := 0
+		for _, f := range e.Verdict.Findings {
+			if f.Reading == code && sameConditions(f.At, one.At) {
+				bad = max(bad, severity(f.Verdict))
+			}
+		}
+		if bad > worst {
+			found, worst = i, bad
+		}
+	}
+	return found
+}
+
+// whyNot gives the reason an entry has no test: the first reading that says why it is missing.
+func whyNot(k ink, body forms.Entry) string {
+	for _, code := range sortedKeys(body.Readings) {
+		if why := body.Readings[code].Missing; why != "" {
+			return k.named("missing", why)
+		}
+	}
+	return ""
+}
+
+// testedBy names who tested: who read the figures where somebody else typed them.
+func (s *Server) testedBy(v *store.View, e store.Entry) string {
+	if e.ReadBy != "" {
+		if name := v.PersonName(e.ReadBy); name != "" {
+			return name
+		}
+		return e.ReadBy
+	}
+	return s.personName(v, e.By)
+}
+
+func instrumentNames(v *store.View) (map[string]string, error) {
+	all, err := v.Instruments()
+	names := map[string]string{}
+	for _, i := range all {
+		names[i.ID] = i.Name
+	}
+	return names, err
+}
+
+// factOrder are the register fields a device page shows, in this order; fields of newer programs follow by name.
+var factOrder = []string{"make", "model", "serial", "rating_a", "nominal_v", "rated_residual_ma", "delayed", "waveform", "equipment_ground", "faces", "installed", "gauge", "length_m", "limit_set", "where", "note"}
+
+// fieldUnits are the units of register fields that are figures.
+var fieldUnits = map[string]string{"rating_a": "A", "nominal_v": "V", "rated_residual_ma": "mA", "length_m": "m"}
+
+func (s *Server) deviceFacts(d store.Device) []fact {
+	k := s.ink()
+	out := []fact{{Name: k.say("office.device.field.kind"), Value: k.named("kind", d.Kind)}}
+	if line := circuit(d.DeviceRow); line != "" {
+		out = append(out, fact{Name: k.say("office.device.panel_circuit"), Value: line})
+	}
+	add := func(field, value string) {
+		name := field
+		if key := "office.device.field." + field; k.words.Has(key) {
+			name = k.say(key)
+		}
+		if value != "" {
+			out = append(out, fact{Name: name, Value: value})
+		}
+	}
+	for _, field := range factOrder {
+		add(field, s.fieldText(field, d.Fields[field]))
+	}
+	add("critical_load", d.Place.CriticalLoad)
+	for _, field := range sortedKeys(d.Fields) {
+		if !slices.Contains(factOrder, field) && !slices.Contains([]string{"kind", "place", "circuit", "formerly"}, field) {
+			add(field, s.fieldText(field, d.Fields[field]))
+		}
+	}
+	return out
+}
+
+// fieldText writes a register field's value.
+func (s *Server) fieldText(field string, value any) string {
+	k := s.ink()
+	switch v := value.(type) {
+	case nil:
+		return ""
+	case bool:
+		return k.say(map[bool]string{true: "office.yes", false: "office.no"}[v])
+	case float64:
+		return k.amount(number(v), fieldUnits[field])
+	case string:
+		switch field {
+		case "installed":
+			if day, err := forms.ParseDay(v); err == nil {
+				return k.day(day)
+			}
+		case "equipment_ground":
+			return k.say(map[string]string{"yes": "office.device.ground_yes", "none-permitted": "office.device.ground_none"}[v])
+		case "limit_set":
+			return k.named("limit_set", v)
+		case "waveform":
+			return k.answer("waveform", v)
+		}
+		return v
+	case []any:
+		var parts []string
+		for _, one := range v {
+			parts = append(parts, s.fieldText(field, one))
+		}
+		return strings.Join(parts, ", ")
+	}
+	return ""
+}
+
+// label is the code of a device's label, drawn here so that it can be looked at before it is printed.
+type label struct {
+	Size                       int
+	Path, Address, Aria, Sheet string
+}
+
+func (s *Server) labelOf(d store.Device, view *devicePage) {
+	base := s.store.URL()
+	switch {
+	case d.Tag == "":
+		view.NoLabel = s.words.Say("office.device.no_tag")
+		return
+	case base == "":
+		view.NoLabel = s.words.Say("office.device.no_url")
+		return
+	}
+	address := record.TagAddress(base, d.Tag)
+	dark, err := export.CodeBitmap(address)
+	if err != nil {
+		view.NoLabel = err.Error()
+		return
+	}
+	path, size := svgPath(dark)
+	view.Label = &label{Size: size, Path: path, Address: address, Aria: s.words.Say("office.device.qr", "address", address), Sheet: "/labels.pdf?sheet=letter-3x10&device=" + d.ID}
+}
+
+// svgPath draws the dark modules of a square bitmap as rows of rectangles, inside a quiet zone of four modules that
+// readers need (ISO/IEC 18004).
+func svgPath(dark [][]bool) (path string, size int) {
+	const quiet = 4
+	var b strings.Builder
+	for y, row := range dark {
+		for x := 0; x < len(row); x++ {
+			if !row[x] {
+				continue
+			}
+			run := x
+			for run < len(row) && row[run] {
+				run++
+			}
+			b.WriteString("M" + strconv.Itoa(x+quiet) + " " + strconv.Itoa(y+quiet) + "h" + strconv.Itoa(run-x) + "v1h-" + strconv.Itoa(run-x) + "z")
+			x = run
+		}
+	}
+	return b.String(), len(dark) + 2*quiet
+}

@@ -1,0 +1,377 @@
+package server
+
+import (
+	"cmp"
+	"fmt"
+	"maps"
+	"net/http"
+	"slices"
+	"strings"
+	"time"
+
+	"github.com/labstack/echo/v4"
+
+	"tripwell/forms"
+	"tripwell/store"
+)
+
+// entryPage is one entry: each reading with its limit, what was corrected, and where it stands in the book.
+type entryPage struct {
+	Frame
+	Crumbs              []link
+	Heading, Tag, Under string
+	Verdict             mark
+	Notices             []notice
+	Readings            []readingShown
+	Note                string
+	Corrections         []correctionShown
+	Facts               []fact
+	Record              string
+	Actions             []link
+}
+
+// notice is something to know before the readings are read.
+type notice struct{ Shape, Text string }
+
+// readingShown is a reading with what each limit says of it.
+type readingShown struct {
+	Name, Value, Typed string
+	Findings           []findingShown
+}
+
+type findingShown struct {
+	Verdict             mark
+	Limit, Text, Source string
+	Scale               *scaleDrawing
+}
+
+// correctionShown is a correction with the readings it changed.
+type correctionShown struct {
+	Head, Reason, Record string
+	Changes              []change
+}
+
+type change struct{ Name, Was, Became string }
+
+func (s *Server) entryShow(c echo.Context) error {
+	view := entryPage{Frame: s.frame(c, s.words.Say("office.entry.title"), "sites")}
+	err := s.store.View(scope(c), func(v *store.View) error {
+		e, err := v.Entry(c.Param("entry"))
+		if err != nil {
+			return err
+		}
+		return s.buildEntry(v, e, &view)
+	})
+	if err != nil {
+		return err
+	}
+	return s.page(c, http.StatusOK, "entry.html", view)
+}
+
+func (s *Server) buildEntry(v *store.View, e store.Entry, view *entryPage) error {
+	site, err := v.Site(e.Site)
+	if err != nil {
+		return err
+	}
+	device, known, err := deviceOf(v, e)
+	if err != nil {
+		return err
+	}
+	before, err := earlierFigures(v, e)
+	if err != nil {
+		return err
+	}
+	k := s.ink()
+	view.Heading = k.say("office.entry.heading", "task", k.named("task", e.Task), "day", k.day(e.Day))
+	view.Title = view.Heading
+	view.Crumbs = []link{{Href: siteHref(site), Text: site.Name}}
+	if known {
+		view.Crumbs = append(view.Crumbs, link{Href: "/devices/" + device.ID, Text: s.spot(device.DeviceRow)})
+		view.Title += ", " + s.spot(device.DeviceRow)
+		view.Tag, view.Under = k.tag(device.Tag), joined(s.kindAndRating(device.DeviceRow), circuit(device.DeviceRow))
+	}
+	view.Verdict = k.verdict(e.Verdict.Result)
+	view.Notices = s.notices(v, e, site.Location())
+	spans, err := formSpans(v, e.Form)
+	if err != nil {
+		return err
+	}
+	view.Readings = s.readings(e, spans, before)
+	view.Note = e.Note
+	view.Corrections = s.corrections(v, e, site.Location())
+	view.Record = "/records/" + e.ID
+	if view.Facts, err = s.entryFacts(v, e, site); err != nil {
+		return err
+	}
+	if view.Change && e.Withdrawn == nil && len(e.Body.Readings) > 0 {
+		view.Actions = []link{{Href: "/entries/" + e.ID + "/correct", Text: k.say("office.entry.correct")}}
+	}
+	return nil
+}
+
+// deviceOf finds the device of an entry; an entry may come before its device.
+func deviceOf(v *store.View, e store.Entry) (d store.Device, known bool, err error) {
+	d, err = v.Device(e.Device, e.Day)
+	if isRefusal(err) {
+		return d, false, nil
+	}
+	return d, err == nil, err
+}
+
+// earlierFigures are the figures of the newest test of the same task before an entry, for the dashed mark.
+func earlierFigures(v *store.View, e store.Entry) (map[string]float64, error) {
+	all, err := v.Entries(e.Device)
+	out := map[string]float64{}
+	for _, other := range all {
+		if other.Task != e.Task || other.ID == e.ID || other.Day >= e.Day || other.Withdrawn != nil {
+			continue
+		}
+		for code, r := range other.Body.Readings {
+			if f, ok := r.Value.(float64); ok {
+				out[code] = f
+			}
+		}
+		if len(out) > 0 {
+			break
+		}
+	}
+	return out, err
+}
+
+func (s *Server) notices(v *store.View, e store.Entry, zone *time.Location) []notice {
+	k := s.ink()
+	var out []notice
+	if w := e.Withdrawn; w != nil {
+		out = append(out, notice{"fail", k.say("office.entry.withdrawn", "by", s.personName(v, w.By), "day", k.at(w.At, zone), "reason", w.Reason)})
+	}
+	if e.Imported {
+		out = append(out, notice{"none", k.say("office.entry.imported")})
+	}
+	if len(e.Corrections) > 0 {
+		out = append(out, notice{"watch", k.say("office.entry.corrected")})
+	}
+	for _, f := range e.Flags {
+		text := k.say("flag."+f.Code, "detail", f.Detail)
+		if !k.words.Has("flag." + f.Code) {
+			text = joined(f.Code, f.Detail)
+		}
+		out = append(out, notice{"watch", text})
+	}
+	return out
+}
+
+// readings shows every reading: those with findings in the findings' order, which is the form's, then the others.
+func (s *Server) readings(e store.Entry, spans map[string]scaleSpan, before map[string]float64) []readingShown {
+	var out []readingShown
+	place := map[string]int{}
+	for _, f := range e.Verdict.Findings {
+		if f.Reading == "" {
+			continue
+		}
+		r := findingReading(e.Body, f)
+		key := f.Reading + fmt.Sprint(f.At)
+		at, ok := place[key]
+		if !ok {
+			at, place[key] = len(out), len(out)
+			out = append(out, s.oneReading(f.Reading, r, f.At))
+		}
+		out[at].Findings = append(out[at].Findings, s.finding(f, r, e, spans, before))
+	}
+	for _, code := range readingOrder(e.Body.Readings) {
+		if _, shown := place[code+fmt.Sprint(map[string]any(nil))]; !shown {
+			out = append(out, s.oneReading(code, e.Body.Readings[code], nil))
+		}
+	}
+	for _, one := range e.Body.Series {
+		for _, code := range readingOrder(one.Readings) {
+			if _, shown := place[code+fmt.Sprint(one.At)]; !shown {
+				out = append(out, s.oneReading(code, one.Readings[code], one.At))
+			}
+		}
+	}
+	return out
+}
+
+func (s *Server) oneReading(code string, r forms.Reading, at map[string]any) readingShown {
+	k := s.ink()
+	name := k.reading(code)
+	if len(at) > 0 {
+		name += " " + s.conditions(at)
+	}
+	return readingShown{Name: name, Value: k.value(code, r), Typed: k.typed(code, r)}
+}
+
+func (s *Server) finding(f forms.Finding, r forms.Reading, e store.Entry, spans map[string]scaleSpan, before map[string]float64) findingShown {
+	k := s.ink()
+	shown := findingShown{Verdict: k.verdict(f.Verdict), Limit: k.limit(f.Reading, f.Limit, f.Level), Source: f.Source}
+	if f.Text != "" && k.words.Has(f.Text) && f.Verdict != forms.Pass {
+		shown.Text = k.say(f.Text)
+	}
+	if current, ok := e.Body.Readings["test_current_ma"]; ok && f.Reading == "trip_time_ms" && shown.Limit != "" && len(f.At) == 0 {
+		shown.Limit += " " + k.say("office.entry.at_current", "current", k.value("test_current_ma", current))
+	}
+	var span *scaleSpan
+	if s, ok := spans[f.Reading]; ok {
+		span = &s
+	}
+	var earlier *float64
+	if b, ok := before[f.Reading]; ok && len(f.At) == 0 {
+		earlier = &b
+	}
+	shown.Scale = k.scale(f.Reading, r, f, span, earlier)
+	return shown
+}
+
+// findingReading is the reading a finding is about.
+func findingReading(body forms.Entry, f forms.Finding) forms.Reading {
+	for _, one := range body.Series {
+		if len(f.At) > 0 && sameConditions(one.At, f.At) {
+			if r, ok := one.Readings[f.Reading]; ok {
+				return r
+			}
+		}
+	}
+	if r, ok := body.Readings[f.Reading]; ok {
+		return r
+	}
+	return forms.Reading{}
+}
+
+func sameConditions(a, b map[string]any) bool {
+	return maps.EqualFunc(a, b, func(x, y any) bool { return fmt.Sprint(x) == fmt.Sprint(y) })
+}
+
+// conditions writes what a series reading was taken under: at 5 × rated current, 180°.
+func (s *Server) conditions(at map[string]any) string {
+	k := s.ink()
+	var parts []string
+	for _, name := range []string{"multiple", "phase_deg", "waveform", "face"} {
+		v, ok := at[name]
+		if !ok {
+			continue
+		}
+		text := fmt.Sprint(v)
+		switch name {
+		case "multiple":
+			text = k.say("office.entry.multiple", "n", text)
+		case "phase_deg":
+			text = k.say("office.entry.phase", "n", text)
+		default:
+			text = lowerFirst(k.answer(name, text))
+		}
+		parts = append(parts, text)
+	}
+	for _, name := range sortedKeys(at) {
+		if !slices.Contains([]string{"multiple", "phase_deg", "waveform", "face"}, name) {
+			parts = append(parts, fmt.Sprint(at[name]))
+		}
+	}
+	return k.say("office.entry.at", "conditions", strings.Join(parts, ", "))
+}
+
+func (s *Server) corrections(v *store.View, e store.Entry, zone *time.Location) []correctionShown {
+	k := s.ink()
+	var out []correctionShown
+	was := e.Original
+	for _, c := range e.Corrections {
+		state := k.say("office.entry.not_in_force")
+		if c.InForce {
+			state = k.say("office.entry.in_force")
+		}
+		out = append(out, correctionShown{
+			Head:   joined(k.say("office.entry.correction_head", "by", s.personName(v, c.By), "day", k.at(c.At, zone)), state),
+			Reason: c.Reason, Record: "/records/" + c.Record, Changes: s.changes(was, c.Body),
+		})
+	}
+	return out
+}
+
+// changes lists the readings that differ between the first version and a correction.
+func (s *Server) changes(was, became forms.Entry) []change {
+	k := s.ink()
+	codes := maps.Clone(was.Readings)
+	if codes == nil {
+		codes = map[string]forms.Reading{}
+	}
+	maps.Copy(codes, became.Readings)
+	var out []change
+	for _, code := range readingOrder(codes) {
+		a, b := dash, dash
+		if r, ok := was.Readings[code]; ok {
+			a = k.value(code, r)
+		}
+		if r, ok := became.Readings[code]; ok {
+			b = k.value(code, r)
+		}
+		if a != b {
+			out = append(out, change{k.reading(code), a, b})
+		}
+	}
+	return out
+}
+
+func (s *Server) entryFacts(v *store.View, e store.Entry, site store.Site) ([]fact, error) {
+	k, zone := s.ink(), site.Location()
+	names, err := instrumentNames(v)
+	if err != nil {
+		return nil, err
+	}
+	var out []fact
+	add := func(key, value string) {
+		if value != "" && value != dash {
+			out = append(out, fact{Name: k.say("office.entry." + key), Value: value})
+		}
+	}
+	add("by", s.personName(v, e.By))
+	add("read_by", personOr(v, e.ReadBy))
+	add("typed_by", personOr(v, e.TypedBy))
+	add("at_time", k.at(e.At, zone))
+	add("received", k.at(e.Received, zone))
+	add("test_day", k.day(e.Day))
+	add("source", k.named("office.entry.source_name", e.Source))
+	if given := e.Body.Given; given.Instrument != "" {
+		text := cmp.Or(names[given.Instrument], given.Instrument)
+		if given.CalibrationDue != nil && *given.CalibrationDue != forms.NoDay {
+			text += ", " + k.say("office.entry.calibration", "day", k.day(*given.CalibrationDue))
+		}
+		add("instrument", text)
+	}
+	if e.LimitSet != "" {
+		add("limits", k.say("office.entry.limits_rev", "name", k.named("limit_set", e.LimitSet), "rev", e.LimitRev))
+	}
+	if e.Shown != nil && e.Shown.Result != "" {
+		add("shown", k.named("verdict", e.Shown.Result))
+	}
+	add("log", k.say("office.entry.log_at", "log", site.Name, "pos", count(int(e.Pos))))
+	out = append(out, fact{Name: k.say("office.entry.record"), Value: e.ID, Mono: true}, fact{Name: k.say("office.entry.from"), Value: e.From, Mono: true})
+	return out, nil
+}
+
+func personOr(v *store.View, id string) string {
+	if id == "" {
+		return ""
+	}
+	return cmp.Or(v.PersonName(id), id)
+}
+
+// formSpans are the scales an entry's form draws its readings on; a form nobody holds has none.
+func formSpans(v *store.View, id string) (map[string]scaleSpan, error) {
+	all, err := v.Forms()
+	if err != nil {
+		return nil, err
+	}
+	spans := map[string]scaleSpan{}
+	for _, f := range all {
+		if f.ID != id {
+			continue
+		}
+		for _, step := range f.Steps {
+			for _, ask := range step.Asks {
+				if ask.Scale != nil {
+					spans[ask.Reading] = scaleSpan{log: ask.Scale.Shape == "log", from: ask.Scale.From, to: ask.Scale.To}
+				}
+			}
+		}
+	}
+	return spans, nil
+}

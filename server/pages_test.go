@@ -1,0 +1,335 @@
+package server
+
+import (
+	"bytes"
+	"os"
+	"reflect"
+	"regexp"
+	"slices"
+	"strings"
+	"testing"
+
+	"golang.org/x/net/html"
+
+	"tripwell/export"
+	"tripwell/forms"
+	"tripwell/static"
+)
+
+// pageServer has pages, words and assets and no store: enough to render.
+func pageServer(t testing.TB) *Server {
+	t.Helper()
+	s, err := New(nil, Options{})
+	must(t, err)
+	return s
+}
+
+func frameOf(title, here string) Frame {
+	return Frame{Title: title, Here: here, Name: "Manager 1", Role: "manager", Today: "Tuesday 1 December 2026", Demo: true, Change: true}
+}
+
+// normalPages gives each office page as a manager of an ordinary organisation sees it.
+func normalPages(t testing.TB, s *Server) map[string]any {
+	t.Helper()
+	pass, fail := mark{"pass", "Pass"}, mark{"fail", "Fail"}
+	dark, err := export.CodeBitmap("HTTPS://DEMO.TRIPWELL.EXAMPLE/T/K7QM2P3")
+	must(t, err)
+	path, size := svgPath(dark)
+	sites := []siteRow{
+		{Href: "/sites/BRACKEN", Name: "Bracken Row Apartments", Code: "BRACKEN", Devices: "148", Failed: "1", Overdue: "0", FailedHref: "/sites/BRACKEN?state=failed", Next: "Fri 4 Dec · button"},
+		{Href: "/sites/OTTERMOOR", Name: "Ottermoor Swim Hall", Code: "OTTERMOOR", Devices: "74", Failed: "2", Overdue: "31", FailedHref: "/sites/OTTERMOOR?state=failed", OverdueHref: "/sites/OTTERMOOR?state=overdue", Next: "since Mon 30 Nov · button", Late: true},
+	}
+	conflicts := []conflictLine{{Text: "Rating: 20 stands; 15 was given by Crew 2 on 3 Nov 2026.", Href: "/records/0197b2c0-0000-7000-8000-000000000001"}}
+	device := devicePage{
+		Frame: frameOf("Pantry, by the sink", "sites"), Crumbs: []link{{Href: "/sites/KILN-LANE", Text: "Kiln Lane Day Clinic"}, {Text: "Ground floor · Kitchen"}},
+		Heading: "Pantry, by the sink", Tag: "K7Q‑M2P‑3", What: "GFCI receptacle, 20 A · LP‑2 / 14 · installed 3 Mar 2021", Last: mark{"pass", "Pass: measurement, Tue 3 Nov"},
+		Next: []dated{{"Button overdue since Mon 30 Nov", true}, {"Measurement by 3 Nov 2027", false}}, Conflicts: conflicts, Clash: "The tag K7Q‑M2P‑3 is also bound elsewhere.",
+		Columns: []column{{"Trip current", true}, {"Trip time", true}, {"Wiring", false}, {"Ground path", true}},
+		Entries: []entryRow{
+			{Href: "/entries/1", Day: "3 Nov 2026", Task: "Measurement", Cells: []string{"5.5 mA", "610 ms at 6.8 mA", "Correct", "0.31 Ω"}, Verdict: pass, By: "Crew 1, Instrument B"},
+			{Href: "/entries/2", Day: "5 Oct 2026", Task: "Button", Cells: []string{"", "", "", ""}, Verdict: pass, By: "Crew 1"},
+			{Href: "/entries/3", Day: "2 Sep 2026", Task: "Button", Cells: []string{"", "", "", ""}, Verdict: mark{"none", "Not tested"}, Why: "room locked", By: "Crew 2"},
+			{Href: "/entries/4", Day: "2 Sep 2025", Task: "Measurement", Cells: []string{"7.9 mA", "no trip", "Open ground", "more than 20 Ω"}, Verdict: fail, By: "Crew 2, Instrument A"},
+		},
+		Facts:   []fact{{Name: "Kind", Value: "GFCI receptacle"}, {Name: "Panel and circuit", Value: "LP‑2 / 14"}, {Name: "Rating", Value: "20 A"}, {Name: "Note", Value: "Faceplate replaced after the leak in the pantry."}},
+		Actions: []link{{Href: "/devices/1/edit", Text: "Edit device"}, {Href: "/devices/1/retire", Text: "Retire"}},
+		Label:   &label{Size: size, Path: path, Address: "HTTPS://DEMO.TRIPWELL.EXAMPLE/T/K7QM2P3", Aria: "QR code", Sheet: "/labels.pdf?device=1"},
+		Earlier: []link{{Href: "/devices/0", Text: "GFCI receptacle, 15 A · installed 2 Feb 2012"}},
+	}
+	form := s.deviceSample(t)
+	return map[string]any{
+		"overview.html": overviewPage{Frame: frameOf("Overview", "overview"), Heading: "3 devices failed. 31 tests overdue.", Sites: sites,
+			Sums:   []sum{{"/sites", "3", "devices failed", "at the last test", "fail"}, {"/dates?within=late", "31", "tests overdue", "at Ottermoor Swim Hall", "watch"}, {"/dates", "212", "due by Fri 1 Jan", "today and the 31 days after", ""}, {"/sites", "318", "devices", "at 3 sites", ""}},
+			Decide: []decision{{Verdict: fail, Href: "/devices/9", Spot: "Plant room, dosing pump", Tag: "R4D‑0XN‑9", What: "Pressed TEST, power went off: no (must be yes)", Where: "Ottermoor Swim Hall · Basement · Plant room", When: "Button, failed since Mon 30 Nov"}},
+			More:   []link{{Href: "/sites/OTTERMOOR?state=failed", Text: "All 17 failed at Ottermoor Swim Hall"}}},
+		"sites.html": sitesPage{Frame: frameOf("Sites", "sites"), Heading: "2 sites.", NewSite: "/sites/new", Sites: sites},
+		"site.html": sitePage{Frame: frameOf("Kiln Lane Day Clinic", "sites"), Crumbs: []link{{Href: "/sites", Text: "Sites"}}, Heading: "Kiln Lane Day Clinic: 1 failed, 6 tests overdue.", Under: "96 devices · KILN-LANE · America/Chicago", Action: "/sites/KILN-LANE", Query: "pantry",
+			Actions: []link{{Href: "/sites/KILN-LANE/devices/new", Text: "New device", Here: true}, {Href: "/sites/KILN-LANE/edit", Text: "Edit site"}}, Conflicts: conflicts, States: choices("failed", "", "All devices", "failed", "Failed at the last test"), Filtered: true, Found: "3 of 96 devices, in walking order",
+			Groups: []registerGroup{
+				{"Clinic · Ground floor · Kitchen", []registerRow{
+					{Href: "/devices/1", Spot: "Pantry, by the sink", Tag: "K7Q‑M2P‑3", Kind: "GFCI receptacle, 20 A", Circuit: "LP‑2 / 14", Last: pass, LastWhen: "Measurement · Tue 3 Nov", Next: "Thu 31 Dec · button"},
+					{Href: "/devices/2", Spot: "Pantry, door", Tag: "9HB‑2TC‑8", Kind: "Receptacle behind a GFCI, 20 A", Circuit: "LP‑2 / 14", Last: fail, LastWhen: "Button · Mon 30 Nov", Next: "overdue since Mon 30 Nov · button", Late: true}}},
+				{"Clinic · Upper floor · Nurses' room", []registerRow{{Href: "/devices/3", Spot: "Left of the window", Kind: "Hospital receptacle, 20 A", Last: mark{"none", "Not tested yet"}, Next: dash}}}},
+			Pager: []link{{Href: "/sites/KILN-LANE", Text: "1 to 500", Here: true}, {Href: "/sites/KILN-LANE?from=500", Text: "501 to 703"}}},
+		"device.html": device,
+		"entry.html":  s.entrySample(),
+		"form.html":   form,
+		"dates.html": datesPage{Frame: frameOf("Dates", "dates"), Heading: "37 tests overdue.", Under: "212 more have their date by 1 Jan 2027.", On: "2026-12-01", OnError: "Write the day as 2026-12-31.",
+			Sites: choices("", "", "All sites", "1", "Kiln Lane Day Clinic"), Tasks: choices("", "", "All tests"), Within: choices("", "", "Overdue and the 31 days after"), More: "The first 500 are shown.",
+			Groups: []dateGroup{{Day: "Monday 30 November 2026", Count: "1 test", Rows: []dateRow{{Href: "/devices/9", Spot: "Plant room, dosing pump", Tag: "R4D‑0XN‑9", Where: "Ottermoor Swim Hall · Basement", Task: "Button", State: "Overdue", Last: "3 Oct 2026", Late: true}}},
+				{Day: "Thursday 31 December 2026", Count: "1 test", Rows: []dateRow{{Href: "/devices/1", Spot: "Pantry, by the sink", Tag: "K7Q‑M2P‑3", Where: "Kiln Lane Day Clinic · Ground floor · Kitchen", Task: "Button", State: "Due", Last: "3 Nov 2026"}}}}},
+		"downloads.html": downloadsPage{Frame: frameOf("Downloads", "downloads"), Heading: "Take it with you.", Under: "Files are made from the store as it stands now.", LabelsText: "A PDF for sheets of 30 labels.",
+			Workbook: []field{{Name: "site", Label: "Site", Options: choices("", "", "All your sites")}, {Name: "from", Label: "Entries from", Type: "date"}, {Name: "to", Label: "Entries to", Type: "date"}},
+			Labels:   []field{{ID: "label-site", Name: "site", Label: "Site", Options: choices("", "", "All your sites")}, {Name: "start", Label: "First label at position", Type: "number", Value: "1"}}},
+		"setup.html":  s.setupSample(),
+		"limits.html": s.limitsSample(),
+		"people.html": peoplePage{Frame: frameOf("People", "people"), Heading: "3 people may sign in.", People: []peopleRow{
+			{Href: "/people/1", Name: "Manager 1", Role: "Manager", Sites: "All sites", Contact: "ext. 401", Active: true}, {Href: "/people/2", Name: "Crew 1", Role: "Crew", Sites: "Kiln Lane Day Clinic, Ottermoor Swim Hall", Active: true}, {Href: "/people/3", Name: "Auditor 2", Role: "Auditor", Sites: "Kiln Lane Day Clinic"}}},
+		"person_link.html": personLinkPage{Frame: frameOf("People", "people"), Crumbs: []link{{Href: "/people", Text: "People"}}, Heading: "Sign-in link for Crew 1", Under: "It is shown here once.", Link: "https://tripwell.example/in/2JHC0VQ2W4Z8S5N7K3M6P9R1T4", Text: "Send it to Crew 1 only."},
+	}
+}
+
+// deviceSample is the device form after a bad answer.
+func (s *Server) deviceSample(t testing.TB) formPage {
+	t.Helper()
+	f, err := s.blankForm(map[string]string{"kind": forms.GFCIReceptacle, "name": "", "rating_a": "twenty"})
+	must(t, err)
+	f.refuse("name", "Spot is needed.")
+	f.refuse("rating_a", "Write a number, for example 4.5.")
+	k := s.ink()
+	p := formPage{Frame: frameOf("New device", "sites"), Crumbs: []link{{Href: "/sites/KILN-LANE", Text: "Kiln Lane Day Clinic"}}, Heading: "Register a device at Kiln Lane Day Clinic", Lead: "The label stays with the place.", Action: "/sites/KILN-LANE/devices", Submit: "Register device", Cancel: "/sites/KILN-LANE",
+		Groups: []fieldGroup{
+			{Legend: "Where it is", Fields: []field{{Name: "building", Label: "Building"}, {Name: "room", Label: "Room"}, {Name: "name", Label: "Spot", Hint: "As you would say it on the telephone", Required: true}, {Name: "zone", Label: "Time zone", Known: zonesOffered}}},
+			{Legend: "What it is", Note: "From its nameplate.", Fields: []field{{Name: "kind", Label: "Kind", Required: true, Options: choices("", forms.GFCIReceptacle, "GFCI receptacle", forms.RCD, "RCD")}, {Name: "rating_a", Label: "Rating", Type: "number", Unit: "A"}, {Name: "installed", Label: "Installed on", Type: "date"}, {Name: "delayed", Label: "Time-delayed type", Type: "check"}, {Name: "note", Label: "Note", Type: "text-area", Wide: true}, {Name: "sites", Label: "Sites", Type: "checks", Options: choices("", "1", "Kiln Lane Day Clinic", "2", "Ottermoor Swim Hall")}}},
+		}}
+	f.fill(&p)
+	_ = k
+	return p
+}
+
+func (s *Server) entrySample() entryPage {
+	k := s.ink()
+	lo, hi, limit, earlier := 4.0, 6.0, 4677.0, 610.0
+	span := scaleSpan{log: true, from: 10, to: 10000}
+	time, current := forms.Reading{Typed: "3.12", Unit: "s", Value: 3120.0}, forms.Reading{Value: 6.4}
+	never, above := forms.Reading{}, 2000.0
+	never.Above = &above
+	passed := forms.Finding{Reading: "trip_time_ms", Verdict: forms.Pass, Limit: &forms.Bounds{Max: &limit}, Level: "must"}
+	beyond := forms.Finding{Reading: "trip_current_ma", Verdict: forms.ConditionalFail, Limit: &forms.Bounds{Min: &lo, Max: &hi}, Level: "must"}
+	row := func(code string, r forms.Reading, f forms.Finding, sp *scaleSpan, before *float64) readingShown {
+		return readingShown{Name: k.reading(code), Value: k.value(code, r), Typed: k.typed(code, r), Findings: []findingShown{{Verdict: k.verdict(f.Verdict), Limit: k.limit(code, f.Limit, f.Level), Source: "UL 943 Class A", Text: "Measure once more at a constant current.", Scale: k.scale(code, r, f, sp, before)}}}
+	}
+	return entryPage{
+		Frame: frameOf("Measurement, 3 Nov 2026", "sites"), Crumbs: []link{{Href: "/sites/KILN-LANE", Text: "Kiln Lane Day Clinic"}, {Href: "/devices/1", Text: "Pantry, by the sink"}},
+		Heading: "Measurement, 3 Nov 2026", Tag: "K7Q‑M2P‑3", Under: "GFCI receptacle, 20 A · LP‑2 / 14", Verdict: mark{"watch", "Conditional fail"},
+		Notices:  []notice{{"watch", "This entry was corrected."}, {"fail", "Withdrawn by Manager 1 on 4 Nov 2026, 09:10: wrong outlet"}},
+		Readings: []readingShown{{Name: "Wiring", Value: "Correct", Findings: []findingShown{{Verdict: mark{"pass", "Pass"}, Limit: "must be correct", Source: "common practice, no source"}}}, row("trip_time_ms", time, passed, &span, &earlier), row("trip_current_ma", current, beyond, nil, nil), row("trip_time_ms", never, passed, &span, nil), {Name: "Test current", Value: "6.8 mA"}},
+		Note:     "Fridge unplugged.\nPlugged in again.", Corrections: []correctionShown{{Head: "By Manager 1 on 4 Nov 2026, 09:02 · in force", Reason: "typed into the wrong field", Record: "/records/2", Changes: []change{{"Trip time", "6.4 ms", "3 120 ms"}}}},
+		Facts: []fact{{Name: "Tested by", Value: "Crew 1"}, {Name: "Record", Value: "0197b2c0-0000-7000-8000-000000000001", Mono: true}}, Record: "/records/1", Actions: []link{{Href: "/entries/1/correct", Text: "Correct this entry"}},
+	}
+}
+
+func (s *Server) setupSample() setupPage {
+	shipped := forms.Shipped()
+	p := setupPage{Frame: frameOf("Set up", "set-up"), Heading: "What tests are judged by.", NewInstrument: "/instruments/new", Instruments: []instrumentRow{
+		{Href: "/instruments/1", Name: "Instrument B", Serial: "0042", Calibration: "27 Nov 2026, expired", Late: true, Accuracy: []string{"Trip time ±(2 % + 1 ms)", "Trip current ±5 %"}, Ramp: "0.5 mA every 200 ms"}}}
+	for _, plan := range shipped.Plans {
+		p.Plans = append(p.Plans, s.planRow(plan))
+	}
+	p.LimitSets = s.limitSetRows(shipped.LimitSets)
+	return p
+}
+
+func (s *Server) limitsSample() limitsPage {
+	p := limitsPage{Frame: frameOf("Limits", "set-up"), Crumbs: []link{{Href: "/set-up", Text: "Set up"}}, Heading: "UL 943 Class A", Under: "For GFCI receptacles."}
+	for _, set := range forms.Shipped().LimitSets {
+		p.Revisions = append(p.Revisions, s.limitSet(set))
+	}
+	return p
+}
+
+// keptFields hold what is not text of a reader: addresses, shapes, places in a drawing, codes.
+var keptFields = []string{"Href", "Action", "Cancel", "FailedHref", "OverdueHref", "NewSite", "NewInstrument", "Record", "Sheet", "Shape", "Path", "BandX", "BandW", "Limits", "X", "Anchor", "Before", "Mark", "Pointer", "Role", "Here", "Type", "Known"}
+
+// with gives a page with every text of a reader replaced, or with all lists emptied where text is nil.
+func with(page any, text *string) any {
+	v := reflect.New(reflect.TypeOf(page)).Elem()
+	v.Set(reflect.ValueOf(page))
+	replace(v, "", text)
+	return v.Interface()
+}
+
+func replace(v reflect.Value, name string, text *string) {
+	switch v.Kind() {
+	case reflect.String:
+		if text != nil && !slices.Contains(keptFields, name) && v.Len() > 0 {
+			v.SetString(*text)
+		}
+	case reflect.Pointer:
+		if !v.IsNil() {
+			if text == nil {
+				v.SetZero()
+				return
+			}
+			fresh := reflect.New(v.Type().Elem())
+			fresh.Elem().Set(v.Elem())
+			replace(fresh.Elem(), name, text)
+			v.Set(fresh)
+		}
+	case reflect.Slice:
+		if text == nil {
+			v.SetZero()
+			return
+		}
+		fresh := reflect.MakeSlice(v.Type(), v.Len(), v.Len())
+		reflect.Copy(fresh, v)
+		for i := range fresh.Len() {
+			replace(fresh.Index(i), name, text)
+		}
+		if v.CanSet() {
+			v.Set(fresh)
+		}
+	case reflect.Struct:
+		for i := range v.NumField() {
+			f := v.Type().Field(i)
+			if !f.IsExported() || v.Type() == reflect.TypeFor[hidden]() || v.Type() == reflect.TypeFor[field]() && (f.Name == "Name" || f.Name == "ID") {
+				continue
+			}
+			replace(v.Field(i), f.Name, text)
+		}
+	}
+}
+
+var rawKey = regexp.MustCompile(`\b(office|access|reading|reading_name|option|missing|caution|limit|limit_set|verdict|kind|task|unit|plan|state|flag|record|step)\.[a-z][a-z_.-]*`)
+
+func TestPages_EveryTemplateInEveryCondition(t *testing.T) {
+	s := pageServer(t)
+	hostile := `<script>alert(1)</script>"'><img src=x onerror=alert(2)>{{.}}` + strings.Repeat("Langenwortverbindung", 30) + "\u202e" + strings.Repeat("Q", 40)
+	pages := normalPages(t, s)
+	for name := range s.pages {
+		if own := []string{"signin.html", "signin_link.html", "error.html", "field.html"}; pages[name] == nil && !slices.Contains(own, name) {
+			t.Errorf("%s is rendered by no case here", name)
+		}
+	}
+	for name, page := range pages {
+		for condition, view := range map[string]any{"normal": page, "empty": with(page, nil), "hostile": with(page, &hostile)} {
+			t.Run(name+"/"+condition, func(t *testing.T) {
+				var b bytes.Buffer
+				must(t, s.pages[name].Execute(&b, view))
+				checkPage(t, b.Bytes(), condition)
+				if dir := os.Getenv("TRIPWELL_PAGES"); dir != "" {
+					must(t, os.WriteFile(dir+"/"+condition+"-"+name, b.Bytes(), 0o600))
+				}
+			})
+		}
+	}
+}
+
+// checkPage holds what is true of every office page, element by element.
+func checkPage(t *testing.T, raw []byte, condition string) {
+	t.Helper()
+	doc, err := html.Parse(bytes.NewReader(raw))
+	must(t, err)
+	ids, labelled, asked, headings := map[string]int{}, map[string]bool{}, []string{}, 0
+	for n := range doc.Descendants() {
+		if n.Type == html.TextNode {
+			if key := rawKey.FindString(n.Data); key != "" && condition == "normal" {
+				t.Errorf("the key %s stands on the page instead of its words", key)
+			}
+			continue
+		}
+		if n.Type != html.ElementNode {
+			continue
+		}
+		attrs := map[string]string{}
+		for _, a := range n.Attr {
+			attrs[a.Key] = a.Val
+			if a.Key == "style" || strings.HasPrefix(a.Key, "on") && a.Key != "on" {
+				t.Errorf("<%s> carries %s=%q: the content policy forbids it", n.Data, a.Key, a.Val)
+			}
+			if a.Key == "href" && !strings.HasPrefix(a.Val, "/") && !strings.HasPrefix(a.Val, "#") {
+				t.Errorf("<%s> leads to %q", n.Data, a.Val)
+			}
+		}
+		if id := attrs["id"]; id != "" {
+			ids[id]++
+		}
+		switch n.Data {
+		case "script", "style", "img", "iframe":
+			t.Errorf("<%s> on an office page", n.Data)
+		case "h1":
+			headings++
+		case "label":
+			labelled[attrs["for"]] = true
+		case "th":
+			if attrs["scope"] == "" {
+				t.Errorf("a heading cell without scope: %s", text(n))
+			}
+		case "svg":
+			if attrs["aria-hidden"] != "true" && (attrs["role"] != "img" || attrs["aria-label"] == "") {
+				t.Errorf("a drawing without words for it")
+			}
+		case "input", "select", "textarea":
+			if attrs["type"] != "hidden" && attrs["type"] != "checkbox" {
+				asked = append(asked, attrs["id"])
+			}
+		case "a", "button":
+			if strings.TrimSpace(text(n)) == "" && condition == "normal" {
+				t.Errorf("<%s> without words", n.Data)
+			}
+		}
+	}
+	for id, n := range ids {
+		if n > 1 {
+			t.Errorf("the id %q stands %d times", id, n)
+		}
+	}
+	for _, id := range asked {
+		if !labelled[id] {
+			t.Errorf("the field %q has no label", id)
+		}
+	}
+	if headings != 1 {
+		t.Errorf("got %d first headings, want 1", headings)
+	}
+}
+
+func text(n *html.Node) string {
+	var b strings.Builder
+	for d := range n.Descendants() {
+		if d.Type == html.TextNode {
+			b.WriteString(d.Data)
+		}
+	}
+	return b.String()
+}
+
+var officeKey = regexp.MustCompile(`[^d][( ]"(office\.[a-z0-9_.]*[a-z0-9_])"`) // not named("section", …)
+
+func TestWords_EveryOfficeKeyIsInTheCatalogue(t *testing.T) {
+	words, err := static.ReadWords("en")
+	must(t, err)
+	var sources []string
+	for _, folder := range []string{".", "pages"} {
+		entries, err := os.ReadDir(folder)
+		must(t, err)
+		for _, e := range entries {
+			if name := folder + "/" + e.Name(); strings.HasSuffix(name, ".html") || strings.HasSuffix(name, ".go") && !strings.HasSuffix(name, "_test.go") {
+				sources = append(sources, name)
+			}
+		}
+	}
+	seen := 0
+	for _, name := range sources {
+		raw, err := os.ReadFile(name)
+		must(t, err)
+		for _, m := range officeKey.FindAllSubmatch(raw, -1) {
+			if seen++; !words.Has(string(m[1])) {
+				t.Errorf("%s says %s, which is not in the catalogue", name, m[1])
+			}
+		}
+	}
+	if seen < 100 {
+		t.Fatalf("only %d keys found in the sources; the search is broken", seen)
+	}
+}

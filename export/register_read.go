@@ -65,6 +65,7 @@ func readRegister(r io.Reader, site string) ([]RegisterRow, []RowProblem, error)
 		return nil, problems, err
 	}
 	var rows []RegisterRow
+	zones := zoneNames{}
 	for {
 		cells, err := c.Read()
 		if errors.Is(err, io.EOF) {
@@ -84,7 +85,7 @@ func readRegister(r io.Reader, site string) ([]RegisterRow, []RowProblem, error)
 		if blankRow(cells) {
 			continue
 		}
-		row, bads := readRow(line, site, columns, cells)
+		row, bads := readRow(line, site, columns, cells, zones)
 		problems = append(problems, bads...)
 		if len(bads) == 0 {
 			rows = append(rows, row)
@@ -151,7 +152,20 @@ func readHeadings(head []string, siteGiven bool) ([]*registerColumn, []RowProble
 	return columns, problems, nil
 }
 
-func readRow(line int, site string, columns []*registerColumn, cells []string) (RegisterRow, []RowProblem) {
+// zoneNames remembers which time zone names are good: a sheet repeats one on every row, and looking it up reads a file.
+type zoneNames map[string]bool
+
+func (z zoneNames) good(name string) bool {
+	good, known := z[name]
+	if !known {
+		_, err := time.LoadLocation(name)
+		good = err == nil && name != "Local"
+		z[name] = good
+	}
+	return good
+}
+
+func readRow(line int, site string, columns []*registerColumn, cells []string, zones zoneNames) (RegisterRow, []RowProblem) {
 	row := RegisterRow{Line: line, Site: site, Place: map[string]any{}, Circuit: map[string]any{}, Device: map[string]any{}}
 	var problems []RowProblem
 	wrong := func(column, value, text string) {
@@ -174,7 +188,7 @@ func readRow(line int, site string, columns []*registerColumn, cells []string) (
 			wrong(c.name, cell, fmt.Sprintf("The cell holds more than %d letters. Shorten it.", registerCell))
 			continue
 		}
-		if text := row.take(c, cell); text != "" {
+		if text := row.take(c, cell, zones); text != "" {
 			wrong(c.name, cell, text)
 		}
 	}
@@ -185,7 +199,7 @@ func readRow(line int, site string, columns []*registerColumn, cells []string) (
 }
 
 // take puts one cell where it belongs; the text says what is wrong with it.
-func (row *RegisterRow) take(c *registerColumn, cell string) string {
+func (row *RegisterRow) take(c *registerColumn, cell string, zones zoneNames) string {
 	if into := map[string]map[string]any{"place": row.Place, "circuit": row.Circuit, "device": row.Device}[c.of]; into != nil {
 		v, text := c.read(cell)
 		if text == "" {
@@ -202,7 +216,7 @@ func (row *RegisterRow) take(c *registerColumn, cell string) string {
 	case "site_name":
 		row.SiteName = cell
 	case "zone":
-		if _, err := time.LoadLocation(cell); err != nil || cell == "Local" {
+		if !zones.good(cell) {
 			return "This is no time zone name. Write it as America/Chicago."
 		}
 		row.Zone = cell

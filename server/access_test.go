@@ -7,6 +7,8 @@ import (
 	"strings"
 	"testing"
 	"time"
+
+	"tripwell/store"
 )
 
 func TestLink_OnlyPostSpendsItAndOnlyOnce(t *testing.T) {
@@ -171,8 +173,39 @@ func TestTag_KnownAndUnknownLookAlikeSignedOut(t *testing.T) {
 		t.Errorf("known: %d %v; unknown: %d %v", known.status, known.header, unknown.status, unknown.header)
 	}
 	page := r.open(browser(t), known.header.Get("Location"))
-	if page.status != 200 || !strings.Contains(page.body, `action="/in"`) {
-		t.Errorf("got %d, want the sign-in page", page.status)
+	if page.status != 200 || !strings.Contains(page.body, `action="/in"`) || !strings.Contains(page.body, `href="/field#tag=`+tags[0]+`"`) {
+		t.Errorf("got %d, want the sign-in page with the way to the field form", page.status)
+	}
+}
+
+func TestTag_LeadsEachRoleToItsOwnPage(t *testing.T) {
+	r := newRig(t, 1)
+	r.enrol(r.crew)
+	tags, err := r.store.MintTags(t.Context(), r.manager.ID, 1)
+	must(t, err)
+	tag := tags[0]
+	var place string
+	must(t, r.store.View(ownerScope, func(v *store.View) error {
+		places, err := v.Places(r.site)
+		place = places[0].ID
+		return err
+	}))
+	r.append(store.Draft{Kind: "tag.bound", Log: r.site, Subject: place, Body: set{"tag": tag}})
+	crew, manager, auditor := r.signIn(r.crew), r.signIn(r.manager), r.signIn(r.auditor)
+	stranger := r.signIn(r.person("Crew 2", "auditor", newID()))
+	for _, printed := range []string{"/T/" + tag, "/t/" + strings.ToLower(tag), "/T/" + tag[:3] + "-" + tag[3:6] + "-" + tag[6:]} {
+		if got, want := r.open(crew, printed).header.Get("Location"), "/field#tag="+tag; got != want {
+			t.Errorf("crew, %s: got %q, want %q", printed, got, want)
+		}
+		for name, b := range map[string]*http.Client{"manager": manager, "auditor": auditor} {
+			if got, want := r.open(b, printed).header.Get("Location"), "/devices/"+r.devices[0]; got != want {
+				t.Errorf("%s, %s: got %q, want %q", name, printed, got, want)
+			}
+		}
+	}
+	known, unknown := r.open(stranger, "/T/"+tag), r.open(stranger, "/T/ZZZZZZZ")
+	if known.status != 404 || known.body != unknown.body {
+		t.Errorf("of another site: got %d, want it to look unknown", known.status)
 	}
 }
 

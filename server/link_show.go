@@ -22,6 +22,15 @@ type askPage struct {
 	Frame
 	Next    string
 	Problem string
+	Field   string // where a phone that is enrolled goes on without signing in
+}
+
+func (s *Server) askPage(c echo.Context, next, problem string) askPage {
+	p := askPage{Frame: s.frame(c, s.words.Say("access.ask_title"), ""), Next: next, Problem: problem, Field: "/field"}
+	if dir, tag := path.Split(next); strings.EqualFold(dir, "/t/") {
+		p.Field = fieldTag(tag)
+	}
+	return p
 }
 
 // toSignIn sends a browser to the sign-in page and remembers where it wanted to go.
@@ -38,7 +47,7 @@ func (s *Server) linkAsk(c echo.Context) error {
 	if person(c).ID != "" {
 		return toPage(c, home(person(c).Role))
 	}
-	return s.page(c, http.StatusOK, "signin.html", askPage{Frame: s.frame(c, s.words.Say("access.ask_title"), ""), Next: ownPath(c.QueryParam("next"))})
+	return s.page(c, http.StatusOK, "signin.html", s.askPage(c, ownPath(c.QueryParam("next")), ""))
 }
 
 // linkPasted takes a link that was pasted instead of opened: an application on a phone's home screen does not share the
@@ -51,7 +60,7 @@ func (s *Server) linkPasted(c echo.Context) error {
 	next := ownPath(form.Get("next"))
 	token := linkToken(form.Get("link"))
 	if token == "" {
-		return s.page(c, http.StatusBadRequest, "signin.html", askPage{Frame: s.frame(c, s.words.Say("access.ask_title"), ""), Next: next, Problem: s.words.Say("access.ask_problem")})
+		return s.page(c, http.StatusBadRequest, "signin.html", s.askPage(c, next, s.words.Say("access.ask_problem")))
 	}
 	return toPage(c, linkPath(token, next))
 }

@@ -17,13 +17,10 @@ func (s *Server) tagOpen(c echo.Context) error {
 	if p.ID == "" {
 		return s.toSignIn(c)
 	}
-	tag, ok := record.ParseTag(c.Param("tag"))
 	if p.Role == "crew" {
-		if !ok {
-			tag = c.Param("tag")
-		}
-		return toPage(c, "/field#tag="+url.PathEscape(tag))
+		return toPage(c, fieldTag(c.Param("tag")))
 	}
+	tag, ok := record.ParseTag(c.Param("tag"))
 	if !ok {
 		return errNoTag
 	}
@@ -32,6 +29,14 @@ func (s *Server) tagOpen(c echo.Context) error {
 		return err
 	}
 	return toPage(c, "/devices/"+device)
+}
+
+// fieldTag is where the field client opens a tag, as it was printed where it is none of ours.
+func fieldTag(text string) string {
+	if tag, ok := record.ParseTag(text); ok {
+		text = tag
+	}
+	return "/field#tag=" + url.PathEscape(text)
 }
 
 var errNoTag = refuse(codeNotFound, "tag", "No device on your sites has this tag. Check its seven characters, or bind it to a device first.")

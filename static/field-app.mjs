@@ -69,11 +69,14 @@ export function fieldApp(parts) {
     if (leavesOff(draft, walked)) walked.open.push(...backQuestions(walked).slice(-1).filter((ask) => !walked.open.some((o) => o.ask === ask)).map((ask) => ({ id: ask.reading, ask })));
     const judged = { form, limitSet, given };
     const verdict = judgeWalked(judged, walked);
-    const last = device.last?.[task];
     return {
       site, device, place, form, draft, instruments, limitSet, given, walked, verdict, today: site.today,
+      firstInRoom: !site.devices.some((d) => sameRoom(site, d, place) && Object.values(d.last ?? {}).some((l) => l.day === site.today)),
       round: placeInRound(site.devices, id, task, site.today), next: nextDue(site.devices, id, task, site.today),
-      about: (ask) => ({ ...about(judged, walked, verdict, ask), last: last?.readings?.[ask.reading], lastDay: last?.day }),
+      about(ask) {
+        const said = about(judged, walked, verdict, ask);
+        return { ...said, last: lastOf(device.last?.[task], ask, walked.readings), folded: folds(ask, said.bounds) && !(state.me.unfolded ?? []).includes(ask.reading) };
+      },
       aboutAt: (ask, at) => aboutAt(judged, walked, verdict, ask, at),
     };
   }
@@ -154,10 +157,36 @@ export function fieldApp(parts) {
       tray.setMe("instrument", id).catch(() => {}); // only a convenience; the draft below keeps the choice of this test
       putDraft({ ...draft, instrument: id });
     },
+    /** An optional question somebody opens stays open on this phone from then on. */
+    unfold(ask) {
+      state.me.unfolded = [...new Set([...(state.me.unfolded ?? []), ask.reading])];
+      tray.setMe("unfolded", state.me.unfolded).catch(() => {});
+      changed();
+    },
     sendNow: () => parts.keepSending(),
     touched: isTouched,
   };
   return app;
+}
+
+/** Optional measurements and long choices no must limit waits for are one line until somebody wants them. */
+function folds(ask, bounds) {
+  if (ask.required) return false;
+  return ask.type === "number" ? bounds?.level !== "must" && ask.reading !== "test_current_ma" : (ask.options?.length ?? 0) > 2;
+}
+
+/** Last time's figure of a question, and whether the two compare: trip times do only at the same current (within 2 %). */
+function lastOf(last, ask, readings) {
+  const value = last?.readings?.[ask.reading];
+  if (value === undefined) return undefined;
+  const then = last.readings.test_current_ma, now = readings.test_current_ma?.value;
+  const comparable = ask.reading !== "trip_time_ms" || then === undefined || (typeof now === "number" && Math.abs(now - then) <= 0.02 * then);
+  return { value, day: last.day, at: then, comparable };
+}
+
+function sameRoom(site, device, place) {
+  const other = site.places.get(device.place);
+  return Boolean(place && other) && ["building", "floor", "room"].every((k) => place[k] === other[k]);
 }
 
 /** A site's copy as the pages read it. */

@@ -31,8 +31,7 @@ export function Where({ app, title, tag, context, progress, back }) {
     <div class="line"><h1>${title}</h1>${tag && html`<span class="tag">${showTag(tag)}</span>`}</div>
     ${(context || progress) && html`<div class="line quiet"><span>${context}</span><span class="keep">${progress}</span></div>`}
     <${StillOff} app=${app} />
-    <${Notices} app=${app} />
-  </header>`;
+  </header><${Notices} app=${app} />`;
 }
 
 /** What is switched off and not reported back on, on every page. */
@@ -44,11 +43,11 @@ function StillOff({ app }) {
 function Notices({ app }) {
   const { say, state } = app;
   const minutes = Math.round(Math.abs(state.offset ?? 0) / 60_000);
-  return html`
+  return html`<div class="notices">
     ${Math.abs(state.offset ?? 0) > 120_000 && html`<p class="notice" role="status">${say(state.offset > 0 ? "field.clock_behind" : "field.clock_ahead", { minutes, n: minutes })}</p>`}
     ${state.line === "signed-out" && html`<p class="notice" role="status">${say("field.signed_out")} <a href=${`/in?next=${encodeURIComponent("/field" + (globalThis.location?.hash ?? ""))}`}>${say("field.sign_in")}</a></p>`}
     ${state.trouble && html`<p class="notice bad" role="alert">${state.trouble}</p>`}
-    ${state.saved && html`<p class="saved" role="status"><${Mark} verdict=${state.saved.result}>${say(`verdict.${state.saved.result}`)}<//> ${say("field.saved", { what: state.saved.what })}</p>`}`;
+    ${state.saved && html`<p class="saved" role="status"><${Mark} verdict=${state.saved.result}>${say(`verdict.${state.saved.result}`)}<//> ${say("field.saved", { what: state.saved.what })}</p>`}</div>`;
 }
 
 /** Foot of every page: what is kept on this phone, and the one main button where the page has one. */
@@ -64,8 +63,11 @@ export function Foot({ app, children }) {
 /** Context of a device: floor and room, kind, panel and circuit. */
 export function contextOf(app, device, place) {
   const where = [place?.building, place?.floor, place?.room].filter((x) => x && x !== place?.name);
-  return [...where, app.say(`kind.${device.kind}`), circuitOf(device)].filter(Boolean).join(" · ");
+  return [...where, app.say(`kind.${device.kind}`), circuitOf(device)].filter(Boolean).map(unbroken).join(" · ");
 }
+
+/** A short name is not broken over two lines; a long one may be. */
+const unbroken = (text) => (text.length <= 24 ? text.replaceAll(" ", "\u00a0") : text);
 
 export const circuitOf = (device) => [device.panel, device.circuit].filter(Boolean).join(" / ");
 

@@ -39,7 +39,7 @@ export function TestPage({ app, test }) {
       <h2 class="task">${say(`task.${form.task}`)}</h2>
       <${CriticalLoad} app=${app} place=${place} />
       ${form.quick && !detailed
-        ? html`<${Quick} app=${app} form=${form} done=${quickDone} set=${set} open=${() => { setDetailed(true); set({}, { detailed: true }); }} />`
+        ? html`<${Quick} app=${app} form=${form} test=${test} done=${quickDone} set=${set} open=${() => { setDetailed(true); set({}, { detailed: true }); }} />`
         : html`
           ${usesInstrument(form) && html`<${Instruments} app=${app} draft=${draft} instruments=${test.instruments} today=${test.today} />`}
           ${walked.steps.map((step) => html`<${Step} app=${app} key=${step.step} step=${step} test=${test} set=${set} />`)}`}
@@ -59,16 +59,20 @@ function CriticalLoad({ app, place }) {
   return place?.critical_load ? html`<p class="caution"><b>${app.say("field.critical_load", { load: place.critical_load })}</b> ${app.say("field.critical_load_do")}</p>` : null;
 }
 
-/** The one-tap form: one button writes exactly the answers it states. */
-function Quick({ app, form, done, set, open }) {
+/** The one-tap form: one button writes exactly the answers it states. What must be known before the TEST stands above it,
+ *  in full for the first test in a room; what matters afterwards stands below. */
+function Quick({ app, form, test, done, set, open }) {
   const { say } = app;
-  const cautions = [...new Set(form.steps.flatMap((s) => s.cautions ?? []))];
+  const pressed = form.steps.findIndex((s) => s.asks.some((a) => a.reading === "button_trips"));
+  const before = form.steps.slice(0, pressed + 1).map((s) => s.step);
+  const cautions = (which) => [...new Set(test.walked.steps.filter(which).flatMap((s) => s.cautions))];
   return html`<section class="ask quick">
-    ${cautions.map((c) => html`<p class="caution" key=${c}>${say(`caution.${c}`)}</p>`)}
+    <details class="caution" open=${test.firstInRoom}><summary>${say("field.before_test")}</summary>${cautions((s) => before.includes(s.step)).map((c) => html`<p key=${c}>${say(`caution.${c}`)}</p>`)}</details>
     <button type="button" class="big one-tap" aria-pressed=${String(Boolean(done))} onClick=${() => set(done ? {} : quickAnswers(form))}>${say(form.quick.text)}</button>
+    ${done && html`<div class="caution">${cautions((s) => !before.includes(s.step)).map((c) => html`<p key=${c}>${say(`caution.${c}`)}</p>`)}</div>`}
+    <button type="button" class="big" onClick=${open}>${say("field.something_else")}</button>
     <details class="writes"><summary>${say("field.quick_writes")}</summary><dl>${Object.entries(form.quick.readings).map(([code, value]) => html`
       <div key=${code}><dt>${say(`reading.${code}.ask`)}</dt><dd>${answerWord(say, code, value)}</dd></div>`)}</dl></details>
-    <button type="button" class="big" onClick=${open}>${say("field.something_else")}</button>
   </section>`;
 }
 
@@ -131,7 +135,7 @@ export function conditionWords(say, at, given) {
   if (at.multiple !== undefined) parts.push(say("field.condition.multiple", { multiple: at.multiple === 0.5 ? "½" : showNumber(at.multiple), ma: given.rated_residual_ma ? showNumber(at.multiple * given.rated_residual_ma) : "?" }));
   if (at.phase_deg !== undefined) parts.push(say("field.condition.phase", { deg: at.phase_deg }));
   if (at.waveform !== undefined) parts.push(say(`option.waveform.${at.waveform}`));
-  if (at.face !== undefined) parts.push(say(`field.condition.face_${at.face.replaceAll("-", "_")}`));
+  if (at.face !== undefined) parts.push(say(`option.face.${at.face}`));
   return parts.join(", ");
 }
 

@@ -86,7 +86,7 @@ function followTag(app) {
 }
 
 async function readKept(state, tray, along) {
-  for (const name of ["installation", "token", "person", "logs", "instrument", "offset"]) state.me[name] = await tray.me(name);
+  for (const name of ["installation", "token", "person", "logs", "instrument", "unfolded", "offset"]) state.me[name] = await tray.me(name);
   state.offset = state.me.offset ?? 0;
   for (const row of await along.sites()) state.sites.set(row.log, row);
   state.records = await tray.records();

@@ -7,6 +7,13 @@ import { seriesAnswers } from "./draft.mjs";
 /** What stands where nothing is said: a test made with no stated waveform was made with a sine. */
 const UNSAID = { waveform: "ac" };
 
+/** Cautions that would only be noise elsewhere. */
+const CAUTION_WHEN = {
+  no_power: [{ reading: "found", is: ["no-power", "tripped"] }],
+  isolated_monitor: [{ field: "supply", is: "isolated" }],
+  isolated_lamps: [{ field: "supply", is: "isolated" }],
+};
+
 const listed = (want, value) => (Array.isArray(want) ? want : [want]).includes(value);
 
 /** Whether one condition of a `when` holds; every part it states must. A missing value satisfies `missing` and `not` only. */
@@ -39,7 +46,7 @@ export function walk(form, draft, given, assume) {
   const out = { steps: [], open: [], broken: [], ended: null, readings: {}, series: [] };
   let before = null;
   for (const step of form.steps) {
-    const shown = { step: step.step, cautions: step.cautions ?? [], closed: closedText(step, out.readings, fields), asks: [], series: [] };
+    const shown = { step: step.step, cautions: (step.cautions ?? []).filter((c) => allHold(CAUTION_WHEN[c], out.readings, fields)), closed: closedText(step, out.readings, fields), asks: [], series: [] };
     if (!shown.closed) {
       putAsks(form, step, draft, fields, shown, out);
       if (!out.ended && form.series?.step === step.step) putSeries(form, step, draft, fields, shown, out);

@@ -26,7 +26,7 @@ export function outsideWords(say, finding, unit, reading) {
     const by = excess(limit, reading.value);
     if (by === null) return say("field.outside");
     const way = by < 0 ? "low" : unit === "ms" ? "slow" : "high";
-    return say(`field.outside_by.${way}`, { by: withUnit(say, Math.abs(by), unit) });
+    return say(`field.outside_by.${way}`, { by: `${showNumber(Math.abs(by), 3)}${NNBSP}${unitWord(say, unit)}` });
   }
   return say.has(`field.number_verdict.${verdict}`) ? say(`field.number_verdict.${verdict}`) : say(`verdict.${verdict}`);
 }

@@ -1,0 +1,2 @@
+export const newId = (ms) => { const h = ms.toString(16).padStart(12, "0"); const r = [...crypto.getRandomValues(new Uint8Array(10))].map((b) => b.toString(16).padStart(2, "0")).join(""); return `${h.slice(0, 8)}-${h.slice(8)}-7${r.slice(0, 3)}-8${r.slice(3, 6)}-${r.slice(6, 18)}`; };
+export function makeEntryRecord({ kind, log, subject, at, body, n, clock, installation, person }) { const id = newId(at); return { id, clock: "x", record: JSON.stringify({ id, kind, v: 1, log, subject, at: new Date(at).toISOString(), clock: "0", by: person, from: installation, n, body }) }; }

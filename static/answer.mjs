@@ -26,9 +26,3 @@ export function readAnswer(ask, answer) {
   if (parsed === null) return {};
   return parsed.error ? { error: parsed.error } : { reading: parsed };
 }
-
-/** What a reading says to a condition: its value; "" for a bound (not missing, equal to nothing); undefined when missing. */
-export function plainValue(reading) {
-  if (reading === undefined || reading === null || reading.missing !== undefined) return undefined;
-  return reading.value ?? "";
-}

@@ -15,7 +15,7 @@ export function showDay(app, day) {
   if (!y) return "";
   const thisYear = dayIn(app.now()).slice(0, 4) === String(y);
   return new Intl.DateTimeFormat("en-GB", { weekday: "short", day: "numeric", month: "short", ...(thisYear ? {} : { year: "numeric" }), timeZone: "UTC" })
-    .format(Date.UTC(y, m - 1, d)).replace(",", "");
+    .format(Date.UTC(y, m - 1, d)).replace(",", "").replaceAll(" ", "\u00a0");
 }
 
 /** "09:12", or "Mon 30 Nov, 09:12" for another day; in the phone's own zone, which is where the reader stands. */

@@ -7,7 +7,7 @@ import { dayIn, showMoment } from "./days.mjs";
 import { entryBody, givenOf, readInstrument, summaryOf } from "./entry.mjs";
 import { walk } from "./flow.mjs";
 import { dueNow, nextDue, overlay, placeInRound, withOwn } from "./list.mjs";
-import { about, aboutAt, judgeWalked, limitSetFor } from "./judging.mjs";
+import { about, judgeWalked, limitSetFor } from "./judging.mjs";
 import { backQuestions, leavesOff, stillOff } from "./still-off.mjs";
 import { bareTag, toTest } from "./route.mjs";
 import { titleOf } from "./field-parts.mjs";
@@ -42,7 +42,7 @@ export function fieldApp(parts) {
   function walkOf(draft) {
     const found = findDevice(draft.device);
     const form = found && formsFor(found.site, found.device).find((f) => f.task === draft.task);
-    return form ? walk(form, draft, givenOf({ device: found.device, form, limitSet: null, instrument: null })) : null;
+    return form ? walk(form, draft, givenOf({ device: found.device, form, limitSet: null, instrument: null }), limitSetFor(found.device, form, found.site.snapshot.limit_sets)) : null;
   }
 
   /** Drafts are kept at every keystroke; typing never waits for it, and a failure is said at once. */
@@ -65,7 +65,7 @@ export function fieldApp(parts) {
     const instrument = instruments.find((i) => i.id === draft.instrument) ?? null;
     const limitSet = limitSetFor(device, form, site.snapshot.limit_sets);
     const given = givenOf({ device, form, limitSet, instrument: form.task === "button" ? null : instrument });
-    const walked = walk(form, draft, given, limitSet?.assume);
+    const walked = walk(form, draft, given, limitSet);
     if (leavesOff(draft, walked)) walked.open.push(...backQuestions(walked).slice(-1).filter((ask) => !walked.open.some((o) => o.ask === ask)).map((ask) => ({ id: ask.reading, ask })));
     const judged = { form, limitSet, given };
     const verdict = judgeWalked(judged, walked);
@@ -77,7 +77,7 @@ export function fieldApp(parts) {
         const said = about(judged, walked, verdict, ask);
         return { ...said, last: lastOf(device.last?.[task], ask, walked.readings), folded: folds(ask, said.bounds) && !(state.me.unfolded ?? []).includes(ask.reading) };
       },
-      aboutAt: (ask, at) => aboutAt(judged, walked, verdict, ask, at),
+      aboutAt: (ask, at) => about(judged, walked, verdict, ask, at),
     };
   }
 

@@ -26,7 +26,7 @@ export function Ask(props) {
   return html`<section class="ask" id=${`ask-${id}`}>
     <div class="q-line">
       ${numeric ? html`<label class="q" for=${`in-${id}`}>${words}</label>` : html`<span class="q" id=${`q-${id}`}>${words}</span>`}
-      ${!answer?.missing && html`<button type="button" class="skip" onClick=${() => set({ missing: "" })}>${say("field.not_measured")}</button>`}
+      ${ask.required && answer?.missing === undefined && html`<button type="button" class="skip" onClick=${() => set({ missing: "" })}>${say(numeric ? "field.not_measured" : "field.cannot_say")}</button>`}
     </div>
     ${answer?.missing !== undefined ? html`<${Missing} ...${props} id=${id} />`
       : numeric ? html`<${NumberField} ...${props} id=${id} />`
@@ -55,7 +55,7 @@ function Choices({ app, ask, answer, set, id }) {
   </div>`;
 }
 
-function NumberField({ app, ask, answer, set, bounds, findings, last, id }) {
+function NumberField({ app, ask, answer, set, bounds, hint, findings, last, id }) {
   const { say } = app;
   const own = unitOf(ask), units = ask.units ?? [own];
   const { reading, error } = readAnswer(ask, answer);
@@ -79,12 +79,13 @@ function NumberField({ app, ask, answer, set, bounds, findings, last, id }) {
       beyond=${reading?.above !== undefined ? "above" : reading?.below !== undefined ? "below" : null} last=${last?.comparable ? last.value : undefined}
       colour=${markOf(findings[0]?.verdict)} label=${scaleLabel(say, ask, own, bounds, reading, last)} />`}
     <div id=${`under-${id}`}>
+      ${hint && !error && html`<p class="hint">${say(hint)}</p>`}
       ${error && html`<p class="bad">${say(`field.number.${error}`)}</p>`}
       <div class="under">
         ${reading && findings[0] && html`<${Mark} verdict=${findings[0].verdict}>${outsideWords(say, findings[0], own, reading)}<//>`}
         <span class="quiet">${[bounds && limitWords(say, bounds, own, bounds.level), lastWords(app, last, own)].filter(Boolean).join(" · ")}</span>
       </div>
-      ${slower(ask, reading, last) && html`<p class="todo">${say("field.much_slower", { times: showNumber(slower(ask, reading, last), 2) })}</p>`}
+      ${slower(ask, reading, last) > 0 && html`<p class="todo">${say("field.much_slower", { times: showNumber(slower(ask, reading, last), 2) })}</p>`}
     </div>`;
 }
 

@@ -8,7 +8,8 @@ import { fieldApp } from "./field-app.mjs";
 import { DevicePage, DevicesPage, LostPage, SitesPage, TrayPage } from "./field-lists.mjs";
 import { TestPage } from "./field-test.mjs";
 import { JudgeVersion } from "./judge.mjs";
-import { makeEntryRecord, newId } from "./making.mjs";
+import { makeRecord } from "./making.mjs";
+import { newId } from "./record.mjs";
 import { parseRoute, toDevice } from "./route.mjs";
 import { sending } from "./sending.mjs";
 import { syncing } from "./syncing.mjs";
@@ -45,13 +46,15 @@ function Page({ app }) {
 async function start() {
   const say = speaker(await (await fetch(new URL("./words/en.json", import.meta.url))).json());
   const tray = trayDB(), along = alongDB();
-  let keepSaved = false, drawing = false;
+  let keepSaved = false, drawing = false, drawn = false;
   const draw = (app) => {
     if (drawing) return;
     drawing = true; // many changes in one turn are drawn once
     queueMicrotask(() => {
       drawing = false;
       followTag(app);
+      if (!drawn) root.replaceChildren();
+      drawn = true;
       render(html`<${Page} app=${app} />`, root);
     });
   };
@@ -60,7 +63,7 @@ async function start() {
     if (location.hash === hash) onRoute();
     else location.hash = hash;
   };
-  const app = fieldApp({ tray, say, draw, go, now, make: makeEntryRecord, judgeVersion: JudgeVersion, keepSending: () => sender.kick() });
+  const app = fieldApp({ tray, say, draw, go, now, make: makeRecord, judgeVersion: JudgeVersion, keepSending: () => sender.kick() });
   const run = syncing({ state: app.state, tray, along, net: exchange({ fetch: (...a) => fetch(...a), now }), now, newId: () => newId(now()), changed: app.changed });
   const sender = sending({ run: () => alone(run), later: (fn, ms) => setTimeout(fn, ms), cancel: clearTimeout, random: Math.random });
   const onRoute = () => {

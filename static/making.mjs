@@ -1,2 +1,15 @@
-export const newId = (ms) => { const h = ms.toString(16).padStart(12, "0"); const r = [...crypto.getRandomValues(new Uint8Array(10))].map((b) => b.toString(16).padStart(2, "0")).join(""); return `${h.slice(0, 8)}-${h.slice(8)}-7${r.slice(0, 3)}-8${r.slice(3, 6)}-${r.slice(6, 18)}`; };
-export function makeEntryRecord({ kind, log, subject, at, body, n, clock, installation, person }) { const id = newId(at); return { id, clock: "x", record: JSON.stringify({ id, kind, v: 1, log, subject, at: new Date(at).toISOString(), clock: "0", by: person, from: installation, n, body }) }; }
+// Makes the one string an entry is: id, stamp, count and body in the order every record has. The string is kept and sent
+// as it is and never written again. Pure but for the randomness of ids.
+
+import { clockText, nextClock, parseClock } from "./clock.mjs";
+import { newId, timeText, writeRecord } from "./record.mjs";
+
+/**
+ * at: ms of this phone's clock, as it is; offset: ms the server's clock was last ahead of it, which only the stamp takes in.
+ * clock: the last stamp of this phone as text, undefined at first. Gives {id, clock, record}.
+ */
+export function makeRecord({ kind, log, subject, at, offset, body, n, clock, installation, person }) {
+  const id = newId(at);
+  const stamp = clockText(nextClock(parseClock(clock) ?? 0n, at + offset));
+  return { id, clock: stamp, record: writeRecord({ id, kind, log, subject, at: timeText(at), clock: stamp, by: person, from: installation, n, body }) };
+}

@@ -1,7 +1,7 @@
 import test from "node:test";
 import assert from "node:assert/strict";
 import { readFileSync } from "node:fs";
-import { fillMissing, holds, quickAnswers, walk } from "../flow.mjs";
+import { fillMissing, quickAnswers, walk } from "../flow.mjs";
 import { newDraft, withAnswer, withAnswers, withSeries, seriesAnswers } from "../draft.mjs";
 import { leavesOff, stillOff } from "../still-off.mjs";
 
@@ -113,16 +113,19 @@ test("flow: a gauge answer stands for the grams", () => {
   assert.deepEqual(walk(hospital, draftOf(answers, hospital), { kind: "hospital-receptacle", faces: 1 }).open, []);
 });
 
-test("conditions: missing, lists and bounds", () => {
-  const r = { found: { value: "tripped" }, time: { above: 310 }, current: { value: 5 } };
-  assert.ok(holds({ reading: "found", is: ["tripped", "no-power"] }, r, {}));
-  assert.ok(!holds({ reading: "found", not: ["tripped"] }, r, {}));
-  assert.ok(holds({ reading: "nothing", not: "x" }, r, {}));
-  assert.ok(holds({ reading: "nothing", missing: true }, r, {}));
-  assert.ok(!holds({ reading: "time", missing: true }, r, {}), "a bound is not missing");
-  assert.ok(!holds({ reading: "time", at_least: 300 }, r, {}), "a bound is no number");
-  assert.ok(holds({ reading: "current", at_least: 5, below: 6 }, r, {}));
-  assert.ok(holds({ reading: "waveform", is: "ac" }, r, {}), "no waveform is a sine");
+test("flow: a condition sees only what was answered before it", () => {
+  const w = walk(button, draftOf({ condition: pick("sound"), found: pick("tripped"), button_resets: pick("no") }, button), given);
+  assert.equal(w.ended, "button_resets");
+  assert.deepEqual(w.open, []);
+});
+
+test("flow: cautions stand where they apply", () => {
+  const cautions = (answers, more) => walk(instrument, draftOf(answers), { ...given, ...more }).steps.flatMap((s) => s.cautions);
+  const base = { condition: pick("sound"), found: pick("on") };
+  assert.ok(!cautions(base).includes("no_power"));
+  assert.ok(cautions({ ...base, found: pick("no-power") }).includes("no_power"));
+  assert.ok(!cautions(base).includes("isolated_monitor"));
+  assert.ok(cautions(base, { supply: "isolated" }).includes("isolated_monitor"));
 });
 
 test("still off: from went off until back is answered, with the time it went off", () => {

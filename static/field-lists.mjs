@@ -59,10 +59,12 @@ function DeviceRow({ app, device, place, today }) {
 
 const failedTasks = (device) => Object.keys(device.last ?? {}).filter((t) => device.last[t].result === "fail");
 
-/** "Button: overdue since Mon 30 Nov". */
-function dueWords(app, d) {
+/** "Button test: overdue since Mon 30 Nov". */
+const dueWords = (app, d) => `${app.say(`task.${d.task}`)}: ${stateWords(app, d)}`;
+
+function stateWords(app, d) {
   const state = d.state === "upcoming" ? "due" : d.state;
-  return app.say(`field.due_${state.replaceAll("-", "_")}`, { task: app.say(`task.${d.task}`), day: showDay(app, d.due) });
+  return app.say(`field.due_state.${state.replaceAll("-", "_")}`, { day: showDay(app, d.due) });
 }
 
 export function DevicePage({ app, site, device, place }) {
@@ -75,10 +77,10 @@ export function DevicePage({ app, site, device, place }) {
     <main>
       ${place?.critical_load && html`<p class="caution"><b>${say("field.critical_load", { load: place.critical_load })}</b></p>`}
       <div class="choose">${forms.map((f) => html`<a class=${due.has(f.task) ? "big go" : "big"} key=${f.form} href=${toTest(device.id, f.task)}>
-        <b>${say(`task.${f.task}`)}</b><span>${due.has(f.task) ? dueWords(app, due.get(f.task)) : say("field.not_due")}</span></a>`)}
+        <b>${say(`task.${f.task}`)}</b><span>${due.has(f.task) ? stateWords(app, due.get(f.task)) : say("field.not_due")}</span></a>`)}
         ${forms.length === 0 && html`<p class="hint">${say("field.no_form")}</p>`}</div>
       <section class="past"><h2>${say("field.last_tests")}</h2>
-        ${Object.keys(device.last ?? {}).length === 0 ? html`<p class="hint">${say("field.never_tested")}</p>` : html`<ul class="rows">${Object.entries(device.last).map(([task, l]) => html`<li key=${task} class="row still">
+        ${Object.keys(device.last ?? {}).length === 0 ? html`<p class="hint pad">${say("field.never_tested")}</p>` : html`<ul class="rows">${Object.entries(device.last).map(([task, l]) => html`<li key=${task} class="row still">
           <span class="name">${say(`task.${task}`)}</span><${Mark} verdict=${l.result}>${say(`verdict.${l.result}`)}<//>
           <span class="quiet">${showDay(app, l.day)}${l.own ? ` · ${say(l.unsent ? "field.own_unsent" : "field.own_sent")}` : ""}</span></li>`)}</ul>`}
       </section>

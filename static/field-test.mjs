@@ -120,11 +120,12 @@ function titleAt(app, ask, test) {
   return app.say("field.at_current", { what: app.say(`reading.${ask.reading}.ask`), current: showNumber(current) });
 }
 
-/** The questions put again under one of the form's conditions. */
+/** The questions put again under one of the form's conditions; one that stands alone is named by them. */
 function Condition({ app, row, test }) {
-  const { at, asks } = row;
-  return html`<div class="condition"><h4>${conditionWords(app.say, at, test.given)}</h4>
-    ${asks.map((ask) => html`<${Ask} app=${app} key=${ask.reading} id=${rowId(at, ask)} ask=${ask} answer=${seriesAnswers(test.draft, at)[ask.reading]}
+  const { at, asks } = row, words = conditionWords(app.say, at, test.given);
+  return html`<div class="condition">${asks.length > 1 && html`<h4>${words}</h4>`}
+    ${asks.map((ask, i) => html`<${Ask} app=${app} key=${ask.reading} id=${rowId(at, ask)} ask=${{ ...ask, required: i === 0 }} answer=${seriesAnswers(test.draft, at)[ask.reading]}
+      title=${asks.length > 1 ? undefined : app.say("field.under_condition", { what: app.say(`reading.${ask.reading}.ask`), condition: words })}
       set=${(a) => app.seriesAnswer(test.draft, at, ask.reading, a)} ...${test.aboutAt(ask, at)} />`)}
   </div>`;
 }

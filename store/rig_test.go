@@ -20,19 +20,33 @@ type rig struct {
 	at      time.Time
 	manager Person
 	serial  int
+	spoilt  bool // the test broke the store on purpose
 }
 
 func newRig(t *testing.T) *rig {
 	t.Helper()
 	r := &rig{T: t, at: time.Date(2026, 12, 1, 8, 0, 0, 0, time.UTC)}
-	s, err := Open(t.TempDir(), Options{Now: r.clock, Create: true})
-	if err != nil {
-		t.Fatal(err)
-	}
-	r.Store = s
+	r.open(t.TempDir())
 	t.Cleanup(r.finish)
 	r.manager = r.person("manager", true)
 	return r
+}
+
+func (r *rig) open(dir string) {
+	r.Helper()
+	s, err := Open(dir, Options{Now: r.clock, Create: true})
+	if err != nil {
+		r.Fatal(err)
+	}
+	r.Store = s
+}
+
+func (r *rig) reopen() {
+	r.Helper()
+	if err := r.Store.Close(); err != nil {
+		r.Fatal(err)
+	}
+	r.open(r.dir)
 }
 
 func (r *rig) clock() time.Time {
@@ -48,7 +62,7 @@ func (r *rig) pass(d time.Duration) {
 }
 
 func (r *rig) finish() {
-	if r.Failed() {
+	if r.Failed() || r.spoilt {
 		_ = r.Store.Close()
 		return
 	}

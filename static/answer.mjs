@@ -19,7 +19,8 @@ export function readAnswer(ask, answer) {
   const own = unitOf(ask);
   const parsed = parseNumber(answer.typed ?? "", own, ask.units ?? [own], answer.unit ?? own);
   if (answer.gave_up) {
-    if (parsed === null) return { reading: { no_trip: true } };
+    // Only a device can be said not to have tripped without a figure; an ohmmeter over its range proves what its range is.
+    if (parsed === null) return ask.reading.startsWith("trip_") ? { reading: { no_trip: true } } : {};
     if (parsed.error) return { error: parsed.error };
     return { reading: { typed: parsed.typed, unit: parsed.unit, above: parsed.value ?? parsed.above ?? parsed.below } };
   }

@@ -1,39 +1,38 @@
 // Turns a finished draft into the body of an entry.made record: the facts, what the judgement needs to know of the
 // device and the instrument, and what this phone told the tester. Pure.
 
-/** Register fields of a device that have a name of their own in `given`. */
-const NAMED = ["rated_residual_ma", "equipment_ground", "rating_a", "nominal_v", "delayed", "faces", "waveform"];
+/** Register fields of a device that have a name of their own in `given`, and what they must be. */
+const NAMED = { rated_residual_ma: Number, equipment_ground: String, rating_a: Number, nominal_v: Number, delayed: asFlag, faces: Number, waveform: String };
 /** Further register fields a limit's or a form's condition may name. */
-const OTHER = ["length_m", "gauge"];
+const OTHER = ["length_m", "gauge", "locking"];
 
-/** An instrument of the snapshot, whichever way its names are written. */
-export function readInstrument(raw) {
-  const get = (a, b) => raw[a] ?? raw[b];
-  return {
-    id: get("id", "ID"), name: get("name", "Name"), serial: get("serial", "Serial"), retired: get("retired", "Retired"),
-    accuracy: get("accuracy", "Accuracy"), ramp: get("ramp", "Ramp"), calibration_due: get("calibration_due", "CalibrationDue"),
-  };
+function asFlag(v) {
+  return v === true || v === "yes" || v === "true";
 }
+
+const present = (v) => v !== undefined && v !== null && v !== "" && !Number.isNaN(v);
 
 /** What the judgement needs beside the readings. instrument may be null. */
 export function givenOf({ device, form, limitSet, instrument }) {
   const given = { kind: device.kind, form_rev: form.revision };
   if (limitSet) Object.assign(given, { limit_set: limitSet.limit_set, limit_rev: limitSet.revision });
-  for (const name of NAMED) if (present(device.fields?.[name])) given[name] = device.fields[name];
+  const said = device.fields ?? {};
+  for (const [name, as] of Object.entries(NAMED)) if (present(said[name]) && present(as(said[name]))) given[name] = as(said[name]);
   if (device.supply) given.supply = device.supply;
   const fields = {};
-  for (const name of OTHER) if (present(device.fields?.[name])) fields[name] = device.fields[name];
+  for (const name of OTHER) if (present(said[name])) fields[name] = said[name];
   if (Object.keys(fields).length > 0) given.fields = fields;
-  if (instrument) {
-    given.instrument = instrument.id;
-    if (instrument.accuracy && Object.keys(instrument.accuracy).length > 0) given.accuracy = instrument.accuracy;
-    if (instrument.ramp) given.ramp = instrument.ramp;
-    if (instrument.calibration_due) given.calibration_due = instrument.calibration_due;
-  }
+  if (instrument) Object.assign(given, givenInstrument(instrument));
   return given;
 }
 
-const present = (v) => v !== undefined && v !== null && v !== "";
+function givenInstrument({ id, accuracy, ramp, calibration_due: due }) {
+  const given = { instrument: id };
+  if (accuracy && Object.keys(accuracy).length > 0) given.accuracy = accuracy;
+  if (ramp) given.ramp = ramp;
+  if (due) given.calibration_due = due;
+  return given;
+}
 
 /** The body of the record. shown: {result, limit_rev, judge}. */
 export function entryBody({ form, given, readings, series, shown, person, note }) {

@@ -4,7 +4,7 @@
 
 import { draftKey, isTouched, newDraft, withAnswers, withSeries } from "./draft.mjs";
 import { dayIn, showMoment } from "./days.mjs";
-import { entryBody, givenOf, readInstrument, summaryOf } from "./entry.mjs";
+import { entryBody, givenOf, summaryOf } from "./entry.mjs";
 import { walk } from "./flow.mjs";
 import { dueNow, nextDue, overlay, placeInRound, withOwn } from "./list.mjs";
 import { about, judgeWalked, limitSetFor } from "./judging.mjs";
@@ -59,7 +59,7 @@ export function fieldApp(parts) {
     const form = found && formsFor(found.site, found.device).find((f) => f.task === task);
     if (!form) return null;
     const { site, device, place } = found;
-    const instruments = (site.snapshot.instruments ?? []).map(readInstrument).filter((i) => !i.retired);
+    const instruments = (site.snapshot.instruments ?? []).filter((i) => !i.retired);
     const remembered = instruments.some((i) => i.id === state.me.instrument) ? state.me.instrument : null;
     const draft = state.drafts.get(draftKey(id, task)) ?? newDraft({ device: id, task, log: site.log, form: form.form, instrument: remembered, now: now() });
     const instrument = instruments.find((i) => i.id === draft.instrument) ?? null;

@@ -6,9 +6,8 @@ import { Scale } from "./field-scale.mjs";
 import { limitWords, outsideWords, unitWord, withUnit } from "./limit-words.mjs";
 import { readAnswer, unitOf } from "./answer.mjs";
 import { showNumber } from "./number.mjs";
+import { missingReasons } from "./reading.mjs";
 import { showDay } from "./days.mjs";
-
-const REASONS = ["no-access", "circuit-dead", "unsafe", "no-instrument", "not-testable", "other"];
 
 /**
  * props: app, ask, answer, set(answer), findings (of this reading, most telling first), bounds (of the limit that decides,
@@ -39,7 +38,7 @@ export function Ask(props) {
 function Missing({ app, answer, set, id }) {
   const { say } = app;
   return html`<div class="pick" role="group" aria-labelledby=${`q-${id}`}>
-    ${REASONS.map((r) => html`<button type="button" key=${r} aria-pressed=${String(answer.missing === r)} onClick=${() => set({ missing: r })}>${say(`missing.${r}`)}</button>`)}
+    ${missingReasons.map((r) => html`<button type="button" key=${r} aria-pressed=${String(answer.missing === r)} onClick=${() => set({ missing: r })}>${say(`missing.${r}`)}</button>`)}
     <button type="button" class="plain" onClick=${() => set(undefined)}>${say("field.measure_after_all")}</button>
   </div>`;
 }

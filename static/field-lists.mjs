@@ -4,7 +4,8 @@ import { html, useState } from "./vendor/htm-preact.mjs";
 import { circuitOf, contextOf, Foot, Mark, titleOf, Where } from "./field-parts.mjs";
 import { dueNow, grouped, matches } from "./list.mjs";
 import { showDay, showMoment } from "./days.mjs";
-import { showTag, toDevice, toSite, toTest } from "./route.mjs";
+import { toDevice, toSite, toTest } from "./route.mjs";
+import { showTag } from "./tag.mjs";
 
 const PAGEFUL = 150; // rows drawn at once; a phone draws these in a blink, five thousand it does not
 

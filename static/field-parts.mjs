@@ -1,7 +1,7 @@
 // Small parts every page of the field client uses: the head, the foot with what is kept on the phone, marks of a verdict.
 
 import { html } from "./vendor/htm-preact.mjs";
-import { showTag } from "./route.mjs";
+import { showTag } from "./tag.mjs";
 
 /** Which mark a result or a finding's verdict is drawn with; the word stands beside it always. */
 const MARKS = {

@@ -7,9 +7,8 @@ import { fillMissing, quickAnswers, rowId } from "./flow.mjs";
 import { conditionKey, isTouched, seriesAnswers } from "./draft.mjs";
 import { toDevice } from "./route.mjs";
 import { showNumber } from "./number.mjs";
+import { missingReasons } from "./reading.mjs";
 import { showDay } from "./days.mjs";
-
-const REASONS = ["no-access", "circuit-dead", "unsafe", "no-instrument", "not-testable", "other"];
 
 /** props: app, test — what app.openTest(device, task) gives. */
 export function TestPage({ app, test }) {
@@ -146,7 +145,7 @@ function Rest({ app, open, asked, fill }) {
   return html`<section class=${asked ? "ask rest asked" : "ask rest"} id="open">
     <span class="q" id="q-rest">${say("field.open_count", { n: open })}</span>
     <p class="hint">${say("field.rest_hint")}</p>
-    <div class="pick" role="group" aria-labelledby="q-rest">${REASONS.map((r) => html`<button type="button" key=${r} onClick=${() => fill(r)}>${say(`missing.${r}`)}</button>`)}</div>
+    <div class="pick" role="group" aria-labelledby="q-rest">${missingReasons.map((r) => html`<button type="button" key=${r} onClick=${() => fill(r)}>${say(`missing.${r}`)}</button>`)}</div>
   </section>`;
 }
 

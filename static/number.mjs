@@ -28,8 +28,8 @@ export function convert(value, from, to) {
 }
 
 /**
- * parseNumber("0,3 s", "ms", ["ms","s"]) → {typed, unit:"s", value:300}; "<0.1" → {…, below}; ">310" → {…, above}.
- * Nothing typed gives null; what cannot be read gives {typed, error} with error one of the words field.number.ERROR:
+ * parseNumber("0,3 s", "ms", ["ms","s"]) → {typed:"0,3", unit:"s", value:300}; "<0.1" → {…, below}; ">310" → {…, above}.
+ * typed keeps the figure as it was typed, the unit beside it. Nothing typed gives null; what cannot be read gives {typed, error} with error one of the words field.number.ERROR:
  * ambiguous, not_a_number, negative, unknown_unit.
  */
 export function parseNumber(typed, own, units = [own], chosen = own) {
@@ -48,7 +48,7 @@ export function parseNumber(typed, own, units = [own], chosen = own) {
   const value = convert(Number(plain.text), unit, own);
   if (value === undefined || !Number.isFinite(value) || Math.abs(value) > 2 ** 53) return { typed, error: "not_a_number" };
   if (value < 0) return { typed, error: "negative" };
-  const read = { typed: typed.trim(), unit };
+  const read = { typed: digits.trim(), unit };
   if (sign === "<" || sign === "≤") return { ...read, below: value };
   if (sign === ">" || sign === "≥") return { ...read, above: value };
   return { ...read, value };

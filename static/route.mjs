@@ -28,9 +28,3 @@ export const toTest = (id, task) => `#/test/${id}/${task}`;
 export function bareTag(text) {
   return text.toUpperCase().replace(/[^0-9A-Z]/g, "").replace(/[IL]/g, "1").replace(/O/g, "0");
 }
-
-/** A tag as it is shown: three, three, one, with hyphens that do not break. */
-export function showTag(tag) {
-  const t = bareTag(tag ?? "");
-  return t.length === 7 ? `${t.slice(0, 3)}\u2011${t.slice(3, 6)}\u2011${t.slice(6)}` : t;
-}

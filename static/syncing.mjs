@@ -96,10 +96,10 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
     const sent = await drain({ storage, send: (body) => withToken((token) => net.push(token, body)), sentAt: () => new Date(now()).toISOString() });
     state.records = await tray.records();
     let line = sent.state;
-    if (line === "empty") {
+    if (line === "empty" || line === "trouble") { // what cannot be sent just now does not keep fresh copies away
       await tray.forget(now() - KEEP_SENT);
       const fresh = await refreshSites();
-      line = fresh.ok ? "empty" : fresh.status === 0 ? "unreached" : fresh.status === 401 ? "signed-out" : "trouble";
+      if (!fresh.ok) line = fresh.status === 0 ? "unreached" : fresh.status === 401 ? "signed-out" : "trouble";
     }
     state.line = line;
     state.busy = false;

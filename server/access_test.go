@@ -241,3 +241,69 @@ func TestRoutes_OnlyWhoTheTableNamesGetsIn(t *testing.T) {
 		}
 	}
 }
+
+// Whoever was not given a site finds none of its things at any address, and changes none.
+func TestRoutes_AnotherSitesThingsLookUnknown(t *testing.T) {
+	r := newRig(t, 1)
+	h := r.enrol(r.crew)
+	entry := h.entry(r.devices[0], 4.5)
+	h.push(entry.bytes(t))
+	elsewhere := newID()
+	r.append(store.Draft{Kind: "site.registered", Log: elsewhere, Subject: elsewhere, Body: set{"set": set{"code": "OTHER", "name": "Ottermoor Swim Hall", "zone": "UTC", "standard": "NEC"}}})
+	stranger := r.signIn(r.person("Manager 2", "manager", elsewhere))
+	things := map[string]string{":site": r.site, ":device": r.devices[0], ":entry": entry.ID, ":record": entry.ID}
+	size := r.logSize()
+	tried := 0
+	for _, route := range publicRoutes() {
+		path := route.path
+		for param, id := range things {
+			path = strings.ReplaceAll(path, param, id)
+		}
+		if path == route.path || route.who&manager == 0 {
+			continue
+		}
+		tried++
+		var res answer
+		if route.method == get {
+			res = r.open(stranger, path)
+		} else {
+			res = r.submit(stranger, path, "id="+newID())
+		}
+		if res.status != 404 && res.status != 403 {
+			t.Errorf("%s %s: got %d, want 404", route.method, route.path, res.status)
+		}
+		if strings.Contains(res.body, "Kiln Lane") || strings.Contains(res.body, "Outlet 1") {
+			t.Errorf("%s %s: the answer shows the other site", route.method, route.path)
+		}
+	}
+	if tried < 5 {
+		t.Errorf("only %d routes were tried", tried)
+	}
+	for _, list := range []string{"/", "/sites", "/dates", "/downloads", "/dates?site=" + r.site, "/downloads?site=" + r.site} {
+		if res := r.open(stranger, list); strings.Contains(res.body, "Kiln Lane") {
+			t.Errorf("%s shows the other site", list)
+		}
+	}
+	for _, file := range []string{"/workbook.xlsx?site=" + r.site, "/labels.pdf?site=" + r.site} {
+		if res := r.open(stranger, file); res.status == 200 {
+			t.Errorf("%s was given", file)
+		}
+	}
+	if got := r.logSize(); got != size {
+		t.Errorf("the site's log grew from %d to %d records", size, got)
+	}
+}
+
+func (r *rig) logSize() (n int64) {
+	r.t.Helper()
+	must(r.t, r.store.View(ownerScope, func(v *store.View) error {
+		heads, err := v.Logs()
+		for _, head := range heads {
+			if head.Log == r.site {
+				n = head.Size
+			}
+		}
+		return err
+	}))
+	return n
+}

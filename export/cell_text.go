@@ -46,6 +46,33 @@ func cellText(s string) string {
 	return s[:at] + cutMark
 }
 
+// appendCellText appends the text of a cell as XML, from inside its start tag on: ` xml:space="preserve">text`.
+func appendCellText(to []byte, s string) []byte {
+	if s[0] <= ' ' || s[len(s)-1] <= ' ' {
+		to = append(to, ` xml:space="preserve"`...)
+	}
+	to = append(to, '>')
+	from := 0
+	for i := 0; i < len(s); i++ {
+		var mark string
+		switch s[i] {
+		case '&':
+			mark = "&amp;"
+		case '<':
+			mark = "&lt;"
+		case '>':
+			mark = "&gt;"
+		case '\r':
+			mark = "&#xD;" // a bare one would be read as a line feed (XML 1.0, 2.11)
+		default:
+			continue
+		}
+		to = append(append(to, s[from:i]...), mark...)
+		from = i + 1
+	}
+	return append(to, s[from:]...)
+}
+
 // plainShort is the usual case, decided without copying.
 func plainShort(s string) bool {
 	if len(s) > cellUnits {

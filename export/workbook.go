@@ -90,6 +90,7 @@ type LimitLine struct {
 // book is the workbook being written.
 type book struct {
 	file   *excelize.File
+	parts  *sheetParts
 	words  *static.Words
 	styles sheetStyles
 	demo   bool
@@ -123,8 +124,10 @@ func Workbook(w io.Writer, src WorkbookSource) (err error) {
 			err = fmt.Errorf("workbook: temporary files: %w", e)
 		}
 	}()
-	f.SetZipWriter(func(io.Writer) excelize.ZipWriter { return newDirectZip(w) })
-	b := &book{file: f, words: words, demo: src.Demo, src: &src, named: map[string]string{}, used: map[string]bool{}}
+	parts := &sheetParts{}
+	defer parts.remove()
+	f.SetZipWriter(func(io.Writer) excelize.ZipWriter { return newDirectZip(w, parts) })
+	b := &book{file: f, parts: parts, words: words, demo: src.Demo, src: &src, named: map[string]string{}, used: map[string]bool{}}
 	if b.styles, err = makeStyles(f); err != nil {
 		return err
 	}
@@ -166,7 +169,14 @@ func (b *book) write() error {
 }
 
 func (b *book) sheet(key string, cols []column) (*sheet, error) {
-	s := &sheet{book: b, key: key, name: b.say("sheet.name." + key), part: 1, cols: cols, cells: make([]any, 0, len(cols))}
+	s := &sheet{book: b, key: key, name: b.say("sheet.name." + key), part: 1, cols: cols, letters: make([]string, len(cols))}
+	for i := range cols {
+		letter, err := excelize.ColumnNumberToName(i + 1)
+		if err != nil {
+			return nil, err
+		}
+		s.letters[i] = letter
+	}
 	return s, s.open()
 }
 

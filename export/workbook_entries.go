@@ -115,7 +115,7 @@ func (b *book) figureCell(s *sheet, code string, readings map[string]forms.Readi
 	r, ok := readings[code]
 	switch v := r.Value.(type) {
 	case float64:
-		s.number(v)
+		s.figure(v)
 	default:
 		if !ok {
 			s.skip()
@@ -123,7 +123,7 @@ func (b *book) figureCell(s *sheet, code string, readings map[string]forms.Readi
 		}
 		number, text := b.reading(code, r)
 		if number != nil {
-			s.number(*number)
+			s.figure(*number)
 			return
 		}
 		s.text(text)
@@ -225,7 +225,7 @@ func (b *book) bodyRows(s *sheet, e EntryLine, body forms.Entry, verdict forms.V
 
 func (b *book) findingRow(s *sheet, e EntryLine, f *forms.Finding, number *float64, text, status string) error {
 	s.row().text(e.ID).text(e.Site.Code).text(tagText(e.DeviceRow.Tag)).text(placeText(e.DeviceRow.Place)).text(b.word("task", e.Task)).
-		day(e.Day).text(b.readingName(f.Reading)).text(b.conditions(f.At)).figure(number).text(text)
+		day(e.Day).text(b.readingName(f.Reading)).text(b.conditions(f.At)).known(number).text(text)
 	unit := b.unit(f.Reading)
 	if f.Unit != "" {
 		unit = b.word("unit", f.Unit)
@@ -237,7 +237,7 @@ func (b *book) findingRow(s *sheet, e EntryLine, f *forms.Finding, number *float
 	if f.Limit == nil {
 		s.skip().skip().skip()
 	} else {
-		s.figure(f.Limit.Min).figure(f.Limit.Max).text(b.oneOf(f.Reading, f.Limit.OneOf))
+		s.known(f.Limit.Min).known(f.Limit.Max).text(b.oneOf(f.Reading, f.Limit.OneOf))
 	}
 	rev := ""
 	if f.Limit != nil {

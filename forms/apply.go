@@ -15,7 +15,11 @@ type Applied struct {
 // LimitsFor gives the limits of a reading under an entry's other readings (the trip-time limit at the test current), must
 // before watch. at is nil or the conditions of a series item.
 func LimitsFor(form *Form, set *LimitSet, e *Entry, reading string, at map[string]any) []Applied {
-	f := facts{form: form, set: set, e: e}
+	place, ok := codeAt[reading]
+	if !ok {
+		return nil
+	}
+	f := factsOf(form, set, e)
 	if at != nil {
 		f.item = &SeriesReading{At: at}
 		for i := range e.Series {
@@ -24,13 +28,14 @@ func LimitsFor(form *Form, set *LimitSet, e *Entry, reading string, at map[strin
 			}
 		}
 	}
-	r, _ := f.reading(reading)
+	r := f.at(place)
+	if r == nil {
+		r = &Reading{}
+	}
 	var out []Applied
-	for _, level := range [...]string{Must, WatchOnly} {
-		for i := range set.Limits {
-			if l := &set.Limits[i]; l.Reading == reading && l.Level == level && f.all(l.When) {
-				out = append(out, f.apply(l, &r))
-			}
+	for _, l := range set.on(place) {
+		if f.all(l.When) {
+			out = append(out, f.apply(l, r))
 		}
 	}
 	return out
@@ -65,7 +70,13 @@ func (f *facts) apply(l *Limit, r *Reading) Applied {
 	return a
 }
 
-func (l *Limit) bounds() *Bounds { return &Bounds{Min: l.Min, Max: l.Max, OneOf: l.OneOf} }
+// bounds gives the limit's own figures; everyone shares them.
+func (l *Limit) bounds() *Bounds {
+	if l.fixed != nil {
+		return l.fixed
+	}
+	return &Bounds{Min: l.Min, Max: l.Max, OneOf: l.OneOf}
+}
 
 func (f *facts) applyCurve(a *Applied) {
 	current, ok := f.number("test_current_ma")

@@ -4,7 +4,7 @@ package forms
 // hold, without what is in a closed step or comes after an answer that ends the form. set may be nil; it only gives
 // what is assumed of a device.
 func (f *Form) Asked(set *LimitSet, e Entry) []Ask {
-	now := facts{form: f, set: set, e: &e}
+	now := factsOf(f, set, &e)
 	var out []Ask
 	ended := false
 	f.asks(func(a ask) bool {

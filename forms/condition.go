@@ -17,6 +17,7 @@ type Condition struct {
 	Above   *float64 `json:"above,omitempty"`
 	Below   *float64 `json:"below,omitempty"`
 	Missing bool     `json:"missing,omitzero"`
+	place   int      // of Reading in codes, from 1; 0 where it was not looked up
 }
 
 // OneOf is a value or a list of values, any of which may match; each is a float64 or a string. JSON: "x" | 3 | ["x","y"].

@@ -6,6 +6,22 @@ type facts struct {
 	set  *LimitSet
 	e    *Entry
 	item *SeriesReading
+	base []Reading // the entry's readings that fit their codes, as they are judged
+	of   [64]int8  // place in codes → place in base, from 1; 0 where there is none
+}
+
+// factsOf sorts an entry's readings out by code.
+func factsOf(form *Form, set *LimitSet, e *Entry) facts {
+	f := facts{form: form, set: set, e: e, base: make([]Reading, 0, len(e.Readings))}
+	for code, r := range e.Readings {
+		i, ok := codeAt[code]
+		if !ok || !fits(&codes[i], &r) {
+			continue
+		}
+		f.base = append(f.base, settled(r))
+		f.of[i] = int8(len(f.base))
+	}
+	return f
 }
 
 // fits reports whether a reading says something its code can say. One that does not is taken as not given: what cannot
@@ -30,31 +46,36 @@ func settled(r Reading) Reading {
 	return r
 }
 
-// reading gives a reading under the item first, then of the entry.
-func (f *facts) reading(code string) (Reading, bool) {
-	i, ok := codeAt[code]
-	if !ok {
-		return Reading{}, false
-	}
-	c := &codes[i]
+// at gives the reading of the code at a place: under the item first, then of the entry; nil where there is none.
+func (f *facts) at(place int) *Reading {
 	if f.item != nil {
-		if r, ok := f.item.Readings[code]; ok && fits(c, &r) {
-			return settled(r), true
+		c := &codes[place]
+		if r, ok := f.item.Readings[c.Code]; ok && fits(c, &r) {
+			r = settled(r)
+			return &r
 		}
-		if v, ok := f.item.At[code]; ok {
+		if v, ok := f.item.At[c.Code]; ok {
 			if r := (Reading{Value: v}); fits(c, &r) {
-				return r, true
+				return &r
 			}
 		}
 	}
-	r, ok := f.e.Readings[code]
-	return settled(r), ok && fits(c, &r)
+	if k := f.of[place]; k > 0 {
+		return &f.base[k-1]
+	}
+	return nil
+}
+
+// givenAt reports whether the reading of the code at a place has a value or a bound.
+func (f *facts) givenAt(place int) bool {
+	r := f.at(place)
+	return r != nil && r.Missing == ""
 }
 
 // given reports whether a reading has a value or a bound.
 func (f *facts) given(code string) bool {
-	r, ok := f.reading(code)
-	return ok && r.Missing == ""
+	i, ok := codeAt[code]
+	return ok && f.givenAt(i)
 }
 
 // boundMark stands for "has a bound" where a condition asks for a value: it is not missing and equals nothing.
@@ -63,13 +84,23 @@ const boundMark = ""
 // answer gives the value of a reading for a condition: float64, string or nil. No waveform is ac; whether loads were
 // unplugged may come from what is given.
 func (f *facts) answer(code string) any {
-	if r, ok := f.reading(code); ok && r.Missing == "" {
+	if i, ok := codeAt[code]; ok {
+		return f.answerAt(i)
+	}
+	return nil
+}
+
+func (f *facts) answerAt(place int) any {
+	if place < 0 {
+		return nil
+	}
+	if r := f.at(place); r != nil && r.Missing == "" {
 		if r.Value == nil {
 			return boundMark
 		}
 		return r.Value
 	}
-	switch code {
+	switch codes[place].Code {
 	case "waveform":
 		return "ac"
 	case "loads_disconnected":
@@ -169,7 +200,7 @@ func (f *facts) holds(c *Condition) bool {
 	if c.Field != "" {
 		return c.holds(f.field(c.Field))
 	}
-	return c.holds(f.answer(c.Reading))
+	return c.holds(f.answerAt(placeOf(c.place, c.Reading)))
 }
 
 // all reports whether every condition holds; none at all hold.

@@ -54,6 +54,7 @@ type Ask struct {
 	Series bool        `json:"series,omitzero"`
 	Scale  *Scale      `json:"scale,omitempty"`
 	When   []Condition `json:"when,omitempty"`
+	place  int         // of Reading in codes, from 1; 0 where it was not looked up
 }
 
 // Scale is the line drawn under a number, in the code's own unit.

@@ -3,6 +3,7 @@ package forms
 import (
 	"encoding/json"
 	"fmt"
+	"slices"
 	"strconv"
 )
 
@@ -23,7 +24,7 @@ func Judge(form *Form, set *LimitSet, e Entry) (Verdict, error) {
 		return Verdict{}, invalid("limit_set", fmt.Sprintf(
 			"The limit set %q decides by the rule %q, which this version does not know. Use a newer version, or a set whose rule is simple.", set.ID, set.Rule))
 	}
-	j := judging{facts: facts{form: form, set: set, e: &e}, findings: make([]Finding, 0, 20)}
+	j := judging{facts: factsOf(form, set, &e), findings: make([]Finding, 0, len(e.Readings)+2*len(e.Series)+4)}
 	j.needs()
 	j.fieldLimits()
 	form.asks(func(a ask) bool { j.ask(a); return true })
@@ -63,8 +64,8 @@ func (j *judging) fieldLimits() {
 
 // ask judges what was answered to one question and reports what was not.
 func (j *judging) ask(a ask) {
-	i, known := codeAt[a.Reading]
-	if !known || !j.all(a.When) {
+	i := placeOf(a.place, a.Reading)
+	if i < 0 || !j.all(a.When) {
 		return
 	}
 	j.code(i)
@@ -72,17 +73,16 @@ func (j *judging) ask(a ask) {
 		return
 	}
 	if !j.closed(a.step) {
-		j.required(a)
+		j.required(a, i)
 	}
-	if s, ok := j.answer(a.Reading).(string); ok && len(a.Ends) > 0 {
-		for _, end := range a.Ends {
-			j.ended = j.ended || s == end
-		}
+	if len(a.Ends) > 0 {
+		s, _ := j.answerAt(i).(string)
+		j.ended = s != "" && slices.Contains(a.Ends, s)
 	}
 }
 
 // required reports an answer that is required and missing, under every condition it is required under.
-func (j *judging) required(a ask) {
+func (j *judging) required(a ask, i int) {
 	bySeries := false
 	if a.Series && j.form.Series != nil {
 		for i := range j.form.Series.Conditions {
@@ -96,11 +96,14 @@ func (j *judging) required(a ask) {
 			}
 		}
 	}
-	if !a.Required || bySeries || j.given(a.Reading) || a.Or != "" && j.givenAnywhere(a.Or) || a.Series && j.givenAnywhere(a.Reading) {
+	if !a.Required || bySeries || j.givenAt(i) || a.Or != "" && j.givenAnywhere(a.Or) || a.Series && j.givenAnywhere(a.Reading) {
 		return
 	}
-	r, _ := j.reading(a.Reading)
-	j.miss(a.Reading, nil, r.Missing, "")
+	reason := ""
+	if r := j.at(i); r != nil {
+		reason = r.Missing
+	}
+	j.miss(a.Reading, nil, reason, "")
 }
 
 // givenAnywhere reports whether a reading is given in the entry or under any condition.
@@ -194,32 +197,32 @@ func (j *judging) miss(code string, at map[string]any, reason, text string) {
 
 // code judges a reading of the entry and, in their order, those taken under conditions; each code once.
 func (j *judging) code(i int) {
-	c := &codes[i]
 	if j.seen&(1<<i) != 0 {
 		return
 	}
 	j.seen |= 1 << i
-	if r, ok := j.reading(c.Code); ok && r.Missing == "" {
-		j.limits(c, &r)
+	if j.givenAt(i) {
+		j.limits(i, j.at(i))
 	}
+	c := &codes[i]
 	for k := range j.e.Series {
-		j.item = &j.e.Series[k]
-		if r, ok := j.item.Readings[c.Code]; ok && fits(c, &r) {
-			if r = settled(r); r.Missing == "" {
-				j.limits(c, &r)
-			}
+		r, ok := j.e.Series[k].Readings[c.Code]
+		if !ok || !fits(c, &r) {
+			continue
+		}
+		if r = settled(r); r.Missing == "" {
+			j.item = &j.e.Series[k]
+			j.limits(i, &r)
+			j.item = nil
 		}
 	}
-	j.item = nil
 }
 
 // limits holds a reading against every limit on it, must before watch.
-func (j *judging) limits(c *Code, r *Reading) {
-	for _, level := range [...]string{Must, WatchOnly} {
-		for i := range j.set.Limits {
-			if l := &j.set.Limits[i]; l.Reading == c.Code && l.Level == level && j.all(l.When) {
-				j.limit(l, c, r)
-			}
+func (j *judging) limits(place int, r *Reading) {
+	for _, l := range j.set.on(place) {
+		if j.all(l.When) {
+			j.limit(l, &codes[place], r)
 		}
 	}
 }

@@ -11,6 +11,7 @@ type LimitSet struct {
 	// Assume gives fields that are taken where the entry does not say ("nominal_v": 120).
 	Assume map[string]any `json:"assume,omitempty"`
 	Limits []Limit        `json:"limits"`
+	byCode [][]*Limit     // by place in codes, must before watch; nil where they were not sorted out
 }
 
 // Limit says what one reading, or one field of the device, must satisfy. Exactly one shape is stated: Min/Max, OneOf,
@@ -51,7 +52,8 @@ type Limit struct {
 	Texts    map[string]string `json:"texts,omitempty"` // by answer, instead of Text
 	When     []Condition       `json:"when,omitempty"`
 	// Void lists where the reading says nothing: it is then not judged, and Text says why.
-	Void []Void `json:"void,omitempty"`
+	Void  []Void  `json:"void,omitempty"`
+	fixed *Bounds // Min, Max and OneOf as findings share them; nil where they were not sorted out
 }
 
 // Rung is one row of a table by multiple.

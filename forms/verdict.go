@@ -47,7 +47,7 @@ type Finding struct {
 	Unit     string          `json:"unit,omitempty"`  // where value and limit are not in the code's own unit
 	At       map[string]any  `json:"at,omitempty"`
 	Verdict  string          `json:"verdict"`
-	Limit    *Bounds         `json:"limit,omitempty"`
+	Limit    *Bounds         `json:"limit,omitempty"` // shared between findings: not to be changed
 	Level    string          `json:"level,omitempty"` // must | watch
 	Severity string          `json:"severity,omitempty"`
 	Source   string          `json:"source,omitempty"` // document and clause

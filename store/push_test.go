@@ -4,6 +4,8 @@ import (
 	"bytes"
 	"context"
 	"errors"
+	"os"
+	"path/filepath"
 	"slices"
 	"strings"
 	"testing"
@@ -88,6 +90,45 @@ func TestPush_FaultsOfTheDisk(t *testing.T) {
 	rc, err := send()
 	if err != nil || rc[0].State != "already" {
 		t.Fatalf("got %v %v, want already: the record was kept, only the answer was lost", rc, err)
+	}
+}
+
+// A full disk: what does not fit is not kept, what was kept stays, and the store goes on when there is room again.
+func TestPush_FullDisk(t *testing.T) {
+	r := newRig(t)
+	site := r.site("ELM-4")
+	p := r.phone(r.person("crew", false, site))
+	body := entry(22)
+	body["note"] = strings.Repeat("x", 60_000)
+	st, err := os.Stat(filepath.Join(r.dir, BookFile))
+	if err != nil {
+		t.Fatal(err)
+	}
+	r.db.MaxSize = int(st.Size())
+	var lines [][]byte
+	full := false
+	for range 10 {
+		line := p.make("entry.made", site, newID(r.clock()), body)
+		lines = append(lines, line)
+		_, err := r.Push(context.Background(), Sender{Installation: p.id}, []Incoming{{Record: line}})
+		if err != nil {
+			if full = code(err) == "unavailable"; !full {
+				t.Fatalf("got %v, want unavailable", err)
+			}
+			break
+		}
+	}
+	if !full {
+		t.Fatal("the disk never got full")
+	}
+	if page, err := r.Pull(p.by.Scope(), site, "", 0); err != nil || len(page.Records) != len(lines) {
+		t.Errorf("got %d records %v, want the %d that fitted", len(page.Records), err, len(lines))
+	}
+	r.db.MaxSize = 0
+	want := slices.Repeat([]string{"already"}, len(lines))
+	want[len(lines)-1] = "stored"
+	if got := states(p.push(lines...)); !slices.Equal(got, want) {
+		t.Errorf("got %v, want %v", got, want)
 	}
 }
 

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"slices"
+	"time"
 
 	"go.etcd.io/bbolt"
 )
@@ -12,6 +13,7 @@ import (
 const (
 	queueLength = 128   // jobs waiting; a full queue answers busy
 	groupLimit  = 2_000 // records of a group; the last job may go over it
+	gatherWait  = 2 * time.Millisecond
 )
 
 // job is one call that changes the store. run decides it inside the group's transaction and may run more than once: it
@@ -60,26 +62,16 @@ func (s *Store) enqueue(ctx context.Context, j *job) error {
 // write is the one writer: it takes what is queued, commits it together, answers all.
 func (s *Store) write() {
 	defer close(s.written)
+	crowd := 1
 	for j := range s.queue {
-		jobs, n := []*job{j}, j.size
-	take:
-		for n < groupLimit {
-			select {
-			case more, ok := <-s.queue:
-				if !ok {
-					break take
-				}
-				jobs, n = append(jobs, more), n+more.size
-			default:
-				break take
-			}
-		}
+		jobs := s.gather(j, crowd)
 		s.commit(slices.DeleteFunc(slices.Clone(jobs), func(j *job) bool { return j.own != nil }))
 		for _, j := range jobs {
 			if j.own != nil {
 				j.err = j.own()
 			}
 		}
+		crowd = len(jobs) + len(s.queue)
 		for _, j := range jobs {
 			close(j.done)
 		}
@@ -89,6 +81,41 @@ func (s *Store) write() {
 // Groups counts the transactions committed since the store was opened: records through groups says how many arrivals
 // share one flush of the disk.
 func (s *Store) Groups() int64 { return s.groups.Load() }
+
+// gather takes what is queued. Callers that have just been answered are likely to come again at once: it waits for as
+// many as were answered or queued at the last commit, but never longer than gatherWait, so that fewer and larger commits
+// are made. A caller on its own never waits.
+func (s *Store) gather(first *job, crowd int) []*job {
+	jobs, n := []*job{first}, first.size
+	var late <-chan time.Time
+	for n < groupLimit {
+		select {
+		case more, ok := <-s.queue:
+			if !ok {
+				return jobs
+			}
+			jobs, n = append(jobs, more), n+more.size
+			continue
+		default:
+		}
+		if len(jobs) >= crowd {
+			return jobs
+		}
+		if late == nil {
+			late = time.After(gatherWait)
+		}
+		select {
+		case more, ok := <-s.queue:
+			if !ok {
+				return jobs
+			}
+			jobs, n = append(jobs, more), n+more.size
+		case <-late:
+			return jobs
+		}
+	}
+	return jobs
+}
 
 // spoilt is a job that failed after it had changed something: the group is done again without it.
 type spoilt struct {

@@ -83,12 +83,15 @@ func Parse(raw []byte) (*Record, *Fault) {
 	return r, r.check()
 }
 
-// Reread reads a record that was accepted before: its envelope only, since its bytes were found good then.
-func Reread(raw []byte) (*Record, *Fault) {
-	r := &Record{Raw: raw}
-	if len(raw) < 2 || raw[0] != '{' || raw[len(raw)-1] != '}' {
-		return Parse(raw)
-	}
+// Reread reads the envelope of a record that was accepted before: its bytes were found good then. Bytes that were damaged
+// since give a fault.
+func Reread(raw []byte) (r *Record, f *Fault) {
+	r = &Record{Raw: raw}
+	defer func() {
+		if recover() != nil { // walking relies on good JSON and runs over the end of anything else
+			f = fault("malformed", "", "The record is damaged: it is not the JSON that was accepted.")
+		}
+	}()
 	return r, r.envelope()
 }
 

@@ -2,9 +2,11 @@ package record
 
 import (
 	"encoding/json"
-	"fmt"
+	"errors"
 	"strconv"
 	"time"
+
+	"github.com/go-json-experiment/json/jsontext"
 )
 
 // Stamp is what a store says of a record when it accepts it; made once, then part of the leaf.
@@ -40,17 +42,55 @@ func (s Stamp) Line() []byte {
 }
 
 // ParseStamp reads a stamp line.
-func ParseStamp(line []byte) (Stamp, error) {
-	var in struct {
-		Received time.Time `json:"received"`
-		OffsetMS int64     `json:"offset_ms"`
-		Via      string    `json:"via"`
-		Held     []Held    `json:"held"`
+func ParseStamp(line []byte) (st Stamp, err error) {
+	if v := jsontext.Value(line); !v.IsValid() || len(line) == 0 || line[0] != '{' {
+		return st, errors.New("the stamp is no line of JSON")
 	}
-	if err := json.Unmarshal(line, &in); err != nil {
-		return Stamp{}, fmt.Errorf("stamp: %w", err)
+	bad := members(line, func(name string, v []byte) *Fault {
+		ok := true
+		switch name {
+		case "received":
+			st.Received, ok = ParseTime(text(v))
+			st.Received = st.Received.UTC()
+		case "offset_ms":
+			n, err := strconv.ParseInt(string(v), 10, 64)
+			st.OffsetMS, ok = n, err == nil
+		case "via":
+			st.Via, ok = text(v), v[0] == '"'
+		case "held":
+			st.Held, ok = parseHeld(v)
+		}
+		if !ok {
+			return fault("malformed", name, "The stamp's %s cannot be read.", name)
+		}
+		return nil
+	})
+	if bad != nil {
+		return st, bad
 	}
-	return Stamp{Received: in.Received, OffsetMS: in.OffsetMS, Via: in.Via, Held: in.Held}, nil
+	if st.Received.IsZero() {
+		return st, errors.New("the stamp does not say when the record was received")
+	}
+	return st, nil
+}
+
+func parseHeld(v []byte) (held []Held, ok bool) {
+	if v[0] != '[' {
+		return nil, false
+	}
+	bad := elements(v, func(e []byte) *Fault {
+		if e[0] != '{' {
+			return &Fault{}
+		}
+		one := bodyOf(e)
+		at, ok := ParseTime(text(orNull(one["received"])))
+		if !ok {
+			return &Fault{}
+		}
+		held = append(held, Held{Store: text(orNull(one["store"])), Received: at.UTC()})
+		return nil
+	})
+	return held, bad == nil
 }
 
 // Earliest gives the earliest time any holder received the record.

@@ -34,8 +34,11 @@ func (b *book) readingName(code string) string {
 		return w
 	}
 	w := strings.ReplaceAll(code, "_", " ")
-	if b.words.Has(key) {
+	switch column := "sheet.col." + code; {
+	case b.words.Has(key):
 		w = b.words.Say(key)
+	case b.words.Has(column): // a field of the register
+		w = b.words.Say(column)
 	}
 	b.named[key] = w
 	return w
@@ -73,7 +76,7 @@ func (b *book) unit(code string) string {
 	return b.word("unit", c.Unit)
 }
 
-// value says what was read: a number where there is one, else words (">310", "open ground", "not measured: no access").
+// value says what was read: a number where there is one, else words (">310", "open ground", "could not get to it").
 func (b *book) value(code string, raw json.RawMessage) (number *float64, text string) {
 	if len(raw) == 0 {
 		return nil, ""
@@ -101,7 +104,7 @@ func (b *book) value(code string, raw json.RawMessage) (number *float64, text st
 		if json.Unmarshal(raw, &r) == nil {
 			switch {
 			case r.Missing != "":
-				return nil, b.say("sheet.not_measured", "why", b.word("missing", r.Missing))
+				return nil, b.word("missing", r.Missing)
 			case r.Above != nil:
 				return nil, ">" + figureText(*r.Above)
 			case r.Below != nil:

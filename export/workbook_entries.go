@@ -8,6 +8,7 @@ import (
 	"slices"
 
 	"tripwell/forms"
+	"tripwell/store"
 )
 
 var entryColumns = []column{
@@ -60,7 +61,7 @@ func (b *book) entries() error {
 		}
 		for _, f := range e.Flags {
 			err := flags.row().text(e.Site.Code).text(tagText(e.DeviceRow.Tag)).text(placeText(e.DeviceRow.Place)).text(b.word("task", e.Task)).
-				day(e.Day).text(b.word("flag", f.Code)).text(f.Detail).text(e.ID).end()
+				day(e.Day).text(b.flag(f)).text(f.Detail).text(e.ID).end()
 			if err != nil {
 				return err
 			}
@@ -72,6 +73,14 @@ func (b *book) entries() error {
 		}
 	}
 	return nil
+}
+
+// flag says a flag in words, with what it is about filled in.
+func (b *book) flag(f store.Flag) string {
+	if key := "flag." + f.Code; b.words.Has(key) {
+		return b.say(key, "detail", f.Detail)
+	}
+	return f.Code
 }
 
 // status of an entry's readings: in force, corrected, withdrawn.
@@ -192,7 +201,7 @@ func (b *book) bodyRows(s *sheet, e EntryLine, body forms.Entry, verdict forms.V
 		spoken[f.Reading+b.conditions(f.At)] = true
 		number, text := b.value(f.Reading, f.Value)
 		if f.Reason != "" {
-			number, text = nil, b.say("sheet.not_measured", "why", b.word("missing", f.Reason))
+			number, text = nil, b.word("missing", f.Reason)
 		}
 		if f.Value == nil && f.At == nil {
 			number, text = b.reading(f.Reading, body.Readings[f.Reading])

@@ -34,6 +34,9 @@ func (b *book) limitText(l *forms.Limit) string {
 		}
 	}
 	unit := b.unit(code)
+	if unit == "" {
+		unit = b.word("unit", l.Unit)
+	}
 	add(b.boundsText(code, forms.Bounds{Min: l.Min, Max: l.Max, OneOf: l.OneOf}, unit))
 	for _, u := range sortedKeys(l.ByUnit) {
 		add(b.boundsText(code, l.ByUnit[u], b.word("unit", u)))

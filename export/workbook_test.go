@@ -19,6 +19,7 @@ import (
 	"github.com/xuri/excelize/v2"
 
 	"tripwell/forms"
+	"tripwell/static"
 	"tripwell/store"
 )
 
@@ -181,9 +182,11 @@ func TestWorkbook_ReadingsSayNumberBoundAndWords(t *testing.T) {
 	if !strings.Contains(e1[2]["Conditions"], "5") || !strings.Contains(e1[2]["Conditions"], "180") {
 		t.Errorf("conditions: got %q", e1[2]["Conditions"])
 	}
-	if got := e1[0]["Value in words"]; !strings.HasPrefix(got, "not measured: ") {
-		t.Errorf("missing reading: got %q", got)
+	words, err := static.ReadWords("en")
+	if err != nil {
+		t.Fatal(err)
 	}
+	wantCells(t, "missing reading", e1[0], map[string]string{"Value": "", "Value in words": words.Say("missing.no-access"), "Verdict": words.Say("verdict.missing"), "Unit": ""})
 	wantCells(t, "not judged", e1[4], map[string]string{"Value": "6.5", "Verdict": "", "Limit set and revision": ""})
 }
 
@@ -372,6 +375,32 @@ func TestWorkbook_EveryHeadingHasWords(t *testing.T) {
 			}
 			seen[h] = true
 		}
+	}
+}
+
+func TestWorkbook_ShippedLimitsInWords(t *testing.T) {
+	words, err := static.ReadWords("en")
+	if err != nil {
+		t.Fatal(err)
+	}
+	shipped := forms.Shipped().LimitSets
+	lines := limitLines(words, shipped)
+	n := 0
+	for _, set := range shipped {
+		n += len(set.Limits)
+	}
+	if len(lines) != n || n == 0 {
+		t.Fatalf("got %d lines of %d limits", len(lines), n)
+	}
+	curve := false
+	for _, l := range lines {
+		if l.Limit == "" || l.Source == "" || l.Reading == "" || strings.Contains(l.Limit, "sheet.") || strings.Contains(l.When, "sheet.") {
+			t.Errorf("limit without words: %+v", l)
+		}
+		curve = curve || l.Set == "us-class-a" && l.Reading == "trip_time_ms" && strings.Contains(l.Limit, "(20 / I)^1.43")
+	}
+	if !curve {
+		t.Error("the inverse-time limit is not among them")
 	}
 }
 

@@ -1,8 +1,10 @@
 package forms
 
 import (
+	"encoding/json"
 	"maps"
 	"slices"
+	"strconv"
 
 	"github.com/go-json-experiment/json/jsontext"
 )
@@ -108,4 +110,33 @@ func appendMember(dst []byte, name, value string) []byte {
 func appendString(dst []byte, s string) []byte {
 	dst, _ = jsontext.AppendQuote(dst, s)
 	return dst
+}
+
+// rawValue is a reading as findings show it.
+func rawValue(r *Reading, own, unit string) json.RawMessage {
+	switch {
+	case r.NoTrip:
+		return json.RawMessage(`"no-trip"`)
+	case r.Above != nil:
+		return append(appendNumber([]byte(`{"above":`), *r.Above), '}')
+	case r.Below != nil:
+		return append(appendNumber([]byte(`{"below":`), *r.Below), '}')
+	}
+	if s, ok := r.Text(); ok {
+		return appendString(make([]byte, 0, len(s)+2), s)
+	}
+	v, _ := r.figure(own, unit)
+	return appendNumber(make([]byte, 0, 12), v)
+}
+
+// appendNumber writes a number as JavaScript does.
+func appendNumber(dst []byte, v float64) []byte {
+	if v == 0 || v >= 1e-6 && v < 1e21 {
+		return strconv.AppendFloat(dst, v, 'f', -1, 64)
+	}
+	raw, err := json.Marshal(v)
+	if err != nil {
+		return append(dst, "null"...)
+	}
+	return append(dst, raw...)
 }

@@ -1,10 +1,8 @@
 package forms
 
 import (
-	"encoding/json"
 	"fmt"
 	"slices"
-	"strconv"
 )
 
 // judging is one entry being judged.
@@ -79,120 +77,6 @@ func (j *judging) ask(a ask) {
 		s, _ := j.answerAt(i).(string)
 		j.ended = s != "" && slices.Contains(a.Ends, s)
 	}
-}
-
-// required reports an answer that is required and missing, under every condition it is required under.
-func (j *judging) required(a ask, i int) {
-	bySeries := false
-	if a.Series && j.form.Series != nil {
-		for i := range j.form.Series.Conditions {
-			c := &j.form.Series.Conditions[i]
-			if c.AnyOf[0] != a.Reading || !j.all(c.When) {
-				continue
-			}
-			bySeries = true
-			if !j.taken(c) {
-				j.missUnder(c)
-			}
-		}
-	}
-	if !a.Required || bySeries || j.givenAt(i) || a.Or != "" && j.givenAnywhere(a.Or) || a.Series && j.givenAnywhere(a.Reading) {
-		return
-	}
-	reason := ""
-	if r := j.at(i); r != nil {
-		reason = r.Missing
-	}
-	j.miss(a.Reading, nil, reason, "")
-}
-
-// givenAnywhere reports whether a reading is given in the entry or under any condition.
-func (j *judging) givenAnywhere(code string) bool {
-	if j.given(code) {
-		return true
-	}
-	for i := range j.e.Series {
-		if r, ok := j.e.Series[i].Readings[code]; ok && r.Given() {
-			return true
-		}
-	}
-	return false
-}
-
-// taken reports whether one of a condition's readings was taken at that condition, in the series or beside it.
-func (j *judging) taken(c *SeriesCondition) bool {
-	for _, code := range c.AnyOf {
-		for i := range j.e.Series {
-			item := &j.e.Series[i]
-			if r, ok := item.Readings[code]; ok && r.Given() && fits(&codes[codeAt[code]], &r) && matches(item.At, c.At) {
-				return true
-			}
-		}
-		if j.given(code) && j.baseAt(c.At) {
-			return true
-		}
-	}
-	return false
-}
-
-// baseAt reports whether the entry's own readings were taken at the conditions ("multiple":1 among the readings).
-func (j *judging) baseAt(at map[string]any) bool {
-	for code, want := range at {
-		if r, ok := j.e.Readings[code]; !ok || r.Value != want {
-			return false
-		}
-	}
-	return true
-}
-
-// matches reports whether an item was taken at all conditions wanted.
-func matches(at, want map[string]any) bool {
-	for code, v := range want {
-		if at[code] != v {
-			return false
-		}
-	}
-	return true
-}
-
-// missUnder reports a reading missing under a condition, with the reason given there or for the reading as a whole.
-func (j *judging) missUnder(c *SeriesCondition) {
-	reason := ""
-	for _, code := range c.AnyOf {
-		if r := j.e.Readings[code]; reason == "" {
-			reason = r.Missing
-		}
-		for i := range j.e.Series {
-			if r := j.e.Series[i].Readings[code]; r.Missing != "" && matches(j.e.Series[i].At, c.At) {
-				reason = r.Missing
-			}
-		}
-	}
-	j.findings = append(j.findings, Finding{Reading: c.AnyOf[0], At: c.At, Verdict: Missing, Level: Must, Reason: reason, Text: missingText(reason)})
-}
-
-func missingText(reason string) string {
-	if reason == "" {
-		reason = "none"
-	}
-	return "missing." + reason
-}
-
-// miss reports once that something is missing.
-func (j *judging) miss(code string, at map[string]any, reason, text string) {
-	if at == nil {
-		if j.missed[code] {
-			return
-		}
-		if j.missed == nil {
-			j.missed = map[string]bool{}
-		}
-		j.missed[code] = true
-	}
-	if text == "" {
-		text = missingText(reason)
-	}
-	j.findings = append(j.findings, Finding{Reading: code, At: at, Verdict: Missing, Level: Must, Reason: reason, Text: text})
 }
 
 // code judges a reading of the entry and, in their order, those taken under conditions; each code once.
@@ -339,33 +223,4 @@ func (j *judging) nothingTested() bool {
 		return true
 	}
 	return reason && !tested && resultOf(j.findings) == Incomplete
-}
-
-// rawValue is a reading as findings show it.
-func rawValue(r *Reading, own, unit string) json.RawMessage {
-	switch {
-	case r.NoTrip:
-		return json.RawMessage(`"no-trip"`)
-	case r.Above != nil:
-		return append(appendNumber([]byte(`{"above":`), *r.Above), '}')
-	case r.Below != nil:
-		return append(appendNumber([]byte(`{"below":`), *r.Below), '}')
-	}
-	if s, ok := r.Text(); ok {
-		return appendString(make([]byte, 0, len(s)+2), s)
-	}
-	v, _ := r.figure(own, unit)
-	return appendNumber(make([]byte, 0, 12), v)
-}
-
-// appendNumber writes a number as JavaScript does.
-func appendNumber(dst []byte, v float64) []byte {
-	if v == 0 || v >= 1e-6 && v < 1e21 {
-		return strconv.AppendFloat(dst, v, 'f', -1, 64)
-	}
-	raw, err := json.Marshal(v)
-	if err != nil {
-		return append(dst, "null"...)
-	}
-	return append(dst, raw...)
 }

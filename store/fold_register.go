@@ -1,0 +1,233 @@
+package store
+
+import (
+	"encoding/json"
+	"strings"
+	"time"
+
+	"tripwell/forms"
+	"tripwell/store/record"
+)
+
+// setFields merges a record's map of fields.
+func (f *fold) setFields(r *record.Record, st record.Stamp, typ byte) error {
+	set, seen := record.Set(r.Body)
+	l, err := f.log(r.Log)
+	if err != nil {
+		return err
+	}
+	key, reg, err := f.register(l, typ, parseID(r.Subject))
+	if err != nil {
+		return err
+	}
+	zone := reg.text("zone")
+	for name, v := range set {
+		reg.say(name, record.Said{Value: append(json.RawMessage{}, v...), Clock: r.Clock, ID: r.ID, From: r.From, Seen: seen})
+	}
+	if strings.HasSuffix(r.Kind, ".registered") {
+		if ms := happened(r, st).UnixMilli(); reg.born == 0 || ms < reg.born {
+			reg.born, reg.dirty = ms, true
+		}
+	}
+	switch {
+	case typ == ofDevice:
+		return f.deviceChanged(l, key.n, reg)
+	case typ == ofSite && zone != reg.text("zone"):
+		l.zone = nil
+		return f.zoneChanged(l)
+	}
+	return nil
+}
+
+// happened gives the moment a record counts for: its own time, never later than the first holder had it.
+func happened(r *record.Record, st record.Stamp) time.Time {
+	if first := st.Earliest(); first.Before(r.At) {
+		return first
+	}
+	return r.At
+}
+
+func quoted(s string) json.RawMessage {
+	b, _ := json.Marshal(s)
+	return b
+}
+
+// retired takes a device out of service, and where another took its place, tells that one too.
+func (f *fold) retired(r *record.Record) error {
+	var body struct{ Reason, On, With string }
+	if err := json.Unmarshal(r.Body, &body); err != nil {
+		return badBody("reason", "The reason and the day of %s are not readable: %v.", r.Kind, err)
+	}
+	l, err := f.log(r.Log)
+	if err != nil {
+		return err
+	}
+	old := parseID(r.Subject)
+	why, err := json.Marshal(map[string]string{"reason": body.Reason, "on": body.On})
+	if err != nil {
+		return err
+	}
+	said := func(v json.RawMessage) record.Said {
+		return record.Said{Value: v, Clock: r.Clock, ID: r.ID, From: r.From}
+	}
+	key, reg, err := f.register(l, ofDevice, old)
+	if err != nil {
+		return err
+	}
+	reg.say("#retired", said(why))
+	if with := parseID(body.With); with != (id16{}) && with != old {
+		reg.say("#with", said(quoted(body.With)))
+		next, newer, err := f.register(l, ofDevice, with)
+		if err != nil {
+			return err
+		}
+		newer.say("#replaces", said(quoted(r.Subject)))
+		if err := f.deviceChanged(l, next.n, newer); err != nil {
+			return err
+		}
+	}
+	return f.deviceChanged(l, key.n, reg)
+}
+
+// calibrated is the field calibration_due of an instrument, said by its certificate.
+func (f *fold) calibrated(r *record.Record) error {
+	var body struct{ On, Due, Certificate string }
+	if err := json.Unmarshal(r.Body, &body); err != nil {
+		return badBody("due", "The days of %s are not readable: %v.", r.Kind, err)
+	}
+	l, err := f.log(r.Log)
+	if err != nil {
+		return err
+	}
+	_, reg, err := f.register(l, ofInstrument, parseID(r.Subject))
+	if err != nil {
+		return err
+	}
+	for name, v := range map[string]string{"calibration_due": body.Due, "calibrated": body.On, "certificate": body.Certificate} {
+		if v != "" {
+			reg.say(name, record.Said{Value: quoted(v), Clock: r.Clock, ID: r.ID, From: r.From})
+		}
+	}
+	return nil
+}
+
+// deviceChanged carries what the dates need over to the device's work row.
+func (f *fold) deviceChanged(l *modelLog, n uint32, reg *register) error {
+	w, err := f.work(l.ord, n)
+	if err != nil {
+		return err
+	}
+	zone, err := f.zone(l)
+	if err != nil {
+		return err
+	}
+	live := w.live
+	w.kind, w.start = reg.text("kind"), forms.NoDay
+	if reg.born != 0 {
+		w.start = forms.DayOf(time.UnixMilli(reg.born).In(zone))
+		if d, err := forms.ParseDay(reg.text("installed")); err == nil && d > w.start {
+			w.start = d
+		}
+	}
+	w.live = reg.born != 0 && w.kind != "" && reg.value("#retired") == nil
+	if w.live != live {
+		if l.dirty = true; w.live {
+			l.live++
+		} else {
+			l.live--
+		}
+	}
+	w.dirty = true
+	w.reckon(f.rules.schedule(l.ord, f.orgOrd(), w.kind))
+	return nil
+}
+
+// zone gives a site's time zone, UTC where it is unknown.
+func (f *fold) zone(l *modelLog) (*time.Location, error) {
+	if l.zone == nil {
+		_, reg, err := f.register(l, ofSite, l.id)
+		if err != nil {
+			return nil, err
+		}
+		l.zone = location(reg.text("zone"))
+	}
+	return l.zone, nil
+}
+
+// orgOrd gives the number of the org log, 0 before anything was said in it.
+func (f *fold) orgOrd() uint32 {
+	if l := f.logs[record.Org]; l != nil {
+		return l.ord
+	}
+	if f.on(bktSiteLog).get(make([]byte, 16)) == nil {
+		return 0
+	}
+	l, err := f.log(record.Org)
+	if err != nil {
+		return 0
+	}
+	return l.ord
+}
+
+// bound puts a tag on a place or a portable item, or takes it off.
+func (f *fold) bound(r *record.Record) error {
+	var body struct{ Tag string }
+	if err := json.Unmarshal(r.Body, &body); err != nil || !record.IsTag(body.Tag) {
+		return badBody("tag", "The tag of %s is not readable.", r.Kind)
+	}
+	l, err := f.log(r.Log)
+	if err != nil {
+		return err
+	}
+	subject := parseID(r.Subject)
+	b := binding{live: r.Kind == "tag.bound", clock: r.Clock, id: parseID(r.ID)}
+	key := bindKey(l.ord, subject, body.Tag)
+	if old, err := unpackBinding(f.on(bktBind).get(key)); err != nil {
+		return err
+	} else if !old.before(b) {
+		return nil
+	}
+	f.on(bktBind).put(key, b.pack())
+	if tag := tagKey(body.Tag, l.ord, subject); b.live {
+		f.on(bktTag).put(tag, []byte{})
+	} else if f.on(bktTag).get(tag) != nil {
+		f.on(bktTag).delete(tag)
+	}
+	return nil
+}
+
+// packRegisters writes changed register rows and keeps their indexes.
+func (f *fold) packRegisters() {
+	for key, r := range f.registers {
+		if !r.dirty {
+			continue
+		}
+		r.dirty = false
+		f.on(bktRegister).put(registerKey(key.site, key.typ, key.n), r.pack())
+		switch key.typ {
+		case ofDevice:
+			if place := r.idOf("place"); place != r.was.place {
+				if r.was.place != (id16{}) {
+					f.on(bktPlace).delete(placeKey(key.site, r.was.place, key.n))
+				}
+				if place != (id16{}) {
+					f.on(bktPlace).put(placeKey(key.site, place, key.n), []byte{})
+				}
+				r.was.place = place
+			}
+		case ofSite:
+			if code := siteCode(r.text("code")); code != r.was.code {
+				if r.was.code != "" {
+					f.on(bktCode).delete(codeKey(r.was.code, key.site))
+				}
+				if code != "" {
+					f.on(bktCode).put(codeKey(code, key.site), []byte{})
+				}
+				r.was.code = code
+			}
+		}
+	}
+}
+
+// siteCode is a code as it is looked up: letters in capitals.
+func siteCode(s string) string { return strings.ToUpper(strings.TrimSpace(s)) }

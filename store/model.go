@@ -1,0 +1,129 @@
+package store
+
+import (
+	"encoding/binary"
+
+	"tripwell/forms"
+)
+
+// The read models. Integers are big-endian; site is the number of a log of the model (given in the order logs are first
+// met in the book; org is one of them), n the number of a thing within its log, day a forms.Day with its sign bit
+// turned over so that it sorts. Rows are packed (pack.go); nothing here comes from a clock, a setting or a map's order.
+//
+//	m_log    log 16                     → site 4 | things made | devices under test | entries (org is all zero)
+//	m_site   site 4                     → log 16
+//	m_thing  id 16 | site 4 | type 1    → n 4
+//	m_reg    site 4 | type 1 | n 4      → register row: fields with everything that was said of them
+//	m_work   site 4 | n 4               → work row of a device: last tests, dates, its newest entries
+//	m_hist   site 4 | n 4 | seq 8       → older entries of that device, from that seq
+//	m_said   site 4 | entry 16          → seqs of the corrections and withdrawals of an entry
+//	m_due    site 4 | day 4 | n 4 | task → nothing: this device has this date
+//	m_sum    site 4 | day 4 | grace 2   → how many such dates
+//	m_fail   site 4 | day 4 | n 4       → nothing: this device failed on that day and has not passed since
+//	m_tally  site 4 | month 4 | task    → results of the month, counted
+//	m_bind   site 4 | subject 16 | tag 7 → what was said of this binding
+//	m_tag    tag 7 | site 4 | subject 16 → nothing: a live binding
+//	m_place  site 4 | place 16 | n 4    → nothing: a device whose own place this is
+//	m_code   CODE 0 | site 4            → nothing
+//	m_rule   type 1 | site 4 | name 0 | revision 4 → clock 8 | record 16 | JSON of a form, limit set or plan
+//	m_todo   seq 8                      → work not yet done for that record, see todo.go
+var (
+	bktSiteLog  = []byte("m_log")
+	bktSite     = []byte("m_site")
+	bktThing    = []byte("m_thing")
+	bktRegister = []byte("m_reg")
+	bktWork     = []byte("m_work")
+	bktHistory  = []byte("m_hist")
+	bktSaid     = []byte("m_said")
+	bktDue      = []byte("m_due")
+	bktSum      = []byte("m_sum")
+	bktFail     = []byte("m_fail")
+	bktTally    = []byte("m_tally")
+	bktBind     = []byte("m_bind")
+	bktTag      = []byte("m_tag")
+	bktPlace    = []byte("m_place")
+	bktCode     = []byte("m_code")
+	bktRule     = []byte("m_rule")
+	bktTodo     = []byte("m_todo")
+)
+
+var modelBuckets = [][]byte{bktSiteLog, bktSite, bktThing, bktRegister, bktWork, bktHistory, bktSaid, bktDue, bktSum,
+	bktFail, bktTally, bktBind, bktTag, bktPlace, bktCode, bktRule, bktTodo}
+
+// Types of things and of rules.
+const (
+	ofSite       = 's'
+	ofPlace      = 'p'
+	ofPanel      = 'b'
+	ofCircuit    = 'c'
+	ofDevice     = 'd'
+	ofInstrument = 'i'
+
+	ruleForm  = 'f'
+	ruleLimit = 'l'
+	rulePlan  = 'p'
+)
+
+func putDay(b []byte, d forms.Day) []byte {
+	return binary.BigEndian.AppendUint32(b, uint32(d)^1<<31)
+}
+
+func readDay(b []byte) forms.Day { return forms.Day(binary.BigEndian.Uint32(b) ^ 1<<31) }
+
+func put32(b []byte, n uint32) []byte { return binary.BigEndian.AppendUint32(b, n) }
+func read32(b []byte) uint32          { return binary.BigEndian.Uint32(b) }
+
+func thingKey(id id16, site uint32, typ byte) []byte {
+	return append(put32(append(make([]byte, 0, 21), id[:]...), site), typ)
+}
+
+func registerKey(site uint32, typ byte, n uint32) []byte {
+	return put32(append(put32(make([]byte, 0, 9), site), typ), n)
+}
+
+func workKey(site, n uint32) []byte { return put32(put32(make([]byte, 0, 8), site), n) }
+
+func historyKey(site, n uint32, seq uint64) []byte {
+	return binary.BigEndian.AppendUint64(put32(put32(make([]byte, 0, 16), site), n), seq)
+}
+
+func saidKey(site uint32, entry id16) []byte {
+	return append(put32(make([]byte, 0, 20), site), entry[:]...)
+}
+
+func dueKey(site uint32, day forms.Day, n uint32, task string) []byte {
+	return append(put32(putDay(put32(make([]byte, 0, 12+len(task)), site), day), n), task...)
+}
+
+func sumKey(site uint32, day forms.Day, grace uint16) []byte {
+	return binary.BigEndian.AppendUint16(putDay(put32(make([]byte, 0, 10), site), day), grace)
+}
+
+func failKey(site uint32, day forms.Day, n uint32) []byte {
+	return put32(putDay(put32(make([]byte, 0, 12), site), day), n)
+}
+
+func tallyKey(site uint32, month int32, task string) []byte {
+	return append(put32(put32(make([]byte, 0, 8+len(task)), site), uint32(month)), task...)
+}
+
+func bindKey(site uint32, subject id16, tag string) []byte {
+	return append(append(put32(make([]byte, 0, 27), site), subject[:]...), tag...)
+}
+
+func tagKey(tag string, site uint32, subject id16) []byte {
+	return append(put32(append(make([]byte, 0, 27), tag...), site), subject[:]...)
+}
+
+func placeKey(site uint32, place id16, n uint32) []byte {
+	return put32(append(put32(make([]byte, 0, 24), site), place[:]...), n)
+}
+
+func codeKey(code string, site uint32) []byte {
+	return put32(append(append(make([]byte, 0, len(code)+5), code...), 0), site)
+}
+
+func ruleKey(typ byte, site uint32, name string, revision int) []byte {
+	b := append(put32(append(make([]byte, 0, len(name)+10), typ), site), name...)
+	return put32(append(b, 0), uint32(revision))
+}

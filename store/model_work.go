@@ -1,0 +1,322 @@
+package store
+
+import (
+	"cmp"
+	"slices"
+
+	"tripwell/forms"
+)
+
+// work is what the tests of one device come to. Its row is the one scattered page an entry changes.
+type work struct {
+	kind  string    // of the register; "" before the device is registered
+	start forms.Day // the day it came under test
+	live  bool      // registered and not retired
+	tasks []taskState
+	dates []forms.DueDate // by task
+	past  []past          // the newest entries, in order of arrival
+	older uint64          // how many entries went to m_hist
+
+	was   workBefore
+	dirty bool
+}
+
+// workBefore is what the indexes hold for the row as stored.
+type workBefore struct {
+	live  bool
+	dates []forms.DueDate
+	fail  forms.Day
+}
+
+// taskState is what the entries of one task say together.
+type taskState struct {
+	task       string
+	last       mark      // the newest entry, not-tested included
+	conclusive mark      // the newest that failed or passed
+	met        forms.Day // the newest day that moved the date, of whatever task the entry was
+}
+
+// mark names an entry by what orders it: day, then (clock, id).
+type mark struct {
+	day    forms.Day
+	clock  uint64
+	id     id16
+	result uint8 // 0 = no entry
+}
+
+func (m mark) before(o mark) bool {
+	if m.result == 0 || o.result == 0 {
+		return m.result == 0 && o.result != 0
+	}
+	return cmp.Or(cmp.Compare(m.day, o.day), cmp.Compare(m.clock, o.clock), slices.Compare(m.id[:], o.id[:])) < 0
+}
+
+// past is one entry as the history keeps it.
+type past struct {
+	seq    uint64
+	day    forms.Day
+	task   string
+	result uint8    // as judged after corrections; 0 = withdrawn
+	met    []string // tasks whose date it moves
+}
+
+// Results as rows keep them.
+var resultCodes = []string{"", forms.Fail, forms.ConditionalFail, forms.Incomplete, forms.ConditionalPass, forms.Pass, forms.NotTested}
+
+func resultCode(result string) uint8 { return uint8(max(0, slices.Index(resultCodes, result))) }
+
+const (
+	codeFail            = 1
+	codeConditionalPass = 4
+	codePass            = 5
+)
+
+// taskCodes are tasks as rows keep them; any other task is written out.
+var taskCodes = []string{"", "button", "instrument", "receptacle"}
+
+func (p *packer) task(task string) {
+	i := max(0, slices.Index(taskCodes, task))
+	p.byte(byte(i))
+	if i == 0 {
+		p.text(task)
+	}
+}
+
+func (u *unpacker) task() string {
+	i := u.byte()
+	if i == 0 {
+		return u.text()
+	}
+	if int(i) >= len(taskCodes) {
+		u.fail()
+		return ""
+	}
+	return taskCodes[i]
+}
+
+// An entry of a device comes into past; when keepPast are there, the oldest spillPast go to m_hist as one row.
+const (
+	keepPast  = 96
+	spillPast = 64
+)
+
+func (w *work) task(task string) *taskState {
+	i, ok := slices.BinarySearchFunc(w.tasks, task, func(t taskState, task string) int { return cmp.Compare(t.task, task) })
+	if !ok {
+		w.tasks = slices.Insert(w.tasks, i, taskState{task: task, met: forms.NoDay})
+	}
+	return &w.tasks[i]
+}
+
+// count takes one more entry into what the entries say together.
+func (w *work) count(p past, m mark) {
+	if p.result == 0 {
+		return
+	}
+	m.result = p.result
+	t := w.task(p.task)
+	if t.last.before(m) {
+		t.last = m
+	}
+	switch p.result {
+	case codeFail, codePass, codeConditionalPass:
+		if t.conclusive.before(m) {
+			t.conclusive = m
+		}
+	}
+	for _, met := range p.met {
+		if t := w.task(met); p.day > t.met {
+			t.met = p.day
+		}
+	}
+}
+
+// failing gives the newest day on which a task failed that has not passed since; NoDay where none has.
+func (w *work) failing() forms.Day {
+	day := forms.NoDay
+	if !w.live {
+		return day
+	}
+	for _, t := range w.tasks {
+		if t.conclusive.result == codeFail && t.conclusive.day > day {
+			day = t.conclusive.day
+		}
+	}
+	return day
+}
+
+func (w *work) met(task string) forms.Day {
+	for i := range w.tasks {
+		if w.tasks[i].task == task {
+			return w.tasks[i].met
+		}
+	}
+	return forms.NoDay
+}
+
+// reckon sets the next dates.
+func (w *work) reckon(s forms.Schedule) {
+	w.dates = nil
+	if w.live {
+		w.dates = s.Dates(w.start, w.met)
+	}
+}
+
+func (p *packer) mark(m mark) {
+	p.byte(m.result)
+	if m.result != 0 {
+		p.day(m.day)
+		p.fixed(m.clock)
+		p.id(m.id)
+	}
+}
+
+func (u *unpacker) mark() (m mark) {
+	if m.result = u.byte(); m.result != 0 {
+		m.day, m.clock, m.id = u.day(), u.fixed(), u.id()
+	}
+	return m
+}
+
+func (w *work) pack() []byte {
+	p := packer{make([]byte, 0, 256+12*len(w.past))}
+	flags := byte(0)
+	if w.live {
+		flags = 1
+	}
+	p.byte(flags)
+	p.text(w.kind)
+	p.day(w.start)
+	p.uint(uint64(len(w.dates)))
+	for _, d := range w.dates {
+		p.task(d.Task)
+		p.text(d.Plan)
+		p.day(d.Due)
+		p.int(int64(d.Due - d.Opens))
+		p.int(int64(d.Until - d.Due))
+		p.day(d.Last)
+	}
+	p.uint(uint64(len(w.tasks)))
+	for _, t := range w.tasks {
+		p.task(t.task)
+		p.day(t.met)
+		p.mark(t.last)
+		if t.last == t.conclusive {
+			p.byte(0xff)
+		} else {
+			p.mark(t.conclusive)
+		}
+	}
+	p.uint(w.older)
+	p.pasts(w.past)
+	return p.b
+}
+
+func (p *packer) pasts(list []past) {
+	p.uint(uint64(len(list)))
+	seq, day := uint64(0), forms.Day(0)
+	for _, e := range list {
+		p.uint(e.seq - seq)
+		p.int(int64(e.day - day))
+		seq, day = e.seq, e.day
+		p.task(e.task)
+		p.byte(e.result | byte(len(e.met))<<4)
+		for _, m := range e.met {
+			p.task(m)
+		}
+	}
+}
+
+func (u *unpacker) pasts() []past {
+	n := u.uint()
+	if n > uint64(len(u.b)) {
+		u.fail()
+		return nil
+	}
+	list := make([]past, 0, n+1)
+	seq, day := uint64(0), forms.Day(0)
+	for i := uint64(0); i < n && !u.bad; i++ {
+		seq += u.uint()
+		day += forms.Day(u.int())
+		e := past{seq: seq, day: day, task: u.task()}
+		b := u.byte()
+		e.result = b & 15
+		e.met = u.metTasks(int(b >> 4))
+		list = append(list, e)
+	}
+	return list
+}
+
+// metOne holds the usual lists, so that reading a history makes none.
+var metOne = map[string][]string{"button": {"button"}, "instrument": {"instrument"}, "receptacle": {"receptacle"}}
+
+func (u *unpacker) metTasks(n int) []string {
+	if n == 0 {
+		return nil
+	}
+	first := u.task()
+	if one := metOne[first]; n == 1 && one != nil {
+		return one
+	}
+	list := append(make([]string, 0, n), first)
+	for len(list) < n && !u.bad {
+		list = append(list, u.task())
+	}
+	return list
+}
+
+// unpackWork reads a row up to its entries, or with them.
+func unpackWork(b []byte, entries bool) (*work, error) {
+	u := unpacker{b: b}
+	w := &work{live: u.byte()&1 == 1}
+	w.kind, w.start = kindName(u.bytes()), u.day()
+	n := u.uint()
+	if n > uint64(len(b)) {
+		return nil, errPacked
+	}
+	w.dates = make([]forms.DueDate, 0, n)
+	for i := uint64(0); i < n && !u.bad; i++ {
+		d := forms.DueDate{Task: u.task(), Plan: u.text(), Due: u.day()}
+		d.Opens = d.Due - forms.Day(u.int())
+		d.Until = d.Due + forms.Day(u.int())
+		d.Last = u.day()
+		w.dates = append(w.dates, d)
+	}
+	n = u.uint()
+	if n > uint64(len(b)) {
+		return nil, errPacked
+	}
+	w.tasks = make([]taskState, 0, n)
+	for i := uint64(0); i < n && !u.bad; i++ {
+		t := taskState{task: u.task(), met: u.day(), last: u.mark()}
+		if len(u.b) > 0 && u.b[0] == 0xff {
+			u.byte()
+			t.conclusive = t.last
+		} else {
+			t.conclusive = u.mark()
+		}
+		w.tasks = append(w.tasks, t)
+	}
+	w.older = u.uint()
+	if entries {
+		w.past = u.pasts()
+	}
+	w.was = workBefore{live: w.live, dates: w.dates, fail: w.failing()}
+	return w, u.err()
+}
+
+// kindNames spares the making of the same names.
+var kindNames = func() map[string]string {
+	m := map[string]string{}
+	for _, k := range forms.Kinds() {
+		m[k] = k
+	}
+	return m
+}()
+
+func kindName(b []byte) string {
+	if s, ok := kindNames[string(b)]; ok {
+		return s
+	}
+	return string(b)
+}

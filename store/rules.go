@@ -1,0 +1,208 @@
+package store
+
+import (
+	"cmp"
+	"slices"
+	"strings"
+	"sync"
+
+	"github.com/go-json-experiment/json"
+
+	"tripwell/forms"
+)
+
+// rules are the forms, limit sets and plans of the book, read when first needed. site and org are numbers of logs.
+type rules struct {
+	list      func(prefix []byte) []row
+	plans     map[uint32][]*forms.Plan
+	schedules map[scheduleID]forms.Schedule
+	limits    map[limitID][]*forms.LimitSet
+	forms     map[string][]*forms.Form
+}
+
+type scheduleID struct {
+	site uint32
+	kind string
+}
+
+type limitID struct {
+	site uint32
+	set  string
+}
+
+func newRules(list func(prefix []byte) []row) *rules {
+	ru := &rules{list: list}
+	ru.forget()
+	return ru
+}
+
+// forget makes the rules be read again.
+func (ru *rules) forget() {
+	ru.plans, ru.schedules = map[uint32][]*forms.Plan{}, map[scheduleID]forms.Schedule{}
+	ru.limits, ru.forms = map[limitID][]*forms.LimitSet{}, map[string][]*forms.Form{}
+}
+
+// parsedRules keeps what rows of rules say, by their bytes: a group commit every millisecond must not read the shipped
+// tables again. It holds every revision the process has met and nothing else.
+var parsedRules sync.Map
+
+// parseRule reads the JSON of a rule row.
+func parseRule[T any](value []byte) (*T, error) {
+	raw := ruleJSON(value)
+	if v, ok := parsedRules.Load(string(raw)); ok {
+		if t, ok := v.(*T); ok {
+			return t, nil
+		}
+	}
+	t := new(T)
+	if err := json.Unmarshal(raw, t); err != nil {
+		return nil, err
+	}
+	parsedRules.Store(string(raw), t)
+	return t, nil
+}
+
+// ruleJSON is a rule row without the stamp in front of it.
+func ruleJSON(value []byte) []byte { return value[min(24, len(value)):] }
+
+func rulesUnder[T any](ru *rules, prefix []byte) []*T {
+	var out []*T
+	for _, r := range ru.list(prefix) {
+		if t, err := parseRule[T](r.value); err == nil { // checked when it was folded
+			out = append(out, t)
+		}
+	}
+	return out
+}
+
+func rulePrefix(typ byte, site uint32, name string) []byte {
+	key := ruleKey(typ, site, name, 0)
+	if name == "" {
+		return key[:5]
+	}
+	return key[:len(key)-4]
+}
+
+func (ru *rules) plansOf(site uint32) []*forms.Plan {
+	if site == 0 {
+		return nil
+	}
+	p, ok := ru.plans[site]
+	if !ok {
+		p = rulesUnder[forms.Plan](ru, rulePrefix(rulePlan, site, ""))
+		ru.plans[site] = p
+	}
+	return p
+}
+
+// schedule gives what is asked of a kind at a site.
+func (ru *rules) schedule(site, org uint32, kind string) forms.Schedule {
+	key := scheduleID{site, kind}
+	s, ok := ru.schedules[key]
+	if !ok {
+		s = forms.ScheduleOf(kind, ru.plansOf(org), ru.plansOf(site))
+		ru.schedules[key] = s
+	}
+	return s
+}
+
+// limitRevisions gives the revisions of a set by day in force: the site's own where it has any, else the organisation's.
+func (ru *rules) limitRevisions(site, org uint32, set string) []*forms.LimitSet {
+	key := limitID{site, set}
+	revs, ok := ru.limits[key]
+	if ok {
+		return revs
+	}
+	for _, log := range []uint32{site, org} {
+		if log != 0 {
+			revs = rulesUnder[forms.LimitSet](ru, rulePrefix(ruleLimit, log, set))
+		}
+		if len(revs) > 0 {
+			break
+		}
+	}
+	slices.SortFunc(revs, func(a, b *forms.LimitSet) int {
+		return cmp.Or(cmp.Compare(a.InForce, b.InForce), cmp.Compare(a.Revision, b.Revision))
+	})
+	ru.limits[key] = revs
+	return revs
+}
+
+// limitSet gives the revision in force on a day, nil where there was none.
+func (ru *rules) limitSet(site, org uint32, set string, on forms.Day) *forms.LimitSet {
+	var in *forms.LimitSet
+	for _, rev := range ru.limitRevisions(site, org, set) {
+		if rev.InForce <= on {
+			in = rev
+		}
+	}
+	return in
+}
+
+// form gives the revision an entry was made with, or else the one in force on its day, or the first there is.
+func (ru *rules) form(org uint32, id string, revision int, on forms.Day) *forms.Form {
+	revs, ok := ru.forms[id]
+	if !ok {
+		if org != 0 {
+			revs = rulesUnder[forms.Form](ru, rulePrefix(ruleForm, org, id))
+		}
+		ru.forms[id] = revs
+	}
+	var in *forms.Form
+	for _, f := range revs { // by revision
+		if f.Revision == revision {
+			return f
+		}
+		if in == nil || f.InForce <= on {
+			in = f
+		}
+	}
+	return in
+}
+
+// judged is an entry's verdict and the limit revision it was given under; set is "" where none was in force.
+type judged struct {
+	forms.Verdict
+	set string
+	rev int
+}
+
+// judge gives the verdict of an entry tested on a day. What nothing can be said of is incomplete: a form or a limit set
+// the book does not hold, or a rule of decision this program does not know. Not measured is never a pass.
+func (ru *rules) judge(site, org uint32, e *forms.Entry, on forms.Day) judged {
+	j := judged{Verdict: forms.Verdict{Result: forms.Incomplete}}
+	form := ru.form(org, e.Form, e.Given.FormRev, on)
+	if form == nil {
+		return j
+	}
+	j.set = e.Given.LimitSet
+	if j.set == "" {
+		j.set = forms.DefaultLimitSet(entryKind(e), e.Given.Delayed)
+	}
+	if j.set == "" {
+		j.set = form.LimitSet
+	}
+	set := ru.limitSet(site, org, j.set, on)
+	if set == nil {
+		j.set = ""
+		return j
+	}
+	j.rev = set.Revision
+	if v, err := forms.Judge(form, set, *e); err == nil {
+		j.Verdict = v
+	}
+	return j
+}
+
+func entryKind(e *forms.Entry) string {
+	if e.Given.Kind != "" {
+		return e.Given.Kind
+	}
+	kind, _, _ := strings.Cut(e.Form, "/")
+	return kind
+}
+
+func entryTask(e *forms.Entry) string {
+	_, task, _ := strings.Cut(e.Form, "/")
+	return task
+}

@@ -2,12 +2,8 @@ package store
 
 import (
 	"bytes"
-	"fmt"
 	"slices"
 
-	"go.etcd.io/bbolt"
-
-	"tripwell/forms"
 	"tripwell/store/record"
 )
 
@@ -149,13 +145,189 @@ func (f *fold) rework(site, n uint32, what byte) (cost int, err error) {
 	if err != nil {
 		return 0, err
 	}
+	cost = 1 + len(w.past) + int(w.older)
 	id, err := f.deviceID(site, n)
-	if err != nil {
-		return 0, err
+	if err != nil || id == (id16{}) {
+		return cost, err
 	}
 	_, reg, err := f.register(l, ofDevice, id)
 	if err != nil {
 		return 0, err
 	}
-	return 1 + len(w.past) + int(w.older), f.deviceChanged(l, n, reg)
+	return cost, f.deviceChanged(l, n, reg)
+}
+
+// change passes every entry of a device through fn and counts them anew where one came back different.
+func (f *fold) change(l *modelLog, n uint32, w *work, fn func(past) (past, error)) error {
+	differs := false
+	pass := func(list []past) (changed bool, err error) {
+		for i, old := range list {
+			p, err := fn(old)
+			if err != nil {
+				return changed, err
+			}
+			if p.day == old.day && p.task == old.task && p.result == old.result && slices.Equal(p.met, old.met) {
+				continue
+			}
+			f.tally(l.ord, old, -1)
+			f.tally(l.ord, p, 1)
+			list[i], changed, differs = p, true, true
+		}
+		return changed, nil
+	}
+	older, err := f.older(l.ord, n, w)
+	if err != nil {
+		return err
+	}
+	for _, chunk := range older {
+		changed, err := pass(chunk.past)
+		if err != nil {
+			return err
+		}
+		if changed {
+			p := packer{}
+			p.pasts(chunk.past)
+			f.on(bktHistory).put([]byte(chunk.key), p.b)
+		}
+	}
+	if _, err := pass(w.past); err != nil {
+		return err
+	}
+	if !differs {
+		return nil
+	}
+	w.dirty = true
+	all := w.past
+	for _, chunk := range older {
+		all = append(slices.Clone(chunk.past), all...)
+	}
+	if err := f.recount(w, all); err != nil {
+		return err
+	}
+	w.reckon(f.rules.schedule(l.ord, f.orgOrd(), w.kind))
+	return nil
+}
+
+// chunk is one row of m_hist.
+type chunk struct {
+	key  string
+	past []past
+}
+
+func (f *fold) older(site, n uint32, w *work) ([]chunk, error) {
+	if w.older == 0 {
+		return nil, nil
+	}
+	var out []chunk
+	for _, r := range f.on(bktHistory).list(workKey(site, n)) {
+		u := unpacker{b: r.value}
+		c := chunk{r.key, u.pasts()}
+		if u.bad {
+			return nil, errPacked
+		}
+		out = append(out, c)
+	}
+	return out, nil
+}
+
+// recount sets what the entries say together. An entry's clock and id are read from the book where two of one day need
+// them to be told apart, and for the marks that remain.
+func (f *fold) recount(w *work, all []past) error {
+	w.tasks = nil
+	type best struct{ last, conclusive past }
+	bests := map[string]*best{}
+	newer := func(a, b past) (bool, error) { // b is newer than a
+		if a.seq == 0 || a.day != b.day {
+			return a.seq == 0 || a.day < b.day, nil
+		}
+		ma, err := f.markOf(a)
+		if err != nil {
+			return false, err
+		}
+		mb, err := f.markOf(b)
+		return ma.before(mb), err
+	}
+	for _, p := range all {
+		if p.result == 0 {
+			continue
+		}
+		for _, met := range p.met {
+			if t := w.task(met); p.day > t.met {
+				t.met = p.day
+			}
+		}
+		b := bests[p.task]
+		if b == nil {
+			b = &best{}
+			bests[p.task] = b
+			w.task(p.task)
+		}
+		if yes, err := newer(b.last, p); err != nil {
+			return err
+		} else if yes {
+			b.last = p
+		}
+		if !conclusive(p.result) {
+			continue
+		}
+		if yes, err := newer(b.conclusive, p); err != nil {
+			return err
+		} else if yes {
+			b.conclusive = p
+		}
+	}
+	for task, b := range bests {
+		t := w.task(task)
+		var err error
+		if t.last, err = f.markOf(b.last); err != nil {
+			return err
+		}
+		if t.conclusive, err = f.markOf(b.conclusive); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// markOf reads what orders an entry from the book.
+func (f *fold) markOf(p past) (mark, error) {
+	if p.seq == 0 {
+		return mark{}, nil
+	}
+	r, _, _, err := readBook(f.tx, p.seq)
+	if err != nil {
+		return mark{}, err
+	}
+	return mark{day: p.day, clock: r.Clock, id: parseID(r.ID), result: p.result}, nil
+}
+
+// deviceID gives the id of a device that was spoken of in the register; zero where only entries name it.
+func (f *fold) deviceID(site, n uint32) (id16, error) {
+	if r := f.registers[registerID{site, ofDevice, n}]; r != nil {
+		return r.id, nil
+	}
+	v := f.on(bktRegister).get(registerKey(site, ofDevice, n))
+	if v == nil {
+		return id16{}, nil
+	}
+	t, err := unpackThing(v)
+	return t.id, err
+}
+
+// tally counts the results of a month by their codes.
+type tally [7]int64
+
+// tally counts an entry in (by = 1) or out (-1).
+func (f *fold) tally(site uint32, p past, by int64) {
+	if p.result == 0 {
+		return
+	}
+	y, m, _ := p.day.Time().Date()
+	key := string(tallyKey(site, int32(y*12+int(m)-1), p.task))
+	t := f.tallies[key]
+	if t == nil {
+		t = new(tally)
+		f.tallies[key] = t
+	}
+	t[p.result] += by
 }

@@ -63,7 +63,6 @@ func (f *fold) ruleSet(r *record.Record) error {
 	return f.queue(todo)
 }
 
-
 func parseChecked[T any](raw json.RawMessage, field string) (*T, error) {
 	t, err := parseRule[T](append(make([]byte, 24), raw...))
 	if err != nil {

@@ -23,7 +23,6 @@ type work struct {
 
 // workBefore is what the indexes hold for the row as stored.
 type workBefore struct {
-	live  bool
 	dates []forms.DueDate
 	fail  forms.Day
 }
@@ -70,6 +69,11 @@ const (
 	codeConditionalPass = 4
 	codePass            = 5
 )
+
+// conclusive results say that a device failed, or passed again: an incomplete or doubtful test does neither.
+func conclusive(result uint8) bool {
+	return result == codeFail || result == codePass || result == codeConditionalPass
+}
 
 // taskCodes are tasks as rows keep them; any other task is written out.
 var taskCodes = []string{"", "button", "instrument", "receptacle"}
@@ -118,11 +122,8 @@ func (w *work) count(p past, m mark) {
 	if t.last.before(m) {
 		t.last = m
 	}
-	switch p.result {
-	case codeFail, codePass, codeConditionalPass:
-		if t.conclusive.before(m) {
-			t.conclusive = m
-		}
+	if conclusive(p.result) && t.conclusive.before(m) {
+		t.conclusive = m
 	}
 	for _, met := range p.met {
 		if t := w.task(met); p.day > t.met {
@@ -301,7 +302,7 @@ func unpackWork(b []byte, entries bool) (*work, error) {
 	if entries {
 		w.past = u.pasts()
 	}
-	w.was = workBefore{live: w.live, dates: w.dates, fail: w.failing()}
+	w.was = workBefore{dates: w.dates, fail: w.failing()}
 	return w, u.err()
 }
 
@@ -319,4 +320,105 @@ func kindName(b []byte) string {
 		return s
 	}
 	return string(b)
+}
+
+// packWorks writes changed work rows and keeps the due index, its sums and the failed devices.
+func (f *fold) packWorks() {
+	for key, w := range f.works {
+		if !w.dirty {
+			continue
+		}
+		w.dirty = false
+		f.on(bktWork).put(workKey(key.site, key.n), w.pack())
+		for _, d := range w.was.dates {
+			if !hasDate(w.dates, d) {
+				f.on(bktDue).delete(dueKey(key.site, d.Due, key.n, d.Task))
+				f.sums[string(sumKey(key.site, d.Due, graceDays(d)))]--
+			}
+		}
+		for _, d := range w.dates {
+			if !hasDate(w.was.dates, d) {
+				f.on(bktDue).put(dueKey(key.site, d.Due, key.n, d.Task), []byte{})
+				f.sums[string(sumKey(key.site, d.Due, graceDays(d)))]++
+			}
+		}
+		fail := w.failing()
+		if fail != w.was.fail {
+			if w.was.fail != forms.NoDay {
+				f.on(bktFail).delete(failKey(key.site, w.was.fail, key.n))
+			}
+			if fail != forms.NoDay {
+				f.on(bktFail).put(failKey(key.site, fail, key.n), []byte{})
+			}
+		}
+		w.was = workBefore{dates: w.dates, fail: fail}
+	}
+}
+
+func hasDate(list []forms.DueDate, d forms.DueDate) bool {
+	for i := range list {
+		if list[i].Task == d.Task && list[i].Due == d.Due && list[i].Until == d.Until {
+			return true
+		}
+	}
+	return false
+}
+
+func graceDays(d forms.DueDate) uint16 { return uint16(min(max(0, d.Until-d.Due), 1<<16-1)) }
+
+// packSums adds the group's changes to the counts of dates and of results.
+func (f *fold) packSums() error {
+	for key, by := range f.sums {
+		if by == 0 {
+			continue
+		}
+		u := unpacker{b: f.on(bktSum).get([]byte(key))}
+		n := int64(0)
+		if len(u.b) > 0 {
+			n = int64(u.uint())
+		}
+		if n += by; n < 0 || u.bad {
+			return errPacked
+		}
+		p := packer{}
+		p.uint(uint64(n))
+		if n == 0 {
+			p.b = nil
+		}
+		f.on(bktSum).put([]byte(key), p.b)
+	}
+	for key, t := range f.tallies {
+		old, err := unpackTally(f.on(bktTally).get([]byte(key)))
+		if err != nil {
+			return err
+		}
+		empty := true
+		p := packer{}
+		for i := range t {
+			n := old[i] + t[i]
+			if n < 0 {
+				return errPacked
+			}
+			empty = empty && n == 0
+			p.uint(uint64(n))
+		}
+		if empty {
+			p.b = nil
+		}
+		f.on(bktTally).put([]byte(key), p.b)
+	}
+	clear(f.sums)
+	clear(f.tallies)
+	return nil
+}
+
+func unpackTally(row []byte) (t tally, err error) {
+	if row == nil {
+		return t, nil
+	}
+	u := unpacker{b: row}
+	for i := range t {
+		t[i] = int64(u.uint())
+	}
+	return t, u.err()
 }

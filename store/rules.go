@@ -206,3 +206,47 @@ func entryTask(e *forms.Entry) string {
 	_, task, _ := strings.Cut(e.Form, "/")
 	return task
 }
+
+// Forms gives the newest revision of each form, by id.
+func (v *View) Forms() ([]*forms.Form, error) {
+	return newest(rulesUnder[forms.Form](v.rules(), rulePrefix(ruleForm, v.orgLog(), "")), func(f *forms.Form) string { return f.ID }), nil
+}
+
+// LimitSets gives every revision of the organisation's limit sets, by id then revision.
+func (v *View) LimitSets() ([]*forms.LimitSet, error) {
+	return rulesUnder[forms.LimitSet](v.rules(), rulePrefix(ruleLimit, v.orgLog(), "")), nil
+}
+
+// SiteLimitSets gives every revision of the limit sets a site has of its own; they stand before the organisation's.
+func (v *View) SiteLimitSets(site string) ([]*forms.LimitSet, error) {
+	sv, err := v.siteNamed(site)
+	if err != nil {
+		return nil, err
+	}
+	return rulesUnder[forms.LimitSet](v.rules(), rulePrefix(ruleLimit, sv.ord, "")), nil
+}
+
+// Plans gives the newest revision of each of the organisation's plans, by id.
+func (v *View) Plans() ([]*forms.Plan, error) {
+	return newest(v.rules().plansOf(v.orgLog()), func(p *forms.Plan) string { return p.ID }), nil
+}
+
+// SitePlans gives the newest revision of each plan a site has of its own.
+func (v *View) SitePlans(site string) ([]*forms.Plan, error) {
+	sv, err := v.siteNamed(site)
+	if err != nil {
+		return nil, err
+	}
+	return newest(v.rules().plansOf(sv.ord), func(p *forms.Plan) string { return p.ID }), nil
+}
+
+// newest keeps the last of each id of a list in the order of (id, revision).
+func newest[T any](list []*T, id func(*T) string) []*T {
+	out := []*T{}
+	for i, t := range list {
+		if i+1 == len(list) || id(list[i+1]) != id(t) {
+			out = append(out, t)
+		}
+	}
+	return out
+}

@@ -1,10 +1,162 @@
 package store
 
-import "go.etcd.io/bbolt"
+import (
+	"bytes"
+	"time"
 
-// View reads the store as it stood at one moment, within one scope.
+	"go.etcd.io/bbolt"
+
+	"tripwell/forms"
+	"tripwell/store/record"
+)
+
+// View reads the store as it stood at one moment, within one scope. It belongs to one goroutine and remembers what it
+// has looked up.
 type View struct {
 	tx    *bbolt.Tx
 	s     *Store
 	scope Scope
+
+	ruled  *rules
+	org    uint32
+	opened map[id16]*siteView
+}
+
+var errNoSite = &Error{Code: "not_found", Field: "site", Text: "There is no such site here, or it is not yours to see. Choose one from the list of sites."}
+
+// siteView is one site while it is read.
+type siteView struct {
+	Site
+	ord   uint32
+	id    id16
+	zone  *time.Location
+	today forms.Day
+
+	places   map[id16]*Place
+	circuits map[id16]circuit
+	panels   map[id16]string
+	tags     map[id16]string // by subject; the binding made last
+	devices  map[id16]*deviceThing
+	whole    bool // all places, circuits, panels and tags are in the maps
+}
+
+// circuit is what a list says of one.
+type circuit struct{ panel, numbers, supply string }
+
+// open is the one place that holds a site against the scope: a site outside it is not found.
+func (v *View) open(site string) (*siteView, error) {
+	id := parseID(site)
+	if id == (id16{}) || !v.scope.May(site) {
+		return nil, errNoSite
+	}
+	if sv := v.opened[id]; sv != nil {
+		return sv, nil
+	}
+	row := v.tx.Bucket(bktSiteLog).Get(id[:])
+	if row == nil {
+		return nil, errNoSite
+	}
+	u := unpacker{b: row}
+	ord := uint32(u.uint())
+	sv := &siteView{ord: ord, id: id, Site: Site{ID: site}, zone: time.UTC, places: map[id16]*Place{},
+		circuits: map[id16]circuit{}, panels: map[id16]string{}, tags: map[id16]string{}, devices: map[id16]*deviceThing{}}
+	t, ok, err := v.thing(sv, ofSite, id)
+	if err != nil {
+		return nil, err
+	}
+	if ok {
+		sv.Site = siteOf(site, &t)
+		sv.zone = location(sv.Zone)
+	}
+	sv.today = forms.DayOf(v.s.Now().In(sv.zone))
+	if v.opened == nil {
+		v.opened = map[id16]*siteView{}
+	}
+	v.opened[id] = sv
+	return sv, nil
+}
+
+// openOrd opens the site of a number; ok is false for the organisation's log and for what the scope leaves out.
+func (v *View) openOrd(ord uint32) (sv *siteView, ok bool, err error) {
+	row := v.tx.Bucket(bktSite).Get(put32(nil, ord))
+	if len(row) != 16 {
+		return nil, false, errPacked
+	}
+	site := id16(row).String()
+	if site == "" || !v.scope.May(site) {
+		return nil, false, nil
+	}
+	sv, err = v.open(site)
+	return sv, err == nil, err
+}
+
+// thing reads the winners of a thing's fields; they point into the file. ok is false where nothing was said of it.
+func (v *View) thing(sv *siteView, typ byte, id id16) (t thing, ok bool, err error) {
+	n, ok := v.number(sv, typ, id)
+	if !ok {
+		return thing{}, false, nil
+	}
+	row := v.tx.Bucket(bktRegister).Get(registerKey(sv.ord, typ, n))
+	if row == nil {
+		return thing{}, false, nil
+	}
+	t, err = unpackThing(row)
+	return t, err == nil, err
+}
+
+func (v *View) number(sv *siteView, typ byte, id id16) (n uint32, ok bool) {
+	row := v.tx.Bucket(bktThing).Get(thingKey(id, sv.ord, typ))
+	if len(row) != 4 {
+		return 0, false
+	}
+	return read32(row), true
+}
+
+// rules gives the forms, limit sets and plans as this view sees them.
+func (v *View) rules() *rules {
+	if v.ruled == nil {
+		o := overlay{bucket: v.tx.Bucket(bktRule)}
+		v.ruled = newRules(o.list)
+		if row := v.tx.Bucket(bktSiteLog).Get(make([]byte, 16)); row != nil {
+			u := unpacker{b: row}
+			v.org = uint32(u.uint())
+		}
+	}
+	return v.ruled
+}
+
+// orgLog gives the number of the organisation's log, 0 while nothing was said in it.
+func (v *View) orgLog() uint32 {
+	v.rules()
+	return v.org
+}
+
+// seqOf finds a record's place in the book.
+func (v *View) seqOf(id id16) (seq uint64, ok bool) {
+	row := v.tx.Bucket(bktID).Get(id[:])
+	return readKey64(row), row != nil
+}
+
+// recordAt reads a record by id where the scope allows its log.
+func (v *View) recordAt(id id16) (*record.Record, record.Stamp, kept, uint64, error) {
+	seq, ok := v.seqOf(id)
+	if !ok {
+		return nil, record.Stamp{}, kept{}, 0, errNoEntry
+	}
+	r, st, k, err := readBook(v.tx, seq)
+	if err == nil && !v.scope.mayRead(r.Log) {
+		err = errNoEntry
+	}
+	return r, st, k, seq, err
+}
+
+// scan reads the rows under a prefix; keys and values point into the file.
+func (v *View) scan(bucket, prefix []byte, fn func(key, row []byte) error) error {
+	c := v.tx.Bucket(bucket).Cursor()
+	for k, row := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, row = c.Next() {
+		if err := fn(k, row); err != nil {
+			return err
+		}
+	}
+	return nil
 }

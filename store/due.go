@@ -1,0 +1,156 @@
+package store
+
+import (
+	"bytes"
+	"container/heap"
+	"iter"
+
+	"go.etcd.io/bbolt"
+
+	"tripwell/forms"
+)
+
+// Due is one date of one device. State is decided for the day asked: upcoming | due | in-grace | overdue | never-tested.
+type Due struct {
+	Task  string
+	Due   forms.Day
+	Last  forms.Day // NoDay: never
+	State string
+	Plan  string
+}
+
+// DueRow is a due date with the device it belongs to, for lists.
+type DueRow struct {
+	Device DeviceRow
+	Due
+}
+
+// DueAsk filters a due list. Until NoDay = all dates.
+type DueAsk struct {
+	On    forms.Day
+	Until forms.Day // last due day that is listed
+	Site  string    // id or code; "" = all of the scope
+	Task  string
+	Limit int // 0 = all
+}
+
+// Due lists dates in their order, over one site or all of the scope; within a day by site and device. It reads the due
+// index from its start and stops with the caller.
+func (v *View) Due(ask DueAsk) iter.Seq2[DueRow, error] {
+	return func(yield func(DueRow, error) bool) {
+		if err := v.due(ask, yield); err != nil {
+			yield(DueRow{}, err)
+		}
+	}
+}
+
+func (v *View) due(ask DueAsk, yield func(DueRow, error) bool) error {
+	heads, err := v.dueHeads(ask.Site)
+	if err != nil {
+		return err
+	}
+	listed := 0
+	for heads.Len() > 0 {
+		h := heads[0]
+		day := readDay(h.key[4:])
+		if ask.Until != forms.NoDay && day > ask.Until {
+			return nil
+		}
+		if task := string(h.key[12:]); ask.Task == "" || task == ask.Task {
+			device, ok, err := v.rowAt(h.site, read32(h.key[8:]), ask.On)
+			if err != nil {
+				return err
+			}
+			if due, found := device.due(task); ok && found {
+				if !yield(DueRow{device, due}, nil) {
+					return nil
+				}
+				if listed++; listed == ask.Limit {
+					return nil
+				}
+			}
+		}
+		if h.next() {
+			heap.Fix(&heads, 0)
+		} else {
+			heap.Pop(&heads)
+		}
+	}
+	return nil
+}
+
+func (d *DeviceRow) due(task string) (Due, bool) {
+	for _, due := range d.Due {
+		if due.Task == task {
+			return due, true
+		}
+	}
+	return Due{}, false
+}
+
+// dueHead is the next date of one site.
+type dueHead struct {
+	site *siteView
+	c    *bbolt.Cursor
+	key  []byte
+}
+
+func (h *dueHead) next() bool {
+	h.key, _ = h.c.Next()
+	return len(h.key) > 12 && read32(h.key) == h.site.ord
+}
+
+// dueHeap puts the sites' next dates in order: day, then site and device.
+type dueHeap []*dueHead
+
+func (d dueHeap) Len() int { return len(d) }
+func (d dueHeap) Less(i, j int) bool {
+	a, b := d[i], d[j]
+	if c := bytes.Compare(a.key[4:8], b.key[4:8]); c != 0 {
+		return c < 0
+	}
+	if a.site.ID != b.site.ID {
+		return a.site.ID < b.site.ID
+	}
+	return bytes.Compare(a.key[8:], b.key[8:]) < 0
+}
+func (d dueHeap) Swap(i, j int) { d[i], d[j] = d[j], d[i] }
+func (d *dueHeap) Push(x any)   { *d = append(*d, x.(*dueHead)) }
+func (d *dueHeap) Pop() any {
+	old := *d
+	last := old[len(old)-1]
+	*d = old[:len(old)-1]
+	return last
+}
+
+func (v *View) dueHeads(site string) (dueHeap, error) {
+	var sites []*siteView
+	if site != "" {
+		sv, err := v.siteNamed(site)
+		if err != nil {
+			return nil, err
+		}
+		sites = append(sites, sv)
+	} else {
+		err := v.scan(bktSite, nil, func(k, _ []byte) error {
+			sv, ok, err := v.openOrd(read32(k))
+			if ok && sv.Code != "" {
+				sites = append(sites, sv)
+			}
+			return err
+		})
+		if err != nil {
+			return nil, err
+		}
+	}
+	var heads dueHeap
+	for _, sv := range sites {
+		h := &dueHead{site: sv, c: v.tx.Bucket(bktDue).Cursor()}
+		prefix := put32(nil, sv.ord)
+		if h.key, _ = h.c.Seek(prefix); len(h.key) > 12 && bytes.HasPrefix(h.key, prefix) {
+			heads = append(heads, h)
+		}
+	}
+	heap.Init(&heads)
+	return heads, nil
+}

@@ -1,0 +1,163 @@
+package store
+
+import (
+	"cmp"
+	"fmt"
+	"slices"
+	"time"
+
+	"github.com/go-json-experiment/json"
+	"go.etcd.io/bbolt"
+
+	"tripwell/forms"
+	"tripwell/store/record"
+)
+
+// entryBody is the body of entry.made and entry.imported.
+type entryBody struct {
+	forms.Entry
+	Shown   *Shown     `json:"shown"`
+	Source  string     `json:"source"`
+	ReadBy  string     `json:"read_by"`
+	TypedBy string     `json:"typed_by"`
+	Note    string     `json:"note"`
+	Day     *forms.Day `json:"day"`
+	Result  string     `json:"result"`
+}
+
+// readEntry reads an entry; its fault names what cannot be understood.
+func readEntry(r *record.Record) (*entryBody, error) {
+	b := new(entryBody)
+	if err := json.Unmarshal(r.Body, b); err != nil {
+		return nil, badBody("", "The entry cannot be read: %v.", err)
+	}
+	if r.Kind == "entry.imported" && b.Readings == nil && resultCode(b.Result) == 0 {
+		return nil, badBody("result", "The result %q is none: an imported entry has one of %v.", b.Result, forms.Results())
+	}
+	return b, nil
+}
+
+// correctionBody is the body of entry.corrected; withdrawals and seals have the reason alone.
+type correctionBody struct {
+	Readings map[string]forms.Reading `json:"readings"`
+	Series   []forms.SeriesReading    `json:"series"`
+	Given    *forms.Given             `json:"given"`
+	Reason   string                   `json:"reason"`
+}
+
+func readCorrection(r *record.Record) (*correctionBody, error) {
+	b := new(correctionBody)
+	if err := json.Unmarshal(r.Body, b); err != nil {
+		return nil, badBody("", "The correction cannot be read: %v.", err)
+	}
+	return b, nil
+}
+
+// saidRecord is a later record about an entry.
+type saidRecord struct {
+	*record.Record
+	stamp record.Stamp
+	body  *correctionBody
+}
+
+// readSaid reads a row of m_said. Of the record that is being folded the book has nothing yet: current stands in for it.
+func readSaid(tx *bbolt.Tx, row []byte, current *record.Record) ([]saidRecord, error) {
+	var list []saidRecord
+	for u := (unpacker{b: row}); len(u.b) > 0; {
+		seq := u.uint()
+		if u.bad {
+			return nil, errPacked
+		}
+		s := saidRecord{Record: current}
+		if tx.Bucket(bktRec).Get(key64(seq)) != nil {
+			var err error
+			if s.Record, s.stamp, _, err = readBook(tx, seq); err != nil {
+				return nil, err
+			}
+		}
+		if s.Record == nil {
+			return nil, errPacked
+		}
+		var err error
+		if s.body, err = readCorrection(s.Record); err != nil {
+			return nil, err
+		}
+		list = append(list, s)
+	}
+	slices.SortFunc(list, func(a, b saidRecord) int { return cmp.Or(cmp.Compare(a.Clock, b.Clock), cmp.Compare(a.ID, b.ID)) })
+	return list, nil
+}
+
+// readBook reads one record of the book by its place. Nothing of it may outlive the transaction.
+func readBook(tx *bbolt.Tx, seq uint64) (*record.Record, record.Stamp, kept, error) {
+	k, err := readRec(tx.Bucket(bktRec).Get(key64(seq)))
+	if err != nil {
+		return nil, record.Stamp{}, k, fmt.Errorf("record at %d: %w", seq, err)
+	}
+	r, fault := record.Parse(k.raw)
+	if fault != nil {
+		return nil, record.Stamp{}, k, fmt.Errorf("record at %d: %w", seq, fault)
+	}
+	st, err := record.ParseStamp(k.stamp)
+	if err != nil {
+		return nil, st, k, fmt.Errorf("record at %d: %w", seq, err)
+	}
+	return r, st, k, nil
+}
+
+// outcome is what an entry comes to after everything said of it.
+type outcome struct {
+	day       forms.Day
+	task      string
+	entry     forms.Entry
+	judged    judged
+	withdrawn *saidRecord // the first of several by (clock, id)
+	sealed    bool
+}
+
+// outcome weighs an entry: the correction with the largest (clock, id) gives the readings, the last that states what was
+// given gives that; a withdrawal ends it; a sealed entry never counts as passed. The order of arrival has no say.
+func (ru *rules) outcome(site, org uint32, zone *time.Location, r *record.Record, st record.Stamp, body *entryBody, said []saidRecord) outcome {
+	o := outcome{day: forms.DayOf(happened(r, st).In(zone)), task: entryTask(&body.Entry), entry: body.Entry}
+	if body.Day != nil && *body.Day != forms.NoDay && *body.Day < o.day && r.Kind == "entry.imported" {
+		o.day = *body.Day
+	}
+	corrected := false
+	for i := range said {
+		switch s := &said[i]; s.Kind {
+		case "entry.corrected":
+			o.entry.Readings, o.entry.Series, corrected = s.body.Readings, s.body.Series, true
+			if s.body.Given != nil {
+				o.entry.Given = *s.body.Given
+			}
+		case "entry.withdrawn":
+			if o.withdrawn == nil {
+				o.withdrawn = s
+			}
+		case "record.sealed":
+			o.sealed = true
+		}
+	}
+	if r.Kind == "entry.imported" && body.Readings == nil && !corrected {
+		o.judged.Result = body.Result
+	} else {
+		o.judged = ru.judge(site, org, &o.entry, o.day)
+	}
+	if o.sealed {
+		o.judged.Result = forms.Incomplete
+	}
+	return o
+}
+
+// past is the outcome as the history keeps it.
+func (o *outcome) past(seq uint64) past {
+	p := past{seq: seq, day: o.day, task: o.task}
+	if o.withdrawn == nil {
+		p.result = resultCode(o.judged.Result)
+		p.met = forms.Meets(o.task, o.judged.Result, o.entry.Readings)
+		if one := metOne[o.task]; len(p.met) == 1 && one != nil {
+			p.met = one
+		}
+	}
+	return p
+}

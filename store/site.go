@@ -1,0 +1,238 @@
+package store
+
+import (
+	"bytes"
+	"cmp"
+	"encoding/binary"
+	"encoding/json"
+	"slices"
+	"strings"
+	"time"
+
+	"tripwell/forms"
+	"tripwell/store/record"
+)
+
+// Site is a site with its merged fields.
+type Site struct {
+	ID, Code, Name, Zone, Address string
+	Standard                      string // NEC | IEC
+	Conflicts                     []Conflict
+}
+
+// Location loads the site's time zone, UTC where it is unknown.
+func (s Site) Location() *time.Location { return location(s.Zone) }
+
+// Conflict is a value that lost to a concurrent one: neither author knew of the other's.
+type Conflict struct {
+	Field, Value, Winner string
+	By                   string
+	At                   time.Time
+	Record               string
+}
+
+// SiteSums counts one site on one day.
+type SiteSums struct {
+	Site       Site
+	Devices    int       // not retired
+	Overdue    int       // dates, not devices
+	DueSoon    int       // dates within the 31 days after the day asked for, the day included
+	Failed     int       // devices of which some task failed and has not passed since
+	NextDay    forms.Day // the earliest date of all, also where it has passed; NoDay for none
+	NextTask   string
+	LastFailed []DeviceRow // at most 5, newest first
+}
+
+func siteOf(id string, t *thing) Site {
+	return Site{ID: id, Code: t.text("code"), Name: t.text("name"), Zone: t.text("zone"), Address: t.text("address"), Standard: t.text("standard")}
+}
+
+// Sites gives the registered sites of the scope, by code.
+func (v *View) Sites() ([]Site, error) {
+	var out []Site
+	c := v.tx.Bucket(bktSite).Cursor()
+	for k, _ := c.First(); k != nil; k, _ = c.Next() {
+		sv, ok, err := v.openOrd(read32(k))
+		if err != nil {
+			return nil, err
+		}
+		if ok && sv.Code != "" {
+			out = append(out, sv.Site)
+		}
+	}
+	slices.SortFunc(out, func(a, b Site) int { return cmp.Or(cmp.Compare(a.Code, b.Code), cmp.Compare(a.ID, b.ID)) })
+	return out, nil
+}
+
+// Site finds a site by its id or its code (in any letter case), with the values that lost to concurrent ones. Of two
+// sites that took the same code, the one with the smaller id is found.
+func (v *View) Site(idOrCode string) (Site, error) {
+	sv, err := v.siteNamed(idOrCode)
+	if err != nil {
+		return Site{}, err
+	}
+	s := sv.Site
+	s.Conflicts, err = v.conflicts(sv, ofSite, sv.id)
+	return s, err
+}
+
+func (v *View) siteNamed(idOrCode string) (*siteView, error) {
+	if record.IsID(idOrCode) {
+		sv, err := v.open(idOrCode)
+		if err == nil && sv.Code == "" {
+			err = errNoSite
+		}
+		return sv, err
+	}
+	code := siteCode(idOrCode)
+	if code == "" {
+		return nil, errNoSite
+	}
+	var found *siteView
+	prefix := append([]byte(code), 0)
+	c := v.tx.Bucket(bktCode).Cursor()
+	for k, _ := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, _ = c.Next() {
+		sv, ok, err := v.openOrd(read32(k[len(prefix):]))
+		if err != nil {
+			return nil, err
+		}
+		if ok && (found == nil || sv.ID < found.ID) {
+			found = sv
+		}
+	}
+	if found == nil {
+		return nil, errNoSite
+	}
+	return found, nil
+}
+
+// conflicts lists the values of a thing that lost to a concurrent one, by field.
+func (v *View) conflicts(sv *siteView, typ byte, id id16) ([]Conflict, error) {
+	n, ok := v.number(sv, typ, id)
+	if !ok {
+		return nil, nil
+	}
+	row := v.tx.Bucket(bktRegister).Get(registerKey(sv.ord, typ, n))
+	if row == nil {
+		return nil, nil
+	}
+	reg, err := unpackRegister(row)
+	if err != nil {
+		return nil, err
+	}
+	var out []Conflict
+	for _, f := range reg.fields {
+		if strings.HasPrefix(f.name, "#") {
+			continue
+		}
+		for _, lost := range record.Losers(f.said) {
+			r, _, _, _, err := v.recordAt(parseID(lost.ID))
+			if err != nil {
+				return nil, err
+			}
+			out = append(out, Conflict{Field: f.name, Value: plainText(lost.Value), Winner: plainText(f.said[0].Value), By: r.By, At: r.At, Record: lost.ID})
+		}
+	}
+	return out, nil
+}
+
+// plainText gives a field's value as people read it; "" where it was cleared.
+func plainText(v json.RawMessage) string {
+	if v = present(v); len(v) == 0 {
+		return ""
+	}
+	if v[0] == '"' {
+		return jsonText(v)
+	}
+	var list []string
+	if v[0] == '[' && json.Unmarshal(v, &list) == nil {
+		return strings.Join(list, ", ")
+	}
+	return string(v)
+}
+
+// SiteSums counts a site as it stands on a day.
+func (v *View) SiteSums(site string, on forms.Day) (SiteSums, error) {
+	sv, err := v.siteNamed(site)
+	if err != nil {
+		return SiteSums{}, err
+	}
+	sums := SiteSums{Site: sv.Site, NextDay: forms.NoDay}
+	u := unpacker{b: v.tx.Bucket(bktSiteLog).Get(sv.id[:])}
+	u.uint()
+	u.uint()
+	sums.Devices = int(u.uint())
+	prefix := put32(nil, sv.ord)
+	c := v.tx.Bucket(bktSum).Cursor()
+	for k, n := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, n = c.Next() {
+		day, grace := readDay(k[4:]), forms.Day(binary.BigEndian.Uint16(k[8:]))
+		if day > on+31 {
+			break
+		}
+		u := unpacker{b: n}
+		switch count := int(u.uint()); {
+		case day+grace < on:
+			sums.Overdue += count
+		case day >= on:
+			sums.DueSoon += count
+		}
+	}
+	if k, _ := v.tx.Bucket(bktDue).Cursor().Seek(prefix); bytes.HasPrefix(k, prefix) {
+		sums.NextDay, sums.NextTask = readDay(k[4:]), string(k[12:])
+	}
+	err = v.lastFailed(sv, on, &sums)
+	return sums, err
+}
+
+func (v *View) lastFailed(sv *siteView, on forms.Day, sums *SiteSums) error {
+	prefix := put32(nil, sv.ord)
+	var keys [][]byte
+	c := v.tx.Bucket(bktFail).Cursor()
+	for k, _ := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, _ = c.Next() {
+		keys = append(keys, k)
+	}
+	sums.Failed = len(keys)
+	for i := len(keys) - 1; i >= 0 && len(sums.LastFailed) < 5; i-- {
+		row, ok, err := v.rowAt(sv, read32(keys[i][8:]), on)
+		if err != nil {
+			return err
+		}
+		if ok {
+			sums.LastFailed = append(sums.LastFailed, row)
+		}
+	}
+	return nil
+}
+
+// MonthTally counts the results of one task in one month of test days.
+type MonthTally struct {
+	Year, Month int
+	Task        string
+	Results     map[string]int // by result; withdrawn entries are not counted
+}
+
+// Tallies gives a site's results by month and task, oldest first.
+func (v *View) Tallies(site string) ([]MonthTally, error) {
+	sv, err := v.siteNamed(site)
+	if err != nil {
+		return nil, err
+	}
+	var out []MonthTally
+	prefix := put32(nil, sv.ord)
+	c := v.tx.Bucket(bktTally).Cursor()
+	for k, row := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, row = c.Next() {
+		t, err := unpackTally(row)
+		if err != nil {
+			return nil, err
+		}
+		month := int(read32(k[4:]))
+		m := MonthTally{Year: month / 12, Month: month%12 + 1, Task: string(k[8:]), Results: map[string]int{}}
+		for code, n := range t {
+			if n > 0 {
+				m.Results[resultCodes[code]] = int(n)
+			}
+		}
+		out = append(out, m)
+	}
+	return out, nil
+}

@@ -1,0 +1,263 @@
+package store
+
+import (
+	"encoding/json"
+	"strings"
+	"time"
+
+	"tripwell/forms"
+)
+
+// Snapshot is what a phone takes along of one site, read in one transaction with the cursor that continues it.
+type Snapshot struct {
+	Site        SnapshotSite      `json:"site"`
+	Cursor      string            `json:"cursor"`
+	AsOf        time.Time         `json:"as_of"`
+	Today       forms.Day         `json:"today"`
+	Places      []SnapshotPlace   `json:"places"`  // walking order
+	Devices     []SnapshotDevice  `json:"devices"` // walking order; without those retired
+	Forms       []*forms.Form     `json:"forms"`
+	LimitSets   []*forms.LimitSet `json:"limit_sets"` // revision in force today of each; the site's own before the organisation's
+	Instruments []Instrument      `json:"instruments"`
+}
+
+// SnapshotSite is the site itself.
+type SnapshotSite struct {
+	ID       string `json:"id"`
+	Code     string `json:"code"`
+	Name     string `json:"name"`
+	Zone     string `json:"zone"`
+	Standard string `json:"standard"`
+}
+
+// SnapshotPlace is where fixed devices sit.
+type SnapshotPlace struct {
+	ID           string `json:"id"`
+	Building     string `json:"building,omitempty"`
+	Floor        string `json:"floor,omitempty"`
+	Room         string `json:"room,omitempty"`
+	Name         string `json:"name"`
+	CriticalLoad string `json:"critical_load,omitempty"`
+}
+
+// SnapshotDevice is a device with what a phone needs to ask, judge and show. Fields holds the merged register fields as
+// they were written (json.RawMessage).
+type SnapshotDevice struct {
+	ID      string         `json:"id"`
+	Kind    string         `json:"kind"`
+	Place   string         `json:"place,omitempty"`
+	Tag     string         `json:"tag,omitempty"`
+	Panel   string         `json:"panel,omitempty"`
+	Circuit string         `json:"circuit,omitempty"`
+	Supply  string         `json:"supply,omitempty"`
+	Fields  map[string]any `json:"fields"`
+	// Last by task: newest test, with its numbers for the dashed mark on the scale.
+	Last map[string]SnapshotLast `json:"last,omitempty"`
+	Due  []SnapshotDue           `json:"due,omitempty"`
+}
+
+// SnapshotLast is the newest test of a task. Readings holds its measured values in their codes' own units.
+type SnapshotLast struct {
+	Entry    string             `json:"entry"`
+	Day      forms.Day          `json:"day"`
+	Result   string             `json:"result"`
+	Readings map[string]float64 `json:"readings,omitempty"`
+}
+
+// SnapshotDue is one date.
+type SnapshotDue struct {
+	Task  string    `json:"task"`
+	Due   forms.Day `json:"due"`
+	Last  forms.Day `json:"last,omitempty"`
+	State string    `json:"state"`
+}
+
+// Snapshot reads what a phone takes along of a site; states are those of the day on.
+func (v *View) Snapshot(site string, on forms.Day) (Snapshot, error) {
+	sv, err := v.siteNamed(site)
+	if err != nil {
+		return Snapshot{}, err
+	}
+	s := Snapshot{
+		Site: SnapshotSite{sv.ID, sv.Code, sv.Name, sv.Zone, sv.Standard},
+		AsOf: v.s.Now(), Today: on, Places: []SnapshotPlace{}, Devices: []SnapshotDevice{},
+	}
+	if s.Cursor, err = v.Cursor(sv.ID); err != nil {
+		return s, err
+	}
+	places, err := v.Places(sv.ID)
+	if err != nil {
+		return s, err
+	}
+	for _, p := range places {
+		s.Places = append(s.Places, SnapshotPlace{p.ID, p.Building, p.Floor, p.Room, p.Name, p.CriticalLoad})
+	}
+	if s.Devices, err = v.snapshotDevices(sv, on); err != nil {
+		return s, err
+	}
+	if s.Forms, err = v.formsOn(on); err != nil {
+		return s, err
+	}
+	s.LimitSets = v.limitSetsOn(sv, on)
+	all, err := v.Instruments()
+	if err != nil {
+		return s, err
+	}
+	s.Instruments = make([]Instrument, 0, len(all))
+	for _, i := range all {
+		if !i.Retired {
+			s.Instruments = append(s.Instruments, i)
+		}
+	}
+	return s, nil
+}
+
+func (v *View) snapshotDevices(sv *siteView, on forms.Day) ([]SnapshotDevice, error) {
+	if err := v.loadSite(sv); err != nil {
+		return nil, err
+	}
+	type placed struct {
+		SnapshotDevice
+		at Place
+	}
+	var list []placed
+	err := v.eachDevice(sv, func(n uint32, t *thing, w *work) error {
+		if t.value("#retired") != nil {
+			return nil
+		}
+		d, at, err := v.snapshotDevice(sv, t, w, on)
+		list = append(list, placed{d, at})
+		return err
+	})
+	if err != nil {
+		return nil, err
+	}
+	sortWalking(list, func(p placed) (Place, string) { return p.at, p.ID })
+	out := make([]SnapshotDevice, len(list))
+	for i := range list {
+		out[i] = list[i].SnapshotDevice
+	}
+	return out, nil
+}
+
+func (v *View) snapshotDevice(sv *siteView, t *thing, w *work, on forms.Day) (SnapshotDevice, Place, error) {
+	d := SnapshotDevice{ID: t.id.String(), Kind: t.text("kind"), Fields: make(map[string]any, len(t.fields))}
+	for i := range t.fields {
+		if f := &t.fields[i]; !strings.HasPrefix(f.name, "#") && present(f.value) != nil {
+			d.Fields[f.name] = json.RawMessage(append([]byte(nil), f.value...))
+		}
+	}
+	placeID, err := v.placeIDOf(sv, t)
+	if err != nil {
+		return d, Place{}, err
+	}
+	var at Place
+	p, err := v.place(sv, placeID)
+	if err != nil {
+		return d, at, err
+	}
+	if p != nil {
+		at, d.Place = *p, p.ID
+	}
+	if d.Tag, err = v.deviceTag(sv, t.id, placeID); err != nil {
+		return d, at, err
+	}
+	c, err := v.circuit(sv, parseID(t.text("circuit")))
+	if err != nil {
+		return d, at, err
+	}
+	d.Panel, d.Circuit, d.Supply = c.panel, c.numbers, c.supply
+	if w == nil {
+		return d, at, nil
+	}
+	for _, s := range w.tasks {
+		if s.last.result == 0 {
+			continue
+		}
+		last := SnapshotLast{Entry: s.last.id.String(), Day: s.last.day, Result: resultCodes[s.last.result]}
+		if last.Readings, err = v.numbersOf(sv, s.last.id); err != nil {
+			return d, at, err
+		}
+		if d.Last == nil {
+			d.Last = make(map[string]SnapshotLast, len(w.tasks))
+		}
+		d.Last[s.task] = last
+	}
+	d.Due = make([]SnapshotDue, 0, len(w.dates))
+	for _, date := range w.dates {
+		d.Due = append(d.Due, SnapshotDue{date.Task, date.Due, date.Last, date.State(on)})
+	}
+	return d, at, nil
+}
+
+// numbersOf gives the measured values of an entry after corrections, nil where it has none.
+func (v *View) numbersOf(sv *siteView, id id16) (map[string]float64, error) {
+	seq, ok := v.seqOf(id)
+	if !ok {
+		return nil, errPacked
+	}
+	r, _, _, err := readBook(v.tx, seq)
+	if err != nil {
+		return nil, err
+	}
+	body, err := readEntry(r)
+	if err != nil {
+		return nil, err
+	}
+	readings := body.Readings
+	if row := v.tx.Bucket(bktSaid).Get(saidKey(sv.ord, id)); row != nil {
+		said, err := readSaid(v.tx, row, nil)
+		if err != nil {
+			return nil, err
+		}
+		for _, s := range said {
+			if s.Kind == "entry.corrected" {
+				readings = s.body.Readings
+			}
+		}
+	}
+	var out map[string]float64
+	for code, reading := range readings {
+		if f, ok := reading.Float(); ok {
+			if out == nil {
+				out = make(map[string]float64, len(readings))
+			}
+			out[code] = f
+		}
+	}
+	return out, nil
+}
+
+// formsOn gives the revision of each form in force on a day.
+func (v *View) formsOn(on forms.Day) ([]*forms.Form, error) {
+	all, err := v.Forms()
+	if err != nil {
+		return nil, err
+	}
+	out := make([]*forms.Form, 0, len(all))
+	for _, f := range all {
+		out = append(out, v.rules().form(v.orgLog(), f.ID, 0, on))
+	}
+	return out, nil
+}
+
+// limitSetsOn gives the revision of each limit set in force at a site on a day, by id.
+func (v *View) limitSetsOn(sv *siteView, on forms.Day) []*forms.LimitSet {
+	out := []*forms.LimitSet{}
+	ids := map[string]bool{}
+	for _, log := range []uint32{v.orgLog(), sv.ord} {
+		if log == 0 {
+			continue
+		}
+		for _, set := range rulesUnder[forms.LimitSet](v.rules(), rulePrefix(ruleLimit, log, "")) {
+			if ids[set.ID] {
+				continue
+			}
+			ids[set.ID] = true
+			if in := v.rules().limitSet(sv.ord, v.orgLog(), set.ID, on); in != nil {
+				out = append(out, in)
+			}
+		}
+	}
+	return out
+}

@@ -330,7 +330,7 @@ func (v *View) placeDevices(sv *siteView, place id16) ([]*deviceThing, error) {
 	var todo []id16
 	prefix := placeKey(sv.ord, place, 0)[:20]
 	c := v.tx.Bucket(bktPlace).Cursor()
-	for k, _ := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, _ = c.Next() {
+	for k, _ := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, _ = c.Next() {
 		t, err := unpackThing(v.tx.Bucket(bktRegister).Get(registerKey(sv.ord, ofDevice, read32(k[20:]))))
 		if err != nil {
 			return nil, err

@@ -272,7 +272,7 @@ func (o *overlay) delete(key []byte)     { o.changed[string(key)] = nil }
 func (o *overlay) list(prefix []byte) []row {
 	var out []row
 	c := o.bucket.Cursor()
-	for k, v := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, v = c.Next() {
+	for k, v := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, v = c.Next() {
 		if _, changed := o.changed[string(k)]; !changed {
 			out = append(out, row{string(k), v})
 		}

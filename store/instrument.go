@@ -29,7 +29,7 @@ func (v *View) Instruments() ([]Instrument, error) {
 	}
 	prefix := append(put32(nil, org), ofInstrument)
 	c := v.tx.Bucket(bktRegister).Cursor()
-	for k, row := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, row = c.Next() {
+	for k, row := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, row = c.Next() {
 		t, err := unpackThing(row)
 		if err != nil {
 			return nil, err

@@ -126,7 +126,7 @@ func (v *View) loadSite(sv *siteView) error {
 	var subject id16
 	var best binding
 	c := v.tx.Bucket(bktBind).Cursor()
-	for k, row := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, row = c.Next() {
+	for k, row := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, row = c.Next() {
 		b, err := unpackBinding(row)
 		if err != nil {
 			return err
@@ -151,7 +151,7 @@ func (v *View) tagOf(sv *siteView, subject id16) (string, error) {
 	var best binding
 	prefix := bindKey(sv.ord, subject, "")
 	c := v.tx.Bucket(bktBind).Cursor()
-	for k, row := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, row = c.Next() {
+	for k, row := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, row = c.Next() {
 		b, err := unpackBinding(row)
 		if err != nil {
 			return "", err
@@ -168,7 +168,7 @@ func (v *View) tagOf(sv *siteView, subject id16) (string, error) {
 func (v *View) each(sv *siteView, typ byte, fn func(n uint32, t *thing) error) error {
 	prefix := append(put32(nil, sv.ord), typ)
 	c := v.tx.Bucket(bktRegister).Cursor()
-	for k, row := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, row = c.Next() {
+	for k, row := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, row = c.Next() {
 		t, err := unpackThing(row)
 		if err != nil {
 			return err

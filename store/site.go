@@ -91,7 +91,7 @@ func (v *View) siteNamed(idOrCode string) (*siteView, error) {
 	var found *siteView
 	prefix := append([]byte(code), 0)
 	c := v.tx.Bucket(bktCode).Cursor()
-	for k, _ := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, _ = c.Next() {
+	for k, _ := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, _ = c.Next() {
 		sv, ok, err := v.openOrd(read32(k[len(prefix):]))
 		if err != nil {
 			return nil, err
@@ -164,7 +164,7 @@ func (v *View) SiteSums(site string, on forms.Day) (SiteSums, error) {
 	sums.Devices = int(u.uint())
 	prefix := put32(nil, sv.ord)
 	c := v.tx.Bucket(bktSum).Cursor()
-	for k, n := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, n = c.Next() {
+	for k, n := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, n = c.Next() {
 		day, grace := readDay(k[4:]), forms.Day(binary.BigEndian.Uint16(k[8:]))
 		if day > on+31 {
 			break
@@ -188,7 +188,7 @@ func (v *View) lastFailed(sv *siteView, on forms.Day, sums *SiteSums) error {
 	prefix := put32(nil, sv.ord)
 	var keys [][]byte
 	c := v.tx.Bucket(bktFail).Cursor()
-	for k, _ := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, _ = c.Next() {
+	for k, _ := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, _ = c.Next() {
 		keys = append(keys, k)
 	}
 	sums.Failed = len(keys)
@@ -220,7 +220,7 @@ func (v *View) Tallies(site string) ([]MonthTally, error) {
 	var out []MonthTally
 	prefix := put32(nil, sv.ord)
 	c := v.tx.Bucket(bktTally).Cursor()
-	for k, row := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, row = c.Next() {
+	for k, row := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, row = c.Next() {
 		t, err := unpackTally(row)
 		if err != nil {
 			return nil, err

@@ -23,7 +23,7 @@ func (v *View) Tag(tag string) ([]TagHolder, error) {
 	out := []TagHolder{}
 	prefix := []byte(tag)
 	c := v.tx.Bucket(bktTag).Cursor()
-	for k, _ := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, _ = c.Next() {
+	for k, _ := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, _ = c.Next() {
 		sv, ok, err := v.openOrd(read32(k[7:]))
 		if err != nil {
 			return nil, err

@@ -153,7 +153,7 @@ func (v *View) recordAt(id id16) (*record.Record, record.Stamp, kept, uint64, er
 // scan reads the rows under a prefix; keys and values point into the file.
 func (v *View) scan(bucket, prefix []byte, fn func(key, row []byte) error) error {
 	c := v.tx.Bucket(bucket).Cursor()
-	for k, row := c.Seek(prefix); bytes.HasPrefix(k, prefix); k, row = c.Next() {
+	for k, row := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, row = c.Next() {
 		if err := fn(k, row); err != nil {
 			return err
 		}

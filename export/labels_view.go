@@ -5,6 +5,7 @@ import (
 	"slices"
 	"strings"
 
+	"tripwell/static"
 	"tripwell/store"
 	"tripwell/store/record"
 )
@@ -36,6 +37,10 @@ func LabelsFromView(v *store.View, ask LabelAsk) ([]Label, error) {
 	if err != nil {
 		return nil, err
 	}
+	words, err := static.ReadWords("en")
+	if err != nil {
+		return nil, err
+	}
 	var labels []Label
 	for line, err := range deviceLines(v, sites) {
 		if err != nil {
@@ -44,13 +49,13 @@ func LabelsFromView(v *store.View, ask LabelAsk) ([]Label, error) {
 		d := line.Device
 		wanted := len(ask.Devices) == 0 || slices.Contains(ask.Devices, d.ID)
 		if wanted && d.Tag != "" && !d.Retired {
-			labels = append(labels, deviceLabel(d, host, ask.Demo))
+			labels = append(labels, deviceLabel(d, host, words.Say("kind."+d.Kind), ask.Demo))
 		}
 	}
 	return labels, nil
 }
 
-func deviceLabel(d store.DeviceRow, host string, demo bool) Label {
+func deviceLabel(d store.DeviceRow, host, kind string, demo bool) Label {
 	l := Label{Tag: d.Tag, Address: record.TagAddress("HTTPS://"+host, d.Tag), Spot: d.Place.Name, Context: roomText(d.Place), Demo: demo}
 	switch {
 	case d.Panel != "" && d.Circuit != "":
@@ -58,8 +63,11 @@ func deviceLabel(d store.DeviceRow, host string, demo bool) Label {
 	default:
 		l.Circuit = d.Panel + d.Circuit
 	}
-	if l.Spot == "" {
-		l.Spot = joinSpace(d.Make, d.Model)
+	if l.Spot == "" { // a portable item: what it is, not where
+		l.Spot = kind
+	}
+	if l.Context == "" {
+		l.Context = joinSpace(d.Make, d.Model)
 	}
 	return l
 }

@@ -2,6 +2,7 @@ package export
 
 import (
 	"fmt"
+	"maps"
 	"strings"
 
 	"tripwell/store"
@@ -30,7 +31,7 @@ type TagWant struct{ Log, Subject string }
 // RegisterDrafts turns rows into records: what is new is registered under ids made from its key, what differs becomes
 // field changes, what is the same becomes nothing. It reads the view and writes nothing.
 func RegisterDrafts(v *store.View, by string, rows []RegisterRow, ask RegisterAsk) (RegisterPlan, error) {
-	k, err := readKnown(v, rows, ask.Now)
+	k, err := readKnown(v, rows, ask)
 	if err != nil {
 		return RegisterPlan{}, err
 	}
@@ -131,7 +132,7 @@ func (p *registerPlanner) site(row RegisterRow) (site store.Site, isNew bool, te
 	if f.Zone == "" {
 		return site, false, fmt.Sprintf("The site %s is new, and its time zone is not stated in any of its rows. Fill in zone, such as America/Chicago.", row.Site)
 	}
-	site = store.Site{ID: importID("site", row.Site), Code: row.Site, Name: f.SiteName, Zone: f.Zone, Standard: f.Standard, Address: f.Address}
+	site = store.Site{ID: p.importID("site", row.Site), Code: row.Site, Name: f.SiteName, Zone: f.Zone, Standard: f.Standard, Address: f.Address}
 	if site.Name == "" {
 		site.Name = row.Site
 	}
@@ -155,18 +156,18 @@ type rowDevice struct {
 
 func (p *registerPlanner) device(site store.Site, key string, row *RegisterRow) *rowDevice {
 	kind := fieldText(row.Device, "kind")
-	d := &rowDevice{id: importID("device", row.Site, row.key()), was: p.devices[key]}
+	d := &rowDevice{id: p.importID("device", row.Site, row.key()), was: p.devices[key]}
 	if d.was == nil {
 		d.was = p.byID[d.id]
 	}
-	if d.was == nil && p.gone(d.id) {
+	if d.was == nil && p.retired[d.id] {
 		d.gone = true
 	}
 	if d.was != nil {
 		d.id, d.place = d.was.ID, d.was.Place.ID
 	}
 	if !isPortable(kind) && d.place == "" {
-		d.place = importID("place", row.Site, row.key())
+		d.place = p.importID("place", row.Site, row.key())
 	}
 	d.tagged = d.place
 	if isPortable(kind) {
@@ -214,32 +215,22 @@ func (p *registerPlanner) circuit(site store.Site, d *rowDevice, row *RegisterRo
 	panelKey := circuitKey(site.ID, row.Panel, "")
 	panel, ok := p.panels[panelKey]
 	if !ok {
-		panel = importID("panel", row.Site, strings.ToLower(row.Panel))
+		panel = p.importID("panel", row.Site, strings.ToLower(row.Panel))
 		p.panels[panelKey] = panel
-		if id := importID("panel.set", row.Site, strings.ToLower(row.Panel)); !p.done(id) {
-			p.add(id, "panel.set", site.ID, panel, map[string]any{"name": row.Panel})
-		}
+		p.add(p.importID("panel.set", row.Site, strings.ToLower(row.Panel)), "panel.set", site.ID, panel, map[string]any{"name": row.Panel})
 	}
 	if row.CircuitNo == "" {
 		return
 	}
 	key := circuitKey(site.ID, row.Panel, row.CircuitNo)
 	c, ok := p.circuits[key]
-	if !ok {
-		c = knownCircuit{id: importID("circuit", row.Site, strings.ToLower(row.Panel), strings.ToLower(row.CircuitNo))}
-		id := importID("circuit.set", row.Site, strings.ToLower(row.Panel), strings.ToLower(row.CircuitNo))
-		if !p.done(id) {
-			set := map[string]any{"panel": panel, "numbers": row.CircuitNo}
-			for n, v := range row.Circuit {
-				set[n] = v
-			}
-			p.add(id, "circuit.set", site.ID, c.id, set)
-			c.fields = set
-		}
-		p.circuits[key] = c
-	}
-	if c.fields != nil {
+	if ok {
 		p.change("circuit.set", site.ID, c.id, row.Circuit, c.fields)
+	} else {
+		c = knownCircuit{p.importID("circuit", row.Site, strings.ToLower(row.Panel), strings.ToLower(row.CircuitNo)), map[string]any{"panel": panel, "numbers": row.CircuitNo}}
+		maps.Copy(c.fields, row.Circuit)
+		p.circuits[key] = c
+		p.add(p.importID("circuit.set", row.Site, strings.ToLower(row.Panel), strings.ToLower(row.CircuitNo)), "circuit.set", site.ID, c.id, maps.Clone(c.fields))
 	}
 	row.Device["circuit"] = c.id
 }
@@ -269,7 +260,7 @@ func (p *registerPlanner) tag(site store.Site, d *rowDevice, row *RegisterRow) {
 		if has != "" {
 			p.draft("", "tag.freed", site.ID, d.tagged, map[string]any{"tag": has})
 		}
-		id := importID("tag.bound", row.Site, row.key(), row.Tag)
+		id := p.importID("tag.bound", row.Site, row.key(), row.Tag)
 		if d.was != nil {
 			id = "" // bound a second time, perhaps back to an earlier tag: a record of its own
 		}

@@ -13,6 +13,7 @@ import (
 // RegisterAsk says how a register is read into drafts.
 type RegisterAsk struct {
 	Now time.Time
+	Org string // id of the organisation
 }
 
 // ImportOption is something an import does besides.
@@ -67,7 +68,7 @@ func ImportRegister(ctx context.Context, s *store.Store, by string, r io.Reader,
 	}
 	var plan RegisterPlan
 	err = s.View(importScope(s, by), func(v *store.View) (err error) {
-		plan, err = RegisterDrafts(v, by, rows, RegisterAsk{Now: s.Now()})
+		plan, err = RegisterDrafts(v, by, rows, RegisterAsk{Now: s.Now(), Org: s.Org()})
 		return err
 	})
 	if err != nil {

@@ -4,16 +4,11 @@ import (
 	"encoding/json"
 	"errors"
 	"strings"
-	"time"
 
 	"tripwell/forms"
 	"tripwell/store"
 	"tripwell/store/record"
 )
-
-// orgKey begins the key of every imported id. A store is one organisation, and the same file must make the same ids on
-// any of its servers, so it names the organisation by a constant.
-const orgKey = "org"
 
 // placeKey is what a row is known by within its site: where it is; at a panel also the circuit, because several devices
 // share one place there; a portable item by its serial, else its tag, else its place. Letter case does not count.
@@ -46,11 +41,11 @@ type known struct {
 	sites    map[string]store.Site // by code in capitals
 	devices  map[string]*store.Device
 	byID     map[string]*store.Device
+	retired  map[string]bool         // devices that are no longer in service
 	circuits map[string]knownCircuit // by site, panel and number
 	panels   map[string]string       // by site and panel
 	tags     map[string]string       // subject a tag is bound to
-	gone     func(id string) bool    // a device that is registered and no longer in service
-	done     func(id string) bool    // a record of this id is in the book
+	org      string                  // begins the key of every imported id: the same file makes the same ids on every server of an organisation
 }
 
 type knownCircuit struct {
@@ -58,16 +53,18 @@ type knownCircuit struct {
 	fields map[string]any
 }
 
+func noneKnown(org string) *known {
+	return &known{org: org, sites: map[string]store.Site{}, devices: map[string]*store.Device{}, byID: map[string]*store.Device{},
+		retired: map[string]bool{}, circuits: map[string]knownCircuit{}, panels: map[string]string{}, tags: map[string]string{}}
+}
+
 func circuitKey(site, panel, no string) string {
 	return strings.ToLower(site + "\x1f" + panel + "\x1f" + no)
 }
 
 // readKnown looks up what is there already, by code and by key, before anything is made.
-func readKnown(v *store.View, rows []RegisterRow, now time.Time) (*known, error) {
-	k := &known{
-		sites: map[string]store.Site{}, devices: map[string]*store.Device{}, byID: map[string]*store.Device{},
-		circuits: map[string]knownCircuit{}, panels: map[string]string{}, tags: map[string]string{},
-	}
+func readKnown(v *store.View, rows []RegisterRow, ask RegisterAsk) (*known, error) {
+	k := noneKnown(ask.Org)
 	sites, err := v.Sites()
 	if err != nil {
 		return nil, err
@@ -82,7 +79,7 @@ func readKnown(v *store.View, rows []RegisterRow, now time.Time) (*known, error)
 			continue
 		}
 		k.sites[code] = s
-		if err := k.readSite(v, s, forms.DayOf(now.In(s.Location()))); err != nil {
+		if err := k.readSite(v, s, forms.DayOf(ask.Now.In(s.Location()))); err != nil {
 			return nil, err
 		}
 	}
@@ -90,14 +87,6 @@ func readKnown(v *store.View, rows []RegisterRow, now time.Time) (*known, error)
 		if err := k.readTag(v, r.Tag); err != nil {
 			return nil, err
 		}
-	}
-	k.gone = func(id string) bool {
-		_, err := v.Device(id, forms.DayOf(now))
-		return err == nil
-	}
-	k.done = func(id string) bool {
-		_, _, err := v.Record(id)
-		return err == nil
 	}
 	return k, nil
 }
@@ -108,6 +97,7 @@ func (k *known) readSite(v *store.View, s store.Site, today forms.Day) error {
 			return err
 		}
 		if row.Retired {
+			k.retired[row.ID] = true
 			continue
 		}
 		d, err := v.Device(row.ID, today)
@@ -117,9 +107,20 @@ func (k *known) readSite(v *store.View, s store.Site, today forms.Day) error {
 		k.byID[d.ID] = &d
 		serial := fieldText(d.Fields, "serial")
 		k.devices[s.ID+"\x1f"+placeKey(d.Kind, d.Place.Building, d.Place.Floor, d.Place.Room, d.Place.Name, d.Panel, d.Circuit, serial, d.Tag)] = &d
-		if id := fieldText(d.Fields, "circuit"); id != "" && d.Circuit != "" {
-			k.circuits[circuitKey(s.ID, d.Panel, d.Circuit)] = knownCircuit{id: id}
-		}
+	}
+	panels, err := v.Panels(s.ID)
+	if err != nil {
+		return err
+	}
+	for _, p := range panels {
+		k.panels[circuitKey(s.ID, p.Name, "")] = p.ID
+	}
+	circuits, err := v.Circuits(s.ID)
+	if err != nil {
+		return err
+	}
+	for _, c := range circuits {
+		k.circuits[circuitKey(s.ID, c.Panel, c.Numbers)] = knownCircuit{c.ID, c.Fields}
 	}
 	return nil
 }
@@ -149,6 +150,6 @@ func sameValue(a, b any) bool {
 	return errX == nil && errY == nil && string(x) == string(y)
 }
 
-func importID(parts ...string) string {
-	return record.NamedID(append([]string{orgKey}, parts...)...)
+func (k *known) importID(parts ...string) string {
+	return record.NamedID(append([]string{k.org}, parts...)...)
 }

@@ -132,20 +132,13 @@ func (*endless) Read(p []byte) (int, error) {
 	return len(p), nil
 }
 
-// nothingKnown is a store that holds nothing.
-func nothingKnown() *known {
-	none := func(string) bool { return false }
-	return &known{sites: map[string]store.Site{}, devices: map[string]*store.Device{}, byID: map[string]*store.Device{},
-		circuits: map[string]knownCircuit{}, panels: map[string]string{}, tags: map[string]string{}, gone: none, done: none}
-}
-
 func TestRegisterDrafts_IdsComeFromTheKeyAlone(t *testing.T) {
 	read := func(text string) RegisterPlan {
 		rows, problems, err := ReadRegisterCSV(strings.NewReader(text))
 		if err != nil || len(problems) > 0 {
 			t.Fatalf("problems %v, error %v", problems, err)
 		}
-		return planRegister(nothingKnown(), "me", rows)
+		return planRegister(noneKnown("org-1"), "me", rows)
 	}
 	const head = "site,zone,building,room,place,kind,make,note\n"
 	first := read(head + "ELM-4,UTC,A,Hall,Left,receptacle,Make A,\nELM-4,,A,Hall,Right,receptacle,,\n")
@@ -183,7 +176,7 @@ ELM-4,,,LP-1,2,gfci-breaker,
 	if err != nil || len(problems) > 0 {
 		t.Fatalf("problems %v, error %v", problems, err)
 	}
-	plan := planRegister(nothingKnown(), "me", rows)
+	plan := planRegister(noneKnown("org-1"), "me", rows)
 	if plan.Added != 3 || plan.SitesAdded != 1 || len(plan.NeedTag) != 3 {
 		t.Errorf("got %d added, %d sites, %d without tag; want 3, 1, 3", plan.Added, plan.SitesAdded, len(plan.NeedTag))
 	}
@@ -210,7 +203,7 @@ func FuzzRegisterCSV(f *testing.F) {
 				t.Errorf("a problem without line or words: %+v", p)
 			}
 		}
-		plan := planRegister(nothingKnown(), "me", rows)
+		plan := planRegister(noneKnown("org-1"), "me", rows)
 		if plan.Added+len(plan.Problems) < len(rows) {
 			t.Errorf("%d rows became %d devices and %d problems", len(rows), plan.Added, len(plan.Problems))
 		}

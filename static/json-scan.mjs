@@ -11,14 +11,14 @@ class Refused extends Error {
   }
 }
 
-/** Reads a line; the answer is {value} or {code: malformed | duplicate_name | number_range, at}. */
+/** Reads a line; the answer is {value} or {code: malformed | duplicate_name | number_range, at}, with the value where it could still be read. */
 export function scan(line) {
   try {
     const reader = new Reader(line);
     const value = reader.value(1);
     if (reader.peek() !== "") throw new Refused("malformed", reader.at);
     // A line that is no JSON, or names something twice, is that first, whatever its numbers say.
-    if (reader.late) return reader.late;
+    if (reader.late) return { ...reader.late, value };
     return { value };
   } catch (e) {
     if (e instanceof Refused) return { code: e.code, at: e.at };

@@ -38,8 +38,8 @@ export function checkRecord(line) {
   if (new TextEncoder().encode(line).length > maxBytes) return { code: "too_large", field: "" };
   if (/[\n\r]/.test(line) || !line.isWellFormed()) return { code: "malformed", field: "" };
   const read = scan(line);
+  if ("value" in read && !(read.value instanceof Map)) return { code: "malformed", field: "" };
   if (read.code) return { code: read.code, field: "" };
-  if (!(read.value instanceof Map)) return { code: "malformed", field: "" };
   return checkEnvelope(read.value) ?? checkKind(read.value);
 }
 

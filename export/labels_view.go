@@ -42,13 +42,15 @@ func LabelsFromView(v *store.View, ask LabelAsk) ([]Label, error) {
 		return nil, err
 	}
 	var labels []Label
+	printed := map[string]bool{}
 	for line, err := range deviceLines(v, sites) {
 		if err != nil {
 			return nil, err
 		}
 		d := line.Device
 		wanted := len(ask.Devices) == 0 || slices.Contains(ask.Devices, d.ID)
-		if wanted && d.Tag != "" && !d.Retired {
+		if wanted && d.Tag != "" && !d.Retired && !printed[d.Tag] {
+			printed[d.Tag] = true // a tag names the place: two devices there share one label
 			labels = append(labels, deviceLabel(d, host, words.Say("kind."+d.Kind), ask.Demo))
 		}
 	}

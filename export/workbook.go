@@ -26,6 +26,7 @@ type WorkbookSource struct {
 	Demo         bool
 	Logs         []LogLine
 	Head         string // signed head text, "" when there is none
+	NoHead       string // why there is none, "" when nobody asked for one
 	Refused      int    // records in quarantine
 
 	Devices iter.Seq2[DeviceLine, error] // walking order

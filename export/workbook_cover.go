@@ -83,6 +83,9 @@ func (b *book) coverLines() []coverLine {
 	head := coverLine{label: b.say("sheet.cover.head"), text: strings.TrimRight(src.Head, "\n"), fixed: true}
 	if src.Head == "" {
 		head.text, head.fixed = b.say("sheet.cover.no_head"), false
+		if src.NoHead != "" {
+			head.text = b.say("sheet.cover.no_head_why", "why", src.NoHead)
+		}
 	}
 	lines = append(lines, head)
 	add("proves", b.say("sheet.cover.proves_text"))

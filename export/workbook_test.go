@@ -361,6 +361,21 @@ func TestWorkbook_CoverSaysWhatAnAuditorAsks(t *testing.T) {
 	}
 }
 
+func TestWorkbook_CoverSaysWhyThereIsNoHead(t *testing.T) {
+	src := handSource(t, false)
+	src.Head, src.NoHead = "", "The store is shorter than what it signed."
+	rows, err := opened(t, src).GetRows("Cover")
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, r := range rows {
+		if r[0] == "Signed head" && strings.Contains(r[1], src.NoHead) {
+			return
+		}
+	}
+	t.Errorf("the cover does not say it: %v", rows)
+}
+
 func TestWorkbook_EveryHeadingHasWords(t *testing.T) {
 	f := opened(t, handSource(t, false))
 	for _, name := range f.GetSheetList()[1:] {

@@ -1,6 +1,7 @@
 package export
 
 import (
+	"errors"
 	"io"
 	"iter"
 	"time"
@@ -21,6 +22,7 @@ type WorkbookAsk struct {
 	Demo         bool
 	AllSites     bool   // the scope covers the whole organisation
 	Head         string // signed head text, "" without one
+	NoHead       string // why there is none
 	Progress     func(rows int)
 }
 
@@ -30,7 +32,12 @@ func WorkbookOf(w io.Writer, s *store.Store, scope store.Scope, ask WorkbookAsk)
 	// Signed before the read begins: a transaction that writes must not wait inside one that reads. The head may
 	// therefore stand a few records before the sizes on the cover, never after.
 	head, err := s.SignedHead()
-	if err != nil {
+	var refused *store.Error
+	switch {
+	case errors.As(err, &refused):
+		// A store that must not sign (it is shorter than what it signed) still opens its books: the cover says why.
+		ask.NoHead = refused.Text
+	case err != nil:
 		return err
 	}
 	ask.Head, ask.Store, ask.Epoch, ask.Demo = head, s.ID(), s.Epoch(), s.Demo()
@@ -52,7 +59,7 @@ func WorkbookOf(w io.Writer, s *store.Store, scope store.Scope, ask WorkbookAsk)
 func FromView(v *store.View, ask WorkbookAsk) (WorkbookSource, error) {
 	src := WorkbookSource{
 		Organisation: ask.Organisation, AllSites: ask.AllSites, From: ask.From, To: ask.To, AsOf: ask.Now, Store: ask.Store, Epoch: ask.Epoch,
-		Demo: ask.Demo, Head: ask.Head, Progress: ask.Progress, PersonName: v.PersonName,
+		Demo: ask.Demo, Head: ask.Head, NoHead: ask.NoHead, Progress: ask.Progress, PersonName: v.PersonName,
 	}
 	var err error
 	if src.Sites, err = sitesOf(v, ask.Site); err != nil {

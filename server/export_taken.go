@@ -66,7 +66,7 @@ func (s *Server) sendLabels(c echo.Context, sc store.Scope, by string) error {
 	if err != nil {
 		return err
 	}
-	labels, err := export.LabelsOf(s.store, sc, site)
+	labels, err := export.LabelsOf(s.store, sc, site, c.QueryParams()["device"]...)
 	if err != nil {
 		return err
 	}

@@ -122,6 +122,8 @@ func (s *Server) buildDevice(v *store.View, site store.Site, d store.Device, vie
 		view.Actions = []link{{Href: "/devices/" + d.ID + "/edit", Text: k.say("office.device.edit")}}
 		if !d.Retired {
 			view.Actions = append(view.Actions, link{Href: "/devices/" + d.ID + "/retire", Text: k.say("office.device.retire")})
+		} else if d.Place.ID != "" {
+			view.Actions = append(view.Actions, link{Href: siteHref(site) + "/devices/new?after=" + d.ID, Text: k.say("office.device.successor")})
 		}
 	}
 	return nil
@@ -372,7 +374,7 @@ func (s *Server) labelOf(d store.Device, view *devicePage) {
 		return
 	}
 	path, size := svgPath(dark)
-	view.Label = &label{Size: size, Path: path, Address: address, Aria: s.words.Say("office.device.qr", "address", address), Sheet: "/labels.pdf?sheet=letter-3x10&device=" + d.ID}
+	view.Label = &label{Size: size, Path: path, Address: address, Aria: s.words.Say("office.device.qr", "address", address), Sheet: "/labels.pdf?sheet=letter-3x10&site=" + d.Site + "&device=" + d.ID}
 }
 
 // svgPath draws the dark modules of a square bitmap as rows of rectangles, inside a quiet zone of four modules that

@@ -9,6 +9,7 @@ import (
 	"tripwell/export"
 	"tripwell/forms"
 	"tripwell/store"
+	"tripwell/store/record"
 )
 
 const (
@@ -70,6 +71,11 @@ func (s *Server) sendLabels(c echo.Context, sc store.Scope, by string) error {
 	if err != nil {
 		return err
 	}
+	if device := c.QueryParam("device"); device != "" {
+		if labels, err = s.labelOfDevice(sc, device, labels); err != nil {
+			return err
+		}
+	}
 	if err := s.exportTaken(c.Request().Context(), by, "labels", site, forms.NoDay, forms.NoDay); err != nil {
 		return err
 	}
@@ -90,4 +96,23 @@ func (s *Server) siteAsked(sc store.Scope, idOrCode string) (id, name string, er
 		return err
 	})
 	return id, name, err
+}
+
+// labelOfDevice picks the one label of a device.
+func (s *Server) labelOfDevice(sc store.Scope, device string, labels []export.Label) ([]export.Label, error) {
+	var picked []export.Label
+	err := s.store.View(sc, func(v *store.View) error {
+		d, err := v.Device(device, forms.DayOf(s.store.Now()))
+		if err != nil {
+			return err
+		}
+		tag, _ := record.ParseTag(d.Tag)
+		for _, l := range labels {
+			if l.Tag == tag {
+				picked = append(picked, l)
+			}
+		}
+		return nil
+	})
+	return picked, err
 }

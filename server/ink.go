@@ -211,7 +211,7 @@ func (k ink) limit(code string, b *forms.Bounds, level string) string {
 		if level == "watch" {
 			key = "office.entry.limit_watch_one"
 		}
-		return k.say(key, "list", strings.Join(names, ", "))
+		return k.say(key, "list", strings.Join(names, k.say("office.limits.or")))
 	}
 	if level == "watch" && text != "" {
 		text += ", " + k.say("office.entry.recommended")

@@ -58,7 +58,7 @@ func (s *Server) limitSet(set *forms.LimitSet) limitSetShown {
 		out.Name = k.say("office.limits.revision_open", "rev", set.Revision)
 	}
 	for _, l := range set.Limits {
-		row := limitRow{Reading: k.reading(l.Reading), Limit: s.limitWords(l), When: s.when(l.When), Level: k.say("office.limits." + l.Level), Source: l.Source, Status: s.status(l.Status)}
+		row := limitRow{Reading: k.reading(l.Reading), Limit: s.limitWords(l), When: s.whenAndVoid(l), Level: k.say("office.limits." + l.Level), Source: l.Source, Status: status(l.Source, l.Status)}
 		if l.Reading == "" {
 			row.Reading = s.fieldName(l.Field)
 		}
@@ -118,6 +118,18 @@ func (s *Server) shares(b forms.Bounds) string {
 	return ""
 }
 
+// whenAndVoid says where a limit applies and where its reading says nothing.
+func (s *Server) whenAndVoid(l forms.Limit) string {
+	parts := []string{}
+	if text := s.when(l.When); text != "" {
+		parts = append(parts, s.words.Say("office.limits.when", "what", text))
+	}
+	for _, void := range l.Void {
+		parts = append(parts, s.words.Say("office.limits.void", "what", s.when(void.When)))
+	}
+	return strings.Join(parts, ". ")
+}
+
 // when says the conditions of a limit in words, all of which must hold.
 func (s *Server) when(conditions []forms.Condition) string {
 	k := s.ink()
@@ -152,10 +164,7 @@ func (s *Server) when(conditions []forms.Condition) string {
 		}
 		parts = append(parts, lowerFirst(name)+": "+strings.Join(facts, ", "))
 	}
-	if len(parts) == 0 {
-		return ""
-	}
-	return k.say("office.limits.when", "what", strings.Join(parts, "; "))
+	return strings.Join(parts, "; ")
 }
 
 func (s *Server) values(c forms.Condition, values forms.OneOf) string {

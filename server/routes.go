@@ -77,6 +77,8 @@ func publicRoutes() []route {
 		{post, "/devices/:device/edit", manager, (*Server).deviceUpdate, 0},
 		{get, "/devices/:device/retire", manager, (*Server).deviceRetireAsk, 0},
 		{post, "/devices/:device/retire", manager, (*Server).deviceRetire, 0},
+		{get, "/entries/:entry/correct", manager, (*Server).entryCorrectAsk, 0},
+		{post, "/entries/:entry/correct", manager, (*Server).entryCorrect, 0},
 		{get, "/instruments/new", manager, (*Server).instrumentNew, 0},
 		{post, "/instruments", manager, (*Server).instrumentCreate, 0},
 		{get, "/instruments/:instrument", manager, (*Server).instrumentEdit, 0},

@@ -71,7 +71,7 @@ func (s *Server) planRow(p *forms.Plan) planRow {
 	if name == p.ID {
 		name = k.named("task", p.Task)
 	}
-	return planRow{Name: name, Kinds: s.kinds(p.Kinds), Every: s.every(p), Source: p.Source, Status: s.status(p.Status)}
+	return planRow{Name: name, Kinds: s.kinds(p.Kinds), Every: s.every(p), Source: p.Source, Status: status(p.Source, p.Status)}
 }
 
 // every says a plan's interval in words: once in each calendar month; at most 12 months apart.
@@ -106,9 +106,9 @@ func (s *Server) interval(i forms.Interval) string {
 	return strings.Join(parts, " ")
 }
 
-// status says how well a source is known; where it is common practice the source already says so.
-func (s *Server) status(status string) string {
-	if status == "common practice" {
+// status says how well a source is known, where the source does not say so itself.
+func status(source, status string) string {
+	if strings.HasPrefix(source, status) {
 		return ""
 	}
 	return status

@@ -172,7 +172,7 @@ func b2i(b bool) int {
 }
 
 // tableReadings are the readings a device's entries are compared by, in the order of the work.
-var tableReadings = []string{"trip_current_ma", "trip_time_ms", "wiring", "ground_ohm", "retention_g", "voltage_v"}
+var tableReadings = []string{"trip_current_ma", "trip_time_ms", "wiring", "ground_ohm", "retention_g"}
 
 // entryTable fills the entries with the columns at least one of them has a reading for.
 func (s *Server) entryTable(v *store.View, entries []store.Entry, instruments map[string]string, view *devicePage) {
@@ -288,7 +288,7 @@ func instrumentNames(v *store.View) (map[string]string, error) {
 var factOrder = []string{"make", "model", "serial", "rating_a", "nominal_v", "rated_residual_ma", "delayed", "waveform", "equipment_ground", "faces", "installed", "gauge", "length_m", "limit_set", "where", "note"}
 
 // fieldUnits are the units of register fields that are figures.
-var fieldUnits = map[string]string{"rating_a": "A", "nominal_v": "V", "rated_residual_ma": "mA", "length_m": "m"}
+var fieldUnits = map[string]string{"rating_a": "A", "nominal_v": "V", "rated_residual_ma": "mA", "length_m": "m", "breaker_a": "A"}
 
 func (s *Server) deviceFacts(d store.Device) []fact {
 	k := s.ink()

@@ -201,7 +201,7 @@ func (s *Server) correctForm(c echo.Context, e store.Entry, codes []string, site
 			field{Name: answerPrefix + code, Label: k.reading(code), Type: "number", Unit: k.named("unit", kind.Unit)},
 			field{Name: howPrefix + code, Label: k.say("office.entry.how", "name", k.reading(code)), Options: optional(k.say("office.entry.how_measured"), hows...)})
 	}
-	heading := k.say("office.entry.correct_head", "task", k.named("task", e.Task), "day", k.day(e.Day))
+	heading := k.say("office.entry.correct_head", "task", lowerFirst(k.named("task", e.Task)), "day", k.day(e.Day))
 	return formPage{
 		Frame: s.frame(c, heading, "sites"), Crumbs: []link{{Href: siteHref(site), Text: site.Name}, {Href: "/entries/" + e.ID, Text: k.say("office.entry.heading", "task", k.named("task", e.Task), "day", k.day(e.Day))}},
 		Heading: heading, Lead: k.say("office.entry.correct_lead"), Action: "/entries/" + e.ID + "/correct", Submit: k.say("office.entry.correct_save"), Cancel: "/entries/" + e.ID,

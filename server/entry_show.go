@@ -161,7 +161,7 @@ func (s *Server) notices(v *store.View, e store.Entry, zone *time.Location) []no
 }
 
 // readings shows every reading: those with findings in the findings' order, which is the form's, then the others.
-func (s *Server) readings(e store.Entry, spans map[string]scaleSpan, before map[string]float64) []readingShown {
+func (s *Server) readings(e store.Entry, spans map[string][]scaleSpan, before map[string]float64) []readingShown {
 	var out []readingShown
 	place := map[string]int{}
 	for _, f := range e.Verdict.Findings {
@@ -201,7 +201,7 @@ func (s *Server) oneReading(code string, r forms.Reading, at map[string]any) rea
 	return readingShown{Name: name, Value: k.value(code, r), Typed: k.typed(code, r)}
 }
 
-func (s *Server) finding(f forms.Finding, r forms.Reading, e store.Entry, spans map[string]scaleSpan, before map[string]float64) findingShown {
+func (s *Server) finding(f forms.Finding, r forms.Reading, e store.Entry, spans map[string][]scaleSpan, before map[string]float64) findingShown {
 	k := s.ink()
 	shown := findingShown{Verdict: k.verdict(f.Verdict), Limit: k.limit(f.Reading, f.Limit, f.Level), Source: f.Source}
 	if f.Text != "" && k.words.Has(f.Text) && f.Verdict != forms.Pass {
@@ -210,15 +210,11 @@ func (s *Server) finding(f forms.Finding, r forms.Reading, e store.Entry, spans 
 	if current, ok := e.Body.Readings["test_current_ma"]; ok && f.Reading == "trip_time_ms" && shown.Limit != "" && len(f.At) == 0 {
 		shown.Limit += " " + k.say("office.entry.at_current", "current", k.value("test_current_ma", current))
 	}
-	var span *scaleSpan
-	if s, ok := spans[f.Reading]; ok {
-		span = &s
-	}
 	var earlier *float64
 	if b, ok := before[f.Reading]; ok && len(f.At) == 0 {
 		earlier = &b
 	}
-	shown.Scale = k.scale(f.Reading, r, f, span, earlier)
+	shown.Scale = k.scale(f.Reading, r, f, spans[f.Reading], earlier)
 	return shown
 }
 
@@ -354,13 +350,14 @@ func personOr(v *store.View, id string) string {
 	return cmp.Or(v.PersonName(id), id)
 }
 
-// formSpans are the scales an entry's form draws its readings on; a form nobody holds has none.
-func formSpans(v *store.View, id string) (map[string]scaleSpan, error) {
+// formSpans are the scales an entry's form draws its readings on: one reading may have several, by the device's nominal
+// voltage. A form nobody holds has none.
+func formSpans(v *store.View, id string) (map[string][]scaleSpan, error) {
 	all, err := v.Forms()
 	if err != nil {
 		return nil, err
 	}
-	spans := map[string]scaleSpan{}
+	spans := map[string][]scaleSpan{}
 	for _, f := range all {
 		if f.ID != id {
 			continue
@@ -368,7 +365,7 @@ func formSpans(v *store.View, id string) (map[string]scaleSpan, error) {
 		for _, step := range f.Steps {
 			for _, ask := range step.Asks {
 				if ask.Scale != nil {
-					spans[ask.Reading] = scaleSpan{log: ask.Scale.Shape == "log", from: ask.Scale.From, to: ask.Scale.To}
+					spans[ask.Reading] = append(spans[ask.Reading], scaleSpan{log: ask.Scale.Shape == "log", from: ask.Scale.From, to: ask.Scale.To})
 				}
 			}
 		}

@@ -187,11 +187,15 @@ func (s *Server) whatFailed(e store.Entry) string {
 		if limit := k.limit(f.Reading, f.Limit, f.Level); limit != "" {
 			text += " (" + limit + ")"
 		}
+		text += "."
+		if number := f.Limit != nil && (f.Limit.Min != nil || f.Limit.Max != nil); !number && k.words.Has(f.Text) {
+			text = k.say(f.Text) // says more than yes and no
+		}
 		if !slices.Contains(said, text) {
 			said = append(said, text)
 		}
 	}
-	return strings.Join(said, "; ")
+	return strings.Join(said, " ")
 }
 
 func shapeIf(is bool, shape string) string {

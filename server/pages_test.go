@@ -110,20 +110,20 @@ func (s *Server) deviceSample(t testing.TB) formPage {
 func (s *Server) entrySample() entryPage {
 	k := s.ink()
 	lo, hi, limit, earlier := 4.0, 6.0, 4677.0, 610.0
-	span := scaleSpan{log: true, from: 10, to: 10000}
+	span := []scaleSpan{{log: true, from: 10, to: 10000}}
 	time, current := forms.Reading{Typed: "3.12", Unit: "s", Value: 3120.0}, forms.Reading{Value: 6.4}
 	never, above := forms.Reading{}, 2000.0
 	never.Above = &above
 	passed := forms.Finding{Reading: "trip_time_ms", Verdict: forms.Pass, Limit: &forms.Bounds{Max: &limit}, Level: "must"}
 	beyond := forms.Finding{Reading: "trip_current_ma", Verdict: forms.ConditionalFail, Limit: &forms.Bounds{Min: &lo, Max: &hi}, Level: "must"}
-	row := func(code string, r forms.Reading, f forms.Finding, sp *scaleSpan, before *float64) readingShown {
+	row := func(code string, r forms.Reading, f forms.Finding, sp []scaleSpan, before *float64) readingShown {
 		return readingShown{Name: k.reading(code), Value: k.value(code, r), Typed: k.typed(code, r), Findings: []findingShown{{Verdict: k.verdict(f.Verdict), Limit: k.limit(code, f.Limit, f.Level), Source: "UL 943 Class A", Text: "Measure once more at a constant current.", Scale: k.scale(code, r, f, sp, before)}}}
 	}
 	return entryPage{
 		Frame: frameOf("Measurement, 3 Nov 2026", "sites"), Crumbs: []link{{Href: "/sites/KILN-LANE", Text: "Kiln Lane Day Clinic"}, {Href: "/devices/1", Text: "Pantry, by the sink"}},
 		Heading: "Measurement, 3 Nov 2026", Tag: "K7Q‑M2P‑3", Under: "GFCI receptacle, 20 A · LP‑2 / 14", Verdict: mark{"watch", "Conditional fail"},
 		Notices:  []notice{{"watch", "This entry was corrected."}, {"fail", "Withdrawn by Manager 1 on 4 Nov 2026, 09:10: wrong outlet"}},
-		Readings: []readingShown{{Name: "Wiring", Value: "Correct", Findings: []findingShown{{Verdict: mark{"pass", "Pass"}, Limit: "must be correct", Source: "common practice, no source"}}}, row("trip_time_ms", time, passed, &span, &earlier), row("trip_current_ma", current, beyond, nil, nil), row("trip_time_ms", never, passed, &span, nil), {Name: "Test current", Value: "6.8 mA"}},
+		Readings: []readingShown{{Name: "Wiring", Value: "Correct", Findings: []findingShown{{Verdict: mark{"pass", "Pass"}, Limit: "must be correct", Source: "common practice, no source"}}}, row("trip_time_ms", time, passed, span, &earlier), row("trip_current_ma", current, beyond, nil, nil), row("trip_time_ms", never, passed, span, nil), {Name: "Test current", Value: "6.8 mA"}},
 		Note:     "Fridge unplugged.\nPlugged in again.", Corrections: []correctionShown{{Head: "By Manager 1 on 4 Nov 2026, 09:02 · in force", Reason: "typed into the wrong field", Record: "/records/2", Changes: []change{{"Trip time", "6.4 ms", "3 120 ms"}}}},
 		Facts: []fact{{Name: "Tested by", Value: "Crew 1"}, {Name: "Record", Value: "0197b2c0-0000-7000-8000-000000000001", Mono: true}}, Record: "/records/1", Actions: []link{{Href: "/entries/1/correct", Text: "Correct this entry"}},
 	}

@@ -44,6 +44,18 @@ func (s scaleSpan) place(v float64) float64 {
 
 func clamp(x float64) float64 { return min(max(x, 0), scaleWidth) }
 
+// spanOf chooses the form's scale that holds the limit; where it names none, or the value lies far outside all of them on
+// an even scale, a scale is made for the two.
+func spanOf(spans []scaleSpan, value float64, limit *forms.Bounds) scaleSpan {
+	for _, s := range spans {
+		holds := func(v *float64) bool { return v == nil || *v >= s.from && *v <= s.to }
+		if s.to > s.from && (!s.log || s.from > 0) && holds(limit.Min) && holds(limit.Max) && (s.log || value <= s.to && value >= s.from) {
+			return s
+		}
+	}
+	return spanFor(value, limit)
+}
+
 // spanFor is the scale of a reading whose form names none: round numbers with room on both sides of limit and value.
 func spanFor(value float64, limit *forms.Bounds) scaleSpan {
 	top := value
@@ -83,7 +95,7 @@ func (s scaleSpan) ticks() []float64 {
 }
 
 // scale draws a measured value against a limit; nil where there is nothing to draw. before is an earlier value, or nil.
-func (k ink) scale(code string, r forms.Reading, f forms.Finding, span *scaleSpan, before *float64) *scaleDrawing {
+func (k ink) scale(code string, r forms.Reading, f forms.Finding, spans []scaleSpan, before *float64) *scaleDrawing {
 	if f.Limit == nil || f.Limit.Min == nil && f.Limit.Max == nil {
 		return nil
 	}
@@ -101,10 +113,7 @@ func (k ink) scale(code string, r forms.Reading, f forms.Finding, span *scaleSpa
 			return nil
 		}
 	}
-	s := spanFor(value, f.Limit)
-	if span != nil && span.to > span.from && (!span.log || span.from > 0) {
-		s = *span
-	}
+	s := spanOf(spans, value, f.Limit)
 	d := &scaleDrawing{Open: open != 0, Shape: shapeOf(f.Verdict)}
 	low, high := 0.0, scaleWidth
 	if f.Limit.Min != nil {

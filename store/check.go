@@ -104,13 +104,20 @@ func (s *Store) checkImage(ctx context.Context, path string, report *CheckReport
 		if k, _ := tx.Bucket(bktRec).Cursor().Last(); k != nil {
 			total = int64(binary.BigEndian.Uint64(k))
 		}
-		if err := c.book(ctx, func(done int64) { progress(done, 2*total) }); err != nil {
-			return err
-		}
+		return c.book(ctx, func(done int64) { progress(done, 2*total) })
+	})
+	if err != nil || len(report.Problems) > 0 {
+		return err
+	}
+	if err := finish(db); err != nil { // read models are equal only with nothing left to do
+		report.problem("The work that records left for later cannot be done: %v.", err)
+		return nil
+	}
+	err = db.View(func(tx *bbolt.Tx) (err error) {
 		report.ViewHash, before, err = viewHash(tx)
 		return err
 	})
-	if err != nil || len(report.Problems) > 0 {
+	if err != nil {
 		return err
 	}
 	if err := rebuild(ctx, s, db, func(done, total int64) { progress(total+done, 2*total) }); err != nil {

@@ -262,7 +262,7 @@ func (v *View) flags(sv *siteView, r *record.Record, st record.Stamp, k kept, bo
 		off = -ahead
 	}
 	if off.Abs() > clockOff {
-		flag("clock", off.Abs().Round(time.Minute).String())
+		flag("clock", roughly(off.Abs()))
 	}
 	if late := st.Received.Sub(r.At); late > lateFrom && r.Kind == "entry.made" {
 		flag("late", strconv.Itoa(int(late.Hours()/24)))
@@ -317,4 +317,15 @@ func number(f float64) string {
 		return ""
 	}
 	return strconv.FormatFloat(f, 'g', -1, 64)
+}
+
+// roughly gives a duration in its largest whole unit.
+func roughly(d time.Duration) string {
+	switch {
+	case d >= 48*time.Hour:
+		return strconv.Itoa(int(d.Hours()/24)) + " d"
+	case d >= 2*time.Hour:
+		return strconv.Itoa(int(d.Hours())) + " h"
+	}
+	return strconv.Itoa(int(d.Minutes())) + " min"
 }

@@ -46,7 +46,9 @@ type Store struct {
 	queue   chan *job
 	written chan struct{} // closed when the writer has ended
 	heads   sync.Mutex    // one signing at a time
-	groups  atomic.Int64  // committed since opening
+
+	unfinished bool         // the work list may hold something; the writer's own
+	groups     atomic.Int64 // committed since opening
 
 	rebuilding atomic.Bool // read models are being computed anew
 
@@ -84,6 +86,7 @@ func Open(dir string, o Options) (*Store, error) {
 	if err := s.refresh(); err != nil {
 		return nil, errors.Join(err, db.Close())
 	}
+	s.unfinished = true
 	go s.write()
 	if o.URL != "" {
 		if err := s.SetURL(o.URL); err != nil {

@@ -8,6 +8,7 @@ import (
 	"errors"
 	"fmt"
 	"hash"
+	"math"
 
 	"go.etcd.io/bbolt"
 	bolterrors "go.etcd.io/bbolt/errors"
@@ -85,6 +86,11 @@ func rebuildFrom(s *Store, tx *bbolt.Tx, after uint64, progress func(done, total
 		}
 		if n%1000 == 0 {
 			progress(int64(after), int64(total))
+		}
+	}
+	if !more {
+		if _, err := g.fold.workOff(math.MaxInt); err != nil {
+			return after, false, err
 		}
 	}
 	if err := g.fold.flush(); err != nil {

@@ -63,7 +63,11 @@ func (s *Store) enqueue(ctx context.Context, j *job) error {
 func (s *Store) write() {
 	defer close(s.written)
 	crowd := 1
-	for j := range s.queue {
+	for {
+		j, ok := s.next()
+		if !ok {
+			return
+		}
 		jobs := s.gather(j, crowd)
 		s.commit(slices.DeleteFunc(slices.Clone(jobs), func(j *job) bool { return j.own != nil }))
 		for _, j := range jobs {
@@ -71,6 +75,7 @@ func (s *Store) write() {
 				j.err = j.own()
 			}
 		}
+		s.unfinished = true
 		crowd = len(jobs) + len(s.queue)
 		for _, j := range jobs {
 			close(j.done)

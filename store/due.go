@@ -34,7 +34,8 @@ type DueAsk struct {
 	Limit int // 0 = all
 }
 
-// Due lists dates in their order, over one site or all of the scope; within a day by site and device. It reads the due
+// Due lists dates in their order, over one site or all of the scope; within a day by site, then in the order
+// devices were first met in the book. It reads the due
 // index from its start and stops with the caller.
 func (v *View) Due(ask DueAsk) iter.Seq2[DueRow, error] {
 	return func(yield func(DueRow, error) bool) {

@@ -7,9 +7,11 @@ import (
 	"fmt"
 	"io"
 	"io/fs"
+	"log/slog"
 	"net"
 	"net/http"
 	"net/url"
+	"os"
 	"sync"
 	"syscall"
 
@@ -52,7 +54,9 @@ func OpenDoor(ctx context.Context, dir string, open func() (*store.Store, error)
 
 // inside serves the owner's face within this process over pipes, which stream and cancel as a socket does.
 func inside(s *store.Store) (*Door, error) {
-	srv, err := New(s, Options{Alone: true})
+	// Nobody else keeps a log here: what a reference stands for goes to standard error.
+	faults := slog.New(slog.NewTextHandler(os.Stderr, &slog.HandlerOptions{Level: slog.LevelError}))
+	srv, err := New(s, Options{Alone: true, Log: faults})
 	if err != nil {
 		return nil, errors.Join(err, s.Close())
 	}

@@ -99,12 +99,18 @@ func (b *browser) press(within, text string) {
 	find := `[...document.querySelectorAll(` + quote(within) + `)].flatMap((e) => e.matches("button, a, summary") ? [e] : [...e.querySelectorAll("button, a, summary")])
 		.find((e) => (` + quote(text) + ` === "" || e.textContent.replace(/\s+/g, " ").includes(` + quote(text) + `)) && e.getClientRects().length > 0)`
 	b.wait("a button "+within+" "+text, find)
-	b.js(find + `.scrollIntoView({block: "center"})`)
-	at, ok := b.js(`(() => { const r = ` + find + `.getClientRects()[0]; return [r.x + r.width / 2, r.y + r.height / 2]; })()`).([]any)
-	if !ok || len(at) != 2 {
-		b.fail("no place to press for %s %q", within, text)
+	// The place to press is taken when the page stands still and nothing lies over it.
+	still := `(() => { const e = ` + find + `; e.scrollIntoView({block: "center", behavior: "instant"});
+		const r = e.getClientRects()[0], x = r.x + r.width / 2, y = r.y + r.height / 2, at = x + "," + y, was = globalThis.pressAt;
+		globalThis.pressAt = at;
+		return was === at && e.contains(document.elementFromPoint(x, y)) ? [x, y] : null; })()`
+	for end := time.Now().Add(10 * time.Second); time.Now().Before(end); time.Sleep(50 * time.Millisecond) {
+		if at, ok := b.js(still).([]any); ok {
+			b.do(chromedp.MouseClickXY(at[0].(float64), at[1].(float64)))
+			return
+		}
 	}
-	b.do(chromedp.MouseClickXY(at[0].(float64), at[1].(float64)))
+	b.fail("%s %q does not come to rest or is covered", within, text)
 }
 
 // keys types into the field a selector finds.

@@ -39,10 +39,8 @@ func (c demoCmd) Run(e *env) error {
 	if err != nil {
 		return errors.Join(err, public.Close())
 	}
-	if err := greetDemo(e, s, dir, public); err != nil {
-		return errors.Join(err, public.Close(), s.Close())
-	}
-	return errors.Join(serve(e, s, dir, public), s.Close())
+	err = serve(e, s, dir, public, func() error { return greetDemo(e, s, dir, public) })
+	return errors.Join(err, s.Close())
 }
 
 // listen opens a loopback address; without --listen it goes on to the next free port.

@@ -76,10 +76,7 @@ func TestDemo_EntryFromPhoneToWorkbook(t *testing.T) {
 	office := openBrowser(t, 1280, 900)
 	office.open(server.link("manager"))
 	office.press("main form", "")
-	office.wait("the overview", `document.querySelector("main h1")`)
-	if text := office.text("main"); !strings.Contains(text, "Pantry, by the sink") {
-		office.fail("the overview does not name the device that failed")
-	}
+	office.wait("the overview naming the device that failed", `document.querySelector("main").innerText.includes("Pantry, by the sink")`)
 	office.picture("overview")
 	office.open(server.link("address") + "/devices/" + device)
 	history := digitsJoined(office.text("main"))

@@ -55,9 +55,16 @@ func (c importRegisterCmd) Run(e *env) error {
 	return errors.Join(c.print(e, report), c.failed(report))
 }
 
+// problemsShown is how many problems of a file are printed; whoever has more mends these first.
+const problemsShown = 20
+
 // print says what was done and what is wrong with single cells.
 func (c importRegisterCmd) print(e *env, r export.ImportReport) error {
-	for _, p := range r.Problems {
+	for i, p := range r.Problems {
+		if i == problemsShown {
+			fmt.Fprintf(e.stderr, "and %d more\n", len(r.Problems)-i)
+			break
+		}
 		where := fmt.Sprintf("line %d", p.Line)
 		if p.Column != "" {
 			where += ", " + p.Column

@@ -29,12 +29,14 @@ func (c labelsCmd) Run(e *env) error {
 	query := url.Values{"sheet": {c.Sheet}, "start": {strconv.Itoa(c.Start)}}
 	setIf(query, "site", c.Site)
 	setIf(query, "by", c.By)
-	return e.with(c.Data, func(d *door) error {
-		body, err := d.get("/own/labels", query)
-		if err != nil {
-			return err
-		}
-		defer body.Close()
-		return c.write(e, func(w io.Writer) error { return copyOut(e, w, body, "labels") })
+	return c.write(e, func(w io.Writer) error {
+		return e.with(c.Data, func(d *door) error {
+			body, err := d.get("/own/labels", query)
+			if err != nil {
+				return err
+			}
+			defer body.Close()
+			return copyOut(e, w, body, "labels")
+		})
 	})
 }

@@ -22,7 +22,11 @@ func TestMain(m *testing.M) {
 		main()
 		return
 	}
-	os.Exit(m.Run())
+	code := m.Run()
+	if demoDir != "" {
+		_ = os.RemoveAll(demoDir)
+	}
+	os.Exit(code)
 }
 
 // process is a running server.

@@ -52,12 +52,7 @@ func (c serveCmd) Run(e *env) error {
 		err = fmt.Errorf("%s holds a demo store, which is served on this machine only: use tripwell demo --data %s", c.Data, c.Data)
 		return errors.Join(err, public.Close(), s.Close())
 	}
-	err = c.greet(e, s, public)
-	if err == nil {
-		err = serve(e, s, c.Data, public)
-	} else {
-		err = errors.Join(err, public.Close())
-	}
+	err = serve(e, s, c.Data, public, func() error { return c.greet(e, s, public) })
 	return errors.Join(err, s.Close())
 }
 
@@ -127,15 +122,24 @@ func everSignedIn(s *store.Store) (bool, error) {
 	}
 }
 
-// serve answers on the public address and on the owner's socket until the command is told to stop.
-func serve(e *env, s *store.Store, dir string, public net.Listener) error {
-	srv, err := server.New(s, server.Options{Log: slog.New(slog.NewTextHandler(e.stderr, nil))})
+// serve answers on the public address and on the owner's socket until the command is told to stop. It greets when both
+// are open: what the greeting says can be used at once.
+func serve(e *env, s *store.Store, dir string, public net.Listener, greet func() error) error {
+	level := slog.LevelInfo
+	if s.Demo() {
+		level = slog.LevelWarn // whoever tries it out wants to read the greeting, not each request
+	}
+	log := slog.New(slog.NewTextHandler(e.stderr, &slog.HandlerOptions{Level: level}))
+	srv, err := server.New(s, server.Options{Log: log})
 	if err != nil {
 		return errors.Join(err, public.Close())
 	}
 	owner, err := server.ListenSocket(dir)
 	if err != nil {
 		return errors.Join(err, public.Close())
+	}
+	if err := greet(); err != nil {
+		return errors.Join(err, public.Close(), owner.Close())
 	}
 	return srv.Serve(e.ctx, public, owner)
 }

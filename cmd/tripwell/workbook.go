@@ -28,12 +28,14 @@ func (c workbookCmd) Run(e *env) error {
 	setIf(query, "from", c.From.text())
 	setIf(query, "to", c.To.text())
 	setIf(query, "by", c.By)
-	return e.with(c.Data, func(d *door) error {
-		body, err := d.get("/own/workbook", query)
-		if err != nil {
-			return err
-		}
-		defer body.Close()
-		return c.write(e, func(w io.Writer) error { return copyOut(e, w, body, "workbook") })
+	return c.write(e, func(w io.Writer) error {
+		return e.with(c.Data, func(d *door) error {
+			body, err := d.get("/own/workbook", query)
+			if err != nil {
+				return err
+			}
+			defer body.Close()
+			return copyOut(e, w, body, "workbook")
+		})
 	})
 }

@@ -3,7 +3,9 @@ package demo
 import (
 	"context"
 	"encoding/json"
+	"os"
 	"strings"
+	"sync"
 	"testing"
 	"time"
 
@@ -16,7 +18,7 @@ var endDay = time.Date(2026, time.December, 1, 9, 30, 0, 0, time.UTC)
 
 var owner = store.Scope{Role: "owner", All: true}
 
-// built makes the demo organisation once for a test and opens it as the demo command does.
+// built makes the demo organisation and opens it as the demo command does.
 func built(t testing.TB, now time.Time) *store.Store {
 	t.Helper()
 	dir := t.TempDir()
@@ -25,6 +27,38 @@ func built(t testing.TB, now time.Time) *store.Store {
 		t.Fatal(err)
 	}
 	t.Logf("built in %v", time.Since(began).Round(time.Millisecond))
+	return open(t, dir, now)
+}
+
+// shared is one organisation for the tests that only read.
+var shared = sync.OnceValues(func() (string, error) {
+	dir, err := os.MkdirTemp("", "tripwell-demo-test-")
+	if err != nil {
+		return "", err
+	}
+	return dir, Build(context.Background(), dir, endDay, nil)
+})
+
+func TestMain(m *testing.M) {
+	code := m.Run()
+	if dir, err := shared(); err == nil {
+		_ = os.RemoveAll(dir)
+	}
+	os.Exit(code)
+}
+
+// once opens the shared organisation.
+func once(t testing.TB) *store.Store {
+	t.Helper()
+	dir, err := shared()
+	if err != nil {
+		t.Fatal(err)
+	}
+	return open(t, dir, endDay)
+}
+
+func open(t testing.TB, dir string, now time.Time) *store.Store {
+	t.Helper()
 	s, err := store.Open(dir, store.Options{Now: func() time.Time { return now }, Demo: true})
 	if err != nil {
 		t.Fatal(err)
@@ -107,7 +141,7 @@ func siteOf(t testing.TB, s *store.Store, code string) string {
 func TestBuild_ShownIsWhatTheJudgeSays(t *testing.T) {
 	results := map[string]int{}
 	tags, devices := 0, 0
-	for _, l := range lines(t, built(t, endDay)) {
+	for _, l := range lines(t, once(t)) {
 		switch l.Kind {
 		case "device.registered":
 			devices++
@@ -173,12 +207,12 @@ func TestBuild_AnyDay(t *testing.T) {
 
 // Built twice for the same end, the same ids, tags and readings come out: only what a store draws for itself differs.
 func TestBuild_SameAgain(t *testing.T) {
-	once, again := lines(t, built(t, endDay)), lines(t, built(t, endDay))
-	if len(once) != len(again) {
-		t.Fatalf("%d records, then %d", len(once), len(again))
+	first, again := lines(t, once(t)), lines(t, built(t, endDay))
+	if len(first) != len(again) {
+		t.Fatalf("%d records, then %d", len(first), len(again))
 	}
-	for i := range once {
-		a, b := once[i], again[i]
+	for i := range first {
+		a, b := first[i], again[i]
 		if a.ID != b.ID || a.Kind != b.Kind || !a.At.Equal(b.At) || a.Body.Tag != b.Body.Tag || a.Body.Shown != b.Body.Shown {
 			t.Fatalf("record %d: %+v, then %+v", i, a, b)
 		}
@@ -186,7 +220,7 @@ func TestBuild_SameAgain(t *testing.T) {
 }
 
 func TestBuild_StoreIsWhole(t *testing.T) {
-	s := built(t, endDay)
+	s := once(t)
 	if !s.Demo() {
 		t.Error("the store is not marked as a demo")
 	}

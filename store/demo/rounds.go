@@ -47,13 +47,13 @@ func (b *builder) roundsOf(s *site, day forms.Day) {
 	}
 }
 
-// phoneFor says who walks a part of a round: Crew 1 at Bracken Row, Crew 2 at Ottermoor, both in turn at Kiln Lane. For
-// two months Crew 2 used an old phone.
+// phoneFor says who walks a part of a round: Crew 1 at Bracken Row, Crew 2 at Ottermoor, both in turn at Kiln Lane. On
+// one round there Crew 2 used an old phone.
 func (b *builder) phoneFor(s *site, day forms.Day, part int) *phone {
 	switch {
 	case s.code == bracken || s.code == kilnLane && part%2 == 0:
 		return b.phones[phone1]
-	case day >= firstOfMonth(b.first, 6) && day < firstOfMonth(b.first, 7):
+	case s.code == kilnLane && day >= firstOfMonth(b.first, 6) && day < firstOfMonth(b.first, 7):
 		return b.phones[phoneOld]
 	}
 	return b.phones[phone2]

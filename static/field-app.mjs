@@ -31,7 +31,7 @@ export function fieldApp(parts) {
 
   function findDevice(id) {
     for (const log of state.sites.keys()) {
-      const site = siteView(log), device = site.byId.get(id);
+      const site = siteView(log), device = site.device(id);
       if (device) return { site, device, place: site.places.get(device.place) };
     }
     return null;
@@ -48,7 +48,7 @@ export function fieldApp(parts) {
   /** Drafts are kept at every keystroke; typing never waits for it, and a failure is said at once. */
   function putDraft(draft) {
     state.drafts.set(draft.key, draft);
-    changed();
+    draw(app);
     tray.putDraft(draft).then(() => {
       if (state.trouble === say("field.draft_not_kept")) { state.trouble = null; draw(app); }
     }, () => { state.trouble = say("field.draft_not_kept"); draw(app); });
@@ -108,7 +108,7 @@ export function fieldApp(parts) {
     } catch (e) {
       state.saving = false;
       state.trouble = say(e?.name === "QuotaExceededError" ? "field.full" : "field.not_kept");
-      changed();
+      draw(app);
     }
   }
 
@@ -161,7 +161,7 @@ export function fieldApp(parts) {
     unfold(ask) {
       state.me.unfolded = [...new Set([...(state.me.unfolded ?? []), ask.reading])];
       tray.setMe("unfolded", state.me.unfolded).catch(() => {});
-      changed();
+      draw(app);
     },
     sendNow: () => parts.keepSending(),
     touched: isTouched,
@@ -189,10 +189,18 @@ function sameRoom(site, device, place) {
   return Boolean(place && other) && ["building", "floor", "room"].every((k) => place[k] === other[k]);
 }
 
-/** A site's copy as the pages read it. */
+/** Where things stand in a copy, by id; a copy never changes, so this is made once for each. */
+const indexes = new WeakMap();
+function indexOf(snapshot) {
+  if (!indexes.has(snapshot)) indexes.set(snapshot, { places: new Map(snapshot.places.map((p) => [p.id, p])), at: new Map(snapshot.devices.map((d, i) => [d.id, i])) });
+  return indexes.get(snapshot);
+}
+
+/** A site's copy as the pages read it, own entries laid over. */
 function readSite(row, records, today) {
-  const { snapshot } = row;
-  const own = overlay(records.filter((r) => r.log === row.log));
-  const devices = snapshot.devices.map((d) => (own.has(d.id) ? withOwn(d, own.get(d.id)) : d));
-  return { log: row.log, taken: row.taken, snapshot, today, devices, byId: new Map(devices.map((d) => [d.id, d])), places: new Map(snapshot.places.map((p) => [p.id, p])) };
+  const { snapshot, log, taken } = row;
+  const { places, at } = indexOf(snapshot);
+  const devices = snapshot.devices.slice();
+  for (const [id, own] of overlay(records.filter((r) => r.log === log))) if (at.has(id)) devices[at.get(id)] = withOwn(devices[at.get(id)], own);
+  return { log, taken, snapshot, today, devices, places, device: (id) => devices[at.get(id)] };
 }

@@ -96,12 +96,12 @@ export function TrayPage({ app }) {
   const line = (r) => html`<li class="row still" key=${r.id}><span class="name">${r.summary?.title ?? r.id}</span>
     ${r.summary && html`<${Mark} verdict=${r.summary.result}>${say(`verdict.${r.summary.result}`)}<//>`}
     <span class="quiet">${r.summary ? `${say(`task.${r.summary.task}`)} · ` : ""}${showMoment(app, r.saved)}</span>
-    ${r.state === "refused" && html`<span class="bad">${r.receipt?.text || say("field.refused_no_text")}</span>`}</li>`;
+    ${r.state === "refused" && html`<span class="bad">${r.receipt?.text || say(r.receipt?.code === "too_large" ? "field.refused_too_large" : "field.refused_no_text")}</span>`}</li>`;
   return html`
-    <${Where} app=${app} title=${waiting.length > 0 ? say("field.kept", { n: waiting.length }) : say("field.all_sent")} context=${say("field.tray")} back="#/" />
+    <${Where} app=${app} title=${waiting.length > 0 ? say("field.kept", { n: waiting.length }) : refused.length > 0 ? say("field.refused_count", { n: refused.length }) : say("field.all_sent")} context=${say("field.tray")} back="#/" />
     <main>
       ${waiting.length > 0 && html`<p class="hint pad">${say(`field.line.${state.line}`)}</p><button type="button" class="big more" onClick=${app.sendNow}>${say("field.send_now")}</button><ul class="rows">${waiting.map(line)}</ul>`}
-      ${refused.length > 0 && html`<section class="room"><h2>${say("field.refused_count", { n: refused.length })}</h2><p class="hint pad">${say("field.refused_hint")}</p><ul class="rows">${refused.map(line)}</ul></section>`}
+      ${refused.length > 0 && html`<section class="room"><h2>${say("field.refused_title")}</h2><p class="hint pad">${say("field.refused_hint")}</p><ul class="rows">${refused.map(line)}</ul></section>`}
       ${state.persisted === false && html`<p class="hint pad">${say("field.not_persistent")}</p>`}
     </main><${Foot} app=${app} />`;
 }

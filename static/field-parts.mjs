@@ -27,8 +27,8 @@ export function Mark({ verdict, children }) {
 /** Head of a page: where we are, said first. */
 export function Where({ app, title, tag, context, progress, back }) {
   return html`<header class="where">
-    ${back && html`<a class="back" href=${back}>${app.say("field.back")}</a>`}
-    <div class="line"><h1>${title}</h1>${tag && html`<span class="tag">${showTag(tag)}</span>`}</div>
+    ${back && html`<div class="line"><a class="back" href=${back}>${app.say("field.back")}</a>${tag && html`<span class="tag">${showTag(tag)}</span>`}</div>`}
+    <h1>${title}</h1>
     ${(context || progress) && html`<div class="line quiet"><span>${context}</span><span class="keep">${progress}</span></div>`}
     <${StillOff} app=${app} />
   </header><${Notices} app=${app} />`;
@@ -53,11 +53,10 @@ function Notices({ app }) {
 /** Foot of every page: what is kept on this phone, and the one main button where the page has one. */
 export function Foot({ app, children }) {
   const { say, tray } = app;
-  const lines = [];
-  if (app.state.line === "unreached") lines.push(say("field.no_signal"));
-  if (tray.refused > 0) lines.push(say("field.refused_count", { n: tray.refused }));
-  const kept = tray.waiting > 0 ? say("field.kept", { n: tray.waiting }) : say("field.all_sent");
-  return html`<footer class="foot"><a class="tray" href="#/tray">${lines.map((l) => html`<span key=${l}>${l}<br /></span>`)}<b>${kept}</b></a>${children}</footer>`;
+  const kept = tray.waiting > 0 ? say("field.kept", { n: tray.waiting }) : null;
+  const refused = tray.refused > 0 ? say("field.refused_count", { n: tray.refused }) : null;
+  return html`<footer class="foot"><a class="tray" href="#/tray">${app.state.line === "unreached" && html`<span>${say("field.no_signal")}</span>`}
+    ${refused && html`<b class="bad">${refused}</b>`}${(kept || !refused) && html`<b>${kept ?? say("field.all_sent")}</b>`}</a>${children}</footer>`;
 }
 
 /** Context of a device: floor and room, kind, panel and circuit. */

@@ -11,12 +11,13 @@ export function meets(task, readings) {
 
 /**
  * Own entries that the copy does not hold yet, by device. rows: of the tray, {saved, state, summary:{entry, device, task,
- * day, result, readings, numbers}}; one in state "kept" was in a copy asked for after the server had the record.
+ * day, result, readings, numbers}}; one in state "kept" was in a copy asked for after the server had the record, one
+ * "refused" counts nowhere until a manager admits it.
  */
 export function overlay(rows) {
   const own = new Map();
   for (const row of rows.toSorted((a, b) => a.saved - b.saved)) {
-    if (!row.summary || row.state === "kept") continue;
+    if (!row.summary || row.state === "kept" || row.state === "refused") continue;
     const list = own.get(row.summary.device) ?? [];
     list.push({ ...row.summary, saved: row.saved, unsent: row.state !== "sent" });
     own.set(row.summary.device, list);
@@ -40,6 +41,9 @@ export function withOwn(device, own = []) {
 /** Whether a due date wants work on a day: everything but what still lies ahead. */
 export const wantsWork = (due, today) => due.state !== "upcoming" || due.due <= today;
 
+/** Whether a device wants a task now. */
+export const wants = (device, task, today) => (device.due ?? []).some((d) => d.task === task && wantsWork(d, today));
+
 /** The dates of a device that want work now, worst first. */
 export function dueNow(device, today) {
   const order = ["overdue", "never-tested", "in-grace", "due"];
@@ -52,14 +56,14 @@ export function nextDue(devices, from, task, today) {
   const start = devices.findIndex((d) => d.id === from);
   for (let i = 1; i < devices.length; i++) {
     const d = devices[(start + i) % devices.length];
-    if (dueNow(d, today).some((x) => x.task === task)) return d;
+    if (wants(d, task, today)) return d;
   }
   return null;
 }
 
 /** How far along: place of a device among those of its list that want the task, from 1. */
 export function placeInRound(devices, id, task, today) {
-  const round = devices.filter((d) => d.id === id || dueNow(d, today).some((x) => x.task === task));
+  const round = devices.filter((d) => d.id === id || wants(d, task, today));
   return { n: round.findIndex((d) => d.id === id) + 1, of: round.length };
 }
 

@@ -3,7 +3,8 @@
 
 import { drain } from "./tray.mjs";
 
-const FRESH = 10 * 60_000; // a copy younger than this is taken again only when something of ours went to its site
+const FRESH = 10 * 60_000; // a copy older than this is taken again
+const SOON = 2 * 60_000; // and after this already where something of ours went to its site; until then it is laid over the copy
 const KEEP_SENT = 180 * 86_400_000; // acknowledged records stay this long, so that a restored server can be refilled
 
 /**
@@ -68,7 +69,9 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
 
   function wanted(log) {
     const row = state.sites.get(log);
-    return !row || now() - row.taken > FRESH || state.records.some((r) => r.log === log && r.state === "sent");
+    if (!row) return true;
+    const age = Math.abs(now() - row.taken); // a clock set back makes no copy fresh for ever
+    return age > FRESH || (age > SOON && state.records.some((r) => r.log === log && r.state === "sent"));
   }
 
   async function refreshSite(log) {

@@ -96,6 +96,18 @@ test("sync: a token that ended is renewed by the session, and what waited goes",
   const p = phone(server(), [{ id: "r1", record: "r1", log: "s1", state: "waiting" }]);
   Object.assign(p.state.me, { installation: "i", token: "old" });
   assert.equal((await p.run()).state, "empty");
+  assert.deepEqual(p.covered, ["r1"], "the copy asked for afterwards holds it");
+});
+
+test("sync: a fresh copy is not taken again for every entry", async () => {
+  let asked = 0;
+  const p = phone(server({ snapshot: async () => { asked++; return ok({}); } }), [{ id: "r1", record: "r1", log: "s1", state: "waiting" }]);
+  p.state.sites.set("s1", { log: "s1", taken: 900 });
+  await p.run();
+  assert.equal(asked, 0);
+  assert.equal(p.state.records[0].state, "sent", "until then it is laid over");
+  p.state.sites.set("s1", { log: "s1", taken: 1000 - 3 * 60_000 });
+  await p.run();
   assert.deepEqual(p.covered, ["r1"]);
 });
 

@@ -37,7 +37,7 @@ test("list: own entries are laid over; a measured test with the button pressed a
   assert.equal(devices[2].due.length, 2, "the copy itself stays as it was");
   const untested = withOwn(devices[2], overlay([{ ...row, summary: { ...row.summary, result: "not-tested" } }]).get("c"));
   assert.equal(untested.due.length, 2, "could not test never moves a date");
-  assert.equal(overlay([{ ...row, state: "kept" }]).size, 0);
+  for (const state of ["kept", "refused"]) assert.equal(overlay([{ ...row, state }]).size, 0, state);
 });
 
 test("list: an injected trip alone does not meet the button plan", () => {

@@ -1,6 +1,7 @@
 // The phone's two databases. `tray` holds what is ours alone: who we are, the counters, the records and the drafts; no
-// reset ever drops it. `along` holds copies of the server's data and may be dropped whole. Every write is strict: the
-// promise resolves when the transaction is complete on disk, and rejects when it is aborted.
+// reset ever drops it. `along` holds copies of the server's data and may be dropped whole. What is a record's is written
+// strictly: the promise resolves when the transaction is complete on disk, and rejects when it is aborted. Drafts are
+// written at every keystroke and survive the end of the page, not the loss of power in the same second.
 
 import { openDB, unwrap } from "./vendor/idb.mjs";
 
@@ -51,8 +52,8 @@ function connection(open) {
 /** The `tray` database as the client uses it. */
 export function trayDB() {
   const use = connection(openTray);
-  const write = (store, fn) => use(async (db) => {
-    const tx = db.transaction(store, "readwrite", STRICT);
+  const write = (store, fn, options = STRICT) => use(async (db) => {
+    const tx = db.transaction(store, "readwrite", options);
     const [result] = await Promise.all([fn(tx.store), tx.done]);
     return result;
   });
@@ -65,8 +66,7 @@ export function trayDB() {
     setMe: (name, value) => write("me", (store) => store.put(value, name)),
 
     drafts: () => use((db) => db.getAll("drafts")),
-    putDraft: (draft) => write("drafts", (store) => store.put(draft)),
-    dropDraft: (key) => write("drafts", (store) => store.delete(key)),
+    putDraft: (draft) => write("drafts", (store) => store.put(draft), { durability: "relaxed" }),
 
     /** What pages show: all that is not yet in a copy of the server's data. */
     records: () => use(async (db) => (await Promise.all(["waiting", "refused", "sent"].map((s) => db.getAllFromIndex("records", "state", s)))).flat()),

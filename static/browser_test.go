@@ -1,0 +1,343 @@
+package static
+
+import (
+	"context"
+	"encoding/json"
+	"fmt"
+	"net/http"
+	"net/http/httptest"
+	"os"
+	"os/exec"
+	"path/filepath"
+	"strings"
+	"sync"
+	"testing"
+	"time"
+
+	"github.com/chromedp/chromedp"
+)
+
+// exchangeStandIn speaks the exchange to one phone and keeps what it decided. Faults are switched on from the test: the line
+// is really cut, and an answer can be lost after the records are kept.
+type exchangeStandIn struct {
+	mu         sync.Mutex
+	cut        bool
+	loseAnswer bool
+	signedOut  bool
+	again      int // records that were here already
+	order      []string
+	records    map[string]string
+	snapshot   []byte
+}
+
+const (
+	standInSite   = "01900000-0000-7000-8000-000000000001"
+	standInPerson = "01900000-0000-7000-8000-0000000000b1"
+)
+
+func newStandIn(t *testing.T) *exchangeStandIn {
+	t.Helper()
+	read := func(pattern string) []any {
+		names, err := filepath.Glob(filepath.Join("..", "forms", "data", pattern, "*.json"))
+		if err != nil || len(names) == 0 {
+			t.Fatalf("no %s found: %v", pattern, err)
+		}
+		var all []any
+		for _, name := range names {
+			raw, err := os.ReadFile(name)
+			if err != nil {
+				t.Fatal(err)
+			}
+			var one any
+			if err := json.Unmarshal(raw, &one); err != nil {
+				t.Fatalf("%s: %v", name, err)
+			}
+			if list, ok := one.([]any); ok {
+				all = append(all, list...)
+			} else {
+				all = append(all, one)
+			}
+		}
+		return all
+	}
+	var places, devices []any
+	for i, name := range []string{"Pantry, by the sink", "Counter, left end", "Counter, right end"} {
+		place := fmt.Sprintf("01900000-0000-7000-8000-0000000001%02d", i)
+		places = append(places, map[string]any{"id": place, "floor": "Ground floor", "room": "Kitchen", "name": name})
+		devices = append(devices, map[string]any{
+			"id": fmt.Sprintf("01900000-0000-7000-8000-0000000002%02d", i), "kind": "gfci-receptacle", "place": place, "panel": "LP-2", "circuit": fmt.Sprint(10 + i),
+			"fields": map[string]any{"nominal_v": 120}, "due": []any{map[string]any{"task": "button", "due": "2020-01-31", "state": "overdue"}},
+		})
+	}
+	raw, err := json.Marshal(map[string]any{
+		"site":  map[string]any{"id": standInSite, "code": "NORTH", "name": "North house", "zone": "UTC", "standard": "NEC"},
+		"today": "2020-02-01", "places": places, "devices": devices, "forms": read("forms"), "limit_sets": read("limits"), "instruments": []any{},
+	})
+	if err != nil {
+		t.Fatal(err)
+	}
+	return &exchangeStandIn{records: map[string]string{}, snapshot: raw}
+}
+
+func (x *exchangeStandIn) set(fn func()) {
+	x.mu.Lock()
+	defer x.mu.Unlock()
+	fn()
+}
+
+func (x *exchangeStandIn) ServeHTTP(w http.ResponseWriter, r *http.Request) {
+	x.mu.Lock()
+	defer x.mu.Unlock()
+	if x.cut {
+		panic(http.ErrAbortHandler)
+	}
+	w.Header().Set("Content-Type", "application/json")
+	if x.signedOut {
+		w.WriteHeader(http.StatusUnauthorized)
+		_, _ = w.Write([]byte(`{"error":{"code":"not_signed_in"}}`))
+		return
+	}
+	logs := []any{map[string]any{"log": standInSite, "code": "NORTH", "name": "North house"}}
+	switch r.URL.Path {
+	case "/exchange/enrol":
+		x.answer(w, map[string]any{"token": "t", "person": map[string]any{"id": standInPerson}, "logs": logs})
+	case "/exchange/logs":
+		x.answer(w, map[string]any{"logs": logs})
+	case "/exchange/snapshot":
+		_, _ = w.Write(x.snapshot)
+	case "/exchange/push":
+		x.push(w, r)
+	default:
+		http.NotFound(w, r)
+	}
+}
+
+func (x *exchangeStandIn) answer(w http.ResponseWriter, v any) {
+	_ = json.NewEncoder(w).Encode(v)
+}
+
+func (x *exchangeStandIn) push(w http.ResponseWriter, r *http.Request) {
+	var body struct {
+		Protocol int
+		Records  []struct{ Record string }
+	}
+	if err := json.NewDecoder(r.Body).Decode(&body); err != nil || body.Protocol != 1 {
+		http.Error(w, "bad push", http.StatusBadRequest)
+		return
+	}
+	var receipts []any
+	for _, rec := range body.Records {
+		var env struct{ ID string }
+		if err := json.Unmarshal([]byte(rec.Record), &env); err != nil {
+			http.Error(w, "bad record", http.StatusBadRequest)
+			return
+		}
+		state := "already"
+		if _, known := x.records[env.ID]; known {
+			x.again++
+		} else {
+			state = "stored"
+			x.records[env.ID] = rec.Record
+			x.order = append(x.order, env.ID)
+		}
+		receipts = append(receipts, map[string]any{"id": env.ID, "state": state})
+	}
+	if x.loseAnswer {
+		x.loseAnswer = false
+		panic(http.ErrAbortHandler)
+	}
+	x.answer(w, map[string]any{"receipts": receipts})
+}
+
+// serveClient serves the client's files as the program does, under the same content policy.
+func serveClient(t *testing.T, x *exchangeStandIn) string {
+	t.Helper()
+	words, err := ReadWords("en")
+	if err != nil {
+		t.Fatal(err)
+	}
+	mux := http.NewServeMux()
+	mux.Handle("/exchange/", x)
+	mux.Handle("/assets/", http.StripPrefix("/assets/", http.FileServerFS(Files)))
+	mux.HandleFunc("/field", func(w http.ResponseWriter, _ *http.Request) {
+		w.Header().Set("Content-Type", "text/html; charset=utf-8")
+		w.Header().Set("Content-Security-Policy", "default-src 'none'; script-src 'self'; style-src 'self'; connect-src 'self'")
+		fmt.Fprintf(w, `<!doctype html><meta name="viewport" content="width=device-width"><link rel="stylesheet" href="/assets/tokens.css"><link rel="stylesheet" href="/assets/field.css">
+<script type="module" src="/assets/field.mjs"></script><body class="field"><div id="field" data-failed="%s"></div>`, words.Say("field.could_not_start"))
+	})
+	srv := httptest.NewServer(mux)
+	t.Cleanup(srv.Close)
+	return srv.URL
+}
+
+// phone is a browser with an empty profile and a small window.
+type phone struct {
+	t   *testing.T
+	ctx context.Context
+}
+
+func openPhone(t *testing.T) *phone {
+	t.Helper()
+	if testing.Short() {
+		t.Skip("browser tests are left out with -short")
+	}
+	path, err := exec.LookPath("chromium")
+	if err != nil {
+		if os.Getenv("CI") != "" {
+			t.Fatal("Chromium is not installed, and in CI browser tests must run")
+		}
+		t.Skip("Chromium is not installed: browser test left out")
+	}
+	ctx, cancel := chromedp.NewExecAllocator(context.Background(),
+		chromedp.ExecPath(path), chromedp.Headless, chromedp.NoFirstRun, chromedp.UserDataDir(filepath.Join(t.TempDir(), "profile")),
+		chromedp.Flag("no-sandbox", true), chromedp.Flag("disable-gpu", true), chromedp.Flag("disable-quic", true),
+		chromedp.Flag("disable-dev-shm-usage", true), chromedp.Flag("disable-background-networking", true),
+		chromedp.Flag("disable-component-update", true), chromedp.Flag("disable-sync", true))
+	t.Cleanup(cancel)
+	ctx, cancel = chromedp.NewContext(ctx)
+	t.Cleanup(cancel)
+	p := &phone{t, ctx}
+	p.do(chromedp.EmulateViewport(390, 844))
+	return p
+}
+
+func (p *phone) do(a chromedp.Action[chromedp.Void]) {
+	p.t.Helper()
+	if err := chromedp.Do(p.ctx, a); err != nil {
+		p.t.Fatal(err)
+	}
+}
+
+// until waits until an expression is true on the page.
+func (p *phone) until(what, expression string) {
+	p.t.Helper()
+	for end := time.Now().Add(30 * time.Second); time.Now().Before(end); time.Sleep(30 * time.Millisecond) {
+		if ok, err := chromedp.Run(p.ctx, chromedp.Evaluate[bool]("Boolean("+expression+")")); err == nil && ok {
+			return
+		}
+	}
+	page, _ := chromedp.Run(p.ctx, chromedp.Evaluate[string]("location.href + '\\n' + document.body.innerText.slice(0, 2000)"))
+	p.t.Fatalf("waited 30 s for %s; the page says:\n%s", what, page)
+}
+
+func (p *phone) sees(text string) {
+	p.t.Helper()
+	p.until(text, `document.body.innerText.includes(`+fmt.Sprintf("%q", text)+`)`)
+}
+
+// press presses the button or link within a selector whose text begins so.
+func (p *phone) press(within, text string) {
+	p.t.Helper()
+	find := fmt.Sprintf(`[...document.querySelectorAll(%q)].find((e) => e.innerText.trim().startsWith(%q))`, within, text)
+	p.until(within+" "+text, find)
+	p.until("a press on "+text, `(`+find+`.click(), true)`)
+}
+
+// kept gives the rows of the tray as the browser's own storage has them.
+func (p *phone) kept() []map[string]any {
+	p.t.Helper()
+	raw, err := chromedp.Run(p.ctx, chromedp.Evaluate[string](`new Promise((yes, no) => {
+		const open = indexedDB.open("tray"); open.onerror = no;
+		open.onsuccess = () => { const all = open.result.transaction("records").objectStore("records").getAll(); all.onerror = no;
+			all.onsuccess = () => { yes(JSON.stringify(all.result)); open.result.close(); }; }; })`, chromedp.EvalAwaitPromise))
+	if err != nil {
+		p.t.Fatal(err)
+	}
+	var rows []map[string]any
+	if err := json.Unmarshal([]byte(raw), &rows); err != nil {
+		p.t.Fatal(err)
+	}
+	return rows
+}
+
+func TestField_KeepsDraftsAndEntriesThroughReloadsCutsAndLostAnswers(t *testing.T) {
+	x := newStandIn(t)
+	p := openPhone(t)
+	p.do(chromedp.Navigate(serveClient(t, x) + "/field"))
+	p.press("a", "North house")
+	p.press("a", "Pantry")
+	p.press("a", "Button test")
+
+	// A draft outlives the page, and what is switched off is said everywhere.
+	p.press("button", "Something else")
+	p.press("#ask-condition button", "Sound")
+	p.press("#ask-found button", "On")
+	p.press("#ask-button_trips button", "Yes")
+	p.sees("Still off: Pantry, by the sink")
+	p.do(chromedp.Reload())
+	p.until("the draft after loading again", `document.querySelectorAll("#ask-condition [aria-pressed=true], #ask-found [aria-pressed=true], #ask-button_trips [aria-pressed=true]").length === 3`)
+	p.until("the list", `(location.hash = "#/site/NORTH", true)`)
+	p.sees("Still off: Pantry, by the sink")
+	p.press("a.off", "Still off")
+
+	// The line is cut: three entries are kept, through a reload too.
+	x.set(func() { x.cut = true })
+	p.press("#ask-button_resets button", "Yes")
+	p.press(".go", "Save")
+	p.sees("Pantry, by the sink: saved on this phone")
+	for i, next := range []string{"2 kept on this phone", "3 kept on this phone"} {
+		p.press(".one-tap", "")
+		p.until("the one tap", `document.querySelector(".go").getAttribute("aria-disabled") === "false"`)
+		p.press(".go", "Save")
+		p.sees(next)
+		if i == 1 {
+			p.sees("Nothing due")
+		}
+	}
+	p.do(chromedp.Reload())
+	p.sees("3 kept on this phone")
+	p.sees("No signal")
+
+	// The line is back, signed out: nothing goes, nothing is dropped.
+	x.set(func() { x.cut, x.signedOut = false, true })
+	p.press("a.tray", "")
+	p.press("button", "Send now")
+	p.sees("You are signed out")
+	p.sees("3 kept on this phone")
+
+	// Signed in, the first answer is lost after the records were kept: the phone sends again by itself, each is there once.
+	x.set(func() { x.signedOut, x.loseAnswer = false, true })
+	p.press("button", "Send now")
+	p.sees("All sent")
+
+	x.mu.Lock()
+	defer x.mu.Unlock()
+	if x.loseAnswer || x.again != 3 {
+		t.Errorf("got %d records sent again after the lost answer, want 3", x.again)
+	}
+	if len(x.order) != 3 {
+		t.Fatalf("got %d records at the server, want 3", len(x.order))
+	}
+	rows := p.kept()
+	if len(rows) != 3 {
+		t.Fatalf("got %d rows in the tray's store, want 3", len(rows))
+	}
+	for i, id := range x.order {
+		var env struct {
+			N     int
+			By    string
+			Log   string
+			Clock string
+			Body  struct{ Shown struct{ Result string } }
+		}
+		if err := json.Unmarshal([]byte(x.records[id]), &env); err != nil {
+			t.Fatal(err)
+		}
+		if env.N != i+1 || env.Log != standInSite || env.By != standInPerson || len(env.Clock) != 16 || env.Body.Shown.Result != "pass" {
+			t.Errorf("record %d: got %s", i+1, x.records[id])
+		}
+		same := false
+		for _, row := range rows {
+			same = same || row["id"] == id && row["record"] == x.records[id]
+			if state := row["state"]; row["id"] == id && (state != "sent" && state != "kept") {
+				t.Errorf("record %d is %v on the phone after its receipt", i+1, state)
+			}
+		}
+		if !same {
+			t.Errorf("record %d is not, byte for byte, what the phone kept", i+1)
+		}
+	}
+	if strings.Contains(x.records[x.order[0]], `"draft`) {
+		t.Error("a record carries parts of its draft")
+	}
+}

@@ -16,8 +16,8 @@ import (
 	"tripwell/store/record"
 )
 
-// rebuildSlice bounds what one transaction of a rebuild holds in memory.
-const rebuildSlice = 50_000
+// rebuildSlice bounds what one transaction of a rebuild holds in memory, in records; tests make it small.
+var rebuildSlice = 50_000
 
 // derivedBuckets are all that Rebuild computes: read models and counts.
 func derivedBuckets() [][]byte { return append(append([][]byte{}, modelBuckets...), countBuckets...) }

@@ -132,7 +132,7 @@ func placeText(p store.Place) string {
 	return strings.Join(parts, " · ")
 }
 
-// tagText shows a tag in groups: K7QM2P3 → K7Q-M2P-3.
+// tagText shows a tag in groups, K7Q-M2P-3, with plain hyphens: people search sheets for what they type.
 func tagText(tag string) string {
 	if len(tag) != 7 || strings.ContainsAny(tag, "- ") {
 		return tag

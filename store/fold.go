@@ -37,6 +37,7 @@ type fold struct {
 	sums      map[string]int64
 	tallies   map[string]*tally
 	rules     *rules
+	ready     *ready         // of the record being folded, where its pusher worked something out
 	current   *record.Record // a correction while it is folded: the book does not hold it yet
 }
 

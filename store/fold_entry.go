@@ -9,8 +9,11 @@ import (
 
 // entryMade takes an entry into its device's row.
 func (f *fold) entryMade(r *record.Record, st record.Stamp) error {
-	body, err := readEntry(r)
-	if err != nil {
+	var body *entryBody
+	var err error
+	if k := f.readyFor(r); k != nil {
+		body = k.body
+	} else if body, err = readEntry(r); err != nil {
 		return err
 	}
 	l, err := f.log(r.Log)
@@ -54,6 +57,10 @@ func (f *fold) outcome(l *modelLog, r *record.Record, st record.Stamp, body *ent
 	said, err := f.saidOf(l.ord, parseID(r.ID))
 	if err != nil {
 		return outcome{}, err
+	}
+	if len(said) == 0 {
+		f.rules.known = f.readyFor(r)
+		defer func() { f.rules.known = nil }()
 	}
 	return f.rules.outcome(l.ord, f.orgOrd(), zone, r, st, body, said), nil
 }

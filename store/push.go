@@ -45,6 +45,7 @@ type arrival struct {
 	r     *record.Record
 	fault *record.Fault
 	st    stamped
+	ready *ready // what is known of an entry before it is decided; may be nil
 }
 
 // Push takes records from elsewhere; one receipt for each, in order. An error means that the sender knows nothing of
@@ -57,6 +58,9 @@ func (s *Store) Push(ctx context.Context, from Sender, batch []Incoming) ([]Rece
 	arrivals := make([]arrival, len(batch))
 	for i, in := range batch {
 		arrivals[i] = arrive(in, from, received)
+	}
+	if err := s.makeReady(arrivals); err != nil {
+		return nil, err
 	}
 	receipts := make([]Receipt, len(batch))
 	err := s.do(ctx, len(batch), func(g *group) error {
@@ -120,7 +124,9 @@ func (g *group) take(from Sender, a arrival, received time.Time) (Receipt, error
 	if fault != nil {
 		return g.refuse(from, a.r, fault, received)
 	}
+	g.fold.ready = a.ready
 	pos, err := g.accept(a.r, a.st.stamp, a.st.line, a.st.leaf)
+	g.fold.ready = nil
 	if errors.As(err, &fault) {
 		return g.refuse(from, a.r, fault, received)
 	}

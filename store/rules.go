@@ -18,6 +18,7 @@ type rules struct {
 	schedules map[scheduleID]forms.Schedule
 	limits    map[limitID][]*forms.LimitSet
 	forms     map[string][]*forms.Form
+	known     *ready // verdict worked out beforehand for the entry being judged
 }
 
 type scheduleID struct {
@@ -171,27 +172,33 @@ type judged struct {
 // the book does not hold, or a rule of decision this program does not know. Not measured is never a pass.
 func (ru *rules) judge(site, org uint32, e *forms.Entry, on forms.Day) judged {
 	j := judged{Verdict: forms.Verdict{Result: forms.Incomplete}}
-	form := ru.form(org, e.Form, e.Given.FormRev, on)
-	if form == nil {
+	form, set, name := ru.standing(site, org, e, on)
+	if form == nil || set == nil {
 		return j
 	}
-	j.set = e.Given.LimitSet
-	if j.set == "" {
-		j.set = forms.DefaultLimitSet(entryKind(e), e.Given.Delayed)
-	}
-	if j.set == "" {
-		j.set = form.LimitSet
-	}
-	set := ru.limitSet(site, org, j.set, on)
-	if set == nil {
-		j.set = ""
-		return j
-	}
-	j.rev = set.Revision
-	if v, err := forms.Judge(form, set, *e); err == nil {
+	j.set, j.rev = name, set.Revision
+	if v, ok := ru.known.knows(form, set); ok {
+		j.Verdict = v
+	} else if v, err := forms.Judge(form, set, *e); err == nil {
 		j.Verdict = v
 	}
 	return j
+}
+
+// standing gives the form and the limit set an entry of a day is judged by, nil where the book holds none.
+func (ru *rules) standing(site, org uint32, e *forms.Entry, on forms.Day) (form *forms.Form, set *forms.LimitSet, name string) {
+	form = ru.form(org, e.Form, e.Given.FormRev, on)
+	if form == nil {
+		return nil, nil, ""
+	}
+	name = e.Given.LimitSet
+	if name == "" {
+		name = forms.DefaultLimitSet(entryKind(e), e.Given.Delayed)
+	}
+	if name == "" {
+		name = form.LimitSet
+	}
+	return form, ru.limitSet(site, org, name, on), name
 }
 
 func entryKind(e *forms.Entry) string {

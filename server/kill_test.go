@@ -4,12 +4,15 @@ import (
 	"bytes"
 	"context"
 	"encoding/json"
+	"fmt"
+	"io"
 	"math/rand/v2"
 	"net"
 	"net/http"
 	"os/exec"
 	"path/filepath"
 	"sync"
+	"sync/atomic"
 	"testing"
 	"time"
 
@@ -49,7 +52,8 @@ func TestKill_NoAcknowledgedRecordIsLost(t *testing.T) {
 		for _, p := range phones {
 			wg.Go(func() { p.pushUntilCut("http://" + address) })
 		}
-		time.Sleep(time.Duration(20+rand.IntN(400)) * time.Millisecond)
+		waitForAcks(t, phones, 1+rand.IntN(60), &said)
+		time.Sleep(time.Duration(rand.IntN(20_000)) * time.Microsecond)
 		must(t, serve.Process.Kill())
 		_ = serve.Wait()
 		wg.Wait()
@@ -70,6 +74,26 @@ func TestKill_NoAcknowledgedRecordIsLost(t *testing.T) {
 	var err error
 	r.store, err = store.Open(r.dir, store.Options{Now: time.Now})
 	must(t, err) // the rig closes it
+}
+
+// waitForAcks waits until that many batches have been acknowledged in this round, so that a slow machine is not killed
+// before it did anything.
+func waitForAcks(t *testing.T, phones []*killPhone, batches int, said *bytes.Buffer) {
+	t.Helper()
+	var before int64
+	for _, p := range phones {
+		before += p.batches.Load()
+	}
+	for began := time.Now(); time.Since(began) < 30*time.Second; time.Sleep(time.Millisecond) {
+		var now int64
+		for _, p := range phones {
+			now += p.batches.Load()
+		}
+		if now-before >= int64(batches) {
+			return
+		}
+	}
+	t.Fatalf("the server does not acknowledge %d batches in 30 s; it said:\n%s", batches, said)
 }
 
 func checkKilled(t *testing.T, r *rig, acked map[string]string, round int) {
@@ -104,9 +128,10 @@ func checkKilled(t *testing.T, r *rig, acked map[string]string, round int) {
 // killPhone keeps what it still has to send, as a phone's tray does.
 type killPhone struct {
 	*handset
-	tray   []string
-	acked  map[string]string
-	failed error
+	tray    []string
+	acked   map[string]string
+	failed  error
+	batches atomic.Int64
 }
 
 func (p *killPhone) pushUntilCut(url string) {
@@ -129,6 +154,12 @@ func (p *killPhone) pushUntilCut(url string) {
 		if err != nil {
 			return // cut
 		}
+		if res.StatusCode != http.StatusOK {
+			text, _ := io.ReadAll(res.Body)
+			_ = res.Body.Close()
+			p.failed = fmt.Errorf("push: %d %s", res.StatusCode, text)
+			return
+		}
 		var got receiptsAnswer
 		err = json.NewDecoder(res.Body).Decode(&got)
 		_ = res.Body.Close()
@@ -143,6 +174,7 @@ func (p *killPhone) pushUntilCut(url string) {
 			p.acked[receipt.ID] = p.tray[i]
 		}
 		p.tray = nil
+		p.batches.Add(1)
 	}
 }
 

@@ -2,6 +2,7 @@ package server
 
 import (
 	"cmp"
+	"maps"
 	"slices"
 	"strconv"
 	"strings"
@@ -42,7 +43,7 @@ func (s *Server) deviceNew(c echo.Context) error {
 
 // successor is what a new device has in common with the one it replaces: place, kind and circuit.
 func (s *Server) successor(before store.Device) map[string]string {
-	all := s.deviceValues(before)
+	all := s.deviceValues(before, store.Circuit{})
 	out := map[string]string{"place": before.Place.ID}
 	for _, name := range []string{"kind", "building", "floor", "room", "name", "order", "critical_load", "whom_to_tell", "panel", "circuit", "rating_a", "rated_residual_ma", "nominal_v", "equipment_ground"} {
 		out[name] = all[name]
@@ -79,15 +80,16 @@ func (s *Server) deviceCreate(c echo.Context) error {
 
 // deviceInput is what a device form said, by record.
 type deviceInput struct {
-	place, device, circuit map[string]any
-	panel, numbers         string
-	moved                  bool // panel or circuit was changed
+	place, device   map[string]any
+	circuit, supply map[string]any // of the circuit: what was changed, and all that stands in the form
+	panel, numbers  string
+	moved           bool // panel or circuit was changed
 }
 
 // deviceInput reads what a device form may change.
 func (s *Server) deviceInput(f *typedForm) deviceInput {
 	k := s.ink()
-	in := deviceInput{place: map[string]any{}, device: map[string]any{}, circuit: map[string]any{}}
+	in := deviceInput{place: map[string]any{}, device: map[string]any{}, circuit: map[string]any{}, supply: map[string]any{}}
 	f.needed("name", k.say("office.device.spot"), 120)
 	for _, name := range placeTexts {
 		f.setText(in.place, name, name, f.line(name, 200))
@@ -111,13 +113,16 @@ func (s *Server) deviceInput(f *typedForm) deviceInput {
 	if (in.panel == "") != (in.numbers == "") {
 		f.refuse("circuit", k.say("office.device.circuit_unset"))
 	}
-	if v := f.figure("breaker_a"); v != nil {
-		in.circuit["breaker_a"] = *v
+	breaker, supply := f.figure("breaker_a"), f.choice("supply", "", "grounded", "isolated")
+	f.setFigure(in.circuit, "breaker_a", "breaker_a", breaker)
+	f.setText(in.circuit, "supply", "supply", supply)
+	if breaker != nil {
+		in.supply["breaker_a"] = *breaker
 	}
-	if v := f.choice("supply", "", "grounded", "isolated"); v != "" {
-		in.circuit["supply"] = v
+	if supply != "" {
+		in.supply["supply"] = supply
 	}
-	if len(in.circuit) > 0 && in.numbers == "" {
+	if len(in.supply) > 0 && in.numbers == "" {
 		f.refuse("circuit", k.say("office.device.circuit_unset"))
 	}
 	return in
@@ -197,40 +202,25 @@ func (s *Server) placeHere(c echo.Context, site store.Site, place string) error 
 	})
 }
 
-// circuitDrafts finds the circuit a form names, or makes it with its panel. What the form says of the breaker and the
-// supply is set on it either way.
+// circuitDrafts finds the circuit a form names, or makes it and its panel. What the form says of the breaker and the
+// supply is set on it: all of it on a new circuit, else what was changed.
 func (s *Server) circuitDrafts(c echo.Context, site store.Site, first string, in deviceInput) (drafts []store.Draft, circuit string, err error) {
 	if in.numbers == "" {
 		return nil, "", nil
 	}
-	panel := ""
-	err = s.store.View(scope(c), func(v *store.View) error {
-		for d, err := range v.Devices(site.ID) {
-			if err != nil {
-				return err
-			}
-			if !strings.EqualFold(d.Panel, in.panel) || !strings.EqualFold(d.Circuit, in.numbers) {
-				continue
-			}
-			full, err := v.Device(d.ID, s.today(site))
-			if err != nil {
-				return err
-			}
-			if circuit, _ = full.Fields["circuit"].(string); circuit != "" {
-				return nil
-			}
-		}
-		return nil
-	})
+	known, panel, err := s.circuitNamed(c, site, in.panel, in.numbers)
 	if err != nil {
 		return nil, "", err
 	}
-	set := in.circuit
+	circuit, set := known, in.circuit
 	if circuit == "" {
-		panel = record.NamedID(site.ID, "panel", strings.ToUpper(in.panel))
-		circuit = record.NamedID(site.ID, "circuit", strings.ToUpper(in.panel), strings.ToUpper(in.numbers))
+		set = maps.Clone(in.supply)
+		if panel == "" {
+			panel = record.NamedID(site.ID, "panel", strings.ToUpper(in.panel))
+			drafts = append(drafts, store.Draft{ID: record.NamedID(first, "panel"), Kind: "panel.set", Log: site.ID, Subject: panel, Body: map[string]any{"set": map[string]any{"name": in.panel}}})
+		}
+		circuit = record.NamedID(site.ID, "circuit", panel, strings.ToUpper(in.numbers))
 		set["panel"], set["numbers"] = panel, in.numbers
-		drafts = append(drafts, store.Draft{ID: record.NamedID(first, "panel"), Kind: "panel.set", Log: site.ID, Subject: panel, Body: map[string]any{"set": map[string]any{"name": in.panel}}})
 	}
 	if len(set) > 0 {
 		drafts = append(drafts, store.Draft{ID: record.NamedID(first, "circuit"), Kind: "circuit.set", Log: site.ID, Subject: circuit, Body: map[string]any{"set": set}})
@@ -238,12 +228,40 @@ func (s *Server) circuitDrafts(c echo.Context, site store.Site, first string, in
 	return drafts, circuit, nil
 }
 
+// circuitNamed finds a circuit and its panel by their names; empty where the register has none.
+func (s *Server) circuitNamed(c echo.Context, site store.Site, panelName, numbers string) (circuit, panel string, err error) {
+	err = s.store.View(scope(c), func(v *store.View) error {
+		circuits, err := v.Circuits(site.ID)
+		if err != nil {
+			return err
+		}
+		for _, one := range circuits {
+			if strings.EqualFold(one.Panel, panelName) && strings.EqualFold(one.Numbers, numbers) {
+				circuit, panel = one.ID, one.PanelID
+				return nil
+			}
+		}
+		panels, err := v.Panels(site.ID)
+		for _, one := range panels {
+			if strings.EqualFold(one.Name, panelName) {
+				panel = one.ID
+			}
+		}
+		return err
+	})
+	return circuit, panel, err
+}
+
 func (s *Server) deviceEdit(c echo.Context) error {
 	d, site, err := s.deviceAt(c, c.Param("device"))
 	if err != nil {
 		return err
 	}
-	f, err := s.editForm(s.deviceValues(d), d.Conflicts)
+	fed, err := s.circuitOf(c, d)
+	if err != nil {
+		return err
+	}
+	f, err := s.editForm(s.deviceValues(d, fed), d.Conflicts)
 	if err != nil {
 		return err
 	}
@@ -261,7 +279,11 @@ func (s *Server) deviceUpdate(c echo.Context) error {
 	}
 	first := f.id(recordField)
 	in := s.deviceInput(f)
-	f.meanwhile(s.deviceValues(d))
+	fed, err := s.circuitOf(c, d)
+	if err != nil {
+		return err
+	}
+	f.meanwhile(s.deviceValues(d, fed))
 	if f.ok() {
 		drafts, err := s.changedDeviceDrafts(c, site, d, f, in, first)
 		if err == nil && len(drafts) > 0 {
@@ -301,10 +323,10 @@ func (s *Server) changedDeviceDrafts(c echo.Context, site store.Site, d store.De
 }
 
 // deviceValues are a device's fields as its form shows them.
-func (s *Server) deviceValues(d store.Device) map[string]string {
+func (s *Server) deviceValues(d store.Device, fed store.Circuit) map[string]string {
 	text := func(name string) string { v, _ := d.Fields[name].(string); return v }
 	out := map[string]string{
-		"building": d.Place.Building, "floor": d.Place.Floor, "room": d.Place.Room, "name": cmp.Or(d.Place.Name, text("where")), "critical_load": d.Place.CriticalLoad,
+		"building": d.Place.Building, "floor": d.Place.Floor, "room": d.Place.Room, "name": cmp.Or(d.Place.Name, text("where")), "critical_load": d.Place.CriticalLoad, "whom_to_tell": d.Place.WhomToTell,
 		"panel": d.Panel, "circuit": d.Circuit, "kind": d.Kind, "equipment_ground": text("equipment_ground"), "installed": text("installed"), "delayed": "", "order": "",
 	}
 	if d.Place.Order != 0 {
@@ -323,7 +345,27 @@ func (s *Server) deviceValues(d store.Device) map[string]string {
 	if v, _ := d.Fields["delayed"].(bool); v {
 		out["delayed"] = "yes"
 	}
+	out["supply"], _ = fed.Fields["supply"].(string)
+	if out["breaker_a"] = ""; fed.Fields["breaker_a"] != nil {
+		if v, ok := fed.Fields["breaker_a"].(float64); ok {
+			out["breaker_a"] = plainFigure(v)
+		}
+	}
 	return out
+}
+
+// circuitOf gives the circuit that feeds a device; one without any is fed by the empty one.
+func (s *Server) circuitOf(c echo.Context, d store.Device) (fed store.Circuit, err error) {
+	err = s.store.View(scope(c), func(v *store.View) error {
+		circuits, err := v.Circuits(d.Site)
+		for _, one := range circuits {
+			if one.ID == d.Fields["circuit"] {
+				fed = one
+			}
+		}
+		return err
+	})
+	return fed, err
 }
 
 // plainFigure writes a figure the way it is typed.

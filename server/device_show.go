@@ -309,6 +309,7 @@ func (s *Server) deviceFacts(d store.Device) []fact {
 		add(field, s.fieldText(field, d.Fields[field]))
 	}
 	add("critical_load", d.Place.CriticalLoad)
+	add("whom_to_tell", d.Place.WhomToTell)
 	for _, field := range sortedKeys(d.Fields) {
 		if !slices.Contains(factOrder, field) && !slices.Contains([]string{"kind", "place", "circuit", "formerly"}, field) {
 			add(field, s.fieldText(field, d.Fields[field]))

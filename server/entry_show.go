@@ -151,13 +151,35 @@ func (s *Server) notices(v *store.View, e store.Entry, zone *time.Location) []no
 		out = append(out, notice{"watch", k.say("office.entry.corrected")})
 	}
 	for _, f := range e.Flags {
-		text := k.say("flag."+f.Code, "detail", f.Detail)
+		text := k.say("flag."+f.Code, "detail", s.flagDetail(f))
 		if !k.words.Has("flag." + f.Code) {
 			text = joined(f.Code, f.Detail)
 		}
 		out = append(out, notice{"watch", text})
 	}
 	return out
+}
+
+// flagDetail writes what a flag is about the way people read it.
+func (s *Server) flagDetail(f store.Flag) string {
+	k := s.ink()
+	switch f.Code {
+	case "clock":
+		if off, err := time.ParseDuration(f.Detail); err == nil {
+			return k.duration(off)
+		}
+	case "differs-shown":
+		return lowerFirst(k.named("verdict", f.Detail))
+	case "calibration-expired":
+		if day, err := forms.ParseDay(f.Detail); err == nil {
+			return k.day(day)
+		}
+	case "differs-register":
+		field, values, _ := strings.Cut(f.Detail, ": ")
+		said, register, _ := strings.Cut(values, " / ")
+		return lowerFirst(s.fieldName(field)) + ": " + s.fieldAnswer(field, said) + " / " + s.fieldAnswer(field, register)
+	}
+	return f.Detail
 }
 
 // readings shows every reading: those with findings in the findings' order, which is the form's, then the others.

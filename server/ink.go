@@ -75,6 +75,17 @@ func (k ink) at(t time.Time, zone *time.Location) string {
 	return k.day(forms.DayOf(t)) + ", " + t.Format("15:04")
 }
 
+// duration writes how long something took in its largest whole unit.
+func (k ink) duration(d time.Duration) string {
+	switch h := int(d.Hours()); {
+	case h >= 48:
+		return k.say("office.every.d", "n", h/24)
+	case h >= 2:
+		return k.say("office.every.h", "n", h)
+	}
+	return k.say("office.every.min", "n", int(d.Minutes()))
+}
+
 // number writes a figure with its digits in groups of three from 1 000 on, at most 6 significant digits.
 func number(v float64) string {
 	if math.IsNaN(v) || math.IsInf(v, 0) {

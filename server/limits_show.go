@@ -202,5 +202,11 @@ func (s *Server) fieldAnswer(field, value string) string {
 	if key := "office.device.answer." + field + "." + value; s.words.Has(key) {
 		return s.words.Say(key)
 	}
+	switch field {
+	case "kind":
+		return s.ink().named("kind", value)
+	case "rated_residual_ma":
+		return s.ink().amount(value, "mA")
+	}
 	return s.ink().answer(field, value)
 }

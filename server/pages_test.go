@@ -226,7 +226,7 @@ func TestPages_EveryTemplateInEveryCondition(t *testing.T) {
 }
 
 // checkPage holds what is true of every office page, element by element.
-func checkPage(t *testing.T, raw []byte, condition string) {
+func checkPage(t testing.TB, raw []byte, condition string) {
 	t.Helper()
 	doc, err := html.Parse(bytes.NewReader(raw))
 	must(t, err)

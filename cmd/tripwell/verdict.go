@@ -41,24 +41,33 @@ type badLine struct {
 
 // Run judges every line of stdin.
 func (verdictCmd) Run(e *env) error {
-	in := bufio.NewReaderSize(e.stdin, maxLine+2)
-	out := bufio.NewWriterSize(e.stdout, 64<<10)
-	lines, bad, err := judgeLines(e, in, out)
+	done := make(chan error, 1)
+	go func() { done <- judgeAll(e.stdin, e.stdout) }()
+	select {
+	case err := <-done:
+		return err
+	case <-e.ctx.Done():
+		// The read of a terminal cannot be called off; the program ends, and it with it.
+		return fmt.Errorf("verdict: %w", e.ctx.Err())
+	}
+}
+
+func judgeAll(stdin io.Reader, stdout io.Writer) error {
+	in := bufio.NewReaderSize(stdin, maxLine+2)
+	out := bufio.NewWriterSize(stdout, 64<<10)
+	lines, bad, err := judgeLines(in, out)
 	if flushErr := out.Flush(); err == nil {
 		err = flushErr
 	}
-	if err != nil {
-		return err
+	if err == nil && bad > 0 {
+		err = fmt.Errorf("%d of %d lines could not be judged; their errors stand in the output", bad, lines)
 	}
-	if bad > 0 {
-		return fmt.Errorf("%d of %d lines could not be judged; their errors stand in the output", bad, lines)
-	}
-	return nil
+	return err
 }
 
 // judgeLines writes a verdict or an error for every line that is not blank. It flushes whenever no input waits, so that
 // a program at the other end gets its answer at once.
-func judgeLines(e *env, in *bufio.Reader, out *bufio.Writer) (lines, bad int, err error) {
+func judgeLines(in *bufio.Reader, out *bufio.Writer) (lines, bad int, err error) {
 	var buf []byte
 	for number := 1; ; number++ {
 		raw, tooLong, readErr := readLine(in)
@@ -83,9 +92,6 @@ func judgeLines(e *env, in *bufio.Reader, out *bufio.Writer) (lines, bad int, er
 		}
 		if readErr == io.EOF {
 			return lines, bad, nil
-		}
-		if err := e.ctx.Err(); err != nil {
-			return lines, bad, err
 		}
 	}
 }

@@ -1,7 +1,11 @@
 package main
 
 import (
+	"bufio"
+	"context"
 	"encoding/json"
+	"errors"
+	"io"
 	"strings"
 	"testing"
 )
@@ -88,5 +92,39 @@ func TestVerdict_HelpExample(t *testing.T) {
 	out, stderr, code := tripwell(t, strings.Join(strings.Fields(example), ""), "verdict")
 	if code != 0 || !strings.HasPrefix(out, `{"result":"pass"`) {
 		t.Errorf("exit %d: %s%s", code, out, stderr)
+	}
+}
+
+// A program at the other end gets each answer before it sends the next line.
+func TestVerdict_AnswersWhileMoreInputMayCome(t *testing.T) {
+	stdin, lines := io.Pipe()
+	answers, stdout := io.Pipe()
+	done := make(chan error, 1)
+	go func() {
+		done <- run(t.Context(), []string{"verdict"}, stdin, stdout, io.Discard)
+		stdout.Close()
+	}()
+	out := bufio.NewReader(answers)
+	for range 3 {
+		if _, err := io.WriteString(lines, goodButton+"\n"); err != nil {
+			t.Fatal(err)
+		}
+		if answer, err := out.ReadString('\n'); err != nil || !strings.HasPrefix(answer, `{"result":"pass"`) {
+			t.Fatalf("%q, %v", answer, err)
+		}
+	}
+	lines.Close()
+	if err := <-done; err != nil {
+		t.Error(err)
+	}
+}
+
+func TestVerdict_StopsWhileWaitingForInput(t *testing.T) {
+	stdin, lines := io.Pipe()
+	defer lines.Close()
+	ctx, stop := context.WithCancel(t.Context())
+	stop()
+	if err := run(ctx, []string{"verdict"}, stdin, io.Discard, io.Discard); !errors.Is(err, context.Canceled) {
+		t.Errorf("%v", err)
 	}
 }

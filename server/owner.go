@@ -7,6 +7,7 @@ import (
 	"io"
 	"net/http"
 	"strconv"
+	"strings"
 	"time"
 
 	"github.com/labstack/echo/v4"
@@ -192,15 +193,14 @@ func (s *Server) ownImportRegister(c echo.Context) error {
 	})
 }
 
-// ownBy is in whose name a command acts: the person asked for with by, else the first manager of all sites.
+// ownBy is in whose name a command acts: the person asked for with by (id or name), else the first manager of all sites.
 func (s *Server) ownBy(c echo.Context) (string, error) {
-	if id := c.QueryParam("by"); id != "" {
-		p, err := s.store.Person(id)
-		return p.ID, err
-	}
 	people, err := s.store.People()
 	if err != nil {
 		return "", err
+	}
+	if by := c.QueryParam("by"); by != "" {
+		return personCalled(people, by)
 	}
 	for _, p := range people {
 		if p.Active && p.All && p.Role == "manager" {
@@ -208,6 +208,26 @@ func (s *Server) ownBy(c echo.Context) (string, error) {
 		}
 	}
 	return "", refuse(codeConflict, "by", "There is no manager of all sites yet. Start the server and open the first manager's sign-in link, or name a person with --by.")
+}
+
+// personCalled finds one person by id or by name.
+func personCalled(people []store.Person, by string) (string, error) {
+	var found []string
+	for _, p := range people {
+		if p.ID == by {
+			return p.ID, nil
+		}
+		if strings.EqualFold(p.Name, by) {
+			found = append(found, p.ID)
+		}
+	}
+	switch len(found) {
+	case 1:
+		return found[0], nil
+	case 0:
+		return "", refuse(codeNotFound, "by", "There is no such person here. Give a name as the list of people shows it.")
+	}
+	return "", refuse(codeInvalid, "by", "Several people have this name. Give the id of one of them: "+strings.Join(found, ", ")+".")
 }
 
 func (s *Server) ownCheck(c echo.Context) error {

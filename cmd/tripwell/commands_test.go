@@ -224,7 +224,7 @@ func TestDue_OnADay(t *testing.T) {
 
 func TestWorkbook_Opens(t *testing.T) {
 	dir := demoFolder(t)
-	out, stderr, code := tripwell(t, "", "workbook", "-o", "-", "--data", dir, "--site", "OTTERMOOR")
+	out, stderr, code := tripwell(t, "", "workbook", "-o", "-", "--data", dir, "--site", "OTTERMOOR", "--by", "manager")
 	if code != 0 {
 		t.Fatalf("exit %d, %s", code, stderr)
 	}

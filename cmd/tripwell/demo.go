@@ -75,6 +75,9 @@ func (c demoCmd) open(e *env) (*store.Store, string, error) {
 	dir = absolute(dir)
 	if _, err := os.Stat(filepath.Join(dir, store.BookFile)); errors.Is(err, fs.ErrNotExist) {
 		if err := buildDemo(e, dir); err != nil {
+			if c.Data == "" {
+				_ = os.Remove(dir) // our own, and still empty
+			}
 			return nil, "", err
 		}
 	}
@@ -106,6 +109,9 @@ func buildDemo(e *env, dir string) error {
 	_ = bar.Finish()
 	if err != nil {
 		return err
+	}
+	if err := os.Remove(dir); err != nil && !errors.Is(err, fs.ErrNotExist) { // empty, as looked above
+		return fmt.Errorf("cannot use %s for the demo: %w", dir, unwrapPath(err))
 	}
 	if err := os.Rename(building, dir); err != nil {
 		return fmt.Errorf("cannot move the demo to %s: %w", dir, unwrapPath(err))

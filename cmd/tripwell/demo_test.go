@@ -2,10 +2,14 @@ package main
 
 import (
 	"fmt"
+	"io"
+	"net"
+	"net/http"
 	"path/filepath"
 	"strings"
 	"syscall"
 	"testing"
+	"time"
 
 	"github.com/xuri/excelize/v2"
 
@@ -95,6 +99,41 @@ func TestDemo_EntryFromPhoneToWorkbook(t *testing.T) {
 
 	if err := server.stop(syscall.SIGTERM); err != nil {
 		t.Errorf("the server stopped with %v, want exit code 0", err)
+	}
+}
+
+// Without flags the demo takes a new temporary folder and the next free port; what it prints can be used at once.
+func TestDemo_WithoutFlags(t *testing.T) {
+	if testing.Short() {
+		t.Skip("starts a server; left out with -short")
+	}
+	temp := t.TempDir()
+	t.Setenv("TMPDIR", temp)
+	if l, err := net.Listen("tcp", "127.0.0.1:8080"); err == nil { // else another program has it, which is as good
+		defer l.Close()
+	}
+	began := time.Now()
+	p := start(t, "demo")
+	t.Logf("ready after %v", time.Since(began).Round(time.Millisecond))
+	if strings.HasSuffix(p.link("address"), ":8080") {
+		t.Errorf("the demo says it listens on %s, which is taken", p.link("address"))
+	}
+	if !strings.Contains(p.output(), "It is kept in "+temp) {
+		t.Errorf("the temporary folder is not named:\n%s", p.output())
+	}
+	for _, role := range []string{"manager", "crew", "auditor"} {
+		res, err := http.Get(p.link(role))
+		if err != nil {
+			t.Fatal(err)
+		}
+		page, err := io.ReadAll(res.Body)
+		res.Body.Close()
+		if err != nil || res.StatusCode != http.StatusOK || !strings.Contains(string(page), "<form") {
+			t.Errorf("the %s's link answers %s, %v: want a page with a button", role, res.Status, err)
+		}
+	}
+	if err := p.stop(syscall.SIGTERM); err != nil {
+		t.Errorf("stopped with %v, want exit code 0", err)
 	}
 }
 

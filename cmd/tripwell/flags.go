@@ -13,7 +13,7 @@ type folder struct {
 
 // author is the flag of commands that make records.
 type author struct {
-	By string `name:"by" placeholder:"PERSON" help:"Id of the person who makes these records; the first manager when left out."`
+	By string `name:"by" placeholder:"PERSON" help:"Name or id of the person who makes these records; the first manager when left out."`
 }
 
 // dayFlag is a date given on the command line; the zero value is none.

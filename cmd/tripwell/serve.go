@@ -70,6 +70,9 @@ func (c serveCmd) greet(e *env, s *store.Store, public net.Listener) error {
 		}
 		fmt.Fprintln(e.stdout)
 	}
+	if host, _, _ := net.SplitHostPort(public.Addr().String()); !net.ParseIP(host).IsLoopback() {
+		fmt.Fprint(e.stdout, "Other machines sign in over https only: put a web server with a certificate in front of this address.\n\n")
+	}
 	_, err = fmt.Fprintf(e.stdout, "Tripwell serves %s at %s\nStop it with Ctrl+C.\n", c.Data, here)
 	return err
 }

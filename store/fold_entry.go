@@ -38,7 +38,7 @@ func (f *fold) entryMade(r *record.Record, st record.Stamp) error {
 		w.past, w.older = slices.Clone(w.past[spillPast:]), w.older+spillPast
 	}
 	w.past = append(w.past, p)
-	w.count(p, mark{day: p.day, clock: r.Clock, id: id})
+	w.count(p, mark{day: p.day, clock: r.Clock, id: id}, figures(o.entry.Readings))
 	l.entries++
 	l.dirty, w.dirty = true, true
 	f.tally(l.ord, p, 1)
@@ -109,7 +109,7 @@ func (f *fold) entrySaid(r *record.Record) error {
 	if err != nil {
 		return err
 	}
-	return f.change(l, n, w, func(p past) (past, error) {
+	return f.change(l, n, w, true, func(p past) (past, error) {
 		if p.seq != seq {
 			return p, nil
 		}
@@ -137,7 +137,7 @@ func (f *fold) rework(site, n uint32, what byte) (cost int, err error) {
 		w.reckon(f.rules.schedule(site, f.orgOrd(), w.kind))
 		return 1, nil
 	}
-	err = f.change(l, n, w, func(p past) (past, error) {
+	err = f.change(l, n, w, false, func(p past) (past, error) {
 		e, st, _, err := readBook(f.tx, p.seq)
 		if err != nil {
 			return p, err
@@ -164,9 +164,10 @@ func (f *fold) rework(site, n uint32, what byte) (cost int, err error) {
 	return cost, f.deviceChanged(l, n, reg)
 }
 
-// change passes every entry of a device through fn and counts them anew where one came back different.
-func (f *fold) change(l *modelLog, n uint32, w *work, fn func(past) (past, error)) error {
-	differs := false
+// change passes every entry of a device through fn and counts them anew where one came back different, or by force: a
+// correction may leave the result and change the figures.
+func (f *fold) change(l *modelLog, n uint32, w *work, force bool, fn func(past) (past, error)) error {
+	differs := force
 	pass := func(list []past) (changed bool, err error) {
 		for i, old := range list {
 			p, err := fn(old)
@@ -208,7 +209,7 @@ func (f *fold) change(l *modelLog, n uint32, w *work, fn func(past) (past, error
 	for _, chunk := range older {
 		all = append(slices.Clone(chunk.past), all...)
 	}
-	if err := f.recount(w, all); err != nil {
+	if err := f.recount(l, w, all); err != nil {
 		return err
 	}
 	w.reckon(f.rules.schedule(l.ord, f.orgOrd(), w.kind))
@@ -239,7 +240,7 @@ func (f *fold) older(site, n uint32, w *work) ([]chunk, error) {
 
 // recount sets what the entries say together. An entry's clock and id are read from the book where two of one day need
 // them to be told apart, and for the marks that remain.
-func (f *fold) recount(w *work, all []past) error {
+func (f *fold) recount(l *modelLog, w *work, all []past) error {
 	w.tasks = nil
 	type best struct{ last, conclusive past }
 	bests := map[string]*best{}
@@ -292,8 +293,31 @@ func (f *fold) recount(w *work, all []past) error {
 		if t.conclusive, err = f.markOf(b.conclusive); err != nil {
 			return err
 		}
+		if t.numbers, err = f.figuresAt(l, b.last.seq); err != nil {
+			return err
+		}
 	}
 	return nil
+}
+
+// figuresAt reads the measured values of an entry, after corrections, from the book.
+func (f *fold) figuresAt(l *modelLog, seq uint64) ([]figure, error) {
+	if seq == 0 {
+		return nil, nil
+	}
+	r, _, _, err := readBook(f.tx, seq)
+	if err != nil {
+		return nil, err
+	}
+	body, err := readEntry(r)
+	if err != nil {
+		return nil, err
+	}
+	said, err := f.saidOf(l.ord, parseID(r.ID))
+	if err != nil {
+		return nil, err
+	}
+	return figures(corrected(body.Entry, said).Readings), nil
 }
 
 // markOf reads what orders an entry from the book.

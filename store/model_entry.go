@@ -122,14 +122,9 @@ func (ru *rules) outcome(site, org uint32, zone *time.Location, r *record.Record
 	if body.Day != nil && *body.Day != forms.NoDay && *body.Day < o.day && r.Kind == "entry.imported" {
 		o.day = *body.Day
 	}
-	corrected := false
+	o.entry = corrected(body.Entry, said)
 	for i := range said {
 		switch s := &said[i]; s.Kind {
-		case "entry.corrected":
-			o.entry.Readings, o.entry.Series, corrected = s.body.Readings, s.body.Series, true
-			if s.body.Given != nil {
-				o.entry.Given = *s.body.Given
-			}
 		case "entry.withdrawn":
 			if o.withdrawn == nil {
 				o.withdrawn = s
@@ -138,7 +133,7 @@ func (ru *rules) outcome(site, org uint32, zone *time.Location, r *record.Record
 			o.sealed = true
 		}
 	}
-	if r.Kind == "entry.imported" && body.Readings == nil && !corrected {
+	if r.Kind == "entry.imported" && o.entry.Readings == nil {
 		o.judged.Result = body.Result
 	} else {
 		o.judged = ru.judge(site, org, &o.entry, o.day)
@@ -147,6 +142,21 @@ func (ru *rules) outcome(site, org uint32, zone *time.Location, r *record.Record
 		o.judged.Result = forms.Incomplete
 	}
 	return o
+}
+
+// corrected is an entry after its corrections, which come oldest first: the last gives the readings, the last that states
+// what was given gives that.
+func corrected(e forms.Entry, said []saidRecord) forms.Entry {
+	for _, s := range said {
+		if s.Kind != "entry.corrected" {
+			continue
+		}
+		e.Readings, e.Series = s.body.Readings, s.body.Series
+		if s.body.Given != nil {
+			e.Given = *s.body.Given
+		}
+	}
+	return e
 }
 
 // past is the outcome as the history keeps it.

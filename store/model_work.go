@@ -2,6 +2,7 @@ package store
 
 import (
 	"cmp"
+	"math"
 	"slices"
 
 	"tripwell/forms"
@@ -33,6 +34,25 @@ type taskState struct {
 	last       mark      // the newest entry, not-tested included
 	conclusive mark      // the newest that failed or passed
 	met        forms.Day // the newest day that moved the date, of whatever task the entry was
+	numbers    []figure  // the measured values of last, by code
+}
+
+// figure is one measured value in its code's own unit.
+type figure struct {
+	code  string
+	value float64
+}
+
+// figures gives the measured values among readings, by code.
+func figures(readings map[string]forms.Reading) []figure {
+	var out []figure
+	for code, r := range readings {
+		if v, ok := r.Float(); ok {
+			out = append(out, figure{code, v})
+		}
+	}
+	slices.SortFunc(out, func(a, b figure) int { return cmp.Compare(a.code, b.code) })
+	return out
 }
 
 // mark names an entry by what orders it: day, then (clock, id).
@@ -113,14 +133,14 @@ func (w *work) task(task string) *taskState {
 }
 
 // count takes one more entry into what the entries say together.
-func (w *work) count(p past, m mark) {
+func (w *work) count(p past, m mark, numbers []figure) {
 	if p.result == 0 {
 		return
 	}
 	m.result = p.result
 	t := w.task(p.task)
 	if t.last.before(m) {
-		t.last = m
+		t.last, t.numbers = m, numbers
 	}
 	if conclusive(p.result) && t.conclusive.before(m) {
 		t.conclusive = m
@@ -207,10 +227,49 @@ func (w *work) pack() []byte {
 		} else {
 			p.mark(t.conclusive)
 		}
+		p.figures(t.numbers)
 	}
 	p.uint(w.older)
 	p.pasts(w.past)
 	return p.b
+}
+
+// figureCodes are reading codes as rows keep them, in an order that only grows; any other code is written out.
+var figureCodes = []string{"", "trip_current_ma", "test_current_ma", "trip_time_ms", "multiple", "phase_deg", "ground_ohm", "voltage_v",
+	"neutral_ground_v", "load_a", "voltage_drop_pct", "retention_g", "electrode_ohm", "loop_ohm", "touch_voltage_v", "insulation_mohm",
+	"insulation_test_v"}
+
+func (p *packer) figures(list []figure) {
+	p.uint(uint64(len(list)))
+	for _, f := range list {
+		i := max(0, slices.Index(figureCodes, f.code))
+		p.byte(byte(i))
+		if i == 0 {
+			p.text(f.code)
+		}
+		p.fixed(math.Float64bits(f.value))
+	}
+}
+
+func (u *unpacker) figures() []figure {
+	n := u.uint()
+	if n == 0 || n > uint64(len(u.b)) {
+		return nil
+	}
+	list := make([]figure, 0, n)
+	for range n {
+		i, code := int(u.byte()), ""
+		switch {
+		case i == 0:
+			code = u.text()
+		case i < len(figureCodes):
+			code = figureCodes[i]
+		default:
+			u.fail()
+		}
+		list = append(list, figure{code, math.Float64frombits(u.fixed())})
+	}
+	return list
 }
 
 func (p *packer) pasts(list []past) {
@@ -296,6 +355,7 @@ func unpackWork(b []byte, entries bool) (*work, error) {
 		} else {
 			t.conclusive = u.mark()
 		}
+		t.numbers = u.figures()
 		w.tasks = append(w.tasks, t)
 	}
 	w.older = u.uint()

@@ -175,8 +175,11 @@ func (v *View) snapshotDevice(sv *siteView, t *thing, w *work, on forms.Day) (Sn
 			continue
 		}
 		last := SnapshotLast{Entry: s.last.id.String(), Day: s.last.day, Result: resultCodes[s.last.result]}
-		if last.Readings, err = v.numbersOf(sv, s.last.id); err != nil {
-			return d, at, err
+		if len(s.numbers) > 0 {
+			last.Readings = make(map[string]float64, len(s.numbers))
+		}
+		for _, f := range s.numbers {
+			last.Readings[f.code] = f.value
 		}
 		if d.Last == nil {
 			d.Last = make(map[string]SnapshotLast, len(w.tasks))
@@ -188,44 +191,6 @@ func (v *View) snapshotDevice(sv *siteView, t *thing, w *work, on forms.Day) (Sn
 		d.Due = append(d.Due, SnapshotDue{date.Task, date.Due, date.Last, date.State(on)})
 	}
 	return d, at, nil
-}
-
-// numbersOf gives the measured values of an entry after corrections, nil where it has none.
-func (v *View) numbersOf(sv *siteView, id id16) (map[string]float64, error) {
-	seq, ok := v.seqOf(id)
-	if !ok {
-		return nil, errPacked
-	}
-	r, _, _, err := readBook(v.tx, seq)
-	if err != nil {
-		return nil, err
-	}
-	body, err := readEntry(r)
-	if err != nil {
-		return nil, err
-	}
-	readings := body.Readings
-	if row := v.tx.Bucket(bktSaid).Get(saidKey(sv.ord, id)); row != nil {
-		said, err := readSaid(v.tx, row, nil)
-		if err != nil {
-			return nil, err
-		}
-		for _, s := range said {
-			if s.Kind == "entry.corrected" {
-				readings = s.body.Readings
-			}
-		}
-	}
-	var out map[string]float64
-	for code, reading := range readings {
-		if f, ok := reading.Float(); ok {
-			if out == nil {
-				out = make(map[string]float64, len(readings))
-			}
-			out[code] = f
-		}
-	}
-	return out, nil
 }
 
 // formsOn gives the revision of each form in force on a day.

@@ -163,6 +163,11 @@ export function fieldApp(parts) {
       tray.setMe("unfolded", state.me.unfolded).catch(() => {});
       draw(app);
     },
+    /** The person who signed in to this browser last makes the entries from now on; nobody signed in: sign in first. */
+    async somebodyElse() {
+      if (!(await parts.takeOver()) && state.line === "signed-out") parts.leave("/in?next=/field");
+      else parts.keepSending();
+    },
     sendNow: () => parts.keepSending(),
     touched: isTouched,
   };

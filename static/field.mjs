@@ -63,9 +63,9 @@ async function start() {
     if (location.hash === hash) onRoute();
     else location.hash = hash;
   };
-  const app = fieldApp({ tray, say, draw, go, now, make: makeRecord, judgeVersion: JudgeVersion, keepSending: () => sender.kick() });
-  const run = syncing({ state: app.state, tray, along, net: exchange({ fetch: (...a) => fetch(...a), now }), now, newId: () => newId(now()), changed: app.changed });
-  const sender = sending({ run: () => alone(run), later: (fn, ms) => setTimeout(fn, ms), cancel: clearTimeout, random: Math.random });
+  const app = fieldApp({ tray, say, draw, go, now, make: makeRecord, judgeVersion: JudgeVersion, keepSending: () => sender.kick(), takeOver: () => sync.takeOver(), leave: (path) => location.assign(path) });
+  const sync = syncing({ state: app.state, tray, along, net: exchange({ fetch: (...a) => fetch(...a), now }), now, newId: () => newId(now()), changed: app.changed });
+  const sender = sending({ run: () => alone(sync.run), later: (fn, ms) => setTimeout(fn, ms), cancel: clearTimeout, random: Math.random });
   const onRoute = () => {
     app.route(parseRoute(location.hash, location.pathname), keepSaved);
     keepSaved = false;
@@ -77,8 +77,18 @@ async function start() {
   addEventListener("online", () => sender.kick());
   document.addEventListener("visibilitychange", () => { if (document.visibilityState === "visible") sender.kick(); });
   onRoute();
+  if (cameFromSignIn()) await sync.takeOver();
   sender.kick();
   app.state.persisted = await navigator.storage?.persist?.().catch(() => false);
+}
+
+/** Whether somebody has just signed in, perhaps another than this phone knows. */
+function cameFromSignIn() {
+  try {
+    return /^\/in(\/|$)/.test(new URL(document.referrer).pathname);
+  } catch {
+    return false; // no referrer
+  }
 }
 
 /** Opens what a label names as soon as its site is on the phone. */
@@ -89,7 +99,7 @@ function followTag(app) {
 }
 
 async function readKept(state, tray, along) {
-  for (const name of ["installation", "token", "person", "logs", "instrument", "unfolded", "offset"]) state.me[name] = await tray.me(name);
+  for (const name of ["installation", "token", "person", "name", "logs", "instrument", "unfolded", "offset"]) state.me[name] = await tray.me(name);
   state.offset = state.me.offset ?? 0;
   for (const row of await along.sites()) state.sites.set(row.log, row);
   state.records = await tray.records();

@@ -30,10 +30,9 @@ export function withOwn(device, own = []) {
   const last = { ...device.last };
   let due = device.due ?? [];
   for (const e of own) {
-    for (const task of meets(e.task, e.readings)) {
-      last[task] = { entry: e.entry, day: e.day, result: e.result, readings: e.numbers, own: true, unsent: e.unsent };
-      if (e.result !== "not-tested") due = due.filter((d) => d.task !== task);
-    }
+    last[e.task] = { entry: e.entry, day: e.day, result: e.result, readings: e.numbers, own: true, unsent: e.unsent };
+    const met = e.result === "not-tested" ? [] : meets(e.task, e.readings);
+    due = due.filter((d) => !met.includes(d.task));
   }
   return { ...device, last, due };
 }

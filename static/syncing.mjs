@@ -8,7 +8,8 @@ const SOON = 2 * 60_000; // and after this already where something of ours went 
 const KEEP_SENT = 180 * 86_400_000; // acknowledged records stay this long, so that a restored server can be refilled
 
 /**
- * syncing({state, tray, along, net, now, newId, changed}) → run(), which gives {state, retryAfter} for sending.mjs.
+ * syncing({state, tray, along, net, now, newId, changed}) → {run, takeOver}; run() gives {state, retryAfter} for
+ * sending.mjs.
  * state is the app's: me, sites, records, line, offset, busy.
  */
 export function syncing({ state, tray, along, net, now, newId, changed }) {
@@ -30,6 +31,7 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
     const answer = note(await net.enrol(state.me.installation));
     if (!answer.ok) return answer;
     await remember("person", answer.body.person.id);
+    await remember("name", answer.body.person.name);
     await remember("logs", answer.body.logs);
     await remember("token", answer.body.token);
     return answer;
@@ -94,7 +96,15 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
     changed();
   }
 
-  return async function run() {
+  /** Takes whoever is signed in to this browser as the one who makes entries from now on. */
+  async function takeOver() {
+    const answer = await enrol();
+    state.line = answer.ok ? state.line : answer.status === 401 ? "signed-out" : answer.status === 0 ? "unreached" : "trouble";
+    changed();
+    return answer.ok;
+  }
+
+  async function run() {
     state.busy = true;
     const sent = await drain({ storage, send: (body) => withToken((token) => net.push(token, body)), sentAt: () => new Date(now()).toISOString() });
     state.records = await tray.records();
@@ -108,5 +118,7 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
     state.busy = false;
     changed();
     return { state: line, retryAfter: sent.retryAfter };
-  };
+  }
+
+  return { run, takeOver };
 }

@@ -75,12 +75,12 @@ function phone(net, records = []) {
     cover: async (ids) => ids.forEach((i) => { covered.push(i); records.find((r) => r.id === i).state = "kept"; }) };
   const along = { put: async () => {}, drop: async (log) => { dropped.push(log); } };
   let n = 0;
-  return { me, state, dropped, covered, run: syncing({ state, tray, along, net, now: () => 1000, newId: () => `installation-${++n}`, changed: () => {} }) };
+  return { me, state, dropped, covered, ...syncing({ state, tray, along, net, now: () => 1000, newId: () => `installation-${++n}`, changed: () => {} }) };
 }
 const ok = (body) => ({ ok: true, status: 200, body, offset: 0 });
 const not = (status) => ({ ok: false, status, body: null, offset: 0 });
 const logs = [{ log: "org" }, { log: "s1", code: "NORTH", name: "North" }];
-const server = (more = {}) => ({ enrol: async () => ok({ token: "good", person: { id: "p" }, logs }), logs: async (t) => (t === "good" ? ok({ logs }) : not(401)), snapshot: async () => ok({ site: { id: "s1" } }),
+const server = (more = {}) => ({ enrol: async () => ok({ token: "good", person: { id: "p", name: "Crew 1" }, logs }), logs: async (t) => (t === "good" ? ok({ logs }) : not(401)), snapshot: async () => ok({ site: { id: "s1" } }),
   push: async (t, body) => (t === "good" ? ok({ receipts: JSON.parse(body).records.map((r) => ({ id: r.record, state: "stored" })) }) : not(401)), ...more });
 
 test("sync: enrols once, takes its sites along, keeps its installation", async () => {
@@ -109,6 +109,16 @@ test("sync: a fresh copy is not taken again for every entry", async () => {
   p.state.sites.set("s1", { log: "s1", taken: 1000 - 3 * 60_000 });
   await p.run();
   assert.deepEqual(p.covered, ["r1"]);
+});
+
+test("sync: somebody else who signed in takes over; the installation stays", async () => {
+  let who = "p";
+  const p = phone(server({ enrol: async () => ok({ token: "good", person: { id: who, name: who }, logs }) }));
+  await p.run();
+  who = "q";
+  assert.equal(await p.takeOver(), true);
+  assert.equal(p.me.person, "q");
+  assert.equal(p.me.installation, "installation-1");
 });
 
 test("sync: signed out for good keeps everything and says so", async () => {

@@ -1,6 +1,6 @@
 // The page of one test: the form's steps in their order, judged as it is typed, and the one button that saves it.
 
-import { html, useEffect, useState } from "./vendor/htm-preact.mjs";
+import { html, useState } from "./vendor/htm-preact.mjs";
 import { Ask } from "./field-ask.mjs";
 import { contextOf, Foot, Mark, titleOf, Where } from "./field-parts.mjs";
 import { fillMissing, quickAnswers, rowId } from "./flow.mjs";
@@ -14,9 +14,8 @@ import { showDay } from "./days.mjs";
 export function TestPage({ app, test }) {
   const { say } = app;
   const { device, place, form, draft, walked } = test;
-  const [detailed, setDetailed] = useState(!form.quick || draft.detailed === true);
+  const detailed = !form.quick || draft.detailed === true;
   const [asked, setAsked] = useState(false); // Save was pressed while questions were open
-  useEffect(() => { setDetailed(!form.quick || draft.detailed === true); setAsked(false); scrollTo(0, 0); }, [draft.key]);
   const set = (answers, more) => app.answers(draft, answers, more);
   const quickDone = form.quick && sameAnswers(draft.answers, quickAnswers(form));
   const open = walked.open.length;
@@ -38,7 +37,7 @@ export function TestPage({ app, test }) {
       <h2 class="task">${say(`task.${form.task}`)}</h2>
       <${CriticalLoad} app=${app} place=${place} />
       ${form.quick && !detailed
-        ? html`<${Quick} app=${app} form=${form} test=${test} done=${quickDone} set=${set} open=${() => { setDetailed(true); set({}, { detailed: true }); }} />`
+        ? html`<${Quick} app=${app} form=${form} test=${test} done=${quickDone} set=${set} open=${() => set({}, { detailed: true })} />`
         : html`
           ${usesInstrument(form) && html`<${Instruments} app=${app} draft=${draft} instruments=${test.instruments} today=${test.today} />`}
           ${walked.steps.map((step) => html`<${Step} app=${app} key=${step.step} step=${step} test=${test} set=${set} />`)}`}

@@ -32,7 +32,7 @@ function Page({ app }) {
     }
     case "test": {
       const test = app.openTest(route.device, route.task);
-      return test ? html`<${TestPage} app=${app} test=${test} />` : html`<${LostPage} app=${app} text=${say("field.device_not_here")} />`;
+      return test ? html`<${TestPage} app=${app} test=${test} key=${test.draft.key} />` : html`<${LostPage} app=${app} text=${say("field.device_not_here")} />`;
     }
     case "tag":
       return html`<${LostPage} app=${app} text=${say("field.tag_not_here")} />`;

@@ -27,8 +27,8 @@ type scheduleID struct {
 }
 
 type limitID struct {
-	site uint32
-	set  string
+	log uint32
+	set string
 }
 
 func newRules(list func(prefix []byte) []row) *rules {
@@ -107,21 +107,14 @@ func (ru *rules) schedule(site, org uint32, kind string) forms.Schedule {
 	return s
 }
 
-// limitRevisions gives the revisions of a set by day in force: the site's own where it has any, else the organisation's.
-func (ru *rules) limitRevisions(site, org uint32, set string) []*forms.LimitSet {
-	key := limitID{site, set}
+// limitRevisions gives the revisions of a set in one log, by day in force.
+func (ru *rules) limitRevisions(log uint32, set string) []*forms.LimitSet {
+	key := limitID{log, set}
 	revs, ok := ru.limits[key]
-	if ok {
+	if ok || log == 0 {
 		return revs
 	}
-	for _, log := range []uint32{site, org} {
-		if log != 0 {
-			revs = rulesUnder[forms.LimitSet](ru, rulePrefix(ruleLimit, log, set))
-		}
-		if len(revs) > 0 {
-			break
-		}
-	}
+	revs = rulesUnder[forms.LimitSet](ru, rulePrefix(ruleLimit, log, set))
 	slices.SortFunc(revs, func(a, b *forms.LimitSet) int {
 		return cmp.Or(cmp.Compare(a.InForce, b.InForce), cmp.Compare(a.Revision, b.Revision))
 	})
@@ -129,15 +122,21 @@ func (ru *rules) limitRevisions(site, org uint32, set string) []*forms.LimitSet 
 	return revs
 }
 
-// limitSet gives the revision in force on a day, nil where there was none.
+// limitSet gives the revision in force on a day: the site's own where it has one, else the organisation's, nil where
+// there was none.
 func (ru *rules) limitSet(site, org uint32, set string, on forms.Day) *forms.LimitSet {
-	var in *forms.LimitSet
-	for _, rev := range ru.limitRevisions(site, org, set) {
-		if rev.InForce <= on {
-			in = rev
+	for _, log := range []uint32{site, org} {
+		var in *forms.LimitSet
+		for _, rev := range ru.limitRevisions(log, set) {
+			if rev.InForce <= on {
+				in = rev
+			}
+		}
+		if in != nil {
+			return in
 		}
 	}
-	return in
+	return nil
 }
 
 // form gives the revision an entry was made with, or else the one in force on its day, or the first there is.

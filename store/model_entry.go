@@ -27,6 +27,9 @@ type entryBody struct {
 
 // readEntry reads an entry; its fault names what cannot be understood.
 func readEntry(r *record.Record) (*entryBody, error) {
+	if b, ok := r.Read.(*entryBody); ok {
+		return b, nil
+	}
 	b := new(entryBody)
 	if err := json.Unmarshal(r.Body, b); err != nil {
 		return nil, badBody("", "The entry cannot be read: %v.", err)
@@ -35,6 +38,17 @@ func readEntry(r *record.Record) (*entryBody, error) {
 		return nil, badBody("result", "The result %q is none: an imported entry has one of %v.", b.Result, forms.Results())
 	}
 	return b, nil
+}
+
+// readAhead decodes the body of an entry before the writer sees it, on whatever processor is free. What cannot be read is
+// left to the fold, which says why.
+func readAhead(r *record.Record) {
+	if r.Kind != "entry.made" && r.Kind != "entry.imported" {
+		return
+	}
+	if b, err := readEntry(r); err == nil {
+		r.Read = b
+	}
 }
 
 // correctionBody is the body of entry.corrected; withdrawals and seals have the reason alone.

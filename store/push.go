@@ -87,6 +87,7 @@ func arrive(in Incoming, from Sender, received time.Time) arrival {
 	a := arrival{r: r, fault: fault, st: stamped{stamp: st}}
 	if fault == nil {
 		a.st = stampFor(in.Record, st)
+		readAhead(r)
 		if len(a.st.line) > maxStamp {
 			a.fault = &record.Fault{Code: "too_large", Field: "held", Text: "The record comes with a longer list of earlier holders than a stamp can carry. Send it from the store it was first held by."}
 		}

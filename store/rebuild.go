@@ -72,23 +72,33 @@ func clearDerived(tx *bbolt.Tx) error {
 // rebuildFrom folds one slice of the book after a seq.
 func rebuildFrom(s *Store, tx *bbolt.Tx, after uint64, progress func(done, total int64)) (last uint64, more bool, err error) {
 	g := newGroup(s, tx)
-	total := g.seq
+	total, end := g.seq, after+uint64(rebuildSlice)
 	c := g.recs.Cursor()
-	n := 0
-	for k, v := c.Seek(key64(after + 1)); k != nil; k, v = c.Next() {
-		if n++; n > rebuildSlice {
-			more = true
-			break
+	k, v := c.Seek(key64(after + 1))
+	// Decoding is most of the work: the next part is decoded while this one is folded.
+	var ahead chan []reread
+	for {
+		var part []reread
+		for ; k != nil && len(part) < rereadPart && binary.BigEndian.Uint64(k) <= end; k, v = c.Next() {
+			part = append(part, reread{seq: binary.BigEndian.Uint64(k), value: v})
 		}
-		after = binary.BigEndian.Uint64(k)
-		if err := g.refold(after, v); err != nil {
-			return after, false, err
-		}
-		if n%1000 == 0 {
+		ready := decode(part)
+		if ahead != nil {
+			for _, one := range <-ahead {
+				if err := g.refold(one); err != nil {
+					<-ready // it reads the file, which must not be closed under it
+					return after, false, err
+				}
+				after = one.seq
+			}
 			progress(int64(after), int64(total))
 		}
+		if len(part) == 0 {
+			break
+		}
+		ahead = ready
 	}
-	if !more {
+	if k == nil {
 		if _, err := g.fold.workOff(math.MaxInt); err != nil {
 			return after, false, err
 		}
@@ -99,32 +109,66 @@ func rebuildFrom(s *Store, tx *bbolt.Tx, after uint64, progress func(done, total
 	if err := g.flushCounts(); err != nil {
 		return after, false, err
 	}
-	progress(int64(after), int64(total))
-	if more {
+	if k != nil {
 		return after, true, nil
 	}
 	return after, false, tx.Bucket(bktMeta).Put(metaModel, key64(modelVersion))
 }
 
-// refold computes what one record of the book adds to what is derived.
-func (g *group) refold(seq uint64, v []byte) error {
-	k, err := readRec(v)
+// rereadPart is how many records are decoded at a time.
+const rereadPart = 512
+
+// reread is a record of the book on its way into the fold.
+type reread struct {
+	seq   uint64
+	value []byte // points into the file
+	ord   uint32
+	r     *record.Record
+	stamp record.Stamp
+	err   error
+}
+
+// decode reads records on another goroutine; one answer comes when all are read.
+func decode(part []reread) chan []reread {
+	ready := make(chan []reread, 1)
+	go func() {
+		for i := range part {
+			part[i].decode()
+		}
+		ready <- part
+	}()
+	return ready
+}
+
+func (one *reread) decode() {
+	k, err := readRec(one.value)
 	if err != nil {
-		return fmt.Errorf("record at %d: %w", seq, err)
+		one.err = fmt.Errorf("record at %d: %w", one.seq, err)
+		return
 	}
 	r, f := record.Reread(k.raw)
 	if f != nil {
-		return fmt.Errorf("record at %d: %w", seq, f)
+		one.err = fmt.Errorf("record at %d: %w", one.seq, f)
+		return
 	}
-	stamp, err := record.ParseStamp(k.stamp)
-	if err != nil {
-		return fmt.Errorf("record %s: %w", r.ID, err)
+	one.r, one.ord = r, k.ord
+	if one.stamp, err = record.ParseStamp(k.stamp); err != nil {
+		one.err = fmt.Errorf("record %s: %w", r.ID, err)
+		return
 	}
-	g.seq = seq
-	if err := g.fold.record(r, stamp, seq); err != nil {
-		return fmt.Errorf("record %s at %d: %w", r.ID, seq, err)
+	readAhead(r)
+}
+
+// refold computes what one record of the book adds to what is derived.
+func (g *group) refold(one reread) error {
+	if one.err != nil {
+		return one.err
 	}
-	return g.note(r, stamp, k.ord)
+	g.seq = one.seq
+	if err := g.fold.record(one.r, one.stamp, one.seq); err != nil {
+		return fmt.Errorf("record %s at %d: %w", one.r.ID, one.seq, err)
+	}
+	return g.note(one.r, one.stamp, one.ord)
 }
 
 // ViewHash is the SHA-256 over (key, value) of every bucket that is computed from the book.

@@ -48,6 +48,9 @@ type Record struct {
 	N       int64
 	Body    json.RawMessage
 	Raw     []byte
+
+	// Read is the body as its reader decoded it ahead of time, nil where nobody did. What is set is never changed again.
+	Read any
 }
 
 // Held says that a store had the record before us.

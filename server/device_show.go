@@ -2,6 +2,8 @@ package server
 
 import (
 	"cmp"
+	"fmt"
+	"math"
 	"net/http"
 	"slices"
 	"strconv"
@@ -219,7 +221,11 @@ func (s *Server) tableCell(e store.Entry, code string) string {
 	r, ok := e.Body.Readings[code]
 	if !ok {
 		if at := worstOfSeries(e, code); at >= 0 {
-			return k.value(code, e.Body.Series[at].Readings[code]) + " " + s.conditions(e.Body.Series[at].At)
+			text := k.value(code, e.Body.Series[at].Readings[code])
+			if multiple, ok := e.Body.Series[at].At["multiple"]; ok {
+				text = k.say("office.device.at_multiple", "value", text, "n", fmt.Sprint(multiple))
+			}
+			return text
 		}
 		return ""
 	}
@@ -233,19 +239,23 @@ func (s *Server) tableCell(e store.Entry, code string) string {
 	return text
 }
 
-// worstOfSeries finds the series reading of a code with the worst finding, −1 where there is none.
+// worstOfSeries finds the series reading that stands for all in a table: the one with the worst finding; of equal ones
+// that at the rated current, and of those the longest. −1 where there is none.
 func worstOfSeries(e store.Entry, code string) int {
-	found, worst := -1, -1
+	found, worst := -1, math.Inf(-1)
 	for i, one := range e.Body.Series {
 		r, ok := one.Readings[code]
 		if !ok || r.Missing != "" {
 			continue
 		}
-		bad := 0
+		bad := 0.0
 		for _, f := range e.Verdict.Findings {
 			if f.Reading == code && sameConditions(f.At, one.At) {
-				bad = max(bad, severity(f.Verdict))
+				bad = max(bad, 1000*float64(severity(f.Verdict)))
 			}
+		}
+		if v, ok := r.Value.(float64); ok && fmt.Sprint(one.At["multiple"]) == "1" {
+			bad += 1 + v/(1+math.Abs(v))
 		}
 		if bad > worst {
 			found, worst = i, bad

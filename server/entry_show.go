@@ -232,6 +232,9 @@ func (s *Server) finding(f forms.Finding, r forms.Reading, e store.Entry, spans 
 	if current, ok := e.Body.Readings["test_current_ma"]; ok && f.Reading == "trip_time_ms" && shown.Limit != "" && len(f.At) == 0 {
 		shown.Limit += " " + k.say("office.entry.at_current", "current", k.value("test_current_ma", current))
 	}
+	if multiple, ok := f.At["multiple"].(float64); ok && multiple < 1 && f.Reading == "trip_time_ms" && shown.Limit == "" {
+		shown.Limit = k.say("office.limits.no_trip")
+	}
 	var earlier *float64
 	if b, ok := before[f.Reading]; ok && len(f.At) == 0 {
 		earlier = &b

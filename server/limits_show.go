@@ -91,7 +91,11 @@ func (s *Server) limitWords(l forms.Limit) string {
 	case l.Flag:
 		return s.flagWords(l)
 	case l.Min != nil || l.Max != nil || len(l.OneOf) > 0:
-		return k.limit(code, &forms.Bounds{Min: l.Min, Max: l.Max, OneOf: l.OneOf}, "")
+		level := l.Level
+		if len(l.OneOf) == 0 {
+			level = "" // a column says that it is a recommendation
+		}
+		return k.limit(code, &forms.Bounds{Min: l.Min, Max: l.Max, OneOf: l.OneOf}, level)
 	}
 	return k.say("office.limits.computed")
 }
@@ -120,14 +124,17 @@ func (s *Server) shares(b forms.Bounds) string {
 
 // whenAndVoid says where a limit applies and where its reading says nothing.
 func (s *Server) whenAndVoid(l forms.Limit) string {
-	parts := []string{}
+	var parts, voids []string
 	if text := s.when(l.When); text != "" {
 		parts = append(parts, s.words.Say("office.limits.when", "what", text))
 	}
 	for _, void := range l.Void {
-		parts = append(parts, s.words.Say("office.limits.void", "what", s.when(void.When)))
+		voids = append(voids, s.when(void.When))
 	}
-	return strings.Join(parts, ". ")
+	if len(voids) > 0 {
+		parts = append(parts, s.words.Say("office.limits.void", "what", strings.Join(voids, s.words.Say("office.limits.or_where"))))
+	}
+	return strings.Join(parts, " ")
 }
 
 // when says the conditions of a limit in words, all of which must hold.

@@ -1,6 +1,7 @@
 package server
 
 import (
+	"bytes"
 	"fmt"
 	"unicode/utf16"
 	"unicode/utf8"
@@ -68,11 +69,14 @@ func (t *exactText) UnmarshalJSON(raw []byte) error {
 	}
 	out := make([]byte, 0, len(raw)-2)
 	for in := raw[1 : len(raw)-1]; len(in) > 0; {
-		if in[0] != '\\' {
-			out, in = append(out, in[0]), in[1:]
-			continue
+		n := bytes.IndexByte(in, '\\')
+		if n < 0 {
+			n = len(in)
 		}
-		var n int
+		out, in = append(out, in[:n]...), in[n:]
+		if len(in) == 0 {
+			break
+		}
 		out, n = unescape(out, in)
 		in = in[n:]
 	}

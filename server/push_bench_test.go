@@ -13,6 +13,8 @@ import (
 	"time"
 
 	"go.etcd.io/bbolt"
+
+	"tripwell/store"
 )
 
 const (
@@ -26,13 +28,14 @@ const (
 // BenchmarkPush sends 10,000 entries over HTTP on loopback, in batches of 50 from 16 installations, durable, with every
 // read model and every log's tree kept. Two floors run between its rounds on the same bytes, in commits as large as the
 // mean group the store itself wrote: x-floor puts each record and four scattered index keys straight into bbolt, x-records
-// the record alone under a key that only grows. Both begin with an empty file, the store with its register already in it.
+// the record alone under a key that only grows. Both begin with as many records as the store's book holds before the clock
+// starts (its register), so that all three write into files of one age.
 func BenchmarkPush(b *testing.B) {
 	for range b.N {
 		r := newRig(b, benchDevices)
 		rounds := benchLoad(b, r)
-		floor := newFloor(b, "floor.db")
-		alone := newFloor(b, "records.db")
+		floor := newFloor(b, "floor.db", r.bookSize(), 4)
+		alone := newFloor(b, "records.db", r.bookSize(), 0)
 		var ours, floored, recorded time.Duration
 		commits := 0
 		for _, load := range rounds {
@@ -122,7 +125,7 @@ type floor struct {
 	seq uint64
 }
 
-func newFloor(b *testing.B, name string) *floor {
+func newFloor(b *testing.B, name string, already, indexes int) *floor {
 	db, err := bbolt.Open(filepath.Join(b.TempDir(), name), 0o600, nil)
 	must(b, err)
 	must(b, db.Update(func(tx *bbolt.Tx) error {
@@ -134,7 +137,25 @@ func newFloor(b *testing.B, name string) *floor {
 		return nil
 	}))
 	b.Cleanup(func() { must(b, db.Close()) })
-	return &floor{db: db}
+	f := &floor{db: db}
+	register := make([][]byte, already)
+	for i := range register {
+		register[i] = bytes.Repeat([]byte{'r'}, 400)
+	}
+	f.put(b, register, 400, indexes)
+	return f
+}
+
+// bookSize is how many records all logs hold.
+func (r *rig) bookSize() (n int) {
+	must(r.t, r.store.View(ownerScope, func(v *store.View) error {
+		heads, err := v.Logs()
+		for _, head := range heads {
+			n += int(head.Size)
+		}
+		return err
+	}))
+	return n
 }
 
 func (f *floor) put(b *testing.B, records [][]byte, perCommit, indexes int) time.Duration {

@@ -7,6 +7,7 @@ import (
 	"time"
 
 	"github.com/go-json-experiment/json"
+	"github.com/go-json-experiment/json/jsontext"
 	"go.etcd.io/bbolt"
 
 	"tripwell/forms"
@@ -25,13 +26,17 @@ type entryBody struct {
 	Result  string     `json:"result"`
 }
 
+// checked spares looking for doubled names and damaged text again: the body is part of a record, whose reading has
+// refused both.
+var checked = json.JoinOptions(jsontext.AllowDuplicateNames(true), jsontext.AllowInvalidUTF8(true))
+
 // readEntry reads an entry; its fault names what cannot be understood.
 func readEntry(r *record.Record) (*entryBody, error) {
 	if b, ok := r.Read.(*entryBody); ok {
 		return b, nil
 	}
 	b := new(entryBody)
-	if err := json.Unmarshal(r.Body, b); err != nil {
+	if err := json.Unmarshal(r.Body, b, checked); err != nil {
 		return nil, badBody("", "The entry cannot be read: %v.", err)
 	}
 	if r.Kind == "entry.imported" && b.Readings == nil && resultCode(b.Result) == 0 {

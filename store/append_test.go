@@ -98,6 +98,25 @@ func TestAppend_GivesEnvelopes(t *testing.T) {
 	}
 }
 
+func TestAppend_CrewChangeTheirOwnEntries(t *testing.T) {
+	r := newRig(t)
+	site := r.site("ELM-4")
+	one, other := r.person("crew", false, site), r.person("crew", false, site)
+	p := r.phone(one)
+	id := newID(r.clock())
+	p.push(p.makeWith(id, "entry.made", site, newID(r.clock()), entry(22)))
+	correct := func(by Person) error {
+		_, err := r.Append(context.Background(), Draft{Kind: "entry.corrected", Log: site, Subject: id, By: by.ID,
+			Body: map[string]any{"entry": id, "readings": map[string]any{"trip_time_ms": 32}, "reason": "typing error"}})
+		return err
+	}
+	for who, want := range map[*Person]string{&one: "", &other: "forbidden", &r.manager: ""} {
+		if got := code(correct(*who)); got != want {
+			t.Errorf("%s: got %q, want %q", who.Name, got, want)
+		}
+	}
+}
+
 // Calls that are committed together stand and fall alone.
 func TestWriter_OneCallNeverFailsAnother(t *testing.T) {
 	r := newRig(t)

@@ -121,6 +121,27 @@ func (g *group) permit(from Sender, r *record.Record, received time.Time) (*reco
 	if !grantsIn(facts, r, received, func(f accessFact) bool { return mayWrite(f, r) }) {
 		return no("by", "The person named in the record may not write "+r.Kind+" in this log. A manager of all sites can give them the site or the role."), nil
 	}
+	if own && (r.Kind == "entry.corrected" || r.Kind == "entry.withdrawn") {
+		return g.permitChange(r, facts, received)
+	}
+	return nil, nil
+}
+
+// permitChange lets crew change their own entries and managers everybody's. Forms alone ask this: a push never depends
+// on whether the entry has come yet.
+func (g *group) permitChange(r *record.Record, facts []accessFact, received time.Time) (*record.Fault, error) {
+	first, ok, err := g.find(r.Subject)
+	if err != nil || !ok {
+		return nil, err
+	}
+	entry, f := record.Reread(first.raw)
+	if f != nil {
+		return nil, f
+	}
+	manager := func(f accessFact) bool { return f.covers(r.Log) && f.Role == "manager" }
+	if entry.By != r.By && !grantsIn(facts, r, received, manager) {
+		return no("by", "Somebody else made this entry. Ask them or a manager to change it."), nil
+	}
 	return nil, nil
 }
 

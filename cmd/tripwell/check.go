@@ -42,12 +42,7 @@ func (c checkCmd) Run(e *env) error {
 
 // follow runs something long on the store with a bar on the terminal.
 func (e *env) follow(d *door, method, path string, query url.Values, body io.Reader, what string, report any) error {
-	bar := e.bar(-1, what)
-	defer func() { _ = bar.Finish() }()
-	return wrongFlag(d.Follow(e.ctx, method, path, query, body, func(done, total int64) {
-		if total > 0 && bar.GetMax64() != total {
-			bar.ChangeMax64(total)
-		}
-		_ = bar.Set64(done)
-	}, report))
+	bar := e.progress(what)
+	defer bar.finish()
+	return wrongFlag(d.Follow(e.ctx, method, path, query, body, bar.set, report))
 }

@@ -99,14 +99,9 @@ func buildDemo(e *env, dir string) error {
 		return fmt.Errorf("cannot build the demo beside %s: %w", dir, unwrapPath(err))
 	}
 	defer os.RemoveAll(building)
-	bar := e.bar(-1, "building the demo")
-	err = demo.Build(e.ctx, building, time.Now(), func(done, total int) {
-		if bar.GetMax() != total {
-			bar.ChangeMax(total)
-		}
-		_ = bar.Set(done)
-	})
-	_ = bar.Finish()
+	bar := e.progress("building the demo")
+	err = demo.Build(e.ctx, building, time.Now(), func(done, total int) { bar.set(int64(done), int64(total)) })
+	bar.finish()
 	if err != nil {
 		return err
 	}

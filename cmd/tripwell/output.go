@@ -6,10 +6,6 @@ import (
 	"io"
 	"os"
 	"path/filepath"
-	"time"
-
-	"github.com/schollz/progressbar/v3"
-	"golang.org/x/term"
 )
 
 // outFile is the flag of commands that make a file.
@@ -59,28 +55,11 @@ func unwrapPath(err error) error {
 	return err
 }
 
-// bar is a progress bar on standard error; off a terminal it draws nothing. total -1 is unknown.
-func (e *env) bar(total int64, what string) *progressbar.ProgressBar {
-	f, ok := e.stderr.(*os.File)
-	if !ok || !term.IsTerminal(int(f.Fd())) {
-		return progressbar.DefaultSilent(total)
-	}
-	return progressbar.NewOptions64(total,
-		progressbar.OptionSetWriter(f),
-		progressbar.OptionSetDescription(what),
-		progressbar.OptionSetWidth(24),
-		progressbar.OptionThrottle(100*time.Millisecond),
-		progressbar.OptionShowCount(),
-		progressbar.OptionClearOnFinish(),
-	)
-}
-
 // copyOut copies what the store sends into the file and shows how much has come.
 func copyOut(e *env, w io.Writer, from io.Reader, what string) error {
-	bar := e.bar(-1, what)
-	progressbar.OptionShowBytes(true)(bar)
-	defer func() { _ = bar.Finish() }()
-	if _, err := io.Copy(io.MultiWriter(w, bar), from); err != nil {
+	bar := e.progress(what)
+	defer bar.finish()
+	if _, err := io.Copy(&counting{to: w, bar: bar}, from); err != nil {
 		return fmt.Errorf("%s broke off: %w", what, err)
 	}
 	return nil

@@ -16,7 +16,6 @@ type spot struct {
 	noGround                    bool // equipment_ground none-permitted
 	isolated                    bool // circuit supply isolated
 	residualMA                  float64
-	delayed                     bool
 	story                       string // which story of events.go this device plays in
 }
 

@@ -46,6 +46,7 @@ function Notices({ app }) {
   return html`<div class="notices">
     ${Math.abs(state.offset ?? 0) > 120_000 && html`<p class="notice" role="status">${say(state.offset > 0 ? "field.clock_behind" : "field.clock_ahead", { minutes, n: minutes })}</p>`}
     ${state.line === "signed-out" && html`<p class="notice" role="status">${say("field.signed_out")} <a href=${`/in?next=${encodeURIComponent("/field" + (globalThis.location?.hash ?? ""))}`}>${say("field.sign_in")}</a></p>`}
+    ${state.line === "trouble" && html`<p class="notice" role="status">${state.said ?? say("field.line.trouble")}</p>`}
     ${state.trouble && html`<p class="notice bad" role="alert">${state.trouble}</p>`}
     ${state.saved && html`<p class=${`saved ${markOf(state.saved.result)}`} role="status"><${Mark} verdict=${state.saved.result}>${say(`verdict.${state.saved.result}`)}<//> ${say("field.saved", { what: state.saved.what })}</p>`}</div>`;
 }

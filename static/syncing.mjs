@@ -10,7 +10,7 @@ const KEEP_SENT = 180 * 86_400_000; // acknowledged records stay this long, so t
 /**
  * syncing({state, tray, along, net, now, newId, changed}) → {run, takeOver}; run() gives {state, retryAfter} for
  * sending.mjs.
- * state is the app's: me, sites, records, line, offset, busy.
+ * state is the app's: me, sites, records, line, said (the server's own sentence about trouble), offset, busy.
  */
 export function syncing({ state, tray, along, net, now, newId, changed }) {
   async function remember(name, value) {
@@ -61,12 +61,15 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
     await remember("logs", listed.body.logs);
     const mine = new Set(listed.body.logs.map((l) => l.log));
     for (const log of state.sites.keys()) if (!mine.has(log)) await dropSite(log);
+    let worst = listed;
     for (const { log, code } of listed.body.logs) {
       if (!code || !wanted(log)) continue;
       const answer = await refreshSite(log);
-      if (!answer.ok && answer.status !== 403 && answer.status !== 404) return answer;
+      if (answer.ok || answer.status === 403 || answer.status === 404) continue;
+      worst = answer;
+      if (answer.status === 0 || answer.status === 401) break; // the others would fare the same; any other fault is this site's own
     }
-    return listed;
+    return worst;
   }
 
   function wanted(log) {
@@ -112,6 +115,7 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
     if (line === "empty" || line === "trouble") { // what cannot be sent just now does not keep fresh copies away
       await tray.forget(now() - KEEP_SENT);
       const fresh = await refreshSites();
+      state.said = fresh.ok ? null : fresh.body?.error?.text ?? null;
       if (!fresh.ok) line = fresh.status === 0 ? "unreached" : fresh.status === 401 ? "signed-out" : "trouble";
     }
     state.line = line;

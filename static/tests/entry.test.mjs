@@ -136,3 +136,11 @@ test("sync: a site that is no longer ours loses its copy, never what waits", asy
   assert.deepEqual(p.dropped, ["s1"]);
   assert.equal(p.state.records[0].state, "waiting");
 });
+
+test("sync: one site the server cannot give just now does not keep the others away", async () => {
+  const two = [...logs, { log: "s2", code: "SOUTH", name: "South" }];
+  const p = phone(server({ logs: async () => ok({ logs: two }), snapshot: async (t, log) => (log === "s1" ? { ...not(500), body: { error: { text: "Something went wrong here. Reference 7." } } } : ok({})) }));
+  assert.equal((await p.run()).state, "trouble");
+  assert.deepEqual([...p.state.sites.keys()], ["s2"]);
+  assert.equal(p.state.said, "Something went wrong here. Reference 7.");
+});

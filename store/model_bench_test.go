@@ -122,6 +122,12 @@ func (w *benchWriter) flush() {
 // them, envelope, stamp and body, one after the other.
 func BenchmarkRebuild(b *testing.B) {
 	s, _ := benchStore(b, 10, *rebuildRecords/300, *rebuildRecords)
+	defer func(was int) { rebuildSlice = was }(rebuildSlice)
+	rebuildSlice = 50_000 // tests make it small
+	hash, err := s.ViewHash()
+	if err != nil {
+		b.Fatal(err)
+	}
 	var ours, floor time.Duration
 	peak := uint64(0)
 	for b.Loop() {
@@ -156,6 +162,9 @@ func BenchmarkRebuild(b *testing.B) {
 		}
 		stop()
 		ours += time.Since(began)
+	}
+	if after, err := s.ViewHash(); err != nil || after != hash {
+		b.Fatalf("rebuilt: hash %s %v, want %s", after, err, hash)
 	}
 	b.ReportMetric(float64(ours)/float64(floor), "x-floor")
 	b.ReportMetric(float64(peak)/(1<<20), "peak-MB")

@@ -113,7 +113,7 @@ func readBook(tx *bbolt.Tx, seq uint64) (*record.Record, record.Stamp, kept, err
 	if err != nil {
 		return nil, record.Stamp{}, k, fmt.Errorf("record at %d: %w", seq, err)
 	}
-	r, fault := record.Parse(k.raw)
+	r, fault := record.Reread(k.raw)
 	if fault != nil {
 		return nil, record.Stamp{}, k, fmt.Errorf("record at %d: %w", seq, fault)
 	}

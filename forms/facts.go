@@ -213,6 +213,22 @@ func (f *facts) all(conditions []Condition) bool {
 	return true
 }
 
+// barred reports whether what is known forbids a step, so that nothing in it can be missed: closed by a fact, not only for
+// want of an answer.
+func (f *facts) barred(s *Step) bool {
+	for i := range s.ClosedWhen {
+		if f.holds(&s.ClosedWhen[i]) {
+			return true
+		}
+	}
+	for i := range s.ClosedUnless {
+		if c := &s.ClosedUnless[i]; f.given(c.Reading) && !f.holds(c) {
+			return true
+		}
+	}
+	return false
+}
+
 // closed reports whether a step is closed.
 func (f *facts) closed(s *Step) bool {
 	for i := range s.ClosedWhen {

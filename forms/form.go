@@ -41,7 +41,11 @@ type Ask struct {
 	Options  []string `json:"options,omitempty"`
 	Unit     string   `json:"unit,omitempty"`  // the code's own unit
 	Units    []string `json:"units,omitempty"` // units a person may type in
-	Required bool     `json:"required,omitzero"`
+	// Required: an entry without it is incomplete.
+	Required bool `json:"required,omitzero"`
+	// Expected: put as openly as what is required, so that a form in the hand is filled in whole. An entry made otherwise is
+	// incomplete without it only where it says why it was not answered.
+	Expected bool `json:"expected,omitzero"`
 	// Or names another reading that answers a required ask as well.
 	Or string `json:"or,omitempty"`
 	// Ends lists answers after which nothing more is asked.

@@ -70,7 +70,7 @@ func (j *judging) ask(a ask) {
 	if j.ended {
 		return
 	}
-	if !j.closed(a.step) {
+	if !j.barred(a.step) {
 		j.required(a, i)
 	}
 	if len(a.Ends) > 0 {
@@ -126,7 +126,7 @@ func (j *judging) limit(l *Limit, c *Code, r *Reading) {
 	if a.Lacks != "" {
 		j.miss(a.Lacks, f.At, "", "")
 	}
-	if a.Text != "" {
+	if a.Text != "" && !(a.Lacks != "" && r.NoTrip) {
 		f.Verdict, f.Text = NotJudged, a.Text
 	} else {
 		j.decide(l, c, r, &a, unit, &f)
@@ -140,6 +140,8 @@ func (j *judging) decide(l *Limit, c *Code, r *Reading, a *Applied, unit string,
 	switch {
 	case a.NoTrip:
 		outcome = proveNoTrip(r)
+	case a.Lacks != "": // it did not trip, at nobody says what current
+		outcome = unproven
 	case a.Limit != nil:
 		outcome = prove(a.Limit, r, c.Unit, unit)
 	}

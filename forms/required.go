@@ -15,7 +15,7 @@ func (j *judging) required(a ask, i int) {
 			}
 		}
 	}
-	if !a.Required || bySeries || j.givenAt(i) || a.Or != "" && j.givenAnywhere(a.Or) || a.Series && j.givenAnywhere(a.Reading) {
+	if !a.Required && !(a.Expected && j.saidMissing(i)) || bySeries || j.givenAt(i) || a.Or != "" && j.givenAnywhere(a.Or) || a.Series && j.givenAnywhere(a.Reading) {
 		return
 	}
 	reason := ""
@@ -23,6 +23,12 @@ func (j *judging) required(a ask, i int) {
 		reason = r.Missing
 	}
 	j.miss(a.Reading, nil, reason, "")
+}
+
+// saidMissing reports whether the entry says of a reading that it was not taken.
+func (j *judging) saidMissing(i int) bool {
+	r := j.at(i)
+	return r != nil && r.Missing != ""
 }
 
 // givenAnywhere reports whether a reading is given in the entry or under any condition.

@@ -84,6 +84,12 @@ export class Facts {
     return (conditions ?? []).every((c) => this.holds(c));
   }
 
+  /** What is known forbids the step: closed by a fact, not only for want of an answer. */
+  barred(step) {
+    const refuted = (c) => given(this.reading(c.reading)) && !this.holds(c);
+    return (step.closed_when ?? []).some((c) => this.holds(c)) || (step.closed_unless ?? []).some(refuted);
+  }
+
   closed(step) {
     return (step.closed_when ?? []).some((c) => this.holds(c)) || !this.all(step.closed_unless);
   }

@@ -176,7 +176,7 @@ export function fieldApp(parts) {
 
 /** Optional measurements and long choices no must limit waits for are one line until somebody wants them. */
 function folds(ask, bounds) {
-  if (ask.required) return false;
+  if (ask.required || ask.expected) return false;
   return ask.type === "number" ? bounds?.level !== "must" && ask.reading !== "test_current_ma" : (ask.options?.length ?? 0) > 2;
 }
 

@@ -25,7 +25,7 @@ export function Ask(props) {
   return html`<section class="ask" id=${`ask-${id}`}>
     <div class="q-line">
       ${numeric ? html`<label class="q" for=${`in-${id}`}>${words}</label>` : html`<span class="q" id=${`q-${id}`}>${words}</span>`}
-      ${ask.required && answer?.missing === undefined && html`<button type="button" class="skip" onClick=${() => set({ missing: "" })}>${say(numeric ? "field.not_measured" : "field.cannot_say")}</button>`}
+      ${(ask.required || ask.expected) && answer?.missing === undefined && html`<button type="button" class="skip" onClick=${() => set({ missing: "" })}>${say(numeric ? "field.not_measured" : "field.cannot_say")}</button>`}
     </div>
     ${answer?.missing !== undefined ? html`<${Missing} ...${props} id=${id} />`
       : numeric ? html`<${NumberField} ...${props} id=${id} />`

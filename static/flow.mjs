@@ -16,7 +16,7 @@ const CAUTION_WHEN = {
  * Walks a form with a draft's answers. limitSet may be null. Returns
  *   steps: [{step, cautions, closed, asks, series}] with only what applies now; closed is the words key of the reason or null;
  *     series is [{at, asks}] where the step asks the same readings under stated conditions,
- *   open: required questions without a readable answer or reason, as {id, ask, at},
+ *   open: required and expected questions without a readable answer or reason, as {id, ask, at},
  *   broken: ids of rows whose answer cannot be read,
  *   ended: the reading whose answer ended the form, readings: code → reading, series: rows for the record.
  * An answer counts only while its question applies, so one left behind by a changed mind is not recorded; a condition sees
@@ -50,7 +50,7 @@ function putAsks(form, step, draft, facts, shown, out) {
     const { reading, error } = readAnswer(ask, draft.answers[ask.reading]);
     if (error) out.broken.push(ask.reading);
     if (reading) out.readings[ask.reading] = reading;
-    else if (ask.required) out.open.push({ id: ask.reading, ask });
+    else if (ask.required || ask.expected) out.open.push({ id: ask.reading, ask });
     if (reading && (ask.ends ?? []).includes(reading.value)) {
       out.ended = ask.reading;
       return;

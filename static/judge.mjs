@@ -38,7 +38,7 @@ class Judging extends Facts {
     if (!c || !this.all(ask.when)) return;
     this.code(c);
     if (this.ended) return;
-    if (!this.closed(step)) this.required(ask);
+    if (!this.barred(step)) this.required(ask);
     if (ask.ends?.includes(this.answer(ask.reading))) this.ended = true;
   }
 
@@ -49,7 +49,7 @@ class Judging extends Facts {
       bySeries = true;
       if (!this.taken(c)) this.missUnder(c);
     }
-    if (!ask.required || bySeries || given(this.reading(ask.reading))) return;
+    if (!(ask.required || (ask.expected && this.reading(ask.reading)?.missing)) || bySeries || given(this.reading(ask.reading))) return;
     if ((ask.or && this.givenAnywhere(ask.or)) || (ask.series && this.givenAnywhere(ask.reading))) return;
     this.miss(ask.reading, undefined, this.reading(ask.reading)?.missing, "");
   }
@@ -117,7 +117,7 @@ class Judging extends Facts {
     if (a.unit) f.unit = a.unit;
     if (this.item?.at && Object.keys(this.item.at).length) f.at = sorted(this.item.at);
     if (a.lacks) this.miss(a.lacks, f.at, "", "");
-    const d = a.text ? { verdict: "not-judged", text: a.text } : this.decide(l, c, r, a, unit);
+    const d = a.text && !(a.lacks && r.no_trip) ? { verdict: "not-judged", text: a.text } : this.decide(l, c, r, a, unit);
     f.verdict = d.verdict;
     if (a.limit) f.limit = a.limit;
     f.level = l.level;
@@ -130,6 +130,7 @@ class Judging extends Facts {
   decide(l, c, r, a, unit) {
     let outcome = "other";
     if (a.no_trip) outcome = r.no_trip || r.above !== undefined ? "inside" : "low";
+    else if (a.lacks) outcome = "unproven"; // it did not trip, at nobody says what current
     else if (a.limit) outcome = prove(a.limit, r, c.unit, unit);
     let text = (typeof r.value === "string" && l.texts?.[r.value]) || l.text;
     if (l.gauge) {

@@ -108,6 +108,8 @@ func writeForm(w io.Writer, words *static.Words, f *forms.Form) {
 				need = "required where asked"
 			case a.Required:
 				need = "required"
+			case a.Expected:
+				need = "expected"
 			}
 			answers := strings.Join(a.Options, ", ")
 			if a.Type == forms.TypeYesNo {

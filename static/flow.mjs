@@ -37,9 +37,13 @@ export function walk(form, draft, given, limitSet) {
     if (out.ended) break;
     before = shown;
   }
-  out.open = out.open.filter(({ ask, at }) => at || !(ask.or && isSaid(out.readings[ask.or])));
+  const tapped = tappedOnce(form, out.readings);
+  out.open = out.open.filter(({ ask, at }) => at || !((ask.or && isSaid(out.readings[ask.or])) || (tapped && !ask.required)));
   return out;
 }
+
+/** Whether all that the one tap states is answered as it states: then nothing merely expected is open. */
+const tappedOnce = (form, readings) => form.quick !== undefined && Object.entries(form.quick.readings).every(([code, value]) => readings[code]?.value === value);
 
 const isSaid = (reading) => reading !== undefined && reading.missing === undefined;
 

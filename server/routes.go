@@ -42,6 +42,7 @@ func publicRoutes() []route {
 		// field client
 		{get, "/field", anyone, (*Server).fieldShow, 0},
 		{get, "/field/*", anyone, (*Server).fieldShow, 0},
+		{get, "/sw.js", anyone, (*Server).workerShow, 0},
 
 		// exchange
 		{post, "/exchange/enrol", crew | manager, (*Server).exchangeEnrol, 0},

@@ -63,5 +63,8 @@ func (s *Server) deviceOfTag(sc store.Scope, tag string) (device string, err err
 // anybody's: an enrolled phone works by its own token long after the browser's session has ended, and a phone that is not
 // enrolled is told 401 by the exchange and sends its reader to /in?next=/field.
 func (s *Server) fieldShow(c echo.Context) error {
-	return s.page(c, http.StatusOK, "field.html", s.frame(c, "Tripwell", "field"))
+	return s.page(c, http.StatusOK, "field.html", shellFrame())
 }
+
+// shellFrame is the same for everybody: phones keep the shell and open it for whoever holds them.
+func shellFrame() Frame { return Frame{Title: "Tripwell", Here: "field"} }

@@ -1,6 +1,7 @@
 // Small parts every page of the field client uses: the head, the foot with what is kept on the phone, marks of a verdict.
 
 import { html } from "./vendor/htm-preact.mjs";
+import { PhoneNotices } from "./phone-notices.mjs";
 import { showTag } from "./tag.mjs";
 
 /** Which mark a result or a finding's verdict is drawn with; the word stands beside it always. */
@@ -43,7 +44,7 @@ function StillOff({ app }) {
 function Notices({ app }) {
   const { say, state } = app;
   const minutes = Math.round(Math.abs(state.offset ?? 0) / 60_000);
-  return html`<div class="notices">
+  return html`<div class="notices"><${PhoneNotices} app=${app} />
     ${Math.abs(state.offset ?? 0) > 120_000 && html`<p class="notice" role="status">${say(state.offset > 0 ? "field.clock_behind" : "field.clock_ahead", { minutes, n: minutes })}</p>`}
     ${state.line === "signed-out" && html`<p class="notice" role="status">${say("field.signed_out")} <a href=${`/in?next=${encodeURIComponent("/field" + (globalThis.location?.hash ?? ""))}`}>${say("field.sign_in")}</a></p>`}
     ${state.line === "trouble" && html`<p class="notice" role="status">${state.said ?? say("field.line.trouble")}</p>`}

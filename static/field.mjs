@@ -13,6 +13,7 @@ import { newId } from "./record.mjs";
 import { parseRoute, toDevice } from "./route.mjs";
 import { sending } from "./sending.mjs";
 import { syncing } from "./syncing.mjs";
+import { isCalm, versions } from "./version.mjs";
 import { speaker } from "./words.mjs";
 
 const root = document.getElementById("field");
@@ -66,17 +67,27 @@ async function start() {
   const app = fieldApp({ tray, say, draw, go, now, make: makeRecord, judgeVersion: JudgeVersion, keepSending: () => sender.kick(), takeOver: () => sync.takeOver(), leave: (path) => location.assign(path) });
   const sync = syncing({ state: app.state, tray, along, net: exchange({ fetch: (...a) => fetch(...a), now }), now, newId: () => newId(now()), changed: app.changed });
   const sender = sending({ run: () => alone(sync.run), later: (fn, ms) => setTimeout(fn, ms), cancel: clearTimeout, random: Math.random });
+  const version = versions({ container: navigator.serviceWorker, calm: () => isCalm(app.state), session: sessionStorage, now,
+    offered: (yes) => { app.state.newer = yes; app.changed(); }, load: () => location.reload() });
+  app.takeNewer = version.take;
+  app.state.insecure = !globalThis.isSecureContext;
   const onRoute = () => {
     app.route(parseRoute(location.hash, location.pathname), keepSaved);
     keepSaved = false;
     scrollTo(0, 0);
+    version.calmNow();
   };
 
   await readKept(app.state, tray, along);
   addEventListener("hashchange", onRoute);
   addEventListener("online", () => sender.kick());
-  document.addEventListener("visibilitychange", () => { if (document.visibilityState === "visible") sender.kick(); });
+  document.addEventListener("visibilitychange", () => {
+    if (document.visibilityState !== "visible") return;
+    sender.kick();
+    version.look();
+  });
   onRoute();
+  version.start();
   if (cameFromSignIn()) await sync.takeOver();
   sender.kick();
   app.state.persisted = await navigator.storage?.persist?.().catch(() => false);

@@ -6,5 +6,5 @@ import "embed"
 
 // Files is every file of this folder that a browser may fetch. Words is part of it.
 //
-//go:embed *.css *.mjs words vendor
+//go:embed *.css *.mjs *.webmanifest icons words vendor
 var Files embed.FS

@@ -1,0 +1,109 @@
+package server
+
+import (
+	"crypto/sha256"
+	_ "embed"
+	"encoding/hex"
+	"encoding/json"
+	"fmt"
+	"net/http"
+	"path"
+	"regexp"
+	"slices"
+	"strings"
+
+	"github.com/labstack/echo/v4"
+)
+
+// workerText is the service worker without its first line, which names this build.
+//
+//go:embed sw.js
+var workerText string
+
+const shellPath = "/field"
+
+// workerBuild is what the worker is told of the build it belongs to.
+type workerBuild struct {
+	Cache string      `json:"cache"`
+	Shell string      `json:"shell"`
+	Root  string      `json:"root"`
+	Files [][2]string `json:"files"` // name and SHA-256 in hexadecimal digits
+}
+
+// worker writes the script of /sw.js. Its bytes change when any file of the field client, its page or the worker itself
+// changes, and only then: a browser installs a worker anew when its bytes differ.
+func (s *Server) worker(shell []byte) (string, error) {
+	first := []string{"field.mjs", "field.css", "tokens.css", "field.webmanifest", "icons/mark-180.png"}
+	for name := range s.assets.files {
+		if strings.HasPrefix(name, "words/") {
+			first = append(first, name)
+		}
+	}
+	names, err := s.assets.needed(first...)
+	if err != nil {
+		return "", err
+	}
+	build := workerBuild{Shell: shellPath, Root: s.assets.root()}
+	sum := sha256.New()
+	fmt.Fprintf(sum, "%s\n%s\n%s\n", s.assets.hash, workerText, shell)
+	for _, name := range names {
+		own := sha256.Sum256(s.assets.files[name].plain)
+		build.Files = append(build.Files, [2]string{name, hex.EncodeToString(own[:])})
+	}
+	build.Cache = "tripwell-field-" + hex.EncodeToString(sum.Sum(nil))[:16]
+	line, err := json.Marshal(build)
+	if err != nil {
+		return "", err
+	}
+	return "const BUILD = " + string(line) + ";\n" + workerText, nil
+}
+
+// workerShow answers /sw.js. It lies at the root because a worker may only answer what lies below it, and labels do.
+func (s *Server) workerShow(c echo.Context) error {
+	var shell strings.Builder
+	if err := s.pages["field.html"].Execute(&shell, shellFrame()); err != nil {
+		return fmt.Errorf("worker: %w", err)
+	}
+	script, err := s.worker([]byte(shell.String()))
+	if err != nil {
+		return err
+	}
+	c.Response().Header().Set("Cache-Control", "no-cache")
+	return c.Blob(http.StatusOK, "text/javascript; charset=utf-8", []byte(script))
+}
+
+var (
+	moduleAsks   = regexp.MustCompile(`(?:from|import|new URL)\s*\(?\s*["'](\.{1,2}/[^"']+)["']`)
+	styleAsks    = regexp.MustCompile(`(?:url\(|@import)\s*["']?(\.{1,2}/[^"')]+)`)
+	manifestAsks = regexp.MustCompile(`"src":\s*"(\.{1,2}/[^"]+)"`)
+)
+
+// needed lists the files that some files ask for, and those in turn, by name: what must be laid in for the client to run.
+func (a *assets) needed(names ...string) ([]string, error) {
+	found := map[string]bool{}
+	for len(names) > 0 {
+		name := names[0]
+		names = names[1:]
+		file, ok := a.files[name]
+		if !ok {
+			return nil, fmt.Errorf("worker: %s is asked for and not embedded", name)
+		}
+		if found[name] {
+			continue
+		}
+		found[name] = true
+		asks := map[string]*regexp.Regexp{".mjs": moduleAsks, ".css": styleAsks, ".webmanifest": manifestAsks}[path.Ext(name)]
+		if asks == nil {
+			continue
+		}
+		for _, m := range asks.FindAllStringSubmatch(string(file.plain), -1) {
+			names = append(names, path.Join(path.Dir(name), m[1]))
+		}
+	}
+	list := make([]string, 0, len(found))
+	for name := range found {
+		list = append(list, name)
+	}
+	slices.Sort(list)
+	return list, nil
+}

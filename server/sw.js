@@ -1,0 +1,80 @@
+// The worker that opens the field client without a line. The server writes BUILD before this text: {cache, shell, root,
+// files:[[name, SHA-256 in hex]…]}. It answers navigations to the field client and to labels, and the files it laid in;
+// everything else, and whatever is no GET, goes past it as if it were not there.
+
+const OWN = "tripwell-field-"; // every cache of ours is named so; no other is touched
+const KEPT_CACHES = 2; // ours and the one before: a page that is still open with a form in it may want a file of that one
+
+/** Lays the whole build in or nothing: a worker with half of it would break the client where there is no line to mend it. */
+async function layIn() {
+  if (await whole()) return;
+  const cache = await caches.open(BUILD.cache);
+  try {
+    await Promise.all([layShell(cache), ...BUILD.files.map((file) => layFile(cache, file))]);
+  } catch (e) {
+    await caches.delete(BUILD.cache);
+    throw e;
+  }
+}
+
+/** Whether every file of this build is here already: the same worker installed once more. */
+async function whole() {
+  if (!(await caches.has(BUILD.cache))) return false;
+  const here = new Set((await (await caches.open(BUILD.cache)).keys()).map((request) => new URL(request.url).pathname));
+  return here.has(BUILD.shell) && BUILD.files.every(([name]) => here.has(BUILD.root + name));
+}
+
+/** The page must be the one that asks for this build's files; the server may have been replaced a moment ago. */
+async function layShell(cache) {
+  const answer = await fetch(BUILD.shell, { cache: "no-store", redirect: "error" });
+  if (!answer.ok || !(await answer.clone().text()).includes(`${BUILD.root}field.mjs`)) throw new Error(`${BUILD.shell} is of another build`);
+  await cache.put(BUILD.shell, answer);
+}
+
+/** Every file is the very file the server was built with; a page put in between by somebody's network is not. */
+async function layFile(cache, [name, sha256]) {
+  const answer = await fetch(BUILD.root + name, { redirect: "error" });
+  const bytes = answer.ok ? await answer.clone().arrayBuffer() : null;
+  if (!bytes || hex(await crypto.subtle.digest("SHA-256", bytes)) !== sha256) throw new Error(`${name} did not come whole`);
+  await cache.put(BUILD.root + name, answer);
+}
+
+const hex = (bytes) => [...new Uint8Array(bytes)].map((b) => b.toString(16).padStart(2, "0")).join("");
+
+async function clearOld() {
+  const own = (await caches.keys()).filter((name) => name.startsWith(OWN) && name !== BUILD.cache); // in the order they were made
+  await Promise.all(own.slice(0, Math.max(0, own.length - (KEPT_CACHES - 1))).map((name) => caches.delete(name)));
+}
+
+const isFile = new RegExp(`^/assets/[0-9a-f]{16}/`);
+const fileNames = new Set(BUILD.files.map(([name]) => name));
+
+/** What of ours a request asks for: "shell", "file" or null. */
+function oursOf(request) {
+  const url = new URL(request.url);
+  if (request.method !== "GET" || url.origin !== self.location.origin) return null;
+  if (request.mode === "navigate") return /^\/(field(\/|$)|t\/)/i.test(url.pathname) && !url.searchParams.has("past") ? "shell" : null;
+  return isFile.test(url.pathname) && fileNames.has(url.pathname.replace(isFile, "")) ? "file" : null;
+}
+
+async function answer(request, what) {
+  const options = { ignoreVary: true };
+  const kept = what === "shell" ? await (await caches.open(BUILD.cache)).match(BUILD.shell, options) : await ownMatch(request, options);
+  return kept ?? fetch(request);
+}
+
+async function ownMatch(request, options) {
+  for (const name of (await caches.keys()).filter((n) => n.startsWith(OWN)).reverse()) {
+    const kept = await (await caches.open(name)).match(request, options);
+    if (kept) return kept;
+  }
+  return undefined;
+}
+
+self.addEventListener("install", (e) => e.waitUntil(layIn()));
+self.addEventListener("activate", (e) => e.waitUntil(clearOld().then(() => self.clients.claim())));
+self.addEventListener("fetch", (e) => {
+  const what = oursOf(e.request);
+  if (what) e.respondWith(answer(e.request, what));
+});
+self.addEventListener("message", (e) => { if (e.data === "take over") self.skipWaiting(); });

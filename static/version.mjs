@@ -1,0 +1,53 @@
+// Takes a newer version of the client when it is wise to: the worker that holds it waits until this page says so, and this
+// page says so only while no form is open. The page then loads once, never in a circle. The browser's parts are passed in.
+
+const TAKEN = "tripwell-taken"; // the moment this tab last loads for a new version
+const CALM = 10_000; // a second load sooner than this would be a circle
+
+/** Pages on which nothing is being filled in; every other page counts as an open form. */
+const CALM_PAGES = new Set(["sites", "site", "device", "tray", "tag", "along"]);
+export const isCalm = (state) => CALM_PAGES.has(state.route.page) && !state.saving;
+
+/**
+ * versions({container, calm, offered, load, session, now}) → {start, take, look, calmNow}. container is
+ * navigator.serviceWorker or undefined; calm() says that no form is open; offered(yes) tells the page there is something to take.
+ */
+export function versions({ container, calm, offered, load, session, now }) {
+  let registration = null, taking = false, owed = false;
+
+  function loadOnce() {
+    if (!calm()) { owed = true; return; } // another page took it while a form is open here: after the form
+    owed = false;
+    if (now() - Number(session.getItem(TAKEN) ?? 0) < CALM) return;
+    session.setItem(TAKEN, String(now()));
+    load();
+  }
+
+  function watch(worker) {
+    worker?.addEventListener("statechange", () => { if (worker.state === "installed" && container.controller) offered(true); });
+  }
+
+  return {
+    async start() {
+      if (!container) return;
+      const had = Boolean(container.controller); // the very first worker takes over a page that is up to date
+      container.addEventListener("controllerchange", () => { if (had || taking) loadOnce(); });
+      registration = await container.register("/sw.js", { updateViaCache: "none" }).catch(() => null);
+      if (!registration) return;
+      registration.addEventListener("updatefound", () => watch(registration.installing));
+      watch(registration.installing);
+      if (registration.waiting && container.controller) offered(true);
+    },
+    /** Asks the waiting worker to take over; refused while a form is open. */
+    take() {
+      if (!registration?.waiting || !calm()) return false;
+      taking = true;
+      registration.waiting.postMessage("take over");
+      return true;
+    },
+    /** Looks whether the server has another version; without a line nothing happens. */
+    look: () => registration?.update().catch(() => {}),
+    /** The page has just become calm: catch up on a load that had to wait. */
+    calmNow() { if (owed) loadOnce(); },
+  };
+}

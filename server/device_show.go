@@ -279,6 +279,9 @@ func (s *Server) testedBy(v *store.View, e store.Entry) string {
 		}
 		return e.ReadBy
 	}
+	if e.Imported {
+		return s.words.Say("office.device.imported")
+	}
 	return s.personName(v, e.By)
 }
 

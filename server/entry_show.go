@@ -343,7 +343,14 @@ func (s *Server) entryFacts(v *store.View, e store.Entry, site store.Site) ([]fa
 			out = append(out, fact{Name: k.say("office.entry." + key), Value: value})
 		}
 	}
-	add("by", s.personName(v, e.By))
+	switch {
+	case e.Imported:
+		add("brought_by", s.personName(v, e.By))
+	case e.Source != "" && e.Source != "phone":
+		add("entered_by", s.personName(v, e.By))
+	default:
+		add("by", s.personName(v, e.By))
+	}
 	add("read_by", personOr(v, e.ReadBy))
 	add("typed_by", personOr(v, e.TypedBy))
 	add("at_time", k.at(e.At, zone))

@@ -66,7 +66,11 @@ func checkReading(code string, r *Reading) *Error {
 		return nil
 	}
 	if c.Type != TypeNumber {
-		if s, ok := r.Text(); !ok || !slices.Contains(c.Options, s) {
+		s, ok := r.Text()
+		if ok && IsOwn(code) && len(c.Options) == 0 {
+			return nil // its form says what may be answered
+		}
+		if !ok || !slices.Contains(c.Options, s) {
 			return invalid("", fmt.Sprintf("%s is answered with one of: %s.", code, strings.Join(c.Options, ", ")))
 		}
 		return nil

@@ -1,5 +1,7 @@
 package forms
 
+import "strings"
+
 // Types of reading codes.
 const (
 	TypeNumber = "number"
@@ -65,7 +67,25 @@ var codes = []Code{
 	number("trip_current_ma", "mA"),
 	yesNo("holds_at_half"),
 	yesNo("restored"),
+	yesNo("own_yes_no_1"), yesNo("own_yes_no_2"), yesNo("own_yes_no_3"),
+	choice("own_choice_1", true), choice("own_choice_2", true), choice("own_choice_3", true),
+	number("own_number_1", ""), number("own_number_2", ""), number("own_number_3", ""),
 }
+
+// OwnCodes lists the codes kept for checks an organisation adds of its own, by type; what each asks, and in which unit,
+// stands in the name its form gives it.
+func OwnCodes(typ string) []string {
+	var out []string
+	for _, c := range codes {
+		if c.Type == typ && IsOwn(c.Code) {
+			out = append(out, c.Code)
+		}
+	}
+	return out
+}
+
+// IsOwn reports whether a code is kept for checks of an organisation's own.
+func IsOwn(code string) bool { return strings.HasPrefix(code, "own_") }
 
 var codeAt = func() map[string]int {
 	at := make(map[string]int, len(codes))

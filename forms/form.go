@@ -36,11 +36,13 @@ type Step struct {
 
 // Ask is one question. It is put only where all of When hold.
 type Ask struct {
-	Reading  string   `json:"reading"`
-	Type     string   `json:"type"`
-	Options  []string `json:"options,omitempty"`
-	Unit     string   `json:"unit,omitempty"`  // the code's own unit
-	Units    []string `json:"units,omitempty"` // units a person may type in
+	Reading string `json:"reading"`
+	// Name is the question as its users wrote it, of a check of their own (OwnCodes); the others are in the catalogue.
+	Name    string   `json:"name,omitempty"`
+	Type    string   `json:"type"`
+	Options []string `json:"options,omitempty"`
+	Unit    string   `json:"unit,omitempty"`  // the code's own unit
+	Units   []string `json:"units,omitempty"` // units a person may type in
 	// Required: an entry without it is incomplete.
 	Required bool `json:"required,omitzero"`
 	// Expected: put as openly as what is required, so that a form in the hand is filled in whole. An entry made otherwise is

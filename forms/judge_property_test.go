@@ -32,7 +32,15 @@ func drawReading(t *rapid.T, c Code) Reading {
 	if c.Type == TypeNumber {
 		return Number(v)
 	}
-	return Answer(rapid.SampledFrom(c.Options).Draw(t, "answer"))
+	return Answer(rapid.SampledFrom(answersOf(c)).Draw(t, "answer"))
+}
+
+// answersOf gives what may be answered to a code; a choice of an organisation's own has the answers its form gives it.
+func answersOf(c Code) []string {
+	if IsOwn(c.Code) && c.Type == TypeChoice {
+		return []string{"fits", "loose"}
+	}
+	return c.Options
 }
 
 func drawEntry(t *rapid.T) (*Form, *LimitSet, Entry) {
@@ -282,13 +290,14 @@ func randomLine(random *rand.Rand) map[string]any {
 func randomReading(random *rand.Rand, c Code) any {
 	v := math.Round(math.Pow(10, random.Float64()*5-1)*100) / 100
 	if c.Type != TypeNumber {
-		switch n := random.IntN(len(c.Options) + 8); {
-		case n == len(c.Options):
+		options := answersOf(c)
+		switch n := random.IntN(len(options) + 8); {
+		case n == len(options):
 			return map[string]any{"missing": MissingReasons()[random.IntN(6)]}
-		case n < len(c.Options):
-			return c.Options[n]
+		case n < len(options):
+			return options[n]
 		}
-		return c.Options[0]
+		return options[0]
 	}
 	switch random.IntN(12) {
 	case 0:

@@ -2,10 +2,15 @@ package forms
 
 // LimitSet is a named, revised table of limits; data, not code (forms/data).
 type LimitSet struct {
-	ID       string   `json:"limit_set"`
+	ID string `json:"limit_set"`
+	// Name is what a set made by its users is called; shipped sets are named in the catalogue.
+	Name     string   `json:"name,omitempty"`
 	Revision int      `json:"revision"`
 	InForce  Day      `json:"in_force"`
 	Kinds    []string `json:"kinds"`
+	// StandsFor lists kinds, or "KIND delayed", whose devices are held against this set where none is chosen for the
+	// device itself: in a site's log at that site, in the organisation's everywhere else.
+	StandsFor []string `json:"stands_for,omitempty"`
 	// Rule is the decision rule: "simple" (a value on the limit passes) is the only one this judge knows.
 	Rule string `json:"rule"`
 	// Assume gives fields that are taken where the entry does not say ("nominal_v": 120).

@@ -17,7 +17,7 @@ import { showDay } from "./days.mjs";
 export function Ask(props) {
   const { app, ask, answer, set, title, id = ask.reading } = props;
   const { say } = app;
-  const words = title ?? say(`reading.${ask.reading}.ask`);
+  const words = title ?? ask.name ?? say(`reading.${ask.reading}.ask`);
   const numeric = ask.type === "number";
   if (props.folded && answer === undefined) {
     return html`<button type="button" class="folded" id=${`ask-${id}`} onClick=${() => app.unfold(ask)}><span>${words}</span><span class="add">${say("field.add")}</span></button>`;
@@ -46,7 +46,7 @@ function Missing({ app, answer, set, id }) {
 function Choices({ app, ask, answer, set, id }) {
   const { say } = app;
   const options = ask.type === "yes-no" ? ["yes", "no"] : ask.options;
-  const word = (o) => (say.has(`option.${ask.reading}.${o}`) ? say(`option.${ask.reading}.${o}`) : say.has(`option.${o}`) ? say(`option.${o}`) : say(`field.${o}`));
+  const word = (o) => (say.has(`option.${ask.reading}.${o}`) ? say(`option.${ask.reading}.${o}`) : say.has(`option.${o}`) ? say(`option.${o}`) : say.has(`field.${o}`) ? say(`field.${o}`) : o);
   return html`<div class="pick" role="group" aria-labelledby=${`q-${id}`}>
     ${options.map((o) => html`<button type="button" key=${o} aria-pressed=${String(answer?.pick === o)}
       onClick=${() => set(answer?.pick === o ? undefined : { pick: o })}>${word(o)}</button>`)}

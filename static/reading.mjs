@@ -11,7 +11,7 @@ export class Refusal extends Error {
   }
 }
 
-const choice = (reading, test, ...options) => ({ reading, type: "choice", options, test });
+const choice = (reading, test, ...options) => ({ reading, type: "choice", options: options.length ? options : undefined, test });
 const yesNo = (reading, test = true) => ({ reading, type: "yes-no", options: ["yes", "no"], test });
 const number = (reading, unit, test = true) => ({ reading, type: "number", unit, test });
 
@@ -49,6 +49,9 @@ export const codes = [
   number("trip_current_ma", "mA"),
   yesNo("holds_at_half"),
   yesNo("restored"),
+  yesNo("own_yes_no_1"), yesNo("own_yes_no_2"), yesNo("own_yes_no_3"),
+  choice("own_choice_1", true), choice("own_choice_2", true), choice("own_choice_3", true),
+  number("own_number_1", ""), number("own_number_2", ""), number("own_number_3", ""),
 ];
 
 /** Code → what is known of it. */
@@ -156,6 +159,7 @@ export function checkReading(code, r) {
     return;
   }
   if (c.type !== "number") {
+    if (typeof r.value === "string" && !c.options) return; // a check of an organisation's own: its form says what may be answered
     if (typeof r.value !== "string" || !c.options.includes(r.value)) throw new Refusal("", `${code} is answered with one of: ${c.options.join(", ")}.`);
     return;
   }

@@ -4,12 +4,14 @@ import (
 	"bytes"
 	"context"
 	"errors"
+	"os"
 	"strings"
 	"testing"
 	"time"
 
 	"github.com/xuri/excelize/v2"
 
+	"tripwell/export/register"
 	"tripwell/forms"
 	"tripwell/store"
 )
@@ -40,10 +42,10 @@ func newHouse(t *testing.T, url string) *house {
 
 var everything = store.Scope{Role: "owner", All: true}
 
-func (h *house) bring(t *testing.T, csv string, also ...ImportOption) ImportReport {
+func (h *house) bring(t *testing.T, csv string, newTags ...bool) register.Report {
 	t.Helper()
 	h.now = h.now.Add(time.Minute)
-	report, err := ImportRegister(context.Background(), h.Store, h.ID(), strings.NewReader(csv), nil, also...)
+	report, err := register.Import(context.Background(), h.Store, "sample.csv", strings.NewReader(csv), register.Options{By: h.ID(), NewTags: len(newTags) > 0}, nil)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -111,11 +113,11 @@ func TestImportRegister_ChangedRowsBecomeFieldChanges(t *testing.T) {
 
 func TestImportRegister_TagsAndLabels(t *testing.T) {
 	h := newHouse(t, "https://demo.tripwell.example")
-	report := h.bring(t, string(sampleRegister(t)), MintTags)
+	report := h.bring(t, string(sampleRegister(t)), true)
 	if report.Tags != 41 {
 		t.Fatalf("got %d tags, want 41", report.Tags)
 	}
-	if again := h.bring(t, string(sampleRegister(t)), MintTags); again.Tags != 0 || again.Records != 0 {
+	if again := h.bring(t, string(sampleRegister(t)), true); again.Tags != 0 || again.Records != 0 {
 		t.Errorf("tags given twice: %+v", again)
 	}
 	labels, err := LabelsOf(h.Store, everything, "ALDER-1")
@@ -241,4 +243,13 @@ func TestWorkbook_AnotherSiteStaysOut(t *testing.T) {
 	if !errors.As(err, &refused) || refused.Code != "not_found" {
 		t.Errorf("a workbook of another site: %v, want not_found", err)
 	}
+}
+
+func sampleRegister(t testing.TB) []byte {
+	t.Helper()
+	raw, err := os.ReadFile("../testdata/register.csv")
+	if err != nil {
+		t.Fatal(err)
+	}
+	return raw
 }

@@ -12,7 +12,6 @@ import (
 
 	"github.com/labstack/echo/v4"
 
-	"tripwell/export"
 	"tripwell/forms"
 	"tripwell/store"
 )
@@ -172,25 +171,6 @@ func (s *Server) ownLabels(c echo.Context) error {
 		return err
 	}
 	return s.sendLabels(c, ownerScope, by)
-}
-
-// ownImportRegister takes a register as CSV in the body and answers as work does; its report is export.ImportReport.
-// Query: by (person), site (code of the site that rows which name none belong to), tags=new (give every place of the file without a tag a new one).
-func (s *Server) ownImportRegister(c echo.Context) error {
-	by, err := s.ownBy(c)
-	if err != nil {
-		return err
-	}
-	var also []export.ImportOption
-	if c.QueryParam("tags") == "new" {
-		also = append(also, export.MintTags)
-	}
-	if site := c.QueryParam("site"); site != "" {
-		also = append(also, export.SiteOfRows(site))
-	}
-	return s.work(c, func(ctx context.Context, progress func(done, total int64)) (any, error) {
-		return export.ImportRegister(ctx, s.store, by, c.Request().Body, func(done, total int) { progress(int64(done), int64(total)) }, also...)
-	})
 }
 
 // ownBy is in whose name a command acts: the person asked for with by (id or name), else the first manager of all sites.

@@ -15,7 +15,7 @@ import (
 	"github.com/labstack/echo/v4"
 	"github.com/xuri/excelize/v2"
 
-	"tripwell/export"
+	"tripwell/export/register"
 	"tripwell/forms"
 	"tripwell/store"
 )
@@ -171,7 +171,7 @@ func TestDoor_ImportsARegister(t *testing.T) {
 	r.enrol(r.crew)
 	d := r.doors()["beside a server"](t)
 	file := "site,building,floor,room,spot,kind,panel,circuit,rating_a\nKILN-LANE,Main,Ground floor,Kitchen,By the sink,gfci-receptacle,LP-2,14,20\n"
-	var report export.ImportReport
+	var report register.Report
 	must(t, d.Follow(t.Context(), http.MethodPost, "/own/import/register", nil, strings.NewReader(file), nil, &report))
 	if report.Added != 1 {
 		t.Errorf("got %+v, want one device added", report)

@@ -47,7 +47,7 @@ func rooms(t *testing.T) map[string][]string {
 var onlyIn = map[string][]string{
 	"github.com/labstack/echo":       {"server"},
 	"go.etcd.io/bbolt":               {"store"},
-	"github.com/xuri/excelize":       {"export", "export/paper", "export/intake"},
+	"github.com/xuri/excelize":       {"export", "export/paper", "export/intake", "export/register"},
 	"github.com/skip2/go-qrcode":     {"export"},
 	"codeberg.org/go-pdf/fpdf":       {"export", "export/paper"},
 	"github.com/alecthomas/kong":     {"cmd/tripwell"},

@@ -1,22 +1,38 @@
-package export
+package register
 
 import (
 	"fmt"
 	"maps"
 	"strings"
 
+	"tripwell/export/intake"
 	"tripwell/store"
 )
 
-// RegisterPlan is what an import will append, before it does.
-type RegisterPlan struct {
-	Rows       []RowDrafts
-	Problems   []RowProblem
-	NeedTag    []TagWant // fixed devices and portable items in the file that will have no tag
-	Added      int
-	Changed    int
-	Unchanged  int
-	SitesAdded int
+// Plan is what an import will append, before it does.
+type Plan struct {
+	Rows      []RowDrafts
+	Problems  []Problem
+	NeedTag   []TagWant // fixed devices and portable items in the file that will have no tag
+	Added     int
+	Changed   int
+	Unchanged int
+	NewSites  []NewSite
+	States    map[RowAt]string // of each row that is taken: new | changed | unchanged
+}
+
+// RowAt names a row of a file.
+type RowAt struct {
+	Sheet string
+	Row   int
+}
+
+// NewSite is a site an import registers. Without a zone none of its rows is taken.
+type NewSite struct {
+	Code string `json:"code"`
+	Name string `json:"name"`
+	Zone string `json:"zone"`
+	Rows int    `json:"rows"`
 }
 
 // RowDrafts are the records of one row; they are appended together.
@@ -28,28 +44,30 @@ type RowDrafts struct {
 // TagWant is a place or portable item without a tag.
 type TagWant struct{ Log, Subject string }
 
-// RegisterDrafts turns rows into records: what is new is registered under ids made from its key, what differs becomes
+// Drafts turns rows into records: what is new is registered under ids made from its key, what differs becomes
 // field changes, what is the same becomes nothing. It reads the view and writes nothing.
-func RegisterDrafts(v *store.View, by string, rows []RegisterRow, ask RegisterAsk) (RegisterPlan, error) {
+func Drafts(v *store.View, by string, rows []Row, ask Ask) (Plan, error) {
 	k, err := readKnown(v, rows, ask)
 	if err != nil {
-		return RegisterPlan{}, err
+		return Plan{}, err
 	}
-	return planRegister(k, by, rows), nil
+	return planRows(k, by, rows, ask), nil
 }
 
-type registerPlanner struct {
+type planner struct {
 	*known
 	by    string
-	plan  RegisterPlan
-	lines map[string]int // line a key was first seen on
+	ask   Ask
+	plan  Plan
+	lines map[string]Row // row a key was first seen on
 	order map[string]int // walking order given so far, by room
-	first map[string]RegisterRow
+	first map[string]Row
+	made  map[string]bool // codes of sites this import registers
 	out   []store.Draft
 }
 
-func planRegister(k *known, by string, rows []RegisterRow) RegisterPlan {
-	p := &registerPlanner{known: k, by: by, lines: map[string]int{}, order: map[string]int{}, first: siteFacts(rows)}
+func planRows(k *known, by string, rows []Row, ask Ask) Plan {
+	p := &planner{known: k, by: by, ask: ask, plan: Plan{States: map[RowAt]string{}}, lines: map[string]Row{}, order: map[string]int{}, first: siteFacts(rows), made: map[string]bool{}}
 	for _, row := range rows {
 		p.row(row)
 	}
@@ -57,8 +75,8 @@ func planRegister(k *known, by string, rows []RegisterRow) RegisterPlan {
 }
 
 // siteFacts gathers what any row of a site says of the site: sheets often fill it in once.
-func siteFacts(rows []RegisterRow) map[string]RegisterRow {
-	facts := map[string]RegisterRow{}
+func siteFacts(rows []Row) map[string]Row {
+	facts := map[string]Row{}
 	for _, r := range rows {
 		f := facts[r.Site]
 		for _, part := range []struct{ into, from *string }{
@@ -73,10 +91,10 @@ func siteFacts(rows []RegisterRow) map[string]RegisterRow {
 	return facts
 }
 
-func (p *registerPlanner) row(row RegisterRow) {
+func (p *planner) row(row Row) {
 	p.out = nil
 	wrong := func(column, value, text string) {
-		p.plan.Problems = append(p.plan.Problems, RowProblem{Line: row.Line, Column: column, Value: cut(value), Text: text, Skipped: true})
+		p.plan.Problems = append(p.plan.Problems, Problem{intake.Problem{Sheet: row.Sheet, Row: row.Line, Column: column, Value: cut(value), Text: text}, true})
 	}
 	site, isNew, text := p.site(row)
 	if text != "" {
@@ -84,8 +102,12 @@ func (p *registerPlanner) row(row RegisterRow) {
 		return
 	}
 	key := site.ID + "\x1f" + row.key()
-	if line, twice := p.lines[key]; twice {
-		wrong("place", fieldText(row.Place, "name"), fmt.Sprintf("Line %d already names a device at this place. Give each its own place, or its own circuit at a panel.", line))
+	if first, twice := p.lines[key]; twice {
+		where := fmt.Sprintf("Row %d", first.Line)
+		if first.Sheet != row.Sheet {
+			where += " of sheet " + first.Sheet
+		}
+		wrong("place", fieldText(row.Place, "name"), where+" already names a device at this place. Give each its own place, or its own circuit at a panel.")
 		return
 	}
 	d := p.device(site, key, &row)
@@ -97,41 +119,66 @@ func (p *registerPlanner) row(row RegisterRow) {
 		wrong("tag", row.Tag, "This tag is bound to another place already. Correct it, or leave it empty.")
 		return
 	}
-	p.lines[key] = row.Line
+	p.lines[key] = row
 	if isNew {
 		p.sites[row.Site] = site
-		p.plan.SitesAdded++
 	}
 	p.place(site, d, &row)
 	p.circuit(site, d, &row)
 	p.register(site, d, &row)
 	p.tag(site, d, &row)
-	p.count(d, row.Line)
+	p.count(d, row)
 }
 
-func (p *registerPlanner) count(d *rowDevice, line int) {
+func (p *planner) count(d *rowDevice, row Row) {
+	state := "unchanged"
 	switch {
 	case d.was == nil:
 		p.plan.Added++
+		state = "new"
 	case len(p.out) > 0:
 		p.plan.Changed++
+		state = "changed"
 	default:
 		p.plan.Unchanged++
 	}
+	p.plan.States[RowAt{row.Sheet, row.Line}] = state
 	if len(p.out) > 0 {
-		p.plan.Rows = append(p.plan.Rows, RowDrafts{Line: line, Drafts: p.out})
+		p.plan.Rows = append(p.plan.Rows, RowDrafts{Line: row.Line, Drafts: p.out})
 	}
 }
 
+// newSite counts a row of a site that is not there yet.
+func (p *planner) newSite(s store.Site) {
+	for i := range p.plan.NewSites {
+		if p.plan.NewSites[i].Code == s.Code {
+			p.plan.NewSites[i].Rows++
+			return
+		}
+	}
+	p.plan.NewSites = append(p.plan.NewSites, NewSite{s.Code, s.Name, s.Zone, 1})
+}
+
 // site finds the site of a row or drafts its registration.
-func (p *registerPlanner) site(row RegisterRow) (site store.Site, isNew bool, text string) {
+func (p *planner) site(row Row) (site store.Site, isNew bool, text string) {
 	if s, ok := p.sites[row.Site]; ok {
+		if p.made[row.Site] {
+			p.newSite(s)
+		}
 		return s, false, ""
 	}
 	f := p.first[row.Site]
 	if f.Zone == "" {
+		f.Zone = p.ask.Zone
+	}
+	if f.Standard == "" {
+		f.Standard = p.ask.Standard
+	}
+	if f.Zone == "" {
+		p.newSite(store.Site{Code: row.Site, Name: f.SiteName})
 		return site, false, fmt.Sprintf("The site %s is new, and its time zone is not stated in any of its rows. Fill in zone, such as America/Chicago.", row.Site)
 	}
+	p.made[row.Site] = true
 	site = store.Site{ID: p.importID("site", row.Site), Code: row.Site, Name: f.SiteName, Zone: f.Zone, Standard: f.Standard, Address: f.Address}
 	if site.Name == "" {
 		site.Name = row.Site
@@ -142,6 +189,7 @@ func (p *registerPlanner) site(row RegisterRow) (site store.Site, isNew bool, te
 			set[name] = v
 		}
 	}
+	p.newSite(site)
 	p.add(site.ID, "site.registered", site.ID, site.ID, set)
 	return site, true, ""
 }
@@ -154,7 +202,7 @@ type rowDevice struct {
 	gone      bool
 }
 
-func (p *registerPlanner) device(site store.Site, key string, row *RegisterRow) *rowDevice {
+func (p *planner) device(site store.Site, key string, row *Row) *rowDevice {
 	kind := fieldText(row.Device, "kind")
 	d := &rowDevice{id: p.importID("device", row.Site, row.key()), was: p.devices[key]}
 	if d.was == nil {
@@ -177,7 +225,7 @@ func (p *registerPlanner) device(site store.Site, key string, row *RegisterRow) 
 }
 
 // place drafts the place of a fixed device; a portable item only notes where it is.
-func (p *registerPlanner) place(site store.Site, d *rowDevice, row *RegisterRow) {
+func (p *planner) place(site store.Site, d *rowDevice, row *Row) {
 	if d.place == "" {
 		var parts []string
 		for _, n := range []string{"building", "floor", "room", "name"} {
@@ -208,7 +256,7 @@ func (p *registerPlanner) place(site store.Site, d *rowDevice, row *RegisterRow)
 }
 
 // circuit drafts panel and circuit where they are new or their fields differ.
-func (p *registerPlanner) circuit(site store.Site, d *rowDevice, row *RegisterRow) {
+func (p *planner) circuit(site store.Site, d *rowDevice, row *Row) {
 	if row.Panel == "" {
 		return
 	}
@@ -236,7 +284,7 @@ func (p *registerPlanner) circuit(site store.Site, d *rowDevice, row *RegisterRo
 }
 
 // register drafts the device itself.
-func (p *registerPlanner) register(site store.Site, d *rowDevice, row *RegisterRow) {
+func (p *planner) register(site store.Site, d *rowDevice, row *Row) {
 	if d.was != nil {
 		p.change("device.set", site.ID, d.id, row.Device, d.was.Fields)
 		return
@@ -248,7 +296,7 @@ func (p *registerPlanner) register(site store.Site, d *rowDevice, row *RegisterR
 }
 
 // tag binds the tag of a row, or notes that there is none.
-func (p *registerPlanner) tag(site store.Site, d *rowDevice, row *RegisterRow) {
+func (p *planner) tag(site store.Site, d *rowDevice, row *Row) {
 	has := ""
 	if d.was != nil {
 		has = d.was.Tag
@@ -270,7 +318,7 @@ func (p *registerPlanner) tag(site store.Site, d *rowDevice, row *RegisterRow) {
 }
 
 // change drafts the wanted fields that differ.
-func (p *registerPlanner) change(kind, log, subject string, want, have map[string]any) {
+func (p *planner) change(kind, log, subject string, want, have map[string]any) {
 	set := map[string]any{}
 	for name, v := range want {
 		if !sameValue(v, have[name]) {
@@ -283,10 +331,10 @@ func (p *registerPlanner) change(kind, log, subject string, want, have map[strin
 	}
 }
 
-func (p *registerPlanner) add(id, kind, log, subject string, set map[string]any) {
+func (p *planner) add(id, kind, log, subject string, set map[string]any) {
 	p.draft(id, kind, log, subject, map[string]any{"set": set})
 }
 
-func (p *registerPlanner) draft(id, kind, log, subject string, body map[string]any) {
+func (p *planner) draft(id, kind, log, subject string, body map[string]any) {
 	p.out = append(p.out, store.Draft{ID: id, Kind: kind, Log: log, Subject: subject, By: p.by, Body: body})
 }

@@ -1,4 +1,4 @@
-package export
+package register
 
 import (
 	"encoding/json"
@@ -25,7 +25,7 @@ func placeKey(kind, building, floor, room, spot, panel, circuit, serial, tag str
 	return strings.ToLower(strings.Join(parts, "\x1f"))
 }
 
-func (row *RegisterRow) key() string {
+func (row *Row) key() string {
 	spot := fieldText(row.Place, "name")
 	return placeKey(fieldText(row.Device, "kind"), fieldText(row.Place, "building"), fieldText(row.Place, "floor"),
 		fieldText(row.Place, "room"), spot, row.Panel, row.CircuitNo, fieldText(row.Device, "serial"), row.Tag)
@@ -63,7 +63,7 @@ func circuitKey(site, panel, no string) string {
 }
 
 // readKnown looks up what is there already, by code and by key, before anything is made.
-func readKnown(v *store.View, rows []RegisterRow, ask RegisterAsk) (*known, error) {
+func readKnown(v *store.View, rows []Row, ask Ask) (*known, error) {
 	k := noneKnown(ask.Org)
 	sites, err := v.Sites()
 	if err != nil {

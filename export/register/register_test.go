@@ -1,28 +1,43 @@
-package export
+package register
 
 import (
 	"bytes"
 	"errors"
 	"fmt"
+	"io"
 	"os"
 	"strings"
 	"testing"
 
+	"tripwell/export/intake"
 	"tripwell/store"
 )
 
 func sampleRegister(t testing.TB) []byte {
 	t.Helper()
-	raw, err := os.ReadFile("../testdata/register.csv")
+	raw, err := os.ReadFile("../../testdata/register.csv")
 	if err != nil {
 		t.Fatal(err)
 	}
 	return raw
 }
 
+// read reads a register without a store.
+func read(r io.Reader) ([]Row, []Problem, error) {
+	book, err := intake.Open("test", r, intake.Caps{})
+	if err != nil {
+		return nil, nil, asRefusal(err)
+	}
+	reading, err := Read(book, Mapping{}, nil)
+	if err == nil {
+		err = reading.Refusal()
+	}
+	return reading.Rows, reading.Problems, err
+}
+
 func TestRegisterCSV_SampleIsClean(t *testing.T) {
 	raw := sampleRegister(t)
-	rows, problems, err := ReadRegisterCSV(bytes.NewReader(raw))
+	rows, problems, err := read(bytes.NewReader(raw))
 	if err != nil || len(problems) > 0 {
 		t.Fatalf("problems %v, error %v", problems, err)
 	}
@@ -38,7 +53,7 @@ func TestRegisterCSV_SampleIsClean(t *testing.T) {
 
 func TestRegisterCSV_SameRowsHoweverTheSheetWasSaved(t *testing.T) {
 	const plain = "site,zone,kind,place,breaker_a,panel,circuit,installed\nELM-4,Europe/Berlin,rcd,Hall,16,UV-1,3,2020-02-29\n"
-	want, problems, err := ReadRegisterCSV(strings.NewReader(plain))
+	want, problems, err := read(strings.NewReader(plain))
 	if err != nil || len(want) != 1 || len(problems) > 0 {
 		t.Fatalf("rows %v, problems %v, error %v", want, problems, err)
 	}
@@ -50,7 +65,7 @@ func TestRegisterCSV_SameRowsHoweverTheSheetWasSaved(t *testing.T) {
 		"blank lines":     strings.ReplaceAll(plain, "\n", "\n,,,,,,,\n"),
 		"synonyms":        "Site code,Time zone,Device kind,Location,Breaker (A),Board,Circuit no.,Installed on\nelm-4,Europe/Berlin,RCD, Hall ,16 A,UV-1,3,2020-02-29\n",
 	} {
-		got, problems, err := ReadRegisterCSV(strings.NewReader(text))
+		got, problems, err := read(strings.NewReader(text))
 		if err != nil || len(problems) > 0 || len(got) != 1 {
 			t.Errorf("%s: rows %v, problems %v, error %v", name, got, problems, err)
 			continue
@@ -68,7 +83,7 @@ func TestRegisterCSV_BadRowsAreNamedAndGoodOnesStay(t *testing.T) {
 		"ELM-4,America/Denver,gfci-receptacle,Sink,LP-1,1,20,2021-01-31,,,",
 		"ELM-4,,toaster,Counter,,,,,,,",
 		",,receptacle,Hall,,,,,,,",
-		"ELM-4,,receptacle,Hall,,,,31/01/2021,,,",
+		"ELM-4,,receptacle,Hall,,,,03/04/2021,,,",
 		"ELM-4,,receptacle,Stair,,,,2021-02-30,,,",
 		"ELM-4,,receptacle,Loft,LP-1,2,twenty,,,,",
 		"ELM-4,,receptacle,Attic,,3,,,,,",
@@ -80,25 +95,25 @@ func TestRegisterCSV_BadRowsAreNamedAndGoodOnesStay(t *testing.T) {
 		"ELM-4,,receptacle,Yard,,,,,,,,,,too many",
 		"ELM-4,,receptacle,Garden,,,,,,,",
 	}, "\n")
-	rows, problems, err := ReadRegisterCSV(strings.NewReader(text))
+	rows, problems, err := read(strings.NewReader(text))
 	if err != nil {
 		t.Fatal(err)
 	}
-	if len(rows) != 2 || rows[1].Line != 15 {
-		t.Errorf("got %d good rows, want lines 2 and 15", len(rows))
+	if len(rows) != 3 || rows[1].Line != 13 || rows[2].Line != 15 {
+		t.Errorf("got %d good rows, want lines 2, 13 and 15", len(rows))
 	}
 	want := []struct {
 		line          int
 		column, value string
 	}{
-		{1, "colour", ""}, {3, "kind", "toaster"}, {4, "site", ""}, {5, "installed", "31/01/2021"}, {6, "installed", "2021-02-30"}, {7, "breaker_a", "twenty"},
-		{8, "panel", ""}, {9, "tag", "ZZZZZZZ"}, {10, "serial", ""}, {11, "zone", "Mars/Olympus"}, {12, "place", ""}, {13, "", ""}, {14, "", "too many"},
+		{1, "colour", ""}, {3, "kind", "toaster"}, {4, "site", ""}, {5, "installed", "03/04/2021"}, {6, "installed", "2021-02-30"}, {7, "breaker_a", "twenty"},
+		{8, "panel", ""}, {9, "tag", "ZZZZZZZ"}, {10, "serial", ""}, {11, "zone", "Mars/Olympus"}, {12, "place", ""}, {14, "N", "too many"},
 	}
 	for i, w := range want {
 		if i >= len(problems) {
 			t.Fatalf("got %d problems, want %d", len(problems), len(want))
 		}
-		if p := problems[i]; p.Line != w.line || p.Column != w.column || p.Value != w.value || !strings.HasSuffix(p.Text, ".") || p.Skipped != (w.line > 1) {
+		if p := problems[i]; p.Row != w.line || p.Column != w.column || p.Value != w.value || !strings.HasSuffix(p.Text, ".") || p.Skipped != (w.line > 1) {
 			t.Errorf("problem %d: got %+v, want %+v", i, p, w)
 		}
 	}
@@ -107,15 +122,15 @@ func TestRegisterCSV_BadRowsAreNamedAndGoodOnesStay(t *testing.T) {
 func TestRegisterCSV_FilesThatAreNoRegister(t *testing.T) {
 	for name, text := range map[string]string{
 		"empty": "", "only a mark": "\uFEFF", "no site column": "kind,place\nrcd,Hall\n", "no kind column": "site,place\nELM-4,Hall\n",
-		"two columns of one name": "site,kind,site\n", "not UTF-8": "site,kind\nELM-4,\xff\xfe\n", "spreadsheet itself": "PK\x03\x04\x00\x00",
+		"no headings": "a,b\nc,d\n", "spreadsheet itself": "PK\x03\x04\x00\x00",
 	} {
-		_, _, err := ReadRegisterCSV(strings.NewReader(text))
+		_, _, err := read(strings.NewReader(text))
 		var refused *store.Error
 		if !errors.As(err, &refused) || refused.Text == "" || refused.Code == "" {
 			t.Errorf("%s: got %v, want a refusal with a sentence", name, err)
 		}
 	}
-	_, _, err := ReadRegisterCSV(&endless{})
+	_, _, err := read(&endless{})
 	var refused *store.Error
 	if !errors.As(err, &refused) || refused.Code != "too_large" {
 		t.Errorf("endless file: got %v, want too_large", err)
@@ -133,17 +148,17 @@ func (*endless) Read(p []byte) (int, error) {
 }
 
 func TestRegisterDrafts_IdsComeFromTheKeyAlone(t *testing.T) {
-	read := func(text string) RegisterPlan {
-		rows, problems, err := ReadRegisterCSV(strings.NewReader(text))
+	plan := func(text string) Plan {
+		rows, problems, err := read(strings.NewReader(text))
 		if err != nil || len(problems) > 0 {
 			t.Fatalf("problems %v, error %v", problems, err)
 		}
-		return planRegister(noneKnown("org-1"), "me", rows)
+		return planRows(noneKnown("org-1"), "me", rows, Ask{})
 	}
 	const head = "site,zone,building,room,place,kind,make,note\n"
-	first := read(head + "ELM-4,UTC,A,Hall,Left,receptacle,Make A,\nELM-4,,A,Hall,Right,receptacle,,\n")
-	again := read(head + "ELM-4,,a,hall,RIGHT,receptacle,,moved up\nELM-4,UTC,A,Hall,Left,receptacle,Make B,\n")
-	ids := func(p RegisterPlan) map[string]bool {
+	first := plan(head + "ELM-4,UTC,A,Hall,Left,receptacle,Make A,\nELM-4,,A,Hall,Right,receptacle,,\n")
+	again := plan(head + "ELM-4,,a,hall,RIGHT,receptacle,,moved up\nELM-4,UTC,A,Hall,Left,receptacle,Make B,\n")
+	ids := func(p Plan) map[string]bool {
 		m := map[string]bool{}
 		for _, r := range p.Rows {
 			for _, d := range r.Drafts {
@@ -172,17 +187,17 @@ ELM-4,,,LP-1,1,gfci-breaker,
 ELM-4,,,LP-1,2,gfci-breaker,
 ELM-4,,,LP-1,2,gfci-breaker,
 `
-	rows, problems, err := ReadRegisterCSV(strings.NewReader(text))
+	rows, problems, err := read(strings.NewReader(text))
 	if err != nil || len(problems) > 0 {
 		t.Fatalf("problems %v, error %v", problems, err)
 	}
-	plan := planRegister(noneKnown("org-1"), "me", rows)
-	if plan.Added != 3 || plan.SitesAdded != 1 || len(plan.NeedTag) != 3 {
-		t.Errorf("got %d added, %d sites, %d without tag; want 3, 1, 3", plan.Added, plan.SitesAdded, len(plan.NeedTag))
+	plan := planRows(noneKnown("org-1"), "me", rows, Ask{})
+	if plan.Added != 3 || len(plan.NewSites) != 2 || len(plan.NeedTag) != 3 {
+		t.Errorf("got %d added, %d sites, %d without tag; want 3, 1, 3", plan.Added, len(plan.NewSites), len(plan.NeedTag))
 	}
 	var lines []int
 	for _, p := range plan.Problems {
-		lines = append(lines, p.Line)
+		lines = append(lines, p.Row)
 	}
 	if fmt.Sprint(lines) != "[2 4 7]" {
 		t.Errorf("problems on lines %v, want 2 (no zone), 4 and 7 (same place)", lines)
@@ -194,16 +209,16 @@ func FuzzRegisterCSV(f *testing.F) {
 	f.Add([]byte("site;kind\nELM-4;rcd\n\"open"))
 	f.Add([]byte("\xEF\xBB\xBFsite\tkind\tzone\n\t\t\n"))
 	f.Fuzz(func(t *testing.T, raw []byte) {
-		rows, problems, err := ReadRegisterCSV(bytes.NewReader(raw))
+		rows, problems, err := read(bytes.NewReader(raw))
 		if err != nil {
 			return
 		}
 		for _, p := range problems {
-			if p.Text == "" || p.Line < 1 {
+			if p.Text == "" || p.Row < 1 {
 				t.Errorf("a problem without line or words: %+v", p)
 			}
 		}
-		plan := planRegister(noneKnown("org-1"), "me", rows)
+		plan := planRows(noneKnown("org-1"), "me", rows, Ask{})
 		if plan.Added+len(plan.Problems) < len(rows) {
 			t.Errorf("%d rows became %d devices and %d problems", len(rows), plan.Added, len(plan.Problems))
 		}

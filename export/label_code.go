@@ -3,8 +3,8 @@ package export
 import (
 	"fmt"
 	"math"
-	"runtime"
 	"strconv"
+	"sync"
 
 	"github.com/skip2/go-qrcode"
 
@@ -26,43 +26,124 @@ const mmPoint = 72 / 25.4
 
 // codeSize is the module's side and the whole side with its quiet zone, in mm, for a symbol that must fit in a box.
 func codeSize(modules int, box float64) (module, side float64, ok bool) {
-	dots := math.Floor(box / float64(modules+2*quietModules) / dotMM)
+	dots := math.Floor(box/float64(modules+2*quietModules)/dotMM + 1e-9)
 	module = dots * dotMM
 	return module, module * float64(modules+2*quietModules), dots >= moduleDotsMin
 }
 
-// CodeBitmap encodes an address: rows of modules, true is dark, without the quiet zone of 4 modules that must surround it.
-func CodeBitmap(address string) ([][]bool, error) {
-	q, err := qrcode.New(address, qrcode.Medium)
-	if err != nil {
-		return nil, &store.Error{Code: "invalid", Field: "url", Text: fmt.Sprintf("The address %s is too long for a code. Start the server with a shorter --url.", cut(address))}
-	}
-	q.DisableBorder = true
-	return q.Bitmap(), nil
+// symbol is an encoded address without its quiet zone. It is shared between those who draw it and never changed.
+type symbol struct {
+	modules int
+	rows    [][]bool // true is dark
 }
 
-// codePath draws the code of an address as one PDF path: a rectangle for each run of dark modules of a row, filled
+// symbolKey names an encoding: the same address is encoded once.
+type symbolKey struct {
+	address string
+	level   qrcode.RecoveryLevel
+}
+
+// keptSymbols bounds the cache: about 1 KB each.
+const keptSymbols = 4096
+
+// symbolCache keeps what was encoded last. Encoding is nine tenths of the work of a sheet, and people print a sheet
+// again: for one label that came off badly, with another start, onto another size.
+type symbolCache struct {
+	mu sync.Mutex
+	of map[symbolKey]*symbol
+}
+
+var symbols = symbolCache{of: map[symbolKey]*symbol{}}
+
+func (c *symbolCache) get(key symbolKey) *symbol {
+	c.mu.Lock()
+	defer c.mu.Unlock()
+	return c.of[key]
+}
+
+func (c *symbolCache) put(key symbolKey, s *symbol) {
+	c.mu.Lock()
+	defer c.mu.Unlock()
+	if len(c.of) >= keptSymbols {
+		for old := range c.of { // any half: which ones decides only about time
+			if delete(c.of, old); len(c.of) <= keptSymbols/2 {
+				break
+			}
+		}
+	}
+	c.of[key] = s
+}
+
+// encode gives the symbol of an address.
+func encode(address string, level qrcode.RecoveryLevel) (*symbol, error) {
+	key := symbolKey{address, level}
+	if s := symbols.get(key); s != nil {
+		return s, nil
+	}
+	q, err := qrcode.New(address, level)
+	if err != nil {
+		return nil, &store.Error{Code: "invalid", Field: "url", Text: fmt.Sprintf("The address %s is too long for a code. Start the server with a shorter --url.", clipped(address))}
+	}
+	q.DisableBorder = true
+	rows := q.Bitmap()
+	s := &symbol{len(rows), rows}
+	symbols.put(key, s)
+	return s, nil
+}
+
+// CodeBitmap encodes an address: rows of modules, true is dark, without the quiet zone of 4 modules that must surround it.
+// The rows are shared: do not change them.
+func CodeBitmap(address string) ([][]bool, error) {
+	s, err := encode(address, qrcode.Medium)
+	if err != nil {
+		return nil, err
+	}
+	return s.rows, nil
+}
+
+// codeIn gives the symbol of an address and its module's side for a box, in mm. Where level M is too fine for the box,
+// level L is tried: a coarser code reads better than one with more redundancy that the printer smears.
+func codeIn(address string, box float64) (s *symbol, module float64, err error) {
+	for _, level := range []qrcode.RecoveryLevel{qrcode.Medium, qrcode.Low} {
+		if s, err = encode(address, level); err != nil {
+			return nil, 0, err
+		}
+		if module, _, ok := codeSize(s.modules, box); ok {
+			return s, module, nil
+		}
+	}
+	return nil, 0, &store.Error{Code: "invalid", Field: "url", Text: fmt.Sprintf("The address %s makes a code too fine to print on this label. Start the server with a shorter --url, or take larger labels.", clipped(address))}
+}
+
+// CodePath draws the code of an address as one PDF path: a rectangle for each run of dark modules of a row, filled
 // together so that no hairline shows between rows. (x, y) is the top left corner of the quiet zone on a page of height
-// pageH, box the side it must fit in, all in mm.
-func codePath(address string, x, y, box, pageH float64) ([]byte, float64, error) {
-	rows, err := CodeBitmap(address)
+// pageH, box the side it must fit in, all in mm. side is what it takes of the box, quiet zone included.
+func CodePath(address string, x, y, box, pageH float64) (path []byte, side float64, err error) {
+	s, module, err := codeIn(address, box)
 	if err != nil {
 		return nil, 0, err
-	}
-	module, side, ok := codeSize(len(rows), box)
-	if !ok {
-		return nil, 0, &store.Error{Code: "invalid", Field: "url", Text: fmt.Sprintf("The address %s makes a code too fine to print on this label. Start the server with a shorter --url.", address)}
 	}
 	// One transformation lays a grid of modules on the page, its origin at the symbol's top left corner and y downwards,
 	// so that every rectangle is four small whole numbers.
 	inset := module * quietModules
-	path := append(make([]byte, 0, 4096), "q "...)
+	path = append(make([]byte, 0, 4096), "q "...)
 	for _, v := range []float64{module, 0, 0, -module, x + inset, pageH - y - inset} {
 		path = strconv.AppendFloat(path, math.Round(v*mmPoint*10000)/10000, 'f', -1, 64)
 		path = append(path, ' ')
 	}
 	path = append(path, "cm\n"...)
-	for r, row := range rows {
+	s.runs(func(col, row, length int) {
+		for _, v := range [4]int{col, row, length, 1} {
+			path = append(strconv.AppendInt(path, int64(v), 10), ' ')
+		}
+		path = append(path, "re\n"...)
+	})
+	return append(path, "f Q"...), module * float64(s.modules+2*quietModules), nil
+}
+
+// runs gives every run of dark modules of a row.
+func (s *symbol) runs(draw func(col, row, length int)) {
+	for r, row := range s.rows {
 		for c := 0; c < len(row); c++ {
 			if !row[c] {
 				continue
@@ -71,61 +152,7 @@ func codePath(address string, x, y, box, pageH float64) ([]byte, float64, error)
 			for c < len(row) && row[c] {
 				c++
 			}
-			path = appendRect(path, from, r, c-from, 1)
+			draw(from, r, c-from)
 		}
 	}
-	return append(path, "f Q"...), side, nil
-}
-
-// appendRect appends one rectangle in the units of the grid.
-func appendRect(path []byte, sides ...int) []byte {
-	for _, v := range sides {
-		path = strconv.AppendInt(path, int64(v), 10)
-		path = append(path, ' ')
-	}
-	return append(path, "re\n"...)
-}
-
-// drawnCode is a code ready to be placed, or why there is none.
-type drawnCode struct {
-	path []byte
-	side float64
-	err  error
-}
-
-// encodeCodes encodes all codes on all processors and gives them in the order of the labels; only a window of codes
-// stands in memory. stop must be closed when the reader leaves early or is done.
-func encodeCodes(labels []Label, place func(i int) (x, y float64), box, pageH float64, stop <-chan struct{}) <-chan chan drawnCode {
-	workers := runtime.GOMAXPROCS(0)
-	order := make(chan chan drawnCode, 32*workers)
-	jobs := make(chan func(), workers)
-	for range workers {
-		go func() {
-			for job := range jobs {
-				job()
-			}
-		}()
-	}
-	go func() {
-		defer close(jobs)
-		defer close(order)
-		for i, l := range labels {
-			done := make(chan drawnCode, 1)
-			select {
-			case order <- done:
-			case <-stop:
-				return
-			}
-			x, y := place(i)
-			select {
-			case jobs <- func() {
-				path, side, err := codePath(l.Address, x, y, box, pageH)
-				done <- drawnCode{path, side, err}
-			}:
-			case <-stop:
-				return
-			}
-		}
-	}()
-	return order
 }

@@ -1,6 +1,8 @@
 package export
 
 import (
+	"context"
+	"fmt"
 	"net/url"
 	"slices"
 	"strings"
@@ -51,14 +53,14 @@ func LabelsFromView(v *store.View, ask LabelAsk) ([]Label, error) {
 		wanted := len(ask.Devices) == 0 || slices.Contains(ask.Devices, d.ID)
 		if wanted && d.Tag != "" && !d.Retired && !printed[d.Tag] {
 			printed[d.Tag] = true // a tag names the place: two devices there share one label
-			labels = append(labels, deviceLabel(d, host, words.Say("kind."+d.Kind), ask.Demo))
+			labels = append(labels, deviceLabel(d, line.Site.Name, host, words.Say("kind."+d.Kind), ask.Demo))
 		}
 	}
 	return labels, nil
 }
 
-func deviceLabel(d store.DeviceRow, host, kind string, demo bool) Label {
-	l := Label{Tag: d.Tag, Address: record.TagAddress("HTTPS://"+host, d.Tag), Spot: d.Place.Name, Context: roomText(d.Place), Demo: demo}
+func deviceLabel(d store.DeviceRow, site, host, kind string, demo bool) Label {
+	l := Label{Tag: d.Tag, Address: record.TagAddress("HTTPS://"+host, d.Tag), Spot: d.Place.Name, Context: roomText(d.Place), Kind: kind, Site: site, Demo: demo}
 	switch {
 	case d.Panel != "" && d.Circuit != "":
 		l.Circuit = d.Panel + " / " + d.Circuit
@@ -82,6 +84,58 @@ func roomText(p store.Place) string {
 		}
 	}
 	return strings.Join(parts, " · ")
+}
+
+// BlankLabels draws n new tags, writes down that they were made, and gives their labels: printed before anybody knows
+// where they go, bound on site by scanning.
+func BlankLabels(ctx context.Context, s *store.Store, by string, n int) ([]Label, error) {
+	host, err := labelHost(s.URL())
+	if err != nil {
+		return nil, err
+	}
+	tags, err := s.MintTags(ctx, by, n)
+	if err != nil {
+		return nil, err
+	}
+	labels := make([]Label, len(tags))
+	for i, tag := range tags {
+		labels[i] = Label{Tag: tag, Address: record.TagAddress("HTTPS://"+host, tag), Demo: s.Demo(), Blank: true}
+	}
+	return labels, nil
+}
+
+// LabelOf gives the label of a tag: of the device it leads to within the scope, or a blank one where it is bound to
+// nothing there.
+func LabelOf(s *store.Store, scope store.Scope, tag string) (l Label, err error) {
+	code, ok := record.ParseTag(tag)
+	if !ok {
+		return l, &store.Error{Code: "invalid", Field: "tag", Text: fmt.Sprintf("%q is no tag: its check character does not fit. Read the label again.", clipped(tag))}
+	}
+	err = s.View(scope, func(v *store.View) error {
+		holders, err := v.Tag(code)
+		if err != nil {
+			return err
+		}
+		for _, h := range holders {
+			if h.Device == "" {
+				continue
+			}
+			labels, err := LabelsFromView(v, LabelAsk{Site: h.Site, Devices: []string{h.Device}, URL: s.URL(), Demo: s.Demo()})
+			if err != nil {
+				return err
+			}
+			for _, one := range labels {
+				if one.Tag == code {
+					l = one
+					return nil
+				}
+			}
+		}
+		host, err := labelHost(s.URL())
+		l = Label{Tag: code, Address: record.TagAddress("HTTPS://"+host, code), Demo: s.Demo(), Blank: true}
+		return err
+	})
+	return l, err
 }
 
 // labelHost is the host (and port) of the label address, in upper case.

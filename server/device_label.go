@@ -13,6 +13,7 @@ import (
 type label struct {
 	Size                       int
 	Path, Address, Aria, Sheet string
+	PNG, SVG                   string
 }
 
 func (s *Server) labelOf(d store.Device, view *devicePage) {
@@ -32,7 +33,8 @@ func (s *Server) labelOf(d store.Device, view *devicePage) {
 		return
 	}
 	path, size := svgPath(dark)
-	view.Label = &label{Size: size, Path: path, Address: address, Aria: s.words.Say("office.device.qr", "address", address), Sheet: "/labels.pdf?sheet=letter-3x10&site=" + d.Site + "&device=" + d.ID}
+	view.Label = &label{Size: size, Path: path, Address: address, Aria: s.words.Say("office.device.qr", "address", address), Sheet: "/labels.pdf?sheet=letter-3x10&site=" + d.Site + "&device=" + d.ID,
+		PNG: "/label?as=png&tag=" + d.Tag, SVG: "/label?as=svg&tag=" + d.Tag}
 }
 
 // svgPath draws the dark modules of a square bitmap as rows of rectangles, inside a quiet zone of four modules that

@@ -10,7 +10,8 @@ import (
 type downloadsPage struct {
 	Frame
 	Heading, Under, LabelsText string
-	Workbook, Labels           []field // Labels is empty where no label can be made
+	Labels                     bool // false where no label can be made
+	Workbook                   []field
 }
 
 func (s *Server) downloadsShow(c echo.Context) error {
@@ -33,20 +34,12 @@ func (s *Server) downloadsShow(c echo.Context) error {
 		LabelsText: k.say("office.downloads.labels_no_url"),
 	}
 	if s.store.URL() != "" {
-		view.LabelsText = k.say("office.downloads.labels_text")
-		view.Labels = []field{
-			{ID: "label-site", Name: "site", Label: k.say("office.downloads.site"), Options: offered},
-			{Name: "start", Label: k.say("office.downloads.start"), Hint: k.say("office.downloads.start_hint"), Type: "number", Value: "1"},
-		}
+		view.LabelsText, view.Labels = k.say("paper.labels.under"), true
 	}
 	return s.page(c, http.StatusOK, "downloads.html", view)
 }
 
-// workbookTake and labelsTake send what the downloads page offers, within the reader's own scope.
+// workbookTake sends what the downloads page offers, within the reader's own scope.
 func (s *Server) workbookTake(c echo.Context) error {
 	return s.sendWorkbook(c, scope(c), person(c).ID)
-}
-
-func (s *Server) labelsTake(c echo.Context) error {
-	return s.sendLabels(c, scope(c), person(c).ID)
 }

@@ -9,12 +9,11 @@ import (
 	"tripwell/export"
 	"tripwell/forms"
 	"tripwell/store"
-	"tripwell/store/record"
 )
 
 const (
 	workbookKind = "application/vnd.openxmlformats-officedocument.spreadsheetml.sheet"
-	labelsKind   = "application/pdf"
+	pdfKind      = "application/pdf"
 )
 
 // exportTaken writes down that something leaves the house, before it leaves.
@@ -49,41 +48,6 @@ func (s *Server) sendWorkbook(c echo.Context, sc store.Scope, by string) error {
 	})
 }
 
-// sendLabels sends the label sheets of a scope.
-func (s *Server) sendLabels(c echo.Context, sc store.Scope, by string) error {
-	sheet := c.QueryParam("sheet")
-	if sheet == "" {
-		sheet = export.Letter3x10.Name
-	}
-	size, err := export.SheetNamed(sheet)
-	if err != nil {
-		return err
-	}
-	start, err := countParam(c, "start", 1)
-	if err != nil {
-		return err
-	}
-	site, name, err := s.siteAsked(sc, c.QueryParam("site"))
-	if err != nil {
-		return err
-	}
-	labels, err := export.LabelsOf(s.store, sc, site, c.QueryParams()["device"]...)
-	if err != nil {
-		return err
-	}
-	if device := c.QueryParam("device"); device != "" {
-		if labels, err = s.labelOfDevice(sc, device, labels); err != nil {
-			return err
-		}
-	}
-	if err := s.exportTaken(c.Request().Context(), by, "labels", site, forms.NoDay, forms.NoDay); err != nil {
-		return err
-	}
-	return s.download(c, labelsKind, "labels-"+name+".pdf", func(w io.Writer) error {
-		return export.Labels(w, size, labels, start)
-	})
-}
-
 // siteAsked resolves an optional site, so that a wrong one is told before anything is written down: its id, and its code
 // for the file's name ("all" without a site).
 func (s *Server) siteAsked(sc store.Scope, idOrCode string) (id, name string, err error) {
@@ -96,23 +60,4 @@ func (s *Server) siteAsked(sc store.Scope, idOrCode string) (id, name string, er
 		return err
 	})
 	return id, name, err
-}
-
-// labelOfDevice picks the one label of a device.
-func (s *Server) labelOfDevice(sc store.Scope, device string, labels []export.Label) ([]export.Label, error) {
-	var picked []export.Label
-	err := s.store.View(sc, func(v *store.View) error {
-		d, err := v.Device(device, forms.DayOf(s.store.Now()))
-		if err != nil {
-			return err
-		}
-		tag, _ := record.ParseTag(d.Tag)
-		for _, l := range labels {
-			if l.Tag == tag {
-				picked = append(picked, l)
-			}
-		}
-		return nil
-	})
-	return picked, err
 }

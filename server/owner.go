@@ -23,6 +23,8 @@ func ownerRoutes() []route {
 		{get, "/own/due", owner, (*Server).ownDue, 0},
 		{get, "/own/workbook", owner, (*Server).ownWorkbook, 0},
 		{get, "/own/labels", owner, (*Server).ownLabels, 0},
+		{post, "/own/labels/batch", owner, (*Server).ownLabelsBatch, 0},
+		{get, "/own/label", owner, (*Server).ownLabel, 0},
 		{post, "/own/import/register", owner, (*Server).ownImportRegister, importLimit},
 		{get, "/own/check", owner, (*Server).ownCheck, 0},
 		{post, "/own/rebuild", owner, (*Server).ownRebuild, 0},
@@ -162,15 +164,6 @@ func (s *Server) ownWorkbook(c echo.Context) error {
 		return err
 	}
 	return s.sendWorkbook(c, ownerScope, by)
-}
-
-// ownLabels sends label sheets. Query: site (id or code), sheet, start (first label of the first sheet), by (person).
-func (s *Server) ownLabels(c echo.Context) error {
-	by, err := s.ownBy(c)
-	if err != nil {
-		return err
-	}
-	return s.sendLabels(c, ownerScope, by)
 }
 
 // ownBy is in whose name a command acts: the person asked for with by (id or name), else the first manager of all sites.

@@ -80,7 +80,9 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 				{Day: "Thursday 31 December 2026", Count: "1 test", Rows: []dateRow{{Href: "/devices/1", Spot: "Pantry, by the sink", Tag: "K7Q‑M2P‑3", Where: "Kiln Lane Day Clinic · Ground floor · Kitchen", Task: "Button", State: "Due", Last: "3 Nov 2026"}}}}},
 		"downloads.html": downloadsPage{Frame: frameOf("Downloads", "downloads"), Heading: "Take it with you.", Under: "Files are made from the store as it stands now.", LabelsText: "A PDF for sheets of 30 labels.",
 			Workbook: []field{{Name: "site", Label: "Site", Options: choices("", "", "All your sites")}, {Name: "from", Label: "Entries from", Type: "date"}, {Name: "to", Label: "Entries to", Type: "date"}},
-			Labels:   []field{{ID: "label-site", Name: "site", Label: "Site", Options: choices("", "", "All your sites")}, {Name: "start", Label: "First label at position", Type: "number", Value: "1"}}},
+			Labels:   true},
+		"labels.html": labelsPage{Frame: frameOf("Labels", "downloads"), Heading: "Labels", Under: "Sheets and rolls.", Sheets: []field{{Name: "site", Label: "Site", Options: choices("", "", "All your sites")}},
+			Batch: []field{{Name: "count", ID: "batch-count", Label: "How many", Type: "number", Value: "30"}}, Markings: []field{{Name: "roll", ID: "marking-roll", Label: "Roll", Type: "text"}}},
 		"setup.html":  s.setupSample(),
 		"limits.html": s.limitsSample(),
 		"people.html": peoplePage{Frame: frameOf("People", "people"), Heading: "3 people may sign in.", People: []peopleRow{

@@ -65,7 +65,9 @@ func publicRoutes() []route {
 		{get, "/limits/:set", signed, (*Server).limitsShow, 0},
 		{get, "/downloads", office, (*Server).downloadsShow, 0},
 		{get, "/workbook.xlsx", office, (*Server).workbookTake, 0},
+		{get, "/labels", office, (*Server).labelsShow, 0},
 		{get, "/labels.pdf", office, (*Server).labelsTake, 0},
+		{get, "/label", office, (*Server).labelTake, 0},
 
 		// office: changing
 		{get, "/sites/new", manager, (*Server).siteNew, 0},
@@ -80,6 +82,7 @@ func publicRoutes() []route {
 		{post, "/devices/:device/retire", manager, (*Server).deviceRetire, 0},
 		{get, "/entries/:entry/correct", manager, (*Server).entryCorrectAsk, 0},
 		{post, "/entries/:entry/correct", manager, (*Server).entryCorrect, 0},
+		{post, "/labels/batch", manager, (*Server).labelsBatch, 0},
 		{get, "/instruments/new", manager, (*Server).instrumentNew, 0},
 		{post, "/instruments", manager, (*Server).instrumentCreate, 0},
 		{get, "/instruments/:instrument", manager, (*Server).instrumentEdit, 0},

@@ -99,7 +99,7 @@ func TestCommands_RefuseInSentences(t *testing.T) {
 		{"a day that is none", []string{"due", "--data", dir, "--on", "31.12.2026"}, 2, "2026-12-31"},
 		{"a day that is not in the calendar", []string{"due", "--data", dir, "--on", "2026-02-30"}, 2, "2026-12-31"},
 		{"a period that ends before it begins", []string{"workbook", "-o", out, "--data", dir, "--from", "2026-02-01", "--to", "2026-01-01"}, 2, "begins"},
-		{"a sheet that is not known", []string{"labels", "-o", out, "--sheet", "a4-3x8", "--data", dir}, 2, "letter-3x10"},
+		{"a sheet that is not known", []string{"labels", "-o", out, "--sheet", "a4-9x9", "--data", dir}, 2, "letter-3x10"},
 		{"a label before the first", []string{"labels", "-o", out, "--sheet", "letter-3x10", "--start", "0", "--data", dir}, 2, "counted from 1"},
 		{"a person who is not there", []string{"workbook", "-o", out, "--data", dir, "--by", "somebody"}, 2, "person"},
 		{"no folder named", []string{"due"}, 2, "--data"},

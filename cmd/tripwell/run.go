@@ -17,6 +17,7 @@ type cli struct {
 	Due      dueCmd      `cmd:"" help:"List what is due or overdue."`
 	Workbook workbookCmd `cmd:"" help:"Write the workbook an auditor gets."`
 	Labels   labelsCmd   `cmd:"" help:"Write sheets of labels."`
+	Label    labelCmd    `cmd:"" help:"Write one label as a picture."`
 	Check    checkCmd    `cmd:"" help:"Read the whole store and say whether anything is wrong."`
 	Rebuild  rebuildCmd  `cmd:"" help:"Compute all lists anew from the records."`
 	Verdict  verdictCmd  `cmd:"" help:"Judge tests given as JSON lines."`

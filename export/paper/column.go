@@ -84,7 +84,9 @@ func Columns(form *forms.Form) ([]Column, error) {
 }
 
 // Lead gives the columns before the readings; the tag is the first of them.
-func Lead() ([]Column, error) { return about(AboutTag, AboutPlace, AboutKind, AboutCircuit, AboutTask, AboutDay) }
+func Lead() ([]Column, error) {
+	return about(AboutTag, AboutPlace, AboutKind, AboutCircuit, AboutTask, AboutDay)
+}
 
 // Tail gives the columns after the readings.
 func Tail() ([]Column, error) { return about(AboutNotTested, AboutReadBy, AboutInstrument, AboutNote) }

@@ -9,7 +9,10 @@ type Applied struct {
 	Source string  `json:"source"`
 	Text   string  `json:"text,omitempty"` // why nothing is judged; Limit is then nil
 	Lacks  string  `json:"lacks,omitempty"`
-	low    bool    // a trip here is a low trip current
+	// ScaledMA is the test current the limit was computed at, where it was scaled to the line voltage.
+	ScaledMA *float64 `json:"scaled_ma,omitempty"`
+	low      bool     // a trip here is a low trip current
+	current  float64  // test current in mA the curve was read at; 0 elsewhere
 }
 
 // LimitsFor gives the limits of a reading under an entry's other readings (the trip-time limit at the test current), must
@@ -79,7 +82,10 @@ func (l *Limit) bounds() *Bounds {
 }
 
 func (f *facts) applyCurve(a *Applied) {
-	current, ok := f.number("test_current_ma")
+	current, scaled, ok := f.testCurrent()
+	if scaled {
+		a.ScaledMA = &current
+	}
 	switch {
 	case !ok:
 		a.Lacks, a.Text = "test_current_ma", "limit.no_test_current"
@@ -91,7 +97,7 @@ func (f *facts) applyCurve(a *Applied) {
 		a.Text = "limit.above_curve"
 	default:
 		ms, _ := ClassATripMS(current)
-		a.Limit = &Bounds{Max: &ms}
+		a.Limit, a.current = &Bounds{Max: &ms}, current
 	}
 }
 

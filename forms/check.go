@@ -167,7 +167,8 @@ func checkGiven(form *Form, g *Given) error {
 	for _, n := range [...]struct {
 		name  string
 		value float64
-	}{{"rated_residual_ma", g.RatedResidualMA}, {"rating_a", g.RatingA}, {"nominal_v", g.NominalV}, {"faces", float64(g.Faces)}} {
+	}{{"rated_residual_ma", g.RatedResidualMA}, {"rating_a", g.RatingA}, {"nominal_v", g.NominalV}, {"faces", float64(g.Faces)},
+		{"test_resistor_ohm", g.TestResistorOhm}, {"test_nominal_v", g.TestNominalV}} {
 		if err := checkFact(n.name, n.value); err != nil {
 			return err
 		}

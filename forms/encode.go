@@ -40,6 +40,9 @@ func (f *Finding) appendJSON(dst []byte) []byte {
 	if f.Limit != nil {
 		dst = f.Limit.appendJSON(append(dst, `,"limit":`...))
 	}
+	dst = appendFigure(dst, "uncertainty", f.Uncertainty)
+	dst = appendFigure(dst, "probability", f.Probability)
+	dst = appendFigure(dst, "scaled_ma", f.ScaledMA)
 	dst = appendMember(dst, "level", f.Level)
 	dst = appendMember(dst, "severity", f.Severity)
 	dst = appendMember(dst, "source", f.Source)
@@ -103,6 +106,15 @@ func appendMember(dst []byte, name, value string) []byte {
 	}
 	dst = append(append(append(dst, `,"`...), name...), `":`...)
 	return appendString(dst, value)
+}
+
+// appendFigure writes a further member of an object, nothing for nil. name is plain ASCII.
+func appendFigure(dst []byte, name string, v *float64) []byte {
+	if v == nil {
+		return dst
+	}
+	dst = append(append(append(dst, `,"`...), name...), `":`...)
+	return appendNumber(dst, *v)
 }
 
 // appendString quotes by the JSON library; what is not UTF-8 (no decoder here lets it through) comes out mangled, not

@@ -27,12 +27,19 @@ type Given struct {
 	EquipmentGround string              `json:"equipment_ground,omitempty"` // yes | none-permitted
 	Supply          string              `json:"supply,omitempty"`           // grounded | isolated
 	Loads           string              `json:"loads,omitempty"`            // connected | disconnected
-	Gauge           string              `json:"gauge,omitempty"`            // mass of a go/no-go gauge: "115 g" or "4 oz"
-	RatingA         float64             `json:"rating_a,omitzero"`
-	NominalV        float64             `json:"nominal_v,omitzero"`
-	Delayed         bool                `json:"delayed,omitzero"`
-	Faces           int                 `json:"faces,omitzero"`
-	Waveform        string              `json:"waveform,omitempty"` // what the device is made for; a test's own waveform is a reading
+	RetentionGauge  string              `json:"retention_gauge,omitempty"`  // mass of a go/no-go gauge: "115 g" or "4 oz"
+	// Gauge is a cord's conductor size, "14" or "2.5 mm2". Entries of earlier versions have the mass of a go/no-go gauge here;
+	// the two cannot be mistaken for each other, since a mass says g or oz.
+	Gauge string `json:"gauge,omitempty"`
+	// TestResistorOhm is the resistor of a tester that has no current source: its current follows the line voltage.
+	TestResistorOhm float64 `json:"test_resistor_ohm,omitzero"`
+	// TestNominalV is the voltage at which such a tester injects what it is marked with.
+	TestNominalV float64 `json:"test_nominal_v,omitzero"`
+	RatingA      float64 `json:"rating_a,omitzero"`
+	NominalV     float64 `json:"nominal_v,omitzero"`
+	Delayed      bool    `json:"delayed,omitzero"`
+	Faces        int     `json:"faces,omitzero"`
+	Waveform     string  `json:"waveform,omitempty"` // what the device is made for; a test's own waveform is a reading
 	// Other fields of the device that a limit's or form's `when` may name.
 	Fields map[string]any `json:"fields,omitempty"`
 }

@@ -24,6 +24,24 @@ func factsOf(form *Form, set *LimitSet, e *Entry) facts {
 	return f
 }
 
+// testCurrent gives the test current in mA. That of a tester with a fixed resistor is scaled to the measured line voltage:
+// by its resistor where that is known, else by the voltage at which what it is marked with is true.
+func (f *facts) testCurrent() (current float64, scaled, ok bool) {
+	current, ok = f.number("test_current_ma")
+	g := &f.e.Given
+	if g.TestResistorOhm <= 0 && g.TestNominalV <= 0 {
+		return current, false, ok
+	}
+	volts, measured := f.number("voltage_v")
+	switch {
+	case measured && g.TestResistorOhm > 0:
+		return round9(1000 * volts / g.TestResistorOhm), true, true
+	case measured && ok && g.TestNominalV > 0:
+		return round9(current * volts / g.TestNominalV), true, true
+	}
+	return current, false, ok
+}
+
 // fits reports whether a reading says something its code can say. One that does not is taken as not given: what cannot
 // be understood never passes.
 func fits(c *Code, r *Reading) bool {
@@ -150,6 +168,8 @@ func (f *facts) givenField(name string) any {
 		return word(g.Supply)
 	case "gauge":
 		return word(g.Gauge)
+	case "test_resistor_ohm":
+		return figure(g.TestResistorOhm)
 	case "waveform":
 		return word(g.Waveform)
 	case "rating_a":

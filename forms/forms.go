@@ -7,4 +7,4 @@
 package forms
 
 // JudgeVersion names the rules of Judge; it changes whenever the same entry under the same limits may get another verdict.
-const JudgeVersion = 1
+const JudgeVersion = 2

@@ -18,9 +18,9 @@ type judging struct {
 // counts as not given, and what is required and not given makes the entry incomplete. The error is an *Error: a decision
 // rule this judge does not know.
 func Judge(form *Form, set *LimitSet, e Entry) (Verdict, error) {
-	if set.Rule != "" && set.Rule != "simple" {
+	if set.Rule != "" && set.Rule != SimpleRule && set.Rule != GuardBandRule {
 		return Verdict{}, invalid("limit_set", fmt.Sprintf(
-			"The limit set %q decides by the rule %q, which this version does not know. Use a newer version, or a set whose rule is simple.", set.ID, set.Rule))
+			"The limit set %q decides by the rule %q, which this version does not know. Use a newer version, or a set whose rule is simple or guard-band.", set.ID, set.Rule))
 	}
 	j := judging{facts: factsOf(form, set, &e), findings: make([]Finding, 0, len(e.Readings)+2*len(e.Series)+4)}
 	j.needs()
@@ -114,7 +114,7 @@ func (j *judging) limits(place int, r *Reading) {
 // limit adds the finding of one limit on one reading.
 func (j *judging) limit(l *Limit, c *Code, r *Reading) {
 	a := j.apply(l, r)
-	f := Finding{Reading: c.Code, Unit: a.Unit, Limit: a.Limit, Level: l.Level, Source: l.Source}
+	f := Finding{Reading: c.Code, Unit: a.Unit, Limit: a.Limit, ScaledMA: a.ScaledMA, Level: l.Level, Source: l.Source}
 	unit := c.Unit
 	if a.Unit != "" {
 		unit = a.Unit
@@ -136,7 +136,46 @@ func (j *judging) limit(l *Limit, c *Code, r *Reading) {
 
 // decide gives a finding its verdict, and its text where that is not a pass.
 func (j *judging) decide(l *Limit, c *Code, r *Reading, a *Applied, unit string, f *Finding) {
-	outcome, text := other, l.Text
+	outcome, text := j.outcome(l, c, r, a, unit)
+	figure, isFigure := figureOf(r, c.Unit, unit)
+	isFigure = isFigure && a.Limit != nil && l.Level == Must
+	if isFigure {
+		j.weigh(c, r, a, figure, unit, f)
+	}
+	switch {
+	case outcome == inside && !isFigure:
+		f.Verdict = Pass
+		return
+	case outcome == inside:
+		if f.Verdict, f.Text = j.guard(l, r, a, f, figure, outcome); f.Verdict == "" {
+			f.Verdict = Pass
+		}
+		return
+	case l.Level == WatchOnly:
+		f.Verdict = Watch
+	case outcome == unproven:
+		f.Verdict = ConditionalFail
+	case outcome == low && (l.Loads || a.low):
+		f.Verdict, f.Severity, text = Fail, Nuisance, "limit.trips_low"
+		if j.answer("loads_disconnected") == "no" {
+			f.Verdict, f.Severity, text = Watch, "", "limit.trips_low_with_loads"
+		} else if verdict, why := j.guard(l, r, a, f, figure, outcome); isFigure && verdict != "" {
+			f.Verdict, text = verdict, why
+		}
+	default:
+		f.Verdict, f.Severity = Fail, l.Severity
+		if a.NoTrip {
+			text = "limit.must_not_trip"
+		} else if verdict, why := j.excused(l, r, a, f, figure, outcome); isFigure && verdict != "" {
+			f.Verdict, f.Severity, text = verdict, "", why
+		}
+	}
+	f.Text = text
+}
+
+// outcome is what a reading proves of a limit, and the text that goes with it.
+func (j *judging) outcome(l *Limit, c *Code, r *Reading, a *Applied, unit string) (outcome int, text string) {
+	outcome, text = other, l.Text
 	switch {
 	case a.NoTrip:
 		outcome = proveNoTrip(r)
@@ -148,39 +187,35 @@ func (j *judging) decide(l *Limit, c *Code, r *Reading, a *Applied, unit string,
 	if special, ok := l.Texts[textOf(r)]; ok {
 		text = special
 	}
-	if l.Gauge != nil {
+	switch {
+	case l.Gauge != nil:
 		var why string
-		if outcome, why = gaugeProof(l, j.e.Given.Gauge, outcome); why != "" {
+		if outcome, why = gaugeProof(l, j.gauge(), outcome); why != "" {
 			text = why
 		}
-	} else if outcome == unproven {
-		text = "limit.stopped_before"
-		if r.Below != nil {
-			text = "limit.not_proven"
-		}
-	}
-	switch {
-	case outcome == inside:
-		f.Verdict = Pass
-		return
-	case l.Level == WatchOnly:
-		f.Verdict = Watch
+	case outcome == unproven && j.currentInDoubt(a):
+		text = "limit.current_in_doubt"
+	case outcome == unproven && r.Below != nil:
+		text = "limit.not_proven"
 	case outcome == unproven:
-		f.Verdict = ConditionalFail
-	case outcome == low && (l.Loads || a.low):
-		f.Verdict, f.Severity, text = Fail, Nuisance, "limit.trips_low"
-		if j.answer("loads_disconnected") == "no" {
-			f.Verdict, f.Severity, text = Watch, "", "limit.trips_low_with_loads"
-		}
-	case outcome == high && l.Ramp != "" && j.rampExplains(r):
-		f.Verdict, text = ConditionalFail, "limit.ramp_over_reads"
-	default:
-		f.Verdict, f.Severity = Fail, l.Severity
-		if a.NoTrip {
-			text = "limit.must_not_trip"
-		}
+		text = "limit.stopped_before"
 	}
-	f.Text = text
+	return outcome, text
+}
+
+// excused gives what a figure outside its limit is instead of a fail, "" where it is one. The instrument's doubt comes
+// first; the ramp of its current speaks only for what lies beyond that.
+func (j *judging) excused(l *Limit, r *Reading, a *Applied, f *Finding, figure float64, outcome int) (verdict, text string) {
+	if outcome == high && j.currentInDoubt(a) && (r.Above != nil || j.set.Rule == GuardBandRule) {
+		return ConditionalFail, "limit.current_in_doubt"
+	}
+	if verdict, text = j.guard(l, r, a, f, figure, outcome); verdict != "" {
+		return verdict, text
+	}
+	if outcome == high && l.Ramp != "" && j.rampExplains(r) {
+		return ConditionalFail, "limit.ramp_over_reads"
+	}
+	return "", ""
 }
 
 func textOf(r *Reading) string { s, _ := r.Text(); return s }

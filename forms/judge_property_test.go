@@ -238,8 +238,9 @@ func TestVerdicts_JavaScriptAgreesOnRandomLines(t *testing.T) {
 	for i, line := range lines {
 		want := judged(t, catalogue, line)
 		var got struct {
-			Result string
-			Error  *Error
+			Result   string
+			Findings []Finding
+			Error    *Error
 		}
 		if err := json.Unmarshal(want, &got); err != nil {
 			t.Fatal(err)
@@ -249,13 +250,16 @@ func TestVerdicts_JavaScriptAgreesOnRandomLines(t *testing.T) {
 			want = sameNames(t, want)
 		}
 		results[got.Result]++
+		for _, f := range got.Findings {
+			results[f.Verdict]++
+		}
 		if out.Answers[i] != string(want) {
 			t.Fatalf("%s:\n      Go %s\nnode %s", line, want, out.Answers[i])
 		}
 	}
-	for _, r := range []string{Fail, ConditionalFail, Incomplete, "refused"} {
+	for _, r := range []string{Fail, ConditionalFail, Incomplete, ConditionalPass, "refused"} {
 		if results[r] == 0 {
-			t.Errorf("no random line came out as %q: %v", r, results)
+			t.Errorf("no random line and no finding came out as %q: %v", r, results)
 		}
 	}
 }
@@ -283,12 +287,37 @@ func randomLine(random *rand.Rand) map[string]any {
 	}
 	given := map[string]any{"faces": random.IntN(5), "delayed": random.IntN(4) == 0, "nominal_v": []int{0, 120, 240}[random.IntN(3)],
 		"equipment_ground": []string{"", "yes", "none-permitted"}[random.IntN(3)], "supply": []string{"", "", "isolated"}[random.IntN(3)],
-		"gauge": []string{"", "4 oz", "100 g"}[random.IntN(3)], "ramp": map[string]any{"ma_per_s": random.Float64()}, "loads": []string{"", "connected"}[random.IntN(2)]}
-	return map[string]any{"form": form.ID, "rated_residual_ma": []int{0, 10, 30, 100}[random.IntN(4)], "readings": readings, "series": series, "given": given}
+		"gauge": []string{"", "4 oz", "100 g", "14"}[random.IntN(4)], "retention_gauge": []string{"", "4 oz"}[random.IntN(2)],
+		"test_resistor_ohm": []float64{0, 0, 16000}[random.IntN(3)], "test_nominal_v": []float64{0, 0, 120}[random.IntN(3)], "accuracy": randomAccuracy(random), "ramp": map[string]any{"ma_per_s": random.Float64()}, "loads": []string{"", "connected"}[random.IntN(2)]}
+	line := map[string]any{"form": form.ID, "rated_residual_ma": []int{0, 10, 30, 100}[random.IntN(4)], "readings": readings, "series": series, "given": given}
+	var sets []string
+	for _, s := range shipped.LimitSets {
+		if slices.Contains(s.Kinds, form.Kinds[0]) {
+			sets = append(sets, s.ID)
+		}
+	}
+	if random.IntN(2) == 0 {
+		line["limit_set"] = sets[random.IntN(len(sets))]
+	}
+	return line
+}
+
+// randomAccuracy says of some numbers how accurately they were read.
+func randomAccuracy(random *rand.Rand) map[string]any {
+	out := map[string]any{}
+	for _, c := range codes {
+		if c.Type == TypeNumber && random.IntN(3) > 0 {
+			out[c.Code] = map[string]any{"percent": math.Round(random.Float64()*1000) / 100, "plus": math.Round(random.Float64()*100) / 100}
+		}
+	}
+	return out
 }
 
 func randomReading(random *rand.Rand, c Code) any {
 	v := math.Round(math.Pow(10, random.Float64()*5-1)*100) / 100
+	if likely, ok := map[string][2]float64{"trip_current_ma": {3.5, 7}, "test_current_ma": {5, 40}, "trip_time_ms": {5, 600}, "ground_ohm": {0, 2}}[c.Code]; ok && random.IntN(2) == 0 {
+		v = math.Round((likely[0]+random.Float64()*(likely[1]-likely[0]))*10) / 10
+	}
 	if c.Type != TypeNumber {
 		options := answersOf(c)
 		switch n := random.IntN(len(options) + 8); {

@@ -11,7 +11,7 @@ type LimitSet struct {
 	// StandsFor lists kinds, or "KIND delayed", whose devices are held against this set where none is chosen for the
 	// device itself: in a site's log at that site, in the organisation's everywhere else.
 	StandsFor []string `json:"stands_for,omitempty"`
-	// Rule is the decision rule: "simple" (a value on the limit passes) is the only one this judge knows.
+	// Rule is the decision rule, one of Rules; empty is simple.
 	Rule string `json:"rule"`
 	// Assume gives fields that are taken where the entry does not say ("nominal_v": 120).
 	Assume map[string]any `json:"assume,omitempty"`

@@ -61,6 +61,16 @@ func proveNoTrip(r *Reading) int {
 	return low
 }
 
+// gauge gives the mass of the go/no-go gauge that was used, "" where nobody says. Entries of earlier versions say it where
+// the register keeps a cord's conductor size.
+func (j *judging) gauge() string {
+	g := &j.e.Given
+	if g.RetentionGauge != "" {
+		return g.RetentionGauge
+	}
+	return g.Gauge
+}
+
 // gaugeProof weighs a go/no-go answer by the mass of the gauge: a gauge lighter than the limit cannot prove that it
 // holds, a heavier one cannot prove that it does not. Where the mass is not known the answer is taken at its word.
 func gaugeProof(l *Limit, gauge string, outcome int) (int, string) {

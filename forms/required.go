@@ -18,6 +18,11 @@ func (j *judging) required(a ask, i int) {
 	if !a.Required && !(a.Expected && j.saidMissing(i)) || bySeries || j.givenAt(i) || a.Or != "" && j.givenAnywhere(a.Or) || a.Series && j.givenAnywhere(a.Reading) {
 		return
 	}
+	if a.Reading == "test_current_ma" {
+		if _, _, known := j.testCurrent(); known {
+			return
+		}
+	}
 	reason := ""
 	if r := j.at(i); r != nil {
 		reason = r.Missing

@@ -40,7 +40,7 @@ var Shipped = sync.OnceValue(func() *Catalogue {
 var (
 	shippedForms = []string{"gfci-receptacle-button", "gfci-receptacle-instrument", "receptacle-receptacle",
 		"hospital-receptacle-receptacle", "rcd-button", "rcd-instrument"}
-	shippedLimitSets = []string{"us-class-a", "us-receptacle", "us-health-care", "iec-general", "iec-delayed"}
+	shippedLimitSets = []string{"us-class-a", "us-class-a-guarded", "us-receptacle", "us-health-care", "iec-general", "iec-delayed"}
 )
 
 // read decodes an embedded file, which a test has read before any release: a fault here is a fault of the build.

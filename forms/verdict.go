@@ -42,17 +42,23 @@ type Bounds struct {
 
 // Finding is what one limit says of one reading. Field names come in this order on the wire.
 type Finding struct {
-	Reading  string          `json:"reading"`
-	Value    json.RawMessage `json:"value,omitempty"` // number, string, bound ({"above":310}) or "no-trip"
-	Unit     string          `json:"unit,omitempty"`  // where value and limit are not in the code's own unit
-	At       map[string]any  `json:"at,omitempty"`
-	Verdict  string          `json:"verdict"`
-	Limit    *Bounds         `json:"limit,omitempty"` // shared between findings: not to be changed
-	Level    string          `json:"level,omitempty"` // must | watch
-	Severity string          `json:"severity,omitempty"`
-	Source   string          `json:"source,omitempty"` // document and clause
-	Reason   string          `json:"reason,omitempty"` // why a missing reading is missing
-	Text     string          `json:"text,omitempty"`   // key in the words catalogue: what it means and what to do; none on a pass
+	Reading string          `json:"reading"`
+	Value   json.RawMessage `json:"value,omitempty"` // number, string, bound ({"above":310}) or "no-trip"
+	Unit    string          `json:"unit,omitempty"`  // where value and limit are not in the code's own unit
+	At      map[string]any  `json:"at,omitempty"`
+	Verdict string          `json:"verdict"`
+	Limit   *Bounds         `json:"limit,omitempty"` // shared between findings: not to be changed
+	// Uncertainty is the doubt about the value against its limit: expanded, k = 2, in the unit of the value.
+	Uncertainty *float64 `json:"uncertainty,omitempty"`
+	// Probability is how probable it is, 0 to 1, that the true value lies inside the limit (JCGM 106).
+	Probability *float64 `json:"probability,omitempty"`
+	// ScaledMA is the test current the limit was computed at, where it was scaled to the line voltage.
+	ScaledMA *float64 `json:"scaled_ma,omitempty"`
+	Level    string   `json:"level,omitempty"` // must | watch
+	Severity string   `json:"severity,omitempty"`
+	Source   string   `json:"source,omitempty"` // document and clause
+	Reason   string   `json:"reason,omitempty"` // why a missing reading is missing
+	Text     string   `json:"text,omitempty"`   // key in the words catalogue: what it means and what to do; none on a pass
 }
 
 // Verdict is the result of an entry and why.

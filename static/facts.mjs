@@ -62,13 +62,22 @@ export class Facts {
     return typeof v === "number" ? v : undefined;
   }
 
+  /** Test current in mA as {current, scaled}. That of a tester with a fixed resistor is scaled to the measured line voltage. */
+  testCurrent(round9) {
+    const current = this.number("test_current_ma"), volts = this.number("voltage_v");
+    const { test_resistor_ohm: resistor, test_nominal_v: nominal } = this.entry.given;
+    if (volts !== undefined && resistor > 0) return { current: round9((1000 * volts) / resistor), scaled: true };
+    if (volts !== undefined && current !== undefined && nominal > 0) return { current: round9((current * volts) / nominal), scaled: true };
+    return { current, scaled: false };
+  }
+
   field(name) {
     const g = this.entry.given;
     const plain = (v) => (typeof v === "boolean" ? (v ? "yes" : "no") : typeof v === "number" || typeof v === "string" ? v : undefined);
     let v;
     if (name === "kind") v = g.kind || this.form?.kinds?.[0];
     else if (name === "delayed") v = g.delayed ? "yes" : undefined;
-    else if (["rated_residual_ma", "equipment_ground", "supply", "gauge", "waveform", "rating_a", "nominal_v", "faces"].includes(name)) v = g[name] || undefined;
+    else if (["rated_residual_ma", "equipment_ground", "supply", "gauge", "waveform", "rating_a", "nominal_v", "faces", "test_resistor_ohm"].includes(name)) v = g[name] || undefined;
     return v ?? plain(g.fields?.[name]) ?? plain(this.set?.assume?.[name]);
   }
 

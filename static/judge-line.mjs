@@ -17,7 +17,7 @@ const accuracyShape = { each: { percent: num, plus: num } };
 const givenShape = {
   kind: text, rated_residual_ma: num, form_rev: whole, limit_set: text, limit_rev: whole, instrument: text,
   calibration_due: "a date, written 2026-12-31", accuracy: accuracyShape, ramp: { ma_per_s: num, step_ma: num, dwell_ms: num },
-  equipment_ground: text, supply: text, loads: text, gauge: text, rating_a: num, nominal_v: num, delayed: bool, faces: whole, waveform: text, fields: object,
+  equipment_ground: text, supply: text, loads: text, retention_gauge: text, gauge: text, test_resistor_ohm: num, test_nominal_v: num, rating_a: num, nominal_v: num, delayed: bool, faces: whole, waveform: text, fields: object,
 };
 const lineShape = { form: text, limit_set: text, rated_residual_ma: num, accuracy: accuracyShape, given: givenShape, readings: object, series: "a list" };
 

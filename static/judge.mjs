@@ -1,12 +1,13 @@
 // The judge on the phone: the same results and findings as forms/judge.go, held by testdata/verdicts.json. Pure: takes
 // forms and limit sets as data, touches nothing.
 
+import { conformity, currentInDoubt, doubt, sure } from "./doubt.mjs";
 import { Facts, fits, given, limitsOn, matches, settle, settled } from "./facts.mjs";
-import { apply, classARampMA, figure, gaugeProof, prove, rampRate } from "./limit.mjs";
+import { apply, classARampMA, figure, gaugeProof, prove, rampRate, round9 } from "./limit.mjs";
 import { Refusal, codeOf, codes } from "./reading.mjs";
 
 /** Names the rules; equal to forms.JudgeVersion. */
-export const JudgeVersion = 1;
+export const JudgeVersion = 2;
 
 const rank = { fail: 4, "conditional-fail": 3, missing: 2, incomplete: 2, "conditional-pass": 1 };
 const results = ["pass", "conditional-pass", "incomplete", "conditional-fail", "fail"];
@@ -51,6 +52,7 @@ class Judging extends Facts {
     }
     if (!(ask.required || (ask.expected && this.reading(ask.reading)?.missing)) || bySeries || given(this.reading(ask.reading))) return;
     if ((ask.or && this.givenAnywhere(ask.or)) || (ask.series && this.givenAnywhere(ask.reading))) return;
+    if (ask.reading === "test_current_ma" && this.testCurrent(round9).current !== undefined) return;
     this.miss(ask.reading, undefined, this.reading(ask.reading)?.missing, "");
   }
 
@@ -120,6 +122,8 @@ class Judging extends Facts {
     const d = a.text && !(a.lacks && r.no_trip) ? { verdict: "not-judged", text: a.text } : this.decide(l, c, r, a, unit);
     f.verdict = d.verdict;
     if (a.limit) f.limit = a.limit;
+    for (const name of ["uncertainty", "probability"]) if (d[name] !== undefined) f[name] = d[name];
+    if (a.scaled_ma !== undefined) f.scaled_ma = a.scaled_ma;
     f.level = l.level;
     if (d.severity) f.severity = d.severity;
     f.source = l.source;
@@ -128,27 +132,61 @@ class Judging extends Facts {
   }
 
   decide(l, c, r, a, unit) {
-    let outcome = "other";
-    if (a.no_trip) outcome = r.no_trip || r.above !== undefined ? "inside" : "low";
-    else if (a.lacks) outcome = "unproven"; // it did not trip, at nobody says what current
-    else if (a.limit) outcome = prove(a.limit, r, c.unit, unit);
-    let text = (typeof r.value === "string" && l.texts?.[r.value]) || l.text;
-    if (l.gauge) {
-      const [weighed, why] = gaugeProof(l, this.entry.given.gauge, outcome);
-      outcome = weighed;
-      text = why || text;
-    } else if (outcome === "unproven") {
-      text = r.below !== undefined ? "limit.not_proven" : "limit.stopped_before";
-    }
-    if (outcome === "inside") return { verdict: "pass" };
+    const [outcome, text] = this.outcome(l, c, r, a, unit);
+    const number = r.above ?? r.below ?? (typeof r.value === "number" ? figure(r, c.unit, unit) : undefined);
+    const weighed = l.level === "must" && a.limit && number !== undefined ? this.weigh(c, r, a, number, unit) : {};
+    return { ...this.verdictOf(l, r, a, outcome, text, weighed, number), ...weighed };
+  }
+
+  verdictOf(l, r, a, outcome, text, weighed, number) {
+    const guarded = () => (a.limit && number !== undefined && this.guard(l, r, a, weighed, number, outcome)) || undefined;
+    if (outcome === "inside") return guarded() ?? { verdict: "pass" };
     if (l.level === "watch") return { verdict: "watch", text };
     if (outcome === "unproven") return { verdict: "conditional-fail", text };
     if (outcome === "low" && (l.loads || a.low)) {
       if (this.answer("loads_disconnected") === "no") return { verdict: "watch", text: "limit.trips_low_with_loads" };
-      return { verdict: "fail", severity: "nuisance", text: "limit.trips_low" };
+      return { ...(guarded() ?? { verdict: "fail", text: "limit.trips_low" }), severity: "nuisance" };
     }
-    if (outcome === "high" && l.ramp && this.rampExplains(r)) return { verdict: "conditional-fail", text: "limit.ramp_over_reads" };
-    return { verdict: "fail", severity: l.severity, text: a.no_trip ? "limit.must_not_trip" : text };
+    if (a.no_trip) return { verdict: "fail", severity: l.severity, text: "limit.must_not_trip" };
+    if (a.limit && number !== undefined) {
+      if (outcome === "high" && currentInDoubt(this.entry.given.accuracy, a) && (r.above !== undefined || this.set.rule === "guard-band")) return { verdict: "conditional-fail", text: "limit.current_in_doubt" };
+      const open = guarded();
+      if (open) return open;
+      if (outcome === "high" && l.ramp && this.rampExplains(r)) return { verdict: "conditional-fail", text: "limit.ramp_over_reads" };
+    }
+    return { verdict: "fail", severity: l.severity, text };
+  }
+
+  /** What a reading proves of a limit, and the text that goes with it. */
+  outcome(l, c, r, a, unit) {
+    let outcome = "other";
+    if (a.no_trip) outcome = r.no_trip || r.above !== undefined ? "inside" : "low";
+    else if (a.lacks) outcome = "unproven"; // it did not trip, at nobody says what current
+    else if (a.limit) outcome = prove(a.limit, r, c.unit, unit);
+    const text = (typeof r.value === "string" && l.texts?.[r.value]) || l.text;
+    if (l.gauge) {
+      const { retention_gauge: gauge, gauge: earlier } = this.entry.given;
+      const [weighed, why] = gaugeProof(l, gauge || earlier, outcome);
+      return [weighed, why || text];
+    }
+    if (outcome !== "unproven") return [outcome, text];
+    if (currentInDoubt(this.entry.given.accuracy, a)) return [outcome, "limit.current_in_doubt"];
+    return [outcome, r.below !== undefined ? "limit.not_proven" : "limit.stopped_before"];
+  }
+
+  weigh(c, r, a, number, unit) {
+    const uncertainty = doubt(this.entry.given.accuracy, c, a, number, unit);
+    if (uncertainty === undefined) return {};
+    if (r.value === undefined || uncertainty === 0) return { uncertainty };
+    return { uncertainty, probability: conformity(number, a.limit, uncertainty / 2) };
+  }
+
+  /** What the instrument's doubt leaves open under a guard band; undefined where the outcome stands. */
+  guard(l, r, a, { uncertainty }, number, outcome) {
+    if (this.set.rule !== "guard-band" || l.level !== "must" || !["inside", "low", "high"].includes(outcome)) return undefined;
+    if (uncertainty === undefined) return outcome === "inside" ? { verdict: "conditional-pass", text: "limit.accuracy_unknown" } : undefined;
+    if (sure(a.limit, r, number, uncertainty, outcome)) return undefined;
+    return outcome === "inside" ? { verdict: "conditional-pass", text: "limit.guard_inside" } : { verdict: "conditional-fail", text: "limit.guard_outside" };
   }
 
   rampExplains(r) {
@@ -184,7 +222,7 @@ function shown(r, own, unit) {
 /** Judges an entry {given, readings, series} of a form under a limit set: {result, findings}. Throws a Refusal only for a
  *  decision rule it does not know; readings it cannot understand count as not given. */
 export function judge(form, set, entry) {
-  if (set.rule && set.rule !== "simple") throw new Refusal("limit_set", `The limit set "${set.limit_set}" decides by the rule "${set.rule}", which this version does not know. Use a newer version, or a set whose rule is simple.`);
+  if (set.rule && !["simple", "guard-band"].includes(set.rule)) throw new Refusal("limit_set", `The limit set "${set.limit_set}" decides by the rule "${set.rule}", which this version does not know. Use a newer version, or a set whose rule is simple or guard-band.`);
   return new Judging(form, set, settle(entry)).run();
 }
 

@@ -49,12 +49,13 @@ function bounds({ min, max, one_of }) {
 }
 
 function applyCurve(facts) {
-  const current = facts.number("test_current_ma");
+  const { current, scaled } = facts.testCurrent(round9);
   if (current === undefined) return { lacks: "test_current_ma", text: "limit.no_test_current" };
-  if (current < 4) return { no_trip: true, low: true };
-  if (current < 6) return { text: "limit.below_curve" };
-  if (current > 264) return { text: "limit.above_curve" };
-  return { limit: { max: classATripMS(current) } };
+  const at = scaled ? { scaled_ma: current } : {};
+  if (current < 4) return { no_trip: true, low: true, ...at };
+  if (current < 6) return { text: "limit.below_curve", ...at };
+  if (current > 264) return { text: "limit.above_curve", ...at };
+  return { limit: { max: classATripMS(current) }, current, ...at };
 }
 
 function applyRated(facts, l) {

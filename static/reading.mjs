@@ -212,7 +212,7 @@ export function checkGiven(form, given) {
   for (const [name, first, second] of [["equipment_ground", "yes", "none-permitted"], ["supply", "grounded", "isolated"], ["loads", "connected", "disconnected"]]) {
     if (given[name] && given[name] !== first && given[name] !== second) throw new Refusal(`given.${name}`, `${name} is one of: ${first}, ${second}.`);
   }
-  for (const name of ["rated_residual_ma", "rating_a", "nominal_v", "faces"]) checkFact(name, given[name]);
+  for (const name of ["rated_residual_ma", "rating_a", "nominal_v", "faces", "test_resistor_ohm", "test_nominal_v"]) checkFact(name, given[name]);
   for (const name of ["ma_per_s", "step_ma", "dwell_ms"]) checkFact(`ramp.${name}`, given.ramp?.[name]);
   for (const code of Object.keys(given.accuracy ?? {}).sort()) {
     if (codeOf.get(code)?.type !== "number") throw new Refusal(`given.accuracy.${code}`, `"${code}" is no reading that is a number. "tripwell forms" lists them.`);

@@ -170,7 +170,7 @@ func (s *Server) flagDetail(f store.Flag) string {
 		}
 	case "differs-shown":
 		return lowerFirst(k.named("verdict", f.Detail))
-	case "calibration-expired":
+	case "calibration-expired", "access-ended":
 		if day, err := forms.ParseDay(f.Detail); err == nil {
 			return k.day(day)
 		}
@@ -294,15 +294,26 @@ func (s *Server) corrections(v *store.View, e store.Entry, zone *time.Location) 
 	k := s.ink()
 	var out []correctionShown
 	was := e.Original
-	for _, c := range e.Corrections {
-		state := k.say("office.entry.not_in_force")
-		if c.InForce {
-			state = k.say("office.entry.in_force")
-		}
+	show := func(c store.Correction, head, state string) {
 		out = append(out, correctionShown{
-			Head:   joined(k.say("office.entry.correction_head", "by", s.personName(v, c.By), "day", k.at(c.At, zone)), state),
+			Head:   joined(k.say("office.entry."+head, "by", s.personName(v, c.By), "day", k.at(c.At, zone)), k.say("office.entry."+state)),
 			Reason: c.Reason, Record: "/records/" + c.Record, Changes: s.changes(was, c.Body),
 		})
+	}
+	for _, c := range e.Corrections {
+		state := "not_in_force"
+		if c.InForce {
+			state = "in_force"
+		}
+		show(c, "correction_head", state)
+	}
+	for _, c := range e.NotPermitted {
+		if c.Withdraw {
+			c.Body = was // it changes no reading
+			show(c, "withdrawal_head", "not_permitted")
+			continue
+		}
+		show(c, "correction_head", "not_permitted")
 	}
 	return out
 }

@@ -243,6 +243,10 @@ func (s *Store) Enrol(ctx context.Context, person, installation string) (token s
 	}
 	token, key := newToken()
 	err = s.do(ctx, 1, func(g *group) error {
+		if g.tx.Bucket(bktPerson).Get(idKey(installation)) != nil {
+			// What a store makes for its owner is by the store itself; no device may look like that.
+			return &Error{Code: "conflict", Field: "installation", Text: "This id is a person's. The device must draw another."}
+		}
 		p, err := readPerson(g.tx, person)
 		if err != nil {
 			return err

@@ -1,6 +1,7 @@
 package store
 
 import (
+	"bytes"
 	"cmp"
 	"fmt"
 	"iter"
@@ -32,6 +33,7 @@ type Entry struct {
 	Shown            *Shown
 	Flags            []Flag
 	Corrections      []Correction // oldest first; the last by (clock, id) is in force
+	NotPermitted     []Correction // what people said of it who might not: neither the tester nor then a manager of the site
 	Withdrawn        *Correction
 	Sealed           bool // its owner had its bytes dropped; it never counts as passed
 	Original         forms.Entry
@@ -52,6 +54,7 @@ type Correction struct {
 	Reason   string
 	Body     forms.Entry
 	InForce  bool
+	Withdraw bool // it says that the entry does not count
 	Received time.Time
 }
 
@@ -199,7 +202,7 @@ func (v *View) entry(sv *siteView, r *record.Record, st record.Stamp, k kept, se
 	if err != nil {
 		return Entry{}, fmt.Errorf("entry %s: %w", r.ID, err)
 	}
-	said, err := readSaid(v.tx, v.tx.Bucket(bktSaid).Get(saidKey(sv.ord, parseID(r.ID))), nil)
+	said, err := readSaid(v.tx, v.tx.Bucket(bktSaid).Get(saidKey(sv.ord, parseID(r.ID))), nil, r, v.whoMay())
 	if err != nil {
 		return Entry{}, fmt.Errorf("entry %s: %w", r.ID, err)
 	}
@@ -214,8 +217,17 @@ func (v *View) entry(sv *siteView, r *record.Record, st record.Stamp, k kept, se
 		e.Source = "imported"
 	}
 	e.say(said, o)
-	e.Flags, err = v.flags(sv, r, st, k, body, o, len(e.Corrections) > 0)
-	return e, err
+	if e.Flags, err = v.flags(sv, r, st, k, body, o, len(e.Corrections) > 0); err != nil {
+		return e, err
+	}
+	for _, c := range e.NotPermitted {
+		code := "correction-idle"
+		if c.Withdraw {
+			code = "withdrawal-idle"
+		}
+		e.Flags = append(e.Flags, Flag{code, cmp.Or(v.PersonName(c.By), c.By)})
+	}
+	return e, nil
 }
 
 // say lists corrections and the withdrawal; each correction shows the entry as it stood after it.
@@ -224,6 +236,12 @@ func (e *Entry) say(said []saidRecord, o outcome) {
 	for i := range said {
 		s := &said[i]
 		c := Correction{Record: s.ID, By: s.By, At: s.At, Reason: s.body.Reason, Received: s.stamp.Received}
+		if s.idle {
+			c.Body = corrected(stands, []saidRecord{{Record: s.Record, body: s.body}})
+			c.Withdraw = s.Kind == "entry.withdrawn"
+			e.NotPermitted = append(e.NotPermitted, c)
+			continue
+		}
 		switch s.Kind {
 		case "entry.corrected":
 			stands.Readings, stands.Series = s.body.Readings, s.body.Series
@@ -237,7 +255,7 @@ func (e *Entry) say(said []saidRecord, o outcome) {
 			e.Corrections = append(e.Corrections, c)
 		case "entry.withdrawn":
 			if o.withdrawn == s {
-				c.Body, c.InForce = stands, true
+				c.Body, c.InForce, c.Withdraw = stands, true, true
 				e.Withdrawn = &c
 			}
 		}
@@ -246,7 +264,8 @@ func (e *Entry) say(said []saidRecord, o outcome) {
 
 // Flag is something to look at that is no verdict: code names a word "flag.CODE", Detail fills it in.
 // Codes: clock (device clock off), late (received long after), differs-shown, differs-register, calibration-expired,
-// no-instrument, n-reused.
+// no-instrument, access-ended (between the test and its arrival), n-reused (two records carry its number), n-gap (the
+// numbers before it never came), correction-idle and withdrawal-idle (by somebody who might not).
 type Flag struct{ Code, Detail string }
 
 const (
@@ -283,10 +302,28 @@ func (v *View) flags(sv *siteView, r *record.Record, st record.Stamp, k kept, bo
 	if o.task == forms.TaskInstrument && given.Instrument == "" && r.Kind == "entry.made" {
 		flag("no-instrument", "")
 	}
-	if v.tx.Bucket(bktReused).Get(reusedKey(r.From, k.ord, r.N, r.ID)) != nil {
-		flag("n-reused", strconv.FormatInt(r.N, 10))
+	if err := v.flagNumber(r, k, flag); err != nil {
+		return nil, err
+	}
+	if at, ended, err := v.whoMay().accessEnded(r, st); err != nil {
+		return nil, err
+	} else if ended {
+		flag("access-ended", forms.DayOf(time.UnixMilli(at).In(sv.zone)).String())
 	}
 	return out, v.differsRegister(sv, r, given, flag)
+}
+
+// flagNumber flags a number that several records of the installation carry in this log, and numbers missing before it.
+func (v *View) flagNumber(r *record.Record, k kept, flag func(code, detail string)) error {
+	key := reusedKey(r.From, k.ord, r.N, "")
+	if again, _ := v.tx.Bucket(bktReused).Cursor().Seek(key); bytes.HasPrefix(again, key) {
+		flag("n-reused", strconv.FormatInt(r.N, 10))
+	}
+	gap, err := v.gapBefore(r.From, k.ord, r.N)
+	if gap != (numbers{}) {
+		flag("n-gap", gap.String())
+	}
+	return err
 }
 
 // differsRegister flags what an entry says of its device and the register says otherwise.

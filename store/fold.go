@@ -16,7 +16,7 @@ import (
 )
 
 // modelVersion names the shape and the rules of the read models; it grows with every change of either.
-const modelVersion = 1
+const modelVersion = 2
 
 // fold turns accepted records into read models, in book order. It gathers a group's changes in memory and writes them in
 // flush, in the transaction that appends the records. It knows no clock and no setting, and what it comes to does not
@@ -37,8 +37,9 @@ type fold struct {
 	sums      map[string]int64
 	tallies   map[string]*tally
 	rules     *rules
-	ready     *ready         // of the record being folded, where its pusher worked something out
-	current   *record.Record // a correction while it is folded: the book does not hold it yet
+	grants    *grants
+	ready     *ready      // of the record being folded, where its pusher worked something out
+	current   *saidRecord // a correction while it is folded: the book does not hold it yet
 }
 
 type thingID struct {
@@ -72,7 +73,7 @@ func newFold(tx *bbolt.Tx) *fold {
 		things: map[thingID]uint32{}, registers: map[registerID]*register{}, works: map[workID]*work{},
 		entries: map[id16]uint64{}, sums: map[string]int64{}, tallies: map[string]*tally{},
 	}
-	f.rules = newRules(f.on(bktRule).list)
+	f.rules, f.grants = newRules(f.on(bktRule).list), newGrants(f.on(bktGranted).list)
 	return f
 }
 
@@ -92,7 +93,9 @@ func (f *fold) record(r *record.Record, st record.Stamp, seq uint64) error {
 	case "entry.made", "entry.imported":
 		return f.entryMade(r, st)
 	case "entry.corrected", "entry.withdrawn", "record.sealed":
-		return f.entrySaid(r)
+		return f.entrySaid(r, st)
+	case "grant.set":
+		return f.granted(r, st)
 	case "forms.set", "limits.set", "plan.set":
 		return f.ruleSet(r)
 	}

@@ -54,7 +54,7 @@ func (f *fold) outcome(l *modelLog, r *record.Record, st record.Stamp, body *ent
 	if err != nil {
 		return outcome{}, err
 	}
-	said, err := f.saidOf(l.ord, parseID(r.ID))
+	said, err := f.saidOf(l.ord, r)
 	if err != nil {
 		return outcome{}, err
 	}
@@ -66,12 +66,12 @@ func (f *fold) outcome(l *modelLog, r *record.Record, st record.Stamp, body *ent
 }
 
 // saidOf reads the corrections and withdrawals of an entry that the book holds so far.
-func (f *fold) saidOf(site uint32, entry id16) ([]saidRecord, error) {
-	return readSaid(f.tx, f.on(bktSaid).get(saidKey(site, entry)), f.current)
+func (f *fold) saidOf(site uint32, entry *record.Record) ([]saidRecord, error) {
+	return readSaid(f.tx, f.on(bktSaid).get(saidKey(site, parseID(entry.ID))), f.current, entry, f.grants)
 }
 
 // entrySaid takes a correction, a withdrawal or a seal into the entry it is about, or keeps it until that comes.
-func (f *fold) entrySaid(r *record.Record) error {
+func (f *fold) entrySaid(r *record.Record, st record.Stamp) error {
 	if r.Kind == "record.sealed" && record.LogClass(r.Log) != "site" {
 		return nil
 	}
@@ -88,8 +88,17 @@ func (f *fold) entrySaid(r *record.Record) error {
 	p.uint(f.seq)
 	f.on(bktSaid).put(key, p.b)
 
-	f.current = r
+	if r.Kind != "record.sealed" {
+		_, received := workTime(r, st)
+		f.on(bktChange).put(changeKey(parseID(r.By), received, f.seq), append(put32(make([]byte, 0, 20), l.ord), entry[:]...))
+	}
+	f.current = &saidRecord{Record: r, stamp: st}
 	defer func() { f.current = nil }()
+	return f.weighAgain(l, entry)
+}
+
+// weighAgain takes everything said of an entry into its device's row, where the entry has come.
+func (f *fold) weighAgain(l *modelLog, entry id16) error {
 	seq, known := f.entries[entry]
 	if !known {
 		v := f.tx.Bucket(bktID).Get(entry[:])
@@ -101,7 +110,7 @@ func (f *fold) entrySaid(r *record.Record) error {
 	if err != nil {
 		return err
 	}
-	if e.Log != r.Log || e.Kind != "entry.made" && e.Kind != "entry.imported" {
+	if id := parseID(e.Log); id != l.id || e.Kind != "entry.made" && e.Kind != "entry.imported" {
 		return nil
 	}
 	n := f.thing(l, ofDevice, parseID(e.Subject))
@@ -313,7 +322,7 @@ func (f *fold) figuresAt(l *modelLog, seq uint64) ([]figure, error) {
 	if err != nil {
 		return nil, err
 	}
-	said, err := f.saidOf(l.ord, parseID(r.ID))
+	said, err := f.saidOf(l.ord, r)
 	if err != nil {
 		return nil, err
 	}

@@ -106,6 +106,7 @@ func countKey(installation string, ord uint32) []byte {
 	return binary.BigEndian.AppendUint32(append(make([]byte, 0, 20), idKey(installation)...), ord)
 }
 
+// reusedKey without an id is what the keys of one number begin with.
 func reusedKey(installation string, ord uint32, n int64, id string) []byte {
 	return append(binary.BigEndian.AppendUint64(countKey(installation, ord), uint64(n)), idKey(id)...)
 }

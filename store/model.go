@@ -17,8 +17,10 @@ import (
 //	m_work   site 4 | n 4               → work row of a device: last tests, dates, its newest entries
 //	m_hist   site 4 | n 4 | seq 8       → older entries of that device, from that seq
 //	m_said   site 4 | entry 16          → seqs of the corrections and withdrawals of an entry
+//	m_granted person 16 | time 8 | clock 8 | record 16 → JSON of accessFact: what that person may do from then on
+//	m_change person 16 | first received 8 | seq 8 → site 4 | entry 16: something that person said of an entry
 //	m_due    site 4 | day 4 | n 4 | task → nothing: this device has this date
-//	m_sum    site 4 | day 4 | grace 2   → how many such dates
+//	m_sum    site 4 | day 4 | grace 2 | task → how many such dates
 //	m_fail   site 4 | day 4 | n 4       → nothing: this device failed on that day and has not passed since
 //	m_tally  site 4 | month 4 | task    → results of the month, counted
 //	m_bind   site 4 | subject 16 | tag 7 → what was said of this binding
@@ -35,6 +37,8 @@ var (
 	bktWork     = []byte("m_work")
 	bktHistory  = []byte("m_hist")
 	bktSaid     = []byte("m_said")
+	bktGranted  = []byte("m_granted")
+	bktChange   = []byte("m_change")
 	bktDue      = []byte("m_due")
 	bktSum      = []byte("m_sum")
 	bktFail     = []byte("m_fail")
@@ -47,7 +51,7 @@ var (
 	bktTodo     = []byte("m_todo")
 )
 
-var modelBuckets = [][]byte{bktSiteLog, bktSite, bktThing, bktRegister, bktWork, bktHistory, bktSaid, bktDue, bktSum,
+var modelBuckets = [][]byte{bktSiteLog, bktSite, bktThing, bktRegister, bktWork, bktHistory, bktSaid, bktGranted, bktChange, bktDue, bktSum,
 	bktFail, bktTally, bktBind, bktTag, bktPlace, bktCode, bktRule, bktTodo}
 
 // Types of things and of rules.
@@ -95,8 +99,8 @@ func dueKey(site uint32, day forms.Day, n uint32, task string) []byte {
 	return append(put32(putDay(put32(make([]byte, 0, 12+len(task)), site), day), n), task...)
 }
 
-func sumKey(site uint32, day forms.Day, grace uint16) []byte {
-	return binary.BigEndian.AppendUint16(putDay(put32(make([]byte, 0, 10), site), day), grace)
+func sumKey(site uint32, day forms.Day, grace uint16, task string) []byte {
+	return append(binary.BigEndian.AppendUint16(putDay(put32(make([]byte, 0, 10+len(task)), site), day), grace), task...)
 }
 
 func failKey(site uint32, day forms.Day, n uint32) []byte {

@@ -77,17 +77,22 @@ type saidRecord struct {
 	*record.Record
 	stamp record.Stamp
 	body  *correctionBody
+	idle  bool // its author might not change this entry: it is shown and not in force
 }
 
-// readSaid reads a row of m_said. Of the record that is being folded the book has nothing yet: current stands in for it.
-func readSaid(tx *bbolt.Tx, row []byte, current *record.Record) ([]saidRecord, error) {
+// readSaid reads a row of m_said. Of the record that is being folded the book has nothing yet: current stands in for it. Whether
+// each is in force is asked of the grants.
+func readSaid(tx *bbolt.Tx, row []byte, current *saidRecord, entry *record.Record, gr *grants) ([]saidRecord, error) {
 	var list []saidRecord
 	for u := (unpacker{b: row}); len(u.b) > 0; {
 		seq := u.uint()
 		if u.bad {
 			return nil, errPacked
 		}
-		s := saidRecord{Record: current}
+		var s saidRecord
+		if current != nil {
+			s = *current
+		}
 		if tx.Bucket(bktRec).Get(key64(seq)) != nil {
 			var err error
 			if s.Record, s.stamp, _, err = readBook(tx, seq); err != nil {
@@ -101,6 +106,11 @@ func readSaid(tx *bbolt.Tx, row []byte, current *record.Record) ([]saidRecord, e
 		if s.body, err = readCorrection(s.Record); err != nil {
 			return nil, err
 		}
+		may, err := gr.mayChange(entry, &s)
+		if err != nil {
+			return nil, err
+		}
+		s.idle = !may
 		list = append(list, s)
 	}
 	slices.SortFunc(list, func(a, b saidRecord) int { return cmp.Or(cmp.Compare(a.Clock, b.Clock), cmp.Compare(a.ID, b.ID)) })
@@ -134,8 +144,8 @@ type outcome struct {
 	sealed    bool
 }
 
-// outcome weighs an entry: the correction with the largest (clock, id) gives the readings, the last that states what was
-// given gives that; a withdrawal ends it; a sealed entry never counts as passed. The order of arrival has no say.
+// outcome weighs an entry: of those in force the correction with the largest (clock, id) gives the readings, the last that
+// states what was given gives that; a withdrawal ends it; a sealed entry never counts as passed. The order of arrival has no say.
 func (ru *rules) outcome(site, org uint32, zone *time.Location, r *record.Record, st record.Stamp, body *entryBody, said []saidRecord) outcome {
 	o := outcome{day: forms.DayOf(happened(r, st).In(zone)), task: entryTask(&body.Entry), entry: body.Entry}
 	if body.Day != nil && *body.Day != forms.NoDay && *body.Day < o.day && r.Kind == "entry.imported" {
@@ -145,7 +155,7 @@ func (ru *rules) outcome(site, org uint32, zone *time.Location, r *record.Record
 	for i := range said {
 		switch s := &said[i]; s.Kind {
 		case "entry.withdrawn":
-			if o.withdrawn == nil {
+			if o.withdrawn == nil && !s.idle {
 				o.withdrawn = s
 			}
 		case "record.sealed":
@@ -163,11 +173,11 @@ func (ru *rules) outcome(site, org uint32, zone *time.Location, r *record.Record
 	return o
 }
 
-// corrected is an entry after its corrections, which come oldest first: the last gives the readings, the last that states
+// corrected is an entry after its corrections in force, which come oldest first: the last gives the readings, the last that states
 // what was given gives that.
 func corrected(e forms.Entry, said []saidRecord) forms.Entry {
 	for _, s := range said {
-		if s.Kind != "entry.corrected" {
+		if s.Kind != "entry.corrected" || s.idle {
 			continue
 		}
 		e.Readings, e.Series = s.body.Readings, s.body.Series

@@ -21,7 +21,7 @@ var all = Scope{Role: "owner", All: true}
 
 // told is a store's pages as values: everything the readers give of its sites on a day. What arrival decides by its
 // nature is left out: Received, Pos, the flag of late arrival, and the order of what falls on one day (lists of dates and
-// of failures, and with them which of several tasks due on one day is named first).
+// of failures).
 func told(t testing.TB, s *Store, on forms.Day) string {
 	t.Helper()
 	var out []any
@@ -48,7 +48,6 @@ func told(t testing.TB, s *Store, on forms.Day) string {
 				return err
 			}
 			slices.SortFunc(sums.LastFailed, func(a, b DeviceRow) int { return cmp.Compare(a.ID, b.ID) })
-			sums.NextTask = ""
 			out = append(out, full, sums, tallies, places)
 			for row, err := range v.Devices(site.ID) {
 				if err != nil {

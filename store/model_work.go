@@ -393,13 +393,13 @@ func (f *fold) packWorks() {
 		for _, d := range w.was.dates {
 			if !hasDate(w.dates, d) {
 				f.on(bktDue).delete(dueKey(key.site, d.Due, key.n, d.Task))
-				f.sums[string(sumKey(key.site, d.Due, graceDays(d)))]--
+				f.sums[string(sumKey(key.site, d.Due, graceDays(d), d.Task))]--
 			}
 		}
 		for _, d := range w.dates {
 			if !hasDate(w.was.dates, d) {
 				f.on(bktDue).put(dueKey(key.site, d.Due, key.n, d.Task), []byte{})
-				f.sums[string(sumKey(key.site, d.Due, graceDays(d)))]++
+				f.sums[string(sumKey(key.site, d.Due, graceDays(d), d.Task))]++
 			}
 		}
 		fail := w.failing()

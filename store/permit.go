@@ -128,7 +128,7 @@ func (g *group) permit(from Sender, r *record.Record, received time.Time) (*reco
 }
 
 // permitChange lets crew change their own entries and managers everybody's. Forms alone ask this: a push never depends
-// on whether the entry has come yet.
+// on whether the entry has come yet, and the read models ask it again (fold_grant.go).
 func (g *group) permitChange(r *record.Record, facts []accessFact, received time.Time) (*record.Fault, error) {
 	first, ok, err := g.find(r.Subject)
 	if err != nil || !ok {
@@ -166,8 +166,12 @@ func mayWrite(f accessFact, r *record.Record) bool {
 
 // grantsIn reports whether any grant in force between the record's at and its arrival satisfies may.
 func grantsIn(facts []accessFact, r *record.Record, received time.Time, may func(accessFact) bool) bool {
-	from, to := r.At.UnixMilli(), received.UnixMilli()
-	from = min(from, to)
+	to := received.UnixMilli()
+	return grantsBetween(facts, min(r.At.UnixMilli(), to), to, may)
+}
+
+// grantsBetween reports whether any grant in force at some time between two moments (ms) satisfies may.
+func grantsBetween(facts []accessFact, from, to int64, may func(accessFact) bool) bool {
 	for i := len(facts) - 1; i >= 0; i-- { // newest first
 		f := facts[i]
 		if f.Role == "" || f.At > to {

@@ -34,12 +34,12 @@ type Conflict struct {
 // SiteSums counts one site on one day.
 type SiteSums struct {
 	Site       Site
-	Devices    int       // not retired
-	Overdue    int       // dates, not devices
-	DueSoon    int       // dates within the 31 days after the day asked for, the day included
-	Failed     int       // devices of which some task failed and has not passed since
-	NextDay    forms.Day // the earliest date of all, also where it has passed; NoDay for none
-	NextTask   string
+	Devices    int         // not retired
+	Overdue    int         // dates, not devices
+	DueSoon    int         // dates within the 31 days after the day asked for, the day included
+	Failed     int         // devices of which some task failed and has not passed since
+	NextDay    forms.Day   // the earliest date that is overdue, else the earliest not yet passed; NoDay for none
+	NextTask   string      // of that date; of several the first by name
 	LastFailed []DeviceRow // at most 5, newest first
 }
 
@@ -164,10 +164,15 @@ func (v *View) SiteSums(site string, on forms.Day) (SiteSums, error) {
 	sums.Devices = int(u.uint())
 	prefix := put32(nil, sv.ord)
 	c := v.tx.Bucket(bktSum).Cursor()
+	next := nextDate{day: forms.NoDay}
 	for k, n := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, n = c.Next() {
 		day, grace := readDay(k[4:]), forms.Day(binary.BigEndian.Uint16(k[8:]))
-		if day > on+31 {
+		if next.day != forms.NoDay && next.order < 2 && day > max(on+31, next.day) {
 			break
+		}
+		next.take(day, string(k[10:]), on, grace)
+		if day > on+31 {
+			continue
 		}
 		u := unpacker{b: n}
 		switch count := int(u.uint()); {
@@ -177,11 +182,30 @@ func (v *View) SiteSums(site string, on forms.Day) (SiteSums, error) {
 			sums.DueSoon += count
 		}
 	}
-	if k, _ := v.tx.Bucket(bktDue).Cursor().Seek(prefix); bytes.HasPrefix(k, prefix) {
-		sums.NextDay, sums.NextTask = readDay(k[4:]), string(k[12:])
-	}
+	sums.NextDay, sums.NextTask = next.day, next.task
 	err = v.lastFailed(sv, on, &sums)
 	return sums, err
+}
+
+// nextDate finds the date a site is to look at next: one that is overdue comes before one that has not passed, and that
+// before one within its grace.
+type nextDate struct {
+	day   forms.Day
+	task  string
+	order int
+}
+
+func (d *nextDate) take(day forms.Day, task string, on, grace forms.Day) {
+	order := 1
+	switch {
+	case day+grace < on:
+		order = 0
+	case day < on:
+		order = 2
+	}
+	if d.day == forms.NoDay || cmp.Or(cmp.Compare(order, d.order), cmp.Compare(day, d.day), cmp.Compare(task, d.task)) < 0 {
+		*d = nextDate{day, task, order}
+	}
 }
 
 func (v *View) lastFailed(sv *siteView, on forms.Day, sums *SiteSums) error {

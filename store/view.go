@@ -17,9 +17,12 @@ type View struct {
 	s     *Store
 	scope Scope
 
-	ruled  *rules
-	org    uint32
-	opened map[id16]*siteView
+	ruled   *rules
+	mayDo   *grants
+	org     uint32
+	opened  map[id16]*siteView
+	counted map[string]*runs // by installation and log
+	refused map[numbered]bool
 }
 
 var errNoSite = &Error{Code: "not_found", Field: "site", Text: "There is no such site here, or it is not yours to see. Choose one from the list of sites."}
@@ -123,6 +126,15 @@ func (v *View) rules() *rules {
 		}
 	}
 	return v.ruled
+}
+
+// whoMay gives what people may do as this view sees it.
+func (v *View) whoMay() *grants {
+	if v.mayDo == nil {
+		o := overlay{bucket: v.tx.Bucket(bktGranted)}
+		v.mayDo = newGrants(o.list)
+	}
+	return v.mayDo
 }
 
 // orgLog gives the number of the organisation's log, 0 while nothing was said in it.

@@ -185,8 +185,29 @@ func (s *Server) exchangeEnrol(c echo.Context) error {
 	if err := decodeJSON(c, &req); err != nil {
 		return err
 	}
+	return s.enrolled(c, req.Installation)
+}
+
+// exchangeRenew gives a phone that was copied or restored a new id beside the one it had: what it still has to send
+// under the old id goes with the old token. Phones the store has not seen twice keep the id they have.
+func (s *Server) exchangeRenew(c echo.Context) error {
+	var req enrolRequest
+	if err := decodeJSON(c, &req); err != nil {
+		return err
+	}
+	copied, err := s.store.WasCopied(c.Get(callerKey).(*caller).installation)
+	if err != nil {
+		return err
+	}
+	if !copied {
+		return refuse(codeConflict, "installation", "This phone is known once only and keeps its id.")
+	}
+	return s.enrolled(c, req.Installation)
+}
+
+func (s *Server) enrolled(c echo.Context, installation string) error {
 	p := person(c)
-	token, err := s.store.Enrol(c.Request().Context(), p.ID, req.Installation)
+	token, err := s.store.Enrol(c.Request().Context(), p.ID, installation)
 	if err != nil {
 		return err
 	}

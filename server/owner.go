@@ -26,6 +26,10 @@ func ownerRoutes() []route {
 		{post, "/own/labels/batch", owner, (*Server).ownLabelsBatch, 0},
 		{get, "/own/label", owner, (*Server).ownLabel, 0},
 		{post, "/own/import/register", owner, (*Server).ownImportRegister, importLimit},
+		{post, "/own/import/tray", owner, (*Server).ownImportTray, importLimit},
+		{post, "/own/backup", owner, (*Server).ownBackup, 0},
+		{get, "/own/backup", owner, (*Server).ownBackupTake, 0},
+		{post, "/own/backup/kept", owner, (*Server).ownBackupKept, 0},
 		{get, "/own/check", owner, (*Server).ownCheck, 0},
 		{post, "/own/rebuild", owner, (*Server).ownRebuild, 0},
 	}

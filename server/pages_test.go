@@ -14,6 +14,7 @@ import (
 	"tripwell/export"
 	"tripwell/forms"
 	"tripwell/static"
+	"tripwell/store"
 )
 
 // pageServer has pages, words and assets and no store: enough to render.
@@ -87,6 +88,8 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 		"limits.html": s.limitsSample(),
 		"people.html": peoplePage{Frame: frameOf("People", "people"), Heading: "3 people may sign in.", People: []peopleRow{
 			{Href: "/people/1", Name: "Manager 1", Role: "Manager", Sites: "All sites", Contact: "ext. 401", Active: true}, {Href: "/people/2", Name: "Crew 1", Role: "Crew", Sites: "Kiln Lane Day Clinic, Ottermoor Swim Hall", Active: true}, {Href: "/people/3", Name: "Auditor 2", Role: "Auditor", Sites: "Kiln Lane Day Clinic"}}},
+		"tray.html": trayPage{Frame: frameOf("Take in a phone's tray", ""), Problem: "Choose the file the phone saved first.", Report: &TrayReport{Records: 3, Stored: 1, Already: 1, Person: "Crew 1", Made: "2026-12-01T08:00:00.000Z",
+			Refused: []store.Receipt{{ID: "0197b2c0-0000-7000-8000-000000000001", State: "refused", Code: "bad_body", Text: "The readings are missing."}}}},
 		"person_link.html": personLinkPage{Frame: frameOf("People", "people"), Crumbs: []link{{Href: "/people", Text: "People"}}, Heading: "Sign-in link for Crew 1", Under: "It is shown here once.", Link: "https://tripwell.example/in/2JHC0VQ2W4Z8S5N7K3M6P9R1T4", Text: "Send it to Crew 1 only."},
 	}
 }

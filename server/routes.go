@@ -46,6 +46,7 @@ func publicRoutes() []route {
 
 		// exchange
 		{post, "/exchange/enrol", crew | manager, (*Server).exchangeEnrol, 0},
+		{post, "/exchange/renew", phone, (*Server).exchangeRenew, 0},
 		{post, "/exchange/push", phone, (*Server).exchangePush, pushLimit},
 		{get, "/exchange/pull", phone, (*Server).exchangePull, 0},
 		{post, "/exchange/ask", phone, (*Server).exchangeAsk, 0},
@@ -70,6 +71,8 @@ func publicRoutes() []route {
 		{get, "/label", office, (*Server).labelTake, 0},
 
 		// office: changing
+		{get, "/tray", manager, (*Server).trayAsk, 0},
+		{post, "/tray", manager, (*Server).trayTake, importLimit},
 		{get, "/sites/new", manager, (*Server).siteNew, 0},
 		{post, "/sites", manager, (*Server).siteCreate, 0},
 		{get, "/sites/:site/edit", manager, (*Server).siteEdit, 0},

@@ -16,6 +16,7 @@ import (
 	"log/slog"
 	"net"
 	"net/http"
+	"sync/atomic"
 	"time"
 
 	"github.com/labstack/echo/v4"
@@ -42,6 +43,7 @@ type Server struct {
 	pages  map[string]*template.Template
 	cross  *http.CrossOriginProtection
 	wrong  *wrongLinks
+	image  atomic.Pointer[store.Image] // the backup that is being taken away
 }
 
 // New reads the pages, the words and the files for browsers; all of them are embedded, so an error is a fault of the build.

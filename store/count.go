@@ -1,10 +1,13 @@
 package store
 
 import (
+	"bytes"
 	"encoding/binary"
 	"fmt"
 	"maps"
 	"slices"
+
+	"go.etcd.io/bbolt"
 
 	"tripwell/store/record"
 )
@@ -100,6 +103,7 @@ func (g *group) count(r *record.Record, ord uint32) error {
 	if !g.runs(r.From, ord).add(r.N) {
 		return nil
 	}
+	g.reused = true
 	if err := g.tx.Bucket(bktReused).Put(reusedKey(r.From, ord, r.N, r.ID), []byte{}); err != nil {
 		return fmt.Errorf("note reused n of record %s: %w", r.ID, err)
 	}
@@ -116,4 +120,18 @@ func (g *group) flushCounts() error {
 		}
 	}
 	return nil
+}
+
+// WasCopied reports whether an installation ever used one n for two records: it was copied or restored.
+func (s *Store) WasCopied(installation string) (copied bool, err error) {
+	prefix := idKey(installation)
+	if prefix == nil {
+		return false, nil
+	}
+	err = s.view(func(tx *bbolt.Tx) error {
+		k, _ := tx.Bucket(bktReused).Cursor().Seek(prefix)
+		copied = bytes.HasPrefix(k, prefix)
+		return nil
+	})
+	return copied, err
 }

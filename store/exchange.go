@@ -12,6 +12,7 @@ import (
 )
 
 // Pulled is one page of a log. Snapshot: the cursor is of another store or epoch. NotYours: the log is not allowed.
+// BackedUp: the log's first so many records are in a checked backup too.
 type Pulled struct {
 	Records  []PulledRecord `json:"records"`
 	Next     string         `json:"next"`
@@ -80,6 +81,11 @@ func (s *Store) Pull(scope Scope, log, after string, limit int) (Pulled, error) 
 		limit = pullMost
 	}
 	err := s.view(func(tx *bbolt.Tx) error {
+		covered, err := backedUp(tx)
+		if err != nil {
+			return err
+		}
+		p.BackedUp = covered[log]
 		v := tx.Bucket(bktLogs).Get([]byte(log))
 		if v == nil {
 			if pos > 0 {

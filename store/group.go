@@ -34,6 +34,7 @@ type group struct {
 	fresh   map[[16]byte]fresh // accepted in this group
 	order   [][16]byte
 	refused bool // the quarantine holds something
+	reused  bool // the last record counted used an n that was taken
 	buf     []byte
 	hashes  []proof.Hash
 }

@@ -74,6 +74,8 @@ var (
 	metaClock  = []byte("clock")
 	metaModel  = []byte("model")
 	settingURL = []byte("url")
+
+	settingBackup = []byte("backed_up")
 )
 
 // formatVersion of the file; a newer one is refused.

@@ -101,6 +101,12 @@ func (g *group) permit(from Sender, r *record.Record, received time.Time) (*reco
 	if from.Owner {
 		return nil, nil
 	}
+	if from.Rescue {
+		if r.From == g.s.id {
+			return no("from", "The record says this store made it, but it is not here. Restore the store from its backup instead."), nil
+		}
+		from.Installation = r.From
+	}
 	own := from.Installation == g.s.id
 	if r.From != from.Installation {
 		return no("from", "The record was made on another device than the one that sent it. Send it from the device it was made on, or load its rescue file as the owner of the store."), nil

@@ -26,6 +26,9 @@ type Sender struct {
 	Via          string
 	Sent         time.Time
 	Owner        bool // the socket of whoever owns the folder
+	// Rescue: the records come in a file somebody saved on their phone. They are judged as if the phones that made
+	// them had sent them.
+	Rescue bool
 }
 
 // Receipt is what became of one record: stored | already | held | refused.
@@ -38,6 +41,9 @@ type Receipt struct {
 	Pos   int64  `json:"pos,omitempty"`
 	Code  string `json:"code,omitempty"`
 	Text  string `json:"text,omitempty"`
+	// Reused: the author's count n was taken by another record, which marks a phone that was copied or restored. It
+	// draws a new id for itself.
+	Reused bool `json:"reused,omitempty"`
 }
 
 // arrival is a record read and hashed before the writer sees it.
@@ -125,7 +131,7 @@ func (g *group) take(from Sender, a arrival, received time.Time) (Receipt, error
 	if fault != nil {
 		return g.refuse(from, a.r, fault, received)
 	}
-	g.fold.ready = a.ready
+	g.fold.ready, g.reused = a.ready, false
 	pos, err := g.accept(a.r, a.st.stamp, a.st.line, a.st.leaf)
 	g.fold.ready = nil
 	if errors.As(err, &fault) {
@@ -134,5 +140,7 @@ func (g *group) take(from Sender, a arrival, received time.Time) (Receipt, error
 	if err != nil {
 		return Receipt{}, err
 	}
-	return g.receipt(a.r.ID, "stored", a.r.Log, pos), nil
+	receipt := g.receipt(a.r.ID, "stored", a.r.Log, pos)
+	receipt.Reused = g.reused
+	return receipt, nil
 }

@@ -6,12 +6,15 @@ import (
 	"time"
 
 	"tripwell/forms"
+	"tripwell/store/record"
 )
 
 // Snapshot is what a phone takes along of one site, read in one transaction with the cursor that continues it.
 type Snapshot struct {
 	Site        SnapshotSite      `json:"site"`
 	Cursor      string            `json:"cursor"`
+	OrgCursor   string            `json:"org_cursor"` // the same of the organisation's log: its rules are in here as well
+	Clock       string            `json:"clock"`      // the largest stamp seen here, 16 hexadecimal digits; what a phone writes next is later
 	AsOf        time.Time         `json:"as_of"`
 	Today       forms.Day         `json:"today"`
 	Places      []SnapshotPlace   `json:"places"`  // walking order
@@ -85,6 +88,10 @@ func (v *View) Snapshot(site string, on forms.Day) (Snapshot, error) {
 	if s.Cursor, err = v.Cursor(sv.ID); err != nil {
 		return s, err
 	}
+	if s.OrgCursor, err = v.Cursor(record.Org); err != nil {
+		return s, err
+	}
+	s.Clock = record.ClockText(readKey64(v.tx.Bucket(bktMeta).Get(metaClock)))
 	places, err := v.Places(sv.ID)
 	if err != nil {
 		return s, err

@@ -2,4 +2,5 @@ package main
 
 type importCmd struct {
 	Register importRegisterCmd `cmd:"" help:"Take sites, places and devices in from a CSV or XLSX file."`
+	Tray     importTrayCmd     `cmd:"" help:"Take in what a phone saved to a file because it could not send it."`
 }

@@ -10,10 +10,10 @@ import { unitOf } from "./answer.mjs";
 /** How telling a finding is; of equals the one that comes first (must before watch) stays first. */
 const TELLING = ["fail", "conditional-fail", "conditional-pass", "watch", "pass", "not-judged", "missing"];
 
-/** The limit set that judges a device: the register's, else the shipped one of its kind, else the form's. */
+/** The limit set that judges a device: the register's, else the one that stands for its kind here, else the shipped one of its kind, else the form's. */
 export function limitSetFor(device, form, sets) {
   const known = (id) => sets.find((s) => s.limit_set === id);
-  return known(device.fields?.limit_set) ?? known(defaultLimitSet(device.kind, device.fields?.delayed === true)) ?? known(form.limit_set) ?? null;
+  return known(device.fields?.limit_set) ?? known(device.limit_set) ?? known(defaultLimitSet(device.kind, device.fields?.delayed === true)) ?? known(form.limit_set) ?? null;
 }
 
 const entryOf = (judged, walked) => ({ given: judged.given, readings: walked.readings, series: walked.series });

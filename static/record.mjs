@@ -101,9 +101,9 @@ defect.reopened        site
 record.refused         any       id:text sha256:hash! from:text n:number code:text!
 record.admitted        any       reason:text!
 record.sealed          any       reason:text!
-forms.set              org       form:object!
-limits.set             org,site  limits:object!
-plan.set               org,site  plan:object!
+forms.set              org       form:object! reason:text
+limits.set             org,site  limits:object! reason:text
+plan.set               org,site  plan:object! reason:text
 instrument.set         org       set:wide! seen:stamp
 instrument.calibrated  org       on:day! due:day certificate:text
 instrument.proved      org       on:day! tag:tag

@@ -205,7 +205,7 @@ func TestEntry_ANewLimitRevisionJudgesAgainFromItsDay(t *testing.T) {
 		t.Fatal("us-class-a is not shipped")
 	}
 	lenient := *set
-	lenient.Revision, lenient.InForce, lenient.Limits = 1, forms.Date(2026, time.December, 2), nil
+	lenient.Revision, lenient.InForce, lenient.Limits = 1, forms.Date(2026, time.December, 2), set.Limits[1:2] // only how it was found, a recommendation
 	r.put("limits.set", site, LimitSetSubject("us-class-a"), map[string]any{"limits": lenient})
 	if e := r.entryOf(made); e.Verdict.Result != forms.Fail {
 		t.Errorf("the day before the site's own set is in force the organisation's judges: got %s", e.Verdict.Result)

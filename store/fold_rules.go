@@ -27,12 +27,18 @@ func (f *fold) ruleSet(r *record.Record) error {
 	switch r.Kind {
 	case "forms.set":
 		form, err := parseChecked[forms.Form](body.Form, "form")
+		if err == nil {
+			err = firstWrong("form", forms.CheckForm(form))
+		}
 		if err != nil {
 			return err
 		}
 		key, p.b = ruleKey(ruleForm, l.ord, form.ID, form.Revision), append(p.b, body.Form...)
 	case "limits.set":
 		set, err := parseChecked[forms.LimitSet](body.Limits, "limits")
+		if err == nil {
+			err = firstWrong("limits", forms.CheckLimitSet(set))
+		}
 		if err != nil {
 			return err
 		}
@@ -60,6 +66,14 @@ func (f *fold) ruleSet(r *record.Record) error {
 		todo.site = 0
 	}
 	return f.queue(todo)
+}
+
+// firstWrong refuses a rule for the first thing in it that cannot be meant.
+func firstWrong(member string, list []*forms.Error) error {
+	if len(list) == 0 {
+		return nil
+	}
+	return badBody(member+"."+list[0].Field, "%s", list[0].Text)
 }
 
 func parseChecked[T any](raw json.RawMessage, field string) (*T, error) {

@@ -147,10 +147,7 @@ type outcome struct {
 // outcome weighs an entry: of those in force the correction with the largest (clock, id) gives the readings, the last that
 // states what was given gives that; a withdrawal ends it; a sealed entry never counts as passed. The order of arrival has no say.
 func (ru *rules) outcome(site, org uint32, zone *time.Location, r *record.Record, st record.Stamp, body *entryBody, said []saidRecord) outcome {
-	o := outcome{day: forms.DayOf(happened(r, st).In(zone)), task: entryTask(&body.Entry), entry: body.Entry}
-	if body.Day != nil && *body.Day != forms.NoDay && *body.Day < o.day && r.Kind == "entry.imported" {
-		o.day = *body.Day
-	}
+	o := outcome{day: testDay(r, st, body, zone), task: entryTask(&body.Entry), entry: body.Entry}
 	o.entry = corrected(body.Entry, said)
 	for i := range said {
 		switch s := &said[i]; s.Kind {
@@ -171,6 +168,16 @@ func (ru *rules) outcome(site, org uint32, zone *time.Location, r *record.Record
 		o.judged.Result = forms.Incomplete
 	}
 	return o
+}
+
+// testDay is the day an entry was tested on: of its own time, never later than the first holder had it; an imported one may
+// name an earlier day.
+func testDay(r *record.Record, st record.Stamp, body *entryBody, zone *time.Location) forms.Day {
+	day := forms.DayOf(happened(r, st).In(zone))
+	if body.Day != nil && *body.Day != forms.NoDay && *body.Day < day && r.Kind == "entry.imported" {
+		day = *body.Day
+	}
+	return day
 }
 
 // corrected is an entry after its corrections in force, which come oldest first: the last gives the readings, the last that states

@@ -17,6 +17,7 @@ type rules struct {
 	plans     map[uint32][]*forms.Plan
 	schedules map[scheduleID]forms.Schedule
 	limits    map[limitID][]*forms.LimitSet
+	standers  map[uint32][]string // ids of a log's sets that stand for kinds
 	forms     map[string][]*forms.Form
 	known     *ready // verdict worked out beforehand for the entry being judged
 }
@@ -41,6 +42,7 @@ func newRules(list func(prefix []byte) []row) *rules {
 func (ru *rules) forget() {
 	ru.plans, ru.schedules = map[uint32][]*forms.Plan{}, map[scheduleID]forms.Schedule{}
 	ru.limits, ru.forms = map[limitID][]*forms.LimitSet{}, map[string][]*forms.Form{}
+	ru.standers = map[uint32][]string{}
 }
 
 // parsedRules keeps what rows of rules say, by their bytes: a group commit every millisecond must not read the shipped
@@ -126,17 +128,21 @@ func (ru *rules) limitRevisions(log uint32, set string) []*forms.LimitSet {
 // there was none.
 func (ru *rules) limitSet(site, org uint32, set string, on forms.Day) *forms.LimitSet {
 	for _, log := range []uint32{site, org} {
-		var in *forms.LimitSet
-		for _, rev := range ru.limitRevisions(log, set) {
-			if rev.InForce <= on {
-				in = rev
-			}
-		}
-		if in != nil {
+		if in := ru.revisionOn(log, set, on); in != nil {
 			return in
 		}
 	}
 	return nil
+}
+
+// revisionOn gives the revision of a log's set in force on a day, nil where there was none.
+func (ru *rules) revisionOn(log uint32, set string, on forms.Day) (in *forms.LimitSet) {
+	for _, rev := range ru.limitRevisions(log, set) {
+		if rev.InForce <= on {
+			in = rev
+		}
+	}
+	return in
 }
 
 // form gives the revision an entry was made with, or else the one in force on its day, or the first there is.
@@ -190,14 +196,55 @@ func (ru *rules) standing(site, org uint32, e *forms.Entry, on forms.Day) (form 
 	if form == nil {
 		return nil, nil, ""
 	}
-	name = e.Given.LimitSet
-	if name == "" {
-		name = forms.DefaultLimitSet(entryKind(e), e.Given.Delayed)
+	if name = e.Given.LimitSet; name == "" {
+		name, _ = ru.setOfKind(site, org, entryKind(e), e.Given.Delayed, on)
 	}
 	if name == "" {
 		name = form.LimitSet
 	}
 	return form, ru.limitSet(site, org, name, on), name
+}
+
+// Why a limit set applies to a device, the strongest reason first.
+const (
+	ByDevice       = "device"       // chosen for the device itself
+	BySite         = "site"         // stands for its kind at the site
+	ByOrganisation = "organisation" // stands for its kind in the organisation
+	ByShipped      = "shipped"      // what the program ships for its kind
+)
+
+// setOfKind names the limit set of a kind on a day, for devices none is chosen for, and why it applies.
+func (ru *rules) setOfKind(site, org uint32, kind string, delayed bool, on forms.Day) (name, why string) {
+	for _, log := range []struct {
+		ord uint32
+		why string
+	}{{site, BySite}, {org, ByOrganisation}} {
+		var in []*forms.LimitSet
+		for _, id := range ru.standersOf(log.ord) {
+			if s := ru.revisionOn(log.ord, id, on); s != nil {
+				in = append(in, s)
+			}
+		}
+		if name := forms.StandingFor(in, kind, delayed); name != "" {
+			return name, log.why
+		}
+	}
+	return forms.DefaultLimitSet(kind, delayed), ByShipped
+}
+
+// standersOf lists the sets of a log any revision of which stands for kinds.
+func (ru *rules) standersOf(log uint32) []string {
+	ids, ok := ru.standers[log]
+	if ok || log == 0 {
+		return ids
+	}
+	for _, s := range rulesUnder[forms.LimitSet](ru, rulePrefix(ruleLimit, log, "")) {
+		if len(s.StandsFor) > 0 && !slices.Contains(ids, s.ID) {
+			ids = append(ids, s.ID)
+		}
+	}
+	ru.standers[log] = ids
+	return ids
 }
 
 func entryKind(e *forms.Entry) string {

@@ -54,6 +54,8 @@ type SnapshotDevice struct {
 	Circuit string         `json:"circuit,omitempty"`
 	Supply  string         `json:"supply,omitempty"`
 	Fields  map[string]any `json:"fields"`
+	// LimitSet stands for the device's kind here, where that is not what the program ships for it.
+	LimitSet string `json:"limit_set,omitempty"`
 	// Last by task: newest test, with its numbers for the dashed mark on the scale.
 	Last map[string]SnapshotLast `json:"last,omitempty"`
 	Due  []SnapshotDue           `json:"due,omitempty"`
@@ -153,6 +155,9 @@ func (v *View) snapshotDevice(sv *siteView, t *thing, w *work, on forms.Day) (Sn
 		if f := &t.fields[i]; !strings.HasPrefix(f.name, "#") && present(f.value) != nil {
 			d.Fields[f.name] = json.RawMessage(append([]byte(nil), f.value...))
 		}
+	}
+	if name, why := v.rules().setOfKind(sv.ord, v.orgLog(), d.Kind, string(t.value("delayed")) == "true", on); why != ByShipped {
+		d.LimitSet = name
 	}
 	placeID, err := v.placeIDOf(sv, t)
 	if err != nil {

@@ -90,10 +90,10 @@ func tooLarge(num []byte) bool {
 	if num[0] == '-' {
 		num = num[1:]
 	}
-	if len(num) < len(limit) && bytes.IndexAny(num, "eE") < 0 {
+	if len(num) < len(limit) && !bytes.ContainsAny(num, "eE") {
 		return false
 	}
-	if bytes.IndexAny(num, "eE") >= 0 {
+	if bytes.ContainsAny(num, "eE") {
 		x, err := strconv.ParseFloat(string(num), 64)
 		return x > 1<<53 || math.IsInf(x, 0) || (err != nil && x != 0)
 	}

@@ -84,8 +84,10 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 			Labels:   true},
 		"labels.html": labelsPage{Frame: frameOf("Labels", "downloads"), Heading: "Labels", Under: "Sheets and rolls.", Sheets: []field{{Name: "site", Label: "Site", Options: choices("", "", "All your sites")}},
 			Batch: []field{{Name: "count", ID: "batch-count", Label: "How many", Type: "number", Value: "30"}}, Markings: []field{{Name: "roll", ID: "marking-roll", Label: "Roll", Type: "text"}}},
-		"setup.html":  s.setupSample(),
-		"limits.html": s.limitsSample(),
+		"setup.html":          s.setupSample(),
+		"limits.html":         s.limitsSample(),
+		"import.html":         importPage{Frame: frameOf("Import a register", "sites"), Crumbs: []link{{Href: "/sites", Text: "Sites"}}, Heading: "Import a register", Lead: "CSV or XLSX.", Wrong: "The file is locked with a password.", Columns: []link{{Text: "Room"}, {Text: "Panel"}}},
+		"import_preview.html": previewSample(),
 		"people.html": peoplePage{Frame: frameOf("People", "people"), Heading: "3 people may sign in.", People: []peopleRow{
 			{Href: "/people/1", Name: "Manager 1", Role: "Manager", Sites: "All sites", Contact: "ext. 401", Active: true}, {Href: "/people/2", Name: "Crew 1", Role: "Crew", Sites: "Kiln Lane Day Clinic, Ottermoor Swim Hall", Active: true}, {Href: "/people/3", Name: "Auditor 2", Role: "Auditor", Sites: "Kiln Lane Day Clinic"}}},
 		"tray.html": trayPage{Frame: frameOf("Take in a phone's tray", ""), Problem: "Choose the file the phone saved first.", Report: &TrayReport{Records: 3, Stored: 1, Already: 1, Person: "Crew 1", Made: "2026-12-01T08:00:00.000Z",
@@ -205,7 +207,7 @@ func replace(v reflect.Value, name string, text *string) {
 	}
 }
 
-var rawKey = regexp.MustCompile(`\b(office|access|reading|reading_name|option|missing|caution|limit|limit_set|verdict|kind|task|unit|plan|state|flag|record|step)\.[a-z][a-z_.-]*`)
+var rawKey = regexp.MustCompile(`\b(office|access|reading|reading_name|option|missing|caution|limit|limit_set|verdict|kind|task|unit|plan|state|flag|record|step|intake)\.[a-z][a-z_.-]*`)
 
 func TestPages_EveryTemplateInEveryCondition(t *testing.T) {
 	s := pageServer(t)
@@ -309,7 +311,7 @@ func text(n *html.Node) string {
 	return b.String()
 }
 
-var officeKey = regexp.MustCompile(`[^d][( ]"(office\.[a-z0-9_.]*[a-z0-9_])"`) // not named("section", …)
+var officeKey = regexp.MustCompile(`[^d][( ]"((?:office|intake)\.[a-z0-9_.]*[a-z0-9_])"`) // not named("section", …)
 
 func TestWords_EveryOfficeKeyIsInTheCatalogue(t *testing.T) {
 	words, err := static.ReadWords("en")

@@ -24,6 +24,8 @@ const (
 	formLimit   = 256 << 10
 	pushLimit   = 512 << 10
 	importLimit = 64 << 20
+	// mappingLimit holds the form of a preview: every heading and every word of a large file.
+	mappingLimit = 512 << 10
 )
 
 // publicRoutes is everything the public face answers.
@@ -90,6 +92,11 @@ func publicRoutes() []route {
 		{post, "/instruments", manager, (*Server).instrumentCreate, 0},
 		{get, "/instruments/:instrument", manager, (*Server).instrumentEdit, 0},
 		{post, "/instruments/:instrument", manager, (*Server).instrumentUpdate, 0},
+		{get, "/import", manager, (*Server).importNew, 0},
+		{post, "/import", manager, (*Server).importTake, uploadBytes + mappingLimit},
+		{get, "/import/:upload", manager, (*Server).importShow, 0},
+		{post, "/import/:upload", manager, (*Server).importMend, mappingLimit},
+		{get, "/import/:upload/:file", manager, (*Server).importFile, 0},
 		{get, "/people", manager, (*Server).peopleShow, 0},
 		{get, "/people/new", manager, (*Server).personNew, 0},
 		{post, "/people", manager, (*Server).personCreate, 0},

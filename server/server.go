@@ -35,15 +35,16 @@ type Options struct {
 
 // Server serves one store.
 type Server struct {
-	store  *store.Store
-	log    *slog.Logger
-	alone  bool
-	words  *static.Words
-	assets *assets
-	pages  map[string]*template.Template
-	cross  *http.CrossOriginProtection
-	wrong  *wrongLinks
-	image  atomic.Pointer[store.Image] // the backup that is being taken away
+	store   *store.Store
+	log     *slog.Logger
+	alone   bool
+	words   *static.Words
+	assets  *assets
+	pages   map[string]*template.Template
+	cross   *http.CrossOriginProtection
+	wrong   *wrongLinks
+	image   atomic.Pointer[store.Image] // the backup that is being taken away
+	imports *importArea
 }
 
 // New reads the pages, the words and the files for browsers; all of them are embedded, so an error is a fault of the build.
@@ -52,7 +53,7 @@ func New(s *store.Store, o Options) (*Server, error) {
 	if err != nil {
 		return nil, err
 	}
-	srv := &Server{store: s, log: o.Log, alone: o.Alone, words: words, cross: http.NewCrossOriginProtection(), wrong: newWrongLinks()}
+	srv := &Server{store: s, log: o.Log, alone: o.Alone, words: words, cross: http.NewCrossOriginProtection(), wrong: newWrongLinks(), imports: newImportArea()}
 	if srv.log == nil {
 		srv.log = slog.New(slog.DiscardHandler)
 	}

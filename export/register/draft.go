@@ -98,7 +98,11 @@ func (p *planner) row(row Row) {
 	}
 	site, isNew, text := p.site(row)
 	if text != "" {
-		wrong("zone", "", text)
+		column := "zone"
+		if p.ask.NoNewSites {
+			column = "site"
+		}
+		wrong(column, "", text)
 		return
 	}
 	key := site.ID + "\x1f" + row.key()
@@ -166,6 +170,9 @@ func (p *planner) site(row Row) (site store.Site, isNew bool, text string) {
 			p.newSite(s)
 		}
 		return s, false, ""
+	}
+	if p.ask.NoNewSites {
+		return site, false, fmt.Sprintf("%s is not one of your sites. Ask a manager of all sites to register it, or correct the code.", row.Site)
 	}
 	f := p.first[row.Site]
 	if f.Zone == "" {

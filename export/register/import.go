@@ -22,6 +22,7 @@ type Ask struct {
 	Now            time.Time
 	Org            string // id of the organisation
 	Zone, Standard string // of new sites whose rows state none
+	NoNewSites     bool   // who imports may register no site
 }
 
 // Options of an import.
@@ -71,7 +72,8 @@ func Prepare(s *store.Store, name string, r io.Reader, o Options) (*Prepared, er
 		return nil, asRefusal(err)
 	}
 	p := &Prepared{options: o}
-	err = s.View(importScope(s, o.By), func(v *store.View) error {
+	scope := importScope(s, o.By)
+	err = s.View(scope, func(v *store.View) error {
 		sites, err := v.Sites()
 		if err != nil {
 			return err
@@ -79,7 +81,7 @@ func Prepare(s *store.Store, name string, r io.Reader, o Options) (*Prepared, er
 		if p.Reading, err = Read(book, o.Mapping, sites); err != nil {
 			return err
 		}
-		p.Plan, err = Drafts(v, o.By, p.Reading.Rows, Ask{Now: s.Now(), Org: s.Org(), Zone: o.Mapping.Zone, Standard: o.Mapping.Standard})
+		p.Plan, err = Drafts(v, o.By, p.Reading.Rows, Ask{Now: s.Now(), Org: s.Org(), Zone: o.Mapping.Zone, Standard: o.Mapping.Standard, NoNewSites: !scope.All})
 		return err
 	})
 	if err != nil {

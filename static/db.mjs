@@ -66,11 +66,13 @@ export function trayDB() {
     setMe: (name, value) => write("me", (store) => store.put(value, name)),
 
     drafts: () => use((db) => db.getAll("drafts")),
+    /** One record of this phone, whatever became of it. */
+    record: (id) => use((db) => db.get("records", id)),
     putDraft: (draft) => write("drafts", (store) => store.put(draft), { durability: "relaxed" }),
 
     /** What pages show: all that is not yet in a copy of the server's data. */
     records: () => use(async (db) => (await Promise.all(["waiting", "refused", "sent"].map((s) => db.getAllFromIndex("records", "state", s)))).flat()),
-    waiting: () => use((db) => db.getAllFromIndex("records", "state", "waiting")).then((rows) => rows.sort((a, b) => a.saved - b.saved || (a.id < b.id ? -1 : 1))),
+    waiting: () => use((db) => db.getAllFromIndex("records", "state", "waiting")).then((rows) => rows.sort((a, b) => a.saved - b.saved || (a.n ?? 0) - (b.n ?? 0) || (a.id < b.id ? -1 : 1))),
     settle: (id, receipt, at) => change(id, { state: "sent", receipt, sent_at: at }),
     /** Sent records that the copy of their site holds by now are only kept from here on. */
     cover: (ids) => write("records", async (store) => {
@@ -86,21 +88,26 @@ export function trayDB() {
     }),
 
     /**
-     * Makes one record and keeps it: counter, stamp and record change in one strict transaction, so n has no gap and no
-     * double. make({n, clock, installation, person}) → {row, clock} must not wait for anything.
+     * Makes records and keeps them together: counter, stamp, records and the end of their drafts change in one strict
+     * transaction, so n has no gap and no double. Each of makes is make({n, clock, installation, person}) → {row, clock}
+     * and must not wait for anything.
      */
-    keep: (log, draftKey, make) => use(async (db) => {
+    keep: (log, draftKeys, makes) => use(async (db) => {
       const tx = db.transaction(["me", "counter", "records", "drafts"], "readwrite", STRICT);
       try {
         const me = tx.objectStore("me"), counter = tx.objectStore("counter");
-        const [installation, person, clock, last] = await Promise.all([me.get("installation"), me.get("person"), me.get("clock"), counter.get(log)]);
-        const n = (last ?? 0) + 1;
-        const made = make({ n, clock, installation, person });
+        const [installation, person, before, last] = await Promise.all([me.get("installation"), me.get("person"), me.get("clock"), counter.get(log)]);
+        let n = last ?? 0, clock = before;
+        const rows = makes.map((make) => {
+          const made = make({ n: ++n, clock, installation, person });
+          clock = made.clock;
+          return { ...made.row, n };
+        });
         await Promise.all([
-          counter.put(n, log), me.put(made.clock, "clock"),
-          tx.objectStore("records").add(made.row), tx.objectStore("drafts").delete(draftKey), tx.done,
+          counter.put(n, log), me.put(clock, "clock"), ...rows.map((row) => tx.objectStore("records").add(row)),
+          ...draftKeys.map((key) => tx.objectStore("drafts").delete(key)), tx.done,
         ]);
-        return made.row;
+        return rows;
       } catch (e) {
         try { tx.abort(); } catch { /* already over */ }
         await tx.done.catch(() => {});

@@ -6,16 +6,21 @@ import { draftKey, isTouched, newDraft, withAnswers, withSeries } from "./draft.
 import { dayIn, showMoment } from "./days.mjs";
 import { entryBody, givenOf, summaryOf } from "./entry.mjs";
 import { walk } from "./flow.mjs";
-import { dueNow, nextDue, overlay, placeInRound, withOwn } from "./list.mjs";
+import { dueNow, overlay, placeInRound, withOwn } from "./list.mjs";
+import { criticalLoads } from "./dark-sweep.mjs";
+import { fieldWork } from "./field-doing.mjs";
+import { correctionBody } from "./correcting.mjs";
+import { nextInWalk } from "./walk-round.mjs";
 import { about, judgeWalked, limitSetFor } from "./judging.mjs";
 import { backQuestions, leavesOff, stillOff } from "./still-off.mjs";
-import { bareTag, toTest } from "./route.mjs";
+import { factsOf, withFacts } from "./own-facts.mjs";
+import { bareTag, toDevice, toTest } from "./route.mjs";
 import { titleOf } from "./field-parts.mjs";
 
 /** parts: {tray, say, draw(app), go(hash), now, make(kind, log, subject, body, at, facts), keepSending()}. */
 export function fieldApp(parts) {
   const { tray, say, draw, go, now } = parts;
-  const state = { me: {}, sites: new Map(), records: [], drafts: new Map(), route: { page: "sites" }, line: "empty", offset: 0, busy: true, saving: false, saved: null, trouble: null, persisted: undefined };
+  const state = { me: {}, sites: new Map(), records: [], own: new Set(), drafts: new Map(), route: { page: "sites" }, line: "empty", offset: 0, busy: true, saving: false, saved: null, trouble: null, persisted: undefined };
   let views = new Map(); // site log → the copy with own entries laid over
 
   const changed = () => { views = new Map(); draw(app); };
@@ -54,14 +59,15 @@ export function fieldApp(parts) {
     }, () => { state.trouble = say("field.draft_not_kept"); draw(app); });
   }
 
-  function openTest(id, task) {
+  /** key: of a draft that is not the device's own next test (a correction). */
+  function openTest(id, task, key = draftKey(id, task)) {
     const found = findDevice(id);
     const form = found && formsFor(found.site, found.device).find((f) => f.task === task);
     if (!form) return null;
     const { site, device, place } = found;
     const instruments = (site.snapshot.instruments ?? []).filter((i) => !i.retired);
     const remembered = instruments.some((i) => i.id === state.me.instrument) ? state.me.instrument : null;
-    const draft = state.drafts.get(draftKey(id, task)) ?? newDraft({ device: id, task, log: site.log, form: form.form, instrument: remembered, now: now() });
+    const draft = state.drafts.get(key) ?? newDraft({ device: id, task, log: site.log, form: form.form, instrument: remembered, now: now() });
     const instrument = instruments.find((i) => i.id === draft.instrument) ?? null;
     const limitSet = limitSetFor(device, form, site.snapshot.limit_sets);
     const given = givenOf({ device, form, limitSet, instrument: form.task === "button" ? null : instrument });
@@ -72,7 +78,8 @@ export function fieldApp(parts) {
     return {
       site, device, place, form, draft, instruments, limitSet, given, walked, verdict, today: site.today,
       firstInRoom: !site.devices.some((d) => sameRoom(site, d, place) && Object.values(d.last ?? {}).some((l) => l.day === site.today)),
-      round: placeInRound(site.devices, id, task, site.today), next: nextDue(site.devices, id, task, site.today),
+      round: placeInRound(site.devices, id, task, site.today), next: draft.corrects ? null : nextInWalk(site.devices, id, task, site.today, app.skipped(site)),
+      loads: criticalLoads(site.devices, site.places, device),
       about(ask) {
         const said = about(judged, walked, verdict, ask);
         return { ...said, last: lastOf(device.last?.[task], ask, walked.readings), folded: folds(ask, said.bounds) && !(state.me.unfolded ?? []).includes(ask.reading) };
@@ -90,20 +97,22 @@ export function fieldApp(parts) {
     const at = now(), day = dayIn(corrected(), site.snapshot.site.zone);
     const title = titleOf(app, device, test.place);
     try {
-      const row = await tray.keep(site.log, draft.key, (facts) => {
-        const body = entryBody({ form, given, readings: walked.readings, series: walked.series, person: facts.person, note: draft.note.trim(),
-          shown: { result: verdict.result, limit_rev: given.limit_rev ?? 0, judge: parts.judgeVersion } });
-        const made = parts.make({ kind: "entry.made", log: site.log, subject: device.id, at, body, offset: state.offset ?? 0, ...facts });
+      const [row] = await tray.keep(site.log, [draft.key], [(facts) => {
+        const judged = { result: verdict.result, limit_rev: given.limit_rev ?? 0, judge: parts.judgeVersion };
+        const body = draft.corrects ? correctionBody({ draft, readings: walked.readings, series: walked.series, given, was: draft.instrument_was }) : entryBody({ form, given, readings: walked.readings, series: walked.series, person: facts.person, note: draft.note.trim(),
+          shown: judged, photos: draft.photos });
+        const made = parts.make({ kind: draft.corrects ? "entry.corrected" : "entry.made", log: site.log, subject: draft.corrects ?? device.id, at, body, offset: state.offset ?? 0, ...facts });
         return { clock: made.clock, row: { id: made.id, log: site.log, record: made.record, state: "waiting", saved: at,
-          summary: { ...summaryOf({ entry: made.id, device: device.id, task: form.task, day, result: verdict.result, readings: walked.readings }), title } } };
-      });
+          summary: { ...(draft.corrects ? { corrects: true } : {}), ...summaryOf({ entry: draft.corrects ?? made.id, device: device.id, task: form.task, day: draft.corrects ? dayIn(draft.made_at, site.snapshot.site.zone) : day, result: verdict.result, readings: walked.readings }), title } } };
+      }], draft.photos ?? []);
+      state.own.add(row.id);
       state.records.push(row);
       state.drafts.delete(draft.key);
       state.saved = { what: title, result: verdict.result };
       state.trouble = null;
       state.saving = false;
       views = new Map();
-      go(test.next ? toTest(test.next.id, form.task) : `#/site/${encodeURIComponent(site.snapshot.site.code)}`, { keep: true });
+      go(draft.corrects ? toDevice(device.id) : test.next ? toTest(test.next.id, form.task) : `#/site/${encodeURIComponent(site.snapshot.site.code)}`, { keep: true });
       parts.keepSending();
     } catch (e) {
       state.saving = false;
@@ -112,7 +121,45 @@ export function fieldApp(parts) {
     }
   }
 
+  /**
+   * Keeps register records of one site together, strictly: facts [{kind, subject, body, title}]. drafts: keys that end with
+   * them. Resolves to whether they are kept; a failure is said on the page.
+   */
+  async function write(site, facts, { drafts = [], said } = {}) {
+    if (state.saving) return false;
+    state.saving = true;
+    draw(app);
+    const at = now();
+    try {
+      const rows = await tray.keep(site.log, drafts, facts.map(({ title, summary, ...fact }) => (own) => {
+        const made = parts.make({ ...fact, log: site.log, at, offset: state.offset ?? 0, ...own });
+        return { clock: made.clock, row: { id: made.id, log: site.log, record: made.record, state: "waiting", saved: at, clock: made.clock,
+          ...(summary ? { summary: { ...summary(made.id), title } } : { fact: { ...fact, title: title ?? said } }) } };
+      }));
+      for (const row of rows) if (row.summary) state.own.add(row.id);
+      state.records.push(...rows);
+      for (const key of drafts) state.drafts.delete(key);
+      state.saved = said ? { what: said } : null;
+      state.trouble = null;
+      state.saving = false;
+      changed();
+      parts.keepSending();
+      return true;
+    } catch (e) {
+      state.saving = false;
+      state.trouble = say(e?.name === "QuotaExceededError" ? "field.full" : "field.not_kept");
+      draw(app);
+      return false;
+    }
+  }
+
   const app = {
+    write, record: (id) => tray.record(id), newId: () => parts.newId(), go,
+    remember(name, value) {
+      state.me[name] = value;
+      tray.setMe(name, value).catch(() => {}); // a convenience only
+      draw(app);
+    },
     say, state, now, openTest, findDevice, formsFor, save, changed,
     corrected,
     get off() {
@@ -171,7 +218,7 @@ export function fieldApp(parts) {
     sendNow: () => parts.keepSending(),
     touched: isTouched,
   };
-  return app;
+  return Object.assign(app, fieldWork(app, { ...parts, putDraft, siteView, formsFor, openTest, changed }));
 }
 
 /** Optional measurements and long choices no must limit waits for are one line until somebody wants them. */
@@ -204,8 +251,9 @@ function indexOf(snapshot) {
 /** A site's copy as the pages read it, own entries laid over. */
 function readSite(row, records, today) {
   const { snapshot, log, taken } = row;
-  const { places, at } = indexOf(snapshot);
-  const devices = snapshot.devices.slice();
-  for (const [id, own] of overlay(records.filter((r) => r.log === log))) if (at.has(id)) devices[at.get(id)] = withOwn(devices[at.get(id)], own);
+  const mine = records.filter((r) => r.log === log), facts = factsOf(mine), copy = indexOf(snapshot);
+  const { places, devices: read } = withFacts(snapshot, facts, copy.places);
+  const devices = read.slice(), at = facts.length === 0 ? copy.at : new Map(read.map((d, i) => [d.id, i]));
+  for (const [id, own] of overlay(mine)) if (at.has(id)) devices[at.get(id)] = withOwn(devices[at.get(id)], own);
   return { log, taken, snapshot, today, devices, places, device: (id) => devices[at.get(id)] };
 }

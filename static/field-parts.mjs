@@ -49,7 +49,7 @@ function Notices({ app }) {
     ${state.line === "signed-out" && html`<p class="notice" role="status">${say("field.signed_out")} <a href=${`/in?next=${encodeURIComponent("/field" + (globalThis.location?.hash ?? ""))}`}>${say("field.sign_in")}</a></p>`}
     ${state.line === "trouble" && html`<p class="notice" role="status">${state.said ?? say("field.line.trouble")}</p>`}
     ${state.trouble && html`<p class="notice bad" role="alert">${state.trouble}</p>`}
-    ${state.saved && html`<p class=${`saved ${markOf(state.saved.result)}`} role="status"><${Mark} verdict=${state.saved.result}>${say(`verdict.${state.saved.result}`)}<//> ${say("field.saved", { what: state.saved.what })}</p>`}</div>`;
+    ${state.saved && html`<p class=${`saved ${state.saved.result ? markOf(state.saved.result) : ""}`} role="status">${state.saved.result && html`<${Mark} verdict=${state.saved.result}>${say(`verdict.${state.saved.result}`)}<//>`} ${say("field.saved", { what: state.saved.what })}</p>`}</div>`;
 }
 
 /** Foot of every page: what is kept on this phone, and the one main button where the page has one. */

@@ -5,7 +5,10 @@ import { Ask } from "./field-ask.mjs";
 import { contextOf, Foot, Mark, titleOf, Where } from "./field-parts.mjs";
 import { fillMissing, quickAnswers, rowId } from "./flow.mjs";
 import { conditionKey, isTouched, seriesAnswers } from "./draft.mjs";
-import { toDevice } from "./route.mjs";
+import { Reason } from "./field-correct.mjs";
+import { ResetsAt } from "./field-dark.mjs";
+import { Photos } from "./field-photo.mjs";
+import { toDevice, toTest } from "./route.mjs";
 import { showNumber } from "./number.mjs";
 import { missingReasons } from "./reading.mjs";
 import { showDay } from "./days.mjs";
@@ -19,7 +22,8 @@ export function TestPage({ app, test }) {
   const set = (answers, more) => app.answers(draft, answers, more);
   const quickDone = form.quick && sameAnswers(draft.answers, quickAnswers(form));
   const open = walked.open.length;
-  const ready = isTouched(draft) && open === 0 && walked.broken.length === 0;
+  const unreasoned = draft.corrects && draft.reason.trim() === "";
+  const ready = isTouched(draft) && open === 0 && walked.broken.length === 0 && !unreasoned;
   const fill = (reason) => {
     const { answers, series } = fillMissing(walked, draft, reason);
     set(answers, { series });
@@ -27,15 +31,16 @@ export function TestPage({ app, test }) {
   const save = () => {
     if (ready) return app.save(test);
     setAsked(true);
-    const id = walked.broken[0] ?? walked.open[0]?.id;
+    const id = walked.broken[0] ?? walked.open[0]?.id ?? (unreasoned ? "reason" : undefined);
     requestAnimationFrame(() => (document.getElementById(`ask-${id}`) ?? document.querySelector("main")).scrollIntoView({ block: "center" }));
   };
   return html`
     <${Where} app=${app} title=${titleOf(app, device, place)} tag=${device.tag} context=${contextOf(app, device, place)}
       progress=${test.round.of > 1 ? say("field.place_in_round", { n: test.round.n, of: test.round.of }) : ""} back=${toDevice(device.id)} />
     <main>
-      <h2 class="task">${say(`task.${form.task}`)}</h2>
-      <${CriticalLoad} app=${app} place=${place} />
+      <h2 class="task">${draft.corrects ? say("correct.title", { task: say(`task.${form.task}`) }) : say(`task.${form.task}`)}</h2>
+      ${test.loads.length > 0 && html`<p class="caution"><b>${say("field.critical_load", { load: test.loads.join("; ") })}</b> ${say("field.critical_load_do")}</p>`}
+      ${walked.readings.found?.value === "no-power" && html`<${ResetsAt} app=${app} device=${device} />`}
       ${form.quick && !detailed
         ? html`<${Quick} app=${app} form=${form} test=${test} done=${quickDone} set=${set} open=${() => set({}, { detailed: true })} />`
         : html`
@@ -45,17 +50,21 @@ export function TestPage({ app, test }) {
       ${detailed && open > 0 && (isTouched(draft) || asked) && html`<${Rest} app=${app} open=${open} asked=${asked} fill=${fill} />`}
       ${(detailed || quickDone) && html`<section class="ask"><label class="q" for="note">${say("field.note")}</label>
         <textarea id="note" rows="2" value=${draft.note} onInput=${(e) => app.note(draft, e.currentTarget.value)}></textarea></section>`}
+      ${draft.corrects ? html`<${Reason} app=${app} draft=${draft} />` : (detailed || quickDone) && html`<${Photos} app=${app} draft=${draft} />`}
+      ${!draft.corrects && test.next && html`<p class="pad"><button type="button" class="link" onClick=${() => pass(app, test)}>${say("walk.skip")}</button></p>`}
     </main>
-    <${Foot} app=${app}><button type="button" class="big go" aria-disabled=${String(!ready)} disabled=${app.state.saving} onClick=${save}>${say(test.next ? "field.save_next" : "field.save")}</button><//>`;
+    <${Foot} app=${app}><button type="button" class="big go" aria-disabled=${String(!ready)} disabled=${app.state.saving} onClick=${save}>${say(draft.corrects ? "correct.keep" : test.next ? "field.save_next" : "field.save")}</button><//>`;
+}
+
+/** On to the next outlet without an entry; this one stays due and is counted as passed over. */
+function pass(app, test) {
+  app.skip(test.site, test.device);
+  app.go(toTest(test.next.id, test.form.task));
 }
 
 const sameAnswers = (a, b) => Object.keys(a).length === Object.keys(b).length && Object.keys(b).every((k) => a[k]?.pick === b[k].pick);
 
 const usesInstrument = (form) => form.steps.some((s) => s.asks.some((a) => a.type === "number"));
-
-function CriticalLoad({ app, place }) {
-  return place?.critical_load ? html`<p class="caution"><b>${app.say("field.critical_load", { load: place.critical_load })}</b> ${app.say("field.critical_load_do")}</p>` : null;
-}
 
 /** The one-tap form: one button writes exactly the answers it states. What must be known before the TEST stands above it,
  *  in full for the first test in a room; what matters afterwards stands below. */

@@ -7,6 +7,7 @@ import { exchange } from "./exchange.mjs";
 import { fieldApp } from "./field-app.mjs";
 import { DevicePage, DevicesPage, LostPage, SitesPage, TrayPage } from "./field-lists.mjs";
 import { TestPage } from "./field-test.mjs";
+import { WorkPage } from "./field-work.mjs";
 import { JudgeVersion } from "./judge.mjs";
 import { makeRecord } from "./making.mjs";
 import { newId } from "./record.mjs";
@@ -35,12 +36,10 @@ function Page({ app }) {
       const test = app.openTest(route.device, route.task);
       return test ? html`<${TestPage} app=${app} test=${test} key=${test.draft.key} />` : html`<${LostPage} app=${app} text=${say("field.device_not_here")} />`;
     }
-    case "tag":
-      return html`<${LostPage} app=${app} text=${say("field.tag_not_here")} />`;
     case "tray":
       return html`<${TrayPage} app=${app} />`;
     default:
-      return html`<${SitesPage} app=${app} />`;
+      return WorkPage({ app }) ?? html`<${SitesPage} app=${app} />`;
   }
 }
 
@@ -64,7 +63,7 @@ async function start() {
     if (location.hash === hash) onRoute();
     else location.hash = hash;
   };
-  const app = fieldApp({ tray, say, draw, go, now, make: makeRecord, judgeVersion: JudgeVersion, keepSending: () => sender.kick(), takeOver: () => sync.takeOver(), leave: (path) => location.assign(path) });
+  const app = fieldApp({ tray, say, draw, go, now, make: makeRecord, newId: () => newId(now()), judgeVersion: JudgeVersion, keepSending: () => sender.kick(), takeOver: () => sync.takeOver(), leave: (path) => location.assign(path) });
   const sync = syncing({ state: app.state, tray, along, net: exchange({ fetch: (...a) => fetch(...a), now }), now, newId: () => newId(now()), changed: app.changed });
   const sender = sending({ run: () => alone(sync.run), later: (fn, ms) => setTimeout(fn, ms), cancel: clearTimeout, random: Math.random });
   const version = versions({ container: navigator.serviceWorker, calm: () => isCalm(app.state), session: sessionStorage, now,
@@ -110,7 +109,7 @@ function followTag(app) {
 }
 
 async function readKept(state, tray, along) {
-  for (const name of ["installation", "token", "person", "name", "logs", "instrument", "unfolded", "offset"]) state.me[name] = await tray.me(name);
+  for (const name of ["installation", "token", "person", "name", "logs", "instrument", "unfolded", "offset", "last_added", "rounds"]) state.me[name] = await tray.me(name);
   state.offset = state.me.offset ?? 0;
   for (const row of await along.sites()) state.sites.set(row.log, row);
   state.records = await tray.records();

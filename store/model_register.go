@@ -173,6 +173,7 @@ type thing struct {
 	id     id16
 	born   int64
 	fields []thingField
+	said   []byte // who said what and when, as packed
 }
 
 type thingField struct {
@@ -192,7 +193,26 @@ func unpackThing(b []byte) (thing, error) {
 		name, value := fieldName(u.bytes()), u.bytes()
 		t.fields = append(t.fields, thingField{name, value})
 	}
+	t.said = u.b
 	return t, u.err()
+}
+
+// seen gives the largest stamp of all that was said of the thing: what somebody knew of it who knows this row.
+func (t *thing) seen() uint64 {
+	var last uint64
+	u := unpacker{b: t.said}
+	for range t.fields {
+		for j, said := uint64(0), u.uint(); j < said && !u.bad; j++ {
+			last = max(last, u.fixed())
+			u.id()
+			u.id()
+			u.uint()
+			if j > 0 {
+				u.bytes()
+			}
+		}
+	}
+	return last
 }
 
 // fieldNames spares a list the making of the same names over and over.

@@ -14,6 +14,7 @@ type Place struct {
 	Order                                 float64 // walking order within the room
 	CriticalLoad                          string
 	WhomToTell                            string // before TEST is pressed here
+	seen                                  uint64 // largest stamp of what is said of it
 }
 
 // Context gives "Ground floor · Kitchen" style context without the spot's name.
@@ -24,7 +25,7 @@ func (p Place) Context() string {
 
 func placeOf(site string, t *thing) *Place {
 	return &Place{ID: t.id.String(), Site: site, Building: t.text("building"), Floor: t.text("floor"), Room: t.text("room"),
-		Name: t.text("name"), Order: t.number("order"), CriticalLoad: plainText(t.value("critical_load")), WhomToTell: t.text("whom_to_tell")}
+		Name: t.text("name"), Order: t.number("order"), CriticalLoad: plainText(t.value("critical_load")), WhomToTell: t.text("whom_to_tell"), seen: t.seen()}
 }
 
 // Places gives a site's places in walking order.

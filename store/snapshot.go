@@ -41,6 +41,7 @@ type SnapshotPlace struct {
 	Room         string `json:"room,omitempty"`
 	Name         string `json:"name"`
 	CriticalLoad string `json:"critical_load,omitempty"`
+	Seen         string `json:"seen,omitempty"` // largest stamp of what is said of it
 }
 
 // SnapshotDevice is a device with what a phone needs to ask, judge and show. Fields holds the merged register fields as
@@ -56,6 +57,7 @@ type SnapshotDevice struct {
 	Fields  map[string]any `json:"fields"`
 	// LimitSet stands for the device's kind here, where that is not what the program ships for it.
 	LimitSet string `json:"limit_set,omitempty"`
+	Seen    string         `json:"seen,omitempty"` // largest stamp of what is said of it, for the seen of a change
 	// Last by task: newest test, with its numbers for the dashed mark on the scale.
 	Last map[string]SnapshotLast `json:"last,omitempty"`
 	Due  []SnapshotDue           `json:"due,omitempty"`
@@ -99,7 +101,7 @@ func (v *View) Snapshot(site string, on forms.Day) (Snapshot, error) {
 		return s, err
 	}
 	for _, p := range places {
-		s.Places = append(s.Places, SnapshotPlace{p.ID, p.Building, p.Floor, p.Room, p.Name, p.CriticalLoad})
+		s.Places = append(s.Places, SnapshotPlace{p.ID, p.Building, p.Floor, p.Room, p.Name, p.CriticalLoad, seenText(p.seen)})
 	}
 	if s.Devices, err = v.snapshotDevices(sv, on); err != nil {
 		return s, err
@@ -150,7 +152,7 @@ func (v *View) snapshotDevices(sv *siteView, on forms.Day) ([]SnapshotDevice, er
 }
 
 func (v *View) snapshotDevice(sv *siteView, t *thing, w *work, on forms.Day) (SnapshotDevice, Place, error) {
-	d := SnapshotDevice{ID: t.id.String(), Kind: t.text("kind"), Fields: make(map[string]any, len(t.fields))}
+	d := SnapshotDevice{ID: t.id.String(), Kind: t.text("kind"), Fields: make(map[string]any, len(t.fields)), Seen: seenText(t.seen())}
 	for i := range t.fields {
 		if f := &t.fields[i]; !strings.HasPrefix(f.name, "#") && present(f.value) != nil {
 			d.Fields[f.name] = json.RawMessage(append([]byte(nil), f.value...))
@@ -237,4 +239,12 @@ func (v *View) limitSetsOn(sv *siteView, on forms.Day) []*forms.LimitSet {
 		}
 	}
 	return out
+}
+
+// seenText writes a stamp, "" where nothing was said.
+func seenText(clock uint64) string {
+	if clock == 0 {
+		return ""
+	}
+	return record.ClockText(clock)
 }

@@ -1,0 +1,119 @@
+// What the pages of work do: search, labels, drafts of a page, rounds, whole rooms, sweeps, corrections. Laid beside the
+// app's own state and actions.
+
+import { dayIn } from "./days.mjs";
+import { correctionDraft, correctionKey } from "./correcting.mjs";
+import { darkEntry, darkForm, sweepFacts } from "./dark-sweep.mjs";
+import { entryBody, summaryOf } from "./entry.mjs";
+import { titleOf } from "./field-parts.mjs";
+import { limitSetFor } from "./judging.mjs";
+import { dueNow } from "./list.mjs";
+import { fedBy } from "./register-work.mjs";
+import { lockedEntry } from "./room-locked.mjs";
+import { bareTag } from "./route.mjs";
+
+/** app: the state's readers and `write`; parts: what the app itself was given, with its own inner functions. */
+export function fieldWork(app, parts) {
+  const { state, say } = app, { tray, now, siteView, formsFor } = parts;
+
+  function findByTag(tag) {
+    for (const log of state.sites.keys()) {
+      const site = siteView(log), device = site.devices.find((d) => d.tag && bareTag(d.tag) === tag);
+      if (device) return { site, device, place: site.places.get(device.place) };
+    }
+    return null;
+  }
+
+  function pageDraft(key) {
+    return state.drafts.get(key)?.fields;
+  }
+
+  /** An entry made without its own page: of a locked room, of an outlet that went dark. */
+  function entryFact(site, device, form, made) {
+    const { given, readings, series, verdict } = made, day = dayIn(app.corrected(), site.snapshot.site.zone);
+    return { kind: "entry.made", subject: device.id, title: titleOf(app, device, site.places.get(device.place)),
+      body: entryBody({ form, given, readings, series, person: state.me.person, note: made.note ?? "", shown: { result: verdict.result, limit_rev: given.limit_rev ?? 0, judge: parts.judgeVersion } }),
+      summary: (id) => summaryOf({ entry: id, device: device.id, task: form.task, day, result: verdict.result, readings }) };
+  }
+
+  const setOf = (site, device, form) => limitSetFor(device, form, site.snapshot.limit_sets);
+
+  /** The round of a site on its day; another day begins a new one. */
+  function roundOf(site) {
+    const round = state.me.rounds?.[site.log];
+    return round?.day === site.today ? round : { day: site.today, skipped: [], proved: {} };
+  }
+  const setRound = (site, change) => app.remember("rounds", { ...state.me.rounds, [site.log]: { ...roundOf(site), ...change } });
+
+  return {
+    findByTag, pageDraft, roundOf,
+    /** Devices of all sites that answer to test(device, place), at most a number. */
+    search(test, most) {
+      const found = [];
+      for (const log of state.sites.keys()) {
+        const site = siteView(log);
+        for (const device of site.devices) {
+          const place = site.places.get(device.place);
+          if (test(device, place)) found.push({ site, device, place });
+          if (found.length >= most) return found;
+        }
+      }
+      return found;
+    },
+    titleById(id) {
+      const found = app.findDevice(id);
+      return found ? titleOf(app, found.device, found.place) : "";
+    },
+    formFor: (site, kind, task) => formsFor(site, { kind }).sort((a, b) => Number(b.task === task) - Number(a.task === task))[0],
+    feeds: (site, device) => fedBy(site.devices, device.id).map((d) => ({ device: d, place: site.places.get(d.place) })),
+    /** What is typed on a page of work is kept like a test's draft, until the page's records are. */
+    setPageDraft: (key, site, fields) => parts.putDraft({ key, device: null, task: "page", log: site.log, form: "", started: now(), changed: now(), answers: {}, series: [], note: "", fields }),
+
+    skipped: (site) => new Set(roundOf(site).skipped),
+    skip: (site, device) => setRound(site, { skipped: [...new Set([...roundOf(site).skipped, device.id])] }),
+    unskip: (site) => setRound(site, { skipped: [] }),
+    /** works null takes it back. */
+    prove: (site, end, works) => setRound(site, { proved: { ...roundOf(site).proved, [end]: works === null ? undefined : { at: now(), works } } }),
+    async closeRound(site, counts) {
+      const round = roundOf(site), proved = Object.fromEntries(Object.entries(round.proved).filter(([, p]) => p).map(([end, p]) => [end, { at: new Date(p.at).toISOString(), works: p.works }]));
+      const body = { day: site.today, ...counts, proved, ...(state.me.instrument ? { instrument: state.me.instrument } : {}) };
+      if (!(await app.write(site, [{ kind: "round.closed", subject: app.newId(), body }], { said: say("walk.round_of", { what: site.snapshot.site.name }) }))) return false;
+      const rest = { ...state.me.rounds };
+      delete rest[site.log];
+      app.remember("rounds", rest);
+      return true;
+    },
+
+    /** One reason for every due test of these devices. */
+    keepLocked(site, devices, reason, room) {
+      const facts = devices.flatMap((device) => dueNow(device, site.today).map((due) => formsFor(site, device).find((f) => f.task === due.task)).filter(Boolean)
+        .map((form) => entryFact(site, device, form, lockedEntry({ device, form, limitSet: setOf(site, device, form), reason }))));
+      return app.write(site, facts, { said: say("walk.room_kept", { what: room }) });
+    },
+
+    /** What went dark behind a protector: an entry for each, its place on the map, and a defect where protection was lost. */
+    keepDark(site, protector, rows, key) {
+      const entries = rows.filter((r) => r.said === "dark").map((r) => [r.device, darkForm(site.snapshot.forms, r.device)]).filter(([, form]) => form)
+        .map(([device, form]) => entryFact(site, device, form, darkEntry({ device, form, limitSet: setOf(site, device, form) })));
+      const what = app.titleById(protector.id);
+      const facts = sweepFacts({ rows, protector, words: (d) => say("dark.defect", { what: app.titleById(d.id), protector: what }), newId: app.newId });
+      return app.write(site, [...facts.map((f) => ({ ...f, title: what })), ...entries], { drafts: [key], said: say("dark.kept", { what }) });
+    },
+
+    /** Opens a correction of an entry this phone made; false where it did not. */
+    async openCorrection(entry) {
+      if (state.drafts.has(correctionKey(entry))) return true;
+      const row = await tray.record(entry);
+      if (!row?.summary) return false;
+      const newer = state.records.findLast((r) => r.summary?.corrects && r.summary.entry === entry);
+      const draft = correctionDraft({ record: row.record, newer: newer && JSON.parse(newer.record).body, task: row.summary.task, now: now() });
+      parts.putDraft({ ...draft, instrument_was: draft.instrument });
+      return true;
+    },
+    correction(entry) {
+      const draft = state.drafts.get(correctionKey(entry));
+      return draft ? parts.openTest(draft.device, draft.task, draft.key) : null;
+    },
+    reason: (draft, reason) => parts.putDraft({ ...draft, reason, changed: now() }),
+  };
+}

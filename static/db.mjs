@@ -8,13 +8,16 @@ import { openDB, unwrap } from "./vendor/idb.mjs";
 const STRICT = { durability: "strict" };
 
 function openTray() {
-  return openDB("tray", 1, {
-    upgrade(db) {
-      db.createObjectStore("me"); // one value per name
-      db.createObjectStore("counter"); // log → n of the last record made here
-      const records = db.createObjectStore("records", { keyPath: "id" });
-      records.createIndex("state", "state");
-      db.createObjectStore("drafts", { keyPath: "key" });
+  return openDB("tray", 2, {
+    upgrade(db, before) {
+      if (before < 1) {
+        db.createObjectStore("me"); // one value per name
+        db.createObjectStore("counter"); // log → n of the last record made here
+        const records = db.createObjectStore("records", { keyPath: "id" });
+        records.createIndex("state", "state");
+        db.createObjectStore("drafts", { keyPath: "key" });
+      }
+      if (before < 2) db.createObjectStore("photos", { keyPath: "sha256" }).createIndex("state", "state"); // draft → waiting → sent, or refused
     },
   });
 }
@@ -66,6 +69,23 @@ export function trayDB() {
     setMe: (name, value) => write("me", (store) => store.put(value, name)),
 
     drafts: () => use((db) => db.getAll("drafts")),
+    photo: (sha256) => use((db) => db.get("photos", sha256)),
+    putPhoto: (row) => write("photos", async (store) => { if (!(await store.get(row.sha256))) await store.put(row); }),
+    dropPhoto: (sha256) => write("photos", async (store) => { if ((await store.get(sha256))?.state === "draft") await store.delete(sha256); }),
+    waitingPhotos: () => use((db) => db.getAllFromIndex("photos", "state", "waiting")).then((rows) => rows.sort((a, b) => a.saved - b.saved)),
+    settlePhoto: (sha256, at) => write("photos", async (store) => {
+      const row = await store.get(sha256);
+      if (row) await store.put({ ...row, state: "sent", sent_at: at });
+    }),
+    refusePhoto: (sha256, text) => write("photos", async (store) => {
+      const row = await store.get(sha256);
+      if (row) await store.put({ ...row, state: "refused", text });
+    }),
+    /** Drops photos sent before a moment. */
+    forgetPhotos: (before) => write("photos", async (store) => {
+      for (let c = await store.index("state").openCursor("sent"); c; c = await c.continue()) if (c.value.sent_at < before) await c.delete();
+    }),
+    recordIds: () => use((db) => db.getAllKeys("records")),
     /** One record of this phone, whatever became of it. */
     record: (id) => use((db) => db.get("records", id)),
     putDraft: (draft) => write("drafts", (store) => store.put(draft), { durability: "relaxed" }),
@@ -90,10 +110,10 @@ export function trayDB() {
     /**
      * Makes records and keeps them together: counter, stamp, records and the end of their drafts change in one strict
      * transaction, so n has no gap and no double. Each of makes is make({n, clock, installation, person}) → {row, clock}
-     * and must not wait for anything.
+     * and must not wait for anything. photos: names of those the records carry, which wait to be sent from then on.
      */
-    keep: (log, draftKeys, makes) => use(async (db) => {
-      const tx = db.transaction(["me", "counter", "records", "drafts"], "readwrite", STRICT);
+    keep: (log, draftKeys, makes, photos = []) => use(async (db) => {
+      const tx = db.transaction(["me", "counter", "records", "drafts", "photos"], "readwrite", STRICT);
       try {
         const me = tx.objectStore("me"), counter = tx.objectStore("counter");
         const [installation, person, before, last] = await Promise.all([me.get("installation"), me.get("person"), me.get("clock"), counter.get(log)]);
@@ -103,7 +123,9 @@ export function trayDB() {
           clock = made.clock;
           return { ...made.row, n };
         });
+        const shots = (await Promise.all(photos.map((sha) => tx.objectStore("photos").get(sha)))).filter(Boolean);
         await Promise.all([
+          ...shots.map((p) => tx.objectStore("photos").put({ ...p, log, state: p.state === "sent" ? "sent" : "waiting" })),
           counter.put(n, log), me.put(clock, "clock"), ...rows.map((row) => tx.objectStore("records").add(row)),
           ...draftKeys.map((key) => tx.objectStore("drafts").delete(key)), tx.done,
         ]);

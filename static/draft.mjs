@@ -9,7 +9,7 @@ export function newDraft({ device, task, log, form, instrument, now }) {
 
 /** Whether anything has been said in it. */
 export function isTouched(draft) {
-  return Boolean(draft.note) || Object.keys(draft.answers).length > 0 || draft.series.some((row) => Object.keys(row.answers ?? {}).length > 0);
+  return Boolean(draft.note) || (draft.photos ?? []).length > 0 || Object.keys(draft.answers).length > 0 || draft.series.some((row) => Object.keys(row.answers ?? {}).length > 0);
 }
 
 /** A draft with one answer set; undefined takes it back. The moment the power went off is remembered with it. */

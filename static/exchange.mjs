@@ -10,10 +10,10 @@ export function clockOffset(dateHeader, started, ended) {
 
 /** exchange({fetch, now}) → calls of the end points a phone needs. */
 export function exchange({ fetch, now }) {
-  async function call(path, { token, method = "GET", body } = {}) {
+  async function call(path, { token, method = "GET", body, type = "application/json" } = {}) {
     const headers = { Accept: "application/json" };
     if (token) headers.Authorization = `Bearer ${token}`;
-    if (body !== undefined) headers["Content-Type"] = "application/json";
+    if (body !== undefined) headers["Content-Type"] = type;
     const started = now();
     let answer;
     try {
@@ -35,6 +35,7 @@ export function exchange({ fetch, now }) {
     enrol: (installation) => call("/exchange/enrol", { method: "POST", body: JSON.stringify({ installation }) }),
     logs: (token) => call("/exchange/logs", { token }),
     snapshot: (token, site) => call(`/exchange/snapshot?log=${encodeURIComponent(site)}`, { token }),
+    photo: (token, { sha256, log, blob }) => call(`/exchange/photo?sha256=${sha256}&log=${encodeURIComponent(log)}`, { token, method: "POST", body: blob, type: "image/jpeg" }),
     push: (token, body) => call("/exchange/push", { token, method: "POST", body }),
   };
 }

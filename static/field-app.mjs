@@ -106,6 +106,7 @@ export function fieldApp(parts) {
           summary: { ...(draft.corrects ? { corrects: true } : {}), ...summaryOf({ entry: draft.corrects ?? made.id, device: device.id, task: form.task, day: draft.corrects ? dayIn(draft.made_at, site.snapshot.site.zone) : day, result: verdict.result, readings: walked.readings }), title } } };
       }], draft.photos ?? []);
       state.own.add(row.id);
+      state.photos = (state.photos ?? 0) + (draft.photos?.length ?? 0);
       state.records.push(row);
       state.drafts.delete(draft.key);
       state.saved = { what: title, result: verdict.result };
@@ -170,7 +171,7 @@ export function fieldApp(parts) {
     },
     get tray() {
       const count = (s) => state.records.filter((r) => r.state === s).length;
-      return { waiting: count("waiting"), refused: count("refused") };
+      return { waiting: count("waiting"), photos: state.photos ?? 0, refused: count("refused") };
     },
     /** Sites this person has, with what is known of each. */
     sites() {

@@ -9,6 +9,7 @@ import { titleOf } from "./field-parts.mjs";
 import { limitSetFor } from "./judging.mjs";
 import { dueNow } from "./list.mjs";
 import { fedBy } from "./register-work.mjs";
+import { MOST_PHOTOS } from "./photo.mjs";
 import { lockedEntry } from "./room-locked.mjs";
 import { bareTag } from "./route.mjs";
 
@@ -113,6 +114,17 @@ export function fieldWork(app, parts) {
     correction(entry) {
       const draft = state.drafts.get(correctionKey(entry));
       return draft ? parts.openTest(draft.device, draft.task, draft.key) : null;
+    },
+    photo: (sha) => tray.photo(sha),
+    async addPhoto(key, { sha256, blob }) {
+      await tray.putPhoto({ sha256, blob, state: "draft", saved: now() });
+      const draft = state.drafts.get(key) ?? parts.openTest(...key.split("|"))?.draft;
+      if (draft) parts.putDraft({ ...draft, photos: [...new Set([...(draft.photos ?? []), sha256])].slice(0, MOST_PHOTOS), changed: now() });
+    },
+    removePhoto(key, sha) {
+      const draft = state.drafts.get(key);
+      if (draft) parts.putDraft({ ...draft, photos: draft.photos.filter((p) => p !== sha), changed: now() });
+      tray.dropPhoto(sha).catch(() => {}); // room only; nothing names it any more
     },
     reason: (draft, reason) => parts.putDraft({ ...draft, reason, changed: now() }),
   };

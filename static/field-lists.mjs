@@ -61,7 +61,7 @@ export function DevicesPage({ app, site }) {
           ${back.length > 0 && html`<button type="button" aria-pressed=${String(all === "back" && !searching)} onClick=${() => { setAll("back"); setTyped(""); }}>${say("walk.filter_back", { n: back.length })}</button>`}
           <button type="button" aria-pressed=${String(all === "all" || searching)} onClick=${() => setAll("all")}>${say("field.filter_all", { n: site.devices.length })}</button></div>
       </div>
-      ${grouped(shown.slice(0, most), site.places).map((g) => html`<section key=${g.name} class="room"><h2 class="beside"><span>${g.name || say("field.no_place")}</span>${roomDue(g, site.today) > 0 && html`<a class="small" href=${`#/room/${encodeURIComponent(code)}/${g.devices[0].device.id}`}>${say("walk.room")}</a>`}</h2>
+      ${grouped(shown.slice(0, most), site.places).map((g) => html`<section key=${g.name} class="room"><h2 class="beside"><span>${g.name || say("field.no_place")}</span>${roomDue(g, site.today) > 1 && html`<a class="small" href=${`#/room/${encodeURIComponent(code)}/${g.devices[0].device.id}`}>${say("walk.room_link")}</a>`}</h2>
         <ul class="rows">${g.devices.map(({ device, place }) => html`<${DeviceRow} app=${app} key=${device.id} device=${device} place=${place} today=${site.today} />`)}</ul></section>`)}
       ${shown.length === 0 && html`<p class="hint pad">${say(error ? "scan.check_hint" : searching ? "field.nothing_found" : "field.nothing_due_hint")}</p>`}
       ${shown.length > most && html`<button type="button" class="big more" onClick=${() => setMost(most + PAGEFUL)}>${say("field.show_more", { n: Math.min(PAGEFUL, shown.length - most) })}</button>`}

@@ -55,7 +55,7 @@ function Notices({ app }) {
 /** Foot of every page: what is kept on this phone, and the one main button where the page has one. */
 export function Foot({ app, children }) {
   const { say, tray } = app;
-  const kept = tray.waiting > 0 ? say("field.kept", { n: tray.waiting }) : null;
+  const kept = tray.waiting > 0 ? say("field.kept", { n: tray.waiting }) : tray.photos > 0 ? say("photo.kept", { n: tray.photos }) : null;
   const refused = tray.refused > 0 ? say("field.refused_count", { n: tray.refused }) : null;
   return html`<footer class="foot"><a class="tray" href="#/tray">${app.state.line === "unreached" && html`<span>${say("field.no_signal")}</span>`}
     ${refused && html`<b class="bad">${refused}</b>`}${(kept || !refused) && html`<b>${kept ?? say("field.all_sent")}</b>`}</a>${children}</footer>`;

@@ -113,6 +113,8 @@ async function readKept(state, tray, along) {
   state.offset = state.me.offset ?? 0;
   for (const row of await along.sites()) state.sites.set(row.log, row);
   state.records = await tray.records();
+  state.own = new Set(await tray.recordIds());
+  state.photos = (await tray.waitingPhotos()).length;
   for (const draft of await tray.drafts()) state.drafts.set(draft.key, draft);
 }
 

@@ -1,10 +1,12 @@
 // One round of exchange: say who we are, send what waits, then take fresh copies of the sites. Storage and network are
 // passed in. Losing the right to a site drops its copy, never what waits. Pure.
 
+import { drainPhotos } from "./photo-queue.mjs";
 import { drain } from "./tray.mjs";
 
 const FRESH = 10 * 60_000; // a copy older than this is taken again
 const SOON = 2 * 60_000; // and after this already where something of ours went to its site; until then it is laid over the copy
+const KEEP_PHOTOS = 14 * 86_400_000; // sent photos stay this long
 const KEEP_SENT = 180 * 86_400_000; // acknowledged records stay this long, so that a restored server can be refilled
 
 /**
@@ -112,6 +114,12 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
     const sent = await drain({ storage, send: (body) => withToken((token) => net.push(token, body)), sentAt: () => new Date(now()).toISOString() });
     state.records = await tray.records();
     let line = sent.state;
+    if (line === "empty") { // photos follow the records that name them
+      const shots = await drainPhotos({ storage: { waitingPhotos: tray.waitingPhotos, settlePhoto: (sha) => tray.settlePhoto(sha, now()), refusePhoto: tray.refusePhoto }, send: (row) => withToken((token) => net.photo(token, row)) });
+      state.photos = (await tray.waitingPhotos()).length;
+      if (shots.state !== "empty") line = shots.state;
+      else await tray.forgetPhotos(now() - KEEP_PHOTOS);
+    }
     if (line === "empty" || line === "trouble") { // what cannot be sent just now does not keep fresh copies away
       await tray.forget(now() - KEEP_SENT);
       const fresh = await refreshSites();

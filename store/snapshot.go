@@ -57,7 +57,7 @@ type SnapshotDevice struct {
 	Fields  map[string]any `json:"fields"`
 	// LimitSet stands for the device's kind here, where that is not what the program ships for it.
 	LimitSet string `json:"limit_set,omitempty"`
-	Seen    string         `json:"seen,omitempty"` // largest stamp of what is said of it, for the seen of a change
+	Seen     string `json:"seen,omitempty"` // largest stamp of what is said of it, for the seen of a change
 	// Last by task: newest test, with its numbers for the dashed mark on the scale.
 	Last map[string]SnapshotLast `json:"last,omitempty"`
 	Due  []SnapshotDue           `json:"due,omitempty"`

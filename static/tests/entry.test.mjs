@@ -72,7 +72,7 @@ function phone(net, records = []) {
   const state = { me: {}, sites: new Map(), records, offset: 0 };
   const tray = { setMe: async (k, v) => { me[k] = v; }, waiting: async () => records.filter((r) => r.state === "waiting"), records: async () => records.filter((r) => r.state !== "kept"),
     settle: async (i, receipt) => Object.assign(records.find((r) => r.id === i), { state: "sent", receipt }), refuse: async () => {}, forget: async () => {},
-    cover: async (ids) => ids.forEach((i) => { covered.push(i); records.find((r) => r.id === i).state = "kept"; }) };
+    waitingPhotos: async () => [], forgetPhotos: async () => {}, cover: async (ids) => ids.forEach((i) => { covered.push(i); records.find((r) => r.id === i).state = "kept"; }) };
   const along = { put: async () => {}, drop: async (log) => { dropped.push(log); } };
   let n = 0;
   return { me, state, dropped, covered, ...syncing({ state, tray, along, net, now: () => 1000, newId: () => `installation-${++n}`, changed: () => {} }) };

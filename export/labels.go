@@ -50,7 +50,7 @@ func Labels(w io.Writer, how Printing, labels []Label) error {
 		return err
 	}
 	if len(labels) == 0 {
-		return &store.Error{Code: "not_found", Field: "site", Text: "There are no labels to print: no device here has a tag yet. Give the devices tags first."}
+		return &store.Error{Code: "not_found", Field: "site", Text: "There are no labels to print: no device here has a tag yet. Import the register again without --no-new-tags, or give each device a tag on its page."}
 	}
 	words, err := static.ReadWords("en")
 	if err != nil {

@@ -27,7 +27,7 @@ type importRegisterCmd struct {
 	SaveMap string `name:"save-map" placeholder:"FILE" help:"Write down how each column was read, to be corrected and given back with --map."`
 	Rejects string `name:"rejects" placeholder:"FILE" help:"Write the rows that were left out, with the reasons, as .csv or .xlsx."`
 	DryRun  bool   `name:"dry-run" help:"Only say what would be done."`
-	Tags    bool   `name:"new-tags" help:"Give every place of the file that has no tag a new one."`
+	Tags    bool   `name:"new-tags" negatable:"" default:"true" help:"Give every place of the file that has no tag a new one, ready for labels. --no-new-tags where pre-printed labels are put up instead."`
 }
 
 // Help gives an example.

@@ -30,6 +30,8 @@ func ownerRoutes() []route {
 		{post, "/own/backup", owner, (*Server).ownBackup, 0},
 		{get, "/own/backup", owner, (*Server).ownBackupTake, 0},
 		{post, "/own/backup/kept", owner, (*Server).ownBackupKept, 0},
+		{get, "/own/rules/:rules", owner, (*Server).ownRules, 0},
+		{post, "/own/rules/:rules", owner, (*Server).ownRulesImport, rulesLimit},
 		{get, "/own/check", owner, (*Server).ownCheck, 0},
 		{post, "/own/rebuild", owner, (*Server).ownRebuild, 0},
 	}

@@ -14,11 +14,17 @@ import (
 )
 
 type formsCmd struct {
+	List   formsListCmd   `cmd:"" default:"withargs" help:"List what is shipped; forms alone does the same."`
+	Export formsExportCmd `cmd:"" help:"Write forms to a file."`
+	Import formsImportCmd `cmd:"" help:"Take forms in from a file."`
+}
+
+type formsListCmd struct {
 	JSON bool `help:"Write one JSON document instead of text." name:"json"`
 }
 
 // Help is shown by --help.
-func (formsCmd) Help() string {
+func (formsListCmd) Help() string {
 	return `Lists the shipped device kinds and tasks, what each form asks, and every limit with its source and how far that source was seen.
 
 Examples:
@@ -56,7 +62,7 @@ func kindRows() []kindRow {
 }
 
 // Run lists what is shipped.
-func (c formsCmd) Run(e *env) error {
+func (c formsListCmd) Run(e *env) error {
 	if c.JSON {
 		enc := json.NewEncoder(e.stdout)
 		enc.SetEscapeHTML(false)

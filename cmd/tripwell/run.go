@@ -22,7 +22,8 @@ type cli struct {
 	Check    checkCmd    `cmd:"" help:"Read the whole store and say whether anything is wrong."`
 	Rebuild  rebuildCmd  `cmd:"" help:"Compute all lists anew from the records."`
 	Verdict  verdictCmd  `cmd:"" help:"Judge tests given as JSON lines."`
-	Forms    formsCmd    `cmd:"" help:"List device kinds, forms, readings and limits."`
+	Forms    formsCmd    `cmd:"" help:"List device kinds, forms, readings and limits; export and import forms."`
+	Limits   limitsCmd   `cmd:"" help:"Export and import limit sets."`
 	Version  versionCmd  `cmd:"" help:"Print the program's version."`
 }
 

@@ -74,7 +74,7 @@ func (r *rowReader) read(sheet string, line int, cells []intake.Cell) (row Row, 
 		if isDitto(cell.Text) && i < len(r.above) {
 			cell = intake.Cell{Text: r.above[i]}
 		}
-		if c == nil || cell.Text == "" {
+		if c == nil || isNothing(cell.Text) {
 			continue
 		}
 		if c.Name == statusColumn {
@@ -101,6 +101,15 @@ func (r *rowReader) read(sheet string, line int, cells []intake.Cell) (row Row, 
 // isDitto tells the marks by which people repeat the cell above.
 func isDitto(s string) bool {
 	return s == `"` || s == "''" || s == "\u3003" || s == "\u201d" || strings.EqualFold(s, "ditto") || strings.EqualFold(s, "do.")
+}
+
+// isNothing tells the marks people write into a cell of which they know nothing.
+func isNothing(s string) bool {
+	switch strings.ToLower(s) {
+	case "", "-", "--", "–", "—", "?", "??", "n/a", "n.a.", "na", "tbd", "unknown", "unk", "not known":
+		return true
+	}
+	return false
 }
 
 // isGone reads a status: the words by which registers keep devices that are no longer there.
@@ -149,11 +158,11 @@ func (r *rowReader) take(row *Row, c *Column, cell intake.Cell) string {
 	case "circuit":
 		return row.takeCircuit(cell)
 	case "panel_circuit":
-		i := strings.LastIndexAny(strings.TrimRight(cell.Text, " "), "/#:- ")
-		if i < 1 || cell.Date != nil {
+		panel, circuit, ok := partCircuit(cell.Text)
+		if !ok || cell.Date != nil {
 			return "This column holds a panel and a circuit, such as LP-1/14. Write both."
 		}
-		row.Panel, row.CircuitNo = strings.TrimRight(cell.Text[:i], " /#:-"), strings.TrimSpace(cell.Text[i+1:])
+		row.Panel, row.CircuitNo = panel, circuit
 	case "tag":
 		tag, ok := record.ParseTag(cell.Text)
 		if !ok {
@@ -162,6 +171,30 @@ func (r *rowReader) take(row *Row, c *Column, cell intake.Cell) string {
 		row.Tag = tag
 	}
 	return ""
+}
+
+// partCircuit parts a panel from its circuit: LP-1 / 14/16, LP-1/14, LP-1 14, LP-1-14, LP-1 #14.
+func partCircuit(s string) (panel, circuit string, ok bool) {
+	at, width := strings.Index(s, " / "), 3
+	for _, mark := range []string{"#", ":"} {
+		if at < 0 {
+			at, width = strings.Index(s, mark), 1
+		}
+	}
+	if at < 0 {
+		at = strings.LastIndex(s, " ")
+	}
+	if at < 0 {
+		at = strings.Index(s, "/")
+	}
+	if at < 0 {
+		at = strings.LastIndex(s, "-")
+	}
+	if at < 0 {
+		return "", "", false
+	}
+	panel, circuit = strings.TrimSpace(s[:at]), strings.TrimSpace(s[at+width:])
+	return panel, circuit, panel != "" && circuit != ""
 }
 
 // takeCircuit keeps the numbers of a circuit as they are written: 14, or 14/16 for two poles. Spreadsheets turn 10/12

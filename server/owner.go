@@ -32,6 +32,7 @@ func ownerRoutes() []route {
 		{post, "/own/backup/kept", owner, (*Server).ownBackupKept, 0},
 		{get, "/own/rules/:rules", owner, (*Server).ownRules, 0},
 		{post, "/own/rules/:rules", owner, (*Server).ownRulesImport, rulesLimit},
+		{post, "/own/import/readings", owner, (*Server).ownImportReadings, importLimit},
 		{get, "/own/check", owner, (*Server).ownCheck, 0},
 		{post, "/own/rebuild", owner, (*Server).ownRebuild, 0},
 	}

@@ -84,6 +84,9 @@ var abouts = []string{aboutSkip, paper.AboutTag, aboutSite, aboutBuilding, about
 // ParseColumn reads what a column is said to be: tag, day, "trip_time_ms", "trip_time_ms in s",
 // "trip_time_ms in s at multiple=5 phase_deg=180", "last button", "month 2026-03", skip.
 func ParseColumn(name string) (column, error) {
+	if name == "" {
+		return column{about: aboutSkip}, nil
+	}
 	bad := wrong("columns", fmt.Sprintf("%q is no column. Use one of: %s; a reading may state its unit, as in \"trip_time_ms in s\".", name, strings.Join(ColumnNames(), ", ")))
 	words := strings.Fields(name)
 	if len(words) == 0 {

@@ -87,7 +87,7 @@ func (p *planner) monthMark(cell intake.Cell, c column) (mark, *fault) {
 			met = true
 			continue
 		}
-		day, ambiguous, err := intake.ParseDate(word, p.ask.Order)
+		day, ambiguous, err := intake.ParseDate(word, p.ask.Dates)
 		if err != nil || ambiguous {
 			return p.wholeDate(text, m, first)
 		}
@@ -105,7 +105,7 @@ func (p *planner) monthMark(cell intake.Cell, c column) (mark, *fault) {
 
 // wholeDate takes a cell that is one date written in words.
 func (p *planner) wholeDate(text string, m mark, first forms.Day) (mark, *fault) {
-	day, _, err := intake.ParseDate(text, p.ask.Order)
+	day, _, err := intake.ParseDate(text, p.ask.Dates)
 	if err != nil {
 		return m, &fault{text: "This is no result, no day and no initials that can be understood. Write OK, fail, locked, or a date as 2026-12-31."}
 	}
@@ -160,7 +160,7 @@ func (p *planner) lastMark(cell intake.Cell) (mark, *fault) {
 		m.day, m.note = forms.Date(y, month, 1), text
 		return m, nil
 	}
-	day, _, err := intake.ParseDate(text, p.ask.Order)
+	day, _, err := intake.ParseDate(text, p.ask.Dates)
 	if err != nil {
 		return m, &fault{text: err.Error()}
 	}

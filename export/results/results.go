@@ -11,10 +11,16 @@
 package results
 
 import (
+	"bytes"
 	"context"
+	"errors"
 	"fmt"
+	"io"
+	"slices"
 	"strings"
 	"time"
+
+	"github.com/go-json-experiment/json"
 
 	"tripwell/export/intake"
 	"tripwell/forms"
@@ -28,20 +34,33 @@ const (
 	InstrumentFile = "instrument-file"
 )
 
-// Ask says how a file is taken in. The zero value of every field leaves it to the file.
+// Ask says how a file is taken in. The zero value of every field leaves it to the file. As JSON it can be kept beside
+// files of one shape: what their headings mean and how their dates are written.
 type Ask struct {
-	Past       bool              // what the file says was done before and not witnessed here: entry.imported
-	Site       string            // code of the site of rows that name none
-	Source     string            // paper | spreadsheet | instrument-file
-	ReadBy     string            // person (id or name) who read, in rows that name nobody
-	TypedBy    string            // person (id or name) who typed, in rows that name nobody
-	Instrument string            // name or serial of the instrument, in rows that name none
-	Task       string            // button | instrument | receptacle, in rows that do not say
-	Year       int               // of columns that name a month only; 0: as a title of the sheet says
-	Order      intake.Order      // day and month in dates of figures alone
-	Columns    map[string]string // what headings mean, heading → column (ParseColumn)
-	Doubted    bool              // take rows with doubtful values in as they stand
-	DryRun     bool              // say what would be done, write nothing
+	Past       bool              `json:"past,omitempty"`       // what the file says was done before and not witnessed here: entry.imported
+	Site       string            `json:"site,omitempty"`       // code of the site of rows that name none
+	Source     string            `json:"source,omitempty"`     // paper | spreadsheet | instrument-file
+	ReadBy     string            `json:"read_by,omitempty"`    // person (id or name) who read, in rows that name nobody
+	TypedBy    string            `json:"typed_by,omitempty"`   // person (id or name) who typed, in rows that name nobody
+	Instrument string            `json:"instrument,omitempty"` // name or serial of the instrument, in rows that name none
+	Task       string            `json:"task,omitempty"`       // button | instrument | receptacle, in rows that do not say
+	Year       int               `json:"year,omitempty"`       // of columns that name a month only; 0: as a title of the sheet says
+	Dates      intake.Order      `json:"dates,omitempty"`      // dmy or mdy, in dates of figures alone; "": ask where it matters
+	Columns    map[string]string `json:"columns,omitempty"`    // what headings mean, heading → column (ParseColumn); "": not read
+	Doubted    bool              `json:"doubted,omitempty"`    // take rows with doubtful values in as they stand
+	DryRun     bool              `json:"dry_run,omitempty"`    // say what would be done, write nothing
+}
+
+// ParseAsk reads an Ask as kept; empty is the zero value. Unknown names are refused: a misspelt one would be lost.
+func ParseAsk(raw []byte) (Ask, error) {
+	var ask Ask
+	if len(bytes.TrimSpace(raw)) == 0 {
+		return ask, nil
+	}
+	if err := json.Unmarshal(raw, &ask, json.RejectUnknownMembers(true)); err != nil {
+		return ask, wrong("map", `This does not say how a file is read. It is JSON such as {"dates":"dmy","columns":{"t":"trip_time_ms in s"}}.`)
+	}
+	return ask, nil
 }
 
 // What became of a row.
@@ -96,6 +115,23 @@ type Report struct {
 	Rest string `json:"rest,omitempty"`
 }
 
+// Kept is the ask that reads the next file of the same shape in the same way.
+func (r *Report) Kept(ask Ask) Ask {
+	kept := Ask{Dates: ask.Dates, Columns: map[string]string{}}
+	for _, h := range r.Headings {
+		kept.Columns[h.Heading] = h.Column
+	}
+	return kept
+}
+
+// Shorten leaves at most n outcomes in a report, first what is not in. The counts stay.
+func (r *Report) Shorten(n int) {
+	slices.SortStableFunc(r.Outcomes, func(a, b Outcome) int { return urgency[a.State] - urgency[b.State] })
+	r.Outcomes = r.Outcomes[:min(len(r.Outcomes), n)]
+}
+
+var urgency = map[string]int{LeftOut: 0, Doubt: 0, Parked: 0, Taken: 1, There: 2, Silent: 2}
+
 // Held counts the outcomes that are not in and should be looked at.
 func (r *Report) Held() int { return r.LeftOut + r.Doubted + r.Parked }
 
@@ -121,6 +157,16 @@ func Import(ctx context.Context, s *store.Store, by string, book *intake.Book, a
 		}
 	}
 	return p.report, nil
+}
+
+// Open reads a CSV or XLSX file; one that cannot be taken is a *store.Error that says so.
+func Open(name string, r io.Reader, caps intake.Caps) (*intake.Book, error) {
+	book, err := intake.Open(name, r, caps)
+	var refused *intake.Error
+	if errors.As(err, &refused) {
+		return nil, &store.Error{Code: refused.Code, Field: refused.Field, Text: refused.Text}
+	}
+	return book, err
 }
 
 // plan works out what a file comes to; nothing is written.
@@ -178,6 +224,9 @@ func (p *planner) checkAsk() error {
 		}
 		*who.name = id
 	}
+	if a.Dates != intake.UnknownOrder && a.Dates != intake.DMY && a.Dates != intake.MDY {
+		return wrong("dates", "Dates are dmy, with the day first, or mdy, with the month first. Choose one of these.")
+	}
 	p.columns = map[string]column{}
 	for heading, name := range a.Columns {
 		c, err := ParseColumn(name)
@@ -218,7 +267,7 @@ func (p *planner) person(name string) (id, why string) {
 	return id, ""
 }
 
-// atNoon is the moment of a test of which only the day is known: noon at the site, but never later than now.
+// moment is when a test was made; of one of which only the day is known it is noon at the site, but never later than now.
 func moment(day forms.Day, clock string, zone *time.Location, now time.Time) time.Time {
 	y, m, d := day.Time().Date()
 	hour, minute := 12, 0

@@ -4,7 +4,6 @@ import (
 	"bytes"
 	"context"
 	"encoding/csv"
-	"os"
 	"strconv"
 	"strings"
 	"testing"
@@ -16,7 +15,7 @@ import (
 	"tripwell/store/record"
 )
 
-// house is a real store with a clock of its own and the devices of the sample lists.
+// house is a real store with a clock of its own.
 type house struct {
 	*store.Store
 	t   testing.TB
@@ -38,9 +37,6 @@ func newHouse(t testing.TB) *house {
 		}
 		s.Close()
 	})
-	raw, err := os.ReadFile("../../testdata/results/register.csv")
-	h.must(err)
-	h.register(string(raw))
 	_, err = s.PutPerson(context.Background(), "", store.Person{Name: "Crew 1", Role: "crew", All: true, Active: true})
 	h.must(err)
 	h.must(h.append(store.Draft{Kind: "instrument.set", Log: "org", Subject: record.NamedID("instrument"), Body: map[string]any{

@@ -222,6 +222,7 @@ func ptr[T any](v T) *T { return &v }
 
 func TestSample_MonthlySheetAnchorsDates(t *testing.T) {
 	h := newHouse(t)
+	h.register(string(sampleFile(t, "register.csv")))
 	raw := sampleFile(t, "monthly.xlsx")
 	dry := h.bringRaw(raw, Ask{Past: true, Site: "BIRCH-9", DryRun: true})
 	if len(h.entries("BIRCH-9")) != 0 {
@@ -279,13 +280,14 @@ func (h *house) anchored(t *testing.T) {
 
 func TestSample_InstrumentFile(t *testing.T) {
 	h := newHouse(t)
+	h.register(string(sampleFile(t, "register.csv")))
 	raw := sampleFile(t, "instrument.csv")
 	ask := Ask{Source: InstrumentFile, ReadBy: "crew 1", Instrument: "TW-2207", DryRun: true}
 	// 06.10.2025 is two days: the file is not taken in before a person says which.
 	if r := h.bringRaw(raw, ask); r.LeftOut < 150 || !strings.Contains(r.Outcomes[0].Text, "day or the month") {
 		t.Errorf("left out %d: %+v", r.LeftOut, r.Outcomes[0])
 	}
-	ask.DryRun, ask.Order = false, intake.DMY
+	ask.DryRun, ask.Dates = false, intake.DMY
 	r := h.bringRaw(raw, ask)
 	if r.Rows < 190 || r.Taken != r.Rows-4 || r.Parked != 1 || r.Doubted != 1 || r.LeftOut != 2 {
 		t.Fatalf("rows %d, taken %d, parked %d, doubted %d, left out %d: %+v", r.Rows, r.Taken, r.Parked, r.Doubted, r.LeftOut, r.Outcomes)
@@ -308,7 +310,7 @@ func TestSample_InstrumentFile(t *testing.T) {
 	if back.Taken != 3 || back.Parked != 1 {
 		t.Errorf("corrected rows: taken %d, parked %d: %+v\n%s", back.Taken, back.Parked, back.Outcomes, r.Rest)
 	}
-	past := h.bringRaw(raw, Ask{Past: true, Source: InstrumentFile, Order: intake.DMY})
+	past := h.bringRaw(raw, Ask{Past: true, Source: InstrumentFile, Dates: intake.DMY})
 	if past.Taken != r.Taken {
 		t.Errorf("as past results: taken %d, want %d", past.Taken, r.Taken)
 	}

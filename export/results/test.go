@@ -230,7 +230,7 @@ func (p *planner) when(t *test) {
 	if cell.Date != nil {
 		t.day = *cell.Date
 	} else {
-		day, _, err := intake.ParseDate(cell.Text, p.ask.Order)
+		day, _, err := intake.ParseDate(cell.Text, p.ask.Dates)
 		if err != nil {
 			t.faults = append(t.faults, cellFault{r.sheet.heads[at], cell.Text, err.Error(), false})
 			return

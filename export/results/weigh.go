@@ -27,7 +27,7 @@ func (p *planner) weigh(t *test) {
 	}
 	left := func(column, value, text string) { p.holdTest(t, cellFault{column, value, text, false}) }
 	if why := p.taskOf(t); why != "" {
-		left(paper.AboutTask, t.row.text(paper.AboutTask), why)
+		left(t.row.head(paper.AboutTask), t.row.text(paper.AboutTask), why)
 		return
 	}
 	if t.day > t.site.today {
@@ -73,7 +73,7 @@ func (p *planner) taskOf(t *test) (why string) {
 		t.task = tasks[0]
 	case t.result != "" && t.head != "" && slices.Contains(tasks, forms.TaskButton) && t.underMonth():
 		t.task = forms.TaskButton // one column a month is how button tests are kept
-	case t.head == aboutAllWell:
+	case t.head == aboutAllWell, t.pressedOnly() && slices.Contains(tasks, forms.TaskButton):
 		t.task = forms.TaskButton
 	case len(t.readings) == 0 && len(t.series) == 0:
 		return "The row does not say which test was made. Add a column Test with button, instrument or receptacle, or say it for the whole file."
@@ -91,6 +91,19 @@ func (p *planner) taskOf(t *test) (why string) {
 func (t *test) underMonth() bool {
 	at := slices.Index(t.row.sheet.heads, t.head)
 	return at >= 0 && t.row.sheet.cols[at].about == aboutMonth
+}
+
+// pressedOnly reports that TEST or RESET was pressed and nothing measured.
+func (t *test) pressedOnly() bool {
+	pressed := false
+	for code := range t.readings {
+		known, _ := forms.CodeOf(code)
+		if known.Type == forms.TypeNumber {
+			return false
+		}
+		pressed = pressed || code == "button_trips" || code == "button_resets"
+	}
+	return pressed && len(t.series) == 0
 }
 
 // taskNamed reads a task as people write it.

@@ -24,6 +24,7 @@ type entryPage struct {
 	Notices             []notice
 	Readings            []readingShown
 	Note                string
+	Photos              []photoShown
 	Corrections         []correctionShown
 	Facts               []fact
 	Record              string
@@ -98,6 +99,7 @@ func (s *Server) buildEntry(v *store.View, e store.Entry, view *entryPage) error
 	}
 	view.Readings = s.readings(e, spans, before)
 	view.Note = e.Note
+	view.Photos = s.photosShown(v, e)
 	view.Corrections = s.corrections(v, e, site.Location())
 	view.Record = "/records/" + e.ID
 	if view.Facts, err = s.entryFacts(v, e, site); err != nil {

@@ -4,6 +4,8 @@ import (
 	"net/http"
 
 	"github.com/labstack/echo/v4"
+
+	"tripwell/store"
 )
 
 // route is one row of a table: how it is asked, who may ask, and who answers. body is the largest request body in bytes,
@@ -50,6 +52,7 @@ func publicRoutes() []route {
 		{post, "/exchange/enrol", crew | manager, (*Server).exchangeEnrol, 0},
 		{post, "/exchange/renew", phone, (*Server).exchangeRenew, 0},
 		{post, "/exchange/push", phone, (*Server).exchangePush, pushLimit},
+		{post, "/exchange/photo", phone, (*Server).exchangePhoto, store.PhotoBytes},
 		{get, "/exchange/pull", phone, (*Server).exchangePull, 0},
 		{post, "/exchange/ask", phone, (*Server).exchangeAsk, 0},
 		{get, "/exchange/logs", phone, (*Server).exchangeLogs, 0},
@@ -62,6 +65,7 @@ func publicRoutes() []route {
 		{get, "/sites/:site", signed, (*Server).siteShow, 0},
 		{get, "/devices/:device", signed, (*Server).deviceShow, 0},
 		{get, "/entries/:entry", signed, (*Server).entryShow, 0},
+		{get, "/entries/:entry/photos/:photo", signed, (*Server).photoShow, 0},
 		{get, "/records/:record", signed, (*Server).recordShow, 0},
 		{get, "/dates", signed, (*Server).datesShow, 0},
 		{get, "/set-up", signed, (*Server).setupShow, 0},

@@ -110,7 +110,7 @@ export function trayDB() {
     /**
      * Makes records and keeps them together: counter, stamp, records and the end of their drafts change in one strict
      * transaction, so n has no gap and no double. Each of makes is make({n, clock, installation, person}) → {row, clock}
-     * and must not wait for anything. photos: names of those the records carry, which wait to be sent from then on.
+     * and must not wait for anything. photos: names of those the first one carries, which wait to be sent from then on.
      */
     keep: (log, draftKeys, makes, photos = []) => use(async (db) => {
       const tx = db.transaction(["me", "counter", "records", "drafts", "photos"], "readwrite", STRICT);
@@ -125,7 +125,7 @@ export function trayDB() {
         });
         const shots = (await Promise.all(photos.map((sha) => tx.objectStore("photos").get(sha)))).filter(Boolean);
         await Promise.all([
-          ...shots.map((p) => tx.objectStore("photos").put({ ...p, log, state: p.state === "sent" ? "sent" : "waiting" })),
+          ...shots.map((p) => tx.objectStore("photos").put({ ...p, entry: rows[0].id, state: p.state === "sent" ? "sent" : "waiting" })),
           counter.put(n, log), me.put(clock, "clock"), ...rows.map((row) => tx.objectStore("records").add(row)),
           ...draftKeys.map((key) => tx.objectStore("drafts").delete(key)), tx.done,
         ]);

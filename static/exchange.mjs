@@ -35,7 +35,7 @@ export function exchange({ fetch, now }) {
     enrol: (installation) => call("/exchange/enrol", { method: "POST", body: JSON.stringify({ installation }) }),
     logs: (token) => call("/exchange/logs", { token }),
     snapshot: (token, site) => call(`/exchange/snapshot?log=${encodeURIComponent(site)}`, { token }),
-    photo: (token, { sha256, log, blob }) => call(`/exchange/photo?sha256=${sha256}&log=${encodeURIComponent(log)}`, { token, method: "POST", body: blob, type: "image/jpeg" }),
+    photo: (token, { sha256, entry, blob }) => call(`/exchange/photo?sha256=${sha256}&entry=${encodeURIComponent(entry)}`, { token, method: "POST", body: blob, type: "image/jpeg" }),
     push: (token, body) => call("/exchange/push", { token, method: "POST", body }),
   };
 }

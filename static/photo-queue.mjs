@@ -5,7 +5,7 @@
 const REFUSED = new Set([400, 409, 413, 422]);
 
 /**
- * storage: {waitingPhotos() → rows {sha256, log, blob}, settlePhoto(sha256), refusePhoto(sha256, text)}; send(row) →
+ * storage: {waitingPhotos() → rows {sha256, entry, blob}, settlePhoto(sha256), refusePhoto(sha256, text)}; send(row) →
  * {ok, status, body:{sha256}}. Gives {state: "empty" | "unreached" | "signed-out" | "busy" | "trouble", sent}.
  */
 export async function drainPhotos({ storage, send }) {
@@ -16,6 +16,7 @@ export async function drainPhotos({ storage, send }) {
       await storage.settlePhoto(row.sha256);
       done.sent++;
     } else if (REFUSED.has(answer.status)) await storage.refusePhoto(row.sha256, answer.body?.error?.text ?? "");
+    else if (answer.status === 404) continue; // its entry is not there yet, or was refused; the others may go
     else return { ...done, state: answer.status === 0 ? "unreached" : answer.status === 401 ? "signed-out" : answer.status === 429 ? "busy" : "trouble" };
   }
   return done;

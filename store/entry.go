@@ -37,6 +37,7 @@ type Entry struct {
 	Withdrawn        *Correction
 	Sealed           bool // its owner had its bytes dropped; it never counts as passed
 	Original         forms.Entry
+	Photos           []string // names of the entry's photos, at most four; of an entry read alone
 }
 
 // Shown is what the phone told the tester.
@@ -73,7 +74,11 @@ func (v *View) Entry(id string) (Entry, error) {
 	if err != nil {
 		return Entry{}, err
 	}
-	return v.entry(sv, r, st, k, seq)
+	e, err := v.entry(sv, r, st, k, seq)
+	if err == nil && !e.Sealed {
+		e.Photos = photosOf(r)
+	}
+	return e, err
 }
 
 // Entries gives a device's entries, the newest first.

@@ -15,8 +15,12 @@ import (
 	"tripwell/store/record"
 )
 
-// modelVersion names the shape and the rules of the read models; it grows with every change of either.
+// modelVersion names the shape and the rules of the read models; it grows with every change of either. A test holds it
+// against what the models of a fixed book hash to.
 const modelVersion = 2
+
+// modelMark is what a file says of its read models: their rows also keep results, so another judge makes other models.
+const modelMark = modelVersion<<32 | forms.JudgeVersion
 
 // fold turns accepted records into read models, in book order. It gathers a group's changes in memory and writes them in
 // flush, in the transaction that appends the records. It knows no clock and no setting, and what it comes to does not

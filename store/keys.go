@@ -13,6 +13,7 @@
 //	  names  ord 4                      → log name
 //	  quar   seq 8 of record.refused    → length 2 | sentence | the exact bytes refused
 //	  quarsha SHA-256 32                → seq 8 of record.refused
+//	  differ id 16 | SHA-256 32         → received ms 8 | the exact bytes that came again under a named id with other values
 //	  meta   store, org, epoch, demo, format, clock, model
 //	counted from the book, computed anew by Rebuild
 //	  count  installation 16 | ord 4    → runs of n seen: (from 8, to 8)…
@@ -45,6 +46,7 @@ var (
 	bktNames   = []byte("names")
 	bktQuar    = []byte("quar")
 	bktQuarSHA = []byte("quarsha")
+	bktDiffer  = []byte("differ")
 	bktMeta    = []byte("meta")
 
 	bktCount  = []byte("count")
@@ -60,7 +62,7 @@ var (
 	bktSetting = []byte("dir_setting")
 )
 
-var bookBuckets = [][]byte{bktRec, bktID, bktLog, bktLogs, bktNames, bktQuar, bktQuarSHA, bktMeta}
+var bookBuckets = [][]byte{bktRec, bktID, bktLog, bktLogs, bktNames, bktQuar, bktQuarSHA, bktDiffer, bktMeta}
 var countBuckets = [][]byte{bktCount, bktReused, bktGrant, bktTaken}
 var directoryBuckets = [][]byte{bktPerson, bktLink, bktSession, bktToken, bktInst, bktSetting}
 

@@ -6,6 +6,7 @@ import (
 	"errors"
 	"fmt"
 	"io/fs"
+	"log/slog"
 	"os"
 	"path/filepath"
 	"strconv"
@@ -26,9 +27,10 @@ const BookFile = "book.db"
 // Options of Open. Now is the only clock the store knows.
 type Options struct {
 	Now    func() time.Time
-	Create bool   // make the store when DIR holds none (temp file, rename, folder sync)
-	Demo   bool   // with Create: marks the store DEMO for ever; without: refuse a store that is no demo store
-	URL    string // label address (https://host); kept in the directory at first creation or when given
+	Create bool         // make the store when DIR holds none (temp file, rename, folder sync)
+	Demo   bool         // with Create: marks the store DEMO for ever; without: refuse a store that is no demo store
+	Log    *slog.Logger // what opening does that takes long; nil: nothing is logged
+	URL    string       // label address (https://host); kept in the directory at first creation or when given
 }
 
 // Store is one organisation's book, its read models and its directory.
@@ -83,7 +85,7 @@ func Open(dir string, o Options) (*Store, error) {
 	if err := s.start(o); err != nil {
 		return nil, errors.Join(err, db.Close())
 	}
-	if err := s.refresh(); err != nil {
+	if err := s.refresh(o.Log); err != nil {
 		return nil, errors.Join(err, db.Close())
 	}
 	s.unfinished = true
@@ -134,24 +136,45 @@ func (s *Store) start(o Options) error {
 	})
 }
 
-// refresh rebuilds read models of another version of the program, or whose rebuild was cut off, and removes what a check
-// left behind when it was killed.
-func (s *Store) refresh() error {
+// refresh rebuilds read models that another build of the program wrote, or whose rebuild was cut off, makes buckets that an
+// older one did not know, and removes what a check left behind when it was killed.
+func (s *Store) refresh(log *slog.Logger) error {
 	for _, path := range leftovers(s.dir) {
 		if err := os.Remove(path); err != nil {
 			return fmt.Errorf("remove %s: %w", path, err)
 		}
 	}
-	stale := false
+	lacking, written, records := false, uint64(0), uint64(0)
 	err := s.db.View(func(tx *bbolt.Tx) error {
-		stale = readKey64(tx.Bucket(bktMeta).Get(metaModel)) != modelVersion
+		written = readKey64(tx.Bucket(bktMeta).Get(metaModel))
+		lacking = tx.Bucket(bktDiffer) == nil
+		k, _ := tx.Bucket(bktRec).Cursor().Last()
+		records = readKey64(k)
 		return nil
 	})
-	if err == nil && stale {
-		err = rebuild(context.Background(), s, s.db, nil)
+	if err == nil && lacking {
+		err = s.db.Update(makeBuckets)
 	}
-	return err
+	if err != nil || written == modelMark {
+		return err
+	}
+	if log != nil {
+		log.Info("computing the pages anew from the book: they were written by another build, or not to the end",
+			"records", records, "written", modelText(written), "reads", modelText(modelMark))
+	}
+	began := time.Now()
+	if err := rebuild(context.Background(), s, s.db, nil); err != nil {
+		return &Error{Code: "unavailable", Field: "data", Text: "The pages of the store in " + s.dir + " were written by another build of Tripwell, and this one cannot compute them anew from the book: " +
+			err.Error() + ". The book is untouched. Use the program that wrote it, or a newer one."}
+	}
+	if log != nil {
+		log.Info("computed the pages anew", "took", time.Since(began).Round(time.Millisecond))
+	}
+	return nil
 }
+
+// modelText writes a mark as MODEL.JUDGE; 0.0 is a rebuild that was cut off.
+func modelText(mark uint64) string { return fmt.Sprintf("%d.%d", mark>>32, mark&(1<<32-1)) }
 
 // create makes the file under another name, fills it, and renames it: a power cut leaves a whole store or none.
 func create(dir string, o Options) error {
@@ -202,18 +225,14 @@ func emptyEnough(dir string) error {
 // fill writes the first transaction: all buckets, who this store is, and the shipped records.
 func fill(db *bbolt.DB, o Options) error {
 	return db.Update(func(tx *bbolt.Tx) error {
-		for _, list := range [][][]byte{bookBuckets, countBuckets, directoryBuckets, modelBuckets} {
-			for _, name := range list {
-				if _, err := tx.CreateBucketIfNotExists(name); err != nil {
-					return err
-				}
-			}
+		if err := makeBuckets(tx); err != nil {
+			return err
 		}
 		now := o.Now()
 		s := &Store{id: newID(now), org: newID(now), epoch: 1, now: o.Now}
 		values := map[string][]byte{
 			string(metaStore): []byte(s.id), string(metaOrg): []byte(s.org),
-			string(metaEpoch): key64(1), string(metaFormat): key64(formatVersion), string(metaModel): key64(modelVersion),
+			string(metaEpoch): key64(1), string(metaFormat): key64(formatVersion), string(metaModel): key64(modelMark),
 		}
 		if o.Demo {
 			values[string(metaDemo)] = []byte{1}
@@ -229,6 +248,18 @@ func fill(db *bbolt.DB, o Options) error {
 		}
 		return g.flush()
 	})
+}
+
+// makeBuckets makes the buckets a file lacks: all of a new one, those of a younger program in an older file.
+func makeBuckets(tx *bbolt.Tx) error {
+	for _, list := range [][][]byte{bookBuckets, countBuckets, directoryBuckets, modelBuckets} {
+		for _, name := range list {
+			if _, err := tx.CreateBucketIfNotExists(name); err != nil {
+				return err
+			}
+		}
+	}
+	return nil
 }
 
 func syncDir(dir string) error {

@@ -114,7 +114,13 @@ func (g *group) take(from Sender, a arrival, received time.Time) (Receipt, error
 		return Receipt{}, err
 	}
 	if ok {
-		if record.IsNamed(a.r.ID) || bytes.Equal(had.raw, a.r.Raw) {
+		same := bytes.Equal(had.raw, a.r.Raw)
+		if !same && record.IsNamed(a.r.ID) {
+			if err := g.keepDiffering(from, a, had, received); err != nil {
+				return Receipt{}, err
+			}
+		}
+		if same || record.IsNamed(a.r.ID) {
 			return g.receipt(a.r.ID, "already", had.log, had.pos), nil
 		}
 		return g.refuse(from, a.r, &record.Fault{Code: "id_reused", Field: "id", Text: "Another record carries this id already. The first one stays; give the new one an id of its own."}, received)

@@ -56,7 +56,7 @@ func rebuild(ctx context.Context, s *Store, db *bbolt.DB, progress func(done, to
 	return nil
 }
 
-// clearDerived empties all that is computed and marks the store as being rebuilt (model version 0).
+// clearDerived empties all that is computed and marks the store as being rebuilt (model 0).
 func clearDerived(tx *bbolt.Tx) error {
 	for _, name := range derivedBuckets() {
 		if err := tx.DeleteBucket(name); err != nil && !errors.Is(err, bolterrors.ErrBucketNotFound) {
@@ -112,7 +112,7 @@ func rebuildFrom(s *Store, tx *bbolt.Tx, after uint64, progress func(done, total
 	if k != nil {
 		return after, true, nil
 	}
-	return after, false, tx.Bucket(bktMeta).Put(metaModel, key64(modelVersion))
+	return after, false, tx.Bucket(bktMeta).Put(metaModel, key64(modelMark))
 }
 
 // rereadPart is how many records are decoded at a time.

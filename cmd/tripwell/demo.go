@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"io/fs"
+	"log/slog"
 	"net"
 	"os"
 	"path/filepath"
@@ -81,7 +82,7 @@ func (c demoCmd) open(e *env) (*store.Store, string, error) {
 			return nil, "", err
 		}
 	}
-	s, err := store.Open(dir, store.Options{Now: time.Now, Demo: true})
+	s, err := store.Open(dir, store.Options{Now: time.Now, Demo: true, Log: logTo(e, slog.LevelInfo)})
 	return s, dir, err
 }
 

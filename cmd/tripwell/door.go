@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"io"
+	"log/slog"
 	"net/http"
 	"net/url"
 	"time"
@@ -21,7 +22,7 @@ type door struct {
 // openDoor opens the folder's owner's door. The folder must hold a store.
 func (e *env) openDoor(dir string) (*door, error) {
 	d, err := server.OpenDoor(e.ctx, dir, func() (*store.Store, error) {
-		return store.Open(dir, store.Options{Now: time.Now})
+		return store.Open(dir, store.Options{Now: time.Now, Log: logTo(e, slog.LevelInfo)})
 	})
 	if err != nil {
 		return nil, err

@@ -44,7 +44,7 @@ func (c serveCmd) Run(e *env) error {
 	if err != nil {
 		return err
 	}
-	s, err := store.Open(c.Data, store.Options{Now: time.Now, Create: true, URL: c.URL})
+	s, err := store.Open(c.Data, store.Options{Now: time.Now, Create: true, URL: c.URL, Log: logTo(e, slog.LevelInfo)})
 	if err != nil {
 		return errors.Join(err, public.Close())
 	}
@@ -132,8 +132,7 @@ func serve(e *env, s *store.Store, dir string, public net.Listener, greet func()
 	if s.Demo() {
 		level = slog.LevelWarn // whoever tries it out wants to read the greeting, not each request
 	}
-	log := slog.New(slog.NewTextHandler(e.stderr, &slog.HandlerOptions{Level: level}))
-	srv, err := server.New(s, server.Options{Log: log})
+	srv, err := server.New(s, server.Options{Log: logTo(e, level)})
 	if err != nil {
 		return errors.Join(err, public.Close())
 	}
@@ -145,6 +144,10 @@ func serve(e *env, s *store.Store, dir string, public net.Listener, greet func()
 		return errors.Join(err, public.Close(), owner.Close())
 	}
 	return srv.Serve(e.ctx, public, owner)
+}
+
+func logTo(e *env, level slog.Level) *slog.Logger {
+	return slog.New(slog.NewTextHandler(e.stderr, &slog.HandlerOptions{Level: level}))
 }
 
 // listen opens a TCP address and says in words why it cannot.

@@ -88,6 +88,10 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 		"limits.html":         s.limitsSample(),
 		"import.html":         importPage{Frame: frameOf("Import a register", "sites"), Crumbs: []link{{Href: "/sites", Text: "Sites"}}, Heading: "Import a register", Lead: "CSV or XLSX.", Wrong: "The file is locked with a password.", Columns: []link{{Text: "Room"}, {Text: "Panel"}}},
 		"import_preview.html": previewSample(),
+		"aside.html": asidePage{Frame: frameOf("Kept aside", "set-up"), Crumbs: []link{{Href: "/set-up", Text: "Set up"}}, Heading: "2 records kept aside.", Under: "They came and do not stand in the book as they were sent.", Cut: "The newest 200 of each list are shown.",
+			Refused: []asideRecord{{Head: "3 Nov 2026, 09:02 · Kiln Lane Day Clinic · Crew 1", Text: "The id is used.", Under: "SHA-256 00ff", Bytes: `{"id":`}},
+			Differ:  []asideRecord{{Head: "Device registered · Kiln Lane Day Clinic", Text: "The first one stands.", Record: "/records/1", Bytes: `{"id":1}`, Changes: []change{{"Make", "Maker", "Other"}}}},
+			Gaps:    []gapShown{{"Kiln Lane Day Clinic", "Crew 1", "4–5", "0197b2c0-0000-7000-8000-000000000001"}}},
 		"people.html": peoplePage{Frame: frameOf("People", "people"), Heading: "3 people may sign in.", People: []peopleRow{
 			{Href: "/people/1", Name: "Manager 1", Role: "Manager", Sites: "All sites", Contact: "ext. 401", Active: true}, {Href: "/people/2", Name: "Crew 1", Role: "Crew", Sites: "Kiln Lane Day Clinic, Ottermoor Swim Hall", Active: true}, {Href: "/people/3", Name: "Auditor 2", Role: "Auditor", Sites: "Kiln Lane Day Clinic"}}},
 		"tray.html": trayPage{Frame: frameOf("Take in a phone's tray", ""), Problem: "Choose the file the phone saved first.", Report: &TrayReport{Records: 3, Stored: 1, Already: 1, Person: "Crew 1", Made: "2026-12-01T08:00:00.000Z",

@@ -101,6 +101,7 @@ func publicRoutes() []route {
 		{get, "/import/:upload", manager, (*Server).importShow, 0},
 		{post, "/import/:upload", manager, (*Server).importMend, mappingLimit},
 		{get, "/import/:upload/:file", manager, (*Server).importFile, 0},
+		{get, "/kept-aside", manager, (*Server).asideShow, 0},
 		{get, "/people", manager, (*Server).peopleShow, 0},
 		{get, "/people/new", manager, (*Server).personNew, 0},
 		{post, "/people", manager, (*Server).personCreate, 0},

@@ -126,7 +126,7 @@ func (v *View) Gaps() ([]Gap, error) {
 				return nil, err
 			}
 			if gap != (numbers{}) {
-				out = append(out, Gap{installation, v.holder(installation), log, gap.from, gap.to})
+				out = append(out, Gap{installation, v.Holder(installation), log, gap.from, gap.to})
 			}
 		}
 	}
@@ -136,8 +136,8 @@ func (v *View) Gaps() ([]Gap, error) {
 	return out, nil
 }
 
-// holder gives the person whose token an installation has.
-func (v *View) holder(installation string) string {
+// Holder gives the person whose token an installation has, "" where nobody's is known here.
+func (v *View) Holder(installation string) string {
 	key := v.tx.Bucket(bktInst).Get(idKey(installation))
 	if key == nil {
 		return ""

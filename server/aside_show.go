@@ -1,0 +1,122 @@
+package server
+
+import (
+	"cmp"
+	"fmt"
+	"net/http"
+	"strings"
+	"time"
+
+	"github.com/labstack/echo/v4"
+
+	"tripwell/store"
+)
+
+// asideMost is how many of each list the page shows, the newest.
+const asideMost = 200
+
+// asidePage shows what came and does not stand in the book as it was sent: refused records, named records that came again
+// with other values, and numbers that never came.
+type asidePage struct {
+	Frame
+	Crumbs         []link
+	Heading, Under string
+	Refused        []asideRecord
+	Differ         []asideRecord
+	Gaps           []gapShown
+	Cut            string // "" where everything is shown
+}
+
+// asideRecord is one record that came, with why it does not stand.
+type asideRecord struct {
+	Head, Text, Under, Record string
+	Changes                   []change
+	Bytes                     string
+}
+
+type gapShown struct{ Log, Person, Numbers, Mono string }
+
+func (s *Server) asideShow(c echo.Context) error {
+	k := s.ink()
+	view := asidePage{Frame: s.frame(c, k.say("office.aside.title"), "set-up"), Crumbs: []link{{Href: "/set-up", Text: k.say("office.setup.title")}},
+		Under: k.say("office.aside.under")}
+	err := s.store.View(scope(c), func(v *store.View) error {
+		names, err := logNames(v, k)
+		if err != nil {
+			return err
+		}
+		refused, err := v.Refused()
+		if err != nil {
+			return err
+		}
+		differ, err := v.Differences()
+		if err != nil {
+			return err
+		}
+		gaps, err := v.Gaps()
+		if err != nil {
+			return err
+		}
+		view.Heading = k.say("office.aside.heading", "n", len(refused)+len(differ))
+		if len(refused) > asideMost || len(differ) > asideMost || len(gaps) > asideMost {
+			view.Cut = k.say("office.aside.cut", "n", asideMost)
+		}
+		for _, r := range refused[:min(len(refused), asideMost)] {
+			view.Refused = append(view.Refused, s.refusedRecord(v, r, names))
+		}
+		for _, d := range differ[:min(len(differ), asideMost)] {
+			view.Differ = append(view.Differ, s.differingRecord(v, d, names))
+		}
+		for _, g := range gaps[:min(len(gaps), asideMost)] {
+			numbers := fmt.Sprint(g.From)
+			if g.To > g.From {
+				numbers += "–" + fmt.Sprint(g.To)
+			}
+			view.Gaps = append(view.Gaps, gapShown{cmp.Or(names[g.Log], g.Log), s.personName(v, g.Person), numbers, g.Installation})
+		}
+		return nil
+	})
+	if err != nil {
+		return err
+	}
+	return s.page(c, http.StatusOK, "aside.html", view)
+}
+
+func (s *Server) refusedRecord(v *store.View, r store.Refusal, names map[string]string) asideRecord {
+	k := s.ink()
+	shown := asideRecord{
+		Head: joined(k.at(r.Received, time.UTC), cmp.Or(names[r.Log], r.Log)), Text: cmp.Or(r.Text, r.Code),
+		Bytes: strings.ToValidUTF8(string(r.Bytes), "\uFFFD"),
+	}
+	shown.Under = k.say("office.aside.hash", "sum", r.SHA256)
+	if holder := v.Holder(r.From); holder != "" {
+		shown.Head = joined(shown.Head, s.personName(v, holder))
+	}
+	return shown
+}
+
+func (s *Server) differingRecord(v *store.View, d store.Difference, names map[string]string) asideRecord {
+	k := s.ink()
+	shown := asideRecord{
+		Head: joined(k.named("record", d.Kind), cmp.Or(names[d.Log], d.Log), k.at(d.Received, time.UTC)), Record: "/records/" + d.Record,
+		Text: k.say("office.aside.differs", "by", s.personName(v, d.By)), Bytes: strings.ToValidUTF8(string(d.Bytes), "\uFFFD"),
+	}
+	for _, value := range d.Values {
+		name := value.Path
+		if field, ok := strings.CutPrefix(name, "set."); ok {
+			name = s.fieldName(field)
+		}
+		shown.Changes = append(shown.Changes, change{name, cmp.Or(value.Stands, dash), cmp.Or(value.Came, dash)})
+	}
+	return shown
+}
+
+// logNames are what people call the logs of the scope.
+func logNames(v *store.View, k ink) (map[string]string, error) {
+	sites, err := v.Sites()
+	names := map[string]string{"org": k.say("office.aside.log_org"), "office": k.say("office.aside.log_office")}
+	for _, site := range sites {
+		names[site.ID] = site.Name
+	}
+	return names, err
+}

@@ -73,7 +73,7 @@ func told(t testing.TB, s *Store, on forms.Day) string {
 			if err != nil {
 				return err
 			}
-			snap.Cursor, snap.AsOf = "", time.Time{}
+			snap.Cursor, snap.OrgCursor, snap.AsOf = "", "", time.Time{}
 			out = append(out, snap)
 		}
 		var dates []string

@@ -2,8 +2,8 @@ package export
 
 // cut keeps a quoted value short.
 func cut(s string) string {
-	if r := []rune(printable(s)); len(r) > 60 {
+	if r := []rune(Printable(s)); len(r) > 60 {
 		return string(r[:60]) + "…"
 	}
-	return printable(s)
+	return Printable(s)
 }

@@ -37,7 +37,7 @@ func Alignment(w io.Writer, how Printing) error {
 		words.Say("paper.align.hold"),
 		words.Say("paper.align.nudge", "x", figureText(how.NudgeX), "y", figureText(how.NudgeY)),
 	} {
-		points, text := p.pen.fit("sansB", 7, 3.5, s.LabelW-3, text)
+		points, text := p.pen.Fit("sansB", 7, 3.5, s.LabelW-3, text)
 		p.draw(layout{texts: []placedText{{1.5, 3 + 2.9*float64(i), points, "sansB", text}}}, x, y)
 	}
 	p.ruler(how, words)
@@ -66,7 +66,7 @@ func (p *labelPage) ruler(how Printing, words *static.Words) {
 		l.boxes = append(l.boxes, placedBox{1 + float64(i)*10, -1.2, 0.001, 2.4, 0.2})
 	}
 	text := words.Say("paper.align.ruler", "mm", cm*10)
-	points, text := p.pen.fit("sans", 6, 3.5, s.LabelW-4, text)
+	points, text := p.pen.Fit("sans", 6, 3.5, s.LabelW-4, text)
 	l.texts = []placedText{{2.5, -1.6, points, "sans", text}}
 	p.draw(l, x, y)
 }

@@ -82,7 +82,7 @@ func encode(address string, level qrcode.RecoveryLevel) (*symbol, error) {
 	}
 	q, err := qrcode.New(address, level)
 	if err != nil {
-		return nil, &store.Error{Code: "invalid", Field: "url", Text: fmt.Sprintf("The address %s is too long for a code. Start the server with a shorter --url.", clipped(address))}
+		return nil, &store.Error{Code: "invalid", Field: "url", Text: fmt.Sprintf("The address %s is too long for a code. Start the server with a shorter --url.", cut(address))}
 	}
 	q.DisableBorder = true
 	rows := q.Bitmap()
@@ -112,7 +112,7 @@ func codeIn(address string, box float64) (s *symbol, module float64, err error) 
 			return s, module, nil
 		}
 	}
-	return nil, 0, &store.Error{Code: "invalid", Field: "url", Text: fmt.Sprintf("The address %s makes a code too fine to print on this label. Start the server with a shorter --url, or take larger labels.", clipped(address))}
+	return nil, 0, &store.Error{Code: "invalid", Field: "url", Text: fmt.Sprintf("The address %s makes a code too fine to print on this label. Start the server with a shorter --url, or take larger labels.", cut(address))}
 }
 
 // CodePath draws the code of an address as one PDF path: a rectangle for each run of dark modules of a row, filled

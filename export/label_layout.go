@@ -80,7 +80,7 @@ func planLabels(size SheetSize, address string, lines []string, demo string) (la
 }
 
 // lay fills one label.
-func (p *labelPlan) lay(l Label, pen *pen) layout {
+func (p *labelPlan) lay(l Label, pen *Pen) layout {
 	var out layout
 	if len(l.Marking) > 0 {
 		p.layMarking(&out, l.Marking, pen)
@@ -91,7 +91,7 @@ func (p *labelPlan) lay(l Label, pen *pen) layout {
 	bottom := p.h - 0.7
 	if l.Demo {
 		// The tag is never cut for the mark: where both do not fit, the mark goes to the foot.
-		if wide := pen.width("sansB", 7*k, p.demo) + 2.4; room-wide >= tagRoomLeast {
+		if wide := pen.Width("sansB", 7*k, p.demo) + 2.4; room-wide >= tagRoomLeast {
 			p.layDemo(&out, baseline, pen)
 			room -= wide
 		} else {
@@ -99,7 +99,7 @@ func (p *labelPlan) lay(l Label, pen *pen) layout {
 			bottom -= 4.2 * k
 		}
 	}
-	p.line(&out, pen, baseline, room, "monoB", 13*k, 6, tagText(l.Tag))
+	p.line(&out, pen, baseline, room, "monoB", 13*k, 6, TagText(l.Tag))
 	baseline += 1.1 * k
 	for _, name := range p.lines {
 		font, points, step := "sans", 7*k, 3.4*k
@@ -109,7 +109,7 @@ func (p *labelPlan) lay(l Label, pen *pen) layout {
 			texts = p.broken(pen, font, points, texts[0])
 		}
 		for _, text := range texts {
-			if text = printable(text); text != "" && baseline+step <= bottom {
+			if text = Printable(text); text != "" && baseline+step <= bottom {
 				baseline += step
 				p.line(&out, pen, baseline, p.textW, font, points, 0.78*points, text)
 			}
@@ -124,62 +124,62 @@ func (p *labelPlan) lay(l Label, pen *pen) layout {
 }
 
 // line adds a line within room mm: smaller first, down to least points, then with an ellipsis at the end.
-func (p *labelPlan) line(out *layout, pen *pen, baseline, room float64, font string, points, least float64, text string) {
-	points, text = pen.fit(font, points, least, room, printable(text))
+func (p *labelPlan) line(out *layout, pen *Pen, baseline, room float64, font string, points, least float64, text string) {
+	points, text = pen.Fit(font, points, least, room, Printable(text))
 	if text == "" {
 		return
 	}
 	x := p.textX
 	if p.centred {
-		x += (room - pen.width(font, points, text)) / 2
+		x += (room - pen.Width(font, points, text)) / 2
 	}
 	out.texts = append(out.texts, placedText{x, baseline, points, font, text})
 }
 
 // layDemo puts the mark at the right edge.
-func (p *labelPlan) layDemo(out *layout, baseline float64, pen *pen) {
+func (p *labelPlan) layDemo(out *layout, baseline float64, pen *Pen) {
 	points := 7 * p.scale
-	w := pen.width("sansB", points, p.demo)
+	w := pen.Width("sansB", points, p.demo)
 	right := p.textX + p.textW
 	out.boxes = append(out.boxes, placedBox{right - w - 1.4, baseline - 3*p.scale, w + 1.4, 3.8 * p.scale, 0.2})
 	out.texts = append(out.texts, placedText{right - w - 0.7, baseline - 0.2, points, "sansB", p.demo})
 }
 
 // layMarking prints a marking over the whole label, as large as it goes, in a frame.
-func (p *labelPlan) layMarking(out *layout, marking []string, pen *pen) {
+func (p *labelPlan) layMarking(out *layout, marking []string, pen *Pen) {
 	const frame = 1.2
 	out.boxes = append(out.boxes, placedBox{frame, frame, p.w - 2*frame, p.h - 2*frame, 0.5})
 	roomW, roomH := p.w-2*frame-3, p.h-2*frame-2
 	points := roomH / float64(len(marking)) / 1.25 * mmPoint
 	for _, text := range marking {
-		if w := pen.width("sansB", 10, text); w > 0 {
+		if w := pen.Width("sansB", 10, text); w > 0 {
 			points = min(points, 10*roomW/w)
 		}
 	}
 	step := points / mmPoint * 1.25
 	baseline := p.h/2 - step*float64(len(marking))/2 + step*0.79
 	for _, text := range marking {
-		out.texts = append(out.texts, placedText{(p.w - pen.width("sansB", points, text)) / 2, baseline, points, "sansB", text})
+		out.texts = append(out.texts, placedText{(p.w - pen.Width("sansB", points, text)) / 2, baseline, points, "sansB", text})
 		baseline += step
 	}
 }
 
 // broken breaks a text that is too wide into two lines at a space.
-func (p *labelPlan) broken(pen *pen, font string, points float64, text string) []string {
-	text = printable(text)
-	if text == "" || pen.width(font, points, text) <= p.textW {
+func (p *labelPlan) broken(pen *Pen, font string, points float64, text string) []string {
+	text = Printable(text)
+	if text == "" || pen.Width(font, points, text) <= p.textW {
 		return []string{text}
 	}
 	for i := len(text) - 1; i > 0; i-- {
-		if text[i] == ' ' && pen.width(font, points, text[:i]) <= p.textW {
+		if text[i] == ' ' && pen.Width(font, points, text[:i]) <= p.textW {
 			return []string{text[:i], strings.TrimSpace(text[i:])}
 		}
 	}
 	return []string{text}
 }
 
-// printable leaves what the label fonts can show on one line: no control characters, nothing beyond the basic plane.
-func printable(s string) string {
+// Printable leaves what the label fonts can show on one line: no control characters, nothing beyond the basic plane.
+func Printable(s string) string {
 	return strings.Join(strings.Fields(strings.Map(func(r rune) rune {
 		switch {
 		case r < 0x20 || r == 0x7F || r >= 0x80 && r < 0xA0:

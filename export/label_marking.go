@@ -27,7 +27,7 @@ const markingMost = 5000
 func MarkingLabels(name string, n int) ([]Label, error) {
 	marking, ok := markings[name]
 	if !ok {
-		return nil, &store.Error{Code: "invalid", Field: "marking", Text: fmt.Sprintf("There is no marking %q. Choose one of: %s.", clipped(name), strings.Join(MarkingNames(), ", "))}
+		return nil, &store.Error{Code: "invalid", Field: "marking", Text: fmt.Sprintf("There is no marking %q. Choose one of: %s.", cut(name), strings.Join(MarkingNames(), ", "))}
 	}
 	if n < 1 || n > markingMost {
 		return nil, &store.Error{Code: "invalid", Field: "count", Text: fmt.Sprintf("Between 1 and %d labels can be made at a time.", markingMost)}

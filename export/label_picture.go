@@ -45,7 +45,7 @@ func drawLabel(how Printing, l Label) (*drawnLabel, error) {
 			return nil, err
 		}
 	}
-	d.layout = plan.lay(l, newPen(NewPrint(how.Sheet.PageW, how.Sheet.PageH)))
+	d.layout = plan.lay(l, NewPen(NewPrint(how.Sheet.PageW, how.Sheet.PageH)))
 	return d, nil
 }
 
@@ -74,7 +74,7 @@ func LabelSVG(w io.Writer, how Printing, l Label) error {
 		fmt.Fprintf(&b, "<rect x=\"%s\" y=\"%s\" width=\"%s\" height=\"%s\" fill=\"none\" stroke=\"#000\" stroke-width=\"%s\"/>\n",
 			svgMM(box.x), svgMM(box.y), svgMM(box.w), svgMM(box.h), svgMM(box.line))
 	}
-	pen := newPen(NewPrint(10, 10))
+	pen := NewPen(NewPrint(10, 10))
 	for _, t := range d.texts {
 		family, weight := "DejaVu Sans, sans-serif", "normal"
 		switch t.font {
@@ -85,7 +85,7 @@ func LabelSVG(w io.Writer, how Printing, l Label) error {
 		}
 		// The length is stated because the reader may have another font.
 		fmt.Fprintf(&b, "<text x=\"%s\" y=\"%s\" font-family=\"%s\" font-weight=\"%s\" font-size=\"%s\" textLength=\"%s\" lengthAdjust=\"spacingAndGlyphs\">%s</text>\n",
-			svgMM(t.x), svgMM(t.baseline), family, weight, svgMM(t.points/mmPoint), svgMM(pen.width(t.font, t.points, t.text)), html.EscapeString(t.text))
+			svgMM(t.x), svgMM(t.baseline), family, weight, svgMM(t.points/mmPoint), svgMM(pen.Width(t.font, t.points, t.text)), html.EscapeString(t.text))
 	}
 	b.WriteString("</svg>\n")
 	_, err = w.Write(b.Bytes())

@@ -171,7 +171,7 @@ func TestLabelPicture_ReadsBack(t *testing.T) {
 	if err := LabelSVG(&lines, how, l); err != nil {
 		t.Fatal(err)
 	}
-	for _, want := range []string{`width="66.675mm"`, tagText(l.Tag), "Tank &lt;3&gt; &amp; &#34;pump&#34;", `shape-rendering="crispEdges"`} {
+	for _, want := range []string{`width="66.675mm"`, TagText(l.Tag), "Tank &lt;3&gt; &amp; &#34;pump&#34;", `shape-rendering="crispEdges"`} {
 		if !strings.Contains(lines.String(), want) {
 			t.Errorf("the picture in lines lacks %s", want)
 		}

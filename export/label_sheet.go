@@ -76,7 +76,7 @@ func Roll(size string) (SheetSize, error) {
 	h, errH := strconv.ParseFloat(strings.TrimSpace(high), 64)
 	if !both || errW != nil || errH != nil || !(w >= rollLeast && w <= rollMost && h >= rollLeast && h <= rollMost) {
 		return SheetSize{}, &store.Error{Code: "invalid", Field: "roll",
-			Text: fmt.Sprintf("A roll label is given as WIDTHxHEIGHT in millimetres, each from %v to %v, for example 50x25; %q is not.", rollLeast, rollMost, clipped(size))}
+			Text: fmt.Sprintf("A roll label is given as WIDTHxHEIGHT in millimetres, each from %v to %v, for example 50x25; %q is not.", rollLeast, rollMost, cut(size))}
 	}
 	return SheetSize{"roll-" + figureText(w) + "x" + figureText(h), w, h, w, h, 0, 0, w, h, 1, 1}, nil
 }
@@ -127,7 +127,7 @@ func Nudge(text string) (x, y float64, err error) {
 	y, errY := strconv.ParseFloat(strings.TrimSpace(down), 64)
 	if !both || errX != nil || errY != nil || !(math.Abs(x) <= nudgeMost && math.Abs(y) <= nudgeMost) {
 		return 0, 0, &store.Error{Code: "invalid", Field: "nudge",
-			Text: fmt.Sprintf("A nudge is given as X,Y in millimetres, to the right and down, each from -%d to %d, for example 0.5,-1; %q is not.", nudgeMost, nudgeMost, clipped(text))}
+			Text: fmt.Sprintf("A nudge is given as X,Y in millimetres, to the right and down, each from -%d to %d, for example 0.5,-1; %q is not.", nudgeMost, nudgeMost, cut(text))}
 	}
 	return x, y, nil
 }
@@ -149,7 +149,7 @@ func (p *Printing) Check() error {
 	}
 	for _, name := range p.Lines {
 		if !known[name] {
-			return &store.Error{Code: "invalid", Field: "lines", Text: fmt.Sprintf("A label has no line %q. Choose from: %s.", clipped(name), strings.Join(LineNames(), ", "))}
+			return &store.Error{Code: "invalid", Field: "lines", Text: fmt.Sprintf("A label has no line %q. Choose from: %s.", cut(name), strings.Join(LineNames(), ", "))}
 		}
 	}
 	return nil

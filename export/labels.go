@@ -93,13 +93,13 @@ func (p *labelPlan) code(how *Printing, l Label, n int) ([]byte, error) {
 
 type labelPage struct {
 	pdf   *fpdf.Fpdf
-	pen   *pen
+	pen   *Pen
 	pages int
 }
 
 func newLabelPage(size SheetSize) *labelPage {
 	pdf := NewPrint(size.PageW, size.PageH)
-	return &labelPage{pdf: pdf, pen: newPen(pdf)}
+	return &labelPage{pdf: pdf, pen: NewPen(pdf)}
 }
 
 // turnTo adds pages up to one, counted from 0.
@@ -123,7 +123,7 @@ func (p *labelPage) draw(l layout, x, y float64) {
 		p.pdf.Rect(x+b.x, y+b.y, b.w, b.h, "D")
 	}
 	for _, t := range l.texts {
-		p.pen.take(t.font, t.points)
+		p.pen.Take(t.font, t.points)
 		p.pdf.Text(x+t.x, y+t.baseline, t.text)
 	}
 }

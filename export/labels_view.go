@@ -109,7 +109,7 @@ func BlankLabels(ctx context.Context, s *store.Store, by string, n int) ([]Label
 func LabelOf(s *store.Store, scope store.Scope, tag string) (l Label, err error) {
 	code, ok := record.ParseTag(tag)
 	if !ok {
-		return l, &store.Error{Code: "invalid", Field: "tag", Text: fmt.Sprintf("%q is no tag: its check character does not fit. Read the label again.", clipped(tag))}
+		return l, &store.Error{Code: "invalid", Field: "tag", Text: fmt.Sprintf("%q is no tag: its check character does not fit. Read the label again.", cut(tag))}
 	}
 	err = s.View(scope, func(v *store.View) error {
 		holders, err := v.Tag(code)

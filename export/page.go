@@ -26,17 +26,18 @@ func NewPrint(w, h float64) *fpdf.Fpdf {
 	return pdf
 }
 
-// pen measures text as it will be printed.
-type pen struct {
+// Pen measures and writes text with the fonts of NewPrint: sans, sansB and monoB.
+type Pen struct {
 	pdf    *fpdf.Fpdf
 	font   string
 	points float64
 }
 
-func newPen(pdf *fpdf.Fpdf) *pen { return &pen{pdf: pdf} }
+// NewPen gives the pen of a print.
+func NewPen(pdf *fpdf.Fpdf) *Pen { return &Pen{pdf: pdf} }
 
-// take chooses a font: sans, sansB or monoB.
-func (p *pen) take(font string, points float64) {
+// Take chooses a font: sans, sansB or monoB.
+func (p *Pen) Take(font string, points float64) {
 	if p.font == font && p.points == points {
 		return
 	}
@@ -49,38 +50,60 @@ func (p *pen) take(font string, points float64) {
 	p.font, p.points = font, points
 }
 
-// width is how wide a text is, in mm.
-func (p *pen) width(font string, points float64, text string) float64 {
-	p.take(font, points)
+// Width is how wide a text is, in mm.
+func (p *Pen) Width(font string, points float64, text string) float64 {
+	p.Take(font, points)
 	return p.pdf.GetStringWidth(text)
 }
 
-// fit makes a text go into room mm: smaller first, down to least points, then with an ellipsis at the end.
-func (p *pen) fit(font string, points, least, room float64, text string) (float64, string) {
+// Fit makes a text go into room mm: smaller first, down to least points, then with an ellipsis at the end.
+func (p *Pen) Fit(font string, points, least, room float64, text string) (float64, string) {
 	if text == "" || room <= 0 {
 		return points, ""
 	}
-	w := p.width(font, points, text)
+	w := p.Width(font, points, text)
 	if w <= room {
 		return points, text
 	}
 	points = max(least, points*room/w)
-	if w = p.width(font, points, text); w <= room+1e-6 {
+	if w = p.Width(font, points, text); w <= room+1e-6 {
 		return points, text
 	}
 	runes := []rune(text)
 	for keep := int(float64(len(runes)) * room / w); keep > 0; keep-- {
-		if text = strings.TrimRight(string(runes[:keep]), " ") + "…"; p.width(font, points, text) <= room {
+		if text = strings.TrimRight(string(runes[:keep]), " ") + "…"; p.Width(font, points, text) <= room {
 			return points, text
 		}
 	}
 	return points, ""
 }
 
-// clipped shortens what a person typed to what fits into a sentence.
-func clipped(s string) string {
-	if runes := []rune(s); len(runes) > 60 {
-		return string(runes[:60]) + "…"
+// Write writes a text with its baseline at y; what is wider than room mm is made to fit. It gives the width written.
+func (p *Pen) Write(x, y, room float64, font string, points float64, text string) float64 {
+	points, text = p.Fit(font, points, 0.75*points, room, Printable(text))
+	if text == "" {
+		return 0
 	}
-	return s
+	p.Take(font, points)
+	p.pdf.Text(x, y, text)
+	return p.pdf.GetStringWidth(text)
 }
+
+// Lines breaks a text at its spaces into lines of at most room mm.
+func (p *Pen) Lines(font string, points, room float64, text string) (lines []string) {
+	line := ""
+	for _, word := range strings.Fields(Printable(text)) {
+		longer := strings.TrimSpace(line + " " + word)
+		if line != "" && p.Width(font, points, longer) > room {
+			lines, longer = append(lines, line), word
+		}
+		line = longer
+	}
+	if line != "" {
+		lines = append(lines, line)
+	}
+	return lines
+}
+
+// Forget makes the pen choose its font again, as after a turn to another page.
+func (p *Pen) Forget() { p.font = "" }

@@ -7,6 +7,7 @@ import (
 	"strings"
 
 	"tripwell/forms"
+	"tripwell/static"
 	"tripwell/store"
 )
 
@@ -121,8 +122,8 @@ func (b *book) value(code string, raw json.RawMessage) (number *float64, text st
 
 func figureText(v float64) string { return strconv.FormatFloat(v, 'f', -1, 64) }
 
-// place is where a device sits, from the building down to the spot.
-func placeText(p store.Place) string {
+// PlaceText is where a device sits, from the building down to the spot.
+func PlaceText(p store.Place) string {
 	var parts []string
 	for _, s := range []string{p.Building, p.Floor, p.Room, p.Name} {
 		if s != "" {
@@ -132,8 +133,8 @@ func placeText(p store.Place) string {
 	return strings.Join(parts, " · ")
 }
 
-// tagText shows a tag in groups, K7Q-M2P-3, with plain hyphens: people search sheets for what they type.
-func tagText(tag string) string {
+// TagText shows a tag in groups, K7Q-M2P-3, with plain hyphens: people search sheets for what they type.
+func TagText(tag string) string {
 	if len(tag) != 7 || strings.ContainsAny(tag, "- ") {
 		return tag
 	}
@@ -145,4 +146,20 @@ func limitRevision(set string, rev int) string {
 		return ""
 	}
 	return set + " r" + strconv.Itoa(rev)
+}
+
+// ReadingText says a reading with its unit: "24 ms", ">310 ms", "Open ground"; "" where it says nothing.
+func ReadingText(words *static.Words, code string, r forms.Reading) string {
+	b := &book{words: words, named: map[string]string{}}
+	if r.Missing != "" {
+		return b.word("missing", r.Missing)
+	}
+	number, text := b.reading(code, r)
+	if number != nil {
+		text = figureText(*number)
+	}
+	if unit := b.unit(code); unit != "" && (number != nil || text != "" && (text[0] == '>' || text[0] == '<')) {
+		text += " " + unit
+	}
+	return text
 }

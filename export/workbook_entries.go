@@ -60,7 +60,7 @@ func (b *book) entries() error {
 			return err
 		}
 		for _, f := range e.Flags {
-			err := flags.row().text(e.Site.Code).text(tagText(e.DeviceRow.Tag)).text(placeText(e.DeviceRow.Place)).text(b.word("task", e.Task)).
+			err := flags.row().text(e.Site.Code).text(TagText(e.DeviceRow.Tag)).text(PlaceText(e.DeviceRow.Place)).text(b.word("task", e.Task)).
 				day(e.Day).text(b.flag(f)).text(f.Detail).text(e.ID).end()
 			if err != nil {
 				return err
@@ -102,7 +102,7 @@ func (b *book) entryRow(s *sheet, e EntryLine) error {
 	if e.Imported {
 		imported = b.say("sheet.imported")
 	}
-	s.row().text(e.ID).text(e.Site.Code).text(tagText(e.DeviceRow.Tag)).text(placeText(e.DeviceRow.Place)).text(b.word("kind", e.kind())).
+	s.row().text(e.ID).text(e.Site.Code).text(TagText(e.DeviceRow.Tag)).text(PlaceText(e.DeviceRow.Place)).text(b.word("kind", e.kind())).
 		text(b.word("task", e.Task)).day(e.Day).verdict(e.Verdict.Result).text(b.say("sheet." + e.status()))
 	for _, code := range entryFigures {
 		b.figureCell(s, code, e.Body.Readings)
@@ -233,7 +233,7 @@ func (b *book) bodyRows(s *sheet, e EntryLine, body forms.Entry, verdict forms.V
 }
 
 func (b *book) findingRow(s *sheet, e EntryLine, f *forms.Finding, number *float64, text, status string) error {
-	s.row().text(e.ID).text(e.Site.Code).text(tagText(e.DeviceRow.Tag)).text(placeText(e.DeviceRow.Place)).text(b.word("task", e.Task)).
+	s.row().text(e.ID).text(e.Site.Code).text(TagText(e.DeviceRow.Tag)).text(PlaceText(e.DeviceRow.Place)).text(b.word("task", e.Task)).
 		day(e.Day).text(b.readingName(f.Reading)).text(b.conditions(f.At)).known(number).text(text)
 	unit := b.unit(f.Reading)
 	if f.Unit != "" {

@@ -39,7 +39,7 @@ func (b *book) registerRow(s *sheet, line DeviceLine) error {
 	}
 	next := nextDue(d.Due)
 	s.row().text(line.Site.Code).text(line.Site.Name).text(d.Place.Building).text(d.Place.Floor).text(d.Place.Room).
-		text(d.Place.Name).text(tagText(d.Tag)).text(b.word("kind", d.Kind)).text(d.Panel).text(d.Circuit).
+		text(d.Place.Name).text(TagText(d.Tag)).text(b.word("kind", d.Kind)).text(d.Panel).text(d.Circuit).
 		text(d.Make).text(d.Model).rating(d.RatingA).rating(d.RatedResidualMA).day(d.Installed).
 		text(b.say("sheet." + status))
 	for _, task := range []string{"button", "instrument", "receptacle"} {
@@ -79,7 +79,7 @@ func (b *book) due() error {
 			return err
 		}
 		d := line.Device
-		err = s.row().text(line.Site.Code).text(line.Site.Name).text(tagText(d.Tag)).text(placeText(d.Place)).text(b.word("kind", d.Kind)).
+		err = s.row().text(line.Site.Code).text(line.Site.Name).text(TagText(d.Tag)).text(PlaceText(d.Place)).text(b.word("kind", d.Kind)).
 			text(b.word("task", line.Task)).day(line.Due.Due).text(b.word("state", line.State)).day(line.Last).text(b.word("plan", line.Plan)).text(d.ID).end()
 		if err != nil {
 			return err

@@ -46,8 +46,11 @@ func (d *door) get(path string, query url.Values) (io.ReadCloser, error) {
 }
 
 // flagFields are the fields of a refusal that a flag of the command line gave.
-var flagFields = map[string]bool{"site": true, "on": true, "from": true, "to": true, "sheet": true, "start": true, "by": true, "person": true, "id": true, "in_force": true, "zone": true, "dates": true, "map": true,
-	"roll": true, "nudge": true, "lines": true, "marking": true, "count": true, "n": true, "tag": true, "read_by": true, "typed_by": true, "year": true, "task": true}
+var flagFields = map[string]bool{
+	"site": true, "on": true, "from": true, "to": true, "sheet": true, "start": true, "by": true, "person": true, "id": true,
+	"in_force": true, "zone": true, "dates": true, "map": true, "roll": true, "nudge": true, "lines": true, "marking": true, "count": true,
+	"n": true, "tag": true, "read_by": true, "typed_by": true, "year": true, "task": true, "until": true, "paper": true,
+}
 
 // wrongFlag makes a refusal of what a flag says wrong use: unknown site, sheet or person.
 func wrongFlag(err error) error {

@@ -131,14 +131,5 @@ func (c labelCmd) Run(e *env) error {
 	query.Set("tag", c.Tag)
 	query.Set("as", as)
 	setIf(query, "by", c.By)
-	return c.write(e, func(w io.Writer) error {
-		return e.with(c.Data, func(d *door) error {
-			body, err := d.get("/own/label", query)
-			if err != nil {
-				return err
-			}
-			defer body.Close()
-			return copyOut(e, w, body, "label")
-		})
-	})
+	return c.fetch(e, c.folder, "/own/label", query, "label")
 }

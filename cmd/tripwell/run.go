@@ -25,6 +25,9 @@ type cli struct {
 	Forms    formsCmd    `cmd:"" help:"List device kinds, forms, readings and limits; export and import forms."`
 	Limits   limitsCmd   `cmd:"" help:"Export and import limit sets."`
 	Version  versionCmd  `cmd:"" help:"Print the program's version."`
+
+	RoundSheet  roundSheetCmd  `cmd:"" name:"round-sheet" help:"Write a round for paper, as PDF or worksheet."`
+	DeviceSheet deviceSheetCmd `cmd:"" name:"device-sheet" help:"Write what is filed of one device, as PDF."`
 }
 
 // env is what a command may touch beside its flags.

@@ -1,7 +1,6 @@
 package main
 
 import (
-	"io"
 	"net/url"
 )
 
@@ -28,14 +27,5 @@ func (c workbookCmd) Run(e *env) error {
 	setIf(query, "from", c.From.text())
 	setIf(query, "to", c.To.text())
 	setIf(query, "by", c.By)
-	return c.write(e, func(w io.Writer) error {
-		return e.with(c.Data, func(d *door) error {
-			body, err := d.get("/own/workbook", query)
-			if err != nil {
-				return err
-			}
-			defer body.Close()
-			return copyOut(e, w, body, "workbook")
-		})
-	})
+	return c.fetch(e, c.folder, "/own/workbook", query, "workbook")
 }

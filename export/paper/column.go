@@ -170,6 +170,12 @@ func readingColumn(words *static.Words, code string, at map[string]any, when []f
 		}
 		c.answer(value, words.Say(word))
 	}
+	if known.Type == forms.TypeYesNo { // a plain yes or no is enough on paper
+		c.answers = nil
+		for _, value := range known.Options {
+			c.answer(value, words.Say("option."+value))
+		}
+	}
 	return c
 }
 

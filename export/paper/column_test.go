@@ -27,7 +27,7 @@ func TestColumns_EveryAskHasOneAndEveryHeaderMeansOneThing(t *testing.T) {
 			if strings.Contains(c.Header, "reading.") || strings.Contains(c.Header, "option.") {
 				t.Errorf("%s: header %q has no words", form.ID, c.Header)
 			}
-			if code, _ := forms.CodeOf(c.Reading); code.Unit != c.Unit || len(code.Options) != len(c.Options) || len(c.Options) != len(c.Answers()) {
+			if code, _ := forms.CodeOf(c.Reading); code.Unit != c.Unit || len(code.Options) != len(c.Answers()) || len(c.Options) < len(c.Answers()) {
 				if c.Quick == nil {
 					t.Errorf("%s: %q has unit %q and %d answers, the code has %q and %d", form.ID, c.Header, c.Unit, len(c.Options), code.Unit, len(code.Options))
 				}

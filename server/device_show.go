@@ -27,6 +27,7 @@ type devicePage struct {
 	Entries                     []entryRow
 	Facts                       []fact
 	Actions                     []link
+	SheetHref                   string // the device sheet, "" for who may not take it
 	Label                       *label
 	NoLabel                     string
 	Earlier                     []link
@@ -116,6 +117,9 @@ func (s *Server) buildDevice(v *store.View, site store.Site, d store.Device, vie
 	s.labelOf(d, view)
 	for _, e := range d.Earlier {
 		view.Earlier = append(view.Earlier, link{Href: "/devices/" + e.ID, Text: s.earlier(e)})
+	}
+	if may(c, office) {
+		view.SheetHref = "/device-sheet?device=" + d.ID
 	}
 	if view.Change {
 		view.Actions = []link{{Href: "/devices/" + d.ID + "/edit", Text: k.say("office.device.edit")}}

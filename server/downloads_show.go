@@ -4,13 +4,18 @@ import (
 	"net/http"
 
 	"github.com/labstack/echo/v4"
+
+	"tripwell/export/paper"
+	"tripwell/forms"
+	"tripwell/store"
 )
 
 // downloadsPage offers what may leave the house.
 type downloadsPage struct {
 	Frame
 	Heading, Under, LabelsText string
-	Labels                     bool // false where no label can be made
+	Labels                     bool    // false where no label can be made
+	Round                      []field // empty where there is no site
 	Workbook                   []field
 }
 
@@ -36,10 +41,36 @@ func (s *Server) downloadsShow(c echo.Context) error {
 	if s.store.URL() != "" {
 		view.LabelsText, view.Labels = k.say("paper.labels.under"), true
 	}
+	view.Round = s.roundFields(sites)
 	return s.page(c, http.StatusOK, "downloads.html", view)
 }
 
 // workbookTake sends what the downloads page offers, within the reader's own scope.
 func (s *Server) workbookTake(c echo.Context) error {
 	return s.sendWorkbook(c, scope(c), person(c).ID)
+}
+
+// roundFields ask for a round sheet: of which site, which test, and until when.
+func (s *Server) roundFields(sites []store.Site) []field {
+	if len(sites) == 0 {
+		return nil
+	}
+	k := s.ink()
+	var offered, papers []option
+	for _, site := range sites {
+		offered = append(offered, option{Value: site.Code, Text: site.Name})
+	}
+	tasks := []option{{Text: k.say("paper.round.all_tasks"), Chosen: true}}
+	for _, task := range forms.Tasks() {
+		tasks = append(tasks, option{Value: task, Text: k.named("task", task)})
+	}
+	for _, name := range paper.SizeNames() {
+		papers = append(papers, option{Value: name, Text: k.say("paper.size." + name)})
+	}
+	return []field{
+		{Name: "site", ID: "round-site", Label: k.say("office.downloads.site"), Options: offered},
+		{Name: "task", Label: k.say("paper.col.task"), Options: tasks},
+		{Name: "until", Label: k.say("paper.round.until_label"), Hint: k.say("paper.round.until_hint"), Type: "date"},
+		{Name: "paper", Label: k.say("paper.size.label"), Options: papers},
+	}
 }

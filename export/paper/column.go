@@ -60,13 +60,18 @@ func Columns(form *forms.Form) ([]Column, error) {
 		c.answer("yes", words.Say("option.yes"))
 		cols = append(cols, c)
 	}
-	met := map[string]bool{}
+	// A question put a second time stands where it is put last: RESET after TEST, not where a dead device is first tried.
+	times := map[string]int{}
 	for _, step := range form.Steps {
 		for _, ask := range step.Asks {
-			if met[ask.Reading] {
+			times[ask.Reading]++
+		}
+	}
+	for _, step := range form.Steps {
+		for _, ask := range step.Asks {
+			if times[ask.Reading]--; times[ask.Reading] > 0 {
 				continue
 			}
-			met[ask.Reading] = true
 			if !ask.Series || form.Series == nil {
 				cols = append(cols, readingColumn(words, ask.Reading, nil, nil))
 				continue

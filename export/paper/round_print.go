@@ -78,7 +78,7 @@ func (p *roundPrint) makeLegend() error {
 	bound := false
 	for _, s := range p.round.Stops {
 		for _, c := range s.Columns {
-			bound = bound || len(c.Options) == 0
+			bound = bound || c.Reading != "" && len(c.Options) == 0
 			if c.Quick != nil && s.Form.Quick != nil {
 				quick = p.words.Say("paper.round.legend_quick", "name", c.Header, "text", p.words.Say(s.Form.Quick.Text))
 			}
@@ -190,6 +190,21 @@ func (p *roundPrint) band(room string) {
 	p.y += 7
 }
 
+// onPaper leaves out what need not be answered where one tick answers most devices: sixty of them must fit into a hand.
+func (s *Stop) onPaper(c Column) bool {
+	if s.Form.Quick == nil || c.Quick != nil {
+		return true
+	}
+	for _, step := range s.Form.Steps {
+		for _, ask := range step.Asks {
+			if ask.Reading == c.Reading && ask.Required {
+				return true
+			}
+		}
+	}
+	return false
+}
+
 // item is one question with its box or boxes.
 type item struct {
 	label   string
@@ -209,7 +224,9 @@ func (p *roundPrint) flow(s *Stop) (rows [][]item) {
 		used += it.width
 	}
 	for _, c := range s.Columns {
-		add(p.item(c))
+		if s.onPaper(c) {
+			add(p.item(c))
+		}
 	}
 	for _, c := range []string{AboutNotTested, AboutNote} {
 		it := item{label: p.words.Say("paper.col." + c)}

@@ -78,8 +78,11 @@ func (s *Server) deviceShow(c echo.Context) error {
 	if err != nil {
 		return err
 	}
-	if view.Label != nil && !may(c, office) {
-		view.Label.Sheet = "" // downloads are not open to crew
+	switch {
+	case may(c, office):
+		view.SheetHref = "/device-sheet?device=" + c.Param("device")
+	case view.Label != nil: // downloads are not open to crew
+		view.Label.Sheet, view.Label.PNG, view.Label.SVG = "", "", ""
 	}
 	return s.page(c, http.StatusOK, "device.html", view)
 }
@@ -117,9 +120,6 @@ func (s *Server) buildDevice(v *store.View, site store.Site, d store.Device, vie
 	s.labelOf(d, view)
 	for _, e := range d.Earlier {
 		view.Earlier = append(view.Earlier, link{Href: "/devices/" + e.ID, Text: s.earlier(e)})
-	}
-	if may(c, office) {
-		view.SheetHref = "/device-sheet?device=" + d.ID
 	}
 	if view.Change {
 		view.Actions = []link{{Href: "/devices/" + d.ID + "/edit", Text: k.say("office.device.edit")}}

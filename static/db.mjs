@@ -23,9 +23,11 @@ function openTray() {
 }
 
 function openAlong() {
-  return openDB("along", 1, {
+  return openDB("along", 2, {
     upgrade(db) {
+      for (const name of [...db.objectStoreNames]) db.deleteObjectStore(name); // copies only: they come again
       db.createObjectStore("sites", { keyPath: "log" });
+      db.createObjectStore("marks", { keyPath: "log" });
     },
   });
 }
@@ -51,6 +53,20 @@ function connection(open) {
     }
   };
 }
+
+const DAY = 86_400_000;
+const KEPT_LEAST = 14 * DAY, KEPT_MOST = 180 * DAY;
+
+/** Whether an acknowledged record may go: two weeks old and in a backup of the server, or half a year old. */
+export function isOver({ sent_at: sent, log, receipt }, now, backedUp) {
+  const age = now - sent;
+  return age > KEPT_MOST || (age > KEPT_LEAST && receipt?.pos > 0 && receipt.pos <= (backedUp[log] ?? 0));
+}
+
+const inOrder = (a, b) => {
+  const [x, y] = a.clock && b.clock && a.clock !== b.clock ? [a.clock, b.clock] : a.saved !== b.saved ? [a.saved, b.saved] : [a.id, b.id];
+  return x < y ? -1 : 1;
+};
 
 /** The `tray` database as the client uses it. */
 export function trayDB() {
@@ -92,7 +108,10 @@ export function trayDB() {
 
     /** What pages show: all that is not yet in a copy of the server's data. */
     records: () => use(async (db) => (await Promise.all(["waiting", "refused", "sent"].map((s) => db.getAllFromIndex("records", "state", s)))).flat()),
-    waiting: () => use((db) => db.getAllFromIndex("records", "state", "waiting")).then((rows) => rows.sort((a, b) => a.saved - b.saved || (a.n ?? 0) - (b.n ?? 0) || (a.id < b.id ? -1 : 1))),
+    /** In the order they were made: by the stamp, which never goes back as a phone's clock may. */
+    waiting: () => use((db) => db.getAllFromIndex("records", "state", "waiting")).then((rows) => rows.sort(inOrder)),
+    /** Every row there is, for the file that saves the tray. */
+    all: () => use((db) => db.getAll("records")).then((rows) => rows.sort(inOrder)),
     settle: (id, receipt, at) => change(id, { state: "sent", receipt, sent_at: at }),
     /** Sent records that the copy of their site holds by now are only kept from here on. */
     cover: (ids) => write("records", async (store) => {
@@ -102,31 +121,59 @@ export function trayDB() {
       }
     }),
     refuse: (id, receipt) => change(id, { state: "refused", receipt }),
-    /** Drops kept records sent before a moment; what waits, was refused or is in no copy yet is never touched. */
-    forget: (before) => write("records", async (store) => {
-      for (let c = await store.index("state").openCursor("kept"); c; c = await c.continue()) if (c.value.sent_at < before) await c.delete();
+    /** Drops kept records whose time is over; what waits, was refused or is in no copy yet is never touched. */
+    forget: (now, backedUp) => write("records", async (store) => {
+      for (let c = await store.index("state").openCursor("kept"); c; c = await c.continue()) if (isOver(c.value, now, backedUp)) await c.delete();
+    }),
+    /** Puts sent records that satisfy lost(row) back to what waits; gives how many. */
+    resend: (lost) => write("records", async (store) => {
+      let n = 0;
+      for (const state of ["sent", "kept"]) {
+        for (const row of await store.index("state").getAll(state)) {
+          if (!lost(row)) continue;
+          await store.put({ ...row, state: "waiting" });
+          n++;
+        }
+      }
+      return n;
+    }),
+    /** Sets a refused record aside: handed over to somebody in a file. It stays on the phone. */
+    handOver: (id) => change(id, { state: "handed" }),
+    /** Merges a stamp seen elsewhere: what is made next comes after it. */
+    sawClock: (stamp) => write("me", async (store) => {
+      const own = await store.get("clock");
+      if (!own || own < stamp) await store.put(stamp, "clock"); // 16 digits each: the order of texts is that of stamps
+    }),
+    /** Another id for this phone: counts begin anew under it, in the same transaction. */
+    renew: ({ installation, token, former }) => use(async (db) => {
+      const tx = db.transaction(["me", "counter"], "readwrite", STRICT), me = tx.objectStore("me");
+      await Promise.all([me.put(installation, "installation"), me.put(token, "token"), me.put(former, "former"), tx.objectStore("counter").clear(), tx.done]);
     }),
 
     /**
      * Makes records and keeps them together: counter, stamp, records and the end of their drafts change in one strict
-     * transaction, so n has no gap and no double. Each of makes is make({n, clock, installation, person}) → {row, clock}
-     * and must not wait for anything. photos: names of those the first one carries, which wait to be sent from then on.
+     * transaction, so n has no gap and no double. Each of makes is make({n, clock, installation, person}) → {row, clock,
+     * instead} and must not wait for anything; instead is the id of a refused record this one is made for. photos: names
+     * of those the first one carries, which wait to be sent from then on.
      */
     keep: (log, draftKeys, makes, photos = []) => use(async (db) => {
       const tx = db.transaction(["me", "counter", "records", "drafts", "photos"], "readwrite", STRICT);
       try {
         const me = tx.objectStore("me"), counter = tx.objectStore("counter");
         const [installation, person, before, last] = await Promise.all([me.get("installation"), me.get("person"), me.get("clock"), counter.get(log)]);
+        const mended = [];
         let n = last ?? 0, clock = before;
         const rows = makes.map((make) => {
           const made = make({ n: ++n, clock, installation, person });
           clock = made.clock;
-          return { ...made.row, n };
+          if (made.instead) mended.push(made.instead);
+          return { ...made.row, n, clock, from: installation };
         });
+        const records = tx.objectStore("records"), refused = (await Promise.all(mended.map((id) => records.get(id)))).filter(Boolean);
         const shots = (await Promise.all(photos.map((sha) => tx.objectStore("photos").get(sha)))).filter(Boolean);
         await Promise.all([
           ...shots.map((p) => tx.objectStore("photos").put({ ...p, entry: rows[0].id, state: p.state === "sent" ? "sent" : "waiting" })),
-          counter.put(n, log), me.put(clock, "clock"), ...rows.map((row) => tx.objectStore("records").add(row)),
+          counter.put(n, log), me.put(clock, "clock"), ...rows.map((row) => records.add(row)), ...refused.map((row) => records.put({ ...row, state: "mended" })),
           ...draftKeys.map((key) => tx.objectStore("drafts").delete(key)), tx.done,
         ]);
         return rows;
@@ -139,12 +186,25 @@ export function trayDB() {
   };
 }
 
-/** The `along` database: one row per site, {log, taken, snapshot}; the cursor is inside, so both change at once. */
+/**
+ * The `along` database: of each site its copy, {log, snapshot}, and its mark, {log, cursor, org_cursor, taken, whole, size, org_size}: how
+ * far the copy goes and when that was last seen to be all. Both change in one transaction; a mark alone may move on.
+ */
 export function alongDB() {
   const use = connection(openAlong);
+  const write = (stores, fn) => use(async (db) => {
+    const tx = db.transaction(stores, "readwrite");
+    await Promise.all([...fn((name) => tx.objectStore(name)), tx.done]);
+  });
   return {
-    sites: () => use((db) => db.getAll("sites")),
-    put: (row) => use((db) => db.put("sites", row)),
-    drop: (log) => use((db) => db.delete("sites", log)),
+    sites: () => use(async (db) => {
+      const tx = db.transaction(["sites", "marks"]);
+      const [copies, marks] = await Promise.all([tx.objectStore("sites").getAll(), tx.objectStore("marks").getAll()]);
+      const of = new Map(marks.map((m) => [m.log, m]));
+      return copies.filter((c) => of.has(c.log)).map((c) => ({ ...of.get(c.log), ...c }));
+    }),
+    put: ({ snapshot, ...mark }) => write(["sites", "marks"], (store) => [store("sites").put({ log: mark.log, snapshot }), store("marks").put(mark)]),
+    mark: ({ snapshot: _, ...mark }) => write(["marks"], (store) => [store("marks").put(mark)]),
+    drop: (log) => write(["sites", "marks"], (store) => [store("sites").delete(log), store("marks").delete(log)]),
   };
 }

@@ -36,6 +36,9 @@ export function exchange({ fetch, now }) {
     logs: (token) => call("/exchange/logs", { token }),
     snapshot: (token, site) => call(`/exchange/snapshot?log=${encodeURIComponent(site)}`, { token }),
     photo: (token, { sha256, entry, blob }) => call(`/exchange/photo?sha256=${sha256}&entry=${encodeURIComponent(entry)}`, { token, method: "POST", body: blob, type: "image/jpeg" }),
+    pull: (token, log, after, limit) => call(`/exchange/pull?log=${encodeURIComponent(log)}&after=${encodeURIComponent(after)}&limit=${limit}`, { token }),
+    ask: (token, ids) => call("/exchange/ask", { token, method: "POST", body: JSON.stringify({ ids }) }),
+    renew: (token, installation) => call("/exchange/renew", { token, method: "POST", body: JSON.stringify({ installation }) }),
     push: (token, body) => call("/exchange/push", { token, method: "POST", body }),
   };
 }

@@ -1,7 +1,8 @@
-// The pages that lead to a test: sites, the devices of a site in walking order, one device, and what the tray holds.
+// The pages that lead to a test: sites, the devices of a site in walking order, one device.
 
 import { html, useState } from "./vendor/htm-preact.mjs";
 import { circuitOf, contextOf, Foot, Mark, titleOf, Where } from "./field-parts.mjs";
+import { AlongLine } from "./field-along.mjs";
 import { dueNow, grouped, matches } from "./list.mjs";
 import { showDay, showMoment } from "./days.mjs";
 import { toDevice, toSite, toTest } from "./route.mjs";
@@ -25,6 +26,7 @@ export function SitesPage({ app }) {
       <span class="name">${s.name}</span><span class="tag">${s.code}</span>
       <span class="quiet">${s.taken ? say("field.site_line", { devices: say("field.devices", { n: s.devices }), due: say("field.due_count", { n: s.due }) }) : say(app.state.busy ? "field.fetching_site" : "field.not_taken")}</span></a></li>`)}</ul>
       ${sites.length === 0 && html`<p class="hint pad">${say(app.state.line === "signed-out" ? "field.no_sites_signed_out" : app.state.busy ? "field.fetching" : "field.no_sites_hint")}</p>`}
+      ${sites.length > 0 && html`<${AlongLine} app=${app} />`}
       ${app.state.me.name && html`<p class="who"><span>${say("field.signed_as", { name: app.state.me.name })}</span><button type="button" onClick=${app.somebodyElse}>${say("field.somebody_else")}</button></p>`}
     </main><${Foot} app=${app} />`;
 }
@@ -126,23 +128,6 @@ function Work({ app, site, device, forms }) {
     ${link("label", device.tag ? "register.not_this" : "register.bind")}
     ${device.place && link("move", "register.move")}
     ${link("replace", "replace.title")}</ul></section>`;
-}
-
-/** What this phone keeps: what waits, what the server refused and why. */
-export function TrayPage({ app }) {
-  const { say, state } = app;
-  const waiting = state.records.filter((r) => r.state === "waiting"), refused = state.records.filter((r) => r.state === "refused");
-  const line = (r) => html`<li class="row still" key=${r.id}><span class="name">${r.summary?.title ?? r.fact?.title ?? r.id}</span>
-    ${r.summary && html`<${Mark} verdict=${r.summary.result}>${say(`verdict.${r.summary.result}`)}<//>`}
-    <span class="quiet">${r.summary ? `${say(r.summary.corrects ? "correct.title" : `task.${r.summary.task}`, { task: say(`task.${r.summary.task}`) })} · ` : r.fact ? `${say(`register.wrote.${r.fact.kind.replace(".", "_")}`)} · ` : ""}${showMoment(app, r.saved)}</span>
-    ${r.state === "refused" && html`<span class="bad">${r.receipt?.text || say(r.receipt?.code === "too_large" ? "field.refused_too_large" : "field.refused_no_text")}</span>`}</li>`;
-  return html`
-    <${Where} app=${app} title=${waiting.length > 0 ? say("field.kept", { n: waiting.length }) : refused.length > 0 ? say("field.refused_count", { n: refused.length }) : say("field.all_sent")} context=${say("field.tray")} back="#/" />
-    <main>
-      ${waiting.length > 0 && html`<p class="hint pad">${say(`field.line.${state.line}`)}</p><button type="button" class="big more" onClick=${app.sendNow}>${say("field.send_now")}</button><ul class="rows">${waiting.map(line)}</ul>`}
-      ${refused.length > 0 && html`<section class="room"><h2>${say("field.refused_title")}</h2><p class="hint pad">${say("field.refused_hint")}</p><ul class="rows">${refused.map(line)}</ul></section>`}
-      ${state.persisted === false && html`<p class="hint pad">${say("field.not_persistent")}</p>`}
-    </main><${Foot} app=${app} />`;
 }
 
 /** Where an address leads nowhere on this phone. */

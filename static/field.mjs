@@ -5,7 +5,10 @@ import { html, render } from "./vendor/htm-preact.mjs";
 import { alongDB, trayDB } from "./db.mjs";
 import { exchange } from "./exchange.mjs";
 import { fieldApp } from "./field-app.mjs";
-import { DevicePage, DevicesPage, LostPage, SitesPage, TrayPage } from "./field-lists.mjs";
+import { DevicePage, DevicesPage, LostPage, SitesPage } from "./field-lists.mjs";
+import { AlongPage } from "./field-along.mjs";
+import { HomeScreenPage, TrayPage } from "./field-tray.mjs";
+import { caring } from "./caring.mjs";
 import { TestPage } from "./field-test.mjs";
 import { WorkPage } from "./field-work.mjs";
 import { JudgeVersion } from "./judge.mjs";
@@ -36,6 +39,8 @@ function Page({ app }) {
       const test = app.openTest(route.device, route.task);
       return test ? html`<${TestPage} app=${app} test=${test} key=${test.draft.key} />` : html`<${LostPage} app=${app} text=${say("field.device_not_here")} />`;
     }
+    case "along":
+      return html`<${AlongPage} app=${app} />`;
     case "tray":
       return html`<${TrayPage} app=${app} />`;
     default:
@@ -45,6 +50,11 @@ function Page({ app }) {
 
 async function start() {
   const say = speaker(await (await fetch(new URL("./words/en.json", import.meta.url))).json());
+  if (onlyATab(navigator)) {
+    root.replaceChildren();
+    render(html`<${HomeScreenPage} say=${say} />`, root);
+    return;
+  }
   const tray = trayDB(), along = alongDB();
   let keepSaved = false, drawing = false, drawn = false;
   const draw = (app) => {
@@ -63,12 +73,13 @@ async function start() {
     if (location.hash === hash) onRoute();
     else location.hash = hash;
   };
-  const app = fieldApp({ tray, say, draw, go, now, make: makeRecord, newId: () => newId(now()), judgeVersion: JudgeVersion, keepSending: () => sender.kick(), takeOver: () => sync.takeOver(), leave: (path) => location.assign(path) });
+  const app = fieldApp({ tray, say, draw, go, now, make: makeRecord, newId: () => newId(now()), judgeVersion: JudgeVersion, keepSending: () => { others.tell(); sender.kick(); }, takeOver: () => sync.takeOver(), leave: (path) => location.assign(path) });
   const sync = syncing({ state: app.state, tray, along, net: exchange({ fetch: (...a) => fetch(...a), now }), now, newId: () => newId(now()), changed: app.changed });
-  const sender = sending({ run: () => alone(sync.run), later: (fn, ms) => setTimeout(fn, ms), cancel: clearTimeout, random: Math.random });
+  const sender = sending({ run: () => alone(async () => { const done = await sync.run(); others.tell(); return done; }), later: (fn, ms) => setTimeout(fn, ms), cancel: clearTimeout, random: Math.random });
   const version = versions({ container: navigator.serviceWorker, calm: () => isCalm(app.state), session: sessionStorage, now,
     offered: (yes) => { app.state.newer = yes; app.changed(); }, load: () => location.reload() });
-  app.takeNewer = version.take;
+  const others = otherPages(async () => { await readKept(app.state, tray, along); app.changed(); });
+  Object.assign(app, { takeNewer: version.take }, caring({ app, tray, now, make: makeRecord, choose: sync.choose, send: () => sender.kick(), download }));
   app.state.insecure = !globalThis.isSecureContext;
   const onRoute = () => {
     app.route(parseRoute(location.hash, location.pathname), keepSaved);
@@ -78,6 +89,7 @@ async function start() {
   };
 
   await readKept(app.state, tray, along);
+  await readDrafts(app.state, tray);
   addEventListener("hashchange", onRoute);
   addEventListener("online", () => sender.kick());
   document.addEventListener("visibilitychange", () => {
@@ -108,13 +120,37 @@ function followTag(app) {
   if (device) location.replace(toDevice(device.id));
 }
 
+/** A tab of a browser that clears what a page keeps unless it stands on the home screen: no tray there. Only such browsers say standalone. */
+const onlyATab = (nav) => nav.standalone === false && nav.maxTouchPoints > 1;
+
+/** Pages of one phone tell each other that the databases changed. */
+function otherPages(changed) {
+  const channel = globalThis.BroadcastChannel ? new BroadcastChannel("tripwell-kept") : null;
+  if (channel) channel.onmessage = () => { changed().catch(console.error); };
+  return { tell: () => channel?.postMessage("changed") };
+}
+
+/** Hands a file to the phone: by its share sheet where it takes files (installed apps cannot always download), else as a download. */
+async function download(name, text) {
+  const file = new File([text], name, { type: "application/json" });
+  if (navigator.maxTouchPoints > 1 && navigator.canShare?.({ files: [file] })) return navigator.share({ files: [file] });
+  const link = Object.assign(document.createElement("a"), { href: URL.createObjectURL(file), download: name });
+  link.click();
+  setTimeout(() => URL.revokeObjectURL(link.href), 60_000);
+}
+
 async function readKept(state, tray, along) {
-  for (const name of ["installation", "token", "person", "name", "logs", "instrument", "unfolded", "offset", "last_added", "rounds"]) state.me[name] = await tray.me(name);
+  for (const name of ["installation", "token", "person", "name", "logs", "instrument", "unfolded", "offset", "last_added", "rounds", "chosen", "former", "backed_up"]) state.me[name] = await tray.me(name);
   state.offset = state.me.offset ?? 0;
-  for (const row of await along.sites()) state.sites.set(row.log, row);
+  const sites = await along.sites();
+  state.sites.clear();
+  for (const row of sites) state.sites.set(row.log, row);
   state.records = await tray.records();
   state.own = new Set(await tray.recordIds());
   state.photos = (await tray.waitingPhotos()).length;
+}
+
+async function readDrafts(state, tray) {
   for (const draft of await tray.drafts()) state.drafts.set(draft.key, draft);
 }
 

@@ -18,7 +18,7 @@ export function parseRoute(hash, path = "") {
   if (page === "site" && a) return { page, code: a };
   if (page === "device" && a) return { page, device: a };
   if (page === "test" && a && b) return { page, device: a, task: b };
-  if (page === "tray" || page === "find") return { page };
+  if (page === "tray" || page === "find" || page === "along") return { page };
   if (WORK.has(page) && a) return { page, a, b };
   if (!h && labelled) return { page: "tag", tag: bareTag(labelled[1]) };
   return { page: "sites" };

@@ -11,13 +11,16 @@ const KEPT_STATES = new Set(["stored", "already", "held"]);
 
 const utf8 = new TextEncoder();
 
-/** The next batch: as many of the oldest rows as one push may carry, at most `most`. */
+/** The installation a record names: of the envelope, which no text in the body can look like (quotes are escaped there). */
+export const fromOf = (row) => row.from ?? /"from":"([0-9a-f-]{36})"/.exec(row.record)?.[1];
+
+/** The next batch: as many of the oldest rows of one installation as one push may carry, at most `most`. */
 export function nextBatch(rows, most = MOST_RECORDS) {
   const batch = [];
   let bytes = 0;
   for (const row of rows) {
     const size = utf8.encode(JSON.stringify(row.record)).length + 16;
-    if (batch.length > 0 && (batch.length >= most || bytes + size > MOST_BYTES)) break;
+    if (batch.length > 0 && (batch.length >= most || bytes + size > MOST_BYTES || fromOf(row) !== fromOf(batch[0]))) break;
     batch.push(row);
     bytes += size;
   }
@@ -35,12 +38,16 @@ export function pushBody(batch, sent) {
  */
 export async function drain({ storage, send, sentAt }) {
   let most = MOST_RECORDS;
-  const done = { state: "empty", sent: 0, refused: 0, retryAfter: 0 };
+  const done = { state: "empty", sent: 0, refused: 0, retryAfter: 0 }, passedOver = new Set();
   for (;;) {
-    const rows = await storage.waiting();
-    if (rows.length === 0) return done;
-    const batch = nextBatch(rows, most);
-    const answer = await send(pushBody(batch, sentAt()));
+    const rows = (await storage.waiting()).filter((row) => !passedOver.has(fromOf(row)));
+    if (rows.length === 0) return passedOver.size > 0 ? { ...done, state: "signed-out" } : done;
+    const batch = nextBatch(rows, most), from = fromOf(batch[0]);
+    const answer = await send(pushBody(batch, sentAt()), from);
+    if (answer.status === 401 && rows.some((row) => fromOf(row) !== from)) { // an id of before whose token ended holds up nobody else
+      passedOver.add(from);
+      continue;
+    }
     if (answer.status === 413) {
       if (batch.length === 1) {
         await storage.refuse(batch[0].id, { id: batch[0].id, state: "refused", code: "too_large", text: "" });
@@ -64,6 +71,7 @@ async function settleBatch(storage, batch, receipts, done) {
     if (!sentIds.delete(receipt?.id)) continue;
     if (KEPT_STATES.has(receipt.state)) {
       await storage.settle(receipt.id, receipt);
+      if (receipt.reused) done.reused = true;
       done.sent++;
       settled++;
     } else if (receipt.state === "refused") {

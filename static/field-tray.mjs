@@ -1,0 +1,52 @@
+// What this phone keeps: what waits, what the server refused and why, what a branch holds, and the ways out of each.
+
+import { html } from "./vendor/htm-preact.mjs";
+import { Foot, Mark, Where } from "./field-parts.mjs";
+import { showMoment } from "./days.mjs";
+
+export function TrayPage({ app }) {
+  const { say, state } = app;
+  const { waiting, refused, held } = sorted(state.records);
+  return html`
+    <${Where} app=${app} title=${title(say, waiting, refused)} context=${say("field.tray")} back="#/" />
+    <main>
+      ${waiting.length > 0 && html`<p class="hint pad">${say(`field.line.${state.line}`)}</p><p class="hint pad">${say("phone.oldest", { when: showMoment(app, waiting[0].saved) })}</p>
+        <button type="button" class="big more" onClick=${app.sendNow}>${say("field.send_now")}</button><ul class="rows">${waiting.map((r) => html`<${TrayRow} app=${app} row=${r} key=${r.id} />`)}</ul>`}
+      ${refused.length > 0 && html`<section class="room"><h2>${say("field.refused_title")}</h2><p class="hint pad">${say("phone.refused_ways")}</p>
+        <ul class="rows">${refused.map((r) => html`<${TrayRow} app=${app} row=${r} key=${r.id} />`)}</ul></section>`}
+      ${held.length > 0 && html`<section class="room"><h2>${say("phone.held", { n: held.length })}</h2><p class="hint pad">${say("phone.held_hint")}</p><ul class="rows">${held.map((r) => html`<${TrayRow} app=${app} row=${r} key=${r.id} />`)}</ul></section>`}
+      <section class="room"><h2>${say("phone.rescue")}</h2><p class="hint pad">${say("phone.rescue_hint")}</p><button type="button" class="big more" onClick=${app.saveTray}>${say("phone.rescue_go")}</button></section>
+      <p class="hint pad">${state.persisted === undefined ? say("phone.asking") : say(state.persisted ? "phone.persistent" : "field.not_persistent")}</p>
+    </main><${Foot} app=${app} />`;
+}
+
+const sorted = (records) => ({
+  waiting: records.filter((r) => r.state === "waiting").sort((a, b) => a.saved - b.saved), refused: records.filter((r) => r.state === "refused"),
+  held: records.filter((r) => r.state === "sent" && r.receipt?.state === "held"),
+});
+
+function title(say, waiting, refused) {
+  if (waiting.length > 0) return say("field.kept", { n: waiting.length });
+  return refused.length > 0 ? say("field.refused_count", { n: refused.length }) : say("field.all_sent");
+}
+
+function TrayRow({ app, row: r }) {
+  const { say } = app;
+  return html`<li class="row still"><span class="name">${r.summary?.title ?? r.fact?.title ?? r.id}</span>
+    ${r.summary?.result && html`<${Mark} verdict=${r.summary.result}>${say(`verdict.${r.summary.result}`)}<//>`}
+    <span class="quiet">${wrote(say, r)}${showMoment(app, r.saved)}</span>
+    ${r.state === "refused" && html`<span class="bad">${r.receipt?.text || say(r.receipt?.code === "too_large" ? "field.refused_too_large" : "field.refused_no_text")}</span>
+      <span class="ways"><button type="button" onClick=${() => app.sayAgain(r)}>${say("phone.say_again")}</button> <button type="button" onClick=${() => app.handOver(r)}>${say("phone.hand_over")}</button></span>`}</li>`;
+}
+
+/** What kind of record it is, in front of when it was made. */
+function wrote(say, { summary, fact }) {
+  if (summary?.task) return `${say(summary.corrects ? "correct.title" : `task.${summary.task}`, { task: say(`task.${summary.task}`) })} · `;
+  return fact ? `${say(`register.wrote.${fact.kind.replace(".", "_")}`)} · ` : "";
+}
+
+/** Where a phone's browser would lose what is kept in a plain tab. */
+export function HomeScreenPage({ say }) {
+  return html`<header class="where"><h1>${say("phone.home_title")}</h1></header><main>
+    <p class="pad">${say("phone.home_why")}</p><ol class="pad"><li>${say("phone.home_share")}</li><li>${say("phone.home_add")}</li><li>${say("phone.home_open")}</li><li>${say("phone.home_sign_in")}</li></ol></main>`;
+}

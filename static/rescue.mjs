@@ -1,0 +1,19 @@
+// The file that carries a tray to another device or to a server by hand, and a refused record made anew. Pure.
+
+/** The whole tray as the text of a file: every record as the exact string it is. */
+export function trayFile(rows, me, at) {
+  const records = rows.map((row) => ({ record: row.record, state: row.state }));
+  return JSON.stringify({ tripwell: "tray", v: 1, installation: me.installation, person: me.name, made: new Date(at).toISOString(), records });
+}
+
+/** Name of the file: who and when. */
+export const trayFileName = (me, at) => `tripwell-tray-${new Date(at).toISOString().slice(0, 16).replace(/[:T]/g, "-")}-${(me.installation ?? "").slice(-6)}.json`;
+
+/**
+ * What a refused record says, for a new record in its place: the same thing at the same time, with an id, a count and a stamp of
+ * its own and by whoever is signed in now.
+ */
+export function saidAgain(row) {
+  const { kind, log, subject, at, body } = JSON.parse(row.record);
+  return { kind, log, subject, at: Date.parse(at), body };
+}

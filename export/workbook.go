@@ -46,8 +46,10 @@ type LogLine struct {
 
 // DeviceLine is a device with its site.
 type DeviceLine struct {
-	Site   store.Site
-	Device store.DeviceRow
+	Site    store.Site
+	Device  store.DeviceRow
+	Fields  map[string]any // of the register; nil where they are not known
+	Circuit map[string]any // fields of its circuit
 }
 
 // DueLine is a due date with its site.

@@ -12,6 +12,11 @@ var registerColumns = []column{
 	{"status", 14, textCell}, {"last_button", 12, dayCell}, {"result_button", 16, verdictCell}, {"last_instrument", 12, dayCell},
 	{"result_instrument", 16, verdictCell}, {"last_receptacle", 12, dayCell}, {"result_receptacle", 16, verdictCell},
 	{"next_date", 12, dayCell}, {"next_task", 16, textCell}, {"device_id", 38, textCell},
+	// The rest makes the sheet a register that can be taken in again.
+	{"zone", 18, textCell}, {"standard", 10, textCell}, {"address", 24, textCell}, {"order", 8, numberCell}, {"critical_load", 18, textCell}, {"whom_to_tell", 18, textCell},
+	{"breaker_a", 10, numberCell}, {"poles", 8, numberCell}, {"circuit_v", 10, numberCell}, {"conductor", 12, textCell}, {"supply", 10, textCell}, {"circuit_standard", 10, textCell},
+	{"serial", 14, textCell}, {"nominal_v", 10, numberCell}, {"delayed", 10, textCell}, {"waveform", 14, textCell}, {"equipment_ground", 16, textCell}, {"faces", 8, numberCell},
+	{"own_limit_set", 18, textCell}, {"gauge", 10, textCell}, {"length_m", 10, numberCell}, {"kept_at", 18, textCell}, {"note", 40, textCell},
 }
 
 // register writes one row a device, in walking order.
@@ -49,7 +54,31 @@ func (b *book) registerRow(s *sheet, line DeviceLine) error {
 		}
 		s.day(last.Day).verdict(last.Result)
 	}
-	return s.day(next.Due).text(b.word("task", next.Task)).text(d.ID).end()
+	s.day(next.Due).text(b.word("task", next.Task)).text(d.ID)
+	b.registerFields(s, line)
+	return s.end()
+}
+
+// registerFields writes the fields that nothing else of the row shows, as an import reads them.
+func (b *book) registerFields(s *sheet, line DeviceLine) {
+	field := func(fields map[string]any, names ...string) {
+		for _, name := range names {
+			switch v := fields[name].(type) {
+			case float64:
+				s.figure(v)
+			case string:
+				s.text(v)
+			case bool:
+				s.text(b.say(map[bool]string{true: "sheet.yes", false: "sheet.no"}[v]))
+			default:
+				s.skip()
+			}
+		}
+	}
+	p := line.Device.Place
+	s.text(line.Site.Zone).text(line.Site.Standard).text(line.Site.Address).rating(p.Order).text(p.CriticalLoad).text(p.WhomToTell)
+	field(line.Circuit, "breaker_a", "poles", "voltage_v", "conductor", "supply", "standard")
+	field(line.Fields, "serial", "nominal_v", "delayed", "waveform", "equipment_ground", "faces", "limit_set", "gauge", "length_m", "where", "note")
 }
 
 // nextDue is the earliest date of a device; Due is NoDay where there is none.

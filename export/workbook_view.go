@@ -137,13 +137,31 @@ func countRefused(refused []store.Refusal, sites []store.Site, all bool) (n int)
 func deviceLines(v *store.View, sites []store.Site) iter.Seq2[DeviceLine, error] {
 	return func(yield func(DeviceLine, error) bool) {
 		for _, site := range sites {
+			fields, circuits, err := registerFields(v, site.ID)
+			if err != nil {
+				yield(DeviceLine{}, err)
+				return
+			}
 			for d, err := range v.Devices(site.ID) {
-				if !yield(DeviceLine{site, d}, err) || err != nil {
+				if !yield(DeviceLine{site, d, fields[d.ID], circuits[d.Panel+"\x1f"+d.Circuit]}, err) || err != nil {
 					return
 				}
 			}
 		}
 	}
+}
+
+// registerFields are the fields of a site's devices by id, and of its circuits by panel and numbers.
+func registerFields(v *store.View, site string) (devices, circuits map[string]map[string]any, err error) {
+	if devices, err = v.DeviceFields(site); err != nil {
+		return nil, nil, err
+	}
+	list, err := v.Circuits(site)
+	circuits = make(map[string]map[string]any, len(list))
+	for _, c := range list {
+		circuits[c.Panel+"\x1f"+c.Numbers] = c.Fields
+	}
+	return devices, circuits, err
 }
 
 // dueLines asks each site for its own day: near midnight two zones have two.

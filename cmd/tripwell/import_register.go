@@ -134,7 +134,7 @@ func (c importRegisterCmd) print(e *env, r register.Report) error {
 
 var leftOutWords = map[string]string{"title": "a title", "total": "a total", "header": "the headings again", "gone": "no longer in use"}
 
-var skippedWords = map[string]string{"asked": "as the map says", "hidden": "it is hidden; name it in the map to read it", "no-header": "it has no row of headings"}
+var skippedWords = map[string]string{"asked": "as the map says", "hidden": "it is hidden; name it in the map to read it", "no-header": "it has no row of headings", "results": "it holds entries or dates, no register"}
 
 func rowName(sheet string, row int) string {
 	where := ""

@@ -3,6 +3,7 @@ package register
 import (
 	"fmt"
 	"maps"
+	"slices"
 	"strings"
 
 	"tripwell/export/intake"
@@ -63,11 +64,13 @@ type planner struct {
 	order map[string]int // walking order given so far, by room
 	first map[string]Row
 	made  map[string]bool // codes of sites this import registers
-	out   []store.Draft
+
+	circuitSaid map[string]map[string]saidAt // what rows so far said of a circuit, by field
+	out         []store.Draft
 }
 
 func planRows(k *known, by string, rows []Row, ask Ask) Plan {
-	p := &planner{known: k, by: by, ask: ask, plan: Plan{States: map[RowAt]string{}}, lines: map[string]Row{}, order: map[string]int{}, first: siteFacts(rows), made: map[string]bool{}}
+	p := &planner{known: k, by: by, ask: ask, plan: Plan{States: map[RowAt]string{}}, lines: map[string]Row{}, order: map[string]int{}, first: siteFacts(rows), made: map[string]bool{}, circuitSaid: map[string]map[string]saidAt{}}
 	for _, row := range rows {
 		p.row(row)
 	}
@@ -247,7 +250,7 @@ func (p *planner) place(site store.Site, d *rowDevice, row *Row) {
 	}
 	if d.was != nil && d.was.Place.ID != "" {
 		w := d.was.Place
-		have := map[string]any{"building": w.Building, "floor": w.Floor, "room": w.Room, "name": w.Name, "order": w.Order, "critical_load": w.CriticalLoad}
+		have := map[string]any{"building": w.Building, "floor": w.Floor, "room": w.Room, "name": w.Name, "order": w.Order, "critical_load": w.CriticalLoad, "whom_to_tell": w.WhomToTell}
 		p.change("place.set", site.ID, d.place, row.Place, have)
 		return
 	}
@@ -279,6 +282,7 @@ func (p *planner) circuit(site store.Site, d *rowDevice, row *Row) {
 	}
 	key := circuitKey(site.ID, row.Panel, row.CircuitNo)
 	c, ok := p.circuits[key]
+	p.agree(key, row)
 	if ok {
 		p.change("circuit.set", site.ID, c.id, row.Circuit, c.fields)
 	} else {
@@ -288,6 +292,34 @@ func (p *planner) circuit(site store.Site, d *rowDevice, row *Row) {
 		p.add(p.importID("circuit.set", row.Site, strings.ToLower(row.Panel), strings.ToLower(row.CircuitNo)), "circuit.set", site.ID, c.id, maps.Clone(c.fields))
 	}
 	row.Device["circuit"] = c.id
+}
+
+// agree takes out of a row what an earlier row of the file says otherwise of the same circuit, and names it: taking both
+// in turn would change the circuit with every import.
+func (p *planner) agree(circuit string, row *Row) {
+	said := p.circuitSaid[circuit]
+	if said == nil {
+		said = map[string]saidAt{}
+		p.circuitSaid[circuit] = said
+	}
+	for _, name := range slices.Sorted(maps.Keys(row.Circuit)) {
+		v := row.Circuit[name]
+		first, ok := said[name]
+		switch {
+		case !ok:
+			said[name] = saidAt{v, row.Line}
+		case !sameValue(first.value, v):
+			p.plan.Problems = append(p.plan.Problems, Problem{intake.Problem{Sheet: row.Sheet, Row: row.Line, Column: name, Value: fmt.Sprint(v),
+				Text: fmt.Sprintf("Row %d says %v for the same circuit, which was kept. Look which is right.", first.line, first.value)}, false})
+			delete(row.Circuit, name)
+		}
+	}
+}
+
+// saidAt is what a row said of a circuit.
+type saidAt struct {
+	value any
+	line  int
 }
 
 // register drafts the device itself.

@@ -199,16 +199,30 @@ func (r *reader) table(sheet intake.Sheet, sheets int) Table {
 		return t
 	}
 	t.Header = header + 1
-	columns := r.columns(&t, sheet, header)
-	t.Site = r.siteOfSheet(&t, sheet, said, sheets)
+	if t.Skipped == "" && said.Header == 0 && isResults(sheet.Rows[header]) {
+		t.Skipped = "results"
+	}
 	if t.Skipped != "" {
 		return t
 	}
+	columns := r.columns(&t, sheet, header)
+	t.Site = r.siteOfSheet(&t, sheet, said, sheets)
 	read := rowReader{reader: r, columns: columns, site: t.Site}
 	for i := header + 1; i < len(sheet.Rows); i++ {
 		r.row(&t, &read, sheet, i, header)
 	}
 	return t
+}
+
+// isResults tells the headings of entries, readings and dates, as the workbook has them, from those of a register.
+func isResults(head []intake.Cell) bool {
+	return slices.ContainsFunc(head, func(c intake.Cell) bool {
+		switch intake.Label(c.Text) {
+		case "entry_id", "limit_id", "test_day", "verdict", "due", "flag":
+			return true
+		}
+		return false
+	})
 }
 
 // header finds the row of the headings, from 0.

@@ -68,6 +68,11 @@ func messySheet(r *rand.Rand, b building, n int) [][]any {
 	amps := func() any {
 		return []any{"20A", 20, "20 A", 15, "15 amp", "20"}[r.IntN(6)]
 	}
+	// What is said of a circuit agrees from row to row, however it is written.
+	breaker := func(i int) any {
+		n := []int{20, 15}[i/3%2]
+		return []any{n, fmt.Sprintf("%dA", n), fmt.Sprintf("%d A", n), fmt.Sprintf("%d amp", n)}[r.IntN(4)]
+	}
 	var rows [][]any
 	for i := 0; i < n; i++ {
 		floor := b.floors[i*len(b.floors)/n]
@@ -81,9 +86,9 @@ func messySheet(r *rand.Rand, b building, n int) [][]any {
 		var row []any
 		switch b.name {
 		case "Ash House":
-			row = []any{"Main", floor, room, spot, pick(kinds...), "LP-1", circuit, amps(), pick("12 AWG", "12", "10 AWG"), amps(), pick("Make A", "Make B", ""), day(), pick("Y", "y", "✓", "yes", ""), pick("", "", "loose, check", "\"old\" plate")}
+			row = []any{"Main", floor, room, spot, pick(kinds...), "LP-1", circuit, breaker(i), []string{"12 AWG", "14 AWG"}[i/3%2], amps(), pick("Make A", "Make B", ""), day(), pick("Y", "y", "✓", "yes", ""), pick("", "", "loose, check", "\"old\" plate")}
 		case "Birch Hall":
-			row = []any{floor, room, spot, pick(kinds...), "BH / " + circuit, amps(), amps(), pick("Make C", "Make A"), pick("C-20", ""), day(), pick("Y", "x", "OK"), ""}
+			row = []any{floor, room, spot, pick(kinds...), "BH / " + circuit, breaker(i), amps(), pick("Make C", "Make A"), pick("C-20", ""), day(), pick("Y", "x", "OK"), ""}
 		default:
 			row = []any{room, spot, pick(kinds...), "DB-1", circuit + "." + fmt.Sprint(i), []any{16, "16A", "20 A"}[r.IntN(3)], pick("30", "30 mA", "0.03 A", "30mA"), day(), ""}
 		}
@@ -154,16 +159,16 @@ func messyBook(t testing.TB) *excelize.File {
 			put(row, []any{"", "UPSTAIRS, STILL TO BE WALKED"})
 			row++
 			for _, bad := range [][]any{
-				{"Main", "First", "Attic", "Loft hatch", "Light switch", "LP-1", "44", "20A"},
-				{"Main", "First", "", "", "GFCI", "LP-1", "45", "20A"},
+				{"Main", "First", "Attic", "Loft hatch", "Light switch", "LP-1", "144", "20A"},
+				{"Main", "First", "", "", "GFCI", "LP-1", "145", "20A"},
 				{"Main", "First", "Attic", "Cistern", "GFCI", "LP-1", time.Date(2026, 10, 12, 0, 0, 0, 0, time.UTC), "20A"},
-				{"Main", "First", "Attic", "Fan", "GFCI", "LP-1", "47", "twenty"},
-				{"Main", "First", "Attic", "Gable", "GFCI", "", "48", "20A"},
-				{"Main", "First", "Attic", "Stairhead", "GFCI", "LP-1", "49", "20A", "12", "20A", "", "31/31/2020"},
-				{"Main", "First", "Attic", "Stairhead 2", "GFCI", "LP-1", "49", "20A", "12", "20A", "", "2019"},
-				{"Main", "First", "Attic", "Skylight", "GFCI", "LP-1", "50", "20A", "12", "20V"},
-				{"Main", "First", "Attic", "Twice", "GFCI", "LP-1", "51", "20A"},
-				{"Main", "First", "attic", "twice", "GFCI", "LP-1", "51", "20A"},
+				{"Main", "First", "Attic", "Fan", "GFCI", "LP-1", "147", "twenty"},
+				{"Main", "First", "Attic", "Gable", "GFCI", "", "148", "20A"},
+				{"Main", "First", "Attic", "Stairhead", "GFCI", "LP-1", "149", "20A", "12", "20A", "", "31/31/2020"},
+				{"Main", "First", "Attic", "Stairhead 2", "GFCI", "LP-1", "149", "20A", "12", "20A", "", "2019"},
+				{"Main", "First", "Attic", "Skylight", "GFCI", "LP-1", "150", "20A", "12", "20V"},
+				{"Main", "First", "Attic", "Twice", "GFCI", "LP-1", "151", "20A"},
+				{"Main", "First", "attic", "twice", "GFCI", "LP-1", "151", "20A"},
 			} {
 				put(row, bad)
 				row++

@@ -1,0 +1,205 @@
+package export
+
+import (
+	"bytes"
+	"context"
+	"encoding/csv"
+	"encoding/json"
+	"fmt"
+	"math/rand/v2"
+	"os"
+	"slices"
+	"strings"
+	"testing"
+	"time"
+
+	"tripwell/export/intake"
+	"tripwell/export/register"
+	"tripwell/forms"
+	"tripwell/store"
+)
+
+// take imports a file into a house.
+func (h *house) take(t *testing.T, name string, raw []byte, m register.Mapping) register.Report {
+	t.Helper()
+	h.now = h.now.Add(time.Minute)
+	report, err := register.Import(context.Background(), h.Store, name, bytes.NewReader(raw), register.Options{By: h.ID(), Mapping: m}, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return report
+}
+
+// said is everything a register says, one line a device in some order, without the ids of the store that holds it.
+func (h *house) said(t *testing.T) []string {
+	t.Helper()
+	var lines []string
+	err := h.View(everything, func(v *store.View) error {
+		sites, err := v.Sites()
+		if err != nil {
+			return err
+		}
+		for _, s := range sites {
+			circuits, err := v.Circuits(s.ID)
+			if err != nil {
+				return err
+			}
+			for row, err := range v.Devices(s.ID) {
+				if err != nil {
+					return err
+				}
+				d, err := v.Device(row.ID, forms.DayOf(h.now))
+				if err != nil {
+					return err
+				}
+				delete(d.Fields, "place")
+				delete(d.Fields, "circuit")
+				place := d.Place
+				place.ID, place.Site = "", ""
+				var circuit map[string]any
+				for _, c := range circuits {
+					if c.Panel == d.Panel && c.Numbers == d.Circuit && d.Circuit != "" {
+						circuit = c.Fields
+						delete(circuit, "panel")
+					}
+				}
+				line, err := json.Marshal([]any{s.Code, s.Name, s.Zone, s.Standard, s.Address, place, d.Tag, d.Panel, d.Circuit, circuit, d.Fields})
+				if err != nil {
+					return err
+				}
+				lines = append(lines, string(line))
+			}
+		}
+		return nil
+	})
+	if err != nil {
+		t.Fatal(err)
+	}
+	slices.Sort(lines)
+	return lines
+}
+
+// randomRegister types a register with every column, and texts that have broken spreadsheets before.
+func randomRegister(r *rand.Rand) []byte {
+	pick := func(list ...string) string { return list[r.IntN(len(list))] }
+	text := func(i int) string {
+		return pick("", "plain", "=1+1", "+49 30", "-", "@home", "a,b;c", `2" box`, "_x0041_", "käse & <b>", "'quoted", "1/2", "2026-03-04x", "TRUE", "Ω≤5", "no", "14/16") + pick("", fmt.Sprint(" ", i))
+	}
+	head := register.ColumnNames()
+	head = slices.DeleteFunc(head, func(s string) bool { return s == "panel_circuit" || s == "status" || s == "tag" })
+	var out bytes.Buffer
+	w := csv.NewWriter(&out)
+	_ = w.Write(head)
+	for i := range 5 + r.IntN(40) {
+		site := pick("ELM-4", "OAK-1")
+		kind := pick(forms.Kinds()...)
+		row := make([]string, len(head))
+		circuit := r.IntN(4) > 0
+		for c, name := range head {
+			switch name {
+			case "site":
+				row[c] = site
+			case "site_name":
+				row[c] = map[string]string{"ELM-4": "Elm Hall", "OAK-1": "=Oak"}[site]
+			case "zone":
+				row[c] = "America/Denver"
+			case "standard":
+				row[c] = "NEC"
+			case "address":
+				row[c] = "1 Lane, " + site
+			case "kind":
+				row[c] = kind
+			case "place":
+				row[c] = fmt.Sprintf("Spot %d %s", i, text(i))
+			case "order":
+				row[c] = fmt.Sprint(i + 1)
+			case "panel":
+				row[c] = "LP-1"
+			case "circuit":
+				row[c] = pick(fmt.Sprint(i+1), fmt.Sprintf("%d/%d", i+1, i+3))
+			case "breaker_a", "poles", "voltage_v", "rating_a", "nominal_v", "rated_residual_ma", "faces", "length_m":
+				row[c] = pick("", "20", "0.3", "16.5", "1000")
+			case "supply":
+				row[c] = pick("", "grounded", "isolated")
+			case "circuit_standard":
+				row[c] = pick("", "NEC", "IEC")
+			case "equipment_ground":
+				row[c] = pick("", "yes", "none-permitted")
+			case "delayed":
+				row[c] = pick("", "yes", "no")
+			case "installed":
+				row[c] = pick("", "2021-02-28", "2019-12-31")
+			case "limit_set":
+				row[c] = pick("", "us-class-a")
+			case "waveform":
+				row[c] = pick("", "ac", "pulsating-dc")
+			case "kept_at":
+			default:
+				row[c] = text(i)
+			}
+			if !circuit && slices.Contains([]string{"panel", "circuit", "breaker_a", "poles", "voltage_v", "conductor", "supply", "circuit_standard"}, name) {
+				row[c] = ""
+			}
+		}
+		_ = w.Write(row)
+	}
+	w.Flush()
+	return out.Bytes()
+}
+
+// What goes out as a workbook comes in again as the same register: on an empty store all of it, on its own none.
+func roundTrip(t *testing.T, name string, raw []byte, m register.Mapping, least int) {
+	first, second := newHouse(t, ""), newHouse(t, "")
+	report := first.take(t, name, raw, m)
+	if report.Added < least {
+		t.Fatalf("only %d devices came in: %v", report.Added, report.Problems)
+	}
+	if again := first.take(t, name, raw, m); again.Records != 0 {
+		t.Errorf("the same file again made %d records", again.Records)
+	}
+	var book bytes.Buffer
+	if err := WorkbookOf(&book, first.Store, everything, WorkbookAsk{Organisation: "Test"}); err != nil {
+		t.Fatal(err)
+	}
+	came := second.take(t, "workbook.xlsx", book.Bytes(), register.Mapping{})
+	if came.Added != report.Added || came.Skipped != 0 {
+		t.Errorf("of %d devices %d came in again: %v", report.Added, came.Added, came.Problems)
+	}
+	want, got := first.said(t), second.said(t)
+	for i := range want {
+		if i >= len(got) || got[i] != want[i] {
+			t.Fatalf("device %d of %d differs:\n%s\n%s", i, len(want), want[i], strings.Join(got[min(i, len(got)):min(i+1, len(got))], ""))
+		}
+	}
+	if own := first.take(t, "workbook.xlsx", book.Bytes(), register.Mapping{}); own.Records != 0 {
+		t.Errorf("its own workbook changed the register: %d records, %v", own.Records, own.Problems)
+	}
+}
+
+func TestRegister_RoundTripThroughTheWorkbook(t *testing.T) {
+	for name, c := range map[string]struct {
+		mapping register.Mapping
+		least   int
+	}{
+		"register.csv":        {register.Mapping{}, 41},
+		"register-messy.xlsx": {register.Mapping{Columns: map[string]string{"Which one": "place"}, Kinds: map[string]string{"Thing with button": "gfci-receptacle"}, Dates: intake.MDY, Zone: "America/Chicago"}, 430},
+		"register-messy.csv":  {register.Mapping{Zone: "Europe/Berlin", Kinds: map[string]string{"FI/LS": "rcbo"}}, 60},
+	} {
+		t.Run(name, func(t *testing.T) {
+			raw, err := os.ReadFile("../testdata/" + name)
+			if err != nil {
+				t.Fatal(err)
+			}
+			roundTrip(t, name, raw, c.mapping, c.least)
+		})
+	}
+	seeds := 12
+	if testing.Short() {
+		seeds = 3
+	}
+	for seed := range seeds {
+		t.Run(fmt.Sprintf("seed %d", seed), func(t *testing.T) {
+			roundTrip(t, "random.csv", randomRegister(rand.New(rand.NewPCG(uint64(seed), 3))), register.Mapping{}, 3)
+		})
+	}
+}

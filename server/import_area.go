@@ -8,6 +8,7 @@ import (
 	"time"
 
 	"tripwell/export/register"
+	"tripwell/export/results"
 )
 
 // importArea keeps the files managers are working on, in memory: nothing of them reaches the book before it is imported,
@@ -26,8 +27,12 @@ type upload struct {
 	newTags          bool
 	note             string // what happened last, said once on the page
 	came             time.Time
+	kept             []byte // how an earlier file was read, as it was kept
+	said             string // what the file is, where the page asks
 	done             *register.Report
 	rejects          []register.Reject
+	ask              results.Ask // of tests made elsewhere, and what became of them
+	taken            *results.Report
 }
 
 const (

@@ -40,6 +40,9 @@ func (s *Server) importAsk(c echo.Context, status int, wrong string) error {
 func (s *Server) importTake(c echo.Context) error {
 	u, err := uploadOf(c)
 	if err == nil {
+		u.mapping, err = register.ParseMapping(u.kept)
+	}
+	if err == nil {
 		u.person = person(c).ID
 		if err = s.looksRight(c, u); err == nil {
 			return toPage(c, "/import/"+s.imports.put(u, s.store.Now()))
@@ -77,15 +80,15 @@ func uploadOf(c echo.Context) (u upload, err error) {
 		case err != nil:
 			return u, formError(err)
 		case len(raw) > uploadBytes:
-			return u, refuse(codeTooLarge, "file", "The file is larger than 10 MiB. Import it in parts, one site a file, or use the command tripwell import register.")
+			return u, refuse(codeTooLarge, "file", "The file is larger than 10 MiB. Import it in parts, one site a file, or use the command tripwell import.")
 		}
 		switch part.FormName() {
 		case "file":
 			u.name, u.raw = shortName(part.FileName()), raw
 		case "map":
-			if u.mapping, err = register.ParseMapping(raw); err != nil {
-				return u, err
-			}
+			u.kept = raw
+		case "what":
+			u.said = string(raw)
 		}
 	}
 	if len(u.raw) == 0 {

@@ -34,6 +34,12 @@ func previewSample() previewPage {
 // upload posts a file as the page's form does and gives where it leads.
 func (r *rig) upload(client *http.Client, name string, file []byte, mapping string) answer {
 	r.t.Helper()
+	return r.uploadTo(client, "/import", name, file, mapping, "")
+}
+
+// uploadTo posts a file to a page that also asks what it is.
+func (r *rig) uploadTo(client *http.Client, path, name string, file []byte, mapping, what string) answer {
+	r.t.Helper()
 	var body bytes.Buffer
 	w := multipart.NewWriter(&body)
 	part, err := w.CreateFormFile("file", name)
@@ -44,8 +50,11 @@ func (r *rig) upload(client *http.Client, name string, file []byte, mapping stri
 	must(r.t, err)
 	_, err = part.Write([]byte(mapping))
 	must(r.t, err)
+	if what != "" {
+		must(r.t, w.WriteField("what", what))
+	}
 	must(r.t, w.Close())
-	req, err := http.NewRequest(http.MethodPost, r.url+"/import", &body)
+	req, err := http.NewRequest(http.MethodPost, r.url+path, &body)
 	must(r.t, err)
 	req.Header.Set("Accept", "text/html")
 	req.Header.Set("Content-Type", w.FormDataContentType())

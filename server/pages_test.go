@@ -92,6 +92,9 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 			Refused: []asideRecord{{Head: "3 Nov 2026, 09:02 · Kiln Lane Day Clinic · Crew 1", Text: "The id is used.", Under: "SHA-256 00ff", Bytes: `{"id":`}},
 			Differ:  []asideRecord{{Head: "Device registered · Kiln Lane Day Clinic", Text: "The first one stands.", Record: "/records/1", Bytes: `{"id":1}`, Changes: []change{{"Make", "Maker", "Other"}}}},
 			Gaps:    []gapShown{{"Kiln Lane Day Clinic", "Crew 1", "4–5", "0197b2c0-0000-7000-8000-000000000001"}}},
+		"results.html": resultsPage{Frame: frameOf("Tests made elsewhere", "sites"), Crumbs: []link{{Href: "/sites", Text: "Sites"}}, Heading: "Tests made elsewhere", Lead: "Rounds done on paper.", Wrong: "The file is empty.",
+			What: field{Name: "what", Label: "What the file holds", Options: choices("past", "readings", "A round", "past", "Past results")}},
+		"results_preview.html": resultsSample(),
 		"people.html": peoplePage{Frame: frameOf("People", "people"), Heading: "3 people may sign in.", People: []peopleRow{
 			{Href: "/people/1", Name: "Manager 1", Role: "Manager", Sites: "All sites", Contact: "ext. 401", Active: true}, {Href: "/people/2", Name: "Crew 1", Role: "Crew", Sites: "Kiln Lane Day Clinic, Ottermoor Swim Hall", Active: true}, {Href: "/people/3", Name: "Auditor 2", Role: "Auditor", Sites: "Kiln Lane Day Clinic"}}},
 		"tray.html": trayPage{Frame: frameOf("Take in a phone's tray", ""), Problem: "Choose the file the phone saved first.", Report: &TrayReport{Records: 3, Stored: 1, Already: 1, Person: "Crew 1", Made: "2026-12-01T08:00:00.000Z",

@@ -44,7 +44,8 @@ type Server struct {
 	cross   *http.CrossOriginProtection
 	wrong   *wrongLinks
 	image   atomic.Pointer[store.Image] // the backup that is being taken away
-	imports *importArea
+	imports *importArea                 // registers
+	results *importArea                 // tests made elsewhere
 }
 
 // New reads the pages, the words and the files for browsers; all of them are embedded, so an error is a fault of the build.
@@ -53,7 +54,7 @@ func New(s *store.Store, o Options) (*Server, error) {
 	if err != nil {
 		return nil, err
 	}
-	srv := &Server{store: s, log: o.Log, alone: o.Alone, words: words, cross: http.NewCrossOriginProtection(), wrong: newWrongLinks(), imports: newImportArea()}
+	srv := &Server{store: s, log: o.Log, alone: o.Alone, words: words, cross: http.NewCrossOriginProtection(), wrong: newWrongLinks(), imports: newImportArea(), results: newImportArea()}
 	if srv.log == nil {
 		srv.log = slog.New(slog.DiscardHandler)
 	}

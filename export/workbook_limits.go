@@ -60,6 +60,12 @@ func (b *book) limitText(l *forms.Limit) string {
 	for _, u := range sortedKeys(l.Gauge) {
 		add(b.say("sheet.gauge", "figure", figureText(l.Gauge[u]), "unit", b.word("unit", u)))
 	}
+	if l.OverRange {
+		add(b.say("verdict.over_range"))
+	}
+	if l.PerLength != nil {
+		add(b.say("verdict.per_length", "n", figureText(l.PerLength.Base)+" "+unit))
+	}
 	if l.Flag {
 		add(b.say("sheet.flagged"))
 	}

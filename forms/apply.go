@@ -2,13 +2,14 @@ package forms
 
 // Applied is a limit as it stands for one entry before its reading is known: what the scale under a number shows.
 type Applied struct {
-	Limit  *Bounds `json:"limit,omitempty"`
-	NoTrip bool    `json:"no_trip,omitzero"` // must not trip at all under these conditions
-	Unit   string  `json:"unit,omitempty"`   // where not the code's own unit
-	Level  string  `json:"level"`
-	Source string  `json:"source"`
-	Text   string  `json:"text,omitempty"` // why nothing is judged; Limit is then nil
-	Lacks  string  `json:"lacks,omitempty"`
+	Limit     *Bounds `json:"limit,omitempty"`
+	NoTrip    bool    `json:"no_trip,omitzero"`    // must not trip at all under these conditions
+	OverRange bool    `json:"over_range,omitzero"` // only "above" is outside
+	Unit      string  `json:"unit,omitempty"`      // where not the code's own unit
+	Level     string  `json:"level"`
+	Source    string  `json:"source"`
+	Text      string  `json:"text,omitempty"` // why nothing is judged; Limit is then nil
+	Lacks     string  `json:"lacks,omitempty"`
 	// ScaledMA is the test current the limit was computed at, where it was scaled to the line voltage.
 	ScaledMA *float64 `json:"scaled_ma,omitempty"`
 	low      bool     // a trip here is a low trip current
@@ -55,6 +56,10 @@ func (f *facts) apply(l *Limit, r *Reading) Applied {
 	}
 	switch {
 	case l.Flag:
+	case l.OverRange:
+		a.OverRange = true
+	case l.PerLength != nil:
+		f.applyLength(l, &a)
 	case l.Curve != "":
 		f.applyCurve(&a)
 	case l.OfRated != nil || l.OverRated != 0:

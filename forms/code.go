@@ -45,6 +45,7 @@ var codes = []Code{
 	yesNo("ground_continuous"),
 	yesNo("ground_at_terminal"),
 	number("ground_ohm", "ohm"),
+	number("ground_point_v", "V"),
 	number("neutral_ground_v", "V"),
 	number("load_a", "A"),
 	number("voltage_drop_pct", "%"),
@@ -67,6 +68,7 @@ var codes = []Code{
 	number("trip_current_ma", "mA"),
 	yesNo("holds_at_half"),
 	yesNo("restored"),
+	before(yesNo("mark")),
 	yesNo("own_yes_no_1"), yesNo("own_yes_no_2"), yesNo("own_yes_no_3"),
 	choice("own_choice_1", true), choice("own_choice_2", true), choice("own_choice_3", true),
 	number("own_number_1", ""), number("own_number_2", ""), number("own_number_3", ""),
@@ -111,7 +113,7 @@ func CodeOf(code string) (Code, bool) {
 func mayNotTrip(code string) bool { return code == "trip_time_ms" || code == "trip_current_ma" }
 
 // perUnit gives how many of a code's own unit one of another unit is: 1 s = 1000 ms, 1 oz = 28.349523125 g
-// (international avoirdupois ounce), 1 mV = 0.001 V.
+// (international avoirdupois ounce), 1 N = 1000/9.80665 g (standard acceleration of free fall), 1 mV = 0.001 V.
 func perUnit(own, other string) (float64, bool) {
 	switch {
 	case own == other:
@@ -120,8 +122,14 @@ func perUnit(own, other string) (float64, bool) {
 		return 1000, true
 	case own == "g" && other == "oz":
 		return 28.349523125, true
+	case own == "g" && other == "N":
+		return 101.97162129779283, true
 	case own == "V" && other == "mV":
 		return 0.001, true
+	case own == "mA" && other == "A":
+		return 1000, true
+	case own == "ohm" && other == "kohm":
+		return 1000, true
 	}
 	return 0, false
 }

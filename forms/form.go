@@ -19,15 +19,19 @@ type Form struct {
 
 // Quick is a one-tap answer.
 type Quick struct {
-	Text     string            `json:"text"` // words key of what the tap states
+	Text     string            `json:"text"`            // words key of what the tap states
+	Texts    map[string]string `json:"texts,omitempty"` // by device kind, instead of Text
 	Readings map[string]string `json:"readings"`
 }
 
 // Step is one screenful, in the order of work. Where any condition of ClosedWhen holds, or one of ClosedUnless does not,
 // the step is closed: nothing in it is required, and ClosedText says why.
 type Step struct {
-	Step         string      `json:"step"`
-	Cautions     []string    `json:"cautions,omitempty"`
+	Step     string   `json:"step"`
+	Cautions []string `json:"cautions,omitempty"`
+	// Proves and ProvesNot are words keys of what the step shows of the device, and what it does not.
+	Proves       string      `json:"proves,omitempty"`
+	ProvesNot    string      `json:"proves_not,omitempty"`
 	ClosedUnless []Condition `json:"closed_unless,omitempty"`
 	ClosedWhen   []Condition `json:"closed_when,omitempty"`
 	ClosedText   string      `json:"closed_text,omitempty"`
@@ -38,11 +42,14 @@ type Step struct {
 type Ask struct {
 	Reading string `json:"reading"`
 	// Name is the question as its users wrote it, of a check of their own (OwnCodes); the others are in the catalogue.
-	Name    string   `json:"name,omitempty"`
-	Type    string   `json:"type"`
-	Options []string `json:"options,omitempty"`
-	Unit    string   `json:"unit,omitempty"`  // the code's own unit
-	Units   []string `json:"units,omitempty"` // units a person may type in
+	Name string `json:"name,omitempty"`
+	// Text is the words key of the question where it is not the code's own, Texts by device kind.
+	Text    string            `json:"text,omitempty"`
+	Texts   map[string]string `json:"texts,omitempty"`
+	Type    string            `json:"type"`
+	Options []string          `json:"options,omitempty"`
+	Unit    string            `json:"unit,omitempty"`  // the code's own unit
+	Units   []string          `json:"units,omitempty"` // units a person may type in
 	// Required: an entry without it is incomplete.
 	Required bool `json:"required,omitzero"`
 	// Expected: put as openly as what is required, so that a form in the hand is filled in whole. An entry made otherwise is

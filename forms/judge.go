@@ -179,6 +179,10 @@ func (j *judging) outcome(l *Limit, c *Code, r *Reading, a *Applied, unit string
 	switch {
 	case a.NoTrip:
 		outcome = proveNoTrip(r)
+	case a.OverRange:
+		if outcome = inside; r.Above != nil {
+			outcome = high
+		}
 	case a.Lacks != "": // it did not trip, at nobody says what current
 		outcome = unproven
 	case a.Limit != nil:

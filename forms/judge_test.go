@@ -46,8 +46,8 @@ func TestFormFor_KindsAndTasks(t *testing.T) {
 		{HospitalReceptacle, TaskReceptacle, "hospital-receptacle/receptacle"},
 		{RCBO, TaskButton, "rcd/button"},
 		{RCD, TaskInstrument, "rcd/instrument"},
-		{CordSet, TaskReceptacle, ""},
-		{PlugInEquipment, TaskReceptacle, ""},
+		{CordSet, TaskReceptacle, "cord-set/receptacle"},
+		{PlugInEquipment, TaskReceptacle, "plug-in-equipment/receptacle"},
 		{PlainReceptacle, TaskButton, ""},
 	} {
 		if got, ok := FormFor(c.kind, c.task); got != c.want || ok != (c.want != "") {

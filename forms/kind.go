@@ -63,6 +63,8 @@ func DefaultLimitSet(kind string, delayed bool) string {
 		return "us-receptacle"
 	case HospitalReceptacle:
 		return "us-health-care"
+	case CordSet, PlugInEquipment:
+		return "us-cord-set"
 	case RCD, RCBO:
 		if delayed {
 			return "iec-delayed"

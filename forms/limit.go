@@ -20,7 +20,7 @@ type LimitSet struct {
 }
 
 // Limit says what one reading, or one field of the device, must satisfy. Exactly one shape is stated: Min/Max, OneOf,
-// Curve, OfRated, OverRated, ByMultiple or Flag. Figures are in the code's own unit.
+// Curve, OfRated, OverRated, ByMultiple, PerLength, OverRange or Flag. Figures are in the code's own unit.
 type Limit struct {
 	ID      string   `json:"id"`
 	Reading string   `json:"reading,omitempty"`
@@ -39,6 +39,10 @@ type Limit struct {
 	OverRated float64 `json:"over_rated,omitzero"`
 	// ByMultiple gives bounds by the multiple of the rated residual current the test was made at.
 	ByMultiple []Rung `json:"by_multiple,omitempty"`
+	// PerLength bounds a conductor's ohms by its length and size.
+	PerLength *PerLength `json:"per_length,omitempty"`
+	// OverRange: "above" of any figure is outside, every figure is inside (an open conductor reads over range).
+	OverRange bool `json:"over_range,omitzero"`
 	// Flag is a limit without bounds: outside wherever all of When hold.
 	Flag bool `json:"flag,omitzero"`
 	// Gauge holds a go/no-go answer to be about at least these masses, by unit; a lighter or heavier gauge proves less.

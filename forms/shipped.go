@@ -39,8 +39,9 @@ var Shipped = sync.OnceValue(func() *Catalogue {
 // The order of lists; a test holds it against the files.
 var (
 	shippedForms = []string{"gfci-receptacle-button", "gfci-receptacle-instrument", "receptacle-receptacle",
-		"hospital-receptacle-receptacle", "rcd-button", "rcd-instrument"}
-	shippedLimitSets = []string{"us-class-a", "us-class-a-guarded", "us-receptacle", "us-health-care", "iec-general", "iec-delayed"}
+		"hospital-receptacle-receptacle", "cord-set-receptacle", "plug-in-equipment-receptacle", "rcd-button", "rcd-instrument"}
+	shippedLimitSets = []string{"us-class-a", "us-class-a-guarded", "us-special-purpose", "us-equipment-30", "us-receptacle",
+		"us-health-care", "us-cord-set", "iec-general", "iec-delayed", "uk-a2-2022"}
 )
 
 // read decodes an embedded file, which a test has read before any release: a fault here is a fault of the build.

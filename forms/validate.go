@@ -101,7 +101,9 @@ func (w *wrongs) head(id string, revision int, inForce Day, kinds []string) {
 
 // deviceFields are the fields of a device and of what is given that a condition or a limit may name.
 var deviceFields = []string{"kind", "rated_residual_ma", "equipment_ground", "supply", "gauge", "waveform", "rating_a", "nominal_v",
-	"faces", "delayed", "make", "model", "serial", "installed", "limit_set", "formerly", "where", "note", "length_m", "locking"}
+	"faces", "delayed", "make", "model", "serial", "installed", "limit_set", "formerly", "where", "note", "length_m", "locking",
+	"no_neutral", "supply_edition", "double_insulated", "new_construction", "quiet_ground", "earthing", "special_location", "distribution", "rcd_tests",
+	"test_resistor_ohm"}
 
 // conditions checks a list of conditions, all of which must hold at once; asked tells whether a form asks a reading (nil:
 // any may be named).

@@ -218,4 +218,4 @@ func plainCondition(c Condition) [9]any {
 }
 
 // statesOther reports a shape that Limit knows beside those CheckLimitSet looks into.
-func (l *Limit) statesOther() bool { return false }
+func (l *Limit) statesOther() bool { return l.OverRange || l.PerLength != nil }

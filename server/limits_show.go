@@ -88,6 +88,10 @@ func (s *Server) limitWords(l forms.Limit) string {
 			rungs = append(rungs, k.say("office.limits.rung", "multiple", number(r.Multiple), "limit", text))
 		}
 		return strings.Join(rungs, "; ")
+	case l.OverRange:
+		return k.say("verdict.over_range")
+	case l.PerLength != nil:
+		return k.say("verdict.per_length", "n", k.amount(number(l.PerLength.Base), l.Unit))
 	case l.Flag:
 		return s.flagWords(l)
 	case l.Min != nil || l.Max != nil || len(l.OneOf) > 0:

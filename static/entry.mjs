@@ -4,7 +4,8 @@
 /** Register fields of a device that have a name of their own in `given`, and what they must be. */
 const NAMED = { rated_residual_ma: Number, equipment_ground: String, rating_a: Number, nominal_v: Number, delayed: asFlag, faces: Number, waveform: String };
 /** Further register fields a limit's or a form's condition may name. */
-const OTHER = ["length_m", "gauge", "locking"];
+const OTHER = ["length_m", "gauge", "locking", "no_neutral", "supply_edition", "double_insulated", "new_construction", "quiet_ground",
+  "earthing", "special_location", "distribution"];
 
 function asFlag(v) {
   return v === true || v === "yes" || v === "true";

@@ -75,7 +75,7 @@ function Quick({ app, form, test, done, set, open }) {
   const cautions = (which) => [...new Set(test.walked.steps.filter(which).flatMap((s) => s.cautions))];
   return html`<section class="ask quick">
     <details class="caution" open=${test.firstInRoom}><summary>${say("field.before_test")}</summary>${cautions((s) => before.includes(s.step)).map((c) => html`<p key=${c}>${say(`caution.${c}`)}</p>`)}</details>
-    <button type="button" class="big one-tap" aria-pressed=${String(Boolean(done))} onClick=${() => set(done ? {} : quickAnswers(form))}>${say(form.quick.text)}</button>
+    <button type="button" class="big one-tap" aria-pressed=${String(Boolean(done))} onClick=${() => set(done ? {} : quickAnswers(form))}>${say(form.quick.texts?.[test.device.kind] ?? form.quick.text)}</button>
     ${done && html`<div class="caution">${cautions((s) => !before.includes(s.step)).map((c) => html`<p key=${c}>${say(`caution.${c}`)}</p>`)}</div>`}
     <button type="button" class="big" onClick=${open}>${say("field.something_else")}</button>
     <details class="writes"><summary>${say("field.quick_writes")}</summary><dl>${Object.entries(form.quick.readings).map(([code, value]) => html`
@@ -109,6 +109,7 @@ function Step({ app, step, test, set }) {
     ${step.closed && html`<p class="closed">${say(step.closed)}</p>`}
     ${step.asks.map((ask) => html`<${Ask} app=${app} key=${ask.reading} ask=${ask} answer=${draft.answers[ask.reading]}
       set=${(a) => set(withOne(draft.answers, ask.reading, a))} title=${titleAt(app, ask, test)} ...${test.about(ask)} />`)}
+    ${step.proves && (step.asks.length > 0 || step.series.length > 0) && html`<details class="writes"><summary>${say("step.shows")}</summary><p>${say(step.proves)}</p><p>${say(step.proves_not)}</p></details>`}
     ${step.series.map((row) => html`<${Condition} app=${app} key=${conditionKey(row.at)} row=${row} test=${test} />`)}
   </div>`;
 }
@@ -120,9 +121,11 @@ function withOne(answers, code, answer) {
   return next;
 }
 
-/** The trip time is asked "at 6.8 mA", since its limit belongs to that current. */
+/** A question in the words of the device kind; the trip time is asked "at 6.8 mA", since its limit belongs to that current. */
 function titleAt(app, ask, test) {
   const current = test.walked.readings.test_current_ma?.value;
+  const own = ask.texts?.[test.device.kind] ?? ask.text;
+  if (own) return app.say(own);
   if (ask.reading !== "trip_time_ms" || typeof current !== "number") return undefined;
   return app.say("field.at_current", { what: app.say(`reading.${ask.reading}.ask`), current: showNumber(current) });
 }

@@ -8,6 +8,11 @@ import { Facts } from "./facts.mjs";
 /** Cautions that would only be noise elsewhere. */
 const CAUTION_WHEN = {
   no_power: [{ reading: "found", is: ["no-power", "tripped"] }],
+  plug_in_lamp: [{ field: "kind", not: "gfci-breaker" }],
+  lamps_limits: [{ field: "supply", not: "isolated" }, { field: "no_neutral", not: "yes" }],
+  breaker_loads_off: [{ field: "kind", is: "gfci-breaker" }],
+  breaker_reset: [{ field: "kind", is: "gfci-breaker" }],
+  portable_power: [{ field: "kind", is: "portable-gfci" }],
   isolated_monitor: [{ field: "supply", is: "isolated" }],
   isolated_lamps: [{ field: "supply", is: "isolated" }],
 };
@@ -28,6 +33,7 @@ export function walk(form, draft, given, limitSet) {
   let before = null;
   for (const step of form.steps) {
     const shown = { step: step.step, cautions: (step.cautions ?? []).filter((c) => facts.all(CAUTION_WHEN[c])), closed: facts.closed(step) ? step.closed_text ?? "caution.closed_inject" : null, asks: [], series: [] };
+    if (step.proves) Object.assign(shown, { proves: step.proves, proves_not: step.proves_not });
     if (!shown.closed) {
       putAsks(form, step, draft, facts, shown, out);
       if (!out.ended && form.series?.step === step.step) putSeries(form, step, draft, facts, shown, out);

@@ -8,6 +8,7 @@ export function defaultLimitSet(kind, delayed) {
   if (["gfci-receptacle", "gfci-breaker", "portable-gfci"].includes(kind)) return "us-class-a";
   if (["receptacle", "protected-receptacle"].includes(kind)) return "us-receptacle";
   if (kind === "hospital-receptacle") return "us-health-care";
+  if (["cord-set", "plug-in-equipment"].includes(kind)) return "us-cord-set";
   if (["rcd", "rcbo"].includes(kind)) return delayed ? "iec-delayed" : "iec-general";
   return "";
 }

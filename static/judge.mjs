@@ -161,6 +161,7 @@ class Judging extends Facts {
   outcome(l, c, r, a, unit) {
     let outcome = "other";
     if (a.no_trip) outcome = r.no_trip || r.above !== undefined ? "inside" : "low";
+    else if (a.over_range) outcome = r.above !== undefined ? "high" : "inside";
     else if (a.lacks) outcome = "unproven"; // it did not trip, at nobody says what current
     else if (a.limit) outcome = prove(a.limit, r, c.unit, unit);
     const text = (typeof r.value === "string" && l.texts?.[r.value]) || l.text;

@@ -32,6 +32,8 @@ export function rampRate(ramp) {
 export function apply(facts, l, r) {
   for (const v of l.void ?? []) if (facts.all(v.when)) return { text: v.text };
   if (l.flag) return {};
+  if (l.over_range) return { over_range: true };
+  if (l.per_length) return applyLength(facts, l.per_length);
   if (l.curve) return applyCurve(facts);
   if (l.of_rated || l.over_rated) return applyRated(facts, l);
   if (l.by_multiple) return applyMultiple(facts, l);
@@ -56,6 +58,17 @@ function applyCurve(facts) {
   if (current < 6) return { text: "limit.below_curve", ...at };
   if (current > 264) return { text: "limit.above_curve", ...at };
   return { limit: { max: classATripMS(current) }, current, ...at };
+}
+
+function applyLength(facts, { base, ohm_per_m: table }) {
+  const length = facts.field("length_m"), size = conductorSize(facts.field("gauge"));
+  if (typeof length !== "number" || !Object.hasOwn(table, size)) return { text: "limit.no_length" };
+  return { limit: { max: round9(base + length * table[size]) } };
+}
+
+/** A conductor size as the table has it: "14 AWG", "#14" are "14"; "2.5 mm²" is "2.5mm2". */
+function conductorSize(gauge) {
+  return String(gauge ?? "").toLowerCase().replaceAll(" ", "").replaceAll("awg", "").replaceAll("#", "").replaceAll("²", "2").replaceAll("sqmm", "mm2").replaceAll(",", ".");
 }
 
 function applyRated(facts, l) {

@@ -4,8 +4,8 @@
 /** Units and what one of them is in the base unit of its family. 1 oz = 28.349523125 g (exact, avoirdupois). */
 const FACTORS = {
   s: ["ms", 1000], ms: ["ms", 1],
-  oz: ["g", 28.349523125], g: ["g", 1],
-  A: ["A", 1], mA: ["mA", 1], V: ["V", 1], mV: ["V", 0.001],
+  oz: ["g", 28.349523125], N: ["g", 101.97162129779283], g: ["g", 1],
+  A: ["mA", 1000], mA: ["mA", 1], kohm: ["ohm", 1000], V: ["V", 1], mV: ["V", 0.001],
   ohm: ["ohm", 1], Mohm: ["Mohm", 1], "%": ["%", 1], deg: ["deg", 1], x: ["x", 1],
 };
 

@@ -27,6 +27,7 @@ export const codes = [
   yesNo("ground_continuous"),
   yesNo("ground_at_terminal"),
   number("ground_ohm", "ohm"),
+  number("ground_point_v", "V"),
   number("neutral_ground_v", "V"),
   number("load_a", "A"),
   number("voltage_drop_pct", "%"),
@@ -49,6 +50,7 @@ export const codes = [
   number("trip_current_ma", "mA"),
   yesNo("holds_at_half"),
   yesNo("restored"),
+  yesNo("mark", false),
   yesNo("own_yes_no_1"), yesNo("own_yes_no_2"), yesNo("own_yes_no_3"),
   choice("own_choice_1", true), choice("own_choice_2", true), choice("own_choice_3", true),
   number("own_number_1", ""), number("own_number_2", ""), number("own_number_3", ""),
@@ -75,7 +77,7 @@ export const isObject = (v) => typeof v === "object" && v !== null && !Array.isA
 /** One of a code's own unit over one of another: 1 s = 1000 ms; undefined where it is no unit for it. */
 export function perUnit(own, other) {
   if (own === other) return 1;
-  return { "ms<s": 1000, "g<oz": 28.349523125, "V<mV": 0.001 }[`${own}<${other}`];
+  return { "ms<s": 1000, "g<oz": 28.349523125, "g<N": 101.97162129779283, "V<mV": 0.001, "mA<A": 1000, "ohm<kohm": 1000 }[`${own}<${other}`];
 }
 
 /** What a person typed as a number: a decimal comma or point, no thousands separators; undefined where it is none. */

@@ -107,6 +107,9 @@ func dash(s string) string {
 func writeForm(w io.Writer, words *static.Words, f *forms.Form) {
 	fmt.Fprintf(w, "\nFORM %s, revision %d: %s of %s\n", f.ID, f.Revision, words.Say("task."+f.Task), strings.Join(f.Kinds, ", "))
 	for _, step := range f.Steps {
+		if len(step.Asks) > 0 && step.Proves != "" {
+			fmt.Fprintf(w, " %s. %s %s\n", words.Say("step."+step.Step), words.Say(step.Proves), words.Say(step.ProvesNot))
+		}
 		for _, a := range step.Asks {
 			need := "optional"
 			switch {
@@ -148,7 +151,7 @@ func conditions(at map[string]any) string {
 }
 
 func writeLimitSet(w io.Writer, words *static.Words, s *forms.LimitSet) {
-	fmt.Fprintf(w, "\nLIMIT SET %s, revision %d, in force from %s: %s\n", s.ID, s.Revision, s.InForce, words.Say("limit_set."+s.ID))
+	fmt.Fprintf(w, "\nLIMIT SET %s, revision %d, in force from %s, decides by %s: %s\n", s.ID, s.Revision, s.InForce, words.Say("verdict.rule."+s.Rule), words.Say("limit_set."+s.ID))
 	for i := range s.Limits {
 		l := &s.Limits[i]
 		name := l.Reading
@@ -171,7 +174,11 @@ func limitText(words *static.Words, l *forms.Limit) string {
 	case l.OfRated != nil:
 		return rangeText(words, l.OfRated.Min, l.OfRated.Max) + " × rated residual current"
 	case l.OverRated != 0:
-		return words.Say("verdict.at_most", "n", "50 V / rated residual current")
+		return words.Say("verdict.at_most", "n", number(l.OverRated/1000)+" V / rated residual current")
+	case l.OverRange:
+		return words.Say("verdict.over_range")
+	case l.PerLength != nil:
+		return words.Say("verdict.per_length", "n", number(l.PerLength.Base)+unit)
 	case l.ByMultiple != nil:
 		var parts []string
 		for _, r := range l.ByMultiple {

@@ -95,6 +95,9 @@ func TestWords_EveryKeyOfTheFormsIsThere(t *testing.T) {
 	for _, f := range forms.Shipped().Forms {
 		if f.Quick != nil {
 			need(f.ID, f.Quick.Text)
+			for _, text := range f.Quick.Texts {
+				need(f.ID, text)
+			}
 		}
 		for _, n := range f.Needs {
 			need(f.ID, "reading."+n+".name")
@@ -104,10 +107,19 @@ func TestWords_EveryKeyOfTheFormsIsThere(t *testing.T) {
 			for _, c := range s.Cautions {
 				need(f.ID, "caution."+c)
 			}
+			if len(s.Asks) > 0 {
+				need(f.ID, s.Proves, s.ProvesNot)
+			}
 			if s.ClosedText != "" {
 				need(f.ID, s.ClosedText)
 			}
 			for _, a := range s.Asks {
+				if a.Text != "" {
+					need(f.ID, a.Text)
+				}
+				for _, text := range a.Texts {
+					need(f.ID, text)
+				}
 				for _, u := range a.Units {
 					need(f.ID, "unit."+u)
 				}
@@ -122,7 +134,7 @@ func TestWords_EveryKeyOfTheFormsIsThere(t *testing.T) {
 		}
 	}
 	for _, s := range forms.Shipped().LimitSets {
-		need(s.ID, "limit_set."+s.ID)
+		need(s.ID, "limit_set."+s.ID, "verdict.rule."+s.Rule)
 		for _, l := range s.Limits {
 			need(s.ID+" "+l.ID, l.Text)
 			for _, text := range l.Texts {
@@ -138,5 +150,6 @@ func TestWords_EveryKeyOfTheFormsIsThere(t *testing.T) {
 	}
 	need("judge", "limit.stopped_before", "limit.not_proven", "limit.trips_low", "limit.trips_low_with_loads", "limit.ramp_over_reads",
 		"limit.must_not_trip", "limit.no_test_current", "limit.below_curve", "limit.above_curve", "limit.no_rating", "limit.no_multiple",
-		"limit.multiple_outside", "limit.bond_not_judged", "limit.gauge_too_light", "limit.gauge_too_heavy")
+		"limit.multiple_outside", "limit.bond_not_judged", "limit.gauge_too_light", "limit.gauge_too_heavy",
+		"limit.guard_inside", "limit.guard_outside", "limit.accuracy_unknown", "limit.current_in_doubt", "limit.no_length")
 }

@@ -107,6 +107,9 @@ func (g *group) permit(from Sender, r *record.Record, received time.Time) (*reco
 		}
 		from.Installation = r.From
 	}
+	if from.Installation != g.s.id && !from.Rescue && from.Via == "" && isSiteLog(r.Log) && r.Kind != "site.registered" && !g.hasLog(r.Log) {
+		return &record.Fault{Code: "wrong_log", Field: "log", Text: "No site of this organisation has this log. A site begins with its registration; send that first, or make the record for the site it belongs to."}, nil
+	}
 	own := from.Installation == g.s.id
 	if r.From != from.Installation {
 		return no("from", "The record was made on another device than the one that sent it. Send it from the device it was made on, or load its rescue file as the owner of the store."), nil
@@ -149,6 +152,11 @@ func (g *group) permitChange(r *record.Record, facts []accessFact, received time
 		return no("by", "Somebody else made this entry. Ask them or a manager to change it."), nil
 	}
 	return nil, nil
+}
+
+func isSiteLog(log string) bool {
+	class := record.LogClass(log)
+	return class != record.Org && class != record.Office
 }
 
 func no(field, sentence string) *record.Fault {

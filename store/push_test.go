@@ -187,3 +187,15 @@ func TestAccess_EndedInBetweenIsNoRefusal(t *testing.T) {
 		t.Errorf("got %q, want %q", got, want)
 	}
 }
+
+func TestPush_ALogWithoutASiteIsRefused(t *testing.T) {
+	r := newRig(t)
+	site := r.site("ELM-5")
+	p := r.phone(r.person("manager", true))
+	astray := p.make("entry.made", newID(r.clock()), newID(r.clock()), entry(22))
+	home := p.make("entry.made", site, newID(r.clock()), entry(22))
+	want := []string{"refused wrong_log", "stored"}
+	if got := states(p.push(astray, home)); !slices.Equal(got, want) {
+		t.Errorf("got %q, want %q", got, want)
+	}
+}

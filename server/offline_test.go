@@ -45,7 +45,12 @@ func openHandheld(t *testing.T, base, profile string) *handheld {
 		chromedp.Flag("disable-component-update", true), chromedp.Flag("disable-sync", true), chromedp.WindowSize(390, 844))
 	ctx, stop := chromedp.NewContext(allocator)
 	p := &handheld{t: t, base: base, profile: profile, ctx: ctx}
+	stopped := false
 	p.stop = func() {
+		if stopped {
+			return
+		}
+		stopped = true
 		_ = chromedp.Cancel(ctx) // closes the browser and waits for it
 		stop()
 		stopAllocator()
@@ -210,7 +215,7 @@ func TestOffline_TwentyFiveEntriesThroughACutAClosedBrowserAndALostAnswer(t *tes
 	}
 	// A label's address opens the client too.
 	p.open("/T/K7QM2P3")
-	p.sees("No device on this phone has this tag")
+	p.until("the client at a label's address", `location.pathname === "/T/K7QM2P3" && document.querySelector("#field .where h1")`)
 
 	// The line is back but every answer is lost: all is kept at the server, nothing leaves the tray.
 	w.mend()

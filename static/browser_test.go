@@ -2,8 +2,11 @@ package static
 
 import (
 	"context"
+	"crypto/sha256"
+	"encoding/hex"
 	"encoding/json"
 	"fmt"
+	"io"
 	"net/http"
 	"net/http/httptest"
 	"os"
@@ -28,6 +31,7 @@ type exchangeStandIn struct {
 	order      []string
 	records    map[string]string
 	snapshot   []byte
+	photos     map[string]int // name → bytes
 }
 
 const (
@@ -76,7 +80,7 @@ func newStandIn(t *testing.T) *exchangeStandIn {
 	if err != nil {
 		t.Fatal(err)
 	}
-	return &exchangeStandIn{records: map[string]string{}, snapshot: raw}
+	return &exchangeStandIn{records: map[string]string{}, photos: map[string]int{}, snapshot: raw}
 }
 
 func (x *exchangeStandIn) set(fn func()) {
@@ -105,6 +109,15 @@ func (x *exchangeStandIn) ServeHTTP(w http.ResponseWriter, r *http.Request) {
 		x.answer(w, map[string]any{"logs": logs})
 	case "/exchange/snapshot":
 		_, _ = w.Write(x.snapshot)
+	case "/exchange/photo":
+		raw, _ := io.ReadAll(r.Body)
+		name := r.URL.Query().Get("sha256")
+		if sum := sha256.Sum256(raw); hex.EncodeToString(sum[:]) != name || x.records[r.URL.Query().Get("entry")] == "" {
+			http.Error(w, `{"error":{"code":"invalid"}}`, http.StatusBadRequest)
+			return
+		}
+		x.photos[name] = len(raw)
+		x.answer(w, map[string]any{"sha256": name})
 	case "/exchange/push":
 		x.push(w, r)
 	default:
@@ -161,7 +174,7 @@ func serveClient(t *testing.T, x *exchangeStandIn) string {
 	mux.Handle("/assets/", http.StripPrefix("/assets/", http.FileServerFS(Files)))
 	mux.HandleFunc("/field", func(w http.ResponseWriter, _ *http.Request) {
 		w.Header().Set("Content-Type", "text/html; charset=utf-8")
-		w.Header().Set("Content-Security-Policy", "default-src 'none'; script-src 'self'; style-src 'self'; connect-src 'self'")
+		w.Header().Set("Content-Security-Policy", "default-src 'none'; script-src 'self'; style-src 'self'; connect-src 'self'; img-src 'self' blob: data:")
 		fmt.Fprintf(w, `<!doctype html><meta name="viewport" content="width=device-width"><link rel="stylesheet" href="/assets/tokens.css"><link rel="stylesheet" href="/assets/field.css">
 <script type="module" src="/assets/field.mjs"></script><body class="field"><div id="field" data-failed="%s"></div>`, words.Say("field.could_not_start"))
 	})
@@ -176,7 +189,7 @@ type phone struct {
 	ctx context.Context
 }
 
-func openPhone(t *testing.T) *phone {
+func openPhone(t *testing.T, more ...chromedp.ExecAllocatorOption) *phone {
 	t.Helper()
 	if testing.Short() {
 		t.Skip("browser tests are left out with -short")
@@ -188,11 +201,11 @@ func openPhone(t *testing.T) *phone {
 		}
 		t.Skip("Chromium is not installed: browser test left out")
 	}
-	ctx, cancel := chromedp.NewExecAllocator(context.Background(),
+	ctx, cancel := chromedp.NewExecAllocator(context.Background(), append([]chromedp.ExecAllocatorOption{
 		chromedp.ExecPath(path), chromedp.Headless, chromedp.NoFirstRun, chromedp.UserDataDir(filepath.Join(t.TempDir(), "profile")),
 		chromedp.Flag("no-sandbox", true), chromedp.Flag("disable-gpu", true), chromedp.Flag("disable-quic", true),
 		chromedp.Flag("disable-dev-shm-usage", true), chromedp.Flag("disable-background-networking", true),
-		chromedp.Flag("disable-component-update", true), chromedp.Flag("disable-sync", true))
+		chromedp.Flag("disable-component-update", true), chromedp.Flag("disable-sync", true)}, more...)...)
 	t.Cleanup(cancel)
 	ctx, cancel = chromedp.NewContext(ctx)
 	t.Cleanup(cancel)

@@ -164,9 +164,11 @@ export function fieldApp(parts) {
     say, state, now, openTest, findDevice, formsFor, save, changed,
     corrected,
     get off() {
-      return stillOff([...state.drafts.values()], walkOf).map((o) => {
+      const tests = stillOff([...state.drafts.values()], walkOf).map((o) => ({ ...o, href: toTest(o.device, o.task) }));
+      const sweeps = [...state.drafts.values()].filter((d) => d.key.startsWith("dark|") && d.fields?.off && !d.fields.restored).map((d) => ({ device: d.key.slice(5), since: d.fields.off, href: `#/dark/${d.key.slice(5)}` }));
+      return [...tests, ...sweeps].map((o) => {
         const found = findDevice(o.device);
-        return { href: toTest(o.device, o.task), what: found ? titleOf(app, found.device, found.place) : "", since: showMoment(app, o.since) };
+        return { href: o.href, what: found ? titleOf(app, found.device, found.place) : "", since: showMoment(app, o.since) };
       });
     },
     get tray() {

@@ -2,6 +2,7 @@
 
 import { html, useState } from "./vendor/htm-preact.mjs";
 import { circuitOf, contextOf, Foot, Mark, titleOf, Where } from "./field-parts.mjs";
+import { Confirm } from "./field-fields.mjs";
 import { TagTaker } from "./field-scan.mjs";
 import { criticalLoads, lost, sweepRows } from "./dark-sweep.mjs";
 import { roomMates } from "./walk-round.mjs";
@@ -25,9 +26,9 @@ export function CriticalLoads({ app, site, device }) {
 
 export function DarkPage({ app, site, device, place }) {
   const { say } = app;
-  const key = `dark|${device.id}`, kept = app.pageDraft(key) ?? { said: [], off: null };
+  const key = `dark|${device.id}`, kept = app.pageDraft(key) ?? { said: [], off: null, restored: false };
   const said = new Map(kept.said), [unknown, setUnknown] = useState(null), [more, setMore] = useState(false);
-  const put = (id, word) => app.setPageDraft(key, site, { said: [...kept.said.filter(([d]) => d !== id), ...(word ? [[id, word]] : [])], off: kept.off ?? app.now() });
+  const put = (id, word) => app.setPageDraft(key, site, { ...kept, said: [...kept.said.filter(([d]) => d !== id), ...(word ? [[id, word]] : [])], off: kept.off ?? app.now() });
   const rows = sweepRows(site.devices, device, said);
   const taken = (tag) => {
     const found = app.findByTag(tag);
@@ -36,8 +37,9 @@ export function DarkPage({ app, site, device, place }) {
   };
   const back = toDevice(device.id), gone = lost(rows), open = rows.filter((r) => !r.said).length;
   const near = more ? roomMates(site, device).filter((d) => d.id !== device.id && !rows.some((r) => r.device.id === d.id)) : [];
+  const ready = said.size > 0 && kept.restored;
   const keep = async () => {
-    if (said.size === 0) return;
+    if (!ready) return;
     if (await app.keepDark(site, device, rows, key)) app.go(back, { keep: true });
   };
   return html`<${Where} app=${app} title=${titleOf(app, device, place)} tag=${device.tag} context=${contextOf(app, device, place)} back=${back} />
@@ -52,7 +54,8 @@ export function DarkPage({ app, site, device, place }) {
       ${!more && html`<button type="button" class="big more" onClick=${() => setMore(true)}>${say("dark.by_hand")}</button>`}
       ${gone.length > 0 && html`<p class="caution" role="alert"><b>${say("dark.lost", { n: gone.length })}</b> ${say("dark.lost_do")}</p>`}
       ${open > 0 && said.size > 0 && html`<p class="hint pad">${say("dark.open", { n: open })}</p>`}
-    </main><${Foot} app=${app}><button type="button" class="big go" aria-disabled=${String(said.size === 0)} disabled=${app.state.saving} onClick=${keep}>${say("dark.keep")}</button><//>`;
+      ${said.size > 0 && html`<div class="choose"><${Confirm} done=${kept.restored} set=${(on) => app.setPageDraft(key, site, { ...kept, restored: on })}>${say("dark.restored")}<//></div>`}
+    </main><${Foot} app=${app}><button type="button" class="big go" aria-disabled=${String(!ready)} disabled=${app.state.saving} onClick=${keep}>${say("dark.keep")}</button><//>`;
 }
 
 function SweepRow({ app, row, place, put }) {

@@ -9,19 +9,22 @@ export function dayIn(ms, zone) {
   }
 }
 
+/** Days before months and 24 hours, in the language of the words. */
+const localeOf = (app) => (app.say?.lang === "es" ? "es" : "en-GB");
+
 /** "Mon 30 Nov 2026"; the year only where it is not this one. */
 export function showDay(app, day) {
   const [y, m, d] = String(day).split("-").map(Number);
   if (!y) return "";
   const thisYear = dayIn(app.now()).slice(0, 4) === String(y);
-  return new Intl.DateTimeFormat("en-GB", { weekday: "short", day: "numeric", month: "short", ...(thisYear ? {} : { year: "numeric" }), timeZone: "UTC" })
+  return new Intl.DateTimeFormat(localeOf(app), { weekday: "short", day: "numeric", month: "short", ...(thisYear ? {} : { year: "numeric" }), timeZone: "UTC" })
     .format(Date.UTC(y, m - 1, d)).replace(",", "").replaceAll(" ", "\u00a0");
 }
 
 /** "09:12", or "Mon 30 Nov, 09:12" for another day; in the phone's own zone, which is where the reader stands. */
 export function showMoment(app, ms) {
   const at = new Date(ms), now = new Date(app.now());
-  const time = at.toLocaleTimeString("en-GB", { hour: "2-digit", minute: "2-digit" });
+  const time = at.toLocaleTimeString(localeOf(app), { hour: "2-digit", minute: "2-digit" });
   return at.toDateString() === now.toDateString() ? time : `${showDay(app, localDay(at))}, ${time}`;
 }
 

@@ -18,7 +18,7 @@ import { parseRoute, toDevice } from "./route.mjs";
 import { sending } from "./sending.mjs";
 import { syncing } from "./syncing.mjs";
 import { isCalm, versions } from "./version.mjs";
-import { speaker } from "./words.mjs";
+import { languageOf, speaker } from "./words.mjs";
 
 const root = document.getElementById("field");
 const now = () => Date.now();
@@ -48,8 +48,16 @@ function Page({ app }) {
   }
 }
 
+/** English is always read too: it stands in for what the other catalogue does not say. */
+async function wordsOf(lang) {
+  document.documentElement.lang = lang;
+  const read = async (l) => (await fetch(new URL(`./words/${l}.json`, import.meta.url))).json();
+  const [fallback, own] = await Promise.all([read("en"), lang === "en" ? null : read(lang).catch(() => null)]);
+  return speaker(own ?? fallback, { fallback, lang });
+}
+
 async function start() {
-  const say = speaker(await (await fetch(new URL("./words/en.json", import.meta.url))).json());
+  const say = await wordsOf(languageOf(navigator.languages));
   if (onlyATab(navigator)) {
     root.replaceChildren();
     render(html`<${HomeScreenPage} say=${say} />`, root);

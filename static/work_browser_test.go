@@ -110,6 +110,7 @@ func TestField_WorksAtTheWallWithoutSignal(t *testing.T) {
 	p.until("the photo", `document.querySelector(".shots img")?.naturalWidth === 1600`)
 	p.press(".go", "Save")
 	p.sees("By the window: saved")
+	p.until("the next outlet", `document.querySelector("h1").innerText.startsWith("Pantry")`)
 
 	p.until("the room", `(location.hash = "#/room/NORTH/01900000-0000-7000-8000-000000000200", true)`)
 	p.press(".pick button", "Could not get")

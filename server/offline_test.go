@@ -18,7 +18,7 @@ import (
 
 // handheld is a phone: Chromium with a profile that outlives the browser, behind a wire that can be cut.
 type handheld struct {
-	t       *testing.T
+	t       testing.TB
 	base    string
 	profile string
 	ctx     context.Context
@@ -26,7 +26,7 @@ type handheld struct {
 }
 
 // openHandheld starts a browser on a profile; a profile used before brings back what it kept.
-func openHandheld(t *testing.T, base, profile string) *handheld {
+func openHandheld(t testing.TB, base, profile string) *handheld {
 	t.Helper()
 	if testing.Short() {
 		t.Skip("browser tests are left out with -short")

@@ -56,7 +56,8 @@ type entryRow struct {
 // fact is one named value.
 type fact struct {
 	Name, Value string
-	Mono        bool // an id
+	Mono        bool   // an id
+	Href        string // "" = no link
 }
 
 func (s *Server) deviceShow(c echo.Context) error {
@@ -117,6 +118,11 @@ func (s *Server) buildDevice(v *store.View, site store.Site, d store.Device, vie
 	}
 	s.entryTable(v, entries, names, view)
 	view.Facts = s.deviceFacts(d)
+	applies, err := s.setApplying(v, d.ID, today)
+	if err != nil {
+		return err
+	}
+	view.Facts = append(view.Facts, applies)
 	s.labelOf(d, view)
 	for _, e := range d.Earlier {
 		view.Earlier = append(view.Earlier, link{Href: "/devices/" + e.ID, Text: s.earlier(e)})

@@ -26,6 +26,7 @@ type entryPage struct {
 	Note                string
 	Photos              []photoShown
 	Corrections         []correctionShown
+	Judgements          []judgementShown
 	Facts               []fact
 	Record              string
 	Actions             []link
@@ -44,6 +45,13 @@ type findingShown struct {
 	Verdict             mark
 	Limit, Text, Source string
 	Scale               *scaleDrawing
+	Curve               *curveDrawing
+}
+
+// judgementShown is a result the entry has had, and by which revision.
+type judgementShown struct {
+	When, Under, By, Reason string
+	Verdict                 mark
 }
 
 // correctionShown is a correction with the readings it changed.
@@ -101,6 +109,9 @@ func (s *Server) buildEntry(v *store.View, e store.Entry, view *entryPage) error
 	view.Note = e.Note
 	view.Photos = s.photosShown(v, e)
 	view.Corrections = s.corrections(v, e, site.Location())
+	if view.Judgements, err = s.judgements(v, e, site.Location()); err != nil {
+		return err
+	}
 	view.Record = "/records/" + e.ID
 	if view.Facts, err = s.entryFacts(v, e, site); err != nil {
 		return err
@@ -228,7 +239,7 @@ func (s *Server) oneReading(code string, r forms.Reading, at map[string]any) rea
 func (s *Server) finding(f forms.Finding, r forms.Reading, e store.Entry, spans map[string][]scaleSpan, before map[string]float64) findingShown {
 	k := s.ink()
 	shown := findingShown{Verdict: k.verdict(f.Verdict), Limit: k.limit(f.Reading, f.Limit, f.Level), Source: f.Source}
-	if f.Text != "" && k.words.Has(f.Text) && f.Verdict != forms.Pass {
+	if f.Text != "" && f.Verdict != forms.Pass { // a limit of an organisation's own carries its sentence, no key
 		shown.Text = k.say(f.Text)
 	}
 	if current, ok := e.Body.Readings["test_current_ma"]; ok && f.Reading == "trip_time_ms" && shown.Limit != "" && len(f.At) == 0 {
@@ -242,7 +253,56 @@ func (s *Server) finding(f forms.Finding, r forms.Reading, e store.Entry, spans 
 		earlier = &b
 	}
 	shown.Scale = k.scale(f.Reading, r, f, spans[f.Reading], earlier)
+	shown.Curve = s.curveOf(f, r, e)
 	return shown
+}
+
+// curveOf draws the inverse-time curve with an entry's point, where a trip time was held against it.
+func (s *Server) curveOf(f forms.Finding, r forms.Reading, e store.Entry) *curveDrawing {
+	if f.Reading != "trip_time_ms" || f.Limit == nil || f.Limit.Max == nil || len(f.At) > 0 {
+		return nil
+	}
+	current, ok := e.Body.Readings["test_current_ma"].Value.(float64)
+	if !ok || current < 4 {
+		return nil
+	}
+	if _, ok := forms.ClassATripMS(current); !ok || e.Body.Given.RatedResidualMA != 0 {
+		return nil
+	}
+	ms, ok := r.Value.(float64)
+	if !ok && r.Above != nil {
+		ms, ok = *r.Above, true
+	}
+	if !ok || ms <= 0 {
+		return nil
+	}
+	return s.ink().classACurve(&[2]float64{current, ms}, shapeOf(f.Verdict))
+}
+
+// judgements lists every result an entry has had, where there was more than one: what the tester was shown, what it was
+// judged when it came, and after each revision of the rules since.
+func (s *Server) judgements(v *store.View, e store.Entry, zone *time.Location) ([]judgementShown, error) {
+	k := s.ink()
+	list, err := v.Judgements(e)
+	if err != nil || len(list) < 2 {
+		return nil, err
+	}
+	var out []judgementShown
+	if e.Shown != nil && e.Shown.Result != "" {
+		out = append(out, judgementShown{When: k.say("config.when_shown", "day", k.at(e.At, zone)), Under: k.say("config.shown_under", "rev", e.Shown.LimitRev), Verdict: k.verdict(e.Shown.Result)})
+	}
+	for _, j := range list {
+		one := judgementShown{When: k.say("config.when_received", "day", k.at(e.Received, zone)), Verdict: k.verdict(j.Result)}
+		if j.LimitSet != "" {
+			one.Under = k.say("office.entry.limits_rev", "name", k.named("limit_set", j.LimitSet), "rev", j.LimitRev)
+		}
+		if r := j.Revision; r != nil {
+			one.When = k.say("config.when_revised", "day", k.at(r.At, zone), "from", k.day(r.InForce))
+			one.By, one.Reason = s.personName(v, r.By), r.Reason
+		}
+		out = append(out, one)
+	}
+	return out, nil
 }
 
 // findingReading is the reading a finding is about.
@@ -404,16 +464,20 @@ func formSpans(v *store.View, id string) (map[string][]scaleSpan, error) {
 	}
 	spans := map[string][]scaleSpan{}
 	for _, f := range all {
-		if f.ID != id {
-			continue
-		}
-		for _, step := range f.Steps {
-			for _, ask := range step.Asks {
-				if ask.Scale != nil {
-					spans[ask.Reading] = append(spans[ask.Reading], scaleSpan{log: ask.Scale.Shape == "log", from: ask.Scale.From, to: ask.Scale.To})
-				}
-			}
+		if f.ID == id {
+			addSpans(spans, f)
 		}
 	}
 	return spans, nil
+}
+
+// addSpans adds the scales of a form's questions.
+func addSpans(spans map[string][]scaleSpan, f *forms.Form) {
+	for _, step := range f.Steps {
+		for _, ask := range step.Asks {
+			if ask.Scale != nil {
+				spans[ask.Reading] = append(spans[ask.Reading], scaleSpan{log: ask.Scale.Shape == "log", from: ask.Scale.From, to: ask.Scale.To})
+			}
+		}
+	}
 }

@@ -1,7 +1,9 @@
 package server
 
 import (
+	"cmp"
 	"net/http"
+	"slices"
 	"strings"
 
 	"github.com/labstack/echo/v4"
@@ -15,56 +17,206 @@ type limitsPage struct {
 	Frame
 	Crumbs         []link
 	Heading, Under string
+	Stands         string // for which kinds it stands
+	Actions        []link
 	Revisions      []limitSetShown
 }
 
 // limitSetShown is one revision of a limit set.
 type limitSetShown struct {
-	Name   string
-	Limits []limitRow
+	Name, By, Reason string
+	Older            bool
+	Limits           []limitRow
 }
 
-type limitRow struct{ Reading, Limit, When, Level, Source, Status string }
+// limitRow is one limit in words, with its drawing where it has one.
+type limitRow struct {
+	Reading, Limit, When, Level, Source, Status string
+	Text                                        string
+	Scales                                      []limitScale
+	Curve                                       *curveDrawing
+	Answers                                     []answerShown
+}
+
+// limitScale is a limit drawn on its reading's scale; Name says where it applies, where a limit has several.
+type limitScale struct {
+	Name string
+	*scaleDrawing
+}
+
+// answerShown is one of the answers that may be given, with the verdict it leads to.
+type answerShown struct {
+	Mark mark
+	Text string
+}
 
 func (s *Server) limitsShow(c echo.Context) error {
 	id, k := c.Param("set"), s.ink()
 	view := limitsPage{Frame: s.frame(c, k.named("limit_set", id), "set-up"), Crumbs: []link{{Href: "/set-up", Text: k.say("office.setup.title")}}, Heading: k.named("limit_set", id)}
 	err := s.store.View(scope(c), func(v *store.View) error {
-		sets, err := v.LimitSets()
+		all, err := limitRevisionsSeen(v, id)
 		if err != nil {
 			return err
 		}
-		for _, set := range sets {
-			if set.ID == id { // newest first
-				view.Under = k.say("office.limits.for", "kinds", s.kinds(set.Kinds))
-				view.Revisions = append([]limitSetShown{s.limitSet(set)}, view.Revisions...)
+		spans, err := allSpans(v)
+		if err != nil {
+			return err
+		}
+		for _, r := range all { // newest first
+			if r.Site == "" || view.Under == "" {
+				view.Under, view.Stands = k.say("office.limits.for", "kinds", s.kinds(r.LimitSet.Kinds)), ""
+				if len(r.LimitSet.StandsFor) > 0 {
+					view.Stands = k.say("config.stands", "kinds", s.kinds(r.LimitSet.StandsFor))
+				}
+				view.Heading = s.setName(r.LimitSet)
+				view.Title = view.Heading
 			}
+			shown := s.limitSet(r.LimitSet, spans)
+			if err := s.setBy(v, r, &shown); err != nil {
+				return err
+			}
+			view.Revisions = append([]limitSetShown{shown}, view.Revisions...)
 		}
 		if len(view.Revisions) == 0 {
 			return refuse(codeNotFound, "", k.say("office.limits.unknown"))
+		}
+		for i := range view.Revisions {
+			view.Revisions[i].Older = i > 0
 		}
 		return nil
 	})
 	if err != nil {
 		return err
 	}
+	if view.Change {
+		href := "/limits/" + id
+		view.Actions = []link{{Href: href + "/edit", Text: k.say("config.change"), Here: true}, {Href: href + "/edit?copy=1", Text: k.say("config.copy")}}
+	}
 	return s.page(c, http.StatusOK, "limits.html", view)
 }
 
-func (s *Server) limitSet(set *forms.LimitSet) limitSetShown {
+// limitRevisionsSeen gives the revisions of a set, the organisation's and those of the sites the reader may see, by day in
+// force.
+func limitRevisionsSeen(v *store.View, id string) ([]store.Revision, error) {
+	all, err := v.LimitRevisions("", id)
+	if err != nil {
+		return nil, err
+	}
+	sites, err := v.Sites()
+	if err != nil {
+		return nil, err
+	}
+	for _, site := range sites {
+		own, err := v.LimitRevisions(site.ID, id)
+		if err != nil {
+			return nil, err
+		}
+		all = append(all, own...)
+	}
+	slices.SortStableFunc(all, func(a, b store.Revision) int {
+		return cmp.Or(cmp.Compare(a.InForce, b.InForce), cmp.Compare(a.Revision, b.Revision))
+	})
+	return all, nil
+}
+
+// allSpans are the scales of every form.
+func allSpans(v *store.View) (map[string][]scaleSpan, error) {
+	all, err := v.Forms()
+	spans := map[string][]scaleSpan{}
+	for _, f := range all {
+		addSpans(spans, f)
+	}
+	return spans, err
+}
+
+// setBy says who set a revision, why and where.
+func (s *Server) setBy(v *store.View, r store.Revision, out *limitSetShown) error {
+	k := s.ink()
+	out.Reason = r.Reason
+	if r.By != "" {
+		out.By = k.say("config.set_by", "by", s.personName(v, r.By), "day", k.day(forms.DayOf(r.At)))
+	}
+	if r.Site != "" {
+		site, err := v.Site(r.Site)
+		if err != nil {
+			return err
+		}
+		out.Name = joined(site.Name, out.Name)
+	}
+	return nil
+}
+
+func (s *Server) limitSet(set *forms.LimitSet, spans map[string][]scaleSpan) limitSetShown {
 	k := s.ink()
 	out := limitSetShown{Name: k.say("office.limits.revision", "rev", set.Revision, "day", k.day(set.InForce))}
 	if set.InForce <= forms.Date(1900, 1, 1) {
 		out.Name = k.say("office.limits.revision_open", "rev", set.Revision)
 	}
-	for _, l := range set.Limits {
-		row := limitRow{Reading: k.reading(l.Reading), Limit: s.limitWords(l), When: s.whenAndVoid(l), Level: k.say("office.limits." + l.Level), Source: l.Source, Status: status(l.Source, l.Status)}
-		if l.Reading == "" {
-			row.Reading = s.fieldName(l.Field)
-		}
+	for i := range set.Limits {
+		row := s.limitRow(&set.Limits[i])
+		s.draw(&row, &set.Limits[i], spans)
 		out.Limits = append(out.Limits, row)
 	}
 	return out
+}
+
+// limitRow says a limit in words.
+func (s *Server) limitRow(l *forms.Limit) limitRow {
+	k := s.ink()
+	row := limitRow{Reading: k.reading(l.Reading), Limit: s.limitWords(*l), When: s.whenAndVoid(*l), Level: k.say("office.limits." + l.Level), Source: l.Source, Status: status(l.Source, l.Status)}
+	if l.Reading == "" {
+		row.Reading = s.fieldName(l.Field)
+	}
+	if !l.Flag {
+		row.Text = k.say(l.Text)
+	}
+	return row
+}
+
+// draw adds what a limit looks like: its scale, its curve, or the answers that may be given.
+func (s *Server) draw(row *limitRow, l *forms.Limit, spans map[string][]scaleSpan) {
+	k := s.ink()
+	one := func(name, code string, b forms.Bounds, own []scaleSpan) {
+		if d := k.limitScale(code, &b, own); d != nil {
+			row.Scales = append(row.Scales, limitScale{name, d})
+		}
+	}
+	switch {
+	case l.Curve != "":
+		row.Curve = k.classACurve(nil, "")
+	case l.OverRated != 0:
+		row.Curve = k.overRated(l.OverRated / 1000)
+	case l.OfRated != nil:
+		percent := forms.Bounds{Min: times(l.OfRated.Min, 100), Max: times(l.OfRated.Max, 100)}
+		one(k.say("config.of_rated"), "", percent, nil)
+	case len(l.ByMultiple) > 0:
+		for _, r := range l.ByMultiple {
+			one(k.say("office.entry.multiple", "n", number(r.Multiple)), l.Reading, forms.Bounds{Min: r.Min, Max: r.Max}, spans[l.Reading])
+		}
+	case bounded(l):
+		one("", l.Reading, forms.Bounds{Min: l.Min, Max: l.Max}, spans[l.Reading])
+	case len(l.OneOf) > 0:
+		outside := forms.Fail
+		if l.Level == forms.WatchOnly {
+			outside = forms.Watch
+		}
+		code, _ := forms.CodeOf(l.Reading)
+		for _, o := range code.Options {
+			verdict := outside
+			if slices.Contains(l.OneOf, o) {
+				verdict = forms.Pass
+			}
+			row.Answers = append(row.Answers, answerShown{mark{shapeOf(verdict), ""}, k.answer(l.Reading, o)})
+		}
+	}
+}
+
+func times(v *float64, by float64) *float64 {
+	if v == nil {
+		return nil
+	}
+	out := *v * by
+	return &out
 }
 
 // limitWords says a limit as it stands in its set, before it is computed for a reading.

@@ -86,6 +86,7 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 			Batch: []field{{Name: "count", ID: "batch-count", Label: "How many", Type: "number", Value: "30"}}, Markings: []field{{Name: "roll", ID: "marking-roll", Label: "Roll", Type: "text"}}},
 		"setup.html":          s.setupSample(),
 		"limits.html":         s.limitsSample(),
+		"revision.html":       revisionSample(),
 		"import.html":         importPage{Frame: frameOf("Import a register", "sites"), Crumbs: []link{{Href: "/sites", Text: "Sites"}}, Heading: "Import a register", Lead: "CSV or XLSX.", Wrong: "The file is locked with a password.", Columns: []link{{Text: "Room"}, {Text: "Panel"}}},
 		"import_preview.html": previewSample(),
 		"aside.html": asidePage{Frame: frameOf("Kept aside", "set-up"), Crumbs: []link{{Href: "/set-up", Text: "Set up"}}, Heading: "2 records kept aside.", Under: "They came and do not stand in the book as they were sent.", Cut: "The newest 200 of each list are shown.",
@@ -157,13 +158,22 @@ func (s *Server) setupSample() setupPage {
 func (s *Server) limitsSample() limitsPage {
 	p := limitsPage{Frame: frameOf("Limits", "set-up"), Crumbs: []link{{Href: "/set-up", Text: "Set up"}}, Heading: "UL 943 Class A", Under: "For GFCI receptacles."}
 	for _, set := range forms.Shipped().LimitSets {
-		p.Revisions = append(p.Revisions, s.limitSet(set))
+		p.Revisions = append(p.Revisions, s.limitSet(set, map[string][]scaleSpan{}))
 	}
 	return p
 }
 
+func revisionSample() revisionPage {
+	fails := mark{"fail", "Fail"}
+	passes := mark{"pass", "Pass"}
+	return revisionPage{Frame: frameOf("What changes", "set-up"), Crumbs: []link{{Href: "/set-up", Text: "Set up"}}, Heading: "What changes: Class A", Lead: "In force from 1 Nov 2026.",
+		Limits: []change{{Name: "Trip current", Was: "4 to 6 mA", Became: "4 to 5 mA"}}, Counts: []resultCount{{"3", passes, fails}},
+		Entries: []entryPreviewed{{Href: "/entries/1", Day: "3 Nov 2026", Where: "By the sink", Task: "Instrument test", Was: passes, Becomes: fails}},
+		Hidden:  []hidden{{"record", "1"}}, Back: "/limits/us-class-a/edit", More: "And 2 more."}
+}
+
 // keptFields hold what is not text of a reader: addresses, shapes, places in a drawing, codes.
-var keptFields = []string{"Href", "Action", "Cancel", "FailedHref", "OverdueHref", "NewSite", "NewInstrument", "Record", "Sheet", "Shape", "Path", "BandX", "BandW", "Limits", "X", "Anchor", "Before", "Mark", "Pointer", "Role", "Here", "Type", "Known"}
+var keptFields = []string{"Href", "Action", "Cancel", "FailedHref", "OverdueHref", "NewSite", "NewInstrument", "Record", "Sheet", "Shape", "Path", "BandX", "BandW", "Limits", "X", "Anchor", "Before", "Mark", "Pointer", "At", "Y", "Inside", "Back", "Role", "Here", "Type", "Known"}
 
 // with gives a page with every text of a reader replaced, or with all lists emptied where text is nil.
 func with(page any, text *string) any {

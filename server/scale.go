@@ -114,19 +114,8 @@ func (k ink) scale(code string, r forms.Reading, f forms.Finding, spans []scaleS
 		}
 	}
 	s := spanOf(spans, value, f.Limit)
-	d := &scaleDrawing{Open: open != 0, Shape: shapeOf(f.Verdict)}
-	low, high := 0.0, scaleWidth
-	if f.Limit.Min != nil {
-		low = s.place(*f.Limit.Min)
-		d.Limits = append(d.Limits, figure(low))
-	}
-	if f.Limit.Max != nil {
-		high = s.place(*f.Limit.Max)
-		d.Limits = append(d.Limits, figure(high))
-	}
-	if high > low {
-		d.BandX, d.BandW = figure(low), figure(high-low)
-	}
+	d := s.drawing(f.Limit)
+	d.Open, d.Shape = open != 0, shapeOf(f.Verdict)
 	at := s.place(value)
 	d.Mark = figure(at)
 	switch open {
@@ -139,6 +128,47 @@ func (k ink) scale(code string, r forms.Reading, f forms.Finding, spans []scaleS
 	}
 	if before != nil {
 		d.Before = figure(s.place(*before))
+	}
+	unit := unitOf(code)
+	d.Aria = k.say("office.entry.scale_aria", "value", k.value(code, r), "from", number(s.from), "to", k.amount(number(s.to), unit), "limit", k.limit(code, f.Limit, f.Level))
+	return d
+}
+
+// limitScale draws a limit without any value; nil where it has no figure.
+func (k ink) limitScale(code string, b *forms.Bounds, spans []scaleSpan) *scaleDrawing {
+	if b.Min == nil && b.Max == nil {
+		return nil
+	}
+	value := 0.0
+	if b.Max != nil {
+		value = *b.Max
+	} else {
+		value = *b.Min
+	}
+	s := spanOf(spans, value, b)
+	d := s.drawing(b)
+	unit := unitOf(code)
+	if code == "" {
+		unit = "%"
+	}
+	d.Aria = k.say("config.scale_aria", "from", number(s.from), "to", k.amount(number(s.to), unit), "limit", k.limit(code, b, ""))
+	return d
+}
+
+// drawing draws the axis, the limits and the band between them.
+func (s scaleSpan) drawing(b *forms.Bounds) *scaleDrawing {
+	d := &scaleDrawing{}
+	low, high := 0.0, scaleWidth
+	if b.Min != nil {
+		low = s.place(*b.Min)
+		d.Limits = append(d.Limits, figure(low))
+	}
+	if b.Max != nil {
+		high = s.place(*b.Max)
+		d.Limits = append(d.Limits, figure(high))
+	}
+	if high > low {
+		d.BandX, d.BandW = figure(low), figure(high-low)
 	}
 	ticks := s.ticks()
 	for i, t := range ticks {
@@ -154,8 +184,6 @@ func (k ink) scale(code string, r forms.Reading, f forms.Finding, spans []scaleS
 		}
 		d.Ticks = append(d.Ticks, scaleTick{figure(s.place(t)), anchor, number(t)})
 	}
-	unit := unitOf(code)
-	d.Aria = k.say("office.entry.scale_aria", "value", k.value(code, r), "from", number(s.from), "to", k.amount(number(s.to), unit), "limit", k.limit(code, f.Limit, f.Level))
 	return d
 }
 

@@ -1,0 +1,86 @@
+package main
+
+import (
+	"fmt"
+	"strings"
+	"testing"
+	"time"
+
+	"tripwell/forms"
+	"tripwell/store"
+)
+
+// entryBelow finds an instrument entry of the demo that passed with a trip current above a figure.
+func entryAbove(t *testing.T, dir string, ma float64) string {
+	t.Helper()
+	s, err := store.Open(dir, store.Options{Now: time.Now})
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer s.Close()
+	found := ""
+	err = s.View(store.Scope{Role: "owner", All: true}, func(v *store.View) error {
+		sites, err := v.Sites()
+		if err != nil {
+			return err
+		}
+		for _, site := range sites {
+			for e, err := range v.SiteEntries(site.ID, forms.NoDay, forms.NoDay) {
+				if err != nil {
+					return err
+				}
+				if f, ok := e.Body.Readings["trip_current_ma"].Value.(float64); ok && f > ma && e.LimitSet == "us-class-a" && e.Verdict.Result == forms.Pass {
+					found = e.ID
+				}
+			}
+		}
+		return nil
+	})
+	if err != nil || found == "" {
+		t.Fatalf("no entry above %g mA that passed (%v)", ma, err)
+	}
+	return found
+}
+
+func TestBrowser_ManagerRevisesALimitFromAPastDay(t *testing.T) {
+	chromium(t)
+	dir := demoFolder(t)
+	entry := entryAbove(t, dir, 5)
+	p := start(t, "demo", "--listen", "127.0.0.1:0", "--data", dir)
+	in := p.link("manager")
+	base := in[:strings.Index(in, "/in/")]
+	b := openBrowser(t, 1280, 900)
+	b.open(in)
+	b.press("main", "")
+	b.wait("the overview", `location.pathname === "/"`)
+	b.open(base + "/limits/us-class-a")
+	b.press("main", "Change this set")
+	b.wait("the form", `document.querySelector("input[name='max.trip-current']")`)
+	typed := func(name, value string) {
+		t.Helper()
+		b.js(fmt.Sprintf(`(() => { document.querySelector("[name=" + %s + "]").value = %s; return true })()`, quote(quote(name)), quote(value)))
+	}
+	typed("max.trip-current", "3")
+	typed("in_force", "2025-01-01")
+	typed("reason", "Advice of the maker")
+	b.press("form.form", "Show what it changes")
+	b.wait("the refusal", `document.querySelector("[role=alert]")?.innerText.includes("above the most")`)
+	typed("max.trip-current", "5")
+	b.press("form.form", "Show what it changes")
+	b.wait("the preview", `document.querySelector("form[action='/revisions']")`)
+	if text := b.text("main"); !strings.Contains(text, "4 to 6") || !strings.Contains(text, "4 to 5") || !strings.Contains(text, "Conditional fail") {
+		b.fail("the preview does not say what changes")
+	}
+	b.picture("preview")
+	b.press("main", "Accept this revision")
+	b.wait("the set again", `location.pathname === "/limits/us-class-a"`)
+	if text := b.text("main"); !strings.Contains(text, "Revision 2") || !strings.Contains(text, "Advice of the maker") {
+		b.fail("the revision is not shown")
+	}
+	b.open(base + "/entries/" + entry)
+	b.wait("both judgements", `document.querySelector("#judgements")`)
+	if text := b.text("#judgements"); !strings.Contains(text, "Pass") || !strings.Contains(text, "Conditional fail") || !strings.Contains(text, "Advice of the maker") {
+		b.fail("both results should stand, got %s", text)
+	}
+	b.picture("entry")
+}

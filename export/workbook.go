@@ -50,12 +50,15 @@ type DeviceLine struct {
 	Device  store.DeviceRow
 	Fields  map[string]any // of the register; nil where they are not known
 	Circuit map[string]any // fields of its circuit
+	// Imported are the tasks whose last test was brought in and not witnessed.
+	Imported []string
 }
 
 // DueLine is a due date with its site.
 type DueLine struct {
 	Site store.Site
 	store.DueRow
+	Imported bool // the date counts from a test that was brought in and not witnessed
 }
 
 // EntryLine is one entry with what its row says in words.

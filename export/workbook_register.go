@@ -1,6 +1,8 @@
 package export
 
 import (
+	"strings"
+
 	"tripwell/forms"
 	"tripwell/store"
 )
@@ -17,6 +19,7 @@ var registerColumns = []column{
 	{"breaker_a", 10, numberCell}, {"poles", 8, numberCell}, {"circuit_v", 10, numberCell}, {"conductor", 12, textCell}, {"supply", 10, textCell}, {"circuit_standard", 10, textCell},
 	{"serial", 14, textCell}, {"nominal_v", 10, numberCell}, {"delayed", 10, textCell}, {"waveform", 14, textCell}, {"equipment_ground", 16, textCell}, {"faces", 8, numberCell},
 	{"own_limit_set", 18, textCell}, {"gauge", 10, textCell}, {"length_m", 10, numberCell}, {"kept_at", 18, textCell}, {"note", 40, textCell},
+	{"imported", 30, textCell},
 }
 
 // register writes one row a device, in walking order.
@@ -56,7 +59,11 @@ func (b *book) registerRow(s *sheet, line DeviceLine) error {
 	}
 	s.day(next.Due).text(b.word("task", next.Task)).text(d.ID)
 	b.registerFields(s, line)
-	return s.end()
+	var unseen []string
+	for _, task := range line.Imported {
+		unseen = append(unseen, b.word("task", task))
+	}
+	return s.text(strings.Join(unseen, ", ")).end()
 }
 
 // registerFields writes the fields that nothing else of the row shows, as an import reads them.
@@ -95,6 +102,7 @@ func nextDue(due []store.Due) store.Due {
 var dueColumns = []column{
 	{"site_code", 10, textCell}, {"site", 22, textCell}, {"tag", 12, textCell}, {"place", 40, textCell}, {"kind", 22, textCell},
 	{"task", 16, textCell}, {"due", 12, dayCell}, {"state", 16, textCell}, {"last_tested", 12, dayCell}, {"plan", 30, textCell}, {"device_id", 38, textCell},
+	{"imported", 30, textCell},
 }
 
 // due writes the dates to come and those missed, as they stood on the day of the workbook.
@@ -108,8 +116,12 @@ func (b *book) due() error {
 			return err
 		}
 		d := line.Device
+		imported := ""
+		if line.Imported {
+			imported = b.say("sheet.imported")
+		}
 		err = s.row().text(line.Site.Code).text(line.Site.Name).text(TagText(d.Tag)).text(PlaceText(d.Place)).text(b.word("kind", d.Kind)).
-			text(b.word("task", line.Task)).day(line.Due.Due).text(b.word("state", line.State)).day(line.Last).text(b.word("plan", line.Plan)).text(d.ID).end()
+			text(b.word("task", line.Task)).day(line.Due.Due).text(b.word("state", line.State)).day(line.Last).text(b.word("plan", line.Plan)).text(d.ID).text(imported).end()
 		if err != nil {
 			return err
 		}

@@ -84,7 +84,7 @@ func handSource(t testing.TB, demo bool) WorkbookSource {
 		Store: "store-1", Epoch: 2, Demo: demo, Head: "tripwell/org/store-1/2\n5\nAAAA\n\n— signed\n",
 		Logs:    []LogLine{{store.LogHead{Log: site.ID, Size: 12, Root: "cm9vdA=="}, "ELM-4"}},
 		Devices: seq(DeviceLine{Site: site, Device: dev}), Entries: seq(first, corrected, imported),
-		Due:        seq(DueLine{site, store.DueRow{Device: dev, Due: store.Due{Task: "button", Due: forms.Date(2026, time.December, 31), Last: forms.NoDay, State: "never-tested"}}}),
+		Due:        seq(DueLine{Site: site, DueRow: store.DueRow{Device: dev, Due: store.Due{Task: "button", Due: forms.Date(2026, time.December, 31), Last: forms.NoDay, State: "never-tested"}}}),
 		Limits:     []LimitLine{{Set: "us-class-a", Revision: 1, InForce: forms.Date(1900, time.January, 1), ID: "trip-time", Reading: "trip_time_ms", Limit: "words", Level: "must", Source: "UL 943"}},
 		PersonName: func(id string) string { return map[string]string{"p2": "Crew 2"}[id] },
 	}

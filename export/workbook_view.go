@@ -143,12 +143,34 @@ func deviceLines(v *store.View, sites []store.Site) iter.Seq2[DeviceLine, error]
 				return
 			}
 			for d, err := range v.Devices(site.ID) {
-				if !yield(DeviceLine{site, d, fields[d.ID], circuits[d.Panel+"\x1f"+d.Circuit]}, err) || err != nil {
+				line := DeviceLine{Site: site, Device: d, Fields: fields[d.ID], Circuit: circuits[d.Panel+"\x1f"+d.Circuit]}
+				if err == nil {
+					line.Imported, err = importedTasks(v, d)
+				}
+				if !yield(line, err) || err != nil {
 					return
 				}
 			}
 		}
 	}
+}
+
+// importedTasks are the tasks whose last test nobody here witnessed, in the order of tasks.
+func importedTasks(v *store.View, d store.DeviceRow) (tasks []string, err error) {
+	for _, task := range forms.Tasks() {
+		last, ok := d.Last[task]
+		if !ok {
+			continue
+		}
+		unseen, err := v.Unwitnessed(&d, task, last.Day)
+		if err != nil {
+			return nil, err
+		}
+		if unseen {
+			tasks = append(tasks, task)
+		}
+	}
+	return tasks, nil
 }
 
 // registerFields are the fields of a site's devices by id, and of its circuits by panel and numbers.
@@ -170,7 +192,11 @@ func dueLines(v *store.View, sites []store.Site, now time.Time) iter.Seq2[DueLin
 		for _, site := range sites {
 			ask := store.DueAsk{On: forms.DayOf(now.In(site.Location())), Until: forms.NoDay, Site: site.ID}
 			for d, err := range v.Due(ask) {
-				if !yield(DueLine{site, d}, err) || err != nil {
+				line := DueLine{Site: site, DueRow: d}
+				if err == nil && d.Last != forms.NoDay {
+					line.Imported, err = v.Unwitnessed(&d.Device, d.Task, d.Last)
+				}
+				if !yield(line, err) || err != nil {
 					return
 				}
 			}

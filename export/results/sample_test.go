@@ -12,6 +12,7 @@ import (
 
 	"github.com/xuri/excelize/v2"
 
+	"tripwell/export"
 	"tripwell/export/intake"
 	"tripwell/forms"
 	"tripwell/store"
@@ -313,5 +314,47 @@ func TestSample_InstrumentFile(t *testing.T) {
 	past := h.bringRaw(raw, Ask{Past: true, Source: InstrumentFile, Dates: intake.DMY})
 	if past.Taken != r.Taken {
 		t.Errorf("as past results: taken %d, want %d", past.Taken, r.Taken)
+	}
+}
+
+// What was brought in stands apart in the workbook: in the entries, in their readings, and behind every date and last
+// test that counts from it.
+func TestPast_StandsApartInTheWorkbook(t *testing.T) {
+	h := smallHouse(t)
+	h.bring("Tag,Last button test,Last annual test\n"+sinkTag+",2026-11-03,2026-03-05\n", Ask{Past: true})
+	h.bring("Tag,Date,Test,Condition,Trip time (ms),Test current\n"+sinkTag+",2025-03-05,Instrument,sound,25,6.8\n", Ask{Past: true})
+	h.bring("Tag,Date,Button,Reset,Power off,Restored\n"+sinkTag+",2026-11-20,y,y,y,y\n", Ask{ReadBy: "Crew 1"})
+	var out bytes.Buffer
+	h.must(export.WorkbookOf(&out, h.Store, everything, export.WorkbookAsk{From: forms.NoDay, To: forms.NoDay, Now: h.now}))
+	f, err := excelize.OpenReader(&out)
+	h.must(err)
+	defer f.Close()
+	marked := func(sheet, column, must string) map[string]string {
+		rows, err := f.GetRows(sheet)
+		h.must(err)
+		got := map[string]string{}
+		for _, cells := range rows[1:] {
+			row := map[string]string{}
+			for i, cell := range cells {
+				row[rows[0][i]] = cell
+			}
+			if row["Tag"] != "" {
+				got[row[must]] = row[column]
+			}
+		}
+		return got
+	}
+	apart := "imported: not witnessed by Tripwell"
+	if got := marked("Entries", "Imported", "Test day"); got["2026-11-03"] != apart || got["2026-03-05"] != apart || got["2025-03-05"] != apart || got["2026-11-20"] != "" {
+		t.Errorf("entries %v", got)
+	}
+	if got := marked("Readings", "Status", "Test day"); got["2025-03-05"] != "imported" {
+		t.Errorf("readings %v", got)
+	}
+	if got := marked("Due", "Imported", "Task"); got["Instrument test"] != apart || got["Button test"] != "" {
+		t.Errorf("dates %v", got)
+	}
+	if got := marked("Register", "Imported", "Site code"); got["ELM-4"] != "Instrument test" {
+		t.Errorf("register %v", got)
 	}
 }

@@ -90,7 +90,7 @@ func columnNamed(heading string) (Column, bool) {
 // rows to correct adds.
 var notRead = func() map[string]bool {
 	m := map[string]bool{}
-	for _, h := range []string{"no", "nr", "#", "№", "item", "item_no", "row", "sheet", "what_to_correct", "device_id", "next_date", "next_test", "last_button_test", "button_result", "last_instrument_test",
+	for _, h := range []string{"no", "nr", "#", "№", "item", "item_no", "row", "sheet", "what_to_correct", "device_id", "imported", "next_date", "next_test", "last_button_test", "button_result", "last_instrument_test",
 		"instrument_result", "last_receptacle_test", "receptacle_result"} {
 		m[h] = true
 	}

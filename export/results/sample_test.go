@@ -351,7 +351,7 @@ func TestPast_StandsApartInTheWorkbook(t *testing.T) {
 	if got := marked("Readings", "Status", "Test day"); got["2025-03-05"] != "imported" {
 		t.Errorf("readings %v", got)
 	}
-	if got := marked("Due", "Imported", "Task"); got["Instrument test"] != apart || got["Button test"] != "" {
+	if got := marked("Due", "Imported", "Test"); got["Instrument test"] != apart || got["Button test"] != "" {
 		t.Errorf("dates %v", got)
 	}
 	if got := marked("Register", "Imported", "Site code"); got["ELM-4"] != "Instrument test" {

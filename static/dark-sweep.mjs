@@ -18,26 +18,33 @@ export const lost = (rows) => rows.filter((r) => r.mapped && r.said === "live");
 
 /**
  * The map's changes and the flags: an outlet that went dark hangs on this protector from now on; a mapped one that stayed
- * live is a defect by hand and stays on the map until somebody says otherwise.
+ * live is a defect by hand, unless its own entry says so already (fails), and stays on the map until somebody says otherwise.
  */
-export function sweepFacts({ rows, protector, words, newId }) {
+export function sweepFacts({ rows, protector, words, newId, fails = () => false }) {
   const facts = rows.filter((r) => r.said === "dark" && r.device.fields?.fed_by !== protector.id).flatMap((r) => feedFacts(r.device, protector));
-  for (const { device } of lost(rows)) facts.push({ kind: "defect.opened", subject: newId(), body: { device: device.id, cause: "protection-lost", protector: protector.id, text: words(device) } });
+  for (const { device } of lost(rows)) if (!fails(device)) facts.push({ kind: "defect.opened", subject: newId(), body: { device: device.id, cause: "protection-lost", protector: protector.id, text: words(device) } });
   return facts;
 }
 
-/** The form an outlet that went dark is written on: one that asks whether it goes dark, else the outlet's own. */
+/** The form an outlet is written on: one that asks whether it is dead while tripped, else its own that asks how it was found. */
 export function darkForm(forms, device) {
   const own = forms.filter((f) => f.kinds.includes(device.kind));
-  return own.find((f) => asks(f, "goes_dark")) ?? own.find((f) => f.task === "receptacle" && asks(f, "found")) ?? own.find((f) => asks(f, "found")) ?? null;
+  return own.find((f) => asksDead(f, device)) ?? own.find((f) => f.task === "receptacle" && asks(f, "found")) ?? own.find((f) => asks(f, "found")) ?? null;
 }
 
 const asks = (form, code) => form.steps.some((s) => s.asks.some((a) => a.reading === code));
+/** Outlets behind another device answer for it; a device that protects is dead by its own button, which is another question. */
+const asksDead = (form, device) => form.steps.some((s) => s.asks.some((a) => a.reading === "load_dead_when_tripped" && (a.when ?? []).some((w) => w.field === "kind" && [w.is].flat().includes(device.kind))));
 
-/** The entry of an outlet found dark after TEST: without power as intended, the rest not measured for that reason. */
-export function darkEntry({ device, form, limitSet }) {
-  const answers = asks(form, "goes_dark") ? { goes_dark: { pick: "yes" } } : { found: { pick: "no-power" } };
-  return lockedEntry({ device, form, limitSet, reason: "circuit-dead", answers });
+/**
+ * The entry of an outlet noted while its protector was tripped, the rest not measured for that reason; null where nothing
+ * is to be said: a live one whose form does not ask.
+ */
+export function darkEntry({ device, form, limitSet, said }) {
+  const asked = asksDead(form, device);
+  if (said === "live" && !asked) return null;
+  const answers = asked ? { load_dead_when_tripped: { pick: said === "dark" ? "yes" : "no" } } : { found: { pick: "no-power" } };
+  return lockedEntry({ device, form, limitSet, reason: said === "dark" ? "circuit-dead" : "other", answers });
 }
 
 /** Critical loads that TEST at a protector takes the power from, its own place's first. */

@@ -94,10 +94,11 @@ export function fieldWork(app, parts) {
 
     /** What went dark behind a protector: an entry for each, its place on the map, and a defect where protection was lost. */
     keepDark(site, protector, rows, key) {
-      const entries = rows.filter((r) => r.said === "dark").map((r) => [r.device, darkForm(site.snapshot.forms, r.device)]).filter(([, form]) => form)
-        .map(([device, form]) => entryFact(site, device, form, darkEntry({ device, form, limitSet: setOf(site, device, form) })));
+      const made = rows.filter((r) => r.said).map((r) => ({ ...r, form: darkForm(site.snapshot.forms, r.device) })).filter((r) => r.form)
+        .map((r) => ({ ...r, entry: darkEntry({ device: r.device, form: r.form, limitSet: setOf(site, r.device, r.form), said: r.said }) })).filter((r) => r.entry);
+      const entries = made.map((r) => entryFact(site, r.device, r.form, r.entry)), failed = new Set(made.filter((r) => r.said === "live").map((r) => r.device.id));
       const what = app.titleById(protector.id);
-      const facts = sweepFacts({ rows, protector, words: (d) => say("dark.defect", { what: app.titleById(d.id), protector: what }), newId: app.newId });
+      const facts = sweepFacts({ rows, protector, words: (d) => say("dark.defect", { what: app.titleById(d.id), protector: what }), newId: app.newId, fails: (d) => failed.has(d.id) });
       return app.write(site, [...facts.map((f) => ({ ...f, title: what })), ...entries], { drafts: [key], said: say("dark.kept", { what }) });
     },
 

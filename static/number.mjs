@@ -10,11 +10,11 @@ const FACTORS = {
 };
 
 /** What people write for a unit. */
-const SPELLINGS = { "\u03a9": "ohm", "\u2126": "ohm", ohms: "ohm", "M\u03a9": "Mohm", "M\u2126": "Mohm", "\u00b0": "deg", "\u00d7": "x", sec: "s" };
+const SPELLINGS = { "k\u03a9": "kohm", "k\u2126": "kohm", "\u03a9": "ohm", "\u2126": "ohm", ohms: "ohm", "M\u03a9": "Mohm", "M\u2126": "Mohm", "\u00b0": "deg", "\u00d7": "x", sec: "s" };
 
 const spelling = (text, units) => units.find((u) => u === text)
   ?? units.find((u) => u === SPELLINGS[text])
-  ?? units.find((u) => u.toLowerCase() === text.toLowerCase());
+  ?? units.find((u) => u.toLowerCase() === text.toLowerCase() && !(u.startsWith("M") && text.startsWith("m"))); // "mohm" for megohms may be milliohms
 
 /** Rounds away what multiplying in binary adds (0.3 s is 300 ms, not 299.99…). */
 export const tidy = (x) => Number(x.toPrecision(12));

@@ -75,6 +75,7 @@ func (c formsListCmd) Run(e *env) error {
 	}
 	w := tabwriter.NewWriter(e.stdout, 0, 0, 2, ' ', 0)
 	writeKinds(w, words)
+	writeLamps(w, words)
 	for _, f := range forms.Shipped().Forms {
 		writeForm(w, words, f)
 	}
@@ -94,6 +95,19 @@ func writeKinds(w io.Writer, words *static.Words) {
 			}
 		}
 		fmt.Fprintf(w, "%s\t%s\t%s\t%s\n", row.Kind, words.Say("kind."+row.Kind), dash(row.LimitSet), dash(strings.Join(ids, ", ")))
+	}
+}
+
+// writeLamps writes what three lamps can show.
+func writeLamps(w io.Writer, words *static.Words) {
+	state := map[bool]string{true: words.Say("option.lamps.on"), false: words.Say("option.lamps.off")}
+	fmt.Fprintf(w, "\n%s\n", words.Say("option.lamps.title"))
+	for _, l := range forms.LampTable() {
+		var also []string
+		for _, condition := range l.AlsoReads {
+			also = append(also, words.Say("option.lamps."+condition))
+		}
+		fmt.Fprintf(w, "  %s\t%s\t%s\t%s\t%s\n", state[l.HotNeutral], state[l.HotGround], state[l.NeutralGround], words.Say("option.wiring."+l.Wiring), dash(strings.Join(also, "; ")))
 	}
 }
 

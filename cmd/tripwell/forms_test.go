@@ -145,6 +145,12 @@ func TestWords_EveryKeyOfTheFormsIsThere(t *testing.T) {
 			}
 		}
 	}
+	for _, l := range forms.LampTable() {
+		need("lamps", "option.wiring."+l.Wiring)
+		for _, condition := range l.AlsoReads {
+			need("lamps", "option.lamps."+condition)
+		}
+	}
 	for _, p := range forms.Shipped().Plans {
 		need(p.ID, "plan."+p.ID)
 	}

@@ -125,6 +125,8 @@ var measures = map[string]measure{
 	"s": {"time", 1000, 1}, "ms": {"time", 1, 1}, "us": {"time", 1, 1000}, "min": {"time", 60_000, 1},
 	"ohm": {"resistance", 1000, 1}, "mohm": {"resistance", 1, 1}, "kohm": {"resistance", 1_000_000, 1}, "Mohm": {"resistance", 1e9, 1}, "Gohm": {"resistance", 1e12, 1},
 	"g": {"mass", 1, 1}, "kg": {"mass", 1000, 1}, "oz": {"mass", 28.349523125, 1}, "lb": {"mass", 453.59237, 1},
+	// A force on a retention gauge, as the mass that weighs as much: 1 N = 1000/9.80665 g (standard acceleration of free fall).
+	"N": {"mass", 1e8, 980665},
 	"m": {"length", 1000, 1}, "cm": {"length", 10, 1}, "mm": {"length", 1, 1}, "ft": {"length", 304.8, 1}, "in": {"length", 25.4, 1},
 	"%": {"share", 1, 1}, "x": {"multiple", 1, 1}, "deg": {"angle", 1, 1}, "Hz": {"frequency", 1, 1}, "W": {"power", 1, 1},
 }

@@ -125,8 +125,8 @@ func (c column) figure(known forms.Code, text string, cell intake.Cell, comma, t
 	return r, true, doubtOf(known, q, v)
 }
 
-// keptUnits are those an entry can keep beside what was typed (forms: 1 s = 1000 ms, 1 oz, 1 mV).
-var keptUnits = map[string]bool{"s": true, "oz": true, "mV": true}
+// keptUnits are those an entry can keep beside what was typed (forms: 1 s = 1000 ms, 1 oz, 1 N, 1 mV, 1 A, 1 kohm).
+var keptUnits = map[string]bool{"s": true, "oz": true, "N": true, "mV": true, "A": true, "kohm": true}
 
 // typedFigure is the figure as it stood in the cell, without its unit.
 func typedFigure(text string, value float64) string {

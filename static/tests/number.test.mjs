@@ -35,6 +35,7 @@ for (const [typed, error] of refused) {
   test(`number: ${JSON.stringify(typed)} is refused as ${error}`, () => assert.equal(parseNumber(typed, "ms", ["ms", "s"]).error, error));
 }
 
+test("number: what may be milliohms is not taken for megohms", () => assert.equal(parseNumber("0.5 mohm", "Mohm").error, "unknown_unit"));
 test("number: nothing typed says nothing", () => assert.equal(parseNumber("  ", "ms"), null));
 test("number: a chosen unit holds where none is typed", () => assert.deepEqual(parseNumber("0.3", "ms", ["ms", "s"], "s"), { typed: "0.3", unit: "s", value: 300 }));
 test("number: a typed unit wins over the chosen one", () => assert.equal(parseNumber("300 ms", "ms", ["ms", "s"], "s").value, 300));

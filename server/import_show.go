@@ -235,7 +235,11 @@ func (s *Server) importSums(r register.Report) []sum {
 func (s *Server) previewAsks(view *previewPage, u upload, r register.Report) {
 	k, m := s.ink(), u.mapping
 	if r.Ambiguous > 0 || m.Dates != intake.UnknownOrder {
-		view.Asks = append(view.Asks, field{Name: "dates", Label: k.say("intake.dates"), Hint: k.say("intake.dates_hint", "n", count(r.Ambiguous)),
+		hint := ""
+		if r.Ambiguous > 0 {
+			hint = k.say("intake.dates_hint", "n", count(r.Ambiguous))
+		}
+		view.Asks = append(view.Asks, field{Name: "dates", Label: k.say("intake.dates"), Hint: hint,
 			Options: choices(string(m.Dates), "", k.say("intake.dates_ask"), "dmy", k.say("intake.dmy"), "mdy", k.say("intake.mdy"))})
 	}
 	needZone := m.Zone != ""
@@ -351,6 +355,14 @@ func (s *Server) previewRows(view *previewPage, p *register.Prepared) {
 	}
 }
 
+// columnText is the word for a column that is known here, else its heading.
+func columnText(k ink, column string) string {
+	if key := "intake.column." + column; column != "" && k.words.Has(key) {
+		return k.say(key)
+	}
+	return column
+}
+
 func (s *Server) previewProblems(view *previewPage, r register.Report) {
 	k := s.ink()
 	for _, p := range r.Problems[:min(len(r.Problems), problemsOnPage)] {
@@ -358,7 +370,7 @@ func (s *Server) previewProblems(view *previewPage, r register.Report) {
 		if p.Sheet != "" {
 			where = p.Sheet + " · " + where
 		}
-		view.Problems = append(view.Problems, problemLine{where, p.Column, p.Value, p.Text, p.Skipped})
+		view.Problems = append(view.Problems, problemLine{where, columnText(k, p.Column), p.Value, p.Text, p.Skipped})
 	}
 	view.ProblemsHead = k.say("intake.problems", "n", count(len(r.Problems)))
 	if more := len(r.Problems) - problemsOnPage; more > 0 {

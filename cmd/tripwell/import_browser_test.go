@@ -36,7 +36,7 @@ func TestImport_ManagerTakesAMessyRegisterIn(t *testing.T) {
 	office.do(chromedp.SetUploadFiles(chromedp.CSS("#f-file"), []string{file}))
 	office.picture("file")
 	office.press("main form", words.Say("intake.look"))
-	office.wait("the preview", `document.querySelector("#problems")`)
+	office.wait("the preview", `document.querySelector("#rows, #problems")`)
 	office.picture("preview")
 	if sums := office.text(".sums"); !strings.HasPrefix(sums, "0") {
 		t.Errorf("before anything is mended it would import: %s", sums)

@@ -18,16 +18,7 @@ func cellText(s string) string {
 	if plainShort(s) {
 		return s
 	}
-	s = strings.Map(func(r rune) rune {
-		switch {
-		case r == '\t' || r == '\n' || r == '\r':
-			return r
-		case r < 0x20, r == 0xFFFE, r == 0xFFFF:
-			return utf8.RuneError
-		}
-		return r
-	}, strings.ToValidUTF8(s, string(utf8.RuneError)))
-	s = keepEscapes(s)
+	s = keepEscapes(plainText(s))
 	if units(s) <= cellUnits {
 		return s
 	}
@@ -44,6 +35,22 @@ func cellText(s string) string {
 		room -= n
 	}
 	return s[:at] + cutMark
+}
+
+// plainText replaces what is no text: bytes that are no UTF-8 and control characters other than tab and line breaks.
+func plainText(s string) string {
+	if plainShort(s) {
+		return s
+	}
+	return strings.Map(func(r rune) rune {
+		switch {
+		case r == '\t' || r == '\n' || r == '\r':
+			return r
+		case r < 0x20, r == 0xFFFE, r == 0xFFFF:
+			return utf8.RuneError
+		}
+		return r
+	}, strings.ToValidUTF8(s, string(utf8.RuneError)))
 }
 
 // appendCellText appends the text of a cell as XML, from inside its start tag on: ` xml:space="preserve">text`.

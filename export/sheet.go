@@ -45,6 +45,7 @@ type sheet struct {
 	cols    []column
 	letters []string // of the columns: A, B, …
 	sw      *excelize.StreamWriter
+	flat    flatRows // takes the rows instead of a worksheet; nil in a workbook
 	rows    *spool
 	head    int // row of the headings
 	last    int // last row written
@@ -57,6 +58,9 @@ type sheet struct {
 // here first: panes, widths, print titles, page set-up, header and footer.
 func (s *sheet) open() error {
 	b := s.book
+	if s.flat != nil {
+		return s.flat.head(b, s.cols)
+	}
 	if err := b.pageSetup(s.name); err != nil {
 		return fmt.Errorf("sheet %s: %w", s.name, err)
 	}
@@ -115,6 +119,9 @@ func (s *sheet) put(cells ...any) error {
 // row begins a row.
 func (s *sheet) row() *sheet {
 	s.buf, s.cells = s.buf[:0], 0
+	if s.flat != nil {
+		s.flat.begin()
+	}
 	return s
 }
 
@@ -138,6 +145,11 @@ func (s *sheet) styled(style int, v string) *sheet {
 	if v == "" {
 		return s.skip()
 	}
+	if s.flat != nil {
+		s.cells++
+		s.flat.text(plainText(v))
+		return s
+	}
 	s.cell(style)
 	s.buf = append(s.buf, `" t="inlineStr"><is><t`...)
 	s.buf = appendCellText(s.buf, cellText(v))
@@ -147,19 +159,31 @@ func (s *sheet) styled(style int, v string) *sheet {
 
 func (s *sheet) skip() *sheet {
 	s.cells++
+	if s.flat != nil {
+		s.flat.skip()
+	}
 	return s
 }
 
 // value writes a number that is known to be finite.
 func (s *sheet) value(v float64) *sheet {
+	if s.flat != nil {
+		s.cells++
+		s.flat.number(v)
+		return s
+	}
 	s.cell(s.style())
 	s.buf = append(s.buf, `"><v>`...)
+	s.buf = append(appendFigure(s.buf, v), `</v></c>`...)
+	return s
+}
+
+func appendFigure(to []byte, v float64) []byte {
 	format := byte('f')
 	if abs := math.Abs(v); abs >= 1e15 || abs < 1e-5 && abs > 0 {
 		format = 'g'
 	}
-	s.buf = append(strconv.AppendFloat(s.buf, v, format, -1, 64), `</v></c>`...)
-	return s
+	return strconv.AppendFloat(to, v, format, -1, 64)
 }
 
 // serialDay is the spreadsheet's count of days (1900 date system) for 1970-01-01.
@@ -172,7 +196,7 @@ func (s *sheet) day(d forms.Day) *sheet {
 	switch {
 	case d == forms.NoDay:
 		return s.skip()
-	case d < firstSerialDay:
+	case s.flat != nil, d < firstSerialDay:
 		return s.text(d.String())
 	}
 	return s.value(float64(d) + serialDay)
@@ -184,6 +208,11 @@ func (s *sheet) time(t time.Time, zone *time.Location) *sheet {
 		return s.skip()
 	}
 	t = t.In(zone)
+	if s.flat != nil {
+		s.cells++
+		s.flat.time(t)
+		return s
+	}
 	d := forms.DayOf(t)
 	if d < firstSerialDay {
 		return s.text(t.Format(time.DateTime))
@@ -227,6 +256,10 @@ func (s *sheet) end() error {
 	if s.cells != len(s.cols) {
 		return fmt.Errorf("sheet %s: a row of %d cells under %d headings", s.name, s.cells, len(s.cols))
 	}
+	if s.flat != nil {
+		s.book.progress()
+		return s.flat.end()
+	}
 	if s.last == sheetRows {
 		if err := s.further(); err != nil {
 			return err
@@ -255,6 +288,9 @@ func (s *sheet) further() error {
 
 // close adds the table with its filter over what was written and flushes; nothing may be set afterwards.
 func (s *sheet) close() error {
+	if s.flat != nil {
+		return s.flat.flush()
+	}
 	to, err := excelize.CoordinatesToCellName(len(s.cols), max(s.last, s.head+1))
 	if err != nil {
 		return fmt.Errorf("sheet %s: %w", s.name, err)

@@ -55,10 +55,12 @@ func makeStyles(f *excelize.File) (sheetStyles, error) {
 	st.label = add(&excelize.Style{NumFmt: 49, Font: &excelize.Font{Bold: true, Color: ink}, Alignment: wrap})
 	st.wrapped = add(&excelize.Style{NumFmt: 49, Alignment: wrap})
 	st.fixed = add(&excelize.Style{NumFmt: 49, Font: &excelize.Font{Family: "Consolas", Size: 9}, Alignment: wrap})
-	for code, look := range map[string][2]string{
+	looks := map[string][2]string{
 		forms.Pass: {"●", green}, forms.Watch: {"▲", brass}, forms.ConditionalPass: {"▲", brass}, forms.ConditionalFail: {"▲", red},
 		forms.Incomplete: {"▲", brass}, forms.Fail: {"◆", red}, forms.Missing: {"◌", rule}, forms.NotJudged: {"◌", rule}, forms.NotTested: {"◌", rule},
-	} {
+	}
+	for _, code := range sortedKeys(looks) {
+		look := looks[code]
 		// The shape is part of the number format, so the cell's value stays the bare word.
 		st.verdicts[code] = add(&excelize.Style{
 			CustomNumFmt: form(fmt.Sprintf("General;General;General;%q@", look[0]+" ")),

@@ -36,9 +36,8 @@ func (p *sheetParts) remove() {
 // spool keeps rows as XML in a temporary file until their sheet is zipped: a sheet can be larger than memory, and three
 // of them grow at once.
 type spool struct {
-	file    *os.File
-	out     *bufio.Writer
-	spliced bool
+	file *os.File
+	out  *bufio.Writer
 }
 
 // row adds a row of cells, in which rowMark stands for its number.

@@ -104,6 +104,9 @@ type book struct {
 	rows   int
 	named  map[string]string // words looked up by section and code
 	used   map[string]bool   // limit set revisions that judged an entry
+
+	flat    flatRows // for Table: takes the rows of one sheet
+	flatKey string
 }
 
 // progressRows is how often Progress is told.
@@ -176,6 +179,12 @@ func (b *book) write() error {
 
 func (b *book) sheet(key string, cols []column) (*sheet, error) {
 	s := &sheet{book: b, key: key, name: b.say("sheet.name." + key), part: 1, cols: cols, letters: make([]string, len(cols))}
+	if b.flat != nil {
+		if s.flat = b.flat; key != b.flatKey {
+			s.flat = noRows{}
+		}
+		return s, s.open()
+	}
 	for i := range cols {
 		letter, err := excelize.ColumnNumberToName(i + 1)
 		if err != nil {

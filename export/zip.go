@@ -6,6 +6,8 @@ import (
 	"fmt"
 	"io"
 	"io/fs"
+	"maps"
+	"slices"
 
 	"github.com/klauspost/compress/flate"
 	"github.com/xuri/excelize/v2"
@@ -16,10 +18,13 @@ import (
 const deflateLevel = 5
 
 // directZip writes the package parts straight to the output, so that the finished file never stands in memory (excelize
-// by itself builds the whole archive in a buffer first), and splices the spooled rows into their sheets.
+// by itself builds the whole archive in a buffer first), and splices the spooled rows into their sheets. The parts
+// excelize makes are small, because the rows are not among them; they are held until all are there and written in order
+// of their names, since excelize gives them in the order of a map: the same source makes the same bytes.
 type directZip struct {
 	w     *zip.Writer
 	parts *sheetParts
+	held  map[string]*bytes.Buffer
 }
 
 func newDirectZip(out io.Writer, parts *sheetParts) excelize.ZipWriter {
@@ -27,57 +32,53 @@ func newDirectZip(out io.Writer, parts *sheetParts) excelize.ZipWriter {
 	w.RegisterCompressor(zip.Deflate, func(out io.Writer) (io.WriteCloser, error) {
 		return flate.NewWriter(out, deflateLevel)
 	})
-	return directZip{w, parts}
+	return &directZip{w, parts, map[string]*bytes.Buffer{}}
 }
 
-func (z directZip) Create(name string) (io.Writer, error) {
-	out, err := z.w.Create(name)
-	if err != nil {
-		return nil, err
-	}
-	if rows := z.parts.of[name]; rows != nil {
-		return &splicer{out: out, rows: rows}, nil
-	}
-	return out, nil
+func (z *directZip) Create(name string) (io.Writer, error) {
+	part := &bytes.Buffer{}
+	z.held[name] = part
+	return part, nil
 }
 
-func (z directZip) AddFS(files fs.FS) error { return z.w.AddFS(files) }
+func (z *directZip) AddFS(files fs.FS) error { return z.w.AddFS(files) }
 
-func (z directZip) Close() error {
-	for name, rows := range z.parts.of {
-		if !rows.spliced {
-			return fmt.Errorf("zip: the rows of %s found no place in the sheet", name)
+// Close writes the parts. "[Content_Types].xml" sorts before all others, which is where readers look for it.
+func (z *directZip) Close() error {
+	for name := range z.parts.of {
+		if z.held[name] == nil {
+			return fmt.Errorf("zip: the rows of %s found no sheet", name)
+		}
+	}
+	for _, name := range slices.Sorted(maps.Keys(z.held)) {
+		out, err := z.w.Create(name)
+		if err != nil {
+			return err
+		}
+		if err := z.write(out, name); err != nil {
+			return err
 		}
 	}
 	return z.w.Close()
 }
 
-// splicer passes a sheet through and puts the rows where its data ends.
-type splicer struct {
-	out  io.Writer
-	rows *spool
-	held []byte
-}
-
-func (s *splicer) Write(p []byte) (int, error) {
-	if s.rows.spliced {
-		return s.out.Write(p)
+// write puts the rows of a sheet where its data ends.
+func (z *directZip) write(out io.Writer, name string) error {
+	part, rows := z.held[name].Bytes(), z.parts.of[name]
+	if rows == nil {
+		_, err := out.Write(part)
+		return err
 	}
-	s.held = append(s.held, p...)
-	i := bytes.Index(s.held, []byte("</sheetData>"))
-	if i < 0 {
-		return len(p), nil
+	end := bytes.Index(part, []byte("</sheetData>"))
+	if end < 0 {
+		return fmt.Errorf("zip: the rows of %s found no place in the sheet", name)
 	}
-	s.rows.spliced = true
-	if _, err := s.out.Write(s.held[:i]); err != nil {
-		return 0, err
+	if _, err := out.Write(part[:end]); err != nil {
+		return err
 	}
-	if err := s.rows.copyTo(s.out); err != nil {
-		return 0, err
+	if err := rows.copyTo(out); err != nil {
+		return err
 	}
-	if _, err := s.out.Write(s.held[i:]); err != nil {
-		return 0, err
-	}
-	s.held = nil
-	return len(p), nil
+	_, err := out.Write(part[end:])
+	return err
 }

@@ -5,6 +5,7 @@ import (
 
 	"github.com/labstack/echo/v4"
 
+	"tripwell/export"
 	"tripwell/export/paper"
 	"tripwell/forms"
 	"tripwell/store"
@@ -14,7 +15,8 @@ import (
 type downloadsPage struct {
 	Frame
 	Heading, Under, LabelsText string
-	Labels                     bool    // false where no label can be made
+	Labels                     bool // false where no label can be made
+	Table                      []field
 	Round                      []field // empty where there is no site
 	Workbook                   []field
 }
@@ -41,6 +43,7 @@ func (s *Server) downloadsShow(c echo.Context) error {
 	if s.store.URL() != "" {
 		view.LabelsText, view.Labels = k.say("paper.labels.under"), true
 	}
+	view.Table = tableFields(k, offered)
 	view.Round = s.roundFields(sites)
 	return s.page(c, http.StatusOK, "downloads.html", view)
 }
@@ -72,5 +75,19 @@ func (s *Server) roundFields(sites []store.Site) []field {
 		{Name: "task", Label: k.say("paper.col.task"), Options: tasks},
 		{Name: "until", Label: k.say("paper.round.until_label"), Hint: k.say("paper.round.until_hint"), Type: "date"},
 		{Name: "paper", Label: k.say("paper.size.label"), Options: papers},
+	}
+}
+
+// tableFields ask for one sheet of the workbook.
+func tableFields(k ink, sites []option) []field {
+	var sheets []option
+	for _, name := range export.TableNames() {
+		sheets = append(sheets, option{Value: name, Text: k.say("sheet.name." + name)})
+	}
+	return []field{
+		{Name: "sheet", ID: "table-sheet", Label: k.say("paper.table.sheet"), Options: sheets},
+		{Name: "site", ID: "table-site", Label: k.say("office.downloads.site"), Options: sites},
+		{Name: "from", ID: "table-from", Label: k.say("office.downloads.from"), Hint: k.say("office.downloads.open_hint"), Type: "date"},
+		{Name: "to", ID: "table-to", Label: k.say("office.downloads.to"), Hint: k.say("office.downloads.open_hint"), Type: "date"},
 	}
 }

@@ -23,28 +23,33 @@ func (s *Server) exportTaken(ctx context.Context, by, what, site string, from, t
 	return err
 }
 
+// workbookAsk reads which part of the store is asked for: site (id or code), from and to (test days); name is for the
+// file.
+func (s *Server) workbookAsk(c echo.Context, sc store.Scope) (ask export.WorkbookAsk, name string, err error) {
+	if ask.From, err = dayParam(c, "from"); err != nil {
+		return ask, "", err
+	}
+	if ask.To, err = dayParam(c, "to"); err != nil {
+		return ask, "", err
+	}
+	if ask.From != forms.NoDay && ask.To != forms.NoDay && ask.To < ask.From {
+		return ask, "", refuse(codeInvalid, "to", "The period ends before it begins. Swap its two days.")
+	}
+	ask.Site, name, err = s.siteAsked(sc, c.QueryParam("site"))
+	return ask, name, err
+}
+
 // sendWorkbook sends the workbook of a scope; the office page and the owner's face send the same one.
 func (s *Server) sendWorkbook(c echo.Context, sc store.Scope, by string) error {
-	from, err := dayParam(c, "from")
+	ask, name, err := s.workbookAsk(c, sc)
 	if err != nil {
 		return err
 	}
-	to, err := dayParam(c, "to")
-	if err != nil {
-		return err
-	}
-	if from != forms.NoDay && to != forms.NoDay && to < from {
-		return refuse(codeInvalid, "to", "The period ends before it begins. Swap its two days.")
-	}
-	site, name, err := s.siteAsked(sc, c.QueryParam("site"))
-	if err != nil {
-		return err
-	}
-	if err := s.exportTaken(c.Request().Context(), by, "workbook", site, from, to); err != nil {
+	if err := s.exportTaken(c.Request().Context(), by, "workbook", ask.Site, ask.From, ask.To); err != nil {
 		return err
 	}
 	return s.download(c, workbookKind, "tripwell-"+name+".xlsx", func(w io.Writer) error {
-		return export.WorkbookOf(w, s.store, sc, export.WorkbookAsk{Site: site, From: from, To: to})
+		return export.WorkbookOf(w, s.store, sc, ask)
 	})
 }
 
@@ -60,4 +65,37 @@ func (s *Server) siteAsked(sc store.Scope, idOrCode string) (id, name string, er
 		return err
 	})
 	return id, name, err
+}
+
+// sendTable sends one sheet of the workbook. Query: as the workbook's, and sheet and as (csv or jsonl).
+func (s *Server) sendTable(c echo.Context, sc store.Scope, by string) error {
+	ask, name, err := s.workbookAsk(c, sc)
+	if err != nil {
+		return err
+	}
+	sheet, as := c.QueryParam("sheet"), c.QueryParam("as")
+	if err := export.KnownTable(sheet, as); err != nil {
+		return err
+	}
+	if err := s.exportTaken(c.Request().Context(), by, "table", ask.Site, ask.From, ask.To); err != nil {
+		return err
+	}
+	kind := map[string]string{"csv": "text/csv; charset=utf-8; header=present", "jsonl": "application/jsonl"}[as]
+	if s.store.Demo() {
+		name = "DEMO-" + name // a table has no room for the mark
+	}
+	return s.download(c, kind, "tripwell-"+name+"-"+sheet+"."+as, func(w io.Writer) error {
+		return export.TableOf(w, s.store, sc, ask, sheet, as)
+	})
+}
+
+// tableTake and ownTable are its two doors.
+func (s *Server) tableTake(c echo.Context) error { return s.sendTable(c, scope(c), person(c).ID) }
+
+func (s *Server) ownTable(c echo.Context) error {
+	by, err := s.ownBy(c)
+	if err != nil {
+		return err
+	}
+	return s.sendTable(c, ownerScope, by)
 }

@@ -25,6 +25,7 @@ func ownerRoutes() []route {
 		{get, "/own/labels", owner, (*Server).ownLabels, 0},
 		{post, "/own/labels/batch", owner, (*Server).ownLabelsBatch, 0},
 		{get, "/own/label", owner, (*Server).ownLabel, 0},
+		{get, "/own/table", owner, (*Server).ownTable, 0},
 		{get, "/own/round-sheet", owner, (*Server).ownRound, 0},
 		{get, "/own/device-sheet", owner, (*Server).ownSheet, 0},
 		{post, "/own/import/register", owner, (*Server).ownImportRegister, importLimit},

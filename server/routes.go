@@ -75,6 +75,7 @@ func publicRoutes() []route {
 		{get, "/labels", office, (*Server).labelsShow, 0},
 		{get, "/labels.pdf", office, (*Server).labelsTake, 0},
 		{get, "/label", office, (*Server).labelTake, 0},
+		{get, "/table", office, (*Server).tableTake, 0},
 		{get, "/round-sheet", office, (*Server).roundTake, 0},
 		{get, "/device-sheet", office, (*Server).sheetTake, 0},
 

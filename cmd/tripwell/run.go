@@ -28,6 +28,7 @@ type cli struct {
 
 	RoundSheet  roundSheetCmd  `cmd:"" name:"round-sheet" help:"Write a round for paper, as PDF or worksheet."`
 	DeviceSheet deviceSheetCmd `cmd:"" name:"device-sheet" help:"Write what is filed of one device, as PDF."`
+	Table       tableCmd       `cmd:"" help:"Write one sheet of the workbook as CSV or JSON Lines."`
 }
 
 // env is what a command may touch beside its flags.

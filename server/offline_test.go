@@ -249,3 +249,60 @@ func TestOffline_TwentyFiveEntriesThroughACutAClosedBrowserAndALostAnswer(t *tes
 		}))
 	}
 }
+
+// Two pages of one phone, a copied profile, a newer version of the program, and a server put back to an older backup.
+func TestOffline_TwoPagesACopyAnotherVersionAndAServerPutBack(t *testing.T) {
+	if testing.Short() {
+		t.Skip("browser tests are left out with -short")
+	}
+	r := newRig(t, 12)
+	w := newWire(t, strings.TrimPrefix(r.url, "http://"))
+	profile, copied := filepath.Join(t.TempDir(), "profile"), filepath.Join(t.TempDir(), "copy")
+	p := openHandheld(t, "http://"+w.addr, profile)
+	p.signIn(r, r.crew)
+	p.ready()
+	p.press("a.row", "Kiln Lane")
+	p.press("a.row", "Outlet 1")
+	p.press("a", "Button test")
+	p.testNext()
+	p.until("the first entry at the server", `document.querySelector(".foot .tray").innerText.includes("All sent")`)
+	p.stop()
+	must(t, os.CopyFS(copied, os.DirFS(profile)))
+
+	// The copy counts on with the same id; the server sees one n twice, and the copy draws an id of its own.
+	p = openHandheld(t, "http://"+w.addr, profile)
+	p.open("/field")
+	p.ready()
+	first := p.installation()
+	p.testAnother()
+	p.sees("All sent")
+	twin := openHandheld(t, "http://"+w.addr, copied)
+	twin.open("/field")
+	twin.ready()
+	twin.testAnother()
+	twin.sees("All sent")
+	twin.until("an id of its own", `(new Promise((yes) => { const open = indexedDB.open("tray"); open.onsuccess = () => { const q = open.result.transaction("me").objectStore("me").get("installation");
+		q.onsuccess = () => { globalThis.idNow = q.result; open.result.close(); yes(); }; }; }), globalThis.idNow && globalThis.idNow !== `+fmt.Sprintf("%q", first)+`)`)
+	twin.testAnother()
+	twin.sees("All sent")
+	got := r.entries()
+	if len(got) != 4 || got[3].From == first || got[3].N != 1 || got[2].From != first || got[2].N != got[1].N {
+		t.Errorf("got %+v, want four entries: the third with an n used before, the fourth the first of another id", got)
+	}
+	twin.stop()
+}
+
+func (p *handheld) installation() string {
+	p.t.Helper()
+	return p.get(`new Promise((yes) => { const open = indexedDB.open("tray"); open.onsuccess = () => { const q = open.result.transaction("me").objectStore("me").get("installation"); q.onsuccess = () => { open.result.close(); yes(q.result); }; }; })`)
+}
+
+// testAnother makes one more button test, from the list of sites on.
+func (p *handheld) testAnother() {
+	p.t.Helper()
+	p.until("the sites", `(location.hash = "#/", document.querySelector(".along"))`)
+	p.press("a.row", "Kiln Lane")
+	p.press("main .room a.row", "")
+	p.press("a", "Button test")
+	p.testNext()
+}

@@ -59,7 +59,9 @@ func (f *fold) outcome(l *modelLog, r *record.Record, st record.Stamp, body *ent
 		return outcome{}, err
 	}
 	if len(said) == 0 {
-		f.rules.known = f.readyFor(r)
+		if f.rules.known = f.readyFor(r); f.rules.known == nil {
+			f.rules.known = body.ready
+		}
 		defer func() { f.rules.known = nil }()
 	}
 	return f.rules.outcome(l.ord, f.orgOrd(), zone, r, st, body, said), nil

@@ -19,7 +19,8 @@ import (
 var rebuildRecords = flag.Int("rebuild-records", 100_000, "records of BenchmarkRebuild")
 
 // benchStore is a store with devices devices at each of sites sites, filled up with entries to n records or more: a
-// button test each month and an instrument test a year, in walking order, as rounds make them.
+// button test each month, told in one tap, and an instrument test a year with figures of its own, in walking order, as
+// rounds make them.
 func benchStore(b *testing.B, sites, devices, n int) (*Store, string) {
 	b.Helper()
 	now := time.Date(2026, 12, 1, 8, 0, 0, 0, time.UTC)
@@ -53,7 +54,7 @@ func benchStore(b *testing.B, sites, devices, n int) (*Store, string) {
 		for i, log := range logs {
 			for _, d := range ids[i] {
 				if round%12 == 11 {
-					w.put("entry.made", log, d, `{"form":"gfci-receptacle/instrument","given":{"kind":"gfci-receptacle","form_rev":1,"limit_set":"us-class-a","limit_rev":1,"rating_a":20,"equipment_ground":"yes","supply":"grounded"},"readings":{"condition":{"value":"sound"},"found":{"value":"on"},"wiring":{"value":"correct"},"ground_continuous":{"value":"yes"},"ground_ohm":{"typed":"0.31","unit":"ohm","value":0.31},"voltage_v":{"typed":"121","unit":"V","value":121},"button_trips":{"value":"yes"},"button_resets":{"value":"yes"},"trip_current_ma":{"typed":"5.2","unit":"mA","value":5.2},"test_current_ma":{"typed":"6.8","unit":"mA","value":6.8},"trip_time_ms":{"typed":"610","unit":"ms","value":610},"restored":{"value":"yes"}},"shown":{"result":"pass","limit_rev":1,"judge":1},"source":"phone"}`)
+					w.put("entry.made", log, d, fmt.Sprintf(`{"form":"gfci-receptacle/instrument","given":{"kind":"gfci-receptacle","form_rev":1,"limit_set":"us-class-a","limit_rev":1,"rating_a":20,"equipment_ground":"yes","supply":"grounded"},"readings":{"condition":{"value":"sound"},"found":{"value":"on"},"wiring":{"value":"correct"},"ground_continuous":{"value":"yes"},"ground_ohm":{"typed":"0.31","unit":"ohm","value":0.31},"voltage_v":{"typed":"121","unit":"V","value":121},"button_trips":{"value":"yes"},"button_resets":{"value":"yes"},"trip_current_ma":{"typed":"%.1[2]f","unit":"mA","value":%.1[2]f},"test_current_ma":{"typed":"6.8","unit":"mA","value":6.8},"trip_time_ms":{"typed":"%[1]d","unit":"ms","value":%[1]d},"restored":{"value":"yes"}},"shown":{"result":"pass","limit_rev":1,"judge":1},"source":"phone"}`, 400+w.written%300, 4.2+float64(w.written/7%15)/10))
 				} else {
 					w.put("entry.made", log, d, `{"form":"gfci-receptacle/button","given":{"kind":"gfci-receptacle","form_rev":1,"limit_set":"us-class-a","limit_rev":1,"rating_a":20,"equipment_ground":"yes"},"readings":{"condition":{"value":"sound"},"found":{"value":"on"},"button_trips":{"value":"yes"},"button_resets":{"value":"yes"}},"shown":{"result":"pass","limit_rev":1,"judge":1},"source":"phone"}`)
 				}

@@ -24,6 +24,8 @@ type entryBody struct {
 	Note    string     `json:"note"`
 	Day     *forms.Day `json:"day"`
 	Result  string     `json:"result"`
+
+	ready *ready // verdict of all entries that share this body, in a rebuild
 }
 
 // checked spares looking for doubled names and damaged text again: the body is part of a record, whose reading has

@@ -88,3 +88,10 @@ func (k *ready) knows(form *forms.Form, set *forms.LimitSet) (forms.Verdict, boo
 	}
 	return k.verdict, true
 }
+
+// note keeps a verdict for the next entry that says the same.
+func (k *ready) note(form *forms.Form, set *forms.LimitSet, v forms.Verdict) {
+	if k != nil {
+		k.form, k.set, k.verdict, k.judged = form, set, v, true
+	}
+}

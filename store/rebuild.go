@@ -9,6 +9,7 @@ import (
 	"fmt"
 	"hash"
 	"math"
+	"sync"
 
 	"go.etcd.io/bbolt"
 	bolterrors "go.etcd.io/bbolt/errors"
@@ -77,12 +78,13 @@ func rebuildFrom(s *Store, tx *bbolt.Tx, after uint64, progress func(done, total
 	k, v := c.Seek(key64(after + 1))
 	// Decoding is most of the work: the next part is decoded while this one is folded.
 	var ahead chan []reread
+	seen := &bodies{known: map[string]*entryBody{}}
 	for {
 		var part []reread
 		for ; k != nil && len(part) < rereadPart && binary.BigEndian.Uint64(k) <= end; k, v = c.Next() {
 			part = append(part, reread{seq: binary.BigEndian.Uint64(k), value: v})
 		}
-		ready := decode(part)
+		ready := decode(part, seen)
 		if ahead != nil {
 			for _, one := range <-ahead {
 				if err := g.refold(one); err != nil {
@@ -129,18 +131,18 @@ type reread struct {
 }
 
 // decode reads records on another goroutine; one answer comes when all are read.
-func decode(part []reread) chan []reread {
+func decode(part []reread, seen *bodies) chan []reread {
 	ready := make(chan []reread, 1)
 	go func() {
 		for i := range part {
-			part[i].decode()
+			part[i].decode(seen)
 		}
 		ready <- part
 	}()
 	return ready
 }
 
-func (one *reread) decode() {
+func (one *reread) decode(seen *bodies) {
 	k, err := readRec(one.value)
 	if err != nil {
 		one.err = fmt.Errorf("record at %d: %w", one.seq, err)
@@ -156,7 +158,41 @@ func (one *reread) decode() {
 		one.err = fmt.Errorf("record %s: %w", r.ID, err)
 		return
 	}
+	seen.read(r)
+}
+
+// bodies are those entries said lately: most button tests of a kind of device say the same, word for word, so each is
+// read and judged once. Nothing changes a body that several entries share but the fold, which notes its verdict there.
+type bodies struct {
+	mu    sync.Mutex
+	known map[string]*entryBody
+}
+
+// bodiesMost bounds what is held; measured values make bodies that never come again.
+const bodiesMost = 512
+
+func (b *bodies) read(r *record.Record) {
+	if r.Kind != "entry.made" {
+		readAhead(r)
+		return
+	}
+	b.mu.Lock()
+	body := b.known[string(r.Body)]
+	b.mu.Unlock()
+	if body != nil {
+		r.Read = body
+		return
+	}
 	readAhead(r)
+	if body, ok := r.Read.(*entryBody); ok {
+		body.ready = &ready{}
+		b.mu.Lock()
+		defer b.mu.Unlock()
+		if len(b.known) >= bodiesMost {
+			clear(b.known)
+		}
+		b.known[string(r.Body)] = body
+	}
 }
 
 // refold computes what one record of the book adds to what is derived.

@@ -186,6 +186,7 @@ func (ru *rules) judge(site, org uint32, e *forms.Entry, on forms.Day) judged {
 		j.Verdict = v
 	} else if v, err := forms.Judge(form, set, *e); err == nil {
 		j.Verdict = v
+		ru.known.note(form, set, v)
 	}
 	return j
 }

@@ -229,7 +229,7 @@ func (s *Server) resultsColumns(view *resultsPreview, r *results.Report) {
 	k := s.ink()
 	offered := []string{"", k.say("intake.not_read")}
 	for _, name := range results.ColumnNames() {
-		if name != "skip" && name != "sheet" {
+		if name != "skip" && name != "sheet" && name != "title_above" {
 			offered = append(offered, name, s.resultsColumn(name))
 		}
 	}
@@ -240,7 +240,7 @@ func (s *Server) resultsColumns(view *resultsPreview, r *results.Report) {
 		}
 		seen[h.Heading] = true
 		id, is := strconv.Itoa(len(view.Columns)), h.Column
-		if is == "skip" || is == "sheet" {
+		if is == "skip" || is == "sheet" || is == "title_above" {
 			is = ""
 		}
 		options := offered

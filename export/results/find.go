@@ -141,7 +141,7 @@ func (f *finder) sitesOf(r *row) (sites []store.Site, state, why string) {
 		}
 		return nil, Parked, "There is no such site here. Write its code, or register the site first."
 	}
-	if s := named(r.sheet.name); s != nil {
+	if s := named(r.sheetName()); s != nil {
 		return s, "", ""
 	}
 	if f.p.ask.Site != "" {
@@ -248,7 +248,7 @@ func (s *siteIndex) matches(r *row) []int {
 			fits = orAll(fits, keep(fits, func(i int) bool { return s.rows[i].Kind == kind }))
 		}
 	}
-	for _, hint := range []string{r.section, r.sheet.name} {
+	for _, hint := range []string{r.section, r.sheetName()} {
 		if len(fits) > 1 && hint != "" {
 			fits = orAll(fits, keep(fits, func(i int) bool {
 				p := s.rows[i].Place

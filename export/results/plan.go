@@ -68,6 +68,14 @@ func (r *row) namesPlace() bool {
 	return slices.ContainsFunc([]string{"place", aboutRoom, aboutPanel, "circuit"}, func(about string) bool { return r.text(about) != "" })
 }
 
+// sheetName is the worksheet a row comes from; a file of left-out rows says it in a column.
+func (r *row) sheetName() string {
+	if name := r.text(aboutSheet); name != "" {
+		return name
+	}
+	return r.sheet.name
+}
+
 // kind is the device kind a row states, "" where it states none that is known.
 func (r *row) kind() string {
 	c, i := r.cell(paper.AboutKind)
@@ -153,6 +161,9 @@ func (p *planner) sheet(s intake.Sheet) error {
 		}
 		p.report.Rows++
 		r.seq, r.section = p.report.Rows, section
+		if above := r.text(aboutTitle); above != "" {
+			r.section = above
+		}
 		if text, ok := title(r.cells); ok {
 			section = text
 		}

@@ -3,6 +3,7 @@ package results
 import (
 	"cmp"
 	"encoding/csv"
+	"fmt"
 	"slices"
 	"strconv"
 	"strings"
@@ -21,10 +22,11 @@ func (p *planner) restCSV() (string, error) {
 		return "", nil
 	}
 	place := map[string]int{}
-	heads := []string{"sheet", "row", "left out because"}
+	heads := []string{"sheet", "row", "left out because", "title above"}
 	for _, r := range p.rest {
-		for _, h := range r.sheet.heads {
-			if _, ok := place[h]; !ok && h != "" && !slices.Contains(heads[:3], h) {
+		for i := range r.sheet.heads {
+			h := r.sheet.headOut(i)
+			if _, ok := place[h]; !ok && h != "" && !slices.Contains(heads[:4], h) {
 				place[h] = len(heads)
 				heads = append(heads, h)
 			}
@@ -53,10 +55,10 @@ func (p *planner) restCSV() (string, error) {
 			}
 		}
 		last, line = r.row, make([]string, len(heads))
-		line[0], line[1], line[2] = r.sheet.name, strconv.Itoa(r.n), why
+		line[0], line[1], line[2], line[3] = r.sheetName(), strconv.Itoa(r.n), why, r.section
 		for i, c := range r.cells {
 			if i < len(r.sheet.heads) {
-				if at, ok := place[r.sheet.heads[i]]; ok {
+				if at, ok := place[r.sheet.headOut(i)]; ok {
 					line[at] = c.Text
 				}
 			}
@@ -67,6 +69,14 @@ func (p *planner) restCSV() (string, error) {
 	}
 	w.Flush()
 	return out.String(), w.Error()
+}
+
+// headOut is a heading as a file of its own needs it: a month with the year that a title above the table said.
+func (s *sheet) headOut(i int) string {
+	if c := s.cols[i]; c.about == aboutMonth && c.year != 0 {
+		return fmt.Sprintf("%04d-%02d", c.year, int(c.month))
+	}
+	return s.heads[i]
 }
 
 // safe keeps spreadsheets from taking a text for a formula.

@@ -101,7 +101,7 @@ func (d *device) given(form *forms.Form, set *forms.LimitSet, in *store.Instrume
 	g.RatedResidualMA, g.RatingA, g.NominalV, g.Faces = number("rated_residual_ma"), number("rating_a"), number("nominal_v"), int(number("faces"))
 	g.EquipmentGround, g.Waveform, g.Delayed = text("equipment_ground"), text("waveform"), flag(d.Fields["delayed"])
 	g.Supply, _ = d.site.supply[text("circuit")].(string)
-	for _, name := range []string{"length_m", "gauge", "locking"} {
+	for _, name := range []string{"length_m", "gauge", "locking", "no_neutral", "supply_edition", "double_insulated", "new_construction", "quiet_ground", "earthing", "special_location", "distribution"} {
 		if v := d.Fields[name]; v != nil && v != "" {
 			if g.Fields == nil {
 				g.Fields = map[string]any{}

@@ -17,6 +17,7 @@ type setupPage struct {
 	Instruments            []instrumentRow
 	Plans                  []planRow
 	LimitSets              []limitSetRow
+	Forms                  []link
 }
 
 type planRow struct{ Name, Kinds, Every, Source, Status string }
@@ -49,6 +50,13 @@ func (s *Server) setupShow(c echo.Context) error {
 			return err
 		}
 		view.LimitSets = s.limitSetRows(sets)
+		asked, err := v.Forms()
+		if err != nil {
+			return err
+		}
+		for _, f := range asked {
+			view.Forms = append(view.Forms, link{Href: formHref(f), Text: s.formName(f)})
+		}
 		return nil
 	})
 	if err != nil {
@@ -125,7 +133,7 @@ func (s *Server) limitSetRows(sets []*forms.LimitSet) []limitSetRow {
 	var out []limitSetRow
 	for _, id := range sortedKeys(newest) {
 		set := newest[id]
-		out = append(out, limitSetRow{Href: "/limits/" + id, Name: s.ink().named("limit_set", id), Kinds: s.kinds(set.Kinds), Revision: count(set.Revision), Limits: count(len(set.Limits))})
+		out = append(out, limitSetRow{Href: "/limits/" + id, Name: s.setName(set), Kinds: s.kinds(set.Kinds), Revision: count(set.Revision), Limits: count(len(set.Limits))})
 	}
 	return out
 }

@@ -19,6 +19,9 @@ type formsCmd struct {
 	Import formsImportCmd `cmd:"" help:"Take forms in from a file."`
 }
 
+// Help is shown by --help.
+func (formsCmd) Help() string { return formsListCmd{}.Help() }
+
 type formsListCmd struct {
 	JSON bool `help:"Write one JSON document instead of text." name:"json"`
 }

@@ -19,7 +19,6 @@ import (
 type hand struct {
 	t     testing.TB
 	site  string
-	n     map[string]int64
 	lines []Incoming
 }
 

@@ -30,8 +30,6 @@ type Revision struct {
 	seq      uint64
 }
 
-var errNoRevision = &Error{Code: "not_found", Field: "id", Text: "There is no form or limit set of this name here. The Set up page and the command forms list them."}
-
 // LimitRevisions gives the revisions of the organisation's limit sets, or those of one site, by id, then by day in force.
 // id "" is all.
 func (v *View) LimitRevisions(site, id string) ([]Revision, error) {

@@ -13,7 +13,7 @@ export const isCalm = (state) => CALM_PAGES.has(state.route.page) && !state.savi
  * navigator.serviceWorker or undefined; calm() says that no form is open; offered(yes) tells the page there is something to take.
  */
 export function versions({ container, calm, offered, load, session, now }) {
-  let registration = null, taking = false, owed = false;
+  let registration = null, taking = false, owed = false, wanted = false;
 
   function loadOnce() {
     if (!calm()) { owed = true; return; } // another page took it while a form is open here: after the form
@@ -27,6 +27,14 @@ export function versions({ container, calm, offered, load, session, now }) {
     worker?.addEventListener("statechange", () => { if (worker.state === "installed" && container.controller) offered(true); });
   }
 
+  function take() {
+    wanted = Boolean(registration?.waiting) && !calm();
+    if (!registration?.waiting || wanted) return false;
+    taking = true;
+    registration.waiting.postMessage("take over");
+    return true;
+  }
+
   return {
     async start() {
       if (!container) return;
@@ -38,16 +46,14 @@ export function versions({ container, calm, offered, load, session, now }) {
       watch(registration.installing);
       if (registration.waiting && container.controller) offered(true);
     },
-    /** Asks the waiting worker to take over; refused while a form is open. */
-    take() {
-      if (!registration?.waiting || !calm()) return false;
-      taking = true;
-      registration.waiting.postMessage("take over");
-      return true;
-    },
+    /** Asks the waiting worker to take over; while a form is open or being saved, once that has ended. */
+    take,
     /** Looks whether the server has another version; without a line nothing happens. */
     look: () => registration?.update().catch(() => {}),
     /** The page has just become calm: catch up on a load that had to wait. */
-    calmNow() { if (owed) loadOnce(); },
+    calmNow() {
+      if (owed) loadOnce();
+      if (wanted) take();
+    },
   };
 }

@@ -237,14 +237,8 @@ func (p *planner) device(site store.Site, key string, row *Row) *rowDevice {
 // place drafts the place of a fixed device; a portable item only notes where it is.
 func (p *planner) place(site store.Site, d *rowDevice, row *Row) {
 	if d.place == "" {
-		var parts []string
-		for _, n := range []string{"building", "floor", "room", "name"} {
-			if s := fieldText(row.Place, n); s != "" {
-				parts = append(parts, s)
-			}
-		}
-		if len(parts) > 0 {
-			row.Device["where"] = strings.Join(parts, " · ")
+		if kept := row.kept(); kept != "" {
+			row.Device["where"] = kept
 		}
 		return
 	}

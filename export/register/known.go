@@ -11,14 +11,16 @@ import (
 )
 
 // placeKey is what a row is known by within its site: where it is; at a panel also the circuit, because several devices
-// share one place there; a portable item by its serial, else its tag, else its place. Letter case does not count.
-func placeKey(kind, building, floor, room, spot, panel, circuit, serial, tag string) string {
+// share one place there; a portable item by its serial, else its tag, else where it is kept. Letter case does not count.
+func placeKey(kind, building, floor, room, spot, panel, circuit, serial, tag, kept string) string {
 	parts := []string{"at", building, floor, room, spot}
 	switch {
 	case isPortable(kind) && serial != "":
 		parts = []string{"serial", serial}
 	case isPortable(kind) && tag != "":
 		parts = []string{"tag", tag}
+	case isPortable(kind):
+		parts = []string{"kept", kept}
 	case isAtPanel(kind):
 		parts = append(parts, panel, circuit)
 	}
@@ -28,7 +30,21 @@ func placeKey(kind, building, floor, room, spot, panel, circuit, serial, tag str
 func (row *Row) key() string {
 	spot := fieldText(row.Place, "name")
 	return placeKey(fieldText(row.Device, "kind"), fieldText(row.Place, "building"), fieldText(row.Place, "floor"),
-		fieldText(row.Place, "room"), spot, row.Panel, row.CircuitNo, fieldText(row.Device, "serial"), row.Tag)
+		fieldText(row.Place, "room"), spot, row.Panel, row.CircuitNo, fieldText(row.Device, "serial"), row.Tag, row.kept())
+}
+
+// kept says where a portable item is kept: in words of its own, else by the place its row names.
+func (row *Row) kept() string {
+	var parts []string
+	for _, n := range []string{"building", "floor", "room", "name"} {
+		if s := fieldText(row.Place, n); s != "" {
+			parts = append(parts, s)
+		}
+	}
+	if len(parts) > 0 {
+		return strings.Join(parts, " · ")
+	}
+	return fieldText(row.Device, "where")
 }
 
 func fieldText(m map[string]any, name string) string {
@@ -106,7 +122,7 @@ func (k *known) readSite(v *store.View, s store.Site, today forms.Day) error {
 		}
 		k.byID[d.ID] = &d
 		serial := fieldText(d.Fields, "serial")
-		k.devices[s.ID+"\x1f"+placeKey(d.Kind, d.Place.Building, d.Place.Floor, d.Place.Room, d.Place.Name, d.Panel, d.Circuit, serial, d.Tag)] = &d
+		k.devices[s.ID+"\x1f"+placeKey(d.Kind, d.Place.Building, d.Place.Floor, d.Place.Room, d.Place.Name, d.Panel, d.Circuit, serial, d.Tag, fieldText(d.Fields, "where"))] = &d
 	}
 	panels, err := v.Panels(s.ID)
 	if err != nil {

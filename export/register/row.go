@@ -315,7 +315,7 @@ func (row *Row) check(wrong func(column, value, text string)) {
 	case len(row.Circuit) > 0 && row.CircuitNo == "":
 		wrong("circuit", "", "A breaker, conductor or supply belongs to a circuit. Fill in panel and circuit.")
 	case isPortable(kind):
-		if row.Device["serial"] == nil && row.Tag == "" && row.Place["name"] == nil {
+		if row.Device["serial"] == nil && row.Tag == "" && row.Place["name"] == nil && row.Device["where"] == nil {
 			wrong("serial", "", "A portable item needs something to know it by: fill in its serial, its tag or its place.")
 		}
 	case isAtPanel(kind) && row.Panel == "" && !row.placed():

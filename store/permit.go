@@ -85,7 +85,7 @@ var crewKinds = map[string]bool{
 	"device.registered": true, "device.set": true, "device.retired": true, "device.replaced": true,
 	"tag.bound": true, "tag.freed": true, "round.made": true, "round.set": true, "round.closed": true,
 	"defect.opened": true, "defect.noted": true, "defect.made_safe": true, "defect.assigned": true,
-	"defect.repaired": true, "defect.closed": true, "defect.reopened": true,
+	"defect.repaired": true, "defect.closed": true, "defect.reopened": true, "occasion.noted": true,
 }
 
 // storeKinds are made by a store of what happened to it, and taken from nobody else.

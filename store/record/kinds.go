@@ -36,6 +36,8 @@ defect.assigned        site
 defect.repaired        site
 defect.closed          site
 defect.reopened        site
+occasion.noted         site      cause:text! on:day! devices:ids tasks:list text:text
+pause.set              site      from:day! until:day! devices:ids reason:text!
 record.refused         any       id:text sha256:hash! from:text n:number code:text!
 record.admitted        any       reason:text!
 record.sealed          any       reason:text!

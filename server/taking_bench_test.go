@@ -3,7 +3,6 @@ package server
 import (
 	"io"
 	"net/http"
-	"path/filepath"
 	"slices"
 	"strconv"
 	"testing"
@@ -35,23 +34,23 @@ func BenchmarkTakeAlong(b *testing.B) {
 // on the phone. The floor is an empty strict transaction of the same database.
 func BenchmarkTapToSaved(b *testing.B) {
 	r := newRig(b, 5_000)
-	p := openHandheld(b, r.url, filepath.Join(b.TempDir(), "profile"))
+	p := openHandheld(b, r.url)
 	p.signIn(r, r.crew)
 	p.ready()
-	p.press("a.row", "Kiln Lane")
-	p.press("a.row", "Outlet 1")
-	p.press("a", "Button test")
+	p.Tap("a.row", "Kiln Lane")
+	p.Tap("a.row", "Outlet 1")
+	p.Tap("a", "Button test")
 	var took []float64
 	for range 60 {
-		p.press(".one-tap", "")
-		p.until("the answers", `document.querySelector(".go").getAttribute("aria-disabled") === "false"`)
-		ms, err := strconv.ParseFloat(p.get(`new Promise((yes) => { const was = document.querySelector(".saved")?.innerText ?? "", began = performance.now();
+		p.Tap(".one-tap", "")
+		p.Until("the answers", `document.querySelector(".go").getAttribute("aria-disabled") === "false"`)
+		ms, err := strconv.ParseFloat(p.Value(`new Promise((yes) => { const was = document.querySelector(".saved")?.innerText ?? "", began = performance.now();
 			const look = new MutationObserver(() => { const now = document.querySelector(".saved")?.innerText; if (now && now !== was) { look.disconnect(); yes(String(performance.now() - began)); } });
 			look.observe(document.body, { subtree: true, childList: true, characterData: true }); document.querySelector(".go").click(); })`), 64)
 		must(b, err)
 		took = append(took, ms)
 	}
-	floor, err := strconv.ParseFloat(p.get(`new Promise((yes, no) => { const open = indexedDB.open("tray"); open.onerror = no; open.onsuccess = async () => { const db = open.result, all = [];
+	floor, err := strconv.ParseFloat(p.Value(`new Promise((yes, no) => { const open = indexedDB.open("tray"); open.onerror = no; open.onsuccess = async () => { const db = open.result, all = [];
 		for (let i = 0; i < 40; i++) { const began = performance.now(); await new Promise((done) => { const tx = db.transaction("me", "readwrite", { durability: "strict" }); tx.objectStore("me").put(i, "floor"); tx.oncomplete = done; }); all.push(performance.now() - began); }
 		db.close(); yes(String(all.sort((a, b) => a - b)[20])); }; })`), 64)
 	must(b, err)

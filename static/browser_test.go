@@ -1,7 +1,6 @@
 package static
 
 import (
-	"context"
 	"crypto/sha256"
 	"encoding/hex"
 	"encoding/json"
@@ -10,14 +9,12 @@ import (
 	"net/http"
 	"net/http/httptest"
 	"os"
-	"os/exec"
 	"path/filepath"
 	"strings"
 	"sync"
 	"testing"
-	"time"
 
-	"github.com/chromedp/chromedp"
+	"tripwell/chromium"
 )
 
 // exchangeStandIn speaks the exchange to one phone and keeps what it decided. Faults are switched on from the test: the line
@@ -183,135 +180,55 @@ func serveClient(t *testing.T, x *exchangeStandIn) string {
 	return srv.URL
 }
 
-// phone is a browser with an empty profile and a small window.
-type phone struct {
-	t   *testing.T
-	ctx context.Context
-}
-
-func openPhone(t *testing.T, more ...chromedp.ExecAllocatorOption) *phone {
-	t.Helper()
-	if testing.Short() {
-		t.Skip("browser tests are left out with -short")
-	}
-	path, err := exec.LookPath("chromium")
-	if err != nil {
-		if os.Getenv("CI") != "" {
-			t.Fatal("Chromium is not installed, and in CI browser tests must run")
-		}
-		t.Skip("Chromium is not installed: browser test left out")
-	}
-	ctx, cancel := chromedp.NewExecAllocator(context.Background(), append([]chromedp.ExecAllocatorOption{
-		chromedp.ExecPath(path), chromedp.Headless, chromedp.NoFirstRun, chromedp.UserDataDir(filepath.Join(t.TempDir(), "profile")),
-		chromedp.Flag("no-sandbox", true), chromedp.Flag("disable-gpu", true), chromedp.Flag("disable-quic", true),
-		chromedp.Flag("disable-dev-shm-usage", true), chromedp.Flag("disable-background-networking", true),
-		chromedp.Flag("disable-component-update", true), chromedp.Flag("disable-sync", true)}, more...)...)
-	t.Cleanup(cancel)
-	ctx, cancel = chromedp.NewContext(ctx)
-	t.Cleanup(cancel)
-	p := &phone{t, ctx}
-	p.do(chromedp.EmulateViewport(390, 844))
-	return p
-}
-
-func (p *phone) do(a chromedp.Action[chromedp.Void]) {
-	p.t.Helper()
-	if err := chromedp.Do(p.ctx, a); err != nil {
-		p.t.Fatal(err)
-	}
-}
-
-// until waits until an expression is true on the page.
-func (p *phone) until(what, expression string) {
-	p.t.Helper()
-	for end := time.Now().Add(30 * time.Second); time.Now().Before(end); time.Sleep(30 * time.Millisecond) {
-		if ok, err := chromedp.Run(p.ctx, chromedp.Evaluate[bool]("Boolean("+expression+")")); err == nil && ok {
-			return
-		}
-	}
-	page, _ := chromedp.Run(p.ctx, chromedp.Evaluate[string]("location.href + '\\n' + document.body.innerText.slice(0, 2000)"))
-	p.t.Fatalf("waited 30 s for %s; the page says:\n%s", what, page)
-}
-
-func (p *phone) sees(text string) {
-	p.t.Helper()
-	p.until(text, `document.body.innerText.includes(`+fmt.Sprintf("%q", text)+`)`)
-}
-
-// press presses the button or link within a selector whose text begins so.
-func (p *phone) press(within, text string) {
-	p.t.Helper()
-	find := fmt.Sprintf(`[...document.querySelectorAll(%q)].find((e) => e.innerText.trim().startsWith(%q))`, within, text)
-	p.until(within+" "+text, find)
-	p.until("a press on "+text, `(`+find+`.click(), true)`)
-}
-
-// kept gives the rows of the tray as the browser's own storage has them.
-func (p *phone) kept() []map[string]any {
-	p.t.Helper()
-	raw, err := chromedp.Run(p.ctx, chromedp.Evaluate[string](`new Promise((yes, no) => {
-		const open = indexedDB.open("tray"); open.onerror = no;
-		open.onsuccess = () => { const all = open.result.transaction("records").objectStore("records").getAll(); all.onerror = no;
-			all.onsuccess = () => { yes(JSON.stringify(all.result)); open.result.close(); }; }; })`, chromedp.EvalAwaitPromise))
-	if err != nil {
-		p.t.Fatal(err)
-	}
-	var rows []map[string]any
-	if err := json.Unmarshal([]byte(raw), &rows); err != nil {
-		p.t.Fatal(err)
-	}
-	return rows
-}
-
 func TestField_KeepsDraftsAndEntriesThroughReloadsCutsAndLostAnswers(t *testing.T) {
 	x := newStandIn(t)
-	p := openPhone(t)
-	p.do(chromedp.Navigate(serveClient(t, x) + "/field"))
-	p.press("a", "North house")
-	p.press("a", "Pantry")
-	p.press("a", "Button test")
+	p := chromium.Phone(t)
+	p.Open(serveClient(t, x) + "/field")
+	p.Tap("a", "North house")
+	p.Tap("a", "Pantry")
+	p.Tap("a", "Button test")
 
 	// A draft outlives the page, and what is switched off is said everywhere.
-	p.press("button", "Something else")
-	p.press("#ask-condition button", "Sound")
-	p.press("#ask-found button", "On")
-	p.press("#ask-button_trips button", "Yes")
-	p.sees("Still off: Pantry, by the sink")
-	p.do(chromedp.Reload())
-	p.until("the draft after loading again", `document.querySelectorAll("#ask-condition [aria-pressed=true], #ask-found [aria-pressed=true], #ask-button_trips [aria-pressed=true]").length === 3`)
-	p.until("the list", `(location.hash = "#/site/NORTH", true)`)
-	p.sees("Still off: Pantry, by the sink")
-	p.press("a.off", "Still off")
+	p.Tap("button", "Something else")
+	p.Tap("#ask-condition button", "Sound")
+	p.Tap("#ask-found button", "On")
+	p.Tap("#ask-button_trips button", "Yes")
+	p.Sees("Still off: Pantry, by the sink")
+	p.Reload()
+	p.Until("the draft after loading again", `document.querySelectorAll("#ask-condition [aria-pressed=true], #ask-found [aria-pressed=true], #ask-button_trips [aria-pressed=true]").length === 3`)
+	p.Until("the list", `(location.hash = "#/site/NORTH", true)`)
+	p.Sees("Still off: Pantry, by the sink")
+	p.Tap("a.off", "Still off")
 
 	// The line is cut: three entries are kept, through a reload too.
 	x.set(func() { x.cut = true })
-	p.press("#ask-button_resets button", "Yes")
-	p.press(".go", "Save")
-	p.sees("Pantry, by the sink: saved on this phone")
+	p.Tap("#ask-button_resets button", "Yes")
+	p.Tap(".go", "Save")
+	p.Sees("Pantry, by the sink: saved on this phone")
 	for i, next := range []string{"2 kept on this phone", "3 kept on this phone"} {
-		p.press(".one-tap", "")
-		p.until("the one tap", `document.querySelector(".go").getAttribute("aria-disabled") === "false"`)
-		p.press(".go", "Save")
-		p.sees(next)
+		p.Tap(".one-tap", "")
+		p.Until("the one tap", `document.querySelector(".go").getAttribute("aria-disabled") === "false"`)
+		p.Tap(".go", "Save")
+		p.Sees(next)
 		if i == 1 {
-			p.sees("Nothing due")
+			p.Sees("Nothing due")
 		}
 	}
-	p.do(chromedp.Reload())
-	p.sees("3 kept on this phone")
-	p.sees("No signal")
+	p.Reload()
+	p.Sees("3 kept on this phone")
+	p.Sees("No signal")
 
 	// The line is back, signed out: nothing goes, nothing is dropped.
 	x.set(func() { x.cut, x.signedOut = false, true })
-	p.press("a.tray", "")
-	p.press("button", "Send now")
-	p.sees("You are signed out")
-	p.sees("3 kept on this phone")
+	p.Tap("a.tray", "")
+	p.Tap("button", "Send now")
+	p.Sees("You are signed out")
+	p.Sees("3 kept on this phone")
 
 	// Signed in, the first answer is lost after the records were kept: the phone sends again by itself, each is there once.
 	x.set(func() { x.signedOut, x.loseAnswer = false, true })
-	p.press("button", "Send now")
-	p.sees("All sent")
+	p.Tap("button", "Send now")
+	p.Sees("All sent")
 
 	x.mu.Lock()
 	defer x.mu.Unlock()
@@ -321,7 +238,8 @@ func TestField_KeepsDraftsAndEntriesThroughReloadsCutsAndLostAnswers(t *testing.
 	if len(x.order) != 3 {
 		t.Fatalf("got %d records at the server, want 3", len(x.order))
 	}
-	rows := p.kept()
+	var rows []map[string]any
+	p.Rows("tray", "records", &rows)
 	if len(rows) != 3 {
 		t.Fatalf("got %d rows in the tray's store, want 3", len(rows))
 	}

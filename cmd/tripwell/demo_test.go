@@ -13,32 +13,33 @@ import (
 
 	"github.com/xuri/excelize/v2"
 
+	"tripwell/chromium"
 	"tripwell/static"
 )
 
 // The whole way of one entry on a clean checkout: a crew at a phone measures a device whose trip time is too long for
 // the current it was tested at; the manager reads it in the office; an auditor gets it in the workbook.
 func TestDemo_EntryFromPhoneToWorkbook(t *testing.T) {
-	chromium(t)
+	chromium.Need(t)
 	words, err := static.ReadWords("en")
 	if err != nil {
 		t.Fatal(err)
 	}
 	server, dir := startDemo(t)
 
-	phone := openBrowser(t, 390, 844)
-	phone.open(server.link("crew"))
-	phone.wait("the sign-in button", `document.querySelector("main form button")`)
-	phone.press("main form", "")
-	phone.press("a.row", "Kiln Lane Day Clinic")
-	phone.press(".filter .pair", strings.TrimSpace(strings.ReplaceAll(words.Say("field.filter_all", "n", ""), "()", "")))
-	phone.press("a.row", "Pantry, by the sink")
-	phone.picture("device")
-	phone.press(".choose", words.Say("task.instrument"))
-	phone.wait("the form", `document.querySelector("#ask-condition")`)
-	device := phone.js(`location.hash.split("/")[2]`).(string)
+	phone := chromium.Phone(t)
+	phone.Open(server.link("crew"))
+	phone.Until("the sign-in button", `document.querySelector("main form button")`)
+	phone.Press("main form", "")
+	phone.Press("a.row", "Kiln Lane Day Clinic")
+	phone.Press(".filter .pair", strings.TrimSpace(strings.ReplaceAll(words.Say("field.filter_all", "n", ""), "()", "")))
+	phone.Press("a.row", "Pantry, by the sink")
+	phone.Picture("device")
+	phone.Press(".choose", words.Say("task.instrument"))
+	phone.Until("the form", `document.querySelector("#ask-condition")`)
+	device := phone.JS(`location.hash.split("/")[2]`).(string)
 
-	phone.js(`(() => { const s = document.querySelector("#instrument"); s.value = s.options[1].value; s.dispatchEvent(new Event("change", {bubbles: true})); })()`)
+	phone.JS(`(() => { const s = document.querySelector("#instrument"); s.value = s.options[1].value; s.dispatchEvent(new Event("change", {bubbles: true})); })()`)
 	pick := func(code, answer string) {
 		t.Helper()
 		option := words.Say("option." + code + "." + answer)
@@ -47,8 +48,8 @@ func TestDemo_EntryFromPhoneToWorkbook(t *testing.T) {
 				option = words.Say("field." + answer)
 			}
 		}
-		phone.press("#ask-"+code+" .pick", option)
-		phone.wait(code+" answered "+answer, fmt.Sprintf(`[...document.querySelectorAll("#ask-%s [aria-pressed=true]")].length === 1`, code))
+		phone.Press("#ask-"+code+" .pick", option)
+		phone.Until(code+" answered "+answer, fmt.Sprintf(`[...document.querySelectorAll("#ask-%s [aria-pressed=true]")].length === 1`, code))
 	}
 	pick("condition", "sound")
 	pick("found", "on")
@@ -56,40 +57,40 @@ func TestDemo_EntryFromPhoneToWorkbook(t *testing.T) {
 	pick("ground_continuous", "yes")
 	pick("button_trips", "yes")
 	pick("button_resets", "yes")
-	phone.keys("#in-test_current_ma", "6.8")
-	phone.keys("#in-trip_time_ms", "5200")
+	phone.Type("#in-test_current_ma", "6.8")
+	phone.Type("#in-trip_time_ms", "5200")
 
 	// UL 943 Class A: T = (20/I)^1.43 s, at 6.8 mA 4.677191 s (seen second-hand, recomputed): 5200 ms is outside.
-	phone.wait("the verdict under the trip time", `document.querySelector("#ask-trip_time_ms .v.fail")`)
-	under := digitsJoined(phone.text("#ask-trip_time_ms"))
+	phone.Until("the verdict under the trip time", `document.querySelector("#ask-trip_time_ms .v.fail")`)
+	under := digitsJoined(phone.Text("#ask-trip_time_ms"))
 	for _, want := range []string{"6.8", "4677"} {
 		if !strings.Contains(under, want) {
 			t.Errorf("under the trip time stands %q, want %s in it", under, want)
 		}
 	}
-	phone.js(`document.querySelector("#ask-trip_time_ms").scrollIntoView({block: "center"})`)
-	phone.picture("outside")
-	if wide := phone.js(`document.documentElement.scrollWidth`).(float64); wide > 390 {
+	phone.JS(`document.querySelector("#ask-trip_time_ms").scrollIntoView({block: "center"})`)
+	phone.Picture("outside")
+	if wide := phone.JS(`document.documentElement.scrollWidth`).(float64); wide > 390 {
 		t.Errorf("the form is %v px wide on a screen of 390", wide)
 	}
-	phone.press("footer .big.go", "")
-	phone.wait("saved", `document.querySelector(".saved .v.fail")`)
-	phone.wait("all sent", `document.querySelector("footer .tray").textContent.includes(`+quote(words.Say("field.all_sent"))+`)`)
-	phone.picture("saved")
+	phone.Press("footer .big.go", "")
+	phone.Until("saved", `document.querySelector(".saved .v.fail")`)
+	phone.Until("all sent", `document.querySelector("footer .tray").textContent.includes(`+chromium.Quote(words.Say("field.all_sent"))+`)`)
+	phone.Picture("saved")
 
-	office := openBrowser(t, 1280, 900)
-	office.open(server.link("manager"))
-	office.press("main form", "")
-	office.wait("the overview naming the device that failed", `document.querySelector("main").innerText.includes("Pantry, by the sink")`)
-	office.picture("overview")
-	office.open(server.link("address") + "/devices/" + device)
-	history := digitsJoined(office.text("main"))
+	office := chromium.Desk(t)
+	office.Open(server.link("manager"))
+	office.Press("main form", "")
+	office.Until("the overview naming the device that failed", `document.querySelector("main").innerText.includes("Pantry, by the sink")`)
+	office.Picture("overview")
+	office.Open(server.link("address") + "/devices/" + device)
+	history := digitsJoined(office.Text("main"))
 	for _, want := range []string{"Pantry, by the sink", "5200", "6.8", words.Say("verdict.fail")} {
 		if !strings.Contains(history, want) {
 			t.Errorf("the device's page does not say %q", want)
 		}
 	}
-	office.picture("history")
+	office.Picture("history")
 
 	file := filepath.Join(t.TempDir(), "kiln-lane.xlsx")
 	if _, stderr, code := tripwell(t, "", "workbook", "-o", file, "--data", dir, "--site", "KILN-LANE"); code != 0 {

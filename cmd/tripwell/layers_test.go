@@ -52,6 +52,8 @@ var onlyIn = map[string][]string{
 	"codeberg.org/go-pdf/fpdf":       {"export", "export/paper"},
 	"github.com/alecthomas/kong":     {"cmd/tripwell"},
 	"github.com/schollz/progressbar": {"cmd/tripwell"},
+	"github.com/chromedp":            {"chromium"},
+	"tripwell/chromium":              {}, // tests only
 }
 
 // pure rooms do no I/O and know no clock of their own.

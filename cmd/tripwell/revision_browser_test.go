@@ -6,6 +6,7 @@ import (
 	"testing"
 	"time"
 
+	"tripwell/chromium"
 	"tripwell/forms"
 	"tripwell/store"
 )
@@ -43,44 +44,44 @@ func entryAbove(t *testing.T, dir string, ma float64) string {
 }
 
 func TestBrowser_ManagerRevisesALimitFromAPastDay(t *testing.T) {
-	chromium(t)
+	chromium.Need(t)
 	dir := demoFolder(t)
 	entry := entryAbove(t, dir, 5)
 	p := start(t, "demo", "--listen", "127.0.0.1:0", "--data", dir)
 	in := p.link("manager")
 	base := in[:strings.Index(in, "/in/")]
-	b := openBrowser(t, 1280, 900)
-	b.open(in)
-	b.press("main", "")
-	b.wait("the overview", `location.pathname === "/"`)
-	b.open(base + "/limits/us-class-a")
-	b.press("main", "Change this set")
-	b.wait("the form", `document.querySelector("input[name='max.trip-current']")`)
+	b := chromium.Desk(t)
+	b.Open(in)
+	b.Press("main", "")
+	b.Until("the overview", `location.pathname === "/"`)
+	b.Open(base + "/limits/us-class-a")
+	b.Press("main", "Change this set")
+	b.Until("the form", `document.querySelector("input[name='max.trip-current']")`)
 	typed := func(name, value string) {
 		t.Helper()
-		b.js(fmt.Sprintf(`(() => { document.querySelector("[name=" + %s + "]").value = %s; return true })()`, quote(quote(name)), quote(value)))
+		b.JS(fmt.Sprintf(`(() => { document.querySelector("[name=" + %s + "]").value = %s; return true })()`, chromium.Quote(chromium.Quote(name)), chromium.Quote(value)))
 	}
 	typed("max.trip-current", "3")
 	typed("in_force", "2025-01-01")
 	typed("reason", "Advice of the maker")
-	b.press("form.form", "Show what it changes")
-	b.wait("the refusal", `document.querySelector("[role=alert]")?.innerText.includes("above the most")`)
+	b.Press("form.form", "Show what it changes")
+	b.Until("the refusal", `document.querySelector("[role=alert]")?.innerText.includes("above the most")`)
 	typed("max.trip-current", "5")
-	b.press("form.form", "Show what it changes")
-	b.wait("the preview", `document.querySelector("form[action='/revisions']")`)
-	if text := b.text("main"); !strings.Contains(text, "4 to 6") || !strings.Contains(text, "4 to 5") || !strings.Contains(text, "Conditional fail") {
-		b.fail("the preview does not say what changes")
+	b.Press("form.form", "Show what it changes")
+	b.Until("the preview", `document.querySelector("form[action='/revisions']")`)
+	if text := b.Text("main"); !strings.Contains(text, "4 to 6") || !strings.Contains(text, "4 to 5") || !strings.Contains(text, "Conditional fail") {
+		b.Fail("the preview does not say what changes")
 	}
-	b.picture("preview")
-	b.press("main", "Accept this revision")
-	b.wait("the set again", `location.pathname === "/limits/us-class-a"`)
-	if text := b.text("main"); !strings.Contains(text, "Revision 2") || !strings.Contains(text, "Advice of the maker") {
-		b.fail("the revision is not shown")
+	b.Picture("preview")
+	b.Press("main", "Accept this revision")
+	b.Until("the set again", `location.pathname === "/limits/us-class-a"`)
+	if text := b.Text("main"); !strings.Contains(text, "Revision 2") || !strings.Contains(text, "Advice of the maker") {
+		b.Fail("the revision is not shown")
 	}
-	b.open(base + "/entries/" + entry)
-	b.wait("both judgements", `document.querySelector("#judgements")`)
-	if text := b.text("#judgements"); !strings.Contains(text, "Pass") || !strings.Contains(text, "Conditional fail") || !strings.Contains(text, "Advice of the maker") {
-		b.fail("both results should stand, got %s", text)
+	b.Open(base + "/entries/" + entry)
+	b.Until("both judgements", `document.querySelector("#judgements")`)
+	if text := b.Text("#judgements"); !strings.Contains(text, "Pass") || !strings.Contains(text, "Conditional fail") || !strings.Contains(text, "Advice of the maker") {
+		b.Fail("both results should stand, got %s", text)
 	}
-	b.picture("entry")
+	b.Picture("entry")
 }

@@ -4,13 +4,17 @@ import (
 	"crypto/sha256"
 	"encoding/hex"
 	"fmt"
+	"io"
 	"io/fs"
 	"net/http"
 	"path"
 	"strings"
+	"sync"
 
 	"github.com/klauspost/compress/gzip"
 	"github.com/labstack/echo/v4"
+
+	"tripwell/static"
 )
 
 // assets are the files a browser may fetch, under /assets/HASH/NAME with one hash over all of them. The whole tree moves
@@ -20,6 +24,7 @@ import (
 type assets struct {
 	hash  string
 	files map[string]asset
+	shell func() (*shell, error) // made when first asked for
 }
 
 type asset struct {
@@ -35,33 +40,53 @@ var assetKinds = map[string]string{
 
 func readAssets(tree fs.FS) (*assets, error) {
 	a := &assets{files: map[string]asset{}}
+	a.shell = sync.OnceValues(a.makeShell)
 	sum := sha256.New()
 	err := fs.WalkDir(tree, ".", func(name string, d fs.DirEntry, err error) error {
 		if err != nil || d.IsDir() {
 			return err
 		}
-		kind, known := assetKinds[path.Ext(name)]
-		if !known {
-			return fmt.Errorf("assets: %s has a file type nobody named", name)
-		}
 		raw, err := fs.ReadFile(tree, name)
 		if err != nil {
 			return err
 		}
-		fmt.Fprintf(sum, "%s %d\n", name, len(raw))
-		sum.Write(raw)
-		packed, err := gzipped(raw, gzip.BestCompression)
-		if err != nil {
-			return fmt.Errorf("assets: %s: %w", name, err)
-		}
-		if len(packed) > len(raw)*9/10 {
-			packed = nil
-		}
-		a.files[name] = asset{kind: kind, plain: raw, packed: packed}
-		return nil
+		return a.add(sum, name, raw)
 	})
+	if err != nil {
+		return nil, err
+	}
+	for _, lang := range static.Languages {
+		if _, ok := a.files["words/"+lang+".json"]; !ok {
+			continue
+		}
+		raw, err := static.PhoneWords(tree, lang)
+		if err != nil {
+			return nil, err
+		}
+		if err := a.add(sum, static.PhoneWordsName(lang), raw); err != nil {
+			return nil, err
+		}
+	}
 	a.hash = hex.EncodeToString(sum.Sum(nil))[:16]
-	return a, err
+	return a, nil
+}
+
+func (a *assets) add(sum io.Writer, name string, raw []byte) error {
+	kind, known := assetKinds[path.Ext(name)]
+	if !known {
+		return fmt.Errorf("assets: %s has a file type nobody named", name)
+	}
+	fmt.Fprintf(sum, "%s %d\n", name, len(raw))
+	_, _ = sum.Write(raw)
+	packed, err := gzipped(raw, gzip.BestCompression)
+	if err != nil {
+		return fmt.Errorf("assets: %s: %w", name, err)
+	}
+	if len(packed) > len(raw)*9/10 {
+		packed = nil
+	}
+	a.files[name] = asset{kind: kind, plain: raw, packed: packed}
+	return nil
 }
 
 // root is the folder of all assets, for the field client: /assets/HASH/.
@@ -79,6 +104,13 @@ func (a *assets) path(name string) (string, error) {
 func (s *Server) assetShow(c echo.Context) error {
 	hash, name, _ := strings.Cut(c.Param("*"), "/")
 	file, ok := s.assets.files[name]
+	if !ok && path.Ext(name) == ".pack" {
+		sh, err := s.assets.shell()
+		if err != nil {
+			return err
+		}
+		file, ok = sh.packs[name]
+	}
 	if !ok || hash != s.assets.hash {
 		return refuse(codeNotFound, "", "This file is of another version of the program. Load the page again.")
 	}

@@ -1,6 +1,7 @@
 package server
 
 import (
+	"bytes"
 	"crypto/sha256"
 	_ "embed"
 	"encoding/hex"
@@ -10,7 +11,6 @@ import (
 	"path"
 	"regexp"
 	"slices"
-	"strings"
 
 	"github.com/labstack/echo/v4"
 )
@@ -24,32 +24,25 @@ const shellPath = "/field"
 
 // workerBuild is what the worker is told of the build it belongs to.
 type workerBuild struct {
-	Cache string      `json:"cache"`
-	Shell string      `json:"shell"`
-	Root  string      `json:"root"`
-	Files [][2]string `json:"files"` // name and SHA-256 in hexadecimal digits
+	Cache string           `json:"cache"`
+	Shell string           `json:"shell"`
+	Root  string           `json:"root"`
+	Files []part           `json:"files"`
+	Words map[string]part  `json:"words"`
+	Packs map[string]whole `json:"packs"`
+	Codes []whole          `json:"codes"`
 }
 
 // worker writes the script of /sw.js. Its bytes change when any file of the field client, its page or the worker itself
 // changes, and only then: a browser installs a worker anew when its bytes differ.
-func (s *Server) worker(shell []byte) (string, error) {
-	first := []string{"field.mjs", "field.css", "tokens.css", "field.webmanifest", "icons/mark-180.png"}
-	for name := range s.assets.files {
-		if strings.HasPrefix(name, "words/") {
-			first = append(first, name)
-		}
-	}
-	names, err := s.assets.needed(first...)
+func (s *Server) worker(page []byte) (string, error) {
+	sh, err := s.assets.shell()
 	if err != nil {
 		return "", err
 	}
-	build := workerBuild{Shell: shellPath, Root: s.assets.root()}
+	build := workerBuild{Shell: shellPath, Root: s.assets.root(), Files: sh.parts, Words: sh.words, Packs: sh.sums, Codes: sh.codes}
 	sum := sha256.New()
-	fmt.Fprintf(sum, "%s\n%s\n%s\n", s.assets.hash, workerText, shell)
-	for _, name := range names {
-		own := sha256.Sum256(s.assets.files[name].plain)
-		build.Files = append(build.Files, [2]string{name, hex.EncodeToString(own[:])})
-	}
+	fmt.Fprintf(sum, "%s\n%s\n%s\n", s.assets.hash, workerText, page)
 	build.Cache = "tripwell-field-" + hex.EncodeToString(sum.Sum(nil))[:16]
 	line, err := json.Marshal(build)
 	if err != nil {
@@ -60,16 +53,16 @@ func (s *Server) worker(shell []byte) (string, error) {
 
 // workerShow answers /sw.js. It lies at the root because a worker may only answer what lies below it, and labels do.
 func (s *Server) workerShow(c echo.Context) error {
-	var shell strings.Builder
-	if err := s.pages["field.html"].Execute(&shell, shellFrame()); err != nil {
+	var page bytes.Buffer
+	if err := s.pages["field.html"].Execute(&page, shellFrame()); err != nil {
 		return fmt.Errorf("worker: %w", err)
 	}
-	script, err := s.worker([]byte(shell.String()))
+	script, err := s.worker(page.Bytes())
 	if err != nil {
 		return err
 	}
 	c.Response().Header().Set("Cache-Control", "no-cache")
-	return c.Blob(http.StatusOK, "text/javascript; charset=utf-8", []byte(script))
+	return sendPacked(c, http.StatusOK, "text/javascript; charset=utf-8", []byte(script))
 }
 
 var (

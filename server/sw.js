@@ -1,16 +1,31 @@
 // The worker that opens the field client without a line. The server writes BUILD before this text: {cache, shell, root,
-// files:[[name, SHA-256 in hex]…]}. It answers navigations to the field client and to labels, and the files it laid in;
-// everything else, and whatever is no GET, goes past it as if it were not there.
+// files:[[name, bytes]…], words:{language:[name, bytes]}, packs:{language:[name, SHA-256 in hex]}, codes:[[name, SHA-256]…]}.
+// Files and words of one language come as one pack, behind one another; what draws and reads codes comes by itself. It answers
+// navigations to the field client and to labels, and the files it laid in; everything else, and whatever is no GET, goes past
+// it as if it were not there.
 
 const OWN = "tripwell-field-"; // every cache of ours is named so; no other is touched
 const KEPT_CACHES = 2; // ours and the one before: a page that is still open with a form in it may want a file of that one
 
+/** The first language of the phone's wishes that there is. */
+function language() {
+  const wishes = [...(self.navigator.languages ?? []), "en"].map((wish) => wish.slice(0, 2).toLowerCase());
+  return wishes.find((lang) => BUILD.words[lang]);
+}
+
+/** What draws codes; and what reads them, where the browser does not itself. */
+async function codeFiles() {
+  const reads = (await self.BarcodeDetector?.getSupportedFormats().catch(() => []))?.includes("qr_code");
+  return BUILD.codes.slice(0, reads ? 1 : 2);
+}
+
 /** Lays the whole build in or nothing: a worker with half of it would break the client where there is no line to mend it. */
 async function layIn() {
-  if (await whole()) return;
+  const lang = language(), inPack = [...BUILD.files, BUILD.words[lang]], alone = await codeFiles();
+  if (await whole([...inPack, ...alone])) return;
   const cache = await caches.open(BUILD.cache);
   try {
-    await Promise.all([layShell(cache), ...BUILD.files.map((file) => layFile(cache, file))]);
+    await Promise.all([layShell(cache), layPack(cache, BUILD.packs[lang], inPack), ...alone.map(async (file) => lay(cache, file[0], await fetched(file)))]);
   } catch (e) {
     await caches.delete(BUILD.cache);
     throw e;
@@ -18,25 +33,35 @@ async function layIn() {
 }
 
 /** Whether every file of this build is here already: the same worker installed once more. */
-async function whole() {
+async function whole(files) {
   if (!(await caches.has(BUILD.cache))) return false;
   const here = new Set((await (await caches.open(BUILD.cache)).keys()).map((request) => new URL(request.url).pathname));
-  return here.has(BUILD.shell) && BUILD.files.every(([name]) => here.has(BUILD.root + name));
+  return here.has(BUILD.shell) && files.every(([name]) => here.has(BUILD.root + name));
 }
 
 /** The page must be the one that asks for this build's files; the server may have been replaced a moment ago. */
 async function layShell(cache) {
   const answer = await fetch(BUILD.shell, { cache: "no-store", redirect: "error" });
-  if (!answer.ok || !(await answer.clone().text()).includes(`${BUILD.root}field.mjs`)) throw new Error(`${BUILD.shell} is of another build`);
+  if (!answer.ok || !(await answer.clone().text()).includes(`${BUILD.root}boot.mjs`)) throw new Error(`${BUILD.shell} is of another build`);
   await cache.put(BUILD.shell, answer);
 }
 
 /** Every file is the very file the server was built with; a page put in between by somebody's network is not. */
-async function layFile(cache, [name, sha256]) {
+async function fetched([name, sha256]) {
   const answer = await fetch(BUILD.root + name, { redirect: "error" });
-  const bytes = answer.ok ? await answer.clone().arrayBuffer() : null;
+  const bytes = answer.ok ? await answer.arrayBuffer() : null;
   if (!bytes || hex(await crypto.subtle.digest("SHA-256", bytes)) !== sha256) throw new Error(`${name} did not come whole`);
-  await cache.put(BUILD.root + name, answer);
+  return bytes;
+}
+
+const KINDS = { mjs: "text/javascript; charset=utf-8", css: "text/css; charset=utf-8", json: "application/json", svg: "image/svg+xml" };
+
+const lay = (cache, name, bytes) => cache.put(BUILD.root + name, new Response(bytes, { headers: { "Content-Type": KINDS[name.split(".").pop()], "X-Content-Type-Options": "nosniff" } }));
+
+async function layPack(cache, pack, files) {
+  const bytes = await fetched(pack);
+  let from = 0;
+  await Promise.all(files.map(([name, size]) => lay(cache, name, bytes.slice(from, (from += size)))));
 }
 
 const hex = (bytes) => [...new Uint8Array(bytes)].map((b) => b.toString(16).padStart(2, "0")).join("");
@@ -47,7 +72,7 @@ async function clearOld() {
 }
 
 const isFile = new RegExp(`^/assets/[0-9a-f]{16}/`);
-const fileNames = new Set(BUILD.files.map(([name]) => name));
+const fileNames = new Set([...BUILD.files, ...Object.values(BUILD.words), ...BUILD.codes].map(([name]) => name));
 
 /** What of ours a request asks for: "shell", "file" or null. */
 function oursOf(request) {

@@ -3,9 +3,12 @@ package server
 import (
 	"encoding/json"
 	"regexp"
+	"slices"
 	"strings"
 	"testing"
 	"testing/fstest"
+
+	"tripwell/static"
 )
 
 func TestWorker_LaysInEveryFileTheClientAsksForAndNoOther(t *testing.T) {
@@ -28,31 +31,90 @@ func TestWorker_LaysInEveryFileTheClientAsksForAndNoOther(t *testing.T) {
 	if err := json.Unmarshal([]byte(m[1]), &build); err != nil {
 		t.Fatal(err)
 	}
-	laidIn, packed := map[string]bool{}, 0
-	for _, f := range build.Files {
+	laidIn := map[string]bool{}
+	for _, f := range append(build.Files, build.Words["en"], build.Words["es"]) {
+		laidIn[f[0].(string)] = true
+	}
+	for _, f := range build.Codes {
 		laidIn[f[0]] = true
-		file := s.assets.files[f[0]]
-		if file.packed != nil {
-			packed += len(file.packed)
-		} else {
-			packed += len(file.plain)
-		}
 	}
 	shell := get200(t, s.Handler(), "/field").Body.String()
+	byBrowser := map[string]bool{"field.webmanifest": true, "icons/mark-180.png": true} // read when it is installed, with a line
 	for _, asked := range regexp.MustCompile(`/assets/[0-9a-f]{16}/([^"]+)"`).FindAllStringSubmatch(shell, -1) {
-		if !laidIn[asked[1]] {
+		if !laidIn[asked[1]] && !byBrowser[asked[1]] {
 			t.Errorf("the page asks for %s, which is not laid in", asked[1])
 		}
 	}
-	for _, name := range []string{"field.mjs", "vendor/idb.mjs", "words/en.json", "icons/mark-192.png"} {
+	for _, name := range []string{"field.mjs", "vendor/idb.mjs", "words/phone-en.json", "words/phone-es.json", "vendor/qr-decode.mjs", "icons/mark.svg"} {
 		if !laidIn[name] {
 			t.Errorf("%s is not laid in", name)
 		}
 	}
-	if laidIn["style.css"] {
-		t.Error("style.css of the office pages is laid in on phones")
+	for _, name := range []string{"style.css", "words/en.json"} {
+		if laidIn[name] {
+			t.Errorf("%s of the office pages is laid in on phones", name)
+		}
 	}
-	t.Logf("%d files, %d bytes packed", len(build.Files), packed)
+}
+
+// shellBudget bounds what comes over the line until a phone has the client: page, worker and the pack of one language, as
+// they are sent, without the decoder of codes that only some browsers need.
+const shellBudget = 120_000
+
+func TestShell_FitsItsBudgetInEveryLanguage(t *testing.T) {
+	s, err := New(nil, Options{})
+	must(t, err)
+	sh, err := s.assets.shell()
+	must(t, err)
+	for _, lang := range static.Languages {
+		sum := 0
+		first := s.assets.root() // what the page itself asks for before a worker answers stands in the pack once more
+		for _, address := range []string{"/field", first + "boot.mjs", first + "tokens.css", first + "field.css", "/sw.js", first + packName(lang)} {
+			body := get200(t, s.Handler(), address, "Accept-Encoding", "gzip").Body
+			size := body.Len()
+			t.Logf("%s: %-40s %6d bytes", lang, address, size)
+			sum += size
+		}
+		t.Logf("%s: %d parts, %d bytes in all", lang, len(sh.parts)+1, sum)
+		if sum > shellBudget {
+			t.Errorf("%s: the client comes as %d bytes, more than %d", lang, sum, shellBudget)
+		}
+	}
+}
+
+func TestShell_APackHoldsItsPartsInTheirOrder(t *testing.T) {
+	s, err := New(nil, Options{})
+	must(t, err)
+	sh, err := s.assets.shell()
+	must(t, err)
+	for _, lang := range static.Languages {
+		rest := get200(t, s.Handler(), s.assets.root()+packName(lang)).Body.Bytes()
+		if got := wholeOf(packName(lang), rest); got != sh.sums[lang] {
+			t.Errorf("got %v, want what the worker holds it to, %v", got, sh.sums[lang])
+		}
+		for _, p := range append(slices.Clone(sh.parts), sh.words[lang]) {
+			name, size := p[0].(string), p[1].(int)
+			if string(rest[:size]) != string(s.assets.files[name].plain) {
+				t.Fatalf("%s: %s does not stand where the worker cuts it out", lang, name)
+			}
+			rest = rest[size:]
+		}
+		if len(rest) != 0 {
+			t.Errorf("%s: %d bytes behind the last part", lang, len(rest))
+		}
+	}
+}
+
+// The Spanish words of a phone stand over the English ones; no office section travels.
+func TestShell_WordsOfAPhone(t *testing.T) {
+	raw, err := static.PhoneWords(fstest.MapFS{
+		"words/en.json": {Data: []byte(`{"field":{"a":"one <b>","c":{"one":"{n} day","other":"{n} days"}},"office":{"d":"no"}}`)},
+		"words/es.json": {Data: []byte(`{"field":{"c":{"one":"{n} día","other":"{n} días"},"gone":"x"}}`)},
+	}, "es")
+	must(t, err)
+	if got, want := strings.TrimSpace(string(raw)), `{"field":{"a":"one <b>","c":{"one":"{n} día","other":"{n} días"}}}`; got != want {
+		t.Errorf("got %s, want %s", got, want)
+	}
 }
 
 func TestWorker_ItsBytesChangeWithAnyFile(t *testing.T) {

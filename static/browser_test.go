@@ -169,6 +169,14 @@ func serveClient(t *testing.T, x *exchangeStandIn) string {
 	mux := http.NewServeMux()
 	mux.Handle("/exchange/", x)
 	mux.Handle("/assets/", http.StripPrefix("/assets/", http.FileServerFS(Files)))
+	mux.HandleFunc("/assets/"+PhoneWordsName("en"), func(w http.ResponseWriter, _ *http.Request) {
+		raw, err := PhoneWords(Files, "en")
+		if err != nil {
+			t.Error(err)
+		}
+		w.Header().Set("Content-Type", "application/json")
+		_, _ = w.Write(raw)
+	})
 	mux.HandleFunc("/field", func(w http.ResponseWriter, _ *http.Request) {
 		w.Header().Set("Content-Type", "text/html; charset=utf-8")
 		w.Header().Set("Content-Security-Policy", "default-src 'none'; script-src 'self'; style-src 'self'; connect-src 'self'; img-src 'self' blob: data:")

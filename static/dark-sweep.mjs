@@ -4,7 +4,6 @@ import { lockedEntry } from "./room-locked.mjs";
 import { feedFacts, fedBy } from "./register-work.mjs";
 
 /** What an outlet was found to be: dark, or live though the map says it is fed from here. */
-export const SAID = ["dark", "live"];
 
 /** Rows to walk to: what the map says, then what was found beside it. said: Map device id → dark | live. */
 export function sweepRows(devices, protector, said) {

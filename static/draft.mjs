@@ -12,15 +12,7 @@ export function isTouched(draft) {
   return Boolean(draft.note) || (draft.photos ?? []).length > 0 || Object.keys(draft.answers).length > 0 || draft.series.some((row) => Object.keys(row.answers ?? {}).length > 0);
 }
 
-/** A draft with one answer set; undefined takes it back. The moment the power went off is remembered with it. */
-export function withAnswer(draft, code, answer, now) {
-  const answers = { ...draft.answers };
-  if (answer === undefined) delete answers[code];
-  else answers[code] = answer;
-  return stamped({ ...draft, answers }, now);
-}
-
-/** A draft with all its answers replaced (the one-tap form, one reason for everything left). */
+/** A draft with all its answers replaced. The moment the power went off is remembered with it. */
 export const withAnswers = (draft, answers, now) => stamped({ ...draft, answers }, now);
 
 /** A draft with one answer of a row of its series set. at: the row's conditions. */

@@ -13,12 +13,12 @@ import { TestPage } from "./field-test.mjs";
 import { WorkPage } from "./field-work.mjs";
 import { JudgeVersion } from "./judge.mjs";
 import { makeRecord } from "./making.mjs";
-import { newId } from "./record.mjs";
+import { newId } from "./record-line.mjs";
 import { parseRoute, toDevice } from "./route.mjs";
 import { sending } from "./sending.mjs";
 import { syncing } from "./syncing.mjs";
 import { isCalm, versions } from "./version.mjs";
-import { languageOf, speaker } from "./words.mjs";
+import { LANGUAGES, languageOf, speaker } from "./words.mjs";
 
 const root = document.getElementById("field");
 const now = () => Date.now();
@@ -48,12 +48,15 @@ function Page({ app }) {
   }
 }
 
-/** English is always read too: it stands in for what the other catalogue does not say. */
-async function wordsOf(lang) {
-  document.documentElement.lang = lang;
-  const read = async (l) => (await fetch(new URL(`./words/${l}.json`, import.meta.url))).json();
-  const [fallback, own] = await Promise.all([read("en"), lang === "en" ? null : read(lang).catch(() => null)]);
-  return speaker(own ?? fallback, { fallback, lang });
+/** The phone's words in a language; one that is not laid in and cannot be fetched gives way to another that is here. */
+async function wordsOf(wish) {
+  for (const lang of [wish, ...LANGUAGES.filter((l) => l !== wish)]) {
+    const answer = await fetch(new URL(`./words/phone-${lang}.json`, import.meta.url)).catch(() => null);
+    if (!answer?.ok) continue;
+    document.documentElement.lang = lang;
+    return speaker(await answer.json(), { lang });
+  }
+  throw new Error("no words could be read");
 }
 
 async function start() {

@@ -1,17 +1,9 @@
 // One line of the command verdict, judged in JavaScript: the same refusals as forms/line.go. Pure.
 
 import { judge } from "./judge.mjs";
-import { Refusal, checkGiven, checkItem, checkReadings, isObject, readItem, readReading, under } from "./reading.mjs";
-
-/** Default limit set of a kind, as forms.DefaultLimitSet. */
-export function defaultLimitSet(kind, delayed) {
-  if (["gfci-receptacle", "gfci-breaker", "portable-gfci"].includes(kind)) return "us-class-a";
-  if (["receptacle", "protected-receptacle"].includes(kind)) return "us-receptacle";
-  if (kind === "hospital-receptacle") return "us-health-care";
-  if (["cord-set", "plug-in-equipment"].includes(kind)) return "us-cord-set";
-  if (["rcd", "rcbo"].includes(kind)) return delayed ? "iec-delayed" : "iec-general";
-  return "";
-}
+import { defaultLimitSet } from "./judging.mjs";
+import { checkGiven, checkItem, checkReadings } from "./reading-check.mjs";
+import { Refusal, isObject, readItem, readReading, under } from "./reading.mjs";
 
 const text = "text", num = "a number", whole = "a whole number", bool = "true or false", object = "an object";
 const accuracyShape = { each: { percent: num, plus: num } };

@@ -235,8 +235,3 @@ export function limitsFor(form, set, entry, reading, at) {
   const r = facts.reading(reading);
   return [...limitsOn(facts, reading)].map((l) => ({ ...apply(facts, l, r), level: l.level, source: l.source }));
 }
-
-/** The facts of an entry, for a page that asks: asked(ask), closed(step), answer(code), field(name). */
-export function factsOf(form, set, entry) {
-  return new Facts(form, set, settle(entry));
-}

@@ -2,13 +2,22 @@
 // anything is typed. Pure.
 
 import { judge, limitsFor } from "./judge.mjs";
-import { defaultLimitSet } from "./judge-line.mjs";
 import { convert } from "./number.mjs";
 import { conditionKey } from "./draft.mjs";
 import { unitOf } from "./answer.mjs";
 
 /** How telling a finding is; of equals the one that comes first (must before watch) stays first. */
 const TELLING = ["fail", "conditional-fail", "conditional-pass", "watch", "pass", "not-judged", "missing"];
+
+/** Default limit set of a kind, as forms.DefaultLimitSet. */
+export function defaultLimitSet(kind, delayed) {
+  if (["gfci-receptacle", "gfci-breaker", "portable-gfci"].includes(kind)) return "us-class-a";
+  if (["receptacle", "protected-receptacle"].includes(kind)) return "us-receptacle";
+  if (kind === "hospital-receptacle") return "us-health-care";
+  if (["cord-set", "plug-in-equipment"].includes(kind)) return "us-cord-set";
+  if (["rcd", "rcbo"].includes(kind)) return delayed ? "iec-delayed" : "iec-general";
+  return "";
+}
 
 /** The limit set that judges a device: the register's, else the one that stands for its kind here, else the shipped one of its kind, else the form's. */
 export function limitSetFor(device, form, sets) {

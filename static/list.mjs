@@ -50,16 +50,6 @@ export function dueNow(device, today) {
     .sort((a, b) => order.indexOf(a.state) - order.indexOf(b.state));
 }
 
-/** The next device in walking order after one, that wants the same task; wraps round once. null when none is left. */
-export function nextDue(devices, from, task, today) {
-  const start = devices.findIndex((d) => d.id === from);
-  for (let i = 1; i < devices.length; i++) {
-    const d = devices[(start + i) % devices.length];
-    if (wants(d, task, today)) return d;
-  }
-  return null;
-}
-
 /** How far along: place of a device among those of its list that want the task, from 1. */
 export function placeInRound(devices, id, task, today) {
   const round = devices.filter((d) => d.id === id || wants(d, task, today));

@@ -2,7 +2,7 @@
 // as it is and never written again. Pure but for the randomness of ids.
 
 import { clockText, nextClock, parseClock } from "./clock.mjs";
-import { newId, timeText, writeRecord } from "./record.mjs";
+import { newId, timeText, writeRecord } from "./record-line.mjs";
 
 /**
  * at: ms of this phone's clock, as it is; offset: ms the server's clock was last ahead of it, which only the stamp takes in.

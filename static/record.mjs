@@ -1,4 +1,5 @@
-// The envelope of a record: writing one, and holding a line against the rules a store holds it against. Says the same as
+// The envelope of a record: holding a line against the rules a store holds it against. The phone writes records with
+// record-line.mjs and does not carry this. Says the same as
 // store/record (codes and fields; the sentences are the server's). Pure.
 
 import { parseClock } from "./clock.mjs";
@@ -7,31 +8,7 @@ import { isTag } from "./tag.mjs";
 
 export const maxBytes = 65536;
 
-/** A version 7 id (RFC 9562) of a time in ms. */
-export function newId(ms, random = crypto.getRandomValues(new Uint8Array(10))) {
-  const hex = [Math.floor(ms).toString(16).padStart(12, "0").slice(-12)];
-  const bytes = Uint8Array.from(random);
-  bytes[0] = (bytes[0] & 0x0f) | 0x70;
-  bytes[2] = (bytes[2] & 0x3f) | 0x80;
-  for (const b of bytes) hex.push(b.toString(16).padStart(2, "0"));
-  return hex.join("").replace(/^(.{8})(.{4})(.{4})(.{4})(.{12})$/, "$1-$2-$3-$4-$5");
-}
-
-/** A time as records write it, in the offset of this device (minutes east of UTC). */
-export function timeText(ms, offsetMinutes = -new Date(ms).getTimezoneOffset()) {
-  const local = new Date(ms + offsetMinutes * 60000).toISOString().slice(0, -1);
-  if (offsetMinutes === 0) return local + "Z";
-  const o = Math.abs(offsetMinutes), two = (n) => String(n).padStart(2, "0");
-  return `${local}${offsetMinutes < 0 ? "-" : "+"}${two(Math.floor(o / 60))}:${two(o % 60)}`;
-}
-
-/**
- * The bytes of a record as a string, in the order every record has. The string is kept and sent as it is and never
- * written again. clock: 16 hexadecimal digits; at: text of timeText; body: an object.
- */
-export function writeRecord({ id, kind, log, subject, at, clock, by, from, n, body }) {
-  return JSON.stringify({ id, kind, v: 1, log, subject, at, clock, by, from, n, body });
-}
+export { newId, timeText, writeRecord } from "./record-line.mjs";
 
 /** Holds a line against the rules: null, or {code, field} of the first one broken. */
 export function checkRecord(line) {

@@ -1,8 +1,11 @@
 package static
 
 import (
+	"bytes"
 	"encoding/json"
 	"fmt"
+	"io/fs"
+	"maps"
 	"strings"
 )
 
@@ -13,6 +16,59 @@ type Words struct {
 }
 
 type word struct{ one, other string }
+
+// Languages are those the phone's words are written in, English first: it stands in for what another does not say.
+var Languages = []string{"en", "es"}
+
+// PhoneWordsName is the name of the words a phone takes along in one language.
+func PhoneWordsName(lang string) string { return "words/phone-" + lang + ".json" }
+
+// PhoneWords makes the catalogue a phone takes along: the sections that are translated, which are those its pages use
+// (a test holds it), with English where the language lacks a key. A phone needs one language and no office page.
+func PhoneWords(tree fs.FS, lang string) ([]byte, error) {
+	read := func(lang string) (map[string]any, error) {
+		raw, err := fs.ReadFile(tree, "words/"+lang+".json")
+		if err != nil {
+			return nil, fmt.Errorf("words %s: %w", lang, err)
+		}
+		var tree map[string]any
+		if err := json.Unmarshal(raw, &tree); err != nil {
+			return nil, fmt.Errorf("words %s: %w", lang, err)
+		}
+		return tree, nil
+	}
+	words, err := read(Languages[0])
+	if err != nil {
+		return nil, err
+	}
+	translated, err := read(Languages[1])
+	if err != nil {
+		return nil, err
+	}
+	own, err := read(lang)
+	if err != nil {
+		return nil, err
+	}
+	maps.DeleteFunc(words, func(section string, _ any) bool { return translated[section] == nil })
+	lay(words, own)
+	var line bytes.Buffer
+	encoder := json.NewEncoder(&line)
+	encoder.SetEscapeHTML(false)
+	err = encoder.Encode(words)
+	return line.Bytes(), err
+}
+
+// lay puts the words of one tree over those of another that has the same sections.
+func lay(under, over map[string]any) {
+	for key, v := range over {
+		below, ok := under[key].(map[string]any)
+		if inner, both := v.(map[string]any); ok && both {
+			lay(below, inner)
+		} else if under[key] != nil {
+			under[key] = v
+		}
+	}
+}
 
 // ReadWords reads words/LANG.json.
 func ReadWords(lang string) (*Words, error) {

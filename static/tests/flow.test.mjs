@@ -2,7 +2,7 @@ import test from "node:test";
 import assert from "node:assert/strict";
 import { readFileSync } from "node:fs";
 import { fillMissing, quickAnswers, walk } from "../flow.mjs";
-import { newDraft, withAnswer, withAnswers, withSeries, seriesAnswers } from "../draft.mjs";
+import { newDraft, withAnswers, withSeries, seriesAnswers } from "../draft.mjs";
 import { leavesOff, stillOff } from "../still-off.mjs";
 
 // The shipped forms themselves, as the phone gets them.
@@ -15,6 +15,8 @@ const typed = (x) => ({ typed: x });
 const codes = (w) => w.steps.flatMap((s) => s.asks.map((a) => a.reading));
 const given = { kind: "gfci-receptacle" };
 const stepOf = (w, name) => w.steps.find((s) => s.step === name);
+
+const answered = (d, code, answer, at) => withAnswers(d, { ...d.answers, [code]: answer }, at);
 
 test("flow: damage that ends the form leaves nothing more to ask", () => {
   const w = walk(instrument, draftOf({ condition: pick("burnt"), found: pick("on") }), given);
@@ -129,14 +131,14 @@ test("flow: cautions stand where they apply", () => {
 });
 
 test("still off: from went off until back is answered, with the time it went off", () => {
-  let d = withAnswer(draftOf({ condition: pick("sound"), found: pick("on") }, button), "button_trips", pick("yes"), 5000);
+  let d = answered(draftOf({ condition: pick("sound"), found: pick("on") }, button), "button_trips", pick("yes"), 5000);
   const walked = (x) => walk(button, x, given);
   assert.equal(d.off_since, 5000);
   assert.ok(leavesOff(d, walked(d)));
-  d = withAnswer(d, "load_dead_when_tripped", pick("yes"), 6000);
+  d = answered(d, "load_dead_when_tripped", pick("yes"), 6000);
   assert.deepEqual(stillOff([d], walked), [{ device: "d", task: "button", since: 5000 }]);
-  assert.deepEqual(stillOff([withAnswer(d, "button_resets", pick("yes"), 7000)], walked), []);
-  assert.deepEqual(stillOff([withAnswer(d, "button_trips", pick("no"), 7000)], walked), []);
+  assert.deepEqual(stillOff([answered(d, "button_resets", pick("yes"), 7000)], walked), []);
+  assert.deepEqual(stillOff([answered(d, "button_trips", pick("no"), 7000)], walked), []);
 });
 
 test("still off: a reset before the button was pressed does not count", () => {

@@ -1,6 +1,6 @@
 import test from "node:test";
 import assert from "node:assert/strict";
-import { checkReading } from "../reading.mjs";
+import { checkReading } from "../reading-check.mjs";
 import { convert, parseNumber, showNumber } from "../number.mjs";
 
 const cases = [

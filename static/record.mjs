@@ -68,13 +68,13 @@ round.made             site
 round.set              site
 round.closed           site
 round.accepted         site
-defect.opened          site
-defect.noted           site
-defect.made_safe       site      device:id! how:text!
-defect.assigned        site
-defect.repaired        site
-defect.closed          site
-defect.reopened        site
+defect.opened          site      device:id! text:text! cause:text severity:text protector:id due:day parts:list photos:list
+defect.noted           site      device:id! text:text severity:text due:day parts:list photos:list
+defect.made_safe       site      device:id! how:text! photos:list
+defect.assigned        site      device:id! to:id crew:text due:day parts:list
+defect.repaired        site      device:id! how:text! parts:list photos:list
+defect.closed          site      device:id! reason:text
+defect.reopened        site      device:id! reason:text!
 occasion.noted         site      cause:text! on:day! devices:ids tasks:list text:text
 pause.set              site      from:day! until:day! devices:ids reason:text!
 record.refused         any       id:text sha256:hash! from:text n:number code:text!

@@ -17,7 +17,7 @@ import (
 
 // modelVersion names the shape and the rules of the read models; it grows with every change of either. A test holds it
 // against what the models of a fixed book hash to.
-const modelVersion = 3
+const modelVersion = 4
 
 // modelMark is what a file says of its read models: their rows also keep results, so another judge makes other models.
 const modelMark = modelVersion<<32 | forms.JudgeVersion
@@ -40,6 +40,7 @@ type fold struct {
 	entries   map[id16]uint64 // entries of this group, which the book's index does not know yet
 	sums      map[string]int64
 	tallies   map[string]*tally
+	flaws     map[workID]bool // devices whose defects are to be computed
 	rules     *rules
 	grants    *grants
 	ready     *ready      // of the record being folded, where its pusher worked something out
@@ -75,7 +76,7 @@ func newFold(tx *bbolt.Tx) *fold {
 	f := &fold{
 		tx: tx, logs: map[string]*modelLog{}, ords: map[uint32]*modelLog{}, rows: map[string]*overlay{},
 		things: map[thingID]uint32{}, registers: map[registerID]*register{}, works: map[workID]*work{},
-		entries: map[id16]uint64{}, sums: map[string]int64{}, tallies: map[string]*tally{},
+		entries: map[id16]uint64{}, sums: map[string]int64{}, tallies: map[string]*tally{}, flaws: map[workID]bool{},
 	}
 	f.rules, f.grants = newRules(f.on(bktRule).list), newGrants(f.on(bktGranted).list)
 	return f
@@ -102,6 +103,8 @@ func (f *fold) record(r *record.Record, st record.Stamp, seq uint64) error {
 		return f.granted(r, st)
 	case "forms.set", "limits.set", "plan.set":
 		return f.ruleSet(r)
+	case "defect.opened", "defect.noted", "defect.made_safe", "defect.assigned", "defect.repaired", "defect.closed", "defect.reopened":
+		return f.defectSaid(r)
 	}
 	return nil
 }
@@ -215,6 +218,9 @@ func (f *fold) work(site, n uint32) (*work, error) {
 
 // flush writes what changed. Keys are written in order, so that neighbours share a page.
 func (f *fold) flush() error {
+	if err := f.packDefects(); err != nil {
+		return err
+	}
 	f.packRegisters()
 	f.packWorks()
 	f.packLogs()

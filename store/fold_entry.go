@@ -45,7 +45,7 @@ func (f *fold) entryMade(r *record.Record, st record.Stamp) error {
 	if w.live {
 		w.reckon(f.rules.schedule(l.ord, f.orgOrd(), w.kind))
 	}
-	return nil
+	return f.flawsTouched(l, n, w, p.result == codeFail)
 }
 
 // outcome judges an entry with all that has been said of it so far.
@@ -178,13 +178,14 @@ func (f *fold) rework(site, n uint32, what byte) (cost int, err error) {
 // change passes every entry of a device through fn and counts them anew where one came back different, or by force: a
 // correction may leave the result and change the figures.
 func (f *fold) change(l *modelLog, n uint32, w *work, force bool, fn func(past) (past, error)) error {
-	differs := force
+	differs, failed := force, false
 	pass := func(list []past) (changed bool, err error) {
 		for i, old := range list {
 			p, err := fn(old)
 			if err != nil {
 				return changed, err
 			}
+			failed = failed || p.result == codeFail || old.result == codeFail
 			if p.day == old.day && p.task == old.task && p.result == old.result && slices.Equal(p.met, old.met) {
 				continue
 			}
@@ -210,6 +211,9 @@ func (f *fold) change(l *modelLog, n uint32, w *work, force bool, fn func(past) 
 		}
 	}
 	if _, err := pass(w.past); err != nil {
+		return err
+	}
+	if err := f.flawsTouched(l, n, w, failed); err != nil {
 		return err
 	}
 	if !differs {

@@ -75,6 +75,9 @@ func (f *fold) retired(r *record.Record) error {
 		return err
 	}
 	reg.say("#retired", said(why))
+	if err := f.factSaid(l, key.n); err != nil {
+		return err
+	}
 	if with := parseID(body.With); with != (id16{}) && with != old {
 		reg.say("#with", said(quoted(body.With)))
 		next, newer, err := f.register(l, ofDevice, with)
@@ -129,6 +132,7 @@ func (f *fold) deviceChanged(l *modelLog, n uint32, reg *register) error {
 			w.start = d
 		}
 	}
+	w.follows = reg.value("#replaces") != nil
 	w.live = reg.born != 0 && w.kind != "" && reg.value("#retired") == nil
 	if w.live != live {
 		if l.dirty = true; w.live {

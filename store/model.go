@@ -22,6 +22,10 @@ import (
 //	m_due    site 4 | day 4 | n 4 | task → nothing: this device has this date
 //	m_sum    site 4 | day 4 | grace 2 | task → how many such dates
 //	m_fail   site 4 | day 4 | n 4       → nothing: this device failed on that day and has not passed since
+//	m_fact   site 4 | n 4               → seqs of what was said of that device's defects, and of its end
+//	m_defect site 4 | n 4               → JSON of its defects, where there are any
+//	m_flaw   defect 16 | site 4         → n 4: the device of a defect
+//	m_open   site 4 | opened ms 8 | defect 16 → n 4 | flags 1: a defect that is not closed
 //	m_tally  site 4 | month 4 | task    → results of the month, counted
 //	m_bind   site 4 | subject 16 | tag 7 → what was said of this binding
 //	m_tag    tag 7 | site 4 | subject 16 → nothing: a live binding
@@ -42,6 +46,10 @@ var (
 	bktDue      = []byte("m_due")
 	bktSum      = []byte("m_sum")
 	bktFail     = []byte("m_fail")
+	bktFact     = []byte("m_fact")
+	bktDefect   = []byte("m_defect")
+	bktFlaw     = []byte("m_flaw")
+	bktOpen     = []byte("m_open")
 	bktTally    = []byte("m_tally")
 	bktBind     = []byte("m_bind")
 	bktTag      = []byte("m_tag")
@@ -52,7 +60,7 @@ var (
 )
 
 var modelBuckets = [][]byte{bktSiteLog, bktSite, bktThing, bktRegister, bktWork, bktHistory, bktSaid, bktGranted, bktChange, bktDue, bktSum,
-	bktFail, bktTally, bktBind, bktTag, bktPlace, bktCode, bktRule, bktTodo}
+	bktFail, bktFact, bktDefect, bktFlaw, bktOpen, bktTally, bktBind, bktTag, bktPlace, bktCode, bktRule, bktTodo}
 
 // Types of things and of rules.
 const (
@@ -105,6 +113,33 @@ func sumKey(site uint32, day forms.Day, grace uint16, task string) []byte {
 
 func failKey(site uint32, day forms.Day, n uint32) []byte {
 	return put32(putDay(put32(make([]byte, 0, 12), site), day), n)
+}
+
+func flawKey(defect id16, site uint32) []byte {
+	return put32(append(make([]byte, 0, 20), defect[:]...), site)
+}
+
+func openKey(site uint32, d *forms.Defect) []byte {
+	b := binary.BigEndian.AppendUint64(put32(make([]byte, 0, 28), site), uint64(d.Opened))
+	id := parseID(d.ID)
+	return append(b, id[:]...)
+}
+
+// Flags of a row of m_open.
+const (
+	openInUse    = 1 << iota // it failed unsafely and may still be used
+	openNuisance             // replace soon; nobody is at risk
+)
+
+func openRow(n uint32, d *forms.Defect) []byte {
+	flags := byte(0)
+	if d.InUse() {
+		flags |= openInUse
+	}
+	if d.Severity == forms.Nuisance {
+		flags |= openNuisance
+	}
+	return append(put32(nil, n), flags)
 }
 
 func tallyKey(site uint32, month int32, task string) []byte {

@@ -47,6 +47,31 @@ func told(t testing.TB, s *Store, on forms.Day) string {
 			if err != nil {
 				return err
 			}
+			defects, err := v.Defects(DefectAsk{Site: site.ID, State: DefectsAll, On: on})
+			if err != nil {
+				return err
+			}
+			for _, d := range defects {
+				steps, err := v.DefectHistory(d)
+				if err != nil {
+					return err
+				}
+				for i := range steps {
+					if e := steps[i].Entry; e != nil {
+						steps[i].Entry = &bare([]Entry{*e})[0]
+					}
+				}
+				out = append(out, d, steps)
+			}
+			open, err := v.DefectSums(site.ID)
+			if err != nil {
+				return err
+			}
+			past, err := v.DefectPast(site.ID, on)
+			if err != nil {
+				return err
+			}
+			out = append(out, open, past)
 			slices.SortFunc(sums.LastFailed, func(a, b DeviceRow) int { return cmp.Compare(a.ID, b.ID) })
 			out = append(out, full, sums, tallies, places)
 			for row, err := range v.Devices(site.ID) {
@@ -61,7 +86,11 @@ func told(t testing.TB, s *Store, on forms.Day) string {
 				if err != nil {
 					return err
 				}
-				out = append(out, d, bare(entries))
+				_, loose, err := v.DeviceDefects(row.ID, on)
+				if err != nil {
+					return err
+				}
+				out = append(out, d, bare(entries), loose)
 			}
 			for e, err := range v.SiteEntries(site.ID, forms.NoDay, forms.NoDay) {
 				if err != nil {
@@ -174,7 +203,7 @@ func year(r *rig, t *rapid.T) (site string, lines [][]byte) {
 	}
 	for range 40 {
 		d := devices[draw(4, "device")]
-		switch draw(12, "what") {
+		switch draw(14, "what") {
 		case 0:
 			put("device.set", d, map[string]any{"set": map[string]any{"make": fmt.Sprint("make ", draw(9, "make"))}, "seen": "0000000000000001"})
 		case 1:
@@ -208,6 +237,25 @@ func year(r *rig, t *rapid.T) (site string, lines [][]byte) {
 			every := []string{"P1M", "P3M", "P6M"}[draw(3, "every")]
 			put("plan.set", PlanSubject("own"), map[string]any{"plan": forms.Plan{ID: "own", Revision: 1 + draw(2, "revision"), Task: "button",
 				Kinds: []string{"gfci-receptacle", "rcd"}, Every: every, Duty: forms.OnceEachPeriod, InForce: forms.Date(2026, time.January, 1)}})
+		case 12, 13:
+			subject := id()
+			if draw(3, "of one") == 0 && len(entries) > 0 { // of the defect a test may have begun, whether it did or not
+				subject = record.NamedID("defect", d, "button_trips", entries[draw(len(entries), "entry")])
+			}
+			switch draw(7, "defect") {
+			case 0:
+				put("defect.opened", subject, map[string]any{"device": d, "text": "cracked", "cause": []string{"", "protection-lost"}[draw(2, "cause")], "severity": "repair"})
+			case 1:
+				put("defect.made_safe", subject, map[string]any{"device": d, "how": "breaker off and tagged"})
+			case 2:
+				put("defect.assigned", subject, map[string]any{"device": d, "crew": "Crew 1", "due": "2026-12-24", "parts": []string{"receptacle"}})
+			case 3, 4:
+				put("defect.repaired", subject, map[string]any{"device": d, "how": "terminal tightened"})
+			case 5:
+				put("defect.closed", subject, map[string]any{"device": d, "reason": "works again"})
+			default:
+				put("defect.reopened", subject, map[string]any{"device": d, "reason": "came back"})
+			}
 		case 9:
 			put("entry.imported", d, map[string]any{"form": tasks[draw(4, "form")], "day": fmt.Sprintf("2026-0%d-15", 1+draw(9, "month")), "result": forms.Results()[draw(6, "result")]})
 			entries = append(entries, idOfLine(t, lines))

@@ -13,10 +13,12 @@ type work struct {
 	kind  string    // of the register; "" before the device is registered
 	start forms.Day // the day it came under test
 	live  bool      // registered and not retired
-	tasks []taskState
-	dates []forms.DueDate // by task
-	past  []past          // the newest entries, in order of arrival
-	older uint64          // how many entries went to m_hist
+	// flawed: it ever failed, or something was said of its defects. follows: it took another device's place.
+	flawed, follows bool
+	tasks           []taskState
+	dates           []forms.DueDate // by task
+	past            []past          // the newest entries, in order of arrival
+	older           uint64          // how many entries went to m_hist
 
 	was   workBefore
 	dirty bool
@@ -86,6 +88,8 @@ func resultCode(result string) uint8 { return uint8(max(0, slices.Index(resultCo
 
 const (
 	codeFail            = 1
+	codeConditionalFail = 2
+	codeIncomplete      = 3
 	codeConditionalPass = 4
 	codePass            = 5
 )
@@ -202,8 +206,10 @@ func (u *unpacker) mark() (m mark) {
 func (w *work) pack() []byte {
 	p := packer{make([]byte, 0, 256+12*len(w.past))}
 	flags := byte(0)
-	if w.live {
-		flags = 1
+	for i, on := range []bool{w.live, w.flawed, w.follows} {
+		if on {
+			flags |= 1 << i
+		}
 	}
 	p.byte(flags)
 	p.text(w.kind)
@@ -328,7 +334,8 @@ func (u *unpacker) metTasks(n int) []string {
 // unpackWork reads a row up to its entries, or with them.
 func unpackWork(b []byte, entries bool) (*work, error) {
 	u := unpacker{b: b}
-	w := &work{live: u.byte()&1 == 1}
+	flags := u.byte()
+	w := &work{live: flags&1 != 0, flawed: flags&2 != 0, follows: flags&4 != 0}
 	w.kind, w.start = kindName(u.bytes()), u.day()
 	n := u.uint()
 	if n > uint64(len(b)) {

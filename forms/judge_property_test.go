@@ -233,7 +233,13 @@ func TestVerdicts_JavaScriptAgreesOnRandomLines(t *testing.T) {
 		}
 		lines = append(lines, raw)
 	}
-	out := node(t, catalogue, lines)
+	for name, run := range engines {
+		t.Run(name, func(t *testing.T) { compareRandom(t, catalogue, lines, run(t, catalogue, lines)) })
+	}
+}
+
+func compareRandom(t *testing.T, catalogue *Catalogue, lines []json.RawMessage, out answers) {
+	t.Helper()
 	results := map[string]int{}
 	for i, line := range lines {
 		want := judged(t, catalogue, line)
@@ -254,7 +260,7 @@ func TestVerdicts_JavaScriptAgreesOnRandomLines(t *testing.T) {
 			results[f.Verdict]++
 		}
 		if out.Answers[i] != string(want) {
-			t.Fatalf("%s:\n      Go %s\nnode %s", line, want, out.Answers[i])
+			t.Fatalf("%s:\n        Go %s\nJavaScript %s", line, want, out.Answers[i])
 		}
 	}
 	for _, r := range []string{Fail, ConditionalFail, Incomplete, ConditionalPass, "refused"} {

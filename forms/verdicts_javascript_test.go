@@ -2,7 +2,6 @@ package forms
 
 import (
 	"bytes"
-	"context"
 	"encoding/json"
 	"io"
 	"math"
@@ -10,13 +9,13 @@ import (
 	"net/http/httptest"
 	"os"
 	"os/exec"
-	"path/filepath"
 	"testing"
 	"time"
 
-	"github.com/chromedp/chromedp"
 	"github.com/google/go-cmp/cmp"
 	"github.com/google/go-cmp/cmp/cmpopts"
+
+	"tripwell/chromium"
 )
 
 // answers is what testdata/verdicts_answers.mjs makes of lines.
@@ -32,19 +31,6 @@ type answers struct {
 // another engine's.
 var engines = map[string]func(*testing.T, *Catalogue, []json.RawMessage) answers{"node": underNode, "browser": inBrowser}
 
-// tool finds a program the JavaScript judge runs in.
-func tool(t *testing.T, name string) string {
-	t.Helper()
-	path, err := exec.LookPath(name)
-	if err != nil {
-		if os.Getenv("CI") != "" {
-			t.Fatalf("%s is not installed: the JavaScript judge cannot be run in it", name)
-		}
-		t.Skipf("%s is not installed: the JavaScript judge is not run in it", name)
-	}
-	return path
-}
-
 func question(t *testing.T, c *Catalogue, lines []json.RawMessage) []byte {
 	t.Helper()
 	raw, err := json.Marshal(map[string]any{"catalogue": c, "lines": lines})
@@ -56,7 +42,14 @@ func question(t *testing.T, c *Catalogue, lines []json.RawMessage) []byte {
 
 func underNode(t *testing.T, c *Catalogue, lines []json.RawMessage) (out answers) {
 	t.Helper()
-	cmd := exec.CommandContext(t.Context(), tool(t, "node"), "../testdata/verdicts_run.mjs")
+	path, err := exec.LookPath("node")
+	if err != nil {
+		if os.Getenv("CI") != "" {
+			t.Fatal("node is not installed: the JavaScript judge cannot be run")
+		}
+		t.Skip("node is not installed: the JavaScript judge is not run in it")
+	}
+	cmd := exec.CommandContext(t.Context(), path, "../testdata/verdicts_run.mjs")
 	cmd.Stdin = bytes.NewReader(question(t, c, lines))
 	var stdout, stderr bytes.Buffer
 	cmd.Stdout, cmd.Stderr = &stdout, &stderr
@@ -73,10 +66,7 @@ func underNode(t *testing.T, c *Catalogue, lines []json.RawMessage) (out answers
 // content policy of the program's pages.
 func inBrowser(t *testing.T, c *Catalogue, lines []json.RawMessage) (out answers) {
 	t.Helper()
-	if testing.Short() {
-		t.Skip("browser tests are left out with -short")
-	}
-	path := tool(t, "chromium")
+	chromium.Need(t)
 	said := make(chan []byte, 1)
 	mux := http.NewServeMux()
 	mux.Handle("/static/", http.StripPrefix("/static/", http.FileServer(http.Dir("../static"))))
@@ -102,17 +92,7 @@ await fetch("/said", { method: "POST", body: said });`)
 	})
 	srv := httptest.NewServer(mux)
 	defer srv.Close()
-	ctx, cancel := chromedp.NewExecAllocator(t.Context(), chromedp.ExecPath(path), chromedp.Headless, chromedp.NoFirstRun,
-		chromedp.UserDataDir(filepath.Join(t.TempDir(), "profile")), chromedp.Flag("no-sandbox", true), chromedp.Flag("disable-gpu", true),
-		chromedp.Flag("disable-dev-shm-usage", true), chromedp.Flag("disable-background-networking", true))
-	defer cancel()
-	ctx, cancel = chromedp.NewContext(ctx)
-	defer cancel()
-	ctx, cancel = context.WithTimeout(ctx, 2*time.Minute)
-	defer cancel()
-	if err := chromedp.Do(ctx, chromedp.Navigate(srv.URL)); err != nil {
-		t.Fatal(err)
-	}
+	chromium.Phone(t).Open(srv.URL)
 	select {
 	case raw := <-said:
 		var failed struct{ Failed string }
@@ -122,7 +102,7 @@ await fetch("/said", { method: "POST", body: said });`)
 		if err := json.Unmarshal(raw, &out); err != nil {
 			t.Fatal(err)
 		}
-	case <-ctx.Done():
+	case <-time.After(2 * time.Minute):
 		t.Fatal("the page judged nothing within 2 minutes")
 	}
 	return out

@@ -43,7 +43,8 @@ type fold struct {
 	flaws     map[workID]bool // devices whose defects are to be computed
 	rules     *rules
 	grants    *grants
-	ready     *ready      // of the record being folded, where its pusher worked something out
+	ready     *ready // of the record being folded, where its pusher worked something out
+	ahead     map[uint64]*aheadRecord
 	current   *saidRecord // a correction while it is folded: the book does not hold it yet
 }
 

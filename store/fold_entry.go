@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"slices"
 
+	"tripwell/forms"
 	"tripwell/store/record"
 )
 
@@ -134,7 +135,7 @@ func (f *fold) weighAgain(l *modelLog, entry id16) error {
 }
 
 // rework judges a device's entries again, or only sets its dates again; it gives what that cost.
-func (f *fold) rework(site, n uint32, what byte) (cost int, err error) {
+func (f *fold) rework(site, n uint32, t todoItem) (cost int, err error) {
 	l, err := f.logOf(site)
 	if err != nil {
 		return 0, err
@@ -143,17 +144,18 @@ func (f *fold) rework(site, n uint32, what byte) (cost int, err error) {
 	if err != nil {
 		return 0, err
 	}
-	if what == todoDates {
+	if t.what == todoDates {
 		w.dirty = true
 		w.reckon(f.rules.schedule(site, f.orgOrd(), w.kind))
 		return 1, nil
 	}
+	cost = 1
 	err = f.change(l, n, w, false, func(p past) (past, error) {
-		e, st, _, err := readBook(f.tx, p.seq)
-		if err != nil {
-			return p, err
+		if p.day < t.from {
+			return p, nil
 		}
-		body, err := readEntry(e)
+		cost++
+		e, st, body, err := f.entryAt(p.seq)
 		if err != nil {
 			return p, err
 		}
@@ -163,7 +165,9 @@ func (f *fold) rework(site, n uint32, what byte) (cost int, err error) {
 	if err != nil {
 		return 0, err
 	}
-	cost = 1 + len(w.past) + int(w.older)
+	if t.from != forms.NoDay {
+		return cost, nil // a limit decides results; when a device came under test it does not
+	}
 	id, err := f.deviceID(site, n)
 	if err != nil || id == (id16{}) {
 		return cost, err

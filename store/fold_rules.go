@@ -23,7 +23,7 @@ func (f *fold) ruleSet(r *record.Record) error {
 	id := parseID(r.ID)
 	p.id(id)
 	var key []byte
-	todo := todoItem{what: todoEntries, site: l.ord}
+	todo := todoItem{what: todoEntries, site: l.ord, from: forms.NoDay}
 	switch r.Kind {
 	case "forms.set":
 		form, err := parseChecked[forms.Form](body.Form, "form")
@@ -43,6 +43,7 @@ func (f *fold) ruleSet(r *record.Record) error {
 			return err
 		}
 		key, p.b = ruleKey(ruleLimit, l.ord, set.ID, set.Revision), append(p.b, body.Limits...)
+		todo.from = set.InForce
 	case "plan.set":
 		plan, err := parseChecked[forms.Plan](body.Plan, "plan")
 		if err != nil {
@@ -58,6 +59,9 @@ func (f *fold) ruleSet(r *record.Record) error {
 		u := unpacker{b: old}
 		if (binding{clock: r.Clock, id: id}).before(binding{clock: u.fixed(), id: u.id()}) {
 			return nil
+		}
+		if was, err := parseRule[forms.LimitSet](old); r.Kind == "limits.set" && err == nil {
+			todo.from = min(todo.from, was.InForce) // what it judged until now is judged again
 		}
 	}
 	f.on(bktRule).put(key, p.b)

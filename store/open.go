@@ -49,8 +49,8 @@ type Store struct {
 	written chan struct{} // closed when the writer has ended
 	heads   sync.Mutex    // one signing at a time
 
-	unfinished bool         // the work list may hold something; the writer's own
-	groups     atomic.Int64 // committed since opening
+	work   offWork      // the writer's own
+	groups atomic.Int64 // committed since opening
 
 	rebuilding atomic.Bool // read models are being computed anew
 
@@ -81,14 +81,13 @@ func Open(dir string, o Options) (*Store, error) {
 	if err != nil {
 		return nil, err
 	}
-	s := &Store{db: db, dir: dir, now: o.Now, queue: make(chan *job, queueLength), written: make(chan struct{})}
+	s := &Store{db: db, dir: dir, now: o.Now, queue: make(chan *job, queueLength), written: make(chan struct{}), work: newOffWork()}
 	if err := s.start(o); err != nil {
 		return nil, errors.Join(err, db.Close())
 	}
 	if err := s.refresh(o.Log); err != nil {
 		return nil, errors.Join(err, db.Close())
 	}
-	s.unfinished = true
 	go s.write()
 	if o.URL != "" {
 		if err := s.SetURL(o.URL); err != nil {

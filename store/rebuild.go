@@ -8,7 +8,6 @@ import (
 	"errors"
 	"fmt"
 	"hash"
-	"math"
 	"sync"
 
 	"go.etcd.io/bbolt"
@@ -100,8 +99,9 @@ func rebuildFrom(s *Store, tx *bbolt.Tx, after uint64, progress func(done, total
 		}
 		ahead = ready
 	}
-	if k == nil {
-		if _, err := g.fold.workOff(math.MaxInt); err != nil {
+	more = k != nil
+	if !more {
+		if more, err = g.fold.workOff(rebuildSlice); err != nil {
 			return after, false, err
 		}
 	}
@@ -111,7 +111,7 @@ func rebuildFrom(s *Store, tx *bbolt.Tx, after uint64, progress func(done, total
 	if err := g.flushCounts(); err != nil {
 		return after, false, err
 	}
-	if k != nil {
+	if more {
 		return after, true, nil
 	}
 	return after, false, tx.Bucket(bktMeta).Put(metaModel, key64(modelMark))

@@ -28,7 +28,7 @@ func BenchmarkRejudge(b *testing.B) {
 	s, site := benchStore(b, 10, max(n/300, 10), n)
 	pusher := newBenchPusher(b, s, site)
 	for b.Loop() {
-		idle := pusher.run(func() bool { return false }, 2*time.Second)
+		idle := pusher.run(func() bool { return false }, 3*time.Second)
 		revision := nextBenchRevision(b, s)
 		began := time.Now()
 		if _, err := s.Append(context.Background(), revision); err != nil {
@@ -36,6 +36,8 @@ func BenchmarkRejudge(b *testing.B) {
 		}
 		busy := pusher.run(func() bool { return unfinished(b, s) == 0 }, time.Hour)
 		took := time.Since(began)
+		idle = append(idle, pusher.run(func() bool { return false }, 3*time.Second)...) // before and after: the machine changes too
+		slices.Sort(idle)
 		b.ReportMetric(percentile(idle, 0.99), "p99-alone-ms")
 		b.ReportMetric(percentile(busy, 0.99), "p99-rejudging-ms")
 		b.ReportMetric(percentile(idle, 0.5), "median-alone-ms")

@@ -2,15 +2,19 @@ package store
 
 import (
 	"fmt"
+	"math"
 
 	"go.etcd.io/bbolt"
+
+	"tripwell/forms"
 )
 
 // todoItem is work that one record asks of many devices.
 type todoItem struct {
 	what   byte
-	site   uint32 // 0 = every site
-	atSite uint32 // next device
+	site   uint32    // 0 = every site
+	from   forms.Day // todoEntries: entries of earlier days stay as they are; NoDay = all
+	atSite uint32    // next device
 	atN    uint32
 }
 
@@ -35,7 +39,7 @@ func (f *fold) queue(t todoItem) error {
 	if touched == 0 {
 		return nil
 	}
-	_, _, err = f.workItem(t, atOnce+1)
+	_, _, err = f.workItem(t, math.MaxInt)
 	return err
 }
 
@@ -108,7 +112,7 @@ func (f *fold) workItem(t todoItem, limit int) (rest *todoItem, used int, err er
 			t.atSite, t.atN = site, n
 			return &t, used, nil
 		}
-		cost, err := f.rework(site, n, t.what)
+		cost, err := f.rework(site, n, t)
 		if err != nil {
 			return nil, used, fmt.Errorf("device %d of log %d: %w", n, site, err)
 		}
@@ -119,69 +123,53 @@ func (f *fold) workItem(t todoItem, limit int) (rest *todoItem, used int, err er
 
 // zoneChanged moves the test days of a site.
 func (f *fold) zoneChanged(l *modelLog) error {
-	return f.queue(todoItem{what: todoEntries, site: l.ord})
+	return f.queue(todoItem{what: todoEntries, site: l.ord, from: forms.NoDay})
 }
 
 func (t todoItem) pack() []byte {
-	return put32(put32(put32([]byte{t.what}, t.site), t.atSite), t.atN)
+	return put32(put32(put32(put32([]byte{t.what}, t.site), uint32(t.from)), t.atSite), t.atN)
 }
 
 func unpackTodo(b []byte) (todoItem, error) {
-	if len(b) != 13 {
+	if len(b) != 17 {
 		return todoItem{}, errPacked
 	}
-	return todoItem{b[0], read32(b[1:]), read32(b[5:]), read32(b[9:])}, nil
+	return todoItem{b[0], read32(b[1:]), forms.Day(int32(read32(b[5:]))), read32(b[9:]), read32(b[13:])}, nil
 }
 
-// slice is how many devices and entries are done between two groups of arrivals.
-const slice = 500
-
-// next gives the writer its next job. While the work list holds something, a slice of it is done before every job, and
-// slice after slice while nobody is waiting.
-func (s *Store) next() (j *job, ok bool) {
-	for s.unfinished {
-		var err error
-		if s.unfinished, err = workSlice(s.db, slice); err != nil {
-			s.unfinished = false // stays on the list; tried again after the next group
-		}
-		select {
-		case j, ok = <-s.queue:
-			return j, ok
-		default:
-		}
-	}
-	j, ok = <-s.queue
-	return j, ok
-}
-
-// workSlice does a slice of the work list in a transaction of its own; an empty list costs none.
-func workSlice(db *bbolt.DB, limit int) (more bool, err error) {
-	err = db.View(func(tx *bbolt.Tx) error {
-		k, _ := tx.Bucket(bktTodo).Cursor().First()
-		more = k != nil
-		return nil
-	})
-	if err != nil || !more {
-		return false, err
-	}
-	err = db.Update(func(tx *bbolt.Tx) error {
-		f := newFold(tx)
-		if more, err = f.workOff(limit); err != nil {
-			return err
-		}
-		return f.flush()
-	})
-	return more, err
-}
-
-// finish does all that is on the work list.
+// finish does all that is on the work list, in transactions of bounded size.
 func finish(db *bbolt.DB) error {
-	for {
-		more, err := workSlice(db, 100*slice)
-		if err != nil || !more {
+	for more := true; more; {
+		err := db.Update(func(tx *bbolt.Tx) (err error) {
+			more, err = workOff(tx, rebuildSlice, nil)
+			return err
+		})
+		if err != nil {
 			return err
 		}
 	}
+	return nil
+}
+
+// workOff does about limit devices and entries of the work list within a transaction that writes.
+func workOff(tx *bbolt.Tx, limit int, a *ahead) (more bool, err error) {
+	if !listed(tx) {
+		return false, nil
+	}
+	f := newFold(tx)
+	if a != nil {
+		f.ahead = a.entries
+	}
+	if more, err = f.workOff(limit); err != nil {
+		return more, err
+	}
+	return more, f.flush()
+}
+
+// listed reports whether the work list holds anything.
+func listed(tx *bbolt.Tx) bool {
+	k, _ := tx.Bucket(bktTodo).Cursor().First()
+	return k != nil
 }
 
 // Unfinished counts the records whose effect on dates and verdicts is still being worked off: until it is 0, lists may

@@ -59,26 +59,60 @@ func (s *Store) enqueue(ctx context.Context, j *job) error {
 	}
 }
 
-// write is the one writer: it takes what is queued, commits it together, answers all.
+// write is the one writer: it takes what is queued, commits it together with a part of the work list, answers all.
 func (s *Store) write() {
 	defer close(s.written)
 	crowd := 1
 	for {
-		j, ok := s.next()
+		first, part, ok := s.next()
 		if !ok {
 			return
 		}
-		jobs := s.gather(j, crowd)
-		s.commit(slices.DeleteFunc(slices.Clone(jobs), func(j *job) bool { return j.own != nil }))
+		jobs := s.gather(first, crowd)
+		s.commit(slices.DeleteFunc(slices.Clone(jobs), func(j *job) bool { return j.own != nil }), part)
 		for _, j := range jobs {
 			if j.own != nil {
 				j.err = j.own()
+				s.work.left = true
 			}
 		}
-		s.unfinished = true
 		crowd = len(jobs) + len(s.queue)
 		for _, j := range jobs {
 			close(j.done)
+		}
+	}
+}
+
+// next waits for a job, or for a part of the work list that is ready, and gives both where both are there.
+func (s *Store) next() (first *job, part *ahead, ok bool) {
+	w := &s.work
+	for {
+		w.ask(s)
+		select {
+		case first, ok = <-s.queue:
+			w.pushed = true
+			select {
+			case part = <-w.ready:
+				part = w.take(part)
+			default:
+			}
+			if !ok && w.asked {
+				<-w.ready // it reads the file, which is about to be closed
+			}
+			return first, part, ok
+		case part = <-w.ready:
+			if part = w.take(part); part == nil {
+				continue
+			}
+			if !w.pushed {
+				return nil, part, true
+			}
+			select {
+			case first, ok = <-s.queue:
+				return first, part, ok
+			case <-time.After(partWait):
+				return nil, part, true
+			}
 		}
 	}
 }
@@ -87,11 +121,16 @@ func (s *Store) write() {
 // share one flush of the disk.
 func (s *Store) Groups() int64 { return s.groups.Load() }
 
-// gather takes what is queued. Callers that have just been answered are likely to come again at once: it waits for as
+// gather takes what is queued; first may be nil, then it waits for nobody. Callers that have just been answered are likely to come again at once: it waits for as
 // many as were answered or queued at the last commit, but never longer than gatherWait, so that fewer and larger commits
 // are made. A caller on its own never waits.
-func (s *Store) gather(first *job, crowd int) []*job {
-	jobs, n := []*job{first}, first.size
+func (s *Store) gather(first *job, crowd int) (jobs []*job) {
+	n := 0
+	if first == nil {
+		crowd = 0
+	} else {
+		jobs, n = append(jobs, first), first.size
+	}
 	var late <-chan time.Time
 	for n < groupLimit {
 		select {
@@ -130,23 +169,21 @@ type spoilt struct {
 
 func (e *spoilt) Error() string { return e.err.Error() }
 
-// commit decides a group in one transaction.
-func (s *Store) commit(jobs []*job) {
-	for len(jobs) > 0 {
-		err := s.update(jobs)
+// commit decides a group in one transaction, and a part of the work list in the same, nil for none.
+func (s *Store) commit(jobs []*job, part *ahead) {
+	for len(jobs) > 0 || part != nil {
+		err := s.update(jobs, part)
 		var one *spoilt
-		if errors.As(err, &one) {
+		switch {
+		case errors.As(err, &one):
 			one.job.err = one.err
-			rest := make([]*job, 0, len(jobs))
-			for _, j := range jobs {
-				if j != one.job {
-					rest = append(rest, j)
-				}
-			}
-			jobs = rest
+			jobs = slices.DeleteFunc(jobs, func(j *job) bool { return j == one.job })
 			continue
-		}
-		if err != nil {
+		case errors.Is(err, errWork):
+			s.work.left, part = false, nil // stays on the list; tried again after the next group
+			continue
+		case err != nil:
+			s.work.left = false
 			for _, j := range jobs {
 				j.err = &Error{Code: "unavailable", Text: "The store could not be written (" + err.Error() + "). Nothing of this was kept; send it again when the disk has room and works."}
 			}
@@ -155,8 +192,19 @@ func (s *Store) commit(jobs []*job) {
 	}
 }
 
-func (s *Store) update(jobs []*job) error {
+// errWork is why a part of the work list could not be done; the jobs beside it are not to blame.
+var errWork = errors.New("work list")
+
+func (s *Store) update(jobs []*job, part *ahead) error {
+	worked, changes := time.Duration(0), 0
+	left := false
 	err := s.db.Update(func(tx *bbolt.Tx) error {
+		if began := time.Now(); part != nil {
+			if _, err := workOff(tx, part.cost, part); err != nil {
+				return fmt.Errorf("%w: %w", errWork, err)
+			}
+			worked = time.Since(began)
+		}
 		g := newGroup(s, tx)
 		for _, j := range jobs {
 			before := g.changes
@@ -165,27 +213,36 @@ func (s *Store) update(jobs []*job) error {
 				return &spoilt{j, j.err}
 			}
 		}
-		if g.changes == 0 {
-			return errNothing
+		if changes = g.changes; changes == 0 {
+			if left = listed(tx); part == nil {
+				return errNothing
+			}
+			return nil
 		}
 		if err := g.flush(); err != nil {
 			return err
 		}
+		left = listed(tx)
 		if s.faults.commit != nil {
 			return s.faults.commit()
 		}
 		return nil
 	})
-	if errors.Is(err, errNothing) {
+	if err != nil && !errors.Is(err, errNothing) {
+		return err
+	}
+	s.work.left = left
+	if part != nil {
+		s.work.adapt(part.cost, worked)
+	}
+	if changes == 0 {
 		return nil
 	}
-	if err == nil {
-		s.groups.Add(1)
-	}
-	if err == nil && s.faults.answer != nil {
+	s.groups.Add(1)
+	if s.faults.answer != nil {
 		return s.faults.answer()
 	}
-	return err
+	return nil
 }
 
 // errNothing ends a transaction that changes nothing without two flushes of the disk.

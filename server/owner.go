@@ -22,6 +22,7 @@ func ownerRoutes() []route {
 		{get, "/own/info", owner, (*Server).ownInfo, 0},
 		{get, "/own/due", owner, (*Server).ownDue, 0},
 		{get, "/own/workbook", owner, (*Server).ownWorkbook, 0},
+		{get, "/own/bundle", owner, (*Server).ownBundle, 0},
 		{get, "/own/labels", owner, (*Server).ownLabels, 0},
 		{post, "/own/labels/batch", owner, (*Server).ownLabelsBatch, 0},
 		{get, "/own/label", owner, (*Server).ownLabel, 0},

@@ -73,6 +73,7 @@ func publicRoutes() []route {
 		{get, "/forms/:kind/:task", signed, (*Server).formShow, 0},
 		{get, "/downloads", office, (*Server).downloadsShow, 0},
 		{get, "/workbook.xlsx", office, (*Server).workbookTake, 0},
+		{get, "/bundle.zip", office, (*Server).bundleTake, 0},
 		{get, "/labels", office, (*Server).labelsShow, 0},
 		{get, "/labels.pdf", office, (*Server).labelsTake, 0},
 		{get, "/label", office, (*Server).labelTake, 0},

@@ -77,6 +77,14 @@ func (g *group) accept(r *record.Record, stamp record.Stamp, line []byte, leaf p
 	if err := g.fold.record(r, stamp, g.seq+1); err != nil {
 		return 0, err
 	}
+	if pos, err = g.place(r, line, leaf); err != nil {
+		return 0, err
+	}
+	return pos, g.note(r, stamp, g.logs[r.Log].ord)
+}
+
+// place gives a record its place in the book, and nothing else.
+func (g *group) place(r *record.Record, line []byte, leaf proof.Hash) (pos int64, err error) {
 	g.changes++
 	g.seq++
 	l, err := g.openLog(r.Log)
@@ -90,9 +98,6 @@ func (g *group) accept(r *record.Record, stamp record.Stamp, line []byte, leaf p
 	g.fresh[id] = fresh{g.seq, r.Raw, r.Log, pos}
 	g.order = append(g.order, id)
 	g.clock = max(g.clock, r.Clock)
-	if err := g.note(r, stamp, l.ord); err != nil {
-		return 0, err
-	}
 	if err := g.recs.Put(key64(g.seq), g.recValue(l.ord, pos, line, r.Raw)); err != nil {
 		return 0, fmt.Errorf("append record %s: %w", r.ID, err)
 	}

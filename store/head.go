@@ -39,6 +39,7 @@ func (s *Store) SignedHead() (string, error) {
 	defer s.heads.Unlock()
 	head := proof.Head{Origin: fmt.Sprintf("tripwell/%s/%s/%d", s.org, s.id, s.epoch)}
 	var logs []LogHead
+	var seq uint64
 	err := s.view(func(tx *bbolt.Tx) (err error) {
 		if err := s.agreesWithSigned(tx); err != nil {
 			return err
@@ -47,7 +48,8 @@ func (s *Store) SignedHead() (string, error) {
 		if err != nil {
 			return err
 		}
-		_, v := tx.Bucket(bktRec).Cursor().Last()
+		key, v := tx.Bucket(bktRec).Cursor().Last()
+		seq = readKey64(key)
 		k, err := readRec(v)
 		if err != nil {
 			return fmt.Errorf("last record: %w", err)
@@ -81,7 +83,7 @@ func (s *Store) SignedHead() (string, error) {
 	if err := s.writeKey(headFile, kept); err != nil {
 		return "", err
 	}
-	return note, nil
+	return note, s.keepHead(seq, note)
 }
 
 // agreesWithSigned holds the book against what was signed last: each log at least as long, with the same root at that

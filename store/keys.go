@@ -13,6 +13,7 @@
 //	  names  ord 4                      → log name
 //	  quar   seq 8 of record.refused    → length 2 | sentence | the exact bytes refused
 //	  quarsha SHA-256 32                → seq 8 of record.refused
+//	  heads  epoch 4 | seq 8            → a head that was signed when the book held seq records
 //	  differ id 16 | SHA-256 32         → received ms 8 | the exact bytes that came again under a named id with other values
 //	  meta   store, org, epoch, demo, format, clock, model
 //	counted from the book, computed anew by Rebuild
@@ -48,6 +49,7 @@ var (
 	bktQuarSHA = []byte("quarsha")
 	bktDiffer  = []byte("differ")
 	bktMeta    = []byte("meta")
+	bktHeads   = []byte("heads")
 
 	bktCount  = []byte("count")
 	bktReused = []byte("reused")
@@ -62,7 +64,7 @@ var (
 	bktSetting = []byte("dir_setting")
 )
 
-var bookBuckets = [][]byte{bktRec, bktID, bktLog, bktLogs, bktNames, bktQuar, bktQuarSHA, bktDiffer, bktMeta}
+var bookBuckets = [][]byte{bktRec, bktID, bktLog, bktLogs, bktNames, bktQuar, bktQuarSHA, bktHeads, bktDiffer, bktMeta}
 var countBuckets = [][]byte{bktCount, bktReused, bktGrant, bktTaken}
 var directoryBuckets = [][]byte{bktPerson, bktLink, bktSession, bktToken, bktInst, bktSetting}
 

@@ -157,3 +157,21 @@ func (v *View) HasPhoto(name string) bool {
 func (s *Store) photoPath(name string) string {
 	return filepath.Join(s.dir, "photos", name[:2], name)
 }
+
+// NamedPhoto is a photo that an entry names.
+type NamedPhoto struct{ Entry, Name string }
+
+// PhotosOf gives the photos that a record's exact bytes name; most records name none.
+func PhotosOf(raw []byte) (list []NamedPhoto) {
+	if !bytes.Contains(raw, []byte(`"photos"`)) {
+		return nil
+	}
+	r, f := record.Reread(raw)
+	if f != nil || r.Kind != "entry.made" {
+		return nil
+	}
+	for _, name := range photosOf(r) {
+		list = append(list, NamedPhoto{r.ID, name})
+	}
+	return list
+}

@@ -16,6 +16,8 @@ type cli struct {
 	Import   importCmd   `cmd:"" help:"Take in what exists elsewhere."`
 	Due      dueCmd      `cmd:"" help:"List what is due or overdue."`
 	Workbook workbookCmd `cmd:"" help:"Write the workbook an auditor gets."`
+	Bundle   bundleCmd   `cmd:"" help:"Write what an auditor takes away, with its proof."`
+	Verify   verifyCmd   `cmd:"" help:"Check a bundle; needs no store."`
 	Labels   labelsCmd   `cmd:"" help:"Write sheets of labels."`
 	Label    labelCmd    `cmd:"" help:"Write one label as a picture."`
 	Backup   backupCmd   `cmd:"" help:"Write a checked copy of the book to a file."`

@@ -1,6 +1,8 @@
 package proof
 
 import (
+	"crypto/sha256"
+	"encoding/hex"
 	"fmt"
 	"io"
 	"slices"
@@ -18,6 +20,8 @@ type LogRoot struct {
 	Size int64
 	Root Hash
 }
+
+func (l LogRoot) line() string { return fmt.Sprintf("%s %d %s", l.Log, l.Size, l.Root) }
 
 // Head says what a whole store holds. As a note its text is:
 //
@@ -45,7 +49,7 @@ func (h Head) Root() Hash {
 func (h Head) lines() []string {
 	lines := make([]string, len(h.Logs))
 	for i, l := range h.Logs {
-		lines[i] = fmt.Sprintf("%s %d %s", l.Log, l.Size, l.Root)
+		lines[i] = l.line()
 	}
 	slices.Sort(lines)
 	return lines
@@ -65,31 +69,99 @@ func (h Head) Sign(private string) (string, error) {
 	return string(msg), err
 }
 
-// Verify reads a signed head and holds it against a public key and against the logs it is said to cover.
-func Verify(signed, public string, logs []LogRoot) (Head, error) {
-	v, err := note.NewVerifier(public)
+// Signed is what a signed head says once its signature has been checked.
+type Signed struct {
+	Origin string
+	Logs   int64 // how many logs it covers
+	Root   Hash  // over the lines of all logs
+	Time   time.Time
+}
+
+// Open reads a signed head and holds its signature against a public key.
+func Open(signed, public string) (Signed, error) {
+	v, err := note.NewVerifier(strings.TrimSpace(public))
 	if err != nil {
-		return Head{}, fmt.Errorf("public key: %w", err)
+		return Signed{}, fmt.Errorf("public key: %w", err)
 	}
 	n, err := note.Open([]byte(signed), note.VerifierList(v))
 	if err != nil {
-		return Head{}, fmt.Errorf("signature of the head: %w", err)
+		return Signed{}, fmt.Errorf("signature of the head: %w", err)
 	}
 	f := strings.Split(n.Text, "\n")
 	if len(f) != 5 {
-		return Head{}, fmt.Errorf("the head has %d lines, not 4", len(f)-1)
+		return Signed{}, fmt.Errorf("the head has %d lines, not 4", len(f)-1)
 	}
-	h := Head{Origin: f[0], Logs: logs}
-	if h.Time, err = time.Parse(headTime, f[3]); err != nil {
-		return Head{}, fmt.Errorf("time of the head: %w", err)
+	s := Signed{Origin: f[0]}
+	if s.Logs, err = strconv.ParseInt(f[1], 10, 64); err != nil || s.Logs < 0 {
+		return Signed{}, fmt.Errorf("the head covers %q logs", f[1])
 	}
-	if f[1] != strconv.Itoa(len(logs)) {
-		return Head{}, fmt.Errorf("the head covers %s logs; %d were given", f[1], len(logs))
+	if s.Root, err = ParseHash(f[2]); err != nil {
+		return Signed{}, fmt.Errorf("root of the head: %w", err)
 	}
-	if got := h.Root().String(); got != f[2] {
-		return Head{}, fmt.Errorf("the logs give the root %s; the head says %s", got, f[2])
+	if s.Time, err = time.Parse(headTime, f[3]); err != nil {
+		return Signed{}, fmt.Errorf("time of the head: %w", err)
+	}
+	return s, nil
+}
+
+// Verify reads a signed head and holds it against a public key and against all the logs it is said to cover.
+func Verify(signed, public string, logs []LogRoot) (Head, error) {
+	s, err := Open(signed, public)
+	if err != nil {
+		return Head{}, err
+	}
+	h := Head{Origin: s.Origin, Time: s.Time, Logs: logs}
+	if s.Logs != int64(len(logs)) {
+		return Head{}, fmt.Errorf("the head covers %d logs; %d were given", s.Logs, len(logs))
+	}
+	if got := h.Root(); got != s.Root {
+		return Head{}, fmt.Errorf("the logs give the root %s; the head says %s", got, s.Root)
 	}
 	return h, nil
+}
+
+// Line proves that a head covers a log at a size, without naming the head's other logs.
+type Line struct {
+	LogRoot
+	Index int64 // of the line among the head's, from 0
+	Proof []Hash
+}
+
+// Line gives the proof of one log's line.
+func (h Head) Line(log string) (Line, error) {
+	lines, want := h.lines(), log+" "
+	at := slices.IndexFunc(lines, func(l string) bool { return strings.HasPrefix(l, want) })
+	for i := range h.Logs {
+		if h.Logs[i].Log != log {
+			continue
+		}
+		var stored [][]Hash
+		var e Edge
+		for _, l := range lines {
+			stored = append(stored, e.Append(LeafHash([]byte(l))))
+		}
+		p, err := Inclusion(e.Size, int64(at), func(n int64) ([]Hash, error) { return stored[n], nil })
+		return Line{h.Logs[i], int64(at), p}, err
+	}
+	return Line{}, fmt.Errorf("the head covers no log %s", log)
+}
+
+// Covers holds a line against the head's root.
+func (s Signed) Covers(l Line) error {
+	return CheckInclusion(l.Proof, s.Logs, s.Root, l.Index, LeafHash([]byte(l.line())))
+}
+
+// Fingerprint of a public key: SHA-256 over its text in hexadecimal, in groups of eight, to be read out or compared on paper.
+func Fingerprint(public string) string {
+	sum := sha256.Sum256([]byte(strings.TrimSpace(public)))
+	text := ""
+	for i := 0; i < len(sum); i += 4 {
+		if i > 0 {
+			text += " "
+		}
+		text += hex.EncodeToString(sum[i : i+4])
+	}
+	return text
 }
 
 // NewKey makes a signing key and its public half for a name without spaces and plus signs.

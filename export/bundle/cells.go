@@ -1,0 +1,337 @@
+package bundle
+
+import (
+	"archive/zip"
+	"bufio"
+	"encoding/xml"
+	"errors"
+	"fmt"
+	"io"
+	"path"
+	"regexp"
+	"strconv"
+	"strings"
+)
+
+// sheetPart is a worksheet of a workbook.
+type sheetPart struct{ name, file string }
+
+// cells reads the worksheets of an XLSX (ECMA-376 part 1, SpreadsheetML) row by row. It reads what a cell holds, not how a
+// program would show it.
+type cells struct {
+	files  map[string]*zip.File
+	sheets []sheetPart
+	shared []string
+}
+
+// Bounds of one workbook that is read.
+const (
+	sharedMost   = 1 << 30 // bytes of all shared texts
+	columnsMost  = 16_384
+	cellTextMost = 1 << 20
+)
+
+func openCells(in io.ReaderAt, size int64) (*cells, error) {
+	archive, err := zip.NewReader(in, size)
+	if err != nil {
+		return nil, fmt.Errorf("it is no XLSX file: %w", err)
+	}
+	c := &cells{files: map[string]*zip.File{}}
+	for _, f := range archive.File {
+		if f.UncompressedSize64 > fileMost || f.UncompressedSize64 > ratioMatters && f.UncompressedSize64/ratioMost > f.CompressedSize64 {
+			return nil, fmt.Errorf("its part %s says it is too large to be true", quote(f.Name))
+		}
+		c.files[strings.TrimPrefix(f.Name, "/")] = f
+	}
+	for name := range c.files {
+		if strings.Contains(strings.ToLower(name), "vbaproject") {
+			return nil, errors.New("it holds macros")
+		}
+	}
+	if err := c.home(); err != nil {
+		return nil, err
+	}
+	return c, c.readShared()
+}
+
+// tokens walks the tokens of a part.
+func (c *cells) tokens(name string, token func(d *xml.Decoder, t xml.Token) error) error {
+	f := c.files[name]
+	if f == nil {
+		return fmt.Errorf("its part %s is missing", name)
+	}
+	in, err := f.Open()
+	if err != nil {
+		return err
+	}
+	defer in.Close()
+	d := xml.NewDecoder(bufio.NewReaderSize(io.LimitReader(in, fileMost), 1<<16))
+	for {
+		t, err := d.RawToken()
+		if err == io.EOF {
+			return nil
+		}
+		if err != nil {
+			return fmt.Errorf("its part %s cannot be read: %w", name, err)
+		}
+		if err := token(d, t); err != nil {
+			return err
+		}
+	}
+}
+
+func attribute(e xml.StartElement, local string) string {
+	for _, a := range e.Attr {
+		if a.Name.Local == local {
+			return a.Value
+		}
+	}
+	return ""
+}
+
+// home reads the list of worksheets.
+func (c *cells) home() error {
+	const home = "xl/workbook.xml"
+	targets := map[string]string{}
+	err := c.tokens("xl/_rels/workbook.xml.rels", func(_ *xml.Decoder, t xml.Token) error {
+		if e, ok := t.(xml.StartElement); ok && e.Name.Local == "Relationship" {
+			target := attribute(e, "Target")
+			if strings.HasPrefix(target, "/") {
+				target = strings.TrimPrefix(target, "/")
+			} else {
+				target = path.Join("xl", target)
+			}
+			targets[attribute(e, "Id")] = target
+		}
+		return nil
+	})
+	if err != nil {
+		return err
+	}
+	return c.tokens(home, func(_ *xml.Decoder, t xml.Token) error {
+		e, ok := t.(xml.StartElement)
+		if !ok || e.Name.Local != "sheet" {
+			return nil
+		}
+		id := ""
+		for _, a := range e.Attr {
+			if a.Name.Space == "r" && a.Name.Local == "id" || a.Name.Local == "id" && a.Name.Space != "" {
+				id = a.Value
+			}
+		}
+		c.sheets = append(c.sheets, sheetPart{attribute(e, "name"), targets[id]})
+		return nil
+	})
+}
+
+func (c *cells) readShared() error {
+	const name = "xl/sharedStrings.xml"
+	if c.files[name] == nil {
+		return nil
+	}
+	var text strings.Builder
+	in, phonetic, total := false, false, 0
+	return c.tokens(name, func(_ *xml.Decoder, t xml.Token) error {
+		switch t := t.(type) {
+		case xml.StartElement:
+			switch t.Name.Local {
+			case "si":
+				text.Reset()
+			case "t":
+				in = true
+			case "rPh":
+				phonetic = true
+			}
+		case xml.EndElement:
+			switch t.Name.Local {
+			case "si":
+				if total += text.Len(); total > sharedMost {
+					return errors.New("its shared texts are larger than 1 GiB")
+				}
+				c.shared = append(c.shared, text.String())
+			case "t":
+				in = false
+			case "rPh":
+				phonetic = false
+			}
+		case xml.CharData:
+			if in && !phonetic {
+				text.Write(t)
+			}
+		}
+		return nil
+	})
+}
+
+// cell is one that holds something. Value leads with its kind: n number, s text, b yes or no, e error, f where a formula
+// stands.
+type cell struct {
+	column int // from 1
+	value  string
+}
+
+// rows reads a worksheet; the cells are good until the next row.
+func (c *cells) rows(s sheetPart, row func(number int, cells []cell) error) error {
+	r := rowReader{cells: c}
+	return c.tokens(s.file, func(_ *xml.Decoder, t xml.Token) error {
+		switch t := t.(type) {
+		case xml.StartElement:
+			return r.start(t)
+		case xml.EndElement:
+			if t.Name.Local == "row" {
+				return row(r.number, r.row)
+			}
+			return r.end(t.Name.Local)
+		case xml.CharData:
+			if r.in {
+				r.text = append(r.text, t...)
+				if len(r.text) > cellTextMost {
+					return fmt.Errorf("row %d holds a text of more than 1 MiB", r.number)
+				}
+			}
+		}
+		return nil
+	})
+}
+
+// rowReader puts the cells of a row together.
+type rowReader struct {
+	*cells
+	number  int
+	row     []cell
+	column  int
+	kind    string
+	formula bool
+	in      bool // text that counts is being read
+	text    []byte
+}
+
+func (r *rowReader) start(e xml.StartElement) error {
+	switch e.Name.Local {
+	case "row":
+		r.number++
+		if n, err := strconv.Atoi(attribute(e, "r")); err == nil {
+			r.number = n
+		}
+		r.row, r.column = r.row[:0], 0
+	case "c":
+		r.column++
+		if n := columnOf(attribute(e, "r")); n > 0 {
+			r.column = n
+		}
+		if r.column > columnsMost {
+			return fmt.Errorf("row %d has a column beyond the last", r.number)
+		}
+		r.kind, r.formula, r.text = attribute(e, "t"), false, r.text[:0]
+	case "f":
+		r.formula = true
+	case "v", "t":
+		r.in = true
+	}
+	return nil
+}
+
+func (r *rowReader) end(local string) error {
+	switch local {
+	case "v", "t":
+		r.in = false
+	case "c":
+		value, err := r.value()
+		if err != nil {
+			return err
+		}
+		if r.formula {
+			value = "f" + value
+		}
+		if value != "" {
+			r.row = append(r.row, cell{r.column, value})
+		}
+	}
+	return nil
+}
+
+func (r *rowReader) value() (string, error) {
+	text := string(r.text)
+	switch r.kind {
+	case "s":
+		n, err := strconv.Atoi(strings.TrimSpace(text))
+		if err != nil || n < 0 || n >= len(r.shared) {
+			return "", fmt.Errorf("row %d names a shared text that is not there", r.number)
+		}
+		text = r.shared[n]
+		fallthrough
+	case "inlineStr", "str":
+		if text = plain(text); text == "" {
+			return "", nil
+		}
+		return "s" + text, nil
+	case "b", "e":
+		return r.kind + text, nil
+	}
+	if text = strings.TrimSpace(text); text == "" {
+		return "", nil
+	}
+	f, err := strconv.ParseFloat(text, 64)
+	if err != nil {
+		return "n" + text, nil
+	}
+	// Programs that save a workbook again write 15 digits; times of day are fractions that need more.
+	return "n" + strconv.FormatFloat(f, 'g', 13, 64), nil
+}
+
+var escaped = regexp.MustCompile(`_x[0-9A-Fa-f]{4}_`)
+
+// plain undoes what writers of XLSX do to control characters and ends of lines.
+func plain(text string) string {
+	if strings.Contains(text, "_x") {
+		text = escaped.ReplaceAllStringFunc(text, func(e string) string {
+			n, _ := strconv.ParseUint(e[2:6], 16, 16) // four hexadecimal digits
+			return string(rune(n))
+		})
+	}
+	if strings.Contains(text, "\r") {
+		text = strings.ReplaceAll(strings.ReplaceAll(text, "\r\n", "\n"), "\r", "\n")
+	}
+	return text
+}
+
+// columnOf reads the letters of a cell's address: A is 1.
+func columnOf(address string) (n int) {
+	for i := 0; i < len(address); i++ {
+		ch := address[i]
+		if ch < 'A' || ch > 'Z' {
+			break
+		}
+		if n = n*26 + int(ch-'A') + 1; n > columnsMost {
+			return n
+		}
+	}
+	return n
+}
+
+func columnName(n int) string {
+	name := ""
+	for ; n > 0; n = (n - 1) / 26 {
+		name = string(rune('A'+(n-1)%26)) + name
+	}
+	return name
+}
+
+// shown writes a cell's value for a sentence.
+func shown(value string) string {
+	if value == "" {
+		return "nothing"
+	}
+	lead := ""
+	if value[0] == 'f' {
+		lead, value = "a formula that gives ", value[1:]
+		if value == "" {
+			return "a formula"
+		}
+	}
+	text := value[1:]
+	if r := []rune(text); len(r) > 100 {
+		text = string(r[:100]) + "…"
+	}
+	return lead + "“" + text + "”"
+}

@@ -69,6 +69,20 @@ func (v *View) deviceThing(sv *siteView, id id16) (*deviceThing, error) {
 	return d, nil
 }
 
+// deviceNumbered gives the register row of a device by its number within the site.
+func (v *View) deviceNumbered(sv *siteView, n uint32) (*deviceThing, error) {
+	t, err := unpackThing(v.tx.Bucket(bktRegister).Get(registerKey(sv.ord, ofDevice, n)))
+	if err != nil {
+		return nil, err
+	}
+	if d := sv.devices[t.id]; d != nil {
+		return d, nil
+	}
+	d := &deviceThing{t, n}
+	sv.devices[t.id] = d
+	return d, nil
+}
+
 // placeIDOf gives a device's place: its own, or that of the device whose place it took.
 func (v *View) placeIDOf(sv *siteView, t *thing) (id16, error) {
 	for range 32 { // a chain longer than a place lives, or a loop

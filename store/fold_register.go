@@ -208,28 +208,46 @@ func (f *fold) packRegisters() {
 		}
 		r.dirty = false
 		f.on(bktRegister).put(registerKey(key.site, key.typ, key.n), r.pack())
+		is := r.stands()
 		switch key.typ {
 		case ofDevice:
-			if place := r.idOf("place"); place != r.was.place {
-				if r.was.place != (id16{}) {
-					f.on(bktPlace).delete(placeKey(key.site, r.was.place, key.n))
+			f.reindex(bktPlace, r.was.place, is.place, func(place id16) []byte { return placeKey(key.site, place, key.n) })
+			if is.circuit != r.was.circuit || is.other != r.was.other {
+				f.reindex(bktCircuit, r.was.circuit, id16{}, func(c id16) []byte { return circuitKey(key.site, c, r.was.other, key.n) })
+				f.reindex(bktCircuit, id16{}, is.circuit, func(c id16) []byte { return circuitKey(key.site, c, is.other, key.n) })
+			}
+			if is.sources != r.was.sources {
+				for _, was := range r.was.sources {
+					f.reindex(bktFeed, was, id16{}, func(s id16) []byte { return feedKey(key.site, s, key.n) })
 				}
-				if place != (id16{}) {
-					f.on(bktPlace).put(placeKey(key.site, place, key.n), []byte{})
+				for _, source := range is.sources {
+					f.reindex(bktFeed, id16{}, source, func(s id16) []byte { return feedKey(key.site, s, key.n) })
 				}
-				r.was.place = place
 			}
 		case ofSite:
-			if code := siteCode(r.text("code")); code != r.was.code {
+			if is.code != r.was.code {
 				if r.was.code != "" {
 					f.on(bktCode).delete(codeKey(r.was.code, key.site))
 				}
-				if code != "" {
-					f.on(bktCode).put(codeKey(code, key.site), []byte{})
+				if is.code != "" {
+					f.on(bktCode).put(codeKey(is.code, key.site), []byte{})
 				}
-				r.was.code = code
 			}
 		}
+		r.was = is
+	}
+}
+
+// reindex moves a key from what it named to what it names; zero names nothing.
+func (f *fold) reindex(bucket []byte, was, is id16, key func(id16) []byte) {
+	if was == is {
+		return
+	}
+	if was != (id16{}) {
+		f.on(bucket).delete(key(was))
+	}
+	if is != (id16{}) {
+		f.on(bucket).put(key(is), []byte{})
 	}
 }
 

@@ -30,6 +30,8 @@ import (
 //	m_bind   site 4 | subject 16 | tag 7 → what was said of this binding
 //	m_tag    tag 7 | site 4 | subject 16 → nothing: a live binding
 //	m_place  site 4 | place 16 | n 4    → nothing: a device whose own place this is
+//	m_circuit site 4 | circuit 16 | 0 or 1 | n 4 → nothing: a device that hangs on this circuit; 0 where it protects all of it
+//	m_feed   site 4 | device 16 | n 4   → nothing: a device that names this one as its source, or as what took its place
 //	m_code   CODE 0 | site 4            → nothing
 //	m_rule   type 1 | site 4 | name 0 | revision 4 → clock 8 | record 16 | JSON of a form, limit set or plan
 //	m_todo   seq 8                      → work not yet done for that record, see todo.go
@@ -54,13 +56,15 @@ var (
 	bktBind     = []byte("m_bind")
 	bktTag      = []byte("m_tag")
 	bktPlace    = []byte("m_place")
+	bktCircuit  = []byte("m_circuit")
+	bktFeed     = []byte("m_feed")
 	bktCode     = []byte("m_code")
 	bktRule     = []byte("m_rule")
 	bktTodo     = []byte("m_todo")
 )
 
 var modelBuckets = [][]byte{bktSiteLog, bktSite, bktThing, bktRegister, bktWork, bktHistory, bktSaid, bktGranted, bktChange, bktDue, bktSum,
-	bktFail, bktFact, bktDefect, bktFlaw, bktOpen, bktTally, bktBind, bktTag, bktPlace, bktCode, bktRule, bktTodo}
+	bktFail, bktFact, bktDefect, bktFlaw, bktOpen, bktTally, bktBind, bktTag, bktPlace, bktCircuit, bktFeed, bktCode, bktRule, bktTodo}
 
 // Types of things and of rules.
 const (
@@ -156,6 +160,18 @@ func tagKey(tag string, site uint32, subject id16) []byte {
 
 func placeKey(site uint32, place id16, n uint32) []byte {
 	return put32(append(put32(make([]byte, 0, 24), site), place[:]...), n)
+}
+
+func circuitKey(site uint32, circuit id16, other bool, n uint32) []byte {
+	key := append(put32(make([]byte, 0, 25), site), circuit[:]...)
+	if other {
+		return put32(append(key, 1), n)
+	}
+	return put32(append(key, 0), n)
+}
+
+func feedKey(site uint32, source id16, n uint32) []byte {
+	return put32(append(put32(make([]byte, 0, 24), site), source[:]...), n)
 }
 
 func codeKey(code string, site uint32) []byte {

@@ -7,6 +7,7 @@ import (
 	"slices"
 	"strconv"
 
+	"tripwell/forms"
 	"tripwell/store/record"
 )
 
@@ -26,8 +27,17 @@ type register struct {
 
 // registerBefore is what indexes hold for the row as stored.
 type registerBefore struct {
-	place id16
-	code  string
+	place   id16
+	circuit id16
+	other   bool    // hangs on the circuit without protecting it
+	sources [2]id16 // the device it is fed from, and the one that took its place
+	code    string
+}
+
+// stands gives what the indexes are to hold.
+func (r *register) stands() registerBefore {
+	return registerBefore{place: r.idOf("place"), circuit: r.idOf("circuit"), other: !forms.ProtectsCircuit(r.text("kind")),
+		sources: [2]id16{r.idOf("fed_by"), r.idOf("#with")}, code: siteCode(r.text("code"))}
 }
 
 type field struct {
@@ -164,7 +174,7 @@ func unpackRegister(b []byte) (*register, error) {
 			f.said = append(f.said, s)
 		}
 	}
-	r.was = registerBefore{place: r.idOf("place"), code: siteCode(r.text("code"))}
+	r.was = r.stands()
 	return r, u.err()
 }
 
@@ -197,6 +207,25 @@ func unpackThing(b []byte) (thing, error) {
 	return t, u.err()
 }
 
+// saidOf gives the stamp and the record of what stands in a field.
+func (t *thing) saidOf(name string) (clock uint64, rec id16) {
+	u := unpacker{b: t.said}
+	for i := range t.fields {
+		for j, said := uint64(0), u.uint(); j < said && !u.bad; j++ {
+			clock, rec = u.fixed(), u.id()
+			if j == 0 && t.fields[i].name == name {
+				return clock, rec
+			}
+			u.id()
+			u.uint()
+			if j > 0 {
+				u.bytes()
+			}
+		}
+	}
+	return 0, id16{}
+}
+
 // seen gives the largest stamp of all that was said of the thing: what somebody knew of it who knows this row.
 func (t *thing) seen() uint64 {
 	var last uint64
@@ -222,7 +251,7 @@ var fieldNames = func() map[string]string {
 		"delayed", "waveform", "equipment_ground", "faces", "installed", "limit_set", "formerly", "where", "note", "gauge",
 		"length_m", "building", "floor", "room", "name", "order", "critical_load", "whom_to_tell", "panel", "numbers",
 		"breaker_a", "poles", "voltage_v", "conductor", "standard", "supply", "location", "code", "zone", "address",
-		"#retired", "#with", "#replaces"} {
+		"fed_by", "#retired", "#with", "#replaces"} {
 		m[n] = n
 	}
 	return m

@@ -80,6 +80,7 @@ func (v *View) circuit(sv *siteView, id id16) (circuit, error) {
 
 func (v *View) circuitOf(sv *siteView, t *thing) (circuit, error) {
 	c := circuit{panel: t.text("panel"), numbers: plainText(t.value("numbers")), supply: t.text("supply")}
+	c.along = alongOf(t.value("order"))
 	panel := parseID(c.panel)
 	if panel == (id16{}) { // written out, not named by its id
 		return c, nil

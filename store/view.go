@@ -44,7 +44,10 @@ type siteView struct {
 }
 
 // circuit is what a list says of one.
-type circuit struct{ panel, numbers, supply string }
+type circuit struct {
+	panel, numbers, supply string
+	along                  map[id16]int // its devices from the breaker on, where somebody said the order
+}
 
 // open is the one place that holds a site against the scope: a site outside it is not found.
 func (v *View) open(site string) (*siteView, error) {

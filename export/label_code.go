@@ -3,10 +3,10 @@ package export
 import (
 	"fmt"
 	"math"
+	"math/bits"
 	"strconv"
-	"sync"
 
-	"github.com/skip2/go-qrcode"
+	"rsc.io/qr/coding"
 
 	"tripwell/store"
 )
@@ -31,84 +31,32 @@ func codeSize(modules int, box float64) (module, side float64, ok bool) {
 	return module, module * float64(modules+2*quietModules), dots >= moduleDotsMin
 }
 
-// symbol is an encoded address without its quiet zone. It is shared between those who draw it and never changed.
-type symbol struct {
-	modules int
-	rows    [][]bool // true is dark
-}
-
-// symbolKey names an encoding: the same address is encoded once.
-type symbolKey struct {
-	address string
-	level   qrcode.RecoveryLevel
-}
-
-// keptSymbols bounds the cache: about 1 KB each.
-const keptSymbols = 4096
-
-// symbolCache keeps what was encoded last. Encoding is nine tenths of the work of a sheet, and people print a sheet
-// again: for one label that came off badly, with another start, onto another size.
-type symbolCache struct {
-	mu sync.Mutex
-	of map[symbolKey]*symbol
-}
-
-var symbols = symbolCache{of: map[symbolKey]*symbol{}}
-
-func (c *symbolCache) get(key symbolKey) *symbol {
-	c.mu.Lock()
-	defer c.mu.Unlock()
-	return c.of[key]
-}
-
-func (c *symbolCache) put(key symbolKey, s *symbol) {
-	c.mu.Lock()
-	defer c.mu.Unlock()
-	if len(c.of) >= keptSymbols {
-		for old := range c.of { // any half: which ones decides only about time
-			if delete(c.of, old); len(c.of) <= keptSymbols/2 {
-				break
-			}
-		}
-	}
-	c.of[key] = s
-}
-
-// encode gives the symbol of an address.
-func encode(address string, level qrcode.RecoveryLevel) (*symbol, error) {
-	key := symbolKey{address, level}
-	if s := symbols.get(key); s != nil {
-		return s, nil
-	}
-	q, err := qrcode.New(address, level)
-	if err != nil {
-		return nil, &store.Error{Code: "invalid", Field: "url", Text: fmt.Sprintf("The address %s is too long for a code. Start the server with a shorter --url.", cut(address))}
-	}
-	q.DisableBorder = true
-	rows := q.Bitmap()
-	s := &symbol{len(rows), rows}
-	symbols.put(key, s)
-	return s, nil
-}
-
 // CodeBitmap encodes an address: rows of modules, true is dark, without the quiet zone of 4 modules that must surround it.
-// The rows are shared: do not change them.
 func CodeBitmap(address string) ([][]bool, error) {
-	s, err := encode(address, qrcode.Medium)
+	s, err := encode(address, coding.M)
 	if err != nil {
 		return nil, err
 	}
-	return s.rows, nil
+	rows := make([][]bool, len(s))
+	for y := range rows {
+		rows[y] = make([]bool, len(s))
+	}
+	s.runs(func(col, row, length int) {
+		for x := range length {
+			rows[row][col+x] = true
+		}
+	})
+	return rows, nil
 }
 
 // codeIn gives the symbol of an address and its module's side for a box, in mm. Where level M is too fine for the box,
 // level L is tried: a coarser code reads better than one with more redundancy that the printer smears.
-func codeIn(address string, box float64) (s *symbol, module float64, err error) {
-	for _, level := range []qrcode.RecoveryLevel{qrcode.Medium, qrcode.Low} {
+func codeIn(address string, box float64) (s symbol, module float64, err error) {
+	for _, level := range []coding.Level{coding.M, coding.L} {
 		if s, err = encode(address, level); err != nil {
 			return nil, 0, err
 		}
-		if module, _, ok := codeSize(s.modules, box); ok {
+		if module, _, ok := codeSize(len(s), box); ok {
 			return s, module, nil
 		}
 	}
@@ -138,21 +86,17 @@ func CodePath(address string, x, y, box, pageH float64) (path []byte, side float
 		}
 		path = append(path, "re\n"...)
 	})
-	return append(path, "f Q"...), module * float64(s.modules+2*quietModules), nil
+	return append(path, "f Q"...), module * float64(len(s)+2*quietModules), nil
 }
 
 // runs gives every run of dark modules of a row.
-func (s *symbol) runs(draw func(col, row, length int)) {
-	for r, row := range s.rows {
-		for c := 0; c < len(row); c++ {
-			if !row[c] {
-				continue
-			}
-			from := c
-			for c < len(row) && row[c] {
-				c++
-			}
-			draw(from, r, c-from)
+func (s symbol) runs(draw func(col, row, length int)) {
+	for y, row := range s {
+		for col := 0; row>>col != 0; {
+			col += bits.TrailingZeros64(row >> col)
+			length := bits.TrailingZeros64(^(row >> col))
+			draw(col, y, length)
+			col += length
 		}
 	}
 }

@@ -56,7 +56,7 @@ func planLabels(size SheetSize, address string, lines []string, demo string) (la
 			return p, err
 		}
 	}
-	wide := float64(s.modules + 2*quietModules)
+	wide := float64(len(s) + 2*quietModules)
 	dots, least := math.Round(module/dotMM), float64(moduleDotsMin)
 	side := func() float64 { return dots * dotMM * wide }
 	for dots > least && p.w-1.5*labelInset-side() < tagRoomLeast {

@@ -23,7 +23,7 @@ import (
 type drawnLabel struct {
 	layout
 	plan   labelPlan
-	symbol *symbol
+	symbol symbol
 	module float64 // mm
 }
 

@@ -2,12 +2,14 @@ package export
 
 import (
 	"bytes"
+	"context"
 	"encoding/csv"
 	"encoding/json"
 	"errors"
 	"os"
 	"os/exec"
 	"path/filepath"
+	"slices"
 	"strconv"
 	"strings"
 	"testing"
@@ -280,7 +282,8 @@ func sameMoment(a, b string) bool {
 	return errX == nil && errY == nil && x-y < 1e-6 && y-x < 1e-6
 }
 
-// TestWorkbook_ReadAlikeByLibreOffice: LibreOffice opens the register and shows what was written, formulas as text.
+// TestWorkbook_ReadAlikeByLibreOffice: LibreOffice reads every cell of every sheet as the same text or figure, and none as
+// a formula. It writes what it read into a workbook of its own, in which the cells are looked up.
 func TestWorkbook_ReadAlikeByLibreOffice(t *testing.T) {
 	if testing.Short() {
 		t.Skip("an office suite is started")
@@ -288,39 +291,63 @@ func TestWorkbook_ReadAlikeByLibreOffice(t *testing.T) {
 	needTool(t, "soffice", "libreoffice-calc-nogui")
 	file, f := workbookFile(t)
 	dir := filepath.Dir(file)
-	// 44 = comma, 34 = quotes, 76 = UTF-8, from line 1, all as shown; the last figure is the sheet: 2 = Register.
-	cmd := exec.Command("soffice", "-env:UserInstallation=file://"+dir+"/profile", "--headless", "--convert-to", `csv:Text - txt - csv (StarCalc):44,34,76,1,,0,false,true,false,false,false,2`, "--outdir", dir, file)
+	again := filepath.Join(dir, "again")
+	ctx, cancel := context.WithTimeout(t.Context(), 3*time.Minute)
+	defer cancel()
+	cmd := exec.CommandContext(ctx, "soffice", "-env:UserInstallation=file://"+dir+"/profile", "--headless", "--convert-to", "xlsx:Calc MS Excel 2007 XML", "--outdir", again, file)
 	if out, err := cmd.CombinedOutput(); err != nil {
 		t.Fatalf("soffice: %v\n%s", err, out)
 	}
-	names, err := filepath.Glob(filepath.Join(dir, "*.csv"))
-	if err != nil || len(names) != 1 {
-		t.Fatalf("soffice left %v, %v", names, err)
-	}
-	raw, err := os.ReadFile(names[0])
+	office, err := excelize.OpenFile(filepath.Join(again, filepath.Base(file)))
 	if err != nil {
 		t.Fatal(err)
 	}
-	rows, err := csv.NewReader(bytes.NewReader(bytes.TrimPrefix(raw, []byte("\uFEFF")))).ReadAll()
-	if err != nil {
-		t.Fatal(err)
+	defer office.Close()
+	if got, want := office.GetSheetList(), f.GetSheetList(); !slices.Equal(got, want) {
+		t.Fatalf("LibreOffice finds the sheets %q, want %q", got, want)
 	}
-	want, err := f.GetRows("Register")
-	if err != nil {
-		t.Fatal(err)
-	}
-	if len(rows) != len(want) {
-		t.Fatalf("LibreOffice reads %d rows, want %d", len(rows), len(want))
-	}
-	for i, row := range rows {
-		for j, cell := range row {
-			shown := ""
-			if j < len(want[i]) {
-				shown = want[i][j]
+	cells := 0
+	for _, name := range f.GetSheetList() {
+		want, got := rawCells(t, f, name), rawCells(t, office, name)
+		for at := range got {
+			if _, known := want[at]; !known {
+				t.Errorf("%s, %s: LibreOffice finds %q in an empty cell", name, at, got[at])
 			}
-			if !sameCell(strings.TrimLeft(cell, "●▲◆○◌ "), strings.TrimLeft(shown, "●▲◆○◌ ")) {
-				t.Errorf("row %d, %s: LibreOffice shows %q, excelize %q", i+1, rows[0][j], cell, shown)
+		}
+		for at, shown := range want {
+			cells++
+			if got[at] != shown && !sameMoment(got[at], shown) {
+				t.Errorf("%s, %s: LibreOffice reads %q, excelize %q", name, at, got[at], shown)
+			}
+			if formula, err := office.GetCellFormula(name, at); err != nil || formula != "" {
+				t.Errorf("%s, %s: LibreOffice reads the formula %q (%v)", name, at, formula, err)
 			}
 		}
 	}
+	if cells < 300 {
+		t.Errorf("%d cells compared only", cells)
+	}
+}
+
+// rawCells gives the values of a sheet's cells that are not empty, by their names.
+func rawCells(t *testing.T, f *excelize.File, sheet string) map[string]string {
+	t.Helper()
+	rows, err := f.GetRows(sheet, excelize.Options{RawCellValue: true})
+	if err != nil {
+		t.Fatal(err)
+	}
+	cells := map[string]string{}
+	for i, row := range rows {
+		for j, value := range row {
+			if value == "" {
+				continue
+			}
+			name, err := excelize.CoordinatesToCellName(j+1, i+1)
+			if err != nil {
+				t.Fatal(err)
+			}
+			cells[name] = value
+		}
+	}
+	return cells
 }

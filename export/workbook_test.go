@@ -2,15 +2,11 @@ package export
 
 import (
 	"bytes"
-	"encoding/csv"
 	"encoding/json"
 	"errors"
 	"fmt"
 	"io"
 	"iter"
-	"os"
-	"os/exec"
-	"path/filepath"
 	"slices"
 	"strings"
 	"testing"
@@ -391,40 +387,5 @@ func TestWorkbook_FullSheetGoesOn(t *testing.T) {
 	rows, err := f.GetRows("Flags 2")
 	if err != nil || len(rows) != 2 {
 		t.Errorf("got %d rows on the further sheet, %v; want the heading and the one row that did not fit", len(rows), err)
-	}
-}
-
-func TestWorkbook_ReadsInAnotherProgram(t *testing.T) {
-	office, err := exec.LookPath("soffice")
-	if err != nil {
-		t.Skip("soffice is missing")
-	}
-	if testing.Short() {
-		t.Skip("starts an office program")
-	}
-	dir := t.TempDir()
-	var out bytes.Buffer
-	if err := Workbook(&out, handSource(t, false)); err != nil {
-		t.Fatal(err)
-	}
-	file := filepath.Join(dir, "book.xlsx")
-	if err := os.WriteFile(file, out.Bytes(), 0o600); err != nil {
-		t.Fatal(err)
-	}
-	cmd := exec.Command(office, "--headless", "-env:UserInstallation=file://"+dir+"/profile", "--convert-to", "csv:Text - txt - csv (StarCalc):44,34,76,1,,0,false,true,false,false,false,3", "--outdir", dir, file)
-	if text, err := cmd.CombinedOutput(); err != nil {
-		t.Fatalf("soffice: %v\n%s", err, text)
-	}
-	names, _ := filepath.Glob(filepath.Join(dir, "*.csv"))
-	if len(names) != 1 {
-		t.Fatalf("got %v, want one file", names)
-	}
-	raw, err := os.ReadFile(names[0])
-	if err != nil {
-		t.Fatal(err)
-	}
-	rows, err := csv.NewReader(bytes.NewReader(raw)).ReadAll()
-	if err != nil || len(rows) != 4 || rows[1][0] != "e1" {
-		t.Errorf("got %d rows, %v; want the heading and three entries", len(rows), err)
 	}
 }

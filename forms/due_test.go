@@ -148,7 +148,7 @@ func TestSchedule_Dates(t *testing.T) {
 		if c.last != "" {
 			last = day(t, c.last)
 		}
-		got := s.Dates(day(t, start), func(string) Day { return last })
+		got := s.Dates(Case{Start: day(t, start), Ended: NoDay}, func(string) Day { return last })
 		if len(got) != 1 || got[0].Due.String() != c.due || got[0].Opens.String() != c.opens {
 			t.Errorf("%s: got %+v, want due %s, opens %s", c.name, got, c.due, c.opens)
 		}
@@ -161,7 +161,7 @@ func TestSchedule_SitePlansGoBeforeTheOrganisations(t *testing.T) {
 	yearly := plan(NotToExceed, "P1Y")
 	yearly.ID, yearly.Task = "yearly", "instrument"
 	s := ScheduleOf("gfci-receptacle", []*Plan{org, yearly}, []*Plan{site})
-	got := s.Dates(day(t, "2026-01-01"), func(string) Day { return NoDay })
+	got := s.Dates(Case{Start: day(t, "2026-01-01"), Ended: NoDay}, func(string) Day { return NoDay })
 	if len(got) != 2 || got[0].Plan != "site" || got[1].Plan != "yearly" {
 		t.Errorf("got %+v, want the site's button plan and the organisation's yearly one", got)
 	}
@@ -179,7 +179,7 @@ func TestSchedule_ANewRevisionDecidesFromItsDayInForce(t *testing.T) {
 	second.Revision, second.InForce = 2, day(t, "2026-06-01")
 	dates := func(last string) string {
 		s := ScheduleOf("gfci-receptacle", []*Plan{second, first}, nil)
-		return s.Dates(day(t, "2020-01-01"), func(string) Day { return day(t, last) })[0].Due.String()
+		return s.Dates(Case{Start: day(t, "2020-01-01"), Ended: NoDay}, func(string) Day { return day(t, last) })[0].Due.String()
 	}
 	for last, want := range map[string]string{
 		"2025-03-01": "2026-03-01", // missed under the first revision: stays that date
@@ -244,30 +244,36 @@ func TestDueDate_Properties(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		rolling := rule{Plan: plan(NotToExceed, every.String()), every: every}
-		calendar := rule{Plan: plan(OnceEachPeriod, every.String()), every: every}
+		rolling, err := ruleOf(plan(NotToExceed, every.String()))
+		if err != nil {
+			t.Fatal(err)
+		}
+		calendar, err := ruleOf(plan(OnceEachPeriod, every.String()))
+		if err != nil {
+			t.Fatal(err)
+		}
 		rolling.InForce, calendar.InForce = -40000, -40000
 
-		r := rolling.next(last, last)
+		r := rolling.next(&Case{Start: last, Ended: NoDay}, last)
 		if r.Due > last+Day(31*every.Months+every.Days) || r.Due <= last {
 			t.Fatalf("rolling %s after %s: due %s", every, last, r.Due)
 		}
 		if k := rapid.IntRange(1, 40).Draw(t, "k"); last.AddTimes(every, k) < last.AddTimes(every, k-1)+1 {
 			t.Fatalf("%d times %s after %s does not move on", k, every, last)
 		}
-		c := calendar.next(last, last)
+		c := calendar.next(&Case{Start: last, Ended: NoDay}, last)
 		first, end := every.period(last)
 		if last < first || last > end || c.Opens != end+1 || c.Due < c.Opens {
 			t.Fatalf("calendar %s after %s: period %s to %s, next %s to %s", every, last, first, end, c.Opens, c.Due)
 		}
 		// A test on any day of the period that closes moves the date by exactly one period.
 		within := c.Opens + Day(rapid.IntRange(0, int(c.Due-c.Opens)).Draw(t, "within"))
-		if n := calendar.next(last, within); n.Opens != c.Due+1 {
+		if n := calendar.next(&Case{Start: last, Ended: NoDay}, within); n.Opens != c.Due+1 {
 			t.Fatalf("calendar %s tested %s: next period opens %s, want %s", every, within, n.Opens, c.Due+1)
 		}
 		// A later test never gives an earlier date.
 		later := last + Day(rapid.IntRange(0, 800).Draw(t, "later"))
-		if n := rolling.next(last, later); n.Due < r.Due {
+		if n := rolling.next(&Case{Start: last, Ended: NoDay}, later); n.Due < r.Due {
 			t.Fatalf("rolling %s: test on %s due %s, test on %s due %s", every, last, r.Due, later, n.Due)
 		}
 	})

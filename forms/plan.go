@@ -3,6 +3,7 @@ package forms
 import (
 	"encoding/json"
 	"fmt"
+	"maps"
 	"slices"
 	"time"
 )
@@ -29,9 +30,30 @@ type Plan struct {
 	Duty     string   `json:"duty"`            // not-to-exceed | once-each-period
 	Count    string   `json:"count,omitempty"` // rolling | calendar; follows from the duty when empty
 	Grace    string   `json:"grace,omitempty"` // ISO 8601 duration; once-each-period only
+	Lead     string   `json:"lead,omitempty"`  // how long before its last day a test counts as due; ISO 8601 duration
 	InForce  Day      `json:"in_force"`
 	Source   string   `json:"source"`
 	Status   string   `json:"status"`
+
+	Start      *Start            `json:"start,omitempty"`
+	FirstRound *FirstRound       `json:"first_round,omitempty"`
+	Occasions  map[string]string `json:"occasions,omitzero"` // cause → ISO 8601 duration within which its test is due
+	Marks      *Marks            `json:"marks,omitempty"`
+}
+
+// Start says when a device that comes under test gets its first date: durations from that day, P0D = before use; "" = the
+// plan's own interval.
+type Start struct {
+	New      string `json:"new,omitempty"`
+	Replaced string `json:"replaced,omitempty"` // it took another device's place
+	Imported string `json:"imported,omitempty"` // it was taken in from a list
+}
+
+// FirstRound is the time a first round may take: day one must not show thousands overdue. A first date before From +
+// Within, and a date that had passed before From, are due on that day.
+type FirstRound struct {
+	From   Day    `json:"from"`
+	Within string `json:"within"`
 }
 
 // ParsePlan reads one plan and checks it. Unknown members are left for newer programs.
@@ -89,15 +111,71 @@ func (p *Plan) Check() error {
 	if p.Count != "" && p.Count != Rolling && p.Count != Calendar {
 		return fail("count is %q; it must be %s or %s", p.Count, Rolling, Calendar)
 	}
+	if p.Marks != nil {
+		if err := p.Marks.check(); err != nil {
+			return fail("%w", err)
+		}
+	}
+	return p.checkStart(fail)
+}
+
+// checkStart holds lead, start, first round and occasions against what an interval may be.
+func (p *Plan) checkStart(fail func(string, ...any) error) error {
+	every, _ := ParseInterval(p.Every)
+	if _, err := optional(p.Lead); err != nil {
+		return fail("lead: %w", err)
+	}
+	for _, one := range []struct{ name, text string }{{New, p.start().New}, {Replaced, p.start().Replaced}, {Imported, p.start().Imported}} {
+		i, err := optional(one.text)
+		if err != nil {
+			return fail("start: %s: %w", one.name, err)
+		}
+		if p.Duty == NotToExceed && Day(0).Add(i) > Day(0).Add(every) {
+			return fail("start: %s: %s is longer than the interval %s, which is not to be exceeded", one.name, one.text, p.Every)
+		}
+	}
+	for _, cause := range slices.Sorted(maps.Keys(p.Occasions)) {
+		if !slices.Contains(Causes(), cause) {
+			return fail("occasions: %q is no cause; it is one of %v", cause, Causes())
+		}
+		if _, err := ParseInterval(p.Occasions[cause]); err != nil {
+			return fail("occasions: %s: %w", cause, err)
+		}
+	}
+	if f := p.FirstRound; f != nil {
+		if _, err := ParseInterval(f.Within); err != nil {
+			return fail("first_round: %w", err)
+		}
+		if f.From == NoDay || f.From == 0 {
+			return fail("first_round: from is missing: give the day the first round begins")
+		}
+	}
 	return nil
 }
 
-func (p *Plan) grace() (Interval, error) {
-	if p.Grace == "" {
+// Ways a device comes under test.
+const (
+	New      = "new"
+	Replaced = "replaced" // it took the place of another
+	Imported = "imported" // it was taken in from a list
+)
+
+func (p *Plan) start() Start {
+	if p.Start == nil {
+		return Start{}
+	}
+	return *p.Start
+}
+
+// optional reads a duration that may be left out.
+func optional(s string) (Interval, error) {
+	if s == "" {
 		return Interval{}, nil
 	}
-	return ParseInterval(p.Grace)
+	return ParseInterval(s)
 }
+
+func (p *Plan) grace() (Interval, error) { return optional(p.Grace) }
 
 // Covers reports whether the plan asks its task of a device kind. A kind that does not have the task is never covered,
 // whatever the plan lists: a receptacle without a TEST button has no button date.

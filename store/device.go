@@ -161,7 +161,7 @@ func (v *View) row(sv *siteView, t *thing, w *work, on forms.Day) (DeviceRow, er
 		row.Last[s.task] = LastTest{s.last.id.String(), s.last.day, resultCodes[s.last.result]}
 	}
 	for _, d := range w.dates {
-		row.Due = append(row.Due, Due{Task: d.Task, Due: d.Due, Last: d.Last, State: d.State(on), Plan: d.Plan})
+		row.Due = append(row.Due, stateOn(d, on))
 	}
 	return row, nil
 }

@@ -10,13 +10,21 @@ import (
 	"tripwell/forms"
 )
 
-// Due is one date of one device. State is decided for the day asked: upcoming | due | in-grace | overdue | never-tested.
+// Due is one date of one device. State is decided for the day asked: upcoming | due | in-grace | overdue | never-tested | paused.
 type Due struct {
-	Task  string
-	Due   forms.Day
-	Last  forms.Day // NoDay: never
-	State string
-	Plan  string
+	Task   string
+	Due    forms.Day
+	Last   forms.Day // NoDay: never
+	State  string
+	Plan   string
+	Cause  string      // the occasion that asks for it; "" = its plan's interval
+	Paused forms.Pause // where the state is paused: the pause the day asked for lies in
+}
+
+func stateOn(d forms.DueDate, on forms.Day) Due {
+	out := Due{Task: d.Task, Due: d.Due, Last: d.Last, State: d.State(on), Plan: d.Plan, Cause: d.Cause}
+	out.Paused, _ = d.Pause(on)
+	return out
 }
 
 // DueRow is a due date with the device it belongs to, for lists.

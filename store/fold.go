@@ -40,7 +40,8 @@ type fold struct {
 	entries   map[id16]uint64 // entries of this group, which the book's index does not know yet
 	sums      map[string]int64
 	tallies   map[string]*tally
-	flaws     map[workID]bool // devices whose defects are to be computed
+	flaws     map[workID]bool                // devices whose defects are to be computed
+	keeps     map[string]map[int32]monthKept // by key of m_keep
 	rules     *rules
 	grants    *grants
 	ready     *ready // of the record being folded, where its pusher worked something out
@@ -77,9 +78,10 @@ func newFold(tx *bbolt.Tx) *fold {
 	f := &fold{
 		tx: tx, logs: map[string]*modelLog{}, ords: map[uint32]*modelLog{}, rows: map[string]*overlay{},
 		things: map[thingID]uint32{}, registers: map[registerID]*register{}, works: map[workID]*work{},
-		entries: map[id16]uint64{}, sums: map[string]int64{}, tallies: map[string]*tally{}, flaws: map[workID]bool{},
+		entries: map[id16]uint64{}, sums: map[string]int64{}, tallies: map[string]*tally{}, flaws: map[workID]bool{}, keeps: map[string]map[int32]monthKept{},
 	}
 	f.rules, f.grants = newRules(f.on(bktRule).list), newGrants(f.on(bktGranted).list)
+	f.rules.said = func(bucket, prefix []byte) []row { return f.on(bucket).list(prefix) }
 	return f
 }
 
@@ -91,7 +93,7 @@ func (f *fold) record(r *record.Record, st record.Stamp, seq uint64) error {
 	}
 	switch r.Kind {
 	case "device.retired", "device.replaced":
-		return f.retired(r)
+		return f.retired(r, st)
 	case "instrument.calibrated":
 		return f.calibrated(r)
 	case "tag.bound", "tag.freed":
@@ -106,6 +108,10 @@ func (f *fold) record(r *record.Record, st record.Stamp, seq uint64) error {
 		return f.ruleSet(r)
 	case "defect.opened", "defect.noted", "defect.made_safe", "defect.assigned", "defect.repaired", "defect.closed", "defect.reopened":
 		return f.defectSaid(r)
+	case "occasion.noted":
+		return f.occasionNoted(r)
+	case "pause.set":
+		return f.pauseSet(r)
 	}
 	return nil
 }
@@ -206,12 +212,13 @@ func (f *fold) work(site, n uint32) (*work, error) {
 	if w := f.works[key]; w != nil {
 		return w, nil
 	}
-	w := &work{was: workBefore{fail: forms.NoDay}}
+	w := &work{start: forms.NoDay, ended: forms.NoDay, came: forms.NoDay, was: workBefore{fail: forms.NoDay}}
 	if v := f.tx.Bucket(bktWork).Get(workKey(site, n)); v != nil {
 		var err error
 		if w, err = unpackWork(v, true); err != nil {
 			return nil, fmt.Errorf("work row %d/%d: %w", site, n, err)
 		}
+		w.was = w.before()
 	}
 	f.works[key] = w
 	return w, nil

@@ -38,13 +38,17 @@ func (f *fold) entryMade(r *record.Record, st record.Stamp) error {
 		f.on(bktHistory).put(historyKey(l.ord, n, w.past[0].seq), pk.b)
 		w.past, w.older = slices.Clone(w.past[spillPast:]), w.older+spillPast
 	}
+	inOrder := w.inOrder(p)
 	w.past = append(w.past, p)
+	before := w.metDays(p)
 	w.count(p, mark{day: p.day, clock: r.Clock, id: id}, figures(o.entry.Readings))
 	l.entries++
 	l.dirty, w.dirty = true, true
 	f.tally(l.ord, p, 1)
-	if w.live {
-		w.reckon(f.rules.schedule(l.ord, f.orgOrd(), w.kind))
+	if inOrder {
+		f.reckonOn(l, w, p, before)
+	} else if err := f.reckon(l, n, w); err != nil {
+		return err
 	}
 	return f.flawsTouched(l, n, w, p.result == codeFail)
 }
@@ -146,8 +150,7 @@ func (f *fold) rework(site, n uint32, t todoItem) (cost int, err error) {
 	}
 	if t.what == todoDates {
 		w.dirty = true
-		w.reckon(f.rules.schedule(site, f.orgOrd(), w.kind))
-		return 1, nil
+		return 1, f.reckon(l, n, w)
 	}
 	cost = 1
 	err = f.change(l, n, w, false, func(p past) (past, error) {
@@ -190,7 +193,7 @@ func (f *fold) change(l *modelLog, n uint32, w *work, force bool, fn func(past) 
 				return changed, err
 			}
 			failed = failed || p.result == codeFail || old.result == codeFail
-			if p.day == old.day && p.task == old.task && p.result == old.result && slices.Equal(p.met, old.met) {
+			if p.same(old) {
 				continue
 			}
 			f.tally(l.ord, old, -1)
@@ -231,8 +234,7 @@ func (f *fold) change(l *modelLog, n uint32, w *work, force bool, fn func(past) 
 	if err := f.recount(l, w, all); err != nil {
 		return err
 	}
-	w.reckon(f.rules.schedule(l.ord, f.orgOrd(), w.kind))
-	return nil
+	return f.reckon(l, n, w)
 }
 
 // chunk is one row of m_hist.

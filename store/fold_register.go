@@ -31,6 +31,11 @@ func (f *fold) setFields(r *record.Record, st record.Stamp, typ byte) error {
 	}
 	switch {
 	case typ == ofDevice:
+		if strings.HasSuffix(r.Kind, ".registered") {
+			if err := f.deviceCame(l, key.n, st); err != nil {
+				return err
+			}
+		}
 		return f.deviceChanged(l, key.n, reg)
 	case typ == ofSite && zone != reg.text("zone"):
 		l.zone = nil
@@ -53,7 +58,7 @@ func quoted(s string) json.RawMessage {
 }
 
 // retired takes a device out of service, and where another took its place, tells that one too.
-func (f *fold) retired(r *record.Record) error {
+func (f *fold) retired(r *record.Record, st record.Stamp) error {
 	var body struct{ Reason, On, With string }
 	if err := json.Unmarshal(r.Body, &body); err != nil {
 		return badBody("reason", "The reason and the day of %s are not readable: %v.", r.Kind, err)
@@ -63,7 +68,7 @@ func (f *fold) retired(r *record.Record) error {
 		return err
 	}
 	old := parseID(r.Subject)
-	why, err := json.Marshal(map[string]string{"reason": body.Reason, "on": body.On})
+	why, err := json.Marshal(retirement{Reason: body.Reason, On: body.On, MS: happened(r, st).UnixMilli()})
 	if err != nil {
 		return err
 	}
@@ -133,7 +138,11 @@ func (f *fold) deviceChanged(l *modelLog, n uint32, reg *register) error {
 		}
 	}
 	w.follows = reg.value("#replaces") != nil
-	w.live = reg.born != 0 && w.kind != "" && reg.value("#retired") == nil
+	w.live, w.ended = reg.born != 0 && w.kind != "" && reg.value("#retired") == nil, forms.NoDay
+	if why := reg.value("#retired"); why != nil {
+		w.ended = retiredOn(why, zone)
+	}
+	w.way = wayOf(reg)
 	if w.live != live {
 		if l.dirty = true; w.live {
 			l.live++
@@ -142,8 +151,54 @@ func (f *fold) deviceChanged(l *modelLog, n uint32, reg *register) error {
 		}
 	}
 	w.dirty = true
-	w.reckon(f.rules.schedule(l.ord, f.orgOrd(), w.kind))
+	return f.reckon(l, n, w)
+}
+
+// deviceCame notes the earliest day this store received a registration of a device.
+func (f *fold) deviceCame(l *modelLog, n uint32, st record.Stamp) error {
+	w, err := f.work(l.ord, n)
+	if err != nil {
+		return err
+	}
+	zone, err := f.zone(l)
+	if err != nil {
+		return err
+	}
+	if day := forms.DayOf(st.Received.In(zone)); w.came == forms.NoDay || day < w.came {
+		w.came = day
+	}
 	return nil
+}
+
+// retirement is what #retired holds.
+type retirement struct {
+	Reason string `json:"reason"`
+	On     string `json:"on"`
+	MS     int64  `json:"ms"` // when it was said, for those that state no day
+}
+
+// retiredOn gives the day a device was taken out of use.
+func retiredOn(why json.RawMessage, zone *time.Location) forms.Day {
+	var r retirement
+	if json.Unmarshal(why, &r) != nil {
+		return forms.NoDay
+	}
+	if d, err := forms.ParseDay(r.On); err == nil {
+		return d
+	}
+	return forms.DayOf(time.UnixMilli(r.MS).In(zone))
+}
+
+// wayOf says how a device came under test: in another's place, from a list (its id is made from names, RFC 9562 version
+// 8), or as it was found.
+func wayOf(reg *register) string {
+	switch {
+	case reg.value("#replaces") != nil:
+		return forms.Replaced
+	case reg.id[6]>>4 == 8:
+		return forms.Imported
+	}
+	return forms.New
 }
 
 // zone gives a site's time zone, UTC where it is unknown.

@@ -20,7 +20,10 @@ import (
 //	m_granted person 16 | time 8 | clock 8 | record 16 → JSON of accessFact: what that person may do from then on
 //	m_change person 16 | first received 8 | seq 8 → site 4 | entry 16: something that person said of an entry
 //	m_due    site 4 | day 4 | n 4 | task → nothing: this device has this date
-//	m_sum    site 4 | day 4 | grace 2 | task → how many such dates
+//	m_sum    site 4 | day 4 | grace 2 | period 2 | task | pauses → how many such dates
+//	m_keep   site 4 | task              → by month, what became of the dates that are done with
+//	m_occ    site 4 | record 16         → an occasion: cause, day, tasks, how many devices (0 = the whole site)
+//	m_pause  site 4 | pause 16          → the record that stands, days, reason, devices (none = the whole site)
 //	m_fail   site 4 | day 4 | n 4       → nothing: this device failed on that day and has not passed since
 //	m_fact   site 4 | n 4               → seqs of what was said of that device's defects, and of its end
 //	m_defect site 4 | n 4               → JSON of its defects, where there are any
@@ -47,6 +50,9 @@ var (
 	bktChange   = []byte("m_change")
 	bktDue      = []byte("m_due")
 	bktSum      = []byte("m_sum")
+	bktKeep     = []byte("m_keep")
+	bktOccasion = []byte("m_occ")
+	bktPause    = []byte("m_pause")
 	bktFail     = []byte("m_fail")
 	bktFact     = []byte("m_fact")
 	bktDefect   = []byte("m_defect")
@@ -63,7 +69,7 @@ var (
 	bktTodo     = []byte("m_todo")
 )
 
-var modelBuckets = [][]byte{bktSiteLog, bktSite, bktThing, bktRegister, bktWork, bktHistory, bktSaid, bktGranted, bktChange, bktDue, bktSum,
+var modelBuckets = [][]byte{bktSiteLog, bktSite, bktThing, bktRegister, bktWork, bktHistory, bktSaid, bktGranted, bktChange, bktDue, bktSum, bktKeep, bktOccasion, bktPause,
 	bktFail, bktFact, bktDefect, bktFlaw, bktOpen, bktTally, bktBind, bktTag, bktPlace, bktCircuit, bktFeed, bktCode, bktRule, bktTodo}
 
 // Types of things and of rules.
@@ -111,8 +117,13 @@ func dueKey(site uint32, day forms.Day, n uint32, task string) []byte {
 	return append(put32(putDay(put32(make([]byte, 0, 12+len(task)), site), day), n), task...)
 }
 
-func sumKey(site uint32, day forms.Day, grace uint16, task string) []byte {
-	return append(binary.BigEndian.AppendUint16(putDay(put32(make([]byte, 0, 10+len(task)), site), day), grace), task...)
+func keepKey(site uint32, task string) []byte {
+	return append(put32(make([]byte, 0, 4+len(task)), site), task...)
+}
+
+// saidOfSite is the key of an occasion or a pause.
+func saidOfSite(site uint32, id id16) []byte {
+	return append(put32(make([]byte, 0, 20), site), id[:]...)
 }
 
 func failKey(site uint32, day forms.Day, n uint32) []byte {

@@ -142,6 +142,8 @@ type outcome struct {
 	task      string
 	entry     forms.Entry
 	judged    judged
+	came      forms.Day   // received by this store
+	said      bool        // anything was said of it since
 	withdrawn *saidRecord // the first of several by (clock, id)
 	sealed    bool
 }
@@ -149,7 +151,7 @@ type outcome struct {
 // outcome weighs an entry: of those in force the correction with the largest (clock, id) gives the readings, the last that
 // states what was given gives that; a withdrawal ends it; a sealed entry never counts as passed. The order of arrival has no say.
 func (ru *rules) outcome(site, org uint32, zone *time.Location, r *record.Record, st record.Stamp, body *entryBody, said []saidRecord) outcome {
-	o := outcome{day: testDay(r, st, body, zone), task: entryTask(&body.Entry), entry: body.Entry}
+	o := outcome{day: testDay(r, st, body, zone), task: entryTask(&body.Entry), entry: body.Entry, came: forms.DayOf(st.Received.In(zone)), said: len(said) > 0}
 	o.entry = corrected(body.Entry, said)
 	for i := range said {
 		switch s := &said[i]; s.Kind {
@@ -199,8 +201,9 @@ func corrected(e forms.Entry, said []saidRecord) forms.Entry {
 
 // past is the outcome as the history keeps it.
 func (o *outcome) past(seq uint64) past {
-	p := past{seq: seq, day: o.day, task: o.task}
+	p := past{seq: seq, day: o.day, task: o.task, came: o.came, said: o.said}
 	if o.withdrawn == nil {
+		p.locked = o.judged.Result == forms.NotTested && forms.Locked(o.entry.Readings)
 		p.result = resultCode(o.judged.Result)
 		p.met = forms.Meets(o.task, o.judged.Result, o.entry.Readings)
 		if one := metOne[o.task]; len(p.met) == 1 && one != nil {

@@ -39,6 +39,10 @@ func told(t testing.TB, s *Store, on forms.Day) string {
 			if err != nil {
 				return err
 			}
+			kept, err := v.Compliance(ComplianceAsk{Site: site.ID, From: forms.MonthStart(forms.MonthOf(on) - 11), To: on, Known: forms.NoDay})
+			if err != nil {
+				return err
+			}
 			full, err := v.Site(site.Code)
 			if err != nil {
 				return err
@@ -73,7 +77,7 @@ func told(t testing.TB, s *Store, on forms.Day) string {
 			}
 			out = append(out, open, past)
 			slices.SortFunc(sums.LastFailed, func(a, b DeviceRow) int { return cmp.Compare(a.ID, b.ID) })
-			out = append(out, full, sums, tallies, places)
+			out = append(out, full, sums, tallies, places, kept)
 			for row, err := range v.Devices(site.ID) {
 				if err != nil {
 					return err
@@ -172,7 +176,7 @@ func year(r *rig, t *rapid.T) (site string, lines [][]byte) {
 	panel, circ := id(), id()
 	put("panel.set", panel, set("name", "LP-2"))
 	put("circuit.set", circ, set("panel", panel, "numbers", []string{"14", "16"}, "supply", "grounded"))
-	var places, devices, entries []string
+	var places, devices, entries, pauses []string
 	for i := range 3 {
 		p := id()
 		places = append(places, p)
@@ -197,13 +201,14 @@ func year(r *rig, t *rapid.T) (site string, lines [][]byte) {
 			m["trip_current_ma"] = map[string]any{"value": 3 + draw(5, "ma"), "unit": "mA"}
 		}
 		if draw(5, "untested") == 0 {
-			return map[string]any{"found": "no-power", "button_trips": map[string]any{"missing": "circuit-dead"}}
+			why := []string{"circuit-dead", "no-access"}[draw(2, "why")]
+			return map[string]any{"found": "no-power", "button_trips": map[string]any{"missing": why}}
 		}
 		return m
 	}
 	for range 40 {
 		d := devices[draw(4, "device")]
-		switch draw(14, "what") {
+		switch draw(18, "what") {
 		case 0:
 			put("device.set", d, map[string]any{"set": map[string]any{"make": fmt.Sprint("make ", draw(9, "make"))}, "seen": "0000000000000001"})
 		case 1:
@@ -236,8 +241,9 @@ func year(r *rig, t *rapid.T) (site string, lines [][]byte) {
 		case 8:
 			every := []string{"P1M", "P3M", "P6M"}[draw(3, "every")]
 			put("plan.set", PlanSubject("own"), map[string]any{"plan": forms.Plan{ID: "own", Revision: 1 + draw(2, "revision"), Task: "button",
-				Kinds: []string{"gfci-receptacle", "rcd"}, Every: every, Duty: forms.OnceEachPeriod, InForce: forms.Date(2026, time.January, 1)}})
-		case 12, 13:
+				Kinds: []string{"gfci-receptacle", "rcd"}, Every: every, Duty: forms.OnceEachPeriod, Grace: []string{"", "P5D"}[draw(2, "grace")], Lead: []string{"", "P10D"}[draw(2, "lead")],
+				InForce: forms.Date(2026, time.January, 1), Start: &forms.Start{Replaced: "P0D"}}})
+		case 16, 17:
 			subject := id()
 			if draw(3, "of one") == 0 && len(entries) > 0 { // of the defect a test may have begun, whether it did or not
 				subject = record.NamedID("defect", d, "button_trips", entries[draw(len(entries), "entry")])
@@ -259,6 +265,21 @@ func year(r *rig, t *rapid.T) (site string, lines [][]byte) {
 		case 9:
 			put("entry.imported", d, map[string]any{"form": tasks[draw(4, "form")], "day": fmt.Sprintf("2026-0%d-15", 1+draw(9, "month")), "result": forms.Results()[draw(6, "result")]})
 			entries = append(entries, idOfLine(t, lines))
+		case 10:
+			body := map[string]any{"cause": forms.Causes()[draw(5, "cause")], "on": fmt.Sprintf("2026-1%d-%02d", draw(2, "occasion month"), 1+draw(28, "occasion day"))}
+			if draw(3, "whole site") > 0 {
+				body["devices"] = []string{d}
+			}
+			put("occasion.noted", id(), body)
+		case 11:
+			body := map[string]any{"from": fmt.Sprintf("2026-1%d-%02d", draw(3, "pause month"), 1+draw(28, "pause day")), "until": fmt.Sprintf("2026-12-%02d", 1+draw(31, "pause end")), "reason": "closed"}
+			if draw(3, "whole site paused") > 0 {
+				body["devices"] = []string{d}
+			}
+			if len(pauses) == 0 || draw(2, "new pause") == 0 {
+				pauses = append(pauses, id())
+			}
+			put("pause.set", pauses[draw(len(pauses), "pause")], body)
 		default:
 			put("entry.made", d, map[string]any{"form": tasks[draw(4, "form")], "given": map[string]any{"kind": "gfci-receptacle", "rated_residual_ma": 30}, "readings": readings(), "source": "phone"})
 			entries = append(entries, idOfLine(t, lines))

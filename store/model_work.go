@@ -12,6 +12,9 @@ import (
 type work struct {
 	kind  string    // of the register; "" before the device is registered
 	start forms.Day // the day it came under test
+	ended forms.Day // the day it was retired; NoDay while it is in use
+	came  forms.Day // the day its registration was received
+	way   string    // how it came under test: forms.New | Replaced | Imported
 	live  bool      // registered and not retired
 	// flawed: it ever failed, or something was said of its defects. follows: it took another device's place.
 	flawed, follows bool
@@ -19,6 +22,9 @@ type work struct {
 	dates           []forms.DueDate // by task
 	past            []past          // the newest entries, in order of arrival
 	older           uint64          // how many entries went to m_hist
+
+	occasions []occasion // that name the device, by record
+	pauses    []pause    // that name the device, by pause
 
 	was   workBefore
 	dirty bool
@@ -28,6 +34,7 @@ type work struct {
 type workBefore struct {
 	dates []forms.DueDate
 	fail  forms.Day
+	kept  map[string][]forms.Kept // by task
 }
 
 // taskState is what the entries of one task say together.
@@ -37,6 +44,8 @@ type taskState struct {
 	conclusive mark      // the newest that failed or passed
 	met        forms.Day // the newest day that moved the date, of whatever task the entry was
 	numbers    []figure  // the measured values of last, by code
+
+	kept []forms.Kept // what became of the dates that are done with
 }
 
 // figure is one measured value in its code's own unit.
@@ -79,6 +88,10 @@ type past struct {
 	task   string
 	result uint8    // as judged after corrections; 0 = withdrawn
 	met    []string // tasks whose date it moves
+
+	came   forms.Day // the day this store received it
+	locked bool      // somebody stood before a closed door
+	said   bool      // corrections or a withdrawal are known of it
 }
 
 // Results as rows keep them.
@@ -179,14 +192,6 @@ func (w *work) met(task string) forms.Day {
 	return forms.NoDay
 }
 
-// reckon sets the next dates.
-func (w *work) reckon(s forms.Schedule) {
-	w.dates = nil
-	if w.live {
-		w.dates = s.Dates(w.start, w.met)
-	}
-}
-
 func (p *packer) mark(m mark) {
 	p.byte(m.result)
 	if m.result != 0 {
@@ -214,14 +219,24 @@ func (w *work) pack() []byte {
 	p.byte(flags)
 	p.text(w.kind)
 	p.day(w.start)
+	p.day(w.ended)
+	p.day(w.came)
+	p.text(w.way)
 	p.uint(uint64(len(w.dates)))
 	for _, d := range w.dates {
 		p.task(d.Task)
 		p.text(d.Plan)
+		p.text(d.Cause)
 		p.day(d.Due)
 		p.int(int64(d.Due - d.Opens))
 		p.int(int64(d.Until - d.Due))
 		p.day(d.Last)
+		p.int(int64(d.Every.Months))
+		p.int(int64(d.Every.Days))
+		p.bool(d.Tried)
+	}
+	if len(w.dates) > 0 {
+		p.spans(w.dates[0].Pauses)
 	}
 	p.uint(uint64(len(w.tasks)))
 	for _, t := range w.tasks {
@@ -234,7 +249,9 @@ func (w *work) pack() []byte {
 			p.mark(t.conclusive)
 		}
 		p.figures(t.numbers)
+		p.kept(t.kept)
 	}
+	p.saidOfDevice(w)
 	p.uint(w.older)
 	p.pasts(w.past)
 	return p.b
@@ -284,9 +301,10 @@ func (p *packer) pasts(list []past) {
 	for _, e := range list {
 		p.uint(e.seq - seq)
 		p.int(int64(e.day - day))
+		p.int(int64(e.came - e.day))
 		seq, day = e.seq, e.day
 		p.task(e.task)
-		p.byte(e.result | byte(len(e.met))<<4)
+		p.byte(e.result | byte(len(e.met)&3)<<4 | bit(e.said)<<6 | bit(e.locked)<<7)
 		for _, m := range e.met {
 			p.task(m)
 		}
@@ -304,10 +322,10 @@ func (u *unpacker) pasts() []past {
 	for i := uint64(0); i < n && !u.bad; i++ {
 		seq += u.uint()
 		day += forms.Day(u.int())
-		e := past{seq: seq, day: day, task: u.task()}
+		e := past{seq: seq, day: day, came: day + forms.Day(u.int()), task: u.task()}
 		b := u.byte()
-		e.result = b & 15
-		e.met = u.metTasks(int(b >> 4))
+		e.result, e.said, e.locked = b&15, b&(1<<6) != 0, b&(1<<7) != 0
+		e.met = u.metTasks(int(b >> 4 & 3))
 		list = append(list, e)
 	}
 	return list
@@ -331,23 +349,32 @@ func (u *unpacker) metTasks(n int) []string {
 	return list
 }
 
-// unpackWork reads a row up to its entries, or with them.
+// unpackWork reads a row up to its entries and without what was kept, or with both.
 func unpackWork(b []byte, entries bool) (*work, error) {
 	u := unpacker{b: b}
 	flags := u.byte()
 	w := &work{live: flags&1 != 0, flawed: flags&2 != 0, follows: flags&4 != 0}
-	w.kind, w.start = kindName(u.bytes()), u.day()
+	w.kind, w.start, w.ended, w.came, w.way = kindName(u.bytes()), u.day(), u.day(), u.day(), wayName(u.bytes())
 	n := u.uint()
 	if n > uint64(len(b)) {
 		return nil, errPacked
 	}
 	w.dates = make([]forms.DueDate, 0, n)
 	for i := uint64(0); i < n && !u.bad; i++ {
-		d := forms.DueDate{Task: u.task(), Plan: u.text(), Due: u.day()}
+		d := forms.DueDate{Task: u.task(), Plan: u.text(), Cause: u.text(), Due: u.day()}
 		d.Opens = d.Due - forms.Day(u.int())
 		d.Until = d.Due + forms.Day(u.int())
 		d.Last = u.day()
+		d.Every = forms.Interval{Months: int(u.int()), Days: int(u.int())}
+		d.Tried = u.byte() == 1
 		w.dates = append(w.dates, d)
+	}
+	if len(w.dates) > 0 {
+		if pauses := u.spans(); len(pauses) > 0 {
+			for i := range w.dates {
+				w.dates[i].Pauses = pauses
+			}
+		}
 	}
 	n = u.uint()
 	if n > uint64(len(b)) {
@@ -363,13 +390,16 @@ func unpackWork(b []byte, entries bool) (*work, error) {
 			t.conclusive = u.mark()
 		}
 		t.numbers = u.figures()
+		if t.kept = u.kept(entries); u.bad {
+			break
+		}
 		w.tasks = append(w.tasks, t)
 	}
+	u.saidOfDevice(w)
 	w.older = u.uint()
 	if entries {
 		w.past = u.pasts()
 	}
-	w.was = workBefore{dates: w.dates, fail: w.failing()}
 	return w, u.err()
 }
 
@@ -388,50 +418,6 @@ func kindName(b []byte) string {
 	}
 	return string(b)
 }
-
-// packWorks writes changed work rows and keeps the due index, its sums and the failed devices.
-func (f *fold) packWorks() {
-	for key, w := range f.works {
-		if !w.dirty {
-			continue
-		}
-		w.dirty = false
-		f.on(bktWork).put(workKey(key.site, key.n), w.pack())
-		for _, d := range w.was.dates {
-			if !hasDate(w.dates, d) {
-				f.on(bktDue).delete(dueKey(key.site, d.Due, key.n, d.Task))
-				f.sums[string(sumKey(key.site, d.Due, graceDays(d), d.Task))]--
-			}
-		}
-		for _, d := range w.dates {
-			if !hasDate(w.was.dates, d) {
-				f.on(bktDue).put(dueKey(key.site, d.Due, key.n, d.Task), []byte{})
-				f.sums[string(sumKey(key.site, d.Due, graceDays(d), d.Task))]++
-			}
-		}
-		fail := w.failing()
-		if fail != w.was.fail {
-			if w.was.fail != forms.NoDay {
-				f.on(bktFail).delete(failKey(key.site, w.was.fail, key.n))
-			}
-			if fail != forms.NoDay {
-				f.on(bktFail).put(failKey(key.site, fail, key.n), []byte{})
-			}
-		}
-		w.was = workBefore{dates: w.dates, fail: fail}
-	}
-}
-
-func hasDate(list []forms.DueDate, d forms.DueDate) bool {
-	for i := range list {
-		if list[i].Task == d.Task && list[i].Due == d.Due && list[i].Until == d.Until {
-			return true
-		}
-	}
-	return false
-}
-
-func graceDays(d forms.DueDate) uint16 { return uint16(min(max(0, d.Until-d.Due), 1<<16-1)) }
 
 // packSums adds the group's changes to the counts of dates and of results.
 func (f *fold) packSums() error {
@@ -473,6 +459,9 @@ func (f *fold) packSums() error {
 			p.b = nil
 		}
 		f.on(bktTally).put([]byte(key), p.b)
+	}
+	if err := f.packKeeps(); err != nil {
+		return err
 	}
 	clear(f.sums)
 	clear(f.tallies)

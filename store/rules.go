@@ -19,7 +19,9 @@ type rules struct {
 	limits    map[limitID][]*forms.LimitSet
 	standers  map[uint32][]string // ids of a log's sets that stand for kinds
 	forms     map[string][]*forms.Form
-	known     *ready // verdict worked out beforehand for the entry being judged
+	whole     map[uint32]*saidOfWholeSite
+	said      func(bucket, prefix []byte) []row // m_occ and m_pause; nil where dates are not asked for
+	known     *ready                            // verdict worked out beforehand for the entry being judged
 }
 
 type scheduleID struct {
@@ -42,7 +44,7 @@ func newRules(list func(prefix []byte) []row) *rules {
 func (ru *rules) forget() {
 	ru.plans, ru.schedules = map[uint32][]*forms.Plan{}, map[scheduleID]forms.Schedule{}
 	ru.limits, ru.forms = map[limitID][]*forms.LimitSet{}, map[string][]*forms.Form{}
-	ru.standers = map[uint32][]string{}
+	ru.standers, ru.whole = map[uint32][]string{}, map[uint32]*saidOfWholeSite{}
 }
 
 // parsedRules keeps what rows of rules say, by their bytes: a group commit every millisecond must not read the shipped

@@ -3,7 +3,6 @@ package store
 import (
 	"bytes"
 	"cmp"
-	"encoding/binary"
 	"encoding/json"
 	"slices"
 	"strings"
@@ -36,6 +35,8 @@ type SiteSums struct {
 	Site       Site
 	Devices    int         // not retired
 	Overdue    int         // dates, not devices
+	Paused     int         // dates of which a pause holds the day
+	Year       []Month     // the twelve months that end with the day's, as known now
 	DueSoon    int         // dates within the 31 days after the day asked for, the day included
 	Failed     int         // devices of which some task failed and has not passed since
 	NextDay    forms.Day   // the earliest date that is overdue, else the earliest not yet passed; NoDay for none
@@ -151,6 +152,12 @@ func plainText(v json.RawMessage) string {
 	return string(v)
 }
 
+// Month says what became of the dates that count in one month (forms.Obligation.Counts).
+type Month struct {
+	Month int32 // forms.MonthOf
+	forms.Count
+}
+
 // SiteSums counts a site as it stands on a day.
 func (v *View) SiteSums(site string, on forms.Day) (SiteSums, error) {
 	sv, err := v.siteNamed(site)
@@ -158,33 +165,64 @@ func (v *View) SiteSums(site string, on forms.Day) (SiteSums, error) {
 		return SiteSums{}, err
 	}
 	sums := SiteSums{Site: sv.Site, NextDay: forms.NoDay}
+	if err := v.sumDates(sv, on, &sums); err != nil {
+		return sums, err
+	}
+	err = v.lastFailed(sv, on, &sums)
+	return sums, err
+}
+
+// sumDates counts a site's devices and dates, and the months behind it: two short scans, whatever its size.
+func (v *View) sumDates(sv *siteView, on forms.Day, sums *SiteSums) error {
 	u := unpacker{b: v.tx.Bucket(bktSiteLog).Get(sv.id[:])}
 	u.uint()
 	u.uint()
 	sums.Devices = int(u.uint())
+	last := forms.MonthOf(on)
+	sums.Year = make([]Month, 12)
+	for i := range sums.Year {
+		sums.Year[i].Month = last - 11 + int32(i)
+	}
+	first := sums.Year[0].Month
+	month := func(m int32) *forms.Count {
+		if m < first || m > last {
+			return new(forms.Count)
+		}
+		return &sums.Year[m-first].Count
+	}
 	prefix := put32(nil, sv.ord)
-	c := v.tx.Bucket(bktSum).Cursor()
+	c := v.tx.Bucket(bktKeep).Cursor()
+	for k, row := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, row = c.Next() {
+		if err := eachKept(row, first, func(m int32, kept *monthKept) { kept.count(month(m)) }); err != nil {
+			return err
+		}
+	}
 	next := nextDate{day: forms.NoDay}
+	ahead := max(on+31, forms.MonthStart(last+1)-1)
+	c = v.tx.Bucket(bktSum).Cursor()
 	for k, n := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, n = c.Next() {
-		day, grace := readDay(k[4:]), forms.Day(binary.BigEndian.Uint16(k[8:]))
-		if next.day != forms.NoDay && next.order < 2 && day > max(on+31, next.day) {
+		d, u := readSum(k), unpacker{b: n}
+		if next.day != forms.NoDay && next.order < 2 && d.Due > max(ahead, next.day) {
 			break
 		}
-		next.take(day, string(k[10:]), on, grace)
-		if day > on+31 {
-			continue
-		}
-		u := unpacker{b: n}
-		switch count := int(u.uint()); {
-		case day+grace < on:
+		count, state := int(u.uint()), d.State(on)
+		next.take(d, state)
+		switch {
+		case state == forms.Paused:
+			sums.Paused += count
+		case state == forms.Overdue:
 			sums.Overdue += count
-		case day >= on:
+		case d.Due >= on && d.Due <= on+31:
 			sums.DueSoon += count
+		}
+		if d.Due <= ahead {
+			for o := range d.Unmet(on) {
+				month(forms.MonthOf(o.Due)).Add(forms.Obligation{DueDate: o, Met: forms.NoDay}.Outcome(on), count)
+			}
 		}
 	}
 	sums.NextDay, sums.NextTask = next.day, next.task
-	err = v.lastFailed(sv, on, &sums)
-	return sums, err
+	return nil
 }
 
 // nextDate finds the date a site is to look at next: one that is overdue comes before one that has not passed, and that
@@ -195,16 +233,18 @@ type nextDate struct {
 	order int
 }
 
-func (d *nextDate) take(day forms.Day, task string, on, grace forms.Day) {
+func (d *nextDate) take(date forms.DueDate, state string) {
 	order := 1
-	switch {
-	case day+grace < on:
+	switch state {
+	case forms.Overdue:
 		order = 0
-	case day < on:
+	case forms.InGrace:
 		order = 2
+	case forms.Paused:
+		return
 	}
-	if d.day == forms.NoDay || cmp.Or(cmp.Compare(order, d.order), cmp.Compare(day, d.day), cmp.Compare(task, d.task)) < 0 {
-		*d = nextDate{day, task, order}
+	if d.day == forms.NoDay || cmp.Or(cmp.Compare(order, d.order), cmp.Compare(date.Due, d.day), cmp.Compare(date.Task, d.task)) < 0 {
+		*d = nextDate{date.Due, date.Task, order}
 	}
 }
 

@@ -123,6 +123,10 @@ func (v *View) rules() *rules {
 	if v.ruled == nil {
 		o := overlay{bucket: v.tx.Bucket(bktRule)}
 		v.ruled = newRules(o.list)
+		v.ruled.said = func(bucket, prefix []byte) []row {
+			o := overlay{bucket: v.tx.Bucket(bucket)}
+			return o.list(prefix)
+		}
 		if row := v.tx.Bucket(bktSiteLog).Get(make([]byte, 16)); row != nil {
 			u := unpacker{b: row}
 			v.org = uint32(u.uint())

@@ -254,8 +254,8 @@ func TestMarks_TurnWithTheCalendar(t *testing.T) {
 	}
 }
 
-// drawn is a device with plans, occasions and tests of any days.
-func drawn(t *rapid.T, duty string, pauses bool) (Schedule, *Plan, Case, []Test) {
+// drawnDevice is a device with plans, occasions and tests of any days.
+func drawnDevice(t *rapid.T, duty string, pauses bool) (Schedule, *Plan, Case, []Test) {
 	every := []string{"P1W", "P1M", "P2M", "P3M", "P6M", "P1Y"}
 	p := plan(duty, rapid.SampledFrom(every).Draw(t, "every"))
 	p.InForce = -40000
@@ -297,7 +297,7 @@ func TestTrace_Properties(t *testing.T) {
 	}
 	t.Run("not-to-exceed is never later than the anchor and the interval", func(t *testing.T) {
 		rapid.Check(t, func(t *rapid.T) {
-			s, p, c, tests := drawn(t, NotToExceed, false)
+			s, p, c, tests := drawnDevice(t, NotToExceed, false)
 			every, _ := ParseInterval(p.Every)
 			tr := never(s, c, tests)
 			anchor := c.Start
@@ -318,7 +318,7 @@ func TestTrace_Properties(t *testing.T) {
 	})
 	t.Run("grace never hides overdue", func(t *testing.T) {
 		rapid.Check(t, func(t *rapid.T) {
-			s, p, c, tests := drawn(t, OnceEachPeriod, false)
+			s, p, c, tests := drawnDevice(t, OnceEachPeriod, false)
 			grace, _ := p.grace()
 			tr := never(s, c, tests)
 			d, _ := tr.Next()
@@ -338,7 +338,7 @@ func TestTrace_Properties(t *testing.T) {
 	})
 	t.Run("the order in which tests become known has no say, nor whether they come at once or one by one", func(t *testing.T) {
 		rapid.Check(t, func(t *rapid.T) {
-			s, _, c, tests := drawn(t, rapid.SampledFrom([]string{NotToExceed, OnceEachPeriod}).Draw(t, "duty"), true)
+			s, _, c, tests := drawnDevice(t, rapid.SampledFrom([]string{NotToExceed, OnceEachPeriod}).Draw(t, "duty"), true)
 			want := never(s, c, tests)
 			rand.New(rand.NewSource(rapid.Int64().Draw(t, "shuffle"))).Shuffle(len(tests), func(i, j int) { tests[i], tests[j] = tests[j], tests[i] })
 			if got := never(s, c, tests); !slices.Equal(got.Kept(), want.Kept()) {
@@ -367,7 +367,7 @@ func TestTrace_Properties(t *testing.T) {
 	})
 	t.Run("what a month came to stays, whatever is done later", func(t *testing.T) {
 		rapid.Check(t, func(t *rapid.T) {
-			s, _, c, tests := drawn(t, rapid.SampledFrom([]string{NotToExceed, OnceEachPeriod}).Draw(t, "duty"), true)
+			s, _, c, tests := drawnDevice(t, rapid.SampledFrom([]string{NotToExceed, OnceEachPeriod}).Draw(t, "duty"), true)
 			on := c.Start + Day(rapid.IntRange(0, 500).Draw(t, "on"))
 			counted := func(tests []Test) (c2 Count) {
 				early := c

@@ -15,7 +15,7 @@ var registerColumns = []column{
 	{"result_instrument", 16, verdictCell}, {"last_receptacle", 12, dayCell}, {"result_receptacle", 16, verdictCell},
 	{"next_date", 12, dayCell}, {"next_task", 16, textCell}, {"device_id", 38, textCell},
 	// The rest makes the sheet a register that can be taken in again.
-	{"zone", 18, textCell}, {"standard", 10, textCell}, {"address", 24, textCell}, {"order", 8, numberCell}, {"critical_load", 18, textCell}, {"whom_to_tell", 18, textCell},
+	{"zone", 18, textCell}, {"standard", 10, textCell}, {"address", 24, textCell}, {"order", 8, numberCell}, {"critical_load", 18, textCell}, {"whom_to_tell", 18, textCell}, {"test_from", 10, textCell}, {"test_until", 10, textCell},
 	{"breaker_a", 10, numberCell}, {"poles", 8, numberCell}, {"circuit_v", 10, numberCell}, {"conductor", 12, textCell}, {"supply", 10, textCell}, {"circuit_standard", 10, textCell},
 	{"serial", 14, textCell}, {"nominal_v", 10, numberCell}, {"delayed", 10, textCell}, {"waveform", 14, textCell}, {"equipment_ground", 16, textCell}, {"faces", 8, numberCell},
 	{"own_limit_set", 18, textCell}, {"gauge", 10, textCell}, {"length_m", 10, numberCell}, {"kept_at", 18, textCell}, {"note", 40, textCell},
@@ -83,7 +83,7 @@ func (b *book) registerFields(s *sheet, line DeviceLine) {
 		}
 	}
 	p := line.Device.Place
-	s.text(line.Site.Zone).text(line.Site.Standard).text(line.Site.Address).rating(p.Order).text(p.CriticalLoad).text(p.WhomToTell)
+	s.text(line.Site.Zone).text(line.Site.Standard).text(line.Site.Address).rating(p.Order).text(p.CriticalLoad).text(p.WhomToTell).text(p.TestFrom).text(p.TestUntil)
 	field(line.Circuit, "breaker_a", "poles", "voltage_v", "conductor", "supply", "standard")
 	field(line.Fields, "serial", "nominal_v", "delayed", "waveform", "equipment_ground", "faces", "limit_set", "gauge", "length_m", "where", "note")
 }

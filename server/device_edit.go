@@ -6,6 +6,7 @@ import (
 	"slices"
 	"strconv"
 	"strings"
+	"time"
 
 	"github.com/labstack/echo/v4"
 
@@ -16,7 +17,7 @@ import (
 
 // Fields of a device form by whose record they belong to. The names are those of the register.
 var (
-	placeTexts    = []string{"building", "floor", "room", "name", "critical_load", "whom_to_tell"}
+	placeTexts    = []string{"building", "floor", "room", "name", "critical_load", "whom_to_tell", "test_from", "test_until"}
 	deviceTexts   = []string{"make", "model", "serial", "note"}
 	deviceFigures = []string{"rating_a", "nominal_v", "rated_residual_ma"}
 )
@@ -45,7 +46,7 @@ func (s *Server) deviceNew(c echo.Context) error {
 func (s *Server) successor(before store.Device) map[string]string {
 	all := s.deviceValues(before, store.Circuit{})
 	out := map[string]string{"place": before.Place.ID}
-	for _, name := range []string{"kind", "building", "floor", "room", "name", "order", "critical_load", "whom_to_tell", "panel", "circuit", "rating_a", "rated_residual_ma", "nominal_v", "equipment_ground"} {
+	for _, name := range []string{"kind", "building", "floor", "room", "name", "order", "critical_load", "whom_to_tell", "test_from", "test_until", "panel", "circuit", "rating_a", "rated_residual_ma", "nominal_v", "equipment_ground"} {
 		out[name] = all[name]
 	}
 	return out
@@ -94,6 +95,7 @@ func (s *Server) deviceInput(f *typedForm) deviceInput {
 	for _, name := range placeTexts {
 		f.setText(in.place, name, name, f.line(name, 200))
 	}
+	f.window()
 	f.setFigure(in.place, "order", "order", f.figure("order"))
 	f.setText(in.device, "kind", "kind", f.choice("kind", forms.Kinds()...))
 	for _, name := range deviceTexts {
@@ -126,6 +128,28 @@ func (s *Server) deviceInput(f *typedForm) deviceInput {
 		f.refuse("circuit", k.say("office.device.circuit_unset"))
 	}
 	return in
+}
+
+// window holds the times between which TEST may be pressed at a place: both or none.
+func (f *typedForm) window() {
+	from, until := f.clock("test_from"), f.clock("test_until")
+	if (from == "") != (until == "") && f.ok() {
+		f.refuse("test_until", f.ink.say("office.device.window_both"))
+	}
+}
+
+// clock reads a time of day as 15:04; "" where nothing was typed.
+func (f *typedForm) clock(name string) string {
+	v := strings.TrimSpace(f.Get(name))
+	if v == "" {
+		return ""
+	}
+	t, err := time.Parse("15:04", v)
+	if err != nil {
+		f.refuse(name, f.ink.say("office.device.window_time"))
+		return ""
+	}
+	return t.Format("15:04")
 }
 
 // tagInput reads the tag of a new device's label: one that is there, or "new" for one to be drawn.
@@ -327,6 +351,7 @@ func (s *Server) deviceValues(d store.Device, fed store.Circuit) map[string]stri
 	text := func(name string) string { v, _ := d.Fields[name].(string); return v }
 	out := map[string]string{
 		"building": d.Place.Building, "floor": d.Place.Floor, "room": d.Place.Room, "name": cmp.Or(d.Place.Name, text("where")), "critical_load": d.Place.CriticalLoad, "whom_to_tell": d.Place.WhomToTell,
+		"test_from": d.Place.TestFrom, "test_until": d.Place.TestUntil,
 		"panel": d.Panel, "circuit": d.Circuit, "kind": d.Kind, "equipment_ground": text("equipment_ground"), "installed": text("installed"), "delayed": "", "order": "",
 	}
 	if d.Place.Order != 0 {

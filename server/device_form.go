@@ -32,7 +32,8 @@ func (s *Server) deviceForm(c echo.Context, site store.Site, d *store.Device, f 
 		Frame: s.frame(c, k.say("office.device.new"), "sites"), Crumbs: []link{{Href: siteHref(site), Text: site.Name}},
 		Heading: k.say("office.device.new_head", "site", site.Name), Action: siteHref(site) + "/devices", Submit: k.say("office.device.save_new"), Cancel: siteHref(site),
 		Groups: []fieldGroup{
-			{Legend: k.say("office.device.group_place"), Fields: []field{q("building"), q("floor"), q("room"), q("name", needed), q("order"), q("critical_load"), q("whom_to_tell")}},
+			{Legend: k.say("office.device.group_place"), Fields: []field{q("building"), q("floor"), q("room"), q("name", needed), q("order"), q("critical_load"), q("whom_to_tell"),
+				q("test_from", func(f *field) { f.Type = "time" }), q("test_until", func(f *field) { f.Type = "time" })}},
 			{Legend: k.say("office.device.group_device"), Fields: []field{
 				q("kind", needed, func(f *field) { f.Options = kinds }), q("make"), q("model"), q("serial"), q("rating_a"), q("nominal_v"), q("rated_residual_ma"),
 				q("installed", func(f *field) { f.Type = "date" }),

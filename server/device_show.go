@@ -330,6 +330,8 @@ func (s *Server) deviceFacts(d store.Device) []fact {
 	}
 	add("critical_load", d.Place.CriticalLoad)
 	add("whom_to_tell", d.Place.WhomToTell)
+	add("test_from", d.Place.TestFrom)
+	add("test_until", d.Place.TestUntil)
 	for _, field := range sortedKeys(d.Fields) {
 		if !slices.Contains(factOrder, field) && !slices.Contains([]string{"kind", "place", "circuit", "formerly"}, field) {
 			add(field, s.fieldText(field, d.Fields[field]))

@@ -17,13 +17,14 @@ var pageFiles embed.FS
 
 // Frame is what the layout shows around every page. A page's struct embeds it; everything in it is ready to print.
 type Frame struct {
-	Title  string // of the browser's tab
-	Here   string // which entry of the masthead is this one: overview, sites, dates, or "" for none
-	Name   string // of the person signed in; "" = nobody
-	Role   string // manager | crew | auditor
-	Today  string // of the server, with its weekday; sites have their own
-	Demo   bool   // invented data, said on every page
-	Change bool   // the reader may change things: show what leads to forms
+	Title   string // of the browser's tab
+	Here    string // which entry of the masthead is this one: overview, sites, dates, or "" for none
+	Name    string // of the person signed in; "" = nobody
+	Role    string // manager | crew | auditor
+	Today   string // of the server, with its weekday; sites have their own
+	Demo    bool   // invented data, said on every page
+	Refresh int    // seconds after which the page reads itself again; 0 = never
+	Change  bool   // the reader may change things: show what leads to forms
 }
 
 // frame fills the Frame of the request's caller.

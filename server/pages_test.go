@@ -100,10 +100,31 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 		"results_preview.html": resultsSample(),
 		"people.html": peoplePage{Frame: frameOf("People", "people"), Heading: "3 people may sign in.", People: []peopleRow{
 			{Href: "/people/1", Name: "Manager 1", Role: "Manager", Sites: "All sites", Contact: "ext. 401", Active: true}, {Href: "/people/2", Name: "Crew 1", Role: "Crew", Sites: "Kiln Lane Day Clinic, Ottermoor Swim Hall", Active: true}, {Href: "/people/3", Name: "Auditor 2", Role: "Auditor", Sites: "Kiln Lane Day Clinic"}}},
+		"rounds.html": roundsPage{Frame: frameOf("Rounds", "rounds"), Heading: "1 round waits to be accepted.", Under: "2 rounds are open.", NewHref: "/rounds/new", None: "No round yet.",
+			Groups: []roundGroup{{"Waiting to be accepted", []roundRow{{Href: "/rounds/1", Name: "Button test, Tue 1 Dec", Site: "Kiln Lane Day Clinic", Who: "Crew 1", Said: "38 done, 2 to come back to", Time: "1 h 5 min", State: mark{"watch", "Ended, not accepted"}, Done: 38, Of: 41}}}}},
+		"round.html": roundSample(pass, fail),
+		"visit.html": visitPage{Frame: frameOf("Plan a visit", "rounds"), Crumbs: []link{{Href: "/rounds", Text: "Rounds"}}, Heading: "Kiln Lane Day Clinic on Tuesday 1 December 2026: 41 tests.", Under: "1 round, about 1 h 5 min in all.", Day: "2026-12-01", Until: "2026-12-31", Hours: "6",
+			DayError: "Write the day as 2026-12-31.", Sites: choices("1", "1", "Kiln Lane Day Clinic"), Tasks: choices("", "", "All tests"), Buildings: choices("", "", "All buildings", "Clinic", "Clinic"), Floors: choices("", "", "All floors"), Ready: true,
+			Facts: []string{"12 will be overdue that day."}, Failed: []stopRow{{Href: "/devices/9", Spot: "Dosing pump", Tag: "R4D‑0XN‑9", Task: "Button", Where: "Plant room", State: fail, Said: "Mon 30 Nov"}}, Tell: []string{"Pantry: Tell first: Nurse in charge."},
+			Rounds: []visitRound{{Name: "The round", Under: "41 tests · about 1 h 5 min", Stops: "1/button", Minutes: "65", N: "0", Who: choices("", "", "Whoever is there", "1", "Crew 1"), Groups: stopGroups(mark{"watch", "Overdue"})}},
+			Wrong:  []link{{Text: "No round was chosen."}}, Action: "/rounds", Submit: "Make the round", Hidden: []hidden{{"record", "1"}}, Fields: []field{{Name: "note", Label: "Note", Type: "text-area", Wide: true}}, Pace: "Reckoned with button test 1.2 min."},
 		"tray.html": trayPage{Frame: frameOf("Take in a phone's tray", ""), Problem: "Choose the file the phone saved first.", Report: &TrayReport{Records: 3, Stored: 1, Already: 1, Person: "Crew 1", Made: "2026-12-01T08:00:00.000Z",
 			Refused: []store.Receipt{{ID: "0197b2c0-0000-7000-8000-000000000001", State: "refused", Code: "bad_body", Text: "The readings are missing."}}}},
 		"person_link.html": personLinkPage{Frame: frameOf("People", "people"), Crumbs: []link{{Href: "/people", Text: "People"}}, Heading: "Sign-in link for Crew 1", Under: "It is shown here once.", Link: "https://tripwell.example/in/2JHC0VQ2W4Z8S5N7K3M6P9R1T4", Text: "Send it to Crew 1 only."},
 	}
+}
+
+func stopGroups(state mark) []stopGroup {
+	return []stopGroup{{Place: "Clinic · Ground floor · Kitchen", Rows: []stopRow{{Href: "/devices/1", Spot: "Pantry, by the sink", Tag: "K7Q‑M2P‑3", Task: "Button test", State: state, EntryHref: "/entries/1", Said: "Crew 1 · Tue 1 Dec"}, {Spot: "A device that is not in the register", Task: "Button test", State: mark{"none", "Left"}}}}}
+}
+
+func roundSample(pass, fail mark) roundPage {
+	rows := stopGroups(fail)[0].Rows
+	return roundPage{Frame: frameOf("Button test, Tue 1 Dec", "rounds"), Crumbs: []link{{Href: "/rounds", Text: "Rounds"}}, Heading: "Kiln Lane Day Clinic: 38 of 41 done.", Under: "Button test, Tue 1 Dec · Crew 1", State: mark{"watch", "Ended, not accepted"},
+		Done: 38, Of: 41, Said: "38 done, 2 to come back to, 1 passed over", Facts: []fact{{Name: "Day", Value: "Tuesday 1 December 2026"}}, Actions: []link{{Href: "/rounds/1/edit", Text: "Change or call off"}}, Live: "As of 09:00.",
+		Conflicts: []conflictLine{{Text: "Note: another stands."}}, Attention: []roundPart{{"1 failed", rows}}, Groups: stopGroups(pass), Closings: []string{"Crew 1, 1 Dec 2026, 11:02: 38 done."}, Accepted: "Manager 1, 1 Dec 2026, 15:00.", Note: "The rest next week.",
+		Accept: &formPage{Heading: "Accept this round", Lead: "What is left stays due.", Action: "/rounds/1/accept", Submit: "Accept", Wrong: []link{{Text: "Nobody has ended this round yet."}}, Hidden: []hidden{{"record", "1"}}, Groups: []fieldGroup{{Fields: []field{{Name: "accept_note", Label: "Note", Type: "text-area"}}}}},
+		Tell:   []string{"Pantry: Tell first: Nurse in charge."}}
 }
 
 // deviceSample is the device form after a bad answer.
@@ -175,7 +196,7 @@ func revisionSample() revisionPage {
 }
 
 // keptFields hold what is not text of a reader: addresses, shapes, places in a drawing, codes.
-var keptFields = []string{"Href", "Action", "Cancel", "FailedHref", "OverdueHref", "NewSite", "NewInstrument", "Record", "Sheet", "Shape", "Path", "BandX", "BandW", "Limits", "X", "Anchor", "Before", "Mark", "Pointer", "At", "Y", "Inside", "Back", "Role", "Here", "Type", "Known"}
+var keptFields = []string{"Href", "NewHref", "EntryHref", "Stops", "N", "Minutes", "Action", "Cancel", "FailedHref", "OverdueHref", "NewSite", "NewInstrument", "Record", "Sheet", "Shape", "Path", "BandX", "BandW", "Limits", "X", "Anchor", "Before", "Mark", "Pointer", "At", "Y", "Inside", "Back", "Role", "Here", "Type", "Known"}
 
 // with gives a page with every text of a reader replaced, or with all lists emptied where text is nil.
 func with(page any, text *string) any {

@@ -60,14 +60,14 @@ device.retired         site      reason:text! on:day
 device.replaced        site      with:id! reason:text on:day
 tag.bound              site      tag:tag!
 tag.freed              site      tag:tag!
-entry.made             site      form:form! readings:readings! series:series given:object shown:object source:text read_by:text typed_by:text note:text photos:list
+entry.made             site      form:form! readings:readings! series:series given:object shown:object source:text read_by:text typed_by:text note:text photos:list round:id
 entry.imported         site      form:form! readings:readings series:series given:object shown:object day:day result:text source:text read_by:text typed_by:text note:text photos:list
 entry.corrected        site      entry:id! readings:readings! series:series given:object reason:text!
 entry.withdrawn        site      entry:id! reason:text!
-round.made             site
-round.set              site
-round.closed           site
-round.accepted         site
+round.made             site      set:set! seen:stamp
+round.set              site      set:set! seen:stamp
+round.closed           site      day:day! done:number left:number skipped:number back:number proved:object instrument:text passed:list
+round.accepted         site      note:text
 defect.opened          site      device:id! text:text! cause:text severity:text protector:id due:day parts:list photos:list
 defect.noted           site      device:id! text:text severity:text due:day parts:list photos:list
 defect.made_safe       site      device:id! how:text! photos:list
@@ -205,6 +205,9 @@ const readingMembers = new Map([
 
 const filled = (v) => isText(v) && v !== "";
 
+/** A stop of a round: a device and a task, such as ID/button. */
+const isStop = (v) => isText(v) && isId(v.slice(0, 36)) && /^\/[a-z0-9-]+$/.test(v.slice(36));
+
 /** Rules of single kinds that a table of members does not say. */
 function badMeaning(kind, subject, body) {
   const set = body.get("set");
@@ -215,6 +218,10 @@ function badMeaning(kind, subject, body) {
       return !set.has("standard") || set.get("standard") === "NEC" || set.get("standard") === "IEC" ? null : "set.standard";
     case "device.registered":
       return filled(set.get("kind")) ? null : "set.kind";
+    case "round.made":
+      return Array.isArray(set.get("stops")) && set.get("stops").length > 0 && set.get("stops").every(isStop) ? null : "set.stops";
+    case "round.set":
+      return !set.has("stops") || (Array.isArray(set.get("stops")) && set.get("stops").every(isStop)) ? null : "set.stops";
     case "entry.imported":
       return body.get("readings") instanceof Map || (filled(body.get("day")) && filled(body.get("result"))) ? null : "readings";
     case "entry.corrected":

@@ -104,6 +104,8 @@ func (f *fold) record(r *record.Record, st record.Stamp, seq uint64) error {
 		return f.entrySaid(r, st)
 	case "grant.set":
 		return f.granted(r, st)
+	case "round.closed", "round.accepted":
+		return f.roundSaid(r)
 	case "forms.set", "limits.set", "plan.set":
 		return f.ruleSet(r)
 	case "defect.opened", "defect.noted", "defect.made_safe", "defect.assigned", "defect.repaired", "defect.closed", "defect.reopened":
@@ -120,7 +122,7 @@ func (f *fold) record(r *record.Record, st record.Stamp, seq uint64) error {
 var registerKinds = map[string]byte{
 	"site.registered": ofSite, "site.set": ofSite, "place.registered": ofPlace, "place.set": ofPlace,
 	"panel.set": ofPanel, "circuit.set": ofCircuit, "device.registered": ofDevice, "device.set": ofDevice,
-	"instrument.set": ofInstrument,
+	"instrument.set": ofInstrument, "round.made": ofRound, "round.set": ofRound,
 }
 
 func badBody(field, format string, a ...any) error {

@@ -24,7 +24,7 @@ func (f *fold) setFields(r *record.Record, st record.Stamp, typ byte) error {
 	for name, v := range set {
 		reg.say(name, record.Said{Value: append(json.RawMessage{}, v...), Clock: r.Clock, ID: r.ID, From: r.From, Seen: seen})
 	}
-	if strings.HasSuffix(r.Kind, ".registered") {
+	if strings.HasSuffix(r.Kind, ".registered") || r.Kind == "round.made" {
 		if ms := happened(r, st).UnixMilli(); reg.born == 0 || ms < reg.born {
 			reg.born, reg.dirty = ms, true
 		}

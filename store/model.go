@@ -36,6 +36,7 @@ import (
 //	m_circuit site 4 | circuit 16 | 0 or 1 | n 4 → nothing: a device that hangs on this circuit; 0 where it protects all of it
 //	m_feed   site 4 | device 16 | n 4   → nothing: a device that names this one as its source, or as what took its place
 //	m_code   CODE 0 | site 4            → nothing
+//	m_round  site 4 | n 4               → seqs of the ends and acceptances of a round
 //	m_rule   type 1 | site 4 | name 0 | revision 4 → clock 8 | record 16 | JSON of a form, limit set or plan
 //	m_todo   seq 8                      → work not yet done for that record, see todo.go
 var (
@@ -65,12 +66,13 @@ var (
 	bktCircuit  = []byte("m_circuit")
 	bktFeed     = []byte("m_feed")
 	bktCode     = []byte("m_code")
+	bktRound    = []byte("m_round")
 	bktRule     = []byte("m_rule")
 	bktTodo     = []byte("m_todo")
 )
 
 var modelBuckets = [][]byte{bktSiteLog, bktSite, bktThing, bktRegister, bktWork, bktHistory, bktSaid, bktGranted, bktChange, bktDue, bktSum, bktKeep, bktOccasion, bktPause,
-	bktFail, bktFact, bktDefect, bktFlaw, bktOpen, bktTally, bktBind, bktTag, bktPlace, bktCircuit, bktFeed, bktCode, bktRule, bktTodo}
+	bktFail, bktFact, bktDefect, bktFlaw, bktOpen, bktTally, bktBind, bktTag, bktPlace, bktCircuit, bktFeed, bktCode, bktRound, bktRule, bktTodo}
 
 // Types of things and of rules.
 const (
@@ -80,6 +82,7 @@ const (
 	ofCircuit    = 'c'
 	ofDevice     = 'd'
 	ofInstrument = 'i'
+	ofRound      = 'r'
 
 	ruleForm  = 'f'
 	ruleLimit = 'l'

@@ -249,7 +249,7 @@ var fieldNames = func() map[string]string {
 	m := map[string]string{}
 	for _, n := range []string{"kind", "place", "circuit", "make", "model", "serial", "rating_a", "nominal_v", "rated_residual_ma",
 		"delayed", "waveform", "equipment_ground", "faces", "installed", "limit_set", "formerly", "where", "note", "gauge",
-		"length_m", "building", "floor", "room", "name", "order", "critical_load", "whom_to_tell", "panel", "numbers",
+		"length_m", "building", "floor", "room", "name", "order", "critical_load", "whom_to_tell", "test_from", "test_until", "panel", "numbers",
 		"breaker_a", "poles", "voltage_v", "conductor", "standard", "supply", "location", "code", "zone", "address",
 		"fed_by", "#retired", "#with", "#replaces"} {
 		m[n] = n

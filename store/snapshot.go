@@ -22,6 +22,7 @@ type Snapshot struct {
 	Forms       []*forms.Form     `json:"forms"`
 	LimitSets   []*forms.LimitSet `json:"limit_sets"` // revision in force today of each; the site's own before the organisation's
 	Instruments []Instrument      `json:"instruments"`
+	Rounds      []SnapshotRound   `json:"rounds,omitempty"` // made in the office, neither accepted nor called off
 }
 
 // SnapshotSite is the site itself.
@@ -41,6 +42,9 @@ type SnapshotPlace struct {
 	Room         string `json:"room,omitempty"`
 	Name         string `json:"name"`
 	CriticalLoad string `json:"critical_load,omitempty"`
+	WhomToTell   string `json:"whom_to_tell,omitempty"`
+	TestFrom     string `json:"test_from,omitempty"`
+	TestUntil    string `json:"test_until,omitempty"`
 	Seen         string `json:"seen,omitempty"` // largest stamp of what is said of it
 }
 
@@ -101,7 +105,7 @@ func (v *View) Snapshot(site string, on forms.Day) (Snapshot, error) {
 		return s, err
 	}
 	for _, p := range places {
-		s.Places = append(s.Places, SnapshotPlace{p.ID, p.Building, p.Floor, p.Room, p.Name, p.CriticalLoad, seenText(p.seen)})
+		s.Places = append(s.Places, SnapshotPlace{p.ID, p.Building, p.Floor, p.Room, p.Name, p.CriticalLoad, p.WhomToTell, p.TestFrom, p.TestUntil, seenText(p.seen)})
 	}
 	if s.Devices, err = v.snapshotDevices(sv, on); err != nil {
 		return s, err
@@ -110,6 +114,9 @@ func (v *View) Snapshot(site string, on forms.Day) (Snapshot, error) {
 		return s, err
 	}
 	s.LimitSets = v.limitSetsOn(sv, on)
+	if s.Rounds, err = v.snapshotRounds(sv); err != nil {
+		return s, err
+	}
 	all, err := v.Instruments()
 	if err != nil {
 		return s, err

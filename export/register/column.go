@@ -40,6 +40,8 @@ var Columns = []Column{
 	{Name: "order", of: "place", reads: figure, synonyms: []string{"walking_order", "sequence", "walk_order", "walking", "route", "seq"}},
 	{Name: "critical_load", of: "place", synonyms: []string{"critical", "critical_loads", "what_it_feeds", "feeds"}},
 	{Name: "whom_to_tell", of: "place", synonyms: []string{"tell", "inform", "tell_before_testing", "whom_to_tell_before_test", "contact_before_test"}},
+	{Name: "test_from", of: "place", synonyms: []string{"test_not_before"}},
+	{Name: "test_until", of: "place", synonyms: []string{"test_not_after"}},
 	{Name: "kind", of: "device", synonyms: []string{"device", "device_kind", "type", "device_type", "outlet_type", "receptacle_type", "kind_of_device", "device_type_name", "type_of_device", "what"}},
 	{Name: "tag", synonyms: []string{"label", "tag_code", "tag_no", "label_code", "sticker"}},
 	{Name: statusColumn, synonyms: []string{"state", "in_service", "status_of_device"}},

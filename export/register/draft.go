@@ -244,7 +244,7 @@ func (p *planner) place(site store.Site, d *rowDevice, row *Row) {
 	}
 	if d.was != nil && d.was.Place.ID != "" {
 		w := d.was.Place
-		have := map[string]any{"building": w.Building, "floor": w.Floor, "room": w.Room, "name": w.Name, "order": w.Order, "critical_load": w.CriticalLoad, "whom_to_tell": w.WhomToTell}
+		have := map[string]any{"building": w.Building, "floor": w.Floor, "room": w.Room, "name": w.Name, "order": w.Order, "critical_load": w.CriticalLoad, "whom_to_tell": w.WhomToTell, "test_from": w.TestFrom, "test_until": w.TestUntil}
 		p.change("place.set", site.ID, d.place, row.Place, have)
 		return
 	}

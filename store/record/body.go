@@ -232,6 +232,13 @@ func (r *Record) checkMeaning() *Fault {
 		if len(text(orNull(fields(r.Body)["kind"]))) == 0 {
 			return fault("bad_body", "set.kind", "A device needs a kind.")
 		}
+	case "round.made", "round.set":
+		stops, said := fields(r.Body)["stops"]
+		some := false
+		ok := said && listOf(stops, func(s string) bool { some = true; return IsStop(s) })
+		if r.Kind == "round.made" && !(ok && some) || said && !ok {
+			return fault("bad_body", "set.stops", "A round needs its stops: a list of a device and a test each, such as ID/button.")
+		}
 	case "entry.imported":
 		body := bodyOf(r.Body)
 		if orNull(body["readings"])[0] != '{' && (len(text(orNull(body["day"]))) == 0 || len(text(orNull(body["result"]))) == 0) {
@@ -274,6 +281,9 @@ func isFieldName(s string) bool {
 	}
 	return true
 }
+
+// IsStop reports whether s names a stop of a round: a device's id, a slash and a task.
+func IsStop(s string) bool { return len(s) > 37 && IsID(s[:36]) && s[36] == '/' && isWord(s[37:]) }
 
 func isSiteCode(s string) bool {
 	if len(s) < 2 || len(s) > 12 {

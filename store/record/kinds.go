@@ -21,14 +21,14 @@ device.retired         site      reason:text! on:day
 device.replaced        site      with:id! reason:text on:day
 tag.bound              site      tag:tag!
 tag.freed              site      tag:tag!
-entry.made             site      form:form! readings:readings! series:series given:object shown:object source:text read_by:text typed_by:text note:text photos:list
+entry.made             site      form:form! readings:readings! series:series given:object shown:object source:text read_by:text typed_by:text note:text photos:list round:id
 entry.imported         site      form:form! readings:readings series:series given:object shown:object day:day result:text source:text read_by:text typed_by:text note:text photos:list
 entry.corrected        site      entry:id! readings:readings! series:series given:object reason:text!
 entry.withdrawn        site      entry:id! reason:text!
-round.made             site
-round.set              site
-round.closed           site
-round.accepted         site
+round.made             site      set:set! seen:stamp
+round.set              site      set:set! seen:stamp
+round.closed           site      day:day! done:number left:number skipped:number back:number proved:object instrument:text passed:list
+round.accepted         site      note:text
 defect.opened          site      device:id! text:text! cause:text severity:text protector:id due:day parts:list photos:list
 defect.noted           site      device:id! text:text severity:text due:day parts:list photos:list
 defect.made_safe       site      device:id! how:text! photos:list

@@ -1,0 +1,76 @@
+package server
+
+import (
+	"net/http"
+	"strings"
+	"testing"
+
+	"tripwell/store"
+)
+
+func (r *rig) rounds() (out []store.Round) {
+	r.t.Helper()
+	must(r.t, r.store.View(store.Scope{All: true, Role: "owner"}, func(v *store.View) (err error) {
+		out, err = v.Rounds("")
+		return err
+	}))
+	return out
+}
+
+func TestRound_MadeFromAVisitWalkedAndAccepted(t *testing.T) {
+	r := newRig(t, 5)
+	manager, crew := r.signIn(r.manager), r.signIn(r.crew)
+	visit := "/rounds/new?site=KILN-LANE&until=2099-12-31"
+	form := setAll(r.openForm(manager, visit), "site", r.site, "who.0", r.crew.ID, "note", "Keys at the desk", "starts", "a quarter past")
+	if res := r.submit(manager, "/rounds"+strings.TrimPrefix(visit, "/rounds/new"), form.Encode()); res.status != http.StatusUnprocessableEntity || !strings.Contains(res.body, "a quarter past") || !strings.Contains(res.body, "Keys at the desk") {
+		t.Fatalf("a time that is none: got %d, want the page back with what was typed", res.status)
+	}
+	form.Set("starts", "06:30")
+	first := r.wantTo(manager, "/rounds", form)
+	if again := r.wantTo(manager, "/rounds", form); again != first || len(r.rounds()) != 1 {
+		t.Fatalf("sent twice: %d rounds, at %s and %s", len(r.rounds()), first, again)
+	}
+	round := r.rounds()[0]
+	if len(round.Stops) != 5 || round.People[0] != r.crew.ID || round.Note != "Keys at the desk" || round.Starts != "06:30" {
+		t.Fatalf("got %+v", round)
+	}
+	if page := r.open(manager, visit).body; !strings.Contains(page, "more are on open rounds already") {
+		t.Error("what an open round has is offered a second time")
+	}
+	at := "/rounds/" + round.ID
+	if page := r.open(crew, at).body; !strings.Contains(page, `http-equiv="refresh"`) || strings.Contains(page, "Accept this round") {
+		t.Error("a round that is open must read itself again, and crew accept nothing")
+	}
+	if res := r.submit(crew, at+"/accept", "record="+newID()); res.status != http.StatusForbidden {
+		t.Errorf("crew accepts: got %d, want 403", res.status)
+	}
+	if res := r.submit(manager, at+"/accept", "record="+newID()+"&accept_note=All+good"); res.status != http.StatusConflict || !strings.Contains(res.body, "Nobody has ended") {
+		t.Errorf("not ended: got %d, want 409", res.status)
+	}
+	edit := setAll(r.openForm(manager, at+"/edit"), "note", "Keys at the gate")
+	r.wantTo(manager, at+"/edit", edit)
+	r.append(store.Draft{Kind: "round.closed", Log: r.site, Subject: round.ID, By: r.crew.ID, Body: set{"day": "2026-12-01", "done": 0, "left": 5, "passed": []any{set{"device": round.Stops[0].Device, "task": round.Stops[0].Task, "reason": "no-time"}}}})
+	if page := r.open(manager, "/rounds").body; !strings.Contains(page, "1 round waits to be accepted.") {
+		t.Error("the list does not say that a round waits")
+	}
+	page := r.open(manager, at).body
+	if !strings.Contains(page, "no time left") || !strings.Contains(page, "Keys at the gate") {
+		t.Errorf("the page of an ended round says: %s", page)
+	}
+	r.wantTo(manager, at+"/accept", setAll(r.openForm(manager, at), "accept_note", "The rest next week"))
+	if page := r.open(crew, at).body; !strings.Contains(page, "The rest next week") || strings.Contains(page, `http-equiv="refresh"`) {
+		t.Errorf("accepted: %s", page)
+	}
+}
+
+func TestRound_OnlyDevicesOfItsSite(t *testing.T) {
+	r := newRig(t, 1)
+	manager := r.signIn(r.manager)
+	form := setAll(r.openForm(manager, "/rounds/new?site=KILN-LANE&until=2099-12-31"), "site", r.site)
+	for _, stops := range []string{newID() + "/button", r.devices[0] + "/dancing", "something"} {
+		form.Set("stops.0", stops)
+		if res := r.submit(manager, "/rounds", form.Encode()); res.status == http.StatusSeeOther {
+			t.Errorf("%s was taken", stops)
+		}
+	}
+}

@@ -3,7 +3,6 @@ package bundle
 import (
 	"archive/zip"
 	"bufio"
-	"encoding/xml"
 	"errors"
 	"fmt"
 	"io"
@@ -54,8 +53,8 @@ func openCells(in io.ReaderAt, size int64) (*cells, error) {
 	return c, c.readShared()
 }
 
-// tokens walks the tokens of a part.
-func (c *cells) tokens(name string, token func(d *xml.Decoder, t xml.Token) error) error {
+// walk reads a part.
+func (c *cells) walk(name string, start func(e element) error, end func(name string) error, text func(t []byte) error) error {
 	f := c.files[name]
 	if f == nil {
 		return fmt.Errorf("its part %s is missing", name)
@@ -65,63 +64,40 @@ func (c *cells) tokens(name string, token func(d *xml.Decoder, t xml.Token) erro
 		return err
 	}
 	defer in.Close()
-	d := xml.NewDecoder(bufio.NewReaderSize(io.LimitReader(in, fileMost), 1<<16))
-	for {
-		t, err := d.RawToken()
-		if err == io.EOF {
-			return nil
-		}
-		if err != nil {
-			return fmt.Errorf("its part %s cannot be read: %w", name, err)
-		}
-		if err := token(d, t); err != nil {
-			return err
-		}
+	m := markup{in: bufio.NewReaderSize(io.LimitReader(in, fileMost), 1<<16)}
+	if err := m.walk(start, end, text); err != nil {
+		return fmt.Errorf("its part %s: %w", name, err)
 	}
+	return nil
 }
 
-func attribute(e xml.StartElement, local string) string {
-	for _, a := range e.Attr {
-		if a.Name.Local == local {
-			return a.Value
-		}
-	}
-	return ""
-}
+func noEnd(string) error  { return nil }
+func noText([]byte) error { return nil }
 
 // home reads the list of worksheets.
 func (c *cells) home() error {
-	const home = "xl/workbook.xml"
 	targets := map[string]string{}
-	err := c.tokens("xl/_rels/workbook.xml.rels", func(_ *xml.Decoder, t xml.Token) error {
-		if e, ok := t.(xml.StartElement); ok && e.Name.Local == "Relationship" {
-			target := attribute(e, "Target")
+	err := c.walk("xl/_rels/workbook.xml.rels", func(e element) error {
+		if e.name == "Relationship" {
+			target := e.attribute("Target", false)
 			if strings.HasPrefix(target, "/") {
 				target = strings.TrimPrefix(target, "/")
 			} else {
 				target = path.Join("xl", target)
 			}
-			targets[attribute(e, "Id")] = target
+			targets[e.attribute("Id", false)] = target
 		}
 		return nil
-	})
+	}, noEnd, noText)
 	if err != nil {
 		return err
 	}
-	return c.tokens(home, func(_ *xml.Decoder, t xml.Token) error {
-		e, ok := t.(xml.StartElement)
-		if !ok || e.Name.Local != "sheet" {
-			return nil
+	return c.walk("xl/workbook.xml", func(e element) error {
+		if e.name == "sheet" {
+			c.sheets = append(c.sheets, sheetPart{e.attribute("name", false), targets[e.attribute("id", true)]})
 		}
-		id := ""
-		for _, a := range e.Attr {
-			if a.Name.Space == "r" && a.Name.Local == "id" || a.Name.Local == "id" && a.Name.Space != "" {
-				id = a.Value
-			}
-		}
-		c.sheets = append(c.sheets, sheetPart{attribute(e, "name"), targets[id]})
 		return nil
-	})
+	}, noEnd, noText)
 }
 
 func (c *cells) readShared() error {
@@ -129,35 +105,36 @@ func (c *cells) readShared() error {
 	if c.files[name] == nil {
 		return nil
 	}
-	var text strings.Builder
+	var one strings.Builder
 	in, phonetic, total := false, false, 0
-	return c.tokens(name, func(_ *xml.Decoder, t xml.Token) error {
-		switch t := t.(type) {
-		case xml.StartElement:
-			switch t.Name.Local {
-			case "si":
-				text.Reset()
-			case "t":
-				in = true
-			case "rPh":
-				phonetic = true
+	start := func(e element) error {
+		switch e.name {
+		case "si":
+			one.Reset()
+		case "t":
+			in = true
+		case "rPh":
+			phonetic = true
+		}
+		return nil
+	}
+	end := func(name string) error {
+		switch name {
+		case "si":
+			if total += one.Len(); total > sharedMost {
+				return errors.New("its shared texts are larger than 1 GiB")
 			}
-		case xml.EndElement:
-			switch t.Name.Local {
-			case "si":
-				if total += text.Len(); total > sharedMost {
-					return errors.New("its shared texts are larger than 1 GiB")
-				}
-				c.shared = append(c.shared, text.String())
-			case "t":
-				in = false
-			case "rPh":
-				phonetic = false
-			}
-		case xml.CharData:
-			if in && !phonetic {
-				text.Write(t)
-			}
+			c.shared = append(c.shared, one.String())
+		case "t":
+			in = false
+		case "rPh":
+			phonetic = false
+		}
+		return nil
+	}
+	return c.walk(name, start, end, func(t []byte) error {
+		if in && !phonetic {
+			one.Write(t)
 		}
 		return nil
 	})
@@ -173,21 +150,16 @@ type cell struct {
 // rows reads a worksheet; the cells are good until the next row.
 func (c *cells) rows(s sheetPart, row func(number int, cells []cell) error) error {
 	r := rowReader{cells: c}
-	return c.tokens(s.file, func(_ *xml.Decoder, t xml.Token) error {
-		switch t := t.(type) {
-		case xml.StartElement:
-			return r.start(t)
-		case xml.EndElement:
-			if t.Name.Local == "row" {
-				return row(r.number, r.row)
-			}
-			return r.end(t.Name.Local)
-		case xml.CharData:
-			if r.in {
-				r.text = append(r.text, t...)
-				if len(r.text) > cellTextMost {
-					return fmt.Errorf("row %d holds a text of more than 1 MiB", r.number)
-				}
+	end := func(name string) error {
+		if name == "row" {
+			return row(r.number, r.row)
+		}
+		return r.end(name)
+	}
+	return c.walk(s.file, r.start, end, func(t []byte) error {
+		if r.in {
+			if r.text = append(r.text, t...); len(r.text) > cellTextMost {
+				return fmt.Errorf("row %d holds a text of more than 1 MiB", r.number)
 			}
 		}
 		return nil
@@ -197,36 +169,39 @@ func (c *cells) rows(s sheetPart, row func(number int, cells []cell) error) erro
 // rowReader puts the cells of a row together.
 type rowReader struct {
 	*cells
-	number  int
-	row     []cell
-	column  int
-	kind    string
-	formula bool
-	in      bool // text that counts is being read
-	text    []byte
+	number   int
+	row      []cell
+	column   int
+	kind     string
+	formula  bool
+	in       bool // text that counts is being read
+	phonetic bool // how a text is pronounced: no part of it
+	text     []byte
 }
 
-func (r *rowReader) start(e xml.StartElement) error {
-	switch e.Name.Local {
+func (r *rowReader) start(e element) error {
+	switch e.name {
 	case "row":
 		r.number++
-		if n, err := strconv.Atoi(attribute(e, "r")); err == nil {
+		if n, err := strconv.Atoi(e.attribute("r", false)); err == nil {
 			r.number = n
 		}
 		r.row, r.column = r.row[:0], 0
 	case "c":
 		r.column++
-		if n := columnOf(attribute(e, "r")); n > 0 {
+		if n := columnOf(e.attribute("r", false)); n > 0 {
 			r.column = n
 		}
 		if r.column > columnsMost {
 			return fmt.Errorf("row %d has a column beyond the last", r.number)
 		}
-		r.kind, r.formula, r.text = attribute(e, "t"), false, r.text[:0]
+		r.kind, r.formula, r.text = e.attribute("t", false), false, r.text[:0]
 	case "f":
 		r.formula = true
 	case "v", "t":
-		r.in = true
+		r.in = !r.phonetic
+	case "rPh":
+		r.phonetic = true
 	}
 	return nil
 }
@@ -235,6 +210,8 @@ func (r *rowReader) end(local string) error {
 	switch local {
 	case "v", "t":
 		r.in = false
+	case "rPh":
+		r.phonetic = false
 	case "c":
 		value, err := r.value()
 		if err != nil {

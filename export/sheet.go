@@ -257,7 +257,7 @@ func (s *sheet) end() error {
 		return fmt.Errorf("sheet %s: a row of %d cells under %d headings", s.name, s.cells, len(s.cols))
 	}
 	if s.flat != nil {
-		s.book.progress()
+		s.book.rows++
 		return s.flat.end()
 	}
 	if s.last == sheetRows {
@@ -270,7 +270,7 @@ func (s *sheet) end() error {
 	if err := s.rows.row(s.number, s.buf); err != nil {
 		return fmt.Errorf("sheet %s, row %d: %w", s.name, s.last, err)
 	}
-	s.book.progress()
+	s.book.rows++
 	return nil
 }
 

@@ -35,7 +35,6 @@ type WorkbookSource struct {
 	Limits  []LimitLine
 
 	PersonName func(id string) string // from the directory, "" unknown; may be nil
-	Progress   func(rows int)         // called now and then with the rows written so far; may be nil
 }
 
 // LogLine is the size and root of one log, with its site's code ("" for org and office).
@@ -107,15 +106,6 @@ type book struct {
 
 	flat    flatRows // for Table: takes the rows of one sheet
 	flatKey string
-}
-
-// progressRows is how often Progress is told.
-const progressRows = 2000
-
-func (b *book) progress() {
-	if b.rows++; b.src.Progress != nil && b.rows%progressRows == 0 {
-		b.src.Progress(b.rows)
-	}
 }
 
 func (b *book) say(key string, pairs ...any) string { return b.words.Say(key, pairs...) }

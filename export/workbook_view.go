@@ -23,7 +23,9 @@ type WorkbookAsk struct {
 	AllSites     bool   // the scope covers the whole organisation
 	Head         string // signed head text, "" without one
 	NoHead       string // why there is none
-	Progress     func(rows int)
+	// Progress is told now and then how many tests are written, and about how many there are in all. An error ends the
+	// workbook. It may be nil.
+	Progress func(done, total int) error
 }
 
 // WorkbookOf signs a head, reads the store at one moment within a scope and writes the workbook: the one way the
@@ -59,7 +61,7 @@ func WorkbookOf(w io.Writer, s *store.Store, scope store.Scope, ask WorkbookAsk)
 func FromView(v *store.View, ask WorkbookAsk) (WorkbookSource, error) {
 	src := WorkbookSource{
 		Organisation: ask.Organisation, AllSites: ask.AllSites, From: ask.From, To: ask.To, AsOf: ask.Now, Store: ask.Store, Epoch: ask.Epoch,
-		Demo: ask.Demo, Head: ask.Head, NoHead: ask.NoHead, Progress: ask.Progress, PersonName: v.PersonName,
+		Demo: ask.Demo, Head: ask.Head, NoHead: ask.NoHead, PersonName: v.PersonName,
 	}
 	var err error
 	if src.Sites, err = sitesOf(v, ask.Site); err != nil {
@@ -88,8 +90,54 @@ func FromView(v *store.View, ask WorkbookAsk) (WorkbookSource, error) {
 	for _, set := range sets {
 		reader.sets[limitRevision(set.ID, set.Revision)] = set
 	}
-	src.Entries, err = reader.lines(src.Sites)
+	if src.Entries, err = reader.lines(src.Sites); err != nil || ask.Progress == nil {
+		return src, err
+	}
+	total, err := entriesIn(v, src.Sites, ask)
+	src.Entries = counted(src.Entries, total, ask.Progress)
 	return src, err
+}
+
+// entriesIn counts the tests of a workbook by the months they were made in: a little more than there are where a period
+// begins or ends within a month, a little fewer where tests were withdrawn.
+func entriesIn(v *store.View, sites []store.Site, ask WorkbookAsk) (total int, err error) {
+	for _, site := range sites {
+		tallies, err := v.Tallies(site.ID)
+		if err != nil {
+			return 0, err
+		}
+		for _, t := range tallies {
+			first, end := forms.Date(t.Year, time.Month(t.Month), 1), forms.Date(t.Year, time.Month(t.Month)+1, 1)
+			if ask.To != forms.NoDay && first > ask.To || ask.From != forms.NoDay && end <= ask.From {
+				continue
+			}
+			for _, n := range t.Results {
+				total += n
+			}
+		}
+	}
+	return total, nil
+}
+
+// progressEntries is how often progress is told.
+const progressEntries = 250
+
+// counted tells how many entries have been read.
+func counted(lines iter.Seq2[EntryLine, error], total int, tell func(done, total int) error) iter.Seq2[EntryLine, error] {
+	return func(yield func(EntryLine, error) bool) {
+		done := 0
+		for line, err := range lines {
+			if done%progressEntries == 0 && err == nil {
+				err = tell(done, total)
+			}
+			if done++; !yield(line, err) || err != nil {
+				return
+			}
+		}
+		if err := tell(done, max(done, total)); err != nil {
+			yield(EntryLine{}, err)
+		}
+	}
 }
 
 func sitesOf(v *store.View, site string) ([]store.Site, error) {

@@ -2,6 +2,8 @@ package server
 
 import (
 	"net/http"
+	"net/url"
+	"slices"
 
 	"github.com/labstack/echo/v4"
 
@@ -22,6 +24,11 @@ type downloadsPage struct {
 }
 
 func (s *Server) downloadsShow(c echo.Context) error {
+	return s.downloadsPage(c, http.StatusOK, nil, Wrong{})
+}
+
+// downloadsPage shows the page, with what was typed and is wrong where it comes again.
+func (s *Server) downloadsPage(c echo.Context, status int, typed url.Values, wrong Wrong) error {
 	sites, err := s.sitesOf(c)
 	if err != nil {
 		return err
@@ -40,12 +47,28 @@ func (s *Server) downloadsShow(c echo.Context) error {
 		},
 		LabelsText: k.say("office.downloads.labels_no_url"),
 	}
+	for i := range view.Workbook {
+		f := &view.Workbook[i]
+		f.Value, f.Options = typed.Get(f.Name), chosenOf(f.Options, typed.Get(f.Name))
+		if f.Name == wrong.Field {
+			f.Error = wrong.Text
+		}
+	}
 	if s.store.URL() != "" {
 		view.LabelsText, view.Labels = k.say("paper.labels.under"), true
 	}
 	view.Table = tableFields(k, offered)
 	view.Round = s.roundFields(sites)
-	return s.page(c, http.StatusOK, "downloads.html", view)
+	return s.page(c, status, "downloads.html", view)
+}
+
+// chosenOf gives the options with another one chosen.
+func chosenOf(options []option, value string) []option {
+	out := slices.Clone(options)
+	for i := range out {
+		out[i].Chosen = out[i].Value == value
+	}
+	return out
 }
 
 // workbookTake sends what the downloads page offers, within the reader's own scope.

@@ -26,16 +26,21 @@ func (s *Server) exportTaken(ctx context.Context, by, what, site string, from, t
 // workbookAsk reads which part of the store is asked for: site (id or code), from and to (test days); name is for the
 // file.
 func (s *Server) workbookAsk(c echo.Context, sc store.Scope) (ask export.WorkbookAsk, name string, err error) {
-	if ask.From, err = dayParam(c, "from"); err != nil {
+	return s.workbookAsked(sc, c.QueryParam)
+}
+
+// workbookAsked reads the same from wherever it was typed.
+func (s *Server) workbookAsked(sc store.Scope, get func(string) string) (ask export.WorkbookAsk, name string, err error) {
+	if ask.From, err = dayTyped("from", get("from")); err != nil {
 		return ask, "", err
 	}
-	if ask.To, err = dayParam(c, "to"); err != nil {
+	if ask.To, err = dayTyped("to", get("to")); err != nil {
 		return ask, "", err
 	}
 	if ask.From != forms.NoDay && ask.To != forms.NoDay && ask.To < ask.From {
 		return ask, "", refuse(codeInvalid, "to", "The period ends before it begins. Swap its two days.")
 	}
-	ask.Site, name, err = s.siteAsked(sc, c.QueryParam("site"))
+	ask.Site, name, err = s.siteAsked(sc, get("site"))
 	return ask, name, err
 }
 

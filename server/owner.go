@@ -144,7 +144,10 @@ func (s *Server) dayThere(site store.Site, asked forms.Day) forms.Day {
 }
 
 func dayParam(c echo.Context, name string) (forms.Day, error) {
-	text := c.QueryParam(name)
+	return dayTyped(name, c.QueryParam(name))
+}
+
+func dayTyped(name, text string) (forms.Day, error) {
 	if text == "" {
 		return forms.NoDay, nil
 	}

@@ -82,6 +82,8 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 		"downloads.html": downloadsPage{Frame: frameOf("Downloads", "downloads"), Heading: "Take it with you.", Under: "Files are made from the store as it stands now.", LabelsText: "A PDF for sheets of 30 labels.",
 			Workbook: []field{{Name: "site", Label: "Site", Options: choices("", "", "All your sites")}, {Name: "from", Label: "Entries from", Type: "date"}, {Name: "to", Label: "Entries to", Type: "date"}},
 			Labels:   true},
+		"making.html": makingPage{Frame: frameOf("Workbook", "downloads"), Crumbs: []link{{Href: "/downloads", Text: "Downloads"}}, Heading: "The workbook is being made.", Lead: "500 of about 2,000 tests are written.", Done: 500, Total: 2000,
+			What: []string{"KILN-LANE", "Entries from 1 Jan 2026 to today"}, Again: []link{{Href: "/workbook/2JHC0VQ2", Text: "Look again"}}, File: []link{{Href: "/workbook/2JHC0VQ2/tripwell-KILN-LANE.xlsx", Text: "Download workbook"}}},
 		"labels.html": labelsPage{Frame: frameOf("Labels", "downloads"), Heading: "Labels", Under: "Sheets and rolls.", Sheets: []field{{Name: "site", Label: "Site", Options: choices("", "", "All your sites")}},
 			Batch: []field{{Name: "count", ID: "batch-count", Label: "How many", Type: "number", Value: "30"}}, Markings: []field{{Name: "roll", ID: "marking-roll", Label: "Roll", Type: "text"}}},
 		"setup.html":    s.setupSample(),

@@ -46,6 +46,7 @@ type Server struct {
 	image   atomic.Pointer[store.Image] // the backup that is being taken away
 	imports *importArea                 // registers
 	results *importArea                 // tests made elsewhere
+	makings *makingArea                 // workbooks for the office pages
 }
 
 // New reads the pages, the words and the files for browsers; all of them are embedded, so an error is a fault of the build.
@@ -54,7 +55,7 @@ func New(s *store.Store, o Options) (*Server, error) {
 	if err != nil {
 		return nil, err
 	}
-	srv := &Server{store: s, log: o.Log, alone: o.Alone, words: words, cross: http.NewCrossOriginProtection(), wrong: newWrongLinks(), imports: newImportArea(), results: newImportArea()}
+	srv := &Server{store: s, log: o.Log, alone: o.Alone, words: words, cross: http.NewCrossOriginProtection(), wrong: newWrongLinks(), imports: newImportArea(), results: newImportArea(), makings: newMakingArea()}
 	if srv.log == nil {
 		srv.log = slog.New(slog.DiscardHandler)
 	}
@@ -126,5 +127,6 @@ func (s *Server) Serve(ctx context.Context, public, owner net.Listener) error {
 			_ = srv.Close()
 		}
 	}
+	s.makings.close()
 	return failed
 }

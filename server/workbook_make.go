@@ -1,0 +1,163 @@
+package server
+
+import (
+	"cmp"
+	"errors"
+	"io"
+	"net/http"
+	"net/url"
+	"reflect"
+	"strconv"
+	"time"
+
+	"github.com/labstack/echo/v4"
+
+	"tripwell/export"
+	"tripwell/forms"
+	"tripwell/store"
+)
+
+// makingPage says how far a workbook is; without JavaScript it looks again by itself.
+type makingPage struct {
+	Frame
+	Crumbs        []link
+	Heading, Lead string
+	Done, Total   int // of a bar; Total 0 = none
+	What          []string
+	Again         []link // the page itself, while the file is being made
+	File          []link // the file, once it is there
+}
+
+// makingSoon is how long a workbook may take to be there at once, and makingLook after how many seconds the page looks
+// again.
+const (
+	makingSoon = 700 * time.Millisecond
+	makingLook = 2
+)
+
+// workbookMake begins a workbook and goes on to the page that tells how far it is.
+func (s *Server) workbookMake(c echo.Context) error {
+	values, err := decodeForm(c)
+	if err != nil {
+		return err
+	}
+	sc, by := scope(c), person(c).ID
+	ask, name, err := s.workbookAsked(sc, values.Get)
+	if err != nil {
+		return s.downloadsAgain(c, values, err)
+	}
+	if err := s.exportTaken(c.Request().Context(), by, "workbook", ask.Site, ask.From, ask.To); err != nil {
+		return err
+	}
+	m := &making{person: by, file: "tripwell-" + name + ".xlsx", site: cmp.Or(values.Get("site"), s.words.Say("office.downloads.all_sites")), ask: ask, scope: sc}
+	s.makings.begin(m, func(w io.Writer, ask export.WorkbookAsk) error { return export.WorkbookOf(w, s.store, sc, ask) })
+	select {
+	case <-m.ended:
+	case <-time.After(makingSoon):
+	case <-c.Request().Context().Done():
+	}
+	return toPage(c, "/workbook/"+m.id)
+}
+
+// downloadsAgain shows the downloads page with what was typed and what is wrong beside its field.
+func (s *Server) downloadsAgain(c echo.Context, values url.Values, err error) error {
+	var refused *store.Error
+	w, fault := wrongOf(err)
+	if fault || errors.As(err, &refused) && refused.Code == codeNotFound {
+		return err
+	}
+	return s.downloadsPage(c, http.StatusUnprocessableEntity, values, w)
+}
+
+// makingFor finds the making an address names. Who lost a site since may not have what was read before.
+func (s *Server) makingFor(c echo.Context) (*making, error) {
+	m, err := s.makings.get(c.Param("making"), person(c).ID)
+	if err == nil && !reflect.DeepEqual(m.scope, scope(c)) {
+		return nil, errNoMaking
+	}
+	return m, err
+}
+
+func (s *Server) workbookMaking(c echo.Context) error {
+	m, err := s.makingFor(c)
+	if err != nil {
+		return err
+	}
+	view, next := s.makingView(c, m), ""
+	switch {
+	case view.Again != nil:
+		next = strconv.Itoa(makingLook) + "; url=" + view.Again[0].Href
+	case view.File != nil && m.first():
+		next = "1; url=" + view.File[0].Href
+	}
+	if next != "" {
+		c.Response().Header().Set("Refresh", next)
+	}
+	return s.page(c, http.StatusOK, "making.html", view)
+}
+
+// first says whether the file was not offered by itself yet.
+func (m *making) first() bool {
+	m.mu.Lock()
+	defer m.mu.Unlock()
+	told := m.told
+	m.told = true
+	return !told
+}
+
+func (s *Server) makingView(c echo.Context, m *making) makingPage {
+	k, at := s.ink(), "/workbook/"+m.id
+	view := makingPage{Frame: s.frame(c, k.say("office.downloads.workbook"), "downloads"), Crumbs: []link{{Href: "/downloads", Text: k.say("office.downloads.title")}}, What: []string{m.site}}
+	if m.ask.From != forms.NoDay || m.ask.To != forms.NoDay {
+		from, to := k.say("office.downloads.open_from"), k.say("office.downloads.open_to")
+		if m.ask.From != forms.NoDay {
+			from = k.day(m.ask.From)
+		}
+		if m.ask.To != forms.NoDay {
+			to = k.day(m.ask.To)
+		}
+		view.What = append(view.What, k.say("office.downloads.making_period", "from", from, "to", to))
+	}
+	m.mu.Lock()
+	defer m.mu.Unlock()
+	switch {
+	case m.err != nil:
+		view.Heading, view.Lead = k.say("office.downloads.made_failed"), s.told(c, m.err).Text
+	case m.out != nil:
+		view.Heading, view.File = k.say("office.downloads.made"), []link{{Href: at + "/" + m.file, Text: k.say("office.downloads.made_go")}}
+		view.Lead = k.say("office.downloads.made_under", "tests", count(m.done), "size", sizeText(m.size))
+	default:
+		view.Heading, view.Again = k.say("office.downloads.making"), []link{{Href: at, Text: k.say("office.downloads.making_again")}}
+		view.Lead, view.Done, view.Total = k.say("office.downloads.making_under", "done", count(m.done), "total", count(m.total)), m.done, m.total
+		if !m.begun {
+			view.Lead = k.say("office.downloads.making_waits")
+		}
+	}
+	return view
+}
+
+// sizeText says a number of bytes in decimal units, as file managers mostly do.
+func sizeText(n int64) string {
+	if n < 1_000_000 {
+		return count(int(max(1, n/1000))) + " kB"
+	}
+	return strconv.FormatFloat(float64(n)/1e6, 'f', 1, 64) + " MB"
+}
+
+// workbookMade sends the finished file.
+func (s *Server) workbookMade(c echo.Context) error {
+	m, err := s.makingFor(c)
+	if err != nil {
+		return err
+	}
+	file, size, done, err := m.open()
+	if err != nil {
+		return err
+	}
+	defer done()
+	c.Response().Header().Set("Content-Length", strconv.FormatInt(size, 10))
+	return s.download(c, workbookKind, m.file, func(w io.Writer) error {
+		_, err := io.Copy(w, file)
+		return err
+	})
+}

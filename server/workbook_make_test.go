@@ -1,0 +1,146 @@
+package server
+
+import (
+	"context"
+	"fmt"
+	"io"
+	"net/http"
+	"net/url"
+	"os"
+	"path/filepath"
+	"strings"
+	"testing"
+
+	"github.com/xuri/excelize/v2"
+
+	"tripwell/export"
+	"tripwell/forms"
+	"tripwell/store"
+)
+
+// heldTurns keeps every workbook waiting until the function it gives is called.
+func (r *rig) heldTurns() (free func()) {
+	for range makingsAtOne {
+		r.server.makings.turn <- struct{}{}
+	}
+	return func() {
+		for range makingsAtOne {
+			<-r.server.makings.turn
+		}
+	}
+}
+
+// making gives the workbook that is kept for a person.
+func (r *rig) making(p store.Person) *making {
+	r.server.makings.mu.Lock()
+	defer r.server.makings.mu.Unlock()
+	return r.server.makings.of[p.ID]
+}
+
+// temporaryFiles counts the workbooks that have a name in the temp folder.
+func temporaryFiles(t *testing.T) int {
+	t.Helper()
+	names, err := filepath.Glob(filepath.Join(os.TempDir(), "tripwell-workbook-*"))
+	must(t, err)
+	return len(names)
+}
+
+func TestWorkbookMake_PageLooksAgainUntilTheFileIsThere(t *testing.T) {
+	t.Setenv("TMPDIR", t.TempDir())
+	r := newRig(t, 3)
+	b := r.signIn(r.auditor)
+	free := r.heldTurns()
+	res := r.submit(b, "/workbook", url.Values{"site": {"KILN-LANE"}, "from": {"2026-01-01"}}.Encode())
+	at := res.header.Get("Location")
+	if res.status != http.StatusSeeOther || !strings.HasPrefix(at, "/workbook/") {
+		t.Fatalf("got %d to %q", res.status, at)
+	}
+	page := r.open(b, at)
+	if page.header.Get("Refresh") != "2; url="+at || !strings.Contains(page.body, "Others are being made before it.") || !strings.Contains(page.body, "KILN-LANE") {
+		t.Errorf("waiting: refresh %q, page:\n%s", page.header.Get("Refresh"), page.body)
+	}
+	if res := r.open(b, at+"/tripwell-KILN-LANE.xlsx"); res.status != http.StatusNotFound {
+		t.Errorf("a file that is not there yet: got %d", res.status)
+	}
+	free()
+	<-r.making(r.auditor).ended
+	page = r.open(b, at)
+	file := at + "/tripwell-KILN-LANE.xlsx"
+	if page.header.Get("Refresh") != "1; url="+file || !strings.Contains(page.body, "The workbook is ready.") || !strings.Contains(page.body, `href="`+file+`"`) {
+		t.Errorf("ready: refresh %q, page:\n%s", page.header.Get("Refresh"), page.body)
+	}
+	if again := r.open(b, at); again.header.Get("Refresh") != "" {
+		t.Error("the file is sent by itself a second time")
+	}
+	got := r.open(b, file)
+	book, err := excelize.OpenReader(strings.NewReader(got.body))
+	must(t, err)
+	defer book.Close()
+	if rows, err := book.GetRows("Register"); err != nil || len(rows) != 4 {
+		t.Errorf("%d rows in the register, %v; want the heading and three devices", len(rows), err)
+	}
+	if n := temporaryFiles(t); n != 0 {
+		t.Errorf("%d temporary files have names", n)
+	}
+	// Another person has no part in it, whatever address they try.
+	for _, path := range []string{at, file} {
+		if res := r.open(r.signIn(r.manager), path); res.status != http.StatusNotFound {
+			t.Errorf("somebody else's %s: got %d, want 404", path, res.status)
+		}
+	}
+	// Another workbook takes the place of the first.
+	next := r.submit(b, "/workbook", "").header.Get("Location")
+	if res := r.open(b, file); res.status != http.StatusNotFound || next == at {
+		t.Errorf("the former workbook: got %d, want 404", res.status)
+	}
+	// Who lost the site may not have what was read before.
+	<-r.making(r.auditor).ended
+	r.auditor.Sites = nil
+	_, err = r.store.PutPerson(context.Background(), r.manager.ID, r.auditor)
+	must(t, err)
+	if res := r.open(b, next); res.status == http.StatusOK {
+		t.Error("the workbook of a site that was taken away is still shown")
+	}
+}
+
+func TestWorkbookMake_SaysHowFarItIs(t *testing.T) {
+	r := newRig(t, 1)
+	b := r.signIn(r.manager)
+	reached, goOn := make(chan struct{}), make(chan struct{})
+	m := &making{person: r.manager.ID, site: "All your sites", ask: export.WorkbookAsk{From: forms.NoDay, To: forms.NoDay}, file: "tripwell-all.xlsx", scope: r.manager.Scope()}
+	r.server.makings.begin(m, func(w io.Writer, ask export.WorkbookAsk) error {
+		must(t, ask.Progress(1250, 4000))
+		close(reached)
+		<-goOn
+		return ask.Progress(4000, 4000)
+	})
+	<-reached
+	if page := r.open(b, "/workbook/"+m.id); !strings.Contains(page.body, count(1250)+" of about "+count(4000)+" tests are written.") || !strings.Contains(page.body, `<progress max="4000" value="1250"`) {
+		t.Errorf("half way:\n%s", page.body)
+	}
+	// What is no longer wanted stops at its next word of progress, and says so nowhere.
+	second := &making{person: r.manager.ID, file: "tripwell-all.xlsx", scope: r.manager.Scope()}
+	r.server.makings.begin(second, func(io.Writer, export.WorkbookAsk) error { return fmt.Errorf("disk full") })
+	close(goOn)
+	<-m.ended
+	if m.err == nil || m.out != nil {
+		t.Errorf("the first went on: %v", m.err)
+	}
+	<-second.ended
+	if page := r.open(b, "/workbook/"+second.id); !strings.Contains(page.body, "could not be made") || !strings.Contains(page.body, "Reference") || page.header.Get("Refresh") != "" {
+		t.Errorf("a fault:\n%s", page.body)
+	}
+}
+
+func TestWorkbookMake_WrongPeriodComesBack(t *testing.T) {
+	r := newRig(t, 1)
+	res := r.submit(r.signIn(r.manager), "/workbook", url.Values{"site": {"KILN-LANE"}, "from": {"2026-05-02"}, "to": {"2026-05-01"}}.Encode())
+	for _, want := range []string{"The period ends before it begins", `value="2026-05-02"`, `value="KILN-LANE" selected`} {
+		if !strings.Contains(res.body, want) {
+			t.Errorf("the page does not hold %q", want)
+		}
+	}
+	if res.status != http.StatusUnprocessableEntity {
+		t.Errorf("got %d, want 422", res.status)
+	}
+}

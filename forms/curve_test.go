@@ -64,20 +64,6 @@ func TestShipped_ClassABandLiesBelowLetGo(t *testing.T) {
 	t.Error("us-class-a has no trip-current limit")
 }
 
-// NEC 240.4(D); the same as common practice has it: 15 A wants 14 AWG or larger, 20 A wants 12 AWG.
-func TestMinConductor_SmallConductors(t *testing.T) {
-	for breaker, want := range map[float64]int{15: 14, 20: 12, 30: 10, 10: 14, 25: 10} {
-		if got, ok := MinConductor(breaker); !ok || got != want {
-			t.Errorf("%v A: %d AWG (%v), want %d", breaker, got, ok, want)
-		}
-	}
-	for _, breaker := range []float64{0, -15, 40} {
-		if awg, ok := MinConductor(breaker); ok {
-			t.Errorf("%v A: the clause names nothing, got %d", breaker, awg)
-		}
-	}
-}
-
 // NECA 169, 5.1 and CPSC: buttons monthly.
 func TestShipped_ButtonsMonthly(t *testing.T) {
 	for _, p := range Shipped().Plans {

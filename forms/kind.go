@@ -73,3 +73,24 @@ func DefaultLimitSet(kind string, delayed bool) string {
 	}
 	return ""
 }
+
+// IsOutlet reports whether a kind is an outlet of the building that something is plugged into.
+func IsOutlet(kind string) bool {
+	switch kind {
+	case GFCIReceptacle, ProtectedReceptacle, PlainReceptacle, HospitalReceptacle:
+		return true
+	}
+	return false
+}
+
+// NoGroundPermitted is what equipment_ground says where the box has none and the code lets it be so.
+const NoGroundPermitted = "none-permitted"
+
+// MarkingFor names the marking an outlet without an equipment ground needs: the protecting device itself
+// "no-equipment-ground", an outlet fed through one "both", since it is also marked as GFCI protected (NEC 406.4(D)(2)(b) and (c)).
+func MarkingFor(kind string) string {
+	if Protects(kind) {
+		return "no-equipment-ground"
+	}
+	return "both"
+}

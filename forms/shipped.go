@@ -13,9 +13,10 @@ var shippedData embed.FS
 
 // Catalogue is what is asked, against which limits, how often.
 type Catalogue struct {
-	Forms     []*Form     `json:"forms"`
-	LimitSets []*LimitSet `json:"limit_sets"`
-	Plans     []*Plan     `json:"plans"`
+	Forms     []*Form      `json:"forms"`
+	LimitSets []*LimitSet  `json:"limit_sets"`
+	Plans     []*Plan      `json:"plans"`
+	Usual     *UsualPlaces `json:"usual"`
 }
 
 // Shipped gives the forms, limit sets and plans that come with the program, each at revision 1, in force from
@@ -23,6 +24,7 @@ type Catalogue struct {
 var Shipped = sync.OnceValue(func() *Catalogue {
 	c := &Catalogue{}
 	read(shippedData, "data/plans.json", &c.Plans)
+	read(shippedData, "data/usual_places.json", &c.Usual)
 	for _, id := range shippedForms {
 		f := new(Form)
 		read(shippedData, "data/forms/"+id+".json", f)

@@ -106,7 +106,7 @@ func (f *fold) record(r *record.Record, st record.Stamp, seq uint64) error {
 		return f.granted(r, st)
 	case "round.closed", "round.accepted":
 		return f.roundSaid(r)
-	case "forms.set", "limits.set", "plan.set":
+	case "forms.set", "limits.set", "plan.set", "usual.set":
 		return f.ruleSet(r)
 	case "defect.opened", "defect.noted", "defect.made_safe", "defect.assigned", "defect.repaired", "defect.closed", "defect.reopened":
 		return f.defectSaid(r)

@@ -7,10 +7,10 @@ import (
 	"tripwell/store/record"
 )
 
-// ruleSet keeps a revision of a form, a limit set or a plan, and judges or dates again what it touches. Of two records
+// ruleSet keeps a revision of a form, a limit set, a plan or a list of usual places, and judges or dates again what it touches. Of two records
 // that state the same revision the larger (clock, id) stands.
 func (f *fold) ruleSet(r *record.Record) error {
-	var body struct{ Form, Limits, Plan json.RawMessage }
+	var body struct{ Form, Limits, Plan, Usual json.RawMessage }
 	if err := json.Unmarshal(r.Body, &body); err != nil {
 		return badBody("", "The body of %s is not readable: %v.", r.Kind, err)
 	}
@@ -54,6 +54,16 @@ func (f *fold) ruleSet(r *record.Record) error {
 		}
 		key, p.b = ruleKey(rulePlan, l.ord, plan.ID, plan.Revision), append(p.b, body.Plan...)
 		todo.what = todoDates
+	case "usual.set":
+		usual, err := parseChecked[forms.UsualPlaces](body.Usual, "usual")
+		if err == nil {
+			err = firstWrong("usual", forms.CheckUsualPlaces(usual))
+		}
+		if err != nil {
+			return err
+		}
+		key, p.b = ruleKey(ruleUsual, l.ord, usual.ID, usual.Revision), append(p.b, body.Usual...)
+		todo.what = 0
 	}
 	if old := f.on(bktRule).get(key); old != nil {
 		u := unpacker{b: old}
@@ -68,6 +78,9 @@ func (f *fold) ruleSet(r *record.Record) error {
 	f.rules.forget()
 	if r.Log == record.Org {
 		todo.site = 0
+	}
+	if todo.what == 0 { // nothing is judged or dated by it
+		return nil
 	}
 	return f.queue(todo)
 }
@@ -93,6 +106,8 @@ func parseChecked[T any](raw json.RawMessage, field string) (*T, error) {
 	case *forms.LimitSet:
 		id, revision = v.ID, v.Revision
 	case *forms.Plan:
+		id, revision = v.ID, v.Revision
+	case *forms.UsualPlaces:
 		id, revision = v.ID, v.Revision
 	}
 	if id == "" || len(id) > 200 || revision < 1 {

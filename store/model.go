@@ -37,7 +37,7 @@ import (
 //	m_feed   site 4 | device 16 | n 4   → nothing: a device that names this one as its source, or as what took its place
 //	m_code   CODE 0 | site 4            → nothing
 //	m_round  site 4 | n 4               → seqs of the ends and acceptances of a round
-//	m_rule   type 1 | site 4 | name 0 | revision 4 → clock 8 | record 16 | JSON of a form, limit set or plan
+//	m_rule   type 1 | site 4 | name 0 | revision 4 → clock 8 | record 16 | JSON of a form, limit set, plan or list of usual places
 //	m_todo   seq 8                      → work not yet done for that record, see todo.go
 var (
 	bktSiteLog  = []byte("m_log")
@@ -87,6 +87,7 @@ const (
 	ruleForm  = 'f'
 	ruleLimit = 'l'
 	rulePlan  = 'p'
+	ruleUsual = 'u'
 )
 
 func putDay(b []byte, d forms.Day) []byte {

@@ -15,6 +15,7 @@ type Place struct {
 	CriticalLoad                          string
 	WhomToTell                            string // before TEST is pressed here
 	TestFrom, TestUntil                   string // 15:04 at the site: when TEST may be pressed here; both or none
+	Usual                                 string // kind of place that usually needs protection, as somebody said; forms.NoUsualPlace, "" = by its names
 	seen                                  uint64 // largest stamp of what is said of it
 }
 
@@ -27,7 +28,7 @@ func (p Place) Context() string {
 func placeOf(site string, t *thing) *Place {
 	return &Place{ID: t.id.String(), Site: site, Building: t.text("building"), Floor: t.text("floor"), Room: t.text("room"),
 		Name: t.text("name"), Order: t.number("order"), CriticalLoad: plainText(t.value("critical_load")), WhomToTell: t.text("whom_to_tell"),
-		TestFrom: t.text("test_from"), TestUntil: t.text("test_until"), seen: t.seen()}
+		TestFrom: t.text("test_from"), TestUntil: t.text("test_until"), Usual: t.text("usual"), seen: t.seen()}
 }
 
 // Places gives a site's places in walking order.

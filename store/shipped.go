@@ -20,6 +20,7 @@ var (
 func FormSubject(id string) string     { return record.NamedID("forms.set", id) }
 func LimitSetSubject(id string) string { return record.NamedID("limits.set", id) }
 func PlanSubject(id string) string     { return record.NamedID("plan.set", id) }
+func UsualSubject() string             { return record.NamedID("usual.set", forms.UsualPlacesID) }
 
 // ship appends the first records.
 func (g *group) ship() error {
@@ -57,6 +58,9 @@ func (g *group) ship() error {
 		if err := put("plan.set", PlanSubject(p.ID), "plan", p); err != nil {
 			return fmt.Errorf("shipped plan %s: %w", p.ID, err)
 		}
+	}
+	if err := put("usual.set", UsualSubject(), "usual", c.Usual); err != nil {
+		return fmt.Errorf("shipped list of usual places: %w", err)
 	}
 	return nil
 }

@@ -44,6 +44,7 @@ record.sealed          any       reason:text!
 forms.set              org       form:object! reason:text
 limits.set             org,site  limits:object! reason:text
 plan.set               org,site  plan:object! reason:text
+usual.set              org,site  usual:object! reason:text
 instrument.set         org       set:wide! seen:stamp
 instrument.calibrated  org       on:day! due:day certificate:text
 instrument.proved      org       on:day! tag:tag

@@ -125,7 +125,10 @@ func randomRegister(r *rand.Rand) []byte {
 				row[c] = pick("", "NEC", "IEC")
 			case "equipment_ground":
 				row[c] = pick("", "yes", "none-permitted")
-			case "delayed":
+			case "earthing", "supply_edition":
+				trait, _ := forms.TraitNamed(name)
+				row[c] = pick(append([]string{""}, trait.Options...)...)
+			case "delayed", "no_neutral", "distribution_circuit", "special_location", "double_insulated", "new_construction", "quiet_ground", "locking":
 				row[c] = pick("", "yes", "no")
 			case "installed":
 				row[c] = pick("", "2021-02-28", "2019-12-31")

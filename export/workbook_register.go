@@ -18,7 +18,10 @@ var registerColumns = []column{
 	{"zone", 18, textCell}, {"standard", 10, textCell}, {"address", 24, textCell}, {"order", 8, numberCell}, {"critical_load", 18, textCell}, {"whom_to_tell", 18, textCell}, {"test_from", 10, textCell}, {"test_until", 10, textCell},
 	{"breaker_a", 10, numberCell}, {"poles", 8, numberCell}, {"circuit_v", 10, numberCell}, {"conductor", 12, textCell}, {"supply", 10, textCell}, {"circuit_standard", 10, textCell},
 	{"serial", 14, textCell}, {"nominal_v", 10, numberCell}, {"delayed", 10, textCell}, {"waveform", 14, textCell}, {"equipment_ground", 16, textCell}, {"faces", 8, numberCell},
-	{"own_limit_set", 18, textCell}, {"gauge", 10, textCell}, {"length_m", 10, numberCell}, {"kept_at", 18, textCell}, {"note", 40, textCell},
+	{"own_limit_set", 18, textCell}, {"gauge", 10, textCell}, {"length_m", 10, numberCell},
+	{"no_neutral", 10, textCell}, {"earthing", 10, textCell}, {"distribution", 12, textCell}, {"special_location", 12, textCell}, {"double_insulated", 12, textCell},
+	{"new_construction", 12, textCell}, {"quiet_ground", 10, textCell}, {"supply_edition", 12, textCell}, {"locking", 10, textCell},
+	{"kept_at", 18, textCell}, {"note", 40, textCell},
 	{"imported", 30, textCell},
 }
 
@@ -85,7 +88,8 @@ func (b *book) registerFields(s *sheet, line DeviceLine) {
 	p := line.Device.Place
 	s.text(line.Site.Zone).text(line.Site.Standard).text(line.Site.Address).rating(p.Order).text(p.CriticalLoad).text(p.WhomToTell).text(p.TestFrom).text(p.TestUntil)
 	field(line.Circuit, "breaker_a", "poles", "voltage_v", "conductor", "supply", "standard")
-	field(line.Fields, "serial", "nominal_v", "delayed", "waveform", "equipment_ground", "faces", "limit_set", "gauge", "length_m", "where", "note")
+	field(line.Fields, "serial", "nominal_v", "delayed", "waveform", "equipment_ground", "faces", "limit_set", "gauge", "length_m",
+		"no_neutral", "earthing", "distribution", "special_location", "double_insulated", "new_construction", "quiet_ground", "supply_edition", "locking", "where", "note")
 }
 
 // nextDue is the earliest date of a device; Due is NoDay where there is none.

@@ -71,6 +71,23 @@ func (j *judging) gauge() string {
 	return g.Gauge
 }
 
+// GaugeMass writes the mass of a go/no-go gauge as entries carry it, "4 oz" or "115 g"; ok is false where it says none.
+// Nothing typed is no gauge.
+func GaugeMass(typed string) (mass string, ok bool) {
+	typed = strings.TrimSpace(typed)
+	if typed == "" {
+		return "", true
+	}
+	for _, unit := range []string{"oz", "g"} {
+		if figure, is := strings.CutSuffix(strings.ToLower(typed), unit); is {
+			figure = strings.Replace(strings.TrimSpace(figure), ",", ".", 1)
+			n, isNumber := typedNumber(figure)
+			return figure + " " + unit, isNumber && n > 0
+		}
+	}
+	return "", false
+}
+
 // gaugeProof weighs a go/no-go answer by the mass of the gauge: a gauge lighter than the limit cannot prove that it
 // holds, a heavier one cannot prove that it does not. Where the mass is not known the answer is taken at its word.
 func gaugeProof(l *Limit, gauge string, outcome int) (int, string) {

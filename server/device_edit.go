@@ -107,6 +107,7 @@ func (s *Server) deviceInput(f *typedForm) deviceInput {
 	installed := f.date("installed")
 	f.setText(in.device, "installed", "installed", installed.String())
 	f.setText(in.device, "equipment_ground", "equipment_ground", f.choice("equipment_ground", "", "yes", "none-permitted"))
+	traitInput(f, in.device)
 	if f.changed("delayed") {
 		in.device["delayed"] = f.Get("delayed") == "yes"
 	}
@@ -370,6 +371,7 @@ func (s *Server) deviceValues(d store.Device, fed store.Circuit) map[string]stri
 	if v, _ := d.Fields["delayed"].(bool); v {
 		out["delayed"] = "yes"
 	}
+	traitValues(d.Fields, out)
 	out["supply"], _ = fed.Fields["supply"].(string)
 	if out["breaker_a"] = ""; fed.Fields["breaker_a"] != nil {
 		if v, ok := fed.Fields["breaker_a"].(float64); ok {

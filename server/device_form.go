@@ -1,6 +1,8 @@
 package server
 
 import (
+	"slices"
+
 	"github.com/labstack/echo/v4"
 
 	"tripwell/forms"
@@ -48,11 +50,15 @@ func (s *Server) deviceForm(c echo.Context, site store.Site, d *store.Device, f 
 		},
 	}
 	if d != nil {
+		if traits := s.traitGroup(d.Kind, site, q); len(traits.Fields) > 0 {
+			p.Groups = slices.Insert(p.Groups, 2, traits)
+		}
 		p.Frame, p.Heading = s.frame(c, k.say("office.device.edit"), "sites"), k.say("office.device.edit_head", "spot", s.spot(d.DeviceRow))
 		p.Crumbs = append(p.Crumbs, link{Href: "/devices/" + d.ID, Text: s.spot(d.DeviceRow)})
 		p.Action, p.Submit, p.Cancel = "/devices/"+d.ID+"/edit", k.say("office.device.save"), "/devices/"+d.ID
 		return p
 	}
+	p.Groups[1].Note = k.say("office.device.traits_later")
 	if place := f.Get("place"); place != "" {
 		p.Hidden = append(p.Hidden, hidden{"place", place})
 		p.Lead = k.say("office.device.move_hint")
@@ -60,4 +66,75 @@ func (s *Server) deviceForm(c echo.Context, site store.Site, d *store.Device, f 
 	}
 	p.Groups = append(p.Groups, fieldGroup{Legend: k.say("office.device.group_label"), Fields: []field{q("tag"), q("mint", func(f *field) { f.Type = "check" })}})
 	return p
+}
+
+// traitGroup asks what the limits of a kind depend on, and only of a kind whose limits do.
+func (s *Server) traitGroup(kind string, site store.Site, q func(name string, more ...func(*field)) field) fieldGroup {
+	k := s.ink()
+	g := fieldGroup{Legend: k.say("office.device.group_traits"), Note: k.say("office.device.traits_note")}
+	for _, t := range forms.TraitsOf(kind, site.Standard) {
+		g.Fields = append(g.Fields, q(t.Field, func(f *field) {
+			if t.Figure {
+				f.Type = "number"
+			}
+			if len(t.Options) > 0 {
+				f.Options = []option{{Text: k.say("office.device.not_said")}}
+			}
+			for _, o := range t.Options {
+				f.Options = append(f.Options, option{Value: o, Text: s.traitText(t, o)})
+			}
+		}))
+	}
+	return g
+}
+
+// traitText writes what a trait says.
+func (s *Server) traitText(t forms.Trait, value string) string {
+	k := s.ink()
+	switch key := "office.device.answer." + t.Field + "." + value; {
+	case t.IsYesNo() && value == "yes":
+		return k.say("office.yes")
+	case t.IsYesNo() && value == "no":
+		return k.say("office.no")
+	case k.words.Has(key):
+		return k.say(key)
+	}
+	return value
+}
+
+// traitInput reads what a form may change of them; a form that does not ask for one leaves it as it is.
+func traitInput(f *typedForm, set map[string]any) {
+	for _, t := range forms.Traits() {
+		switch name := t.Field; {
+		case !f.Has(name):
+		case t.Figure:
+			f.setFigure(set, name, name, f.figure(name))
+		case t.IsYesNo():
+			if v := f.choice(name, "", "yes", "no"); f.changed(name) {
+				if set[name] = v == "yes"; v == "" {
+					set[name] = nil
+				}
+			}
+		case len(t.Options) > 0:
+			f.setText(set, name, name, f.choice(name, append([]string{""}, t.Options...)...))
+		default:
+			f.setText(set, name, name, f.line(name, 40))
+		}
+	}
+}
+
+// traitValues puts a device's traits into the values of its form.
+func traitValues(fields map[string]any, out map[string]string) {
+	for _, t := range forms.Traits() {
+		switch v := fields[t.Field].(type) {
+		case bool:
+			out[t.Field] = map[bool]string{true: "yes", false: "no"}[v]
+		case float64:
+			out[t.Field] = plainFigure(v)
+		case string:
+			out[t.Field] = v
+		default:
+			out[t.Field] = ""
+		}
+	}
 }

@@ -305,7 +305,8 @@ func instrumentNames(v *store.View) (map[string]string, error) {
 }
 
 // factOrder are the register fields a device page shows, in this order; fields of newer programs follow by name.
-var factOrder = []string{"make", "model", "serial", "rating_a", "nominal_v", "rated_residual_ma", "delayed", "waveform", "equipment_ground", "faces", "installed", "gauge", "length_m", "limit_set", "where", "note"}
+var factOrder = []string{"make", "model", "serial", "rating_a", "nominal_v", "rated_residual_ma", "delayed", "waveform", "equipment_ground", "faces", "installed", "gauge", "length_m",
+	"locking", "quiet_ground", "new_construction", "no_neutral", "supply_edition", "double_insulated", "earthing", "distribution", "special_location", "limit_set", "where", "note"}
 
 // fieldUnits are the units of register fields that are figures.
 var fieldUnits = map[string]string{"rating_a": "A", "nominal_v": "V", "rated_residual_ma": "mA", "length_m": "m", "breaker_a": "A"}
@@ -360,6 +361,9 @@ func (s *Server) fieldText(field string, value any) string {
 			return k.say(map[string]string{"yes": "office.device.ground_yes", "none-permitted": "office.device.ground_none"}[v])
 		case "limit_set":
 			return k.named("limit_set", v)
+		case "earthing", "supply_edition":
+			t, _ := forms.TraitNamed(field)
+			return s.traitText(t, v)
 		case "waveform":
 			return k.answer("waveform", v)
 		}

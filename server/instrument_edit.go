@@ -101,6 +101,7 @@ func (s *Server) instrumentSet(f *typedForm) map[string]any {
 		}
 	}
 	s.rampSet(f, set)
+	s.testerSet(f, set)
 	if f.changed("retired") {
 		set["retired"] = f.Get("retired") == "yes"
 	}
@@ -128,8 +129,24 @@ func (s *Server) rampSet(f *typedForm, set map[string]any) {
 	}
 }
 
+// testerSet reads what is asked of a tester without a current source, and of the gauge kept with an instrument.
+func (s *Server) testerSet(f *typedForm, set map[string]any) {
+	resistor, volts := f.figure("test_resistor_ohm"), f.figure("test_nominal_v")
+	if resistor != nil && volts != nil {
+		f.refuse("test_resistor_ohm", s.words.Say("office.instrument.tester_both"))
+	}
+	f.setFigure(set, "test_resistor_ohm", "test_resistor_ohm", resistor)
+	f.setFigure(set, "test_nominal_v", "test_nominal_v", volts)
+	gauge, ok := forms.GaugeMass(f.line("retention_gauge", 40))
+	if !ok {
+		f.refuse("retention_gauge", s.words.Say("office.instrument.gauge_wrong"))
+	}
+	f.setText(set, "retention_gauge", "retention_gauge", gauge)
+}
+
 func instrumentValues(i store.Instrument) map[string]string {
-	out := map[string]string{"name": i.Name, "serial": i.Serial, "calibration_due": i.CalibrationDue.String(), "ramp_rate": "", "ramp_step": "", "ramp_dwell": "", "retired": ""}
+	out := map[string]string{"name": i.Name, "serial": i.Serial, "calibration_due": i.CalibrationDue.String(), "ramp_rate": "", "ramp_step": "", "ramp_dwell": "", "retired": "",
+		"test_resistor_ohm": figureOrNone(i.TestResistorOhm), "test_nominal_v": figureOrNone(i.TestNominalV), "retention_gauge": i.RetentionGauge}
 	for _, code := range accuracyCodes {
 		out["percent."+code], out["plus."+code] = figureOrNone(i.Accuracy[code].Percent), figureOrNone(i.Accuracy[code].Plus)
 	}
@@ -188,6 +205,11 @@ func (s *Server) instrumentForm(c echo.Context, i *store.Instrument) formPage {
 				{Name: "ramp_rate", Label: k.say("office.instrument.rate"), Type: "number", Unit: "mA/s"},
 				{Name: "ramp_step", Label: k.say("office.instrument.step"), Type: "number", Unit: k.named("unit", "mA")},
 				{Name: "ramp_dwell", Label: k.say("office.instrument.dwell"), Type: "number", Unit: k.named("unit", "ms")},
+			}},
+			{Legend: k.say("office.instrument.group_tester"), Note: k.say("office.instrument.tester_note"), Fields: []field{
+				{Name: "test_resistor_ohm", Label: k.say("office.instrument.resistor"), Type: "number", Unit: k.named("unit", "ohm")},
+				{Name: "test_nominal_v", Label: k.say("office.instrument.at_voltage"), Type: "number", Unit: k.named("unit", "V")},
+				{Name: "retention_gauge", Label: k.say("office.instrument.gauge"), Hint: k.say("office.instrument.gauge_hint")},
 			}},
 		},
 	}

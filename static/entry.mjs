@@ -1,11 +1,14 @@
 // Turns a finished draft into the body of an entry.made record: the facts, what the judgement needs to know of the
 // device and the instrument, and what this phone told the tester. Pure.
 
-/** Register fields of a device that have a name of their own in `given`, and what they must be. */
+/** Register fields of a device that have a name of their own in `given`, and what they must be (forms/trait.go, testdata/given.json). */
 const NAMED = { rated_residual_ma: Number, equipment_ground: String, rating_a: Number, nominal_v: Number, delayed: asFlag, faces: Number, waveform: String };
 /** Further register fields a limit's or a form's condition may name. */
 const OTHER = ["length_m", "gauge", "locking", "no_neutral", "supply_edition", "double_insulated", "new_construction", "quiet_ground",
   "earthing", "special_location", "distribution"];
+
+/** What an instrument's register says that has the same name in `given`. */
+const TESTER = ["test_resistor_ohm", "test_nominal_v", "retention_gauge"];
 
 function asFlag(v) {
   return v === true || v === "yes" || v === "true";
@@ -18,7 +21,7 @@ export function givenOf({ device, form, limitSet, instrument }) {
   const given = { kind: device.kind, form_rev: form.revision };
   if (limitSet) Object.assign(given, { limit_set: limitSet.limit_set, limit_rev: limitSet.revision });
   const said = device.fields ?? {};
-  for (const [name, as] of Object.entries(NAMED)) if (present(said[name]) && present(as(said[name]))) given[name] = as(said[name]);
+  for (const [name, as] of Object.entries(NAMED)) if (present(said[name]) && as(said[name])) given[name] = as(said[name]);
   if (device.supply) given.supply = device.supply;
   const fields = {};
   for (const name of OTHER) if (present(said[name])) fields[name] = said[name];
@@ -27,10 +30,11 @@ export function givenOf({ device, form, limitSet, instrument }) {
   return given;
 }
 
-function givenInstrument({ id, accuracy, ramp, calibration_due: due }) {
+function givenInstrument({ id, accuracy, ramp, calibration_due: due, ...more }) {
   const given = { instrument: id };
   if (accuracy && Object.keys(accuracy).length > 0) given.accuracy = accuracy;
   if (ramp) given.ramp = ramp;
+  for (const [name, v] of Object.entries(more)) if (TESTER.includes(name) && present(v)) given[name] = v;
   if (due) given.calibration_due = due;
   return given;
 }

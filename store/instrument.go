@@ -17,7 +17,21 @@ type Instrument struct {
 	CalibrationDue forms.Day                 `json:"calibration_due,omitempty"` // NoDay where it is not known
 	Accuracy       map[string]forms.Accuracy `json:"accuracy,omitempty"`        // by reading code
 	Ramp           *forms.Ramp               `json:"ramp,omitempty"`
-	Retired        bool                      `json:"retired,omitempty"`
+	// A tester without a current source: its resistor, or the line voltage at which it injects what it is marked with.
+	TestResistorOhm float64 `json:"test_resistor_ohm,omitzero"`
+	TestNominalV    float64 `json:"test_nominal_v,omitzero"`
+	RetentionGauge  string  `json:"retention_gauge,omitempty"` // mass of the go/no-go gauge kept with it: "4 oz"
+	Retired         bool    `json:"retired,omitempty"`
+}
+
+// Tell says in what is given which instrument was used, and what the judgement needs to know of it; the same as
+// static/entry.mjs (testdata/given.json).
+func (i *Instrument) Tell(g *forms.Given) {
+	g.Instrument, g.Accuracy, g.Ramp = i.ID, i.Accuracy, i.Ramp
+	g.TestResistorOhm, g.TestNominalV, g.RetentionGauge = i.TestResistorOhm, i.TestNominalV, i.RetentionGauge
+	if due := i.CalibrationDue; due != forms.NoDay {
+		g.CalibrationDue = &due
+	}
 }
 
 // Instruments gives the organisation's test instruments, by name.
@@ -39,6 +53,12 @@ func (v *View) Instruments() ([]Instrument, error) {
 		if d, err := forms.ParseDay(t.text("calibration_due")); err == nil {
 			i.CalibrationDue = d
 		}
+		for name, into := range map[string]*float64{"test_resistor_ohm": &i.TestResistorOhm, "test_nominal_v": &i.TestNominalV} {
+			if v := t.value(name); v != nil && json.Unmarshal(v, into) != nil {
+				*into = 0
+			}
+		}
+		i.RetentionGauge = t.text("retention_gauge")
 		// What does not read as an accuracy or a ramp says nothing of either.
 		if a := t.value("accuracy"); a != nil && json.Unmarshal(a, &i.Accuracy) != nil {
 			i.Accuracy = nil

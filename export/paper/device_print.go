@@ -155,7 +155,8 @@ func (p *devicePrint) facts() {
 	}
 	add(p.words.Say("paper.col.kind"), p.words.Say("kind."+d.Kind))
 	add(p.words.Say("paper.col.circuit"), strings.Join(nonEmpty(d.Panel, d.Circuit), " / "))
-	for _, field := range []string{"make", "model", "serial", "rating_a", "nominal_v", "rated_residual_ma", "delayed", "waveform", "equipment_ground", "faces", "installed", "where", "gauge", "length_m", "note"} {
+	for _, field := range []string{"make", "model", "serial", "rating_a", "nominal_v", "rated_residual_ma", "delayed", "waveform", "equipment_ground", "faces", "installed", "where", "gauge", "length_m",
+		"locking", "quiet_ground", "new_construction", "no_neutral", "supply_edition", "double_insulated", "earthing", "distribution", "special_location", "note"} {
 		add(p.words.Say("office.device.field."+field), p.fact(field, d.Fields[field]))
 	}
 	add(p.words.Say("office.device.field.critical_load"), d.Place.CriticalLoad)

@@ -169,29 +169,8 @@ func holds(when []forms.Condition, e forms.Entry) bool {
 
 // given is what the register says of a device, as an entry would carry it.
 func (a *asking) given(d store.Device) forms.Given {
-	g := forms.Given{Kind: d.Kind, RatedResidualMA: d.RatedResidualMA, RatingA: d.RatingA, Fields: map[string]any{}}
-	for name, value := range d.Fields {
-		number, _ := value.(float64)
-		text, _ := value.(string)
-		switch name {
-		case "equipment_ground":
-			g.EquipmentGround = text
-		case "nominal_v":
-			g.NominalV = number
-		case "faces":
-			g.Faces = int(number)
-		case "waveform":
-			g.Waveform = text
-		case "delayed":
-			g.Delayed = value == true || text == "yes"
-		case "circuit":
-			g.Supply = a.supply[text]
-		case "kind", "rated_residual_ma", "rating_a", "place":
-		default:
-			g.Fields[name] = value
-		}
-	}
-	return g
+	circuit, _ := d.Fields["circuit"].(string)
+	return forms.GivenOf(d.Kind, d.Fields, a.supply[circuit])
 }
 
 // title says what the round is: its task and until when.

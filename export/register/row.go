@@ -2,6 +2,7 @@ package register
 
 import (
 	"fmt"
+	"slices"
 	"strings"
 	"time"
 	"unicode/utf8"
@@ -293,6 +294,12 @@ func (c *Column) words(text string) (v any, wrong string) {
 			return word, ""
 		}
 		return nil, "Write grounded or isolated."
+	case "earthing", "supply_edition":
+		t, _ := forms.TraitNamed(c.Name)
+		if word := strings.ToLower(text); slices.Contains(t.Options, word) {
+			return word, ""
+		}
+		return nil, "Write " + strings.Join(t.Options, " or ") + "."
 	case "circuit_standard":
 		if word := strings.ToUpper(text); word == "NEC" || word == "IEC" {
 			return word, ""

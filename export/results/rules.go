@@ -92,30 +92,15 @@ func (ru *rules) instrument(text string) (*store.Instrument, string) {
 
 // given is what the judgement needs to know of device and instrument, as the phone puts it into an entry.
 func (d *device) given(form *forms.Form, set *forms.LimitSet, in *store.Instrument) forms.Given {
-	g := forms.Given{Kind: d.Kind, FormRev: form.Revision}
+	circuit, _ := d.Fields["circuit"].(string)
+	supply, _ := d.site.supply[circuit].(string)
+	g := forms.GivenOf(d.Kind, d.Fields, supply)
+	g.FormRev = form.Revision
 	if set != nil {
 		g.LimitSet, g.LimitRev = set.ID, set.Revision
 	}
-	number := func(name string) float64 { f, _ := d.Fields[name].(float64); return f }
-	text := func(name string) string { s, _ := d.Fields[name].(string); return s }
-	g.RatedResidualMA, g.RatingA, g.NominalV, g.Faces = number("rated_residual_ma"), number("rating_a"), number("nominal_v"), int(number("faces"))
-	g.EquipmentGround, g.Waveform, g.Delayed = text("equipment_ground"), text("waveform"), flag(d.Fields["delayed"])
-	g.Supply, _ = d.site.supply[text("circuit")].(string)
-	for _, name := range []string{"length_m", "gauge", "locking", "no_neutral", "supply_edition", "double_insulated", "new_construction", "quiet_ground", "earthing", "special_location", "distribution"} {
-		if v := d.Fields[name]; v != nil && v != "" {
-			if g.Fields == nil {
-				g.Fields = map[string]any{}
-			}
-			g.Fields[name] = v
-		}
-	}
-	if in == nil {
-		return g
-	}
-	g.Instrument, g.Accuracy, g.Ramp = in.ID, in.Accuracy, in.Ramp
-	if in.CalibrationDue != forms.NoDay {
-		due := in.CalibrationDue
-		g.CalibrationDue = &due
+	if in != nil {
+		in.Tell(&g)
 	}
 	return g
 }

@@ -64,3 +64,13 @@ test("entry: what lists show of it", () => {
   assert.deepEqual(s.numbers, { test_current_ma: 6.8, trip_time_ms: 5200 });
   assert.deepEqual(s.readings, { button_trips: { value: "yes" }, button_resets: { value: "yes" } });
 });
+
+// The same file is run in Go (store/given_test.go), so that a phone and what takes in sheets say the same of a device.
+const { cases } = JSON.parse(readFileSync(new URL("../../testdata/given.json", import.meta.url)));
+for (const { name, device, instrument, given } of cases) {
+  test(`given: ${name}`, () => {
+    const { form_rev, ...got } = givenOf({ device, form, limitSet: null, instrument: instrument ?? null });
+    assert.equal(form_rev, form.revision);
+    assert.deepEqual(got, given);
+  });
+}

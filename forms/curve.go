@@ -21,8 +21,15 @@ func ClassATripMS(currentMA float64) (ms float64, ok bool) {
 
 // ClassARampMA gives the current in mA that the slowest compliant Class A device shows on a ramp of r mA/s from below
 // 6 mA: I^2.43 = 6^2.43 + 2.43 * 20^1.43 * r, the integral of the trip-time curve; rounded to 9 significant digits.
-func ClassARampMA(r float64) float64 {
-	return round9(math.Pow(math.Pow(6, 2.43)+2.43*math.Pow(20, 1.43)*r, 1/2.43))
+func ClassARampMA(r float64) float64 { return RampMA(classATripMA, r) }
+
+// RampMA gives the current in mA that the slowest device still inside a most of the set shows on a ramp of r mA/s. A set
+// may hold devices to less than 6 mA; such a device must trip as soon after its own most as a Class A device after 6 mA,
+// so the time it may take runs from there: I^2.43 = most^2.43 + 2.43 * 20^1.43 * r. Were it counted from 6 mA, a ramp would
+// explain figures that are outside the set's own most by any current. A most above 6 mA is what devices are held to by their
+// owner; the curve itself begins at 6 mA, and beyond it the same integral runs on.
+func RampMA(most, r float64) float64 {
+	return round9(math.Pow(math.Pow(most, 2.43)+2.43*math.Pow(20, 1.43)*r, 1/2.43))
 }
 
 // round9 rounds to 9 significant digits, halves up, by the same few exact operations as static/limit.mjs, so that both

@@ -216,7 +216,7 @@ func (j *judging) excused(l *Limit, r *Reading, a *Applied, f *Finding, figure f
 	if verdict, text = j.guard(l, r, a, f, figure, outcome); verdict != "" {
 		return verdict, text
 	}
-	if outcome == high && l.Ramp != "" && j.rampExplains(r) {
+	if outcome == high && l.Ramp != "" && a.Limit.Max != nil && j.rampExplains(r, *a.Limit.Max) {
 		return ConditionalFail, "limit.ramp_over_reads"
 	}
 	return "", ""
@@ -224,13 +224,13 @@ func (j *judging) excused(l *Limit, r *Reading, a *Applied, f *Finding, figure f
 
 func textOf(r *Reading) string { s, _ := r.Text(); return s }
 
-// rampExplains reports whether a device inside the curve could show this current on the instrument's ramp.
-func (j *judging) rampExplains(r *Reading) bool {
+// rampExplains reports whether a device inside the set's most could show this current on the instrument's ramp.
+func (j *judging) rampExplains(r *Reading, limit float64) bool {
 	rate := j.e.Given.Ramp.Rate()
 	if rate <= 0 {
 		return false
 	}
-	most := ClassARampMA(rate)
+	most := RampMA(limit, rate)
 	if r.Above != nil {
 		return *r.Above < most
 	}

@@ -3,7 +3,7 @@
 
 import { conformity, currentInDoubt, doubt, sure } from "./doubt.mjs";
 import { Facts, fits, given, limitsOn, matches, settle, settled } from "./facts.mjs";
-import { apply, classARampMA, figure, gaugeProof, prove, rampRate, round9 } from "./limit.mjs";
+import { apply, figure, gaugeProof, prove, rampMA, rampRate, round9 } from "./limit.mjs";
 import { Refusal, codeOf, codes } from "./reading.mjs";
 
 /** Names the rules; equal to forms.JudgeVersion. */
@@ -152,7 +152,7 @@ class Judging extends Facts {
       if (outcome === "high" && currentInDoubt(this.entry.given.accuracy, a) && (r.above !== undefined || this.set.rule === "guard-band")) return { verdict: "conditional-fail", text: "limit.current_in_doubt" };
       const open = guarded();
       if (open) return open;
-      if (outcome === "high" && l.ramp && this.rampExplains(r)) return { verdict: "conditional-fail", text: "limit.ramp_over_reads" };
+      if (outcome === "high" && l.ramp && a.limit.max !== undefined && this.rampExplains(r, a.limit.max)) return { verdict: "conditional-fail", text: "limit.ramp_over_reads" };
     }
     return { verdict: "fail", severity: l.severity, text };
   }
@@ -190,10 +190,10 @@ class Judging extends Facts {
     return outcome === "inside" ? { verdict: "conditional-pass", text: "limit.guard_inside" } : { verdict: "conditional-fail", text: "limit.guard_outside" };
   }
 
-  rampExplains(r) {
+  rampExplains(r, limit) {
     const rate = rampRate(this.entry.given.ramp);
     if (rate <= 0) return false;
-    const most = classARampMA(rate);
+    const most = rampMA(limit, rate);
     return r.above !== undefined ? r.above < most : r.value <= most;
   }
 

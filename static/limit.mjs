@@ -17,9 +17,9 @@ export function classATripMS(current) {
   return current >= 6 && current <= 264 ? round9(1000 * Math.pow(20 / current, 1.43)) : undefined;
 }
 
-/** Current in mA the slowest compliant Class A device shows on a ramp of r mA/s (integral of the curve). */
-export function classARampMA(r) {
-  return round9(Math.pow(Math.pow(6, 2.43) + 2.43 * Math.pow(20, 1.43) * r, 1 / 2.43));
+/** Current in mA that the slowest device inside a most of the set shows on a ramp of r mA/s (integral of the curve, from that most on). */
+export function rampMA(most, r) {
+  return round9(Math.pow(Math.pow(most, 2.43) + 2.43 * Math.pow(20, 1.43) * r, 1 / 2.43));
 }
 
 /** Ramp in mA/s, 0 where nothing is known of it. */

@@ -5,7 +5,6 @@ import (
 	"net/http"
 	"net/url"
 	"slices"
-	"strconv"
 	"strings"
 	"unicode/utf8"
 
@@ -176,16 +175,19 @@ func (f *typedForm) figure(name string) *float64 {
 	if v == "" {
 		return nil
 	}
-	n, err := strconv.ParseFloat(strings.Replace(strings.ReplaceAll(v, thin, ""), ",", ".", 1), 64)
+	n, err := forms.ParseFigure(v, false)
 	switch {
-	case err != nil || n > 1e9 || n < -1e9:
+	case err != nil:
+		f.refuse(name, err.Error())
+		return nil
+	case n.Bound != "" || n.Unit != "" || n.Value > 1e9 || n.Value < -1e9:
 		f.refuse(name, f.ink.say("office.form.number"))
 		return nil
-	case n < 0:
+	case n.Value < 0:
 		f.refuse(name, f.ink.say("office.form.positive"))
 		return nil
 	}
-	return &n
+	return &n.Value
 }
 
 // date reads a day; NoDay where nothing was typed.

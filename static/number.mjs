@@ -27,15 +27,18 @@ export function convert(value, from, to) {
   return a !== undefined && a === b ? tidy(value * fa / fb) : undefined;
 }
 
+const OVER = /^[+>]?\s*(?:o\.?l\.?|0\.?l\.?|o\/?r|over(?:[- ]?(?:load|range|limit))?|ovrng|out of range|∞|inf)\s*\S{0,8}$/iu;
+
 /**
  * parseNumber("0,3 s", "ms", ["ms","s"]) → {typed:"0,3", unit:"s", value:300}; "<0.1" → {…, below}; ">310" → {…, above}.
  * typed keeps the figure as it was typed, the unit beside it. Nothing typed gives null; what cannot be read gives {typed, error} with error one of the words field.number.ERROR:
- * ambiguous, not_a_number, negative, unknown_unit.
+ * ambiguous, not_a_number, negative, unknown_unit, over_range. Digits and marks are read as forms/figure.go reads them (testdata/figures.json).
  */
 export function parseNumber(typed, own, units = [own], chosen = own) {
-  const text = typed.trim().replace(/[\u2009\u202f\u00a0]/g, " ");
+  const text = typed.trim().replace(/[\s\u2009\u202f\u00a0]+/gu, " ").replaceAll("\u2212", "-").replaceAll("’", "'");
   if (text === "") return null;
-  const m = /^([<>≤≥]?)\s*([+-]?[\d.,' ]*\d[.,]?)\s*([^\d\s.,]*)$/u.exec(text);
+  if (OVER.test(text)) return { typed, error: "over_range" };
+  const m = /^(?:([<>≤≥])=?|=)?\s*([+-]?\d[\d.,' ]*|[+-]?[.,]\d+)\s*([^\d\s.,]\S{0,11})?$/u.exec(text);
   if (!m) return { typed, error: "not_a_number" };
   const [, sign, digits, suffix] = m;
   let unit = chosen;
@@ -47,21 +50,21 @@ export function parseNumber(typed, own, units = [own], chosen = own) {
   if (plain.error) return { typed, error: plain.error };
   const value = convert(Number(plain.text), unit, own);
   if (value === undefined || !Number.isFinite(value) || Math.abs(value) > 2 ** 53) return { typed, error: "not_a_number" };
-  if (value < 0) return { typed, error: "negative" };
-  const read = { typed: digits.trim(), unit };
+  if (value < 0 || Object.is(value, -0)) return { typed, error: "negative" };
+  const read = { typed: plain.grouped && unit !== own ? plain.text : digits.trim(), unit };
   if (sign === "<" || sign === "≤") return { ...read, below: value };
   if (sign === ">" || sign === "≥") return { ...read, above: value };
   return { ...read, value };
 }
 
-/** Digits with at most one decimal mark; a comma followed by exactly three digits may be either mark, so it is refused. */
+/** Digits with a decimal mark and perhaps thousands apart; a lone comma before exactly three digits may be either mark, so it is refused. */
 function plainDigits(d) {
-  if (/^[+-]?\d{1,3}([ ']\d{3})+([.,]\d+)?$/.test(d)) d = d.replace(/[ ']/g, "");
-  if (/[ ']/.test(d)) return { error: "not_a_number" };
-  const marks = d.replace(/[^.,]/g, "");
-  if (marks.length > 1) return { error: "ambiguous" };
-  if (/^[+-]?[1-9]\d{0,2},\d{3}$/.test(d)) return { error: "ambiguous" };
-  return { text: d.replace(",", ".").replace(/\.$/, "") };
+  const grouped = [[/^[+-]?[1-9]\d{0,2}(,\d{3})+\.\d+$/, ","], [/^[+-]?[1-9]\d{0,2}(,\d{3}){2,}$/, ","], [/^[+-]?[1-9]\d{0,2}(\.\d{3})+,\d+$/, "."],
+    [/^[+-]?[1-9]\d{0,2}(\.\d{3}){2,}$/, "."], [/^[+-]?\d{1,3}([ ']\d{3})+([.,]\d*)?$/, /[ ']/g]].find(([shape]) => shape.test(d));
+  if (grouped) d = d.replaceAll(grouped[1], "");
+  else if (/^[+-]?[1-9]\d{0,2},\d{3}$/.test(d)) return { error: "ambiguous" };
+  if (!/^[+-]?(\d{1,15}|\d{1,15}[.,]\d{0,15}|[.,]\d{1,15})$/.test(d)) return { error: "not_a_number" };
+  return { text: d.replace(",", ".").replace(/\.$/, "").replace(/^\+/, ""), grouped: Boolean(grouped) };
 }
 
 /** A number for eyes: at most `digits` significant digits after rounding, thin spaces from ten thousand on. */

@@ -17,7 +17,8 @@ func TestParseQuantity_ReadsWhatThePhoneReads(t *testing.T) {
 		Figures []struct {
 			Text, Unit, Bound string
 			Value             float64
-			Refused           bool
+			Refused, Blank    bool
+			Negative          bool
 		}
 	}
 	if err := json.Unmarshal(raw, &table); err != nil {
@@ -28,9 +29,15 @@ func TestParseQuantity_ReadsWhatThePhoneReads(t *testing.T) {
 	}
 	for _, c := range table.Figures {
 		q, err := ParseQuantity(c.Text, c.Unit)
-		if c.Refused {
+		if c.Refused || c.Blank {
 			if err == nil {
 				t.Errorf("%q in %s: read as %+v, want a refusal", c.Text, c.Unit, q)
+			}
+			continue
+		}
+		if c.Negative || c.Bound == string(Over) {
+			if err != nil || c.Negative && q.Value >= 0 || string(q.Bound) != c.Bound {
+				t.Errorf("%q in %s: %+v (%v)", c.Text, c.Unit, q, err)
 			}
 			continue
 		}

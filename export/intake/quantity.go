@@ -1,10 +1,10 @@
 package intake
 
 import (
-	"math"
-	"regexp"
 	"strconv"
 	"strings"
+
+	"tripwell/forms"
 )
 
 // Bound says that a figure is a limit of what was measured rather than the value.
@@ -13,9 +13,9 @@ type Bound string
 // Bounds of a figure.
 const (
 	Exact Bound = ""
-	Below Bound = "below" // <0.1
-	Above Bound = "above" // >1999
-	Over  Bound = "over"  // OL: above what the instrument can show, without a figure
+	Below Bound = forms.BoundBelow // <0.1
+	Above Bound = forms.BoundAbove // >1999
+	Over  Bound = forms.BoundOver  // OL: above what the instrument can show, without a figure
 )
 
 // Quantity is a figure as a person or an instrument wrote it. Value is in Unit, which is the unit that was written, or
@@ -36,78 +36,15 @@ type Figures struct {
 // such as A or ms; a unit of another dimension is an error, one of the same dimension is kept (see In).
 func ParseQuantity(text, unit string) (Quantity, error) { return Figures{}.Parse(text, unit) }
 
-var (
-	figureUnit = regexp.MustCompile(`^([<>≤≥]=?|=)?\s*([+-]?\d[\d.,'’\x{a0}\x{202f} ]*|[.,]\d+)\s*(\S{0,12}(?:\s\S{1,8})?)$`)
-	overRange  = regexp.MustCompile(`(?i)^[+>]?\s*(?:o\.?l\.?|0\.?l\.?|o/?r|over(?:[- ]?(?:load|range|limit))?|ovrng|out of range|∞|inf)\s*(\S{0,8})$`)
-)
-
-// Parse is ParseQuantity for figures written in a known way.
+// Parse is ParseQuantity for figures written in a known way. Digits and marks are read as everywhere (forms.ParseFigure).
 func (w Figures) Parse(text, unit string) (Quantity, error) {
-	s := strings.Join(strings.Fields(text), " ")
-	example := "Write the figure alone, such as 20."
-	if len(s) > 60 || s == "" {
-		return Quantity{}, wrong("This is no figure. %s", example)
-	}
-	if m := overRange.FindStringSubmatch(s); m != nil {
-		u, err := unitWritten(m[1], unit)
-		return Quantity{Unit: u, Bound: Over}, err
-	}
-	m := figureUnit.FindStringSubmatch(s)
-	if m == nil {
-		return Quantity{}, wrong("This is no figure. %s", example)
-	}
-	v, err := w.number(strings.TrimSpace(m[2]))
+	f, err := forms.ParseFigure(text, w.DecimalComma)
 	if err != nil {
-		return Quantity{}, err
+		return Quantity{}, wrong("%s", err.Error())
 	}
-	q := Quantity{Value: v}
-	switch {
-	case strings.HasPrefix(m[1], "<"), m[1] == "≤":
-		q.Bound = Below
-	case strings.HasPrefix(m[1], ">"), m[1] == "≥":
-		q.Bound = Above
-	}
-	q.Unit, err = unitWritten(m[3], unit)
+	q := Quantity{Value: f.Value, Bound: Bound(f.Bound)}
+	q.Unit, err = unitWritten(f.Unit, unit)
 	return q, err
-}
-
-var (
-	pointGroups = regexp.MustCompile(`^[+-]?\d{1,3}(\.\d{3})+,\d+$`)
-	commaGroups = regexp.MustCompile(`^[+-]?\d{1,3}(,\d{3})+\.\d+$`)
-	spaceGroups = regexp.MustCompile(`^[+-]?\d{1,3}([ '’\x{a0}\x{202f}]\d{3})+([.,]\d+)?$`)
-	manyCommas  = regexp.MustCompile(`^[+-]?\d{1,3}(,\d{3}){2,}$`)
-	manyPoints  = regexp.MustCompile(`^[+-]?\d{1,3}(\.\d{3}){2,}$`)
-	oneComma    = regexp.MustCompile(`^[+-]?[1-9]\d{0,2},\d{3}$`)
-	plain       = regexp.MustCompile(`^[+-]?(\d{1,15}|\d{1,15}[.,]\d{0,15}|[.,]\d{1,15})$`)
-)
-
-func (w Figures) number(s string) (float64, error) {
-	drop := func(marks string) {
-		s = strings.Map(func(r rune) rune {
-			if strings.ContainsRune(marks, r) {
-				return -1
-			}
-			return r
-		}, s)
-	}
-	switch {
-	case commaGroups.MatchString(s), manyCommas.MatchString(s):
-		drop(",")
-	case pointGroups.MatchString(s), manyPoints.MatchString(s):
-		drop(".")
-	case spaceGroups.MatchString(s):
-		drop(" '’\u00a0\u202f")
-	case oneComma.MatchString(s) && !w.DecimalComma:
-		return 0, wrong("This may be %s or %s. Write it without the comma, or with a point.", strings.Replace(s, ",", "", 1), strings.Replace(s, ",", ".", 1))
-	}
-	if !plain.MatchString(s) {
-		return 0, wrong("This is no figure. Write it with digits and one point, such as 0.3.")
-	}
-	v, err := strconv.ParseFloat(strings.Replace(s, ",", ".", 1), 64)
-	if err != nil || math.IsInf(v, 0) {
-		return 0, wrong("This is no figure. Write it with digits and one point, such as 0.3.")
-	}
-	return v, nil
 }
 
 // measure is a unit: its dimension and how many of the dimension's base it is, as a fraction of whole numbers so that

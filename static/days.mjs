@@ -3,10 +3,18 @@
 /** The day of a moment in a time zone. */
 export function dayIn(ms, zone) {
   try {
-    return new Intl.DateTimeFormat("en-CA", { timeZone: zone || "UTC", year: "numeric", month: "2-digit", day: "2-digit" }).format(ms);
+    return writer("en-CA", { timeZone: zone || "UTC", year: "numeric", month: "2-digit", day: "2-digit" }).format(ms);
   } catch {
     return new Date(ms).toISOString().slice(0, 10); // a zone this browser does not know
   }
+}
+
+/** Writers of dates are slow to make and lists want hundreds: each is made once. */
+const writers = new Map();
+function writer(locale, options) {
+  const key = locale + JSON.stringify(options);
+  if (!writers.has(key)) writers.set(key, new Intl.DateTimeFormat(locale, options));
+  return writers.get(key);
 }
 
 /** Days before months and 24 hours, in the language of the words. */
@@ -17,14 +25,14 @@ export function showDay(app, day) {
   const [y, m, d] = String(day).split("-").map(Number);
   if (!y) return "";
   const thisYear = dayIn(app.now()).slice(0, 4) === String(y);
-  return new Intl.DateTimeFormat(localeOf(app), { weekday: "short", day: "numeric", month: "short", ...(thisYear ? {} : { year: "numeric" }), timeZone: "UTC" })
+  return writer(localeOf(app), { weekday: "short", day: "numeric", month: "short", ...(thisYear ? {} : { year: "numeric" }), timeZone: "UTC" })
     .format(Date.UTC(y, m - 1, d)).replace(",", "").replaceAll(" ", "\u00a0");
 }
 
 /** "09:12", or "Mon 30 Nov, 09:12" for another day; in the phone's own zone, which is where the reader stands. */
 export function showMoment(app, ms) {
   const at = new Date(ms), now = new Date(app.now());
-  const time = at.toLocaleTimeString(localeOf(app), { hour: "2-digit", minute: "2-digit" });
+  const time = writer(localeOf(app), { hour: "2-digit", minute: "2-digit" }).format(at);
   return at.toDateString() === now.toDateString() ? time : `${showDay(app, localDay(at))}, ${time}`;
 }
 

@@ -6,6 +6,8 @@
 import { openDB, unwrap } from "./vendor/idb.mjs";
 
 const STRICT = { durability: "strict" };
+/** For what comes again by itself when power fails in that second: it takes the disk from nobody who saves meanwhile. */
+const RELAXED = { durability: "relaxed" };
 
 function openTray() {
   return openDB("tray", 2, {
@@ -76,10 +78,10 @@ export function trayDB() {
     const [result] = await Promise.all([fn(tx.store), tx.done]);
     return result;
   });
-  const change = (id, fields) => write("records", async (store) => {
+  const change = (id, fields, options) => write("records", async (store) => {
     const row = await store.get(id);
     if (row) await store.put({ ...row, ...fields });
-  });
+  }, options);
   return {
     me: (name) => use((db) => db.get("me", name)),
     setMe: (name, value) => write("me", (store) => store.put(value, name)),
@@ -104,7 +106,7 @@ export function trayDB() {
     recordIds: () => use((db) => db.getAllKeys("records")),
     /** One record of this phone, whatever became of it. */
     record: (id) => use((db) => db.get("records", id)),
-    putDraft: (draft) => write("drafts", (store) => store.put(draft), { durability: "relaxed" }),
+    putDraft: (draft) => write("drafts", (store) => store.put(draft), RELAXED),
 
     /** What pages show: all that is not yet in a copy of the server's data. */
     records: () => use(async (db) => (await Promise.all(["waiting", "refused", "sent"].map((s) => db.getAllFromIndex("records", "state", s)))).flat()),
@@ -112,14 +114,15 @@ export function trayDB() {
     waiting: () => use((db) => db.getAllFromIndex("records", "state", "waiting")).then((rows) => rows.sort(inOrder)),
     /** Every row there is, for the file that saves the tray. */
     all: () => use((db) => db.getAll("records")).then((rows) => rows.sort(inOrder)),
-    settle: (id, receipt, at) => change(id, { state: "sent", receipt, sent_at: at }),
+    /** Forgotten by a failing battery, it is sent once more and answered "already". */
+    settle: (id, receipt, at) => change(id, { state: "sent", receipt, sent_at: at }, RELAXED),
     /** Sent records that the copy of their site holds by now are only kept from here on. */
     cover: (ids) => write("records", async (store) => {
       for (const id of ids) {
         const row = await store.get(id);
         if (row?.state === "sent") await store.put({ ...row, state: "kept" });
       }
-    }),
+    }, RELAXED),
     refuse: (id, receipt) => change(id, { state: "refused", receipt }),
     /** Drops kept records whose time is over; what waits, was refused or is in no copy yet is never touched. */
     forget: (now, backedUp) => write("records", async (store) => {
@@ -140,10 +143,11 @@ export function trayDB() {
     /** Sets a refused record aside: handed over to somebody in a file. It stays on the phone. */
     handOver: (id) => change(id, { state: "handed" }),
     /** Merges a stamp seen elsewhere: what is made next comes after it. */
-    sawClock: (stamp) => write("me", async (store) => {
-      const own = await store.get("clock");
-      if (!own || own < stamp) await store.put(stamp, "clock"); // 16 digits each: the order of texts is that of stamps
-    }),
+    sawClock: async (stamp) => {
+      const behind = (own) => !own || own < stamp; // 16 digits each: the order of texts is that of stamps
+      if (!behind(await use((db) => db.get("me", "clock")))) return;
+      await write("me", async (store) => { if (behind(await store.get("clock"))) await store.put(stamp, "clock"); });
+    },
     /** Another id for this phone: counts begin anew under it, in the same transaction. */
     renew: ({ installation, token, former }) => use(async (db) => {
       const tx = db.transaction(["me", "counter"], "readwrite", STRICT), me = tx.objectStore("me");

@@ -11,19 +11,10 @@ import { dueNow } from "./list.mjs";
 import { fedBy } from "./register-work.mjs";
 import { MOST_PHOTOS } from "./photo.mjs";
 import { lockedEntry } from "./room-locked.mjs";
-import { bareTag } from "./route.mjs";
 
 /** app: the state's readers and `write`; parts: what the app itself was given, with its own inner functions. */
 export function fieldWork(app, parts) {
   const { state, say } = app, { tray, now, siteView, formsFor } = parts;
-
-  function findByTag(tag) {
-    for (const log of state.sites.keys()) {
-      const site = siteView(log), device = site.devices.find((d) => d.tag && bareTag(d.tag) === tag);
-      if (device) return { site, device, place: site.places.get(device.place) };
-    }
-    return null;
-  }
 
   function pageDraft(key) {
     return state.drafts.get(key)?.fields;
@@ -47,7 +38,7 @@ export function fieldWork(app, parts) {
   const setRound = (site, change) => app.remember("rounds", { ...state.me.rounds, [site.log]: { ...roundOf(site), ...change } });
 
   return {
-    findByTag, pageDraft, roundOf,
+    pageDraft, roundOf,
     /** Devices of all sites that answer to test(device, place), at most a number. */
     search(test, most) {
       const found = [];

@@ -2,6 +2,7 @@
 
 import { html } from "./vendor/htm-preact.mjs";
 import { PhoneNotices } from "./phone-notices.mjs";
+import { showDay } from "./days.mjs";
 import { showTag } from "./tag.mjs";
 
 /** Which mark a result or a finding's verdict is drawn with; the word stands beside it always. */
@@ -75,4 +76,18 @@ export const circuitOf = (device) => [device.panel, device.circuit].filter(Boole
 /** What a device is called on the phone: the spot it sits in, else where it is kept, else its kind. */
 export function titleOf(app, device, place) {
   return place?.name || device.fields?.where || app.say(`kind.${device.kind}`);
+}
+
+/** "Button test: overdue since Mon 30 Nov". */
+export const dueWords = (app, d) => `${app.say(`task.${d.task}`)}: ${dueState(app, d)}`;
+
+/** "overdue since Mon 30 Nov". d: a date of a device's plan. */
+export function dueState(app, d) {
+  const state = d.state === "upcoming" ? "due" : d.state;
+  return app.say(`field.due_state.${state.replaceAll("-", "_")}`, { day: showDay(app, d.due) });
+}
+
+/** Where an address leads nowhere on this phone. */
+export function LostPage({ app, text }) {
+  return html`<${Where} app=${app} title=${text} back="#/" /><main><p class="hint pad">${app.say("field.lost_hint")}</p></main><${Foot} app=${app} />`;
 }

@@ -4,8 +4,8 @@
 import { html, useState } from "./vendor/htm-preact.mjs";
 import { Foot, Mark, titleOf, Where } from "./field-parts.mjs";
 import { Confirm } from "./field-fields.mjs";
-import { dueNow } from "./list.mjs";
-import { roomMates, toReturn, walkCounts } from "./walk-round.mjs";
+import { dueIn, dueNow } from "./list.mjs";
+import { backOf, countsOf, roomMates } from "./walk-round.mjs";
 import { ROOM_REASONS } from "./room-locked.mjs";
 import { showDay, showMoment } from "./days.mjs";
 import { toDevice, toSite } from "./route.mjs";
@@ -41,7 +41,7 @@ export function RoomPage({ app, site, device }) {
 /** The round of a site: counts, the tester first and last, the list to come back to, the end. */
 export function RoundPage({ app, site }) {
   const { say } = app;
-  const round = app.roundOf(site), counts = walkCounts(site.devices, site.today, app.skipped(site)), back = toReturn(site.devices, site.today);
+  const round = app.roundOf(site), counts = countsOf(site, app.skipped(site)), back = backOf(site);
   const off = app.off.length, blocked = off > 0;
   const end = async () => {
     if (blocked) return;
@@ -49,7 +49,7 @@ export function RoundPage({ app, site }) {
   };
   const row = (d) => html`<li key=${d.id}><a class="row" href=${toDevice(d.id)}><span class="name">${titleOf(app, d, site.places.get(d.place))}</span><span></span>
     <span class="quiet">${[site.places.get(d.place)?.room, ...dueNow(d, site.today).map((x) => say(`task.${x.task}`))].filter(Boolean).join(" · ")}</span></a></li>`;
-  const over = site.devices.filter((d) => app.skipped(site).has(d.id) && dueNow(d, site.today).length > 0);
+  const skipped = app.skipped(site), over = dueIn(site).filter((d) => skipped.has(d.id));
   return html`<${Where} app=${app} title=${say("walk.round")} context=${site.snapshot.site.name} progress=${showDay(app, site.today)} back=${toSite(site.snapshot.site.code)} />
     <main><p class="pad counts">${walkWords(app, counts)}</p>
       <${Proof} app=${app} site=${site} round=${round} end="first" />

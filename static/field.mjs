@@ -5,15 +5,12 @@ import { html, render } from "./vendor/htm-preact.mjs";
 import { alongDB, trayDB } from "./db.mjs";
 import { exchange } from "./exchange.mjs";
 import { fieldApp } from "./field-app.mjs";
-import { DevicePage, DevicesPage, LostPage, SitesPage } from "./field-lists.mjs";
-import { AlongPage } from "./field-along.mjs";
-import { HomeScreenPage, TrayPage } from "./field-tray.mjs";
+import { HomeScreenPage } from "./field-tray.mjs";
 import { caring } from "./caring.mjs";
-import { TestPage } from "./field-test.mjs";
-import { WorkPage } from "./field-work.mjs";
 import { JudgeVersion } from "./judge.mjs";
 import { makeRecord } from "./making.mjs";
 import { newId } from "./record-line.mjs";
+import { Page } from "./pages.mjs";
 import { parseRoute, toDevice } from "./route.mjs";
 import { sending } from "./sending.mjs";
 import { syncing } from "./syncing.mjs";
@@ -22,31 +19,7 @@ import { LANGUAGES, languageOf, speaker } from "./words.mjs";
 
 const root = document.getElementById("field");
 const now = () => Date.now();
-
-/** The page of a route; the app is read anew at every drawing. */
-function Page({ app }) {
-  const { say } = app, { route } = app.state;
-  switch (route.page) {
-    case "site": {
-      const site = app.siteByCode(route.code);
-      return site ? html`<${DevicesPage} app=${app} site=${site} key=${site.log} />` : html`<${LostPage} app=${app} text=${say("field.site_not_here")} />`;
-    }
-    case "device": {
-      const found = app.findDevice(route.device);
-      return found ? html`<${DevicePage} app=${app} ...${found} />` : html`<${LostPage} app=${app} text=${say("field.device_not_here")} />`;
-    }
-    case "test": {
-      const test = app.openTest(route.device, route.task);
-      return test ? html`<${TestPage} app=${app} test=${test} key=${test.draft.key} />` : html`<${LostPage} app=${app} text=${say("field.device_not_here")} />`;
-    }
-    case "along":
-      return html`<${AlongPage} app=${app} />`;
-    case "tray":
-      return html`<${TrayPage} app=${app} />`;
-    default:
-      return WorkPage({ app }) ?? html`<${SitesPage} app=${app} />`;
-  }
-}
+const AFTER_SAVE = 60; // ms: the page says "saved" first
 
 /** The phone's words in a language; one that is not laid in and cannot be fetched gives way to another that is here. */
 async function wordsOf(wish) {
@@ -81,10 +54,15 @@ async function start() {
   };
   const go = (hash, { keep = false } = {}) => {
     keepSaved = keep;
-    if (location.hash === hash) onRoute();
-    else location.hash = hash;
+    if (location.hash !== hash) history.pushState(null, "", hash); // setting the hash would look for an anchor and tell of it later
+    onRoute();
   };
-  const app = fieldApp({ tray, say, draw, go, now, make: makeRecord, newId: () => newId(now()), judgeVersion: JudgeVersion, keepSending: () => { others.tell(); sender.kick(); }, takeOver: () => sync.takeOver(), leave: (path) => location.assign(path) });
+  let sendTimer;
+  const sendSoon = () => {
+    clearTimeout(sendTimer);
+    sendTimer = setTimeout(() => { others.tell(); sender.kick(); }, AFTER_SAVE);
+  };
+  const app = fieldApp({ tray, say, draw, go, now, make: makeRecord, newId: () => newId(now()), judgeVersion: JudgeVersion, soon: (fn, ms) => setTimeout(fn, ms), sendNow: () => sender.kick(), keepSending: sendSoon, takeOver: () => sync.takeOver(), leave: (path) => location.assign(path) });
   const sync = syncing({ state: app.state, tray, along, net: exchange({ fetch: (...a) => fetch(...a), now }), now, newId: () => newId(now()), changed: app.changed });
   const sender = sending({ run: () => alone(async () => { const done = await sync.run(); others.tell(); return done; }), later: (fn, ms) => setTimeout(fn, ms), cancel: clearTimeout, random: Math.random });
   const version = versions({ container: navigator.serviceWorker, calm: () => isCalm(app.state), session: sessionStorage, now,

@@ -50,6 +50,9 @@ export function dueNow(device, today) {
     .sort((a, b) => order.indexOf(a.state) - order.indexOf(b.state));
 }
 
+/** The devices of an open site that want work now. */
+export const dueIn = (site) => site.once("due", () => site.devices.filter((d) => dueNow(d, site.today).length > 0));
+
 /** How far along: place of a device among those of its list that want the task, from 1. */
 export function placeInRound(devices, id, task, today) {
   const round = devices.filter((d) => d.id === id || wants(d, task, today));

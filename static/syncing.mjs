@@ -6,6 +6,7 @@ import { taking } from "./taking.mjs";
 import { drain } from "./tray.mjs";
 
 const KEEP_PHOTOS = 14 * 86_400_000; // sent photos stay this long
+const TIDY = 60 * 60_000;
 
 /**
  * syncing({state, tray, along, net, now, newId, changed}) → {run, takeOver, choose}; run() gives {state, retryAfter} for
@@ -13,9 +14,20 @@ const KEEP_PHOTOS = 14 * 86_400_000; // sent photos stay this long
  * state is the app's: me, sites, records, line, said (the server's own sentence about trouble), offset, busy.
  */
 export function syncing({ state, tray, along, net, now, newId, changed }) {
+  /** Writes only what is new: every write waits for the disk, and so does whoever saves meanwhile. */
   async function remember(name, value) {
+    const same = JSON.stringify(state.me[name]) === JSON.stringify(value);
     state.me[name] = value;
-    await tray.setMe(name, value);
+    if (!same) await tray.setMe(name, value);
+  }
+
+  /** Looks for what may be dropped, now and then. */
+  let tidied = -Infinity;
+  async function tidy() {
+    if (now() - tidied < TIDY) return;
+    tidied = now();
+    await tray.forget(now(), state.me.backed_up ?? {});
+    if ((state.photos ?? 0) === 0) await tray.forgetPhotos(now() - KEEP_PHOTOS);
   }
 
   function note(answer) {
@@ -95,10 +107,9 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
       const shots = await drainPhotos({ storage: { waitingPhotos: tray.waitingPhotos, settlePhoto: (sha) => tray.settlePhoto(sha, now()), refusePhoto: tray.refusePhoto }, send: (row) => withToken((token) => net.photo(token, row)) });
       state.photos = (await tray.waitingPhotos()).length;
       if (shots.state !== "empty") line = shots.state;
-      else await tray.forgetPhotos(now() - KEEP_PHOTOS);
     }
     if (line === "empty" || line === "trouble") { // what cannot be sent just now does not keep fresh copies away
-      await tray.forget(now(), state.me.backed_up ?? {});
+      await tidy();
       const { answer, resent } = await refresh();
       state.said = answer.ok ? null : answer.body?.error?.text ?? null;
       if (resent > 0 && answer.ok) {

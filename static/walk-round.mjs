@@ -36,6 +36,10 @@ export function walkCounts(devices, today, skipped) {
   return out;
 }
 
+/** walkCounts and toReturn of an open site. */
+export const countsOf = (site, skipped) => site.once(`counts ${[...skipped].join()}`, () => walkCounts(site.devices, site.today, skipped));
+export const backOf = (site) => site.once("back", () => toReturn(site.devices, site.today));
+
 /** The devices of the room a device is in, in walking order. */
 export function roomMates(site, device) {
   const room = roomOf(site.places.get(device.place));

@@ -1,0 +1,44 @@
+// One device: its tests, what was found last, and what else may be done there.
+
+import { html } from "./vendor/htm-preact.mjs";
+import { contextOf, dueState, Foot, Mark, titleOf, Where } from "./field-parts.mjs";
+import { dueNow } from "./list.mjs";
+import { showDay } from "./days.mjs";
+import { toSite, toTest } from "./route.mjs";
+import { CriticalLoads, ResetsAt } from "./field-dark.mjs";
+
+export function DevicePage({ app, site, device, place }) {
+  const { say } = app;
+  const due = new Map(dueNow(device, site.today).map((d) => [d.task, d]));
+  const forms = app.formsFor(site, device).sort((a, b) => Number(due.has(b.task)) - Number(due.has(a.task)));
+  const facts = [["rated_residual_ma", "mA"], ["rating_a", "A"], ["nominal_v", "V"]].filter(([f]) => device.fields?.[f]).map(([f, u]) => say(`field.fact.${f}`, { value: device.fields[f], unit: u }));
+  return html`
+    <${Where} app=${app} title=${titleOf(app, device, place)} tag=${device.tag} context=${contextOf(app, device, place)} back=${toSite(site.snapshot.site.code)} />
+    <main>
+      <${CriticalLoads} app=${app} site=${site} device=${device} />
+      <${ResetsAt} app=${app} device=${device} />
+      <div class="choose">${forms.map((f) => html`<a class=${due.has(f.task) ? "big go" : "big"} key=${f.form} href=${toTest(device.id, f.task)}>
+        <b>${say(`task.${f.task}`)}</b><span>${due.has(f.task) ? dueState(app, due.get(f.task)) : say("field.not_due")}</span></a>`)}
+        ${forms.length === 0 && html`<p class="hint">${say("field.no_form")}</p>`}</div>
+      <section class="past"><h2>${say("field.last_tests")}</h2>
+        ${Object.keys(device.last ?? {}).length === 0 ? html`<p class="hint pad">${say("field.never_tested")}</p>` : html`<ul class="rows">${Object.entries(device.last).map(([task, l]) => html`<li key=${task} class="row still">
+          <span class="name">${say(`task.${task}`)}</span><${Mark} verdict=${l.result}>${say(`verdict.${l.result}`)}<//>
+          <span class="quiet">${showDay(app, l.day)}${l.own ? ` · ${say(l.unsent ? "field.own_unsent" : "field.own_sent")}` : ""}</span>
+          ${app.state.own.has(l.entry) && l.result && html`<a class="small" href=${`#/correct/${l.entry}`}>${say("correct.link")}</a>`}</li>`)}</ul>`}
+      </section>
+      <p class="facts quiet">${[[device.fields?.make, device.fields?.model].filter(Boolean).join(" "), ...facts, device.fields?.equipment_ground === "none-permitted" ? say("field.fact.no_ground") : "", device.supply === "isolated" ? say("field.fact.isolated") : ""].filter(Boolean).join(" · ")}</p>
+      <${Work} app=${app} site=${site} device=${device} forms=${forms} />
+    </main><${Foot} app=${app} />`;
+}
+
+/** What else may be done at a device. */
+function Work({ app, site, device, forms }) {
+  const { say } = app, feeds = app.feeds(site, device);
+  const trips = forms.some((f) => f.steps.some((s) => s.asks.some((a) => a.reading === "button_trips")));
+  const link = (page, words, more) => html`<li><a class="row" href=${`#/${page}/${device.id}`}><span class="name">${say(words)}</span>${more && html`<span class="quiet">${more}</span>`}</a></li>`;
+  return html`<section class="room"><h2>${say("register.work")}</h2><ul class="rows">
+    ${trips && link("dark", "dark.title", feeds.length > 0 ? say("dark.feeds", { n: feeds.length }) : say("dark.feeds_unknown"))}
+    ${link("label", device.tag ? "register.not_this" : "register.bind")}
+    ${device.place && link("move", "register.move")}
+    ${link("replace", "replace.title")}</ul></section>`;
+}

@@ -7,6 +7,8 @@ import (
 	"strings"
 
 	"github.com/labstack/echo/v4"
+
+	"tripwell/store"
 )
 
 // linkPage is the page of a sign-in link: one button. Person is whose link it is.
@@ -58,6 +60,9 @@ func (s *Server) linkPasted(c echo.Context) error {
 		return err
 	}
 	next := ownPath(form.Get("next"))
+	if store.BareCode(form.Get("link")) != "" {
+		return s.codeTyped(c, form.Get("link"), next)
+	}
 	token := linkToken(form.Get("link"))
 	if token == "" {
 		return s.page(c, http.StatusBadRequest, "signin.html", s.askPage(c, next, s.words.Say("access.ask_problem")))

@@ -1,6 +1,7 @@
 package server
 
 import (
+	"net/http"
 	"sync"
 
 	"github.com/labstack/echo/v4"
@@ -17,16 +18,38 @@ func (s *Server) linkSpend(c echo.Context) error {
 	if err != nil {
 		return s.wrongLink(c, err)
 	}
+	return s.beginSession(c, session, ownPath(form.Get("next")))
+}
+
+// codeTyped signs in by a short code. Wrong ones are counted before one is looked at, for each address and for all together:
+// a code is too short to stand against whoever may try for ever.
+func (s *Server) codeTyped(c echo.Context, typed, next string) error {
+	if !s.wrong.any(c.RealIP()) || !s.wrong.any(everybody) {
+		return refuse(codeBusy, "", "Too many wrong codes were typed. Wait a minute, or use a sign-in link.")
+	}
+	session, err := s.store.SpendCode(c.Request().Context(), typed)
+	if isRefusal(err) {
+		s.wrong.allow(c.RealIP())
+		s.wrong.allow(everybody)
+		return s.page(c, http.StatusBadRequest, "signin.html", s.askPage(c, next, s.words.Say("access.code_problem")))
+	}
+	if err != nil {
+		return err
+	}
+	return s.beginSession(c, session, next)
+}
+
+// beginSession gives the browser its session and sends it where it wanted to go.
+func (s *Server) beginSession(c echo.Context, session, next string) error {
 	p, err := s.store.Session(session)
 	if err != nil {
 		return err
 	}
 	c.SetCookie(newSessionCookie(c.Request(), session))
-	to := home(p.Role)
-	if next := ownPath(form.Get("next")); next != "" {
-		to = next
+	if next == "" {
+		next = home(p.Role)
 	}
-	return toPage(c, to)
+	return toPage(c, next)
 }
 
 // sessionEnd signs out. What a phone still has to send stays on it.
@@ -52,7 +75,7 @@ func (s *Server) wrongLink(c echo.Context, err error) error {
 	return refuse(codeNotFound, "", "This sign-in link has been used or is out of date. Ask a manager for a new one.")
 }
 
-// wrongLinks counts wrong sign-in links per address: ten at once, then one every six seconds.
+// wrongLinks counts wrong sign-in links and codes per address: ten at once, then one every six seconds.
 type wrongLinks struct {
 	mu sync.Mutex
 	by map[string]*rate.Limiter
@@ -62,20 +85,44 @@ const (
 	wrongAtOnce    = 10
 	wrongPerSec    = 1.0 / 6
 	wrongAddresses = 4096
+
+	wrongOfAllAtOnce = 200
+	wrongOfAllPerSec = 1
 )
 
 func newWrongLinks() *wrongLinks { return &wrongLinks{by: map[string]*rate.Limiter{}} }
 
+// everybody stands for all addresses together; theirs is a wider count, so that one of them locks nobody else out.
+const everybody = "*"
+
 func (w *wrongLinks) allow(address string) bool {
 	w.mu.Lock()
 	defer w.mu.Unlock()
+	return w.of(address).Allow()
+}
+
+// any reports whether another wrong one would be let through; it counts nothing.
+func (w *wrongLinks) any(address string) bool {
+	w.mu.Lock()
+	defer w.mu.Unlock()
+	return w.of(address).Tokens() >= 1
+}
+
+func (w *wrongLinks) of(address string) *rate.Limiter {
 	l, ok := w.by[address]
 	if !ok {
 		if len(w.by) >= wrongAddresses {
-			clear(w.by) // forgetting is safe: a link has more than 128 random bits
+			all := w.by[everybody]
+			clear(w.by) // forgetting is safe: a link has more than 128 random bits, and codes are counted over all addresses too
+			if all != nil {
+				w.by[everybody] = all
+			}
 		}
 		l = rate.NewLimiter(wrongPerSec, wrongAtOnce)
+		if address == everybody {
+			l = rate.NewLimiter(wrongOfAllPerSec, wrongOfAllAtOnce)
+		}
 		w.by[address] = l
 	}
-	return l.Allow()
+	return l
 }

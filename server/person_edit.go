@@ -27,11 +27,12 @@ type peopleRow struct {
 	Active                           bool
 }
 
-// personLinkPage shows a sign-in link the one time it can be shown.
+// personLinkPage shows a sign-in link, or a code to type, the one time it can be shown.
 type personLinkPage struct {
 	Frame
 	Crumbs                     []link
 	Heading, Under, Link, Text string
+	Code                       string // instead of Link
 }
 
 func (s *Server) peopleShow(c echo.Context) error {
@@ -190,6 +191,25 @@ func (s *Server) personLink(c echo.Context) error {
 		return refuse(codeConflict, "", s.words.Say("office.person.ended")+".")
 	}
 	return s.showLink(c, p)
+}
+
+// personCode makes a short code to type, for a phone that cannot open a link; it stands only on this answer.
+func (s *Server) personCode(c echo.Context) error {
+	p, err := s.personOf(c)
+	if err != nil {
+		return err
+	}
+	code, err := s.store.NewCode(p.ID)
+	if err != nil {
+		return err
+	}
+	k := s.ink()
+	view := personLinkPage{
+		Frame: s.frame(c, k.say("office.person.title"), "people"), Crumbs: []link{{Href: "/people", Text: k.say("office.person.title")}},
+		Heading: k.say("office.person.code_head", "name", p.Name), Under: k.say("office.person.code_lead", "time", k.at(s.store.Now().Add(store.CodeLife), s.store.Now().Location())),
+		Code: code, Text: k.say("office.person.code_text", "name", p.Name, "address", origin(c.Request())+"/field"),
+	}
+	return s.page(c, http.StatusOK, "person_link.html", view)
 }
 
 func (s *Server) showLink(c echo.Context, p store.Person) error {

@@ -133,5 +133,6 @@ func publicRoutes() []route {
 		{get, "/people/:person", manager, (*Server).personEdit, 0},
 		{post, "/people/:person", manager, (*Server).personUpdate, 0},
 		{post, "/people/:person/link", manager, (*Server).personLink, 0},
+		{post, "/people/:person/code", manager, (*Server).personCode, 0},
 	}
 }

@@ -25,6 +25,7 @@ const (
 type link struct {
 	Person string    `json:"person"`
 	Until  time.Time `json:"until"`
+	Typed  bool      `json:"typed,omitempty"` // a short code
 }
 
 type session struct {
@@ -61,7 +62,14 @@ var (
 // NewLink makes a one-time sign-in link token for a person; only its SHA-256 is kept.
 func (s *Store) NewLink(person string, valid time.Duration) (token string, err error) {
 	token, key := newToken()
-	err = s.do(context.Background(), 1, func(g *group) error {
+	if err := s.putLink(person, key, link{Until: s.now().Add(valid)}); err != nil {
+		return "", err
+	}
+	return token, nil
+}
+
+func (s *Store) putLink(person string, key []byte, l link) error {
+	return s.do(context.Background(), 1, func(g *group) error {
 		p, err := readPerson(g.tx, person)
 		if err != nil {
 			return err
@@ -72,12 +80,14 @@ func (s *Store) NewLink(person string, valid time.Duration) (token string, err e
 		if err := g.sweepLinks(); err != nil {
 			return err
 		}
-		return g.putJSON(bktLink, key, link{p.ID, s.now().Add(valid)})
+		if l.Typed {
+			if err := g.dropCodes(p.ID); err != nil {
+				return err
+			}
+		}
+		l.Person = p.ID
+		return g.putJSON(bktLink, key, l)
 	})
-	if err != nil {
-		return "", err
-	}
-	return token, nil
 }
 
 // sweepLinks deletes links that are too old.
@@ -104,36 +114,21 @@ func (g *group) sweepLinks() error {
 // LinkPerson says whom a link would sign in; it does not spend it.
 func (s *Store) LinkPerson(token string) (p Person, err error) {
 	err = s.view(func(tx *bbolt.Tx) error {
-		p, err = s.linkPerson(tx, token)
+		p, err = s.linkOf(tx, token, false)
 		return err
 	})
 	return p, err
 }
 
-func (s *Store) linkPerson(tx *bbolt.Tx, token string) (Person, error) {
-	var l link
-	v := tx.Bucket(bktLink).Get(tokenKey(token))
-	if v == nil {
-		return Person{}, errLink
-	}
-	if err := json.Unmarshal(v, &l); err != nil {
-		return Person{}, fmt.Errorf("link: %w", err)
-	}
-	if !s.now().Before(l.Until) {
-		return Person{}, errLink
-	}
-	p, err := readPerson(tx, l.Person)
-	if err != nil || !p.Active {
-		return Person{}, errLink
-	}
-	return p, nil
-}
-
 // SpendLink signs in: the link is gone, a session begins, signed.in is appended, all in one transaction.
 func (s *Store) SpendLink(ctx context.Context, token string) (session string, err error) {
+	return s.spend(ctx, token, false)
+}
+
+func (s *Store) spend(ctx context.Context, token string, typed bool) (session string, err error) {
 	fresh, key := newToken()
 	err = s.do(ctx, 1, func(g *group) error {
-		p, err := s.linkPerson(g.tx, token)
+		p, err := s.linkOf(g.tx, token, typed)
 		if err != nil {
 			return err
 		}

@@ -1,0 +1,98 @@
+package store
+
+import (
+	"context"
+	"crypto/rand"
+	"encoding/json"
+	"strings"
+	"time"
+
+	"go.etcd.io/bbolt"
+)
+
+// CodeLife is how long a typed code signs in. It is short because the code is: 40 bits, which only stand as long as
+// nobody can try many (the server counts wrong ones).
+const CodeLife = 10 * time.Minute
+
+const codeAlphabet = "0123456789ABCDEFGHJKMNPQRSTVWXYZ" // Crockford: no I, L, O, U
+
+var errCode = &Error{Code: "not_found", Field: "link", Text: "This code is used up, out of date or mistyped. Ask a manager for a new one."}
+
+// BareCode reads a code as a person types it: spaces and hyphens dropped, capitals, I and L read as 1, O as 0. It is
+// "" where the text is no code at all.
+func BareCode(typed string) string {
+	bare := strings.Map(func(r rune) rune {
+		switch r {
+		case ' ', '-', '\u00a0', '\u2011':
+			return -1
+		case 'I', 'L':
+			return '1'
+		case 'O':
+			return '0'
+		}
+		return r
+	}, strings.ToUpper(strings.TrimSpace(typed)))
+	if len(bare) != 8 || strings.Trim(bare, codeAlphabet) != "" {
+		return ""
+	}
+	return bare
+}
+
+// NewCode makes a code that a person types to sign in once, within CodeLife; it takes the place of the one before. Only its
+// SHA-256 is kept.
+func (s *Store) NewCode(person string) (code string, err error) {
+	var b [8]byte
+	_, _ = rand.Read(b[:]) // never fails (crypto/rand)
+	for i := range b {
+		b[i] = codeAlphabet[b[i]%32] // 32 divides 256: every character is as likely
+	}
+	code = string(b[:])
+	return code[:4] + "-" + code[4:], s.putLink(person, tokenKey(code), link{Until: s.now().Add(CodeLife), Typed: true})
+}
+
+// SpendCode signs in by a typed code, as SpendLink does by a link.
+func (s *Store) SpendCode(ctx context.Context, typed string) (session string, err error) {
+	return s.spend(ctx, BareCode(typed), true)
+}
+
+// dropCodes deletes a person's earlier codes.
+func (g *group) dropCodes(person string) error {
+	var old [][]byte
+	err := g.tx.Bucket(bktLink).ForEach(func(k, v []byte) error {
+		var l link
+		if err := json.Unmarshal(v, &l); err == nil && l.Typed && l.Person == person {
+			old = append(old, append([]byte(nil), k...))
+		}
+		return nil
+	})
+	for _, k := range old {
+		if err == nil {
+			err = g.drop(bktLink, k)
+		}
+	}
+	return err
+}
+
+// linkOf reads a link or a typed code; neither stands for the other, since only codes need wrong ones counted first.
+func (s *Store) linkOf(tx *bbolt.Tx, token string, typed bool) (Person, error) {
+	refused := errLink
+	if typed {
+		refused = errCode
+	}
+	var l link
+	v := tx.Bucket(bktLink).Get(tokenKey(token))
+	if v == nil {
+		return Person{}, refused
+	}
+	if err := json.Unmarshal(v, &l); err != nil {
+		return Person{}, err
+	}
+	if l.Typed != typed || !s.now().Before(l.Until) {
+		return Person{}, refused
+	}
+	p, err := readPerson(tx, l.Person)
+	if err != nil || !p.Active {
+		return Person{}, refused
+	}
+	return p, nil
+}

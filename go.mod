@@ -23,7 +23,6 @@ require (
 	golang.org/x/text v0.43.0
 	golang.org/x/time v0.16.0
 	pgregory.net/rapid v1.3.0
-	rsc.io/qr v0.2.0
 )
 
 require (

@@ -6,7 +6,7 @@ import (
 	"math/bits"
 	"strconv"
 
-	"rsc.io/qr/coding"
+	"github.com/skip2/go-qrcode"
 
 	"tripwell/store"
 )
@@ -33,7 +33,7 @@ func codeSize(modules int, box float64) (module, side float64, ok bool) {
 
 // CodeBitmap encodes an address: rows of modules, true is dark, without the quiet zone of 4 modules that must surround it.
 func CodeBitmap(address string) ([][]bool, error) {
-	s, err := encode(address, coding.M)
+	s, err := encode(address, qrcode.Medium)
 	if err != nil {
 		return nil, err
 	}
@@ -52,7 +52,7 @@ func CodeBitmap(address string) ([][]bool, error) {
 // codeIn gives the symbol of an address and its module's side for a box, in mm. Where level M is too fine for the box,
 // level L is tried: a coarser code reads better than one with more redundancy that the printer smears.
 func codeIn(address string, box float64) (s symbol, module float64, err error) {
-	for _, level := range []coding.Level{coding.M, coding.L} {
+	for _, level := range []qrcode.RecoveryLevel{qrcode.Medium, qrcode.Low} {
 		if s, err = encode(address, level); err != nil {
 			return nil, 0, err
 		}

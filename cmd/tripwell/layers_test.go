@@ -48,7 +48,6 @@ var onlyIn = map[string][]string{
 	"github.com/labstack/echo":       {"server"},
 	"go.etcd.io/bbolt":               {"store"},
 	"github.com/xuri/excelize":       {"export", "export/paper", "export/intake", "export/register"},
-	"rsc.io/qr":                      {"export"},
 	"github.com/skip2/go-qrcode":     {"export"},
 	"codeberg.org/go-pdf/fpdf":       {"export", "export/paper"},
 	"github.com/alecthomas/kong":     {"cmd/tripwell"},

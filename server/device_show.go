@@ -25,6 +25,8 @@ type devicePage struct {
 	Clash                       string
 	Columns                     []column
 	Entries                     []entryRow
+	Defects                     []defectRow
+	Gone                        []conflictLine // what was said of defects that a correction took away
 	Facts                       []fact
 	Actions                     []link
 	SheetHref                   string // the device sheet, "" for who may not take it
@@ -124,11 +126,14 @@ func (s *Server) buildDevice(v *store.View, site store.Site, d store.Device, vie
 	}
 	view.Facts = append(view.Facts, applies)
 	s.labelOf(d, view)
+	if err := s.defectsOf(v, d, site, view); err != nil {
+		return err
+	}
 	for _, e := range d.Earlier {
 		view.Earlier = append(view.Earlier, link{Href: "/devices/" + e.ID, Text: s.earlier(e)})
 	}
 	if view.Change {
-		view.Actions = []link{{Href: "/devices/" + d.ID + "/edit", Text: k.say("office.device.edit")}}
+		view.Actions = []link{{Href: "/devices/" + d.ID + "/edit", Text: k.say("office.device.edit")}, {Href: "/devices/" + d.ID + "/defects/new", Text: k.say("office.defect.new")}}
 		if !d.Retired {
 			view.Actions = append(view.Actions, link{Href: "/devices/" + d.ID + "/retire", Text: k.say("office.device.retire")})
 		} else if d.Place.ID != "" {

@@ -26,6 +26,7 @@ type formPage struct {
 	Wrong                  []link
 	Action, Submit, Cancel string
 	Grave                  bool // the button takes something away
+	Upload                 bool // it may carry a file
 	Hidden                 []hidden
 	Groups                 []fieldGroup
 }
@@ -37,7 +38,7 @@ type fieldGroup struct {
 	Fields       []field
 }
 
-// field is one question of a form. Type is an input's type, or number | text-area | check | checks; Options make a list.
+// field is one question of a form. Type is an input's type, or number | text-area | check | checks | photo; Options make a list.
 type field struct {
 	Name, Label, Type, Value, Hint, Unit, Error string
 	Required, Wide                              bool

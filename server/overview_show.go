@@ -3,7 +3,6 @@ package server
 import (
 	"net/http"
 	"slices"
-	"sort"
 	"strings"
 
 	"github.com/labstack/echo/v4"
@@ -42,7 +41,7 @@ type siteRow struct {
 type decision struct {
 	Verdict                            mark
 	Href, Spot, Tag, What, Where, When string
-	day                                forms.Day
+	Late                               bool // it may still hurt somebody
 }
 
 func (s *Server) overviewShow(c echo.Context) error {
@@ -60,24 +59,28 @@ func (s *Server) buildOverview(v *store.View, view *overviewPage) error {
 		return err
 	}
 	k := s.ink()
-	failed, overdue, soon, devices := 0, 0, 0, 0
-	worst := store.SiteSums{}
+	overdue, soon, devices := 0, 0, 0
+	failed, worst, sites := store.DefectSums{}, store.SiteSums{}, map[string]store.Site{}
 	for _, one := range sums {
-		failed, overdue, soon, devices = failed+one.Failed, overdue+one.Overdue, soon+one.DueSoon, devices+one.Devices
+		overdue, soon, devices = overdue+one.Overdue, soon+one.DueSoon, devices+one.Devices
+		sites[one.Site.ID] = one.Site
+		defects, err := v.DefectSums(one.Site.ID)
+		if err != nil {
+			return err
+		}
+		addSums(&failed, defects)
 		if one.Overdue > worst.Overdue {
 			worst = one
 		}
 		view.Sites = append(view.Sites, s.siteRow(one, s.today(one.Site)))
-		if err := s.decide(v, one, view); err != nil {
-			return err
-		}
 	}
-	sort.SliceStable(view.Decide, func(i, j int) bool { return view.Decide[i].day > view.Decide[j].day })
-	view.Decide = view.Decide[:min(len(view.Decide), decideShown)]
+	if err := s.decide(v, sites, view); err != nil {
+		return err
+	}
 	today := forms.DayOf(s.store.Now())
 	view.Heading = s.standing(failed, overdue)
 	view.Sums = []sum{
-		{"/sites", count(failed), k.say("office.overview.sum_failed", "n", failed), k.say("office.overview.sum_failed_under"), shapeIf(failed > 0, "fail")},
+		{"/defects", count(failed.Devices), k.say("office.overview.sum_failed", "n", failed.Devices), s.inUseUnder(failed), shapeIf(failed.Devices > 0, "fail")},
 		{"/dates?within=late", count(overdue), k.say("office.overview.sum_overdue", "n", overdue), s.overdueUnder(overdue, worst), shapeIf(overdue > 0, "watch")},
 		{"/dates", count(soon), k.say("office.overview.sum_due", "day", k.near(today+31, today)), k.say("office.overview.sum_due_under"), ""},
 		{"/sites", count(devices), k.say("office.overview.sum_devices", "n", devices), k.say("office.overview.sum_sites", "n", len(sums)), ""},
@@ -91,11 +94,11 @@ func (s *Server) buildOverview(v *store.View, view *overviewPage) error {
 	return nil
 }
 
-// standing says the fact in a sentence: 4 devices failed. 37 tests overdue.
-func (s *Server) standing(failed, overdue int) string {
+// standing says the fact in a sentence: 4 failed: 1 still in use for 26 hours. 37 tests overdue.
+func (s *Server) standing(failed store.DefectSums, overdue int) string {
 	var said []string
-	if failed > 0 {
-		said = append(said, s.words.Say("office.overview.failed", "n", failed))
+	if sentence := s.failedSentence(failed); sentence != "" {
+		said = append(said, sentence)
 	}
 	if overdue > 0 {
 		said = append(said, s.words.Say("office.overview.overdue", "n", overdue))
@@ -104,6 +107,13 @@ func (s *Server) standing(failed, overdue int) string {
 		return s.words.Say("office.overview.calm")
 	}
 	return strings.Join(said, " ")
+}
+
+func (s *Server) inUseUnder(failed store.DefectSums) string {
+	if failed.InUse > 0 {
+		return s.words.Say("office.overview.sum_in_use", "n", failed.InUse)
+	}
+	return s.words.Say("office.overview.sum_failed_under")
 }
 
 func (s *Server) overdueUnder(overdue int, worst store.SiteSums) string {
@@ -116,70 +126,40 @@ func (s *Server) overdueUnder(overdue int, worst store.SiteSums) string {
 	return s.words.Say("office.overview.most_at", "n", count(worst.Overdue), "site", worst.Site.Name)
 }
 
-// decide adds the failed devices of a site that its sums name, each with what its failed test found.
-func (s *Server) decide(v *store.View, sums store.SiteSums, view *overviewPage) error {
-	for _, d := range sums.LastFailed {
-		task, last, ok := newestFail(d)
-		if !ok {
-			continue
-		}
-		entry, err := v.Entry(last.Entry)
-		if err != nil {
-			return err
-		}
-		since, err := failedSince(v, d.ID, task)
-		if err != nil {
-			return err
-		}
-		k, today := s.ink(), s.today(sums.Site)
-		when := k.say("office.overview.failed_on", "task", k.named("task", task), "day", k.near(last.Day, today))
-		if since < last.Day {
-			when = k.say("office.overview.failed_since", "task", k.named("task", task), "day", k.near(since, today))
-		}
-		view.Decide = append(view.Decide, decision{
-			Verdict: k.verdict(last.Result), Href: "/devices/" + d.ID, Spot: s.spot(d), Tag: k.tag(d.Tag),
-			What: s.whatFailed(entry), Where: joined(sums.Site.Name, d.Place.Context()), When: when, day: last.Day,
-		})
+// decide names the open defects, what is still in use first.
+func (s *Server) decide(v *store.View, sites map[string]store.Site, view *overviewPage) error {
+	k := s.ink()
+	list, err := v.Defects(store.DefectAsk{On: forms.DayOf(s.store.Now())})
+	if err != nil {
+		return err
 	}
-	if sums.Failed > len(sums.LastFailed) {
-		view.More = append(view.More, link{Href: siteHref(sums.Site) + "?state=failed", Text: s.words.Say("office.overview.more_failed", "n", count(sums.Failed), "site", sums.Site.Name)})
+	for i := range list[:min(len(list), decideShown)] {
+		d, site := &list[i], sites[list[i].Site]
+		row, err := s.defectRow(v, d, site)
+		if err != nil {
+			return err
+		}
+		one := decision{Verdict: row.Verdict, Href: row.Href, Spot: row.Spot, Tag: row.Tag, What: row.What, Where: row.Where, When: row.State}
+		if d.InUse() {
+			one.When, one.Late = k.say("office.defect.in_use_for", "age", row.Age), true
+		}
+		view.Decide = append(view.Decide, one)
+	}
+	if len(list) > decideShown {
+		view.More = []link{{Href: "/defects", Text: k.say("office.overview.more_failed", "n", count(len(list)))}}
 	}
 	return nil
 }
 
-// newestFail gives the newest last test of a device that failed.
-func newestFail(d store.DeviceRow) (task string, last store.LastTest, ok bool) {
-	for _, t := range sortedKeys(d.Last) {
-		if l := d.Last[t]; l.Result == forms.Fail && (!ok || l.Day > last.Day) {
-			task, last, ok = t, l, true
-		}
-	}
-	return task, last, ok
-}
-
-// failedSince gives the day of the first fail of the unbroken run of fails a task ends with. Tests that could not be
-// made do not break the run.
-func failedSince(v *store.View, device, task string) (forms.Day, error) {
-	entries, err := v.Entries(device)
-	since := forms.NoDay
-	for _, e := range entries {
-		if e.Task != task || e.Withdrawn != nil || e.Verdict.Result == forms.NotTested {
-			continue
-		}
-		if e.Verdict.Result != forms.Fail {
-			break
-		}
-		since = e.Day
-	}
-	return since, err
-}
-
 // whatFailed says in words what an entry failed by: the readings outside their limits with the limits, at most three.
-func (s *Server) whatFailed(e store.Entry) string {
+func (s *Server) whatFailed(e store.Entry) string { return s.failedBy(e, "") }
+
+// failedBy is whatFailed of one cause alone; "" = all.
+func (s *Server) failedBy(e store.Entry, cause string) string {
 	k := s.ink()
 	var said []string
 	for _, f := range e.Verdict.Findings {
-		if f.Verdict != forms.Fail || len(said) == 3 {
+		if f.Verdict != forms.Fail || len(said) == 3 || cause != "" && f.Reading != cause {
 			continue
 		}
 		r := findingReading(e.Body, f)

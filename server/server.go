@@ -16,6 +16,7 @@ import (
 	"log/slog"
 	"net"
 	"net/http"
+	"sync"
 	"sync/atomic"
 	"time"
 
@@ -44,6 +45,7 @@ type Server struct {
 	cross   *http.CrossOriginProtection
 	wrong   *wrongLinks
 	image   atomic.Pointer[store.Image] // the backup that is being taken away
+	drawing sync.Mutex                  // pictures are drawn anew one at a time
 	imports *importArea                 // registers
 	results *importArea                 // tests made elsewhere
 	makings *makingArea                 // workbooks for the office pages

@@ -297,3 +297,13 @@ func registerPager(k ink, action string, ask registerAsk, found int) []link {
 	}
 	return out
 }
+
+// newestFail gives the newest last test of a device that failed.
+func newestFail(d store.DeviceRow) (task string, last store.LastTest, ok bool) {
+	for _, t := range sortedKeys(d.Last) {
+		if l := d.Last[t]; l.Result == forms.Fail && (!ok || l.Day > last.Day) {
+			task, last, ok = t, l, true
+		}
+	}
+	return task, last, ok
+}

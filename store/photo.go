@@ -13,6 +13,7 @@ import (
 	"os"
 	"path/filepath"
 	"slices"
+	"strings"
 
 	"github.com/go-json-experiment/json"
 	"github.com/go-json-experiment/json/jsontext"
@@ -55,13 +56,23 @@ func isHash(s string) bool {
 	return err == nil && len(b) == sha256.Size && hex.EncodeToString(b) == s
 }
 
-// namesPhoto tells whether an entry somebody may see names a photo.
-func (v *View) namesPhoto(entry, name string) error {
-	e, err := v.Entry(entry)
+// namesPhoto tells whether an entry, or something said of a defect, that somebody may see names a photo.
+func (v *View) namesPhoto(id, name string) error {
+	r, _, _, _, err := v.recordAt(parseID(id))
 	if err != nil {
 		return err
 	}
-	if !slices.Contains(e.Photos, name) {
+	photos := []string{}
+	if strings.HasPrefix(r.Kind, "defect.") {
+		photos = photosOf(r)
+	} else {
+		e, err := v.Entry(id)
+		if err != nil {
+			return err
+		}
+		photos = e.Photos
+	}
+	if !slices.Contains(photos, name) {
 		return errNoPhoto
 	}
 	return nil

@@ -21,6 +21,7 @@ type entryPage struct {
 	Crumbs              []link
 	Heading, Tag, Under string
 	Verdict             mark
+	First               *mark // what it came to as first entered, where a correction changed that
 	Notices             []notice
 	Readings            []readingShown
 	Note                string
@@ -33,11 +34,13 @@ type entryPage struct {
 }
 
 // notice is something to know before the readings are read.
-type notice struct{ Shape, Text string }
+type notice struct{ Shape, Text, Href string }
 
 // readingShown is a reading with what each limit says of it.
 type readingShown struct {
 	Name, Value, Typed string
+	Was                string // as first entered, where a correction changed it
+	WasVerdict         *mark
 	Findings           []findingShown
 }
 
@@ -57,6 +60,7 @@ type judgementShown struct {
 // correctionShown is a correction with the readings it changed.
 type correctionShown struct {
 	Head, Reason, Record string
+	Verdict              *mark // of the entry as it stood after this correction
 	Changes              []change
 }
 
@@ -101,14 +105,24 @@ func (s *Server) buildEntry(v *store.View, e store.Entry, view *entryPage) error
 	}
 	view.Verdict = k.verdict(e.Verdict.Result)
 	view.Notices = s.notices(v, e, site.Location())
+	if known {
+		if err := s.defectNotices(v, e, view); err != nil {
+			return err
+		}
+	}
 	spans, err := formSpans(v, e.Form)
 	if err != nil {
 		return err
 	}
 	view.Readings = s.readings(e, spans, before)
+	if err := s.correctedFrom(v, e, view); err != nil {
+		return err
+	}
 	view.Note = e.Note
 	view.Photos = s.photosShown(v, e)
-	view.Corrections = s.corrections(v, e, site.Location())
+	if view.Corrections, err = s.corrections(v, e, site.Location()); err != nil {
+		return err
+	}
 	if view.Judgements, err = s.judgements(v, e, site.Location()); err != nil {
 		return err
 	}
@@ -155,20 +169,20 @@ func (s *Server) notices(v *store.View, e store.Entry, zone *time.Location) []no
 	k := s.ink()
 	var out []notice
 	if w := e.Withdrawn; w != nil {
-		out = append(out, notice{"fail", k.say("office.entry.withdrawn", "by", s.personName(v, w.By), "day", k.at(w.At, zone), "reason", w.Reason)})
+		out = append(out, notice{Shape: "fail", Text: k.say("office.entry.withdrawn", "by", s.personName(v, w.By), "day", k.at(w.At, zone), "reason", w.Reason)})
 	}
 	if e.Imported {
-		out = append(out, notice{"none", k.say("office.entry.imported")})
+		out = append(out, notice{Shape: "none", Text: k.say("office.entry.imported")})
 	}
 	if len(e.Corrections) > 0 {
-		out = append(out, notice{"watch", k.say("office.entry.corrected")})
+		out = append(out, notice{Shape: "watch", Text: k.say("office.entry.corrected")})
 	}
 	for _, f := range e.Flags {
 		text := k.say("flag."+f.Code, "detail", s.flagDetail(f))
 		if !k.words.Has("flag." + f.Code) {
 			text = joined(f.Code, f.Detail)
 		}
-		out = append(out, notice{"watch", text})
+		out = append(out, notice{Shape: "watch", Text: text})
 	}
 	return out
 }
@@ -229,11 +243,7 @@ func (s *Server) readings(e store.Entry, spans map[string][]scaleSpan, before ma
 
 func (s *Server) oneReading(code string, r forms.Reading, at map[string]any) readingShown {
 	k := s.ink()
-	name := k.reading(code)
-	if len(at) > 0 {
-		name += " " + s.conditions(at)
-	}
-	return readingShown{Name: name, Value: k.value(code, r), Typed: k.typed(code, r)}
+	return readingShown{Name: s.readingName(code, at), Value: k.value(code, r), Typed: k.typed(code, r)}
 }
 
 func (s *Server) finding(f forms.Finding, r forms.Reading, e store.Entry, spans map[string][]scaleSpan, before map[string]float64) findingShown {
@@ -350,58 +360,6 @@ func (s *Server) conditions(at map[string]any) string {
 		}
 	}
 	return k.say("office.entry.at", "conditions", strings.Join(parts, ", "))
-}
-
-func (s *Server) corrections(v *store.View, e store.Entry, zone *time.Location) []correctionShown {
-	k := s.ink()
-	var out []correctionShown
-	was := e.Original
-	show := func(c store.Correction, head, state string) {
-		out = append(out, correctionShown{
-			Head:   joined(k.say("office.entry."+head, "by", s.personName(v, c.By), "day", k.at(c.At, zone)), k.say("office.entry."+state)),
-			Reason: c.Reason, Record: "/records/" + c.Record, Changes: s.changes(was, c.Body),
-		})
-	}
-	for _, c := range e.Corrections {
-		state := "not_in_force"
-		if c.InForce {
-			state = "in_force"
-		}
-		show(c, "correction_head", state)
-	}
-	for _, c := range e.NotPermitted {
-		if c.Withdraw {
-			c.Body = was // it changes no reading
-			show(c, "withdrawal_head", "not_permitted")
-			continue
-		}
-		show(c, "correction_head", "not_permitted")
-	}
-	return out
-}
-
-// changes lists the readings that differ between the first version and a correction.
-func (s *Server) changes(was, became forms.Entry) []change {
-	k := s.ink()
-	codes := maps.Clone(was.Readings)
-	if codes == nil {
-		codes = map[string]forms.Reading{}
-	}
-	maps.Copy(codes, became.Readings)
-	var out []change
-	for _, code := range readingOrder(codes) {
-		a, b := dash, dash
-		if r, ok := was.Readings[code]; ok {
-			a = k.value(code, r)
-		}
-		if r, ok := became.Readings[code]; ok {
-			b = k.value(code, r)
-		}
-		if a != b {
-			out = append(out, change{k.reading(code), a, b})
-		}
-	}
-	return out
 }
 
 func (s *Server) entryFacts(v *store.View, e store.Entry, site store.Site) ([]fact, error) {

@@ -163,7 +163,7 @@ func TestOffice_EveryRoleReadsItsPages(t *testing.T) {
 		}
 	}
 	b := r.signIn(r.manager)
-	if first := r.open(b, "/"); !strings.Contains(first.body, "1 device failed.") || !strings.Contains(first.body, "Outlet 2") {
+	if first := r.open(b, "/"); !strings.Contains(first.body, "1 failed, still in use for") || !strings.Contains(first.body, "Outlet 2") {
 		t.Error("the overview does not begin with the failed device")
 	}
 	entry := r.open(b, "/entries/"+failed.ID).body

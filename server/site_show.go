@@ -282,8 +282,12 @@ func overdueCount(d store.DeviceRow) (n int) {
 }
 
 func anyFailed(d store.DeviceRow) bool {
-	_, _, ok := newestFail(d)
-	return ok
+	for _, last := range d.Last {
+		if last.Result == forms.Fail {
+			return true
+		}
+	}
+	return false
 }
 
 func registerPager(k ink, action string, ask registerAsk, found int) []link {
@@ -296,14 +300,4 @@ func registerPager(k ink, action string, ask registerAsk, found int) []link {
 		out = append(out, link{Href: action + "?" + q.Encode(), Text: k.say("office.register.page", "from", count(from+1), "to", count(min(from+registerRows, found))), Here: from == ask.from})
 	}
 	return out
-}
-
-// newestFail gives the newest last test of a device that failed.
-func newestFail(d store.DeviceRow) (task string, last store.LastTest, ok bool) {
-	for _, t := range sortedKeys(d.Last) {
-		if l := d.Last[t]; l.Result == forms.Fail && (!ok || l.Day > last.Day) {
-			task, last, ok = t, l, true
-		}
-	}
-	return task, last, ok
 }

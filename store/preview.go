@@ -204,6 +204,15 @@ func (v *View) Judgements(e Entry) ([]Judgement, error) {
 	return out, nil
 }
 
+// JudgedAs gives the verdict an entry would have with other readings: as first entered, or after one of its corrections.
+func (v *View) JudgedAs(e Entry, body forms.Entry) (forms.Verdict, error) {
+	sv, err := v.open(e.Site)
+	if err != nil {
+		return forms.Verdict{}, err
+	}
+	return v.rules().judge(sv.ord, v.orgLog(), &body, e.Day).Verdict, nil
+}
+
 // revisionsAfter gives the revisions that came after a place in the book, in the order of the book.
 func (v *View) revisionsAfter(sv *siteView, seq uint64) ([]Revision, error) {
 	var all []Revision

@@ -282,12 +282,18 @@ func overdueCount(d store.DeviceRow) (n int) {
 }
 
 func anyFailed(d store.DeviceRow) bool {
-	for _, last := range d.Last {
-		if last.Result == forms.Fail {
-			return true
+	_, _, ok := newestFail(d)
+	return ok
+}
+
+// newestFail gives the newest last test of a device that failed.
+func newestFail(d store.DeviceRow) (task string, last store.LastTest, ok bool) {
+	for _, t := range sortedKeys(d.Last) {
+		if l := d.Last[t]; l.Result == forms.Fail && (!ok || l.Day > last.Day) {
+			task, last, ok = t, l, true
 		}
 	}
-	return false
+	return task, last, ok
 }
 
 func registerPager(k ink, action string, ask registerAsk, found int) []link {

@@ -85,19 +85,20 @@ func TestPlan_RefusesCalendarForNotToExceed(t *testing.T) {
 
 func TestPlan_Refuses(t *testing.T) {
 	for name, spoil := range map[string]func(*Plan){
-		"no id":                  func(p *Plan) { p.ID = "" },
-		"no task":                func(p *Plan) { p.Task = "" },
-		"revision 0":             func(p *Plan) { p.Revision = 0 },
-		"no day in force":        func(p *Plan) { p.InForce = NoDay },
-		"unreadable interval":    func(p *Plan) { p.Every = "monthly" },
-		"no time at all":         func(p *Plan) { p.Every = "P0D" },
-		"unknown duty":           func(p *Plan) { p.Duty = "often" },
-		"grace on not-to-exceed": func(p *Plan) { p.Duty, p.Grace = NotToExceed, "P7D" },
-		"five-month periods":     func(p *Plan) { p.Every = "P5M" },
-		"periods of days":        func(p *Plan) { p.Every = "P30D" },
-		"rolling once-each":      func(p *Plan) { p.Count = Rolling },
-		"unreadable grace":       func(p *Plan) { p.Grace = "a week" },
-		"count by the moon":      func(p *Plan) { p.Duty, p.Count = NotToExceed, "moon" },
+		"no id":                   func(p *Plan) { p.ID = "" },
+		"no task":                 func(p *Plan) { p.Task = "" },
+		"revision 0":              func(p *Plan) { p.Revision = 0 },
+		"no day in force":         func(p *Plan) { p.InForce = NoDay },
+		"unreadable interval":     func(p *Plan) { p.Every = "monthly" },
+		"no time at all":          func(p *Plan) { p.Every = "P0D" },
+		"unknown duty":            func(p *Plan) { p.Duty = "often" },
+		"grace on not-to-exceed":  func(p *Plan) { p.Duty, p.Grace = NotToExceed, "P7D" },
+		"five-month periods":      func(p *Plan) { p.Every = "P5M" },
+		"periods of days":         func(p *Plan) { p.Every = "P30D" },
+		"grace of a whole period": func(p *Plan) { p.Grace = "P1M" },
+		"rolling once-each":       func(p *Plan) { p.Count = Rolling },
+		"unreadable grace":        func(p *Plan) { p.Grace = "a week" },
+		"count by the moon":       func(p *Plan) { p.Duty, p.Count = NotToExceed, "moon" },
 	} {
 		p := plan(OnceEachPeriod, "P1M")
 		spoil(p)

@@ -26,22 +26,22 @@ func MarkColours() []string {
 func (m *Marks) check() error {
 	every, err := ParseInterval(m.Every)
 	if err != nil {
-		return fmt.Errorf("marks: every: %w", err)
+		return fmt.Errorf("every: %w", err)
 	}
 	if every.Months == 0 || every.Days != 0 || !wholePeriods(every) {
-		return fmt.Errorf("marks: a mark stands for whole calendar months: P1M, P2M, P3M, P4M, P6M or years, not %s", m.Every)
+		return fmt.Errorf("a mark stands for whole calendar months: P1M, P2M, P3M, P4M, P6M or years, not %s", m.Every)
 	}
 	if len(m.List) < 2 {
-		return fmt.Errorf("marks: give two marks at least: with one, an old mark looks like a new one")
+		return fmt.Errorf("give two marks at least: with one, an old mark looks like a new one")
 	}
 	seen := map[string]bool{}
 	for i, one := range m.List {
 		if one.Word == "" || seen[one.Word] {
-			return fmt.Errorf("marks: mark %d needs a word of its own", i+1)
+			return fmt.Errorf("mark %d needs a word of its own", i+1)
 		}
 		seen[one.Word] = true
 		if one.Colour != "" && !slices.Contains(MarkColours(), one.Colour) {
-			return fmt.Errorf("marks: %q is no colour a mark can be drawn in; it is one of %v", one.Colour, MarkColours())
+			return fmt.Errorf("%q is no colour a mark can be drawn in; it is one of %v", one.Colour, MarkColours())
 		}
 	}
 	return nil

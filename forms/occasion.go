@@ -35,6 +35,15 @@ func (r *rule) answers(o Occasion) (within Interval, ok bool) {
 	return Interval{}, o.Cause != Installed && (o.Cause != OutOfTolerance || r.Task != "button")
 }
 
+// Answers says within how long a plan asks for its test after a cause; ok is false where it does not.
+func (p *Plan) Answers(cause string) (within Interval, ok bool) {
+	r, err := ruleOf(p)
+	if err != nil {
+		return Interval{}, false
+	}
+	return r.answers(Occasion{Cause: cause})
+}
+
 // Pause is a span of days, both included, on which no test is asked of a device.
 type Pause struct {
 	From, Until Day

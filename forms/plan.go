@@ -23,6 +23,7 @@ const (
 // Plan says what is tested how often; data, not code (forms/data/plans).
 type Plan struct {
 	ID       string   `json:"plan"`
+	Name     string   `json:"name,omitempty"` // what its users call it
 	Revision int      `json:"revision"`
 	Task     string   `json:"task"`
 	Kinds    []string `json:"kinds"`
@@ -65,89 +66,92 @@ func ParsePlan(raw []byte) (*Plan, error) {
 	return p, p.Check()
 }
 
-// Check says what is wrong with a plan, or nil.
+// Check says what is wrong with a plan, or nil: an *Error whose field is the member.
 func (p *Plan) Check() error {
-	fail := func(format string, a ...any) error {
-		return fmt.Errorf("plan %s: "+format, append([]any{p.ID}, a...)...)
+	fail := func(field, format string, a ...any) error {
+		return &Error{Code: "invalid", Field: "plan." + field, Text: fmt.Sprintf(format, a...)}
 	}
 	switch {
 	case p.ID == "" || p.Task == "":
-		return fmt.Errorf("a plan needs an id and a task")
+		return fail("plan", "a plan needs an id and a task")
 	case p.Revision < 1:
-		return fail("revision is %d; revisions count from 1", p.Revision)
+		return fail("revision", "revision is %d; revisions count from 1", p.Revision)
 	case p.InForce == NoDay:
-		return fail("in_force is missing: give the first day it applies")
+		return fail("in_force", "in_force is missing: give the first day it applies")
 	}
 	every, err := ParseInterval(p.Every)
 	if err != nil {
-		return fail("every: %w", err)
+		return fail("every", "%v", err)
 	}
 	if every.Zero() {
-		return fail("every is %s, which is no time at all", p.Every)
+		return fail("every", "every is %s, which is no time at all", p.Every)
 	}
 	grace, err := p.grace()
 	if err != nil {
-		return fail("grace: %w", err)
+		return fail("grace", "%v", err)
 	}
 	switch p.Duty {
 	case NotToExceed:
 		if p.Count == Calendar {
-			return fail("a not-to-exceed interval cannot be counted by calendar periods: a test on 2 January and one on 30 June " +
+			return fail("count", "a not-to-exceed interval cannot be counted by calendar periods: a test on 2 January and one on 30 June "+
 				"fit two calendar quarters and lie 179 days apart; count it rolling, or make the duty once-each-period")
 		}
 		if !grace.Zero() {
-			return fail("a not-to-exceed interval has no grace: shorten the interval instead")
+			return fail("grace", "a not-to-exceed interval has no grace: shorten the interval instead")
 		}
 	case OnceEachPeriod:
 		if p.Count == Rolling {
-			return fail("once-each-period is counted by calendar periods; for a rolling date make the duty not-to-exceed")
+			return fail("count", "once-each-period is counted by calendar periods; for a rolling date make the duty not-to-exceed")
+		}
+		if Day(0).Add(grace) >= Day(0).Add(every) && !grace.Zero() {
+			return fail("grace", "the grace %s is as long as the interval %s: it would hide a period that was missed; make it shorter", p.Grace, p.Every)
 		}
 		if !wholePeriods(every) {
-			return fail("%s does not divide the calendar: use P1D, P1W, P1M, P2M, P3M, P4M, P6M or whole years", p.Every)
+			return fail("every", "%s does not divide the calendar: use P1D, P1W, P1M, P2M, P3M, P4M, P6M or whole years", p.Every)
 		}
 	default:
-		return fail("duty is %q; it must be %s or %s", p.Duty, NotToExceed, OnceEachPeriod)
+		return fail("duty", "duty is %q; it must be %s or %s", p.Duty, NotToExceed, OnceEachPeriod)
 	}
 	if p.Count != "" && p.Count != Rolling && p.Count != Calendar {
-		return fail("count is %q; it must be %s or %s", p.Count, Rolling, Calendar)
+		return fail("count", "count is %q; it must be %s or %s", p.Count, Rolling, Calendar)
 	}
 	if p.Marks != nil {
 		if err := p.Marks.check(); err != nil {
-			return fail("%w", err)
+			return fail("marks", "%v", err)
 		}
 	}
 	return p.checkStart(fail)
 }
 
 // checkStart holds lead, start, first round and occasions against what an interval may be.
-func (p *Plan) checkStart(fail func(string, ...any) error) error {
+func (p *Plan) checkStart(fail func(string, string, ...any) error) error {
 	every, _ := ParseInterval(p.Every)
 	if _, err := optional(p.Lead); err != nil {
-		return fail("lead: %w", err)
+		return fail("lead", "%v", err)
 	}
 	for _, one := range []struct{ name, text string }{{New, p.start().New}, {Replaced, p.start().Replaced}, {Imported, p.start().Imported}} {
 		i, err := optional(one.text)
 		if err != nil {
-			return fail("start: %s: %w", one.name, err)
+			return fail("start", "%s: %v", one.name, err)
 		}
 		if p.Duty == NotToExceed && Day(0).Add(i) > Day(0).Add(every) {
-			return fail("start: %s: %s is longer than the interval %s, which is not to be exceeded", one.name, one.text, p.Every)
+			return fail("start", "%s: %s is longer than the interval %s, which is not to be exceeded", one.name, one.text, p.Every)
 		}
 	}
 	for _, cause := range slices.Sorted(maps.Keys(p.Occasions)) {
 		if !slices.Contains(Causes(), cause) {
-			return fail("occasions: %q is no cause; it is one of %v", cause, Causes())
+			return fail("occasions", "%q is no cause; it is one of %v", cause, Causes())
 		}
 		if _, err := ParseInterval(p.Occasions[cause]); err != nil {
-			return fail("occasions: %s: %w", cause, err)
+			return fail("occasions", "%s: %v", cause, err)
 		}
 	}
 	if f := p.FirstRound; f != nil {
 		if _, err := ParseInterval(f.Within); err != nil {
-			return fail("first_round: %w", err)
+			return fail("first_round", "%v", err)
 		}
 		if f.From == NoDay || f.From == 0 {
-			return fail("first_round: from is missing: give the day the first round begins")
+			return fail("first_round", "from is missing: give the day the first round begins")
 		}
 	}
 	return nil

@@ -135,7 +135,8 @@ func (s *Server) buildDevice(v *store.View, site store.Site, d store.Device, vie
 	if view.Change {
 		view.Actions = []link{{Href: "/devices/" + d.ID + "/edit", Text: k.say("office.device.edit")}, {Href: "/devices/" + d.ID + "/defects/new", Text: k.say("office.defect.new")}}
 		if !d.Retired {
-			view.Actions = append(view.Actions, link{Href: "/devices/" + d.ID + "/retire", Text: k.say("office.device.retire")})
+			view.Actions = append(view.Actions, link{Href: "/devices/" + d.ID + "/retire", Text: k.say("office.device.retire")},
+				link{Href: siteHref(site) + "/occasion?device=" + d.ID, Text: k.say("asked.occasion_new")}, link{Href: siteHref(site) + "/pause?device=" + d.ID, Text: k.say("asked.pause_new")})
 		} else if d.Place.ID != "" {
 			view.Actions = append(view.Actions, link{Href: siteHref(site) + "/devices/new?after=" + d.ID, Text: k.say("office.device.successor")})
 		}
@@ -172,7 +173,14 @@ func (s *Server) nextDates(d store.DeviceRow, today forms.Day) []dated {
 		if due.Due == forms.NoDay {
 			key = "office.device.next_never"
 		}
-		out = append(out, dated{Text: k.say(cmp.Or(key, "office.device.next"), "task", k.named("task", due.Task), "day", k.near(due.Due, today)), Late: due.State == "overdue"})
+		text := k.say(cmp.Or(key, "office.device.next"), "task", k.named("task", due.Task), "day", k.near(due.Due, today))
+		switch {
+		case due.State == forms.Paused:
+			text = k.say("asked.device_paused", "task", k.named("task", due.Task), "day", k.near(due.Paused.Until, today), "reason", due.Paused.Reason)
+		case due.Cause != "":
+			text = k.say("asked.device_cause", "what", text, "cause", s.cause(due.Cause))
+		}
+		out = append(out, dated{Text: text, Late: due.State == "overdue"})
 	}
 	slices.SortStableFunc(out, func(a, b dated) int { return cmp.Compare(b2i(b.Late), b2i(a.Late)) })
 	return out

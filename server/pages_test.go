@@ -93,6 +93,14 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 			What: []string{"KILN-LANE", "Entries from 1 Jan 2026 to today"}, Again: []link{{Href: "/workbook/2JHC0VQ2", Text: "Look again"}}, File: []link{{Href: "/workbook/2JHC0VQ2/tripwell-KILN-LANE.xlsx", Text: "Download workbook"}}},
 		"labels.html": labelsPage{Frame: frameOf("Labels", "downloads"), Heading: "Labels", Under: "Sheets and rolls.", Sheets: []field{{Name: "site", Label: "Site", Options: choices("", "", "All your sites")}},
 			Batch: []field{{Name: "count", ID: "batch-count", Label: "How many", Type: "number", Value: "30"}}, Markings: []field{{Name: "roll", ID: "marking-roll", Label: "Roll", Type: "text"}}},
+		"plans.html": plansPage{Frame: frameOf("Plans", "set-up"), Crumbs: []link{{Href: "/set-up", Text: "Set up"}}, Heading: "1 plan asks for tests.", Lead: "A plan says what is tested how often.", Actions: []link{{Href: "/plans/new", Text: "Make a plan", Here: true}}, Unworked: "Some dates are still being set again.",
+			Groups: []planGroup{{"The whole organisation", []planRow{{Href: "/plans/button-monthly", Name: "TEST button", Kinds: "GFCI receptacle", Every: "once in each calendar month", Source: "Owner", Status: "memory"}}}}},
+		"plan.html": planPage{Frame: frameOf("Cord sets", "set-up"), Crumbs: []link{{Href: "/plans", Text: "Plans"}}, Heading: "Cord sets", Under: "For the whole organisation: at most 3 months apart.", Actions: []link{{Href: "/plans/1/edit", Text: "Change this plan", Here: true}},
+			Facts: []planFact{{"Test", "Receptacle test"}}, Marks: []markRow{{"North", "white", "1 Oct to 31 Dec 2026", true}}, Revisions: []planRevision{{"2", "1 Dec 2026", "at most 3 months apart", "Manager 1", "Cords fail early"}}},
+		"plan_preview.html": planPreviewed{Frame: frameOf("Cord sets", "set-up"), Crumbs: []link{{Href: "/plans", Text: "Plans"}}, Heading: "What it changes", Lead: "12 devices.", Partly: "Only the first 5.", Says: []change{{"How often", "1 year", "3 months"}}, Counts: []string{"12 dates come earlier."},
+			Rows: []dateMoved{{Href: "/devices/1", Spot: "Reel 4", Where: "Depot", Task: "Receptacle test", Was: "1 Dec 2026", Becomes: "1 Nov 2026", WasLate: true, Late: true}}, More: "3 more.", Hidden: []hidden{{"record", "1"}}, Back: "/plans"},
+		"asked.html": askedPage{Frame: frameOf("Storms", "sites"), Crumbs: []link{{Href: "/sites/KILN-LANE", Text: "Kiln Lane Day Clinic"}}, Heading: "What asks for tests at once", Lead: "Tests of that day meet it.", Actions: []link{{Href: "/sites/KILN-LANE/occasion", Text: "Something happened", Here: true}},
+			Occasions: []askedRow{{What: "lightning storm", Days: "Sat 4 Jul", Where: "The whole site", Text: "Main switch tripped", By: "Manager 1"}}, Pauses: []askedRow{{Href: "/1", Days: "1 Dec to 24 Dec 2026", Where: "12 devices", Text: "Ward closed", By: "Manager 1", Now: true}}},
 		"setup.html":    s.setupSample(),
 		"limits.html":   s.limitsSample(),
 		"revision.html": revisionSample(),
@@ -181,7 +189,7 @@ func (s *Server) setupSample() setupPage {
 	p := setupPage{Frame: frameOf("Set up", "set-up"), Heading: "What tests are judged by.", NewInstrument: "/instruments/new", Instruments: []instrumentRow{
 		{Href: "/instruments/1", Name: "Instrument B", Serial: "0042", Calibration: "27 Nov 2026, expired", Late: true, Accuracy: []string{"Trip time ±(2 % + 1 ms)", "Trip current ±5 %"}, Ramp: "0.5 mA every 200 ms"}}}
 	for _, plan := range shipped.Plans {
-		p.Plans = append(p.Plans, s.planRow(plan))
+		p.Plans = append(p.Plans, s.planRow(plan, ""))
 	}
 	p.LimitSets = s.limitSetRows(shipped.LimitSets)
 	return p

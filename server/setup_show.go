@@ -20,7 +20,7 @@ type setupPage struct {
 	Forms                  []link
 }
 
-type planRow struct{ Name, Kinds, Every, Source, Status string }
+type planRow struct{ Href, Name, Kinds, Every, Source, Status string }
 
 // limitSetRow is a limit set in the list of them; its limits stand on a page of their own.
 type limitSetRow struct{ Href, Name, Kinds, Revision, Limits string }
@@ -43,7 +43,7 @@ func (s *Server) setupShow(c echo.Context) error {
 			return err
 		}
 		for _, p := range plans {
-			view.Plans = append(view.Plans, s.planRow(p))
+			view.Plans = append(view.Plans, s.planRow(p, ""))
 		}
 		sets, err := v.LimitSets()
 		if err != nil {
@@ -73,13 +73,8 @@ func (s *Server) kinds(codes []string) string {
 	return strings.Join(names, ", ")
 }
 
-func (s *Server) planRow(p *forms.Plan) planRow {
-	k := s.ink()
-	name := k.named("plan", p.ID)
-	if name == p.ID {
-		name = k.named("task", p.Task)
-	}
-	return planRow{Name: name, Kinds: s.kinds(p.Kinds), Every: s.every(p), Source: p.Source, Status: status(p.Source, p.Status)}
+func (s *Server) planRow(p *forms.Plan, site string) planRow {
+	return planRow{Href: planHref(p.ID, site), Name: s.planName(p), Kinds: s.kinds(p.Kinds), Every: s.every(p), Source: p.Source, Status: status(p.Source, p.Status)}
 }
 
 // every says a plan's interval in words: once in each calendar month; at most 12 months apart.

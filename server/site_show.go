@@ -174,7 +174,7 @@ func (s *Server) buildRegister(v *store.View, site store.Site, ask registerAsk, 
 	}
 	view.Pager = registerPager(k, siteHref(site), ask, found)
 	if view.Change {
-		view.Actions = []link{{Href: siteHref(site) + "/devices/new", Text: k.say("office.device.new"), Here: true}, {Href: siteHref(site) + "/edit", Text: k.say("office.site.edit")}}
+		view.Actions = []link{{Href: siteHref(site) + "/devices/new", Text: k.say("office.device.new"), Here: true}, {Href: siteHref(site) + "/edit", Text: k.say("office.site.edit")}, {Href: siteHref(site) + "/asked", Text: k.say("asked.title")}}
 	}
 	return nil
 }

@@ -8,14 +8,16 @@ import (
 	"fmt"
 	"slices"
 	"time"
+	"unicode"
+	"unicode/utf8"
 
 	"tripwell/forms"
 	"tripwell/store/record"
 )
 
-// Revision is one revision of a form or a limit set: what it says, since when, and who set it why.
+// Revision is one revision of a form, a limit set or a plan: what it says, since when, and who set it why.
 type Revision struct {
-	Kind     string // limits.set | forms.set
+	Kind     string // limits.set | forms.set | plan.set
 	ID       string // of the set or the form
 	Site     string // id of the site whose own it is; "" = the organisation's
 	Revision int
@@ -23,6 +25,7 @@ type Revision struct {
 	JSON     json.RawMessage // as its author sent it
 	LimitSet *forms.LimitSet // of limits.set
 	Form     *forms.Form     // of forms.set
+	Plan     *forms.Plan     // of plan.set
 	Record   string
 	By       string // person; "" for what the program ships
 	At       time.Time
@@ -49,6 +52,20 @@ func (v *View) FormRevisions(id string) ([]Revision, error) {
 	return v.revisions("forms.set", ruleForm, v.orgLog(), "", id)
 }
 
+// PlanRevisions gives the revisions of the organisation's plans, or those of one site, by id, then by day in force. id "" is
+// all.
+func (v *View) PlanRevisions(site, id string) ([]Revision, error) {
+	ord := v.orgLog()
+	if site != "" {
+		sv, err := v.siteNamed(site)
+		if err != nil {
+			return nil, err
+		}
+		site, ord = sv.ID, sv.ord
+	}
+	return v.revisions("plan.set", rulePlan, ord, site, id)
+}
+
 func (v *View) revisions(kind string, typ byte, ord uint32, site, id string) ([]Revision, error) {
 	out := []Revision{}
 	if ord == 0 {
@@ -70,7 +87,13 @@ func (v *View) revisions(kind string, typ byte, ord uint32, site, id string) ([]
 
 func (v *View) revision(kind, site string, row row) (Revision, error) {
 	r := Revision{Kind: kind, Site: site, JSON: slices.Clone(ruleJSON(row.value))}
-	if kind == "limits.set" {
+	if kind == "plan.set" {
+		plan, err := parseRule[forms.Plan](row.value)
+		if err != nil {
+			return r, err
+		}
+		r.Plan, r.ID, r.Revision, r.InForce = plan, plan.ID, plan.Revision, plan.InForce
+	} else if kind == "limits.set" {
 		set, err := parseRule[forms.LimitSet](row.value)
 		if err != nil {
 			return r, err
@@ -135,7 +158,7 @@ func (v *View) StandingFor(device string, on forms.Day) (Standing, error) {
 
 // RuleDraft is a revision that somebody wants to make.
 type RuleDraft struct {
-	Kind   string // limits.set | forms.set
+	Kind   string // limits.set | forms.set | plan.set
 	Site   string // id; "" = the organisation's
 	JSON   json.RawMessage
 	Reason string
@@ -148,8 +171,11 @@ func (d RuleDraft) Draft(id, by string) (Draft, error) {
 		return Draft{}, err
 	}
 	subject, log := LimitSetSubject(name), d.Site
-	if d.Kind == "forms.set" {
+	switch d.Kind {
+	case "forms.set":
 		subject = FormSubject(name)
+	case "plan.set":
+		subject = PlanSubject(name)
 	}
 	if log == "" {
 		log = record.Org
@@ -164,6 +190,18 @@ func (d RuleDraft) Draft(id, by string) (Draft, error) {
 // read gives what a draft names; its first fault is an *Error whose field is the place.
 func (d RuleDraft) read() (member, id string, revision int, inForce forms.Day, err error) {
 	var wrong []*forms.Error
+	if d.Kind == "plan.set" {
+		plan, err := forms.ParsePlan(d.JSON)
+		if err != nil {
+			var wrong *forms.Error
+			field := "plan"
+			if errors.As(err, &wrong) {
+				field = wrong.Field
+			}
+			return "plan", "", 0, forms.NoDay, &Error{Code: "invalid", Field: field, Text: sentence(err.Error())}
+		}
+		return "plan", plan.ID, plan.Revision, plan.InForce, nil
+	}
 	if d.Kind == "forms.set" {
 		form, list := forms.ParseForm(d.JSON)
 		if wrong = list; form != nil {
@@ -181,6 +219,12 @@ func (d RuleDraft) read() (member, id string, revision int, inForce forms.Day, e
 	return member, id, revision, inForce, nil
 }
 
+// sentence makes a sentence of what is wrong.
+func sentence(text string) string {
+	r, n := utf8.DecodeRuneInString(text)
+	return string(unicode.ToUpper(r)) + text[n:] + "."
+}
+
 // Next makes the following revision of what a draft holds: it counts on from the newest the book has, unless the draft
 // counts further already, and is in force from the day asked for; NoDay leaves the draft's own day where its revision is
 // new, and is else today. same reports that the newest revision says just this already.
@@ -190,9 +234,12 @@ func (v *View) Next(d RuleDraft, inForce, today forms.Day) (next RuleDraft, same
 		return d, false, err
 	}
 	var held []Revision
-	if d.Kind == "forms.set" {
+	switch d.Kind {
+	case "forms.set":
 		held, err = v.FormRevisions(id)
-	} else {
+	case "plan.set":
+		held, err = v.PlanRevisions(d.Site, id)
+	default:
 		held, err = v.LimitRevisions(d.Site, id)
 	}
 	if err != nil {
@@ -233,10 +280,15 @@ func (d RuleDraft) numbered(revision int, day forms.Day) (json.RawMessage, error
 	if rev == revision && in == day {
 		return encodeBody(d.JSON)
 	}
-	if d.Kind == "forms.set" {
+	switch d.Kind {
+	case "forms.set":
 		form, _ := forms.ParseForm(d.JSON)
 		form.Revision, form.InForce = revision, day
 		return encodeBody(form)
+	case "plan.set":
+		plan, _ := forms.ParsePlan(d.JSON)
+		plan.Revision, plan.InForce = revision, day
+		return encodeBody(plan)
 	}
 	set, _ := forms.ParseLimitSet(d.JSON)
 	set.Revision, set.InForce = revision, day

@@ -13,7 +13,7 @@ import (
 )
 
 // sendRound sends a round sheet. Query: site (id or code), task, until (last due day; none = every device that has the
-// task), as (pdf or xlsx), paper (letter or a4).
+// task), or round (id), as (pdf or xlsx), paper (letter or a4).
 func (s *Server) sendRound(c echo.Context, sc store.Scope, by string) error {
 	until, err := dayParam(c, "until")
 	if err != nil {
@@ -32,6 +32,16 @@ func (s *Server) sendRound(c echo.Context, sc store.Scope, by string) error {
 		return refuse(codeInvalid, "as", "A round sheet can be had as pdf or as xlsx.")
 	}
 	site := c.QueryParam("site")
+	if id := c.QueryParam("round"); id != "" {
+		err := s.store.View(sc, func(v *store.View) error {
+			r, err := v.Round(id)
+			site = r.Site
+			return err
+		})
+		if err != nil {
+			return err
+		}
+	}
 	if site == "" {
 		return refuse(codeInvalid, "site", "A round sheet is of one site. Choose it.")
 	}
@@ -42,7 +52,7 @@ func (s *Server) sendRound(c echo.Context, sc store.Scope, by string) error {
 			return err
 		}
 		today := forms.DayOf(s.store.Now().In(at.Location()))
-		round, err = paper.RoundOf(v, today, paper.RoundAsk{Site: at.ID, Task: c.QueryParam("task"), Until: until, On: today, URL: s.store.URL(), Demo: s.store.Demo()})
+		round, err = paper.RoundOf(v, today, paper.RoundAsk{Site: at.ID, Round: c.QueryParam("round"), Task: c.QueryParam("task"), Until: until, On: today, URL: s.store.URL(), Demo: s.store.Demo()})
 		return err
 	})
 	if err != nil {

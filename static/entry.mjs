@@ -40,12 +40,13 @@ function givenInstrument({ id, accuracy, ramp, calibration_due: due, ...more }) 
 }
 
 /** The body of the record. shown: {result, limit_rev, judge}. */
-export function entryBody({ form, given, readings, series, shown, person, note, photos = [] }) {
+export function entryBody({ form, given, readings, series, shown, person, note, photos = [], round }) {
   const body = { form: form.form, given, readings };
   if (series.length > 0) body.series = series;
   Object.assign(body, { shown, source: "phone", read_by: person, typed_by: person });
   if (note) body.note = note;
   if (photos.length > 0) body.photos = photos;
+  if (round) body.round = round;
   return body;
 }
 

@@ -8,7 +8,7 @@ import { toDevice } from "./route.mjs";
 import { showTag } from "./tag.mjs";
 import { tagTyped } from "./tag-typed.mjs";
 import { Camera } from "./field-scan.mjs";
-import { walkWords } from "./field-round.mjs";
+import { RoundRows, walkWords } from "./field-round.mjs";
 import { backOf, countsOf } from "./walk-round.mjs";
 
 const FIRST = 24, SLICE = 42; // rows of the first picture, which fill any screen; the rest of a page follows in slices, so that a tap never waits
@@ -34,6 +34,7 @@ export function DevicesPage({ app, site }) {
       context=${site.snapshot.site.name} progress=${say("field.as_of", { when: showMoment(app, site.taken) })} back="#/" />
     <main>
       <p class="beside pad counts"><span>${walkWords(app, countsOf(site, app.skipped(site)))}</span><a href=${`#/round/${encodeURIComponent(code)}`}>${say("walk.round")}</a></p>
+      <${RoundRows} app=${app} rounds=${app.roundsOf(site).map((round) => ({ site, round }))} />
       <div class="filter">
         ${scan && html`<${Camera} app=${app} onTag=${(tag) => app.go(`#tag=${tag}`)} onClose=${() => setScan(false)} />`}
         <div class="beside"><label class="find"><span class="unseen">${say("field.search")}</span><input type="search" value=${typed} placeholder=${say("field.search")} autocomplete="off" aria-invalid=${error ? "true" : null} onInput=${(e) => { setTyped(e.currentTarget.value); setMost(PAGEFUL); }} /></label>

@@ -11,6 +11,7 @@ import { dueNow } from "./list.mjs";
 import { fedBy } from "./register-work.mjs";
 import { MOST_PHOTOS } from "./photo.mjs";
 import { lockedEntry } from "./room-locked.mjs";
+import { walking } from "./walking.mjs";
 
 /** app: the state's readers and `write`; parts: what the app itself was given, with its own inner functions. */
 export function fieldWork(app, parts) {
@@ -30,15 +31,9 @@ export function fieldWork(app, parts) {
 
   const setOf = (site, device, form) => limitSetFor(device, form, site.snapshot.limit_sets);
 
-  /** The round of a site on its day; another day begins a new one. */
-  function roundOf(site) {
-    const round = state.me.rounds?.[site.log];
-    return round?.day === site.today ? round : { day: site.today, skipped: [], proved: {} };
-  }
-  const setRound = (site, change) => app.remember("rounds", { ...state.me.rounds, [site.log]: { ...roundOf(site), ...change } });
-
   return {
-    pageDraft, roundOf,
+    ...walking(app, parts),
+    pageDraft,
     /** Devices of all sites that answer to test(device, place), at most a number. */
     search(test, most) {
       const found = [];
@@ -60,21 +55,6 @@ export function fieldWork(app, parts) {
     feeds: (site, device) => fedBy(site.devices, device.id).map((d) => ({ device: d, place: site.places.get(d.place) })),
     /** What is typed on a page of work is kept like a test's draft, until the page's records are. */
     setPageDraft: (key, site, fields) => parts.putDraft({ key, device: null, task: "page", log: site.log, form: "", started: now(), changed: now(), answers: {}, series: [], note: "", fields }),
-
-    skipped: (site) => new Set(roundOf(site).skipped),
-    skip: (site, device) => setRound(site, { skipped: [...new Set([...roundOf(site).skipped, device.id])] }),
-    unskip: (site) => setRound(site, { skipped: [] }),
-    /** works null takes it back. */
-    prove: (site, end, works) => setRound(site, { proved: { ...roundOf(site).proved, [end]: works === null ? undefined : { at: now(), works } } }),
-    async closeRound(site, counts) {
-      const round = roundOf(site), proved = Object.fromEntries(Object.entries(round.proved).filter(([, p]) => p).map(([end, p]) => [end, { at: new Date(p.at).toISOString(), works: p.works }]));
-      const body = { day: site.today, ...counts, proved, ...(state.me.instrument ? { instrument: state.me.instrument } : {}) };
-      if (!(await app.write(site, [{ kind: "round.closed", subject: app.newId(), body }], { said: say("walk.round_of", { what: site.snapshot.site.name }) }))) return false;
-      const rest = { ...state.me.rounds };
-      delete rest[site.log];
-      app.remember("rounds", rest);
-      return true;
-    },
 
     /** One reason for every due test of these devices. */
     keepLocked(site, devices, reason, room) {

@@ -5,10 +5,11 @@ import { html, useState } from "./vendor/htm-preact.mjs";
 import { Foot, Mark, titleOf, Where } from "./field-parts.mjs";
 import { Confirm } from "./field-fields.mjs";
 import { dueIn, dueNow } from "./list.mjs";
-import { backOf, countsOf, roomMates } from "./walk-round.mjs";
+import { backOf, countsOf, nextStop, passedBy, roomMates, roundCounts } from "./walk-round.mjs";
+import { TellFirst } from "./field-pass.mjs";
 import { ROOM_REASONS } from "./room-locked.mjs";
 import { showDay, showMoment } from "./days.mjs";
-import { toDevice, toSite } from "./route.mjs";
+import { toDevice, toRound, toSite, toTest } from "./route.mjs";
 
 /** "12 done · 30 left · 2 passed over · 1 to come back to". */
 export function walkWords(app, counts) {
@@ -38,8 +39,77 @@ export function RoomPage({ app, site, device }) {
     </main><${Foot} app=${app}><button type="button" class="big go" aria-disabled=${String(!reason || chosen.length === 0)} disabled=${app.state.saving} onClick=${keep}>${say("walk.keep_room", { n: chosen.length })}</button><//>`;
 }
 
-/** The round of a site: counts, the tester first and last, the list to come back to, the end. */
-export function RoundPage({ app, site }) {
+/** What a round made in the office is called: its day. */
+function roundTitle(app, round) {
+  return round.day ? app.say("walk.made_for", { day: showDay(app, round.day) }) : app.say("walk.made");
+}
+
+/** Rounds made in the office, as a list of links. rounds: [{site, round}]. */
+export function RoundRows({ app, rounds }) {
+  const { say } = app;
+  return rounds.length > 0 && html`<section class="room rounds"><h2>${say("walk.rounds")}</h2><ul class="rows">${rounds.map(({ site, round }) => html`<li key=${round.id}><a class="row" href=${toRound(site.snapshot.site.code, round.id)}>
+    <span class="name">${roundTitle(app, round)}</span><span class="quiet">${app.walking(site)?.id === round.id ? say("walk.begun") : ""}</span>
+    <span class="quiet">${[site.snapshot.site.name, round.starts, walkWords(app, roundCounts(round.stops, app.walking(site)?.id === round.id ? app.passed(site) : []))].filter(Boolean).join(" · ")}</span></a></li>`)}</ul></section>`;
+}
+
+/** A round made in the office: its note, whom to tell, how far it is, its stops by room, the end. */
+function MadeRound({ app, site, round }) {
+  const { say } = app, begun = app.walking(site)?.id === round.id, passed = begun ? app.passed(site) : [];
+  const counts = roundCounts(round.stops, passed), next = nextStop(round.stops, undefined, passed), blocked = app.off.length > 0;
+  const places = round.stops.map((s) => site.places.get(site.device(s.device)?.place));
+  const other = !begun && app.walking(site);
+  const go = () => { app.startRound(site, round.id); if (next) app.go(toTest(next.device, next.task)); };
+  const end = async () => { if (!blocked && (await app.closeRound(site, counts))) app.go("#/", { keep: true }); };
+  const main = !begun ? html`<button type="button" class="big go" onClick=${go}>${say("walk.start")}</button>`
+    : next ? html`<a class="big go" href=${toTest(next.device, next.task)}>${say("walk.go_on", { what: titleAt(app, site, next) })}</a>`
+    : html`<button type="button" class="big go" aria-disabled=${String(blocked)} disabled=${app.state.saving} onClick=${end}>${say("walk.end")}</button>`;
+  return html`<${Where} app=${app} title=${roundTitle(app, round)} context=${site.snapshot.site.name} progress=${[round.starts, round.crew].filter(Boolean).join(" · ")} back="#/" />
+    <main><p class="pad counts">${walkWords(app, counts)}</p>
+      ${round.note && html`<p class="pad note">${round.note}</p>`}
+      ${other && html`<p class="hint pad">${say("walk.other_begun")}</p>`}
+      <${TellFirst} app=${app} places=${places} names />
+      ${begun && html`<${Proof} app=${app} site=${site} round=${app.roundOf(site)} end="first" />`}
+      ${stopsByRoom(site, round.stops).map((g, i) => html`<section class="room" key=${i}><h2>${g.name || say("field.no_place")}</h2><ul class="rows">${g.stops.map((s) => html`<${StopRow} app=${app} site=${site} stop=${s} reason=${passedBy(passed, s)} key=${s.device + s.task} />`)}</ul></section>`)}
+      ${begun && html`<${Proof} app=${app} site=${site} round=${app.roundOf(site)} end="last" />`}
+      ${blocked && html`<p class="caution" role="alert">${say("walk.still_off", { n: app.off.length })}</p>`}
+      ${begun && next && html`<p class="pad"><button type="button" class="link" aria-disabled=${String(blocked)} disabled=${app.state.saving} onClick=${end}>${say("walk.end_with", { n: counts.left })}</button></p>`}
+    </main><${Foot} app=${app}>${main}<//>`;
+}
+
+function titleAt(app, site, stop) {
+  const device = site.device(stop.device);
+  return device ? titleOf(app, device, site.places.get(device.place)) : app.say("walk.unknown");
+}
+
+/** Stops under their rooms, in the order of the round. */
+function stopsByRoom(site, stops) {
+  const groups = [];
+  for (const stop of stops) {
+    const place = site.places.get(site.device(stop.device)?.place), name = [place?.building, place?.floor, place?.room].filter(Boolean).join(" · ");
+    if (groups.at(-1)?.name !== name) groups.push({ name, stops: [] });
+    groups.at(-1).stops.push(stop);
+  }
+  return groups;
+}
+
+function StopRow({ app, site, stop, reason }) {
+  const { say } = app, last = site.device(stop.device)?.last?.[stop.task];
+  const state = stop.state === "done" ? html`<${Mark} verdict=${last?.result ?? "pass"}>${say(`verdict.${last?.result ?? "pass"}`)}<//>`
+    : stop.state === "back" ? html`<${Mark} verdict="watch">${say("walk.stop_back")}<//>`
+    : reason ? html`<${Mark} verdict="not-tested">${say(`walk.passed.${reason}`)}<//>` : null;
+  return html`<li><a class="row" href=${toTest(stop.device, stop.task)}><span class="name">${titleAt(app, site, stop)}</span><span class="quiet">${say(`task.${stop.task}`)}</span>${state}</a>
+    ${reason && html`<button type="button" class="link under" onClick=${() => app.passOver(site, stop, null)}>${say("walk.walk_it")}</button>`}</li>`;
+}
+
+/** The round of a site: one made in the office where the address names it, else a walk through all that is due today. */
+export function RoundPage({ app, site, tag: id }) {
+  const made = id && app.roundsOf(site).find((r) => r.id === id);
+  if (made) return html`<${MadeRound} app=${app} site=${site} round=${made} />`;
+  return html`<${DayWalk} app=${app} site=${site} />`;
+}
+
+/** Counts of the day, the tester first and last, the list to come back to, the end. */
+function DayWalk({ app, site }) {
   const { say } = app;
   const round = app.roundOf(site), counts = countsOf(site, app.skipped(site)), back = backOf(site);
   const off = app.off.length, blocked = off > 0;

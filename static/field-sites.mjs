@@ -4,6 +4,7 @@ import { html } from "./vendor/htm-preact.mjs";
 import { Foot, Where } from "./field-parts.mjs";
 import { AlongLine } from "./field-along.mjs";
 import { toSite } from "./route.mjs";
+import { RoundRows } from "./field-round.mjs";
 
 export function SitesPage({ app }) {
   const { say } = app;
@@ -12,6 +13,8 @@ export function SitesPage({ app }) {
   return html`
     <${Where} app=${app} title=${sitesTitle(app, sites, due)} context=${say("field.sites")} />
     <main>${sites.some((s) => s.taken) && html`<div class="choose"><a class="big" href="#/find"><b>${say("scan.title")}</b></a></div>`}
+      <${RoundRows} app=${app} rounds=${app.rounds()} />
+      ${app.rounds().length > 0 && html`<section class="room"><h2>${say("field.sites")}</h2></section>`}
       <ul class="rows">${sites.map((s) => html`<li key=${s.log}><a class="row" href=${toSite(s.code)}>
       <span class="name">${s.name}</span><span class="tag">${s.code}</span>
       <span class="quiet">${s.taken ? say("field.site_line", { devices: say("field.devices", { n: s.devices }), due: say("field.due_count", { n: s.due }) }) : say(app.state.busy ? "field.fetching_site" : "field.not_taken")}</span></a></li>`)}</ul>

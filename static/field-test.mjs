@@ -8,6 +8,7 @@ import { conditionKey, isTouched, seriesAnswers } from "./draft.mjs";
 import { Reason } from "./field-correct.mjs";
 import { ResetsAt } from "./field-dark.mjs";
 import { Photos } from "./field-photo.mjs";
+import { PassOver, TellFirst } from "./field-pass.mjs";
 import { toDevice, toTest } from "./route.mjs";
 import { showNumber } from "./number.mjs";
 import { missingReasons } from "./reading.mjs";
@@ -40,6 +41,7 @@ export function TestPage({ app, test }) {
     <main>
       <h2 class="task">${draft.corrects ? say("correct.title", { task: say(`task.${form.task}`) }) : say(`task.${form.task}`)}</h2>
       ${test.loads.length > 0 && html`<p class="caution"><b>${say("field.critical_load", { load: test.loads.join("; ") })}</b> ${say("field.critical_load_do")}</p>`}
+      <${TellFirst} app=${app} places=${[place]} />
       ${walked.readings.found?.value === "no-power" && html`<${ResetsAt} app=${app} device=${device} />`}
       ${form.quick && !detailed
         ? html`<${Quick} app=${app} form=${form} test=${test} done=${quickDone} set=${set} open=${() => set({}, { detailed: true })} />`
@@ -51,15 +53,9 @@ export function TestPage({ app, test }) {
       ${(detailed || quickDone) && html`<section class="ask"><label class="q" for="note">${say("field.note")}</label>
         <textarea id="note" rows="2" value=${draft.note} onInput=${(e) => app.note(draft, e.currentTarget.value)}></textarea></section>`}
       ${draft.corrects ? html`<${Reason} app=${app} draft=${draft} />` : (detailed || quickDone) && html`<${Photos} app=${app} draft=${draft} />`}
-      ${!draft.corrects && test.next && html`<p class="pad"><button type="button" class="link" onClick=${() => pass(app, test)}>${say("walk.skip")}</button></p>`}
+      ${!draft.corrects && (test.next || test.onRound) && html`<${PassOver} app=${app} test=${test} />`}
     </main>
     <${Foot} app=${app}><button type="button" class="big go" aria-disabled=${String(!ready)} disabled=${app.state.saving} onClick=${save}>${say(draft.corrects ? "correct.keep" : test.next ? "field.save_next" : "field.save")}</button><//>`;
-}
-
-/** On to the next outlet without an entry; this one stays due and is counted as passed over. */
-function pass(app, test) {
-  app.skip(test.site, test.device);
-  app.go(toTest(test.next.id, test.form.task));
 }
 
 const sameAnswers = (a, b) => Object.keys(a).length === Object.keys(b).length && Object.keys(b).every((k) => a[k]?.pick === b[k].pick);

@@ -4,7 +4,7 @@
 import { correctionBody } from "./correcting.mjs";
 import { dayIn } from "./days.mjs";
 import { entryBody, summaryOf } from "./entry.mjs";
-import { toDevice, toSite, toTest } from "./route.mjs";
+import { toDevice, toRound, toTest } from "./route.mjs";
 import { titleOf } from "./field-parts.mjs";
 
 const SLOW = 150; // ms after which the page says that it is still keeping
@@ -34,9 +34,9 @@ export function keeping(app, { tray, make, now, judgeVersion, soon, keepSending 
     Object.assign(state, { saved, trouble: null, saving: false });
   }
 
-  const entryOf = ({ form, draft, given, walked, verdict }, person) => (draft.corrects
+  const entryOf = ({ form, draft, given, walked, verdict, onRound }, person) => (draft.corrects
     ? correctionBody({ draft, readings: walked.readings, series: walked.series, given, was: draft.instrument_was })
-    : entryBody({ form, given, readings: walked.readings, series: walked.series, person, note: draft.note.trim(), photos: draft.photos,
+    : entryBody({ form, given, readings: walked.readings, series: walked.series, person, note: draft.note.trim(), photos: draft.photos, round: onRound?.id,
       shown: { result: verdict.result, limit_rev: given.limit_rev ?? 0, judge: judgeVersion } }));
 
   /** The entry of a test, as app.openTest gives it; then on to the next outlet. */
@@ -54,7 +54,7 @@ export function keeping(app, { tray, make, now, judgeVersion, soon, keepSending 
     state.drafts.delete(draft.key);
     kept({ what: title, result: verdict.result });
     app.lay(site.log, device.id);
-    app.go(draft.corrects ? toDevice(device.id) : test.next ? toTest(test.next.id, form.task) : toSite(site.snapshot.site.code), { keep: true });
+    app.go(draft.corrects ? toDevice(device.id) : test.next ? toTest(test.next.device, test.next.task) : toRound(site.snapshot.site.code, test.onRound?.id), { keep: true });
   });
 
   /**

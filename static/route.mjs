@@ -25,6 +25,8 @@ export function parseRoute(hash, path = "") {
 }
 
 export const toSite = (code) => `#/site/${encodeURIComponent(code)}`;
+/** The page of a round made in the office; without one, the site's. */
+export const toRound = (code, round) => (round ? `#/round/${encodeURIComponent(code)}/${round}` : toSite(code));
 export const toDevice = (id) => `#/device/${id}`;
 export const toTest = (id, task) => `#/test/${id}/${task}`;
 

@@ -6,10 +6,8 @@ import { criticalLoads } from "./dark-sweep.mjs";
 import { givenOf } from "./entry.mjs";
 import { walk } from "./flow.mjs";
 import { about, judgeWalked, limitSetFor } from "./judging.mjs";
-import { placeInRound } from "./list.mjs";
 import { roomOf } from "./own-facts.mjs";
 import { backQuestions, leavesOff } from "./still-off.mjs";
-import { nextInWalk } from "./walk-round.mjs";
 
 /** testOpener(app, now) → openTest(device id, task, key of a draft that is not the device's own next test), null where it has no such form. */
 export function testOpener(app, now) {
@@ -31,7 +29,7 @@ export function testOpener(app, now) {
     return {
       site, device, place, form, draft, instruments, limitSet, given, walked, verdict, today: site.today,
       firstInRoom: site.once(`first ${id}`, () => firstInRoom(site, place)),
-      round: site.once(`place ${id} ${task}`, () => placeInRound(site.devices, id, task, site.today)), next: draft.corrects ? null : nextInWalk(site.devices, id, task, site.today, app.skipped(site)),
+      ...app.placeOnWalk(site, { device: id, task }, Boolean(draft.corrects)),
       loads: site.once(`loads ${id}`, () => criticalLoads(site.devices, site.places, device)),
       about(ask) {
         const said = about(judged, walked, verdict, ask);

@@ -1,7 +1,7 @@
 // How far a walk through a site is: what is done today, what is left, what was passed over, and where somebody must come
 // back because nothing could be tested. Pure.
 
-import { dueNow, wants } from "./list.mjs";
+import { dueNow, meets, wants } from "./list.mjs";
 import { roomOf } from "./own-facts.mjs";
 
 /** Whether nothing could be tested at a device on a day: locked, dead circuit. It stays due, and is not walked into again today. */
@@ -44,4 +44,64 @@ export const backOf = (site) => site.once("back", () => toReturn(site.devices, s
 export function roomMates(site, device) {
   const room = roomOf(site.places.get(device.place));
   return device.place ? site.devices.filter((d) => d.place && roomOf(site.places.get(d.place)) === room) : [device];
+}
+
+/**
+ * Rounds made in the office as they stand on this phone: own tests and own words laid over those of the copy. rows: of the
+ * tray, of that site. Those this person ended, or that were given to others, are left out. offset: ms the server's clock is ahead.
+ */
+export function roundsHere(rounds, rows, person, offset) {
+  const ended = new Set(rows.filter((r) => r.fact?.kind === "round.closed" && r.state !== "refused").map((r) => r.fact.subject));
+  return (rounds ?? [])
+    .filter((r) => !ended.has(r.id) && !r.closed?.includes(person) && (!r.people?.length || r.people.includes(person)))
+    .map((r) => ({ ...r, stops: stopsNow(r, rows, offset) }));
+}
+
+/** The stops of a round, each {device, task, state}: "" is left, back is to come back to. */
+function stopsNow(round, rows, offset) {
+  const own = rows.filter((r) => r.summary && !r.summary.corrects && r.state !== "kept" && r.state !== "refused" && r.saved + offset >= round.made);
+  return round.stops.map((stop) => {
+    let state = stop.state === "passed" ? "" : (stop.state ?? "");
+    for (const { summary } of own) {
+      if (summary.device !== stop.device) continue;
+      const says = summary.result !== "not-tested" && summary.result !== "incomplete";
+      if (says && meets(summary.task, summary.readings).includes(stop.task)) state = "done";
+      else if (summary.task === stop.task && state !== "done") state = "back";
+    }
+    return { ...stop, state };
+  });
+}
+
+const sameStop = (a, b) => a.device === b.device && a.task === b.task;
+
+/** Why a stop was passed over, undefined where it was not. passed: [{device, task, reason}]. */
+export const passedBy = (passed, stop) => (passed ?? []).find((p) => sameStop(p, stop))?.reason;
+
+/** The stop a round leads to after another (undefined: the first), once round; undefined when none is left. */
+export function nextStop(stops, after, passed) {
+  const start = after ? stops.findIndex((s) => sameStop(s, after)) : -1;
+  for (let i = 1; i <= stops.length; i++) {
+    const stop = stops[(start + i) % stops.length];
+    if (!(after && sameStop(stop, after)) && stop.state === "" && !passedBy(passed, stop)) return stop;
+  }
+  return undefined;
+}
+
+/** {done, left, skipped, back} of a round's stops. */
+export function roundCounts(stops, passed) {
+  const out = { done: 0, left: 0, skipped: 0, back: 0 };
+  for (const s of stops) out[s.state === "done" ? "done" : s.state === "back" ? "back" : passedBy(passed, s) ? "skipped" : "left"]++;
+  return out;
+}
+
+/** What must be known before TEST at the places of a round: [{who, load, from, until, names}], each said once. */
+export function tellFirst(places) {
+  const list = [];
+  for (const p of places) {
+    if (!p || !(p.whom_to_tell || p.critical_load || p.test_from)) continue;
+    const said = list.find((o) => o.who === p.whom_to_tell && o.load === p.critical_load && o.from === p.test_from && o.until === p.test_until);
+    if (!said) list.push({ who: p.whom_to_tell, load: p.critical_load, from: p.test_from, until: p.test_until, names: [p.name] });
+    else if (!said.names.includes(p.name)) said.names.push(p.name);
+  }
+  return list;
 }

@@ -27,6 +27,7 @@ const (
 	AboutInstrument = "instrument"
 	AboutNotTested  = "not_tested" // why nothing could be tested: Options are the missing reasons
 	AboutNote       = "note"
+	AboutRound      = "round" // the code of the round the row belongs to (store.RoundCode)
 )
 
 // Column is one column of a round's worksheet: either a reading (under its condition, where it belongs to a series), the
@@ -127,7 +128,8 @@ func about(keys ...string) ([]Column, error) {
 // A header means one thing, whichever form it stands for; only a one-tap answer depends on the form (Columns).
 func Headings() (map[string]Column, error) {
 	all := map[string]Column{}
-	for _, get := range []func() ([]Column, error){Lead, Tail} {
+	ofRound := func() ([]Column, error) { return about(AboutRound) }
+	for _, get := range []func() ([]Column, error){Lead, Tail, ofRound} {
 		cols, err := get()
 		if err != nil {
 			return nil, err

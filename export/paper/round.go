@@ -19,6 +19,7 @@ type Round struct {
 	Until forms.Day // last due day on the list; NoDay: every device that has the task
 	Task  string    // "" = all tasks
 	Demo  bool
+	Code  string // of a round made in the office, which its rows come back with; "" for a list of what is due
 	Stops []Stop
 }
 
@@ -36,6 +37,7 @@ type Stop struct {
 // RoundAsk says which tests.
 type RoundAsk struct {
 	Site  string    // id or code
+	Round string    // id of a round made in the office: its stops, in its order, and nothing else is asked
 	Task  string    // "" = all
 	Until forms.Day // NoDay: every device that has the task, due or not
 	On    forms.Day // today at the site where it is NoDay
@@ -54,6 +56,9 @@ func RoundOf(v *store.View, now forms.Day, ask RoundAsk) (Round, error) {
 		return r, err
 	}
 	r.Site = site
+	if ask.Round != "" {
+		return r, r.made(v, ask)
+	}
 	asked, err := newAsking(v, site.ID)
 	if err != nil {
 		return r, err
@@ -82,6 +87,40 @@ func RoundOf(v *store.View, now forms.Day, ask RoundAsk) (Round, error) {
 		return r, &store.Error{Code: "not_found", Field: "site", Text: "There is nothing to test on this round: no device here has such a date. Choose a later day or another test."}
 	}
 	return r, nil
+}
+
+// made fills the stops of a round made in the office: what is not done yet.
+func (r *Round) made(v *store.View, ask RoundAsk) error {
+	round, err := v.Round(ask.Round)
+	if err != nil {
+		return err
+	}
+	asked, err := newAsking(v, round.Site)
+	if err != nil {
+		return err
+	}
+	r.Code, r.Until = round.Code, round.Until
+	every := RoundAsk{Until: forms.NoDay, On: ask.On, URL: ask.URL}
+	for _, s := range round.Stops {
+		if s.State == store.StopDone || s.Retired {
+			continue
+		}
+		d, err := v.Device(s.Device, ask.On)
+		if err != nil {
+			continue // not in the register of this site: nothing can be asked of it
+		}
+		stop, ok, err := asked.stop(v, d.DeviceRow, s.Task, every)
+		if err != nil {
+			return err
+		}
+		if ok {
+			r.Stops = append(r.Stops, stop)
+		}
+	}
+	if len(r.Stops) == 0 {
+		return &store.Error{Code: "not_found", Field: "round", Text: "Nothing of this round is left to test. Look at its page for what was done."}
+	}
+	return nil
 }
 
 // asking knows what the forms ask of a device.

@@ -6,6 +6,7 @@ import (
 	"slices"
 	"strconv"
 	"strings"
+	"tripwell/static"
 
 	"tripwell/export"
 	"tripwell/forms"
@@ -119,7 +120,7 @@ func (p *roundPrint) header() {
 	room := p.room() - p.demo(r.Demo)
 	p.text(left, p.y+4, room, "sansB", 14, r.Site.Name)
 	p.text(left, p.y+9, room, "sans", 9, p.words.Say("paper.round.title")+" · "+r.title(p.words)+" · "+p.words.Say("paper.round.stops", "n", len(r.Stops))+
-		" · "+r.Site.Code+" · "+p.words.Say("paper.round.made", "day", r.On))
+		" · "+r.Site.Code+" · "+p.words.Say("paper.round.made", "day", r.On)+r.coded(p.words))
 	p.y += 12
 	third := p.room() / 3
 	for i, key := range []string{"date", "crew", "instrument", "serial", "calibrated"} {
@@ -330,4 +331,12 @@ func (p *roundPrint) dueText(s *Stop) string {
 		return p.words.Say("paper.round.overdue", "day", s.Due)
 	}
 	return p.words.Say("paper.round.due", "day", s.Due)
+}
+
+// coded names the round as it is asked for when its readings come back, "" where it was not made in the office.
+func (r *Round) coded(words *static.Words) string {
+	if r.Code == "" {
+		return ""
+	}
+	return " · " + words.Say("paper.round.code", "code", r.Code)
 }

@@ -80,7 +80,7 @@ func (b *sheetBook) makeStyles() error {
 }
 
 // columnsOf gives the columns of a worksheet: what any of its tests asks, each once, in the order of the forms.
-func columnsOf(stops []Stop) (cols []Column, lead int, err error) {
+func columnsOf(stops []Stop, coded bool) (cols []Column, lead int, err error) {
 	if cols, err = Lead(); err != nil {
 		return nil, 0, err
 	}
@@ -95,6 +95,11 @@ func columnsOf(stops []Stop) (cols []Column, lead int, err error) {
 		}
 	}
 	tail, err := Tail()
+	if err == nil && coded {
+		var round []Column
+		round, err = about(AboutRound)
+		tail = append(tail, round...)
+	}
 	return append(cols, tail...), lead, err
 }
 
@@ -103,7 +108,7 @@ func (b *sheetBook) fill(name string, stops []Stop) error {
 	if err != nil {
 		return err
 	}
-	cols, lead, err := columnsOf(stops)
+	cols, lead, err := columnsOf(stops, b.round.Code != "")
 	if err != nil {
 		return err
 	}
@@ -129,6 +134,9 @@ func (b *sheetBook) fill(name string, stops []Stop) error {
 				err = b.SetCellStr(name, cell, clean(s.lead(words, c.About)))
 			case c.About == AboutDay:
 				style = b.day
+			case c.About == AboutRound:
+				style = b.text
+				err = b.SetCellStr(name, cell, b.round.Code)
 			case c.About == "" && !asked[c.Header]:
 				style = b.shut
 			}

@@ -80,7 +80,7 @@ func ColumnNames() []string {
 
 var abouts = []string{aboutSkip, paper.AboutTag, aboutSite, aboutBuilding, aboutFloor, aboutRoom, paper.AboutPlace, paper.AboutKind, aboutPanel,
 	paper.AboutCircuit, paper.AboutTask, paper.AboutDay, aboutTime, paper.AboutReadBy, aboutTypedBy, paper.AboutInstrument, aboutResult,
-	paper.AboutNotTested, aboutAllWell, paper.AboutNote, aboutSheet, aboutTitle, aboutLast}
+	paper.AboutNotTested, aboutAllWell, paper.AboutNote, paper.AboutRound, aboutSheet, aboutTitle, aboutLast}
 
 // ParseColumn reads what a column is said to be: tag, day, "trip_time_ms", "trip_time_ms in s",
 // "trip_time_ms in s at multiple=5 phase_deg=180", "last button", "month 2026-03", skip.
@@ -299,7 +299,8 @@ var (
 		aboutTime: "time, time of day, clock, test time of day", paper.AboutReadBy: "read by, by, tester, tested by, initials, done by, crew, technician, person",
 		aboutTypedBy: "typed by, entered by, keyed by", paper.AboutInstrument: "instrument, meter, instrument serial, meter serial, serial of instrument",
 		aboutResult: "result, outcome, pass fail, ok, verdict, passed", paper.AboutNotTested: "reason, not tested, reason not tested, why not tested",
-		paper.AboutNote: "note, notes, remark, remarks, comment, comments", aboutSheet: "sheet, worksheet", aboutTitle: "title above", aboutSkip: "row, no, nr, #, left out because",
+		paper.AboutRound: "round, round code, round no",
+		paper.AboutNote:  "note, notes, remark, remarks, comment, comments", aboutSheet: "sheet, worksheet", aboutTitle: "title above", aboutSkip: "row, no, nr, #, left out because",
 	})
 	spokenReadings = spoken(map[string]string{
 		"trip_time_ms":      "trip time, time, tripping time, time to trip, trip, disconnection time, t, t trip",

@@ -5,6 +5,7 @@ import (
 	"strings"
 
 	"tripwell/export/intake"
+	"tripwell/export/paper"
 	"tripwell/forms"
 	"tripwell/store"
 	"tripwell/store/record"
@@ -12,11 +13,12 @@ import (
 
 // finder finds the device a row speaks of, by tag or by where it is.
 type finder struct {
-	v     *store.View
-	p     *planner
-	sites []store.Site
-	index map[string]*siteIndex // by site id
-	full  map[string]*device    // by device id
+	v      *store.View
+	p      *planner
+	sites  []store.Site
+	index  map[string]*siteIndex // by site id
+	full   map[string]*device    // by device id
+	rounds map[string]string     // site id + code → id; a site alone: its rounds were read
 }
 
 // siteIndex is a site's devices in use by the ways people name their places.
@@ -298,4 +300,32 @@ func orAll(all, some []int) []int {
 		return all
 	}
 	return some
+}
+
+// findRound names the round a row came from by its id; a code nobody here has stays in the note.
+func (f *finder) findRound(t *test) error {
+	code := strings.ToUpper(strings.ReplaceAll(t.round, " ", ""))
+	if code == "" {
+		return nil
+	}
+	site := t.device.Site
+	if f.rounds == nil {
+		f.rounds = map[string]string{}
+	}
+	if _, read := f.rounds[site]; !read {
+		list, err := f.v.Rounds(site)
+		if err != nil {
+			return err
+		}
+		f.rounds[site] = ""
+		for _, r := range list {
+			f.rounds[site+r.Code] = r.ID
+		}
+	}
+	id := f.rounds[site+code]
+	if id == "" {
+		t.notes = append(t.notes, t.row.head(paper.AboutRound)+": "+brief(t.round))
+	}
+	t.round = id
+	return nil
 }

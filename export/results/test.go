@@ -25,6 +25,7 @@ type test struct {
 	readBy     string // person id
 	typedBy    string
 	instrument string // as written
+	round      string // as written; the id once it is found
 	notes      []string
 	doubt      *cellFault
 	faults     []cellFault
@@ -294,6 +295,7 @@ func (p *planner) who(t *test) {
 	if s := r.text(paper.AboutInstrument); s != "" {
 		t.instrument = s
 	}
+	t.round = r.text(paper.AboutRound)
 	if s := r.text(paper.AboutNote); s != "" {
 		t.notes = append([]string{s}, t.notes...)
 	}

@@ -238,6 +238,9 @@ func (p *planner) describe(t *test, form *forms.Form) *cellFault {
 	if len(strings.Join(t.notes, "")) > longestNote {
 		return &cellFault{column: t.row.head(paper.AboutNote), text: "The note is longer than an entry keeps. Shorten it."}
 	}
+	if err := p.finder.findRound(t); err != nil {
+		return &cellFault{text: "The rounds of this site cannot be read. Try again."}
+	}
 	t.given = t.device.given(form, set, in)
 	e := t.entry()
 	if err := forms.Check(form, &e); err != nil {
@@ -449,6 +452,9 @@ func (p *planner) known(v *store.View, t *test) (there, differs bool, err error)
 // draft is the record of a test.
 func (p *planner) draft(t *test) store.Draft {
 	body := map[string]any{"form": t.form, "source": p.ask.Source}
+	if record.IsID(t.round) {
+		body["round"] = t.round
+	}
 	d := store.Draft{ID: t.id, Kind: p.kind(), Log: t.Site, Subject: t.device.ID, By: p.by, Body: body}
 	if t.measured() {
 		body["given"], body["readings"] = t.given, t.readings

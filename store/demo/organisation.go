@@ -13,8 +13,9 @@ type spot struct {
 	panel, circuit              string
 	breakerA                    float64
 	critical, tell              string
-	noGround                    bool // equipment_ground none-permitted
-	isolated                    bool // circuit supply isolated
+	from, until                 string // when TEST may be pressed there
+	noGround                    bool   // equipment_ground none-permitted
+	isolated                    bool   // circuit supply isolated
 	residualMA                  float64
 	story                       string // which story of events.go this device plays in
 }
@@ -115,7 +116,7 @@ func kilnLaneSpots() []spot {
 	}
 	ground, upper := &feeder{panel: "LP-1"}, &feeder{panel: "LP-2", next: 19}
 	kitchen := &feeder{panel: "LP-2"}
-	add(kitchen, spot{floor: "Ground floor", room: "Kitchen", name: "Pantry, by the sink", kind: "gfci-receptacle", circuit: "14", critical: "Vaccine refrigerator (Nurses' room)", tell: "Nurse in charge", story: "pantry"})
+	add(kitchen, spot{floor: "Ground floor", room: "Kitchen", name: "Pantry, by the sink", kind: "gfci-receptacle", circuit: "14", critical: "Vaccine refrigerator (Nurses' room)", tell: "Nurse in charge", from: "06:00", until: "08:30", story: "pantry"})
 	for _, name := range []string{"Pantry, door", "Hall, north", "Nurses' room"} {
 		s := spot{floor: "Ground floor", room: "Kitchen", name: name, kind: "protected-receptacle", circuit: "14"}
 		if name == "Nurses' room" {
@@ -201,7 +202,7 @@ func ottermoorSpots() []spot {
 		add(changing, spot{floor: "Entry level", room: "Foyer", name: name})
 	}
 	for _, s := range []spot{
-		{name: "Dosing pump", critical: "Dosing pump", tell: "Pool technician", story: "open-no-trip"},
+		{name: "Dosing pump", critical: "Dosing pump", tell: "Pool technician", from: "05:30", until: "09:30", story: "open-no-trip"},
 		{name: "Filter control", story: "open-no-reset"},
 		{name: "Workbench"},
 		{name: "Sump pump", kind: "gfci-breaker", critical: "Sump pump", tell: "Pool technician"},

@@ -291,7 +291,7 @@ func (d *device) registerDrafts() []store.Draft {
 	var out []store.Draft
 	if d.place != "" {
 		out = append(out, store.Draft{Kind: "place.registered", Subject: d.place, Body: set("building", d.building, "floor", d.floor, "room", d.room,
-			"name", d.name, "order", d.order, "critical_load", d.critical, "whom_to_tell", d.tell)})
+			"name", d.name, "order", d.order, "critical_load", d.critical, "whom_to_tell", d.tell, "test_from", d.from, "test_until", d.until)})
 	}
 	out = append(out, store.Draft{Kind: "device.registered", Subject: d.id, Body: d.fields()})
 	subject := d.place

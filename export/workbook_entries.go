@@ -234,7 +234,7 @@ func (b *book) bodyRows(s *sheet, e EntryLine, body forms.Entry, verdict forms.V
 
 func (b *book) findingRow(s *sheet, e EntryLine, f *forms.Finding, number *float64, text, status string) error {
 	s.row().text(e.ID).text(e.Site.Code).text(TagText(e.DeviceRow.Tag)).text(PlaceText(e.DeviceRow.Place)).text(b.word("task", e.Task)).
-		day(e.Day).text(b.readingName(f.Reading)).text(b.conditions(f.At)).known(number).text(text)
+		day(e.Day).text(cmp.Or(e.OwnNames[f.Reading], b.readingName(f.Reading))).text(b.conditions(f.At)).known(number).text(text)
 	unit := b.unit(f.Reading)
 	if f.Unit != "" {
 		unit = b.word("unit", f.Unit)

@@ -1,6 +1,7 @@
 package server
 
 import (
+	"cmp"
 	"fmt"
 	"maps"
 	"time"
@@ -25,7 +26,7 @@ func (s *Server) correctedFrom(v *store.View, e store.Entry, view *entryPage) er
 		view.First = &m
 	}
 	changed := map[string]change{}
-	for _, c := range s.changes(e.Original, e.Body) {
+	for _, c := range s.changes(e.OwnNames, e.Original, e.Body) {
 		changed[c.Name] = c
 	}
 	for i := range view.Readings {
@@ -35,22 +36,22 @@ func (s *Server) correctedFrom(v *store.View, e store.Entry, view *entryPage) er
 			continue
 		}
 		delete(changed, r.Name)
-		r.Was, r.WasVerdict = c.Was, s.verdictOf(first, r.Name)
+		r.Was, r.WasVerdict = c.Was, s.verdictOf(e.OwnNames, first, r.Name)
 	}
-	for _, c := range s.changes(e.Original, e.Body) { // what the correction took out altogether
+	for _, c := range s.changes(e.OwnNames, e.Original, e.Body) { // what the correction took out altogether
 		if _, left := changed[c.Name]; left {
-			view.Readings = append(view.Readings, readingShown{Name: c.Name, Value: c.Became, Was: c.Was, WasVerdict: s.verdictOf(first, c.Name)})
+			view.Readings = append(view.Readings, readingShown{Name: c.Name, Value: c.Became, Was: c.Was, WasVerdict: s.verdictOf(e.OwnNames, first, c.Name)})
 		}
 	}
 	return nil
 }
 
 // verdictOf gives the worst finding of a reading by its name, nil where nothing judged it.
-func (s *Server) verdictOf(v forms.Verdict, name string) *mark {
+func (s *Server) verdictOf(own map[string]string, v forms.Verdict, name string) *mark {
 	k := s.ink()
 	worst := ""
 	for _, f := range v.Findings {
-		if s.readingName(f.Reading, f.At) == name && (worst == "" || severity(f.Verdict) > severity(worst)) {
+		if s.readingName(own, f.Reading, f.At) == name && (worst == "" || severity(f.Verdict) > severity(worst)) {
 			worst = f.Verdict
 		}
 	}
@@ -62,8 +63,8 @@ func (s *Server) verdictOf(v forms.Verdict, name string) *mark {
 }
 
 // readingName names a reading, with the conditions it was taken under.
-func (s *Server) readingName(code string, at map[string]any) string {
-	name := s.ink().reading(code)
+func (s *Server) readingName(own map[string]string, code string, at map[string]any) string {
+	name := cmp.Or(own[code], s.ink().reading(code))
 	if len(at) > 0 {
 		name += " " + s.conditions(at)
 	}
@@ -77,7 +78,7 @@ func (s *Server) corrections(v *store.View, e store.Entry, zone *time.Location) 
 	show := func(c store.Correction, head, state string) error {
 		one := correctionShown{
 			Head:   joined(k.say("office.entry."+head, "by", s.personName(v, c.By), "day", k.at(c.At, zone)), k.say("office.entry."+state)),
-			Reason: c.Reason, Record: "/records/" + c.Record, Changes: s.changes(was, c.Body),
+			Reason: c.Reason, Record: "/records/" + c.Record, Changes: s.changes(e.OwnNames, was, c.Body),
 		}
 		if !c.Withdraw {
 			verdict, err := v.JudgedAs(e, c.Body)
@@ -113,15 +114,15 @@ func (s *Server) corrections(v *store.View, e store.Entry, zone *time.Location) 
 
 // changes lists the readings that differ between the first version and a correction, those of series with their
 // conditions.
-func (s *Server) changes(was, became forms.Entry) []change {
-	out := s.changed(was.Readings, became.Readings, nil)
+func (s *Server) changes(own map[string]string, was, became forms.Entry) []change {
+	out := s.changed(own, was.Readings, became.Readings, nil)
 	before, after := seriesAt(was.Series), seriesAt(became.Series)
 	seen := map[string]bool{}
 	for _, list := range [][]forms.SeriesReading{was.Series, became.Series} {
 		for _, one := range list {
 			if key := fmt.Sprint(one.At); !seen[key] {
 				seen[key] = true
-				out = append(out, s.changed(before[key], after[key], one.At)...)
+				out = append(out, s.changed(own, before[key], after[key], one.At)...)
 			}
 		}
 	}
@@ -136,7 +137,7 @@ func seriesAt(list []forms.SeriesReading) map[string]map[string]forms.Reading {
 	return out
 }
 
-func (s *Server) changed(was, became map[string]forms.Reading, at map[string]any) []change {
+func (s *Server) changed(own map[string]string, was, became map[string]forms.Reading, at map[string]any) []change {
 	k := s.ink()
 	codes := maps.Clone(was)
 	if codes == nil {
@@ -153,7 +154,7 @@ func (s *Server) changed(was, became map[string]forms.Reading, at map[string]any
 			b = k.value(code, r)
 		}
 		if a != b {
-			out = append(out, change{s.readingName(code, at), a, b})
+			out = append(out, change{s.readingName(own, code, at), a, b})
 		}
 	}
 	return out

@@ -222,28 +222,28 @@ func (s *Server) readings(e store.Entry, spans map[string][]scaleSpan, before ma
 		at, ok := place[key]
 		if !ok {
 			at, place[key] = len(out), len(out)
-			out = append(out, s.oneReading(f.Reading, r, f.At))
+			out = append(out, s.oneReading(e.OwnNames, f.Reading, r, f.At))
 		}
 		out[at].Findings = append(out[at].Findings, s.finding(f, r, e, spans, before))
 	}
 	for _, code := range readingOrder(e.Body.Readings) {
 		if _, shown := place[code+fmt.Sprint(map[string]any(nil))]; !shown {
-			out = append(out, s.oneReading(code, e.Body.Readings[code], nil))
+			out = append(out, s.oneReading(e.OwnNames, code, e.Body.Readings[code], nil))
 		}
 	}
 	for _, one := range e.Body.Series {
 		for _, code := range readingOrder(one.Readings) {
 			if _, shown := place[code+fmt.Sprint(one.At)]; !shown {
-				out = append(out, s.oneReading(code, one.Readings[code], one.At))
+				out = append(out, s.oneReading(e.OwnNames, code, one.Readings[code], one.At))
 			}
 		}
 	}
 	return out
 }
 
-func (s *Server) oneReading(code string, r forms.Reading, at map[string]any) readingShown {
+func (s *Server) oneReading(own map[string]string, code string, r forms.Reading, at map[string]any) readingShown {
 	k := s.ink()
-	return readingShown{Name: s.readingName(code, at), Value: k.value(code, r), Typed: k.typed(code, r)}
+	return readingShown{Name: s.readingName(own, code, at), Value: k.value(code, r), Typed: k.typed(code, r)}
 }
 
 func (s *Server) finding(f forms.Finding, r forms.Reading, e store.Entry, spans map[string][]scaleSpan, before map[string]float64) findingShown {

@@ -37,7 +37,8 @@ type Entry struct {
 	Withdrawn        *Correction
 	Sealed           bool // its owner had its bytes dropped; it never counts as passed
 	Original         forms.Entry
-	Photos           []string // names of the entry's photos, at most four; of an entry read alone
+	OwnNames         map[string]string // what the form of the entry calls checks an organisation added, by code; nil without any
+	Photos           []string          // names of the entry's photos, at most four; of an entry read alone
 }
 
 // Shown is what the phone told the tester.
@@ -221,6 +222,7 @@ func (v *View) entry(sv *siteView, r *record.Record, st record.Stamp, k kept, se
 	if e.Imported && e.Source == "" {
 		e.Source = "imported"
 	}
+	e.OwnNames = v.ownNames(&e)
 	e.say(said, o)
 	if e.Flags, err = v.flags(sv, r, st, k, body, o, len(e.Corrections) > 0); err != nil {
 		return e, err
@@ -233,6 +235,33 @@ func (v *View) entry(sv *siteView, r *record.Record, st record.Stamp, k kept, se
 		e.Flags = append(e.Flags, Flag{code, cmp.Or(v.PersonName(c.By), c.By)})
 	}
 	return e, nil
+}
+
+// ownNames gives what the form of an entry calls the checks an organisation added, where the entry may hold any.
+func (v *View) ownNames(e *Entry) map[string]string {
+	own := false
+	for code := range e.Body.Readings {
+		own = own || forms.IsOwn(code)
+	}
+	for i := range e.Verdict.Findings { // one that is missing
+		own = own || forms.IsOwn(e.Verdict.Findings[i].Reading)
+	}
+	if !own {
+		return nil
+	}
+	form := v.rules().form(v.orgLog(), e.Form, e.Body.Given.FormRev, e.Day)
+	if form == nil {
+		return nil
+	}
+	names := map[string]string{}
+	for i := range form.Steps {
+		for _, a := range form.Steps[i].Asks {
+			if a.Name != "" {
+				names[a.Reading] = a.Name
+			}
+		}
+	}
+	return names
 }
 
 // say lists corrections and the withdrawal; each correction shows the entry as it stood after it.

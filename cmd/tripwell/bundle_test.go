@@ -2,6 +2,7 @@ package main
 
 import (
 	"archive/zip"
+	"bytes"
 	"io"
 	"os"
 	"path/filepath"
@@ -51,5 +52,34 @@ func TestBundle_FromTheCommandLine(t *testing.T) {
 	}
 	if _, errs, code := tripwell(t, "", "verify", second, "--key", "nothing"); code != 2 || !strings.Contains(errs, "--key") {
 		t.Errorf("no key: exit %d: %s", code, errs)
+	}
+}
+
+func TestSample_DrawnFromABundle(t *testing.T) {
+	dir, out := demoFolder(t), t.TempDir()
+	zipped, sheet, again := filepath.Join(out, "b.zip"), filepath.Join(out, "a.pdf"), filepath.Join(out, "b.pdf")
+	if _, errs, code := tripwell(t, "", "bundle", "-o", zipped, "--data", dir, "--site", "KILN-LANE"); code != 0 {
+		t.Fatalf("bundle: exit %d: %s", code, errs)
+	}
+	_, errs, code := tripwell(t, "", "sample", zipped, "--word", "thunderstorm", "-o", sheet, "--wrong", "1")
+	if code != 0 || !strings.Contains(errs, "devices and") || !strings.Contains(errs, "were wrong: of all") {
+		t.Fatalf("sample: exit %d: %s", code, errs)
+	}
+	if _, _, code := tripwell(t, "", "sample", zipped, "--word", "thunderstorm", "-o", again); code != 0 {
+		t.Fatal("the same word draws nothing")
+	}
+	a, err := os.ReadFile(sheet)
+	if err != nil {
+		t.Fatal(err)
+	}
+	b, err := os.ReadFile(again)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if !bytes.Equal(a, b) || !bytes.HasPrefix(a, []byte("%PDF")) {
+		t.Error("the same word did not draw the same sheet")
+	}
+	if _, errs, code := tripwell(t, "", "sample", zipped, "--word", "x", "--share", "0", "-o", again); code != 2 || !strings.Contains(errs, "share") {
+		t.Errorf("a share of nothing: exit %d: %s", code, errs)
 	}
 }

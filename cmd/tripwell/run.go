@@ -18,6 +18,7 @@ type cli struct {
 	Workbook workbookCmd `cmd:"" help:"Write the workbook an auditor gets."`
 	Bundle   bundleCmd   `cmd:"" help:"Write what an auditor takes away, with its proof."`
 	Verify   verifyCmd   `cmd:"" help:"Check a bundle; needs no store."`
+	Sample   sampleCmd   `cmd:"" help:"Draw a fair sample from a bundle, to check on site; needs no store."`
 	Labels   labelsCmd   `cmd:"" help:"Write sheets of labels."`
 	Label    labelCmd    `cmd:"" help:"Write one label as a picture."`
 	Backup   backupCmd   `cmd:"" help:"Write a checked copy of the book to a file."`

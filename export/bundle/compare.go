@@ -24,7 +24,7 @@ func (v *verifier) workbook() error {
 		return nil
 	}
 	again, err := spooled(func(out io.Writer) error {
-		return remake(v.ctx, out, v.doc, v.head, v.people, v.replayed(), nil)
+		return remake(v.ctx, out, v.doc, v.head, v.people, v.inOrder(), nil)
 	})
 	var refused *store.Error
 	if errors.As(err, &refused) {

@@ -18,9 +18,29 @@ import (
 	"tripwell/store/record"
 )
 
-// remake makes a store of a bundle's records in a temporary folder and writes the workbook they give. Whoever writes a
-// bundle and whoever checks it goes this one way, so the two workbooks differ only where somebody changed one.
-func remake(ctx context.Context, out io.Writer, doc Doc, head string, people []person, records iter.Seq2[store.Replayed, error], progress func(done, total int64)) (err error) {
+// remake writes the workbook that a bundle's records give. Whoever writes a bundle and whoever checks it goes this one way, so
+// the two workbooks differ only where somebody changed one.
+func remake(ctx context.Context, out io.Writer, doc Doc, head string, people []person, records iter.Seq2[store.Replayed, error], progress func(done, total int64)) error {
+	ask := export.WorkbookAsk{Now: doc.AsOf, Organisation: doc.Organisation, Store: doc.Store, Epoch: doc.Epoch, Demo: doc.Demo, AllSites: doc.AllSites, Head: head}
+	var err error
+	if ask.From, err = dayOf(doc.From); err != nil {
+		return err
+	}
+	if ask.To, err = dayOf(doc.To); err != nil {
+		return err
+	}
+	return replayed(ctx, doc, people, records, progress, func(v *store.View) error {
+		src, err := export.FromView(v, ask)
+		if err != nil {
+			return err
+		}
+		return export.Workbook(out, src)
+	})
+}
+
+// replayed makes a store of a bundle's records in a temporary folder and shows it, as it stood when the bundle was made, to
+// somebody who may see the sites of the bundle.
+func replayed(ctx context.Context, doc Doc, people []person, records iter.Seq2[store.Replayed, error], progress func(done, total int64), show func(v *store.View) error) (err error) {
 	dir, err := os.MkdirTemp("", "tripwell-bundle-*")
 	if err != nil {
 		return fmt.Errorf("room for the records: %w", err)
@@ -40,20 +60,7 @@ func remake(ctx context.Context, out io.Writer, doc Doc, head string, people []p
 	for _, site := range doc.Sites {
 		scope.Sites = append(scope.Sites, site.ID)
 	}
-	ask := export.WorkbookAsk{Now: doc.AsOf, Organisation: doc.Organisation, Store: doc.Store, Epoch: doc.Epoch, Demo: doc.Demo, AllSites: doc.AllSites, Head: head}
-	if ask.From, err = dayOf(doc.From); err != nil {
-		return err
-	}
-	if ask.To, err = dayOf(doc.To); err != nil {
-		return err
-	}
-	return s.View(scope, func(v *store.View) error {
-		src, err := export.FromView(v, ask)
-		if err != nil {
-			return err
-		}
-		return export.Workbook(out, src)
-	})
+	return s.View(scope, show)
 }
 
 func dayOf(text string) (forms.Day, error) {

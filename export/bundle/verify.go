@@ -74,31 +74,46 @@ type verifier struct {
 // report.
 func Verify(ctx context.Context, in io.ReaderAt, size int64, ask Check) (Report, error) {
 	var report Report
-	r, err := open(in, size)
+	v, err := newVerifier(ctx, in, size, ask, &report)
 	if err != nil {
 		return report, err
+	}
+	return report, v.run(append(v.proofs(), step{"earlier head", v.earlierHead}, step{"photos", v.photos}, step{"workbook", v.workbook}))
+}
+
+// step is a part of a check.
+type step struct {
+	name string
+	do   func() error
+}
+
+func newVerifier(ctx context.Context, in io.ReaderAt, size int64, ask Check, report *Report) (*verifier, error) {
+	r, err := open(in, size)
+	if err != nil {
+		return nil, err
 	}
 	if ask.Progress == nil {
 		ask.Progress = func(string) {}
 	}
-	v := &verifier{reader: r, ctx: ctx, ask: ask, report: &report, logs: map[string]*logFile{}, sound: true}
-	steps := []struct {
-		name string
-		do   func() error
-	}{
-		{"files", v.list}, {"key and head", v.headAndKey}, {"records", v.records}, {"refusals", v.refused}, {"grants", v.granted},
-		{"earlier head", v.earlierHead}, {"photos", v.photos}, {"workbook", v.workbook},
-	}
+	return &verifier{reader: r, ctx: ctx, ask: ask, report: report, logs: map[string]*logFile{}, sound: true}, nil
+}
+
+// proofs are the steps that hold the records against the head.
+func (v *verifier) proofs() []step {
+	return []step{{"files", v.list}, {"key and head", v.headAndKey}, {"records", v.records}, {"refusals", v.refused}, {"grants", v.granted}}
+}
+
+func (v *verifier) run(steps []step) error {
 	for _, s := range steps {
-		if err := ctx.Err(); err != nil {
-			return report, err
+		if err := v.ctx.Err(); err != nil {
+			return err
 		}
-		ask.Progress(s.name)
+		v.ask.Progress(s.name)
 		if err := s.do(); err != nil {
-			return report, fmt.Errorf("check of %s: %w", s.name, err)
+			return fmt.Errorf("check of %s: %w", s.name, err)
 		}
 	}
-	return report, nil
+	return nil
 }
 
 // list holds the files against the list in bundle.json. Those that have a better check of their own are only looked for.
@@ -310,8 +325,8 @@ func (v *verifier) photos() error {
 	return nil
 }
 
-// replayed gives the records of the bundle in the order the workbook was made from.
-func (v *verifier) replayed() iter.Seq2[store.Replayed, error] {
+// inOrder gives the records of the bundle in the order the workbook was made from.
+func (v *verifier) inOrder() iter.Seq2[store.Replayed, error] {
 	logs := []logSource{{records: func(yield func(store.Replayed, error) bool) {
 		for _, g := range v.grants {
 			if !yield(store.Replayed{Stamp: []byte(g.Stamp), Record: []byte(g.Record)}, nil) {

@@ -46,7 +46,7 @@ func (s *Server) deviceNew(c echo.Context) error {
 func (s *Server) successor(before store.Device) map[string]string {
 	all := s.deviceValues(before, store.Circuit{})
 	out := map[string]string{"place": before.Place.ID}
-	for _, name := range []string{"kind", "building", "floor", "room", "name", "order", "critical_load", "whom_to_tell", "test_from", "test_until", "panel", "circuit", "rating_a", "rated_residual_ma", "nominal_v", "equipment_ground"} {
+	for _, name := range []string{"kind", "building", "floor", "room", "name", "order", "critical_load", "whom_to_tell", "test_from", "test_until", "panel", "circuit", "rating_a", "rated_residual_ma", "nominal_v", "equipment_ground", "faces", "fed_by", "usual"} {
 		out[name] = all[name]
 	}
 	return out
@@ -106,6 +106,14 @@ func (s *Server) deviceInput(f *typedForm) deviceInput {
 	}
 	installed := f.date("installed")
 	f.setText(in.device, "installed", "installed", installed.String())
+	f.setText(in.place, "usual", "usual", f.line("usual", 60))
+	faces := f.choice("faces", "", "1", "2")
+	if f.changed("faces") {
+		if in.device["faces"] = nil; faces != "" {
+			in.device["faces"] = float64(faces[0] - '0')
+		}
+	}
+	f.setText(in.device, "fed_by", "fed_by", f.line("fed_by", 36))
 	f.setText(in.device, "equipment_ground", "equipment_ground", f.choice("equipment_ground", "", "yes", "none-permitted"))
 	traitInput(f, in.device)
 	if f.changed("delayed") {
@@ -309,6 +317,9 @@ func (s *Server) deviceUpdate(c echo.Context) error {
 		return err
 	}
 	f.meanwhile(s.deviceValues(d, fed))
+	if err := s.sourceInput(c, d, f); err != nil {
+		return err
+	}
 	if f.ok() {
 		drafts, err := s.changedDeviceDrafts(c, site, d, f, in, first)
 		if err == nil && len(drafts) > 0 {
@@ -353,7 +364,7 @@ func (s *Server) deviceValues(d store.Device, fed store.Circuit) map[string]stri
 	out := map[string]string{
 		"building": d.Place.Building, "floor": d.Place.Floor, "room": d.Place.Room, "name": cmp.Or(d.Place.Name, text("where")), "critical_load": d.Place.CriticalLoad, "whom_to_tell": d.Place.WhomToTell,
 		"test_from": d.Place.TestFrom, "test_until": d.Place.TestUntil,
-		"panel": d.Panel, "circuit": d.Circuit, "kind": d.Kind, "equipment_ground": text("equipment_ground"), "installed": text("installed"), "delayed": "", "order": "",
+		"panel": d.Panel, "circuit": d.Circuit, "kind": d.Kind, "equipment_ground": text("equipment_ground"), "fed_by": text("fed_by"), "usual": d.Place.Usual, "faces": "", "installed": text("installed"), "delayed": "", "order": "",
 	}
 	if d.Place.Order != 0 {
 		out["order"] = plainFigure(d.Place.Order)
@@ -367,6 +378,9 @@ func (s *Server) deviceValues(d store.Device, fed store.Circuit) map[string]stri
 		} else {
 			out[name] = ""
 		}
+	}
+	if v, ok := d.Fields["faces"].(float64); ok {
+		out["faces"] = plainFigure(v)
 	}
 	if v, _ := d.Fields["delayed"].(bool); v {
 		out["delayed"] = "yes"

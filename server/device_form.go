@@ -34,13 +34,16 @@ func (s *Server) deviceForm(c echo.Context, site store.Site, d *store.Device, f 
 		Frame: s.frame(c, k.say("office.device.new"), "sites"), Crumbs: []link{{Href: siteHref(site), Text: site.Name}},
 		Heading: k.say("office.device.new_head", "site", site.Name), Action: siteHref(site) + "/devices", Submit: k.say("office.device.save_new"), Cancel: siteHref(site),
 		Groups: []fieldGroup{
-			{Legend: k.say("office.device.group_place"), Fields: []field{q("building"), q("floor"), q("room"), q("name", needed), q("order"), q("critical_load"), q("whom_to_tell"),
+			{Legend: k.say("office.device.group_place"), Fields: []field{q("building"), q("floor"), q("room"), q("name", needed), q("order"), q("critical_load"), q("whom_to_tell"), q("usual", func(f *field) { f.Options = s.usualOptions(c, site) }),
 				q("test_from", func(f *field) { f.Type = "time" }), q("test_until", func(f *field) { f.Type = "time" })}},
 			{Legend: k.say("office.device.group_device"), Fields: []field{
 				q("kind", needed, func(f *field) { f.Options = kinds }), q("make"), q("model"), q("serial"), q("rating_a"), q("nominal_v"), q("rated_residual_ma"),
 				q("installed", func(f *field) { f.Type = "date" }),
 				q("equipment_ground", func(f *field) {
 					f.Options = optional(k.say("office.device.not_said"), "yes", k.say("office.device.ground_yes"), "none-permitted", k.say("office.device.ground_none"))
+				}),
+				q("faces", func(f *field) {
+					f.Options = optional(k.say("office.device.not_said"), "2", k.say("office.device.faces_two"), "1", k.say("office.device.faces_one"))
 				}),
 				q("delayed", func(f *field) { f.Type = "check" }), q("note", func(f *field) { f.Type, f.Wide = "text-area", true }),
 			}},
@@ -53,6 +56,10 @@ func (s *Server) deviceForm(c echo.Context, site store.Site, d *store.Device, f 
 		if traits := s.traitGroup(d.Kind, site, q); len(traits.Fields) > 0 {
 			p.Groups = slices.Insert(p.Groups, 2, traits)
 		}
+		if sources := s.deviceSources(c, *d); len(sources) > 1 {
+			supply := &p.Groups[len(p.Groups)-1]
+			supply.Fields = append(supply.Fields, q("fed_by", func(f *field) { f.Options = sources }))
+		}
 		p.Frame, p.Heading = s.frame(c, k.say("office.device.edit"), "sites"), k.say("office.device.edit_head", "spot", s.spot(d.DeviceRow))
 		p.Crumbs = append(p.Crumbs, link{Href: "/devices/" + d.ID, Text: s.spot(d.DeviceRow)})
 		p.Action, p.Submit, p.Cancel = "/devices/"+d.ID+"/edit", k.say("office.device.save"), "/devices/"+d.ID
@@ -60,7 +67,7 @@ func (s *Server) deviceForm(c echo.Context, site store.Site, d *store.Device, f 
 	}
 	p.Groups[1].Note = k.say("office.device.traits_later")
 	if place := f.Get("place"); place != "" {
-		p.Hidden = append(p.Hidden, hidden{"place", place})
+		p.Hidden = append(p.Hidden, hidden{"place", place}, hidden{"fed_by", f.Get("fed_by")})
 		p.Lead = k.say("office.device.move_hint")
 		return p
 	}

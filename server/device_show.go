@@ -27,6 +27,7 @@ type devicePage struct {
 	Entries                     []entryRow
 	Defects                     []defectRow
 	Gone                        []conflictLine // what was said of defects that a correction took away
+	Chain                       *chainShown
 	Facts                       []fact
 	Actions                     []link
 	SheetHref                   string // the device sheet, "" for who may not take it
@@ -119,6 +120,9 @@ func (s *Server) buildDevice(v *store.View, site store.Site, d store.Device, vie
 		view.Clash = k.say("office.device.clash", "tag", view.Tag)
 	}
 	s.entryTable(v, entries, names, view)
+	if view.Chain, err = s.deviceChain(v, d, today, view.Change); err != nil {
+		return err
+	}
 	view.Facts = s.deviceFacts(d)
 	applies, err := s.setApplying(v, d.ID, today)
 	if err != nil {

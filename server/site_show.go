@@ -173,8 +173,9 @@ func (s *Server) buildRegister(v *store.View, site store.Site, ask registerAsk, 
 		view.Found, view.None = k.say("office.register.found_of", "n", count(found), "all", count(all)), k.say("office.register.none_match")
 	}
 	view.Pager = registerPager(k, siteHref(site), ask, found)
+	view.Actions = []link{{Href: siteHref(site) + "/circuits", Text: k.say("office.circuit.list")}, {Href: siteHref(site) + "/protection", Text: k.say("office.protection.title")}}
 	if view.Change {
-		view.Actions = []link{{Href: siteHref(site) + "/devices/new", Text: k.say("office.device.new"), Here: true}, {Href: siteHref(site) + "/edit", Text: k.say("office.site.edit")}, {Href: siteHref(site) + "/asked", Text: k.say("asked.title")}}
+		view.Actions = append(view.Actions, link{Href: siteHref(site) + "/devices/new", Text: k.say("office.device.new"), Here: true}, link{Href: siteHref(site) + "/edit", Text: k.say("office.site.edit")}, link{Href: siteHref(site) + "/asked", Text: k.say("asked.title")})
 	}
 	return nil
 }

@@ -20,12 +20,14 @@ type OnMap struct {
 	Source          string // the device its record names as the source of its power, "" for none; forms.ProtectionMap says whether it is taken in
 	EquipmentGround string // yes | none-permitted | ""
 	Faces           int
+	Measured        map[string]map[string]float64 // by task: the measured values of its newest test, in their codes' own units
 }
 
 // Protection is the map around something, with the devices on it.
 type Protection struct {
 	*forms.ProtectionMap
 	devices map[string]OnMap
+	wired   []forms.Wired
 }
 
 // Device gives a device of the map; ok is false for an id the register does not hold.
@@ -46,6 +48,22 @@ func (p *Protection) Lost(id string) []OnMap {
 
 // Dead gives the devices that are dead while a circuit's breaker is off, those with a critical load first.
 func (p *Protection) Dead(circuit string) []OnMap { return p.criticalFirst(p.OnCircuit(circuit)) }
+
+// With gives the edges that would close a loop if these sources were said now, by device; "" takes a source away.
+func (p *Protection) With(sources map[string]string) (loops []forms.Feed) {
+	wired := slices.Clone(p.wired)
+	for i := range wired {
+		if source, said := sources[wired[i].ID]; said {
+			wired[i].Source, wired[i].Clock = source, 1<<63
+		}
+	}
+	for _, f := range forms.NewProtectionMap(wired).LeftOut() {
+		if _, said := sources[f.Device]; said {
+			loops = append(loops, f)
+		}
+	}
+	return loops
+}
 
 func (p *Protection) criticalFirst(ids []string) []OnMap {
 	out := make([]OnMap, 0, len(ids))
@@ -281,7 +299,7 @@ func (w *wiring) protection(on forms.Day) (*Protection, error) {
 	for i := range list {
 		wired[i] = list[i].Wired
 	}
-	p.ProtectionMap = forms.NewProtectionMap(wired)
+	p.wired, p.ProtectionMap = wired, forms.NewProtectionMap(wired)
 	return p, nil
 }
 
@@ -303,6 +321,21 @@ func (w *wiring) row(d *onWire, on forms.Day) (OnMap, error) {
 	out := OnMap{DeviceRow: row, Source: d.Wired.Source, EquipmentGround: d.text("equipment_ground"), Faces: int(d.number("faces"))}
 	if !d.Gone {
 		out.Stands = stands(work, on)
+	}
+	if work == nil {
+		return out, err
+	}
+	for _, t := range work.tasks {
+		if len(t.numbers) == 0 {
+			continue
+		}
+		if out.Measured == nil {
+			out.Measured = map[string]map[string]float64{}
+		}
+		out.Measured[t.task] = map[string]float64{}
+		for _, f := range t.numbers {
+			out.Measured[t.task][f.code] = f.value
+		}
 	}
 	return out, err
 }

@@ -3,6 +3,7 @@ package demo
 import (
 	"fmt"
 	"strconv"
+	"strings"
 )
 
 // spot is one place with its device, as the plan of the invented organisation has it.
@@ -17,6 +18,8 @@ type spot struct {
 	noGround                    bool   // equipment_ground none-permitted
 	isolated                    bool   // circuit supply isolated
 	residualMA                  float64
+	fedBy                       string // spot of the same circuit whose LOAD terminals feed this one
+	conductor                   string // where it is another than the breaker's rating suggests
 	story                       string // which story of events.go this device plays in
 }
 
@@ -72,6 +75,10 @@ func brackenSpots() []spot {
 		add(spot{floor: "Basement", room: "Pump pit", name: "Sump pump", kind: "gfci-breaker", critical: "Sump pump", tell: "Caretaker"})
 		add(spot{floor: "Basement", room: "Elevator pit", name: "Pit outlet"})
 		add(spot{floor: "Basement", room: "Boiler room", name: "By the door"})
+		if row == 0 { // behind the pump's breaker, which protects the whole circuit
+			door := &out[len(out)-1]
+			door.kind, door.circuit, panel.next = "protected-receptacle", "1", panel.next-1
+		}
 		for i, side := range []string{"left", "middle", "right"} {
 			laundry := fmt.Sprintf("Laundry %d", row+1)
 			s := spot{floor: "Basement", room: laundry, name: laundry + ", " + side}
@@ -92,7 +99,11 @@ func brackenSpots() []spot {
 			}
 		}
 		for _, name := range []string{"Front door", "Back door", "Bin store"} {
-			add(spot{floor: "Outdoors", room: "Yard", name: name})
+			s := spot{floor: "Outdoors", room: "Yard", name: name}
+			if row == 0 && name == "Bin store" {
+				s.conductor = "14 AWG"
+			}
+			add(s)
 		}
 		for bay := 1; bay <= 4+row%2; bay++ {
 			add(spot{floor: "Outdoors", room: "Garages", name: fmt.Sprintf("Garage %d", bay), breakerA: 15})
@@ -118,7 +129,7 @@ func kilnLaneSpots() []spot {
 	kitchen := &feeder{panel: "LP-2"}
 	add(kitchen, spot{floor: "Ground floor", room: "Kitchen", name: "Pantry, by the sink", kind: "gfci-receptacle", circuit: "14", critical: "Vaccine refrigerator (Nurses' room)", tell: "Nurse in charge", from: "06:00", until: "08:30", story: "pantry"})
 	for _, name := range []string{"Pantry, door", "Hall, north", "Nurses' room"} {
-		s := spot{floor: "Ground floor", room: "Kitchen", name: name, kind: "protected-receptacle", circuit: "14"}
+		s := spot{floor: "Ground floor", room: "Kitchen", name: name, kind: "protected-receptacle", circuit: "14", fedBy: "Pantry, by the sink"}
 		if name == "Nurses' room" {
 			s.room, s.critical, s.tell = "Nurses' room", "Vaccine refrigerator", "Nurse in charge"
 		} else if name == "Hall, north" {
@@ -127,13 +138,24 @@ func kilnLaneSpots() []spot {
 		add(kitchen, s)
 	}
 	for _, name := range []string{"Counter, left", "Counter, right", "Coffee machine"} {
-		add(kitchen, spot{floor: "Ground floor", room: "Kitchen", name: name, kind: "gfci-receptacle"})
+		s := spot{floor: "Ground floor", room: "Kitchen", name: name, kind: "gfci-receptacle"}
+		if strings.HasPrefix(name, "Counter") {
+			s.circuit = "16"
+		}
+		if name == "Counter, right" {
+			s.fedBy = "Counter, left"
+		}
+		add(kitchen, s)
 	}
 	for i := 1; i <= 4; i++ {
 		add(ground, spot{floor: "Ground floor", room: fmt.Sprintf("Washroom %d", i), name: "By the mirror", kind: "gfci-receptacle"})
 	}
 	for _, name := range []string{"Laundry", "Cleaner's sink", "Entrance, outside", "Delivery door, outside", "Lab, sink left", "Lab, sink right", "Waiting room, fountain", "Waiting room, play corner"} {
-		add(ground, spot{floor: "Ground floor", room: "Service", name: name, kind: "gfci-receptacle"})
+		s := spot{floor: "Ground floor", room: "Service", name: name, kind: "gfci-receptacle"}
+		if name == "Cleaner's sink" { // nothing protects it, though it stands by a sink
+			s.kind = "receptacle"
+		}
+		add(ground, s)
 	}
 	for i := 1; i <= 8; i++ {
 		add(ground, spot{floor: "Ground floor", room: fmt.Sprintf("Consulting %d", i), name: "Desk", kind: "receptacle"})
@@ -170,7 +192,10 @@ func kilnLaneSpots() []spot {
 func ottermoorSpots() []spot {
 	var out []spot
 	add := func(f *feeder, s spot) {
-		s.panel, s.circuit, s.order = f.panel, f.circuit(), float64(len(out)+1)
+		s.panel, s.order = f.panel, float64(len(out)+1)
+		if s.circuit == "" {
+			s.circuit = f.circuit()
+		}
 		if s.building == "" {
 			s.building = "Hall"
 		}
@@ -204,7 +229,8 @@ func ottermoorSpots() []spot {
 	for _, s := range []spot{
 		{name: "Dosing pump", critical: "Dosing pump", tell: "Pool technician", from: "05:30", until: "09:30", story: "open-no-trip"},
 		{name: "Filter control", story: "open-no-reset"},
-		{name: "Workbench"},
+		{name: "Workbench", kind: "protected-receptacle", circuit: "2", fedBy: "Filter control"},
+		{name: "Test kit, wall", kind: "protected-receptacle", circuit: "2", fedBy: "Filter control", critical: "Chlorine meter", tell: "Pool technician"},
 		{name: "Sump pump", kind: "gfci-breaker", critical: "Sump pump", tell: "Pool technician"},
 		{name: "Wave machine", kind: "gfci-breaker"},
 		{name: "Underwater lights, shallow end", kind: "gfci-breaker"},

@@ -25,6 +25,7 @@ type device struct {
 	site                 *site
 	id, place, tag       string
 	make, model          string
+	source               string // id of the device whose LOAD terminals feed it
 	installed            forms.Day
 	tripMA, driftMAPerYr float64 // rising current at which it trips on the first day, and how that drifts
 	slowness             float64 // its trip time as a share of the limit at that current
@@ -237,14 +238,45 @@ func (b *builder) wiringDrafts(s *site) []store.Draft {
 			case sp.breakerA == 15:
 				conductor = "14 AWG"
 			}
+			if sp.conductor != "" {
+				conductor = sp.conductor
+			}
+			order := b.circuitOrder(s, sp)
 			if sp.isolated {
 				supply = "isolated"
 			}
 			out = append(out, store.Draft{Kind: "circuit.set", Subject: circuit, Body: set("panel", panelID(s, sp.panel), "numbers", sp.circuit,
-				"breaker_a", sp.breakerA, "poles", 1.0, "voltage_v", volts, "conductor", conductor, "standard", standard, "supply", supply)})
+				"breaker_a", sp.breakerA, "poles", 1.0, "voltage_v", volts, "conductor", conductor, "standard", standard, "supply", supply, "order", order)})
 		}
 	}
 	return out
+}
+
+// circuitOrder gives the devices of a circuit from the breaker on: those that something else hangs on stand before it.
+func (b *builder) circuitOrder(s *site, of spot) (ids []string) {
+	for _, sp := range s.spots {
+		if sp.panel == of.panel && sp.circuit == of.circuit {
+			ids = append(ids, deviceID(b.clock.Now(), s, sp))
+		}
+	}
+	return ids
+}
+
+// deviceID is the id of the first device of a spot.
+func deviceID(at time.Time, s *site, sp spot) string { return newID(at, deviceKey(s, sp)...) }
+
+func deviceKey(s *site, sp spot) []string {
+	return []string{"device", s.code, sp.building, sp.floor, sp.room, sp.name}
+}
+
+// sourceOf gives the device whose LOAD terminals feed a spot, "" where the circuit itself does.
+func sourceOf(at time.Time, s *site, sp spot) string {
+	for _, other := range s.spots {
+		if sp.fedBy != "" && other.name == sp.fedBy && other.panel == sp.panel && other.circuit == sp.circuit {
+			return deviceID(at, s, other)
+		}
+	}
+	return ""
 }
 
 func panelID(s *site, name string) string { return newID(time.UnixMilli(0), "panel", s.code, name) }
@@ -254,13 +286,14 @@ func circuitID(s *site, sp spot) string {
 
 // newDevice gives the device at a spot its hidden nature.
 func newDevice(at time.Time, s *site, sp spot) *device {
-	key := []string{"device", s.code, sp.building, sp.floor, sp.room, sp.name}
+	key := deviceKey(s, sp)
 	r := chance(key...)
 	d := &device{spot: sp, site: s, id: newID(at, key...), place: newID(at, append([]string{"place"}, key...)...), last: map[string]forms.Day{}}
 	if sp.floor == "" { // a portable item has no place
 		d.place = ""
 	}
 	d.installed = forms.DayOf(at) - forms.Day(200+r.IntN(3800))
+	d.source = sourceOf(at, s, sp)
 	d.nature(key...)
 	if sp.story == "drift" {
 		d.tripMA, d.driftMAPerYr = 5.25, 0.21
@@ -316,6 +349,9 @@ func (d *device) fields() map[string]any {
 	}
 	if d.place == "" {
 		fields["where"] = d.name
+	}
+	if d.source != "" {
+		fields["fed_by"] = d.source
 	}
 	fields["equipment_ground"] = "yes"
 	if d.noGround {

@@ -91,6 +91,8 @@ func publicRoutes() []route {
 		{get, "/workbook/:making", office, (*Server).workbookMaking, 0},
 		{get, "/workbook/:making/:file", office, (*Server).workbookMade, 0},
 		{get, "/bundle.zip", office, (*Server).bundleTake, 0},
+		{get, "/sample", office, (*Server).sampleShow, 0},
+		{get, "/sample.pdf", office, (*Server).sampleTake, 0},
 		{get, "/labels", office, (*Server).labelsShow, 0},
 		{get, "/labels.pdf", office, (*Server).labelsTake, 0},
 		{get, "/label", office, (*Server).labelTake, 0},

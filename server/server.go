@@ -111,6 +111,9 @@ func (s *Server) Serve(ctx context.Context, public, owner net.Listener) error {
 		// No write time-out: a check of a large book may think for minutes before its last line.
 		servers[&http.Server{Handler: s.OwnerHandler(), ReadHeaderTimeout: readHeaderTimeout, IdleTimeout: idleTimeout, MaxHeaderBytes: maxHeaderBytes}] = owner
 	}
+	beside, stopBeside := context.WithCancel(ctx)
+	var working sync.WaitGroup
+	working.Go(func() { s.signHeads(beside) })
 	ended := make(chan error, len(servers))
 	for srv, l := range servers {
 		go func() { ended <- srv.Serve(l) }()
@@ -129,6 +132,8 @@ func (s *Server) Serve(ctx context.Context, public, owner net.Listener) error {
 			_ = srv.Close()
 		}
 	}
+	stopBeside()
+	working.Wait()
 	s.makings.close()
 	return failed
 }

@@ -1,13 +1,14 @@
 // Trip once, walk round, note what went dark: what that says of the map and of each outlet. Pure.
 
 import { lockedEntry } from "./room-locked.mjs";
-import { feedFacts, fedBy } from "./register-work.mjs";
+import { ahead, behind, hangOn } from "./protection-map.mjs";
+import { feedFacts } from "./register-work.mjs";
 
 /** What an outlet was found to be: dark, or live though the map says it is fed from here. */
 
 /** Rows to walk to: what the map says, then what was found beside it. said: Map device id → dark | live. */
 export function sweepRows(devices, protector, said) {
-  const mapped = fedBy(devices, protector.id), known = new Set(mapped.map((d) => d.id));
+  const mapped = hangOn(devices, protector), known = new Set(mapped.map((d) => d.id));
   return [...mapped.map((device) => ({ device, mapped: true, said: said.get(device.id) })),
     ...devices.filter((d) => said.has(d.id) && !known.has(d.id)).map((device) => ({ device, mapped: false, said: said.get(device.id) }))];
 }
@@ -16,11 +17,12 @@ export function sweepRows(devices, protector, said) {
 export const lost = (rows) => rows.filter((r) => r.mapped && r.said === "live");
 
 /**
- * The map's changes and the flags: an outlet that went dark hangs on this protector from now on; a mapped one that stayed
+ * The map's changes and the flags: an outlet that went dark hangs on this protector from now on, unless the map has the
+ * protector ahead of it already, with a nearer one between; a mapped one that stayed
  * live is a defect by hand, unless its own entry says so already (fails), and stays on the map until somebody says otherwise.
  */
-export function sweepFacts({ rows, protector, words, newId, fails = () => false }) {
-  const facts = rows.filter((r) => r.said === "dark" && r.device.fields?.fed_by !== protector.id).flatMap((r) => feedFacts(r.device, protector));
+export function sweepFacts({ rows, protector, words, newId, devices = [], fails = () => false }) {
+  const facts = rows.filter((r) => r.said === "dark" && !ahead(devices, r.device).some((d) => d.id === protector.id) && r.device.fields?.fed_by !== protector.id).flatMap((r) => feedFacts(r.device, protector));
   for (const { device } of lost(rows)) if (!fails(device)) facts.push({ kind: "defect.opened", subject: newId(), body: { device: device.id, cause: "protection-lost", protector: protector.id, text: words(device) } });
   return facts;
 }
@@ -48,6 +50,6 @@ export function darkEntry({ device, form, limitSet, said }) {
 
 /** Critical loads that TEST at a protector takes the power from, its own place's first. */
 export function criticalLoads(devices, places, protector) {
-  const loads = [places.get(protector.place), ...fedBy(devices, protector.id).map((d) => places.get(d.place))].map((p) => p?.critical_load).filter((l) => typeof l === "string" && l !== "");
+  const loads = [places.get(protector.place), ...behind(devices, protector).map((d) => places.get(d.place))].map((p) => p?.critical_load).filter((l) => typeof l === "string" && l !== "");
   return [...new Set(loads)];
 }

@@ -4,18 +4,22 @@ import { html, useState } from "./vendor/htm-preact.mjs";
 import { circuitOf, contextOf, Foot, Mark, titleOf, Where } from "./field-parts.mjs";
 import { Confirm } from "./field-fields.mjs";
 import { TagTaker } from "./field-scan.mjs";
+import { ahead, protects } from "./protection-map.mjs";
 import { criticalLoads, lost, sweepRows } from "./dark-sweep.mjs";
 import { roomMates } from "./walk-round.mjs";
 import { toDevice } from "./route.mjs";
 import { showTag } from "./tag.mjs";
 
-/** "Resets at: Pantry, by the sink, LP-2 / 14", from the map on this phone. */
-export function ResetsAt({ app, device }) {
-  const from = device.fields?.fed_by && app.findDevice(device.fields.fed_by);
-  if (!from) return null;
-  const { device: protector, place } = from;
-  const where = [titleOf(app, protector, place), place?.room, circuitOf(protector)].filter(Boolean).join(", ");
-  return html`<p class="resets"><a href=${toDevice(protector.id)}>${app.say("dark.resets_at", { where })}</a></p>`;
+/** "Resets at: Pantry, by the sink, LP-2 / 14", from the map on this phone: every protector ahead, nearest first, and last the
+ *  circuit's own breaker. dead: the outlet was found without power, so that its breaker is told even where nothing is mapped. */
+export function ResetsAt({ app, device, dead = false }) {
+  const found = app.findDevice(device.id), devices = found?.site.devices ?? [];
+  const from = ahead(devices, device).filter((d) => protects(d));
+  const breaker = circuitOf(device);
+  if (from.length === 0 && !(dead && breaker)) return null;
+  const where = (d) => [titleOf(app, d, found.site.places.get(d.place)), found.site.places.get(d.place)?.room, circuitOf(d)].filter(Boolean).join(", ");
+  return html`<div class="resets">${from.map((d, i) => html`<p key=${d.id}><a href=${toDevice(d.id)}>${app.say(i === 0 ? "dark.resets_at" : "dark.then_at", { where: where(d) })}</a></p>`)}
+    ${breaker && html`<p class="quiet">${app.say("dark.breaker_at", { where: breaker })}</p>`}</div>`;
 }
 
 /** What TEST takes the power from, named. */

@@ -5,6 +5,7 @@ import { contextOf, dueState, Foot, Mark, titleOf, Where } from "./field-parts.m
 import { dueNow } from "./list.mjs";
 import { showDay } from "./days.mjs";
 import { toSite, toTest } from "./route.mjs";
+import { behind } from "./protection-map.mjs";
 import { CriticalLoads, ResetsAt } from "./field-dark.mjs";
 
 export function DevicePage({ app, site, device, place }) {
@@ -33,7 +34,7 @@ export function DevicePage({ app, site, device, place }) {
 
 /** What else may be done at a device. */
 function Work({ app, site, device, forms }) {
-  const { say } = app, feeds = app.feeds(site, device);
+  const { say } = app, feeds = behind(site.devices, device);
   const trips = forms.some((f) => f.steps.some((s) => s.asks.some((a) => a.reading === "button_trips")));
   const link = (page, words, more) => html`<li><a class="row" href=${`#/${page}/${device.id}`}><span class="name">${say(words)}</span>${more && html`<span class="quiet">${more}</span>`}</a></li>`;
   return html`<section class="room"><h2>${say("register.work")}</h2><ul class="rows">

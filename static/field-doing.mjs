@@ -69,7 +69,7 @@ export function fieldWork(app, parts) {
         .map((r) => ({ ...r, entry: darkEntry({ device: r.device, form: r.form, limitSet: setOf(site, r.device, r.form), said: r.said }) })).filter((r) => r.entry);
       const entries = made.map((r) => entryFact(site, r.device, r.form, r.entry)), failed = new Set(made.filter((r) => r.said === "live").map((r) => r.device.id));
       const what = app.titleById(protector.id);
-      const facts = sweepFacts({ rows, protector, words: (d) => say("dark.defect", { what: app.titleById(d.id), protector: what }), newId: app.newId, fails: (d) => failed.has(d.id) });
+      const facts = sweepFacts({ rows, protector, devices: site.devices, words: (d) => say("dark.defect", { what: app.titleById(d.id), protector: what }), newId: app.newId, fails: (d) => failed.has(d.id) });
       return app.write(site, [...facts.map((f) => ({ ...f, title: what })), ...entries], { drafts: [key], said: say("dark.kept", { what }) });
     },
 

@@ -42,7 +42,7 @@ export function TestPage({ app, test }) {
       <h2 class="task">${draft.corrects ? say("correct.title", { task: say(`task.${form.task}`) }) : say(`task.${form.task}`)}</h2>
       ${test.loads.length > 0 && html`<p class="caution"><b>${say("field.critical_load", { load: test.loads.join("; ") })}</b> ${say("field.critical_load_do")}</p>`}
       <${TellFirst} app=${app} places=${[place]} />
-      ${walked.readings.found?.value === "no-power" && html`<${ResetsAt} app=${app} device=${device} />`}
+      ${walked.readings.found?.value === "no-power" && html`<${ResetsAt} app=${app} device=${device} dead />`}
       ${form.quick && !detailed
         ? html`<${Quick} app=${app} form=${form} test=${test} done=${quickDone} set=${set} open=${() => set({}, { detailed: true })} />`
         : html`

@@ -142,7 +142,7 @@ func (w *wiring) take(id id16) (d *onWire, isNew bool, err error) {
 		d.Circuit = d.circuit.String()
 	}
 	if named := parseID(t.text("fed_by")); named != (id16{}) {
-		if d.source, err = w.standsFor(named); err != nil {
+		if d.source, err = w.v.standsFor(w.sv, named); err != nil {
 			return nil, false, err
 		}
 		var rec id16
@@ -154,9 +154,9 @@ func (w *wiring) take(id id16) (d *onWire, isNew bool, err error) {
 
 // standsFor gives the device that stands where one stood: itself while in service, else what took its place, and so on;
 // where nothing did, the last that is known of.
-func (w *wiring) standsFor(id id16) (id16, error) {
+func (v *View) standsFor(sv *siteView, id id16) (id16, error) {
 	for range 64 { // replaced so often, or in a ring
-		t, err := w.v.deviceThing(w.sv, id)
+		t, err := v.deviceThing(sv, id)
 		if err != nil || t == nil || t.value("#retired") == nil {
 			return id, err
 		}
@@ -216,7 +216,7 @@ func (w *wiring) fedFrom(id id16) (out []id16, err error) {
 				todo = append(todo, t.id)
 				return nil
 			}
-			if source, err := w.standsFor(parseID(t.text("fed_by"))); err != nil || source != id || t.born == 0 {
+			if source, err := w.v.standsFor(w.sv, parseID(t.text("fed_by"))); err != nil || source != id || t.born == 0 {
 				return err
 			}
 			out = append(out, t.id)

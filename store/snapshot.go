@@ -165,6 +165,13 @@ func (v *View) snapshotDevice(sv *siteView, t *thing, w *work, on forms.Day) (Sn
 			d.Fields[f.name] = json.RawMessage(append([]byte(nil), f.value...))
 		}
 	}
+	if named := parseID(t.text("fed_by")); named != (id16{}) {
+		source, err := v.standsFor(sv, named)
+		if err != nil {
+			return d, Place{}, err
+		}
+		d.Fields["fed_by"] = quoted(source.String()) // the device named may have been replaced since
+	}
 	if name, why := v.rules().setOfKind(sv.ord, v.orgLog(), d.Kind, string(t.value("delayed")) == "true", on); why != ByShipped {
 		d.LimitSet = name
 	}

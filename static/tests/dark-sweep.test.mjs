@@ -3,6 +3,7 @@ import assert from "node:assert/strict";
 import { readdirSync, readFileSync } from "node:fs";
 import { criticalLoads, darkEntry, darkForm, sweepFacts, sweepRows } from "../dark-sweep.mjs";
 import { limitSetFor } from "../judging.mjs";
+import { ahead, behind, hangOn } from "../protection-map.mjs";
 
 const data = new URL("../../forms/data/", import.meta.url);
 const read = (dir) => readdirSync(new URL(dir, data)).flatMap((f) => JSON.parse(readFileSync(new URL(dir + f, data))));
@@ -46,4 +47,26 @@ test("sweep: a plain outlet that went dark is not tested, one that stayed live s
 test("sweep: TEST names the critical loads behind it, its own first, each once", () => {
   const places = new Map([["p0", { critical_load: "Freezer" }], ["p1", { critical_load: "Vaccine refrigerator" }], ["p2", { critical_load: "Freezer" }]]);
   assert.deepEqual(criticalLoads(devices, places, g), ["Freezer", "Vaccine refrigerator"]);
+});
+
+const wired = (id, kind, fed_by, circuit) => ({ id, kind, fields: { ...(fed_by ? { fed_by } : {}), ...(circuit ? { circuit } : {}) } });
+const house = [wired("breaker", "gfci-breaker", "", "14"), wired("pantry", "gfci-receptacle", "", "14"), wired("door", "protected-receptacle", "pantry", "14"), wired("hall", "receptacle", "door"),
+  wired("x", "gfci-receptacle", "y"), wired("y", "gfci-receptacle", "x"), wired("desk", "receptacle", "gone", "16")];
+const of = (id) => house.find((d) => d.id === id), ids = (list) => list.map((d) => d.id);
+
+test("map: what is ahead of an outlet, nearest first, and what goes dark with a device", () => {
+  assert.deepEqual(ids(ahead(house, of("hall"))), ["door", "pantry", "breaker"]);
+  assert.deepEqual(ids(behind(house, of("breaker"))), ["pantry", "door", "hall"]);
+  assert.deepEqual(ids(behind(house, of("pantry"))), ["door", "hall"]);
+  assert.deepEqual(ids(hangOn(house, of("door"))), ["hall"]);
+  assert.deepEqual(ids(ahead(house, of("desk"))), []);
+});
+
+test("map: a ring is walked round once", () => {
+  assert.deepEqual([ids(ahead(house, of("x"))), ids(behind(house, of("x")))], [["y"], ["y"]]);
+});
+
+test("sweep: an outlet behind a nearer protector stays on that one", () => {
+  const rows = sweepRows(house, of("breaker"), new Map([["door", "dark"], ["desk", "dark"]]));
+  assert.deepEqual(sweepFacts({ rows, protector: of("breaker"), devices: house, words: String, newId: () => "x" }).map((f) => [f.subject, f.body.set.fed_by]), [["desk", "breaker"]]);
 });

@@ -197,7 +197,7 @@ func (s *Server) flagDetail(f store.Flag) string {
 		}
 	case "differs-shown":
 		return lowerFirst(k.named("verdict", f.Detail))
-	case "calibration-expired", "access-ended":
+	case "calibration-expired", "access-ended", "instrument-out":
 		if day, err := forms.ParseDay(f.Detail); err == nil {
 			return k.day(day)
 		}

@@ -42,6 +42,7 @@ type fieldGroup struct {
 type field struct {
 	Name, Label, Type, Value, Hint, Unit, Error string
 	Required, Wide                              bool
+	Accept                                      string // kinds of file
 	Options                                     []option
 	Known                                       []string // values to choose from while typing
 	ID                                          string   // where two forms of a page ask by the same name; else the name serves
@@ -275,6 +276,9 @@ func (f *typedForm) fill(p *formPage) {
 	for g := range p.Groups {
 		for i := range p.Groups[g].Fields {
 			q := &p.Groups[g].Fields[i]
+			if q.Type == "photo" && q.Accept == "" {
+				q.Accept = "image/jpeg,image/png"
+			}
 			if labels[q.Name] = q.Label; q.Type == "" {
 				q.Type = "text"
 			}

@@ -228,12 +228,10 @@ type instrumentRow struct {
 	Accuracy                              []string
 }
 
-func (s *Server) instrumentRow(i store.Instrument, today forms.Day, change bool) instrumentRow {
+func (s *Server) instrumentRow(i store.Instrument, today forms.Day) instrumentRow {
 	k := s.ink()
 	row := instrumentRow{Name: i.Name, Serial: i.Serial, Calibration: k.day(i.CalibrationDue)}
-	if change {
-		row.Href = "/instruments/" + i.ID
-	}
+	row.Href = "/instruments/" + i.ID + "/past"
 	if i.CalibrationDue != forms.NoDay && i.CalibrationDue < today {
 		row.Late, row.Calibration = true, k.say("office.instrument.overdue", "day", row.Calibration)
 	}

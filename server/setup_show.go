@@ -36,7 +36,7 @@ func (s *Server) setupShow(c echo.Context) error {
 			return err
 		}
 		for _, i := range instruments {
-			view.Instruments = append(view.Instruments, s.instrumentRow(i, forms.DayOf(s.store.Now()), view.Change))
+			view.Instruments = append(view.Instruments, s.instrumentRow(i, forms.DayOf(s.store.Now())))
 		}
 		plans, err := v.Plans()
 		if err != nil {

@@ -85,8 +85,8 @@ limits.set             org,site  limits:object! reason:text
 plan.set               org,site  plan:object! reason:text
 usual.set              org,site  usual:object! reason:text
 instrument.set         org       set:wide! seen:stamp
-instrument.calibrated  org       on:day! due:day certificate:text
-instrument.proved      org       on:day! tag:tag
+instrument.calibrated  org       on:day! due:day certificate:text out:bool errors:object file:hash file_name:text
+instrument.proved      org       on:day! tag:tag works:bool where:text
 person.set             org       role:role! active:bool!
 tags.minted            org       tags:tags!
 grant.set              office    role:role! all:bool! sites:ids active:bool!

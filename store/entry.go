@@ -298,7 +298,7 @@ func (e *Entry) say(said []saidRecord, o outcome) {
 
 // Flag is something to look at that is no verdict: code names a word "flag.CODE", Detail fills it in.
 // Codes: clock (device clock off), late (received long after), differs-shown, differs-register, calibration-expired,
-// no-instrument, access-ended (between the test and its arrival), n-reused (two records carry its number), n-gap (the
+// no-instrument, instrument-unknown (nobody registered it), instrument-out (found out of tolerance later), access-ended (between the test and its arrival), n-reused (two records carry its number), n-gap (the
 // numbers before it never came), correction-idle and withdrawal-idle (by somebody who might not).
 type Flag struct{ Code, Detail string }
 
@@ -335,6 +335,11 @@ func (v *View) flags(sv *siteView, r *record.Record, st record.Stamp, k kept, bo
 	}
 	if o.task == forms.TaskInstrument && given.Instrument == "" && r.Kind == "entry.made" {
 		flag("no-instrument", "")
+	}
+	if given.Instrument != "" {
+		if err := v.flagInstrument(given.Instrument, o.day, flag); err != nil {
+			return nil, err
+		}
 	}
 	if err := v.flagNumber(r, k, flag); err != nil {
 		return nil, err

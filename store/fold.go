@@ -96,6 +96,8 @@ func (f *fold) record(r *record.Record, st record.Stamp, seq uint64) error {
 		return f.retired(r, st)
 	case "instrument.calibrated":
 		return f.calibrated(r)
+	case "instrument.proved":
+		return f.instrumentProved(r)
 	case "tag.bound", "tag.freed":
 		return f.bound(r)
 	case "entry.made", "entry.imported":

@@ -97,28 +97,6 @@ func (f *fold) retired(r *record.Record, st record.Stamp) error {
 	return f.deviceChanged(l, key.n, reg)
 }
 
-// calibrated is the field calibration_due of an instrument, said by its certificate.
-func (f *fold) calibrated(r *record.Record) error {
-	var body struct{ On, Due, Certificate string }
-	if err := json.Unmarshal(r.Body, &body); err != nil {
-		return badBody("due", "The days of %s are not readable: %v.", r.Kind, err)
-	}
-	l, err := f.log(r.Log)
-	if err != nil {
-		return err
-	}
-	_, reg, err := f.register(l, ofInstrument, parseID(r.Subject))
-	if err != nil {
-		return err
-	}
-	for name, v := range map[string]string{"calibration_due": body.Due, "calibrated": body.On, "certificate": body.Certificate} {
-		if v != "" {
-			reg.say(name, record.Said{Value: quoted(v), Clock: r.Clock, ID: r.ID, From: r.From})
-		}
-	}
-	return nil
-}
-
 // deviceChanged carries what the dates need over to the device's work row.
 func (f *fold) deviceChanged(l *modelLog, n uint32, reg *register) error {
 	w, err := f.work(l.ord, n)

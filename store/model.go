@@ -25,7 +25,7 @@ import (
 //	m_occ    site 4 | record 16         → an occasion: cause, day, tasks, how many devices (0 = the whole site)
 //	m_pause  site 4 | pause 16          → the record that stands, days, reason, devices (none = the whole site)
 //	m_fail   site 4 | day 4 | n 4       → nothing: this device failed on that day and has not passed since
-//	m_fact   site 4 | n 4               → seqs of what was said of that device's defects, and of its end
+//	m_fact   site 4 | n 4               → seqs of what was said of that device's defects and of its end; of an instrument's certificates and proofs
 //	m_defect site 4 | n 4               → JSON of its defects, where there are any
 //	m_flaw   defect 16 | site 4         → n 4: the device of a defect
 //	m_open   site 4 | opened ms 8 | defect 16 → n 4 | flags 1: a defect that is not closed

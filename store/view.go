@@ -21,7 +21,8 @@ type View struct {
 	mayDo   *grants
 	org     uint32
 	opened  map[id16]*siteView
-	counted map[string]*runs // by installation and log
+	tested  map[string]testedWith // by instrument
+	counted map[string]*runs      // by installation and log
 	refused map[numbered]bool
 }
 

@@ -235,7 +235,7 @@ func revisionSample() revisionPage {
 }
 
 // keptFields hold what is not text of a reader: addresses, shapes, places in a drawing, codes.
-var keptFields = []string{"Href", "NewHref", "ListHref", "EntryHref", "Stops", "N", "Minutes", "Action", "Cancel", "FailedHref", "OverdueHref", "NewSite", "NewInstrument", "Record", "Sheet", "Shape", "Path", "BandX", "BandW", "Limits", "X", "Anchor", "Before", "Mark", "Pointer", "At", "Y", "Inside", "Back", "Role", "Here", "Type", "Known"}
+var keptFields = []string{"Href", "FileHref", "RecallHref", "NewHref", "ListHref", "EntryHref", "Stops", "N", "Minutes", "Action", "Cancel", "FailedHref", "OverdueHref", "NewSite", "NewInstrument", "Record", "Sheet", "Shape", "Path", "BandX", "BandW", "Limits", "X", "Anchor", "Before", "Mark", "Pointer", "At", "Y", "Inside", "Back", "Role", "Here", "Type", "Known"}
 
 // with gives a page with every text of a reader replaced, or with all lists emptied where text is nil.
 func with(page any, text *string) any {

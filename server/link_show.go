@@ -44,9 +44,9 @@ func (s *Server) toSignIn(c echo.Context) error {
 	return toPage(c, "/in"+q)
 }
 
-// linkAsk shows the sign-in page.
+// linkAsk shows the sign-in page; with other also to a browser somebody is signed in to, for the next person on a shared phone.
 func (s *Server) linkAsk(c echo.Context) error {
-	if person(c).ID != "" {
+	if person(c).ID != "" && c.QueryParam("other") == "" {
 		return toPage(c, home(person(c).Role))
 	}
 	return s.page(c, http.StatusOK, "signin.html", s.askPage(c, ownPath(c.QueryParam("next")), ""))

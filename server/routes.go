@@ -57,6 +57,7 @@ func publicRoutes() []route {
 		{post, "/exchange/ask", phone, (*Server).exchangeAsk, 0},
 		{get, "/exchange/logs", phone, (*Server).exchangeLogs, 0},
 		{get, "/exchange/people", phone, (*Server).exchangePeople, 0},
+		{get, "/exchange/entry", phone, (*Server).exchangeEntry, 0},
 		{get, "/exchange/snapshot", phone, (*Server).exchangeSnapshot, 0},
 
 		// office: reading

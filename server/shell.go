@@ -17,7 +17,7 @@ type shell struct {
 	parts []part           // in the order they stand in every pack; the words of its language follow
 	words map[string]part  // by language
 	sums  map[string]whole // of the packs, by language
-	codes []whole          // what draws codes, and what reads them where a browser cannot; each comes by itself
+	alone []whole          // come by themselves: what the page has fetched before a worker answers, what draws codes, and last what reads them where a browser cannot
 	packs map[string]asset // by name
 }
 
@@ -28,8 +28,8 @@ type (
 	whole [2]string
 )
 
-// codeFiles come by themselves: the first is for all, the second only for a browser without a reader of its own.
-var codeFiles = []string{"vendor/qr-index.mjs", "vendor/qr-decode.mjs"}
+// aloneFiles come by themselves. The last is only for a browser without a reader of codes.
+var aloneFiles = []string{"boot.mjs", "field.css", "tokens.css", "icons/mark.svg", "vendor/qr-index.mjs", "vendor/qr-decode.mjs"}
 
 func packName(lang string) string { return "field-" + lang + ".pack" }
 
@@ -46,12 +46,12 @@ func (a *assets) makeShell() (*shell, error) {
 		return nil, err
 	}
 	sh := &shell{words: map[string]part{}, sums: map[string]whole{}, packs: map[string]asset{}}
-	for _, name := range codeFiles {
-		sh.codes = append(sh.codes, wholeOf(name, a.files[name].plain))
+	for _, name := range aloneFiles {
+		sh.alone = append(sh.alone, wholeOf(name, a.files[name].plain))
 	}
 	var body bytes.Buffer
 	for _, name := range names {
-		if slices.Contains(codeFiles, name) {
+		if slices.Contains(aloneFiles, name) {
 			continue
 		}
 		sh.parts = append(sh.parts, a.part(name))

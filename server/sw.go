@@ -30,7 +30,7 @@ type workerBuild struct {
 	Files []part           `json:"files"`
 	Words map[string]part  `json:"words"`
 	Packs map[string]whole `json:"packs"`
-	Codes []whole          `json:"codes"`
+	Alone []whole          `json:"alone"`
 }
 
 // worker writes the script of /sw.js. Its bytes change when any file of the field client, its page or the worker itself
@@ -40,7 +40,7 @@ func (s *Server) worker(page []byte) (string, error) {
 	if err != nil {
 		return "", err
 	}
-	build := workerBuild{Shell: shellPath, Root: s.assets.root(), Files: sh.parts, Words: sh.words, Packs: sh.sums, Codes: sh.codes}
+	build := workerBuild{Shell: shellPath, Root: s.assets.root(), Files: sh.parts, Words: sh.words, Packs: sh.sums, Alone: sh.alone}
 	sum := sha256.New()
 	fmt.Fprintf(sum, "%s\n%s\n%s\n", s.assets.hash, workerText, page)
 	build.Cache = "tripwell-field-" + hex.EncodeToString(sum.Sum(nil))[:16]

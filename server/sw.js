@@ -1,7 +1,7 @@
 // The worker that opens the field client without a line. The server writes BUILD before this text: {cache, shell, root,
-// files:[[name, bytes]…], words:{language:[name, bytes]}, packs:{language:[name, SHA-256 in hex]}, codes:[[name, SHA-256]…]}.
-// Files and words of one language come as one pack, behind one another; what draws and reads codes comes by itself. It answers
-// navigations to the field client and to labels, and the files it laid in; everything else, and whatever is no GET, goes past
+// files:[[name, bytes]…], words:{language:[name, bytes]}, packs:{language:[name, SHA-256 in hex]}, alone:[[name, SHA-256]…]}.
+// Files and words of one language come as one pack, behind one another; what the page fetches before it, and what draws and
+// reads codes, comes by itself. It answers navigations to the field client and to labels, and the files it laid in; everything else, and whatever is no GET, goes past
 // it as if it were not there.
 
 const OWN = "tripwell-field-"; // every cache of ours is named so; no other is touched
@@ -13,15 +13,15 @@ function language() {
   return wishes.find((lang) => BUILD.words[lang]);
 }
 
-/** What draws codes; and what reads them, where the browser does not itself. */
-async function codeFiles() {
+/** The last, which reads codes, only where the browser does not itself. */
+async function aloneFiles() {
   const reads = (await self.BarcodeDetector?.getSupportedFormats().catch(() => []))?.includes("qr_code");
-  return BUILD.codes.slice(0, reads ? 1 : 2);
+  return reads ? BUILD.alone.slice(0, -1) : BUILD.alone;
 }
 
 /** Lays the whole build in or nothing: a worker with half of it would break the client where there is no line to mend it. */
 async function layIn() {
-  const lang = language(), inPack = [...BUILD.files, BUILD.words[lang]], alone = await codeFiles();
+  const lang = language(), inPack = [...BUILD.files, BUILD.words[lang]], alone = await aloneFiles();
   if (await whole([...inPack, ...alone])) return;
   const cache = await caches.open(BUILD.cache);
   try {
@@ -72,7 +72,7 @@ async function clearOld() {
 }
 
 const isFile = new RegExp(`^/assets/[0-9a-f]{16}/`);
-const fileNames = new Set([...BUILD.files, ...Object.values(BUILD.words), ...BUILD.codes].map(([name]) => name));
+const fileNames = new Set([...BUILD.files, ...Object.values(BUILD.words), ...BUILD.alone].map(([name]) => name));
 
 /** What of ours a request asks for: "shell", "file" or null. */
 function oursOf(request) {

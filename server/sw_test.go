@@ -35,7 +35,7 @@ func TestWorker_LaysInEveryFileTheClientAsksForAndNoOther(t *testing.T) {
 	for _, f := range append(build.Files, build.Words["en"], build.Words["es"]) {
 		laidIn[f[0].(string)] = true
 	}
-	for _, f := range build.Codes {
+	for _, f := range build.Alone {
 		laidIn[f[0]] = true
 	}
 	shell := get200(t, s.Handler(), "/field").Body.String()
@@ -68,8 +68,8 @@ func TestShell_FitsItsBudgetInEveryLanguage(t *testing.T) {
 	must(t, err)
 	for _, lang := range static.Languages {
 		sum := 0
-		first := s.assets.root() // what the page itself asks for before a worker answers stands in the pack once more
-		for _, address := range []string{"/field", first + "boot.mjs", first + "tokens.css", first + "field.css", "/sw.js", first + packName(lang)} {
+		first := s.assets.root()
+		for _, address := range []string{"/field", first + "boot.mjs", first + "tokens.css", first + "field.css", first + "icons/mark.svg", "/sw.js", first + packName(lang)} {
 			body := get200(t, s.Handler(), address, "Accept-Encoding", "gzip").Body
 			size := body.Len()
 			t.Logf("%s: %-40s %6d bytes", lang, address, size)

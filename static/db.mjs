@@ -86,6 +86,9 @@ export function trayDB() {
     me: (name) => use((db) => db.get("me", name)),
     setMe: (name, value) => write("me", (store) => store.put(value, name)),
 
+    /** Whoever makes the entries from now on: id and name together. */
+    become: (person, name) => write("me", async (store) => { await store.put(person, "person"); await store.put(name, "name"); }),
+
     drafts: () => use((db) => db.getAll("drafts")),
     photo: (sha256) => use((db) => db.get("photos", sha256)),
     putPhoto: (row) => write("photos", async (store) => { if (!(await store.get(row.sha256))) await store.put(row); }),

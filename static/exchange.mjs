@@ -38,6 +38,7 @@ export function exchange({ fetch, now }) {
     photo: (token, { sha256, entry, blob }) => call(`/exchange/photo?sha256=${sha256}&entry=${encodeURIComponent(entry)}`, { token, method: "POST", body: blob, type: "image/jpeg" }),
     pull: (token, log, after, limit) => call(`/exchange/pull?log=${encodeURIComponent(log)}&after=${encodeURIComponent(after)}&limit=${limit}`, { token }),
     ask: (token, ids) => call("/exchange/ask", { token, method: "POST", body: JSON.stringify({ ids }) }),
+    entry: (token, id) => call(`/exchange/entry?id=${encodeURIComponent(id)}`, { token }),
     renew: (token, installation) => call("/exchange/renew", { token, method: "POST", body: JSON.stringify({ installation }) }),
     push: (token, body) => call("/exchange/push", { token, method: "POST", body }),
   };

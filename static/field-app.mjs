@@ -107,9 +107,10 @@ export function fieldApp(parts) {
     },
     /** An optional question somebody opens stays open on this phone from then on. */
     unfold: (ask) => remember("unfolded", [...new Set([...(state.me.unfolded ?? []), ask.reading])]),
-    /** The person who signed in to this browser last makes the entries from now on; nobody signed in: sign in first. */
+    /** The person who signed in to this browser last makes the entries from now on; where that is nobody else, somebody signs in. */
     async somebodyElse() {
-      if (!(await parts.takeOver()) && state.line === "signed-out") parts.leave("/in?next=/field");
+      const before = state.me.person, known = await parts.takeOver();
+      if (known ? state.me.person === before : state.line === "signed-out") parts.leave("/in?other=1&next=/field");
       else parts.sendNow();
     },
     sendNow: () => parts.sendNow(),

@@ -5,12 +5,12 @@ import { Foot, Where } from "./field-parts.mjs";
 import { TestPage } from "./field-test.mjs";
 
 export function CorrectPage({ app, entry }) {
-  const [lost, setLost] = useState(false);
-  useEffect(() => { app.openCorrection(entry).then((found) => { if (!found) setLost(true); }, () => setLost(true)); }, [entry]);
+  const [lost, setLost] = useState(null);
+  useEffect(() => { app.openCorrection(entry).then(setLost, () => setLost("correct.not_here")); }, [entry]);
   const test = app.correction(entry);
   if (test) return html`<${TestPage} app=${app} test=${test} key=${test.draft.key} />`;
-  return html`<${Where} app=${app} title=${app.say(lost ? "correct.not_here" : "field.starting")} back="#/" />
-    <main>${lost && html`<p class="hint pad">${app.say("correct.not_here_hint")}</p>`}</main><${Foot} app=${app} />`;
+  return html`<${Where} app=${app} title=${app.say(lost ?? "field.starting")} back="#/" />
+    <main>${lost && html`<p class="hint pad">${app.say(`${lost}_hint`)}</p>`}</main><${Foot} app=${app} />`;
 }
 
 /** Why it is changed; asked before it can be kept. */

@@ -25,7 +25,7 @@ export function DevicePage({ app, site, device, place }) {
         ${Object.keys(device.last ?? {}).length === 0 ? html`<p class="hint pad">${say("field.never_tested")}</p>` : html`<ul class="rows">${Object.entries(device.last).map(([task, l]) => html`<li key=${task} class="row still">
           <span class="name">${say(`task.${task}`)}</span><${Mark} verdict=${l.result}>${say(`verdict.${l.result}`)}<//>
           <span class="quiet">${showDay(app, l.day)}${l.own ? ` · ${say(l.unsent ? "field.own_unsent" : "field.own_sent")}` : ""}</span>
-          ${app.state.own.has(l.entry) && l.result && html`<a class="small" href=${`#/correct/${l.entry}`}>${say("correct.link")}</a>`}</li>`)}</ul>`}
+          ${l.entry && l.result && (app.state.own.has(l.entry) || app.state.line !== "unreached") && html`<a class="small" href=${`#/correct/${l.entry}`}>${say("correct.link")}</a>`}</li>`)}</ul>`}
       </section>
       <p class="facts quiet">${[[device.fields?.make, device.fields?.model].filter(Boolean).join(" "), ...facts, device.fields?.equipment_ground === "none-permitted" ? say("field.fact.no_ground") : "", device.supply === "isolated" ? say("field.fact.isolated") : ""].filter(Boolean).join(" · ")}</p>
       <${Work} app=${app} site=${site} device=${device} forms=${forms} />

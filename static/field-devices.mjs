@@ -16,13 +16,13 @@ const PAGEFUL = 150; // rows of a page; more are asked for
 
 export function DevicesPage({ app, site }) {
   const { say } = app;
-  const [all, setAll] = useState("due");
+  const [all, setAll] = useState(() => (app.taken(site).size > 0 ? "taken" : "due"));
   const [scan, setScan] = useState(false);
   const [typed, setTyped] = useState("");
   const [most, setMost] = useState(PAGEFUL), [drawn, setDrawn] = useState(FIRST);
-  const due = dueIn(site), back = backOf(site);
+  const due = dueIn(site), back = backOf(site), mine = app.taken(site), taken = due.filter((d) => mine.has(d.id));
   const searching = typed.trim() !== "", { error } = tagTyped(typed), code = site.snapshot.site.code;
-  const shown = (searching || all === "all" ? site.devices : all === "back" ? back : due).filter((d) => matches(d, site.places.get(d.place), typed, say(`kind.${d.kind}`)));
+  const shown = (searching || all === "all" ? site.devices : all === "back" ? back : all === "taken" && taken.length > 0 ? taken : due).filter((d) => matches(d, site.places.get(d.place), typed, say(`kind.${d.kind}`)));
   const rows = shown.slice(0, Math.min(most, drawn));
   useEffect(() => {
     if (rows.length >= Math.min(most, shown.length)) return undefined;
@@ -40,8 +40,9 @@ export function DevicesPage({ app, site }) {
         <div class="beside"><label class="find"><span class="unseen">${say("field.search")}</span><input type="search" value=${typed} placeholder=${say("field.search")} autocomplete="off" aria-invalid=${error ? "true" : null} onInput=${(e) => { setTyped(e.currentTarget.value); setMost(PAGEFUL); }} /></label>
           ${!scan && html`<button type="button" class="big" onClick=${() => setScan(true)}>${say("scan.scan")}</button>`}</div>
         ${error && html`<p class="bad" role="alert">${say(error)}</p>`}
-        <div class=${back.length > 0 ? "pair three" : "pair"} role="group" aria-label=${say("field.which")}>
+        <div class=${back.length > 0 || taken.length > 0 ? "pair three" : "pair"} role="group" aria-label=${say("field.which")}>
           <button type="button" aria-pressed=${String(all === "due" && !searching)} onClick=${() => { setAll("due"); setTyped(""); }}>${say("field.filter_due", { n: due.length })}</button>
+          ${taken.length > 0 && html`<button type="button" aria-pressed=${String(all === "taken" && !searching)} onClick=${() => { setAll("taken"); setTyped(""); }}>${say("walk.filter_taken", { n: taken.length })}</button>`}
           ${back.length > 0 && html`<button type="button" aria-pressed=${String(all === "back" && !searching)} onClick=${() => { setAll("back"); setTyped(""); }}>${say("walk.filter_back", { n: back.length })}</button>`}
           <button type="button" aria-pressed=${String(all === "all" || searching)} onClick=${() => setAll("all")}>${say("field.filter_all", { n: site.devices.length })}</button></div>
       </div>

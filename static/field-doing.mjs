@@ -73,15 +73,17 @@ export function fieldWork(app, parts) {
       return app.write(site, [...facts.map((f) => ({ ...f, title: what })), ...entries], { drafts: [key], said: say("dark.kept", { what }) });
     },
 
-    /** Opens a correction of an entry this phone made; false where it did not. */
+    /** Opens a correction of an entry of one's own, made here or, with a line, on another phone. Resolves to null, or words for why not. */
     async openCorrection(entry) {
-      if (state.drafts.has(correctionKey(entry))) return true;
-      const row = await tray.record(entry);
-      if (!row?.summary) return false;
-      const newer = state.records.findLast((r) => r.summary?.corrects && r.summary.entry === entry);
-      const draft = correctionDraft({ record: row.record, newer: newer && JSON.parse(newer.record).body, task: row.summary.task, now: now() });
+      if (state.drafts.has(correctionKey(entry))) return null;
+      const row = await tray.record(entry), there = row?.summary ? null : await parts.entryOf(entry);
+      if (!row?.summary && !there) return "correct.not_here";
+      const record = there?.record ?? row.record, made = JSON.parse(record);
+      if (made.by !== state.me.person) return "correct.not_yours";
+      const here = state.records.findLast((r) => r.summary?.corrects && r.summary.entry === entry)?.record, newer = here ?? there?.newer;
+      const draft = correctionDraft({ record, newer: newer && JSON.parse(newer).body, task: made.body.form.split("/")[1], now: now() });
       parts.putDraft({ ...draft, instrument_was: draft.instrument });
-      return true;
+      return null;
     },
     correction(entry) {
       const draft = state.drafts.get(correctionKey(entry));

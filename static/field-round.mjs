@@ -119,13 +119,18 @@ function DayWalk({ app, site }) {
   };
   const row = (d) => html`<li key=${d.id}><a class="row" href=${toDevice(d.id)}><span class="name">${titleOf(app, d, site.places.get(d.place))}</span><span></span>
     <span class="quiet">${[site.places.get(d.place)?.room, ...dueNow(d, site.today).map((x) => say(`task.${x.task}`))].filter(Boolean).join(" · ")}</span></a></li>`;
-  const skipped = app.skipped(site), over = dueIn(site).filter((d) => skipped.has(d.id));
+  const over = dueIn(site).filter((d) => round.skipped.includes(d.id)), given = dueIn(site).filter((d) => round.given?.includes(d.id));
+  const code = encodeURIComponent(site.snapshot.site.code);
   return html`<${Where} app=${app} title=${say("walk.round")} context=${site.snapshot.site.name} progress=${showDay(app, site.today)} back=${toSite(site.snapshot.site.code)} />
     <main><p class="pad counts">${walkWords(app, counts)}</p>
       <${Proof} app=${app} site=${site} round=${round} end="first" />
       ${back.length > 0 && html`<section class="room"><h2>${say("walk.come_back", { n: back.length })}</h2><ul class="rows">${back.slice(0, 100).map(row)}</ul></section>`}
       ${over.length > 0 && html`<section class="room"><h2>${say("walk.passed_over", { n: over.length })}</h2><ul class="rows">${over.slice(0, 100).map(row)}</ul>
         <button type="button" class="big more" onClick=${() => app.unskip(site)}>${say("walk.walk_again")}</button></section>`}
+      <section class="room"><h2>${say("walk.share")}</h2><ul class="rows">
+        ${counts.left > 0 && html`<li><a class="row" href=${`#/hand/${code}`}><span class="name">${say("walk.hand")}</span></a></li>`}
+        <li><a class="row" href=${`#/take/${code}`}><span class="name">${say("walk.take")}</span></a></li></ul>
+        ${given.length > 0 && html`<p class="beside pad"><span>${say("walk.given", { n: given.length })}</span><button type="button" class="link" onClick=${() => app.giveAway(site, [])}>${say("walk.take_back")}</button></p>`}</section>
       <${Proof} app=${app} site=${site} round=${round} end="last" />
       ${blocked && html`<p class="caution" role="alert">${say("walk.still_off", { n: off })}</p>`}
       ${!blocked && (!round.proved?.first || !round.proved?.last) && html`<p class="hint pad">${say("walk.unproved")}</p>`}

@@ -25,8 +25,13 @@ export function TagTaker({ app, onTag, label }) {
   </div>`;
 }
 
-/** The camera's picture until a code of ours is seen; what goes wrong is said in its place. */
-export function Camera({ app, onTag, onClose }) {
+const labelIn = (text) => {
+  const { tag, error } = tagTyped(text, { whole: true });
+  return { value: tag, error };
+};
+
+/** The camera's picture until a code of ours is seen; what goes wrong is said in its place. read(text) → {value} or {error}. */
+export function Camera({ app, onTag, onClose, read = labelIn }) {
   const { say } = app;
   const video = useRef(null), live = useRef(null);
   const [trouble, setTrouble] = useState(null);
@@ -35,9 +40,9 @@ export function Camera({ app, onTag, onClose }) {
     let over = false;
     const stop = () => { over = true; live.current?.getTracks().forEach((t) => t.stop()); };
     look(video.current, live, { over: () => over, onLamp: () => setLamp(false), onText: (text) => {
-      const { tag, error } = tagTyped(text, { whole: true });
-      if (tag) { stop(); onTag(tag); } else setTrouble(error);
-      return Boolean(tag);
+      const { value, error } = read(text);
+      if (value) { stop(); onTag(value); } else setTrouble(error);
+      return Boolean(value);
     } }).catch((e) => { if (!over) setTrouble(troubleOf(e)); });
     return stop;
   }, []);

@@ -20,7 +20,7 @@ export function SitesPage({ app }) {
       <span class="quiet">${s.taken ? say("field.site_line", { devices: say("field.devices", { n: s.devices }), due: say("field.due_count", { n: s.due }) }) : say(app.state.busy ? "field.fetching_site" : "field.not_taken")}</span></a></li>`)}</ul>
       ${sites.length === 0 && html`<p class="hint pad">${say(app.state.line === "signed-out" ? "field.no_sites_signed_out" : app.state.busy ? "field.fetching" : "field.no_sites_hint")}</p>`}
       ${sites.length > 0 && html`<${AlongLine} app=${app} />`}
-      ${app.state.me.name && html`<p class="who"><span>${say("field.signed_as", { name: app.state.me.name })}</span><button type="button" onClick=${app.somebodyElse}>${say("field.somebody_else")}</button></p>`}
+      ${app.state.me.name && html`<p class="who"><span>${say("field.signed_as", { name: app.state.me.name })}</span><a href="#/people">${say("field.somebody_else")}</a></p>`}
     </main><${Foot} app=${app} />`;
 }
 

@@ -10,6 +10,7 @@ import { caring } from "./caring.mjs";
 import { JudgeVersion } from "./judge.mjs";
 import { makeRecord } from "./making.mjs";
 import { newId } from "./record-line.mjs";
+import { peopleHere } from "./people.mjs";
 import { Page } from "./pages.mjs";
 import { parseRoute, toDevice } from "./route.mjs";
 import { sending } from "./sending.mjs";
@@ -62,13 +63,13 @@ async function start() {
     clearTimeout(sendTimer);
     sendTimer = setTimeout(() => { others.tell(); sender.kick(); }, AFTER_SAVE);
   };
-  const app = fieldApp({ tray, say, draw, go, now, make: makeRecord, newId: () => newId(now()), judgeVersion: JudgeVersion, soon: (fn, ms) => setTimeout(fn, ms), sendNow: () => sender.kick(), keepSending: sendSoon, takeOver: () => sync.takeOver(), leave: (path) => location.assign(path) });
+  const app = fieldApp({ tray, say, draw, go, now, make: makeRecord, newId: () => newId(now()), judgeVersion: JudgeVersion, soon: (fn, ms) => setTimeout(fn, ms), sendNow: () => sender.kick(), keepSending: sendSoon, takeOver: () => sync.takeOver(), entryOf: (id) => sync.entry(id), leave: (path) => location.assign(path) });
   const sync = syncing({ state: app.state, tray, along, net: exchange({ fetch: (...a) => fetch(...a), now }), now, newId: () => newId(now()), changed: app.changed });
   const sender = sending({ run: () => alone(async () => { const done = await sync.run(); others.tell(); return done; }), later: (fn, ms) => setTimeout(fn, ms), cancel: clearTimeout, random: Math.random });
   const version = versions({ container: navigator.serviceWorker, calm: () => isCalm(app.state), session: sessionStorage, now,
     offered: (yes) => { app.state.newer = yes; app.changed(); }, load: () => location.reload() });
   const others = otherPages(async () => { await readKept(app.state, tray, along); app.changed(); });
-  Object.assign(app, { takeNewer: version.take }, caring({ app, tray, now, make: makeRecord, choose: sync.choose, send: () => sender.kick(), download }));
+  Object.assign(app, { takeNewer: version.take }, peopleHere(app, { tray, now }), caring({ app, tray, now, make: makeRecord, choose: sync.choose, send: () => sender.kick(), download }));
   app.state.insecure = !globalThis.isSecureContext;
   const onRoute = () => {
     app.route(parseRoute(location.hash, location.pathname), keepSaved);
@@ -129,7 +130,7 @@ async function download(name, text) {
 }
 
 async function readKept(state, tray, along) {
-  for (const name of ["installation", "token", "person", "name", "logs", "instrument", "unfolded", "offset", "last_added", "rounds", "chosen", "former", "backed_up"]) state.me[name] = await tray.me(name);
+  for (const name of ["installation", "token", "person", "name", "logs", "instrument", "unfolded", "offset", "last_added", "rounds", "chosen", "former", "backed_up", "people"]) state.me[name] = await tray.me(name);
   state.offset = state.me.offset ?? 0;
   const sites = await along.sites();
   state.sites.clear();

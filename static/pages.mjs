@@ -7,7 +7,9 @@ import { DarkPage } from "./field-dark.mjs";
 import { DevicePage } from "./field-device.mjs";
 import { DevicesPage } from "./field-devices.mjs";
 import { FindPage, UnknownTagPage } from "./field-find.mjs";
+import { HandPage, TakePage } from "./field-hand.mjs";
 import { LostPage } from "./field-parts.mjs";
+import { PeoplePage } from "./field-people.mjs";
 import { AddPage, BindPage, LabelPage, MovePage } from "./field-register.mjs";
 import { ReplacePage } from "./field-replace.mjs";
 import { RoomPage, RoundPage } from "./field-round.mjs";
@@ -15,8 +17,8 @@ import { SitesPage } from "./field-sites.mjs";
 import { TestPage } from "./field-test.mjs";
 import { TrayPage } from "./field-tray.mjs";
 
-const ALONE = { find: FindPage, along: AlongPage, tray: TrayPage };
-const OF_SITE = { add: AddPage, bind: BindPage, round: RoundPage };
+const ALONE = { find: FindPage, along: AlongPage, tray: TrayPage, people: PeoplePage };
+const OF_SITE = { add: AddPage, bind: BindPage, round: RoundPage, hand: HandPage, take: TakePage };
 const OF_DEVICE = { label: LabelPage, move: MovePage, replace: ReplacePage, dark: DarkPage, room: RoomPage };
 
 /** The page of a route; the app is read anew at every drawing. */

@@ -2,7 +2,7 @@
 // /t/TAG becomes). Pure.
 
 /** Pages of work beside a test, with what they are about: a site's code, a device or an entry. */
-const WORK = new Set(["add", "bind", "label", "move", "replace", "dark", "correct", "room", "round"]);
+const WORK = new Set(["add", "bind", "label", "move", "replace", "dark", "correct", "room", "round", "hand", "take"]);
 
 /** parseRoute(hash, path) → {page, …}; the path counts only when it is a label's address and the hash says nothing. */
 export function parseRoute(hash, path = "") {
@@ -18,7 +18,7 @@ export function parseRoute(hash, path = "") {
   if (page === "site" && a) return { page, code: a };
   if (page === "device" && a) return { page, device: a };
   if (page === "test" && a && b) return { page, device: a, task: b };
-  if (page === "tray" || page === "find" || page === "along") return { page };
+  if (page === "tray" || page === "find" || page === "along" || page === "people") return { page };
   if (WORK.has(page) && a) return { page, a, b };
   if (!h && labelled) return { page: "tag", tag: bareTag(labelled[1]) };
   return { page: "sites" };

@@ -9,7 +9,7 @@ const KEEP_PHOTOS = 14 * 86_400_000; // sent photos stay this long
 const TIDY = 60 * 60_000;
 
 /**
- * syncing({state, tray, along, net, now, newId, changed}) → {run, takeOver, choose}; run() gives {state, retryAfter} for
+ * syncing({state, tray, along, net, now, newId, changed}) → {run, takeOver, choose, entry}; run() gives {state, retryAfter} for
  * sending.mjs.
  * state is the app's: me, sites, records, line, said (the server's own sentence about trouble), offset, busy.
  */
@@ -38,12 +38,17 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
     return answer;
   }
 
-  async function enrol() {
+  /** Known to the server as this phone. wanted: somebody signed in to make entries here; else a token is only renewed, and who works stays. */
+  async function enrol({ wanted = false } = {}) {
     if (!state.me.installation) await remember("installation", newId());
     const answer = note(await net.enrol(state.me.installation));
     if (!answer.ok) return answer;
-    await remember("person", answer.body.person.id);
-    await remember("name", answer.body.person.name);
+    const { id, name } = answer.body.person;
+    await remember("people", { ...state.me.people, [id]: { ...state.me.people?.[id], name } });
+    if (wanted || !state.me.people[state.me.person]) {
+      await tray.become(id, name);
+      Object.assign(state.me, { person: id, name });
+    }
     await remember("logs", answer.body.logs);
     await remember("token", answer.body.token);
     return answer;
@@ -87,7 +92,7 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
 
   /** Takes whoever is signed in to this browser as the one who makes entries from now on. */
   async function takeOver() {
-    const answer = await enrol();
+    const answer = await enrol({ wanted: true });
     state.line = answer.ok ? state.line : answer.status === 401 ? "signed-out" : answer.status === 0 ? "unreached" : "trouble";
     changed();
     return answer.ok;
@@ -124,5 +129,11 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
     return { state: line, retryAfter: sent.retryAfter };
   }
 
-  return { run, takeOver, choose };
+  /** An entry this phone did not make; null where it cannot be had just now. */
+  async function entry(id) {
+    const answer = await withToken((token) => net.entry(token, id));
+    return answer.ok ? answer.body : null;
+  }
+
+  return { run, takeOver, choose, entry };
 }

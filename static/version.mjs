@@ -5,7 +5,7 @@ const TAKEN = "tripwell-taken"; // the moment this tab last loads for a new vers
 const CALM = 10_000; // a second load sooner than this would be a circle
 
 /** Pages on which nothing is being filled in; every other page counts as an open form. */
-const CALM_PAGES = new Set(["sites", "site", "device", "tray", "tag", "along", "find"]);
+const CALM_PAGES = new Set(["sites", "site", "device", "tray", "tag", "along", "find", "hand"]);
 export const isCalm = (state) => CALM_PAGES.has(state.route.page) && !state.saving;
 
 /**

@@ -40,6 +40,9 @@ export function walkCounts(devices, today, skipped) {
 export const countsOf = (site, skipped) => site.once(`counts ${[...skipped].join()}`, () => walkCounts(site.devices, site.today, skipped));
 export const backOf = (site) => site.once("back", () => toReturn(site.devices, site.today));
 
+/** Devices the walk still leads to, for any task. */
+export const leftOf = (site, skipped) => site.devices.filter((d) => dueNow(d, site.today).some((x) => walksTo(d, x.task, site.today, skipped)));
+
 /** The devices of the room a device is in, in walking order. */
 export function roomMates(site, device) {
   const room = roomOf(site.places.get(device.place));

@@ -23,6 +23,14 @@ export function walking(app, { now, siteView }) {
   const walked = (site) => roundsOf(site).find((r) => r.id === roundOf(site).id);
   const passed = (site) => roundOf(site).passed ?? [];
 
+  /** Not walked to here: passed over, or handed to a colleague. */
+  const skipped = (site) => new Set([...roundOf(site).skipped, ...(roundOf(site).given ?? [])]);
+  /** Within what a colleague handed over the walk stays in it. */
+  function walkOf(site, device) {
+    const taken = new Set(roundOf(site).taken);
+    return taken.has(device) ? site.devices.filter((d) => taken.has(d.id)) : site.devices;
+  }
+
   return {
     roundsOf, roundOf, passed, walking: walked,
     /** Those of all sites on the phone. */
@@ -32,7 +40,7 @@ export function walking(app, { now, siteView }) {
     placeOnWalk(site, stop, corrects) {
       const round = walked(site), at = round ? round.stops.findIndex((s) => s.device === stop.device && s.task === stop.task) : -1;
       if (at >= 0 && !corrects) return { round: { n: at + 1, of: round.stops.length }, next: nextStop(round.stops, stop, passed(site)) ?? null, onRound: round };
-      const next = corrects ? null : nextInWalk(site.devices, stop.device, stop.task, site.today, new Set(roundOf(site).skipped));
+      const next = corrects ? null : nextInWalk(walkOf(site, stop.device), stop.device, stop.task, site.today, skipped(site));
       return { round: site.once(`place ${stop.device} ${stop.task}`, () => placeInRound(site.devices, stop.device, stop.task, site.today)), next: next && { device: next.id, task: stop.task } };
     },
     /** Passes a stop of the round over; reason null takes it back. */
@@ -40,7 +48,11 @@ export function walking(app, { now, siteView }) {
       const rest = passed(site).filter((p) => !(p.device === device && p.task === task));
       setRound(site, { passed: reason ? [...rest, { device, task, reason }] : rest });
     },
-    skipped: (site) => new Set(roundOf(site).skipped),
+    skipped, taken: (site) => new Set(roundOf(site).taken ?? []),
+    /** A colleague walks these from now on; an empty list takes them back. */
+    giveAway: (site, ids) => setRound(site, { given: ids.length === 0 ? [] : [...new Set([...(roundOf(site).given ?? []), ...ids])], taken: (roundOf(site).taken ?? []).filter((id) => !ids.includes(id)) }),
+    /** What a colleague handed over is walked here. */
+    takeOn: (site, ids) => setRound(site, { taken: [...new Set([...(roundOf(site).taken ?? []), ...ids])], given: (roundOf(site).given ?? []).filter((id) => !ids.includes(id)), skipped: roundOf(site).skipped.filter((id) => !ids.includes(id)) }),
     skip: (site, device) => setRound(site, { skipped: [...new Set([...roundOf(site).skipped, device.id])] }),
     unskip: (site) => setRound(site, { skipped: [] }),
     /** works null takes it back. */

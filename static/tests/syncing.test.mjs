@@ -13,7 +13,7 @@ function phone(net, records = []) {
   const tray = { setMe: async (k, v) => { me[k] = v; }, waiting: async () => records.filter((r) => r.state === "waiting"), records: async () => records.filter((r) => r.state !== "kept"),
     settle: async (i, receipt) => Object.assign(records.find((r) => r.id === i), { state: "sent", receipt }), refuse: async () => {}, forget: async () => {}, waitingPhotos: async () => [], forgetPhotos: async () => {}, sawClock: async () => {},
     resend: async (lost) => { const rows = records.filter((r) => ["sent", "kept"].includes(r.state) && lost(r)); for (const r of rows) r.state = "waiting"; return rows.length; },
-    renew: async (to) => { Object.assign(me, to); },
+    become: async (person, name) => { Object.assign(me, { person, name }); }, renew: async (to) => { Object.assign(me, to); },
     cover: async (ids) => ids.forEach((i) => { covered.push(i); records.find((r) => r.id === i).state = "kept"; }) };
   const along = { put: async () => {}, mark: async (row) => { marked.push(row.log); }, drop: async (log) => { dropped.push(log); } };
   let n = 0;

@@ -25,8 +25,9 @@ type formPage struct {
 	WrongHead              string
 	Wrong                  []link
 	Action, Submit, Cancel string
-	Grave                  bool // the button takes something away
-	Upload                 bool // it may carry a file
+	Said                   string // what was just done
+	Grave                  bool   // the button takes something away
+	Upload                 bool   // it may carry a file
 	Hidden                 []hidden
 	Groups                 []fieldGroup
 }

@@ -139,6 +139,9 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 		"results_preview.html": resultsSample(),
 		"people.html": peoplePage{Frame: frameOf("People", "people"), Heading: "3 people may sign in.", People: []peopleRow{
 			{Href: "/people/1", Name: "Manager 1", Role: "Manager", Sites: "All sites", Contact: "ext. 401", Active: true}, {Href: "/people/2", Name: "Crew 1", Role: "Crew", Sites: "Kiln Lane Day Clinic, Ottermoor Swim Hall", Active: true}, {Href: "/people/3", Name: "Auditor 2", Role: "Auditor", Sites: "Kiln Lane Day Clinic"}}},
+		"reminders.html": reminderPage{Frame: frameOf("Calendar and mail", "dates"), Heading: "Calendar and mail", Under: "What falls due.", Feed: "https://tests.example/calendar/secret.ics", Made: "You have an address.", Action: "/reminders/calendar", Submit: "Make a new address", Revoke: &link{Href: "/reminders/calendar/revoke", Text: "Revoke it"},
+			NoMail: "No mail server is set up.", Mail: &link{Href: "/mail", Text: "Mail server"}, Said: []notice{{Shape: "fail", Text: "The digest was not sent."}}, Digest: formPage{Action: "/reminders/digest", Submit: "Save", WrongHead: "1 thing to mend", Wrong: []link{{Href: "#f-to", Text: "Write one mail address."}},
+				Hidden: []hidden{{"record", "1"}}, Groups: []fieldGroup{{Fields: []field{{Name: "to", Label: "To this address", Type: "email"}, {Name: "every", Label: "How often", Options: choices("", "", "Not at all")}}}}}},
 		"rounds.html": roundsPage{Frame: frameOf("Rounds", "rounds"), Heading: "1 round waits to be accepted.", Under: "2 rounds are open.", NewHref: "/rounds/new", None: "No round yet.",
 			Groups: []roundGroup{{"Waiting to be accepted", []roundRow{{Href: "/rounds/1", Name: "Button test, Tue 1 Dec", Site: "Kiln Lane Day Clinic", Who: "Crew 1", Said: "38 done, 2 to come back to", Time: "1 h 5 min", State: mark{"watch", "Ended, not accepted"}, Done: 38, Of: 41}}}}},
 		"round.html": roundSample(pass, fail),

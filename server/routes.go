@@ -48,6 +48,9 @@ func publicRoutes() []route {
 		{get, "/field/*", anyone, (*Server).fieldShow, 0},
 		{get, "/sw.js", anyone, (*Server).workerShow, 0},
 
+		// a person's calendar, by its secret address
+		{get, "/calendar/:token", anyone, (*Server).feedShow, 0},
+
 		// exchange
 		{post, "/exchange/enrol", crew | manager, (*Server).exchangeEnrol, 0},
 		{post, "/exchange/renew", phone, (*Server).exchangeRenew, 0},
@@ -80,6 +83,10 @@ func publicRoutes() []route {
 		{get, "/dates", signed, (*Server).datesShow, 0},
 		{get, "/rounds", signed, (*Server).roundsShow, 0},
 		{get, "/rounds/:round", signed, (*Server).roundShow, 0},
+		{get, "/reminders", signed, (*Server).remindersShow, 0},
+		{post, "/reminders/calendar", signed, (*Server).feedMake, 0},
+		{post, "/reminders/calendar/revoke", signed, (*Server).feedRevoke, 0},
+		{post, "/reminders/digest", signed, (*Server).digestUpdate, 0},
 		{get, "/set-up", signed, (*Server).setupShow, 0},
 		{get, "/plans", signed, (*Server).plansShow, 0},
 		{get, "/plans/:plan", signed, (*Server).planShow, 0},
@@ -170,6 +177,8 @@ func publicRoutes() []route {
 		{get, "/import/:upload", manager, (*Server).importShow, 0},
 		{post, "/import/:upload", manager, (*Server).importMend, mappingLimit},
 		{get, "/import/:upload/:file", manager, (*Server).importFile, 0},
+		{get, "/mail", manager, (*Server).mailEdit, 0},
+		{post, "/mail", manager, (*Server).mailUpdate, 0},
 		{get, "/kept-aside", manager, (*Server).asideShow, 0},
 		{get, "/results", manager, (*Server).resultsNew, 0},
 		{post, "/results", manager, (*Server).resultsTake, uploadBytes + mappingLimit},

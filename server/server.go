@@ -115,6 +115,7 @@ func (s *Server) Serve(ctx context.Context, public, owner net.Listener) error {
 	var working sync.WaitGroup
 	working.Go(func() { s.signHeads(beside) })
 	ended := make(chan error, len(servers))
+	go s.remind(ctx)
 	for srv, l := range servers {
 		go func() { ended <- srv.Serve(l) }()
 	}

@@ -28,6 +28,8 @@
 //	  dir_session SHA-256 of token 32   → JSON
 //	  dir_token   SHA-256 of token 32   → JSON
 //	  dir_inst    installation 16       → SHA-256 of its token 32
+//	  dir_feed    SHA-256 of token 32   → JSON: whose calendar
+//	  dir_digest  person 16             → JSON: which digest, and what became of the last
 //	  dir_setting name                  → value
 //
 // The keys of rec, log and quar arrive in order and their pages are filled to 95 %.
@@ -56,17 +58,19 @@ var (
 	bktGrant  = []byte("grant")
 	bktTaken  = []byte("taken")
 
-	bktPerson  = []byte("dir_person")
-	bktLink    = []byte("dir_link")
-	bktSession = []byte("dir_session")
-	bktToken   = []byte("dir_token")
-	bktInst    = []byte("dir_inst")
-	bktSetting = []byte("dir_setting")
+	bktPerson   = []byte("dir_person")
+	bktLink     = []byte("dir_link")
+	bktSession  = []byte("dir_session")
+	bktToken    = []byte("dir_token")
+	bktInst     = []byte("dir_inst")
+	bktCalendar = []byte("dir_feed")
+	bktDigest   = []byte("dir_digest")
+	bktSetting  = []byte("dir_setting")
 )
 
 var bookBuckets = [][]byte{bktRec, bktID, bktLog, bktLogs, bktNames, bktQuar, bktQuarSHA, bktHeads, bktDiffer, bktMeta}
 var countBuckets = [][]byte{bktCount, bktReused, bktGrant, bktTaken}
-var directoryBuckets = [][]byte{bktPerson, bktLink, bktSession, bktToken, bktInst, bktSetting}
+var directoryBuckets = [][]byte{bktPerson, bktLink, bktSession, bktToken, bktInst, bktCalendar, bktDigest, bktSetting}
 
 // Names in meta and dir_setting.
 var (
@@ -80,6 +84,7 @@ var (
 	settingURL = []byte("url")
 
 	settingBackup = []byte("backed_up")
+	settingMail   = []byte("mail")
 )
 
 // formatVersion of the file; a newer one is refused.

@@ -52,6 +52,8 @@ var onlyIn = map[string][]string{
 	"codeberg.org/go-pdf/fpdf":       {"export", "export/paper"},
 	"github.com/alecthomas/kong":     {"cmd/tripwell"},
 	"github.com/schollz/progressbar": {"cmd/tripwell"},
+	"github.com/arran4/golang-ical":  {"export/calendar"},
+	"github.com/wneessen/go-mail":    {"server"},
 	"github.com/chromedp":            {"chromium"},
 	"tripwell/chromium":              {}, // tests only
 }

@@ -16,11 +16,11 @@ export function HandPage({ app, site }) {
   const texts = codesOf(site.snapshot.site.code, ids);
   const done = () => { app.giveAway(site, ids); app.go(toRound(site)); };
   return html`<${Where} app=${app} title=${say("walk.hand_title", { n: ids.length })} context=${site.snapshot.site.name} back=${toRound(site)} />
-    <main><p class="hint pad">${say("walk.hand_hint")}</p>
-      ${ids.length > 0 && html`<${Code} app=${app} text=${texts[at]} label=${say("walk.hand_code", { n: at + 1, of: texts.length })} />`}
-      ${texts.length > 1 && html`<p class="pad">${say("walk.hand_code", { n: at + 1, of: texts.length })}</p><div class="pair pad">
+    <main>${ids.length > 0 && html`<${Code} app=${app} text=${texts[at]} label=${say("walk.hand_code", { n: at + 1, of: texts.length })} />`}
+      ${texts.length > 1 && html`<p class="pad" role="status"><b>${say("walk.hand_code", { n: at + 1, of: texts.length })}</b></p><div class="pair pad">
         <button type="button" disabled=${at === 0} onClick=${() => setAt(at - 1)}>${say("walk.code_before")}</button>
         <button type="button" disabled=${at === texts.length - 1} onClick=${() => setAt(at + 1)}>${say("walk.code_after")}</button></div>`}
+      <p class="hint pad">${say("walk.hand_hint")}</p>
     </main><${Foot} app=${app}>${ids.length > 0 && html`<button type="button" class="big go" onClick=${done}>${say("walk.hand_done")}</button>`}<//>`;
 }
 
@@ -56,7 +56,7 @@ export function TakePage({ app, site }) {
   return html`<${Where} app=${app} title=${say("walk.take_title")} context=${site.snapshot.site.name} back=${toRound(site)} />
     <main>${whole
       ? html`<p class="pad" role="status"><b>${say("walk.took", { n: found.ids.length })}</b></p>${found.unknown > 0 && html`<p class="bad pad">${say("walk.took_unknown", { n: found.unknown })}</p>`}`
-      : html`<p class="hint pad">${read ? say("walk.take_more", { n: Object.keys(read.parts).length, of: read.of }) : say("walk.take_hint")}</p>
-        <div class="pad"><${Camera} app=${app} key=${Object.keys(read?.parts ?? {}).join()} read=${take} onTag=${add} onClose=${() => app.go(toRound(site))} /></div>`}
+      : html`${read && html`<p class="pad" role="status"><b>${say("walk.take_more", { n: Object.keys(read.parts).length, of: read.of })}</b></p>`}
+        <div class="pad"><${Camera} app=${app} key=${Object.keys(read?.parts ?? {}).join()} read=${take} hold="walk.take_hint" onTag=${add} onClose=${() => app.go(toRound(site))} /></div>`}
     </main><${Foot} app=${app}>${whole && html`<a class="big go" href=${toSite(site.snapshot.site.code)}>${say("walk.take_go")}</a>`}<//>`;
 }

@@ -31,7 +31,7 @@ const labelIn = (text) => {
 };
 
 /** The camera's picture until a code of ours is seen; what goes wrong is said in its place. read(text) → {value} or {error}. */
-export function Camera({ app, onTag, onClose, read = labelIn }) {
+export function Camera({ app, onTag, onClose, read = labelIn, hold = "scan.hold" }) {
   const { say } = app;
   const video = useRef(null), live = useRef(null);
   const [trouble, setTrouble] = useState(null);
@@ -49,7 +49,7 @@ export function Camera({ app, onTag, onClose, read = labelIn }) {
   const switchLamp = () => live.current?.getVideoTracks()[0].applyConstraints({ advanced: [{ torch: !lamp }] }).then(() => setLamp(!lamp), () => setLamp(null));
   return html`<div class="camera">
     <video ref=${video} muted playsinline aria-label=${say("scan.picture")}></video>
-    <p role="status" class=${trouble ? "bad" : "hint"}>${say(trouble ?? "scan.hold")}</p>
+    <p role="status" class=${trouble ? "bad" : "hint"}>${say(trouble ?? hold)}</p>
     <div class="pair">${lamp !== null && html`<button type="button" aria-pressed=${String(lamp)} onClick=${switchLamp}>${say("scan.lamp")}</button>`}
       <button type="button" onClick=${onClose}>${say("scan.close")}</button></div>
   </div>`;

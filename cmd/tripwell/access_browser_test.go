@@ -113,6 +113,9 @@ const smallTargets = `[...document.querySelectorAll("a[href], button, input, sel
 	return own.width > 1 && own.height > 0 && getComputedStyle(e).visibility !== "hidden" && !inLine && (Math.max(r.height, own.height) < 47.5 || Math.max(r.width, own.width) < 24);
 }).map((e) => e.outerHTML.slice(0, 110) + " " + Math.round(e.getBoundingClientRect().width) + "×" + Math.round(e.getBoundingClientRect().height)).join("\n")`
 
+// tooWide names what makes a page wider than the window, "" where nothing does.
+const tooWide = `document.documentElement.scrollWidth <= innerWidth ? "" : [...document.querySelectorAll("main *, header *, footer *")].filter((e) => e.getBoundingClientRect().right > innerWidth + 1).slice(-3).map((e) => e.outerHTML.slice(0, 140)).join("\n")`
+
 // Every screen of the phone, its sheets opened, with targets a gloved thumb hits.
 func TestAccess_PhoneScreensBreakNoRule(t *testing.T) {
 	chromium.Need(t)
@@ -131,13 +134,42 @@ func TestAccess_PhoneScreensBreakNoRule(t *testing.T) {
 	for _, task := range []string{"button", "instrument"} {
 		screens = append(screens, "#/test/"+device+"/"+task)
 	}
-	for _, screen := range screens {
+	visit := func(screen string) {
+		t.Helper()
 		phone.Until(screen, `(location.hash = `+chromium.Quote(screen)+`, document.querySelector("header.where h1"))`)
 		time.Sleep(150 * time.Millisecond) // lists follow in slices
 		phone.JS(`document.querySelectorAll("details").forEach((d) => { d.open = true; })`)
+	}
+	for _, screen := range screens {
+		visit(screen)
 		checkBoth(phone, axe, screen)
+		if wide, _ := phone.JS(tooWide).(string); wide != "" {
+			t.Errorf("%s is wider than the phone:\n%s", screen, wide)
+		}
 		if small, _ := phone.JS(smallTargets).(string); small != "" {
 			t.Errorf("%s has targets lower than 48 px:\n%s", screen, small)
 		}
+	}
+
+	// In Spanish on the narrowest phone, and with the text twice as large: nothing runs out of the page, no word is missing.
+	if _, err := chromedp.Call(phone.Ctx, emulation.SetUserAgentOverride, emulation.SetUserAgentOverrideParams{UserAgent: phone.Value("navigator.userAgent"), AcceptLanguage: "es"}); err != nil {
+		t.Fatal(err)
+	}
+	phone.Do(chromedp.EmulateViewport(360, 740))
+	phone.Reload()
+	phone.Until("Spanish", `document.documentElement.lang === "es" && document.querySelector("header.where h1")`)
+	for _, screen := range screens {
+		visit(screen)
+		phone.Picture("es_" + strings.NewReplacer("#", "", "/", "-").Replace(screen))
+		if key, _ := phone.JS(`document.body.innerText.match(/\b(?:field|phone|walk|register|scan|dark|replace|correct|photo|caution|reading|option|step|verdict|limit)\.[a-z_.]+/)?.[0] ?? ""`).(string); key != "" {
+			t.Errorf("%s says %s, which no catalogue has", screen, key)
+		}
+		for _, size := range []string{"", "200%"} {
+			phone.JS(`document.documentElement.style.fontSize = ` + chromium.Quote(size))
+			if wide, _ := phone.JS(tooWide).(string); wide != "" {
+				t.Errorf("%s in Spanish, text %s, is wider than the phone:\n%s", screen, size, wide)
+			}
+		}
+		phone.JS(`document.documentElement.style.fontSize = ""`)
 	}
 }

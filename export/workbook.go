@@ -85,6 +85,7 @@ type LimitLine struct {
 	Revision    int
 	InForce     forms.Day
 	ID, Reading string
+	Name        string // what forms call the reading, where it is a check an organisation added
 	Limit       string // in words: "at most 1 ohm"
 	Level       string
 	When        string

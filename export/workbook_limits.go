@@ -8,15 +8,16 @@ import (
 	"tripwell/static"
 )
 
-// limitLines puts every limit of every revision in words.
-func limitLines(words *static.Words, sets []*forms.LimitSet) []LimitLine {
+// limitLines puts every limit of every revision in words; asked are the forms, which name the checks of an organisation.
+func limitLines(words *static.Words, sets []*forms.LimitSet, asked []*forms.Form) []LimitLine {
 	b := &book{words: words, named: map[string]string{}}
 	var lines []LimitLine
 	for _, set := range sets {
+		own := forms.OwnNamesUnder(set, asked)
 		for i := range set.Limits {
 			l := &set.Limits[i]
 			lines = append(lines, LimitLine{
-				Set: set.ID, Revision: set.Revision, InForce: set.InForce, ID: l.ID, Reading: l.Reading + l.Field,
+				Set: set.ID, Revision: set.Revision, InForce: set.InForce, ID: l.ID, Reading: l.Reading + l.Field, Name: own[l.Reading],
 				Limit: b.limitText(l), When: b.whenText(l.When), Level: l.Level, Source: l.Source, Status: l.Status,
 			})
 		}

@@ -1,6 +1,7 @@
 package export
 
 import (
+	"cmp"
 	"strings"
 
 	"tripwell/forms"
@@ -145,7 +146,7 @@ func (b *book) limits() error {
 		return err
 	}
 	for _, l := range b.src.Limits {
-		err := s.row().text(b.word("limit_set", l.Set)).count(int64(l.Revision)).day(l.InForce).text(l.ID).text(b.readingName(l.Reading)).
+		err := s.row().text(b.word("limit_set", l.Set)).count(int64(l.Revision)).day(l.InForce).text(l.ID).text(cmp.Or(l.Name, b.readingName(l.Reading))).
 			text(l.Limit).text(b.word("sheet.level", l.Level)).text(l.When).text(l.Source).text(l.Status).end()
 		if err != nil {
 			return err

@@ -316,7 +316,7 @@ func TestWorkbook_ShippedLimitsInWords(t *testing.T) {
 		t.Fatal(err)
 	}
 	shipped := forms.Shipped().LimitSets
-	lines := limitLines(words, shipped)
+	lines := limitLines(words, shipped, nil)
 	n := 0
 	for _, set := range shipped {
 		n += len(set.Limits)

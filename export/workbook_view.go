@@ -83,7 +83,11 @@ func FromView(v *store.View, ask WorkbookAsk) (WorkbookSource, error) {
 	if err != nil {
 		return src, err
 	}
-	src.Limits = limitLines(words, sets)
+	asked, err := v.Forms()
+	if err != nil {
+		return src, err
+	}
+	src.Limits = limitLines(words, sets, asked)
 	src.Devices = deviceLines(v, src.Sites)
 	src.Due = dueLines(v, src.Sites, ask.Now)
 	reader := entryReader{view: v, ask: ask, sets: map[string]*forms.LimitSet{}, forms: map[string]*forms.Form{}}

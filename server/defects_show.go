@@ -189,6 +189,9 @@ func (s *Server) causeName(d *store.Defect) string {
 	if key := "office.defect.cause." + d.Cause; k.words.Has(key) {
 		return k.say(key)
 	}
+	if d.OwnName != "" {
+		return d.OwnName
+	}
 	if _, known := forms.CodeOf(d.Cause); known {
 		return k.reading(d.Cause)
 	}

@@ -200,6 +200,9 @@ func b2i(b bool) int {
 // tableReadings are the readings a device's entries are compared by, in the order of the work.
 var tableReadings = []string{"trip_current_ma", "trip_time_ms", "wiring", "ground_ohm", "retention_g"}
 
+// tableOwn is the most checks of the organisation's own that the table gives columns of their own.
+const tableOwn = 3
+
 // entryTable fills the entries with the columns at least one of them has a reading for.
 func (s *Server) entryTable(v *store.View, entries []store.Entry, instruments map[string]string, view *devicePage) {
 	k := s.ink()
@@ -220,6 +223,10 @@ func (s *Server) entryTable(v *store.View, entries []store.Entry, instruments ma
 			view.Columns = append(view.Columns, column{Text: k.reading(code), Num: unitOf(code) != ""})
 		}
 	}
+	for _, name := range s.ownCells(entries, cells) {
+		codes = append(codes, name)
+		view.Columns = append(view.Columns, column{Text: name})
+	}
 	for i, e := range entries {
 		row := entryRow{Href: "/entries/" + e.ID, Day: k.day(e.Day), Task: k.named("task", e.Task), Verdict: k.verdict(e.Verdict.Result), By: s.testedBy(v, e)}
 		if name := instruments[e.Body.Given.Instrument]; name != "" {
@@ -236,6 +243,24 @@ func (s *Server) entryTable(v *store.View, entries []store.Entry, instruments ma
 		}
 		view.Entries = append(view.Entries, row)
 	}
+}
+
+// ownCells adds what entries say to the checks of the organisation's own, by the name their form gave each, since forms may
+// use one code for two checks; it gives the names in order.
+func (s *Server) ownCells(entries []store.Entry, cells []map[string]string) (names []string) {
+	for i, e := range entries {
+		for _, code := range sortedKeys(e.OwnNames) {
+			text, name := s.tableCell(e, code), e.OwnNames[code]
+			if text == "" {
+				continue
+			}
+			if cells[i][name] = text; !slices.Contains(names, name) {
+				names = append(names, name)
+			}
+		}
+	}
+	slices.Sort(names)
+	return names[:min(len(names), tableOwn)]
 }
 
 // tableCell writes one reading of an entry for the table; a trip time stands with the current it was measured at. Of a

@@ -1,6 +1,8 @@
 package server
 
 import (
+	"maps"
+	"slices"
 	"strings"
 
 	"github.com/labstack/echo/v4"
@@ -23,24 +25,24 @@ const (
 )
 
 func (s *Server) entryCorrectAsk(c echo.Context) error {
-	e, codes, site, err := s.correctable(c)
+	e, asked, site, err := s.correctable(c)
 	if err != nil {
 		return err
 	}
 	values := map[string]string{}
-	for _, code := range codes {
+	for _, code := range asked.codes {
 		values[answerPrefix+code], values[howPrefix+code] = answerTyped(e.Body.Readings[code])
 	}
 	f, err := s.editForm(values, nil)
 	if err != nil {
 		return err
 	}
-	return s.formBack(c, f, s.correctForm(c, e, codes, site))
+	return s.formBack(c, f, s.correctForm(c, e, asked, site))
 }
 
 // entryCorrect keeps full new readings with the reason. The first version stays, and is shown beside the correction.
 func (s *Server) entryCorrect(c echo.Context) error {
-	e, codes, site, err := s.correctable(c)
+	e, asked, site, err := s.correctable(c)
 	if err != nil {
 		return err
 	}
@@ -51,11 +53,11 @@ func (s *Server) entryCorrect(c echo.Context) error {
 	record := f.id(recordField)
 	reason := f.needed("reason", s.words.Say("office.entry.correct_reason"), 500)
 	readings, changed := map[string]forms.Reading{}, false
-	for _, code := range codes {
+	for _, code := range asked.codes {
 		r, there := e.Body.Readings[code]
 		if f.changed(answerPrefix+code) || f.changed(howPrefix+code) {
 			changed = true
-			r, there = s.answerOf(f, code)
+			r, there = s.answerOf(f, code, asked.answers(code))
 		}
 		if there {
 			readings[code] = r
@@ -77,11 +79,47 @@ func (s *Server) entryCorrect(c echo.Context) error {
 			return err
 		}
 	}
-	return s.formBack(c, f, s.correctForm(c, e, codes, site))
+	return s.formBack(c, f, s.correctForm(c, e, asked, site))
+}
+
+// correctAsked is what a correction asks: readings by code, and of checks an organisation added what its form says.
+type correctAsked struct {
+	codes   []string
+	own     map[string]string
+	options map[string][]string
+}
+
+// answers lists what a question may be answered with.
+func (a correctAsked) answers(code string) []string {
+	if options := a.options[code]; len(options) > 0 {
+		return options
+	}
+	kind, _ := forms.CodeOf(code)
+	return kind.Options
+}
+
+// ownOf takes what a form says of its own checks. An answer that an entry already has stays one, also where a later
+// revision of the form no longer offers it.
+func (a *correctAsked) ownOf(form *forms.Form, e store.Entry) {
+	a.own, a.options = map[string]string{}, map[string][]string{}
+	maps.Copy(a.own, forms.OwnNames(form))
+	maps.Copy(a.own, e.OwnNames)
+	for _, step := range form.Steps {
+		for _, ask := range step.Asks {
+			if !forms.IsOwn(ask.Reading) || len(ask.Options) == 0 {
+				continue
+			}
+			options := slices.Clone(ask.Options)
+			if has, ok := e.Body.Readings[ask.Reading].Value.(string); ok && has != "" && !slices.Contains(options, has) {
+				options = append(options, has)
+			}
+			a.options[ask.Reading] = options
+		}
+	}
 }
 
 // correctable reads an entry that may be corrected, and the readings its form asks for beside those it has.
-func (s *Server) correctable(c echo.Context) (e store.Entry, codes []string, site store.Site, err error) {
+func (s *Server) correctable(c echo.Context) (e store.Entry, asked correctAsked, site store.Site, err error) {
 	err = s.store.View(scope(c), func(v *store.View) error {
 		if e, err = v.Entry(c.Param("entry")); err != nil {
 			return err
@@ -96,26 +134,27 @@ func (s *Server) correctable(c echo.Context) (e store.Entry, codes []string, sit
 		if err != nil {
 			return err
 		}
-		asked := map[string]forms.Reading{}
+		taken := map[string]forms.Reading{}
 		for code := range e.Body.Readings {
-			asked[code] = forms.Reading{}
+			taken[code] = forms.Reading{}
 		}
 		for _, form := range all {
 			if form.ID != e.Form {
 				continue
 			}
+			asked.ownOf(form, e)
 			for _, step := range form.Steps {
 				for _, ask := range step.Asks {
 					if !ask.Series {
-						asked[ask.Reading] = forms.Reading{}
+						taken[ask.Reading] = forms.Reading{}
 					}
 				}
 			}
 		}
-		codes = readingOrder(asked)
+		asked.codes = readingOrder(taken)
 		return nil
 	})
-	return e, codes, site, err
+	return e, asked, site, err
 }
 
 // answerTyped writes a reading the way a correction's fields hold it.
@@ -144,11 +183,11 @@ func answerTyped(r forms.Reading) (answer, how string) {
 }
 
 // answerOf reads one reading of a correction; there is false where the fields were cleared.
-func (s *Server) answerOf(f *typedForm, code string) (r forms.Reading, there bool) {
+func (s *Server) answerOf(f *typedForm, code string, answers []string) (r forms.Reading, there bool) {
 	kind, _ := forms.CodeOf(code)
 	how := f.Get(howPrefix + code)
 	if kind.Type != forms.TypeNumber {
-		answer := f.choice(answerPrefix+code, append([]string{""}, append(kind.Options, forms.MissingReasons()...)...)...)
+		answer := f.choice(answerPrefix+code, slices.Concat([]string{""}, answers, forms.MissingReasons())...)
 		for _, reason := range forms.MissingReasons() {
 			if answer == reason {
 				return forms.Reading{Missing: answer}, true
@@ -176,18 +215,18 @@ func (s *Server) answerOf(f *typedForm, code string) (r forms.Reading, there boo
 	return forms.Reading{Missing: how}, how != ""
 }
 
-func (s *Server) correctForm(c echo.Context, e store.Entry, codes []string, site store.Site) formPage {
-	k := s.ink()
+func (s *Server) correctForm(c echo.Context, e store.Entry, asked correctAsked, site store.Site) formPage {
+	k := s.ink().calling(asked.own)
 	group := fieldGroup{Legend: k.say("office.entry.readings"), Note: k.say("office.entry.correct_hint")}
 	var reasons []string
 	for _, reason := range forms.MissingReasons() {
 		reasons = append(reasons, reason, k.say("office.entry.missing", "reason", lowerFirst(k.named("missing", reason))))
 	}
-	for _, code := range codes {
+	for _, code := range asked.codes {
 		kind, _ := forms.CodeOf(code)
 		if kind.Type != forms.TypeNumber {
 			var pairs []string
-			for _, option := range kind.Options {
+			for _, option := range asked.answers(code) {
 				pairs = append(pairs, option, k.answer(code, option))
 			}
 			group.Fields = append(group.Fields, field{Name: answerPrefix + code, Label: k.reading(code), Wide: true, Options: optional(k.say("office.entry.not_asked"), append(pairs, reasons...)...)})

@@ -1,7 +1,6 @@
 package server
 
 import (
-	"cmp"
 	"fmt"
 	"maps"
 	"time"
@@ -64,7 +63,7 @@ func (s *Server) verdictOf(own map[string]string, v forms.Verdict, name string) 
 
 // readingName names a reading, with the conditions it was taken under.
 func (s *Server) readingName(own map[string]string, code string, at map[string]any) string {
-	name := cmp.Or(own[code], s.ink().reading(code))
+	name := s.ink().calling(own).reading(code)
 	if len(at) > 0 {
 		name += " " + s.conditions(at)
 	}

@@ -69,6 +69,7 @@ func TestFormsEdit_ChecksOfOnesOwn(t *testing.T) {
 	if _, readings, ok := strings.Cut(shown, `class="readings"`); !ok || strings.Contains(readings, "Own check 1") {
 		t.Error("the entry's page names a check by its number")
 	}
+	ownNamesEverywhere(t, r, b, e.ID)
 	must(t, r.store.View(store.Scope{All: true}, func(v *store.View) error {
 		made, err := v.Entry(e.ID)
 		if err == nil && made.Verdict.Result != forms.Fail {
@@ -76,4 +77,42 @@ func TestFormsEdit_ChecksOfOnesOwn(t *testing.T) {
 		}
 		return err
 	}))
+}
+
+// ownNamesEverywhere looks wherever a failed check of the organisation's own is told of.
+func ownNamesEverywhere(t *testing.T, r *rig, b *http.Client, entry string) {
+	t.Helper()
+	var defect string
+	must(t, r.store.View(store.Scope{All: true}, func(v *store.View) error {
+		list, err := v.Defects(store.DefectAsk{})
+		for _, d := range list {
+			if forms.IsOwn(d.Cause) {
+				defect = d.ID
+			}
+		}
+		return err
+	}))
+	if defect == "" {
+		t.Fatal("2.5 against 1.2 to 1.8 began no defect")
+	}
+	for _, path := range []string{"/defects", "/defects/" + defect, "/devices/" + r.devices[0], "/entries/" + entry + "/correct", "/limits/us-class-a", "/limits/us-class-a/edit", "/", "/table?sheet=readings&as=csv", "/table?sheet=limits&as=csv"} {
+		page := r.open(b, path)
+		if page.status != http.StatusOK || !strings.Contains(page.body, "Torque of the screws") {
+			t.Errorf("%s: %d, lacks the check's name", path, page.status)
+		}
+		if strings.Contains(page.body, "Own check") {
+			t.Errorf("%s names a check by its number", path)
+		}
+	}
+	correct := "/entries/" + entry + "/correct"
+	form := r.open(b, correct).body
+	for _, answer := range []string{`value="white"`, `value="grey"`} {
+		if !strings.Contains(form, answer) {
+			t.Errorf("a correction offers no %s for a choice of the organisation's own", answer)
+		}
+	}
+	r.wantTo(b, correct, setAll(r.openForm(b, correct), "reason", "Read again", "reading.own_choice_1", "grey"))
+	if shown := r.open(b, "/entries/"+entry).body; !strings.Contains(shown, "Colour of the wall") || !strings.Contains(shown, "grey") {
+		t.Error("the corrected choice of the organisation's own is not shown under its name")
+	}
 }

@@ -18,6 +18,9 @@ const (
 	auditor
 	phone // an enrolled installation, by its bearer token
 	owner // whoever may open the folder's socket
+	// taking marks a POST that makes a file from what its caller may read: all it puts in the book is that it was taken.
+	// Only such a one may be an auditor's, who changes nothing.
+	taking
 
 	anyone who = 0
 	office     = manager | auditor // reads the office pages; only a manager changes anything

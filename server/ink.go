@@ -18,7 +18,16 @@ const (
 )
 
 // ink writes values the way pages show them; every word comes from the catalogue.
-type ink struct{ words *static.Words }
+type ink struct {
+	words *static.Words
+	own   map[string]string // what forms call checks an organisation added, by code
+}
+
+// calling names checks an organisation added as their form does.
+func (k ink) calling(own map[string]string) ink {
+	k.own = own
+	return k
+}
 
 func (k ink) say(key string, pairs ...any) string { return k.words.Say(key, pairs...) }
 
@@ -144,6 +153,9 @@ func (k ink) tag(tag string) string {
 
 // reading names a reading by its code.
 func (k ink) reading(code string) string {
+	if name := k.own[code]; name != "" {
+		return name
+	}
 	if key := "reading." + code + ".name"; k.words.Has(key) {
 		return k.say(key)
 	}

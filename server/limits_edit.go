@@ -16,10 +16,11 @@ import (
 
 // limitsEdit asks what the next revision of a limit set says; with ?copy it asks for a set of another name.
 func (s *Server) limitsEdit(c echo.Context) error {
-	set, sites, err := s.limitSetNow(c)
+	held, err := s.limitSetNow(c)
 	if err != nil {
 		return err
 	}
+	set := held.set
 	f, err := s.editForm(limitValues(set), nil)
 	if err != nil {
 		return err
@@ -32,11 +33,18 @@ func (s *Server) limitsEdit(c echo.Context) error {
 	} else {
 		f.Values["stands_for"] = set.StandsFor
 	}
-	return s.formBack(c, f, s.limitsForm(c, set, sites, f))
+	return s.formBack(c, f, s.limitsForm(c, held, f))
+}
+
+// limitsHeld is what a revision starts from.
+type limitsHeld struct {
+	set   *forms.LimitSet
+	sites []store.Site
+	own   map[string]string // what forms call the checks an organisation added
 }
 
 // limitSetNow reads the newest revision of a set, of the site asked for where it has one of its own.
-func (s *Server) limitSetNow(c echo.Context) (set *forms.LimitSet, sites []store.Site, err error) {
+func (s *Server) limitSetNow(c echo.Context) (held limitsHeld, err error) {
 	id, site := c.Param("set"), cmp.Or(c.FormValue("site"), c.QueryParam("site"))
 	err = s.store.View(scope(c), func(v *store.View) error {
 		var all []store.Revision
@@ -53,11 +61,15 @@ func (s *Server) limitSetNow(c echo.Context) (set *forms.LimitSet, sites []store
 		if len(all) == 0 {
 			return refuse(codeNotFound, "", s.words.Say("office.limits.unknown"))
 		}
-		set = newestRevisions(all)[0].LimitSet
-		sites, err = v.Sites()
+		held.set = newestRevisions(all)[0].LimitSet
+		if held.sites, err = v.Sites(); err != nil {
+			return err
+		}
+		asked, err := v.Forms()
+		held.own = forms.OwnNamesUnder(held.set, asked)
 		return err
 	})
-	return set, sites, err
+	return held, err
 }
 
 // limitValues are the figures of a set as its form shows them.
@@ -85,7 +97,7 @@ func typedFigure(v *float64) string {
 
 // limitsPreview shows what a revision would change before it is accepted.
 func (s *Server) limitsPreview(c echo.Context) error {
-	set, sites, err := s.limitSetNow(c)
+	held, err := s.limitSetNow(c)
 	if err != nil {
 		return err
 	}
@@ -93,6 +105,7 @@ func (s *Server) limitsPreview(c echo.Context) error {
 	if err != nil {
 		return err
 	}
+	set := held.set
 	draft, id := s.limitsDraft(f, set), set.ID
 	if f.Get("copy") == "yes" {
 		id = strings.TrimSpace(f.Get("id"))
@@ -103,7 +116,7 @@ func (s *Server) limitsPreview(c echo.Context) error {
 			return err
 		}
 	}
-	return s.formBack(c, f, s.limitsForm(c, set, sites, f))
+	return s.formBack(c, f, s.limitsForm(c, held, f))
 }
 
 // refusedInto puts a refusal of a revision beside the field that caused it; false for any other error.
@@ -243,8 +256,9 @@ func (s *Server) setName(set *forms.LimitSet) string {
 }
 
 // limitsForm is the form of a revision.
-func (s *Server) limitsForm(c echo.Context, set *forms.LimitSet, sites []store.Site, f *typedForm) formPage {
-	k, name := s.ink(), s.setName(set)
+func (s *Server) limitsForm(c echo.Context, held limitsHeld, f *typedForm) formPage {
+	set := held.set
+	k, name := s.ink().calling(held.own), s.setName(set)
 	href := "/limits/" + c.Param("set")
 	p := formPage{
 		Frame: s.frame(c, name, "set-up"), Crumbs: []link{{Href: "/set-up", Text: k.say("office.setup.title")}, {Href: href, Text: name}},
@@ -252,7 +266,7 @@ func (s *Server) limitsForm(c echo.Context, set *forms.LimitSet, sites []store.S
 		Action: href + "/edit", Submit: k.say("config.preview"), Cancel: href,
 	}
 	where := []option{{Value: "", Text: k.say("config.everywhere")}}
-	for _, site := range sites {
+	for _, site := range held.sites {
 		where = append(where, option{Value: site.ID, Text: k.say("config.only_at", "site", site.Name)})
 	}
 	head := fieldGroup{Fields: []field{
@@ -273,15 +287,14 @@ func (s *Server) limitsForm(c echo.Context, set *forms.LimitSet, sites []store.S
 	head.Fields = append(head.Fields, stands)
 	p.Groups = append(p.Groups, head)
 	for i := range set.Limits {
-		p.Groups = append(p.Groups, s.limitGroup(&set.Limits[i]))
+		p.Groups = append(p.Groups, s.limitGroup(k, &set.Limits[i]))
 	}
-	p.Groups = append(p.Groups, s.addGroup())
+	p.Groups = append(p.Groups, s.addGroup(k))
 	return p
 }
 
 // limitGroup asks for one limit's figures and level.
-func (s *Server) limitGroup(l *forms.Limit) fieldGroup {
-	k := s.ink()
+func (s *Server) limitGroup(k ink, l *forms.Limit) fieldGroup {
 	name := k.reading(l.Reading)
 	if l.Reading == "" {
 		name = s.fieldName(l.Field)
@@ -307,10 +320,12 @@ func (s *Server) levels(none bool) []option {
 }
 
 // addGroup asks for a limit that is not there yet.
-func (s *Server) addGroup() fieldGroup {
-	k := s.ink()
+func (s *Server) addGroup(k ink) fieldGroup {
 	readings := []option{{Value: "", Text: k.say("config.add_none")}}
 	for _, code := range forms.Codes() {
+		if forms.IsOwn(code.Code) && k.own[code.Code] == "" {
+			continue // no form asks it
+		}
 		readings = append(readings, option{Value: code.Code, Text: k.reading(code.Code)})
 	}
 	return fieldGroup{Legend: k.say("config.add_limit"), Note: k.say("config.add_note"), Fields: []field{

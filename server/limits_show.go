@@ -58,10 +58,11 @@ func (s *Server) limitsShow(c echo.Context) error {
 		if err != nil {
 			return err
 		}
-		spans, err := allSpans(v)
+		asked, err := v.Forms()
 		if err != nil {
 			return err
 		}
+		spans := allSpans(asked)
 		for _, r := range all { // newest first
 			if r.Site == "" || view.Under == "" {
 				view.Under, view.Stands = k.say("office.limits.for", "kinds", s.kinds(r.LimitSet.Kinds)), ""
@@ -71,7 +72,7 @@ func (s *Server) limitsShow(c echo.Context) error {
 				view.Heading = s.setName(r.LimitSet)
 				view.Title = view.Heading
 			}
-			shown := s.limitSet(r.LimitSet, spans)
+			shown := s.limitSet(r.LimitSet, forms.OwnNamesUnder(r.LimitSet, asked), spans)
 			if err := s.setBy(v, r, &shown); err != nil {
 				return err
 			}
@@ -120,13 +121,12 @@ func limitRevisionsSeen(v *store.View, id string) ([]store.Revision, error) {
 }
 
 // allSpans are the scales of every form.
-func allSpans(v *store.View) (map[string][]scaleSpan, error) {
-	all, err := v.Forms()
+func allSpans(all []*forms.Form) map[string][]scaleSpan {
 	spans := map[string][]scaleSpan{}
 	for _, f := range all {
 		addSpans(spans, f)
 	}
-	return spans, err
+	return spans
 }
 
 // setBy says who set a revision, why and where.
@@ -146,14 +146,14 @@ func (s *Server) setBy(v *store.View, r store.Revision, out *limitSetShown) erro
 	return nil
 }
 
-func (s *Server) limitSet(set *forms.LimitSet, spans map[string][]scaleSpan) limitSetShown {
+func (s *Server) limitSet(set *forms.LimitSet, own map[string]string, spans map[string][]scaleSpan) limitSetShown {
 	k := s.ink()
 	out := limitSetShown{Name: k.say("office.limits.revision", "rev", set.Revision, "day", k.day(set.InForce))}
 	if set.InForce <= forms.Date(1900, 1, 1) {
 		out.Name = k.say("office.limits.revision_open", "rev", set.Revision)
 	}
 	for i := range set.Limits {
-		row := s.limitRow(&set.Limits[i])
+		row := s.limitRow(&set.Limits[i], own)
 		s.draw(&row, &set.Limits[i], spans)
 		out.Limits = append(out.Limits, row)
 	}
@@ -161,8 +161,8 @@ func (s *Server) limitSet(set *forms.LimitSet, spans map[string][]scaleSpan) lim
 }
 
 // limitRow says a limit in words.
-func (s *Server) limitRow(l *forms.Limit) limitRow {
-	k := s.ink()
+func (s *Server) limitRow(l *forms.Limit, own map[string]string) limitRow {
+	k := s.ink().calling(own)
 	row := limitRow{Reading: k.reading(l.Reading), Limit: s.limitWords(*l), When: s.whenAndVoid(*l), Level: k.say("office.limits." + l.Level), Source: l.Source, Status: status(l.Source, l.Status)}
 	if l.Reading == "" {
 		row.Reading = s.fieldName(l.Field)

@@ -11,7 +11,7 @@ import (
 	"tripwell/store"
 )
 
-func (s *Server) ink() ink { return ink{s.words} }
+func (s *Server) ink() ink { return ink{words: s.words} }
 
 // today is the civil day at a site.
 func (s *Server) today(site store.Site) forms.Day {

@@ -156,7 +156,7 @@ func (s *Server) whatFailed(e store.Entry) string { return s.failedBy(e, "") }
 
 // failedBy is whatFailed of one cause alone; "" = all.
 func (s *Server) failedBy(e store.Entry, cause string) string {
-	k := s.ink()
+	k := s.ink().calling(e.OwnNames)
 	var said []string
 	for _, f := range e.Verdict.Findings {
 		if f.Verdict != forms.Fail || len(said) == 3 || cause != "" && f.Reading != cause {

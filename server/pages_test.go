@@ -223,7 +223,7 @@ func (s *Server) setupSample() setupPage {
 func (s *Server) limitsSample() limitsPage {
 	p := limitsPage{Frame: frameOf("Limits", "set-up"), Crumbs: []link{{Href: "/set-up", Text: "Set up"}}, Heading: "UL 943 Class A", Under: "For GFCI receptacles."}
 	for _, set := range forms.Shipped().LimitSets {
-		p.Revisions = append(p.Revisions, s.limitSet(set, map[string][]scaleSpan{}))
+		p.Revisions = append(p.Revisions, s.limitSet(set, nil, map[string][]scaleSpan{}))
 	}
 	return p
 }

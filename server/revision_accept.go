@@ -105,15 +105,19 @@ func (s *Server) changedLimits(v *store.View, d store.RuleDraft, view *revisionP
 	if err != nil {
 		return err
 	}
-	was := map[string]limitRow{}
+	asked, err := v.Forms()
+	if err != nil {
+		return err
+	}
+	own, was := forms.OwnNamesUnder(set, asked), map[string]limitRow{}
 	if len(held) > 0 {
 		old := newestRevisions(held)[0].LimitSet
 		for i := range old.Limits {
-			was[old.Limits[i].ID] = s.limitRow(&old.Limits[i])
+			was[old.Limits[i].ID] = s.limitRow(&old.Limits[i], own)
 		}
 	}
 	for i := range set.Limits {
-		is, before := s.limitRow(&set.Limits[i]), was[set.Limits[i].ID]
+		is, before := s.limitRow(&set.Limits[i], own), was[set.Limits[i].ID]
 		delete(was, set.Limits[i].ID)
 		if len(held) > 0 && (before.Limit != is.Limit || before.Level != is.Level) {
 			text := dash

@@ -95,7 +95,7 @@ func publicRoutes() []route {
 		{get, "/forms/:kind/:task", signed, (*Server).formShow, 0},
 		{get, "/downloads", office, (*Server).downloadsShow, 0},
 		{get, "/workbook.xlsx", office, (*Server).workbookTake, 0},
-		{post, "/workbook", office, (*Server).workbookMake, 0},
+		{post, "/workbook", office | taking, (*Server).workbookMake, 0},
 		{get, "/workbook/:making", office, (*Server).workbookMaking, 0},
 		{get, "/workbook/:making/:file", office, (*Server).workbookMade, 0},
 		{get, "/bundle.zip", office, (*Server).bundleTake, 0},

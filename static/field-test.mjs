@@ -131,7 +131,7 @@ function Condition({ app, row, test }) {
   const { at, asks } = row, words = conditionWords(app.say, at, test.given);
   return html`<div class="condition">${asks.length > 1 && html`<h4>${words}</h4>`}
     ${asks.map((ask, i) => html`<${Ask} app=${app} key=${ask.reading} id=${rowId(at, ask)} ask=${{ ...ask, required: i === 0 }} answer=${seriesAnswers(test.draft, at)[ask.reading]}
-      title=${asks.length > 1 ? undefined : app.say("field.under_condition", { what: app.say(`reading.${ask.reading}.ask`), condition: words })}
+      title=${asks.length > 1 ? undefined : app.say("field.under_condition", { what: ask.name ?? app.say(`reading.${ask.reading}.ask`), condition: words })}
       set=${(a) => app.seriesAnswer(test.draft, at, ask.reading, a)} ...${test.aboutAt(ask, at)} />`)}
   </div>`;
 }
@@ -156,6 +156,9 @@ function Rest({ app, open, asked, fill }) {
   </section>`;
 }
 
+/** What the form calls a check an organisation added. */
+const ownName = (form, code) => form.steps.flatMap((s) => s.asks).find((a) => a.reading === code && a.name)?.name;
+
 /** The result so far, and each thing that is not inside its limit. */
 function Summary({ app, test, open }) {
   const { say } = app;
@@ -164,6 +167,6 @@ function Summary({ app, test, open }) {
   const telling = findings.filter((f) => !["pass", "not-judged"].includes(f.verdict) && !(f.verdict === "missing" && open > 0));
   return html`<section class=${`result ${result}`} aria-live="polite">
     <h2>${open > 0 && result === "incomplete" ? html`<${Mark} verdict="incomplete">${say("field.open_count", { n: open })}<//>` : html`<${Mark} verdict=${result}>${say(`verdict.${result}`)}<//>`}</h2>
-    ${telling.length > 0 && html`<ul>${telling.map((f, i) => html`<li key=${i}><${Mark} verdict=${f.verdict}>${say(`reading.${f.reading}.name`)}${f.at ? ` (${conditionWords(say, f.at, test.given)})` : ""}<//> ${f.text ? say(f.text) : say(`verdict.${f.verdict}`)}</li>`)}</ul>`}
+    ${telling.length > 0 && html`<ul>${telling.map((f, i) => html`<li key=${i}><${Mark} verdict=${f.verdict}>${ownName(test.form, f.reading) ?? say(`reading.${f.reading}.name`)}${f.at ? ` (${conditionWords(say, f.at, test.given)})` : ""}<//> ${f.text ? say(f.text) : say(`verdict.${f.verdict}`)}</li>`)}</ul>`}
   </section>`;
 }

@@ -13,8 +13,9 @@ import (
 // Defect is one fault of one device with where it is.
 type Defect struct {
 	forms.Defect
-	Site   string
-	Device DeviceRow // Kind "" where the register does not hold the device
+	Site    string
+	Device  DeviceRow // Kind "" where the register does not hold the device
+	OwnName string    // what the form calls its cause, where that is a check an organisation added
 }
 
 // OpenedAt is the moment it began.
@@ -153,9 +154,22 @@ func (v *View) defectsAt(sv *siteView, n uint32, on forms.Day) ([]Defect, error)
 	}
 	out := make([]Defect, 0, len(fl.Defects))
 	for _, d := range fl.Defects {
-		out = append(out, Defect{Defect: *d, Site: sv.ID, Device: row})
+		one := Defect{Defect: *d, Site: sv.ID, Device: row}
+		if one.OwnName, err = v.ownCause(d); err != nil {
+			return nil, err
+		}
+		out = append(out, one)
 	}
 	return out, nil
+}
+
+// ownCause gives the name of a defect's cause, where that is a check an organisation added.
+func (v *View) ownCause(d *forms.Defect) (string, error) {
+	if !forms.IsOwn(d.Cause) || d.LastFail == "" {
+		return "", nil
+	}
+	e, err := v.Entry(d.LastFail)
+	return e.OwnNames[d.Cause], err
 }
 
 // DeviceDefects gives a device's defects, oldest first, and the records about defects that a correction took away.

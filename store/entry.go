@@ -253,15 +253,7 @@ func (v *View) ownNames(e *Entry) map[string]string {
 	if form == nil {
 		return nil
 	}
-	names := map[string]string{}
-	for i := range form.Steps {
-		for _, a := range form.Steps[i].Asks {
-			if a.Name != "" {
-				names[a.Reading] = a.Name
-			}
-		}
-	}
-	return names
+	return forms.OwnNames(form)
 }
 
 // say lists corrections and the withdrawal; each correction shows the entry as it stood after it.

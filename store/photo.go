@@ -62,7 +62,7 @@ func (v *View) namesPhoto(id, name string) error {
 	if err != nil {
 		return err
 	}
-	photos := []string{}
+	var photos []string
 	if strings.HasPrefix(r.Kind, "defect.") {
 		photos = photosOf(r)
 	} else {

@@ -5,6 +5,7 @@
 package paper
 
 import (
+	"cmp"
 	"fmt"
 	"slices"
 	"strconv"
@@ -74,11 +75,11 @@ func Columns(form *forms.Form) ([]Column, error) {
 				continue
 			}
 			if !ask.Series || form.Series == nil {
-				cols = append(cols, readingColumn(words, ask.Reading, nil, nil))
+				cols = append(cols, readingColumn(words, &ask, nil, nil))
 				continue
 			}
 			for _, cond := range form.Series.Conditions {
-				c := readingColumn(words, ask.Reading, cond.At, cond.When)
+				c := readingColumn(words, &ask, cond.At, cond.When)
 				same := func(o Column) bool { return o.Header == c.Header }
 				if slices.Contains(cond.AnyOf, ask.Reading) && !slices.ContainsFunc(cols, same) {
 					cols = append(cols, c)
@@ -160,20 +161,29 @@ func (c *Column) answer(value, word string) {
 	c.answers = append(c.answers, word)
 }
 
-func readingColumn(words *static.Words, code string, at map[string]any, when []forms.Condition) Column {
+func readingColumn(words *static.Words, ask *forms.Ask, at map[string]any, when []forms.Condition) Column {
+	code := ask.Reading
 	known, _ := forms.CodeOf(code)
 	c := Column{Reading: code, Unit: known.Unit, At: at, when: when}
-	c.Header = words.Say("reading." + code + ".name")
+	c.Header = cmp.Or(ask.Name, words.Say("reading."+code+".name"))
 	if at != nil {
 		c.Header = words.Say("paper.at", "name", c.Header, "at", conditionText(words, at))
 	}
 	if known.Unit != "" {
 		c.Header = words.Say("paper.unit", "name", c.Header, "unit", words.Say("unit."+known.Unit))
 	}
-	for _, value := range known.Options {
+	options := known.Options
+	if len(options) == 0 {
+		options = ask.Options // of a choice an organisation added
+	}
+	for _, value := range options {
 		word := "option." + code + "." + value
 		if !words.Has(word) {
 			word = "option." + value
+		}
+		if !words.Has(word) {
+			c.answer(value, value)
+			continue
 		}
 		c.answer(value, words.Say(word))
 	}

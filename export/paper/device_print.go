@@ -238,6 +238,11 @@ func (p *devicePrint) dates() {
 // shapes stand before a verdict's word, so that it reads in black and white: disc, triangle, diamond, ring.
 var shapes = map[string]string{forms.Pass: "●", forms.ConditionalPass: "▲", forms.Watch: "▲", forms.ConditionalFail: "▲", forms.Fail: "◆"}
 
+// readingName names a reading of a test as its form does.
+func (p *devicePrint) readingName(t Test, code string) string {
+	return cmp.Or(t.OwnNames[code], p.words.Say("reading."+code+".name"))
+}
+
 func (p *devicePrint) history() {
 	p.heading("paper.device.history")
 	if len(p.sheet.Entries) == 0 {
@@ -251,7 +256,7 @@ func (p *devicePrint) history() {
 		for _, code := range forms.Codes() {
 			if r, ok := t.Body.Readings[code.Code]; ok {
 				if text := export.ReadingText(p.words, code.Code, r); text != "" {
-					parts = append(parts, p.words.Say("reading."+code.Code+".name")+": "+text)
+					parts = append(parts, p.readingName(t, code.Code)+": "+text)
 				}
 			}
 		}
@@ -259,7 +264,7 @@ func (p *devicePrint) history() {
 			for _, code := range forms.Codes() {
 				if r, ok := series.Readings[code.Code]; ok {
 					if text := export.ReadingText(p.words, code.Code, r); text != "" {
-						parts = append(parts, p.words.Say("paper.at", "name", p.words.Say("reading."+code.Code+".name"), "at", conditionText(p.words, series.At))+": "+text)
+						parts = append(parts, p.words.Say("paper.at", "name", p.readingName(t, code.Code), "at", conditionText(p.words, series.At))+": "+text)
 					}
 				}
 			}

@@ -199,7 +199,11 @@ func (p *planner) heading(cell intake.Cell) (column, bool) {
 	if c, ok := p.columns[intake.Label(text)]; ok {
 		return c, true
 	}
-	if c, ok := printed()[strings.ToLower(strings.Join(strings.Fields(text), " "))]; ok {
+	plain := strings.ToLower(strings.Join(strings.Fields(text), " "))
+	if c, ok := printed()[plain]; ok {
+		return c, true
+	}
+	if c, ok := p.own[plain]; ok {
 		return c, true
 	}
 	if cell.Date != nil {

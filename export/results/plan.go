@@ -21,6 +21,7 @@ type planner struct {
 	book    *intake.Book
 	people  []store.Person
 	columns map[string]column // as the person mapped them, by the plain form of the heading
+	own     map[string]column // checks an organisation added, by the name its forms give them
 	rules   *rules
 	finder  *finder
 	ids     map[string]*test // tests of this file
@@ -103,6 +104,9 @@ func (r *row) head(about string) string {
 // read goes through the file within a view.
 func (p *planner) read(v *store.View) (err error) {
 	if p.rules, err = readRules(v); err != nil {
+		return err
+	}
+	if p.own, err = p.rules.ownColumns(); err != nil {
 		return err
 	}
 	if p.finder, err = newFinder(v, p); err != nil {

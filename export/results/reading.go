@@ -2,6 +2,7 @@ package results
 
 import (
 	"fmt"
+	"maps"
 	"math"
 	"slices"
 	"strconv"
@@ -81,7 +82,11 @@ func (c column) answer(known forms.Code, low string) (forms.Reading, bool, *faul
 		}
 		return forms.Reading{}, false, &fault{text: "This is no yes and no no. Write yes or no."}
 	}
-	return forms.Reading{}, false, &fault{text: fmt.Sprintf("This is no answer here. Write one of: %s.", strings.Join(known.Options, ", "))}
+	options := known.Options
+	if len(options) == 0 {
+		options = slices.Sorted(maps.Values(c.options)) // of a choice an organisation added
+	}
+	return forms.Reading{}, false, &fault{text: fmt.Sprintf("This is no answer here. Write one of: %s.", strings.Join(options, ", "))}
 }
 
 // figure reads a figure, its unit and its bound.

@@ -1,8 +1,10 @@
 package results
 
 import (
+	"maps"
 	"strings"
 
+	"tripwell/export/paper"
 	"tripwell/forms"
 	"tripwell/store"
 )
@@ -30,6 +32,32 @@ func readRules(v *store.View) (*rules, error) {
 	}
 	ru.instruments, err = v.Instruments()
 	return ru, err
+}
+
+// ownColumns are the columns of checks an organisation added, by the headings round sheets print above them. A heading that
+// forms give different checks is left to the person who knows the file.
+func (ru *rules) ownColumns() (map[string]column, error) {
+	own, several := map[string]column{}, map[string]bool{}
+	for _, f := range ru.forms {
+		cols, err := paper.Columns(f)
+		if err != nil {
+			return nil, err
+		}
+		for _, c := range cols {
+			if !forms.IsOwn(c.Reading) {
+				continue
+			}
+			heading := strings.ToLower(strings.Join(strings.Fields(c.Header), " "))
+			if had, ok := own[heading]; ok && had.reading != c.Reading {
+				several[heading] = true
+			}
+			col := column{reading: c.Reading, unit: c.Unit, options: maps.Clone(c.Options)}
+			maps.Copy(col.options, own[heading].options)
+			own[heading] = col
+		}
+	}
+	maps.DeleteFunc(own, func(heading string, _ column) bool { return several[heading] })
+	return own, nil
 }
 
 // limitSet gives the revision in force on a day: the site's own before the organisation's; nil where there was none.

@@ -72,7 +72,11 @@ func (s *Server) drawCircuit(p *store.Protection, c store.Circuit) drawing {
 			}
 		}
 	}
-	d.runs(s, p, runs, drawnLeft, y+16, &y, false)
+	from := y + 10 // under the breaker's circle, or under the last box
+	if len(breakers) > 0 {
+		from = y + 16
+	}
+	d.runs(s, p, runs, drawnLeft, from, &y, false)
 	d.Height = y + 40
 	return *d
 }

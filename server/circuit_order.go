@@ -119,7 +119,7 @@ func (s *Server) sourcesOffered(p *store.Protection, on []store.OnMap, of store.
 	out := optional(s.words.Say("office.circuit.straight"))
 	for _, d := range on {
 		if d.ID != of.ID {
-			out = append(out, option{Value: d.ID, Text: joined(s.spot(d.DeviceRow), d.Place.Room)})
+			out = append(out, option{Value: d.ID, Text: s.spotIn(d.DeviceRow)})
 		}
 	}
 	if of.Source != "" && !slices.ContainsFunc(out, func(o option) bool { return o.Value == of.Source }) {
@@ -140,7 +140,7 @@ func (s *Server) orderForm(c echo.Context, site store.Site, one store.Circuit, p
 	}
 	on := alongCircuit(p, one.ID)
 	for _, d := range on {
-		out.Groups = append(out.Groups, fieldGroup{Legend: joined(s.spot(d.DeviceRow), d.Place.Room), Note: k.named("kind", d.Kind), Fields: []field{
+		out.Groups = append(out.Groups, fieldGroup{Legend: s.spotIn(d.DeviceRow), Note: k.named("kind", d.Kind), Fields: []field{
 			{Name: atPrefix + d.ID, Label: k.say("office.circuit.at"), Type: "number"},
 			{Name: fedPrefix + d.ID, Label: k.say("office.circuit.fed"), Options: s.sourcesOffered(p, on, d)},
 		}})

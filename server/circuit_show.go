@@ -133,7 +133,7 @@ func (s *Server) goesDark(list []store.OnMap) (all []string, critical string) {
 		if d.Retired {
 			continue
 		}
-		name := joined(s.spot(d.DeviceRow), d.Place.Room)
+		name := s.spotIn(d.DeviceRow)
 		if load := d.Place.CriticalLoad; load != "" {
 			name += ": " + load
 			loads = append(loads, load)

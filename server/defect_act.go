@@ -221,14 +221,20 @@ func (s *Server) alsoFeeds(c echo.Context, d store.DeviceRow, site store.Site) (
 	}
 	var others []string
 	err := s.store.View(scope(c), func(v *store.View) error {
-		for row, err := range v.Devices(site.ID) {
-			if err != nil {
-				return err
-			}
-			if row.Panel != d.Panel || row.Circuit != d.Circuit || row.ID == d.ID || row.Retired {
+		full, err := v.Device(d.ID, s.today(site))
+		if err != nil {
+			return err
+		}
+		id, _ := full.Fields["circuit"].(string)
+		p, err := v.ProtectionOn(id, s.today(site))
+		if err != nil {
+			return err
+		}
+		for _, row := range p.Dead(id) { // those on it, and what their LOAD terminals feed; critical loads first
+			if row.ID == d.ID || row.Retired {
 				continue
 			}
-			name := s.spot(row)
+			name := s.spot(row.DeviceRow)
 			if load := row.Place.CriticalLoad; load != "" {
 				name += " (" + load + ")"
 			}

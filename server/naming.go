@@ -30,6 +30,15 @@ func (s *Server) spot(d store.DeviceRow) string {
 	return cmp.Or(strings.TrimSpace(d.Make+" "+d.Model), s.ink().named("kind", d.Kind), d.ID)
 }
 
+// spotIn names a device with its room, where the spot does not say the room already.
+func (s *Server) spotIn(d store.DeviceRow) string {
+	spot := s.spot(d)
+	if strings.Contains(spot, d.Place.Room) {
+		return spot
+	}
+	return joined(spot, d.Place.Room)
+}
+
 // place names the room a register groups by.
 func (s *Server) place(p store.Place) string {
 	if p.ID == "" {

@@ -127,7 +127,7 @@ func kilnLaneSpots() []spot {
 	}
 	ground, upper := &feeder{panel: "LP-1"}, &feeder{panel: "LP-2", next: 19}
 	kitchen := &feeder{panel: "LP-2"}
-	add(kitchen, spot{floor: "Ground floor", room: "Kitchen", name: "Pantry, by the sink", kind: "gfci-receptacle", circuit: "14", critical: "Vaccine refrigerator (Nurses' room)", tell: "Nurse in charge", from: "06:00", until: "08:30", story: "pantry"})
+	add(kitchen, spot{floor: "Ground floor", room: "Kitchen", name: "Pantry, by the sink", kind: "gfci-receptacle", circuit: "14", tell: "Nurse in charge", from: "06:00", until: "08:30", story: "pantry"})
 	for _, name := range []string{"Pantry, door", "Hall, north", "Nurses' room"} {
 		s := spot{floor: "Ground floor", room: "Kitchen", name: name, kind: "protected-receptacle", circuit: "14", fedBy: "Pantry, by the sink"}
 		if name == "Nurses' room" {

@@ -15,6 +15,7 @@ type chainShown struct {
 	Critical string
 	Dark     string // heading of what goes dark
 	Loops    []string
+	Marking  string // what an outlet without an equipment ground carries
 	Order    link
 }
 
@@ -38,6 +39,9 @@ func (s *Server) deviceChain(v *store.View, d store.Device, today forms.Day, cha
 				out.Order = link{Href: "/circuits/" + c.ID + "/order", Text: k.say("office.circuit.order")}
 			}
 		}
+	}
+	if own.EquipmentGround == forms.NoGroundPermitted && forms.IsOutlet(own.Kind) {
+		out.Marking = k.say("office.protection.carries", "marking", k.say("office.protection.marking."+forms.MarkingFor(own.Kind)))
 	}
 	for _, id := range p.Ahead(d.ID) {
 		if ahead, ok := p.Device(id); ok {

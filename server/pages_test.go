@@ -55,7 +55,7 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 		Facts:   []fact{{Name: "Kind", Value: "GFCI receptacle"}, {Name: "Panel and circuit", Value: "LP‑2 / 14"}, {Name: "Rating", Value: "20 A"}, {Name: "Note", Value: "Faceplate replaced after the leak in the pantry."}},
 		Actions: []link{{Href: "/devices/1/edit", Text: "Edit device"}, {Href: "/devices/1/retire", Text: "Retire"}},
 		Label:   &label{Size: size, Path: path, Address: "HTTPS://DEMO.TRIPWELL.EXAMPLE/T/K7QM2P3", Aria: "QR code", Sheet: "/labels.pdf?device=1"},
-		Chain: &chainShown{Circuit: link{Href: "/circuits/1", Text: "LP‑2 / 14"}, Breaker: "20 A · 12 AWG", Cover: pass, Critical: "Vaccine refrigerator", Dark: "TEST here takes the power from 1 other outlet.", Loops: []string{"Counter, left, said to hang on Counter, right"}, Order: link{Href: "/circuits/1/order", Text: "Order and LOAD feeds"},
+		Chain: &chainShown{Circuit: link{Href: "/circuits/1", Text: "LP‑2 / 14"}, Breaker: "20 A · 12 AWG", Cover: pass, Critical: "Vaccine refrigerator", Marking: "Marking it needs: No Equipment Ground.", Dark: "TEST here takes the power from 1 other outlet.", Loops: []string{"Counter, left, said to hang on Counter, right"}, Order: link{Href: "/circuits/1/order", Text: "Order and LOAD feeds"},
 			Ahead: []runShown{{Href: "/devices/8", Spot: "LP‑2", What: "GFCI breaker", Cover: pass}}, Behind: []runShown{{Href: "/devices/2", Spot: "Nurses' room", What: "Receptacle", Critical: "Vaccine refrigerator", Cover: pass}}},
 		Earlier: []link{{Href: "/devices/0", Text: "GFCI receptacle, 15 A · installed 2 Feb 2012"}},
 	}

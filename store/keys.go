@@ -32,6 +32,9 @@
 //	  dir_digest  person 16             → JSON: which digest, and what became of the last
 //	  dir_setting name                  → value
 //
+// Two readers are shared by pages, exports and plans, which never work out anew what they say: View.ProtectionGaps (what of a
+// site's ground-fault protection somebody should look at, worst first) and View.Defects (what failed and is not put right).
+//
 // The keys of rec, log and quar arrive in order and their pages are filled to 95 %.
 package store
 

@@ -6,6 +6,8 @@ import { dueNow } from "./list.mjs";
 import { showDay } from "./days.mjs";
 import { toSite, toTest } from "./route.mjs";
 import { behind } from "./protection-map.mjs";
+import { openDefects } from "./defect-work.mjs";
+import { Defects } from "./field-failed.mjs";
 import { CriticalLoads, ResetsAt } from "./field-dark.mjs";
 
 export function DevicePage({ app, site, device, place }) {
@@ -16,6 +18,8 @@ export function DevicePage({ app, site, device, place }) {
   return html`
     <${Where} app=${app} title=${titleOf(app, device, place)} tag=${device.tag} context=${contextOf(app, device, place)} back=${toSite(site.snapshot.site.code)} />
     <main>
+      <${Defects} app=${app} device=${device} />
+      ${openDefects(device).length > 0 && html`<div class="choose"><a class="big" href=${`#/failed/${device.id}`}><b>${say("failed.link")}</b><span>${say("failed.link_hint")}</span></a></div>`}
       <${CriticalLoads} app=${app} site=${site} device=${device} />
       <${ResetsAt} app=${app} device=${device} />
       <div class="choose">${forms.map((f) => html`<a class=${due.has(f.task) ? "big go" : "big"} key=${f.form} href=${toTest(device.id, f.task)}>

@@ -7,6 +7,14 @@ import { entryBody, summaryOf } from "./entry.mjs";
 import { toDevice, toRound, toTest } from "./route.mjs";
 import { titleOf } from "./field-parts.mjs";
 
+/** Where a saved test leads before the round goes on: from a fail to making it safe; from the full test of a new device to what
+ *  hangs behind it. */
+function detour(app, site, device, verdict) {
+  if (verdict.result === "fail") return `#/failed/${device.id}`;
+  const passed = verdict.result === "pass" || verdict.result === "conditional-pass";
+  return passed && device.replaces && app.feeds(site, device).length > 0 ? `#/dark/${device.id}` : null;
+}
+
 const SLOW = 150; // ms after which the page says that it is still keeping
 
 /** keeping(app, {tray, make, now, judgeVersion, soon(fn, ms), keepSending()}) → {save, write}. */
@@ -54,7 +62,8 @@ export function keeping(app, { tray, make, now, judgeVersion, soon, keepSending 
     state.drafts.delete(draft.key);
     kept({ what: title, result: verdict.result });
     app.lay(site.log, device.id);
-    app.go(draft.corrects ? toDevice(device.id) : test.next ? toTest(test.next.device, test.next.task) : toRound(site.snapshot.site.code, test.onRound?.id), { keep: true });
+    state.after = draft.corrects ? toDevice(device.id) : test.next ? toTest(test.next.device, test.next.task) : toRound(site.snapshot.site.code, test.onRound?.id);
+    app.go((draft.corrects ? null : detour(app, site, device, verdict)) ?? state.after, { keep: true });
   });
 
   /**

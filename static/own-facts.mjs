@@ -40,6 +40,8 @@ const apply = {
       if (site.known.delete(subject)) site.added.push(subject); // walked in its new room from now on
     }
   },
+  "defect.made_safe": (site, { body }) => withDefect(site, body.device, { made_safe: body.how }),
+  "defect.repaired": (site, { body }) => withDefect(site, body.device, { repaired: body.how }),
   "device.retired": (site, { subject }) => site.devices.delete(subject),
   "device.replaced": (site, { subject, body }) => {
     const old = site.devices.get(subject), now = site.devices.get(body.with);
@@ -52,6 +54,11 @@ const apply = {
   "tag.bound": (site, { subject, body }) => eachHolder(site, subject, (d) => { d.tag = body.tag; }),
   "tag.freed": (site, { subject, body }) => eachHolder(site, subject, (d) => { if (d.tag === body.tag) d.tag = undefined; }),
 };
+
+function withDefect(site, id, said) {
+  const device = site.devices.get(id);
+  if (device) site.devices.set(id, { ...device, ...said });
+}
 
 function setDevice(site, before, set, clock) {
   const device = { ...before, fields: setsFields(before.fields, set), seen: clock };

@@ -6,6 +6,7 @@ import { CorrectPage } from "./field-correct.mjs";
 import { DarkPage } from "./field-dark.mjs";
 import { DevicePage } from "./field-device.mjs";
 import { DevicesPage } from "./field-devices.mjs";
+import { FailedPage } from "./field-failed.mjs";
 import { FindPage, UnknownTagPage } from "./field-find.mjs";
 import { HandPage, TakePage } from "./field-hand.mjs";
 import { LostPage } from "./field-parts.mjs";
@@ -19,7 +20,7 @@ import { TrayPage } from "./field-tray.mjs";
 
 const ALONE = { find: FindPage, along: AlongPage, tray: TrayPage, people: PeoplePage };
 const OF_SITE = { add: AddPage, bind: BindPage, round: RoundPage, hand: HandPage, take: TakePage };
-const OF_DEVICE = { label: LabelPage, move: MovePage, replace: ReplacePage, dark: DarkPage, room: RoomPage };
+const OF_DEVICE = { label: LabelPage, move: MovePage, replace: ReplacePage, dark: DarkPage, failed: FailedPage, room: RoomPage };
 
 /** The page of a route; the app is read anew at every drawing. */
 export function Page({ app }) {

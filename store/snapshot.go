@@ -65,6 +65,22 @@ type SnapshotDevice struct {
 	// Last by task: newest test, with its numbers for the dashed mark on the scale.
 	Last map[string]SnapshotLast `json:"last,omitempty"`
 	Due  []SnapshotDue           `json:"due,omitempty"`
+	// Defects are those that are open.
+	Defects []SnapshotDefect `json:"defects,omitempty"`
+}
+
+// SnapshotDefect is an open defect as a phone shows it. Safe says how it was made safe.
+type SnapshotDefect struct {
+	ID       string    `json:"id"`
+	Cause    string    `json:"cause"`
+	Severity string    `json:"severity"`
+	State    string    `json:"state"`
+	Opened   int64     `json:"opened"` // ms since 1970
+	Text     string    `json:"text,omitempty"`
+	Safe     string    `json:"safe,omitempty"`
+	Repaired bool      `json:"repaired,omitempty"`
+	Due      forms.Day `json:"due"` // "" where no day is set
+	Parts    []string  `json:"parts,omitempty"`
 }
 
 // SnapshotLast is the newest test of a task. Readings holds its measured values in their codes' own units.
@@ -139,11 +155,16 @@ func (v *View) snapshotDevices(sv *siteView, on forms.Day) ([]SnapshotDevice, er
 		at Place
 	}
 	var list []placed
-	err := v.eachDevice(sv, func(n uint32, t *thing, w *work) error {
+	open, err := v.openDefects(sv)
+	if err != nil {
+		return nil, err
+	}
+	err = v.eachDevice(sv, func(n uint32, t *thing, w *work) error {
 		if t.value("#retired") != nil {
 			return nil
 		}
 		d, at, err := v.snapshotDevice(sv, t, w, on)
+		d.Defects = open[n]
 		list = append(list, placed{d, at})
 		return err
 	})
@@ -261,4 +282,31 @@ func seenText(clock uint64) string {
 		return ""
 	}
 	return record.ClockText(clock)
+}
+
+// openDefects gives the open defects of a site by the number of their device.
+func (v *View) openDefects(sv *siteView) (map[uint32][]SnapshotDefect, error) {
+	out := map[uint32][]SnapshotDefect{}
+	err := v.scan(bktOpen, put32(nil, sv.ord), func(_, row []byte) error {
+		n := read32(row)
+		if _, met := out[n]; met {
+			return nil
+		}
+		fl, err := unpackDefects(v.tx.Bucket(bktDefect).Get(workKey(sv.ord, n)))
+		if err != nil {
+			return err
+		}
+		for _, d := range fl.Defects {
+			if d.Closed != nil {
+				continue
+			}
+			one := SnapshotDefect{ID: d.ID, Cause: d.Cause, Severity: d.Severity, State: d.State, Opened: d.Opened, Text: d.Text, Repaired: d.Repaired != nil, Due: d.Due, Parts: d.Parts}
+			if d.Safe != nil {
+				one.Safe = d.Safe.Text
+			}
+			out[n] = append(out[n], one)
+		}
+		return nil
+	})
+	return out, err
 }

@@ -91,6 +91,7 @@ func (b *builder) all(progress func(done, total int)) error {
 		return err
 	}
 	b.stories()
+	b.defects()
 	b.madeRounds()
 	for day := b.first - setupDays; day < b.today; day++ {
 		if err := b.ctx.Err(); err != nil {

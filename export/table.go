@@ -2,6 +2,7 @@ package export
 
 import (
 	"bufio"
+	"cmp"
 	"encoding/json"
 	"fmt"
 	"io"
@@ -47,11 +48,13 @@ func Table(w io.Writer, src WorkbookSource, sheet, format string) error {
 		return fmt.Errorf("table: %w", err)
 	}
 	out := bufio.NewWriterSize(w, 1<<16)
-	b := &book{words: words, demo: src.Demo, src: &src, named: map[string]string{}, used: map[string]bool{}, flatKey: sheet, flat: &csvRows{out: out}}
+	b := &book{words: words, demo: src.Demo, src: &src, named: map[string]string{}, used: map[string]bool{}, mentioned: map[string]int{}, flatKey: sheet, flat: &csvRows{out: out}}
 	if format == "jsonl" {
 		b.flat = &jsonRows{out: out}
 	}
-	write := map[string]func() error{"register": b.register, "entries": b.entries, "readings": b.entries, "flags": b.entries, "due": b.due, "limits": b.limits}[sheet]
+	write := map[string]func() error{"register": b.register, "entries": b.entries, "readings": b.entries, "flags": b.entries, "corrections": b.entries, "imported": b.entries, "due": b.due,
+		"limits": b.limits, "defects": b.defects, "compliance": b.compliance, "gaps": b.gaps, "instruments": b.instruments, "plans": b.plans, "refused": b.refused, "sample": b.sample,
+		"explained": b.explained, "people": func() error { return cmp.Or(b.entries(), b.plans(), b.people()) }}[sheet]
 	if err := write(); err != nil {
 		return fmt.Errorf("table %s: %w", sheet, err)
 	}

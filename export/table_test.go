@@ -17,6 +17,7 @@ import (
 
 	"github.com/xuri/excelize/v2"
 
+	"tripwell/static"
 	"tripwell/store"
 )
 
@@ -67,7 +68,7 @@ func TestTable_SameCellsAsTheWorkbook(t *testing.T) {
 			}
 			objects = append(objects, o)
 		}
-		name := strings.ToUpper(sheet[:1]) + sheet[1:]
+		name := sheetName(t, sheet)
 		want, err := f.GetRows(name)
 		if err != nil {
 			t.Fatal(err)
@@ -149,6 +150,15 @@ func TestTable_JSONKeepsTypesAndMoments(t *testing.T) {
 	if _, err := time.Parse(time.RFC3339, first["received"].(string)); err != nil {
 		t.Error(err)
 	}
+}
+
+func sheetName(t *testing.T, key string) string {
+	t.Helper()
+	words, err := static.ReadWords("en")
+	if err != nil {
+		t.Fatal(err)
+	}
+	return words.Say("sheet.name." + key)
 }
 
 func TestTable_Refusals(t *testing.T) {

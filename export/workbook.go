@@ -34,7 +34,16 @@ type WorkbookSource struct {
 	Due     iter.Seq2[DueLine, error]
 	Limits  []LimitLine
 
-	PersonName func(id string) string // from the directory, "" unknown; may be nil
+	Defects     []DefectLine
+	Instruments []store.Instrument
+	Plans       []PlanLine
+	Months      []MonthLine // by site, then month
+	Gaps        []GapLine
+	Refusals    []RefusalLine
+	Samples     []SampleLine
+
+	Person     func(id string) store.Person // from the directory, the id alone where unknown; may be nil
+	PersonName func(id string) string       // from the directory, "" unknown; may be nil
 }
 
 // LogLine is the size and root of one log, with its site's code ("" for org and office).
@@ -105,14 +114,17 @@ type book struct {
 	named  map[string]string // words looked up by section and code
 	used   map[string]bool   // limit set revisions that judged an entry
 
+	mentioned            map[string]int // people the rows name, with the tests they made
+	monthsFrom, monthsTo int            // rows of Compliance that the chart draws
+
 	flat    flatRows // for Table: takes the rows of one sheet
 	flatKey string
 }
 
 func (b *book) say(key string, pairs ...any) string { return b.words.Say(key, pairs...) }
 
-// Workbook writes the auditor's workbook: Cover, Register, Entries, Readings, Flags, Due, Limits. Rows are streamed, so
-// memory does not grow with their number.
+// Workbook writes the auditor's workbook, sheet by sheet in the order of sheetOrder. Rows of the long sheets are streamed, so
+// memory does not grow with the number of tests.
 func Workbook(w io.Writer, src WorkbookSource) (err error) {
 	words, err := static.ReadWords("en")
 	if err != nil {
@@ -127,7 +139,7 @@ func Workbook(w io.Writer, src WorkbookSource) (err error) {
 	parts := &sheetParts{}
 	defer parts.remove()
 	f.SetZipWriter(func(io.Writer) excelize.ZipWriter { return newDirectZip(w, parts) })
-	b := &book{file: f, parts: parts, words: words, demo: src.Demo, src: &src, named: map[string]string{}, used: map[string]bool{}}
+	b := &book{file: f, parts: parts, words: words, demo: src.Demo, src: &src, named: map[string]string{}, used: map[string]bool{}, mentioned: map[string]int{}}
 	if b.styles, err = makeStyles(f); err != nil {
 		return err
 	}
@@ -142,7 +154,8 @@ func Workbook(w io.Writer, src WorkbookSource) (err error) {
 }
 
 // sheetOrder is the order of the sheets by key.
-var sheetOrder = []string{"cover", "register", "entries", "readings", "flags", "due", "limits"}
+var sheetOrder = []string{"cover", "register", "entries", "readings", "flags", "due", "defects", "corrections", "compliance", "gaps", "instruments", "plans", "limits",
+	"people", "imported", "refused", "sample", "explained"}
 
 func (b *book) write() error {
 	for i, key := range sheetOrder {
@@ -160,7 +173,7 @@ func (b *book) write() error {
 	if err := b.docProps(); err != nil {
 		return err
 	}
-	for _, part := range []func() error{b.register, b.entries, b.due, b.limits, b.cover} {
+	for _, part := range []func() error{b.register, b.entries, b.due, b.defects, b.compliance, b.gaps, b.instruments, b.plans, b.limits, b.people, b.refused, b.sample, b.explained, b.cover, b.chart} {
 		if err := part(); err != nil {
 			return err
 		}

@@ -16,29 +16,61 @@ func (b *book) cover() error {
 	if err := b.pageSetup(name); err != nil {
 		return err
 	}
-	sw, err := b.file.NewStreamWriter(name)
-	if err != nil {
+	f := b.file
+	if err := f.SetColWidth(name, "A", "A", 30); err != nil {
 		return err
 	}
-	for i, width := range []float64{30, 110} {
-		if err := sw.SetColWidth(i+1, i+1, width); err != nil {
+	if err := f.SetColWidth(name, "B", "B", 110); err != nil {
+		return err
+	}
+	row := 0
+	put := func(column, text string, style int) error {
+		at := column + strconv.Itoa(row)
+		if err := f.SetCellStr(name, at, cellText(text)); err != nil {
 			return err
 		}
+		return f.SetCellStyle(name, at, at, style)
 	}
-	for i, line := range b.coverLines() {
-		style := b.styles.wrapped
+	for _, line := range b.coverLines() {
+		row++
+		style, label := b.styles.wrapped, b.styles.label
 		if line.fixed {
 			style = b.styles.fixed
 		}
-		cells := []any{excelize.Cell{StyleID: b.styles.label, Value: cellText(line.label)}, excelize.Cell{StyleID: style, Value: cellText(line.text)}}
 		if line.style != 0 {
-			cells = []any{excelize.Cell{StyleID: line.style, Value: cellText(line.label)}}
+			label = line.style
 		}
-		if err := sw.SetRow("A"+strconv.Itoa(i+1), cells); err != nil {
+		if err := put("A", line.label, label); err != nil {
 			return err
 		}
+		if line.text != "" {
+			if err := put("B", line.text, style); err != nil {
+				return err
+			}
+		}
 	}
-	return sw.Flush()
+	return b.coverCode(name, row+2)
+}
+
+// coverCode draws the head as a code, so that a printed cover is a witness: whoever keeps the paper can hold a later bundle
+// against it.
+func (b *book) coverCode(name string, row int) error {
+	head := strings.TrimSpace(b.src.Head)
+	if head == "" {
+		return nil
+	}
+	code, err := CodePNG(head, 4)
+	if err != nil {
+		return nil // a head too long for a code is still there in letters
+	}
+	at := "B" + strconv.Itoa(row)
+	if err := b.file.SetCellStr(name, "A"+strconv.Itoa(row), b.say("sheet.cover.head_code")); err != nil {
+		return err
+	}
+	if err := b.file.SetCellStyle(name, "A"+strconv.Itoa(row), "A"+strconv.Itoa(row), b.styles.label); err != nil {
+		return err
+	}
+	return b.file.AddPictureFromBytes(name, at, &excelize.Picture{Extension: ".png", File: code, Format: &excelize.GraphicOptions{AltText: b.say("sheet.cover.head_code"), ScaleX: 1, ScaleY: 1}})
 }
 
 // coverLine is a label and what it says; with a style of its own it is a line across.

@@ -35,7 +35,7 @@ var flagColumns = []column{
 	{"flag", 50, textCell}, {"detail", 50, textCell}, {"entry_id", 38, textCell},
 }
 
-// entries writes Entries, Readings and Flags in one pass, so that each entry is read and judged once.
+// entries writes Entries, Readings, Flags, Corrections and Imported in one pass, so that each entry is read and judged once.
 func (b *book) entries() error {
 	entries, err := b.sheet("entries", entryColumns)
 	if err != nil {
@@ -49,9 +49,26 @@ func (b *book) entries() error {
 	if err != nil {
 		return err
 	}
+	corrections, err := b.sheet("corrections", correctionColumns)
+	if err != nil {
+		return err
+	}
+	imported, err := b.sheet("imported", importedColumns)
+	if err != nil {
+		return err
+	}
 	for e, err := range b.src.Entries {
 		if err != nil {
 			return err
+		}
+		b.mentionEntry(e)
+		if err := b.correctionRows(corrections, e); err != nil {
+			return err
+		}
+		if e.Imported {
+			if err := b.importedRow(imported, e); err != nil {
+				return err
+			}
 		}
 		if err := b.entryRow(entries, e); err != nil {
 			return err
@@ -67,12 +84,21 @@ func (b *book) entries() error {
 			}
 		}
 	}
-	for _, s := range []*sheet{entries, readings, flags} {
+	for _, s := range []*sheet{entries, readings, flags, corrections, imported} {
 		if err := s.close(); err != nil {
 			return err
 		}
 	}
 	return nil
+}
+
+// mentionEntry counts a test for whoever made it, and notes who else its row names.
+func (b *book) mentionEntry(e EntryLine) {
+	if e.By != "" {
+		b.mentioned[e.By]++
+	}
+	b.mention(e.ReadBy)
+	b.mention(e.TypedBy)
 }
 
 // flag says a flag in words, with what it is about filled in.

@@ -131,7 +131,8 @@ func wantCells(t *testing.T, what string, got, want map[string]string) {
 
 func TestWorkbook_SheetsInOrder(t *testing.T) {
 	f := opened(t, handSource(t, false))
-	want := []string{"Cover", "Register", "Entries", "Readings", "Flags", "Due", "Limits"}
+	want := []string{"Cover", "Register", "Entries", "Readings", "Flags", "Due", "Defects", "Corrections", "Compliance", "Protection gaps", "Instruments", "Plans", "Limits",
+		"People", "Imported", "Refused", "Sample", "Columns"}
 	if got := f.GetSheetList(); !slices.Equal(got, want) {
 		t.Errorf("got sheets %v, want %v", got, want)
 	}

@@ -88,6 +88,9 @@ func FromView(v *store.View, ask WorkbookAsk) (WorkbookSource, error) {
 		return src, err
 	}
 	src.Limits = limitLines(words, sets, asked)
+	if err := src.moreLines(v, ask); err != nil {
+		return src, err
+	}
 	src.Devices = deviceLines(v, src.Sites)
 	src.Due = dueLines(v, src.Sites, ask.Now)
 	reader := entryReader{view: v, ask: ask, sets: map[string]*forms.LimitSet{}, forms: map[string]*forms.Form{}}

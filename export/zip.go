@@ -7,6 +7,7 @@ import (
 	"io"
 	"io/fs"
 	"maps"
+	"regexp"
 	"slices"
 
 	"github.com/klauspost/compress/flate"
@@ -66,6 +67,9 @@ func (z *directZip) Close() error {
 func (z *directZip) write(out io.Writer, name string) error {
 	part, rows := z.held[name].Bytes(), z.parts.of[name]
 	if rows == nil {
+		if name == contentTypes {
+			part = sortedDefaults(part)
+		}
 		_, err := out.Write(part)
 		return err
 	}
@@ -81,4 +85,24 @@ func (z *directZip) write(out io.Writer, name string) error {
 	}
 	_, err := out.Write(part[end:])
 	return err
+}
+
+// contentTypes lists the kinds of parts (ECMA-376 part 2, 10.1.2).
+const contentTypes = "[Content_Types].xml"
+
+var defaultType = regexp.MustCompile(`<Default [^>]*></Default>`)
+
+// sortedDefaults puts the kinds by file ending in order: for a picture excelize adds them in the order of a map.
+func sortedDefaults(part []byte) []byte {
+	list := defaultType.FindAll(part, -1)
+	sorted := make([][]byte, len(list))
+	for i := range list {
+		sorted[i] = bytes.Clone(list[i])
+	}
+	slices.SortFunc(sorted, bytes.Compare)
+	n := 0
+	return defaultType.ReplaceAllFunc(part, func([]byte) []byte {
+		n++
+		return sorted[n-1]
+	})
 }

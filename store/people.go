@@ -71,6 +71,12 @@ func readPerson(tx *bbolt.Tx, id string) (p Person, err error) {
 	return p, nil
 }
 
+// Person gives a person of the directory; ok is false for an id it does not hold.
+func (v *View) Person(id string) (p Person, ok bool) {
+	p, err := readPerson(v.tx, id)
+	return p, err == nil
+}
+
 // PersonName gives a name from the directory, "" where there is none.
 func (v *View) PersonName(id string) string {
 	p, err := readPerson(v.tx, id)

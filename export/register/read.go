@@ -214,11 +214,11 @@ func (r *reader) table(sheet intake.Sheet, sheets int) Table {
 	return t
 }
 
-// isResults tells the headings of entries, readings and dates, as the workbook has them, from those of a register.
+// isResults tells the headings of the sheets of a workbook that are no register from those of a register.
 func isResults(head []intake.Cell) bool {
 	return slices.ContainsFunc(head, func(c intake.Cell) bool {
 		switch intake.Label(c.Text) {
-		case "entry_id", "limit_id", "test_day", "verdict", "due", "flag":
+		case "entry_id", "limit_id", "test_day", "verdict", "due", "flag", "defect", "gap", "in_time", "instrument_id", "person_id", "sha_256", "duty", "meaning", "to_see_for_5":
 			return true
 		}
 		return false

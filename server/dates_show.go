@@ -10,7 +10,7 @@ import (
 )
 
 // datesShown is how many dates the page lists.
-const datesShown = 500
+const datesShown = 200
 
 // datesPage lists tests by their date, as they stand on a day.
 type datesPage struct {
@@ -89,20 +89,22 @@ func (s *Server) buildDates(v *store.View, ask datesAsk, view *datesPage) error 
 	if window, bounded := windows[ask.within]; bounded {
 		query.Until = ask.on + window
 	}
-	overdue, coming, shown := 0, 0, 0
+	overdue, coming, err := v.CountDue(query)
+	if err != nil {
+		return err
+	}
+	shown := 0
 	for row, err := range v.Due(query) {
 		if err != nil {
 			return err
 		}
-		late := row.State == "overdue"
-		if late {
-			overdue++
-		} else if coming++; ask.within == "late" {
+		if row.State != forms.Overdue && ask.within == "late" {
 			continue
 		}
-		if shown++; shown <= datesShown {
-			view.add(k.dueGroup(row, ask), s.dateRow(row, names[row.Device.Site], ask))
+		if shown++; shown > datesShown {
+			break
 		}
+		view.add(k.dueGroup(row, ask), s.dateRow(row, names[row.Device.Site], ask))
 	}
 	for i, g := range view.Groups {
 		view.Groups[i].Count = k.say("office.dates.count", "n", len(g.Rows))

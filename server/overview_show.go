@@ -35,6 +35,7 @@ type siteRow struct {
 	FailedHref, OverdueHref  string // empty where there is none
 	Next                     string
 	Late                     bool
+	Year                     strip
 }
 
 // decision is one device that failed, with what failed and since when.
@@ -54,7 +55,7 @@ func (s *Server) overviewShow(c echo.Context) error {
 }
 
 func (s *Server) buildOverview(v *store.View, view *overviewPage) error {
-	sums, err := siteSums(v, s.store.Now())
+	sums, err := v.SitesSums()
 	if err != nil {
 		return err
 	}

@@ -37,8 +37,8 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 	must(t, err)
 	path, size := svgPath(dark)
 	sites := []siteRow{
-		{Href: "/sites/BRACKEN", Name: "Bracken Row Apartments", Code: "BRACKEN", Devices: "148", Failed: "1", Overdue: "0", FailedHref: "/sites/BRACKEN?state=failed", Next: "Fri 4 Dec · button"},
-		{Href: "/sites/OTTERMOOR", Name: "Ottermoor Swim Hall", Code: "OTTERMOOR", Devices: "74", Failed: "2", Overdue: "31", FailedHref: "/sites/OTTERMOOR?state=failed", OverdueHref: "/sites/OTTERMOOR?state=overdue", Next: "since Mon 30 Nov · button", Late: true},
+		{Href: "/sites/BRACKEN", Name: "Bracken Row Apartments", Code: "BRACKEN", Devices: "148", Failed: "1", Overdue: "0", FailedHref: "/sites/BRACKEN?state=failed", Next: "Fri 4 Dec · button", Year: strip{Href: "/compliance?site=A", Label: "Dates kept: Jan 2026 98 %", Months: []string{"b9 most", "b0 none"}}},
+		{Href: "/sites/OTTERMOOR", Name: "Ottermoor Swim Hall", Code: "OTTERMOOR", Devices: "74", Failed: "2", Overdue: "31", FailedHref: "/sites/OTTERMOOR?state=failed", OverdueHref: "/sites/OTTERMOOR?state=overdue", Next: "since Mon 30 Nov · button", Late: true, Year: strip{Href: "/compliance?site=A", Label: "Dates kept: Jan 2026 98 %", Months: []string{"b9 most", "b0 none"}}},
 	}
 	conflicts := []conflictLine{{Text: "Rating: 20 stands; 15 was given by Crew 2 on 3 Nov 2026.", Href: "/records/0197b2c0-0000-7000-8000-000000000001"}}
 	device := devicePage{
@@ -123,6 +123,12 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 			Rows: []dateMoved{{Href: "/devices/1", Spot: "Reel 4", Where: "Depot", Task: "Receptacle test", Was: "1 Dec 2026", Becomes: "1 Nov 2026", WasLate: true, Late: true}}, More: "3 more.", Hidden: []hidden{{"record", "1"}}, Back: "/plans"},
 		"asked.html": askedPage{Frame: frameOf("Storms", "sites"), Crumbs: []link{{Href: "/sites/KILN-LANE", Text: "Kiln Lane Day Clinic"}}, Heading: "What asks for tests at once", Lead: "Tests of that day meet it.", Actions: []link{{Href: "/sites/KILN-LANE/occasion", Text: "Something happened", Here: true}},
 			Occasions: []askedRow{{What: "lightning storm", Days: "Sat 4 Jul", Where: "The whole site", Text: "Main switch tripped", By: "Manager 1"}}, Pauses: []askedRow{{Href: "/1", Days: "1 Dec to 24 Dec 2026", Where: "12 devices", Text: "Ward closed", By: "Manager 1", Now: true}}},
+		"compliance.html": compliancePage{Frame: frameOf("Dates kept", "dates"), Heading: "Kiln Lane Day Clinic: 93 % of the dates kept.", Under: "1 Jan to 1 Dec 2026: 812 dates.", From: "2026-01-01", To: "2026-12-01", Wrong: "The span ends before it begins.",
+			Sites: choices("KILN-LANE", "KILN-LANE", "Kiln Lane Day Clinic"), Known: choices("now", "now", "As known now", "then", "As known then"), Bars: []keptBar{{"b10 all", "Jan 2026", "100 %"}, {"b7 few", "Feb 2026", "71 %"}}, Actions: []link{{Href: "/sites/KILN-LANE/calendar", Text: "Month calendar"}},
+			Tables:       []keptTable{{"Month by month", "Month", []keptRow{{Name: "Jan 2026", Due: "68", InTime: "60", Graced: "1", Late: "2", Missed: "4", NoAccess: "1", Open: "0", P: "89 %"}}}, {"Site by site", "Site", []keptRow{{Name: "Kiln Lane", Href: "/compliance?site=KILN-LANE", Due: "1"}}}},
+			StandingHead: "How dates stood", Standing: []standingLine{{"Button test", "GFCI receptacle", "1", "2", "3", "4", "5", "6"}}},
+		"calendar.html": calendarPage{Frame: frameOf("Kiln Lane Day Clinic", "sites"), Crumbs: []link{{Href: "/sites/KILN-LANE", Text: "Kiln Lane Day Clinic"}}, Heading: "Kiln Lane Day Clinic, Dec 2026", Under: "41 tests in time.", Before: link{Href: "/1", Text: "Nov 2026"}, After: link{Href: "/2", Text: "Jan 2027"}, Days: []string{"Mon", "Tue"},
+			Weeks: [][]calendarDay{{{}, {Number: "1", Name: "Tuesday 1 December 2026", Today: true, Done: "12 done", Late: "1 late", Missed: "2 missed", Coming: "3 due", Href: "/dates"}}}},
 		"setup.html":    s.setupSample(),
 		"limits.html":   s.limitsSample(),
 		"revision.html": revisionSample(),

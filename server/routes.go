@@ -88,6 +88,8 @@ func publicRoutes() []route {
 		{post, "/reminders/calendar/revoke", signed, (*Server).feedRevoke, 0},
 		{post, "/reminders/digest", signed, (*Server).digestUpdate, 0},
 		{get, "/set-up", signed, (*Server).setupShow, 0},
+		{get, "/compliance", signed, (*Server).complianceShow, 0},
+		{get, "/sites/:site/calendar", signed, (*Server).calendarShow, 0},
 		{get, "/plans", signed, (*Server).plansShow, 0},
 		{get, "/plans/:plan", signed, (*Server).planShow, 0},
 		{get, "/sites/:site/asked", signed, (*Server).askedShow, 0},

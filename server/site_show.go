@@ -1,12 +1,12 @@
 package server
 
 import (
+	"cmp"
 	"net/http"
 	"net/url"
 	"sort"
 	"strconv"
 	"strings"
-	"time"
 
 	"github.com/labstack/echo/v4"
 
@@ -55,7 +55,7 @@ type registerRow struct {
 func (s *Server) sitesShow(c echo.Context) error {
 	view := sitesPage{Frame: s.frame(c, s.words.Say("office.site.title"), "sites")}
 	err := s.store.View(scope(c), func(v *store.View) error {
-		sums, err := siteSums(v, s.store.Now())
+		sums, err := v.SitesSums()
 		for _, one := range sums {
 			view.Sites = append(view.Sites, s.siteRow(one, s.today(one.Site)))
 		}
@@ -74,23 +74,6 @@ func (s *Server) sitesShow(c echo.Context) error {
 	return s.page(c, http.StatusOK, "sites.html", view)
 }
 
-// siteSums counts every site of the scope on its own today.
-func siteSums(v *store.View, now time.Time) ([]store.SiteSums, error) {
-	sites, err := v.Sites()
-	if err != nil {
-		return nil, err
-	}
-	var out []store.SiteSums
-	for _, site := range sites {
-		sums, err := v.SiteSums(site.ID, forms.DayOf(now.In(site.Location())))
-		if err != nil {
-			return nil, err
-		}
-		out = append(out, sums)
-	}
-	return out, nil
-}
-
 func (s *Server) siteRow(sums store.SiteSums, today forms.Day) siteRow {
 	k := s.ink()
 	row := siteRow{
@@ -103,6 +86,7 @@ func (s *Server) siteRow(sums store.SiteSums, today forms.Day) siteRow {
 	if sums.Overdue > 0 {
 		row.OverdueHref = row.Href + "?state=overdue"
 	}
+	row.Year = k.strip("/compliance?site="+url.QueryEscape(cmp.Or(sums.Site.Code, sums.Site.ID)), sums.Year)
 	if sums.NextDay != forms.NoDay && sums.NextTask != "" {
 		row.Next = joined(k.near(sums.NextDay, today), lowerFirst(k.named("task", sums.NextTask)))
 		if sums.NextDay < today {
@@ -175,7 +159,7 @@ func (s *Server) buildRegister(v *store.View, site store.Site, ask registerAsk, 
 	view.Pager = registerPager(k, siteHref(site), ask, found)
 	view.Actions = []link{{Href: siteHref(site) + "/circuits", Text: k.say("office.circuit.list")}, {Href: siteHref(site) + "/protection", Text: k.say("office.protection.title")}}
 	if view.Change {
-		view.Actions = append(view.Actions, link{Href: siteHref(site) + "/devices/new", Text: k.say("office.device.new"), Here: true}, link{Href: siteHref(site) + "/edit", Text: k.say("office.site.edit")}, link{Href: siteHref(site) + "/asked", Text: k.say("asked.title")})
+		view.Actions = append(view.Actions, link{Href: siteHref(site) + "/devices/new", Text: k.say("office.device.new"), Here: true}, link{Href: siteHref(site) + "/edit", Text: k.say("office.site.edit")}, link{Href: siteHref(site) + "/asked", Text: k.say("asked.title")}, link{Href: siteHref(site) + "/calendar", Text: k.say("kept.open_calendar")})
 	}
 	return nil
 }

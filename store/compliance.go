@@ -42,10 +42,12 @@ func (v *View) Compliance(ask ComplianceAsk) (Compliance, error) {
 	if err != nil {
 		return Compliance{}, err
 	}
+	sites = slices.Clone(sites)
 	slices.SortFunc(sites, func(a, b *siteView) int { return cmp.Or(cmp.Compare(a.Code, b.Code), cmp.Compare(a.ID, b.ID)) })
 	out := Compliance{Rows: []ComplianceRow{}, Standing: []StandingRow{}}
 	for _, sv := range sites {
 		r := complianceReader{v: v, sv: sv, ask: ask, rows: map[ComplianceRow]forms.Count{}, standing: map[standingKey]map[string]int{}}
+		r.take = r.count
 		if err := r.read(); err != nil {
 			return out, err
 		}
@@ -66,6 +68,7 @@ type complianceReader struct {
 	whole    *saidOfWholeSite
 	rows     map[ComplianceRow]forms.Count // keys carry no count
 	standing map[standingKey]map[string]int
+	take     func(kind string, o forms.Obligation)
 }
 
 func (r *complianceReader) read() error {
@@ -108,11 +111,11 @@ func (r *complianceReader) device(n uint32, w *work) error {
 	for _, t := range schedule.Follow(until(c, r.on), never) {
 		takeUntil(&t, all, r.on)
 		for _, o := range t.Done {
-			r.count(w.kind, o)
+			r.take(w.kind, o)
 		}
 		if _, inUse := t.Next(); inUse {
 			for _, o := range t.Waiting(r.on) {
-				r.count(w.kind, o)
+				r.take(w.kind, o)
 			}
 		}
 	}
@@ -316,4 +319,45 @@ func (r *complianceReader) into(out *Compliance) {
 	slices.SortFunc(out.Standing[from:], func(a, b StandingRow) int {
 		return cmp.Or(cmp.Compare(a.Task, b.Task), cmp.Compare(a.Kind, b.Kind))
 	})
+}
+
+// DayRow counts the dates of one day: those met on it, and those whose last day it was or is.
+type DayRow struct {
+	Day    forms.Day
+	InTime int // met on it, in time or within the grace
+	Late   int // met on it, too late
+	Missed int // its last day, and not met since
+	Open   int // its last day, still ahead
+}
+
+// Days counts a site's dates by day, from one day to another, as known now.
+func (v *View) Days(site string, from, to forms.Day) ([]DayRow, error) {
+	sv, err := v.siteNamed(site)
+	if err != nil {
+		return nil, err
+	}
+	out := make([]DayRow, max(0, to-from+1))
+	for i := range out {
+		out[i].Day = from + forms.Day(i)
+	}
+	at := func(d forms.Day) *DayRow {
+		if d < from || d > to {
+			return new(DayRow)
+		}
+		return &out[d-from]
+	}
+	r := complianceReader{v: v, sv: sv, ask: ComplianceAsk{From: from, To: to, Known: forms.NoDay}, standing: map[standingKey]map[string]int{}}
+	r.take = func(_ string, o forms.Obligation) {
+		switch o.Outcome(r.on) {
+		case forms.InTime, forms.Graced:
+			at(o.Met).InTime++
+		case forms.Late:
+			at(o.Met).Late++
+		case forms.Open:
+			at(o.Due).Open++
+		default:
+			at(o.Due).Missed++
+		}
+	}
+	return out, r.read()
 }

@@ -94,15 +94,7 @@ func (v *View) sitesAsked(site string) ([]*siteView, error) {
 		sv, err := v.siteNamed(site)
 		return []*siteView{sv}, err
 	}
-	var out []*siteView
-	err := v.scan(bktSite, nil, func(k, _ []byte) error {
-		sv, ok, err := v.openOrd(read32(k))
-		if ok && sv.Code != "" {
-			out = append(out, sv)
-		}
-		return err
-	})
-	return out, err
+	return v.everySite()
 }
 
 // siteDefects reads the index of open ones where no closed one is asked for, else every device that ever had any.

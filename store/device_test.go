@@ -90,8 +90,8 @@ func TestDevice_DatesFollowItsTests(t *testing.T) {
 	r.put("entry.made", site, id, button("yes", "yes"))
 	check("pressed in December", "button", "2027-01-31 upcoming")
 	failed := r.put("entry.made", site, id, button("no", "no"))
-	if s := r.sums(site, today); s.Failed != 1 || len(s.LastFailed) != 1 || s.LastFailed[0].ID != id {
-		t.Errorf("after a fail: %d failed, rows %v", s.Failed, s.LastFailed)
+	if s := r.sums(site, today); s.Failed != 1 {
+		t.Errorf("after a fail of %s: %d failed", id, s.Failed)
 	}
 	r.put("entry.withdrawn", site, failed, map[string]any{"entry": failed, "reason": "another outlet"})
 	if s := r.sums(site, today); s.Failed != 0 {

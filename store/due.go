@@ -88,6 +88,40 @@ func (v *View) due(ask DueAsk, yield func(DueRow, error) bool) error {
 	return nil
 }
 
+// CountDue counts the dates a due list holds, whatever its limit: overdue on the day asked for, and the others. It reads
+// the sites' sums.
+func (v *View) CountDue(ask DueAsk) (overdue, others int, err error) {
+	logs := []uint32{overAllSites}
+	if ask.Site != "" || !v.scope.All {
+		sites, err := v.sitesAsked(ask.Site)
+		if err != nil {
+			return 0, 0, err
+		}
+		logs = logs[:0]
+		for _, sv := range sites {
+			logs = append(logs, sv.ord)
+		}
+	}
+	c := v.tx.Bucket(bktSum).Cursor()
+	for _, log := range logs {
+		prefix := put32(nil, log)
+		for k, n := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, n = c.Next() {
+			if ask.Until != forms.NoDay && readDay(k[4:]) > ask.Until {
+				break
+			}
+			d, u := readSum(k), unpacker{b: n}
+			switch count := int(u.uint()); {
+			case ask.Task != "" && d.Task != ask.Task:
+			case d.State(ask.On) == forms.Overdue:
+				overdue += count
+			default:
+				others += count
+			}
+		}
+	}
+	return overdue, others, nil
+}
+
 func (d *DeviceRow) due(task string) (Due, bool) {
 	for _, due := range d.Due {
 		if due.Task == task {
@@ -133,28 +167,14 @@ func (d *dueHeap) Pop() any {
 }
 
 func (v *View) dueHeads(site string) (dueHeap, error) {
-	var sites []*siteView
-	if site != "" {
-		sv, err := v.siteNamed(site)
-		if err != nil {
-			return nil, err
-		}
-		sites = append(sites, sv)
-	} else {
-		err := v.scan(bktSite, nil, func(k, _ []byte) error {
-			sv, ok, err := v.openOrd(read32(k))
-			if ok && sv.Code != "" {
-				sites = append(sites, sv)
-			}
-			return err
-		})
-		if err != nil {
-			return nil, err
-		}
+	sites, err := v.sitesAsked(site)
+	if err != nil {
+		return nil, err
 	}
-	var heads dueHeap
+	due := v.tx.Bucket(bktDue)
+	heads := make(dueHeap, 0, len(sites))
 	for _, sv := range sites {
-		h := &dueHead{site: sv, c: v.tx.Bucket(bktDue).Cursor()}
+		h := &dueHead{site: sv, c: due.Cursor()}
 		prefix := put32(nil, sv.ord)
 		if h.key, _ = h.c.Seek(prefix); len(h.key) > 12 && bytes.HasPrefix(h.key, prefix) {
 			heads = append(heads, h)

@@ -1,6 +1,7 @@
 package store
 
 import (
+	"encoding/binary"
 	"slices"
 
 	"tripwell/forms"
@@ -198,14 +199,22 @@ func (f *fold) packDates(key workID, w *work) {
 		if !hasDate(w.dates, d) {
 			f.on(bktDue).delete(dueKey(key.site, d.Due, key.n, d.Task))
 		}
-		f.sums[string(sumKey(key.site, d))]--
+		f.sumDate(key.site, d, -1)
 	}
 	for _, d := range w.dates {
 		if !hasDate(w.was.dates, d) {
 			f.on(bktDue).put(dueKey(key.site, d.Due, key.n, d.Task), []byte{})
 		}
-		f.sums[string(sumKey(key.site, d))]++
+		f.sumDate(key.site, d, 1)
 	}
+}
+
+// sumDate counts a date in its site's sums and in those over all sites.
+func (f *fold) sumDate(site uint32, d forms.DueDate, by int64) {
+	key := sumKey(site, d)
+	f.sums[string(key)] += by
+	binary.BigEndian.PutUint32(key, overAllSites)
+	f.sums[string(key)] += by
 }
 
 func hasDate(list []forms.DueDate, d forms.DueDate) bool {

@@ -9,6 +9,9 @@ import (
 	"tripwell/forms"
 )
 
+// overAllSites stands for the number of a log in the sums over all of them; logs count from 1.
+const overAllSites = 0
+
 // sumKey is what the dates have in common that a site counts together: enough to say on any day what they are.
 func sumKey(site uint32, d forms.DueDate) []byte {
 	b := putDay(put32(make([]byte, 0, 24+len(d.Task)), site), d.Due)

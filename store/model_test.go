@@ -1,7 +1,6 @@
 package store
 
 import (
-	"cmp"
 	"context"
 	"encoding/json"
 	"fmt"
@@ -76,7 +75,6 @@ func told(t testing.TB, s *Store, on forms.Day) string {
 				return err
 			}
 			out = append(out, open, past)
-			slices.SortFunc(sums.LastFailed, func(a, b DeviceRow) int { return cmp.Compare(a.ID, b.ID) })
 			out = append(out, full, sums, tallies, places, kept)
 			for row, err := range v.Devices(site.ID) {
 				if err != nil {

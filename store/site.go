@@ -32,16 +32,15 @@ type Conflict struct {
 
 // SiteSums counts one site on one day.
 type SiteSums struct {
-	Site       Site
-	Devices    int         // not retired
-	Overdue    int         // dates, not devices
-	Paused     int         // dates of which a pause holds the day
-	Year       []Month     // the twelve months that end with the day's, as known now
-	DueSoon    int         // dates within the 31 days after the day asked for, the day included
-	Failed     int         // devices of which some task failed and has not passed since
-	NextDay    forms.Day   // the earliest date that is overdue, else the earliest not yet passed; NoDay for none
-	NextTask   string      // of that date; of several the first by name
-	LastFailed []DeviceRow // at most 5, newest first
+	Site     Site
+	Devices  int       // not retired
+	Overdue  int       // dates, not devices
+	Paused   int       // dates of which a pause holds the day
+	Year     []Month   // the twelve months that end with the day's, as known now
+	DueSoon  int       // dates within the 31 days after the day asked for, the day included
+	Failed   int       // devices of which some task failed and has not passed since
+	NextDay  forms.Day // the earliest date that is overdue, else the earliest not yet passed; NoDay for none
+	NextTask string    // of that date; of several the first by name
 }
 
 func siteOf(id string, t *thing) Site {
@@ -50,16 +49,13 @@ func siteOf(id string, t *thing) Site {
 
 // Sites gives the registered sites of the scope, by code.
 func (v *View) Sites() ([]Site, error) {
+	every, err := v.everySite()
+	if err != nil {
+		return nil, err
+	}
 	var out []Site
-	c := v.tx.Bucket(bktSite).Cursor()
-	for k, _ := c.First(); k != nil; k, _ = c.Next() {
-		sv, ok, err := v.openOrd(read32(k))
-		if err != nil {
-			return nil, err
-		}
-		if ok && sv.Code != "" {
-			out = append(out, sv.Site)
-		}
+	for _, sv := range every {
+		out = append(out, sv.Site)
 	}
 	slices.SortFunc(out, func(a, b Site) int { return cmp.Or(cmp.Compare(a.Code, b.Code), cmp.Compare(a.ID, b.ID)) })
 	return out, nil
@@ -164,12 +160,36 @@ func (v *View) SiteSums(site string, on forms.Day) (SiteSums, error) {
 	if err != nil {
 		return SiteSums{}, err
 	}
-	sums := SiteSums{Site: sv.Site, NextDay: forms.NoDay}
-	if err := v.sumDates(sv, on, &sums); err != nil {
-		return sums, err
+	return v.sumSite(sv, on)
+}
+
+// SitesSums counts every site of the scope on its own today, by code.
+func (v *View) SitesSums() ([]SiteSums, error) {
+	sites, err := v.sitesAsked("")
+	if err != nil {
+		return nil, err
 	}
-	err = v.lastFailed(sv, on, &sums)
-	return sums, err
+	sites = slices.Clone(sites)
+	slices.SortFunc(sites, func(a, b *siteView) int { return cmp.Or(cmp.Compare(a.Code, b.Code), cmp.Compare(a.ID, b.ID)) })
+	out := make([]SiteSums, 0, len(sites))
+	for _, sv := range sites {
+		sums, err := v.sumSite(sv, sv.today)
+		if err != nil {
+			return nil, err
+		}
+		out = append(out, sums)
+	}
+	return out, nil
+}
+
+func (v *View) sumSite(sv *siteView, on forms.Day) (SiteSums, error) {
+	sums := SiteSums{Site: sv.Site, NextDay: forms.NoDay}
+	prefix := put32(nil, sv.ord)
+	c := v.tx.Bucket(bktFail).Cursor()
+	for k, _ := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, _ = c.Next() {
+		sums.Failed++
+	}
+	return sums, v.sumDates(sv, on, &sums)
 }
 
 // sumDates counts a site's devices and dates, and the months behind it: two short scans, whatever its size.
@@ -246,26 +266,6 @@ func (d *nextDate) take(date forms.DueDate, state string) {
 	if d.day == forms.NoDay || cmp.Or(cmp.Compare(order, d.order), cmp.Compare(date.Due, d.day), cmp.Compare(date.Task, d.task)) < 0 {
 		*d = nextDate{date.Due, date.Task, order}
 	}
-}
-
-func (v *View) lastFailed(sv *siteView, on forms.Day, sums *SiteSums) error {
-	prefix := put32(nil, sv.ord)
-	var keys [][]byte
-	c := v.tx.Bucket(bktFail).Cursor()
-	for k, _ := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, _ = c.Next() {
-		keys = append(keys, k)
-	}
-	sums.Failed = len(keys)
-	for i := len(keys) - 1; i >= 0 && len(sums.LastFailed) < 5; i-- {
-		row, ok, err := v.rowAt(sv, read32(keys[i][8:]), on)
-		if err != nil {
-			return err
-		}
-		if ok {
-			sums.LastFailed = append(sums.LastFailed, row)
-		}
-	}
-	return nil
 }
 
 // MonthTally counts the results of one task in one month of test days.

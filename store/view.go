@@ -2,6 +2,7 @@ package store
 
 import (
 	"bytes"
+	"sync"
 	"time"
 
 	"go.etcd.io/bbolt"
@@ -23,6 +24,7 @@ type View struct {
 	opened  map[id16]*siteView
 	tested  map[string]testedWith // by instrument
 	counted map[string]*runs      // by installation and log
+	every   []*siteView           // the registered sites of the scope, once they were asked for
 	refused map[numbered]bool
 }
 
@@ -67,13 +69,8 @@ func (v *View) open(site string) (*siteView, error) {
 	ord := uint32(u.uint())
 	sv := &siteView{ord: ord, id: id, Site: Site{ID: site}, zone: time.UTC, places: map[id16]*Place{},
 		circuits: map[id16]circuit{}, panels: map[id16]string{}, tags: map[id16]string{}, devices: map[id16]*deviceThing{}}
-	t, ok, err := v.thing(sv, ofSite, id)
-	if err != nil {
+	if err := v.readSite(sv); err != nil {
 		return nil, err
-	}
-	if ok {
-		sv.Site = siteOf(site, &t)
-		sv.zone = location(sv.Zone)
 	}
 	sv.today = forms.DayOf(v.s.Now().In(sv.zone))
 	if v.opened == nil {
@@ -81,6 +78,73 @@ func (v *View) open(site string) (*siteView, error) {
 	}
 	v.opened[id] = sv
 	return sv, nil
+}
+
+// everySite gives the registered sites of the scope, in the order they were met in the book. The list must not be changed.
+func (v *View) everySite() ([]*siteView, error) {
+	if v.every != nil {
+		return v.every, nil
+	}
+	var out []*siteView
+	err := v.scan(bktSite, nil, func(k, _ []byte) error {
+		sv, ok, err := v.openOrd(read32(k))
+		if ok && sv.Code != "" {
+			out = append(out, sv)
+		}
+		return err
+	})
+	v.every = out
+	return out, err
+}
+
+// readSite reads what the register says of a site itself.
+func (v *View) readSite(sv *siteView) error {
+	n, ok := v.number(sv, ofSite, sv.id)
+	if !ok {
+		return nil
+	}
+	row := v.tx.Bucket(bktRegister).Get(registerKey(sv.ord, ofSite, n))
+	if row == nil {
+		return nil
+	}
+	site, known := sitesRead.get(row)
+	if !known {
+		t, err := unpackThing(row)
+		if err != nil {
+			return err
+		}
+		site = siteOf(sv.ID, &t)
+		sitesRead.put(row, site)
+	}
+	sv.Site, sv.zone = site, location(site.Zone)
+	return nil
+}
+
+// sitesRead keeps what rows of sites say, by their bytes: a list of thousands must not be read anew for every page.
+var sitesRead = siteRows{known: map[string]Site{}}
+
+type siteRows struct {
+	mu    sync.RWMutex
+	known map[string]Site
+}
+
+// siteRowsMost bounds what is held.
+const siteRowsMost = 20_000
+
+func (s *siteRows) get(row []byte) (Site, bool) {
+	s.mu.RLock()
+	defer s.mu.RUnlock()
+	site, ok := s.known[string(row)]
+	return site, ok
+}
+
+func (s *siteRows) put(row []byte, site Site) {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	if len(s.known) >= siteRowsMost {
+		clear(s.known)
+	}
+	s.known[string(row)] = site
 }
 
 // openOrd opens the site of a number; ok is false for the organisation's log and for what the scope leaves out.

@@ -1,0 +1,93 @@
+package server
+
+import (
+	"net/http"
+	"strconv"
+
+	"github.com/labstack/echo/v4"
+
+	"tripwell/forms"
+	"tripwell/store"
+)
+
+// calendarPage is one month of a site, week by week from Monday.
+type calendarPage struct {
+	Frame
+	Crumbs         []link
+	Heading, Under string
+	Before, After  link
+	Days           []string // names of the days of a week
+	Weeks          [][]calendarDay
+}
+
+// calendarDay says what was done on a day and whose last day it was.
+type calendarDay struct {
+	Number, Name               string // empty: a day of another month
+	Today                      bool
+	Done, Late, Missed, Coming string
+	Href                       string
+}
+
+func (s *Server) calendarShow(c echo.Context) error {
+	site, err := s.siteOf(c)
+	if err != nil {
+		return err
+	}
+	today := s.today(site)
+	month := forms.MonthOf(today)
+	if typed := c.QueryParam("month"); typed != "" {
+		day, err := forms.ParseDay(typed + "-01")
+		if err != nil {
+			return refuse(codeInvalid, "month", s.words.Say("kept.bad_month"))
+		}
+		month = forms.MonthOf(day)
+	}
+	k := s.ink()
+	view := calendarPage{Frame: s.frame(c, site.Name, "sites"), Crumbs: []link{{Href: siteHref(site), Text: site.Name}}, Before: s.monthLink(site, month-1), After: s.monthLink(site, month+1)}
+	for i := range 7 {
+		view.Days = append(view.Days, k.list("office.day.wd", (i+1)%7))
+	}
+	err = s.store.View(scope(c), func(v *store.View) error {
+		days, err := v.Days(site.ID, forms.MonthStart(month), forms.MonthStart(month+1)-1)
+		if err == nil {
+			s.calendarWeeks(days, site, today, &view)
+			view.Heading = k.say("kept.calendar", "site", site.Name, "month", k.month(month))
+		}
+		return err
+	})
+	if err != nil {
+		return err
+	}
+	return s.page(c, http.StatusOK, "calendar.html", view)
+}
+
+func (s *Server) monthLink(site store.Site, month int32) link {
+	return link{Href: siteHref(site) + "/calendar?month=" + forms.MonthStart(month).String()[:7], Text: s.ink().month(month)}
+}
+
+// calendarWeeks lays days out in weeks (ISO 8601: from Monday).
+func (s *Server) calendarWeeks(days []store.DayRow, site store.Site, today forms.Day, view *calendarPage) {
+	k, sum := s.ink(), store.DayRow{}
+	week := make([]calendarDay, (int(days[0].Day.Time().Weekday())+6)%7, 7)
+	for _, d := range days {
+		one := calendarDay{Number: strconv.Itoa(d.Day.Time().Day()), Name: k.longDay(d.Day), Today: d.Day == today}
+		say := func(n int, key string) string {
+			if n == 0 {
+				return ""
+			}
+			return k.say(key, "n", n)
+		}
+		one.Done, one.Late, one.Missed, one.Coming = say(d.InTime, "kept.cell_done"), say(d.Late, "kept.cell_late"), say(d.Missed, "kept.cell_missed"), say(d.Open, "kept.cell_due")
+		if d.Missed+d.Open > 0 {
+			one.Href = "/dates?within=all&site=" + site.Code
+		}
+		sum.InTime, sum.Late, sum.Missed, sum.Open = sum.InTime+d.InTime, sum.Late+d.Late, sum.Missed+d.Missed, sum.Open+d.Open
+		if week = append(week, one); len(week) == 7 {
+			view.Weeks, week = append(view.Weeks, week), nil
+		}
+	}
+	if len(week) > 0 {
+		view.Weeks = append(view.Weeks, append(week, make([]calendarDay, 7-len(week))...))
+	}
+	view.Under = k.say("kept.calendar_under", "done", count(sum.InTime), "late", count(sum.Late), "missed", count(sum.Missed), "open", count(sum.Open))
+}

@@ -9,6 +9,7 @@ import (
 	"github.com/labstack/echo/v4"
 
 	"tripwell/export/digest"
+	"tripwell/forms"
 	"tripwell/store"
 )
 
@@ -23,7 +24,7 @@ func (s *Server) mailEdit(c echo.Context) error {
 	if !set {
 		m = store.MailSettings{Port: 587, TLS: store.MailStartTLS, Link: origin(c.Request())}
 	}
-	f, err := s.blankForm(map[string]string{"host": m.Host, "port": strconv.Itoa(m.Port), "tls": m.TLS, "user": m.User, "from": m.From, "link": m.Link, "trust": m.Trust})
+	f, err := s.blankForm(map[string]string{"host": m.Host, "port": strconv.Itoa(m.Port), "tls": m.TLS, "user": m.User, "from": m.From, "link": m.Link, "trust": m.Trust, "witnesses": strings.Join(m.Witnesses, "\n")})
 	if err != nil {
 		return err
 	}
@@ -52,6 +53,7 @@ func (s *Server) mailBack(c echo.Context, f *typedForm, said string) error {
 				{Name: "trust", Label: k.say("office.mail.trust"), Type: "text-area", Wide: true, Hint: k.say("office.mail.trust_hint")},
 			}},
 			{Legend: k.say("office.mail.group_message"), Fields: []field{{Name: "from", Label: k.say("office.mail.from"), Type: "email", Required: true}, {Name: "link", Label: k.say("office.mail.link"), Type: "url", Hint: k.say("office.mail.link_hint")}}},
+			{Legend: k.say("office.witness.group"), Note: k.say("office.witness.note"), Fields: []field{{Name: "witnesses", Label: k.say("office.witness.list"), Type: "text-area", Wide: true, Hint: s.witnessed()}}},
 			{Legend: k.say("office.mail.group_test"), Note: k.say("office.mail.test_note"), Fields: []field{{Name: "test_to", Label: k.say("office.mail.test_to"), Type: "email"}}},
 		}}
 	if said != "" {
@@ -70,7 +72,7 @@ func (s *Server) mailUpdate(c echo.Context) error {
 		return err
 	}
 	port, _ := strconv.Atoi(f.Get("port"))
-	m := store.MailSettings{Host: f.line("host", 200), Port: port, TLS: f.Get("tls"), User: f.line("user", 200), From: f.line("from", 200), Link: f.line("link", 200), Trust: strings.TrimSpace(f.Get("trust"))}
+	m := store.MailSettings{Host: f.line("host", 200), Port: port, TLS: f.Get("tls"), User: f.line("user", 200), From: f.line("from", 200), Link: f.line("link", 200), Trust: strings.TrimSpace(f.Get("trust")), Witnesses: strings.Fields(f.Get("witnesses"))}
 	if m.Link != "" && !isWebAddress(m.Link) {
 		f.refuse("link", s.words.Say("office.mail.link_bad"))
 	}
@@ -92,6 +94,19 @@ func (s *Server) mailUpdate(c echo.Context) error {
 		return s.mailBack(c, f, "")
 	}
 	return s.mailTest(c, f, m, to)
+}
+
+// witnessed tells what became of the last head for witnesses.
+func (s *Server) witnessed() string {
+	k := s.ink()
+	w, err := s.store.Witnessed()
+	switch {
+	case err != nil || w.Month == 0:
+		return k.say("office.witness.never")
+	case w.Fault != "":
+		return k.say("office.witness.failed", "day", k.day(forms.DayOf(w.At.UTC())), "text", w.Fault)
+	}
+	return k.say("office.witness.sent", "day", k.day(forms.DayOf(w.At.UTC())))
 }
 
 // mailSecret is what the form says of the password: nil = leave it.

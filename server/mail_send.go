@@ -45,6 +45,7 @@ func (s *Server) sendDue(ctx context.Context) {
 		}
 		return
 	}
+	s.sendHeads(ctx, settings)
 	all, err := s.store.Digests()
 	if err != nil {
 		s.log.Error("digests", "err", err)

@@ -86,8 +86,9 @@ var (
 	metaModel  = []byte("model")
 	settingURL = []byte("url")
 
-	settingBackup = []byte("backed_up")
-	settingMail   = []byte("mail")
+	settingBackup  = []byte("backed_up")
+	settingMail    = []byte("mail")
+	settingWitness = []byte("witnessed")
 )
 
 // formatVersion of the file; a newer one is refused.

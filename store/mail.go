@@ -37,7 +37,12 @@ type MailSettings struct {
 	Link string `json:"link,omitempty"` // address of the office, for links in messages
 	// Trust is the certificate authority of a house's own mail server, as PEM; "" trusts those the machine does.
 	Trust string `json:"trust,omitempty"`
+	// Witnesses are mailboxes outside the house that get a signed head every month.
+	Witnesses []string `json:"witnesses,omitempty"`
 }
+
+// witnessesMost bounds the list.
+const witnessesMost = 10
 
 const mailFile = "mail.secret"
 
@@ -67,6 +72,9 @@ func (s *Store) SetMailSettings(ctx context.Context, m MailSettings, secret *str
 		return &Error{Code: "invalid", Field: "trust", Text: "This is no certificate. Paste it with its lines BEGIN CERTIFICATE and END CERTIFICATE."}
 	case !IsMailAddress(m.From):
 		return &Error{Code: "invalid", Field: "from", Text: "The sender is a mail address, such as tests@example.org."}
+	}
+	if len(m.Witnesses) > witnessesMost || slices.ContainsFunc(m.Witnesses, func(to string) bool { return !IsMailAddress(to) }) {
+		return &Error{Code: "invalid", Field: "witnesses", Text: "Write up to ten mail addresses of witnesses, one a line, such as records@example.org."}
 	}
 	return s.do(ctx, 1, func(g *group) error {
 		if secret != nil {

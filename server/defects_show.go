@@ -145,13 +145,14 @@ func (s *Server) failedSentence(sums store.DefectSums) string {
 // age writes how long something lasts: minutes up to an hour, hours up to three days, then days.
 func (s *Server) age(d time.Duration) string {
 	k := s.ink()
-	switch d = max(d, 0); {
+	text := k.say("office.every.min", "n", int(max(d, 0).Minutes()))
+	switch {
 	case d >= 72*time.Hour:
-		return k.say("office.every.d", "n", int(d.Hours()/24))
+		text = k.say("office.every.d", "n", int(d.Hours()/24))
 	case d >= time.Hour:
-		return k.say("office.every.h", "n", int(d.Hours()))
+		text = k.say("office.every.h", "n", int(d.Hours()))
 	}
-	return k.say("office.every.min", "n", int(d.Minutes()))
+	return strings.ReplaceAll(text, " ", "\u00a0")
 }
 
 func (s *Server) defectRow(v *store.View, d *store.Defect, site store.Site) (defectRow, error) {

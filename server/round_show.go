@@ -4,7 +4,6 @@ import (
 	"net/http"
 	"slices"
 	"strings"
-	"time"
 
 	"github.com/labstack/echo/v4"
 
@@ -458,17 +457,4 @@ func (t *telling) lines(k ink) []string {
 		out = append(out, strings.Join(o.places, "; ")+": "+strings.Join(said, " "))
 	}
 	return out
-}
-
-// isOpen reports whether a round still waits to be walked.
-func isOpen(r store.Round) bool { return r.State == store.RoundMade || r.State == store.RoundWalking }
-
-// clockAt puts a time of day on a day at a site.
-func clockAt(day forms.Day, clock string, zone *time.Location) (time.Time, bool) {
-	t, err := time.Parse("15:04", clock)
-	if err != nil || day == forms.NoDay {
-		return time.Time{}, false
-	}
-	y, m, d := day.Time().Date()
-	return time.Date(y, m, d, t.Hour(), t.Minute(), 0, 0, zone), true
 }

@@ -72,6 +72,9 @@ func TestPlanForm_ANewPlanOfASite(t *testing.T) {
 	if due := r.dueOf(r.devicesOf(r.site)[0].ID, "button"); due.Plan != "weekly-here" {
 		t.Errorf("got the date of %q, want the site's own plan", due.Plan)
 	}
+	if legend := r.open(client, "/plans/weekly-here/marks?site="+r.site); legend.status != 200 || !strings.Contains(legend.body, "North") || !strings.Contains(legend.body, "no mark") {
+		t.Errorf("legend: got %d %s, want both marks and the devices without one", legend.status, legend.body)
+	}
 	if back := r.wantBack(client, "/plans", f, "id"); !strings.Contains(back, "there already") {
 		t.Errorf("the same short name again: got %q", back)
 	}

@@ -92,6 +92,7 @@ func publicRoutes() []route {
 		{get, "/sites/:site/calendar", signed, (*Server).calendarShow, 0},
 		{get, "/plans", signed, (*Server).plansShow, 0},
 		{get, "/plans/:plan", signed, (*Server).planShow, 0},
+		{get, "/plans/:plan/marks", signed, (*Server).marksShow, 0},
 		{get, "/sites/:site/asked", signed, (*Server).askedShow, 0},
 		{get, "/limits/:set", signed, (*Server).limitsShow, 0},
 		{get, "/forms/:kind/:task", signed, (*Server).formShow, 0},

@@ -78,7 +78,7 @@ func orderValues(p *store.Protection, c store.Circuit) map[string]string {
 // close a loop is refused here; the exchange takes it and leaves the newest edge of the loop out.
 func (s *Server) orderDrafts(site store.Site, c store.Circuit, p *store.Protection, f *typedForm, first string) (drafts []store.Draft) {
 	on := alongCircuit(p, c.ID)
-	at, moved, sources := map[string]float64{}, false, map[string]string{}
+	at, moved, sources := map[string]float64{}, f.changed("order"), map[string]string{} // settled, where two people's orders stood
 	var allowed []string
 	for _, o := range s.sourcesOffered(p, on, store.OnMap{}) {
 		allowed = append(allowed, o.Value)

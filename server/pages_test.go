@@ -97,7 +97,7 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 			Checks:  []checkShown{{What: "12 AWG", Mark: pass, Text: "20 A breaker, at most 20 A for 12 AWG.", Source: "NEC 240.4(D)"}, {What: "Desk", Href: "/devices/3", Mark: mark{"watch", "Look at it"}, Text: "30 A on a 20 A circuit", Why: "read on 3 Nov 2026"}}},
 		"protection.html": protectionPage{Frame: frameOf("Protection gaps", "sites"), Crumbs: []link{{Href: "/sites/KILN-LANE", Text: "Kiln Lane Day Clinic"}}, Heading: "2 outlets whose protection wants a look.", Lead: "What the map says.", Calm: "Nothing.", ListNote: "Looked for: kitchens.", ListHref: "/sites/KILN-LANE/usual-places",
 			Groups: []gapGroup{{Mark: fail, Text: "Behind a failed protector.", Rows: []gapRow{{Href: "/devices/2", Spot: "Workbench", Tag: "9HB‑2TC‑8", Where: "Plant level", Kind: "Receptacle", Circuit: "PP‑1 / 2", Critical: "Chlorine meter", By: link{Href: "/devices/1", Text: "Filter control"}}}},
-				{Mark: mark{"watch", "Marking needed"}, Text: "No equipment ground.", Print: true, Rows: []gapRow{{Href: "/devices/3", Spot: "Bathroom", Where: "Apartment", Kind: "GFCI receptacle", Why: "No Equipment Ground"}}}}},
+				{Mark: mark{"watch", "Marking needed"}, Text: "No equipment ground.", Print: true, More: "12 more outlets are not shown here.", Rows: []gapRow{{Href: "/devices/3", Spot: "Bathroom", Where: "Apartment", Kind: "GFCI receptacle", Why: "No Equipment Ground"}}}}},
 		"entry.html": s.entrySample(),
 		"form.html":  form,
 		"dates.html": datesPage{Frame: frameOf("Dates", "dates"), Heading: "37 tests overdue.", Under: "212 more have their date by 1 Jan 2027.", On: "2026-12-01", OnError: "Write the day as 2026-12-31.",

@@ -26,6 +26,8 @@ type gapGroup struct {
 	Mark  mark
 	Text  string
 	Print bool // the markings it needs can be printed here
+	More  string
+	more  int
 	Rows  []gapRow
 }
 
@@ -81,7 +83,12 @@ func (s *Server) buildProtection(site store.Site, gaps []store.ProtectionGap, p 
 			view.Groups = append(view.Groups, gapGroup{Mark: mark{gapShape(g.Why), k.say("office.protection.gap." + g.Why)}, Text: k.say("office.protection.text." + g.Why)})
 		}
 		group := &view.Groups[len(view.Groups)-1]
-		group.Rows = append(group.Rows, s.gapRow(p, g))
+		if len(group.Rows) < registerRows {
+			group.Rows = append(group.Rows, s.gapRow(p, g))
+		} else {
+			group.more++
+			group.More = k.say("office.protection.more", "n", group.more)
+		}
 		outlets[g.Device.ID] = true
 	}
 	view.Title = k.say("office.protection.title_of", "site", site.Name)

@@ -345,6 +345,11 @@ func (s *Server) changedDeviceDrafts(c echo.Context, site store.Site, d store.De
 			in.device["circuit"] = circuit
 		}
 	}
+	for _, lost := range d.Conflicts { // what this form has no field for is settled as it stands
+		if lost.Subject == d.ID && !f.Has(lost.Field) && slices.Contains(f.Values[settleField], lost.Field) {
+			in.device[lost.Field] = d.Fields[lost.Field]
+		}
+	}
 	if d.Place.ID == "" && len(in.place) > 0 {
 		place := record.NamedID(first, "place-of")
 		in.device["place"] = place

@@ -1,7 +1,9 @@
 package server
 
 import (
+	"context"
 	"encoding/json"
+	"fmt"
 	"net/http/httptest"
 	"os"
 	"path/filepath"
@@ -10,7 +12,10 @@ import (
 	"testing/fstest"
 	"time"
 
+	"github.com/skip2/go-qrcode"
+
 	"tripwell/chromium"
+	"tripwell/forms"
 	"tripwell/store"
 )
 
@@ -48,9 +53,9 @@ func (p *handheld) ready() {
 
 // row is a record as the tray's own storage has it.
 type row struct {
-	ID, Log, Record, State, From string
-	Receipt                      store.Receipt
-	Summary                      struct{ Result string }
+	ID, Log, Record, State, From, Clock string
+	Receipt                             store.Receipt
+	Summary                             struct{ Result string }
 }
 
 func (p *handheld) tray() (rows []row) {
@@ -69,63 +74,108 @@ func (p *handheld) waiting() int {
 	return n
 }
 
-// testNext answers the button test of the device shown with one tap and saves it; n is how many are kept then.
-func (p *handheld) testNext() {
+// testNext answers the button test of the device shown with one tap, hands it photos, and saves it.
+func (p *handheld) testNext(photos ...string) {
 	p.T.Helper()
 	p.Tap(".one-tap", "")
 	p.Until("the answers", `document.querySelector(".go").getAttribute("aria-disabled") === "false"`)
+	for i, photo := range photos {
+		p.Hand("input[type=file]", photo)
+		p.Until("the photo", fmt.Sprintf(`document.querySelectorAll(".shots img").length === %d && [...document.querySelectorAll(".shots img")].every((i) => i.naturalWidth > 0)`, i+1))
+	}
+	p.save()
+}
+
+// save presses Save and waits until the page says that the entry is kept.
+func (p *handheld) save() {
+	p.T.Helper()
 	p.Until("a press on Save", `(globalThis.lastSaved = document.querySelector(".saved")?.innerText ?? "", document.querySelector(".go").click(), true)`)
 	p.Until("saved", `document.querySelector(".saved") && document.querySelector(".saved").innerText !== globalThis.lastSaved`)
 }
 
-// siteRecords gives the entries in a site's log as the server has them, in the log's order.
-func (r *rig) entries() (list []struct {
-	ID, From, Shown string
-	N               int64
-}) {
-	r.t.Helper()
-	pulled, err := r.store.Pull(store.Scope{All: true}, r.site, "", 1000)
-	must(r.t, err)
-	for _, p := range pulled.Records {
-		var env struct {
-			ID, Kind, From string
-			N              int64
-			Body           struct{ Shown struct{ Result string } }
-		}
-		must(r.t, json.Unmarshal([]byte(p.Record), &env))
-		if env.Kind == "entry.made" {
-			list = append(list, struct {
-				ID, From, Shown string
-				N               int64
-			}{env.ID, env.From, env.Body.Shown.Result, env.N})
-		}
-	}
-	return list
+// sendAll presses Send now until nothing waits; the phone may have sent by itself before.
+func (p *handheld) sendAll() {
+	p.T.Helper()
+	p.Until("the tray", `(location.hash = "#/tray", document.querySelector("main"))`)
+	p.Until("all sent", `([...document.querySelectorAll("button")].find((b) => b.innerText.trim() === "Send now")?.click(), document.querySelector("h1").innerText.includes("All sent"))`)
 }
 
-func TestOffline_TwentyFiveEntriesThroughACutAClosedBrowserAndALostAnswer(t *testing.T) {
+// photoRow is a photo as the tray's own storage has it, without its bytes.
+type photoRow struct{ SHA256, State, Entry, Text string }
+
+func (p *handheld) photos() (rows []photoRow) {
+	p.T.Helper()
+	p.Rows("tray", "photos", &rows)
+	return rows
+}
+
+// siteEntry is an entry in a site's log as the server has it.
+type siteEntry struct {
+	ID, From, Shown, Subject string
+	N                        int64
+	Photos                   []string
+}
+
+// entries gives the entries in the site's log, in the log's order.
+func (r *rig) entries() (list []siteEntry) {
+	r.t.Helper()
+	after := ""
+	for {
+		pulled, err := r.store.Pull(store.Scope{All: true}, r.site, after, 1000)
+		must(r.t, err)
+		for _, p := range pulled.Records {
+			var env struct {
+				ID, Kind, From, Subject string
+				N                       int64
+				Body                    struct {
+					Shown  struct{ Result string }
+					Photos []string
+				}
+			}
+			must(r.t, json.Unmarshal([]byte(p.Record), &env))
+			if env.Kind == "entry.made" {
+				list = append(list, siteEntry{env.ID, env.From, env.Body.Shown.Result, env.Subject, env.N, env.Body.Photos})
+			}
+		}
+		if after = pulled.Next; !pulled.More {
+			return list
+		}
+	}
+}
+
+// The whole job without a line, in one run: sites taken along, the line cut, the page loaded again, a label read by the camera,
+// 25 entries with two photos, the browser closed and opened again, answers lost, the line mended.
+func TestOffline_TwentyFiveEntriesWithPhotosFromAScanToTheBook(t *testing.T) {
 	chromium.Need(t)
-	r := newRig(t, 30)
+	r := newRig(t, 40)
+	tag := r.label(r.devices[12])
 	w := newWire(t, strings.TrimPrefix(r.url, "http://"))
-	profile := filepath.Join(t.TempDir(), "profile")
-	p := openHandheld(t, "http://"+w.addr, chromium.Profile(profile))
+	code, err := qrcode.New("HTTPS://ELSEWHERE.INVALID/T/"+tag, qrcode.Medium)
+	must(t, err)
+	profile, camera := filepath.Join(t.TempDir(), "profile"), chromium.Camera(chromium.Film(t, code.Bitmap()))
+	p := openHandheld(t, "http://"+w.addr, chromium.Profile(profile), camera)
 	p.signIn(r, r.crew)
 	p.ready()
 
 	w.cut()
 	p.Reload()
 	p.Sees("Kiln Lane Day Clinic")
-	p.Tap("a.row", "Kiln Lane")
-	p.Tap("a.row", "Outlet 1")
+	p.Tap("a", "Find or scan")
+	p.Tap("button", "Scan")
+	p.Until("the device the label is on", `location.hash === "#/device/`+r.devices[12]+`"`)
 	p.Tap("a", "Button test")
-	for range 25 {
-		p.testNext()
+	for i := range 25 {
+		var photo []string
+		if i == 0 || i == 7 {
+			photo = []string{chromium.Shot(t, uint8(i))}
+		}
+		p.testNext(photo...)
 	}
 	if n := p.waiting(); n != 25 {
 		t.Fatalf("got %d entries waiting, want 25", n)
 	}
 	p.Close()
-	p = openHandheld(t, "http://"+w.addr, chromium.Profile(profile))
+	p = openHandheld(t, "http://"+w.addr, chromium.Profile(profile), camera)
 	p.visit("/field")
 	p.Sees("25 kept on this phone")
 	p.Sees("No signal")
@@ -133,39 +183,108 @@ func TestOffline_TwentyFiveEntriesThroughACutAClosedBrowserAndALostAnswer(t *tes
 		t.Fatalf("%d entries are at the server, and the line is cut", n)
 	}
 	// A label's address opens the client too.
-	p.visit("/T/K7QM2P3")
-	p.Until("the client at a label's address", `location.pathname === "/T/K7QM2P3" && document.querySelector("#field .where h1")`)
+	p.visit("/T/" + tag)
+	p.Until("the device of a label's address", `location.hash.includes("`+r.devices[12]+`") && document.querySelector("#field .where h1")`)
 
 	// The line is back but every answer is lost: all is kept at the server, nothing leaves the tray.
 	w.mend()
 	w.deaf()
 	p.visit("/field#/tray")
 	p.Tap("button", "Send now")
-	for end := time.Now().Add(20 * time.Second); len(r.entries()) < 25 && time.Now().Before(end); time.Sleep(50 * time.Millisecond) {
-	}
-	if n, kept := len(r.entries()), p.waiting(); n != 25 || kept != 25 {
-		t.Fatalf("got %d at the server and %d in the tray while answers are lost, want 25 and 25", n, kept)
+	eventually(t, "25 entries at the server", func() bool { return len(r.entries()) == 25 })
+	if kept := p.waiting(); kept != 25 {
+		t.Fatalf("got %d in the tray while answers are lost, want 25", kept)
 	}
 	w.cut()
 	w.mend()
-	p.Tap("button", "Send now")
-	p.Sees("All sent")
+	p.sendAll()
 
+	r.wantOnceInOrder(25)
+	entries := r.entries()
+	if first := entries[0]; first.Subject != r.devices[12] {
+		t.Errorf("the first entry is of %s, want the device whose label was read", first.Subject)
+	}
+	for i, e := range entries {
+		want := 0
+		if i == 0 || i == 7 {
+			want = 1
+		}
+		if len(e.Photos) != want {
+			t.Errorf("entry %d names %d photos, want %d", i+1, len(e.Photos), want)
+		}
+		must(t, r.store.View(r.manager.Scope(), func(v *store.View) error {
+			for _, name := range e.Photos {
+				if _, _, err := v.Photo(e.ID, name); err != nil {
+					return err
+				}
+			}
+			return nil
+		}))
+	}
+	if n := p.waiting(); n != 0 {
+		t.Errorf("%d entries are still in the tray", n)
+	}
+	for _, photo := range p.photos() {
+		if photo.State != "sent" {
+			t.Errorf("photo %s is %s on the phone, want sent", photo.SHA256, photo.State)
+		}
+	}
+}
+
+// wantOnceInOrder wants so many entries of one phone in the site's log, each once, in the order they were made, judged by
+// the server as the phone judged them.
+func (r *rig) wantOnceInOrder(want int) {
+	r.t.Helper()
 	got := r.entries()
-	if len(got) != 25 {
-		t.Fatalf("got %d entries at the server, want each of 25 once", len(got))
+	if len(got) != want {
+		r.t.Fatalf("got %d entries at the server, want each of %d once", len(got), want)
 	}
 	for i, e := range got {
 		if e.N != int64(i+1) {
-			t.Errorf("entry %d of the log has n %d, want %d", i+1, e.N, i+1)
+			r.t.Errorf("entry %d of the log has n %d, want %d", i+1, e.N, i+1)
 		}
-		must(t, r.store.View(r.manager.Scope(), func(v *store.View) error {
+		must(r.t, r.store.View(r.manager.Scope(), func(v *store.View) error {
 			judged, err := v.Entry(e.ID)
 			if err == nil && string(judged.Verdict.Result) != e.Shown {
-				t.Errorf("entry %d: the phone said %s, the server says %s", i+1, e.Shown, judged.Verdict.Result)
+				r.t.Errorf("entry %d: the phone said %s, the server says %s", i+1, e.Shown, judged.Verdict.Result)
 			}
 			return err
 		}))
+	}
+}
+
+// label puts a new tag on the place of a device and gives it.
+func (r *rig) label(device string) string {
+	r.t.Helper()
+	tags, err := r.store.MintTags(context.Background(), r.manager.ID, 1)
+	must(r.t, err)
+	r.bind(device, tags[0])
+	return tags[0]
+}
+
+// bind puts a tag on the place of a device.
+func (r *rig) bind(device, tag string) {
+	r.t.Helper()
+	r.append(store.Draft{Kind: "tag.bound", Log: r.site, Subject: r.place(device), Body: set{"tag": tag}})
+}
+
+func (r *rig) place(device string) (id string) {
+	r.t.Helper()
+	must(r.t, r.store.View(r.manager.Scope(), func(v *store.View) error {
+		d, err := v.Device(device, forms.DayOf(time.Now()))
+		id = d.Place.ID
+		return err
+	}))
+	return id
+}
+
+// eventually waits until something outside the browser is so.
+func eventually(t testing.TB, what string, is func() bool) {
+	t.Helper()
+	for end := time.Now().Add(30 * time.Second); !is(); time.Sleep(50 * time.Millisecond) {
+		if time.Now().After(end) {
+			t.Fatalf("waited 30 s for %s", what)
+		}
 	}
 }
 
@@ -198,8 +317,7 @@ func TestOffline_TwoPagesACopyAnotherVersionAndAServerPutBack(t *testing.T) {
 	twin.ready()
 	twin.testAnother()
 	twin.Sees("All sent")
-	for end := time.Now().Add(20 * time.Second); twin.installation() == first && time.Now().Before(end); time.Sleep(50 * time.Millisecond) {
-	}
+	eventually(t, "an id of its own", func() bool { return twin.installation() != first })
 	twin.testAnother()
 	twin.Sees("All sent")
 	got := r.entries()
@@ -247,8 +365,7 @@ func TestOffline_TwoPagesACopyAnotherVersionAndAServerPutBack(t *testing.T) {
 	defer restored.Close()
 	w.lead(restored.Listener.Addr().String())
 	p.Reload()
-	for end := time.Now().Add(20 * time.Second); len(had.entries()) < 6 && time.Now().Before(end); time.Sleep(50 * time.Millisecond) {
-	}
+	eventually(t, "six entries at the restored server", func() bool { return len(had.entries()) == 6 })
 	if again := had.entries(); len(again) != 6 || again[4].ID != now[4].ID || again[5].ID != now[5].ID {
 		t.Errorf("got %+v on the restored server, want the two entries it lost", again)
 	}

@@ -3,6 +3,7 @@
 import { html } from "./vendor/htm-preact.mjs";
 import { Foot, Mark, Where } from "./field-parts.mjs";
 import { showMoment } from "./days.mjs";
+import { isReadable } from "./rescue.mjs";
 
 export function TrayPage({ app }) {
   const { say, state } = app;
@@ -35,8 +36,14 @@ function TrayRow({ app, row: r }) {
   return html`<li class="row still"><span class="name">${r.summary?.title ?? r.fact?.title ?? r.id}</span>
     ${r.summary?.result && html`<${Mark} verdict=${r.summary.result}>${say(`verdict.${r.summary.result}`)}<//>`}
     <span class="quiet">${wrote(say, r)}${showMoment(app, r.saved)}</span>
-    ${r.state === "refused" && html`<span class="bad">${r.receipt?.text || say(r.receipt?.code === "too_large" ? "field.refused_too_large" : "field.refused_no_text")}</span>
-      <span class="ways"><button type="button" onClick=${() => app.sayAgain(r)}>${say("phone.say_again")}</button> <button type="button" onClick=${() => app.handOver(r)}>${say("phone.hand_over")}</button></span>`}</li>`;
+    ${r.state === "refused" && html`<span class="bad">${refusal(say, r)}</span>
+      <span class="ways">${isReadable(r) && html`<button type="button" onClick=${() => app.sayAgain(r)}>${say("phone.say_again")}</button> `}<button type="button" onClick=${() => app.handOver(r)}>${say("phone.hand_over")}</button></span>`}</li>`;
+}
+
+/** Why the server did not take a record; bytes that were damaged here are said so, whatever the server made of them. */
+function refusal(say, r) {
+  if (!isReadable(r)) return say("field.refused_damaged");
+  return r.receipt?.text || say(r.receipt?.code === "too_large" ? "field.refused_too_large" : "field.refused_no_text");
 }
 
 /** What kind of record it is, in front of when it was made. */

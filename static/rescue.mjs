@@ -9,6 +9,15 @@ export function trayFile(rows, me, at) {
 /** Name of the file: who and when. */
 export const trayFileName = (me, at) => `tripwell-tray-${new Date(at).toISOString().slice(0, 16).replace(/[:T]/g, "-")}-${(me.installation ?? "").slice(-6)}.json`;
 
+/** Whether a record can still be read, so that it can be made again; one that was damaged on the phone cannot. */
+export function isReadable(row) {
+  try {
+    return typeof JSON.parse(row.record).body === "object";
+  } catch {
+    return false;
+  }
+}
+
 /**
  * What a refused record says, for a new record in its place: the same thing at the same time, with an id, a count and a stamp of
  * its own and by whoever is signed in now.

@@ -63,19 +63,24 @@ export async function drain({ storage, send, sentAt }) {
   }
 }
 
-/** Applies receipts to the rows of their own batch; a receipt for anything else is ignored. */
+/**
+ * Applies receipts to the rows of their own batch; a receipt for anything else is ignored. Bytes in which the server finds no
+ * id come back refused without one; receipts stand in the order of the batch, so their place tells which row is meant.
+ */
 async function settleBatch(storage, batch, receipts, done) {
-  const sentIds = new Set(batch.map((row) => row.id));
+  const list = Array.isArray(receipts) ? receipts : [], open = new Set(batch.map((row) => row.id));
+  const byPlace = list.length === batch.length;
   let settled = 0;
-  for (const receipt of Array.isArray(receipts) ? receipts : []) {
-    if (!sentIds.delete(receipt?.id)) continue;
+  for (const [i, receipt] of list.entries()) {
+    const id = receipt?.id || (byPlace && receipt?.state === "refused" ? batch[i].id : undefined);
+    if (!open.delete(id)) continue;
     if (KEPT_STATES.has(receipt.state)) {
-      await storage.settle(receipt.id, receipt);
+      await storage.settle(id, receipt);
       if (receipt.reused) done.reused = true;
       done.sent++;
       settled++;
     } else if (receipt.state === "refused") {
-      await storage.refuse(receipt.id, receipt);
+      await storage.refuse(id, receipt);
       done.refused++;
       settled++;
     }

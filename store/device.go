@@ -331,6 +331,11 @@ func (v *View) Device(id string, on forms.Day) (Device, error) {
 	if d.Conflicts, err = v.conflicts(sv, ofDevice, t.id); err != nil {
 		return d, err
 	}
+	ofIts, err := v.conflicts(sv, ofPlace, parseID(d.Place.ID))
+	if err != nil {
+		return d, err
+	}
+	d.Conflicts = append(d.Conflicts, ofIts...)
 	if d.Earlier, err = v.earlier(sv, &t.thing, on); err != nil {
 		return d, err
 	}

@@ -22,14 +22,6 @@ type Site struct {
 // Location loads the site's time zone, UTC where it is unknown.
 func (s Site) Location() *time.Location { return location(s.Zone) }
 
-// Conflict is a value that lost to a concurrent one: neither author knew of the other's.
-type Conflict struct {
-	Field, Value, Winner string
-	By                   string
-	At                   time.Time
-	Record               string
-}
-
 // SiteSums counts one site on one day.
 type SiteSums struct {
 	Site     Site
@@ -101,36 +93,6 @@ func (v *View) siteNamed(idOrCode string) (*siteView, error) {
 		return nil, errNoSite
 	}
 	return found, nil
-}
-
-// conflicts lists the values of a thing that lost to a concurrent one, by field.
-func (v *View) conflicts(sv *siteView, typ byte, id id16) ([]Conflict, error) {
-	n, ok := v.number(sv, typ, id)
-	if !ok {
-		return nil, nil
-	}
-	row := v.tx.Bucket(bktRegister).Get(registerKey(sv.ord, typ, n))
-	if row == nil {
-		return nil, nil
-	}
-	reg, err := unpackRegister(row)
-	if err != nil {
-		return nil, err
-	}
-	var out []Conflict
-	for _, f := range reg.fields {
-		if strings.HasPrefix(f.name, "#") {
-			continue
-		}
-		for _, lost := range record.Losers(f.said) {
-			r, _, _, _, err := v.recordAt(parseID(lost.ID))
-			if err != nil {
-				return nil, err
-			}
-			out = append(out, Conflict{Field: f.name, Value: plainText(lost.Value), Winner: plainText(f.said[0].Value), By: r.By, At: r.At, Record: lost.ID})
-		}
-	}
-	return out, nil
 }
 
 // plainText gives a field's value as people read it; "" where it was cleared.

@@ -58,6 +58,16 @@ test("tray: one refused record stays with its sentence and does not hold up the 
   assert.equal(r.rows[1].receipt.text, "The form is not known here.");
 });
 
+test("tray: a refusal without an id is that of the record in its place; without one for each, nobody's", async () => {
+  const nameless = (answers) => answers.map((a, i) => (i === 1 ? { id: "", state: "refused", code: "malformed", text: "This is no record." } : a));
+  const r = rig(3, { receipts: nameless });
+  assert.deepEqual(await r.go(), { state: "empty", sent: 2, refused: 1, retryAfter: 0 });
+  assert.deepEqual(states(r.rows), ["sent", "refused", "sent"]);
+  const short = rig(3, { receipts: (answers) => nameless(answers).slice(1, 2) });
+  assert.equal((await short.go()).state, "trouble");
+  assert.deepEqual(states(short.rows), ["waiting", "waiting", "waiting"]);
+});
+
 test("tray: 401 drops nothing", async () => {
   const r = rig(2, { faults: [401] });
   assert.equal((await r.go()).state, "signed-out");

@@ -43,22 +43,13 @@ func (c *CheckReport) problem(format string, args ...any) {
 // every log's root, ids, n, quarantine, and the read models against a rebuild. It takes one read transaction to copy
 // the file beside itself and works on the copy, so that pushes go on meanwhile; it needs as much room on the disk again.
 func (s *Store) Check(ctx context.Context, progress func(done, total int64)) (CheckReport, error) {
-	if progress == nil {
-		progress = func(done, total int64) {}
-	}
 	var report CheckReport
-	path, err := s.imageBeside()
-	if path != "" {
-		defer os.Remove(path)
-	}
-	if err != nil {
-		return report, err
-	}
-	if err := s.checkImage(ctx, path, &report, progress); err != nil {
+	if err := s.checkCopy(ctx, &report, progress); err != nil {
 		return report, err
 	}
 	if len(report.Problems) == 0 {
 		var e *Error
+		var err error
 		if report.Head, err = s.SignedHead(); errors.As(err, &e) && e.Code == "conflict" {
 			report.problem("%s", e.Text)
 		} else if err != nil {
@@ -66,6 +57,21 @@ func (s *Store) Check(ctx context.Context, progress func(done, total int64)) (Ch
 		}
 	}
 	return report, nil
+}
+
+// checkCopy copies the book beside itself and checks the copy.
+func (s *Store) checkCopy(ctx context.Context, report *CheckReport, progress func(done, total int64)) error {
+	if progress == nil {
+		progress = func(done, total int64) {}
+	}
+	path, err := s.imageBeside()
+	if path != "" {
+		defer os.Remove(path)
+	}
+	if err != nil {
+		return err
+	}
+	return s.checkImage(ctx, path, report, progress)
 }
 
 func (s *Store) imageBeside() (path string, err error) {
@@ -280,8 +286,9 @@ func (s *Store) Backup(w io.Writer) (n int64, err error) {
 	return n, nil
 }
 
-// leftovers are copies a check left behind when it was killed.
+// leftovers are copies a check or a restore left behind when it was killed.
 func leftovers(dir string) []string {
-	found, _ := filepath.Glob(filepath.Join(dir, BookFile+".check-*")) // the pattern is a good one
-	return found
+	found, _ := filepath.Glob(filepath.Join(dir, BookFile+".check-*")) // the patterns are good ones
+	more, _ := filepath.Glob(filepath.Join(dir, restoring+"*"))
+	return append(found, more...)
 }

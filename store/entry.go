@@ -395,5 +395,5 @@ func roughly(d time.Duration) string {
 	case d >= 2*time.Hour:
 		return strconv.Itoa(int(d.Hours())) + " h"
 	}
-	return strconv.Itoa(int(d.Minutes())) + " min"
+	return strconv.Itoa(int(d.Round(time.Minute).Minutes())) + " min"
 }

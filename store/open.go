@@ -98,6 +98,9 @@ func Open(dir string, o Options) (*Store, error) {
 }
 
 func openFile(path string) (*bbolt.DB, error) {
+	if err := notCutOff(path); err != nil {
+		return nil, err
+	}
 	o := *bbolt.DefaultOptions
 	o.Timeout = time.Second
 	o.FreelistType = bbolt.FreelistMapType
@@ -139,7 +142,7 @@ func (s *Store) start(o Options) error {
 // older one did not know, and removes what a check left behind when it was killed.
 func (s *Store) refresh(log *slog.Logger) error {
 	for _, path := range leftovers(s.dir) {
-		if err := os.Remove(path); err != nil {
+		if err := os.RemoveAll(path); err != nil {
 			return fmt.Errorf("remove %s: %w", path, err)
 		}
 	}

@@ -9,7 +9,6 @@ import (
 	"image"
 	_ "image/jpeg" // the two kinds of picture that are taken
 	_ "image/png"
-	"io/fs"
 	"os"
 	"path/filepath"
 	"slices"
@@ -93,14 +92,8 @@ func (s *Store) KeepPhoto(sc Scope, entry, name string, raw []byte) error {
 	if err := checkPhoto(raw); err != nil {
 		return err
 	}
-	path := s.photoPath(name)
-	if _, err := os.Stat(path); err == nil {
-		return nil
-	}
-	if err := os.MkdirAll(filepath.Dir(path), 0o700); err != nil {
-		return fmt.Errorf("keep photo: %w", err)
-	}
-	return writeWhole(path, raw)
+	_, err := PutPhoto(filepath.Join(s.dir, PhotosDir), name, raw)
+	return err
 }
 
 func checkPhoto(raw []byte) error {
@@ -143,17 +136,10 @@ func (v *View) Photo(entry, name string) (raw []byte, kind string, err error) {
 	if err := v.namesPhoto(entry, name); err != nil {
 		return nil, "", err
 	}
-	raw, err = os.ReadFile(v.s.photoPath(name))
-	if errors.Is(err, fs.ErrNotExist) {
-		return nil, "", errNoPhoto
+	if raw, err = v.s.PhotoBytes(name); err != nil {
+		return nil, "", err
 	}
-	if err != nil {
-		return nil, "", fmt.Errorf("photo %s: %w", name, err)
-	}
-	if sum := sha256.Sum256(raw); hex.EncodeToString(sum[:]) != name {
-		return nil, "", &Error{Code: "conflict", Field: "photo", Text: "The file of this photo is damaged on the server's disk. Put it back from a backup."}
-	}
-	if raw[0] == 0x89 {
+	if raw[0] == 0x89 { // a PNG begins so
 		return raw, "image/png", nil
 	}
 	return raw, "image/jpeg", nil
@@ -166,7 +152,7 @@ func (v *View) HasPhoto(name string) bool {
 }
 
 func (s *Store) photoPath(name string) string {
-	return filepath.Join(s.dir, "photos", name[:2], name)
+	return PhotoFile(filepath.Join(s.dir, PhotosDir), name)
 }
 
 // NamedPhoto is a photo that an entry names.

@@ -22,6 +22,7 @@ type cli struct {
 	Labels   labelsCmd   `cmd:"" help:"Write sheets of labels."`
 	Label    labelCmd    `cmd:"" help:"Write one label as a picture."`
 	Backup   backupCmd   `cmd:"" help:"Write a checked copy of the book to a file."`
+	Restore  restoreCmd  `cmd:"" help:"Put a backup in the place of the book."`
 	Check    checkCmd    `cmd:"" help:"Read the whole store and say whether anything is wrong."`
 	Rebuild  rebuildCmd  `cmd:"" help:"Compute all lists anew from the records."`
 	Verdict  verdictCmd  `cmd:"" help:"Judge tests given as JSON lines."`

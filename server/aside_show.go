@@ -9,6 +9,7 @@ import (
 
 	"github.com/labstack/echo/v4"
 
+	"tripwell/forms"
 	"tripwell/store"
 )
 
@@ -21,7 +22,9 @@ type asidePage struct {
 	Frame
 	Crumbs         []link
 	Heading, Under string
+	Problem        string // of a form whose record is not shown here
 	Refused        []asideRecord
+	Photos         []asidePhoto
 	Differ         []asideRecord
 	Gaps           []gapShown
 	Cut            string // "" where everything is shown
@@ -30,16 +33,26 @@ type asidePage struct {
 // asideRecord is one record that came, with why it does not stand.
 type asideRecord struct {
 	Head, Text, Under, Record string
+	Admit                     string // SHA-256 of the bytes, where they may be taken into the book after all
+	Problem, Reason           string // what is wrong with what was typed, and that
 	Changes                   []change
 	Bytes                     string
 }
 
+// asidePhoto is a photo that was not taken, with the entry that names it.
+type asidePhoto struct{ Href, Head, Text string }
+
 type gapShown struct{ Log, Person, Numbers, Mono string }
 
 func (s *Server) asideShow(c echo.Context) error {
+	return s.asidePage(c, http.StatusOK, asideRecord{})
+}
+
+// asidePage shows the page; typed is what came back of the form of one record.
+func (s *Server) asidePage(c echo.Context, status int, typed asideRecord) error {
 	k := s.ink()
 	view := asidePage{Frame: s.frame(c, k.say("office.aside.title"), "set-up"), Crumbs: []link{{Href: "/set-up", Text: k.say("office.setup.title")}},
-		Under: k.say("office.aside.under")}
+		Under: k.say("office.aside.under"), Problem: typed.Problem}
 	err := s.store.View(scope(c), func(v *store.View) error {
 		names, err := logNames(v, k)
 		if err != nil {
@@ -62,7 +75,14 @@ func (s *Server) asideShow(c echo.Context) error {
 			view.Cut = k.say("office.aside.cut", "n", asideMost)
 		}
 		for _, r := range refused[:min(len(refused), asideMost)] {
-			view.Refused = append(view.Refused, s.refusedRecord(v, r, names))
+			shown := s.refusedRecord(v, r, names)
+			if shown.Admit != "" && shown.Admit == typed.Admit {
+				shown.Problem, shown.Reason, view.Problem = typed.Problem, typed.Reason, ""
+			}
+			view.Refused = append(view.Refused, shown)
+		}
+		if view.Photos, err = s.refusedPhotos(v); err != nil {
+			return err
 		}
 		for _, d := range differ[:min(len(differ), asideMost)] {
 			view.Differ = append(view.Differ, s.differingRecord(v, d, names))
@@ -79,7 +99,45 @@ func (s *Server) asideShow(c echo.Context) error {
 	if err != nil {
 		return err
 	}
-	return s.page(c, http.StatusOK, "aside.html", view)
+	return s.page(c, status, "aside.html", view)
+}
+
+// asideAdmit takes a refused record into the book after all, for the reason typed.
+func (s *Server) asideAdmit(c echo.Context) error {
+	f, err := s.typedForm(c)
+	if err != nil {
+		return err
+	}
+	reason := f.line("reason", 500)
+	if f.ok() {
+		_, err = s.store.Admit(c.Request().Context(), scope(c), f.Get("sha256"), reason)
+		if err == nil {
+			return toPage(c, "/kept-aside")
+		}
+		if err := f.takeRefusal(err); err != nil {
+			return err
+		}
+	}
+	return s.asidePage(c, http.StatusUnprocessableEntity, asideRecord{Admit: f.Get("sha256"), Reason: f.Get("reason"), Problem: cmp.Or(f.text, f.wrong["reason"])})
+}
+
+func (s *Server) refusedPhotos(v *store.View) (list []asidePhoto, err error) {
+	refused, err := v.PhotosRefused()
+	if err != nil {
+		return nil, err
+	}
+	for _, r := range refused[:min(len(refused), asideMost)] {
+		e, err := v.Entry(r.Entry)
+		if err != nil {
+			return nil, err
+		}
+		head := joined(s.personName(v, e.By), s.ink().at(r.At, time.UTC))
+		if d, err := v.Device(e.Device, forms.NoDay); err == nil {
+			head = joined(s.spot(d.DeviceRow), head)
+		}
+		list = append(list, asidePhoto{"/entries/" + r.Entry, head, r.Text})
+	}
+	return list, nil
 }
 
 func (s *Server) refusedRecord(v *store.View, r store.Refusal, names map[string]string) asideRecord {
@@ -89,6 +147,11 @@ func (s *Server) refusedRecord(v *store.View, r store.Refusal, names map[string]
 		Bytes: strings.ToValidUTF8(string(r.Bytes), "\uFFFD"),
 	}
 	shown.Under = k.say("office.aside.hash", "sum", r.SHA256)
+	if may, stands := v.Admissible(r); may {
+		shown.Admit = r.SHA256
+	} else if stands != "" {
+		shown.Record = "/records/" + stands
+	}
 	if holder := v.Holder(r.From); holder != "" {
 		shown.Head = joined(shown.Head, s.personName(v, holder))
 	}

@@ -1,11 +1,13 @@
 package server
 
 import (
+	"encoding/json"
 	"html"
 	"net/http"
 	"strings"
 	"testing"
 
+	"tripwell/store"
 	"tripwell/store/record"
 )
 
@@ -32,5 +34,65 @@ func TestAside_ShowsWhatDoesNotStand(t *testing.T) {
 	}
 	if got := r.open(r.signIn(r.crew), "/kept-aside"); got.status != http.StatusForbidden {
 		t.Errorf("crew got %d, want %d", got.status, http.StatusForbidden)
+	}
+}
+
+// A refused record is let in by a manager of its site with a reason: its exact bytes stand in the log and count, once.
+func TestAside_AManagerTakesARefusedRecordIn(t *testing.T) {
+	r := newRig(t, 1)
+	h := r.handset(r.crew)
+	e := h.entry(r.devices[0], 4.5)
+	e.By = r.auditor.ID // never signed in on that phone
+	bytes := e.bytes(t)
+	refused := h.push(bytes, `{"id":"<b>`)
+	if refused[0].Code != "not_permitted" {
+		t.Fatalf("got %+v, want a refusal", refused)
+	}
+	office, page := r.signIn(r.manager), ""
+	if page = r.open(office, "/kept-aside").body; strings.Count(page, `name="sha256"`) != 1 {
+		t.Fatalf("got %d forms, want one: bytes that are no record cannot stand in a book", strings.Count(page, `name="sha256"`))
+	}
+	form := fieldsOf(t, page)
+	if res := r.submit(office, "/kept-aside", form.Encode()); res.status != http.StatusUnprocessableEntity || !strings.Contains(res.body, "Say why this record") {
+		t.Errorf("without a reason: got %d", res.status)
+	}
+	form.Set("reason", "Typed on Crew 1's phone")
+	if res := r.submit(r.signIn(r.crew), "/kept-aside", form.Encode()); res.status != http.StatusForbidden {
+		t.Errorf("crew: got %d, want %d", res.status, http.StatusForbidden)
+	}
+	elsewhere := newID()
+	r.append(store.Draft{Kind: "site.registered", Log: elsewhere, Subject: elsewhere, Body: set{"set": set{"code": "OTHER", "name": "Other", "zone": "UTC", "standard": "NEC"}}})
+	other := r.person("Manager 2", "manager", elsewhere)
+	if res := r.submit(r.signIn(other), "/kept-aside", form.Encode()); !strings.Contains(res.body, "Only a manager of the site") {
+		t.Errorf("a manager of another site: got %d", res.status)
+	}
+	for range 2 { // pressed twice
+		if res := r.submit(office, "/kept-aside", form.Encode()); res.status != http.StatusSeeOther {
+			t.Fatalf("got %d %.400s", res.status, res.body)
+		}
+	}
+	if got := r.entries(); len(got) != 1 || got[0].ID != e.ID {
+		t.Fatalf("got %+v in the log, want the record once", got)
+	}
+	kinds := map[string]int{}
+	for _, p := range h.pullAll(r.site) {
+		var env struct{ Kind, Subject, By string }
+		must(t, json.Unmarshal([]byte(p.Record), &env))
+		kinds[env.Kind]++
+		if p.Record == bytes {
+			kinds["the exact bytes"]++
+		}
+		if env.Kind == "record.admitted" && (env.Subject != e.ID || env.By != r.manager.ID) {
+			t.Errorf("got %s, want the record's id and who let it in", p.Record)
+		}
+	}
+	if kinds["the exact bytes"] != 1 || kinds["record.admitted"] != 1 {
+		t.Errorf("got %v", kinds)
+	}
+	if got := h.push(bytes); got[0].State != "already" {
+		t.Errorf("sent again: got %+v, want already", got)
+	}
+	if page := r.open(office, "/kept-aside").body; strings.Contains(page, `name="sha256"`) || !strings.Contains(page, "/records/"+e.ID) {
+		t.Error("the page does not say that the record stands in the book")
 	}
 }

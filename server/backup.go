@@ -55,6 +55,35 @@ func (s *Server) ownBackupTake(c echo.Context) error {
 	})
 }
 
+// ownPhotos lists the photos that have arrived, one name a line in JSON.
+func (s *Server) ownPhotos(c echo.Context) error {
+	return s.lines(c, func(send func(any) error) error {
+		for name, err := range s.store.Photos() {
+			if err != nil {
+				return err
+			}
+			if err := send(PhotoLine{Name: name}); err != nil {
+				return err
+			}
+		}
+		return nil
+	})
+}
+
+// PhotoLine is one line of GET /own/photos.
+type PhotoLine struct {
+	Name string `json:"name"` // SHA-256 of its bytes
+}
+
+// ownPhoto sends the bytes of one photo; ones that went bad on the disk are refused.
+func (s *Server) ownPhoto(c echo.Context) error {
+	raw, err := s.store.PhotoBytes(c.Param("photo"))
+	if err != nil {
+		return err
+	}
+	return c.Blob(http.StatusOK, "application/octet-stream", raw)
+}
+
 // ownBackupKept notes that the copy is safe elsewhere, so that phones need not keep what it holds, and removes it here.
 func (s *Server) ownBackupKept(c echo.Context) error {
 	image, err := s.imageAsked(c)

@@ -8,8 +8,11 @@ import (
 	"tripwell/store"
 )
 
+// photoAnswer says which store has the photo now; Store and Epoch tell a phone later whether that store was restored.
 type photoAnswer struct {
 	SHA256 string `json:"sha256"`
+	Store  string `json:"store"`
+	Epoch  int    `json:"epoch"`
 	Now    string `json:"now"`
 }
 
@@ -23,7 +26,7 @@ func (s *Server) exchangePhoto(c echo.Context) error {
 	if err := s.store.KeepPhoto(scope(c), c.QueryParam("entry"), name, raw); err != nil {
 		return err
 	}
-	return s.sendJSON(c, http.StatusOK, photoAnswer{SHA256: name, Now: s.now()})
+	return s.sendJSON(c, http.StatusOK, photoAnswer{SHA256: name, Store: s.store.ID(), Epoch: s.store.Epoch(), Now: s.now()})
 }
 
 // photoShow gives a photo through its entry: who may see the entry may see it.
@@ -44,7 +47,7 @@ func (s *Server) photoShow(c echo.Context) error {
 }
 
 // photoShown is a photo on the page of its entry; Href is empty while it has not arrived.
-type photoShown struct{ Href, Alt string }
+type photoShown struct{ Href, Alt, Refused string }
 
 func (s *Server) photosShown(v *store.View, e store.Entry) []photoShown {
 	var out []photoShown
@@ -52,6 +55,8 @@ func (s *Server) photosShown(v *store.View, e store.Entry) []photoShown {
 		p := photoShown{Alt: s.words.Say("photo.of_entry", "n", i+1)}
 		if v.HasPhoto(name) {
 			p.Href = "/entries/" + e.ID + "/photos/" + name
+		} else if text := v.PhotoRefusal(e.ID, name); text != "" {
+			p.Refused = s.words.Say("photo.refused_there", "text", text)
 		}
 		out = append(out, p)
 	}

@@ -86,6 +86,38 @@ func TestBackup_TellsPhonesWhatItCovers(t *testing.T) {
 	}
 }
 
+// Photos follow the records in the file; each is kept through the entry that names it, and what is not taken is named.
+func TestTray_PhotosOfTheFileAreKept(t *testing.T) {
+	r := newRig(t, 1)
+	h := r.handset(r.crew)
+	raw, name := picture(t, 40, 30, "jpeg")
+	broken := strings.Repeat("ab", 32)
+	e := photoEntry(h, r.devices[0], name, broken)
+	photos := []set{{"sha256": name, "entry": e.ID, "base64": raw}, {"sha256": broken, "entry": e.ID, "base64": raw}, {"sha256": name, "entry": newID(), "base64": raw}}
+	list, err := json.Marshal(photos)
+	must(t, err)
+	file := strings.TrimSuffix(trayOf(t, e.bytes(t)), "}") + `,"photos":` + string(list) + "}"
+	report, err := r.server.takeTray(context.Background(), strings.NewReader(file), "rescue")
+	must(t, err)
+	if report.Stored != 1 || report.Photos != 1 || len(report.NoPhoto) != 2 || report.NoPhoto[0].Name != broken {
+		t.Fatalf("got %+v, want one photo kept and two named", report)
+	}
+	office := r.signIn(r.manager)
+	if res := r.open(office, "/entries/"+e.ID+"/photos/"+name); res.status != 200 || res.body != string(raw) {
+		t.Errorf("the photo: got %d", res.status)
+	}
+	for _, path := range []string{"/entries/" + e.ID, "/kept-aside"} {
+		if res := r.open(office, path); !strings.Contains(res.body, "These bytes are not the photo of that name.") {
+			t.Errorf("%s does not say why a photo is missing", path)
+		}
+	}
+	for _, torn := range []string{file[:len(file)-400], "{", "[]", `{"tripwell":"else","records":[]}`} {
+		if _, err := r.server.takeTray(context.Background(), strings.NewReader(torn), "rescue"); err == nil || !isRefusal(err) {
+			t.Errorf("a file that is none: got %v, want a refusal", err)
+		}
+	}
+}
+
 // A phone restored from another's image counts n again; it is told so once and may then draw a new id, and only then.
 func TestRenew_OnlyACopiedPhoneGetsAnotherID(t *testing.T) {
 	r := newRig(t, 2)

@@ -25,6 +25,7 @@ const (
 const (
 	formLimit   = 256 << 10
 	pushLimit   = 512 << 10
+	trayLimit   = 512 << 20 // a phone's records with hundreds of photos; photos are taken one at a time
 	importLimit = 64 << 20
 	// mappingLimit holds the form of a preview: every heading and every word of a large file.
 	mappingLimit = 512 << 10
@@ -113,7 +114,7 @@ func publicRoutes() []route {
 
 		// office: changing
 		{get, "/tray", manager, (*Server).trayAsk, 0},
-		{post, "/tray", manager, (*Server).trayTake, importLimit},
+		{post, "/tray", manager, (*Server).trayTake, trayLimit},
 		{get, "/sites/new", manager, (*Server).siteNew, 0},
 		{post, "/sites", manager, (*Server).siteCreate, 0},
 		{get, "/sites/:site/edit", manager, (*Server).siteEdit, 0},
@@ -183,6 +184,7 @@ func publicRoutes() []route {
 		{get, "/mail", manager, (*Server).mailEdit, 0},
 		{post, "/mail", manager, (*Server).mailUpdate, 0},
 		{get, "/kept-aside", manager, (*Server).asideShow, 0},
+		{post, "/kept-aside", manager, (*Server).asideAdmit, 0},
 		{get, "/results", manager, (*Server).resultsNew, 0},
 		{post, "/results", manager, (*Server).resultsTake, uploadBytes + mappingLimit},
 		{get, "/results/:upload", manager, (*Server).resultsShow, 0},

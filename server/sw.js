@@ -96,10 +96,13 @@ async function ownMatch(request, options) {
   return undefined;
 }
 
-self.addEventListener("install", (e) => e.waitUntil(layIn()));
+/** The exchange goes past the worker altogether where a browser can be told so: a worker with a request under way holds up the next. */
+const pastUs = (e) => e.addRoutes?.({ condition: { urlPattern: "/exchange/*" }, source: "network" }).catch(() => {});
+
+self.addEventListener("install", (e) => e.waitUntil(Promise.all([layIn(), pastUs(e)])));
 self.addEventListener("activate", (e) => e.waitUntil(clearOld().then(() => self.clients.claim())));
 self.addEventListener("fetch", (e) => {
   const what = oursOf(e.request);
   if (what) e.respondWith(answer(e.request, what));
 });
-self.addEventListener("message", (e) => { if (e.data === "take over") self.skipWaiting(); });
+self.addEventListener("message", (e) => { if (e.data === "take over") e.waitUntil(self.skipWaiting()); });

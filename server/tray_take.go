@@ -4,6 +4,7 @@ import (
 	"context"
 	"io"
 	"net/http"
+	"slices"
 
 	"github.com/go-json-experiment/json"
 	"github.com/go-json-experiment/json/jsontext"
@@ -12,53 +13,113 @@ import (
 	"tripwell/store"
 )
 
-// trayFile is what a phone writes when somebody saves its tray to a file: the exact bytes of every record it still has.
+// trayFile is what a phone writes when somebody saves its tray to a file: the exact bytes of every record it still has, then its
+// photos. The photos come last and are taken one at a time: hundreds of them are more than belongs in memory.
 type trayFile struct {
-	Tripwell     string `json:"tripwell"` // "tray"
-	V            int    `json:"v"`        // 1
-	Installation string `json:"installation"`
-	Person       string `json:"person"` // name of who held the phone
-	Made         string `json:"made"`
-	Records      []struct {
-		Record exactText `json:"record"`
-		State  string    `json:"state"`
-	} `json:"records"`
+	Tripwell     string // "tray"
+	V            int    // 1
+	Installation string
+	Person       string // name of who held the phone
+	Made         string
+	Records      []trayRecord
 }
 
-// TrayReport is what became of the records of a tray's file.
+type trayRecord struct {
+	Record exactText `json:"record"`
+	State  string    `json:"state"`
+}
+
+type trayPhoto struct {
+	SHA256 string `json:"sha256"`
+	Entry  string `json:"entry"`
+	Base64 []byte `json:"base64"`
+}
+
+// TrayReport is what became of the records and photos of a tray's file.
 type TrayReport struct {
 	Records int             `json:"records"`
 	Stored  int             `json:"stored"`
 	Already int             `json:"already"`
 	Refused []store.Receipt `json:"refused"` // with the sentence of each
+	Photos  int             `json:"photos"`  // that are here now
+	NoPhoto []PhotoLeft     `json:"no_photo"`
 	Person  string          `json:"person"`
 	Made    string          `json:"made"`
 }
 
-var errNoTray = refuse(codeInvalid, "file", "This is no file of a phone's tray. On the phone, open what is kept there and choose to save it to a file.")
+// PhotoLeft is a photo of a tray's file that was not taken.
+type PhotoLeft struct {
+	Name string `json:"name"`
+	Text string `json:"text"`
+}
 
-// takeTray takes a tray's file in, 500 records at a time: as if its phone had sent them, stamped with where they came through.
+var (
+	errNoTray    = refuse(codeInvalid, "file", "This is no file of a phone's tray. On the phone, open what is kept there and choose to save it to a file.")
+	errNewerTray = refuse(codeInvalid, "file", "The file was written by a newer program. Take it in with that one.")
+)
+
+// takeTray takes a tray's file in: as if its phone had sent it, stamped with where it came through. A file that breaks off among
+// its photos has its records taken all the same.
 func (s *Server) takeTray(ctx context.Context, file io.Reader, via string) (TrayReport, error) {
-	raw, err := io.ReadAll(file)
-	if err != nil {
+	dec := jsontext.NewDecoder(file, jsontext.AllowInvalidUTF8(true))
+	if open, err := dec.ReadToken(); err != nil || open.Kind() != '{' {
 		return TrayReport{}, errNoTray
 	}
 	var tray trayFile
-	if err := json.Unmarshal(raw, &tray, jsontext.AllowInvalidUTF8(true)); err != nil || tray.Tripwell != "tray" {
+	report, taken := TrayReport{Refused: []store.Receipt{}, NoPhoto: []PhotoLeft{}}, false
+	records := func() (err error) {
+		if !taken {
+			taken = true
+			err = s.takeTrayRecords(ctx, tray, via, &report)
+		}
+		return err
+	}
+	parts := map[string]any{"tripwell": &tray.Tripwell, "v": &tray.V, "installation": &tray.Installation, "person": &tray.Person, "made": &tray.Made, "records": &tray.Records}
+	for dec.PeekKind() == '"' {
+		name, err := dec.ReadToken()
+		if err != nil {
+			return TrayReport{}, errNoTray
+		}
+		if name.String() == "photos" {
+			if err := records(); err != nil {
+				return report, err
+			}
+			if err := s.takeTrayPhotos(dec, &report); err != nil {
+				return report, err
+			}
+			continue
+		}
+		into, known := parts[name.String()]
+		if !known {
+			into = new(jsontext.Value)
+		}
+		if err := json.UnmarshalDecode(dec, into); err != nil {
+			return TrayReport{}, errNoTray
+		}
+	}
+	if end, err := dec.ReadToken(); err != nil || end.Kind() != '}' {
 		return TrayReport{}, errNoTray
 	}
-	if tray.V != 1 {
-		return TrayReport{}, refuse(codeInvalid, "file", "The file was written by a newer program. Take it in with that one.")
+	return report, records()
+}
+
+// takeTrayRecords pushes the records, 500 at a time.
+func (s *Server) takeTrayRecords(ctx context.Context, tray trayFile, via string, report *TrayReport) error {
+	if tray.Tripwell != "tray" {
+		return errNoTray
 	}
-	report := TrayReport{Records: len(tray.Records), Refused: []store.Receipt{}, Person: tray.Person, Made: tray.Made}
-	for from := 0; from < len(tray.Records); from += pushRecords {
-		batch := []store.Incoming{}
-		for _, r := range tray.Records[from:min(from+pushRecords, len(tray.Records))] {
-			batch = append(batch, store.Incoming{Record: r.Record})
+	if tray.V != 1 {
+		return errNewerTray
+	}
+	report.Records, report.Person, report.Made = len(tray.Records), tray.Person, tray.Made
+	for part := range slices.Chunk(tray.Records, pushRecords) {
+		batch := make([]store.Incoming, len(part))
+		for i, r := range part {
+			batch[i].Record = r.Record
 		}
 		receipts, err := s.store.Push(ctx, store.Sender{Rescue: true, Via: via}, batch)
 		if err != nil {
-			return report, err
+			return err
 		}
 		for _, r := range receipts {
 			switch r.State {
@@ -71,7 +132,32 @@ func (s *Server) takeTray(ctx context.Context, file io.Reader, via string) (Tray
 			}
 		}
 	}
-	return report, nil
+	return nil
+}
+
+// takeTrayPhotos keeps the photos that follow, each through the entry that names it.
+func (s *Server) takeTrayPhotos(dec *jsontext.Decoder, report *TrayReport) error {
+	if open, err := dec.ReadToken(); err != nil || open.Kind() != '[' {
+		return errNoTray
+	}
+	for dec.PeekKind() == '{' {
+		var p trayPhoto
+		if err := json.UnmarshalDecode(dec, &p); err != nil {
+			return errNoTray
+		}
+		switch err := s.store.KeepPhoto(ownerScope, p.Entry, p.SHA256, p.Base64); {
+		case err == nil:
+			report.Photos++
+		case isRefusal(err):
+			report.NoPhoto = append(report.NoPhoto, PhotoLeft{p.SHA256, err.Error()})
+		default:
+			return err
+		}
+	}
+	if end, err := dec.ReadToken(); err != nil || end.Kind() != ']' {
+		return errNoTray
+	}
+	return nil
 }
 
 // ownImportTray takes a phone's tray in from the body.

@@ -279,3 +279,20 @@ func TestTrouble_LostDatabaseIsOpenedAgain(t *testing.T) {
 	p.sendAll()
 	r.wantOnceInOrder(4)
 }
+
+// A page that asks the server all the time does not keep a newer version of itself from taking over.
+func TestTrouble_ANewerVersionTakesOverWhileThePageAsks(t *testing.T) {
+	chromium.Need(t)
+	t.Parallel()
+	r := newRig(t, 4)
+	w := newWire(t, strings.TrimPrefix(r.url, "http://"))
+	p := openHandheld(t, "http://"+w.addr)
+	p.signIn(r, r.crew)
+	p.ready()
+	newer := httptest.NewServer(newerServer(t, r.store).Handler())
+	defer newer.Close()
+	w.lead(newer.Listener.Addr().String())
+	p.JS(`(navigator.serviceWorker.getRegistration().then((r) => r.update()), setInterval(() => fetch("/exchange/logs").catch(() => {}), 5), setInterval(() => fetch("/livez").catch(() => {}), 5), true)`)
+	p.Tap("button", "Take it now")
+	p.Until("the newer client", `globalThis.newerClient`)
+}

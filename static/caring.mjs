@@ -3,6 +3,14 @@
 
 import { saidAgain, trayFile, trayFileName } from "./rescue.mjs";
 
+/** Bytes as JSON carries them. */
+async function base64Of(blob) {
+  const bytes = new Uint8Array(await blob.arrayBuffer());
+  let text = "";
+  for (let i = 0; i < bytes.length; i += 0x8000) text += String.fromCharCode(...bytes.subarray(i, i + 0x8000));
+  return btoa(text);
+}
+
 export function caring({ app, tray, now, make, choose, send, download }) {
   async function reread() {
     app.state.records = await tray.records();
@@ -15,7 +23,9 @@ export function caring({ app, tray, now, make, choose, send, download }) {
     },
     async saveTray() {
       const at = now();
-      await download(trayFileName(app.state.me, at), trayFile(await tray.all(), app.state.me, at));
+      const photos = [];
+      for (const { sha256, entry, blob } of await tray.unsentPhotos()) photos.push({ sha256, entry, base64: await base64Of(blob) });
+      await download(trayFileName(app.state.me, at), trayFile(await tray.all(), app.state.me, at, photos));
     },
     /** The refused record stays in the tray's store, marked as mended by the new one. */
     async sayAgain(row) {
@@ -27,6 +37,11 @@ export function caring({ app, tray, now, make, choose, send, download }) {
       }]);
       await reread();
       send();
+    },
+    async handOverPhoto(sha256) {
+      await tray.handOverPhoto(sha256);
+      app.state.refusedPhotos = await tray.refusedPhotos();
+      app.changed();
     },
     async handOver(row) {
       await tray.handOver(row.id);

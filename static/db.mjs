@@ -94,9 +94,23 @@ export function trayDB() {
     putPhoto: (row) => write("photos", async (store) => { if (!(await store.get(row.sha256))) await store.put(row); }),
     dropPhoto: (sha256) => write("photos", async (store) => { if ((await store.get(sha256))?.state === "draft") await store.delete(sha256); }),
     waitingPhotos: () => use((db) => db.getAllFromIndex("photos", "state", "waiting")).then((rows) => rows.sort((a, b) => a.saved - b.saved)),
-    settlePhoto: (sha256, at) => write("photos", async (store) => {
+    settlePhoto: (sha256, at, server) => write("photos", async (store) => {
       const row = await store.get(sha256);
-      if (row) await store.put({ ...row, state: "sent", sent_at: at });
+      if (row) await store.put({ ...row, state: "sent", sent_at: at, ...server });
+    }),
+    /** Photos a server of another store or epoch took wait again; gives how many. */
+    resendPhotos: ({ store: own, epoch }) => write("photos", async (store) => {
+      const lost = (await store.index("state").getAll("sent")).filter((row) => row.epoch !== undefined && (row.epoch !== epoch || row.store !== own));
+      for (const row of lost) await store.put({ ...row, state: "waiting" });
+      return lost.length;
+    }),
+    /** Photos of entries that no server has: for the file that saves the tray. */
+    unsentPhotos: () => use(async (db) => (await Promise.all(["waiting", "refused", "handed"].map((s) => db.getAllFromIndex("photos", "state", s)))).flat()),
+    refusedPhotos: () => use((db) => db.getAllFromIndex("photos", "state", "refused")),
+    /** A refused photo is set aside: given to somebody in a file. It stays on the phone. */
+    handOverPhoto: (sha256) => write("photos", async (store) => {
+      const row = await store.get(sha256);
+      if (row?.state === "refused") await store.put({ ...row, state: "handed" });
     }),
     refusePhoto: (sha256, text) => write("photos", async (store) => {
       const row = await store.get(sha256);

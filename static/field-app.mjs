@@ -72,7 +72,7 @@ export function fieldApp(parts) {
     },
     get tray() {
       const count = (s) => state.records.reduce((n, r) => n + Number(r.state === s), 0);
-      return { waiting: count("waiting"), photos: state.photos ?? 0, refused: count("refused") };
+      return { waiting: count("waiting"), photos: state.photos ?? 0, refused: count("refused") + (state.refusedPhotos?.length ?? 0) };
     },
     /** Sites this person has, with what is known of each. */
     sites() {

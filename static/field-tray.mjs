@@ -7,14 +7,16 @@ import { isReadable } from "./rescue.mjs";
 
 export function TrayPage({ app }) {
   const { say, state } = app;
-  const { waiting, refused, held } = sorted(state.records);
+  const { waiting, refused, held } = sorted(state.records), shots = state.refusedPhotos ?? [];
   return html`
-    <${Where} app=${app} title=${title(say, waiting, refused)} context=${say("field.tray")} back="#/" />
+    <${Where} app=${app} title=${title(say, waiting, refused.length + shots.length)} context=${say("field.tray")} back="#/" />
     <main>
       ${waiting.length > 0 && html`<p class="hint pad">${say(`field.line.${state.line}`)}</p><p class="hint pad">${say("phone.oldest", { when: showMoment(app, waiting[0].saved) })}</p>
         <button type="button" class="big more" onClick=${app.sendNow}>${say("field.send_now")}</button><ul class="rows">${waiting.map((r) => html`<${TrayRow} app=${app} row=${r} key=${r.id} />`)}</ul>`}
       ${refused.length > 0 && html`<section class="room"><h2>${say("field.refused_title")}</h2><p class="hint pad">${say("phone.refused_ways")}</p>
         <ul class="rows">${refused.map((r) => html`<${TrayRow} app=${app} row=${r} key=${r.id} />`)}</ul></section>`}
+      ${shots.length > 0 && html`<section class="room"><h2>${say("photo.refused_title")}</h2><p class="hint pad">${say("photo.refused_hint")}</p>
+        <ul class="rows">${shots.map((p) => html`<${ShotRow} app=${app} photo=${p} key=${p.sha256} />`)}</ul></section>`}
       ${held.length > 0 && html`<section class="room"><h2>${say("phone.held", { n: held.length })}</h2><p class="hint pad">${say("phone.held_hint")}</p><ul class="rows">${held.map((r) => html`<${TrayRow} app=${app} row=${r} key=${r.id} />`)}</ul></section>`}
       <section class="room"><h2>${say("phone.rescue")}</h2><p class="hint pad">${say("phone.rescue_hint")}</p><button type="button" class="big more" onClick=${app.saveTray}>${say("phone.rescue_go")}</button></section>
       <p class="hint pad">${state.persisted === undefined ? say("phone.asking") : say(state.persisted ? "phone.persistent" : "field.not_persistent")}</p>
@@ -28,7 +30,7 @@ const sorted = (records) => ({
 
 function title(say, waiting, refused) {
   if (waiting.length > 0) return say("field.kept", { n: waiting.length });
-  return refused.length > 0 ? say("field.refused_count", { n: refused.length }) : say("field.all_sent");
+  return refused > 0 ? say("field.refused_count", { n: refused }) : say("field.all_sent");
 }
 
 function TrayRow({ app, row: r }) {
@@ -38,6 +40,14 @@ function TrayRow({ app, row: r }) {
     <span class="quiet">${wrote(say, r)}${showMoment(app, r.saved)}</span>
     ${r.state === "refused" && html`<span class="bad">${refusal(say, r)}</span>
       <span class="ways">${isReadable(r) && html`<button type="button" onClick=${() => app.sayAgain(r)}>${say("phone.say_again")}</button> `}<button type="button" onClick=${() => app.handOver(r)}>${say("phone.hand_over")}</button></span>`}</li>`;
+}
+
+/** A photo the server did not take, with its sentence. */
+function ShotRow({ app, photo: p }) {
+  const { say } = app, row = app.state.records.find((r) => r.id === p.entry);
+  return html`<li class="row still"><span class="name">${row?.summary?.title ?? say("photo.alt")}</span><span class="quiet">${showMoment(app, p.saved)}</span>
+    <span class="bad">${p.text || say("photo.refused_no_text")}</span>
+    <span class="ways"><button type="button" onClick=${() => app.handOverPhoto(p.sha256)}>${say("phone.hand_over")}</button></span></li>`;
 }
 
 /** Why the server did not take a record; bytes that were damaged here are said so, whatever the server made of them. */

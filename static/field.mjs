@@ -67,7 +67,7 @@ async function start() {
   const sync = syncing({ state: app.state, tray, along, net: exchange({ fetch: (...a) => fetch(...a), now }), now, newId: () => newId(now()), changed: app.changed });
   const sender = sending({ run: () => alone(async () => { const done = await sync.run(); others.tell(); return done; }), later: (fn, ms) => setTimeout(fn, ms), cancel: clearTimeout, random: Math.random });
   const version = versions({ container: navigator.serviceWorker, calm: () => isCalm(app.state), session: sessionStorage, now,
-    offered: (yes) => { app.state.newer = yes; app.changed(); }, load: () => location.reload() });
+    offered: (yes) => { app.state.newer = yes; app.changed(); }, load: () => location.reload(), later: (fn, ms) => setTimeout(fn, ms) });
   const others = otherPages(async () => { await readKept(app.state, tray, along); app.changed(); });
   Object.assign(app, { takeNewer: version.take }, peopleHere(app, { tray, now }), caring({ app, tray, now, make: makeRecord, choose: sync.choose, send: () => sender.kick(), download }));
   app.state.insecure = !globalThis.isSecureContext;
@@ -121,8 +121,8 @@ function otherPages(changed) {
 }
 
 /** Hands a file to the phone: by its share sheet where it takes files (installed apps cannot always download), else as a download. */
-async function download(name, text) {
-  const file = new File([text], name, { type: "application/json" });
+async function download(name, parts) {
+  const file = new File(parts, name, { type: "application/json" });
   if (navigator.maxTouchPoints > 1 && navigator.canShare?.({ files: [file] })) return navigator.share({ files: [file] });
   const link = Object.assign(document.createElement("a"), { href: URL.createObjectURL(file), download: name });
   link.click();
@@ -130,7 +130,7 @@ async function download(name, text) {
 }
 
 async function readKept(state, tray, along) {
-  for (const name of ["installation", "token", "person", "name", "logs", "instrument", "unfolded", "offset", "last_added", "rounds", "chosen", "former", "backed_up", "people"]) state.me[name] = await tray.me(name);
+  for (const name of ["installation", "token", "person", "name", "logs", "instrument", "unfolded", "offset", "last_added", "rounds", "chosen", "former", "backed_up", "people", "server"]) state.me[name] = await tray.me(name);
   state.offset = state.me.offset ?? 0;
   const sites = await along.sites();
   state.sites.clear();
@@ -138,6 +138,7 @@ async function readKept(state, tray, along) {
   state.records = await tray.records();
   state.own = new Set(await tray.recordIds());
   state.photos = (await tray.waitingPhotos()).length;
+  state.refusedPhotos = await tray.refusedPhotos();
 }
 
 async function readDrafts(state, tray) {

@@ -1,9 +1,13 @@
 // The file that carries a tray to another device or to a server by hand, and a refused record made anew. Pure.
 
-/** The whole tray as the text of a file: every record as the exact string it is. */
-export function trayFile(rows, me, at) {
+/**
+ * The whole tray as the parts of a file, one JSON text: every record as the exact string it is, then the photos no server has,
+ * {sha256, entry, base64}. In parts, because hundreds of photos in one text would be more than a phone can hold.
+ */
+export function trayFile(rows, me, at, photos = []) {
   const records = rows.map((row) => ({ record: row.record, state: row.state }));
-  return JSON.stringify({ tripwell: "tray", v: 1, installation: me.installation, person: me.name, made: new Date(at).toISOString(), records });
+  const head = JSON.stringify({ tripwell: "tray", v: 1, installation: me.installation, person: me.name, made: new Date(at).toISOString(), records });
+  return [head.slice(0, -1), ',"photos":[', ...photos.map((p, i) => (i > 0 ? "," : "") + JSON.stringify(p)), "]}"];
 }
 
 /** Name of the file: who and when. */

@@ -105,21 +105,26 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
     return sent;
   }
 
+  /** Sends what waits, then the photos that follow the records that name them. */
+  async function flush() {
+    const sent = await empty();
+    if (sent.state !== "empty") return { ...sent, line: sent.state };
+    const shots = await drainPhotos({ storage: { waitingPhotos: tray.waitingPhotos, settlePhoto: (sha, server) => tray.settlePhoto(sha, now(), server), refusePhoto: tray.refusePhoto }, send: (row) => withToken((token) => net.photo(token, row)) });
+    state.photos = (await tray.waitingPhotos()).length;
+    state.refusedPhotos = await tray.refusedPhotos();
+    return { ...sent, line: shots.state };
+  }
+
   async function run() {
     state.busy = true;
-    let sent = await empty(), line = sent.state;
-    if (line === "empty") { // photos follow the records that name them
-      const shots = await drainPhotos({ storage: { waitingPhotos: tray.waitingPhotos, settlePhoto: (sha) => tray.settlePhoto(sha, now()), refusePhoto: tray.refusePhoto }, send: (row) => withToken((token) => net.photo(token, row)) });
-      state.photos = (await tray.waitingPhotos()).length;
-      if (shots.state !== "empty") line = shots.state;
-    }
+    let sent = await flush(), line = sent.line;
     if (line === "empty" || line === "trouble") { // what cannot be sent just now does not keep fresh copies away
       await tidy();
       const { answer, resent } = await refresh();
       state.said = answer.ok ? null : answer.body?.error?.text ?? null;
       if (resent > 0 && answer.ok) {
-        sent = await empty();
-        line = sent.state;
+        sent = await flush();
+        line = sent.line;
       }
       if (!answer.ok) line = answer.status === 0 ? "unreached" : answer.status === 401 ? "signed-out" : "trouble";
     }

@@ -49,7 +49,11 @@ export function taking({ state, tray, along, net, now, remember, withToken, chan
   async function sendLostAgain({ logs, store, epoch }) {
     const sizes = new Map(logs.map((l) => [l.log, l.size]));
     const lost = ({ receipt, log }) => (receipt?.epoch !== undefined && (receipt.epoch !== epoch || receipt.store !== store)) || (receipt?.pos ?? 0) > (sizes.get(log) ?? Infinity);
-    return epoch === undefined ? 0 : tray.resend(lost);
+    if (epoch === undefined) return 0;
+    const server = `${store} ${epoch}`;
+    if (state.me.server && state.me.server !== server) await remember("backed_up", {}); // what backups of before covered is said anew
+    if (state.me.server !== server) await remember("server", server);
+    return (await tray.resend(lost)) + (await tray.resendPhotos({ store, epoch }));
   }
 
   async function refreshSite({ log, size }, org) {
@@ -110,9 +114,9 @@ export function taking({ state, tray, along, net, now, remember, withToken, chan
     return answer;
   }
 
-  /** Records a branch holds for the server: whether it has them by now. */
+  /** Records a branch holds for the server, and refused ones a manager may have let in: whether the server has them by now. */
   async function askHeld() {
-    const ids = state.records.filter((r) => r.receipt?.state === "held" && r.state === "sent").map((r) => r.id).slice(0, 1000);
+    const ids = state.records.filter((r) => (r.receipt?.state === "held" && r.state === "sent") || (r.state === "refused" && r.receipt?.code !== "id_reused")).map((r) => r.id).slice(0, 1000);
     if (ids.length === 0) return;
     const answer = await withToken((token) => net.ask(token, ids));
     for (const receipt of answer.ok ? answer.body.receipts ?? [] : []) if (receipt.state === "stored" && ids.includes(receipt.id)) await tray.settle(receipt.id, receipt, now());

@@ -3,16 +3,18 @@
 
 const TAKEN = "tripwell-taken"; // the moment this tab last loads for a new version
 const CALM = 10_000; // a second load sooner than this would be a circle
+const ASK_AGAIN = 1000;
+const ASK_MOST = 30;
 
 /** Pages on which nothing is being filled in; every other page counts as an open form. */
 const CALM_PAGES = new Set(["sites", "site", "device", "tray", "tag", "along", "find", "hand"]);
 export const isCalm = (state) => CALM_PAGES.has(state.route.page) && !state.saving;
 
 /**
- * versions({container, calm, offered, load, session, now}) → {start, take, look, calmNow}. container is
+ * versions({container, calm, offered, load, session, now, later}) → {start, take, look, calmNow}. container is
  * navigator.serviceWorker or undefined; calm() says that no form is open; offered(yes) tells the page there is something to take.
  */
-export function versions({ container, calm, offered, load, session, now }) {
+export function versions({ container, calm, offered, load, session, now, later }) {
   let registration = null, taking = false, owed = false, wanted = false;
 
   function loadOnce() {
@@ -31,8 +33,19 @@ export function versions({ container, calm, offered, load, session, now }) {
     wanted = Boolean(registration?.waiting) && !calm();
     if (!registration?.waiting || wanted) return false;
     taking = true;
-    registration.waiting.postMessage("take over");
+    ask(ASK_MOST);
     return true;
+  }
+
+  /**
+   * A browser gives up the change when a request reaches the older worker in the same moment, and then says nothing: asked again
+   * until it is made. A form that was opened meanwhile waits no less than before.
+   */
+  function ask(times) {
+    if (!registration.waiting || times === 0) return;
+    if (!calm()) { wanted = true; return; }
+    registration.waiting.postMessage("take over");
+    later(() => ask(times - 1), ASK_AGAIN);
   }
 
   return {

@@ -86,6 +86,14 @@ func (s *Store) KeepPhoto(sc Scope, entry, name string, raw []byte) error {
 	if err := s.View(sc, func(v *View) error { return v.namesPhoto(entry, name) }); err != nil {
 		return err
 	}
+	refused := s.keepPhoto(name, raw)
+	if err := s.notePhoto(entry, name, refused); err != nil {
+		return err
+	}
+	return refused
+}
+
+func (s *Store) keepPhoto(name string, raw []byte) error {
 	if sum := sha256.Sum256(raw); hex.EncodeToString(sum[:]) != name {
 		return &Error{Code: "invalid", Field: "sha256", Text: "These bytes are not the photo of that name. Send it again."}
 	}

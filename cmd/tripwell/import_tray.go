@@ -45,6 +45,12 @@ func (c importTrayCmd) Run(e *env) error {
 		for _, r := range report.Refused {
 			fmt.Fprintf(e.stderr, "%s: %s\n", r.ID, r.Text)
 		}
+		if report.Photos+len(report.NoPhoto) > 0 {
+			fmt.Fprintf(e.stdout, "Photos: %d are here now, %d were not taken.\n", report.Photos, len(report.NoPhoto))
+		}
+		for _, p := range report.NoPhoto {
+			fmt.Fprintf(e.stderr, "%s: %s\n", p.Name, p.Text)
+		}
 		if n := len(report.Refused); n > 0 {
 			return fmt.Errorf("%d of %d records of %s were refused and are kept aside", n, report.Records, c.File)
 		}

@@ -52,7 +52,7 @@ func (c restoreCmd) Run(e *env) error {
 	if err != nil {
 		return err
 	}
-	fmt.Fprintf(e.stdout, "%d photos were copied, %d were there.\n", report.Copied, report.Had)
+	fmt.Fprintf(e.stdout, "Photos: %d copied, %d were there.\n", report.Copied, report.Had)
 	if len(report.Damaged) > 0 {
 		return fmt.Errorf("%d photos in %s are not what their names say and were left out, the first is %s", len(report.Damaged), c.Photos, report.Damaged[0])
 	}

@@ -11,7 +11,7 @@ function phone(net, records = []) {
   const me = {}, dropped = [], covered = [], marked = [];
   const state = { me: {}, sites: new Map(), records, offset: 0 };
   const tray = { setMe: async (k, v) => { me[k] = v; }, waiting: async () => records.filter((r) => r.state === "waiting"), records: async () => records.filter((r) => r.state !== "kept"),
-    settle: async (i, receipt) => Object.assign(records.find((r) => r.id === i), { state: "sent", receipt }), refuse: async () => {}, forget: async () => {}, waitingPhotos: async () => [], forgetPhotos: async () => {}, sawClock: async () => {},
+    settle: async (i, receipt) => Object.assign(records.find((r) => r.id === i), { state: "sent", receipt }), refuse: async () => {}, forget: async () => {}, waitingPhotos: async () => [], refusedPhotos: async () => [], resendPhotos: async () => 0, forgetPhotos: async () => {}, sawClock: async () => {},
     resend: async (lost) => { const rows = records.filter((r) => ["sent", "kept"].includes(r.state) && lost(r)); for (const r of rows) r.state = "waiting"; return rows.length; },
     become: async (person, name) => { Object.assign(me, { person, name }); }, renew: async (to) => { Object.assign(me, to); },
     cover: async (ids) => ids.forEach((i) => { covered.push(i); records.find((r) => r.id === i).state = "kept"; }) };
@@ -23,7 +23,8 @@ const ok = (body) => ({ ok: true, status: 200, body, offset: 0 });
 const not = (status) => ({ ok: false, status, body: null, offset: 0 });
 const logs = [{ log: "org" }, { log: "s1", code: "NORTH", name: "North" }];
 const server = (more = {}) => ({ enrol: async () => ok({ token: "good", person: { id: "p", name: "Crew 1" }, logs }), logs: async (t) => (t === "good" ? ok({ logs }) : not(401)), snapshot: async () => ok({ site: { id: "s1" } }),
-  push: async (t, body) => (t === "good" ? ok({ receipts: JSON.parse(body).records.map((r) => ({ id: r.record, state: "stored" })) }) : not(401)), ...more });
+  push: async (t, body) => (t === "good" ? ok({ receipts: JSON.parse(body).records.map((r) => ({ id: r.record, state: "stored" })) }) : not(401)),
+  ask: async () => ok({ receipts: [] }), ...more });
 
 test("sync: enrols once, takes its sites along, keeps its installation", async () => {
   const p = phone(server());
@@ -99,8 +100,10 @@ test("taking: a restored server gets again what this phone keeps: another epoch,
     const p = phone(server({ ...net, push: async (t, body) => { const sent = JSON.parse(body).records.map((r) => r.record); got.push(...sent); return ok({ receipts: sent.map((id) => ({ id, state: "stored", store: "S", epoch: 2, pos: 1 })) }); } }),
       [{ id: "r1", record: "r1", log: "s1", state: "kept", receipt }]);
     p.state.sites.set("s1", copy());
+    Object.assign(p.state.me, { server: "S 1", backed_up: { s1: 9 } });
     await p.run();
     assert.deepEqual([what, got, p.state.records.map((r) => r.state)], [what, ["r1"], ["sent"]]);
+    assert.deepEqual(p.state.me.backed_up, what === "another epoch" ? {} : { s1: 9 }, what);
     if (what === "an unknown cursor") assert.equal(p.state.sites.get("s1").cursor, "n");
   }
 });
@@ -169,10 +172,21 @@ test("tray: an acknowledged record goes after two weeks where a backup covers it
   assert.equal(isOver(row(15, 1), NOW, {}), false);
 });
 
+test("sync: a refused record a manager let in is counted as sent; one whose id another record took stays refused", async () => {
+  const asked = [];
+  const p = phone(server({ ask: async (t, ids) => { asked.push(...ids); return ok({ receipts: ids.map((id) => ({ id, state: "stored", pos: 9 })) }); } }),
+    [{ id: "r1", record: "r1", log: "s1", state: "refused", receipt: { state: "refused", code: "not_permitted" } }, { id: "r2", record: "r2", log: "s1", state: "refused", receipt: { state: "refused", code: "id_reused" } }]);
+  await p.run();
+  assert.deepEqual(asked, ["r1"]);
+  assert.deepEqual(p.state.records.map((r) => r.state), ["sent", "refused"]);
+});
+
 test("rescue: the file carries each record as the exact string it is", () => {
   const record = '{"id":"a","body":{"typed":"4,50 \u03a9 <&>","value":4.50}}';
-  const file = JSON.parse(trayFile([{ record, state: "waiting" }], { installation: "i", name: "Crew 1" }, NOW));
-  assert.deepEqual(file, { tripwell: "tray", v: 1, installation: "i", person: "Crew 1", made: "2026-12-01T12:00:00.000Z", records: [{ record, state: "waiting" }] });
+  const photos = [{ sha256: "aa", entry: "a", base64: "AAEC" }, { sha256: "bb", entry: "a", base64: "" }];
+  const file = JSON.parse(trayFile([{ record, state: "waiting" }], { installation: "i", name: "Crew 1" }, NOW, photos).join(""));
+  assert.deepEqual(file, { tripwell: "tray", v: 1, installation: "i", person: "Crew 1", made: "2026-12-01T12:00:00.000Z", records: [{ record, state: "waiting" }], photos });
+  assert.deepEqual(JSON.parse(trayFile([], {}, NOW).join("")).photos, []);
 });
 
 test("rescue: a refused record made again says the same at the same time", () => {

@@ -349,27 +349,42 @@ func TestOffline_TwoPagesACopyAnotherVersionAndAServerPutBack(t *testing.T) {
 	p.Reload()
 	p.Until("the newer client without a line", `globalThis.newerClient && document.querySelector(".along")`)
 	w.mend()
-	p.testAnother()
-	p.Sees("All sent")
+	p.startAnother()
+	p.testNext(chromium.Shot(t, 120))
+	p.sendAll()
 
-	// The server is put back to the backup: what this phone sent since goes again by itself.
-	back, err := store.Open(filepath.Dir(older.Name()), store.Options{Now: time.Now})
+	// The server is put back to the backup, on another machine and without the photos: what this phone sent since goes again by
+	// itself, and its photo too.
+	dir := t.TempDir()
+	done, err := store.Restore(t.Context(), dir, older.Name(), store.Options{Now: time.Now}, nil)
+	must(t, err)
+	back, err := store.Open(dir, store.Options{Now: time.Now})
 	must(t, err)
 	defer back.Close()
 	had, now := *r, r.entries()
 	had.store = back
-	if len(now) != 6 || len(had.entries()) != 4 {
-		t.Fatalf("got %d entries now and %d in the backup, want 6 and 4", len(now), len(had.entries()))
+	if done.Epoch != 2 || len(now) != 6 || len(had.entries()) != 4 {
+		t.Fatalf("got epoch %d, %d entries now and %d in the backup, want 2, 6 and 4", done.Epoch, len(now), len(had.entries()))
 	}
 	restored := httptest.NewServer(newerServer(t, back).Handler())
 	defer restored.Close()
 	w.lead(restored.Listener.Addr().String())
 	p.Reload()
-	eventually(t, "six entries at the restored server", func() bool { return len(had.entries()) == 6 })
-	if again := had.entries(); len(again) != 6 || again[4].ID != now[4].ID || again[5].ID != now[5].ID {
+	last := now[5]
+	eventually(t, "six entries and the photo at the restored server", func() bool {
+		here := false
+		must(t, back.View(had.manager.Scope(), func(v *store.View) error { here = v.HasPhoto(last.Photos[0]); return nil }))
+		return here && len(had.entries()) == 6
+	})
+	if again := had.entries(); len(again) != 6 || again[4].ID != now[4].ID || again[5].ID != last.ID {
 		t.Errorf("got %+v on the restored server, want the two entries it lost", again)
 	}
-	p.Sees("All sent")
+	p.sendAll()
+	report, err := back.Check(t.Context(), nil)
+	must(t, err)
+	if len(report.Problems) > 0 || report.Gaps > 0 {
+		t.Errorf("the restored store after all: %d gaps in n, problems %v", report.Gaps, report.Problems)
+	}
 }
 
 // newerServer is the program of a later day: one of the client's modules differs.

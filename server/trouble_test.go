@@ -292,7 +292,7 @@ func TestTrouble_ANewerVersionTakesOverWhileThePageAsks(t *testing.T) {
 	newer := httptest.NewServer(newerServer(t, r.store).Handler())
 	defer newer.Close()
 	w.lead(newer.Listener.Addr().String())
-	p.JS(`(navigator.serviceWorker.getRegistration().then((r) => r.update()), setInterval(() => fetch("/exchange/logs").catch(() => {}), 5), setInterval(() => fetch("/livez").catch(() => {}), 5), true)`)
+	p.JS(`(navigator.serviceWorker.getRegistration().then((r) => r.update()), setInterval(() => fetch("/exchange/logs").catch(() => {}), 5), true)`)
 	p.Tap("button", "Take it now")
 	p.Until("the newer client", `globalThis.newerClient`)
 }

@@ -44,6 +44,8 @@ func TestRound_PlannedWalkedOfflineAndAccepted(t *testing.T) {
 	desk := openDesk(t, r, r.manager)
 
 	was := r.dueOf(device, "instrument")
+	strip := func() string { desk.Open(r.url + "/"); return desk.Text(".strip") + desk.Value(`document.querySelector(".strip").outerHTML`) }
+	bare := strip()
 	desk.Open(r.url + "/plans/instrument-yearly/edit")
 	desk.Until("the plan's form", `document.querySelector("[name='every_n']")`)
 	desk.JS(`(document.querySelector("[name='every_n']").value = "7", document.querySelector("[name='every_unit']").value = "D", document.querySelector("[name='reason']").value = "Wet rooms", true)`)
@@ -109,6 +111,9 @@ func TestRound_PlannedWalkedOfflineAndAccepted(t *testing.T) {
 	desk.Sees("Outlet 3 next week")
 	if got := r.rounds()[0]; got.State != store.RoundAccepted || got.Counts[store.StopDone] != 3 || got.Counts[store.StopPassed] != 1 {
 		t.Errorf("got %s, %v", got.State, got.Counts)
+	}
+	if now := strip(); now == bare {
+		t.Errorf("the overview's strip stayed as it was: %s", now)
 	}
 	for _, e := range r.entries() {
 		if e.Shown != forms.Pass {

@@ -38,3 +38,12 @@ export function showMoment(app, ms) {
 
 const two = (n) => String(n).padStart(2, "0");
 const localDay = (d) => `${d.getFullYear()}-${two(d.getMonth() + 1)}-${two(d.getDate())}`;
+
+/** How old a copy is, as people say it. */
+export function ageWords(say, taken, now) {
+  const minutes = Math.max(0, Math.floor((now - taken) / 60_000));
+  if (minutes < 2) return say("phone.age.now");
+  if (minutes < 60) return say("phone.age.minutes", { n: minutes });
+  if (minutes < 48 * 60) return say("phone.age.hours", { n: Math.floor(minutes / 60) });
+  return say("phone.age.days", { n: Math.floor(minutes / 1440) });
+}

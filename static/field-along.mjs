@@ -2,19 +2,10 @@
 
 import { html } from "./vendor/htm-preact.mjs";
 import { Foot, Where } from "./field-parts.mjs";
-import { showMoment } from "./days.mjs";
+import { ageWords, showMoment } from "./days.mjs";
 import { isChosen } from "./taking.mjs";
 
 const HOURS = 3_600_000;
-
-/** How old a copy is, as people say it. */
-export function ageWords(say, taken, now) {
-  const minutes = Math.max(0, Math.floor((now - taken) / 60_000));
-  if (minutes < 2) return say("phone.age.now");
-  if (minutes < 60) return say("phone.age.minutes", { n: minutes });
-  if (minutes < 48 * 60) return say("phone.age.hours", { n: Math.floor(minutes / 60) });
-  return say("phone.age.days", { n: Math.floor(minutes / 1440) });
-}
 
 export function AlongPage({ app }) {
   const { say, state } = app;

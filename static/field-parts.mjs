@@ -2,7 +2,7 @@
 
 import { html } from "./vendor/htm-preact.mjs";
 import { PhoneNotices } from "./phone-notices.mjs";
-import { showDay } from "./days.mjs";
+import { ageWords, showDay } from "./days.mjs";
 import { showTag } from "./tag.mjs";
 
 /** Which mark a result or a finding's verdict is drawn with; the word stands beside it always. */
@@ -53,13 +53,13 @@ function Notices({ app }) {
     ${state.saved && html`<p class=${`saved ${state.saved.result ? markOf(state.saved.result) : ""}`} role="status">${state.saved.result && html`<${Mark} verdict=${state.saved.result}>${say(`verdict.${state.saved.result}`)}<//>`} ${say("field.saved", { what: state.saved.what })}</p>`}</div>`;
 }
 
-/** Foot of every page: what is kept on this phone, and the one main button where the page has one. */
+/** Foot of every page: what is kept on this phone, how old the oldest copy on it is, and the one main button where the page has one. */
 export function Foot({ app, children }) {
   const { say, tray } = app;
   const kept = tray.waiting > 0 ? say("field.kept", { n: tray.waiting }) : tray.photos > 0 ? say("photo.kept", { n: tray.photos }) : null;
   const refused = tray.refused > 0 ? say("field.refused_count", { n: tray.refused }) : null;
   return html`<footer class="foot"><a class="tray" href="#/tray">${app.state.line === "unreached" && html`<span>${say("field.no_signal")}</span>`}
-    ${refused && html`<b class="bad">${refused}</b>`}${(kept || !refused) && html`<b>${kept ?? say("field.all_sent")}</b>`}</a>${children}</footer>`;
+    ${refused && html`<b class="bad">${refused}</b>`}${(kept || !refused) && html`<b>${kept ?? say("field.all_sent")}</b>`}${app.state.sites.size > 0 && html`<span>${say("phone.copies", { n: app.state.sites.size, age: ageWords(say, Math.min(...[...app.state.sites.values()].map((s) => s.taken)), app.now()) })}</span>`}</a>${children}</footer>`;
 }
 
 /** Context of a device: floor and room, kind, panel and circuit. */

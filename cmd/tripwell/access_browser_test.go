@@ -66,7 +66,13 @@ func dark(w *chromium.Window, yes bool) {
 // checkBoth holds a page against all rules in light, and its colours in dark.
 func checkBoth(w *chromium.Window, axe, name string) {
 	w.T.Helper()
-	for _, mode := range []string{"", "color-contrast"} {
+	checkIn(w, axe, name, "", "color-contrast")
+}
+
+// checkIn holds a page against all rules in light ("") and one rule in dark, as named.
+func checkIn(w *chromium.Window, axe, name string, modes ...string) {
+	w.T.Helper()
+	for _, mode := range modes {
 		dark(w, mode != "")
 		for _, v := range check(w, axe, mode) {
 			w.T.Errorf("%s (dark: %v): %s: %s\n\t%s", name, mode != "", v.Rule, v.Help, strings.Join(v.Places, "\n\t"))
@@ -85,9 +91,9 @@ func TestAccess_OfficePagesBreakNoRule(t *testing.T) {
 	checkBoth(office, axe, "the sign-in page")
 	office.Press("main form", "")
 	office.Until("the overview", `document.querySelector("nav a[href='/sites']")`)
-	kind := regexp.MustCompile(`[0-9a-f]{8}-[0-9a-f-]{27}|/sites/[A-Z0-9-]+|/(?:limits|forms|plans)/[^?]+|=[^&]*`)
+	kind := regexp.MustCompile(`[0-9a-f]{8}-[0-9a-f-]{27}|/sites/[A-Z0-9-]+|/(?:limits|forms|plans)/[^?]+|\?.*`)
 	seen, queue := map[string]bool{}, []string{"/"}
-	for len(queue) > 0 && len(seen) < 60 {
+	for len(queue) > 0 && len(seen) < 40 {
 		path := queue[0]
 		queue = queue[1:]
 		if k := kind.ReplaceAllString(path, "…"); seen[k] {
@@ -96,7 +102,11 @@ func TestAccess_OfficePagesBreakNoRule(t *testing.T) {
 			seen[k] = true
 		}
 		office.Open(server.link("address") + path)
-		checkBoth(office, axe, path)
+		if len(seen) <= 12 {
+			checkBoth(office, axe, path)
+		} else {
+			checkIn(office, axe, path, "") // the colours are the same few tokens everywhere
+		}
 		links, _ := office.JS(`[...new Set([...document.querySelectorAll("a[href]")].filter((a) => a.origin === location.origin && !a.hasAttribute("download") && !/\.(xlsx|pdf|csv|jsonl|svg|png|zip|ics)|^\/(table|workbook|label\b|label\?|labels\.|round-sheet|device-sheet|bundle|records|field|out)/.test(a.pathname + a.search)).map((a) => a.pathname + a.search))].join("\n")`).(string)
 		queue = append(queue, strings.Fields(links)...)
 	}

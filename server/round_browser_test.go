@@ -44,7 +44,10 @@ func TestRound_PlannedWalkedOfflineAndAccepted(t *testing.T) {
 	desk := openDesk(t, r, r.manager)
 
 	was := r.dueOf(device, "instrument")
-	strip := func() string { desk.Open(r.url + "/"); return desk.Text(".strip") + desk.Value(`document.querySelector(".strip").outerHTML`) }
+	strip := func() string {
+		desk.Open(r.url + "/")
+		return desk.Text(".strip") + desk.Value(`document.querySelector(".strip").outerHTML`)
+	}
 	bare := strip()
 	desk.Open(r.url + "/plans/instrument-yearly/edit")
 	desk.Until("the plan's form", `document.querySelector("[name='every_n']")`)

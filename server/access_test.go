@@ -236,11 +236,11 @@ func TestRoutes_OnlyWhoTheTableNamesGetsIn(t *testing.T) {
 		}
 	}
 	for _, route := range publicRoutes() {
-		if route.method == post && route.who&auditor != 0 && route.who&taking == 0 {
+		if route.method == post && route.who&auditor != 0 && route.who&alone == 0 {
 			t.Errorf("%s %s: an auditor only reads", route.method, route.path)
 		}
-		if route.who&taking != 0 && (route.method != post || route.who&^taking != office) {
-			t.Errorf("%s %s: only a POST of the office takes a file", route.method, route.path)
+		if route.who&alone != 0 && (route.method != post || route.who&auditor == 0) {
+			t.Errorf("%s %s: only a POST of an auditor's is said to be its caller's alone", route.method, route.path)
 		}
 	}
 }

@@ -18,9 +18,9 @@ const (
 	auditor
 	phone // an enrolled installation, by its bearer token
 	owner // whoever may open the folder's socket
-	// taking marks a POST that makes a file from what its caller may read: all it puts in the book is that it was taken.
-	// Only such a one may be an auditor's, who changes nothing.
-	taking
+	// alone marks a POST of which only its caller gets anything: a file made from what they may read, their own feed, their
+	// own mail. Nothing of the work changes by it, so it may be an auditor's, who otherwise only reads.
+	alone
 
 	anyone who = 0
 	office     = manager | auditor // reads the office pages; only a manager changes anything

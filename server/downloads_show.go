@@ -21,6 +21,7 @@ type downloadsPage struct {
 	Table                      []field
 	Round                      []field // empty where there is no site
 	Workbook                   []field
+	Bundle                     []field
 }
 
 func (s *Server) downloadsShow(c echo.Context) error {
@@ -58,6 +59,7 @@ func (s *Server) downloadsPage(c echo.Context, status int, typed url.Values, wro
 		view.LabelsText, view.Labels = k.say("paper.labels.under"), true
 	}
 	view.Table = tableFields(k, offered)
+	view.Bundle = []field{{Name: "site", ID: "bundle-site", Label: k.say("office.downloads.site"), Options: offered}}
 	view.Round = s.roundFields(sites)
 	return s.page(c, status, "downloads.html", view)
 }

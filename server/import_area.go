@@ -33,6 +33,8 @@ type upload struct {
 	rejects          []register.Reject
 	ask              results.Ask // of tests made elsewhere, and what became of them
 	taken            *results.Report
+	shapes           map[string]bool // of the rows that could be its headings
+	keptAs           string          // the name its columns were read by, or kept under
 }
 
 const (
@@ -83,6 +85,14 @@ func (a *importArea) change(u upload) {
 		if o.id == u.id && o.person == u.person {
 			a.uploads[i] = &u
 		}
+	}
+}
+
+// noted takes back the sentence a page has just said.
+func (a *importArea) noted(u upload) {
+	if u.note != "" {
+		u.note = ""
+		a.change(u)
 	}
 }
 

@@ -21,6 +21,7 @@ type importPage struct {
 	Heading, Lead string
 	Wrong         string
 	Columns       []link // what a register may hold
+	Kept          keptList
 }
 
 func (s *Server) importNew(c echo.Context) error {
@@ -33,6 +34,11 @@ func (s *Server) importAsk(c echo.Context, status int, wrong string) error {
 	for _, name := range register.ColumnNames() {
 		p.Columns = append(p.Columns, link{Text: k.say("intake.column." + name)})
 	}
+	kept, err := s.keptColumns(ofRegister, nil)
+	if err != nil {
+		return err
+	}
+	p.Kept = keptList{"/import/columns", kept}
 	return s.page(c, status, "import.html", p)
 }
 
@@ -44,7 +50,7 @@ func (s *Server) importTake(c echo.Context) error {
 	}
 	if err == nil {
 		u.person = person(c).ID
-		if err = s.looksRight(c, u); err == nil {
+		if err = s.looksRight(c, &u); err == nil {
 			return toPage(c, "/import/"+s.imports.put(u, s.store.Now()))
 		}
 	}
@@ -56,8 +62,11 @@ func (s *Server) importTake(c echo.Context) error {
 }
 
 // looksRight opens the file once, so that one that is no sheet is refused before anything is asked about it.
-func (s *Server) looksRight(c echo.Context, u upload) error {
-	_, err := s.prepared(c, u)
+func (s *Server) looksRight(c echo.Context, u *upload) error {
+	p, err := s.prepared(c, *u)
+	if err == nil {
+		u.shapes = p.Shapes
+	}
 	return err
 }
 

@@ -27,7 +27,7 @@ func previewSample() previewPage {
 		Sheets:   []sheetAsk{{N: 0, Name: "Main", State: "12 rows", Header: field{Name: "header.0", Type: "number", Label: "Row of the headings", Value: "4"}, Site: field{Name: "site.0", Type: "text", Label: "Site"}, Skip: field{Name: "skip.0", Type: "check", Label: "Leave out"}}},
 		Rows:     []previewRow{{"5", "ELM-4", "RCD", "Hall", "LP-1 / 2", "new"}},
 		Problems: []problemLine{{"Main · row 9", "kind", "Thing", "This kind of device is not known.", true}}, More: "and 3 more", ProblemsHead: "4 things to look at", LeftOut: []string{"Main · row 12: a total (Total 12)"},
-		Rejects: true, NewTags: field{Name: "new_tags", Type: "check", Label: "New tags"},
+		Offers: []columnsKept{{"Mill lists", "1 Dec 2026, Manager 1"}}, KeepAs: field{Name: "keep_as", Type: "text", Label: "Name", Value: "Mill lists"}, Rejects: true, NewTags: field{Name: "new_tags", Type: "check", Label: "New tags"},
 	}
 }
 

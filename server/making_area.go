@@ -10,11 +10,11 @@ import (
 	"sync"
 	"time"
 
-	"tripwell/export"
+	"tripwell/forms"
 	"tripwell/store"
 )
 
-// makingArea holds the workbooks that are made for the office pages: one a person, in a temporary file, never a whole one
+// makingArea holds the workbooks and bundles that are made for the office pages: one a person, in a temporary file, never a whole one
 // in memory. Few are made at a time; a finished one is kept for makingLife, or until its person wants another.
 type makingArea struct {
 	mu     sync.Mutex
@@ -30,11 +30,23 @@ const (
 	makingsAtOne = 2
 )
 
-// making is one workbook and how far it is. What is asked is never changed.
+// madeKind is what can be made: where its page stands, how it is sent, and which words speak of it.
+type madeKind struct{ path, mime, words string }
+
+var (
+	madeWorkbook = madeKind{"/workbook/", workbookKind, "office.downloads.made_workbook."}
+	madeBundle   = madeKind{"/bundle/", zipKind, "office.downloads.made_bundle."}
+)
+
+// maker writes a file, and stops where its progress or its context says so.
+type maker func(ctx context.Context, w io.Writer, progress func(done, total int) error) error
+
+// making is one file and how far it is. What is asked is never changed.
 type making struct {
-	id, person, file string // file is the name it is sent under
-	site             string // in words
-	ask              export.WorkbookAsk
+	kind             madeKind
+	id, person, file string    // file is the name it is sent under
+	site             string    // in words
+	from, to         forms.Day // of its entries
 	scope            store.Scope
 	stop             context.CancelFunc
 	ended            chan struct{} // closed when it is made, or cannot be
@@ -48,18 +60,17 @@ type making struct {
 	sending     sync.WaitGroup
 }
 
-var errStopped = errors.New("the workbook is no longer wanted")
+var errStopped = errors.New("the file is no longer wanted")
 
 func newMakingArea() *makingArea {
 	ctx, end := context.WithCancel(context.Background())
 	return &makingArea{of: map[string]*making{}, turn: make(chan struct{}, makingsAtOne), ctx: ctx, end: end}
 }
 
-// begin makes a workbook in place of the person's earlier one. write writes it, and stops where its progress says so.
-func (a *makingArea) begin(m *making, write func(w io.Writer, ask export.WorkbookAsk) error) {
+// begin makes a file in place of the person's earlier one.
+func (a *makingArea) begin(m *making, write maker) {
 	ctx, stop := context.WithCancel(a.ctx)
 	m.id, m.stop, m.ended = rand.Text(), stop, make(chan struct{})
-	m.ask.Progress = func(done, total int) error { return m.progress(ctx, done, total) }
 	a.mu.Lock()
 	former := a.of[m.person]
 	a.of[m.person] = m
@@ -87,7 +98,7 @@ func (m *making) progress(ctx context.Context, done, total int) error {
 }
 
 // make waits for its turn and writes the file. The file has no name: what a stopped program leaves behind is nothing.
-func (m *making) make(ctx context.Context, turn chan struct{}, write func(io.Writer, export.WorkbookAsk) error) {
+func (m *making) make(ctx context.Context, turn chan struct{}, write maker) {
 	select {
 	case turn <- struct{}{}:
 		defer func() { <-turn }()
@@ -98,13 +109,13 @@ func (m *making) make(ctx context.Context, turn chan struct{}, write func(io.Wri
 	m.mu.Lock()
 	m.begun = true
 	m.mu.Unlock()
-	out, err := os.CreateTemp("", "tripwell-workbook-")
+	out, err := os.CreateTemp("", "tripwell-download-")
 	if err != nil {
-		m.fail(fmt.Errorf("temporary file for a workbook: %w", err))
+		m.fail(fmt.Errorf("temporary file for a download: %w", err))
 		return
 	}
 	_ = os.Remove(out.Name()) // where an open file cannot be removed, shut removes it
-	if err := write(out, m.ask); err != nil {
+	if err := write(ctx, out, func(done, total int) error { return m.progress(ctx, done, total) }); err != nil {
 		shut(out)
 		m.fail(err)
 		return
@@ -165,7 +176,7 @@ func (a *makingArea) get(id, person string) (*making, error) {
 	return nil, errNoMaking
 }
 
-var errNoMaking = refuse(codeNotFound, "", "This workbook is no longer kept here. Make it again on the downloads page.")
+var errNoMaking = refuse(codeNotFound, "", "This file is no longer kept here. Make it again on the downloads page.")
 
 // open gives the finished file to be read from its beginning; the caller calls done afterwards.
 func (m *making) open() (file io.Reader, size int64, done func(), err error) {

@@ -17,6 +17,7 @@ type resultsPage struct {
 	Heading, Lead string
 	Wrong         string
 	What          field
+	Kept          keptList
 }
 
 func (s *Server) resultsNew(c echo.Context) error {
@@ -25,7 +26,12 @@ func (s *Server) resultsNew(c echo.Context) error {
 
 func (s *Server) resultsAsk(c echo.Context, status int, what, wrong string) error {
 	k := s.ink()
+	kept, err := s.keptColumns(ofResults, nil)
+	if err != nil {
+		return err
+	}
 	return s.page(c, status, "results.html", resultsPage{
+		Kept:  keptList{"/results/columns", kept},
 		Frame: s.frame(c, k.say("results.heading"), "sites"), Crumbs: []link{{Href: "/sites", Text: k.say("office.nav.sites")}}, Heading: k.say("results.heading"), Lead: k.say("results.lead"), Wrong: wrong,
 		What: field{Name: "what", Label: k.say("results.what"), Hint: k.say("results.what_hint"), Options: choices(what, "readings", k.say("results.what_readings"), "past", k.say("results.what_past"))},
 	})
@@ -39,7 +45,7 @@ func (s *Server) resultsTake(c echo.Context) error {
 	}
 	if err == nil {
 		u.person, u.ask.Past, u.ask.DryRun = person(c).ID, u.said == "past", false
-		if _, err = s.resultsOf(c, u, true); err == nil {
+		if _, err = s.resultsOf(c, &u, true); err == nil {
 			return toPage(c, "/results/"+s.results.put(u, s.store.Now()))
 		}
 	}
@@ -51,7 +57,7 @@ func (s *Server) resultsTake(c echo.Context) error {
 }
 
 // resultsOf takes an upload apart and, unless dry, in. One at a time: see importArea.
-func (s *Server) resultsOf(c echo.Context, u upload, dry bool) (results.Report, error) {
+func (s *Server) resultsOf(c echo.Context, u *upload, dry bool) (results.Report, error) {
 	ctx := c.Request().Context()
 	done, err := s.results.take(ctx)
 	if err != nil {
@@ -62,8 +68,10 @@ func (s *Server) resultsOf(c echo.Context, u upload, dry bool) (results.Report, 
 	if err != nil {
 		return results.Report{}, err
 	}
-	u.ask.DryRun = dry
-	return results.Import(ctx, s.store, u.person, book, u.ask, nil)
+	u.shapes = book.Shapes()
+	ask := u.ask
+	ask.DryRun = dry
+	return results.Import(ctx, s.store, u.person, book, ask, nil)
 }
 
 // resultsFor reads the upload an address names.

@@ -36,6 +36,8 @@ type resultsPreview struct {
 	More          string
 	Rest          bool
 	Tests         []foundTest
+	Offers        []columnsKept // kept columns that were made for such headings
+	KeepAs        field
 }
 
 // heldRow is a row that is not in, or will not be.
@@ -57,14 +59,14 @@ func (s *Server) resultsShow(c echo.Context) error {
 	}
 	report := u.taken
 	if report == nil {
-		r, err := s.resultsOf(c, u, true)
+		r, err := s.resultsOf(c, &u, true)
 		if w, fault := wrongOf(err); err != nil && (fault || w.Field == "file") {
 			return err
 		} else if err != nil {
 			// What was said of the file cannot be: it is taken back, with the sentence why.
 			u.ask = results.Ask{Past: u.ask.Past}
 			u.note = cmp.Or(u.note, w.Text)
-			if r, err = s.resultsOf(c, u, true); err != nil {
+			if r, err = s.resultsOf(c, &u, true); err != nil {
 				return err
 			}
 		}
@@ -74,10 +76,7 @@ func (s *Server) resultsShow(c echo.Context) error {
 	if err != nil {
 		return err
 	}
-	if u.note != "" {
-		u.note = ""
-		s.results.change(u)
-	}
+	s.results.noted(u)
 	return s.page(c, http.StatusOK, "results_preview.html", view)
 }
 
@@ -88,19 +87,22 @@ func (s *Server) resultsMend(c echo.Context) error {
 	if err != nil {
 		return err
 	}
-	if u.taken != nil {
-		return toPage(c, "/results/"+u.id)
-	}
 	f, err := s.typedForm(c)
 	if err != nil {
 		return err
+	}
+	if name, use := f.Get("keep_as"), f.Get("use"); f.Get("do") == "keep" || use != "" {
+		return s.resultsKept(c, u, name, use)
+	}
+	if u.taken != nil {
+		return toPage(c, "/results/"+u.id)
 	}
 	ask := askTyped(f, u.ask)
 	same := sameAsk(u.ask, ask)
 	u.ask = ask
 	switch {
 	case f.Get("do") == "import" && same:
-		r, err := s.resultsOf(c, u, false)
+		r, err := s.resultsOf(c, &u, false)
 		w, fault := wrongOf(err)
 		switch {
 		case err == nil:
@@ -112,6 +114,29 @@ func (s *Server) resultsMend(c echo.Context) error {
 		}
 	case f.Get("do") == "import":
 		u.note = s.words.Say("intake.look_again")
+	}
+	s.results.change(u)
+	return toPage(c, "/results/"+u.id)
+}
+
+// resultsKept keeps the columns as the page showed them, or reads the file by what was kept of another.
+func (s *Server) resultsKept(c echo.Context, u upload, name, use string) (err error) {
+	switch {
+	case use != "" && u.taken == nil:
+		err = s.resultsUse(&u, use)
+	case u.taken != nil:
+		u.keptAs = name
+		u.note, err = s.keepColumns(c, ofResults, name, u.taken.Shapes(), u.taken.Kept(u.ask))
+	case use == "":
+		r, wrong := s.resultsOf(c, &u, true)
+		if wrong != nil {
+			return wrong
+		}
+		u.keptAs = name
+		u.note, err = s.keepColumns(c, ofResults, name, r.Shapes(), r.Kept(u.ask))
+	}
+	if err != nil {
+		return err
 	}
 	s.results.change(u)
 	return toPage(c, "/results/"+u.id)
@@ -153,7 +178,7 @@ func (s *Server) resultsView(c echo.Context, u upload, r *results.Report) (view 
 	view = resultsPreview{
 		Frame: s.frame(c, k.say("results.heading"), "sites"), Crumbs: []link{{Href: "/sites", Text: k.say("office.nav.sites")}, {Href: "/results", Text: k.say("results.heading")}},
 		Heading: k.say("intake.preview", "name", u.name), Lead: k.say("results.preview_lead"), Note: u.note, Action: "/results/" + u.id, Done: u.taken != nil, Told: r.Told, Rest: r.Rest != "",
-		ProblemsHead: k.say("results.held", "n", count(r.Held())),
+		ProblemsHead: k.say("results.held", "n", count(r.Held())), KeepAs: s.keepAs(u),
 	}
 	if u.ask.Past {
 		view.Lead = k.say("results.past_lead")
@@ -171,6 +196,9 @@ func (s *Server) resultsView(c echo.Context, u upload, r *results.Report) (view 
 		return view, nil
 	}
 	s.resultsColumns(&view, r)
+	if view.Offers, err = s.keptColumns(ofResults, func(k store.KeptColumns) bool { return k.Name != u.keptAs && k.Fits(u.shapes) }); err != nil {
+		return view, err
+	}
 	view.Asks, err = s.resultsAsks(c, u.ask, r)
 	return view, err
 }
@@ -353,7 +381,7 @@ func (s *Server) resultsFile(c echo.Context) error {
 	}
 	report := u.taken
 	if report == nil {
-		r, err := s.resultsOf(c, u, true)
+		r, err := s.resultsOf(c, &u, true)
 		if err != nil {
 			return err
 		}

@@ -17,7 +17,8 @@ func resultsSample() resultsPreview {
 		Told: []string{"Read as UTF-8 text."}, Sums: []sum{{"#rows", "12", "tests", "to be added", ""}, {"#problems", "2", "left out", "wrong or doubtful", "fail"}}, Judged: []mark{{"pass", "11 Pass"}, {"fail", "1 Fail"}},
 		Asks:    []field{{Name: "source", Label: "Where the readings come from", Options: choices("paper", "paper", "Paper", "spreadsheet", "A spreadsheet")}, {Name: "doubted", Type: "check", Label: "Take 1 doubtful test in as it stands"}},
 		Columns: []columnAsk{{N: 0, Key: "t", Heading: "t", Select: field{Name: "c.0", Label: "t is read as", Value: "trip_time_ms in s", Options: choices("trip_time_ms in s", "", "Not read", "trip_time_ms in s", "Trip time in s")}}},
-		Go:      "Import 12 tests", ProblemsHead: "2 tests are not in", Problems: []heldRow{{"Main · row 9", "t", "0.025", "0.025 ms is unlikely here.", mark{"watch", "doubtful"}}}, More: "and 3 more", Rest: true,
+		Offers:  []columnsKept{{"Meter", "1 Dec 2026, Manager 1"}}, KeepAs: field{Name: "keep_as", Type: "text", Label: "Name"},
+		Go: "Import 12 tests", ProblemsHead: "2 tests are not in", Problems: []heldRow{{"Main · row 9", "t", "0.025", "0.025 ms is unlikely here.", mark{"watch", "doubtful"}}}, More: "and 3 more", Rest: true,
 		Tests: []foundTest{{"row 5", "Hall · By the sink", "K7Q-M2P-3", "Instrument test", "2026-11-02", "Trips too slowly.", mark{"fail", "Fail"}}},
 	}
 }

@@ -31,6 +31,7 @@
 //	  dir_feed    SHA-256 of token 32   → JSON: whose calendar
 //	  dir_digest  person 16             → JSON: which digest, and what became of the last
 //	  dir_setting name                  → value
+//	  dir_columns what is read | 0 | name in lower case → JSON of KeptColumns
 //
 // Two readers are shared by pages, exports and plans, which never work out anew what they say: View.ProtectionGaps (what of a
 // site's ground-fault protection somebody should look at, worst first) and View.Defects (what failed and is not put right).
@@ -69,11 +70,12 @@ var (
 	bktCalendar = []byte("dir_feed")
 	bktDigest   = []byte("dir_digest")
 	bktSetting  = []byte("dir_setting")
+	bktColumns  = []byte("dir_columns")
 )
 
 var bookBuckets = [][]byte{bktRec, bktID, bktLog, bktLogs, bktNames, bktQuar, bktQuarSHA, bktHeads, bktDiffer, bktMeta}
 var countBuckets = [][]byte{bktCount, bktReused, bktGrant, bktTaken}
-var directoryBuckets = [][]byte{bktPerson, bktLink, bktSession, bktToken, bktInst, bktCalendar, bktDigest, bktSetting}
+var directoryBuckets = [][]byte{bktPerson, bktLink, bktSession, bktToken, bktInst, bktCalendar, bktDigest, bktSetting, bktColumns}
 
 // Names in meta and dir_setting.
 var (

@@ -9,7 +9,6 @@ import (
 	"maps"
 	"net/http"
 	"net/url"
-	"os"
 	"path/filepath"
 	"slices"
 	"strconv"
@@ -21,21 +20,14 @@ import (
 
 // importResultsFlags are what both imports of tests ask.
 type importResultsFlags struct {
-	folder
-	author
-	File       string `arg:"" placeholder:"FILE" help:"CSV or XLSX file; - reads standard input."`
-	Site       string `name:"site" placeholder:"CODE" help:"Site of rows that name none."`
+	sheetFlags
 	Source     string `name:"source" enum:",paper,spreadsheet,instrument-file" default:"" placeholder:"SOURCE" help:"What was typed from or read: paper, spreadsheet or instrument-file; spreadsheet when left out."`
 	ReadBy     string `name:"read-by" placeholder:"PERSON" help:"Who read, in rows that name nobody."`
 	TypedBy    string `name:"typed-by" placeholder:"PERSON" help:"Who typed, in rows that name nobody."`
 	Instrument string `name:"instrument" placeholder:"NAME" help:"Name or serial of the instrument, in rows that name none."`
 	Test       string `name:"test" enum:",button,instrument,receptacle" default:"" placeholder:"TEST" help:"Which test it was, in rows that do not say: button, instrument or receptacle."`
-	Dates      string `name:"dates" placeholder:"dmy|mdy" help:"Which comes first in dates such as 03/04/2026: dmy the day, mdy the month."`
-	Map        string `name:"map" placeholder:"FILE" help:"JSON that says which heading is which column (see --save-map)."`
-	SaveMap    string `name:"save-map" placeholder:"FILE" help:"Write down how each column was read, to be corrected and given back with --map."`
 	Rejects    string `name:"rejects" placeholder:"FILE" help:"Write the rows that are not in, with the reasons, as CSV."`
 	Doubted    bool   `name:"doubted" help:"Take rows with doubtful values in as they stand."`
-	DryRun     bool   `name:"dry-run" help:"Only say what would be done."`
 }
 
 type importReadingsCmd struct{ importResultsFlags }
@@ -66,13 +58,9 @@ func (c importResultsFlags) run(e *env, ask results.Ask) error {
 	if err != nil {
 		return err
 	}
-	file := io.NopCloser(e.stdin)
-	if c.File != "-" {
-		f, err := os.Open(c.File)
-		if err != nil {
-			return usageError{fmt.Errorf("cannot read %s: %w", c.File, unwrapPath(err))}
-		}
-		file = f
+	file, err := c.open(e)
+	if err != nil {
+		return err
 	}
 	defer file.Close()
 	before, err := json.Marshal(ask)
@@ -93,11 +81,11 @@ func (c importResultsFlags) run(e *env, ask results.Ask) error {
 
 // ask is what the kept file says of its columns, and over it what the flags say.
 func (c importResultsFlags) ask(ask results.Ask) (results.Ask, error) {
+	raw, err := c.mapped()
+	if err != nil {
+		return ask, err
+	}
 	if c.Map != "" {
-		raw, err := os.ReadFile(c.Map)
-		if err != nil {
-			return ask, usageError{fmt.Errorf("cannot read %s: %w", c.Map, unwrapPath(err))}
-		}
 		kept, err := results.ParseAsk(raw)
 		if err != nil {
 			return ask, usageError{fmt.Errorf("%s: %w", c.Map, err)}
@@ -183,15 +171,7 @@ func (c importResultsFlags) save(e *env, ask results.Ask, r results.Report) erro
 			return err
 		}))
 	}
-	if c.SaveMap != "" {
-		wrong = append(wrong, outFile{Output: c.SaveMap}.write(e, func(w io.Writer) error {
-			enc := json.NewEncoder(w)
-			enc.SetEscapeHTML(false)
-			enc.SetIndent("", " ")
-			return enc.Encode(r.Kept(ask))
-		}))
-	}
-	return errors.Join(wrong...)
+	return errors.Join(append(wrong, c.saveMap(e, r.Kept(ask)))...)
 }
 
 // failed makes rows that are not in a failure, so that a script notices.

@@ -2,13 +2,11 @@ package main
 
 import (
 	"bytes"
-	"encoding/json"
 	"errors"
 	"fmt"
 	"io"
 	"net/http"
 	"net/url"
-	"os"
 	"path/filepath"
 	"strconv"
 	"strings"
@@ -17,16 +15,9 @@ import (
 )
 
 type importRegisterCmd struct {
-	folder
-	author
-	File    string `arg:"" placeholder:"FILE" help:"CSV or XLSX file, one row a device; - reads standard input."`
-	Site    string `name:"site" placeholder:"CODE" help:"Site of rows that name none."`
+	sheetFlags
 	Zone    string `name:"zone" placeholder:"ZONE" help:"Time zone of new sites whose rows name none, such as America/Chicago."`
-	Dates   string `name:"dates" placeholder:"dmy|mdy" help:"Which comes first in dates such as 03/04/2026: dmy the day, mdy the month."`
-	Map     string `name:"map" placeholder:"FILE" help:"JSON that says which heading is which column (see --save-map)."`
-	SaveMap string `name:"save-map" placeholder:"FILE" help:"Write down how each column was read, to be corrected and given back with --map."`
 	Rejects string `name:"rejects" placeholder:"FILE" help:"Write the rows that were left out, with the reasons, as .csv or .xlsx."`
-	DryRun  bool   `name:"dry-run" help:"Only say what would be done."`
 	Tags    bool   `name:"new-tags" negatable:"" default:"true" help:"Give every place of the file that has no tag a new one, ready for labels. --no-new-tags where pre-printed labels are put up instead."`
 }
 
@@ -41,13 +32,9 @@ func (c importRegisterCmd) Run(e *env) error {
 	if err != nil {
 		return err
 	}
-	file := io.NopCloser(e.stdin)
-	if c.File != "-" {
-		f, err := os.Open(c.File)
-		if err != nil {
-			return usageError{fmt.Errorf("cannot read %s: %w", c.File, unwrapPath(err))}
-		}
-		file = f
+	file, err := c.open(e)
+	if err != nil {
+		return err
 	}
 	defer file.Close()
 	var report register.Report
@@ -79,15 +66,11 @@ func (c importRegisterCmd) ask() (url.Values, []byte, error) {
 	if ext := strings.ToLower(filepath.Ext(c.Rejects)); c.Rejects != "" && ext != ".csv" && ext != ".xlsx" {
 		return nil, nil, usageError{fmt.Errorf("--rejects writes .csv or .xlsx; %s is neither", c.Rejects)}
 	}
-	if c.Map == "" {
-		return query, nil, nil
+	mapping, err := c.mapped()
+	if len(mapping) > 0 {
+		query.Set("map", strconv.Itoa(len(mapping)))
 	}
-	mapping, err := os.ReadFile(c.Map)
-	if err != nil {
-		return nil, nil, usageError{fmt.Errorf("cannot read %s: %w", c.Map, unwrapPath(err))}
-	}
-	query.Set("map", strconv.Itoa(len(mapping)))
-	return query, mapping, nil
+	return query, mapping, err
 }
 
 // problemsShown is how many problems of a file are printed; whoever has more mends these first.
@@ -158,15 +141,7 @@ func (c importRegisterCmd) save(e *env, r register.Report) error {
 			return register.WriteRejectsXLSX(w, r.Rejects)
 		}))
 	}
-	if c.SaveMap != "" {
-		wrong = append(wrong, outFile{Output: c.SaveMap}.write(e, func(w io.Writer) error {
-			enc := json.NewEncoder(w)
-			enc.SetEscapeHTML(false)
-			enc.SetIndent("", " ")
-			return enc.Encode(r.Mapping)
-		}))
-	}
-	return errors.Join(wrong...)
+	return errors.Join(append(wrong, c.saveMap(e, r.Mapping))...)
 }
 
 // failed makes rows that were left out a failure, so that a script notices.

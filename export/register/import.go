@@ -11,6 +11,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"slices"
 	"time"
 
 	"tripwell/export/intake"
@@ -62,6 +63,7 @@ type Prepared struct {
 	Report  Report
 	Reading Reading
 	Plan    Plan
+	Shapes  map[string]bool // of the rows that could be headings (intake.Book.Shapes)
 	options Options
 }
 
@@ -71,7 +73,7 @@ func Prepare(s *store.Store, name string, r io.Reader, o Options) (*Prepared, er
 	if err != nil {
 		return nil, asRefusal(err)
 	}
-	p := &Prepared{options: o}
+	p := &Prepared{Shapes: book.Shapes(), options: o}
 	scope := importScope(s, o.By)
 	err = s.View(scope, func(v *store.View) error {
 		sites, err := v.Sites()
@@ -121,6 +123,20 @@ func (p *Prepared) report() {
 		}
 	}
 	p.Report = report
+}
+
+// Shapes are those of the headings that were read, by which what was said of them is offered to the next file.
+func (r Report) Shapes() (shapes []string) {
+	for _, t := range r.Tables {
+		headings := make([]string, len(t.Columns))
+		for i, c := range t.Columns {
+			headings[i] = c.Heading
+		}
+		if shape, ok := intake.Shape(headings); ok && t.Skipped == "" && !slices.Contains(shapes, shape) {
+			shapes = append(shapes, shape)
+		}
+	}
+	return shapes
 }
 
 // Append appends what is new or changed. An import that stopped half way is simply run again. progress may be nil.

@@ -16,6 +16,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"maps"
 	"slices"
 	"strings"
 	"time"
@@ -122,6 +123,21 @@ func (r *Report) Kept(ask Ask) Ask {
 		kept.Columns[h.Heading] = h.Column
 	}
 	return kept
+}
+
+// Shapes are those of the headings that were read, sheet by sheet, by which what was said of them is offered to the next
+// file.
+func (r *Report) Shapes() (shapes []string) {
+	of := map[string][]string{}
+	for _, h := range r.Headings {
+		of[h.Sheet] = append(of[h.Sheet], h.Heading)
+	}
+	for _, sheet := range slices.Sorted(maps.Keys(of)) {
+		if shape, ok := intake.Shape(of[sheet]); ok && !slices.Contains(shapes, shape) {
+			shapes = append(shapes, shape)
+		}
+	}
+	return shapes
 }
 
 // Shorten leaves at most n outcomes in a report, first what is not in. The counts stay.

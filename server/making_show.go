@@ -2,6 +2,7 @@ package server
 
 import (
 	"cmp"
+	"context"
 	"errors"
 	"io"
 	"net/http"
@@ -13,11 +14,12 @@ import (
 	"github.com/labstack/echo/v4"
 
 	"tripwell/export"
+	"tripwell/export/bundle"
 	"tripwell/forms"
 	"tripwell/store"
 )
 
-// makingPage says how far a workbook is; without JavaScript it looks again by itself.
+// makingPage says how far a workbook or a bundle is; without JavaScript it looks again by itself.
 type makingPage struct {
 	Frame
 	Crumbs        []link
@@ -28,7 +30,7 @@ type makingPage struct {
 	File          []link // the file, once it is there
 }
 
-// makingSoon is how long a workbook may take to be there at once, and makingLook after how many seconds the page looks
+// makingSoon is how long a file may take to be there at once, and makingLook after how many seconds the page looks
 // again.
 const (
 	makingSoon = 700 * time.Millisecond
@@ -49,14 +51,49 @@ func (s *Server) workbookMake(c echo.Context) error {
 	if err := s.exportTaken(c.Request().Context(), by, "workbook", ask.Site, ask.From, ask.To); err != nil {
 		return err
 	}
-	m := &making{person: by, file: "tripwell-" + name + ".xlsx", site: cmp.Or(values.Get("site"), s.words.Say("office.downloads.all_sites")), ask: ask, scope: sc}
-	s.makings.begin(m, func(w io.Writer, ask export.WorkbookAsk) error { return export.WorkbookOf(w, s.store, sc, ask) })
+	m := &making{kind: madeWorkbook, person: by, file: "tripwell-" + name + ".xlsx", site: s.siteWords(values), from: ask.From, to: ask.To, scope: sc}
+	s.makings.begin(m, func(_ context.Context, w io.Writer, progress func(done, total int) error) error {
+		ask.Progress = progress
+		return export.WorkbookOf(w, s.store, sc, ask)
+	})
+	return s.toMaking(c, m)
+}
+
+// bundleMake begins a bundle and goes on to the page that tells how far it is.
+func (s *Server) bundleMake(c echo.Context) error {
+	values, err := decodeForm(c)
+	if err != nil {
+		return err
+	}
+	sc, by := scope(c), person(c).ID
+	ask, name, err := s.workbookAsked(sc, values.Get)
+	if err != nil {
+		return s.downloadsAgain(c, values, err)
+	}
+	if err := s.exportTaken(c.Request().Context(), by, "bundle", ask.Site, ask.From, ask.To); err != nil {
+		return err
+	}
+	m := &making{kind: madeBundle, person: by, file: "tripwell-" + name + ".zip", site: s.siteWords(values), from: ask.From, to: ask.To, scope: sc}
+	s.makings.begin(m, func(ctx context.Context, w io.Writer, progress func(done, total int) error) error {
+		said := func(done, total int64) { _ = progress(int(done), int(total)) } // its context stops it
+		return bundle.Write(ctx, w, s.store, sc, bundle.Ask{Site: ask.Site, From: ask.From, To: ask.To, Organisation: ask.Organisation, Progress: said})
+	})
+	return s.toMaking(c, m)
+}
+
+// siteWords is the site that was asked for, as its page says it.
+func (s *Server) siteWords(values url.Values) string {
+	return cmp.Or(values.Get("site"), s.words.Say("office.downloads.all_sites"))
+}
+
+// toMaking goes on to a making's page; what is soon there is there at once.
+func (s *Server) toMaking(c echo.Context, m *making) error {
 	select {
 	case <-m.ended:
 	case <-time.After(makingSoon):
 	case <-c.Request().Context().Done():
 	}
-	return toPage(c, "/workbook/"+m.id)
+	return toPage(c, m.kind.path+m.id)
 }
 
 // downloadsAgain shows the downloads page with what was typed and what is wrong beside its field.
@@ -78,7 +115,7 @@ func (s *Server) makingFor(c echo.Context) (*making, error) {
 	return m, err
 }
 
-func (s *Server) workbookMaking(c echo.Context) error {
+func (s *Server) makingShow(c echo.Context) error {
 	m, err := s.makingFor(c)
 	if err != nil {
 		return err
@@ -106,15 +143,16 @@ func (m *making) first() bool {
 }
 
 func (s *Server) makingView(c echo.Context, m *making) makingPage {
-	k, at := s.ink(), "/workbook/"+m.id
-	view := makingPage{Frame: s.frame(c, k.say("office.downloads.workbook"), "downloads"), Crumbs: []link{{Href: "/downloads", Text: k.say("office.downloads.title")}}, What: []string{m.site}}
-	if m.ask.From != forms.NoDay || m.ask.To != forms.NoDay {
+	k, at := s.ink(), m.kind.path+m.id
+	say := func(key string, pairs ...any) string { return k.say(m.kind.words+key, pairs...) }
+	view := makingPage{Frame: s.frame(c, say("title"), "downloads"), Crumbs: []link{{Href: "/downloads", Text: k.say("office.downloads.title")}}, What: []string{m.site}}
+	if m.from != forms.NoDay || m.to != forms.NoDay {
 		from, to := k.say("office.downloads.open_from"), k.say("office.downloads.open_to")
-		if m.ask.From != forms.NoDay {
-			from = k.day(m.ask.From)
+		if m.from != forms.NoDay {
+			from = k.day(m.from)
 		}
-		if m.ask.To != forms.NoDay {
-			to = k.day(m.ask.To)
+		if m.to != forms.NoDay {
+			to = k.day(m.to)
 		}
 		view.What = append(view.What, k.say("office.downloads.making_period", "from", from, "to", to))
 	}
@@ -122,13 +160,13 @@ func (s *Server) makingView(c echo.Context, m *making) makingPage {
 	defer m.mu.Unlock()
 	switch {
 	case m.err != nil:
-		view.Heading, view.Lead = k.say("office.downloads.made_failed"), s.told(c, m.err).Text
+		view.Heading, view.Lead = say("failed"), s.told(c, m.err).Text
 	case m.out != nil:
-		view.Heading, view.File = k.say("office.downloads.made"), []link{{Href: at + "/" + m.file, Text: k.say("office.downloads.made_go")}}
-		view.Lead = k.say("office.downloads.made_under", "tests", count(m.done), "size", sizeText(m.size))
+		view.Heading, view.File = say("ready"), []link{{Href: at + "/" + m.file, Text: say("go")}}
+		view.Lead = say("ready_under", "done", count(m.done), "size", sizeText(m.size))
 	default:
-		view.Heading, view.Again = k.say("office.downloads.making"), []link{{Href: at, Text: k.say("office.downloads.making_again")}}
-		view.Lead, view.Done, view.Total = k.say("office.downloads.making_under", "done", count(m.done), "total", count(m.total)), m.done, m.total
+		view.Heading, view.Again = say("making"), []link{{Href: at, Text: k.say("office.downloads.making_again")}}
+		view.Lead, view.Done, view.Total = say("making_under", "done", count(m.done), "total", count(m.total), "percent", count(100*m.done/max(1, m.total))), m.done, m.total
 		if !m.begun {
 			view.Lead = k.say("office.downloads.making_waits")
 		}
@@ -145,7 +183,7 @@ func sizeText(n int64) string {
 }
 
 // workbookMade sends the finished file.
-func (s *Server) workbookMade(c echo.Context) error {
+func (s *Server) makingTake(c echo.Context) error {
 	m, err := s.makingFor(c)
 	if err != nil {
 		return err
@@ -156,7 +194,7 @@ func (s *Server) workbookMade(c echo.Context) error {
 	}
 	defer done()
 	c.Response().Header().Set("Content-Length", strconv.FormatInt(size, 10))
-	return s.download(c, workbookKind, m.file, func(w io.Writer) error {
+	return s.download(c, m.kind.mime, m.file, func(w io.Writer) error {
 		_, err := io.Copy(w, file)
 		return err
 	})

@@ -13,9 +13,10 @@ import (
 
 	"github.com/xuri/excelize/v2"
 
-	"tripwell/export"
+	"tripwell/export/bundle"
 	"tripwell/forms"
 	"tripwell/store"
+	"tripwell/store/record"
 )
 
 // heldTurns keeps every workbook waiting until the function it gives is called.
@@ -40,7 +41,7 @@ func (r *rig) making(p store.Person) *making {
 // temporaryFiles counts the workbooks that have a name in the temp folder.
 func temporaryFiles(t *testing.T) int {
 	t.Helper()
-	names, err := filepath.Glob(filepath.Join(os.TempDir(), "tripwell-workbook-*"))
+	names, err := filepath.Glob(filepath.Join(os.TempDir(), "tripwell-download-*"))
 	must(t, err)
 	return len(names)
 }
@@ -107,28 +108,73 @@ func TestWorkbookMake_SaysHowFarItIs(t *testing.T) {
 	r := newRig(t, 1)
 	b := r.signIn(r.manager)
 	reached, goOn := make(chan struct{}), make(chan struct{})
-	m := &making{person: r.manager.ID, site: "All your sites", ask: export.WorkbookAsk{From: forms.NoDay, To: forms.NoDay}, file: "tripwell-all.xlsx", scope: r.manager.Scope()}
-	r.server.makings.begin(m, func(w io.Writer, ask export.WorkbookAsk) error {
-		must(t, ask.Progress(1250, 4000))
+	m := &making{kind: madeWorkbook, person: r.manager.ID, site: "All your sites", from: forms.NoDay, to: forms.NoDay, file: "tripwell-all.xlsx", scope: r.manager.Scope()}
+	r.server.makings.begin(m, func(_ context.Context, _ io.Writer, progress func(done, total int) error) error {
+		must(t, progress(1250, 4000))
 		close(reached)
 		<-goOn
-		return ask.Progress(4000, 4000)
+		return progress(4000, 4000)
 	})
 	<-reached
 	if page := r.open(b, "/workbook/"+m.id); !strings.Contains(page.body, count(1250)+" of about "+count(4000)+" tests are written.") || !strings.Contains(page.body, `<progress max="4000" value="1250"`) {
 		t.Errorf("half way:\n%s", page.body)
 	}
 	// What is no longer wanted stops at its next word of progress, and says so nowhere.
-	second := &making{person: r.manager.ID, file: "tripwell-all.xlsx", scope: r.manager.Scope()}
-	r.server.makings.begin(second, func(io.Writer, export.WorkbookAsk) error { return fmt.Errorf("disk full") })
+	second := &making{kind: madeBundle, person: r.manager.ID, file: "tripwell-all.xlsx", scope: r.manager.Scope()}
+	r.server.makings.begin(second, func(context.Context, io.Writer, func(done, total int) error) error { return fmt.Errorf("disk full") })
 	close(goOn)
 	<-m.ended
 	if m.err == nil || m.out != nil {
 		t.Errorf("the first went on: %v", m.err)
 	}
 	<-second.ended
-	if page := r.open(b, "/workbook/"+second.id); !strings.Contains(page.body, "could not be made") || !strings.Contains(page.body, "Reference") || page.header.Get("Refresh") != "" {
+	if page := r.open(b, "/bundle/"+second.id); !strings.Contains(page.body, "could not be made") || !strings.Contains(page.body, "Reference") || page.header.Get("Refresh") != "" {
 		t.Errorf("a fault:\n%s", page.body)
+	}
+}
+
+// officeLog counts the records of the office's log.
+func (r *rig) officeLog() (n int64) {
+	must(r.t, r.store.View(ownerScope, func(v *store.View) error {
+		heads, err := v.Logs()
+		for _, head := range heads {
+			if head.Log == record.Office {
+				n = head.Size
+			}
+		}
+		return err
+	}))
+	return n
+}
+
+func TestBundleMake_IsMadeBehindThePageAndProvesItself(t *testing.T) {
+	r := newRig(t, 3)
+	b := r.signIn(r.auditor)
+	if page := r.open(b, "/downloads").body; !strings.Contains(page, `action="/bundle"`) || !strings.Contains(page, "the whole log of each site") {
+		t.Error("the downloads page does not offer the bundle")
+	}
+	free, before := r.heldTurns(), r.officeLog()
+	at := r.submit(b, "/bundle", url.Values{"site": {"KILN-LANE"}}.Encode()).header.Get("Location")
+	if page := r.open(b, at); !strings.HasPrefix(at, "/bundle/") || page.header.Get("Refresh") != "2; url="+at || !strings.Contains(page.body, "The bundle is being made.") {
+		t.Errorf("waiting at %q: refresh %q, page:\n%s", at, page.header.Get("Refresh"), page.body)
+	}
+	free()
+	<-r.making(r.auditor).ended
+	file := at + "/tripwell-KILN-LANE.zip"
+	if page := r.open(b, at); page.header.Get("Refresh") != "1; url="+file || !strings.Contains(page.body, "The bundle is ready.") {
+		t.Errorf("ready: refresh %q, page:\n%s", page.header.Get("Refresh"), page.body)
+	}
+	got := r.open(b, file)
+	if got.header.Get("Content-Type") != zipKind {
+		t.Errorf("sent as %q", got.header.Get("Content-Type"))
+	}
+	report, err := bundle.Verify(context.Background(), strings.NewReader(got.body), int64(len(got.body)), bundle.Check{})
+	if must(t, err); len(report.Findings) != 0 || len(report.Checked) == 0 {
+		t.Errorf("the bundle does not prove itself: %+v", report)
+	}
+	// What leaves the house is written down before it leaves.
+	if n := r.officeLog(); n != before+1 {
+		t.Errorf("%d records were made, want 1", n-before)
 	}
 }
 

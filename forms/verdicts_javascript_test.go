@@ -15,7 +15,7 @@ import (
 	"github.com/google/go-cmp/cmp"
 	"github.com/google/go-cmp/cmp/cmpopts"
 
-	"tripwell/chromium"
+	"tripwell/static/chromium"
 )
 
 // answers is what testdata/verdicts_answers.mjs makes of lines.

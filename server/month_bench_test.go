@@ -8,7 +8,7 @@ import (
 	"testing"
 	"time"
 
-	"tripwell/chromium"
+	"tripwell/static/chromium"
 	"tripwell/store"
 )
 

@@ -14,8 +14,8 @@ import (
 
 	"github.com/skip2/go-qrcode"
 
-	"tripwell/chromium"
 	"tripwell/forms"
+	"tripwell/static/chromium"
 	"tripwell/store"
 )
 

@@ -5,8 +5,8 @@ import (
 	"testing"
 	"time"
 
-	"tripwell/chromium"
 	"tripwell/forms"
+	"tripwell/static/chromium"
 	"tripwell/store"
 )
 

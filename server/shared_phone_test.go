@@ -6,7 +6,7 @@ import (
 	"testing"
 	"time"
 
-	"tripwell/chromium"
+	"tripwell/static/chromium"
 	"tripwell/store"
 )
 

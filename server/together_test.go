@@ -12,8 +12,8 @@ import (
 	"testing"
 	"time"
 
-	"tripwell/chromium"
 	"tripwell/forms"
+	"tripwell/static/chromium"
 	"tripwell/store"
 )
 

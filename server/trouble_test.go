@@ -13,7 +13,7 @@ import (
 	"testing"
 	"time"
 
-	"tripwell/chromium"
+	"tripwell/static/chromium"
 	"tripwell/store"
 )
 

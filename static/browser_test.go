@@ -14,7 +14,7 @@ import (
 	"sync"
 	"testing"
 
-	"tripwell/chromium"
+	"tripwell/static/chromium"
 )
 
 // exchangeStandIn speaks the exchange to one phone and keeps what it decided. Faults are switched on from the test: the line

@@ -8,7 +8,7 @@ import (
 
 	"github.com/skip2/go-qrcode"
 
-	"tripwell/chromium"
+	"tripwell/static/chromium"
 )
 
 // labelFilm is a film of a label's code, drawn by another encoder than the client's own reader comes from.

@@ -12,7 +12,7 @@ import (
 	"github.com/chromedp/cdproto/emulation"
 	"github.com/chromedp/chromedp"
 
-	"tripwell/chromium"
+	"tripwell/static/chromium"
 )
 
 // axeOf gives the checks of axe-core (testdata/axe, MPL 2.0, unchanged, never served), as a script to run on a page. What

@@ -13,8 +13,8 @@ import (
 
 	"github.com/xuri/excelize/v2"
 
-	"tripwell/chromium"
 	"tripwell/static"
+	"tripwell/static/chromium"
 )
 
 // The whole way of one entry on a clean checkout: a crew at a phone measures a device whose trip time is too long for

@@ -9,8 +9,8 @@ import (
 
 	"github.com/xuri/excelize/v2"
 
-	"tripwell/chromium"
 	"tripwell/static"
+	"tripwell/static/chromium"
 )
 
 // A manager takes the messy sample in: mends what nothing could know, sees what would be, imports, fetches the rows to

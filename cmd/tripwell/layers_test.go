@@ -54,8 +54,7 @@ var onlyIn = map[string][]string{
 	"github.com/schollz/progressbar": {"cmd/tripwell"},
 	"github.com/arran4/golang-ical":  {"export/calendar"},
 	"github.com/wneessen/go-mail":    {"server"},
-	"github.com/chromedp":            {"chromium"},
-	"tripwell/chromium":              {}, // tests only
+	"github.com/chromedp":            {"static/chromium"},
 }
 
 // pure rooms do no I/O and know no clock of their own.

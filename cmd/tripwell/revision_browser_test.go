@@ -6,8 +6,8 @@ import (
 	"testing"
 	"time"
 
-	"tripwell/chromium"
 	"tripwell/forms"
+	"tripwell/static/chromium"
 	"tripwell/store"
 )
 

@@ -9,7 +9,7 @@ import (
 	"strings"
 	"testing"
 
-	"tripwell/chromium"
+	"tripwell/static/chromium"
 )
 
 // TestPage_ChecksInABrowserFromAFolder opens verify.html as an auditor does, from a folder and without a server.

@@ -55,6 +55,7 @@ var onlyIn = map[string][]string{
 	"github.com/arran4/golang-ical":  {"export/calendar"},
 	"github.com/wneessen/go-mail":    {"server"},
 	"github.com/chromedp":            {"static/chromium"},
+	"tripwell/static/chromium":       {}, // tests only
 }
 
 // pure rooms do no I/O and know no clock of their own.

@@ -233,7 +233,8 @@ func TestWorkbook_Opens(t *testing.T) {
 		t.Fatal(err)
 	}
 	defer book.Close()
-	want := []string{"Cover", "Register", "Entries", "Readings", "Flags", "Due", "Limits"}
+	want := []string{"Cover", "Register", "Entries", "Readings", "Flags", "Due", "Defects", "Corrections", "Compliance", "Protection gaps", "Instruments", "Plans", "Limits",
+		"People", "Imported", "Refused", "Sample", "Columns", "Months"}
 	if got := book.GetSheetList(); !reflect.DeepEqual(got, want) {
 		t.Errorf("sheets %v, want %v", got, want)
 	}

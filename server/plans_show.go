@@ -49,7 +49,7 @@ type planRevision struct{ Number, InForce, Every, By, Reason string }
 
 func (s *Server) plansShow(c echo.Context) error {
 	k := s.ink()
-	view := plansPage{Frame: s.frame(c, k.say("plans.title"), "set-up"), Crumbs: []link{{Href: "/set-up", Text: k.say("office.setup.title")}}, Lead: k.say("plans.lead")}
+	view := plansPage{Frame: s.frame(c, k.say("plans.title"), "set-up"), Crumbs: []link{{Href: "/set-up", Text: k.say("office.setup.title")}}, Lead: k.say("plans.list_lead")}
 	if view.Change {
 		view.Actions = []link{{Href: "/plans/new", Text: k.say("plans.new"), Here: true}}
 	}

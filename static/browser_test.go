@@ -13,6 +13,7 @@ import (
 	"strings"
 	"sync"
 	"testing"
+	"time"
 
 	"tripwell/static/chromium"
 )
@@ -202,6 +203,7 @@ func TestField_KeepsDraftsAndEntriesThroughReloadsCutsAndLostAnswers(t *testing.
 	p.Tap("#ask-found button", "On")
 	p.Tap("#ask-button_trips button", "Yes")
 	p.Sees("Still off: Pantry, by the sink")
+	draftKept(p, 3) // no hand loads the page again within the milliseconds of a write
 	p.Reload()
 	p.Until("the draft after loading again", `document.querySelectorAll("#ask-condition [aria-pressed=true], #ask-found [aria-pressed=true], #ask-button_trips [aria-pressed=true]").length === 3`)
 	p.Until("the list", `(location.hash = "#/site/NORTH", true)`)
@@ -279,4 +281,18 @@ func TestField_KeepsDraftsAndEntriesThroughReloadsCutsAndLostAnswers(t *testing.
 	if strings.Contains(x.records[x.order[0]], `"draft`) {
 		t.Error("a record carries parts of its draft")
 	}
+}
+
+// draftKept waits until the only draft on the phone's disk holds so many answers.
+func draftKept(p *chromium.Window, answers int) {
+	p.T.Helper()
+	for range 200 {
+		var drafts []struct{ Answers map[string]any }
+		p.Rows("tray", "drafts", &drafts)
+		if len(drafts) == 1 && len(drafts[0].Answers) == answers {
+			return
+		}
+		time.Sleep(50 * time.Millisecond)
+	}
+	p.Fail("the draft with %d answers is not on the disk", answers)
 }

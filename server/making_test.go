@@ -124,8 +124,11 @@ func TestWorkbookMake_SaysHowFarItIs(t *testing.T) {
 	r.server.makings.begin(second, func(context.Context, io.Writer, func(done, total int) error) error { return fmt.Errorf("disk full") })
 	close(goOn)
 	<-m.ended
-	if m.err == nil || m.out != nil {
-		t.Errorf("the first went on: %v", m.err)
+	m.mu.Lock()
+	fault, out := m.err, m.out
+	m.mu.Unlock()
+	if fault == nil || out != nil {
+		t.Errorf("the first went on: %v", fault)
 	}
 	<-second.ended
 	if page := r.open(b, "/bundle/"+second.id); !strings.Contains(page.body, "could not be made") || !strings.Contains(page.body, "Reference") || page.header.Get("Refresh") != "" {

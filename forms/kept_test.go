@@ -6,6 +6,7 @@ import (
 	"strings"
 	"testing"
 	"time"
+	_ "time/tzdata"
 
 	"pgregory.net/rapid"
 )
@@ -401,7 +402,7 @@ func TestState_CountsCivilDaysOfTheSite(t *testing.T) {
 	} {
 		zone, err := time.LoadLocation(c.zone)
 		if err != nil {
-			t.Skip("no time zone database: ", err)
+			t.Fatal(err) // the zones come with the test, not with the machine
 		}
 		at, err := time.Parse(time.RFC3339, c.at)
 		if err != nil {

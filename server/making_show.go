@@ -39,28 +39,26 @@ const (
 
 // workbookMake begins a workbook and goes on to the page that tells how far it is.
 func (s *Server) workbookMake(c echo.Context) error {
-	values, err := decodeForm(c)
-	if err != nil {
-		return err
-	}
-	sc, by := scope(c), person(c).ID
-	ask, name, err := s.workbookAsked(sc, values.Get)
-	if err != nil {
-		return s.downloadsAgain(c, values, err)
-	}
-	if err := s.exportTaken(c.Request().Context(), by, "workbook", ask.Site, ask.From, ask.To); err != nil {
-		return err
-	}
-	m := &making{kind: madeWorkbook, person: by, file: "tripwell-" + name + ".xlsx", site: s.siteWords(values), from: ask.From, to: ask.To, scope: sc}
-	s.makings.begin(m, func(_ context.Context, w io.Writer, progress func(done, total int) error) error {
-		ask.Progress = progress
-		return export.WorkbookOf(w, s.store, sc, ask)
+	return s.makeFor(c, madeWorkbook, "workbook", ".xlsx", func(sc store.Scope, ask export.WorkbookAsk) maker {
+		return func(_ context.Context, w io.Writer, progress func(done, total int) error) error {
+			ask.Progress = progress
+			return export.WorkbookOf(w, s.store, sc, ask)
+		}
 	})
-	return s.toMaking(c, m)
 }
 
 // bundleMake begins a bundle and goes on to the page that tells how far it is.
 func (s *Server) bundleMake(c echo.Context) error {
+	return s.makeFor(c, madeBundle, "bundle", ".zip", func(sc store.Scope, ask export.WorkbookAsk) maker {
+		return func(ctx context.Context, w io.Writer, progress func(done, total int) error) error {
+			said := func(done, total int64) { _ = progress(int(done), int(total)) } // its context stops it
+			return bundle.Write(ctx, w, s.store, sc, bundle.Ask{Site: ask.Site, From: ask.From, To: ask.To, Organisation: ask.Organisation, Progress: said})
+		}
+	})
+}
+
+// makeFor begins a file of what the downloads page asks for, within its reader's scope, once it is written down that it leaves.
+func (s *Server) makeFor(c echo.Context, kind madeKind, what, ending string, of func(sc store.Scope, ask export.WorkbookAsk) maker) error {
 	values, err := decodeForm(c)
 	if err != nil {
 		return err
@@ -70,14 +68,11 @@ func (s *Server) bundleMake(c echo.Context) error {
 	if err != nil {
 		return s.downloadsAgain(c, values, err)
 	}
-	if err := s.exportTaken(c.Request().Context(), by, "bundle", ask.Site, ask.From, ask.To); err != nil {
+	if err := s.exportTaken(c.Request().Context(), by, what, ask.Site, ask.From, ask.To); err != nil {
 		return err
 	}
-	m := &making{kind: madeBundle, person: by, file: "tripwell-" + name + ".zip", site: s.siteWords(values), from: ask.From, to: ask.To, scope: sc}
-	s.makings.begin(m, func(ctx context.Context, w io.Writer, progress func(done, total int) error) error {
-		said := func(done, total int64) { _ = progress(int(done), int(total)) } // its context stops it
-		return bundle.Write(ctx, w, s.store, sc, bundle.Ask{Site: ask.Site, From: ask.From, To: ask.To, Organisation: ask.Organisation, Progress: said})
-	})
+	m := &making{kind: kind, person: by, file: "tripwell-" + name + ending, site: s.siteWords(values), from: ask.From, to: ask.To, scope: sc}
+	s.makings.begin(m, of(sc, ask))
 	return s.toMaking(c, m)
 }
 

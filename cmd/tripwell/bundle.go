@@ -1,14 +1,6 @@
 package main
 
-import "net/url"
-
-type bundleCmd struct {
-	folder
-	author
-	outFile
-	Site string `name:"site" placeholder:"CODE" help:"Only this site; all sites when left out."`
-	period
-}
+type bundleCmd struct{ forAuditor }
 
 // Help gives an example.
 func (bundleCmd) Help() string {
@@ -16,14 +8,4 @@ func (bundleCmd) Help() string {
 }
 
 // Run writes the bundle to the file.
-func (c bundleCmd) Run(e *env) error {
-	if err := c.period.check(); err != nil {
-		return err
-	}
-	query := url.Values{}
-	setIf(query, "site", c.Site)
-	setIf(query, "from", c.From.text())
-	setIf(query, "to", c.To.text())
-	setIf(query, "by", c.By)
-	return c.fetch(e, c.folder, "/own/bundle", query, "bundle")
-}
+func (c bundleCmd) Run(e *env) error { return c.take(e, "/own/bundle", "bundle") }

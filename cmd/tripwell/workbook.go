@@ -4,7 +4,10 @@ import (
 	"net/url"
 )
 
-type workbookCmd struct {
+type workbookCmd struct{ forAuditor }
+
+// forAuditor are the flags of what an auditor gets: of which sites, and tests of which days.
+type forAuditor struct {
 	folder
 	author
 	outFile
@@ -18,7 +21,10 @@ func (workbookCmd) Help() string {
 }
 
 // Run writes the workbook to the file.
-func (c workbookCmd) Run(e *env) error {
+func (c workbookCmd) Run(e *env) error { return c.take(e, "/own/workbook", "workbook") }
+
+// take writes what the store gives to the file.
+func (c forAuditor) take(e *env, path, what string) error {
 	if err := c.period.check(); err != nil {
 		return err
 	}
@@ -27,5 +33,5 @@ func (c workbookCmd) Run(e *env) error {
 	setIf(query, "from", c.From.text())
 	setIf(query, "to", c.To.text())
 	setIf(query, "by", c.By)
-	return c.fetch(e, c.folder, "/own/workbook", query, "workbook")
+	return c.fetch(e, c.folder, path, query, what)
 }

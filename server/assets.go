@@ -50,6 +50,9 @@ func readAssets(tree fs.FS) (*assets, error) {
 		if err != nil {
 			return err
 		}
+		if ext := path.Ext(name); (ext == ".mjs" || ext == ".css") && !strings.HasPrefix(name, "vendor/") { // others' files keep their licences
+			raw = withoutComments(raw)
+		}
 		return a.add(sum, name, raw)
 	})
 	if err != nil {

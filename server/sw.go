@@ -48,7 +48,7 @@ func (s *Server) worker(page []byte) (string, error) {
 	if err != nil {
 		return "", err
 	}
-	return "const BUILD = " + string(line) + ";\n" + workerText, nil
+	return "const BUILD = " + string(line) + ";\n" + string(withoutComments([]byte(workerText))), nil
 }
 
 // workerShow answers /sw.js. It lies at the root because a worker may only answer what lies below it, and labels do.

@@ -59,7 +59,7 @@ func TestWorker_LaysInEveryFileTheClientAsksForAndNoOther(t *testing.T) {
 
 // shellBudget bounds what comes over the line until a phone has the client: page, worker and the pack of one language, as
 // they are sent, without the decoder of codes that only some browsers need.
-const shellBudget = 124_000
+const shellBudget = 120_000
 
 func TestShell_FitsItsBudgetInEveryLanguage(t *testing.T) {
 	s, err := New(nil, Options{})

@@ -172,7 +172,7 @@ func PhotosOf(raw []byte) (list []NamedPhoto) {
 		return nil
 	}
 	r, f := record.Reread(raw)
-	if f != nil || r.Kind != "entry.made" {
+	if f != nil || !strings.HasPrefix(r.Kind, "entry.") && !strings.HasPrefix(r.Kind, "defect.") {
 		return nil
 	}
 	for _, name := range photosOf(r) {

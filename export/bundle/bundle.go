@@ -14,7 +14,7 @@
 //	grants.json          who might do what: grant.set of the office log, each with its proof
 //	earlier.json         heads signed earlier, with the lines of these logs: history was not rewritten
 //	people.json          names, as the organisation states them
-//	photos/SHA256.jpg    photos that entries name
+//	photos/SHA256.jpg    photos that records name
 //
 // The log of every site is there whole, and so is org; the period only chooses the rows of the workbook. Trees, lines and
 // signatures are checked by store/proof; the workbook by making it anew from the records and comparing every cell.

@@ -174,6 +174,35 @@ func TestVerify_NamesWhatWasDone(t *testing.T) {
 			}
 		})
 	}
+	t.Run("a site left out of all sites", func(t *testing.T) {
+		files := unpack(t, b)
+		var doc Doc
+		must(t, json.Unmarshal(files[docFile], &doc))
+		doc.Sites, doc.Logs = nil, slices.DeleteFunc(doc.Logs, func(l Line) bool { return l.Log == h.site.ID })
+		for _, name := range []string{records, stamps, treeName(h.site.ID)} {
+			delete(files, name)
+			doc.Files = slices.DeleteFunc(doc.Files, func(f File) bool { return f.Name == name })
+		}
+		var err error
+		files[docFile], err = json.Marshal(doc)
+		must(t, err)
+		if got := verify(t, pack(t, files), Check{}).text(); !strings.Contains(got, "says it holds all sites, but the head covers") {
+			t.Errorf("got %s", got)
+		}
+	})
+	t.Run("a log named twice", func(t *testing.T) {
+		bent := altered(t, b, docFile, func(old []byte) []byte {
+			var doc Doc
+			must(t, json.Unmarshal(old, &doc))
+			doc.Logs = append(doc.Logs, doc.Logs[0])
+			out, err := json.Marshal(doc)
+			must(t, err)
+			return out
+		})
+		if got := verify(t, bent, Check{}).text(); !strings.Contains(got, "twice") {
+			t.Errorf("got %s", got)
+		}
+	})
 	t.Run("a file put in", func(t *testing.T) {
 		files := unpack(t, b)
 		files["records/other.jsonl"] = []byte("{}\n")

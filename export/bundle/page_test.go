@@ -57,10 +57,18 @@ func TestPage_ChecksInABrowserFromAFolder(t *testing.T) {
 		"a dropped record": {altered(t, b, records, lines(func(all [][]byte) [][]byte { return slices.Delete(all, 60, 61) })), "", "", "The record at place 61 is missing"},
 		"the end cut off":  {altered(t, b, records, lines(func(all [][]byte) [][]byte { return all[:len(all)-1] })), "", "", "is missing"},
 		"a hidden refusal": {altered(t, b, refusalsFile, func([]byte) []byte { return []byte("[]") }), "", "", "leaves it out"},
-		"another head":     {altered(t, b, headFile, func(old []byte) []byte { return bytes.Replace(old, []byte("2026"), []byte("2025"), 1) }), "", "", "does not belong to its text"},
-		"another grant":    {altered(t, b, grantsFile, func(old []byte) []byte { return bytes.Replace(old, []byte("crew"), []byte("boss"), 1) }), "", "", "is not the one that stands there"},
-		"rebuilt trees":    {h.doctored(b), h.key(), string(unpack(t, first)[headFile]), "history was rewritten"},
-		"a text":           {[]byte("hello"), "", "", "could not be checked"},
+		"a site left out": {altered(t, b, docFile, func(old []byte) []byte {
+			var doc Doc
+			must(t, json.Unmarshal(old, &doc))
+			doc.Sites, doc.Logs = []Site{}, doc.Logs[len(doc.Logs)-1:]
+			out, err := json.Marshal(doc)
+			must(t, err)
+			return out
+		}), "", "", "says it holds all sites"},
+		"another head":  {altered(t, b, headFile, func(old []byte) []byte { return bytes.Replace(old, []byte("2026"), []byte("2025"), 1) }), "", "", "does not belong to its text"},
+		"another grant": {altered(t, b, grantsFile, func(old []byte) []byte { return bytes.Replace(old, []byte("crew"), []byte("boss"), 1) }), "", "", "is not the one that stands there"},
+		"rebuilt trees": {h.doctored(b), h.key(), string(unpack(t, first)[headFile]), "history was rewritten"},
+		"a text":        {[]byte("hello"), "", "", "could not be checked"},
 		"an unknown earlier": {altered(t, b, earlierFile, func(old []byte) []byte {
 			var list []earlier
 			must(t, json.Unmarshal(old, &list))

@@ -65,6 +65,7 @@ type verifier struct {
 	logs   map[string]*logFile
 	sound  bool // records are whole, so the workbook can be made anew from them
 
+	named    []store.NamedPhoto // photos that records name
 	refusals []refusal
 	people   []person
 	grants   []grant
@@ -199,6 +200,7 @@ func (v *verifier) records() error {
 		v.report.find(docFile, "The bundle holds no log of the organisation.")
 		v.sound = false
 	}
+	v.complete()
 	ids := map[string]string{}
 	total := 0
 	for _, l := range v.doc.Logs {
@@ -214,6 +216,30 @@ func (v *verifier) records() error {
 	}
 	v.report.checked("%d records of %d logs against the head: bytes, places and number", total, len(v.doc.Logs))
 	return nil
+}
+
+// complete holds the logs of the bundle against the number the head covers: bundle.json is not signed, and "all sites" is a
+// claim that somebody could leave standing when he takes a site out.
+func (v *verifier) complete() {
+	named := map[string]bool{}
+	for _, l := range v.doc.Logs {
+		if named[l.Log] {
+			v.report.find(docFile, "The bundle names the log %s twice.", v.code(l.Log))
+			v.sound = false
+		}
+		named[l.Log] = true
+	}
+	held := int64(len(named))
+	if v.doc.Office != nil {
+		held++
+	}
+	switch {
+	case v.signed.Logs == 0 || held == v.signed.Logs:
+	case v.doc.AllSites:
+		v.report.find(docFile, "The bundle says it holds all sites, but the head covers %d logs and only %d of them are here.", v.signed.Logs, held)
+	default:
+		v.report.note("The head covers %d logs, of which this bundle holds %d: it is a part of the organisation, as its cover says.", v.signed.Logs, held)
+	}
 }
 
 // refused holds refusals.json against the record.refused of the logs: nothing can hide in quarantine.
@@ -302,9 +328,9 @@ func (v *verifier) covered(l Line) (proof.Line, bool) {
 	return line, true
 }
 
-// photos checks that each photo is the one its name says.
+// photos checks that each photo is the one its name says, and that none is missing that a record names.
 func (v *verifier) photos() error {
-	n := 0
+	n, here := 0, map[string]bool{}
 	for name := range v.files {
 		hash, ok := strings.CutPrefix(name, "photos/")
 		if !ok {
@@ -312,15 +338,22 @@ func (v *verifier) photos() error {
 		}
 		n++
 		sum, err := v.sum(name)
-		if hash, _, _ = strings.Cut(hash, "."); err != nil || sum != hash {
-			v.report.find(name, "This photo is not the one that the entry names: its SHA-256 is another.")
+		hash, _, _ = strings.Cut(hash, ".")
+		here[hash] = true
+		if err != nil || sum != hash {
+			v.report.find(name, "This photo is not the one that its record names: its SHA-256 is another.")
+		}
+	}
+	for _, p := range v.named {
+		if !here[p.Name] && !slices.Contains(v.doc.NoPhotos, p.Name) {
+			v.report.find("photos", "The record %s names a photo (SHA-256 %s) that is not in the bundle, and the bundle does not say that it never arrived.", p.Entry, short(p.Name))
 		}
 	}
 	if n > 0 {
-		v.report.checked("%d photos against the entries that name them", n)
+		v.report.checked("%d photos against the records that name them", n)
 	}
 	if len(v.doc.NoPhotos) > 0 {
-		v.report.note("%d photos that entries name had not arrived when the bundle was made.", len(v.doc.NoPhotos))
+		v.report.note("%d photos that records name had not arrived when the bundle was made, it says; ask for them.", len(v.doc.NoPhotos))
 	}
 	return nil
 }

@@ -8,6 +8,7 @@ import (
 	"fmt"
 	"slices"
 
+	"tripwell/store"
 	"tripwell/store/proof"
 	"tripwell/store/record"
 )
@@ -96,6 +97,7 @@ func (v *verifier) one(f *logFile, log, code string, raw, stamp []byte, ids map[
 		v.sound = false
 		return r.ID, false
 	}
+	v.named = append(v.named, store.PhotosOf(r.Raw)...)
 	f.counts[r.From] = append(f.counts[r.From], r.N)
 	if sum := refusedSum(r.Raw); sum != "" {
 		f.refused[sum] = int64(place)

@@ -27,6 +27,7 @@ type asidePage struct {
 	Photos         []asidePhoto
 	Differ         []asideRecord
 	Gaps           []gapShown
+	Heads          []asideHead
 	Cut            string // "" where everything is shown
 }
 
@@ -41,6 +42,9 @@ type asideRecord struct {
 
 // asidePhoto is a photo that was not taken, with the entry that names it.
 type asidePhoto struct{ Href, Head, Text string }
+
+// asideHead is a head that a phone knew and does not find continued in the book.
+type asideHead struct{ Head, Text, Root, Installation, Log string }
 
 type gapShown struct{ Log, Person, Numbers, Mono string }
 
@@ -68,6 +72,9 @@ func (s *Server) asidePage(c echo.Context, status int, typed asideRecord) error 
 		}
 		gaps, err := v.Gaps()
 		if err != nil {
+			return err
+		}
+		if view.Heads, err = s.asideHeads(v, names); err != nil {
 			return err
 		}
 		view.Heading = k.say("office.aside.heading", "n", len(refused)+len(differ))
@@ -119,6 +126,30 @@ func (s *Server) asideAdmit(c echo.Context) error {
 		}
 	}
 	return s.asidePage(c, http.StatusUnprocessableEntity, asideRecord{Admit: f.Get("sha256"), Reason: f.Get("reason"), Problem: cmp.Or(f.text, f.wrong["reason"])})
+}
+
+// asideHead takes away what a phone reported of a head, once somebody has looked into it.
+func (s *Server) asideHead(c echo.Context) error {
+	f, err := s.typedForm(c)
+	if err != nil {
+		return err
+	}
+	if err := s.store.DropHeadDoubt(c.Request().Context(), scope(c), f.Get("installation"), f.Get("log")); err != nil {
+		return err
+	}
+	return toPage(c, "/kept-aside")
+}
+
+func (s *Server) asideHeads(v *store.View, names map[string]string) (list []asideHead, err error) {
+	doubts, err := v.HeadDoubts()
+	k := s.ink()
+	for _, d := range doubts {
+		list = append(list, asideHead{
+			Head: joined(cmp.Or(names[d.Log], d.Log), s.personName(v, d.Person), k.at(d.At, time.UTC)),
+			Text: k.say("office.aside.head_text", "n", d.Size), Root: d.Root, Installation: d.Installation, Log: d.Log,
+		})
+	}
+	return list, err
 }
 
 func (s *Server) refusedPhotos(v *store.View) (list []asidePhoto, err error) {

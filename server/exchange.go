@@ -27,6 +27,7 @@ type logRow struct {
 	Code string `json:"code,omitempty"`
 	Name string `json:"name,omitempty"`
 	Size int64  `json:"size"`
+	Root string `json:"root,omitempty"` // base64; with Size the log's head
 }
 
 type logsAnswer struct {
@@ -51,13 +52,13 @@ func (s *Server) logs(sc store.Scope) ([]logRow, error) {
 		if err != nil {
 			return err
 		}
-		size := map[string]int64{}
+		of := map[string]store.LogHead{}
 		for _, h := range heads {
-			size[h.Log] = h.Size
+			of[h.Log] = h
 		}
-		rows = append(rows, logRow{Log: "org", Size: size["org"]})
+		rows = append(rows, logRow{Log: "org", Size: of["org"].Size, Root: of["org"].Root})
 		for _, site := range sites {
-			rows = append(rows, logRow{Log: site.ID, Code: site.Code, Name: site.Name, Size: size[site.ID]})
+			rows = append(rows, logRow{Log: site.ID, Code: site.Code, Name: site.Name, Size: of[site.ID].Size, Root: of[site.ID].Root})
 		}
 		return nil
 	})

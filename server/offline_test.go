@@ -379,6 +379,11 @@ func TestOffline_TwoPagesACopyAnotherVersionAndAServerPutBack(t *testing.T) {
 	if again := had.entries(); len(again) != 6 || again[4].ID != now[4].ID || again[5].ID != last.ID {
 		t.Errorf("got %+v on the restored server, want the two entries it lost", again)
 	}
+	p.Sees("The server was put back from a backup") // explained, and no alarm
+	p.Tap("button", "Understood")
+	if got := p.Value(`document.body.innerText`); strings.Contains(got, "not a continuation") || strings.Contains(got, "put back from a backup") {
+		t.Errorf("got %q, want neither an alarm nor what was understood", got)
+	}
 	p.sendAll()
 	report, err := back.Check(t.Context(), nil)
 	must(t, err)

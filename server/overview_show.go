@@ -18,6 +18,7 @@ const decideShown = 12
 type overviewPage struct {
 	Frame
 	Heading, Under string
+	Doubted        string // phones know another book than this one
 	Sums           []sum
 	Sites          []siteRow
 	Decide         []decision
@@ -77,6 +78,11 @@ func (s *Server) buildOverview(v *store.View, view *overviewPage) error {
 	}
 	if err := s.decide(v, sites, view); err != nil {
 		return err
+	}
+	if doubts, err := v.HeadDoubts(); err != nil {
+		return err
+	} else if view.Change && len(doubts) > 0 {
+		view.Doubted = k.say("office.overview.doubted", "n", len(doubts))
 	}
 	today := forms.DayOf(s.store.Now())
 	view.Heading = s.standing(failed, overdue)

@@ -63,6 +63,8 @@ func publicRoutes() []route {
 		{get, "/exchange/people", phone, (*Server).exchangePeople, 0},
 		{get, "/exchange/entry", phone, (*Server).exchangeEntry, 0},
 		{get, "/exchange/snapshot", phone, (*Server).exchangeSnapshot, 0},
+		{get, "/exchange/head", phone, (*Server).exchangeHead, 0},
+		{post, "/exchange/head", phone, (*Server).exchangeHeadTake, 0},
 
 		// office: reading
 		{get, "/", signed, (*Server).overviewShow, 0},
@@ -189,6 +191,7 @@ func publicRoutes() []route {
 		{post, "/mail", manager, (*Server).mailUpdate, 0},
 		{get, "/kept-aside", manager, (*Server).asideShow, 0},
 		{post, "/kept-aside", manager, (*Server).asideAdmit, 0},
+		{post, "/kept-aside/head", manager, (*Server).asideHead, 0},
 		{get, "/results", manager, (*Server).resultsNew, 0},
 		{post, "/results", manager, (*Server).resultsTake, uploadBytes + mappingLimit},
 		{post, "/results/columns", manager, (*Server).resultsColumnsDrop, 0},

@@ -85,6 +85,8 @@ export function trayDB() {
   return {
     me: (name) => use((db) => db.get("me", name)),
     setMe: (name, value) => write("me", (store) => store.put(value, name)),
+    /** What a failing battery may take back: it is learned again. */
+    noteMe: (name, value) => write("me", (store) => store.put(value, name), RELAXED),
 
     /** Whoever makes the entries from now on: id and name together. */
     become: (person, name) => write("me", async (store) => { await store.put(person, "person"); await store.put(name, "name"); }),

@@ -39,6 +39,8 @@ export function exchange({ fetch, now }) {
     pull: (token, log, after, limit) => call(`/exchange/pull?log=${encodeURIComponent(log)}&after=${encodeURIComponent(after)}&limit=${limit}`, { token }),
     ask: (token, ids) => call("/exchange/ask", { token, method: "POST", body: JSON.stringify({ ids }) }),
     entry: (token, id) => call(`/exchange/entry?id=${encodeURIComponent(id)}`, { token }),
+    head: (token, log, from, own) => call(`/exchange/head?log=${encodeURIComponent(log)}&from=${from}&own=${own}`, { token }),
+    tellHead: (token, head) => call("/exchange/head", { token, method: "POST", body: JSON.stringify(head) }),
     renew: (token, installation) => call("/exchange/renew", { token, method: "POST", body: JSON.stringify({ installation }) }),
     push: (token, body) => call("/exchange/push", { token, method: "POST", body }),
   };

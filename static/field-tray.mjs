@@ -3,6 +3,7 @@
 import { html } from "./vendor/htm-preact.mjs";
 import { Foot, Mark, Where } from "./field-parts.mjs";
 import { showMoment } from "./days.mjs";
+import { doubted } from "./heads.mjs";
 import { isReadable } from "./rescue.mjs";
 
 export function TrayPage({ app }) {
@@ -18,9 +19,18 @@ export function TrayPage({ app }) {
       ${shots.length > 0 && html`<section class="room"><h2>${say("photo.refused_title")}</h2><p class="hint pad">${say("photo.refused_hint")}</p>
         <ul class="rows">${shots.map((p) => html`<${ShotRow} app=${app} photo=${p} key=${p.sha256} />`)}</ul></section>`}
       ${held.length > 0 && html`<section class="room"><h2>${say("phone.held", { n: held.length })}</h2><p class="hint pad">${say("phone.held_hint")}</p><ul class="rows">${held.map((r) => html`<${TrayRow} app=${app} row=${r} key=${r.id} />`)}</ul></section>`}
+      ${doubted(state.me).map((d) => html`<${Doubted} app=${app} doubt=${d} key=${d.log} />`)}
       <section class="room"><h2>${say("phone.rescue")}</h2><p class="hint pad">${say("phone.rescue_hint")}</p><button type="button" class="big more" onClick=${app.saveTray}>${say("phone.rescue_go")}</button></section>
       <p class="hint pad">${state.persisted === undefined ? say("phone.asking") : say(state.persisted ? "phone.persistent" : "field.not_persistent")}</p>
     </main><${Foot} app=${app} />`;
+}
+
+/** A log of the server's that does not go on from what this phone knew of it. */
+function Doubted({ app, doubt }) {
+  const { say, state } = app, log = state.me.logs?.find((l) => l.log === doubt.log);
+  return html`<section class="room"><h2>${say("phone.book_of", { what: log?.name ?? say("phone.book_org") })}</h2>
+    <p class="hint pad">${say("phone.book_was", { known: doubt.known, count: doubt.size, when: showMoment(app, doubt.at) })} ${say(doubt.told ? "phone.book_told" : "phone.book_not_told")}</p>
+    <p class="hint pad">${say("phone.book_do")}</p><button type="button" class="big more" onClick=${() => app.goOn(doubt.log)}>${say("phone.book_go_on")}</button></section>`;
 }
 
 const sorted = (records) => ({

@@ -69,7 +69,7 @@ async function start() {
   const version = versions({ container: navigator.serviceWorker, calm: () => isCalm(app.state), session: sessionStorage, now,
     offered: (yes) => { app.state.newer = yes; app.changed(); }, load: () => location.reload(), later: (fn, ms) => setTimeout(fn, ms) });
   const others = otherPages(async () => { await readKept(app.state, tray, along); app.changed(); });
-  Object.assign(app, { takeNewer: version.take }, peopleHere(app, { tray, now }), caring({ app, tray, now, make: makeRecord, choose: sync.choose, send: () => sender.kick(), download }));
+  Object.assign(app, { takeNewer: version.take, goOn: sync.goOn, understood: () => app.remember("restored", null) }, peopleHere(app, { tray, now }), caring({ app, tray, now, make: makeRecord, choose: sync.choose, send: () => sender.kick(), download }));
   app.state.insecure = !globalThis.isSecureContext;
   const onRoute = () => {
     app.route(parseRoute(location.hash, location.pathname), keepSaved);
@@ -130,7 +130,7 @@ async function download(name, parts) {
 }
 
 async function readKept(state, tray, along) {
-  for (const name of ["installation", "token", "person", "name", "logs", "instrument", "unfolded", "offset", "last_added", "rounds", "chosen", "former", "backed_up", "people", "server"]) state.me[name] = await tray.me(name);
+  for (const name of ["installation", "token", "person", "name", "logs", "instrument", "unfolded", "offset", "last_added", "rounds", "chosen", "former", "backed_up", "people", "server", "heads", "restored"]) state.me[name] = await tray.me(name);
   state.offset = state.me.offset ?? 0;
   const sites = await along.sites();
   state.sites.clear();

@@ -2,6 +2,7 @@
 // are passed in. Losing the right to a site drops its copy, never what waits. Pure.
 
 import { drainPhotos } from "./photo-queue.mjs";
+import { heads } from "./heads.mjs";
 import { taking } from "./taking.mjs";
 import { drain } from "./tray.mjs";
 
@@ -9,7 +10,7 @@ const KEEP_PHOTOS = 14 * 86_400_000; // sent photos stay this long
 const TIDY = 60 * 60_000;
 
 /**
- * syncing({state, tray, along, net, now, newId, changed}) → {run, takeOver, choose, entry}; run() gives {state, retryAfter} for
+ * syncing({state, tray, along, net, now, newId, changed}) → {run, takeOver, choose, entry, goOn}; run() gives {state, retryAfter} for
  * sending.mjs.
  * state is the app's: me, sites, records, line, said (the server's own sentence about trouble), offset, busy.
  */
@@ -79,6 +80,11 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
   };
 
   const { refresh, choose } = taking({ state, tray, along, net, now, remember, withToken, changed });
+  const book = heads({ state, tray, net, withToken, now, keep: async (name, value) => {
+    const same = JSON.stringify(state.me[name]) === JSON.stringify(value);
+    state.me[name] = value;
+    if (!same) await tray.noteMe(name, value);
+  } });
 
   /** Another phone counts with our id: this one was copied or restored. It takes a new id; what it made so far keeps the old one. */
   async function renew() {
@@ -120,9 +126,10 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
     let sent = await flush(), line = sent.line;
     if (line === "empty" || line === "trouble") { // what cannot be sent just now does not keep fresh copies away
       await tidy();
-      const { answer, resent } = await refresh();
+      const { answer, resent, listed } = await refresh();
+      const more = listed ? await book.compare(listed).catch((e) => { console.error(e); return 0; }) : 0; // a witness is never in the way of work
       state.said = answer.ok ? null : answer.body?.error?.text ?? null;
-      if (resent > 0 && answer.ok) {
+      if (resent + more > 0 && answer.ok) {
         sent = await flush();
         line = sent.line;
       }
@@ -140,5 +147,10 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
     return answer.ok ? answer.body : null;
   }
 
-  return { run, takeOver, choose, entry };
+  async function goOn(log) {
+    await book.goOn(log);
+    changed();
+  }
+
+  return { run, takeOver, choose, entry, goOn };
 }

@@ -21,7 +21,7 @@ export function isChosen(me, log) {
 
 /**
  * taking({state, tray, along, net, now, remember, withToken, changed}) → {refresh, choose}. refresh() gives
- * {answer, resent}: the worst answer there was, and how many records must be sent once more.
+ * {answer, resent, listed}: the worst answer there was, how many records must be sent once more, and what logs the server told of.
  */
 export function taking({ state, tray, along, net, now, remember, withToken, changed }) {
   async function refresh() {
@@ -42,7 +42,7 @@ export function taking({ state, tray, along, net, now, remember, withToken, chan
       if (answer.status === 0 || answer.status === 401) break; // the others would fare the same; any other fault is this site's own
     }
     await askHeld();
-    return { answer: worst, resent: again };
+    return { answer: worst, resent: again, listed: listed.body };
   }
 
   /** A server of another epoch, or one whose log is shorter than what it once acknowledged, was restored: what is kept goes again. */
@@ -51,7 +51,10 @@ export function taking({ state, tray, along, net, now, remember, withToken, chan
     const lost = ({ receipt, log }) => (receipt?.epoch !== undefined && (receipt.epoch !== epoch || receipt.store !== store)) || (receipt?.pos ?? 0) > (sizes.get(log) ?? Infinity);
     if (epoch === undefined) return 0;
     const server = `${store} ${epoch}`;
-    if (state.me.server && state.me.server !== server) await remember("backed_up", {}); // what backups of before covered is said anew
+    if (state.me.server && state.me.server !== server) {
+      await remember("backed_up", {}); // what backups of before covered is said anew
+      await remember("restored", { at: now(), another: !state.me.server.startsWith(`${store} `) });
+    }
     if (state.me.server !== server) await remember("server", server);
     return (await tray.resend(lost)) + (await tray.resendPhotos({ store, epoch }));
   }

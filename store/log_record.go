@@ -20,14 +20,9 @@ type LogRecord struct {
 // LogRecords gives the first size records of a log in order; a log outside the scope is not_found.
 func (v *View) LogRecords(log string, size int64) iter.Seq2[LogRecord, error] {
 	return func(yield func(LogRecord, error) bool) {
-		row := v.tx.Bucket(bktLogs).Get([]byte(log))
-		if row == nil || !v.scope.mayRead(log) {
-			yield(LogRecord{}, &Error{Code: "not_found", Field: "log", Text: "There is no such log here, or it is not yours to see."})
-			return
-		}
-		ord, _, err := readLog(row)
+		ord, _, err := v.readableLog(log)
 		if err != nil {
-			yield(LogRecord{}, fmt.Errorf("log %s: %w", log, err))
+			yield(LogRecord{}, err)
 			return
 		}
 		recs, c, prefix := v.tx.Bucket(bktRec), v.tx.Bucket(bktLog).Cursor(), key32(ord)

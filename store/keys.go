@@ -14,6 +14,7 @@
 //	  quar   seq 8 of record.refused    → length 2 | sentence | the exact bytes refused
 //	  quarsha SHA-256 32                → seq 8 of record.refused
 //	  heads  epoch 4 | seq 8            → a head that was signed when the book held seq records
+//	  former epoch 4 | seq 8            → JSON of FormerHead: signed before a restore, over more than the backup held
 //	  differ id 16 | SHA-256 32         → received ms 8 | the exact bytes that came again under a named id with other values
 //	  meta   store, org, epoch, demo, format, clock, model
 //	counted from the book, computed anew by Rebuild
@@ -56,6 +57,7 @@ var (
 	bktDiffer  = []byte("differ")
 	bktMeta    = []byte("meta")
 	bktHeads   = []byte("heads")
+	bktFormer  = []byte("former")
 
 	bktCount  = []byte("count")
 	bktReused = []byte("reused")
@@ -73,7 +75,7 @@ var (
 	bktColumns  = []byte("dir_columns")
 )
 
-var bookBuckets = [][]byte{bktRec, bktID, bktLog, bktLogs, bktNames, bktQuar, bktQuarSHA, bktHeads, bktDiffer, bktMeta}
+var bookBuckets = [][]byte{bktRec, bktID, bktLog, bktLogs, bktNames, bktQuar, bktQuarSHA, bktHeads, bktFormer, bktDiffer, bktMeta}
 var countBuckets = [][]byte{bktCount, bktReused, bktGrant, bktTaken}
 var directoryBuckets = [][]byte{bktPerson, bktLink, bktSession, bktToken, bktInst, bktCalendar, bktDigest, bktSetting, bktColumns}
 

@@ -42,15 +42,25 @@ func (v *View) LogRecords(log string, size int64) iter.Seq2[LogRecord, error] {
 	}
 }
 
-// GrantRecord is a grant.set of the office log with the proof that it stands there.
-type GrantRecord struct {
+// OfficeRecord is a record of the office log with the proof that it stands there.
+type OfficeRecord struct {
 	LogRecord
 	Proof []proof.Hash
 }
 
 // Grants gives what the office log says of who may do what, among its first size records, for the people of a bundle:
 // without it nobody could tell which corrections are in force. It holds person and site ids, no names.
-func (v *View) Grants(people map[string]bool, size int64) (list []GrantRecord, err error) {
+func (v *View) Grants(people map[string]bool, size int64) ([]OfficeRecord, error) {
+	return v.officeRecords(size, func(kind, subject string) bool { return kind == "grant.set" && people[subject] })
+}
+
+// Restores gives the book.restored among the first size records of the office log: how far each log went in the backups that were
+// put in the book's place.
+func (v *View) Restores(size int64) ([]OfficeRecord, error) {
+	return v.officeRecords(size, func(kind, _ string) bool { return kind == "book.restored" })
+}
+
+func (v *View) officeRecords(size int64, wanted func(kind, subject string) bool) (list []OfficeRecord, err error) {
 	row := v.tx.Bucket(bktLogs).Get([]byte(record.Office))
 	if row == nil {
 		return nil, nil
@@ -69,14 +79,14 @@ func (v *View) Grants(people map[string]bool, size int64) (list []GrantRecord, e
 			return nil, fmt.Errorf("office log at %d: %w", pos, err)
 		}
 		var r struct{ Kind, Subject string }
-		if json.Unmarshal(kept.raw, &r) != nil || r.Kind != "grant.set" || !people[r.Subject] {
+		if json.Unmarshal(kept.raw, &r) != nil || !wanted(r.Kind, r.Subject) {
 			continue
 		}
 		p, err := proof.Inclusion(size, pos-1, storedHashes(v.tx, ord))
 		if err != nil {
 			return nil, fmt.Errorf("office log at %d: %w", pos, err)
 		}
-		list = append(list, GrantRecord{LogRecord{pos, bytes.Clone(kept.stamp), bytes.Clone(kept.raw)}, p})
+		list = append(list, OfficeRecord{LogRecord{pos, bytes.Clone(kept.stamp), bytes.Clone(kept.raw)}, p})
 	}
 	return list, nil
 }

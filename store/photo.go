@@ -163,20 +163,33 @@ func (s *Store) photoPath(name string) string {
 	return PhotoFile(filepath.Join(s.dir, PhotosDir), name)
 }
 
-// NamedPhoto is a photo that an entry names.
-type NamedPhoto struct{ Entry, Name string }
+// NamedFile is a file beside the book that a record names: a photo of an entry or of a defect, or the certificate of an instrument.
+type NamedFile struct {
+	Record, Name string
+	Certificate  bool
+}
 
-// PhotosOf gives the photos that a record's exact bytes name; most records name none.
-func PhotosOf(raw []byte) (list []NamedPhoto) {
-	if !bytes.Contains(raw, []byte(`"photos"`)) {
+// FilesOf gives the files that a record's exact bytes name; most records name none.
+func FilesOf(raw []byte) (list []NamedFile) {
+	if !bytes.Contains(raw, []byte(`"photos"`)) && !bytes.Contains(raw, []byte(`"instrument.calibrated"`)) {
 		return nil
 	}
 	r, f := record.Reread(raw)
-	if f != nil || !strings.HasPrefix(r.Kind, "entry.") && !strings.HasPrefix(r.Kind, "defect.") {
+	if f != nil {
 		return nil
 	}
-	for _, name := range photosOf(r) {
-		list = append(list, NamedPhoto{r.ID, name})
+	switch {
+	case strings.HasPrefix(r.Kind, "entry.") || strings.HasPrefix(r.Kind, "defect."):
+		for _, name := range photosOf(r) {
+			list = append(list, NamedFile{r.ID, name, false})
+		}
+	case r.Kind == "instrument.calibrated":
+		var body struct {
+			File string `json:"file"`
+		}
+		if json.Unmarshal(r.Body, &body, checked) == nil && isHash(body.File) {
+			list = append(list, NamedFile{r.ID, body.File, true})
+		}
 	}
 	return list
 }

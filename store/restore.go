@@ -199,7 +199,11 @@ func beginEpoch(ctx context.Context, temp, file string, o Options, here *formerB
 	if last != nil {
 		epoch = max(epoch, last.Epoch)
 	}
-	heads, err := s.beginEpoch(ctx, epoch+1)
+	former, err := here.heads(s)
+	if err != nil {
+		return done, err
+	}
+	heads, err := s.beginEpoch(ctx, epoch+1, former)
 	if err != nil {
 		return done, err
 	}
@@ -223,13 +227,13 @@ const logsPerRecord = 400
 
 // beginEpoch sets the epoch and appends book.restored, which carries how far each log went: its size and root. With many logs
 // there are several.
-func (s *Store) beginEpoch(ctx context.Context, epoch int) (heads []LogHead, err error) {
+func (s *Store) beginEpoch(ctx context.Context, epoch int, former []FormerHead) (heads []LogHead, err error) {
 	err = s.do(ctx, 1, func(g *group) error {
 		if heads, err = logHeads(g.tx); err != nil {
 			return err
 		}
 		s.epoch = epoch // the writer's own goroutine runs this, and nobody else has this store yet
-		if err := g.put(bktMeta, metaEpoch, key64(uint64(epoch))); err != nil {
+		if err := errors.Join(g.put(bktMeta, metaEpoch, key64(uint64(epoch))), g.keepFormer(former)); err != nil {
 			return err
 		}
 		for from := 0; from < len(heads); from += logsPerRecord {

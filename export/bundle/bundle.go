@@ -12,9 +12,11 @@
 //	tree/LOG.txt         their leaf hashes in hexadecimal, one a line: they name the record that was changed
 //	refusals.json        what was refused, with its bytes
 //	grants.json          who might do what: grant.set of the office log, each with its proof
+//	restores.json        where a backup took the book's place: book.restored of the office log, each with its proof
 //	earlier.json         heads signed earlier, with the lines of these logs: history was not rewritten
 //	people.json          names, as the organisation states them
-//	photos/SHA256.jpg    photos that records name
+//	photos/SHA256.jpg    photos that entries and defects name
+//	certificates/SHA256.pdf  certificates of the instruments
 //
 // The log of every site is there whole, and so is org; the period only chooses the rows of the workbook. Trees, lines and
 // signatures are checked by store/proof; the workbook by making it anew from the records and comparing every cell.
@@ -35,6 +37,7 @@ const (
 	keyFile      = "key.txt"
 	refusalsFile = "refusals.json"
 	grantsFile   = "grants.json"
+	restoresFile = "restores.json"
 	earlierFile  = "earlier.json"
 	peopleFile   = "people.json"
 	workbookFile = "workbook.xlsx"
@@ -62,9 +65,10 @@ type Doc struct {
 	To           string    `json:"to"`
 	AllSites     bool      `json:"all_sites"`
 	Sites        []Site    `json:"sites"`
-	Logs         []Line    `json:"logs"`   // of the sites, then org
-	Office       *Line     `json:"office"` // its records are not here, but for those of grants.json
-	NoPhotos     []string  `json:"no_photos"`
+	Logs         []Line    `json:"logs"`      // of the sites, then org
+	Office       *Line     `json:"office"`    // its records are not here, but for those of grants.json
+	NoPhotos     []string  `json:"no_photos"` // named, and not arrived when the bundle was made
+	NoFiles      []string  `json:"no_certificates"`
 	Files        []File    `json:"files"` // all but bundle.json
 }
 
@@ -81,6 +85,14 @@ type Line struct {
 	Size  int64    `json:"size"`
 	Root  string   `json:"root"`  // base64
 	Index int64    `json:"index"` // of the line among those of the head, from 0
+	Proof []string `json:"proof"` // base64
+	Kept  *kept    `json:"kept,omitempty"`
+}
+
+// kept says, of a log under a head that was signed before a restore, how many of its records the book still has; its proof leads
+// from the root of those to the root of the line.
+type kept struct {
+	Size  int64    `json:"size"`
 	Proof []string `json:"proof"` // base64
 }
 
@@ -104,8 +116,8 @@ type refusal struct {
 	Bytes    []byte    `json:"bytes"` // base64
 }
 
-// grant is one of grants.json.
-type grant struct {
+// officeRecord is one of grants.json or restores.json.
+type officeRecord struct {
 	Pos    int64    `json:"pos"`
 	Stamp  string   `json:"stamp"`
 	Record string   `json:"record"`

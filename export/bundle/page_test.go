@@ -18,6 +18,7 @@ func TestPage_ChecksInABrowserFromAFolder(t *testing.T) {
 	h := newHouse(t)
 	h.work(40)
 	first := h.bundle()
+	backup := h.backup()
 	h.press(2, "yes")
 	b := h.bundle()
 	dir := t.TempDir()
@@ -81,5 +82,20 @@ func TestPage_ChecksInABrowserFromAFolder(t *testing.T) {
 		if got := check(c.bundle, c.key, c.earlier); !strings.Contains(got, c.want) {
 			t.Errorf("%s: the page does not say %q:\n%s", name, c.want, got)
 		}
+	}
+
+	h.restore(backup)
+	after := h.bundle()
+	got := check(after, h.key(), string(files[headFile]))
+	for _, want := range []string{"was put back from a backup on 2026-", "which the backup brought back, are among those", "lay beyond the backup", "1 restores against the log"} {
+		if !strings.Contains(got, want) {
+			t.Errorf("across a restore: the page does not say %q:\n%s", want, got)
+		}
+	}
+	if got := check(after, h.key(), string(unpack(t, first)[headFile])); !strings.Contains(got, "Nothing is wrong") || !strings.Contains(got, "was signed over") {
+		t.Errorf("a head the backup holds: got %s", got)
+	}
+	if got := check(h.doctored(after), h.key(), string(files[headFile])); !strings.Contains(got, "history was rewritten") {
+		t.Errorf("rebuilt trees across a restore: got %s", got)
 	}
 }

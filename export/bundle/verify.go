@@ -53,6 +53,13 @@ func (r *Report) checked(format string, args ...any) {
 	r.Checked = append(r.Checked, fmt.Sprintf(format, args...))
 }
 
+// restored is a book.restored: the epoch that began with it, and how far each log went in the backup.
+type restored struct {
+	epoch int
+	when  string
+	sizes map[string]int64
+}
+
 // verifier is one check under way.
 type verifier struct {
 	*reader
@@ -65,10 +72,10 @@ type verifier struct {
 	logs   map[string]*logFile
 	sound  bool // records are whole, so the workbook can be made anew from them
 
-	named    []store.NamedPhoto // photos that records name
 	refusals []refusal
 	people   []person
-	grants   []grant
+	grants   []officeRecord
+	restores []restored
 }
 
 // Verify checks a bundle. An error means that it could not be checked at all; whatever is wrong with it stands in the
@@ -79,7 +86,7 @@ func Verify(ctx context.Context, in io.ReaderAt, size int64, ask Check) (Report,
 	if err != nil {
 		return report, err
 	}
-	return report, v.run(append(v.proofs(), step{"earlier head", v.earlierHead}, step{"photos", v.photos}, step{"workbook", v.workbook}))
+	return report, v.run(append(v.proofs(), step{"earlier head", v.earlierHead}, step{"photos and certificates", v.namedFiles}, step{"workbook", v.workbook}))
 }
 
 // step is a part of a check.
@@ -101,7 +108,7 @@ func newVerifier(ctx context.Context, in io.ReaderAt, size int64, ask Check, rep
 
 // proofs are the steps that hold the records against the head.
 func (v *verifier) proofs() []step {
-	return []step{{"files", v.list}, {"key and head", v.headAndKey}, {"records", v.records}, {"refusals", v.refused}, {"grants", v.granted}}
+	return []step{{"files", v.list}, {"key and head", v.headAndKey}, {"records", v.records}, {"refusals", v.refused}, {"grants", v.granted}, {"restores", v.restored}}
 }
 
 func (v *verifier) run(steps []step) error {
@@ -288,11 +295,17 @@ func (v *verifier) granted() error {
 		v.report.find(peopleFile, "%s.", sentence(err))
 		v.sound = false
 	}
-	if len(v.grants) == 0 {
+	v.inOffice(grantsFile, "grant", v.grants)
+	return nil
+}
+
+// inOffice holds records of the office log against the root the head covers; it gives those that stand there.
+func (v *verifier) inOffice(file, what string, list []officeRecord) (good []officeRecord) {
+	if len(list) == 0 {
 		return nil
 	}
 	if v.doc.Office == nil {
-		v.report.find(grantsFile, "The bundle gives grants and no line of the log they stand in.")
+		v.report.find(file, "The bundle gives %ss and no line of the log they stand in.", what)
 		v.sound = false
 		return nil
 	}
@@ -301,18 +314,20 @@ func (v *verifier) granted() error {
 		v.sound = false
 		return nil
 	}
-	for _, g := range v.grants {
+	for _, g := range list {
 		p, err := hashes(g.Proof)
 		if err == nil {
 			err = proof.CheckInclusion(p, root.Size, root.Root, g.Pos-1, proof.LeafHash(record.Leaf([]byte(g.Stamp), []byte(g.Record))))
 		}
 		if err != nil {
-			v.report.find(grantsFile, "The grant at place %d of the office log is not the one that stands there.", g.Pos)
+			v.report.find(file, "The %s at place %d of the office log is not the one that stands there.", what, g.Pos)
 			v.sound = false
+			continue
 		}
+		good = append(good, g)
 	}
-	v.report.checked("%d grants against the log of the office", len(v.grants))
-	return nil
+	v.report.checked("%d %ss against the log of the office", len(list), what)
+	return good
 }
 
 // covered checks that the head covers a log at the size and root a line states.
@@ -326,36 +341,6 @@ func (v *verifier) covered(l Line) (proof.Line, bool) {
 		return line, false
 	}
 	return line, true
-}
-
-// photos checks that each photo is the one its name says, and that none is missing that a record names.
-func (v *verifier) photos() error {
-	n, here := 0, map[string]bool{}
-	for name := range v.files {
-		hash, ok := strings.CutPrefix(name, "photos/")
-		if !ok {
-			continue
-		}
-		n++
-		sum, err := v.sum(name)
-		hash, _, _ = strings.Cut(hash, ".")
-		here[hash] = true
-		if err != nil || sum != hash {
-			v.report.find(name, "This photo is not the one that its record names: its SHA-256 is another.")
-		}
-	}
-	for _, p := range v.named {
-		if !here[p.Name] && !slices.Contains(v.doc.NoPhotos, p.Name) {
-			v.report.find("photos", "The record %s names a photo (SHA-256 %s) that is not in the bundle, and the bundle does not say that it never arrived.", p.Entry, short(p.Name))
-		}
-	}
-	if n > 0 {
-		v.report.checked("%d photos against the records that name them", n)
-	}
-	if len(v.doc.NoPhotos) > 0 {
-		v.report.note("%d photos that records name had not arrived when the bundle was made, it says; ask for them.", len(v.doc.NoPhotos))
-	}
-	return nil
 }
 
 // inOrder gives the records of the bundle in the order the workbook was made from.

@@ -4,7 +4,6 @@ import (
 	"bytes"
 	"crypto/sha256"
 	"encoding/hex"
-	"errors"
 	"fmt"
 	"slices"
 
@@ -19,6 +18,7 @@ type logFile struct {
 	stamps  [][]byte
 	refused map[string]int64 // SHA-256 of what was refused → place of the record.refused
 	counts  map[string][]int64
+	files   []store.NamedFile
 }
 
 func sumOf(b []byte) string {
@@ -97,11 +97,11 @@ func (v *verifier) one(f *logFile, log, code string, raw, stamp []byte, ids map[
 		v.sound = false
 		return r.ID, false
 	}
-	v.named = append(v.named, store.PhotosOf(r.Raw)...)
 	f.counts[r.From] = append(f.counts[r.From], r.N)
 	if sum := refusedSum(r.Raw); sum != "" {
 		f.refused[sum] = int64(place)
 	}
+	f.files = append(f.files, store.FilesOf(r.Raw)...)
 	return r.ID, r.Kind == "entry.made" && st.Earliest().Sub(r.At) > lateAfter
 }
 
@@ -211,132 +211,4 @@ func join(list []string, most int) string {
 		text += fmt.Sprintf(" and %d more", more)
 	}
 	return text
-}
-
-// earlierHead shows that what was signed earlier still stands: the first records of each log give the root they gave then.
-func (v *verifier) earlierHead() error {
-	if len(v.ask.Earlier) == 0 {
-		return nil
-	}
-	if bytes.HasPrefix(v.ask.Earlier, []byte("PK")) {
-		return v.earlierBundle()
-	}
-	note := string(bytes.ReplaceAll(v.ask.Earlier, []byte("\r\n"), []byte("\n")))
-	was, err := proof.Open(note, v.key)
-	if err != nil {
-		v.report.find("earlier head", "The earlier head is not signed by the key of this bundle: %v.", err)
-		return nil
-	}
-	var known []earlier
-	if err := v.json(earlierFile, &known); err != nil {
-		v.report.find(earlierFile, "%s.", sentence(err))
-		return nil
-	}
-	at := slices.IndexFunc(known, func(e earlier) bool { return e.Head == note })
-	if at < 0 {
-		if note == v.head {
-			v.report.checked("the earlier head: it is the head of this bundle")
-			return nil
-		}
-		v.report.find("earlier head", "The bundle knows nothing of the head of %s that you hold: it cannot show that what was signed then still stands.", was.Time.Format("2006-01-02 15:04:05 UTC"))
-		return nil
-	}
-	lines := map[string]proof.Line{}
-	for _, l := range known[at].Logs {
-		line, err := l.line()
-		if err == nil {
-			err = was.Covers(line)
-		}
-		if err != nil {
-			v.report.find(earlierFile, "The earlier head does not cover the log %s with %d records as the bundle states them.", v.code(l.Log), l.Size)
-			continue
-		}
-		lines[l.Log] = line
-	}
-	v.stillStands(was, lines)
-	return nil
-}
-
-// earlierBundle takes the earlier sizes and roots from a bundle that was taken then.
-func (v *verifier) earlierBundle() error {
-	r, err := open(bytes.NewReader(v.ask.Earlier), int64(len(v.ask.Earlier)))
-	if err != nil {
-		return err
-	}
-	head, err := r.read(headFile, 1<<16)
-	if err != nil {
-		return err
-	}
-	was, err := proof.Open(string(head), v.key)
-	if err != nil {
-		v.report.find("earlier bundle", "Its head is not signed by the key of this bundle: %v.", err)
-		return nil
-	}
-	lines := map[string]proof.Line{}
-	for _, l := range r.doc.Logs {
-		line, err := l.line()
-		if err == nil {
-			err = was.Covers(line)
-		}
-		if err != nil {
-			return errors.New("the earlier bundle does not agree with its own head: check it by itself first")
-		}
-		lines[l.Log] = line
-	}
-	v.stillStands(was, lines)
-	return nil
-}
-
-// stillStands compares the first records of each log with what an earlier head covered.
-func (v *verifier) stillStands(was proof.Signed, lines map[string]proof.Line) {
-	if !sameStore(was.Origin, v.signed.Origin) {
-		v.report.find("earlier head", "It is of %s; this bundle is of %s.", was.Origin, v.signed.Origin)
-		return
-	}
-	restored := was.Origin != v.signed.Origin
-	if restored {
-		v.report.note("The store was put back from a backup since the earlier head was signed.")
-	}
-	when := was.Time.Format("2006-01-02 15:04:05 UTC")
-	for _, l := range v.doc.Logs {
-		line, known := lines[l.Log]
-		f, code := v.logs[l.Log], v.code(l.Log)
-		switch {
-		case !known && len(f.stamps) > 0 && began(f.stamps[0], was):
-			v.report.find(code, "The log had records when the head of %s was signed, and the bundle does not say which.", when)
-		case !known:
-			v.report.note("Log %s began after the head of %s.", code, when)
-		case int64(len(f.leaves)) < line.Size:
-			v.report.find(code, "The log held %d records when the head of %s was signed; now it holds %d.", line.Size, when, len(f.leaves))
-		default:
-			var edge proof.Edge
-			for _, h := range f.leaves[:line.Size] {
-				edge.Append(h)
-			}
-			if edge.Root() != line.Root {
-				v.report.find(code, "The first %d records are not those that the head of %s was signed over: history was rewritten.", line.Size, when)
-				continue
-			}
-			v.report.checked("log %s: the first %d records are those that the head of %s was signed over", code, line.Size, when)
-		}
-	}
-}
-
-// began reports whether a log's first record had been received when a head was signed.
-func began(stamp []byte, was proof.Signed) bool {
-	st, err := record.ParseStamp(stamp)
-	return err == nil && !st.Received.After(was.Time)
-}
-
-// sameStore compares origins but for their epoch.
-func sameStore(a, b string) bool {
-	cut := func(s string) string {
-		for i := len(s) - 1; i >= 0; i-- {
-			if s[i] == '/' {
-				return s[:i]
-			}
-		}
-		return s
-	}
-	return cut(a) == cut(b)
 }

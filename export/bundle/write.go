@@ -47,14 +47,11 @@ type writer struct {
 
 	people   map[string]store.Person // of the directory, by id
 	named    map[string]bool         // people the records name
-	photos   []photo
+	files    []store.NamedFile
 	done     int64
 	total    int64
 	foldable int64
 }
-
-// photo is one that an entry names.
-type photo struct{ entry, name string }
 
 // Write signs a head, and writes everything it covers of a scope as a bundle. Nothing is written that the scope may not
 // see, but for the sizes that the head's proofs need.
@@ -108,7 +105,7 @@ func (w *writer) write(note, key string, signed proof.Signed) error {
 			return err
 		}
 	}
-	for _, step := range []func() error{w.refusals, w.grants, w.earlier, w.peopleStated, w.photoFiles, w.workbook} {
+	for _, step := range []func() error{w.refusals, w.grants, w.restores, w.earlier, w.peopleStated, w.namedFiles, w.workbook} {
 		if err := step(); err != nil {
 			return err
 		}
@@ -233,16 +230,14 @@ func (w *writer) progress() {
 	}
 }
 
-// note looks a record through for people and photos.
+// note looks a record through for people and files.
 func (w *writer) note(r store.LogRecord) {
 	for id := range quotedIDs(r.Record) {
 		if _, known := w.people[string(id)]; known {
 			w.named[string(id)] = true
 		}
 	}
-	for _, p := range store.PhotosOf(r.Record) {
-		w.photos = append(w.photos, photo{p.Entry, p.Name})
-	}
+	w.files = append(w.files, store.FilesOf(r.Record)...)
 }
 
 // quotedIDs gives what stands between quotes and is as long as an id.
@@ -286,7 +281,7 @@ func (w *writer) refusals() error {
 	return w.json(refusalsFile, func() any { return out })
 }
 
-func (w *writer) granted() ([]store.GrantRecord, error) {
+func (w *writer) granted() ([]store.OfficeRecord, error) {
 	if w.doc.Office == nil {
 		return nil, nil
 	}
@@ -298,36 +293,15 @@ func (w *writer) grants() error {
 	if err != nil {
 		return err
 	}
-	out := []grant{}
-	for _, g := range list {
-		out = append(out, grant{g.Pos, string(g.Stamp), string(g.Record), texts(g.Proof)})
-	}
-	return w.json(grantsFile, func() any { return out })
+	return w.json(grantsFile, func() any { return ofOffice(list) })
 }
 
-// earlierMost bounds the earlier heads of a bundle; the newest stand.
-const earlierMost = 2000
-
-func (w *writer) earlier() error {
-	kept, err := w.view.KeptHeads()
-	if err != nil {
-		return err
+func ofOffice(list []store.OfficeRecord) []officeRecord {
+	out := []officeRecord{}
+	for _, g := range list {
+		out = append(out, officeRecord{g.Pos, string(g.Stamp), string(g.Record), texts(g.Proof)})
 	}
-	out := []earlier{}
-	for _, k := range kept[max(0, len(kept)-earlierMost):] {
-		h, err := w.view.HeadAt(k.Seq)
-		if err != nil {
-			return err
-		}
-		one := earlier{Head: k.Note, Logs: []Line{}}
-		for _, l := range w.doc.Logs {
-			if line, err := h.Line(l.Log); err == nil { // a log that is younger than the head has no line
-				one.Logs = append(one.Logs, lineOf(line))
-			}
-		}
-		out = append(out, one)
-	}
-	return w.json(earlierFile, func() any { return out })
+	return out
 }
 
 // stated are the people whom the records name, or who may see one of the sites.
@@ -345,34 +319,6 @@ func (w *writer) stated() []person {
 
 func (w *writer) peopleStated() error {
 	return w.json(peopleFile, func() any { return w.stated() })
-}
-
-func (w *writer) photoFiles() error {
-	seen := map[string]bool{}
-	w.doc.NoPhotos = []string{}
-	for _, p := range w.photos {
-		if seen[p.name] {
-			continue
-		}
-		seen[p.name] = true
-		raw, kind, err := w.view.Photo(p.entry, p.name)
-		var missing *store.Error
-		if errors.As(err, &missing) {
-			w.doc.NoPhotos = append(w.doc.NoPhotos, p.name)
-			continue
-		}
-		if err != nil {
-			return err
-		}
-		ending := ".jpg"
-		if kind == "image/png" {
-			ending = ".png"
-		}
-		if err := w.file("photos/"+p.name+ending, func(out io.Writer) error { _, err := out.Write(raw); return err }); err != nil {
-			return err
-		}
-	}
-	return nil
 }
 
 // workbook makes a store of what stands in the bundle and writes its workbook, so that no cell can say what the records

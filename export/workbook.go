@@ -42,6 +42,8 @@ type WorkbookSource struct {
 	Refusals    []RefusalLine
 	Samples     []SampleLine
 
+	Plain bool // unpacked parts: for whoever reads them again at once
+
 	Person     func(id string) store.Person // from the directory, the id alone where unknown; may be nil
 	PersonName func(id string) string       // from the directory, "" unknown; may be nil
 }
@@ -138,7 +140,7 @@ func Workbook(w io.Writer, src WorkbookSource) (err error) {
 	}()
 	parts := &sheetParts{}
 	defer parts.remove()
-	f.SetZipWriter(func(io.Writer) excelize.ZipWriter { return newDirectZip(w, parts) })
+	f.SetZipWriter(func(io.Writer) excelize.ZipWriter { return newDirectZip(w, parts, src.Plain) })
 	b := &book{file: f, parts: parts, words: words, demo: src.Demo, src: &src, named: map[string]string{}, used: map[string]bool{}, mentioned: map[string]int{}}
 	if b.styles, err = makeStyles(f); err != nil {
 		return err

@@ -26,14 +26,15 @@ type directZip struct {
 	w     *zip.Writer
 	parts *sheetParts
 	held  map[string]*bytes.Buffer
+	plain bool
 }
 
-func newDirectZip(out io.Writer, parts *sheetParts) excelize.ZipWriter {
+func newDirectZip(out io.Writer, parts *sheetParts, plain bool) excelize.ZipWriter {
 	w := zip.NewWriter(out)
 	w.RegisterCompressor(zip.Deflate, func(out io.Writer) (io.WriteCloser, error) {
 		return flate.NewWriter(out, deflateLevel)
 	})
-	return &directZip{w, parts, map[string]*bytes.Buffer{}}
+	return &directZip{w, parts, map[string]*bytes.Buffer{}, plain}
 }
 
 func (z *directZip) Create(name string) (io.Writer, error) {
@@ -52,7 +53,11 @@ func (z *directZip) Close() error {
 		}
 	}
 	for _, name := range slices.Sorted(maps.Keys(z.held)) {
-		out, err := z.w.Create(name)
+		method := zip.Deflate
+		if z.plain {
+			method = zip.Store
+		}
+		out, err := z.w.CreateHeader(&zip.FileHeader{Name: name, Method: method})
 		if err != nil {
 			return err
 		}

@@ -11,10 +11,12 @@ import (
 	"os"
 	"path/filepath"
 	"runtime"
+	"strings"
 	"sync"
 	"testing"
 	"time"
 
+	"tripwell/export/register"
 	"tripwell/forms"
 	"tripwell/store"
 	"tripwell/store/record"
@@ -28,18 +30,22 @@ type benchBundle struct {
 	path  string
 }
 
+// benchDevices is how many devices the entries are spread over: each is pressed once a month.
+const benchDevices = 2_000
+
 func newBenchBundle(b *testing.B) *benchBundle {
 	h := newHouse(b)
+	devices := h.manyDevices(benchDevices)
 	for made := 0; made < *benchEntries; {
 		var batch []store.Incoming
 		for range min(500, *benchEntries-made) {
+			if made > 0 && made%(benchDevices/20) == 0 { // twenty days' work a month
+				h.now = h.now.Add(36 * time.Hour)
+			}
 			made++
 			h.n++
-			if made%400 == 0 {
-				h.now = h.now.Add(24 * time.Hour)
-			}
 			h.now = h.now.Add(30 * time.Second)
-			d := h.devices[made%len(h.devices)]
+			d := devices[made%len(devices)]
 			body, err := json.Marshal(map[string]any{"form": d.Kind + "/button", "given": map[string]any{"kind": d.Kind}, "source": "phone", "note": fmt.Sprint("round ", made),
 				"readings": map[string]any{"condition": "sound", "found": "on", "button_trips": "yes", "button_resets": "yes"}})
 			must(b, err)
@@ -56,6 +62,32 @@ func newBenchBundle(b *testing.B) *benchBundle {
 		}
 	}
 	return &benchBundle{h, filepath.Join(b.TempDir(), "bundle.zip")}
+}
+
+// manyDevices takes in a register of so many devices with a button.
+func (h *house) manyDevices(n int) (devices []store.DeviceRow) {
+	h.t.Helper()
+	list := "site,building,floor,room,place,kind,panel,circuit,make,model,installed\n"
+	for i := range n {
+		list += fmt.Sprintf("%s,Annex,Floor %d,Room %d,Wall %d,gfci-receptacle,LP-%d,%d,Make A,G20,2021-04-12\n", h.site.Code, i/200, i/8, i%8, i/160, i/4%40+1)
+	}
+	_, err := register.Import(context.Background(), h.Store, "register.csv", strings.NewReader(list), register.Options{By: h.ID(), NewTags: true}, nil)
+	must(h.t, err)
+	must(h.t, h.View(everything, func(v *store.View) error {
+		for d, err := range v.Devices(h.site.ID) {
+			if err != nil {
+				return err
+			}
+			if d.Place.Building == "Annex" {
+				devices = append(devices, d)
+			}
+		}
+		return nil
+	}))
+	if len(devices) != n {
+		h.t.Fatalf("got %d devices of %d", len(devices), n)
+	}
+	return devices
 }
 
 func (bb *benchBundle) write(b *testing.B) {

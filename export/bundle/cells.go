@@ -25,9 +25,12 @@ type cells struct {
 
 // Bounds of one workbook that is read.
 const (
-	sharedMost   = 1 << 30 // bytes of all shared texts
+	sharedMost   = 384 << 20 // bytes of all shared texts
+	sharedEach   = 48        // what a shared text takes besides its bytes
+	sheetsMost   = 1_000
 	columnsMost  = 16_384
 	cellTextMost = 1 << 20
+	rowTextMost  = 8 << 20
 )
 
 func openCells(in io.ReaderAt, size int64) (*cells, error) {
@@ -92,12 +95,26 @@ func (c *cells) home() error {
 	if err != nil {
 		return err
 	}
-	return c.walk("xl/workbook.xml", func(e element) error {
+	err = c.walk("xl/workbook.xml", func(e element) error {
 		if e.name == "sheet" {
+			if len(c.sheets) == sheetsMost {
+				return fmt.Errorf("it has more than %d sheets", sheetsMost)
+			}
 			c.sheets = append(c.sheets, sheetPart{e.attribute("name", false), targets[e.attribute("id", true)]})
 		}
 		return nil
 	}, noEnd, noText)
+	if err != nil {
+		return err
+	}
+	seen := map[string]bool{}
+	for _, s := range c.sheets {
+		if seen[s.file] {
+			return errors.New("two of its sheets are the same part")
+		}
+		seen[s.file] = true
+	}
+	return nil
 }
 
 func (c *cells) readShared() error {
@@ -121,8 +138,8 @@ func (c *cells) readShared() error {
 	end := func(name string) error {
 		switch name {
 		case "si":
-			if total += one.Len(); total > sharedMost {
-				return errors.New("its shared texts are larger than 1 GiB")
+			if total += one.Len() + sharedEach; total > sharedMost {
+				return errors.New("its shared texts are larger than 384 MiB")
 			}
 			c.shared = append(c.shared, one.String())
 		case "t":
@@ -134,7 +151,9 @@ func (c *cells) readShared() error {
 	}
 	return c.walk(name, start, end, func(t []byte) error {
 		if in && !phonetic {
-			one.Write(t)
+			if one.Write(t); one.Len() > cellTextMost {
+				return errors.New("it holds a shared text of more than 1 MiB")
+			}
 		}
 		return nil
 	})
@@ -177,6 +196,7 @@ type rowReader struct {
 	in       bool // text that counts is being read
 	phonetic bool // how a text is pronounced: no part of it
 	text     []byte
+	size     int // bytes of the row so far
 }
 
 func (r *rowReader) start(e element) error {
@@ -186,7 +206,7 @@ func (r *rowReader) start(e element) error {
 		if n, err := strconv.Atoi(e.attribute("r", false)); err == nil {
 			r.number = n
 		}
-		r.row, r.column = r.row[:0], 0
+		r.row, r.column, r.size = r.row[:0], 0, 0
 	case "c":
 		r.column++
 		if n := columnOf(e.attribute("r", false)); n > 0 {
@@ -219,6 +239,9 @@ func (r *rowReader) end(local string) error {
 		}
 		if r.formula {
 			value = "f" + value
+		}
+		if r.size += len(value); r.size > rowTextMost || len(r.row) == columnsMost {
+			return fmt.Errorf("row %d holds more than a row can", r.number)
 		}
 		if value != "" {
 			r.row = append(r.row, cell{r.column, value})

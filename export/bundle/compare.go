@@ -1,19 +1,20 @@
 package bundle
 
 import (
+	"context"
 	"errors"
 	"fmt"
 	"hash/maphash"
 	"io"
-	"os"
 	"regexp"
+	"runtime"
 	"slices"
-	"strings"
+	"sync"
 
 	"tripwell/store"
 )
 
-// workbook makes the workbook anew from the records and compares every cell.
+// workbook makes the workbook anew from the records and compares every cell. While one is made, the other is read.
 func (v *verifier) workbook() error {
 	if v.files[workbookFile] == nil {
 		v.report.find(workbookFile, "The bundle holds no workbook.")
@@ -23,114 +24,82 @@ func (v *verifier) workbook() error {
 		v.report.note("The cells of the workbook were not compared, because the records they come from are not whole.")
 		return nil
 	}
+	ctx, stop := context.WithCancel(v.ctx)
+	got := given{most: rowsBesides}
+	for _, f := range v.logs {
+		got.most += rowsPerRecord * len(f.leaves)
+	}
+	var reading sync.WaitGroup
+	reading.Go(func() { got.read(ctx, v.files[workbookFile]) })
 	again, err := spooled(func(out io.Writer) error {
-		return remake(v.ctx, out, v.doc, v.head, v.people, v.inOrder(), nil)
+		return remake(v.ctx, out, v.doc, v.head, v.people, v.inOrder(), true, nil)
 	})
+	if err != nil {
+		stop()
+	}
+	reading.Wait()
+	stop()
+	defer got.spool.remove()
+	defer again.remove()
 	var refused *store.Error
-	if errors.As(err, &refused) {
+	switch {
+	case errors.As(err, &refused):
 		v.report.find("records", "The workbook cannot be made from the records: %s", refused.Text)
 		return nil
-	}
-	if err != nil {
+	case err != nil:
 		return err
-	}
-	defer again.remove()
-	given, err := spooled(func(out io.Writer) error {
-		in, err := v.files[workbookFile].Open()
-		if err != nil {
-			return err
-		}
-		defer in.Close()
-		_, err = io.Copy(out, io.LimitReader(in, fileMost))
-		return err
-	})
-	if err != nil {
-		v.report.find(workbookFile, "The workbook cannot be unpacked: %v.", err)
+	case v.ctx.Err() != nil:
+		return v.ctx.Err()
+	case got.err != nil:
+		v.report.find(workbookFile, "The workbook cannot be read: %v.", got.err)
 		return nil
 	}
-	defer given.remove()
-	if sum, err := v.sum(workbookFile); err == nil && sum != v.listedSum(workbookFile) {
+	if got.sum != v.listedSum(workbookFile) {
 		v.report.note("The workbook has been saved again since the bundle was made; its cells are compared all the same.")
 	}
-	return v.compare(again, given)
-}
-
-func (v *verifier) listedSum(name string) string {
-	for _, f := range v.doc.Files {
-		if f.Name == name {
-			return f.SHA256
-		}
-	}
-	return ""
-}
-
-// spool is a file in the temp folder.
-type spool struct {
-	file *os.File
-	size int64
-}
-
-func spooled(fill func(io.Writer) error) (*spool, error) {
-	f, err := os.CreateTemp("", "tripwell-check-*")
-	if err != nil {
-		return nil, fmt.Errorf("room for the workbook: %w", err)
-	}
-	s := &spool{file: f}
-	if err := fill(f); err != nil {
-		s.remove()
-		return nil, err
-	}
-	if s.size, err = f.Seek(0, io.SeekEnd); err != nil {
-		s.remove()
-		return nil, err
-	}
-	return s, nil
-}
-
-func (s *spool) remove() {
-	_ = s.file.Close()
-	_ = os.Remove(s.file.Name())
+	return v.compare(again, &got)
 }
 
 // compare holds the workbook that was given against the one the records give.
-func (v *verifier) compare(again, given *spool) error {
+func (v *verifier) compare(again *spool, got *given) error {
 	want, err := openCells(again.file, again.size)
 	if err != nil {
 		return fmt.Errorf("workbook made from the records: %w", err)
 	}
-	got, err := openCells(given.file, given.size)
-	if err != nil {
-		v.report.find(workbookFile, "The workbook cannot be read: %v.", err)
-		return nil
-	}
 	groups := map[string]*group{}
-	var order []string
+	var order []*group
 	for _, s := range want.sheets {
-		name := strings.TrimRight(s.name, " 0123456789")
+		name := groupOf(s.name)
 		if groups[name] == nil {
-			groups[name] = &group{name: name}
-			order = append(order, name)
+			groups[name] = &group{name: name, counts: got.rows[name]}
+			order = append(order, groups[name])
 		}
 		groups[name].want = append(groups[name].want, s)
 	}
-	for _, s := range got.sheets {
-		g := groups[s.name]
-		if g == nil {
-			g = groups[strings.TrimRight(s.name, " 0123456789")]
-		}
-		if g == nil {
+	for _, s := range got.cells.sheets {
+		if g := groups[groupOf(s.name)]; g != nil {
+			g.got = append(g.got, s)
+		} else {
 			v.report.find(workbookFile, "The sheet %s is none of this workbook: somebody put it in.", quote(s.name))
-			continue
 		}
-		g.got = append(g.got, s)
 	}
+	var work sync.WaitGroup
+	turn := make(chan struct{}, runtime.GOMAXPROCS(0))
+	for _, g := range order {
+		work.Go(func() {
+			turn <- struct{}{}
+			g.err = g.compare(v.ctx, want, got.cells)
+			<-turn
+		})
+	}
+	work.Wait()
 	total := 0
-	for _, name := range order {
-		n, err := groups[name].compare(v, want, got)
-		if err != nil {
-			return err
+	for _, g := range order {
+		if g.err != nil {
+			return g.err
 		}
-		total += n
+		total += g.n
+		v.report.take(g.found)
 	}
 	v.report.checked("%d cells of the workbook against what the records say", total)
 	return nil
@@ -140,6 +109,10 @@ func (v *verifier) compare(again, given *spool) error {
 type group struct {
 	name      string
 	want, got []sheetPart
+	counts    map[uint64]int32 // rows of got by their hash
+	n         int              // cells of want
+	found     Report
+	err       error
 }
 
 // sheetRow is a row that has no equal on the other side.
@@ -166,27 +139,27 @@ func hashRow(cells []cell) uint64 {
 	return h.Sum64()
 }
 
+// eachRow hands on the rows that hold something; their cells are good until the next.
+func (c *cells) eachRow(ctx context.Context, sheets []sheetPart, fn func(r sheetRow) error) error {
+	for _, s := range sheets {
+		err := c.rows(s, func(number int, cells []cell) error {
+			if len(cells) > 0 {
+				if err := fn(sheetRow{s.name, number, cells}); err != nil {
+					return err
+				}
+			}
+			return ctx.Err()
+		})
+		if err != nil {
+			return fmt.Errorf("sheet %s: %w", s.name, err)
+		}
+	}
+	return nil
+}
+
 // compare matches rows, wherever they stand: sorting and filtering is no tampering. Rows that are equal cancel each
 // other out; of the rest, those of the same record are compared cell by cell.
-func (g *group) compare(v *verifier, want, got *cells) (n int, err error) {
-	counts := map[uint64]int{}
-	each := func(c *cells, sheets []sheetPart, fn func(r sheetRow)) error {
-		for _, s := range sheets {
-			err := c.rows(s, func(number int, cells []cell) error {
-				if len(cells) > 0 {
-					fn(sheetRow{s.name, number, cells})
-				}
-				return v.ctx.Err()
-			})
-			if err != nil {
-				return fmt.Errorf("sheet %s: %w", s.name, err)
-			}
-		}
-		return nil
-	}
-	if err := each(want, g.want, func(r sheetRow) { counts[hashRow(r.cells)]++; n += len(r.cells) }); err != nil {
-		return n, err
-	}
+func (g *group) compare(ctx context.Context, want, got *cells) error {
 	var odd, lacking []sheetRow
 	beyond := 0
 	keep := func(list *[]sheetRow, r sheetRow) {
@@ -197,43 +170,48 @@ func (g *group) compare(v *verifier, want, got *cells) (n int, err error) {
 		r.cells = slices.Clone(r.cells)
 		*list = append(*list, r)
 	}
-	err = each(got, g.got, func(r sheetRow) {
-		if h := hashRow(r.cells); counts[h] > 0 {
-			counts[h]--
+	err := want.eachRow(ctx, g.want, func(r sheetRow) error {
+		g.n += len(r.cells)
+		if h := hashRow(r.cells); g.counts[h] > 0 {
+			g.counts[h]--
 		} else {
-			keep(&odd, r)
-		}
-	})
-	if err != nil {
-		v.report.find(workbookFile, "%s.", sentence(err))
-		return n, nil
-	}
-	left := 0
-	for _, c := range counts {
-		left += c
-	}
-	if left == 0 && len(odd) == 0 {
-		return n, nil
-	}
-	if err := each(want, g.want, func(r sheetRow) {
-		if h := hashRow(r.cells); counts[h] > 0 {
-			counts[h]--
 			keep(&lacking, r)
 		}
-	}); err != nil {
-		return n, err
+		return nil
+	})
+	if err != nil {
+		return err
 	}
-	g.explain(v, odd, lacking)
+	left := 0
+	for _, c := range g.counts {
+		left += int(c)
+	}
+	if left > 0 {
+		// Of rows that are there too often the first are named.
+		if err := got.eachRow(ctx, g.got, func(r sheetRow) error {
+			if h := hashRow(r.cells); g.counts[h] > 0 {
+				g.counts[h]--
+				keep(&odd, r)
+			}
+			return nil
+		}); err != nil {
+			return err
+		}
+	}
+	if left == 0 && len(lacking) == 0 {
+		return nil
+	}
+	g.explain(odd, lacking)
 	if beyond > 0 {
-		v.report.find("sheet "+g.name, "%d more rows are not what the records say.", beyond)
+		g.found.find("sheet "+g.name, "%d more rows are not what the records say.", beyond)
 	}
-	return n, nil
+	return nil
 }
 
 var idCell = regexp.MustCompile(`^s[0-9a-f]{8}-[0-9a-f]{4}-[78][0-9a-f]{3}-[0-9a-f]{4}-[0-9a-f]{12}$`)
 
 // explain says what is wrong with rows that have no equal.
-func (g *group) explain(v *verifier, odd, lacking []sheetRow) {
+func (g *group) explain(odd, lacking []sheetRow) {
 	byID := map[string][]int{}
 	for i, r := range lacking {
 		for _, c := range r.cells {
@@ -246,17 +224,17 @@ func (g *group) explain(v *verifier, odd, lacking []sheetRow) {
 	for _, r := range odd {
 		at := partner(r, lacking, byID, used)
 		if at < 0 {
-			v.report.find(fmt.Sprintf("sheet %s, row %d", r.sheet, r.number), "No record gives this row: %s.", preview(r))
+			g.found.find(fmt.Sprintf("sheet %s, row %d", r.sheet, r.number), "No record gives this row: %s.", preview(r))
 			continue
 		}
 		used[at] = true
 		for _, d := range differing(r.cells, lacking[at].cells) {
-			v.report.find(fmt.Sprintf("sheet %s, cell %s%d", r.sheet, columnName(d.column), r.number), "The workbook says %s; the records say %s.", shown(d.got), shown(d.want))
+			g.found.find(fmt.Sprintf("sheet %s, cell %s%d", r.sheet, columnName(d.column), r.number), "The workbook says %s; the records say %s.", shown(d.got), shown(d.want))
 		}
 	}
 	for i, r := range lacking {
 		if !used[i] {
-			v.report.find("sheet "+g.name, "A row is missing that the records give: %s.", preview(r))
+			g.found.find("sheet "+g.name, "A row is missing that the records give: %s.", preview(r))
 		}
 	}
 }

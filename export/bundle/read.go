@@ -3,12 +3,14 @@ package bundle
 import (
 	"archive/zip"
 	"bufio"
+	"bytes"
 	"crypto/sha256"
 	"encoding/hex"
 	"encoding/json"
 	"errors"
 	"fmt"
 	"io"
+	"path/filepath"
 	"strings"
 
 	"tripwell/store"
@@ -18,8 +20,11 @@ import (
 const (
 	filesMost    = 500_000
 	fileMost     = 16 << 30 // unpacked bytes of one file
-	jsonMost     = 256 << 20
+	allMost      = 64 << 30 // of all
+	jsonMost     = 128 << 20
+	valuesMost   = 3_000_000 // commas of one JSON file: what it takes in memory goes by them
 	lineMost     = 1 << 20
+	lineLeast    = 16    // packed bytes of a record: its id is as good as random
 	ratioMost    = 1_500 // deflate makes at most about 1,030 bytes of one
 	ratioMatters = 1 << 20
 )
@@ -28,6 +33,7 @@ const (
 type reader struct {
 	doc   Doc
 	files map[string]*zip.File
+	most  int64 // lines a file of it may have
 }
 
 // open reads the list of files and bundle.json. A file that is no bundle is *store.Error code invalid.
@@ -39,10 +45,17 @@ func open(in io.ReaderAt, size int64) (*reader, error) {
 	if len(archive.File) > filesMost {
 		return nil, notABundle("it holds more than 500,000 files")
 	}
-	r := &reader{files: make(map[string]*zip.File, len(archive.File))}
+	r := &reader{files: make(map[string]*zip.File, len(archive.File)), most: size/lineLeast + 1000}
+	all := uint64(0)
 	for _, f := range archive.File {
+		if !filepath.IsLocal(f.Name) || strings.ContainsAny(f.Name, "\\:") {
+			return nil, notABundle("its file " + quote(f.Name) + " would be unpacked outside its folder")
+		}
 		if f.UncompressedSize64 > fileMost || f.UncompressedSize64 > ratioMatters && f.UncompressedSize64/ratioMost > f.CompressedSize64 {
 			return nil, notABundle("its file " + quote(f.Name) + " says it is too large to be true")
+		}
+		if all += f.UncompressedSize64; all > allMost {
+			return nil, notABundle("its files say that they are larger than 64 GiB together")
 		}
 		if r.files[f.Name] != nil {
 			return nil, notABundle("it holds the file " + quote(f.Name) + " twice")
@@ -103,6 +116,9 @@ func (r *reader) json(name string, to any) error {
 	if err != nil {
 		return err
 	}
+	if bytes.Count(b, []byte(",")) > valuesMost {
+		return fmt.Errorf("the file %s holds more than %d values", name, valuesMost)
+	}
 	if err := json.Unmarshal(b, to); err != nil {
 		return fmt.Errorf("the file %s cannot be read: %w", name, err)
 	}
@@ -137,7 +153,10 @@ func (r *reader) lines(name string, line func(b []byte) error) error {
 	scan := bufio.NewScanner(in)
 	scan.Buffer(make([]byte, 128<<10), lineMost)
 	scan.Split(wholeLines)
-	for scan.Scan() {
+	for n := int64(0); scan.Scan(); n++ {
+		if n == r.most {
+			return fmt.Errorf("the file %s has more lines than there can be records in a bundle of this size", name)
+		}
 		if err := line(scan.Bytes()); err != nil {
 			return err
 		}

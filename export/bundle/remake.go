@@ -19,8 +19,8 @@ import (
 )
 
 // remake writes the workbook that a bundle's records give. Whoever writes a bundle and whoever checks it goes this one way, so
-// the two workbooks differ only where somebody changed one.
-func remake(ctx context.Context, out io.Writer, doc Doc, head string, people []person, records iter.Seq2[store.Replayed, error], progress func(done, total int64)) error {
+// the two workbooks differ only where somebody changed one. A plain one is not packed.
+func remake(ctx context.Context, out io.Writer, doc Doc, head string, people []person, records iter.Seq2[store.Replayed, error], plain bool, progress func(done, total int64)) error {
 	ask := export.WorkbookAsk{Now: doc.AsOf, Organisation: doc.Organisation, Store: doc.Store, Epoch: doc.Epoch, Demo: doc.Demo, AllSites: doc.AllSites, Head: head}
 	var err error
 	if ask.From, err = dayOf(doc.From); err != nil {
@@ -34,6 +34,7 @@ func remake(ctx context.Context, out io.Writer, doc Doc, head string, people []p
 		if err != nil {
 			return err
 		}
+		src.Plain = plain
 		return export.Workbook(out, src)
 	})
 }

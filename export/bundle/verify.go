@@ -45,6 +45,14 @@ func (r *Report) find(where, format string, args ...any) {
 	r.More++
 }
 
+// take adds the findings of a part.
+func (r *Report) take(part Report) {
+	for _, f := range part.Findings {
+		r.find(f.Where, "%s", f.Text)
+	}
+	r.More += part.More
+}
+
 func (r *Report) note(format string, args ...any) {
 	r.Notes = append(r.Notes, fmt.Sprintf(format, args...))
 }

@@ -350,6 +350,6 @@ func (w *writer) workbook() error {
 		}})
 	}
 	return w.file(workbookFile, func(out io.Writer) error {
-		return remake(w.ctx, out, w.doc, w.signed, w.stated(), attach(merged(logs), refusals), func(done, _ int64) { w.ask.Progress(w.total-w.foldable+done, w.total) })
+		return remake(w.ctx, out, w.doc, w.signed, w.stated(), attach(merged(logs), refusals), false, func(done, _ int64) { w.ask.Progress(w.total-w.foldable+done, w.total) })
 	})
 }

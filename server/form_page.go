@@ -44,6 +44,7 @@ type field struct {
 	Name, Label, Type, Value, Hint, Unit, Error string
 	Required, Wide                              bool
 	Accept                                      string // kinds of file
+	Auto                                        string // what a browser may fill in; "" = nothing
 	Options                                     []option
 	Known                                       []string // values to choose from while typing
 	ID                                          string   // where two forms of a page ask by the same name; else the name serves

@@ -25,6 +25,8 @@ type askPage struct {
 	Next    string
 	Problem string
 	Field   string // where a phone that is enrolled goes on without signing in
+
+	Name, PasswordProblem string // the name that was typed with a password, and what is wrong
 }
 
 func (s *Server) askPage(c echo.Context, next, problem string) askPage {

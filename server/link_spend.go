@@ -6,6 +6,8 @@ import (
 
 	"github.com/labstack/echo/v4"
 	"golang.org/x/time/rate"
+
+	"tripwell/store"
 )
 
 // linkSpend signs in: the link is used up, the browser gets its session.
@@ -14,7 +16,7 @@ func (s *Server) linkSpend(c echo.Context) error {
 	if err != nil {
 		return err
 	}
-	session, err := s.store.SpendLink(c.Request().Context(), c.Param("token"))
+	session, err := s.store.SpendLink(c.Request().Context(), c.Param("token"), arrival(c))
 	if err != nil {
 		return s.wrongLink(c, err)
 	}
@@ -27,7 +29,7 @@ func (s *Server) codeTyped(c echo.Context, typed, next string) error {
 	if !s.wrong.any(c.RealIP()) || !s.wrong.any(everybody) {
 		return refuse(codeBusy, "", "Too many wrong codes were typed. Wait a minute, or use a sign-in link.")
 	}
-	session, err := s.store.SpendCode(c.Request().Context(), typed)
+	session, err := s.store.SpendCode(c.Request().Context(), typed, arrival(c))
 	if isRefusal(err) {
 		s.wrong.allow(c.RealIP())
 		s.wrong.allow(everybody)
@@ -50,6 +52,11 @@ func (s *Server) beginSession(c echo.Context, session, next string) error {
 		next = home(p.Role)
 	}
 	return toPage(c, next)
+}
+
+// arrival is what is kept of how this browser came in; the session it had ends with the new one.
+func arrival(c echo.Context) store.Arrival {
+	return store.Arrival{Agent: c.Request().UserAgent(), Address: c.RealIP(), Former: sessionCookie(c.Request())}
 }
 
 // sessionEnd signs out. What a phone still has to send stays on it.

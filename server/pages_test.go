@@ -160,7 +160,9 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 			Wrong:  []link{{Text: "No round was chosen."}}, Action: "/rounds", Submit: "Make the round", Hidden: []hidden{{"record", "1"}}, Fields: []field{{Name: "note", Label: "Note", Type: "text-area", Wide: true}}, Pace: "Reckoned with button test 1.2 min."},
 		"tray.html": trayPage{Frame: frameOf("Take in a phone's tray", ""), Problem: "Choose the file the phone saved first.", Report: &TrayReport{Records: 3, Stored: 1, Already: 1, Person: "Crew 1", Made: "2026-12-01T08:00:00.000Z",
 			Refused: []store.Receipt{{ID: "0197b2c0-0000-7000-8000-000000000001", State: "refused", Code: "bad_body", Text: "The readings are missing."}}}},
-		"person_link.html": personLinkPage{Frame: frameOf("People", "people"), Crumbs: []link{{Href: "/people", Text: "People"}}, Heading: "Sign-in link for Crew 1", Under: "It is shown here once.", Link: "https://tripwell.example/in/2JHC0VQ2W4Z8S5N7K3M6P9R1T4", Text: "Send it to Crew 1 only."},
+		"me.html":            meSample(),
+		"signin_second.html": secondPage{Frame: frameOf("Second step", ""), Half: "half", Problem: "This code is not the one of this moment."},
+		"person_link.html":   personLinkPage{Frame: frameOf("People", "people"), Crumbs: []link{{Href: "/people", Text: "People"}}, Heading: "Sign-in link for Crew 1", Under: "It is shown here once.", Link: "https://tripwell.example/in/2JHC0VQ2W4Z8S5N7K3M6P9R1T4", Text: "Send it to Crew 1 only."},
 	}
 }
 
@@ -234,6 +236,21 @@ func (s *Server) limitsSample() limitsPage {
 		p.Revisions = append(p.Revisions, s.limitSet(set, nil, map[string][]scaleSpan{}))
 	}
 	return p
+}
+
+func meSample() mePage {
+	must := func(c *codePicture, err error) *codePicture {
+		if err != nil {
+			panic(err)
+		}
+		return c
+	}
+	return mePage{Frame: frameOf("Your sign-in", "me"), Heading: "Your sign-in", Under: "Crew 1", Said: "The password is set.", Others: true, PasswordSet: "Set on 1 December 2026.",
+		Sessions: []sessionShown{{ID: "1", Browser: "Firefox on Linux", How: "link", Since: "1 Dec 2026", Used: "1 Dec 2026", Address: "192.0.2.1"}, {ID: "2", Browser: "Chrome", Own: true}},
+		Phones:   []phoneShown{{Name: "9F0C21", Since: "1 Dec 2026", Sent: []string{"up to its number 41 in Kiln Lane"}, Action: "/me/phones/1"}, {Name: "9F0C22"}},
+		Password: formPage{Action: "/me/password", Submit: "Change password", WrongHead: "1 thing to mend", Wrong: []link{{Href: "#f-again", Text: "The two are not the same."}}, Groups: []fieldGroup{{Fields: []field{{Name: "password", Label: "New password", Type: "password", Auto: "new-password", Error: "Too short."}}}}},
+		Second:   secondShown{May: true, Key: "JBSW Y3DP", Picture: must(drawCode("otpauth://totp/x", "Code to scan")), Codes: []string{"ABCD-EFGH"}, Form: formPage{Action: "/me/second/on", Submit: "Switch on"}},
+	}
 }
 
 func revisionSample() revisionPage {

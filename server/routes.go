@@ -37,6 +37,8 @@ func publicRoutes() []route {
 		// access
 		{get, "/in", anyone, (*Server).linkAsk, 0},
 		{post, "/in", anyone, (*Server).linkPasted, 0},
+		{post, "/in/password", anyone, (*Server).passwordTyped, 0},
+		{post, "/in/second", anyone, (*Server).secondTyped, 0},
 		{get, "/in/:token", anyone, (*Server).linkShow, 0},
 		{post, "/in/:token", anyone, (*Server).linkSpend, 0},
 		{post, "/out", anyone, (*Server).sessionEnd, 0},
@@ -116,6 +118,15 @@ func publicRoutes() []route {
 		{get, "/table", office, (*Server).tableTake, 0},
 		{get, "/round-sheet", office, (*Server).roundTake, 0},
 		{get, "/device-sheet", office, (*Server).sheetTake, 0},
+
+		// a person's own signing in
+		{get, "/me", signed, (*Server).meShow, 0},
+		{post, "/me/password", signed | alone, (*Server).mePassword, 0},
+		{post, "/me/second", signed | alone, (*Server).meSecondOffer, 0},
+		{post, "/me/second/on", signed | alone, (*Server).meSecondOn, 0},
+		{post, "/me/second/off", signed | alone, (*Server).meSecondOff, 0},
+		{post, "/me/sessions", signed | alone, (*Server).meSessions, 0},
+		{post, "/me/phones/:phone", signed | alone, (*Server).mePhoneOff, 0},
 
 		// office: changing
 		{get, "/tray", manager, (*Server).trayAsk, 0},

@@ -44,6 +44,7 @@ type Server struct {
 	pages   map[string]*template.Template
 	cross   *http.CrossOriginProtection
 	wrong   *wrongLinks
+	guesses *guesses
 	image   atomic.Pointer[store.Image] // the backup that is being taken away
 	drawing sync.Mutex                  // pictures are drawn anew one at a time
 	imports *importArea                 // registers
@@ -57,7 +58,7 @@ func New(s *store.Store, o Options) (*Server, error) {
 	if err != nil {
 		return nil, err
 	}
-	srv := &Server{store: s, log: o.Log, alone: o.Alone, words: words, cross: http.NewCrossOriginProtection(), wrong: newWrongLinks(), imports: newImportArea(), results: newImportArea(), makings: newMakingArea()}
+	srv := &Server{store: s, log: o.Log, alone: o.Alone, words: words, cross: http.NewCrossOriginProtection(), wrong: newWrongLinks(), guesses: newGuesses(), imports: newImportArea(), results: newImportArea(), makings: newMakingArea()}
 	if srv.log == nil {
 		srv.log = slog.New(slog.DiscardHandler)
 	}

@@ -14,30 +14,26 @@ import (
 	"tripwell/store/record"
 )
 
-// How long a session lasts: unused, and in all.
-const (
-	SessionIdle = 12 * time.Hour
-	SessionLife = 14 * 24 * time.Hour
-	sessionStep = 10 * time.Minute // how exactly the last use is kept
-)
-
 // Only the SHA-256 of a token is kept, so a copy of the file signs nobody in.
 type link struct {
 	Person string    `json:"person"`
 	Until  time.Time `json:"until"`
-	Typed  bool      `json:"typed,omitempty"` // a short code
+	Use    string    `json:"use,omitempty"`   // what it is good for: linkOpened, linkTyped, linkHalf
+	Wrong  int       `json:"wrong,omitempty"` // second steps that failed
 }
 
-type session struct {
-	Person string    `json:"person"`
-	Began  time.Time `json:"began"`
-	Used   time.Time `json:"used"`
-}
+// What a link is good for; none stands for another.
+const (
+	linkOpened = ""     // opened in a browser
+	linkTyped  = "code" // a short code
+	linkHalf   = "half" // its password was right, the second step is still to come
+)
 
 type bearer struct {
 	Installation string    `json:"installation"`
 	Person       string    `json:"person"`
 	Since        time.Time `json:"since"`
+	Heard        time.Time `json:"heard,omitzero"`
 }
 
 // newToken draws 256 bits and gives them as text with the key they are kept under.
@@ -80,7 +76,7 @@ func (s *Store) putLink(person string, key []byte, l link) error {
 		if err := g.sweepLinks(); err != nil {
 			return err
 		}
-		if l.Typed {
+		if l.Use == linkTyped {
 			if err := g.dropCodes(p.ID); err != nil {
 				return err
 			}
@@ -114,116 +110,25 @@ func (g *group) sweepLinks() error {
 // LinkPerson says whom a link would sign in; it does not spend it.
 func (s *Store) LinkPerson(token string) (p Person, err error) {
 	err = s.view(func(tx *bbolt.Tx) error {
-		p, err = s.linkOf(tx, token, false)
+		p, err = s.linkOf(tx, token, linkOpened)
 		return err
 	})
 	return p, err
 }
 
 // SpendLink signs in: the link is gone, a session begins, signed.in is appended, all in one transaction.
-func (s *Store) SpendLink(ctx context.Context, token string) (session string, err error) {
-	return s.spend(ctx, token, false)
+func (s *Store) SpendLink(ctx context.Context, token string, from Arrival) (session string, err error) {
+	from.How = ByLink
+	return s.spend(ctx, token, linkOpened, from)
 }
 
-func (s *Store) spend(ctx context.Context, token string, typed bool) (session string, err error) {
-	fresh, key := newToken()
-	err = s.do(ctx, 1, func(g *group) error {
-		p, err := s.linkOf(g.tx, token, typed)
+func (s *Store) spend(ctx context.Context, token, use string, from Arrival) (session string, err error) {
+	return s.signIn(ctx, from, func(g *group) (Person, error) {
+		p, err := s.linkOf(g.tx, token, use)
 		if err != nil {
-			return err
+			return p, err
 		}
-		if _, err := g.appendDrafts([]Draft{{Kind: "signed.in", Log: record.Office, Subject: p.ID, By: p.ID, Body: json.RawMessage("{}")}}); err != nil {
-			return err
-		}
-		if err := g.drop(bktLink, tokenKey(token)); err != nil {
-			return err
-		}
-		return g.beginSession(key, p.ID)
-	})
-	if err != nil {
-		return "", err
-	}
-	return fresh, nil
-}
-
-// beginSession keeps a new session and deletes those that have ended.
-func (g *group) beginSession(key []byte, person string) error {
-	now := g.s.now()
-	var old [][]byte
-	err := g.tx.Bucket(bktSession).ForEach(func(k, v []byte) error {
-		var s session
-		if err := json.Unmarshal(v, &s); err != nil || s.ended(now) {
-			old = append(old, append([]byte(nil), k...))
-		}
-		return nil
-	})
-	if err != nil {
-		return fmt.Errorf("sweep sessions: %w", err)
-	}
-	for _, k := range old {
-		if err := g.drop(bktSession, k); err != nil {
-			return err
-		}
-	}
-	return g.putJSON(bktSession, key, session{Person: person, Began: now, Used: now})
-}
-
-func (s session) ended(now time.Time) bool {
-	return now.Sub(s.Used) > SessionIdle || now.Sub(s.Began) > SessionLife
-}
-
-// Session says who a session token belongs to, and keeps it from going idle.
-func (s *Store) Session(token string) (p Person, err error) {
-	key, now := tokenKey(token), s.now()
-	var held session
-	err = s.view(func(tx *bbolt.Tx) error {
-		held, p, err = readSession(tx, key, now)
-		return err
-	})
-	if err != nil {
-		return Person{}, err
-	}
-	if now.Sub(held.Used) < sessionStep {
-		return p, nil
-	}
-	err = s.do(context.Background(), 1, func(g *group) error {
-		held, _, err := readSession(g.tx, key, now)
-		if err != nil {
-			return err
-		}
-		held.Used = now
-		return g.putJSON(bktSession, key, held)
-	})
-	if err == errBusy {
-		err = nil // the use is noted the next time
-	}
-	return p, err
-}
-
-func readSession(tx *bbolt.Tx, key []byte, now time.Time) (held session, p Person, err error) {
-	v := tx.Bucket(bktSession).Get(key)
-	if v == nil {
-		return held, p, errSession
-	}
-	if err := json.Unmarshal(v, &held); err != nil {
-		return held, p, fmt.Errorf("session: %w", err)
-	}
-	if held.ended(now) {
-		return held, p, errSession
-	}
-	if p, err = readPerson(tx, held.Person); err != nil || !p.Active {
-		return held, p, errSession
-	}
-	return held, p, nil
-}
-
-// EndSession signs out. A session that is not there is no error.
-func (s *Store) EndSession(token string) error {
-	return s.do(context.Background(), 1, func(g *group) error {
-		if g.tx.Bucket(bktSession).Get(tokenKey(token)) == nil {
-			return nil
-		}
-		return g.drop(bktSession, tokenKey(token))
+		return p, g.drop(bktLink, tokenKey(token))
 	})
 }
 
@@ -246,7 +151,7 @@ func (s *Store) Enrol(ctx context.Context, person, installation string) (token s
 		if err != nil {
 			return err
 		}
-		if !p.Active {
+		if !p.mayEnter(s.now()) {
 			return errSession
 		}
 		body := mustJSON(map[string]string{"installation": installation})
@@ -262,7 +167,7 @@ func (s *Store) Enrol(ctx context.Context, person, installation string) (token s
 		if err := g.put(bktInst, inst, key); err != nil {
 			return err
 		}
-		return g.putJSON(bktToken, key, bearer{installation, p.ID, s.now()})
+		return g.putJSON(bktToken, key, bearer{Installation: installation, Person: p.ID, Since: s.now()})
 	})
 	if err != nil {
 		return "", err
@@ -272,20 +177,23 @@ func (s *Store) Enrol(ctx context.Context, person, installation string) (token s
 
 // Bearer says who holds an installation token.
 func (s *Store) Bearer(token string) (installation string, p Person, err error) {
+	var b bearer
 	err = s.view(func(tx *bbolt.Tx) error {
 		v := tx.Bucket(bktToken).Get(tokenKey(token))
 		if v == nil {
 			return errBearer
 		}
-		var b bearer
 		if err := json.Unmarshal(v, &b); err != nil {
 			return fmt.Errorf("token: %w", err)
 		}
-		if p, err = readPerson(tx, b.Person); err != nil || !p.Active {
+		if p, err = readPerson(tx, b.Person); err != nil || !p.mayEnter(s.now()) {
 			return errBearer
 		}
 		installation = b.Installation
 		return nil
 	})
+	if err == nil && s.now().Sub(b.Heard) >= sessionStep {
+		s.heard(tokenKey(token))
+	}
 	return installation, p, err
 }

@@ -21,11 +21,11 @@ func TestLink_SignsInOnce(t *testing.T) {
 			t.Fatalf("got %+v %v", p, err)
 		}
 	}
-	session, err := r.SpendLink(ctx, token)
+	session, err := r.SpendLink(ctx, token, Arrival{})
 	if err != nil {
 		t.Fatal(err)
 	}
-	if _, err := r.SpendLink(ctx, token); code(err) != "not_found" {
+	if _, err := r.SpendLink(ctx, token, Arrival{}); code(err) != "not_found" {
 		t.Errorf("spent twice: got %v, want not_found", err)
 	}
 	if p, err := r.Session(session); err != nil || p.ID != r.manager.ID {
@@ -36,7 +36,7 @@ func TestLink_SignsInOnce(t *testing.T) {
 		t.Fatal(err)
 	}
 	r.pass(time.Hour)
-	if _, err := r.SpendLink(ctx, late); code(err) != "not_found" {
+	if _, err := r.SpendLink(ctx, late, Arrival{}); code(err) != "not_found" {
 		t.Errorf("too old: got %v, want not_found", err)
 	}
 	file, err := os.ReadFile(filepath.Join(r.dir, BookFile))
@@ -57,7 +57,7 @@ func TestSession_EndsIdleAndInAll(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		session, err := r.SpendLink(context.Background(), token)
+		session, err := r.SpendLink(context.Background(), token, Arrival{})
 		if err != nil {
 			t.Fatal(err)
 		}

@@ -4,6 +4,7 @@ import (
 	"context"
 	"crypto/rand"
 	"encoding/json"
+	"fmt"
 	"strings"
 	"time"
 
@@ -41,18 +42,33 @@ func BareCode(typed string) string {
 // NewCode makes a code that a person types to sign in once, within CodeLife; it takes the place of the one before. Only its
 // SHA-256 is kept.
 func (s *Store) NewCode(person string) (code string, err error) {
-	var b [8]byte
-	_, _ = rand.Read(b[:]) // never fails (crypto/rand)
+	code = crockfordText(8)
+	return grouped(code), s.putLink(person, tokenKey(code), link{Until: s.now().Add(CodeLife), Use: linkTyped})
+}
+
+// crockfordText draws n characters that cannot be misread.
+func crockfordText(n int) string {
+	b := make([]byte, n)
+	_, _ = rand.Read(b) // never fails (crypto/rand)
 	for i := range b {
 		b[i] = codeAlphabet[b[i]%32] // 32 divides 256: every character is as likely
 	}
-	code = string(b[:])
-	return code[:4] + "-" + code[4:], s.putLink(person, tokenKey(code), link{Until: s.now().Add(CodeLife), Typed: true})
+	return string(b)
+}
+
+// grouped parts a code by hyphens, four characters at a time.
+func grouped(code string) string {
+	var parts []string
+	for ; len(code) > 4; code = code[4:] {
+		parts = append(parts, code[:4])
+	}
+	return strings.Join(append(parts, code), "-")
 }
 
 // SpendCode signs in by a typed code, as SpendLink does by a link.
-func (s *Store) SpendCode(ctx context.Context, typed string) (session string, err error) {
-	return s.spend(ctx, BareCode(typed), true)
+func (s *Store) SpendCode(ctx context.Context, typed string, from Arrival) (session string, err error) {
+	from.How = ByCode
+	return s.spend(ctx, BareCode(typed), linkTyped, from)
 }
 
 // dropCodes deletes a person's earlier codes.
@@ -60,7 +76,7 @@ func (g *group) dropCodes(person string) error {
 	var old [][]byte
 	err := g.tx.Bucket(bktLink).ForEach(func(k, v []byte) error {
 		var l link
-		if err := json.Unmarshal(v, &l); err == nil && l.Typed && l.Person == person {
+		if err := json.Unmarshal(v, &l); err == nil && l.Use == linkTyped && l.Person == person {
 			old = append(old, append([]byte(nil), k...))
 		}
 		return nil
@@ -73,26 +89,37 @@ func (g *group) dropCodes(person string) error {
 	return err
 }
 
-// linkOf reads a link or a typed code; neither stands for the other, since only codes need wrong ones counted first.
-func (s *Store) linkOf(tx *bbolt.Tx, token string, typed bool) (Person, error) {
+// linkOf reads a link that is good for one use; none stands for another, since only codes need wrong ones counted first.
+func (s *Store) linkOf(tx *bbolt.Tx, token, use string) (Person, error) {
 	refused := errLink
-	if typed {
+	switch use {
+	case linkTyped:
 		refused = errCode
+	case linkHalf:
+		refused = errHalf
 	}
-	var l link
-	v := tx.Bucket(bktLink).Get(tokenKey(token))
-	if v == nil {
-		return Person{}, refused
-	}
-	if err := json.Unmarshal(v, &l); err != nil {
+	l, err := readLink(tx, token)
+	if err != nil {
 		return Person{}, err
 	}
-	if l.Typed != typed || !s.now().Before(l.Until) {
+	if l.Use != use || !s.now().Before(l.Until) { // also what is not there
 		return Person{}, refused
 	}
 	p, err := readPerson(tx, l.Person)
-	if err != nil || !p.Active {
+	if err != nil || !p.mayEnter(s.now()) {
 		return Person{}, refused
 	}
 	return p, nil
+}
+
+// readLink reads a link, a code or half a sign-in; one that is not there is good for nothing.
+func readLink(tx *bbolt.Tx, token string) (l link, err error) {
+	v := tx.Bucket(bktLink).Get(tokenKey(token))
+	if v == nil {
+		return link{Use: "none"}, nil
+	}
+	if err := json.Unmarshal(v, &l); err != nil {
+		return l, fmt.Errorf("link: %w", err)
+	}
+	return l, nil
 }

@@ -21,17 +21,17 @@ func TestCode_SignsInOnceWithinTenMinutes(t *testing.T) {
 	if _, err := r.LinkPerson(bare); code(err) != "not_found" {
 		t.Errorf("a code opened as a link: got %v, want not_found", err)
 	}
-	if _, err := r.SpendLink(ctx, bare); code(err) != "not_found" {
+	if _, err := r.SpendLink(ctx, bare, Arrival{}); code(err) != "not_found" {
 		t.Errorf("a code spent as a link: got %v, want not_found", err)
 	}
-	session, err := r.SpendCode(ctx, " "+strings.ToLower(typed)+" ")
+	session, err := r.SpendCode(ctx, " "+strings.ToLower(typed)+" ", Arrival{})
 	if err != nil {
 		t.Fatal(err)
 	}
 	if p, err := r.Session(session); err != nil || p.ID != r.manager.ID {
 		t.Errorf("got %+v %v", p, err)
 	}
-	if _, err := r.SpendCode(ctx, typed); code(err) != "not_found" {
+	if _, err := r.SpendCode(ctx, typed, Arrival{}); code(err) != "not_found" {
 		t.Errorf("typed twice: got %v, want not_found", err)
 	}
 	first, _ := r.NewCode(r.manager.ID)
@@ -39,11 +39,11 @@ func TestCode_SignsInOnceWithinTenMinutes(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	if _, err := r.SpendCode(ctx, first); code(err) != "not_found" {
+	if _, err := r.SpendCode(ctx, first, Arrival{}); code(err) != "not_found" {
 		t.Errorf("the code before the last: got %v, want not_found", err)
 	}
 	r.pass(10 * time.Minute)
-	if _, err := r.SpendCode(ctx, second); code(err) != "not_found" {
+	if _, err := r.SpendCode(ctx, second, Arrival{}); code(err) != "not_found" {
 		t.Errorf("after ten minutes: got %v, want not_found", err)
 	}
 	file, err := os.ReadFile(filepath.Join(r.dir, BookFile))

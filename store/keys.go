@@ -27,6 +27,7 @@
 //	  dir_person  person 16             → JSON
 //	  dir_link    SHA-256 of token 32   → JSON
 //	  dir_session SHA-256 of token 32   → JSON
+//	  dir_secret  person 16             → JSON of secret: password hash, second step
 //	  dir_token   SHA-256 of token 32   → JSON
 //	  dir_inst    installation 16       → SHA-256 of its token 32
 //	  dir_feed    SHA-256 of token 32   → JSON: whose calendar
@@ -67,6 +68,7 @@ var (
 	bktPerson   = []byte("dir_person")
 	bktLink     = []byte("dir_link")
 	bktSession  = []byte("dir_session")
+	bktSecret   = []byte("dir_secret")
 	bktToken    = []byte("dir_token")
 	bktInst     = []byte("dir_inst")
 	bktCalendar = []byte("dir_feed")
@@ -77,7 +79,7 @@ var (
 
 var bookBuckets = [][]byte{bktRec, bktID, bktLog, bktLogs, bktNames, bktQuar, bktQuarSHA, bktHeads, bktFormer, bktDiffer, bktMeta}
 var countBuckets = [][]byte{bktCount, bktReused, bktGrant, bktTaken}
-var directoryBuckets = [][]byte{bktPerson, bktLink, bktSession, bktToken, bktInst, bktCalendar, bktDigest, bktSetting, bktColumns}
+var directoryBuckets = [][]byte{bktPerson, bktLink, bktSession, bktSecret, bktToken, bktInst, bktCalendar, bktDigest, bktSetting, bktColumns}
 
 // Names in meta and dir_setting.
 var (

@@ -7,9 +7,11 @@ import (
 	"fmt"
 	"slices"
 	"strings"
+	"time"
 
 	"go.etcd.io/bbolt"
 
+	"tripwell/forms"
 	"tripwell/store/record"
 )
 
@@ -20,6 +22,8 @@ type Person struct {
 	Sites          []string
 	Active         bool
 	Contact        string
+	Period         *Period    `json:",omitempty"` // an auditor's: the test days they may see; nil = all
+	Until          *forms.Day `json:",omitempty"` // an auditor's: the last day of their access; nil = no end
 }
 
 // Scope is what the person may see; nothing once they are no longer active.
@@ -27,7 +31,15 @@ func (p Person) Scope() Scope {
 	if !p.Active {
 		return Scope{Person: p.ID, Role: p.Role}
 	}
-	return Scope{Person: p.ID, Role: p.Role, All: p.All, Sites: p.Sites}
+	return Scope{Person: p.ID, Role: p.Role, All: p.All, Sites: p.Sites, Period: p.Period, Until: p.Until}
+}
+
+// lastZone is where a day ends last: an access given until a day ends when that day is over everywhere.
+var lastZone = time.FixedZone("", -12*60*60)
+
+// mayEnter reports whether the person may sign in, or stay signed in, at a moment.
+func (p Person) mayEnter(now time.Time) bool {
+	return p.Active && (p.Until == nil || forms.DayOf(now.In(lastZone)) <= *p.Until)
 }
 
 // People lists everybody, by name.

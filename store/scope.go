@@ -3,6 +3,7 @@ package store
 import (
 	"slices"
 
+	"tripwell/forms"
 	"tripwell/store/record"
 )
 
@@ -11,7 +12,20 @@ type Scope struct {
 	Person string
 	Role   string // manager | crew | auditor | owner
 	All    bool
-	Sites  []string // site ids
+	Sites  []string   // site ids
+	Period *Period    // test days that may be seen; nil = all
+	Until  *forms.Day // the last day of the access, told on pages and in files; signing in asks it
+}
+
+// Period is a span of days, both included.
+type Period struct {
+	From forms.Day `json:"from"`
+	To   forms.Day `json:"to"`
+}
+
+// Shows reports whether the scope shows what is of a day.
+func (sc Scope) Shows(day forms.Day) bool {
+	return sc.Period == nil || day >= sc.Period.From && day <= sc.Period.To
 }
 
 // May reports whether the scope covers a site.

@@ -310,7 +310,7 @@ func signIn(t *testing.T, dir string) {
 	defer s.Close()
 	token, err := firstLink(t.Context(), s)
 	if err == nil {
-		_, err = s.SpendLink(t.Context(), token)
+		_, err = s.SpendLink(t.Context(), token, store.Arrival{})
 	}
 	if err != nil {
 		t.Fatal(err)

@@ -33,6 +33,7 @@ type DueDate struct {
 	Until  Day      // last day of the grace; equal to Due without one
 	Every  Interval // of calendar periods; zero where the date is counted otherwise
 	Tried  bool     // since it opened somebody stood before a closed door
+	Shut   []Day    // last days of the periods after it in which somebody did
 	Pauses []Pause  // of its device
 }
 
@@ -66,7 +67,7 @@ func (d DueDate) following() (next DueDate, ok bool) {
 	grace := d.Until - d.Due
 	_, end := d.Every.period(d.Due)
 	d.Opens, d.Due = d.Every.afterPauses(end, d.Pauses)
-	d.Until, d.Tried = d.Due+grace, false
+	d.Until, d.Tried = d.Due+grace, slices.Contains(d.Shut, d.Due)
 	return d, true
 }
 
@@ -204,7 +205,7 @@ func (s Schedule) Dates(c Case, last func(task string) Day) []DueDate {
 func (sc *scheduled) next(c *Case, last Day) DueDate {
 	best := sc.planned(c, last)
 	for _, o := range c.Occasions {
-		if d, ok := sc.occasion(c, o); ok && (last == NoDay || o.On > last) && d.Due < best.Due {
+		if d, ok := sc.occasion(c, o); ok && (last == NoDay || d.Opens > last) && d.Due < best.Due {
 			d.Last, d.Every, best = last, best.Every, d
 		}
 	}
@@ -223,7 +224,8 @@ func (sc *scheduled) planned(c *Case, last Day) DueDate {
 	return best
 }
 
-// occasion gives the date an occasion sets, by the plan revision in force that day; of several plans the earliest.
+// occasion gives the date an occasion sets, by the plan revision in force that day; of several plans the earliest. A test of the
+// day it opens, or of a later one, meets it.
 func (sc *scheduled) occasion(c *Case, o Occasion) (best DueDate, ok bool) {
 	if o.On < c.Start {
 		return best, false
@@ -236,8 +238,12 @@ func (sc *scheduled) occasion(c *Case, o Occasion) (best DueDate, ok bool) {
 			}
 		}
 		within, asked := r.answers(o)
-		if due := o.On.Add(within); asked && (!ok || due < best.Due) {
-			best, ok = DueDate{Task: r.Task, Plan: r.ID, Cause: o.Cause, Last: NoDay, Opens: o.On, Due: due, Pauses: c.Pauses}, true
+		opens := o.On
+		if slices.Contains(o.Before, r.Task) {
+			opens++
+		}
+		if due := opens.Add(within); asked && (!ok || due < best.Due) {
+			best, ok = DueDate{Task: r.Task, Plan: r.ID, Cause: o.Cause, Last: NoDay, Opens: opens, Due: due, Pauses: c.Pauses}, true
 		}
 	}
 	best.Due = resumed(best.Due, c.Pauses)

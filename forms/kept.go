@@ -97,7 +97,7 @@ func (t *Trace) Take(test Test) {
 // meet closes what a test of a day meets, and what had passed before it unmet.
 func (t *Trace) meet(day Day) {
 	for _, o := range t.c.Occasions {
-		if d, ok := t.sc.occasion(&t.c, o); ok && o.On <= day && (t.last == NoDay || o.On > t.last) {
+		if d, ok := t.sc.occasion(&t.c, o); ok && d.Opens <= day && (t.last == NoDay || d.Opens > t.last) {
 			t.close(d, day)
 		}
 	}
@@ -132,9 +132,37 @@ func (t *Trace) tried(d DueDate) bool {
 // Next gives the date the task waits for; ok is false where the device was taken out of use, and then what it had missed
 // by that day is among Done.
 func (t *Trace) Next() (d DueDate, ok bool) {
-	d = t.sc.next(&t.c, t.last)
+	return t.knocked(t.sc.next(&t.c, t.last)), t.c.Ended == NoDay
+}
+
+// Open gives the dates from which all that is open follows (DueDate.Unmet): each occasion that was not met, and what the
+// plans ask for next. next is what Next gave: where nothing happened it is all there is.
+func (t *Trace) Open(next DueDate) []DueDate {
+	if len(t.c.Occasions) == 0 {
+		return []DueDate{next}
+	}
+	var out []DueDate
+	for _, o := range t.c.Occasions {
+		if d, ok := t.sc.occasion(&t.c, o); ok && (t.last == NoDay || d.Opens > t.last) {
+			out = append(out, t.knocked(d))
+		}
+	}
+	return append(out, t.knocked(t.sc.planned(&t.c, t.last)))
+}
+
+// knocked says of a date and the periods after it in which of them somebody stood before a closed door.
+func (t *Trace) knocked(d DueDate) DueDate {
 	d.Tried = t.tried(d)
-	return d, t.c.Ended == NoDay
+	if len(t.shut) == 0 || d.Every.Zero() {
+		return d
+	}
+	newest := slices.Max(t.shut)
+	for next, _ := d.following(); next.Opens <= newest; next, _ = next.following() {
+		if t.tried(next) {
+			d.Shut = append(d.Shut, next.Due)
+		}
+	}
+	return d
 }
 
 // End closes what a device taken out of use had missed by then.
@@ -160,15 +188,11 @@ func (t *Trace) missing(on Day) []Obligation {
 // one that is asked for next.
 func (t *Trace) Waiting(on Day) []Obligation {
 	var out []Obligation
-	for _, o := range t.c.Occasions {
-		if d, ok := t.sc.occasion(&t.c, o); ok && o.On <= on && (t.last == NoDay || o.On > t.last) {
-			d.Tried = t.tried(d)
+	next, _ := t.Next()
+	for _, seed := range t.Open(next) {
+		for d := range seed.Unmet(on) {
 			out = append(out, Obligation{d, NoDay})
 		}
-	}
-	for d := range t.sc.planned(&t.c, t.last).Unmet(on) {
-		d.Tried = t.tried(d)
-		out = append(out, Obligation{d, NoDay})
 	}
 	return out
 }

@@ -95,6 +95,8 @@ func TestTrace_WhatBecameOfDates(t *testing.T) {
 		{"within the grace: the month before and its own", graced, at("2026-02-03"), "2026-02-03", "2026-01-31 in-grace, 2026-02-28 in-time, 2026-03-31 open"},
 		{"in grace and not done: both are open", graced, nil, "2026-02-03", "2026-01-31 open, 2026-02-28 open"},
 		{"grace is over", graced, nil, "2026-02-08", "2026-01-31 missed, 2026-02-28 open"},
+		{"closed doors in two of three months that went by", monthly, at("2026-01-20", "locked 2026-02-11", "locked 2026-04-03"), "2026-05-01",
+			"2026-01-31 in-time, 2026-02-28 no-access, 2026-03-31 missed, 2026-04-30 no-access, 2026-05-31 open"},
 		{"a closed door in February", monthly, at("2026-01-20", "locked 2026-02-11"), "2026-03-31",
 			"2026-01-31 in-time, 2026-02-28 no-access, 2026-03-31 open"},
 		{"rolling: in time, late, open", rolling, at("2026-04-09", "2026-07-20"), "2026-07-21",
@@ -138,6 +140,8 @@ func TestOccasion_AsksAtOnce(t *testing.T) {
 		{"within a week, where the plan says so", []*Plan{listed}, Occasion{Cause: Storm, On: day(t, "2026-03-10")}, "2026-03-09", "button 2026-03-17 storm"},
 		{"a plan that lists its causes answers to no other", []*Plan{listed}, Occasion{Cause: Damage, On: day(t, "2026-03-10")}, "2026-03-09", "button 2026-04-30 "},
 		{"an occasion before the device came", []*Plan{button}, Occasion{Cause: Storm, On: day(t, "2025-03-10")}, "", "button 2026-01-31 "},
+		{"a test of that day from before it happened does not meet it", []*Plan{button, measured}, Occasion{Cause: Repaired, On: day(t, "2026-03-10"), Before: []string{"button"}}, "2026-03-10",
+			"button 2026-03-11 repaired, instrument 2027-03-10 "},
 		{"the earlier date stands", []*Plan{button}, Occasion{Cause: Storm, On: day(t, "2026-06-10")}, "2026-03-09", "button 2026-04-30 "},
 	} {
 		last := NoDay
@@ -150,6 +154,17 @@ func TestOccasion_AsksAtOnce(t *testing.T) {
 		}
 		if got := strings.Join(got, ", "); got != c.want {
 			t.Errorf("%s: got %q, want %q", c.name, got, c.want)
+		}
+	}
+	every := plan(OnceEachPeriod, "P1M")
+	every.Occasions = map[string]string{Installed: "P0D", Repaired: "P0D", Damage: "P0D", Storm: "P0D", OutOfTolerance: "P0D"}
+	for _, cause := range Causes() {
+		c := Case{Start: day(t, "2026-01-10"), Ended: NoDay, Occasions: []Occasion{{Cause: cause, On: day(t, "2026-03-10")}}}
+		for p, want := range map[*Plan]bool{every: true, button: cause != Installed && cause != OutOfTolerance} {
+			d := schedules(t, p).Dates(c, func(string) Day { return day(t, "2026-03-02") })[0]
+			if got := d.Due.String() == "2026-03-10" && d.State(d.Due+1) == Overdue; got != want {
+				t.Errorf("%s, causes listed %t: due %s", cause, p == every, d.Due)
+			}
 		}
 	}
 	got := followed(schedules(t, button), Case{Start: day(t, "2026-01-10"), Ended: NoDay, Occasions: []Occasion{{Cause: Storm, On: day(t, "2026-02-10")}}},

@@ -19,6 +19,9 @@ type Occasion struct {
 	Cause string
 	On    Day
 	Tasks []string // empty: every task whose plan answers to the cause
+	// Before are the tasks that were tested on that day before it happened, and not after: a test of the next day or later
+	// meets it there.
+	Before []string
 }
 
 // answers says within how long a plan's task is asked for after an occasion; ok is false where it is not. A plan that says

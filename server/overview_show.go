@@ -43,7 +43,8 @@ type siteRow struct {
 type decision struct {
 	Verdict                            mark
 	Href, Spot, Tag, What, Where, When string
-	Late                               bool // it may still hurt somebody
+	Bring                              string // parts its repair needs
+	Late                               bool   // it may still hurt somebody
 }
 
 func (s *Server) overviewShow(c echo.Context) error {
@@ -141,14 +142,9 @@ func (s *Server) decide(v *store.View, sites map[string]store.Site, view *overvi
 		return err
 	}
 	for i := range list[:min(len(list), decideShown)] {
-		d, site := &list[i], sites[list[i].Site]
-		row, err := s.defectRow(v, d, site)
+		one, err := s.decisionOf(v, &list[i], sites[list[i].Site])
 		if err != nil {
 			return err
-		}
-		one := decision{Verdict: row.Verdict, Href: row.Href, Spot: row.Spot, Tag: row.Tag, What: row.What, Where: row.Where, When: row.State}
-		if d.InUse() {
-			one.When, one.Late = k.say("office.defect.in_use_for", "age", row.Age), true
 		}
 		view.Decide = append(view.Decide, one)
 	}
@@ -156,6 +152,20 @@ func (s *Server) decide(v *store.View, sites map[string]store.Site, view *overvi
 		view.More = []link{{Href: "/defects", Text: k.say("office.overview.more_failed", "n", count(len(list)))}}
 	}
 	return nil
+}
+
+// decisionOf says of a defect what failed, where, and what has been done about it.
+func (s *Server) decisionOf(v *store.View, d *store.Defect, site store.Site) (decision, error) {
+	k := s.ink()
+	row, err := s.defectRow(v, d, site)
+	one := decision{Verdict: row.Verdict, Href: row.Href, Spot: row.Spot, Tag: row.Tag, What: row.What, Where: row.Where, When: row.State}
+	if d.InUse() {
+		one.When, one.Late = k.say("office.defect.in_use_for", "age", row.Age), true
+	}
+	if len(d.Parts) > 0 {
+		one.Bring = k.say("office.overview.bring", "parts", strings.Join(d.Parts, ", "))
+	}
+	return one, err
 }
 
 // whatFailed says in words what an entry failed by: the readings outside their limits with the limits, at most three.

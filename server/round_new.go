@@ -28,7 +28,8 @@ type visitPage struct {
 	Ready                       bool // a site is chosen
 	Facts                       []string
 	Rounds                      []visitRound
-	Failed                      []stopRow
+	Defects                     []decision
+	Left                        string // how many more defects there are
 	Tell                        []string
 	Action, Submit              string
 	Hidden                      []hidden
@@ -139,7 +140,7 @@ func (s *Server) buildVisit(c echo.Context, v *store.View, view *visitPage) erro
 	view.Ready = true
 	view.Buildings = namesOf(ask.Building, k.say("office.visit.all_buildings"), visit.Buildings)
 	view.Floors = namesOf(ask.Floor, k.say("office.visit.all_floors"), visit.Floors)
-	return s.fillVisit(c, ask, visit, view)
+	return s.fillVisit(c, v, ask, visit, view)
 }
 
 func namesOf(chosen, all string, names []string) []option {
@@ -151,7 +152,7 @@ func namesOf(chosen, all string, names []string) []option {
 }
 
 // fillVisit says what waits, then offers the rounds.
-func (s *Server) fillVisit(c echo.Context, ask store.VisitAsk, visit store.Visit, view *visitPage) error {
+func (s *Server) fillVisit(c echo.Context, v *store.View, ask store.VisitAsk, visit store.Visit, view *visitPage) error {
 	k, today := s.ink(), s.today(visit.Site)
 	view.Heading = k.say("office.visit.fact", "site", visit.Site.Name, "day", k.longDay(ask.Day), "tests", k.say("office.visit.tests", "n", len(visit.Stops)))
 	view.Under = k.say("office.visit.under", "rounds", k.say("office.visit.rounds", "n", len(visit.Starts)), "hours", cmp.Or(k.minutes(int(visit.Minutes+0.5)), k.say("office.round.min", "n", 0)))
@@ -161,7 +162,7 @@ func (s *Server) fillVisit(c echo.Context, ask store.VisitAsk, visit store.Visit
 		}
 	}
 	say("overdue", visit.Overdue)
-	say("failed", len(visit.Failed))
+	say("failed", len(visit.Defects))
 	say("on_rounds", visit.OnRounds)
 	for _, i := range visit.Expired {
 		view.Facts = append(view.Facts, k.say("office.visit.expired", "name", joined(i.Name, i.Serial), "day", k.near(i.CalibrationDue, today)))
@@ -171,9 +172,16 @@ func (s *Server) fillVisit(c echo.Context, ask store.VisitAsk, visit store.Visit
 		missing += int(g.To-g.From) + 1
 	}
 	say("gaps", missing)
-	for _, d := range visit.Failed {
-		task, last, _ := newestFail(d)
-		view.Failed = append(view.Failed, stopRow{Href: "/devices/" + d.ID, Spot: s.spot(d), Tag: k.tag(d.Tag), Where: s.place(d.Place), Task: k.named("task", task), State: k.verdict(last.Result), Said: k.near(last.Day, today)})
+	for i := range visit.Defects[:min(len(visit.Defects), decideShown)] {
+		one, err := s.decisionOf(v, &visit.Defects[i], visit.Site)
+		if err != nil {
+			return err
+		}
+		one.Where = s.place(visit.Defects[i].Device.Place)
+		view.Defects = append(view.Defects, one)
+	}
+	if len(visit.Defects) > decideShown {
+		view.Left = k.say("office.overview.more_failed", "n", count(len(visit.Defects)))
 	}
 	view.Pace = s.paceLine(visit.Pace)
 	view.None = k.say("office.visit.nothing", "day", k.day(ask.Until))

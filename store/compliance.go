@@ -95,7 +95,7 @@ func (r *complianceReader) read() error {
 }
 
 func (r *complianceReader) device(n uint32, w *work) error {
-	if w.start == forms.NoDay || w.kind == "" || w.start > r.on || r.ask.Known != forms.NoDay && w.came > r.ask.Known {
+	if w.start == forms.NoDay || w.kind == "" || r.ask.Known != forms.NoDay && (w.start > r.on || w.came > r.ask.Known) {
 		return nil
 	}
 	all, err := r.entries(n, w)
@@ -108,7 +108,11 @@ func (r *complianceReader) device(n uint32, w *work) error {
 	}
 	schedule := r.rules.schedule(r.sv.ord, r.v.orgLog(), w.kind)
 	never := func(string) forms.Day { return forms.NoDay }
-	for _, t := range schedule.Follow(until(c, r.on), never) {
+	now := c // as the site's own sums have it, what lies ahead included
+	if r.ask.Known != forms.NoDay {
+		now = until(c, r.on)
+	}
+	for _, t := range schedule.Follow(now, never) {
 		takeUntil(&t, all, r.on)
 		for _, o := range t.Done {
 			r.take(w.kind, o)
@@ -218,11 +222,11 @@ func (r *complianceReader) caseOf(n uint32, w *work) (forms.Case, error) {
 	if r.ask.Known == forms.NoDay {
 		return c, nil
 	}
-	own, err := r.knownOf(&saidOfWholeSite{w.occasions, w.pauses})
+	own, err := r.knownOf(&saidOfWholeSite{append(w.occasions, w.repairs...), w.pauses})
 	if err != nil {
 		return c, err
 	}
-	w.occasions, w.pauses = own.occasions, own.pauses
+	w.occasions, w.repairs, w.pauses = own.occasions, nil, own.pauses
 	c = w.caseOf(r.whole)
 	if c.Ended != forms.NoDay {
 		known, err := r.retirementKnown(n)

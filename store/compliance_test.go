@@ -1,8 +1,11 @@
 package store
 
 import (
+	"context"
 	"testing"
 	"time"
+
+	"pgregory.net/rapid"
 
 	"tripwell/forms"
 )
@@ -90,4 +93,66 @@ func TestCompliance_AsKnownThenAndNow(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
+}
+
+// The strip of a site is read from sums of its own, the table from every device's tests: months that are missed one after
+// another, occasions nobody met, closed doors and pauses must come to the same in both, on that day and on later ones.
+func TestStrip_IsTheTable(t *testing.T) {
+	if testing.Short() {
+		t.Skip("long property run")
+	}
+	rapid.Check(t, func(rt *rapid.T) {
+		r := newRig(t)
+		site, lines := year(r, rt)
+		now := r.clock().Add(time.Hour)
+		dir := t.TempDir()
+		for later := range 3 {
+			s, err := Open(dir, Options{Now: func() time.Time { return now }, Create: later == 0})
+			if err != nil {
+				rt.Fatal(err)
+			}
+			batch := make([]Incoming, len(lines))
+			for i := range lines {
+				batch[i].Record = lines[i]
+			}
+			if _, err := s.Push(context.Background(), Sender{Owner: true}, batch); err != nil {
+				rt.Fatal(err)
+			}
+			lines = nil
+			err = s.View(all, func(v *View) error {
+				sv, err := v.open(site)
+				if err != nil {
+					return err
+				}
+				last := forms.MonthOf(sv.today)
+				sums, err := v.SiteSums(site, sv.today)
+				if err != nil {
+					return err
+				}
+				table, err := v.Compliance(ComplianceAsk{Site: site, From: forms.MonthStart(last - 11), To: forms.MonthStart(last+1) - 1, Known: forms.NoDay})
+				if err != nil {
+					return err
+				}
+				want := map[int32]forms.Count{}
+				for _, row := range table.Rows {
+					c := want[row.Month]
+					c.Join(row.Count)
+					want[row.Month] = c
+				}
+				for _, m := range sums.Year {
+					if m.Count != want[m.Month] {
+						rt.Errorf("on %s, month %d: the strip says %+v, the table %+v", sv.today, m.Month%12+1, m.Count, want[m.Month])
+					}
+				}
+				return nil
+			})
+			if err != nil {
+				rt.Fatal(err)
+			}
+			if err := s.Close(); err != nil {
+				rt.Fatal(err)
+			}
+			now = now.Add(time.Duration(rapid.IntRange(20, 90).Draw(rt, "days later")) * 24 * time.Hour)
+		}
+	})
 }

@@ -17,7 +17,7 @@ import (
 
 // modelVersion names the shape and the rules of the read models; it grows with every change of either. A test holds it
 // against what the models of a fixed book hash to.
-const modelVersion = 4
+const modelVersion = 5
 
 // modelMark is what a file says of its read models: their rows also keep results, so another judge makes other models.
 const modelMark = modelVersion<<32 | forms.JudgeVersion
@@ -39,6 +39,7 @@ type fold struct {
 	works     map[workID]*work
 	entries   map[id16]uint64 // entries of this group, which the book's index does not know yet
 	sums      map[string]int64
+	also      map[string]int64 // by key of m_also
 	tallies   map[string]*tally
 	flaws     map[workID]bool                // devices whose defects are to be computed
 	keeps     map[string]map[int32]monthKept // by key of m_keep
@@ -78,7 +79,7 @@ func newFold(tx *bbolt.Tx) *fold {
 	f := &fold{
 		tx: tx, logs: map[string]*modelLog{}, ords: map[uint32]*modelLog{}, rows: map[string]*overlay{},
 		things: map[thingID]uint32{}, registers: map[registerID]*register{}, works: map[workID]*work{},
-		entries: map[id16]uint64{}, sums: map[string]int64{}, tallies: map[string]*tally{}, flaws: map[workID]bool{}, keeps: map[string]map[int32]monthKept{},
+		entries: map[id16]uint64{}, sums: map[string]int64{}, also: map[string]int64{}, tallies: map[string]*tally{}, flaws: map[workID]bool{}, keeps: map[string]map[int32]monthKept{},
 	}
 	f.rules, f.grants = newRules(f.on(bktRule).list), newGrants(f.on(bktGranted).list)
 	f.rules.said = func(bucket, prefix []byte) []row { return f.on(bucket).list(prefix) }

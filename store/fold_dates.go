@@ -12,7 +12,7 @@ func (f *fold) reckon(l *modelLog, n uint32, w *work) error {
 	for i := range w.tasks {
 		w.tasks[i].kept = nil
 	}
-	w.dates = nil
+	w.dates, w.also = nil, nil
 	if w.start == forms.NoDay || w.kind == "" {
 		return nil
 	}
@@ -33,12 +33,17 @@ func (f *fold) reckon(l *modelLog, n uint32, w *work) error {
 
 // reckonOn does the same after one more entry, which is newer than all that its tasks have had.
 func (f *fold) reckonOn(l *modelLog, w *work, p past, before map[string]forms.Day) {
-	dates := w.dates
-	w.dates = nil
+	dates, also := w.dates, w.also
+	w.dates, w.also = nil, nil
 	for i, t := range f.follow(l, w, func(task string) forms.Day { return w.metBefore(task, before) }) {
 		test, ok := p.test(t.Task())
 		if !ok {
 			w.dates = append(w.dates, dates[i])
+			for _, a := range also {
+				if a.Task == t.Task() {
+					w.also = append(w.also, a)
+				}
+			}
 			continue
 		}
 		since := w.metBefore(t.Task(), before)
@@ -61,8 +66,18 @@ func (w *work) settle(t *forms.Trace, before []forms.Kept) {
 	if kept := t.Kept(); len(kept)+len(before) > 0 {
 		w.task(t.Task()).kept = append(slices.Clip(before), kept...)
 	}
-	if d, ok := t.Next(); ok {
-		w.dates = append(w.dates, d)
+	d, ok := t.Next()
+	if !ok {
+		return
+	}
+	w.dates = append(w.dates, d)
+	open := t.Open(d)
+	if len(open) == 1 { // no occasion: it is the next
+		return
+	}
+	w.also = append(w.also, alsoOpen{d, -1})
+	for _, o := range open {
+		w.also = append(w.also, alsoOpen{o, 1})
 	}
 }
 
@@ -152,7 +167,7 @@ func (w *work) metBefore(task string, before map[string]forms.Day) forms.Day {
 
 // before is what the indexes hold for a row as it stands.
 func (w *work) before() workBefore {
-	b := workBefore{dates: w.dates, fail: w.failing()}
+	b := workBefore{dates: w.dates, also: w.also, fail: w.failing()}
 	for i := range w.tasks {
 		if t := &w.tasks[i]; len(t.kept) > 0 {
 			if b.kept == nil {
@@ -206,6 +221,12 @@ func (f *fold) packDates(key workID, w *work) {
 			f.on(bktDue).put(dueKey(key.site, d.Due, key.n, d.Task), []byte{})
 		}
 		f.sumDate(key.site, d, 1)
+	}
+	for _, a := range w.was.also {
+		f.also[string(sumKey(key.site, a.DueDate))] -= a.by
+	}
+	for _, a := range w.also {
+		f.also[string(sumKey(key.site, a.DueDate))] += a.by
 	}
 }
 

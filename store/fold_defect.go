@@ -2,6 +2,7 @@ package store
 
 import (
 	"bytes"
+	"cmp"
 	"encoding/json"
 	"slices"
 	"strings"
@@ -45,6 +46,80 @@ func (f *fold) defectSaid(r *record.Record) error {
 		return err
 	}
 	return f.factSaid(l, f.thing(l, ofDevice, parseID(body.Device)))
+}
+
+// repaired takes a device's repairs into its dates: each asks for its tests at once.
+func (f *fold) repaired(l *modelLog, n uint32) error {
+	facts := f.on(bktFact).get(workKey(l.ord, n))
+	if facts == nil {
+		return nil
+	}
+	w, err := f.work(l.ord, n)
+	if err != nil {
+		return err
+	}
+	now, err := f.repairsOf(l, n, w, facts)
+	if err != nil || slices.EqualFunc(now, w.repairs, occasion.same) {
+		return err
+	}
+	w.repairs, w.dirty = now, true
+	return f.reckon(l, n, w)
+}
+
+// repairsOf gives the repairs among what was said of a device's defects as occasions, by record. A task that was tested on the
+// day of a repair before it, and not after, still waits for a test.
+func (f *fold) repairsOf(l *modelLog, n uint32, w *work, facts []byte) ([]occasion, error) {
+	zone, err := f.zone(l)
+	if err != nil {
+		return nil, err
+	}
+	all, err := f.allPast(l.ord, n, w)
+	if err != nil {
+		return nil, err
+	}
+	var out []occasion
+	for u := (unpacker{b: facts}); len(u.b) > 0; {
+		seq := u.uint()
+		if u.bad {
+			return nil, errPacked
+		}
+		r, st, _, err := readBook(f.tx, seq)
+		if err != nil {
+			return nil, err
+		}
+		if r.Kind != "defect.repaired" {
+			continue
+		}
+		o := occasion{parseID(r.ID), forms.Occasion{Cause: forms.Repaired, On: forms.DayOf(happened(r, st).In(zone))}}
+		if o.Before, err = f.testedBefore(r, o.On, all); err != nil {
+			return nil, err
+		}
+		out = append(out, o)
+	}
+	slices.SortFunc(out, func(a, b occasion) int { return slices.Compare(a.record[:], b.record[:]) })
+	return out, nil
+}
+
+// testedBefore names the tasks met on the day of a record before it and not after.
+func (f *fold) testedBefore(r *record.Record, day forms.Day, all []past) ([]string, error) {
+	var before, after []string
+	for _, p := range all {
+		if p.day != day || len(p.met) == 0 {
+			continue
+		}
+		e, _, _, err := readBook(f.tx, p.seq)
+		if err != nil {
+			return nil, err
+		}
+		if cmp.Or(cmp.Compare(e.Clock, r.Clock), cmp.Compare(e.ID, r.ID)) < 0 {
+			before = append(before, p.met...)
+		} else {
+			after = append(after, p.met...)
+		}
+	}
+	before = slices.DeleteFunc(before, func(task string) bool { return slices.Contains(after, task) })
+	slices.Sort(before)
+	return slices.Compact(before), nil
 }
 
 // defectBody is the body of every defect.* record; each kind has some of its members.
@@ -117,6 +192,9 @@ func (f *fold) packDefects() error {
 	for key := range f.flaws {
 		l, err := f.logOf(key.site)
 		if err != nil {
+			return err
+		}
+		if err := f.repaired(l, key.n); err != nil {
 			return err
 		}
 		if err := f.packFlaws(l, key.n); err != nil {

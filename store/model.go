@@ -20,7 +20,8 @@ import (
 //	m_granted person 16 | time 8 | clock 8 | record 16 → JSON of accessFact: what that person may do from then on
 //	m_change person 16 | first received 8 | seq 8 → site 4 | entry 16: something that person said of an entry
 //	m_due    site 4 | day 4 | n 4 | task → nothing: this device has this date
-//	m_sum    site 4 | day 4 | grace 2 | period 2 | task | pauses → how many such dates; under site 0 those of all sites together
+//	m_sum    site 4 | day 4 | grace 2 | period 2 | task | pauses, closed doors → how many such dates; under site 0 those of all sites together
+//	m_also   as m_sum                   → what is open beside or instead of those dates, as they are counted by month; may be negative
 //	m_keep   site 4 | task              → by month, what became of the dates that are done with
 //	m_occ    site 4 | record 16         → an occasion: cause, day, tasks, how many devices (0 = the whole site)
 //	m_pause  site 4 | pause 16          → the record that stands, days, reason, devices (none = the whole site)
@@ -51,6 +52,7 @@ var (
 	bktChange   = []byte("m_change")
 	bktDue      = []byte("m_due")
 	bktSum      = []byte("m_sum")
+	bktAlso     = []byte("m_also")
 	bktKeep     = []byte("m_keep")
 	bktOccasion = []byte("m_occ")
 	bktPause    = []byte("m_pause")
@@ -71,7 +73,7 @@ var (
 	bktTodo     = []byte("m_todo")
 )
 
-var modelBuckets = [][]byte{bktSiteLog, bktSite, bktThing, bktRegister, bktWork, bktHistory, bktSaid, bktGranted, bktChange, bktDue, bktSum, bktKeep, bktOccasion, bktPause,
+var modelBuckets = [][]byte{bktSiteLog, bktSite, bktThing, bktRegister, bktWork, bktHistory, bktSaid, bktGranted, bktChange, bktDue, bktSum, bktAlso, bktKeep, bktOccasion, bktPause,
 	bktFail, bktFact, bktDefect, bktFlaw, bktOpen, bktTally, bktBind, bktTag, bktPlace, bktCircuit, bktFeed, bktCode, bktRound, bktRule, bktTodo}
 
 // Types of things and of rules.

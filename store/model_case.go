@@ -22,20 +22,28 @@ type pause struct {
 	devices []id16 // none: the whole site; rows of devices do not hold them
 }
 
+func (o occasion) same(p occasion) bool {
+	return o.record == p.record && o.Cause == p.Cause && o.On == p.On && slices.Equal(o.Tasks, p.Tasks) && slices.Equal(o.Before, p.Before)
+}
+
 func (p *packer) occasion(o occasion) {
 	p.id(o.record)
 	p.text(o.Cause)
 	p.day(o.On)
-	p.uint(uint64(len(o.Tasks)))
-	for _, t := range o.Tasks {
-		p.task(t)
+	for _, tasks := range [][]string{o.Tasks, o.Before} {
+		p.uint(uint64(len(tasks)))
+		for _, t := range tasks {
+			p.task(t)
+		}
 	}
 }
 
 func (u *unpacker) occasion() (o occasion) {
 	o.record, o.Cause, o.On = u.id(), u.text(), u.day()
-	for n := u.uint(); n > 0 && !u.bad; n-- {
-		o.Tasks = append(o.Tasks, u.task())
+	for _, tasks := range []*[]string{&o.Tasks, &o.Before} {
+		for n := u.uint(); n > 0 && !u.bad; n-- {
+			*tasks = append(*tasks, u.task())
+		}
 	}
 	return o
 }
@@ -77,9 +85,11 @@ func (p *packer) saidOfDevice(w *work) {
 		p.id(s.subject)
 		p.pause(s)
 	}
-	p.uint(uint64(len(w.occasions)))
-	for _, o := range w.occasions {
-		p.occasion(o)
+	for _, list := range [][]occasion{w.occasions, w.repairs} {
+		p.uint(uint64(len(list)))
+		for _, o := range list {
+			p.occasion(o)
+		}
 	}
 }
 
@@ -87,8 +97,10 @@ func (u *unpacker) saidOfDevice(w *work) {
 	for n := u.uint(); n > 0 && !u.bad; n-- {
 		w.pauses = append(w.pauses, u.pause(u.id()))
 	}
-	for n := u.uint(); n > 0 && !u.bad; n-- {
-		w.occasions = append(w.occasions, u.occasion())
+	for _, list := range []*[]occasion{&w.occasions, &w.repairs} {
+		for n := u.uint(); n > 0 && !u.bad; n-- {
+			*list = append(*list, u.occasion())
+		}
 	}
 }
 
@@ -141,8 +153,8 @@ func wayName(b []byte) string {
 // caseOf is what a device's dates are counted from: what names it, and what is said of its whole site.
 func (w *work) caseOf(site *saidOfWholeSite) forms.Case {
 	c := forms.Case{Start: w.start, Way: w.way, Ended: w.ended}
-	if len(w.occasions)+len(site.occasions) > 0 {
-		c.Occasions = occasionsOf(w.occasions, site.occasions)
+	if len(w.occasions)+len(w.repairs)+len(site.occasions) > 0 {
+		c.Occasions = occasionsOf(w.occasions, w.repairs, site.occasions)
 	}
 	if len(w.pauses)+len(site.pauses) > 0 {
 		c.Pauses = pausesOf(w.pauses, site.pauses)
@@ -158,7 +170,7 @@ func occasionsOf(lists ...[]occasion) (out []forms.Occasion) {
 		}
 	}
 	order := func(a, b forms.Occasion) int {
-		return cmp.Or(cmp.Compare(a.On, b.On), cmp.Compare(a.Cause, b.Cause), slices.Compare(a.Tasks, b.Tasks))
+		return cmp.Or(cmp.Compare(a.On, b.On), cmp.Compare(a.Cause, b.Cause), slices.Compare(a.Tasks, b.Tasks), slices.Compare(a.Before, b.Before))
 	}
 	slices.SortFunc(out, order)
 	return slices.CompactFunc(out, func(a, b forms.Occasion) bool { return order(a, b) == 0 })

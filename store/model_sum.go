@@ -24,10 +24,13 @@ func sumKey(site uint32, d forms.DueDate) []byte {
 		period |= 0x8000
 	}
 	b = append(binary.BigEndian.AppendUint16(b, period), d.Task...)
-	if len(d.Pauses) > 0 {
-		b = append(b, 0)
+	if len(d.Pauses)+len(d.Shut) > 0 {
+		b = binary.BigEndian.AppendUint16(append(b, 0), uint16(len(d.Pauses)))
 		for _, p := range d.Pauses {
 			b = putDay(putDay(b, p.From), p.Until)
+		}
+		for _, day := range d.Shut {
+			b = putDay(b, day)
 		}
 	}
 	return b
@@ -47,10 +50,17 @@ func readSum(key []byte) (d forms.DueDate) {
 	} else {
 		d.Every.Months = int(period)
 	}
-	task, pauses, _ := bytes.Cut(key[12:], []byte{0})
+	task, tail, more := bytes.Cut(key[12:], []byte{0})
 	d.Task, d.Last, d.Opens = taskName(task), forms.NoDay, d.Due
-	for ; len(pauses) >= 8; pauses = pauses[8:] {
-		d.Pauses = append(d.Pauses, forms.Pause{From: readDay(pauses), Until: readDay(pauses[4:])})
+	if !more || len(tail) < 2 {
+		return d
+	}
+	pauses := int(binary.BigEndian.Uint16(tail))
+	for tail = tail[2:]; pauses > 0 && len(tail) >= 8; tail, pauses = tail[8:], pauses-1 {
+		d.Pauses = append(d.Pauses, forms.Pause{From: readDay(tail), Until: readDay(tail[4:])})
+	}
+	for ; len(tail) >= 4; tail = tail[4:] {
+		d.Shut = append(d.Shut, readDay(tail))
 	}
 	return d
 }

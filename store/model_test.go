@@ -160,6 +160,9 @@ func year(r *rig, t *rapid.T) (site string, lines [][]byte) {
 	site = newID(r.clock())
 	put := func(kind, subject string, body any) {
 		r.pass(time.Duration(1+draw(400, "minutes")) * time.Minute)
+		if draw(12, "a while") == 0 {
+			r.pass(time.Duration(5+draw(40, "days")) * 24 * time.Hour)
+		}
 		lines = append(lines, phones[draw(2, "phone")].make(kind, site, subject, body))
 	}
 	set := func(pairs ...any) map[string]any {
@@ -264,7 +267,7 @@ func year(r *rig, t *rapid.T) (site string, lines [][]byte) {
 			put("entry.imported", d, map[string]any{"form": tasks[draw(4, "form")], "day": fmt.Sprintf("2026-0%d-15", 1+draw(9, "month")), "result": forms.Results()[draw(6, "result")]})
 			entries = append(entries, idOfLine(t, lines))
 		case 10:
-			body := map[string]any{"cause": forms.Causes()[draw(5, "cause")], "on": fmt.Sprintf("2026-1%d-%02d", draw(2, "occasion month"), 1+draw(28, "occasion day"))}
+			body := map[string]any{"cause": forms.Causes()[draw(5, "cause")], "on": fmt.Sprintf("2026-1%d-%02d", draw(3, "occasion month"), 1+draw(28, "occasion day"))}
 			if draw(3, "whole site") > 0 {
 				body["devices"] = []string{d}
 			}

@@ -20,10 +20,12 @@ type work struct {
 	flawed, follows bool
 	tasks           []taskState
 	dates           []forms.DueDate // by task
+	also            []alsoOpen      // how what is open differs from those dates
 	past            []past          // the newest entries, in order of arrival
 	older           uint64          // how many entries went to m_hist
 
 	occasions []occasion // that name the device, by record
+	repairs   []occasion // its defect.repaired, by record
 	pauses    []pause    // that name the device, by pause
 
 	was   workBefore
@@ -33,6 +35,7 @@ type work struct {
 // workBefore is what the indexes hold for the row as stored.
 type workBefore struct {
 	dates []forms.DueDate
+	also  []alsoOpen
 	fail  forms.Day
 	kept  map[string][]forms.Kept // by task
 }
@@ -208,6 +211,56 @@ func (u *unpacker) mark() (m mark) {
 	return m
 }
 
+// alsoOpen is a date that is open beside the one that comes next, or, with -1, one that stands in no month of its own: where
+// an occasion was not met, it and what the plans ask for are open both, and only the earlier comes next.
+type alsoOpen struct {
+	forms.DueDate
+	by int64
+}
+
+func (p *packer) date(d forms.DueDate) {
+	p.task(d.Task)
+	p.text(d.Plan)
+	p.text(d.Cause)
+	p.day(d.Due)
+	p.int(int64(d.Due - d.Opens))
+	p.int(int64(d.Until - d.Due))
+	p.day(d.Last)
+	p.int(int64(d.Every.Months))
+	p.int(int64(d.Every.Days))
+	p.uint(uint64(len(d.Shut))<<1 | uint64(bit(d.Tried)))
+	for _, day := range d.Shut {
+		p.day(day)
+	}
+}
+
+func (u *unpacker) date() forms.DueDate {
+	d := forms.DueDate{Task: u.task(), Plan: u.text(), Cause: u.text(), Due: u.day()}
+	d.Opens = d.Due - forms.Day(u.int())
+	d.Until = d.Due + forms.Day(u.int())
+	d.Last = u.day()
+	d.Every = forms.Interval{Months: int(u.int()), Days: int(u.int())}
+	n := u.uint()
+	d.Tried = n&1 != 0
+	for n >>= 1; n > 0 && !u.bad; n-- {
+		d.Shut = append(d.Shut, u.day())
+	}
+	return d
+}
+
+// pausing gives all dates of a row the pauses that were kept once.
+func (w *work) pausing(pauses []forms.Pause) {
+	if len(pauses) == 0 {
+		return
+	}
+	for i := range w.dates {
+		w.dates[i].Pauses = pauses
+	}
+	for i := range w.also {
+		w.also[i].Pauses = pauses
+	}
+}
+
 func (w *work) pack() []byte {
 	p := packer{make([]byte, 0, 256+12*len(w.past))}
 	flags := byte(0)
@@ -224,19 +277,15 @@ func (w *work) pack() []byte {
 	p.text(w.way)
 	p.uint(uint64(len(w.dates)))
 	for _, d := range w.dates {
-		p.task(d.Task)
-		p.text(d.Plan)
-		p.text(d.Cause)
-		p.day(d.Due)
-		p.int(int64(d.Due - d.Opens))
-		p.int(int64(d.Until - d.Due))
-		p.day(d.Last)
-		p.int(int64(d.Every.Months))
-		p.int(int64(d.Every.Days))
-		p.bool(d.Tried)
+		p.date(d)
 	}
 	if len(w.dates) > 0 {
 		p.spans(w.dates[0].Pauses)
+		p.uint(uint64(len(w.also)))
+	}
+	for _, a := range w.also {
+		p.int(a.by)
+		p.date(a.DueDate)
 	}
 	p.uint(uint64(len(w.tasks)))
 	for _, t := range w.tasks {
@@ -361,20 +410,14 @@ func unpackWork(b []byte, entries bool) (*work, error) {
 	}
 	w.dates = make([]forms.DueDate, 0, n)
 	for i := uint64(0); i < n && !u.bad; i++ {
-		d := forms.DueDate{Task: u.task(), Plan: u.text(), Cause: u.text(), Due: u.day()}
-		d.Opens = d.Due - forms.Day(u.int())
-		d.Until = d.Due + forms.Day(u.int())
-		d.Last = u.day()
-		d.Every = forms.Interval{Months: int(u.int()), Days: int(u.int())}
-		d.Tried = u.byte() == 1
-		w.dates = append(w.dates, d)
+		w.dates = append(w.dates, u.date())
 	}
 	if len(w.dates) > 0 {
-		if pauses := u.spans(); len(pauses) > 0 {
-			for i := range w.dates {
-				w.dates[i].Pauses = pauses
-			}
+		pauses := u.spans()
+		for n := u.uint(); n > 0 && !u.bad; n-- {
+			w.also = append(w.also, alsoOpen{by: u.int(), DueDate: u.date()})
 		}
+		w.pausing(pauses)
 	}
 	n = u.uint()
 	if n > uint64(len(b)) {
@@ -440,6 +483,23 @@ func (f *fold) packSums() error {
 		}
 		f.on(bktSum).put([]byte(key), p.b)
 	}
+	for key, by := range f.also {
+		if by == 0 {
+			continue
+		}
+		u := unpacker{b: f.on(bktAlso).get([]byte(key))}
+		if len(u.b) > 0 {
+			by += u.int()
+		}
+		p := packer{}
+		if by != 0 {
+			p.int(by)
+		}
+		if u.bad {
+			return errPacked
+		}
+		f.on(bktAlso).put([]byte(key), p.b)
+	}
 	for key, t := range f.tallies {
 		old, err := unpackTally(f.on(bktTally).get([]byte(key)))
 		if err != nil {
@@ -464,6 +524,7 @@ func (f *fold) packSums() error {
 		return err
 	}
 	clear(f.sums)
+	clear(f.also)
 	clear(f.tallies)
 	return nil
 }

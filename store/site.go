@@ -204,7 +204,14 @@ func (v *View) sumDates(sv *siteView, on forms.Day, sums *SiteSums) error {
 		}
 	}
 	sums.NextDay, sums.NextTask = next.day, next.task
-	return nil
+	return v.scan(bktAlso, prefix, func(k, n []byte) error {
+		d, u := readSum(k), unpacker{b: n}
+		by := int(u.int())
+		for o := range d.Unmet(on) {
+			month(forms.MonthOf(o.Due)).Add(forms.Obligation{DueDate: o, Met: forms.NoDay}.Outcome(on), by)
+		}
+		return u.err()
+	})
 }
 
 // nextDate finds the date a site is to look at next: one that is overdue comes before one that has not passed, and that

@@ -24,7 +24,7 @@ type Visit struct {
 	Minutes   float64
 	Overdue   int          // of the stops, on the day
 	OnRounds  int          // tests left out because an open round has them
-	Failed    []DeviceRow  // failed and not passed since: a round does not clear them, a repair does
+	Defects   []Defect     // open ones: a round does not clear them, a repair does
 	Expired   []Instrument // whose certificate ends before the day
 	Gaps      []Gap        // records that never came
 	Pace      map[string]Pace
@@ -69,9 +69,6 @@ func (v *View) Visit(ask VisitAsk) (Visit, error) {
 		if ask.Building != "" && row.Place.Building != ask.Building || ask.Floor != "" && row.Place.Floor != ask.Floor {
 			continue
 		}
-		if rowFails(row) {
-			out.Failed = append(out.Failed, row)
-		}
 		out.take(row, ask, open)
 	}
 	minutes := make([]float64, len(out.Stops))
@@ -79,16 +76,7 @@ func (v *View) Visit(ask VisitAsk) (Visit, error) {
 		minutes[i] = s.Minutes
 	}
 	out.Starts = forms.SplitWalk(minutes, ask.Most)
-	return out, v.visitRest(sv, ask.Day, &out)
-}
-
-func rowFails(row DeviceRow) bool {
-	for _, last := range row.Last {
-		if last.Result == forms.Fail {
-			return true
-		}
-	}
-	return false
+	return out, v.visitRest(sv, ask, &out)
 }
 
 func addOnce(list *[]string, s string) {
@@ -166,14 +154,23 @@ func (v *View) visitRows(sv *siteView, on forms.Day) ([]DeviceRow, error) {
 	return rows, err
 }
 
-// visitRest adds what is no test: certificates that end, records that never came.
-func (v *View) visitRest(sv *siteView, on forms.Day, out *Visit) error {
+// visitRest adds what is no test: open defects, certificates that end, records that never came.
+func (v *View) visitRest(sv *siteView, ask VisitAsk, out *Visit) error {
+	defects, err := v.Defects(DefectAsk{Site: sv.ID, On: ask.Day})
+	if err != nil {
+		return err
+	}
+	for _, d := range defects {
+		if p := d.Device.Place; (ask.Building == "" || p.Building == ask.Building) && (ask.Floor == "" || p.Floor == ask.Floor) {
+			out.Defects = append(out.Defects, d)
+		}
+	}
 	instruments, err := v.Instruments()
 	if err != nil {
 		return err
 	}
 	for _, i := range instruments {
-		if !i.Retired && i.CalibrationDue != forms.NoDay && i.CalibrationDue < on {
+		if !i.Retired && i.CalibrationDue != forms.NoDay && i.CalibrationDue < ask.Day {
 			out.Expired = append(out.Expired, i)
 		}
 	}

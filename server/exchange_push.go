@@ -1,7 +1,6 @@
 package server
 
 import (
-	"bytes"
 	"fmt"
 	"unicode/utf16"
 	"unicode/utf8"
@@ -68,17 +67,13 @@ func (t *exactText) UnmarshalJSON(raw []byte) error {
 		return refuse(codeInvalid, "record", "A record travels as a JSON string that holds its exact bytes. Send it as a string.")
 	}
 	out := make([]byte, 0, len(raw)-2)
-	for in := raw[1 : len(raw)-1]; len(in) > 0; {
-		n := bytes.IndexByte(in, '\\')
-		if n < 0 {
-			n = len(in)
+	in := raw[1 : len(raw)-1]
+	for i, n := 0, 0; i < len(in); i += n {
+		if in[i] != '\\' { // a record is full of quotes: nothing is gained by looking ahead
+			out, n = append(out, in[i]), 1
+			continue
 		}
-		out, in = append(out, in[:n]...), in[n:]
-		if len(in) == 0 {
-			break
-		}
-		out, n = unescape(out, in)
-		in = in[n:]
+		out, n = unescape(out, in[i:])
 	}
 	*t = out
 	return nil

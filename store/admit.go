@@ -51,8 +51,7 @@ func (s *Store) Admit(ctx context.Context, sc Scope, sha256, reason string) (Rec
 		if !g.hasLog(r.Log) {
 			return cannotAdmit("No site here has the log it names. Register the site first.")
 		}
-		line := stampFor(raw, record.Stamp{Received: received})
-		pos, err := g.accept(r, line.stamp, line.line, line.leaf)
+		pos, err := g.accept(r, stampFor(raw, record.Stamp{Received: received}))
 		var fault *record.Fault
 		if errors.As(err, &fault) {
 			return cannotAdmit(fault.Text)

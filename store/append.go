@@ -77,17 +77,23 @@ func encodeBody(body any) (json.RawMessage, error) {
 	return bytes.TrimRight(out.Bytes(), "\n"), nil
 }
 
-// stamped is a stamp, its line and the leaf made with it.
+// stamped is a stamp, and what the book will hold of its record: the row but for its place, and the leaf.
 type stamped struct {
 	stamp record.Stamp
-	line  []byte
+	line  int    // length of the stamp's line
+	row   []byte // of the bucket rec; its place is filled in when the record is given one
 	leaf  proof.Hash
 }
 
-func stampFor(raw []byte, st record.Stamp) stamped {
-	line := st.Line()
-	return stamped{st, line, proof.LeafHash(record.Leaf(line, raw))}
+func stampFor(raw []byte, st record.Stamp) stamped { return stampedWith(st, st.Line(), raw) }
+
+func stampedWith(st record.Stamp, line, raw []byte) stamped {
+	row := make([]byte, recHead, recHead+len(line)+len(raw))
+	row = append(append(row, line...), raw...)
+	return stamped{st, len(line), row, proof.LeafHash(line, newline, raw)}
 }
+
+var newline = []byte{'\n'}
 
 // appendDrafts decides drafts within a group: all are made and judged before the first is written.
 func (g *group) appendDrafts(drafts []Draft) ([]Receipt, error) {
@@ -136,7 +142,7 @@ func (g *group) appendDrafts(drafts []Draft) ([]Receipt, error) {
 		if m.r == nil {
 			continue
 		}
-		pos, err := g.accept(m.r, m.st.stamp, m.st.line, m.st.leaf)
+		pos, err := g.accept(m.r, m.st)
 		if err != nil {
 			return nil, asError(err)
 		}

@@ -45,7 +45,6 @@ type fold struct {
 	keeps     map[string]map[int32]monthKept // by key of m_keep
 	rules     *rules
 	grants    *grants
-	ready     *ready // of the record being folded, where its pusher worked something out
 	ahead     map[uint64]*aheadRecord
 	current   *saidRecord // a correction while it is folded: the book does not hold it yet
 }

@@ -149,6 +149,20 @@ func (w *work) inOrder(p past) bool {
 	return true
 }
 
+// addsNoDay says whether an entry that is not yet among the device's leaves its dates as they are: it meets nothing, or
+// only what a test of the same day has met, and nobody stood before a closed door.
+func (w *work) addsNoDay(p past) bool {
+	if p.locked {
+		return false
+	}
+	for _, task := range p.met {
+		if w.met(task) != p.day {
+			return false
+		}
+	}
+	return true
+}
+
 // metDays gives the days that met the tasks an entry speaks of, before it is counted.
 func (w *work) metDays(p past) map[string]forms.Day {
 	out := make(map[string]forms.Day, 2)
@@ -170,13 +184,20 @@ func (w *work) before() workBefore {
 	b := workBefore{dates: w.dates, also: w.also, fail: w.failing()}
 	for i := range w.tasks {
 		if t := &w.tasks[i]; len(t.kept) > 0 {
-			if b.kept == nil {
-				b.kept = map[string][]forms.Kept{}
-			}
-			b.kept[t.task] = t.kept
+			b.kept = append(b.kept, taskKept{t.task, t.kept})
 		}
 	}
 	return b
+}
+
+// of gives what was kept of a task.
+func (b *workBefore) of(task string) []forms.Kept {
+	for i := range b.kept {
+		if b.kept[i].task == task {
+			return b.kept[i].kept
+		}
+	}
+	return nil
 }
 
 // packWorks writes changed work rows and keeps the due index, its sums, what was kept and the failed devices.
@@ -189,12 +210,12 @@ func (f *fold) packWorks() {
 		f.on(bktWork).put(workKey(key.site, key.n), w.pack())
 		f.packDates(key, w)
 		now := w.before()
-		for task := range now.kept {
-			f.keep(key.site, task, w.was.kept[task], now.kept[task])
+		for _, k := range now.kept {
+			f.keep(key.site, k.task, w.was.of(k.task), k.kept)
 		}
-		for task, was := range w.was.kept {
-			if now.kept[task] == nil {
-				f.keep(key.site, task, was, nil)
+		for _, k := range w.was.kept {
+			if now.of(k.task) == nil {
+				f.keep(key.site, k.task, k.kept, nil)
 			}
 		}
 		if now.fail != w.was.fail {
@@ -211,12 +232,18 @@ func (f *fold) packWorks() {
 
 func (f *fold) packDates(key workID, w *work) {
 	for _, d := range w.was.dates {
+		if hasSum(w.dates, d) {
+			continue
+		}
 		if !hasDate(w.dates, d) {
 			f.on(bktDue).delete(dueKey(key.site, d.Due, key.n, d.Task))
 		}
 		f.sumDate(key.site, d, -1)
 	}
 	for _, d := range w.dates {
+		if hasSum(w.was.dates, d) {
+			continue
+		}
 		if !hasDate(w.was.dates, d) {
 			f.on(bktDue).put(dueKey(key.site, d.Due, key.n, d.Task), []byte{})
 		}
@@ -242,6 +269,16 @@ func hasDate(list []forms.DueDate, d forms.DueDate) bool {
 	for i := range list {
 		if list[i].Task == d.Task && list[i].Due == d.Due {
 			return true
+		}
+	}
+	return false
+}
+
+// hasSum says whether a list has a date that counts in the same sum. A task has one date at a time.
+func hasSum(list []forms.DueDate, d forms.DueDate) bool {
+	for i := range list {
+		if list[i].Task == d.Task {
+			return sameSum(&list[i], &d)
 		}
 	}
 	return false

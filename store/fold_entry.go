@@ -10,11 +10,8 @@ import (
 
 // entryMade takes an entry into its device's row.
 func (f *fold) entryMade(r *record.Record, st record.Stamp) error {
-	var body *entryBody
-	var err error
-	if k := f.readyFor(r); k != nil {
-		body = k.body
-	} else if body, err = readEntry(r); err != nil {
+	body, err := readEntry(r)
+	if err != nil {
 		return err
 	}
 	l, err := f.log(r.Log)
@@ -38,17 +35,25 @@ func (f *fold) entryMade(r *record.Record, st record.Stamp) error {
 		f.on(bktHistory).put(historyKey(l.ord, n, w.past[0].seq), pk.b)
 		w.past, w.older = slices.Clone(w.past[spillPast:]), w.older+spillPast
 	}
-	inOrder := w.inOrder(p)
+	asBefore, inOrder := w.addsNoDay(p), w.inOrder(p)
 	w.past = append(w.past, p)
 	before := w.metDays(p)
-	w.count(p, mark{day: p.day, clock: r.Clock, id: id}, figures(o.entry.Readings))
+	numbers := body.figures
+	if o.said {
+		numbers = figures(o.entry.Readings)
+	}
+	w.count(p, mark{day: p.day, clock: r.Clock, id: id}, numbers)
 	l.entries++
 	l.dirty, w.dirty = true, true
 	f.tally(l.ord, p, 1)
-	if inOrder {
+	switch {
+	case asBefore:
+	case inOrder:
 		f.reckonOn(l, w, p, before)
-	} else if err := f.reckon(l, n, w); err != nil {
-		return err
+	default:
+		if err := f.reckon(l, n, w); err != nil {
+			return err
+		}
 	}
 	return f.flawsTouched(l, n, w, p.result == codeFail)
 }
@@ -64,9 +69,7 @@ func (f *fold) outcome(l *modelLog, r *record.Record, st record.Stamp, body *ent
 		return outcome{}, err
 	}
 	if len(said) == 0 {
-		if f.rules.known = f.readyFor(r); f.rules.known == nil {
-			f.rules.known = body.ready
-		}
+		f.rules.known = &body.verdicts
 		defer func() { f.rules.known = nil }()
 	}
 	return f.rules.outcome(l.ord, f.orgOrd(), zone, r, st, body, said), nil

@@ -73,32 +73,32 @@ func newGroup(s *Store, tx *bbolt.Tx) *group {
 
 // accept appends a record: folds it, then gives it its place. A record the fold cannot take is a fault and leaves no
 // trace.
-func (g *group) accept(r *record.Record, stamp record.Stamp, line []byte, leaf proof.Hash) (pos int64, err error) {
-	if err := g.fold.record(r, stamp, g.seq+1); err != nil {
+func (g *group) accept(r *record.Record, st stamped) (pos int64, err error) {
+	if err := g.fold.record(r, st.stamp, g.seq+1); err != nil {
 		return 0, err
 	}
-	if pos, err = g.place(r, line, leaf); err != nil {
+	if pos, err = g.place(r, st); err != nil {
 		return 0, err
 	}
-	return pos, g.note(r, stamp, g.logs[r.Log].ord)
+	return pos, g.note(r, st.stamp, g.logs[r.Log].ord)
 }
 
 // place gives a record its place in the book, and nothing else.
-func (g *group) place(r *record.Record, line []byte, leaf proof.Hash) (pos int64, err error) {
+func (g *group) place(r *record.Record, st stamped) (pos int64, err error) {
 	g.changes++
 	g.seq++
 	l, err := g.openLog(r.Log)
 	if err != nil {
 		return 0, err
 	}
-	g.hashes = l.edge.AppendTo(g.hashes[:0], leaf)
+	g.hashes = l.edge.AppendTo(g.hashes[:0], st.leaf)
 	l.grew = true
 	pos = l.edge.Size
 	id, _ := record.IDBytes(r.ID)
 	g.fresh[id] = fresh{g.seq, r.Raw, r.Log, pos}
 	g.order = append(g.order, id)
 	g.clock = max(g.clock, r.Clock)
-	if err := g.recs.Put(key64(g.seq), g.recValue(l.ord, pos, line, r.Raw)); err != nil {
+	if err := g.recs.Put(key64(g.seq), st.at(l.ord, pos)); err != nil {
 		return 0, fmt.Errorf("append record %s: %w", r.ID, err)
 	}
 	if err := g.leaves.Put(logKey(l.ord, pos), g.leafValue()); err != nil {
@@ -121,21 +121,22 @@ func (g *group) note(r *record.Record, stamp record.Stamp, ord uint32) error {
 // room gives n bytes that stay as they are until the transaction ends (bbolt keeps values by reference).
 func (g *group) room(n int) []byte {
 	if len(g.buf) < n {
-		g.buf = make([]byte, max(n, 256<<10))
+		g.buf = make([]byte, max(n, 32<<10))
 	}
 	b := g.buf[:n:n]
 	g.buf = g.buf[n:]
 	return b
 }
 
-func (g *group) recValue(ord uint32, pos int64, line, raw []byte) []byte {
-	b := g.room(14 + len(line) + len(raw))
-	binary.BigEndian.PutUint32(b, ord)
-	binary.BigEndian.PutUint64(b[4:], uint64(pos))
-	binary.BigEndian.PutUint16(b[12:], uint16(len(line)))
-	copy(b[14:], line)
-	copy(b[14+len(line):], raw)
-	return b
+// recHead is how long a row of the bucket rec is before the stamp: ord 4 | pos 8 | length of the stamp 2.
+const recHead = 14
+
+// at gives the row of a record that takes a place. It stays as it is until the transaction ends.
+func (st stamped) at(ord uint32, pos int64) []byte {
+	binary.BigEndian.PutUint32(st.row, ord)
+	binary.BigEndian.PutUint64(st.row[4:], uint64(pos))
+	binary.BigEndian.PutUint16(st.row[12:], uint16(st.line))
+	return st.row
 }
 
 func (g *group) leafValue() []byte {
@@ -228,14 +229,14 @@ type kept struct {
 }
 
 func readRec(v []byte) (kept, error) {
-	if len(v) < 14 {
+	if len(v) < recHead {
 		return kept{}, fmt.Errorf("a record's entry is %d bytes long", len(v))
 	}
 	n := int(binary.BigEndian.Uint16(v[12:]))
-	if len(v) < 14+n {
+	if len(v) < recHead+n {
 		return kept{}, fmt.Errorf("a record's entry ends within its stamp")
 	}
-	return kept{binary.BigEndian.Uint32(v), int64(binary.BigEndian.Uint64(v[4:])), v[14 : 14+n], v[14+n:]}, nil
+	return kept{binary.BigEndian.Uint32(v), int64(binary.BigEndian.Uint64(v[4:])), v[recHead : recHead+n], v[recHead+n:]}, nil
 }
 
 // find gives a record by id: its bytes, log and place. ok is false where there is none.

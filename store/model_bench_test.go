@@ -106,8 +106,7 @@ func (w *benchWriter) flush() {
 			if f != nil {
 				return f
 			}
-			st := stampFor(raw, record.Stamp{Received: r.At})
-			if _, err := g.accept(r, st.stamp, st.line, st.leaf); err != nil {
+			if _, err := g.accept(r, stampFor(raw, record.Stamp{Received: r.At})); err != nil {
 				return err
 			}
 		}

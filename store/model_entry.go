@@ -25,7 +25,8 @@ type entryBody struct {
 	Day     *forms.Day `json:"day"`
 	Result  string     `json:"result"`
 
-	ready *ready // verdict of all entries that share this body, in a rebuild
+	figures  []figure // the measured values among the readings
+	verdicts verdicts // of all entries that share this body
 }
 
 // checked spares looking for doubled names and damaged text again: the body is part of a record, whose reading has
@@ -44,6 +45,7 @@ func readEntry(r *record.Record) (*entryBody, error) {
 	if r.Kind == "entry.imported" && b.Readings == nil && resultCode(b.Result) == 0 {
 		return nil, badBody("result", "The result %q is none: an imported entry has one of %v.", b.Result, forms.Results())
 	}
+	b.figures = figures(b.Readings)
 	return b, nil
 }
 

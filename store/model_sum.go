@@ -36,6 +36,11 @@ func sumKey(site uint32, d forms.DueDate) []byte {
 	return b
 }
 
+// sameSum says whether two dates of a task count in the same sum: whether their keys are equal.
+func sameSum(a, b *forms.DueDate) bool {
+	return a.Due == b.Due && a.Until == b.Until && a.Every == b.Every && a.Tried == b.Tried && slices.Equal(a.Pauses, b.Pauses) && slices.Equal(a.Shut, b.Shut)
+}
+
 // readSum gives a date as its sum's key tells it.
 func readSum(key []byte) (d forms.DueDate) {
 	if len(key) < 12 {

@@ -37,7 +37,12 @@ type workBefore struct {
 	dates []forms.DueDate
 	also  []alsoOpen
 	fail  forms.Day
-	kept  map[string][]forms.Kept // by task
+	kept  []taskKept
+}
+
+type taskKept struct {
+	task string
+	kept []forms.Kept
 }
 
 // taskState is what the entries of one task say together.

@@ -51,6 +51,7 @@ type Store struct {
 
 	work   offWork      // the writer's own
 	groups atomic.Int64 // committed since opening
+	said   *bodies      // by the entries that came lately
 
 	rebuilding atomic.Bool // read models are being computed anew
 
@@ -81,7 +82,7 @@ func Open(dir string, o Options) (*Store, error) {
 	if err != nil {
 		return nil, err
 	}
-	s := &Store{db: db, dir: dir, now: o.Now, queue: make(chan *job, queueLength), written: make(chan struct{}), work: newOffWork()}
+	s := &Store{db: db, dir: dir, now: o.Now, queue: make(chan *job, queueLength), written: make(chan struct{}), work: newOffWork(), said: newBodies()}
 	if err := s.start(o); err != nil {
 		return nil, errors.Join(err, db.Close())
 	}

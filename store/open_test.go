@@ -200,7 +200,7 @@ func TestOpen_RefusesWhatItCannotCompute(t *testing.T) {
 		line := record.Write(record.Record{ID: newID(r.clock()), Kind: "entry.made", V: 1, Log: site, Subject: site, At: r.clock(), Clock: 1 << 40, By: site, From: site, N: 1,
 			Body: json.RawMessage(`{"form":7}`)})
 		g.seq++
-		return errors.Join(g.recs.Put(key64(g.seq), g.recValue(1, 99, record.Stamp{Received: r.clock()}.Line(), line)), tx.Bucket(bktMeta).Put(metaModel, key64(1)))
+		return errors.Join(g.recs.Put(key64(g.seq), stampFor(line, record.Stamp{Received: r.clock()}).at(1, 99)), tx.Bucket(bktMeta).Put(metaModel, key64(1)))
 	})
 	if err != nil {
 		t.Fatal(err)

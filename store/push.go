@@ -51,7 +51,6 @@ type arrival struct {
 	r     *record.Record
 	fault *record.Fault
 	st    stamped
-	ready *ready // what is known of an entry before it is decided; may be nil
 }
 
 // Push takes records from elsewhere; one receipt for each, in order. An error means that the sender knows nothing of
@@ -62,8 +61,19 @@ func (s *Store) Push(ctx context.Context, from Sender, batch []Incoming) ([]Rece
 	}
 	received := s.now().UTC().Truncate(time.Millisecond)
 	arrivals := make([]arrival, len(batch))
+	st := record.Stamp{Received: received, Via: from.Via}
+	if !from.Sent.IsZero() {
+		st.OffsetMS = received.Sub(from.Sent).Milliseconds()
+	}
+	line := st.Line()
 	for i, in := range batch {
-		arrivals[i] = arrive(in, from, received)
+		if len(in.Held) == 0 {
+			arrivals[i] = s.arrive(in.Record, st, line)
+			continue
+		}
+		held := st
+		held.Held = in.Held
+		arrivals[i] = s.arrive(in.Record, held, held.Line())
 	}
 	if err := s.makeReady(arrivals); err != nil {
 		return nil, err
@@ -84,19 +94,16 @@ func (s *Store) Push(ctx context.Context, from Sender, batch []Incoming) ([]Rece
 	return receipts, nil
 }
 
-func arrive(in Incoming, from Sender, received time.Time) arrival {
-	st := record.Stamp{Received: received, Via: from.Via, Held: in.Held}
-	if !from.Sent.IsZero() {
-		st.OffsetMS = received.Sub(from.Sent).Milliseconds()
-	}
-	r, fault := record.Parse(in.Record)
+func (s *Store) arrive(raw []byte, st record.Stamp, line []byte) arrival {
+	r, fault := record.Parse(raw)
 	a := arrival{r: r, fault: fault, st: stamped{stamp: st}}
-	if fault == nil {
-		a.st = stampFor(in.Record, st)
-		readAhead(r)
-		if len(a.st.line) > maxStamp {
-			a.fault = &record.Fault{Code: "too_large", Field: "held", Text: "The record comes with a longer list of earlier holders than a stamp can carry. Send it from the store it was first held by."}
-		}
+	if fault != nil {
+		return a
+	}
+	a.st = stampedWith(st, line, raw)
+	s.said.read(r)
+	if len(line) > maxStamp {
+		a.fault = &record.Fault{Code: "too_large", Field: "held", Text: "The record comes with a longer list of earlier holders than a stamp can carry. Send it from the store it was first held by."}
 	}
 	return a
 }
@@ -137,9 +144,8 @@ func (g *group) take(from Sender, a arrival, received time.Time) (Receipt, error
 	if fault != nil {
 		return g.refuse(from, a.r, fault, received)
 	}
-	g.fold.ready, g.reused = a.ready, false
-	pos, err := g.accept(a.r, a.st.stamp, a.st.line, a.st.leaf)
-	g.fold.ready = nil
+	g.reused = false
+	pos, err := g.accept(a.r, a.st)
 	if errors.As(err, &fault) {
 		return g.refuse(from, a.r, fault, received)
 	}

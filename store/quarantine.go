@@ -37,11 +37,11 @@ func (g *group) refuse(from Sender, r *record.Record, f *record.Fault, received 
 		subject = own
 	}
 	body := refusedBody{r.ID, hex.EncodeToString(sum[:]), r.From, r.N, f.Code}
-	made, line, err := g.make(Draft{ID: own, Kind: "record.refused", Log: log, Subject: subject, At: received, By: g.s.id, Body: body}, received)
+	made, st, err := g.make(Draft{ID: own, Kind: "record.refused", Log: log, Subject: subject, At: received, By: g.s.id, Body: body}, received)
 	if err != nil {
 		return Receipt{}, err
 	}
-	if _, err := g.accept(made, line.stamp, line.line, line.leaf); err != nil {
+	if _, err := g.accept(made, st); err != nil {
 		return Receipt{}, err
 	}
 	v := make([]byte, 2, 2+len(f.Text)+len(r.Raw))

@@ -7,43 +7,27 @@ import (
 	"tripwell/store/record"
 )
 
-// ready is what is worked out about an entry before the one writer sees it, by the many callers who wait for it anyway:
-// its body is read and judged by the rules that stand at that moment. The writer decides everything again but the
-// judging itself: it takes the verdict over only where it finds the very same form and limit set, and nothing else said
-// of the entry. So the read models stay a function of the book alone.
-type ready struct {
-	r       *record.Record
-	body    *entryBody
-	form    *forms.Form
-	set     *forms.LimitSet
-	verdict forms.Verdict
-	judged  bool
-}
+// What can be worked out about an entry before the one writer sees it is done by the many callers who wait for it anyway:
+// its body is read and judged by the rules that stand at that moment. The writer decides everything again but the judging
+// itself: it takes the verdict over only where it finds the very same form and limit set, and nothing else said of the
+// entry. So the read models stay a function of the book alone.
 
-// makeReady reads and judges the entries among arrivals. What it cannot read or judge it leaves to the writer, which
-// says why.
+// makeReady judges the entries among arrivals. What it cannot judge it leaves to the writer, which says why.
 func (s *Store) makeReady(arrivals []arrival) error {
-	var list []*ready
-	for i := range arrivals {
-		a := &arrivals[i]
-		if a.fault != nil || a.r.Kind != "entry.made" || record.LogClass(a.r.Log) != "site" {
-			continue
-		}
-		body, err := readEntry(a.r)
-		if err != nil {
-			continue
-		}
-		a.ready = &ready{r: a.r, body: body}
-		list = append(list, a.ready)
+	type standing struct {
+		body *entryBody
+		form *forms.Form
+		set  *forms.LimitSet
 	}
-	if len(list) == 0 {
-		return nil
-	}
+	list := make([]standing, 0, len(arrivals))
 	err := s.view(func(tx *bbolt.Tx) error {
 		f := newFold(tx) // to look things up; never flushed
-		for i := range arrivals {
-			a := &arrivals[i]
-			if a.ready == nil {
+		for _, a := range arrivals {
+			if a.fault != nil || a.r.Kind != "entry.made" || record.LogClass(a.r.Log) != "site" {
+				continue
+			}
+			body, ok := a.r.Read.(*entryBody)
+			if !ok {
 				continue
 			}
 			l, err := f.log(a.r.Log)
@@ -55,7 +39,9 @@ func (s *Store) makeReady(arrivals []arrival) error {
 				return err
 			}
 			day := forms.DayOf(happened(a.r, a.st.stamp).In(zone))
-			a.ready.form, a.ready.set, _ = f.rules.standing(l.ord, f.orgOrd(), &a.ready.body.Entry, day)
+			if form, set, _ := f.rules.standing(l.ord, f.orgOrd(), &body.Entry, day); form != nil && set != nil {
+				list = append(list, standing{body, form, set})
+			}
 		}
 		return nil
 	})
@@ -63,35 +49,12 @@ func (s *Store) makeReady(arrivals []arrival) error {
 		return err
 	}
 	for _, k := range list {
-		if k.form == nil || k.set == nil {
+		if _, ok := k.body.verdicts.knows(k.form, k.set); ok {
 			continue
 		}
 		if v, err := forms.Judge(k.form, k.set, k.body.Entry); err == nil {
-			k.verdict, k.judged = v, true
+			k.body.verdicts.note(k.form, k.set, v)
 		}
 	}
 	return nil
-}
-
-// readyFor gives what was worked out about a record, nil for any other.
-func (f *fold) readyFor(r *record.Record) *ready {
-	if f.ready != nil && f.ready.r == r {
-		return f.ready
-	}
-	return nil
-}
-
-// knows gives the verdict that was worked out, where it was given by this form and this limit set.
-func (k *ready) knows(form *forms.Form, set *forms.LimitSet) (forms.Verdict, bool) {
-	if k == nil || !k.judged || k.form != form || k.set != set {
-		return forms.Verdict{}, false
-	}
-	return k.verdict, true
-}
-
-// note keeps a verdict for the next entry that says the same.
-func (k *ready) note(form *forms.Form, set *forms.LimitSet, v forms.Verdict) {
-	if k != nil {
-		k.form, k.set, k.verdict, k.judged = form, set, v, true
-	}
 }

@@ -8,7 +8,6 @@ import (
 	"errors"
 	"fmt"
 	"hash"
-	"sync"
 
 	"go.etcd.io/bbolt"
 	bolterrors "go.etcd.io/bbolt/errors"
@@ -77,7 +76,7 @@ func rebuildFrom(s *Store, tx *bbolt.Tx, after uint64, progress func(done, total
 	k, v := c.Seek(key64(after + 1))
 	// Decoding is most of the work: the next part is decoded while this one is folded.
 	var ahead chan []reread
-	seen := &bodies{known: map[string]*entryBody{}}
+	seen := newBodies()
 	for {
 		var part []reread
 		for ; k != nil && len(part) < rereadPart && binary.BigEndian.Uint64(k) <= end; k, v = c.Next() {
@@ -159,40 +158,6 @@ func (one *reread) decode(seen *bodies) {
 		return
 	}
 	seen.read(r)
-}
-
-// bodies are those entries said lately: most button tests of a kind of device say the same, word for word, so each is
-// read and judged once. Nothing changes a body that several entries share but the fold, which notes its verdict there.
-type bodies struct {
-	mu    sync.Mutex
-	known map[string]*entryBody
-}
-
-// bodiesMost bounds what is held; measured values make bodies that never come again.
-const bodiesMost = 512
-
-func (b *bodies) read(r *record.Record) {
-	if r.Kind != "entry.made" {
-		readAhead(r)
-		return
-	}
-	b.mu.Lock()
-	body := b.known[string(r.Body)]
-	b.mu.Unlock()
-	if body != nil {
-		r.Read = body
-		return
-	}
-	readAhead(r)
-	if body, ok := r.Read.(*entryBody); ok {
-		body.ready = &ready{}
-		b.mu.Lock()
-		defer b.mu.Unlock()
-		if len(b.known) >= bodiesMost {
-			clear(b.known)
-		}
-		b.known[string(r.Body)] = body
-	}
 }
 
 // refold computes what one record of the book adds to what is derived.

@@ -14,7 +14,6 @@ import (
 
 	"go.etcd.io/bbolt"
 
-	"tripwell/store/proof"
 	"tripwell/store/record"
 )
 
@@ -129,7 +128,8 @@ func (g *group) replay(one Replayed) error {
 	if f != nil {
 		return &Error{Code: "invalid", Field: f.Field, Text: f.Text}
 	}
-	if _, err := record.ParseStamp(one.Stamp); err != nil {
+	stamp, err := record.ParseStamp(one.Stamp)
+	if err != nil {
 		return &Error{Code: "invalid", Field: "stamp", Text: "The stamp of record " + r.ID + " cannot be read: " + err.Error() + "."}
 	}
 	if _, twice, err := g.find(r.ID); err != nil || twice {
@@ -138,7 +138,7 @@ func (g *group) replay(one Replayed) error {
 		}
 		return err
 	}
-	if _, err := g.place(r, one.Stamp, proof.LeafHash(record.Leaf(one.Stamp, r.Raw))); err != nil {
+	if _, err := g.place(r, stampedWith(stamp, one.Stamp, r.Raw)); err != nil {
 		return err
 	}
 	if one.Refused == nil {

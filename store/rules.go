@@ -21,7 +21,7 @@ type rules struct {
 	forms     map[string][]*forms.Form
 	whole     map[uint32]*saidOfWholeSite
 	said      func(bucket, prefix []byte) []row // m_occ and m_pause; nil where dates are not asked for
-	known     *ready                            // verdict worked out beforehand for the entry being judged
+	known     *verdicts                         // verdict worked out beforehand for the entry being judged
 }
 
 type scheduleID struct {

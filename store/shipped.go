@@ -40,8 +40,7 @@ func (g *group) ship() error {
 		if f != nil {
 			return f
 		}
-		st := stampFor(raw, record.Stamp{Received: shippedAt})
-		_, err = g.accept(r, st.stamp, st.line, st.leaf)
+		_, err = g.accept(r, stampFor(raw, record.Stamp{Received: shippedAt}))
 		return err
 	}
 	for _, f := range c.Forms {

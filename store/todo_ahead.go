@@ -52,7 +52,7 @@ type offWork struct {
 }
 
 func newOffWork() offWork {
-	return offWork{left: true, ready: make(chan *ahead, 1), size: partFirst, bodies: &bodies{known: map[string]*entryBody{}}}
+	return offWork{left: true, ready: make(chan *ahead, 1), size: partFirst, bodies: newBodies()}
 }
 
 // ask has the next part made ready, unless that is under way.
@@ -175,10 +175,7 @@ func (f *fold) entryAhead(l *modelLog, seq uint64, seen *bodies) (*aheadRecord, 
 	if err != nil {
 		return nil, err
 	}
-	if body.ready == nil {
-		body.ready = &ready{}
-	}
-	if _, err := f.outcome(l, one.r, one.stamp, body); err != nil { // notes its verdict in body.ready
+	if _, err := f.outcome(l, one.r, one.stamp, body); err != nil { // notes its verdict with the body
 		return nil, err
 	}
 	return &aheadRecord{one.r, one.stamp, body}, nil

@@ -6,6 +6,7 @@
 package proof
 
 import (
+	"crypto/sha256"
 	"fmt"
 
 	"golang.org/x/mod/sumdb/tlog"
@@ -14,8 +15,16 @@ import (
 // Hash is a node of a tree.
 type Hash = tlog.Hash
 
-// LeafHash hashes leaf data: SHA-256 over 0x00 and the data (RFC 6962, 2.1).
-func LeafHash(data []byte) Hash { return tlog.RecordHash(data) }
+// LeafHash hashes leaf data that may come in parts: SHA-256 over 0x00 and the data (RFC 6962, 2.1).
+func LeafHash(data ...[]byte) (hash Hash) {
+	h := sha256.New()
+	h.Write([]byte{0})
+	for _, part := range data {
+		h.Write(part)
+	}
+	h.Sum(hash[:0])
+	return hash
+}
 
 // Edge is the right edge of a tree: the hashes of the complete subtrees its size is made of, largest first. It is all
 // that is needed to append and to give the root.

@@ -9,41 +9,50 @@ import (
 
 // IsID reports whether s is a UUID of version 7 or 8 (RFC 9562) in lower case.
 func IsID(s string) bool {
-	if len(s) != 36 || s[14] != '7' && s[14] != '8' || s[19] != '8' && s[19] != '9' && s[19] != 'a' && s[19] != 'b' {
-		return false
-	}
-	for i := 0; i < len(s); i++ {
-		switch i {
-		case 8, 13, 18, 23:
-			if s[i] != '-' {
-				return false
-			}
-		default:
-			if !isHex(s[i]) {
-				return false
-			}
-		}
-	}
-	return true
+	_, ok := IDBytes(s)
+	return ok
 }
 
-func isHex(c byte) bool { return c >= '0' && c <= '9' || c >= 'a' && c <= 'f' }
+// shapedID looks at the length, the version and the variant.
+func shapedID(s string) bool {
+	return len(s) == 36 && (s[14] == '7' || s[14] == '8') && (s[19] == '8' || s[19] == '9' || s[19] == 'a' || s[19] == 'b')
+}
+
+// idBytes reads 36 digits and hyphens.
+func idBytes(s string) (b [16]byte, ok bool) {
+	if s[8] != '-' || s[13] != '-' || s[18] != '-' || s[23] != '-' {
+		return b, false
+	}
+	bad := byte(0)
+	for i, at := range hexAt {
+		high, low := hexValue[s[at]], hexValue[s[at+1]]
+		b[i], bad = high<<4|low&15, bad|high|low
+	}
+	return b, bad < 16
+}
+
+// hexAt is where the two digits of each byte of an id stand in its text.
+var hexAt = [16]uint8{0, 2, 4, 6, 9, 11, 14, 16, 19, 21, 24, 26, 28, 30, 32, 34}
+
+// hexValue gives the value of a lower-case hexadecimal digit, 0xff for anything else.
+var hexValue = func() (v [256]byte) {
+	for i := range v {
+		v[i] = 0xff
+	}
+	for i, c := range []byte("0123456789abcdef") {
+		v[c] = byte(i)
+	}
+	return v
+}()
+
+func isHex(c byte) bool { return hexValue[c] < 16 }
 
 // IDBytes gives the 16 bytes of an id; ok is false where IsID is.
 func IDBytes(s string) (b [16]byte, ok bool) {
-	if !IsID(s) {
+	if !shapedID(s) {
 		return b, false
 	}
-	var plain [32]byte
-	n := 0
-	for i := 0; i < len(s); i++ {
-		if s[i] != '-' {
-			plain[n] = s[i]
-			n++
-		}
-	}
-	_, err := hex.Decode(b[:], plain[:])
-	return b, err == nil
+	return idBytes(s)
 }
 
 // IDText gives the text of an id's 16 bytes.

@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"errors"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 	"sync"
@@ -120,7 +121,7 @@ func members(obj []byte, fn func(name string, value []byte) *Fault) *Fault {
 			i = next(obj, i+1)
 		}
 		end := stringEnd(obj, i)
-		name := text(obj[i:end])
+		name := nameOf(obj[i:end])
 		i = next(obj, next(obj, end)+1) // past the colon
 		end = valueEnd(obj, i)
 		if f := fn(name, obj[i:end]); f != nil {
@@ -212,5 +213,26 @@ func text(v []byte) string {
 	b, _ := jsontext.AppendUnquote(nil, v)
 	return string(b)
 }
+
+// nameOf gives the text of a member's name; those that every record has are not made anew.
+func nameOf(v []byte) string {
+	if s, ok := usualNames[string(v[1:len(v)-1])]; ok {
+		return s
+	}
+	return text(v)
+}
+
+var usualNames = func() map[string]string {
+	m := map[string]string{}
+	for _, name := range slices.Concat(envelopeOrder, []string{"value", "typed", "unit", "above", "below", "no_trip", "missing", "at"}) {
+		m[name] = name
+	}
+	for _, k := range kinds {
+		for _, b := range k.body {
+			m[b.name] = b.name
+		}
+	}
+	return m
+}()
 
 func isNumber(v []byte) bool { return v[0] == '-' || v[0] >= '0' && v[0] <= '9' }

@@ -83,6 +83,11 @@ func IsOutlet(kind string) bool {
 	return false
 }
 
+// IsPortable reports whether a kind travels: it carries its own label and has no place of its own.
+func IsPortable(kind string) bool {
+	return kind == CordSet || kind == PortableGFCI || kind == PlugInEquipment
+}
+
 // NoGroundPermitted is what equipment_ground says where the box has none and the code lets it be so.
 const NoGroundPermitted = "none-permitted"
 

@@ -104,7 +104,7 @@ func (s *Server) buildDates(v *store.View, ask datesAsk, view *datesPage) error 
 		if shown++; shown > datesShown {
 			break
 		}
-		view.add(k.dueGroup(row, ask), s.dateRow(row, names[row.Device.Site], ask))
+		view.add(k.dueGroup(row, ask), s.dateRow(row, names, ask))
 	}
 	for i, g := range view.Groups {
 		view.Groups[i].Count = k.say("office.dates.count", "n", len(g.Rows))
@@ -150,14 +150,15 @@ func (p *datesPage) add(group dateGroup, row dateRow) {
 	g.Rows = append(g.Rows, row)
 }
 
-func (s *Server) dateRow(row store.DueRow, site string, ask datesAsk) dateRow {
+func (s *Server) dateRow(row store.DueRow, names map[string]string, ask datesAsk) dateRow {
 	k := s.ink()
 	out := dateRow{
 		Href: "/devices/" + row.Device.ID, Spot: s.spot(row.Device), Tag: k.tag(row.Device.Tag), Where: row.Device.Place.Context(), Task: k.named("task", row.Due.Task),
 		State: k.named("state", row.State), Last: k.day(row.Due.Last), Late: row.State == "overdue",
 	}
+	out.Where = joined(out.Where, s.whereNow(row.Device, names))
 	if ask.site == "" {
-		out.Where = joined(site, out.Where)
+		out.Where = joined(names[row.Device.Site], out.Where)
 	}
 	if row.Due.Last == forms.NoDay {
 		out.Last = k.say("office.day.never")

@@ -160,11 +160,14 @@ func (s *Server) actBack(c echo.Context, f *typedForm, d store.Defect, site stor
 		Action: "/defects/" + d.ID + "/" + act, Submit: k.say("office.defect.act." + act), Cancel: "/defects/" + d.ID,
 	}
 	if act == "safe" {
-		feeds, err := s.alsoFeeds(c, d.Device, site)
+		err := s.store.View(scope(c), func(v *store.View) error {
+			feeds, err := s.alsoFeeds(v, d.Device, site)
+			p.Lead += " " + feeds
+			return err
+		})
 		if err != nil {
 			return err
 		}
-		p.Lead += " " + feeds
 	}
 	people, err := s.store.People()
 	if err != nil {
@@ -211,39 +214,4 @@ func whoMayRepair(people []store.Person, site store.Site) []string {
 		}
 	}
 	return pairs
-}
-
-// alsoFeeds says what else goes dark with the breaker of a device, critical loads by name.
-func (s *Server) alsoFeeds(c echo.Context, d store.DeviceRow, site store.Site) (string, error) {
-	k := s.ink()
-	if d.Panel == "" || d.Circuit == "" {
-		return k.say("office.defect.feeds_unknown"), nil
-	}
-	var others []string
-	err := s.store.View(scope(c), func(v *store.View) error {
-		full, err := v.Device(d.ID, s.today(site))
-		if err != nil {
-			return err
-		}
-		id, _ := full.Fields["circuit"].(string)
-		p, err := v.ProtectionOn(id, s.today(site))
-		if err != nil {
-			return err
-		}
-		for _, row := range p.Dead(id) { // those on it, and what their LOAD terminals feed; critical loads first
-			if row.ID == d.ID || row.Retired {
-				continue
-			}
-			name := s.spot(row.DeviceRow)
-			if load := row.Place.CriticalLoad; load != "" {
-				name += " (" + load + ")"
-			}
-			others = append(others, name)
-		}
-		return nil
-	})
-	if err != nil || len(others) == 0 {
-		return k.say("office.defect.feeds_none", "circuit", circuit(d)), err
-	}
-	return k.say("office.defect.feeds", "circuit", circuit(d), "list", strings.Join(others, "; ")), nil
 }

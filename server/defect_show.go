@@ -18,7 +18,7 @@ type defectPage struct {
 	Crumbs              []link
 	Heading, Tag, Under string
 	Verdict             mark
-	State, Next         string
+	State, Next, Dark   string // Dark: what else is without power while it is made safe
 	InUse               bool
 	Facts               []fact
 	Actions             []link
@@ -65,6 +65,9 @@ func (s *Server) buildDefect(v *store.View, d store.Defect, view *defectPage) er
 	view.Verdict, view.State, view.Next, view.InUse = s.severityMark(&d), s.defectState(&d, today), s.defectNext(&d), d.InUse()
 	if view.InUse {
 		view.State = k.say("office.defect.in_use_for", "age", s.age(s.store.Now().Sub(d.OpenedAt())))
+	}
+	if view.Dark, err = s.darkMeanwhile(v, &d, site); err != nil {
+		return err
 	}
 	view.Facts = s.defectFacts(v, &d, site)
 	steps, err := v.DefectHistory(d)

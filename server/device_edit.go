@@ -63,6 +63,7 @@ func (s *Server) deviceCreate(c echo.Context) error {
 	}
 	subject := f.id(subjectField)
 	in := s.deviceInput(f)
+	s.itemInput(f, &in, nil)
 	tag := s.tagInput(f)
 	if f.ok() {
 		drafts, err := s.newDeviceDrafts(c, site, f, in, tag)
@@ -91,7 +92,9 @@ type deviceInput struct {
 func (s *Server) deviceInput(f *typedForm) deviceInput {
 	k := s.ink()
 	in := deviceInput{place: map[string]any{}, device: map[string]any{}, circuit: map[string]any{}, supply: map[string]any{}}
-	f.needed("name", k.say("office.device.spot"), 120)
+	if !forms.IsPortable(f.Get("kind")) {
+		f.needed("name", k.say("office.device.spot"), 120)
+	}
 	for _, name := range placeTexts {
 		f.setText(in.place, name, name, f.line(name, 200))
 	}
@@ -182,8 +185,10 @@ func (s *Server) tagInput(f *typedForm) string {
 
 func (s *Server) newDeviceDrafts(c echo.Context, site store.Site, f *typedForm, in deviceInput, tag string) ([]store.Draft, error) {
 	first, subject := f.Get(recordField), f.Get(subjectField)
-	place, placeKind := f.Get("place"), "place.set"
-	if place == "" {
+	place, placeKind, labelled := f.Get("place"), "place.set", ""
+	if portable := forms.IsPortable(f.Get("kind")); portable && place == "" {
+		labelled = subject
+	} else if place == "" {
 		place, placeKind = record.NamedID(subject, "place"), "place.registered"
 	} else if err := s.placeHere(c, site, place); err != nil {
 		return nil, err
@@ -192,7 +197,9 @@ func (s *Server) newDeviceDrafts(c echo.Context, site store.Site, f *typedForm, 
 	if err != nil {
 		return nil, err
 	}
-	in.device["place"] = place
+	if labelled == "" {
+		in.device["place"], labelled = place, place
+	}
 	if circuit != "" {
 		in.device["circuit"] = circuit
 	}
@@ -206,7 +213,7 @@ func (s *Server) newDeviceDrafts(c echo.Context, site store.Site, f *typedForm, 
 		}
 	}
 	if tag != "" {
-		drafts = append(drafts, store.Draft{ID: record.NamedID(first, "tag"), Kind: "tag.bound", Log: site.ID, Subject: place, Body: map[string]any{"tag": tag}})
+		drafts = append(drafts, store.Draft{ID: record.NamedID(first, "tag"), Kind: "tag.bound", Log: site.ID, Subject: labelled, Body: map[string]any{"tag": tag}})
 	}
 	return drafts, nil
 }
@@ -312,6 +319,8 @@ func (s *Server) deviceUpdate(c echo.Context) error {
 	}
 	first := f.id(recordField)
 	in := s.deviceInput(f)
+	s.itemInput(f, &in, &d)
+	s.atSiteInput(c, f, &in, site, &d)
 	fed, err := s.circuitOf(c, d)
 	if err != nil {
 		return err
@@ -369,7 +378,7 @@ func (s *Server) deviceValues(d store.Device, fed store.Circuit) map[string]stri
 	out := map[string]string{
 		"building": d.Place.Building, "floor": d.Place.Floor, "room": d.Place.Room, "name": cmp.Or(d.Place.Name, text("where")), "critical_load": d.Place.CriticalLoad, "whom_to_tell": d.Place.WhomToTell,
 		"test_from": d.Place.TestFrom, "test_until": d.Place.TestUntil,
-		"panel": d.Panel, "circuit": d.Circuit, "kind": d.Kind, "equipment_ground": text("equipment_ground"), "fed_by": text("fed_by"), "usual": d.Place.Usual, "faces": "", "installed": text("installed"), "delayed": "", "order": "",
+		"panel": d.Panel, "circuit": d.Circuit, "kind": d.Kind, "equipment_ground": text("equipment_ground"), "fed_by": text("fed_by"), "usual": d.Place.Usual, "at_site": d.AtSite, "faces": "", "installed": text("installed"), "delayed": "", "order": "",
 	}
 	if d.Place.Order != 0 {
 		out["order"] = plainFigure(d.Place.Order)

@@ -53,6 +53,9 @@ func (s *Server) deviceForm(c echo.Context, site store.Site, d *store.Device, f 
 		},
 	}
 	if d != nil {
+		if travels(d) {
+			p.Groups[0] = s.itemGroup(c, site, d, q)
+		}
 		if traits := s.traitGroup(d.Kind, site, q); len(traits.Fields) > 0 {
 			p.Groups = slices.Insert(p.Groups, 2, traits)
 		}

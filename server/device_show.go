@@ -23,6 +23,7 @@ type devicePage struct {
 	Next                        []dated
 	Conflicts                   []conflictLine
 	Clash                       string
+	Same                        link // two items that hold one label are one; "" where they cannot be
 	Columns                     []column
 	Entries                     []entryRow
 	Defects                     []defectRow
@@ -118,6 +119,13 @@ func (s *Server) buildDevice(v *store.View, site store.Site, d store.Device, vie
 	view.Conflicts = s.conflicts(v, d.Conflicts, today)
 	if len(d.TagClash) > 0 {
 		view.Clash = k.say("office.device.clash", "tag", view.Tag)
+		like, err := s.itemsLike(v, d)
+		if err != nil {
+			return err
+		}
+		if view.Change && len(like) > 0 {
+			view.Same = link{Href: "/devices/" + d.ID + "/same", Text: k.say("office.item.same")}
+		}
 	}
 	s.entryTable(v, entries, names, view)
 	if view.Chain, err = s.deviceChain(v, d, today, view.Change); err != nil {
@@ -128,7 +136,11 @@ func (s *Server) buildDevice(v *store.View, site store.Site, d store.Device, vie
 	if err != nil {
 		return err
 	}
-	view.Facts = append(view.Facts, applies)
+	at, err := s.itemFacts(v, d, today)
+	if err != nil {
+		return err
+	}
+	view.Facts = append(append(append(view.Facts, applies), at...), s.formerFact(v, d, today)...)
 	s.labelOf(d, view)
 	if err := s.defectsOf(v, d, site, view); err != nil {
 		return err
@@ -348,7 +360,7 @@ func instrumentNames(v *store.View) (map[string]string, error) {
 
 // factOrder are the register fields a device page shows, in this order; fields of newer programs follow by name.
 var factOrder = []string{"make", "model", "serial", "rating_a", "nominal_v", "rated_residual_ma", "delayed", "waveform", "equipment_ground", "faces", "installed", "gauge", "length_m",
-	"locking", "quiet_ground", "new_construction", "no_neutral", "supply_edition", "double_insulated", "earthing", "distribution", "special_location", "limit_set", "where", "note"}
+	"locking", "quiet_ground", "new_construction", "no_neutral", "supply_edition", "double_insulated", "earthing", "distribution", "special_location", "limit_set", "note"}
 
 // fieldUnits are the units of register fields that are figures.
 var fieldUnits = map[string]string{"rating_a": "A", "nominal_v": "V", "rated_residual_ma": "mA", "length_m": "m", "breaker_a": "A"}
@@ -376,7 +388,7 @@ func (s *Server) deviceFacts(d store.Device) []fact {
 	add("test_from", d.Place.TestFrom)
 	add("test_until", d.Place.TestUntil)
 	for _, field := range sortedKeys(d.Fields) {
-		if !slices.Contains(factOrder, field) && !slices.Contains([]string{"kind", "place", "circuit", "formerly"}, field) {
+		if !slices.Contains(factOrder, field) && !slices.Contains([]string{"kind", "place", "circuit", "formerly", "where", "at_site"}, field) {
 			add(field, s.fieldText(field, d.Fields[field]))
 		}
 	}

@@ -153,6 +153,8 @@ func publicRoutes() []route {
 		{post, "/sites/:site/usual-places", manager, (*Server).usualUpdate, 0},
 		{get, "/devices/:device/edit", manager, (*Server).deviceEdit, 0},
 		{post, "/devices/:device/edit", manager, (*Server).deviceUpdate, 0},
+		{get, "/devices/:device/same", manager, (*Server).itemSameAsk, 0},
+		{post, "/devices/:device/same", manager, (*Server).itemSame, 0},
 		{get, "/devices/:device/retire", manager, (*Server).deviceRetireAsk, 0},
 		{post, "/devices/:device/retire", manager, (*Server).deviceRetire, 0},
 		{get, "/devices/:device/defects/new", manager, (*Server).defectNew, 0},

@@ -36,6 +36,7 @@ type sitePage struct {
 	Found, None                   string
 	Groups                        []registerGroup
 	Pager                         []link
+	Items                         []itemsShown
 }
 
 // registerGroup is a room with its devices.
@@ -122,7 +123,7 @@ type registerAsk struct {
 func (s *Server) buildRegister(v *store.View, site store.Site, ask registerAsk, view *sitePage) error {
 	k, today := s.ink(), s.today(site)
 	all, found, late, failed := 0, 0, 0, 0
-	match := newSearch(ask.query)
+	match, elsewhere := newSearch(ask.query), []store.DeviceRow(nil)
 	for d, err := range v.Devices(site.ID) {
 		if err != nil {
 			return err
@@ -133,6 +134,9 @@ func (s *Server) buildRegister(v *store.View, site store.Site, ask registerAsk, 
 			if bad {
 				failed++
 			}
+			if d.AtSite != "" {
+				elsewhere = append(elsewhere, d)
+			}
 		}
 		if !ask.wants(d, overdue, bad) || !match.hits(d, k) {
 			continue
@@ -141,6 +145,11 @@ func (s *Server) buildRegister(v *store.View, site store.Site, ask registerAsk, 
 			view.add(s.place(d.Place), s.registerRow(d, today))
 		}
 	}
+	items, err := s.itemsOfSite(v, site, elsewhere)
+	if err != nil {
+		return err
+	}
+	view.Items = items
 	view.Title, view.Heading = site.Name, s.siteHeading(site, failed, late)
 	view.Under = k.say("office.site.under", "n", all, "code", site.Code, "zone", site.Zone)
 	if site.Address != "" {

@@ -81,6 +81,7 @@ export function fieldApp(parts) {
         return { log: l.log, code: l.code, name: l.name, taken: view?.taken, devices: view?.devices.length ?? 0, due: view ? dueIn(view).length : 0 };
       });
     },
+    openSites: () => [...state.sites.keys()].map(siteView),
     siteByCode(code) {
       for (const [log, row] of state.sites) if (row.snapshot.site.code.toLowerCase() === code.toLowerCase()) return siteView(log);
       return null;
@@ -96,6 +97,8 @@ export function fieldApp(parts) {
     route(route, keepSaved) {
       state.route = route;
       if (!keepSaved) state.saved = null;
+      const at = route.page === "site" || route.page === "round" ? app.siteByCode(route.code ?? route.a)?.log : undefined;
+      if (at && at !== state.me.here) remember("here", at); // the site this phone works at
       draw();
     },
     answers: (draft, answers, more) => putDraft({ ...withAnswers(draft, answers, now()), ...more }),

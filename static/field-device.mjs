@@ -8,6 +8,8 @@ import { toSite, toTest } from "./route.mjs";
 import { behind } from "./protection-map.mjs";
 import { openDefects } from "./defect-work.mjs";
 import { Defects } from "./field-failed.mjs";
+import { WhereItIs } from "./field-item.mjs";
+import { travels } from "./items.mjs";
 import { CriticalLoads, ResetsAt } from "./field-dark.mjs";
 
 export function DevicePage({ app, site, device, place }) {
@@ -20,6 +22,7 @@ export function DevicePage({ app, site, device, place }) {
     <main>
       <${Defects} app=${app} device=${device} />
       ${openDefects(device).length > 0 && html`<div class="choose"><a class="big" href=${`#/failed/${device.id}`}><b>${say("failed.link")}</b><span>${say("failed.link_hint")}</span></a></div>`}
+      <${WhereItIs} app=${app} site=${site} device=${device} />
       <${CriticalLoads} app=${app} site=${site} device=${device} />
       <${ResetsAt} app=${app} device=${device} />
       <div class="choose">${forms.map((f) => html`<a class=${due.has(f.task) ? "big go" : "big"} key=${f.form} href=${toTest(device.id, f.task)}>
@@ -45,5 +48,7 @@ function Work({ app, site, device, forms }) {
     ${trips && link("dark", "dark.title", feeds.length > 0 ? say("dark.feeds", { n: feeds.length }) : say("dark.feeds_unknown"))}
     ${link("label", device.tag ? "register.not_this" : "register.bind")}
     ${device.place && link("move", "register.move")}
+    ${travels(device) && link("bring", "item.title")}
+    ${link("flaw", "flaw.title")}
     ${link("replace", "replace.title")}</ul></section>`;
 }

@@ -8,6 +8,8 @@ import { toDevice } from "./route.mjs";
 import { showTag } from "./tag.mjs";
 import { tagTyped } from "./tag-typed.mjs";
 import { Camera } from "./field-scan.mjs";
+import { ItemsHere } from "./field-item.mjs";
+import { travels } from "./items.mjs";
 import { RoundRows, walkWords } from "./field-round.mjs";
 import { backOf, countsOf } from "./walk-round.mjs";
 
@@ -50,6 +52,7 @@ export function DevicesPage({ app, site }) {
         <ul class="rows">${g.devices.map(({ device, place }) => html`<${DeviceRow} app=${app} key=${device.id} device=${device} place=${place} today=${site.today} />`)}</ul></section>`)}
       ${shown.length === 0 && html`<p class="hint pad">${say(error ? "scan.check_hint" : searching ? "field.nothing_found" : "field.nothing_due_hint")}</p>`}
       ${shown.length > most && rows.length === most && html`<button type="button" class="big more" onClick=${() => setMost(most + PAGEFUL)}>${say("field.show_more", { n: Math.min(PAGEFUL, shown.length - most) })}</button>`}
+      ${!searching && html`<${ItemsHere} app=${app} site=${site} />`}
       <p class="pad"><a href=${`#/add/${encodeURIComponent(code)}`}>${say("register.add")}</a></p>
     </main><${Foot} app=${app} />`;
 }
@@ -61,10 +64,16 @@ function DeviceRow({ app, device, place, today }) {
   const due = dueNow(device, today);
   return html`<li><a class="row" href=${toDevice(device.id)}>
     <span class="name">${titleOf(app, device, place)}</span>${device.tag ? html`<span class="tag">${showTag(device.tag)}</span>` : html`<span></span>`}
-    <span class="quiet">${[say(`kind.${device.kind}`), circuitOf(device)].filter(Boolean).join(" · ")}</span>
+    <span class="quiet">${[say(`kind.${device.kind}`), circuitOf(device), awayAt(app, device)].filter(Boolean).join(" · ")}</span>
     ${due.map((d) => html`<span class=${`due ${d.state}`} key=${d.task}>${dueWords(app, d)}</span>`)}
     ${failedTasks(device).map((task) => html`<${Mark} verdict="fail" key=${task}>${say("field.last_failed", { task: say(`task.${task}`), day: showDay(app, device.last[task].day) })}<//>`)}
   </a></li>`;
 }
 
 const failedTasks = (device) => Object.keys(device.last ?? {}).filter((t) => device.last[t].result === "fail");
+
+/** Where an item of this depot is, when it is at another site. */
+function awayAt(app, device) {
+  const at = travels(device) && device.fields?.at_site;
+  return at ? app.say("item.at", { site: app.sites().find((s) => s.log === at)?.name ?? app.say("item.unseen_site") }) : "";
+}

@@ -54,7 +54,7 @@ export function fieldWork(app, parts) {
     formFor: (site, kind, task) => formsFor(site, { kind }).sort((a, b) => Number(b.task === task) - Number(a.task === task))[0],
     feeds: (site, device) => fedBy(site.devices, device.id).map((d) => ({ device: d, place: site.places.get(d.place) })),
     /** What is typed on a page of work is kept like a test's draft, until the page's records are. */
-    setPageDraft: (key, site, fields) => parts.putDraft({ key, device: null, task: "page", log: site.log, form: "", started: now(), changed: now(), answers: {}, series: [], note: "", fields }),
+    setPageDraft: (key, site, fields) => parts.putDraft({ key, device: null, task: "page", log: site.log, form: "", started: now(), changed: now(), answers: {}, series: [], note: "", fields, photos: state.drafts.get(key)?.photos }),
 
     /** One reason for every due test of these devices. */
     keepLocked(site, devices, reason, room) {
@@ -90,14 +90,16 @@ export function fieldWork(app, parts) {
       return draft ? parts.openTest(draft.device, draft.task, draft.key) : null;
     },
     photo: (sha) => tray.photo(sha),
-    async addPhoto(key, { sha256, blob }) {
+    /** begin: makes the draft of a page that has none yet. */
+    async addPhoto(key, { sha256, blob }, begin = () => {}) {
       await tray.putPhoto({ sha256, blob, state: "draft", saved: now() });
+      if (!state.drafts.has(key)) begin();
       const draft = state.drafts.get(key) ?? parts.openTest(...key.split("|"))?.draft;
       if (draft) parts.putDraft({ ...draft, photos: [...new Set([...(draft.photos ?? []), sha256])].slice(0, MOST_PHOTOS), changed: now() });
     },
     removePhoto(key, sha) {
       const draft = state.drafts.get(key);
-      if (draft) parts.putDraft({ ...draft, photos: draft.photos.filter((p) => p !== sha), changed: now() });
+      if (draft) parts.putDraft({ ...draft, photos: (draft.photos ?? []).filter((p) => p !== sha), changed: now() });
       tray.dropPhoto(sha).catch(() => {}); // room only; nothing names it any more
     },
     reason: (draft, reason) => parts.putDraft({ ...draft, reason, changed: now() }),

@@ -14,7 +14,7 @@ export function FailedPage({ app, site, device, place }) {
   const typed = app.pageDraft(key) ?? { locked: false, dead: false, how: circuit ? say("failed.how_breaker", { circuit }) : "", repair: "" };
   const set = (change) => app.setPageDraft(key, site, { ...typed, ...change });
   const dead = typed.locked && typed.dead, title = titleOf(app, device, place), open = openDefects(device);
-  const others = onSameCircuit(site.devices, device).map((d) => [titleOf(app, d, site.places.get(d.place)), site.places.get(d.place)?.critical_load].filter(Boolean).join(": "));
+  const others = onSameCircuit(site.devices, device, site.places).map((d) => [titleOf(app, d, site.places.get(d.place)), site.places.get(d.place)?.critical_load].filter(Boolean).join(": "));
   const form = app.formFor(site, device.kind, failedTask(device) ?? "instrument");
   const keep = async (kind, how, then) => {
     if (how.trim() === "") return;

@@ -35,7 +35,3 @@ export function kindsOf(site) {
   for (const d of site.devices) count.set(d.kind, (count.get(d.kind) ?? 0) + 1);
   return [...count].sort((a, b) => b[1] - a[1]).map(([kind]) => kind);
 }
-
-const PORTABLE = new Set(["cord-set", "portable-gfci", "plug-in-equipment"]);
-/** Items that travel have no place of their own. */
-export const isPortable = (kind) => PORTABLE.has(kind);

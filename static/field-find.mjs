@@ -40,6 +40,13 @@ export function UnknownTagPage({ app, tag }) {
       ${sites.map((s) => html`<section class="room" key=${s.log}>${sites.length > 1 && html`<h2>${s.name}</h2>`}<div class="choose">
         <a class="big go" href=${`#/add/${encodeURIComponent(s.code)}/${good}`}><b>${say("scan.add")}</b><span>${say("scan.add_hint")}</span></a>
         <a class="big" href=${`#/bind/${encodeURIComponent(s.code)}/${good}`}><b>${say("scan.bind")}</b><span>${say("scan.bind_hint")}</span></a></div></section>`)}
+      <${NotHere} app=${app} />
       ${sites.length === 0 && html`<p class="hint pad">${say("field.lost_hint")}</p>`}
     </main><${Foot} app=${app} />`;
+}
+
+/** The label may be of a site whose copy is not here: an item of its depot. What is added here instead can be made one with it later. */
+function NotHere({ app }) {
+  const away = app.sites().filter((s) => !s.taken);
+  return html`<p class="hint pad">${app.say("item.unknown")}${away.length > 0 && html` ${app.say("item.not_along", { sites: away.map((s) => s.name).join(", ") })} <a href="#/along">${app.say("item.take_along")}</a>`}</p>`;
 }

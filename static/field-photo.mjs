@@ -11,7 +11,7 @@ export function Photos({ app, draft }) {
     e.currentTarget.value = "";
     setBusy(true);
     setTrouble(null);
-    for (const file of files) await photoOf(file).then((p) => app.addPhoto(draft.key, p)).catch((err) => setTrouble(err?.name === "QuotaExceededError" ? "photo.full" : "photo.not_read"));
+    for (const file of files) await photoOf(file).then((p) => app.addPhoto(draft.key, p, draft.begin)).catch((err) => setTrouble(err?.name === "QuotaExceededError" ? "photo.full" : "photo.not_read"));
     setBusy(false);
   };
   return html`<section class="ask photos"><span class="q">${say("photo.title", { n: list.length, most: MOST_PHOTOS })}</span>

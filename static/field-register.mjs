@@ -3,8 +3,9 @@
 
 import { html, useState } from "./vendor/htm-preact.mjs";
 import { circuitOf, contextOf, Foot, titleOf, Where } from "./field-parts.mjs";
-import { ChoiceField, isPortable, kindsOf, PlaceFields, TextField } from "./field-fields.mjs";
+import { ChoiceField, kindsOf, PlaceFields, TextField } from "./field-fields.mjs";
 import { FoundRow } from "./field-find.mjs";
+import { isPortable } from "./items.mjs";
 import { TagTaker } from "./field-scan.mjs";
 import { matches } from "./list.mjs";
 import { circuitsOf } from "./own-facts.mjs";

@@ -130,7 +130,7 @@ async function download(name, parts) {
 }
 
 async function readKept(state, tray, along) {
-  for (const name of ["installation", "token", "person", "name", "logs", "instrument", "unfolded", "offset", "last_added", "rounds", "chosen", "former", "backed_up", "people", "server", "heads", "restored"]) state.me[name] = await tray.me(name);
+  for (const name of ["installation", "token", "person", "name", "logs", "instrument", "unfolded", "offset", "last_added", "rounds", "here", "chosen", "former", "backed_up", "people", "server", "heads", "restored"]) state.me[name] = await tray.me(name);
   state.offset = state.me.offset ?? 0;
   const sites = await along.sites();
   state.sites.clear();

@@ -68,15 +68,16 @@ export function keeping(app, { tray, make, now, judgeVersion, soon, keepSending 
 
   /**
    * Register records of one site together: facts [{kind, subject, body, title, summary(id)}]; summary where one is an entry.
-   * drafts: keys that end with them. Resolves to whether they are kept.
+   * drafts: keys that end with them; photos: names of those the first record names. Resolves to whether they are kept.
    */
-  const write = (site, facts, { drafts = [], said } = {}) => once(async () => {
+  const write = (site, facts, { drafts = [], photos = [], said } = {}) => once(async () => {
     const at = now();
     const rows = await tray.keep(site.log, drafts, facts.map(({ title, summary, ...fact }) => (own) => {
       const made = make({ ...fact, log: site.log, at, offset: state.offset ?? 0, ...own });
       return { clock: made.clock, row: { id: made.id, log: site.log, record: made.record, state: "waiting", saved: at, clock: made.clock,
         ...(summary ? { summary: { ...summary(made.id), title } } : { fact: { ...fact, title: title ?? said } }) } };
-    }));
+    }), photos);
+    state.photos = (state.photos ?? 0) + photos.length;
     for (const row of rows) if (row.summary) state.own.add(row.id);
     state.records.push(...rows);
     for (const key of drafts) state.drafts.delete(key);

@@ -40,8 +40,13 @@ const apply = {
       if (site.known.delete(subject)) site.added.push(subject); // walked in its new room from now on
     }
   },
-  "defect.made_safe": (site, { body }) => withDefect(site, body.device, { made_safe: body.how }),
-  "defect.repaired": (site, { body }) => withDefect(site, body.device, { repaired: body.how }),
+  "defect.opened": (site, { subject, body, clock }) => {
+    const device = site.devices.get(body.device);
+    const one = { id: subject, cause: body.cause ?? "by-hand", severity: body.severity ?? "unsafe", state: "open", opened: Number(BigInt(`0x${clock}`) >> 16n), text: body.text, due: body.due ?? "", parts: body.parts, own: true };
+    if (device) withDefect(site, body.device, { defects: [...(device.defects ?? []), one] });
+  },
+  "defect.made_safe": (site, { body }) => saidOfAll(site, body.device, { made_safe: body.how }, { safe: body.how }),
+  "defect.repaired": (site, { body }) => saidOfAll(site, body.device, { repaired: body.how }, { repaired: true }),
   "device.retired": (site, { subject }) => site.devices.delete(subject),
   "device.replaced": (site, { subject, body }) => {
     const old = site.devices.get(subject), now = site.devices.get(body.with);
@@ -58,6 +63,12 @@ const apply = {
 function withDefect(site, id, said) {
   const device = site.devices.get(id);
   if (device) site.devices.set(id, { ...device, ...said });
+}
+
+/** What is said of everything open at a device at that time; defects opened here afterwards are not meant. */
+function saidOfAll(site, id, said, each) {
+  const own = (site.devices.get(id)?.defects ?? []).map((d) => (d.own ? { ...d, ...each } : d));
+  withDefect(site, id, own.length > 0 ? { ...said, defects: own } : said);
 }
 
 function setDevice(site, before, set, clock) {

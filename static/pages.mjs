@@ -7,6 +7,8 @@ import { DarkPage } from "./field-dark.mjs";
 import { DevicePage } from "./field-device.mjs";
 import { DevicesPage } from "./field-devices.mjs";
 import { FailedPage } from "./field-failed.mjs";
+import { FlawPage } from "./field-flaw.mjs";
+import { BringPage } from "./field-item.mjs";
 import { FindPage, UnknownTagPage } from "./field-find.mjs";
 import { HandPage, TakePage } from "./field-hand.mjs";
 import { LostPage } from "./field-parts.mjs";
@@ -20,7 +22,7 @@ import { TrayPage } from "./field-tray.mjs";
 
 const ALONE = { find: FindPage, along: AlongPage, tray: TrayPage, people: PeoplePage };
 const OF_SITE = { add: AddPage, bind: BindPage, round: RoundPage, hand: HandPage, take: TakePage };
-const OF_DEVICE = { label: LabelPage, move: MovePage, replace: ReplacePage, dark: DarkPage, failed: FailedPage, room: RoomPage };
+const OF_DEVICE = { label: LabelPage, move: MovePage, replace: ReplacePage, dark: DarkPage, failed: FailedPage, room: RoomPage, bring: BringPage, flaw: FlawPage };
 
 /** The page of a route; the app is read anew at every drawing. */
 export function Page({ app }) {

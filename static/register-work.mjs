@@ -62,7 +62,7 @@ export function moveFacts({ device, typed, places, newId }) {
 }
 
 /** What the old device leaves to the one in its place; make, model, serial and the day are the new one's own. */
-const HANDED_ON = ["place", "circuit", "rating_a", "nominal_v", "rated_residual_ma", "delayed", "waveform", "equipment_ground", "faces", "limit_set", "fed_by"];
+const HANDED_ON = ["place", "circuit", "rating_a", "nominal_v", "rated_residual_ma", "delayed", "waveform", "equipment_ground", "faces", "limit_set", "fed_by", "where", "at_site"];
 
 /** A new device in the place of an old one, on a day. typed: {kind, make, model, serial}; a portable item's label goes along. */
 export function replaceFacts({ device, typed, reason, on, newId }) {

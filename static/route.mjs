@@ -2,7 +2,7 @@
 // /t/TAG becomes). Pure.
 
 /** Pages of work beside a test, with what they are about: a site's code, a device or an entry. */
-const WORK = new Set(["add", "bind", "label", "move", "replace", "dark", "failed", "correct", "room", "round", "hand", "take"]);
+const WORK = new Set(["add", "bind", "label", "move", "replace", "dark", "failed", "correct", "room", "round", "hand", "take", "bring", "flaw"]);
 
 /** parseRoute(hash, path) → {page, …}; the path counts only when it is a label's address and the hash says nothing. */
 export function parseRoute(hash, path = "") {

@@ -19,6 +19,7 @@ type DeviceRow struct {
 	RatingA, RatedResidualMA      float64
 	Installed                     forms.Day // NoDay where it is not known
 	Retired                       bool
+	Where, AtSite                 string              // of a portable item: where it is kept or is now, in words; the id of the site it is at, "" at its depot
 	Last                          map[string]LastTest // by task
 	Due                           []Due               // by task
 }
@@ -125,6 +126,12 @@ func (v *View) row(sv *siteView, t *thing, w *work, on forms.Day) (DeviceRow, er
 			}
 		case "circuit":
 			circuitID = parseID(jsonText(f.value))
+		case "where":
+			row.Where = jsonText(f.value)
+		case "at_site":
+			if row.AtSite = jsonText(f.value); row.AtSite == sv.ID {
+				row.AtSite = "" // home again
+			}
 		case "#retired":
 			row.Retired = present(f.value) != nil
 		}

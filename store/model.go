@@ -35,7 +35,8 @@ import (
 //	m_tag    tag 7 | site 4 | subject 16 → nothing: a live binding
 //	m_place  site 4 | place 16 | n 4    → nothing: a device whose own place this is
 //	m_circuit site 4 | circuit 16 | 0 or 1 | n 4 → nothing: a device that hangs on this circuit; 0 where it protects all of it
-//	m_feed   site 4 | device 16 | n 4   → nothing: a device that names this one as its source, or as what took its place
+//	m_feed   site 4 | id 16 | n 4       → nothing: a device that names this one as its source, or as what took its place, or
+//	                                      an item of this depot that is at the site of this id
 //	m_code   CODE 0 | site 4            → nothing
 //	m_round  site 4 | n 4               → seqs of the ends and acceptances of a round
 //	m_rule   type 1 | site 4 | name 0 | revision 4 → clock 8 | record 16 | JSON of a form, limit set, plan or list of usual places

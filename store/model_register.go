@@ -30,14 +30,14 @@ type registerBefore struct {
 	place   id16
 	circuit id16
 	other   bool    // hangs on the circuit without protecting it
-	sources [2]id16 // the device it is fed from, and the one that took its place
+	sources [3]id16 // the device it is fed from, the one that took its place, and the site a portable item is at
 	code    string
 }
 
 // stands gives what the indexes are to hold.
 func (r *register) stands() registerBefore {
 	return registerBefore{place: r.idOf("place"), circuit: r.idOf("circuit"), other: !forms.ProtectsCircuit(r.text("kind")),
-		sources: [2]id16{r.idOf("fed_by"), r.idOf("#with")}, code: siteCode(r.text("code"))}
+		sources: [3]id16{r.idOf("fed_by"), r.idOf("#with"), r.idOf("at_site")}, code: siteCode(r.text("code"))}
 }
 
 type field struct {
@@ -251,7 +251,7 @@ var fieldNames = func() map[string]string {
 		"delayed", "waveform", "equipment_ground", "faces", "installed", "limit_set", "formerly", "where", "note", "gauge",
 		"length_m", "building", "floor", "room", "name", "order", "critical_load", "whom_to_tell", "test_from", "test_until", "panel", "numbers",
 		"breaker_a", "poles", "voltage_v", "conductor", "standard", "supply", "location", "code", "zone", "address",
-		"fed_by", "#retired", "#with", "#replaces"} {
+		"fed_by", "at_site", "#retired", "#with", "#replaces"} {
 		m[n] = n
 	}
 	return m

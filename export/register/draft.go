@@ -7,6 +7,7 @@ import (
 	"strings"
 
 	"tripwell/export/intake"
+	"tripwell/forms"
 	"tripwell/store"
 )
 
@@ -224,11 +225,11 @@ func (p *planner) device(site store.Site, key string, row *Row) *rowDevice {
 	if d.was != nil {
 		d.id, d.place = d.was.ID, d.was.Place.ID
 	}
-	if !isPortable(kind) && d.place == "" {
+	if !forms.IsPortable(kind) && d.place == "" {
 		d.place = p.importID("place", row.Site, row.key())
 	}
 	d.tagged = d.place
-	if isPortable(kind) {
+	if forms.IsPortable(kind) {
 		d.tagged = d.id
 	}
 	return d

@@ -15,11 +15,11 @@ import (
 func placeKey(kind, building, floor, room, spot, panel, circuit, serial, tag, kept string) string {
 	parts := []string{"at", building, floor, room, spot}
 	switch {
-	case isPortable(kind) && serial != "":
+	case forms.IsPortable(kind) && serial != "":
 		parts = []string{"serial", serial}
-	case isPortable(kind) && tag != "":
+	case forms.IsPortable(kind) && tag != "":
 		parts = []string{"tag", tag}
-	case isPortable(kind):
+	case forms.IsPortable(kind):
 		parts = []string{"kept", kept}
 	case isAtPanel(kind):
 		parts = append(parts, panel, circuit)

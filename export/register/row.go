@@ -321,7 +321,7 @@ func (row *Row) check(wrong func(column, value, text string)) {
 		wrong("panel", "", "A circuit needs its panel. Fill in the panel.")
 	case len(row.Circuit) > 0 && row.CircuitNo == "":
 		wrong("circuit", "", "A breaker, conductor or supply belongs to a circuit. Fill in panel and circuit.")
-	case isPortable(kind):
+	case forms.IsPortable(kind):
 		if row.Device["serial"] == nil && row.Tag == "" && row.Place["name"] == nil && row.Device["where"] == nil {
 			wrong("serial", "", "A portable item needs something to know it by: fill in its serial, its tag or its place.")
 		}
@@ -333,11 +333,6 @@ func (row *Row) check(wrong func(column, value, text string)) {
 }
 
 func (row *Row) placed() bool { return row.Place["name"] != nil || row.Place["room"] != nil }
-
-// isPortable: the item carries the tag, not the place.
-func isPortable(kind string) bool {
-	return kind == forms.CordSet || kind == forms.PortableGFCI || kind == forms.PlugInEquipment
-}
 
 // isAtPanel: several of them share one place, told apart by their circuit.
 func isAtPanel(kind string) bool {

@@ -1,6 +1,8 @@
 import assert from "node:assert/strict";
 import { test } from "node:test";
-import { onSameCircuit, openDefects, saidFact } from "../defect-work.mjs";
+import { onSameCircuit, openDefects, openedFact, saidFact } from "../defect-work.mjs";
+import { checkRecord, newId } from "../record.mjs";
+import { makeRecord } from "../making.mjs";
 import { withFacts } from "../own-facts.mjs";
 
 test("a failing test of this phone is a defect until the copy knows it; what was said after it counts", () => {
@@ -23,5 +25,20 @@ test("made safe and repaired are laid over the copy until it holds them", () => 
 test("the breaker's other outlets", () => {
   const all = [{ id: "a", panel: "LP", circuit: "3" }, { id: "b", panel: "LP", circuit: "3" }, { id: "c", panel: "LP", circuit: "4" }];
   assert.deepEqual(onSameCircuit(all, all[0]).map((d) => d.id), ["b"]);
+  const behind = [...all, { id: "d", panel: "LP", circuit: "9", place: "p", fields: { fed_by: "b" } }];
+  assert.deepEqual(onSameCircuit(behind, all[0], new Map([["p", { critical_load: "Freezer" }]])).map((d) => d.id), ["d", "b"]);
   assert.deepEqual(onSameCircuit([{ id: "x" }, { id: "y" }], { id: "x" }), []);
+});
+
+test("a defect opened by hand stands at once; what was said safe before it does not count for it, what is said after it does", () => {
+  const id = () => newId(Date.UTC(2026, 11, 1)), device = { id: id(), kind: "receptacle", fields: {} }, photo = "ab".repeat(32);
+  const opened = openedFact({ device, typed: { text: " Cover cracked ", severity: "repair", parts: "cover plate, , screws" }, photos: [photo], newId: id });
+  assert.deepEqual(opened.body, { device: device.id, text: "Cover cracked", severity: "repair", parts: ["cover plate", "screws"], photos: [photo] });
+  const { record, clock } = makeRecord({ ...opened, log: id(), at: Date.UTC(2026, 11, 1), offset: 0, n: 1, installation: id(), person: id() });
+  assert.equal(checkRecord(record), null);
+  const safe = { ...saidFact("defect.made_safe", device, "taped off", id), clock };
+  const first = openDefects(withFacts({ devices: [device] }, [safe, { ...opened, clock }], new Map()).devices[0]);
+  assert.deepEqual(first.map((d) => [d.text, d.severity, d.safe, d.opened]), [["Cover cracked", "repair", undefined, Date.UTC(2026, 11, 1)]]);
+  const then = openDefects(withFacts({ devices: [device] }, [{ ...opened, clock }, safe], new Map()).devices[0]);
+  assert.deepEqual(then.map((d) => d.safe), ["taped off"]);
 });

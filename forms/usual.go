@@ -17,6 +17,8 @@ type UsualPlaces struct {
 	InForce  Day          `json:"in_force"`
 	Standard string       `json:"standard,omitempty"` // sites of another standard are not held against it; "" = all
 	Places   []UsualPlace `json:"places"`
+	// Follows says of a site's list that the organisation's stands here again from InForce on.
+	Follows bool `json:"follows_organisation,omitzero"`
 }
 
 // UsualPlace is one kind of place.

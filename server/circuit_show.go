@@ -23,6 +23,7 @@ type circuitPage struct {
 	OffCritical   string
 	Drawing       drawing
 	Told          []runShown
+	Differs       []foundShown // found otherwise than the map says
 	Checks        []checkShown
 	Facts         []fact
 	Actions       []link
@@ -32,7 +33,15 @@ type circuitPage struct {
 type runShown struct {
 	Href, Spot, What, Critical string
 	Cover                      mark
+	Found                      *foundShown // when somebody tripped what is ahead of it; nil where nothing is known
 	Load                       []runShown
+}
+
+// foundShown is what an outlet was found to be, with who saw it and when.
+type foundShown struct {
+	Mark       mark
+	Spot, Text string // Text says what the map says instead, "" where it agrees
+	Href       string // the test or the defect that says so
 }
 
 func (s *Server) circuitShow(c echo.Context) error {
@@ -47,7 +56,11 @@ func (s *Server) circuitShow(c echo.Context) error {
 			return err
 		}
 		view.Conflicts = s.conflicts(v, lost, s.today(site))
-		s.buildCircuit(site, one, p, &view)
+		found, err := s.foundOn(v, site, p, p.OnCircuit(one.ID), &view)
+		if err != nil {
+			return err
+		}
+		s.buildCircuit(site, one, p, found, &view)
 		return nil
 	})
 	if err != nil {
@@ -56,7 +69,7 @@ func (s *Server) circuitShow(c echo.Context) error {
 	return s.page(c, http.StatusOK, "circuit.html", view)
 }
 
-func (s *Server) buildCircuit(site store.Site, c store.Circuit, p *store.Protection, view *circuitPage) {
+func (s *Server) buildCircuit(site store.Site, c store.Circuit, p *store.Protection, found map[string]*foundShown, view *circuitPage) {
 	k := s.ink()
 	on := alongCircuit(p, c.ID)
 	view.Title = k.say("office.circuit.title", "circuit", cmp.Or(circuitName(c), dash))
@@ -76,9 +89,9 @@ func (s *Server) buildCircuit(site store.Site, c store.Circuit, p *store.Protect
 	view.Drawing = s.drawCircuit(p, c)
 	breakers, runs := p.Runs(c.ID)
 	for _, b := range breakers {
-		view.Told = append(view.Told, s.inWords(p, []forms.Run{{ID: b}})...)
+		view.Told = append(view.Told, s.inWords(p, []forms.Run{{ID: b}}, found)...)
 	}
-	view.Told = append(view.Told, s.inWords(p, runs)...)
+	view.Told = append(view.Told, s.inWords(p, runs, found)...)
 	view.Checks, view.Facts = s.circuitChecks(p, c), s.circuitFactsShown(c)
 	if view.Change {
 		view.Actions = []link{{Href: "/circuits/" + c.ID + "/order", Text: k.say("office.circuit.order")}, {Href: "/circuits/" + c.ID + "/edit", Text: k.say("office.circuit.edit")}}
@@ -99,7 +112,7 @@ func standsShape(stands string) string {
 }
 
 // inWords is the drawing in words.
-func (s *Server) inWords(p *store.Protection, runs []forms.Run) (out []runShown) {
+func (s *Server) inWords(p *store.Protection, runs []forms.Run, found map[string]*foundShown) (out []runShown) {
 	k := s.ink()
 	for _, run := range runs {
 		d, ok := p.Device(run.ID)
@@ -107,7 +120,7 @@ func (s *Server) inWords(p *store.Protection, runs []forms.Run) (out []runShown)
 			continue
 		}
 		out = append(out, runShown{Href: "/devices/" + d.ID, Spot: s.spot(d.DeviceRow), What: joined(k.named("kind", d.Kind), d.Place.Context()),
-			Critical: d.Place.CriticalLoad, Cover: s.coverMark(p, d), Load: s.inWords(p, run.Load)})
+			Critical: d.Place.CriticalLoad, Cover: s.coverMark(p, d), Found: found[d.ID], Load: s.inWords(p, run.Load, found)})
 	}
 	return out
 }

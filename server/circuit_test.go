@@ -139,11 +139,91 @@ func TestProtection_GapsAndTheListBehindThem(t *testing.T) {
 	if page := r.open(manager, "/sites/KILN-LANE/protection"); !strings.Contains(page.body, "This site&#39;s own list looks for: .") {
 		t.Errorf("got %s", page.body)
 	}
+	back := r.openForm(manager, "/sites/KILN-LANE/usual-places")
+	back.Set("follow", "yes")
+	back.Set("reason", "agreed with the insurer")
+	if res := r.submit(manager, "/sites/KILN-LANE/usual-places", back.Encode()); res.status != http.StatusSeeOther {
+		t.Fatalf("back to the organisation's: got %d %s", res.status, res.body)
+	}
+	if page := r.open(manager, "/sites/KILN-LANE/protection"); strings.Contains(page.body, "own list looks for") {
+		t.Error("the site's own list still stands")
+	}
+	if form := r.openForm(manager, "/sites/KILN-LANE/usual-places"); form.Has("follow") || form.Get("on.kitchen") != "yes" {
+		t.Errorf("gone back, the form is of the organisation's list: %v", form)
+	}
+	wantIn(t, r.open(manager, "/set-up").body, "/usual-places")
 	crew := r.signIn(r.person("Crew 9", "crew", r.site))
 	if page := r.open(crew, "/sites/KILN-LANE/protection"); page.status != http.StatusOK || strings.Contains(page.body, "usual-places") {
 		t.Errorf("crew: got %d, or a way to change the list", page.status)
 	}
 	if res := r.open(crew, "/usual-places"); res.status != http.StatusForbidden {
 		t.Errorf("crew may open the list's form: %d", res.status)
+	}
+}
+
+// What somebody found when a protector was tripped stands beside the map, with who and when; what the map cannot explain stands first.
+func TestCircuit_ShowsWhatWasFoundAgainstTheMap(t *testing.T) {
+	r, manager, circuit, device := circuitRig(t)
+	pantry, door, nurses := device["Pantry, by the sink"], device["Pantry, door"], device["Nurses' room"]
+	if res := r.order(manager, circuit, map[string]string{"fed." + door: pantry}); res.status != http.StatusSeeOther {
+		t.Fatalf("got %d", res.status)
+	}
+	h := r.handset(r.crew)
+	found := func(id, dead string) {
+		h.push(h.record("entry.made", r.site, id, set{"form": "protected-receptacle/receptacle", "given": set{"kind": "protected-receptacle"}, "readings": set{"load_dead_when_tripped": dead}, "source": "phone", "read_by": r.crew.ID}).bytes(t))
+	}
+	found(door, "yes")
+	page := r.open(manager, "/circuits/"+circuit).body
+	wantIn(t, page, "Went dark with its protector, ", "seen by "+r.crew.Name)
+	if strings.Contains(page, "otherwise than the map") {
+		t.Error("what agrees with the map is called a difference")
+	}
+	found(door, "no")
+	found(nurses, "yes")
+	page = r.open(manager, "/circuits/"+circuit).body
+	checkPage(t, []byte(page), "normal")
+	wantIn(t, page, "Found otherwise than the map says", "Still live while its protector was tripped", "The map has it behind Pantry, by the sink", "The map shows nothing ahead of it that trips")
+	// A sweep that opens a defect instead of a failing test says the same.
+	opened := h.record("defect.opened", r.site, newID(), set{"device": device["Nurses' room"], "cause": "protection-lost", "protector": pantry, "text": "stayed live", "severity": "unsafe"})
+	if res := r.order(manager, circuit, map[string]string{"fed." + nurses: pantry}); res.status != http.StatusSeeOther {
+		t.Fatalf("got %d", res.status)
+	}
+	h.push(opened.bytes(t))
+	if page := r.open(manager, "/circuits/"+circuit).body; strings.Count(page, "The map has it behind") != 4 { // both, above and in the words of the drawing
+		t.Errorf("got %d", strings.Count(page, "The map has it behind"))
+	}
+}
+
+// A source on another circuit of the site is found by what is typed, and the page says that the two circuits differ.
+func TestDevice_HangsOnADeviceOfAnotherCircuit(t *testing.T) {
+	r, manager, _, device := circuitRig(t)
+	far, place := newID(), newID()
+	r.append(store.Draft{Kind: "circuit.set", Log: r.site, Subject: newID(), Body: set{"set": set{"panel": "LP-9", "numbers": "3"}}})
+	r.append(store.Draft{Kind: "place.registered", Log: r.site, Subject: place, Body: set{"set": set{"name": "Cellar, by the pump"}}},
+		store.Draft{Kind: "device.registered", Log: r.site, Subject: far, Body: set{"set": set{"kind": forms.GFCIReceptacle, "place": place}}})
+	edit := "/devices/" + device["Pantry, door"] + "/edit"
+	for typed, want := range map[string]string{"nowhere": "No device of this site answers", "Pantry": "devices answer to that"} {
+		if typed == "Pantry" {
+			typed = "Kitchen"
+		}
+		if res := r.submit(manager, edit, setAll(r.openForm(manager, edit), "fed_find", typed).Encode()); res.status != http.StatusUnprocessableEntity || !strings.Contains(res.body, want) {
+			t.Errorf("%q: got %d", typed, res.status)
+		}
+	}
+	r.wantTo(manager, edit, setAll(r.openForm(manager, edit), "fed_find", "cellar pump"))
+	must(t, r.store.View(store.Scope{All: true}, func(v *store.View) error {
+		d, err := v.Device(device["Pantry, door"], 0)
+		if d.Fields["fed_by"] != far {
+			t.Errorf("got %v", d.Fields["fed_by"])
+		}
+		return err
+	}))
+	if form := r.openForm(manager, edit); form.Get("fed_by") != far {
+		t.Errorf("the form does not show the source it has: %v", form.Get("fed_by"))
+	}
+	// The far one hung on the near one would close a ring over two circuits.
+	ring := "/devices/" + far + "/edit"
+	if res := r.submit(manager, ring, setAll(r.openForm(manager, ring), "fed_find", "Pantry, door").Encode()); res.status != http.StatusUnprocessableEntity || !strings.Contains(res.body, "close a ring") {
+		t.Errorf("a ring over two circuits: got %d", res.status)
 	}
 }

@@ -1,6 +1,8 @@
 package server
 
 import (
+	"cmp"
+
 	"tripwell/forms"
 	"tripwell/store"
 )
@@ -17,6 +19,7 @@ type chainShown struct {
 	Loops    []string
 	Marking  string // what an outlet without an equipment ground carries
 	Order    link
+	Foreign  string // its source hangs on another circuit than it does
 }
 
 // deviceChain reads a device's chain; portable items have none.
@@ -47,6 +50,9 @@ func (s *Server) deviceChain(v *store.View, d store.Device, today forms.Day, cha
 		if ahead, ok := p.Device(id); ok {
 			out.Ahead = append(out.Ahead, s.chainRow(p, ahead))
 		}
+	}
+	if source, ok := p.Device(own.Source); ok && source.Panel+source.Circuit != own.Panel+own.Circuit && circuit(source.DeviceRow) != "" {
+		out.Foreign = k.say("office.protection.foreign", "source", s.spotIn(source.DeviceRow), "circuit", circuit(source.DeviceRow), "own", cmp.Or(circuit(own.DeviceRow), dash))
 	}
 	lost := p.Lost(d.ID)
 	_, out.Critical = s.goesDark(lost)

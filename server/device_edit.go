@@ -318,6 +318,9 @@ func (s *Server) deviceUpdate(c echo.Context) error {
 		return err
 	}
 	first := f.id(recordField)
+	if err := s.sourceTyped(c, d, f); err != nil {
+		return err
+	}
 	in := s.deviceInput(f)
 	s.itemInput(f, &in, &d)
 	s.atSiteInput(c, f, &in, site, &d)

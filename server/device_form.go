@@ -59,9 +59,9 @@ func (s *Server) deviceForm(c echo.Context, site store.Site, d *store.Device, f 
 		if traits := s.traitGroup(d.Kind, site, q); len(traits.Fields) > 0 {
 			p.Groups = slices.Insert(p.Groups, 2, traits)
 		}
-		if sources := s.deviceSources(c, *d); len(sources) > 1 {
+		if !travels(d) {
 			supply := &p.Groups[len(p.Groups)-1]
-			supply.Fields = append(supply.Fields, q("fed_by", func(f *field) { f.Options = sources }))
+			supply.Fields = append(supply.Fields, q("fed_by", func(q *field) { q.Options = s.deviceSources(c, *d, f.Get("fed_by")) }), q("fed_find", func(f *field) { f.Known, f.Wide = s.sourcesNamed(c, *d), true }))
 		}
 		p.Frame, p.Heading = s.frame(c, k.say("office.device.edit"), "sites"), k.say("office.device.edit_head", "spot", s.spot(d.DeviceRow))
 		p.Crumbs = append(p.Crumbs, link{Href: "/devices/" + d.ID, Text: s.spot(d.DeviceRow)})

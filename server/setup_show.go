@@ -18,6 +18,7 @@ type setupPage struct {
 	Plans                  []planRow
 	LimitSets              []limitSetRow
 	Forms                  []link
+	UsualPlaces            string // "" for who may not change them
 }
 
 type planRow struct{ Href, Name, Kinds, Every, Source, Status string }
@@ -28,7 +29,7 @@ type limitSetRow struct{ Href, Name, Kinds, Revision, Limits string }
 func (s *Server) setupShow(c echo.Context) error {
 	view := setupPage{Frame: s.frame(c, s.words.Say("office.setup.title"), "set-up"), Heading: s.words.Say("office.setup.heading")}
 	if view.Change {
-		view.NewInstrument = "/instruments/new"
+		view.NewInstrument, view.UsualPlaces = "/instruments/new", "/usual-places"
 	}
 	err := s.store.View(scope(c), func(v *store.View) error {
 		instruments, err := v.Instruments()

@@ -123,12 +123,16 @@ type registerAsk struct {
 func (s *Server) buildRegister(v *store.View, site store.Site, ask registerAsk, view *sitePage) error {
 	k, today := s.ink(), s.today(site)
 	all, found, late, failed := 0, 0, 0, 0
+	open, err := v.OpenDefects(site.ID)
+	if err != nil {
+		return err
+	}
 	match, elsewhere := newSearch(ask.query), []store.DeviceRow(nil)
 	for d, err := range v.Devices(site.ID) {
 		if err != nil {
 			return err
 		}
-		overdue, bad := overdueCount(d), anyFailed(d)
+		overdue, bad := overdueCount(d), open[d.ID] > 0
 		if !d.Retired {
 			all, late = all+1, late+overdue
 			if bad {
@@ -273,21 +277,6 @@ func overdueCount(d store.DeviceRow) (n int) {
 		}
 	}
 	return n
-}
-
-func anyFailed(d store.DeviceRow) bool {
-	_, _, ok := newestFail(d)
-	return ok
-}
-
-// newestFail gives the newest last test of a device that failed.
-func newestFail(d store.DeviceRow) (task string, last store.LastTest, ok bool) {
-	for _, t := range sortedKeys(d.Last) {
-		if l := d.Last[t]; l.Result == forms.Fail && (!ok || l.Day > last.Day) {
-			task, last, ok = t, l, true
-		}
-	}
-	return task, last, ok
 }
 
 func registerPager(k ink, action string, ask registerAsk, found int) []link {

@@ -14,8 +14,9 @@ import (
 // usualMore is how many kinds of place a form has room for beside those on the list.
 const usualMore = 2
 
-// usualAt reads the list a form is about: a site's where the address names one, else the organisation's.
-func (s *Server) usualAt(c echo.Context) (list forms.UsualPlaces, site *store.Site, revision int, err error) {
+// usualAt reads the list a form is about: a site's where the address names one, else the organisation's; own tells whether the
+// site has a list of its own.
+func (s *Server) usualAt(c echo.Context) (list forms.UsualPlaces, site *store.Site, own bool, revision int, err error) {
 	err = s.store.View(scope(c), func(v *store.View) error {
 		id, today := "", forms.DayOf(s.store.Now())
 		if name := c.Param("site"); name != "" {
@@ -25,21 +26,22 @@ func (s *Server) usualAt(c echo.Context) (list forms.UsualPlaces, site *store.Si
 			}
 			site, id, today = &one, one.ID, s.today(one)
 		}
-		in, _, err := v.UsualPlaces(id, today)
+		in, of, err := v.UsualPlaces(id, today)
 		if err != nil {
 			return err
 		}
 		if list = (forms.UsualPlaces{ID: forms.UsualPlacesID}); in != nil {
 			list = *in
 		}
+		own = of == store.BySite
 		revision, err = v.NextUsual(id)
 		return err
 	})
-	return list, site, revision, err
+	return list, site, own, revision, err
 }
 
 func (s *Server) usualEdit(c echo.Context) error {
-	list, site, _, err := s.usualAt(c)
+	list, site, own, _, err := s.usualAt(c)
 	if err != nil {
 		return err
 	}
@@ -47,11 +49,11 @@ func (s *Server) usualEdit(c echo.Context) error {
 	if err != nil {
 		return err
 	}
-	return s.formBack(c, f, s.usualForm(c, site, list))
+	return s.formBack(c, f, s.usualForm(c, site, own, list))
 }
 
 func (s *Server) usualUpdate(c echo.Context) error {
-	list, site, revision, err := s.usualAt(c)
+	list, site, own, revision, err := s.usualAt(c)
 	if err != nil {
 		return err
 	}
@@ -65,6 +67,9 @@ func (s *Server) usualUpdate(c echo.Context) error {
 	if next.Revision, next.InForce = revision, forms.DayOf(s.store.Now()); site != nil {
 		log, back, next.InForce = site.ID, siteHref(*site)+"/protection", s.today(*site)
 	}
+	if own && f.Get("follow") == "yes" {
+		next.Places, next.Follows = []forms.UsualPlace{}, true
+	}
 	reason := f.needed("reason", s.words.Say("office.protection.reason"), 300)
 	if f.ok() {
 		if err = s.append(c, store.Draft{ID: first, Kind: "usual.set", Log: log, Subject: store.UsualSubject(), Body: map[string]any{"usual": next, "reason": reason}}); err == nil {
@@ -74,7 +79,7 @@ func (s *Server) usualUpdate(c echo.Context) error {
 			return err
 		}
 	}
-	return s.formBack(c, f, s.usualForm(c, site, list))
+	return s.formBack(c, f, s.usualForm(c, site, own, list))
 }
 
 func usualValues(list forms.UsualPlaces) map[string]string {
@@ -112,7 +117,7 @@ func (s *Server) usualInput(f *typedForm, list forms.UsualPlaces) forms.UsualPla
 	return out
 }
 
-func (s *Server) usualForm(c echo.Context, site *store.Site, list forms.UsualPlaces) formPage {
+func (s *Server) usualForm(c echo.Context, site *store.Site, own bool, list forms.UsualPlaces) formPage {
 	k := s.ink()
 	p := formPage{Frame: s.frame(c, k.say("office.protection.list"), "set-up"), Crumbs: []link{{Href: "/set-up", Text: k.say("office.nav.setup")}},
 		Heading: k.say("office.protection.list"), Lead: k.say("office.protection.list_lead") + " " + k.say("office.protection.prevails"), Action: "/usual-places", Submit: k.say("office.protection.list_save"), Cancel: "/set-up"}
@@ -123,6 +128,9 @@ func (s *Server) usualForm(c echo.Context, site *store.Site, list forms.UsualPla
 	group := func(id, legend string) fieldGroup {
 		return fieldGroup{Legend: legend, Fields: []field{{Name: "on." + id, Label: k.say("office.protection.on"), Type: "check"}, {Name: "name." + id, Label: k.say("office.protection.kind")},
 			{Name: "words." + id, Label: k.say("office.protection.words"), Hint: k.say("office.protection.words_hint")}, {Name: "source." + id, Label: k.say("office.protection.source")}}}
+	}
+	if own {
+		p.Groups = append(p.Groups, fieldGroup{Fields: []field{{Name: "follow", Label: k.say("office.protection.follow"), Type: "check", Hint: k.say("office.protection.follow_hint")}}})
 	}
 	for _, place := range list.Places {
 		p.Groups = append(p.Groups, group(place.Place, place.Name))

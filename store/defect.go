@@ -299,6 +299,30 @@ func (v *View) DefectSums(site string) (DefectSums, error) {
 	return sums, err
 }
 
+// OpenDefects counts the open defects of a site's devices, by device id; a device without any is not among them.
+func (v *View) OpenDefects(site string) (map[string]int, error) {
+	sv, err := v.siteNamed(site)
+	if err != nil {
+		return nil, err
+	}
+	numbers, out := map[uint32]int{}, map[string]int{}
+	err = v.scan(bktOpen, put32(nil, sv.ord), func(_, row []byte) error {
+		numbers[read32(row)]++
+		return nil
+	})
+	for n, count := range numbers {
+		if v.tx.Bucket(bktRegister).Get(registerKey(sv.ord, ofDevice, n)) == nil {
+			continue // tested or found faulty before anybody registered it
+		}
+		id, idErr := v.deviceIDOf(sv, n)
+		if idErr != nil {
+			return nil, idErr
+		}
+		out[id] = count
+	}
+	return out, err
+}
+
 // DefectPast sums up what a site's defects came to.
 type DefectPast struct {
 	Closed     int

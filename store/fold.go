@@ -216,7 +216,7 @@ func (f *fold) work(site, n uint32) (*work, error) {
 	if w := f.works[key]; w != nil {
 		return w, nil
 	}
-	w := &work{start: forms.NoDay, ended: forms.NoDay, came: forms.NoDay, was: workBefore{fail: forms.NoDay}}
+	w := &work{start: forms.NoDay, ended: forms.NoDay, came: forms.NoDay}
 	if v := f.tx.Bucket(bktWork).Get(workKey(site, n)); v != nil {
 		var err error
 		if w, err = unpackWork(v, true); err != nil {

@@ -181,7 +181,7 @@ func (w *work) metBefore(task string, before map[string]forms.Day) forms.Day {
 
 // before is what the indexes hold for a row as it stands.
 func (w *work) before() workBefore {
-	b := workBefore{dates: w.dates, also: w.also, fail: w.failing()}
+	b := workBefore{dates: w.dates, also: w.also}
 	for i := range w.tasks {
 		if t := &w.tasks[i]; len(t.kept) > 0 {
 			b.kept = append(b.kept, taskKept{t.task, t.kept})
@@ -200,7 +200,7 @@ func (b *workBefore) of(task string) []forms.Kept {
 	return nil
 }
 
-// packWorks writes changed work rows and keeps the due index, its sums, what was kept and the failed devices.
+// packWorks writes changed work rows and keeps the due index, its sums and what was kept.
 func (f *fold) packWorks() {
 	for key, w := range f.works {
 		if !w.dirty {
@@ -216,14 +216,6 @@ func (f *fold) packWorks() {
 		for _, k := range w.was.kept {
 			if now.of(k.task) == nil {
 				f.keep(key.site, k.task, k.kept, nil)
-			}
-		}
-		if now.fail != w.was.fail {
-			if w.was.fail != forms.NoDay {
-				f.on(bktFail).delete(failKey(key.site, w.was.fail, key.n))
-			}
-			if now.fail != forms.NoDay {
-				f.on(bktFail).put(failKey(key.site, now.fail, key.n), []byte{})
 			}
 		}
 		w.was = now

@@ -25,7 +25,6 @@ import (
 //	m_keep   site 4 | task              → by month, what became of the dates that are done with
 //	m_occ    site 4 | record 16         → an occasion: cause, day, tasks, how many devices (0 = the whole site)
 //	m_pause  site 4 | pause 16          → the record that stands, days, reason, devices (none = the whole site)
-//	m_fail   site 4 | day 4 | n 4       → nothing: this device failed on that day and has not passed since
 //	m_fact   site 4 | n 4               → seqs of what was said of that device's defects and of its end; of an instrument's certificates and proofs
 //	m_defect site 4 | n 4               → JSON of its defects, where there are any
 //	m_flaw   defect 16 | site 4         → n 4: the device of a defect
@@ -57,7 +56,6 @@ var (
 	bktKeep     = []byte("m_keep")
 	bktOccasion = []byte("m_occ")
 	bktPause    = []byte("m_pause")
-	bktFail     = []byte("m_fail")
 	bktFact     = []byte("m_fact")
 	bktDefect   = []byte("m_defect")
 	bktFlaw     = []byte("m_flaw")
@@ -75,7 +73,7 @@ var (
 )
 
 var modelBuckets = [][]byte{bktSiteLog, bktSite, bktThing, bktRegister, bktWork, bktHistory, bktSaid, bktGranted, bktChange, bktDue, bktSum, bktAlso, bktKeep, bktOccasion, bktPause,
-	bktFail, bktFact, bktDefect, bktFlaw, bktOpen, bktTally, bktBind, bktTag, bktPlace, bktCircuit, bktFeed, bktCode, bktRound, bktRule, bktTodo}
+	bktFact, bktDefect, bktFlaw, bktOpen, bktTally, bktBind, bktTag, bktPlace, bktCircuit, bktFeed, bktCode, bktRound, bktRule, bktTodo}
 
 // Types of things and of rules.
 const (
@@ -131,10 +129,6 @@ func keepKey(site uint32, task string) []byte {
 // saidOfSite is the key of an occasion or a pause.
 func saidOfSite(site uint32, id id16) []byte {
 	return append(put32(make([]byte, 0, 20), site), id[:]...)
-}
-
-func failKey(site uint32, day forms.Day, n uint32) []byte {
-	return put32(putDay(put32(make([]byte, 0, 12), site), day), n)
 }
 
 func flawKey(defect id16, site uint32) []byte {

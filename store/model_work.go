@@ -36,7 +36,6 @@ type work struct {
 type workBefore struct {
 	dates []forms.DueDate
 	also  []alsoOpen
-	fail  forms.Day
 	kept  []taskKept
 }
 
@@ -175,20 +174,6 @@ func (w *work) count(p past, m mark, numbers []figure) {
 			t.met = p.day
 		}
 	}
-}
-
-// failing gives the newest day on which a task failed that has not passed since; NoDay where none has.
-func (w *work) failing() forms.Day {
-	day := forms.NoDay
-	if !w.live {
-		return day
-	}
-	for _, t := range w.tasks {
-		if t.conclusive.result == codeFail && t.conclusive.day > day {
-			day = t.conclusive.day
-		}
-	}
-	return day
 }
 
 func (w *work) met(task string) forms.Day {

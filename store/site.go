@@ -30,7 +30,7 @@ type SiteSums struct {
 	Paused   int       // dates of which a pause holds the day
 	Year     []Month   // the twelve months that end with the day's, as known now
 	DueSoon  int       // dates within the 31 days after the day asked for, the day included
-	Failed   int       // devices of which some task failed and has not passed since
+	Failed   int       // devices with an open defect
 	NextDay  forms.Day // the earliest date that is overdue, else the earliest not yet passed; NoDay for none
 	NextTask string    // of that date; of several the first by name
 }
@@ -146,11 +146,15 @@ func (v *View) SitesSums() ([]SiteSums, error) {
 
 func (v *View) sumSite(sv *siteView, on forms.Day) (SiteSums, error) {
 	sums := SiteSums{Site: sv.Site, NextDay: forms.NoDay}
-	prefix := put32(nil, sv.ord)
-	c := v.tx.Bucket(bktFail).Cursor()
-	for k, _ := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, _ = c.Next() {
-		sums.Failed++
+	devices := map[uint32]bool{}
+	err := v.scan(bktOpen, put32(nil, sv.ord), func(_, row []byte) error {
+		devices[read32(row)] = true
+		return nil
+	})
+	if err != nil {
+		return sums, err
 	}
+	sums.Failed = len(devices)
 	return sums, v.sumDates(sv, on, &sums)
 }
 

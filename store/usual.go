@@ -10,7 +10,7 @@ func (v *View) UsualPlaces(site string, on forms.Day) (list *forms.UsualPlaces, 
 		if err != nil {
 			return nil, "", err
 		}
-		if list := v.rules().usualOn(sv.ord, on); list != nil {
+		if list := v.rules().usualOn(sv.ord, on); list != nil && !list.Follows {
 			return list, BySite, nil
 		}
 	}

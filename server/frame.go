@@ -24,13 +24,19 @@ type Frame struct {
 	Today   string // of the server, with its weekday; sites have their own
 	Demo    bool   // invented data, said on every page
 	Refresh int    // seconds after which the page reads itself again; 0 = never
-	Change  bool   // the reader may change things: show what leads to forms
+	// Insecure is "" where the browser came by a way it keeps work on; else the address to go to instead, "?" where none is known.
+	Insecure string
+	Change   bool // the reader may change things: show what leads to forms
 }
 
 // frame fills the Frame of the request's caller.
 func (s *Server) frame(c echo.Context, title, here string) Frame {
 	p := person(c)
-	return Frame{Title: title, Here: here, Name: p.Name, Role: p.Role, Today: s.ink().longDay(forms.DayOf(s.store.Now())), Demo: s.store.Demo(), Change: p.Role == "manager"}
+	f := Frame{Title: title, Here: here, Name: p.Name, Role: p.Role, Today: s.ink().longDay(forms.DayOf(s.store.Now())), Demo: s.store.Demo(), Change: p.Role == "manager"}
+	if insecure(c.Request()) {
+		f.Insecure = s.secureElsewhere()
+	}
+	return f
 }
 
 // readPages parses server/pages once. layout.html and files whose names begin with _ are parts of every page; every other

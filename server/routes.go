@@ -54,6 +54,11 @@ func publicRoutes() []route {
 		// a person's calendar, by its secret address
 		{get, "/calendar/:token", anyone, (*Server).feedShow, 0},
 
+		// trust in the house's own authority
+		{get, "/trust", anyone, (*Server).trustShow, 0},
+		{get, "/trust/" + certificateName, anyone, (*Server).trustCertificate, 0},
+		{get, "/trust/" + profileName, anyone, (*Server).trustProfile, 0},
+
 		// exchange
 		{post, "/exchange/enrol", crew | manager, (*Server).exchangeEnrol, 0},
 		{post, "/exchange/renew", phone, (*Server).exchangeRenew, 0},
@@ -218,5 +223,16 @@ func publicRoutes() []route {
 		{post, "/people/:person", manager, (*Server).personUpdate, 0},
 		{post, "/people/:person/link", manager, (*Server).personLink, 0},
 		{post, "/people/:person/code", manager, (*Server).personCode, 0},
+	}
+}
+
+// plainRoutes is everything that is answered over http beside the TLS of the house's own authority.
+func plainRoutes() []route {
+	return []route{
+		{get, "/", anyone, (*Server).trustShow, 0},
+		{get, "/" + certificateName, anyone, (*Server).trustCertificate, 0},
+		{get, "/" + profileName, anyone, (*Server).trustProfile, 0},
+		{get, "/assets/*", anyone, (*Server).assetShow, 0},
+		{get, "/*", anyone, (*Server).trustElsewhere, 0},
 	}
 }

@@ -16,6 +16,7 @@ import (
 	"log/slog"
 	"net"
 	"net/http"
+	"net/netip"
 	"sync"
 	"sync/atomic"
 	"time"
@@ -32,6 +33,12 @@ type Options struct {
 	// Alone says that no public face is served beside the owner's: a command opened the store by itself. Only then may
 	// the read models be rebuilt.
 	Alone bool
+	// Certificates are for TLS of the server's own; nil: the public address is answered over plain http.
+	Certificates Certificates
+	// Plain is where http is answered beside TLS; nil: nowhere. Serve closes it.
+	Plain net.Listener
+	// Behind are the addresses of proxies whose word is taken for where a request came from.
+	Behind []netip.Prefix
 }
 
 // Server serves one store.
@@ -44,12 +51,17 @@ type Server struct {
 	pages   map[string]*template.Template
 	cross   *http.CrossOriginProtection
 	wrong   *wrongLinks
-	guesses *guesses
 	image   atomic.Pointer[store.Image] // the backup that is being taken away
 	drawing sync.Mutex                  // pictures are drawn anew one at a time
 	imports *importArea                 // registers
 	results *importArea                 // tests made elsewhere
 	makings *makingArea                 // workbooks for the office pages
+	guesses *guesses
+
+	certificates Certificates
+	plain        net.Listener
+	behind       []netip.Prefix
+	port         string // of the public address, once it is served
 }
 
 // New reads the pages, the words and the files for browsers; all of them are embedded, so an error is a fault of the build.
@@ -58,7 +70,8 @@ func New(s *store.Store, o Options) (*Server, error) {
 	if err != nil {
 		return nil, err
 	}
-	srv := &Server{store: s, log: o.Log, alone: o.Alone, words: words, cross: http.NewCrossOriginProtection(), wrong: newWrongLinks(), guesses: newGuesses(), imports: newImportArea(), results: newImportArea(), makings: newMakingArea()}
+	srv := &Server{store: s, log: o.Log, alone: o.Alone, words: words, cross: http.NewCrossOriginProtection(), wrong: newWrongLinks(), guesses: newGuesses(), imports: newImportArea(), results: newImportArea(), makings: newMakingArea(),
+		certificates: o.Certificates, plain: o.Plain, behind: o.Behind}
 	if srv.log == nil {
 		srv.log = slog.New(slog.DiscardHandler)
 	}
@@ -72,7 +85,7 @@ func New(s *store.Store, o Options) (*Server, error) {
 }
 
 // Handler is the public face.
-func (s *Server) Handler() http.Handler { return s.face(publicRoutes()) }
+func (s *Server) Handler() http.Handler { return s.arrived(s.face(publicRoutes())) }
 
 // OwnerHandler is the face of whoever may open the folder's socket. It asks for no sign-in: the socket's mode is the lock.
 func (s *Server) OwnerHandler() http.Handler { return s.face(ownerRoutes()) }
@@ -82,7 +95,7 @@ func (s *Server) face(table []route) http.Handler {
 	e.HideBanner, e.HidePort = true, true
 	e.HTTPErrorHandler = s.fail
 	e.IPExtractor = echo.ExtractIPDirect()
-	e.Use(s.logged, s.recovered, s.headers)
+	e.Use(s.logged, s.recovered, s.headers, s.secured)
 	for _, r := range table {
 		e.Add(r.method, r.path, s.guard(r))
 	}
@@ -100,25 +113,49 @@ const (
 	maxHeaderBytes    = 16 << 10
 )
 
-// Serve answers on both listeners until ctx ends, then finishes what is under way (at most 10 s). owner may be nil.
-// It closes both listeners.
-func (s *Server) Serve(ctx context.Context, public, owner net.Listener) error {
-	front := &http.Server{
-		Handler: s.Handler(), ReadHeaderTimeout: readHeaderTimeout, ReadTimeout: readTimeout, WriteTimeout: writeTimeout,
+// front serves browsers and phones.
+func (s *Server) front(h http.Handler) *http.Server {
+	return &http.Server{
+		Handler: h, ReadHeaderTimeout: readHeaderTimeout, ReadTimeout: readTimeout, WriteTimeout: writeTimeout,
 		IdleTimeout: idleTimeout, MaxHeaderBytes: maxHeaderBytes, ErrorLog: slog.NewLogLogger(s.log.Handler(), slog.LevelDebug),
 	}
+}
+
+// faces are the servers of all listeners. owner may be nil.
+func (s *Server) faces(public, owner net.Listener) map[*http.Server]net.Listener {
+	_, s.port, _ = net.SplitHostPort(public.Addr().String())
+	front := s.front(s.Handler())
 	servers := map[*http.Server]net.Listener{front: public}
+	if s.certificates != nil {
+		front.TLSConfig = s.certificates.config()
+		if s.plain != nil {
+			servers[s.front(s.certificates.plain(s, s.port))] = s.plain
+		}
+	}
 	if owner != nil {
 		// No write time-out: a check of a large book may think for minutes before its last line.
 		servers[&http.Server{Handler: s.OwnerHandler(), ReadHeaderTimeout: readHeaderTimeout, IdleTimeout: idleTimeout, MaxHeaderBytes: maxHeaderBytes}] = owner
 	}
+	return servers
+}
+
+// Serve answers on all listeners until ctx ends, then finishes what is under way (at most 10 s). owner may be nil.
+// It closes the listeners.
+func (s *Server) Serve(ctx context.Context, public, owner net.Listener) error {
+	servers := s.faces(public, owner)
 	beside, stopBeside := context.WithCancel(ctx)
 	var working sync.WaitGroup
 	working.Go(func() { s.signHeads(beside) })
 	ended := make(chan error, len(servers))
 	go s.remind(ctx)
 	for srv, l := range servers {
-		go func() { ended <- srv.Serve(l) }()
+		go func() {
+			if srv.TLSConfig != nil {
+				ended <- srv.ServeTLS(l, "", "")
+				return
+			}
+			ended <- srv.Serve(l)
+		}()
 	}
 	var failed error
 	select {

@@ -22,15 +22,8 @@ const (
 // plainLoopback reports a request over plain http from this machine to a loopback address, with no proxy between: a
 // proxy on this machine also arrives from loopback, but says for whom.
 func plainLoopback(r *http.Request) bool {
-	if r.TLS != nil || !loopback(r.RemoteAddr) || !loopback(r.Host) {
-		return false
-	}
-	for _, h := range []string{"Forwarded", "X-Forwarded-For", "X-Forwarded-Proto", "X-Forwarded-Host", "X-Real-Ip"} {
-		if r.Header.Get(h) != "" {
-			return false
-		}
-	}
-	return true
+	a := passageOf(r)
+	return !a.secure && !a.passed && loopback(r.RemoteAddr) && loopback(r.Host)
 }
 
 func loopback(hostport string) bool {

@@ -54,7 +54,7 @@ func (s *Server) worker(page []byte) (string, error) {
 // workerShow answers /sw.js. It lies at the root because a worker may only answer what lies below it, and labels do.
 func (s *Server) workerShow(c echo.Context) error {
 	var page bytes.Buffer
-	if err := s.pages["field.html"].Execute(&page, shellFrame()); err != nil {
+	if err := s.pages["field.html"].Execute(&page, s.shellFrame()); err != nil {
 		return fmt.Errorf("worker: %w", err)
 	}
 	script, err := s.worker(page.Bytes())

@@ -3,6 +3,7 @@ package server
 import (
 	"net/http"
 	"net/url"
+	"strings"
 
 	"github.com/labstack/echo/v4"
 
@@ -63,8 +64,20 @@ func (s *Server) deviceOfTag(sc store.Scope, tag string) (device string, err err
 // anybody's: an enrolled phone works by its own token long after the browser's session has ended, and a phone that is not
 // enrolled is told 401 by the exchange and sends its reader to /in?next=/field.
 func (s *Server) fieldShow(c echo.Context) error {
-	return s.page(c, http.StatusOK, "field.html", shellFrame())
+	return s.page(c, http.StatusOK, "field.html", s.shellFrame())
 }
 
 // shellFrame is the same for everybody: phones keep the shell and open it for whoever holds them.
-func shellFrame() Frame { return Frame{Title: "Tripwell", Here: "field"} }
+func (s *Server) shellFrame() shellPage {
+	p := shellPage{Frame: Frame{Title: "Tripwell", Here: "field"}}
+	if s.store != nil {
+		p.Secure = strings.ToLower(s.store.URL())
+	}
+	return p
+}
+
+// shellPage is the field client's page. Secure is the address on the labels, for a browser that came another way.
+type shellPage struct {
+	Frame
+	Secure string
+}

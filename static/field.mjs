@@ -70,7 +70,7 @@ async function start() {
     offered: (yes) => { app.state.newer = yes; app.changed(); }, load: () => location.reload(), later: (fn, ms) => setTimeout(fn, ms) });
   const others = otherPages(async () => { await readKept(app.state, tray, along); app.changed(); });
   Object.assign(app, { takeNewer: version.take, goOn: sync.goOn, understood: () => app.remember("restored", null) }, peopleHere(app, { tray, now }), caring({ app, tray, now, make: makeRecord, choose: sync.choose, send: () => sender.kick(), download }));
-  app.state.insecure = !globalThis.isSecureContext;
+  app.state.insecure = globalThis.isSecureContext ? null : { at: document.querySelector("#field").dataset.secure };
   const onRoute = () => {
     app.route(parseRoute(location.hash, location.pathname), keepSaved);
     keepSaved = false;

@@ -80,7 +80,7 @@ func (s *Store) SignedHead() (string, error) {
 	if err != nil {
 		return "", fmt.Errorf("keep head: %w", err)
 	}
-	if err := s.writeKey(headFile, kept); err != nil {
+	if err := s.WriteKey(headFile, kept); err != nil {
 		return "", err
 	}
 	return note, s.keepHead(seq, note)
@@ -172,15 +172,18 @@ func (s *Store) signingKey() (string, error) {
 	if err != nil {
 		return "", fmt.Errorf("make signing key: %w", err)
 	}
-	if err := s.writeKey(pubFile, []byte(public+"\n")); err != nil {
+	if err := s.WriteKey(pubFile, []byte(public+"\n")); err != nil {
 		return "", err
 	}
-	return private, s.writeKey(keyFile, []byte(private+"\n"))
+	return private, s.WriteKey(keyFile, []byte(private+"\n"))
 }
 
-// writeKey writes a file of DIR/keys whole or not at all, on the disk before it returns.
-func (s *Store) writeKey(name string, content []byte) error {
-	dir := filepath.Join(s.dir, keysDir)
+// KeysDir is the folder of what must not be read by others: DIR/keys, mode 0700.
+func (s *Store) KeysDir() string { return filepath.Join(s.dir, keysDir) }
+
+// WriteKey writes a file of DIR/keys whole or not at all, on the disk before it returns.
+func (s *Store) WriteKey(name string, content []byte) error {
+	dir := s.KeysDir()
 	if err := os.MkdirAll(dir, 0o700); err != nil {
 		return fmt.Errorf("keep %s: %w", name, err)
 	}

@@ -78,7 +78,7 @@ func (s *Store) SetMailSettings(ctx context.Context, m MailSettings, secret *str
 	}
 	return s.do(ctx, 1, func(g *group) error {
 		if secret != nil {
-			if err := s.writeKey(mailFile, []byte(*secret)); err != nil {
+			if err := s.WriteKey(mailFile, []byte(*secret)); err != nil {
 				return err
 			}
 		}

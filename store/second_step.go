@@ -278,7 +278,7 @@ func (s *Store) secondSeal(create bool) (cipher.AEAD, error) {
 	if errors.Is(err, fs.ErrNotExist) && create {
 		key = make([]byte, 32)
 		_, _ = rand.Read(key) // never fails (crypto/rand)
-		err = s.writeKey(secondFile, key)
+		err = s.WriteKey(secondFile, key)
 	}
 	if errors.Is(err, fs.ErrNotExist) {
 		return nil, &Error{Code: "conflict", Field: "code", Text: "The key that second steps were kept under is gone, as after a restore without it. Sign in by a manager's link and set the second step up anew."}

@@ -11,6 +11,7 @@ import (
 	"syscall"
 	"time"
 
+	"tripwell/server"
 	"tripwell/store"
 	"tripwell/store/demo"
 )
@@ -40,7 +41,8 @@ func (c demoCmd) Run(e *env) error {
 	if err != nil {
 		return errors.Join(err, public.Close())
 	}
-	err = serve(e, s, dir, public, func() error { return greetDemo(e, s, dir, public) })
+	// Whoever tries it out wants to read the greeting, not each request.
+	err = serve(e, s, dir, public, server.Options{Log: logTo(e, slog.LevelWarn)}, func() error { return greetDemo(e, s, dir, public) })
 	return errors.Join(err, s.Close())
 }
 

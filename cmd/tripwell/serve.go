@@ -21,11 +21,12 @@ type serveCmd struct {
 	folder
 	Listen string `name:"listen" required:"" placeholder:"ADDR" help:"Address and port to listen on, as 127.0.0.1:8080."`
 	URL    string `name:"url" placeholder:"URL" help:"Address that goes on labels, as https://tests.example.org; kept with the store, needed once."`
+	tlsFlags
 }
 
 // Help gives an example.
 func (serveCmd) Help() string {
-	return "Serves the store in a folder until it is stopped (Ctrl+C or SIGTERM) and makes one there when the folder is empty. The first start prints a link with which the first manager signs in.\n\nExample:\n\n    tripwell serve --data /srv/tripwell --listen 127.0.0.1:8080 --url https://tests.example.org"
+	return "Serves the store in a folder until it is stopped (Ctrl+C or SIGTERM) and makes one there when the folder is empty. The first start prints a link with which the first manager signs in.\n\nExample:\n\n    tripwell serve --data /srv/tripwell --listen 127.0.0.1:8080 --url https://tests.example.org --behind 127.0.0.1\n\nWith certificates of its own, for phones in the house:\n\n    tripwell serve --data /srv/tripwell --listen 0.0.0.0:443 --url https://tests.lan --tls local"
 }
 
 // firstLinkFor is how long the first manager's link holds.
@@ -39,11 +40,19 @@ func (c serveCmd) Run(e *env) error {
 	if err := checkURL(c.URL); err != nil {
 		return err
 	}
-	// The port first: a start that cannot listen makes no store.
+	if err := c.check(); err != nil {
+		return err
+	}
+	// The ports first: a start that cannot listen makes no store.
 	public, err := listen(c.Listen)
 	if err != nil {
 		return err
 	}
+	plain, err := c.listenPlain(public.Addr().String())
+	if err != nil {
+		return errors.Join(err, public.Close())
+	}
+	defer closeListener(plain)
 	s, err := store.Open(c.Data, store.Options{Now: time.Now, Create: true, URL: c.URL, Log: logTo(e, slog.LevelInfo)})
 	if err != nil {
 		return errors.Join(err, public.Close())
@@ -52,17 +61,41 @@ func (c serveCmd) Run(e *env) error {
 		err = fmt.Errorf("%s holds a demo store, which is served on this machine only: use tripwell demo --data %s", c.Data, c.Data)
 		return errors.Join(err, public.Close(), s.Close())
 	}
-	err = serve(e, s, c.Data, public, func() error { return c.greet(e, s, public) })
+	err = c.serve(e, s, public, plain)
 	return errors.Join(err, s.Close())
 }
 
+func (c serveCmd) serve(e *env, s *store.Store, public, plain net.Listener) error {
+	log := logTo(e, slog.LevelInfo)
+	certificates, err := c.certificates(s, log)
+	if err != nil {
+		return errors.Join(err, public.Close())
+	}
+	proxies, err := c.proxies()
+	if err != nil {
+		return errors.Join(err, public.Close())
+	}
+	o := server.Options{Log: log, Certificates: certificates, Plain: plain, Behind: proxies}
+	return serve(e, s, c.Data, public, o, func() error { return c.greet(e, s, public, plain, certificates) })
+}
+
+// closeListener closes what may be nil or closed already.
+func closeListener(l net.Listener) {
+	if l != nil {
+		_ = l.Close()
+	}
+}
+
 // greet says where the store is served and, while nobody has signed in yet, gives the first manager's link.
-func (c serveCmd) greet(e *env, s *store.Store, public net.Listener) error {
+func (c serveCmd) greet(e *env, s *store.Store, public, plain net.Listener, certificates server.Certificates) error {
 	token, err := firstLink(e.ctx, s)
 	if err != nil {
 		return err
 	}
 	here := localURL(public)
+	if c.on() {
+		here = "https" + strings.TrimPrefix(here, "http")
+	}
 	if token != "" {
 		fmt.Fprintf(e.stdout, "The first manager signs in once with this link, within 7 days:\n\n  on this machine  %s/in/%s\n", here, token)
 		if u := s.URL(); u != "" {
@@ -70,8 +103,8 @@ func (c serveCmd) greet(e *env, s *store.Store, public net.Listener) error {
 		}
 		fmt.Fprintln(e.stdout)
 	}
-	if host, _, _ := net.SplitHostPort(public.Addr().String()); !net.ParseIP(host).IsLoopback() {
-		fmt.Fprint(e.stdout, "Other machines sign in over https only: put a web server with a certificate in front of this address.\n\n")
+	if err := c.tlsFlags.greet(e.stdout, certificates, s, public, plain); err != nil {
+		return err
 	}
 	_, err = fmt.Fprintf(e.stdout, "Tripwell serves %s at %s\nStop it with Ctrl+C.\n", c.Data, here)
 	return err
@@ -127,12 +160,8 @@ func everSignedIn(s *store.Store) (bool, error) {
 
 // serve answers on the public address and on the owner's socket until the command is told to stop. It greets when both
 // are open: what the greeting says can be used at once.
-func serve(e *env, s *store.Store, dir string, public net.Listener, greet func() error) error {
-	level := slog.LevelInfo
-	if s.Demo() {
-		level = slog.LevelWarn // whoever tries it out wants to read the greeting, not each request
-	}
-	srv, err := server.New(s, server.Options{Log: logTo(e, level)})
+func serve(e *env, s *store.Store, dir string, public net.Listener, o server.Options, greet func() error) error {
+	srv, err := server.New(s, o)
 	if err != nil {
 		return errors.Join(err, public.Close())
 	}

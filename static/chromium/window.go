@@ -25,6 +25,38 @@ type Window struct {
 // Option changes how a window is opened.
 type Option func(*setup)
 
+// Host lets the window find a name at an address of this machine, as a house's own name server does. Unlike localhost such a
+// name is secure only over https.
+func Host(name, addr string) Option {
+	return func(s *setup) {
+		s.flags = append(s.flags, chromedp.Flag("host-resolver-rules", "MAP "+name+" "+addr))
+	}
+}
+
+// Trusting opens the window of somebody whose home holds an authority their browser was told to trust; cert is its
+// certificate (DER). Debian's Chromium reads such authorities from an NSS database.
+func Trusting(t testing.TB, cert []byte) Option {
+	t.Helper()
+	certutil, err := exec.LookPath("certutil")
+	if err != nil {
+		if os.Getenv("CI") != "" {
+			t.Fatal("certutil (libnss3-tools) is not installed, and in CI this test must run")
+		}
+		t.Skip("certutil (libnss3-tools) is not installed: a browser cannot be told here whom to trust")
+	}
+	home := t.TempDir()
+	db := filepath.Join(home, ".pki", "nssdb")
+	if err := os.MkdirAll(db, 0o700); err != nil {
+		t.Fatal(err)
+	}
+	for _, args := range [][]string{{"-N", "--empty-password"}, {"-A", "-n", "authority", "-t", "C,,", "-i", write(t, "authority.crt", cert)}} {
+		if out, err := exec.Command(certutil, append([]string{"-d", "sql:" + db}, args...)...).CombinedOutput(); err != nil {
+			t.Fatalf("certutil %v: %v\n%s", args, err, out)
+		}
+	}
+	return func(s *setup) { s.flags = append(s.flags, chromedp.Env("HOME="+home)) }
+}
+
 type setup struct {
 	width, height int
 	profile       string
@@ -130,6 +162,9 @@ func (w *Window) Do(actions ...chromedp.Action[chromedp.Void]) {
 
 // Open goes to an address.
 func (w *Window) Open(url string) { w.T.Helper(); w.Do(chromedp.Navigate(url)) }
+
+// Try goes to an address that the browser may refuse.
+func (w *Window) Try(url string) error { return chromedp.Do(w.Ctx, chromedp.Navigate(url)) }
 
 // Reload loads the page again.
 func (w *Window) Reload() { w.T.Helper(); w.Do(chromedp.Reload()) }

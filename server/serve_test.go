@@ -56,7 +56,7 @@ func TestPages_HostileTextStaysText(t *testing.T) {
 		"signin.html":      askPage{Frame: frame, Next: hostile, Problem: hostile},
 		"signin_link.html": linkPage{Frame: frame, Person: hostile, Action: "javascript:alert(1)", Next: hostile},
 		"error.html":       errorPage{Frame: frame, Text: hostile},
-		"field.html":       frame,
+		"field.html":       shellPage{Frame: frame, Secure: hostile},
 	} {
 		for _, v := range []any{view, empty(view)} {
 			var b strings.Builder
@@ -81,5 +81,5 @@ func empty(view any) any {
 	case errorPage:
 		return errorPage{}
 	}
-	return Frame{}
+	return shellPage{}
 }

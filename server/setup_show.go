@@ -19,6 +19,7 @@ type setupPage struct {
 	LimitSets              []limitSetRow
 	Forms                  []link
 	UsualPlaces            string // "" for who may not change them
+	Trust                  bool   // phones are to be told to trust this server
 }
 
 type planRow struct{ Href, Name, Kinds, Every, Source, Status string }
@@ -28,6 +29,7 @@ type limitSetRow struct{ Href, Name, Kinds, Revision, Limits string }
 
 func (s *Server) setupShow(c echo.Context) error {
 	view := setupPage{Frame: s.frame(c, s.words.Say("office.setup.title"), "set-up"), Heading: s.words.Say("office.setup.heading")}
+	_, view.Trust = s.certificates.(*Authority)
 	if view.Change {
 		view.NewInstrument, view.UsualPlaces = "/instruments/new", "/usual-places"
 	}

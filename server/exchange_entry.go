@@ -22,7 +22,7 @@ func (s *Server) exchangeEntry(c echo.Context) error {
 		if err != nil {
 			return err
 		}
-		if e.Sealed || e.Imported {
+		if e.Sealed != nil || e.Imported {
 			return refuse(codeConflict, "id", "This entry cannot be corrected on a phone. A manager can do it in the office.")
 		}
 		answer.By = e.By

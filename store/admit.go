@@ -41,7 +41,13 @@ func (s *Store) Admit(ctx context.Context, sc Scope, sha256, reason string) (Rec
 		if err != nil {
 			return err
 		}
-		if ok && bytes.Equal(had.raw, raw) {
+		same := false
+		if ok {
+			if same, _, err = g.isSame(had, raw); err != nil {
+				return err
+			}
+		}
+		if same {
 			receipt = g.receipt(r.ID, "already", had.log, had.pos)
 			return nil
 		}

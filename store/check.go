@@ -25,6 +25,7 @@ import (
 type CheckReport struct {
 	Records, Logs, Refused int64
 	Gaps, Reused           int64
+	Sealed                 int64 // records whose bytes were dropped
 	ViewHash               string
 	Head                   string // signed note text, when one can be signed
 	Problems               []string
@@ -105,7 +106,7 @@ func (s *Store) checkImage(ctx context.Context, path string, report *CheckReport
 		if len(report.Problems) > 0 {
 			return nil // what follows would stumble over the same pages
 		}
-		c := &checker{tx: tx, report: report, logs: map[uint32]*proof.Edge{}}
+		c := &checker{tx: tx, report: report, logs: map[uint32]*proof.Edge{}, unsealed: map[string]string{}}
 		total := int64(0)
 		if k, _ := tx.Bucket(bktRec).Cursor().Last(); k != nil {
 			total = int64(binary.BigEndian.Uint64(k))
@@ -146,9 +147,10 @@ func (s *Store) checkImage(ctx context.Context, path string, report *CheckReport
 
 // checker walks the book of one image.
 type checker struct {
-	tx     *bbolt.Tx
-	report *CheckReport
-	logs   map[uint32]*proof.Edge
+	tx       *bbolt.Tx
+	report   *CheckReport
+	logs     map[uint32]*proof.Edge
+	unsealed map[string]string // records without bytes, by id → their log, until a record.sealed names them
 }
 
 func (c *checker) book(ctx context.Context, progress func(done int64)) error {
@@ -177,6 +179,9 @@ func (c *checker) book(ctx context.Context, progress func(done int64)) error {
 		c.record(seq, k, v, ids, leaves, names)
 	}
 	c.report.Records = int64(seq)
+	for id := range c.unsealed {
+		c.report.problem("The bytes of record %s were dropped, and no record says that it was sealed.", id)
+	}
 	c.totals(ids, leaves, names)
 	c.quarantine()
 	return nil
@@ -189,7 +194,7 @@ func (c *checker) record(seq uint64, k, v []byte, ids, leaves *bbolt.Bucket, nam
 		c.report.problem("Record %d of the book cannot be read: %v.", seq, err)
 		return
 	}
-	r, f := record.Parse(rec.raw)
+	r, f := record.Stored(rec.raw)
 	if f != nil {
 		c.report.problem("Record %d of the book breaks a rule: %s", seq, f.Text)
 		return
@@ -208,7 +213,7 @@ func (c *checker) record(seq uint64, k, v []byte, ids, leaves *bbolt.Bucket, nam
 		edge = &proof.Edge{}
 		c.logs[rec.ord] = edge
 	}
-	hashes := edge.Append(proof.LeafHash(record.Leaf(rec.stamp, r.Raw)))
+	hashes := edge.Append(leafOf(r, rec.stamp))
 	if rec.pos != edge.Size {
 		c.report.problem("Record %s says it stands at %d of its log; it stands at %d.", r.ID, rec.pos, edge.Size)
 	}
@@ -219,8 +224,14 @@ func (c *checker) record(seq uint64, k, v []byte, ids, leaves *bbolt.Bucket, nam
 	if !bytes.Equal(leaves.Get(logKey(rec.ord, edge.Size)), want) {
 		c.report.problem("The leaf of record %s at %d of log %s does not belong to its bytes.", r.ID, edge.Size, r.Log)
 	}
-	if r.Kind == "record.refused" {
+	switch {
+	case r.Sealed != "":
+		c.report.Sealed++
+		c.unsealed[r.ID] = r.Log
+	case r.Kind == "record.refused":
 		c.refusal(k, r)
+	case r.Kind == "record.sealed" && c.unsealed[r.Subject] == r.Log:
+		delete(c.unsealed, r.Subject)
 	}
 }
 
@@ -254,6 +265,10 @@ func (c *checker) totals(ids, leaves *bbolt.Bucket, names map[uint32]string) {
 func (c *checker) refusal(seq []byte, r *record.Record) {
 	c.report.Refused++
 	kept := c.tx.Bucket(bktQuar).Get(seq)
+	if bytes.Equal(kept, sealedRefusal) {
+		c.unsealed[r.ID] = r.Log
+		return
+	}
 	var body refusedBody
 	if err := json.Unmarshal(r.Body, &body); err != nil || len(kept) < 2 || len(kept) < 2+int(binary.BigEndian.Uint16(kept)) {
 		c.report.problem("The bytes that record %s says were refused are not kept.", r.ID)

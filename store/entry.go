@@ -35,7 +35,7 @@ type Entry struct {
 	Corrections      []Correction // oldest first; the last by (clock, id) is in force
 	NotPermitted     []Correction // what people said of it who might not: neither the tester nor then a manager of the site
 	Withdrawn        *Correction
-	Sealed           bool // its owner had its bytes dropped; it never counts as passed
+	Sealed           *Seal // the owner had its bytes dropped; it never counts as passed
 	Original         forms.Entry
 	OwnNames         map[string]string // what the form of the entry calls checks an organisation added, by code; nil without any
 	Photos           []string          // names of the entry's photos, at most four; of an entry read alone
@@ -58,6 +58,7 @@ type Correction struct {
 	InForce  bool
 	Withdraw bool // it says that the entry does not count
 	Received time.Time
+	Sealed   *Seal // its bytes were dropped: it states no readings any more, and is not in force
 }
 
 var errNoEntry = &Error{Code: "not_found", Field: "entry", Text: "There is no such entry here, or it is not yours to see."}
@@ -76,7 +77,7 @@ func (v *View) Entry(id string) (Entry, error) {
 		return Entry{}, err
 	}
 	e, err := v.entry(sv, r, st, k, seq)
-	if err == nil && !e.Sealed {
+	if err == nil && e.Sealed == nil {
 		e.Photos = photosOf(r)
 	}
 	return e, err
@@ -217,13 +218,20 @@ func (v *View) entry(sv *siteView, r *record.Record, st record.Stamp, k kept, se
 		ID: r.ID, Device: r.Subject, Site: sv.ID, Form: body.Form, Task: o.task, Day: o.day, At: r.At, Received: st.Received,
 		By: r.By, From: r.From, ReadBy: body.ReadBy, TypedBy: body.TypedBy, Source: body.Source, Imported: r.Kind == "entry.imported",
 		Note: body.Note, Log: r.Log, Pos: k.pos, Body: o.entry, Verdict: o.judged.Verdict, LimitSet: o.judged.set, LimitRev: o.judged.rev,
-		Shown: body.Shown, Sealed: o.sealed, Original: body.Entry,
+		Shown: body.Shown, Original: body.Entry,
+	}
+	if o.sealed {
+		if e.Sealed, err = v.sealOf(sv.ord, parseID(r.ID)); err != nil {
+			return e, err
+		}
 	}
 	if e.Imported && e.Source == "" {
 		e.Source = "imported"
 	}
 	e.OwnNames = v.ownNames(&e)
-	e.say(said, o)
+	if err := e.say(v, sv, said, o); err != nil {
+		return e, err
+	}
 	if e.Flags, err = v.flags(sv, r, st, k, body, o, len(e.Corrections) > 0); err != nil {
 		return e, err
 	}
@@ -257,19 +265,27 @@ func (v *View) ownNames(e *Entry) map[string]string {
 }
 
 // say lists corrections and the withdrawal; each correction shows the entry as it stood after it.
-func (e *Entry) say(said []saidRecord, o outcome) {
+func (e *Entry) say(v *View, sv *siteView, said []saidRecord, o outcome) (err error) {
 	stands := e.Original
 	for i := range said {
 		s := &said[i]
 		c := Correction{Record: s.ID, By: s.By, At: s.At, Reason: s.body.Reason, Received: s.stamp.Received}
+		if s.Sealed != "" {
+			if c.Sealed, err = v.sealOf(sv.ord, parseID(s.ID)); err != nil {
+				return err
+			}
+		}
 		if s.idle {
 			c.Body = corrected(stands, []saidRecord{{Record: s.Record, body: s.body}})
 			c.Withdraw = s.Kind == "entry.withdrawn"
 			e.NotPermitted = append(e.NotPermitted, c)
 			continue
 		}
-		switch s.Kind {
-		case "entry.corrected":
+		switch {
+		case s.Kind == "entry.corrected" && s.Sealed != "":
+			c.Body = stands
+			e.Corrections = append(e.Corrections, c)
+		case s.Kind == "entry.corrected":
 			stands.Readings, stands.Series = s.body.Readings, s.body.Series
 			if s.body.Given != nil {
 				stands.Given = *s.body.Given
@@ -279,13 +295,12 @@ func (e *Entry) say(said []saidRecord, o outcome) {
 			}
 			c.Body, c.InForce = stands, true
 			e.Corrections = append(e.Corrections, c)
-		case "entry.withdrawn":
-			if o.withdrawn == s {
-				c.Body, c.InForce, c.Withdraw = stands, true, true
-				e.Withdrawn = &c
-			}
+		case s.Kind == "entry.withdrawn" && o.withdrawn == s:
+			c.Body, c.InForce, c.Withdraw = stands, true, true
+			e.Withdrawn = &c
 		}
 	}
+	return nil
 }
 
 // Flag is something to look at that is no verdict: code names a word "flag.CODE", Detail fills it in.

@@ -82,8 +82,10 @@ func (f *fold) saidOf(site uint32, entry *record.Record) ([]saidRecord, error) {
 
 // entrySaid takes a correction, a withdrawal or a seal into the entry it is about, or keeps it until that comes.
 func (f *fold) entrySaid(r *record.Record, st record.Stamp) error {
-	if r.Kind == "record.sealed" && record.LogClass(r.Log) != "site" {
-		return nil
+	if r.Kind == "record.sealed" {
+		if done, err := f.sealedSaid(r); done || err != nil {
+			return err
+		}
 	}
 	if _, err := readCorrection(r); err != nil {
 		return err
@@ -105,6 +107,24 @@ func (f *fold) entrySaid(r *record.Record, st record.Stamp) error {
 	f.current = &saidRecord{Record: r, stamp: st}
 	defer func() { f.current = nil }()
 	return f.weighAgain(l, entry)
+}
+
+// sealedSaid notes which record lost its bytes; done where nothing else follows from that. What the office log says of its own
+// refusals concerns no page.
+func (f *fold) sealedSaid(r *record.Record) (done bool, err error) {
+	class := record.LogClass(r.Log)
+	if class == record.Office {
+		return true, nil
+	}
+	l, err := f.log(r.Log)
+	if err != nil {
+		return true, err
+	}
+	key := sealKey(parseID(r.Subject), l.ord)
+	p := packer{bytes.Clone(f.on(bktSeal).get(key))}
+	p.uint(f.seq)
+	f.on(bktSeal).put(key, p.b)
+	return class == record.Org, nil
 }
 
 // weighAgain takes everything said of an entry into its device's row, where the entry has come.

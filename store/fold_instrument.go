@@ -49,6 +49,9 @@ func (f *fold) calibrated(r *record.Record) error {
 			reg.say(name, record.Said{Value: quoted(v), Clock: r.Clock, ID: r.ID, From: r.From})
 		}
 	}
+	if r.Sealed != "" { // the number of an earlier certificate is not that of this one
+		reg.say("certificate", record.Said{Value: json.RawMessage("null"), Clock: r.Clock, ID: r.ID, From: r.From})
+	}
 	return nil
 }
 

@@ -17,6 +17,7 @@ import (
 //	m_work   site 4 | n 4               → work row of a device: last tests, dates, its newest entries
 //	m_hist   site 4 | n 4 | seq 8       → older entries of that device, from that seq
 //	m_said   site 4 | entry 16          → seqs of the corrections and withdrawals of an entry
+//	m_seal   record 16 | site 4        → seqs of what says that the bytes of this record were dropped
 //	m_granted person 16 | time 8 | clock 8 | record 16 → JSON of accessFact: what that person may do from then on
 //	m_change person 16 | first received 8 | seq 8 → site 4 | entry 16: something that person said of an entry
 //	m_due    site 4 | day 4 | n 4 | task → nothing: this device has this date
@@ -48,6 +49,7 @@ var (
 	bktWork     = []byte("m_work")
 	bktHistory  = []byte("m_hist")
 	bktSaid     = []byte("m_said")
+	bktSeal     = []byte("m_seal")
 	bktGranted  = []byte("m_granted")
 	bktChange   = []byte("m_change")
 	bktDue      = []byte("m_due")
@@ -72,7 +74,7 @@ var (
 	bktTodo     = []byte("m_todo")
 )
 
-var modelBuckets = [][]byte{bktSiteLog, bktSite, bktThing, bktRegister, bktWork, bktHistory, bktSaid, bktGranted, bktChange, bktDue, bktSum, bktAlso, bktKeep, bktOccasion, bktPause,
+var modelBuckets = [][]byte{bktSiteLog, bktSite, bktThing, bktRegister, bktWork, bktHistory, bktSaid, bktSeal, bktGranted, bktChange, bktDue, bktSum, bktAlso, bktKeep, bktOccasion, bktPause,
 	bktFact, bktDefect, bktFlaw, bktOpen, bktTally, bktBind, bktTag, bktPlace, bktCircuit, bktFeed, bktCode, bktRound, bktRule, bktTodo}
 
 // Types of things and of rules.
@@ -116,6 +118,10 @@ func historyKey(site, n uint32, seq uint64) []byte {
 
 func saidKey(site uint32, entry id16) []byte {
 	return append(put32(make([]byte, 0, 20), site), entry[:]...)
+}
+
+func sealKey(id id16, site uint32) []byte {
+	return put32(append(make([]byte, 0, 20), id[:]...), site)
 }
 
 func dueKey(site uint32, day forms.Day, n uint32, task string) []byte {

@@ -42,7 +42,7 @@ func readEntry(r *record.Record) (*entryBody, error) {
 	if err := json.Unmarshal(r.Body, b, checked); err != nil {
 		return nil, badBody("", "The entry cannot be read: %v.", err)
 	}
-	if r.Kind == "entry.imported" && b.Readings == nil && resultCode(b.Result) == 0 {
+	if r.Kind == "entry.imported" && b.Readings == nil && resultCode(b.Result) == 0 && r.Sealed == "" {
 		return nil, badBody("result", "The result %q is none: an imported entry has one of %v.", b.Result, forms.Results())
 	}
 	b.figures = figures(b.Readings)
@@ -151,9 +151,9 @@ type outcome struct {
 }
 
 // outcome weighs an entry: of those in force the correction with the largest (clock, id) gives the readings, the last that
-// states what was given gives that; a withdrawal ends it; a sealed entry never counts as passed. The order of arrival has no say.
+// states what was given gives that; a withdrawal ends it; a sealed entry never counts as passed, and a sealed correction corrects nothing. The order of arrival has no say.
 func (ru *rules) outcome(site, org uint32, zone *time.Location, r *record.Record, st record.Stamp, body *entryBody, said []saidRecord) outcome {
-	o := outcome{day: testDay(r, st, body, zone), task: entryTask(&body.Entry), entry: body.Entry, came: forms.DayOf(st.Received.In(zone)), said: len(said) > 0}
+	o := outcome{day: testDay(r, st, body, zone), task: entryTask(&body.Entry), entry: body.Entry, came: forms.DayOf(st.Received.In(zone)), said: len(said) > 0, sealed: r.Sealed != ""}
 	o.entry = corrected(body.Entry, said)
 	for i := range said {
 		switch s := &said[i]; s.Kind {
@@ -165,13 +165,13 @@ func (ru *rules) outcome(site, org uint32, zone *time.Location, r *record.Record
 			o.sealed = true
 		}
 	}
-	if r.Kind == "entry.imported" && o.entry.Readings == nil {
-		o.judged.Result = body.Result
-	} else {
-		o.judged = ru.judge(site, org, &o.entry, o.day)
-	}
-	if o.sealed {
+	switch {
+	case o.sealed: // what it was judged by went with its bytes
 		o.judged.Result = forms.Incomplete
+	case r.Kind == "entry.imported" && o.entry.Readings == nil:
+		o.judged.Result = body.Result
+	default:
+		o.judged = ru.judge(site, org, &o.entry, o.day)
 	}
 	return o
 }
@@ -190,7 +190,7 @@ func testDay(r *record.Record, st record.Stamp, body *entryBody, zone *time.Loca
 // what was given gives that.
 func corrected(e forms.Entry, said []saidRecord) forms.Entry {
 	for _, s := range said {
-		if s.Kind != "entry.corrected" || s.idle {
+		if s.Kind != "entry.corrected" || s.idle || s.Sealed != "" {
 			continue
 		}
 		e.Readings, e.Series = s.body.Readings, s.body.Series

@@ -53,16 +53,21 @@ type Store struct {
 	groups atomic.Int64 // committed since opening
 	said   *bodies      // by the entries that came lately
 
-	rebuilding atomic.Bool // read models are being computed anew
+	rebuilding atomic.Bool  // read models are being computed anew
+	reading    atomic.Int64 // read transactions under way
 
 	faults faults
 }
 
 // faults are set by tests only: what can go wrong between a decision and its answer.
 type faults struct {
-	commit func() error // the commit fails: nothing is kept
-	answer func() error // the commit is kept, the answer is lost
+	commit func() error     // the commit fails: nothing is kept
+	answer func() error     // the commit is kept, the answer is lost
+	stop   map[string]error // by step of a sealing: the program ends there
 }
+
+// at gives the fault of a step, nil without one.
+func (f *faults) at(step string) error { return f.stop[step] }
 
 // Open opens DIR/book.db (0600, lock time-out 1 s). The caller closes it.
 func Open(dir string, o Options) (*Store, error) {
@@ -158,9 +163,20 @@ func (s *Store) refresh(log *slog.Logger) error {
 	if err == nil && lacking {
 		err = s.db.Update(makeBuckets)
 	}
-	if err != nil || written == modelMark {
+	if err != nil {
 		return err
 	}
+	if written != modelMark {
+		if err := s.recompute(log, written, records); err != nil {
+			return err
+		}
+	}
+	_, err = s.wipeNow() // a sealing that was cut off
+	return err
+}
+
+// recompute computes the read models anew at opening.
+func (s *Store) recompute(log *slog.Logger, written, records uint64) error {
 	if log != nil {
 		log.Info("computing the pages anew from the book: they were written by another build, or not to the end",
 			"records", records, "written", modelText(written), "reads", modelText(modelMark))
@@ -332,6 +348,12 @@ func (s *Store) view(fn func(tx *bbolt.Tx) error) error {
 		return errClosed
 	}
 	if s.rebuilding.Load() {
+		s.mu.RUnlock()
+		return errRebuilding
+	}
+	s.reading.Add(1)
+	defer s.reading.Add(-1)
+	if s.rebuilding.Load() { // it began between the two looks
 		s.mu.RUnlock()
 		return errRebuilding
 	}

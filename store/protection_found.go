@@ -66,7 +66,7 @@ func (v *View) found(d OnMap, on forms.Day) (f Found, err error) {
 			return f, err
 		}
 		at := happened(r, st)
-		if what := forms.FoundBy(d.Kind, e.Body.Readings); what != "" && e.Withdrawn == nil && !e.Sealed && !at.Before(f.At) {
+		if what := forms.FoundBy(d.Kind, e.Body.Readings); what != "" && e.Withdrawn == nil && e.Sealed == nil && !at.Before(f.At) {
 			f = Found{What: what, At: at, Day: e.Day, By: cmp.Or(e.ReadBy, e.By), Entry: e.ID}
 		}
 	}

@@ -1,7 +1,6 @@
 package store
 
 import (
-	"bytes"
 	"context"
 	"crypto/sha256"
 	"errors"
@@ -121,8 +120,11 @@ func (g *group) take(from Sender, a arrival, received time.Time) (Receipt, error
 		return Receipt{}, err
 	}
 	if ok {
-		same := bytes.Equal(had.raw, a.r.Raw)
-		if !same && record.IsNamed(a.r.ID) {
+		same, sealed, err := g.isSame(had, a.r.Raw)
+		if err != nil {
+			return Receipt{}, err
+		}
+		if !same && !sealed && record.IsNamed(a.r.ID) {
 			if err := g.keepDiffering(from, a, had, received); err != nil {
 				return Receipt{}, err
 			}

@@ -124,7 +124,7 @@ func replayMeta(tx *bbolt.Tx, from Origin, people []Person) error {
 }
 
 func (g *group) replay(one Replayed) error {
-	r, f := record.Parse(one.Record)
+	r, f := record.Stored(one.Record)
 	if f != nil {
 		return &Error{Code: "invalid", Field: f.Field, Text: f.Text}
 	}
@@ -138,7 +138,9 @@ func (g *group) replay(one Replayed) error {
 		}
 		return err
 	}
-	if _, err := g.place(r, stampedWith(stamp, one.Stamp, r.Raw)); err != nil {
+	st := stampedWith(stamp, one.Stamp, r.Raw)
+	st.leaf = leafOf(r, one.Stamp)
+	if _, err := g.place(r, st); err != nil {
 		return err
 	}
 	if one.Refused == nil {

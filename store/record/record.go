@@ -48,6 +48,7 @@ type Record struct {
 	N       int64
 	Body    json.RawMessage
 	Raw     []byte
+	Sealed  string // of a stub: the leaf hash of the record whose bytes were dropped, in base64; Body is then what was kept
 
 	// Read is the body as its reader decoded it ahead of time, nil where nobody did. What is set is never changed again.
 	Read any
@@ -87,8 +88,11 @@ func Parse(raw []byte) (*Record, *Fault) {
 }
 
 // Reread reads the envelope of a record that was accepted before: its bytes were found good then. Bytes that were damaged
-// since give a fault.
+// since give a fault. A stub is read as what was kept of its record.
 func Reread(raw []byte) (r *Record, f *Fault) {
+	if r := readStub(raw); r != nil {
+		return r, nil
+	}
 	r = &Record{Raw: raw}
 	defer func() {
 		if recover() != nil { // walking relies on good JSON and runs over the end of anything else

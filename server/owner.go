@@ -39,6 +39,8 @@ func ownerRoutes() []route {
 		{get, "/own/rules/:rules", owner, (*Server).ownRules, 0},
 		{post, "/own/rules/:rules", owner, (*Server).ownRulesImport, rulesLimit},
 		{post, "/own/import/readings", owner, (*Server).ownImportReadings, importLimit},
+		{get, "/own/seal", owner, (*Server).ownSealing, 0},
+		{post, "/own/seal", owner, (*Server).ownSeal, 0},
 		{get, "/own/check", owner, (*Server).ownCheck, 0},
 		{post, "/own/rebuild", owner, (*Server).ownRebuild, 0},
 	}

@@ -90,6 +90,7 @@ func publicRoutes() []route {
 		{get, "/defects/past", signed, (*Server).pastShow, 0},
 		{get, "/defects/:defect", signed, (*Server).defectShow, 0},
 		{get, "/records/:record", signed, (*Server).recordShow, 0},
+		{get, "/records/:record/seal", manager, (*Server).sealShow, 0},
 		{get, "/dates", signed, (*Server).datesShow, 0},
 		{get, "/rounds", signed, (*Server).roundsShow, 0},
 		{get, "/rounds/:round", signed, (*Server).roundShow, 0},

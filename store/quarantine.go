@@ -1,6 +1,7 @@
 package store
 
 import (
+	"bytes"
 	"crypto/sha256"
 	"encoding/binary"
 	"encoding/hex"
@@ -122,6 +123,7 @@ func readRefusal(rec, quar []byte) (Refusal, error) {
 	if len(quar) >= 2 {
 		if n := 2 + int(binary.BigEndian.Uint16(quar)); len(quar) >= n {
 			ref.Text, ref.Bytes = string(quar[2:n]), append([]byte(nil), quar[n:]...)
+			ref.Sealed = bytes.Equal(quar, sealedRefusal)
 		}
 	}
 	return ref, nil
@@ -133,6 +135,7 @@ type Refusal struct {
 	N                                     int64
 	Received                              time.Time
 	Bytes                                 []byte
+	Sealed                                bool // the owner had its bytes dropped
 }
 
 // Refused lists what is in quarantine, newest first: of the sites of the scope, and of office for whoever has all.

@@ -370,6 +370,16 @@ func leafOf(r *record.Record, stamp []byte) proof.Hash {
 	return proof.LeafHash(record.Leaf(stamp, r.Raw))
 }
 
+// LeafOf gives the leaf hash of a record's bytes, or the one its stub states.
+func LeafOf(stamp, raw []byte) proof.Hash {
+	r, f := record.Reread(raw)
+	if f != nil {
+		return proof.LeafHash(record.Leaf(stamp, raw))
+	}
+	r.Raw = raw
+	return leafOf(r, stamp)
+}
+
 // isSame reports whether bytes that came are those of a record the book holds or held: of a stub, whether they give its leaf.
 func (g *group) isSame(had fresh, raw []byte) (same, sealed bool, err error) {
 	r, f := record.Reread(had.raw)

@@ -24,6 +24,7 @@ type cli struct {
 	Backup   backupCmd   `cmd:"" help:"Write a checked copy of the book to a file."`
 	Restore  restoreCmd  `cmd:"" help:"Put a backup in the place of the book."`
 	Check    checkCmd    `cmd:"" help:"Read the whole store and say whether anything is wrong."`
+	Seal     sealCmd     `cmd:"" help:"Drop the bytes of one record for good; its hash stays."`
 	Rebuild  rebuildCmd  `cmd:"" help:"Compute all lists anew from the records."`
 	Verdict  verdictCmd  `cmd:"" help:"Judge tests given as JSON lines."`
 	Forms    formsCmd    `cmd:"" help:"List device kinds, forms, readings and limits; export and import forms."`

@@ -113,7 +113,8 @@ type refusal struct {
 	Code     string    `json:"code"`
 	Text     string    `json:"text"`
 	Received time.Time `json:"received"`
-	Bytes    []byte    `json:"bytes"` // base64
+	Bytes    []byte    `json:"bytes"`            // base64
+	Sealed   bool      `json:"sealed,omitempty"` // the owner had the bytes dropped
 }
 
 // officeRecord is one of grants.json or restores.json.

@@ -4,8 +4,10 @@ import (
 	"bytes"
 	"crypto/sha256"
 	"encoding/hex"
+	"encoding/json"
 	"fmt"
 	"slices"
+	"strings"
 
 	"tripwell/store"
 	"tripwell/store/proof"
@@ -19,6 +21,15 @@ type logFile struct {
 	refused map[string]int64 // SHA-256 of what was refused → place of the record.refused
 	counts  map[string][]int64
 	files   []store.NamedFile
+	ids     []string // of its records, by place
+	sealed  []stub
+	seals   map[string]string // id of a sealed record → the reason
+}
+
+// stub is a record whose bytes its owner had dropped.
+type stub struct {
+	place    int
+	id, kind string
 }
 
 func sumOf(b []byte) string {
@@ -30,7 +41,7 @@ func isRefusal(raw []byte) bool { return bytes.Contains(raw, []byte(`"record.ref
 
 // log reads a log's files, rebuilds its tree and holds it against the head. ids are those of the logs before.
 func (v *verifier) log(l Line, ids map[string]string) (*logFile, error) {
-	f := &logFile{refused: map[string]int64{}, counts: map[string][]int64{}}
+	f := &logFile{refused: map[string]int64{}, counts: map[string][]int64{}, seals: map[string]string{}}
 	code := v.code(l.Log)
 	bad := func(err error) *logFile {
 		v.report.find(code, "%s.", sentence(err))
@@ -50,7 +61,7 @@ func (v *verifier) log(l Line, ids map[string]string) (*logFile, error) {
 		if n := len(f.leaves); n < len(f.stamps) {
 			stamp = f.stamps[n]
 		}
-		f.leaves = append(f.leaves, proof.LeafHash(record.Leaf(stamp, b)))
+		f.leaves = append(f.leaves, store.LeafOf(stamp, b))
 		id, wasLate := v.one(f, l.Log, code, b, stamp, ids)
 		names = append(names, id)
 		if wasLate {
@@ -69,6 +80,8 @@ func (v *verifier) log(l Line, ids map[string]string) (*logFile, error) {
 	if late > 0 {
 		v.report.note("Log %s: %d entries arrived more than seven days after they were made.", code, late)
 	}
+	f.ids = names
+	v.stubs(f, code)
 	v.gaps(f, code)
 	return f, nil
 }
@@ -76,7 +89,7 @@ func (v *verifier) log(l Line, ids map[string]string) (*logFile, error) {
 // one looks at a record by itself.
 func (v *verifier) one(f *logFile, log, code string, raw, stamp []byte, ids map[string]string) (id string, late bool) {
 	place := len(f.leaves)
-	r, fault := record.Parse(bytes.Clone(raw))
+	r, fault := record.Stored(bytes.Clone(raw))
 	if fault != nil {
 		v.report.find(code, "The record at line %d breaks a rule: %s", place, fault.Text)
 		v.sound = false
@@ -102,7 +115,28 @@ func (v *verifier) one(f *logFile, log, code string, raw, stamp []byte, ids map[
 		f.refused[sum] = int64(place)
 	}
 	f.files = append(f.files, store.FilesOf(r.Raw)...)
+	if r.Kind == "record.sealed" {
+		var body struct{ Reason string }
+		_ = json.Unmarshal(r.Body, &body) // its kind asks for the reason, and the record was found good
+		f.seals[r.Subject] = body.Reason
+	}
+	if r.Sealed != "" {
+		f.sealed = append(f.sealed, stub{place, r.ID, r.Kind})
+	}
 	return r.ID, r.Kind == "entry.made" && st.Earliest().Sub(r.At) > lateAfter
+}
+
+// stubs names the records of which only a leaf hash is left, and asks of each that a record of its log says so.
+func (v *verifier) stubs(f *logFile, code string) {
+	for _, s := range f.sealed {
+		reason, said := f.seals[s.id]
+		if !said {
+			v.report.find(code, "Of the record %s at place %d only a leaf hash is here, and no record of the log says that it was sealed.", s.id, s.place)
+			v.sound = false
+			continue
+		}
+		v.report.note("Log %s: the record at place %d (%s %s) was sealed by the owner: %s. Its leaf hash stands in the tree; what it said can no longer be shown, and it never counts as passed.", code, s.place, s.kind, s.id, strings.TrimSuffix(reason, "."))
+	}
 }
 
 // against holds a log's records against its tree and the tree against the head, and names what differs.

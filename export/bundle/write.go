@@ -217,7 +217,7 @@ func (w *writer) log(l Line) error {
 	}
 	if err == nil {
 		err = lines(treeName(l.Log), func(r store.LogRecord) []byte {
-			h := proof.LeafHash(record.Leaf(r.Stamp, r.Record))
+			h := store.LeafOf(r.Stamp, r.Record)
 			return hex.AppendEncode(nil, h[:])
 		})
 	}
@@ -276,7 +276,7 @@ func (w *writer) refusals() error {
 	}
 	out := []refusal{}
 	for _, r := range list {
-		out = append(out, refusal{r.Log, r.Record, r.SHA256, r.From, r.N, r.Code, r.Text, r.Received, r.Bytes})
+		out = append(out, refusal{r.Log, r.Record, r.SHA256, r.From, r.N, r.Code, r.Text, r.Received, r.Bytes, r.Sealed})
 	}
 	return w.json(refusalsFile, func() any { return out })
 }

@@ -77,7 +77,7 @@ type EntryLine struct {
 	Site       store.Site
 	Zone       *time.Location
 	DeviceRow  store.DeviceRow
-	ByName     string // from the directory, the id where it is unknown
+	ByName     string // from the directory, "" where it is unknown
 	ReadName   string // who read the instrument, "" when it is the same person
 	TypedName  string
 	Instrument string     // name and serial

@@ -9,6 +9,7 @@ import (
 
 	"tripwell/forms"
 	"tripwell/store"
+	"tripwell/store/record"
 )
 
 var entryColumns = []column{
@@ -112,6 +113,8 @@ func (b *book) flag(f store.Flag) string {
 // status of an entry's readings: in force, corrected, withdrawn.
 func (e EntryLine) status() string {
 	switch {
+	case e.Sealed != nil:
+		return "sealed"
 	case e.Withdrawn != nil:
 		return "withdrawn"
 	case len(e.Corrections) > 0:
@@ -133,7 +136,7 @@ func (b *book) entryRow(s *sheet, e EntryLine) error {
 	for _, code := range entryFigures {
 		b.figureCell(s, code, e.Body.Readings)
 	}
-	return s.text(e.ByName).text(e.ReadName).text(e.TypedName).time(e.At, e.Zone).time(e.Received, e.Zone).text(e.Site.Zone).
+	return s.text(cmp.Or(e.ByName, b.person(e.By))).text(e.ReadName).text(e.TypedName).time(e.At, e.Zone).time(e.Received, e.Zone).text(e.Site.Zone).
 		text(e.Instrument).text(b.word("sheet.source", e.Source)).text(imported).text(e.Note).text(b.correction(e)).
 		count(int64(len(e.Flags))).text(limitRevision(e.LimitSet, e.LimitRev)).text(e.Device).text(e.From).count(e.Pos).end()
 }
@@ -190,11 +193,18 @@ func (b *book) correction(e EntryLine) string {
 		text += b.say(key, "at", at, "by", by, "why", reason)
 	}
 	for _, c := range e.Corrections {
+		if c.Sealed != nil {
+			add("sheet.sealed_why", b.person(c.Sealed.By), c.Sealed.Reason, c.Sealed.At.In(e.Zone).Format("2006-01-02 15:04"))
+			continue
+		}
 		key := "sheet.correction_replaced"
 		if c.InForce {
 			key = "sheet.correction_in_force"
 		}
 		add(key, b.person(c.By), c.Reason, c.At.In(e.Zone).Format("2006-01-02 15:04"))
+	}
+	if c := e.Sealed; c != nil {
+		add("sheet.sealed_why", b.person(c.By), c.Reason, c.At.In(e.Zone).Format("2006-01-02 15:04"))
 	}
 	if c := e.Withdrawn; c != nil {
 		add("sheet.withdrawn_why", b.person(c.By), c.Reason, c.At.In(e.Zone).Format("2006-01-02 15:04"))
@@ -301,6 +311,12 @@ func (b *book) person(id string) string {
 		if n := name(id); n != "" {
 			return n
 		}
+	}
+	switch {
+	case id == b.src.Store:
+		return b.say("sheet.store_owner")
+	case record.IsID(id):
+		return b.say("sheet.former_member", "id", id)
 	}
 	return id
 }

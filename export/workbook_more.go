@@ -65,11 +65,21 @@ var correctionColumns = []column{
 // correctionRows writes a row for everything that was said of an entry afterwards, whether it counts or not.
 func (b *book) correctionRows(s *sheet, e EntryLine) error {
 	for i, c := range e.Corrections {
+		if c.Sealed != nil {
+			c.Reason = b.say("sheet.sealed_why", "at", c.Sealed.At.In(e.Zone).Format("2006-01-02 15:04"), "by", b.person(c.Sealed.By), "why", c.Sealed.Reason)
+		}
 		before := ""
 		if i < len(e.Replaced) {
 			before = e.Replaced[i].Verdict.Result
 		}
 		if err := b.correctionRow(s, e, c, "corrected", before); err != nil {
+			return err
+		}
+	}
+	if e.Sealed != nil {
+		b.mention(e.Sealed.By)
+		seal := store.Correction{Record: e.Sealed.Record, By: e.Sealed.By, At: e.Sealed.At, Received: e.Sealed.At, Reason: e.Sealed.Reason, InForce: true}
+		if err := b.correctionRow(s, e, seal, "sealed", ""); err != nil {
 			return err
 		}
 	}
@@ -98,7 +108,7 @@ var importedColumns = []column{
 // importedRow lists a test that was brought in: nothing here witnessed it.
 func (b *book) importedRow(s *sheet, e EntryLine) error {
 	return s.row().text(e.Site.Code).text(TagText(e.DeviceRow.Tag)).text(PlaceText(e.DeviceRow.Place)).text(b.word("task", e.Task)).day(e.Day).verdict(e.Verdict.Result).
-		text(b.word("sheet.source", e.Source)).text(e.ByName).time(e.Received, e.Zone).text(e.Site.Zone).text(e.Note).text(e.ID).end()
+		text(b.word("sheet.source", e.Source)).text(cmp.Or(e.ByName, b.person(e.By))).time(e.Received, e.Zone).text(e.Site.Zone).text(e.Note).text(e.ID).end()
 }
 
 var defectColumns = []column{

@@ -9,6 +9,7 @@ import (
 	"tripwell/forms"
 	"tripwell/static"
 	"tripwell/store"
+	"tripwell/store/record"
 )
 
 // WorkbookAsk says which part of a store goes into a workbook.
@@ -339,15 +340,15 @@ func (r *entryReader) line(e store.Entry, site store.Site, zone *time.Location, 
 }
 
 func (r *entryReader) person(id string) string {
-	if name := r.view.PersonName(id); name != "" {
+	if name := r.view.PersonName(id); name != "" || record.IsID(id) {
 		return name
 	}
-	return id
+	return id // written down by name
 }
 
 // replaced judges again, under the same limits, what each correction took out of force.
 func (r *entryReader) replaced(e store.Entry) []Replaced {
-	if len(e.Corrections) == 0 {
+	if len(e.Corrections) == 0 || e.Sealed != nil {
 		return nil
 	}
 	bodies := []forms.Entry{e.Original}

@@ -1,7 +1,6 @@
 package server
 
 import (
-	"cmp"
 	"net/http"
 	"strings"
 	"time"
@@ -118,7 +117,7 @@ func (s *Server) defectFacts(v *store.View, d *store.Defect, site store.Site) []
 }
 
 // whoOf names a person by id, or a crew as it was written.
-func (s *Server) whoOf(v *store.View, who string) string { return cmp.Or(v.PersonName(who), who) }
+func (s *Server) whoOf(v *store.View, who string) string { return s.personOr(v, who) }
 
 func (s *Server) defectStep(v *store.View, step store.DefectStep, zone *time.Location) defectStepShown {
 	k := s.ink()

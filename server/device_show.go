@@ -250,6 +250,9 @@ func (s *Server) entryTable(v *store.View, entries []store.Entry, instruments ma
 		if e.Withdrawn != nil {
 			row.Verdict, row.Why = mark{"none", k.say("office.entry.withdrawn_short")}, ""
 		}
+		if e.Sealed != nil {
+			row.Verdict, row.Why = mark{"none", k.say("office.seal.short")}, k.say("office.seal.why", "reason", e.Sealed.Reason, "by", s.personName(v, e.Sealed.By), "day", k.day(forms.DayOf(e.Sealed.At)))
+		}
 		for _, code := range codes {
 			row.Cells = append(row.Cells, cells[i][code])
 		}
@@ -338,10 +341,7 @@ func whyNot(k ink, body forms.Entry) string {
 // testedBy names who tested: who read the figures where somebody else typed them.
 func (s *Server) testedBy(v *store.View, e store.Entry) string {
 	if e.ReadBy != "" {
-		if name := v.PersonName(e.ReadBy); name != "" {
-			return name
-		}
-		return e.ReadBy
+		return s.personName(v, e.ReadBy)
 	}
 	if e.Imported {
 		return s.words.Say("office.device.imported")

@@ -12,7 +12,7 @@ import (
 // correctedFrom lays the first version beside what stands: the values a correction struck out, each with what it came to,
 // and the result the entry first had. A failing value stays to be seen.
 func (s *Server) correctedFrom(v *store.View, e store.Entry, view *entryPage) error {
-	if len(e.Corrections) == 0 {
+	if len(e.Corrections) == 0 || e.Sealed != nil {
 		return nil
 	}
 	k := s.ink()
@@ -79,7 +79,9 @@ func (s *Server) corrections(v *store.View, e store.Entry, zone *time.Location) 
 			Head:   joined(k.say("office.entry."+head, "by", s.personName(v, c.By), "day", k.at(c.At, zone)), k.say("office.entry."+state)),
 			Reason: c.Reason, Record: "/records/" + c.Record, Changes: s.changes(e.OwnNames, was, c.Body),
 		}
-		if !c.Withdraw {
+		if c.Sealed != nil {
+			one.Reason, one.Changes = s.sealedText(v, c.Sealed, zone), nil
+		} else if !c.Withdraw && e.Sealed == nil {
 			verdict, err := v.JudgedAs(e, c.Body)
 			if err != nil {
 				return err

@@ -104,6 +104,9 @@ func (s *Server) buildEntry(v *store.View, e store.Entry, view *entryPage) error
 		view.Tag, view.Under = k.tag(device.Tag), joined(s.kindAndRating(device.DeviceRow), circuit(device.DeviceRow))
 	}
 	view.Verdict = k.verdict(e.Verdict.Result)
+	if e.Sealed != nil {
+		view.Verdict = mark{"none", k.say("office.seal.short")}
+	}
 	view.Notices = s.notices(v, e, site.Location())
 	if known {
 		if err := s.defectNotices(v, e, view); err != nil {
@@ -130,7 +133,7 @@ func (s *Server) buildEntry(v *store.View, e store.Entry, view *entryPage) error
 	if view.Facts, err = s.entryFacts(v, e, site); err != nil {
 		return err
 	}
-	if view.Change && e.Withdrawn == nil && len(e.Body.Readings) > 0 {
+	if view.Change && e.Withdrawn == nil && e.Sealed == nil && len(e.Body.Readings) > 0 {
 		view.Actions = []link{{Href: "/entries/" + e.ID + "/correct", Text: k.say("office.entry.correct")}}
 	}
 	return nil
@@ -168,13 +171,16 @@ func earlierFigures(v *store.View, e store.Entry) (map[string]float64, error) {
 func (s *Server) notices(v *store.View, e store.Entry, zone *time.Location) []notice {
 	k := s.ink()
 	var out []notice
+	if e.Sealed != nil {
+		out = append(out, notice{Shape: "watch", Text: s.sealedText(v, e.Sealed, zone)})
+	}
 	if w := e.Withdrawn; w != nil {
 		out = append(out, notice{Shape: "fail", Text: k.say("office.entry.withdrawn", "by", s.personName(v, w.By), "day", k.at(w.At, zone), "reason", w.Reason)})
 	}
 	if e.Imported {
 		out = append(out, notice{Shape: "none", Text: k.say("office.entry.imported")})
 	}
-	if len(e.Corrections) > 0 {
+	if len(e.Corrections) > 0 && e.Sealed == nil {
 		out = append(out, notice{Shape: "watch", Text: k.say("office.entry.corrected")})
 	}
 	for _, f := range e.Flags {
@@ -294,7 +300,7 @@ func (s *Server) curveOf(f forms.Finding, r forms.Reading, e store.Entry) *curve
 func (s *Server) judgements(v *store.View, e store.Entry, zone *time.Location) ([]judgementShown, error) {
 	k := s.ink()
 	list, err := v.Judgements(e)
-	if err != nil || len(list) < 2 {
+	if err != nil || len(list) < 2 || e.Sealed != nil {
 		return nil, err
 	}
 	var out []judgementShown
@@ -382,8 +388,8 @@ func (s *Server) entryFacts(v *store.View, e store.Entry, site store.Site) ([]fa
 	default:
 		add("by", s.personName(v, e.By))
 	}
-	add("read_by", personOr(v, e.ReadBy))
-	add("typed_by", personOr(v, e.TypedBy))
+	add("read_by", s.personOr(v, e.ReadBy))
+	add("typed_by", s.personOr(v, e.TypedBy))
 	add("at_time", k.at(e.At, zone))
 	add("received", k.at(e.Received, zone))
 	add("test_day", k.day(e.Day))
@@ -406,11 +412,11 @@ func (s *Server) entryFacts(v *store.View, e store.Entry, site store.Site) ([]fa
 	return out, nil
 }
 
-func personOr(v *store.View, id string) string {
+func (s *Server) personOr(v *store.View, id string) string {
 	if id == "" {
 		return ""
 	}
-	return cmp.Or(v.PersonName(id), id)
+	return s.personName(v, id)
 }
 
 // formSpans are the scales an entry's form draws its readings on: one reading may have several, by the device's nominal

@@ -9,6 +9,7 @@ import (
 
 	"tripwell/forms"
 	"tripwell/store"
+	"tripwell/store/record"
 )
 
 func (s *Server) ink() ink { return ink{words: s.words} }
@@ -132,7 +133,13 @@ func (s *Server) personName(v *store.View, id string) string {
 	if name := v.PersonName(id); name != "" {
 		return name
 	}
-	return id[:min(8, len(id))]
+	if id == s.store.ID() {
+		return s.words.Say("office.store_owner")
+	}
+	if !record.IsID(id) { // a crew, or whoever was written down by name
+		return id
+	}
+	return s.words.Say("office.former_member", "id", id[:8])
 }
 
 // readingOrder lists reading codes in the order of the work; codes nobody knows follow by name.

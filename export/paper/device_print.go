@@ -59,7 +59,12 @@ func SheetOf(v *store.View, device string, now forms.Day, url string, demo bool)
 	if err != nil {
 		return s, err
 	}
-	name := func(id string) string { return cmp.Or(v.PersonName(id), id) }
+	name := func(id string) string {
+		if name := v.PersonName(id); name != "" || !record.IsID(id) {
+			return cmp.Or(name, id)
+		}
+		return words.Say("paper.device.former_member", "id", id[:8])
+	}
 	for _, e := range entries {
 		t := Test{Entry: e, By: name(e.By)}
 		if e.ReadBy != "" {
@@ -70,7 +75,13 @@ func SheetOf(v *store.View, device string, now forms.Day, url string, demo bool)
 				t.Instrument = strings.TrimSpace(i.Name + " " + i.Serial)
 			}
 		}
+		if c := e.Sealed; c != nil {
+			t.Remarks = append(t.Remarks, words.Say("paper.device.sealed", "day", forms.DayOf(c.At), "by", name(c.By), "why", c.Reason))
+		}
 		for _, c := range e.Corrections {
+			if c.Sealed != nil {
+				continue
+			}
 			t.Remarks = append(t.Remarks, words.Say("paper.device.corrected", "day", forms.DayOf(c.At), "by", name(c.By), "why", c.Reason))
 		}
 		if c := e.Withdrawn; c != nil {

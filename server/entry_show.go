@@ -136,6 +136,9 @@ func (s *Server) buildEntry(v *store.View, e store.Entry, view *entryPage) error
 	if view.Change && e.Withdrawn == nil && e.Sealed == nil && len(e.Body.Readings) > 0 {
 		view.Actions = []link{{Href: "/entries/" + e.ID + "/correct", Text: k.say("office.entry.correct")}}
 	}
+	if view.Change && e.Sealed == nil {
+		view.Actions = append(view.Actions, link{Href: "/records/" + e.ID + "/seal", Text: k.say("office.seal.link")})
+	}
 	return nil
 }
 

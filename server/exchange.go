@@ -35,6 +35,8 @@ type logsAnswer struct {
 	Store string   `json:"store"`
 	Epoch int      `json:"epoch"`
 	Now   string   `json:"now"` // the server's clock at answering, to measure the phone's offset against
+	// Sealed are records of these logs whose bytes were dropped: a phone that still holds them drops them too.
+	Sealed []string `json:"sealed,omitempty"`
 }
 
 // now writes the server's clock as the exchange sends it.
@@ -70,7 +72,15 @@ func (s *Server) exchangeLogs(c echo.Context) error {
 	if err != nil {
 		return err
 	}
-	return s.sendJSON(c, 200, logsAnswer{Logs: rows, Store: s.store.ID(), Epoch: s.store.Epoch(), Now: s.now()})
+	answer := logsAnswer{Logs: rows, Store: s.store.ID(), Epoch: s.store.Epoch(), Now: s.now()}
+	err = s.store.View(scope(c), func(v *store.View) (err error) {
+		answer.Sealed, err = v.SealedIDs()
+		return err
+	})
+	if err != nil {
+		return err
+	}
+	return s.sendJSON(c, 200, answer)
 }
 
 // pullAnswer is a page of a log with the server's clock.

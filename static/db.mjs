@@ -147,6 +147,19 @@ export function trayDB() {
     forget: (now, backedUp) => write("records", async (store) => {
       for (let c = await store.index("state").openCursor("kept"); c; c = await c.continue()) if (isOver(c.value, now, backedUp)) await c.delete();
     }),
+    /** Drops what the server has and dropped itself (record.sealed), with its photos; gives how many records went. */
+    forgetSealed: (ids) => use(async (db) => {
+      const tx = db.transaction(["records", "photos"], "readwrite", STRICT), records = tx.objectStore("records"), photos = tx.objectStore("photos");
+      let n = 0;
+      for (const id of ids) {
+        if (!["sent", "kept"].includes((await records.get(id))?.state)) continue;
+        await records.delete(id);
+        n++;
+      }
+      for (let c = await photos.openCursor(); c; c = await c.continue()) if (ids.includes(c.value.entry)) await c.delete();
+      await tx.done;
+      return n;
+    }),
     /** Puts sent records that satisfy lost(row) back to what waits; gives how many. */
     resend: (lost) => write("records", async (store) => {
       let n = 0;

@@ -28,6 +28,7 @@ export function taking({ state, tray, along, net, now, remember, withToken, chan
     const listed = await withToken((token) => net.logs(token));
     if (!listed.ok) return { answer: listed, resent: 0 };
     await remember("logs", listed.body.logs);
+    if (listed.body.sealed?.length > 0 && (await tray.forgetSealed(listed.body.sealed)) > 0) state.records = await tray.records();
     const resent = await sendLostAgain(listed.body);
     const mine = new Set(listed.body.logs.map((l) => l.log));
     for (const log of state.sites.keys()) if (!mine.has(log)) await dropSite(log);

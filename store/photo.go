@@ -30,6 +30,8 @@ const (
 	photoPixels    = 12_000_000 // a phone sends at most 1600 by 1600
 )
 
+var errPhotoSealed = &Error{Code: "conflict", Field: "photo", Text: "What this photo belongs to was sealed by the owner of the store, and its photos were removed for good."}
+
 var errNoPhoto = &Error{Code: "not_found", Field: "photo", Text: "This photo has not arrived here, or the entry does not name it. It may still wait on the phone that took it."}
 
 // photosOf gives the names of photos in an entry's body; what is no name is passed over, and a sealed entry shows none.
@@ -70,6 +72,9 @@ func (v *View) namesPhoto(id, name string) error {
 			return err
 		}
 		photos = e.Photos
+	}
+	if r.Sealed != "" {
+		return errPhotoSealed
 	}
 	if !slices.Contains(photos, name) {
 		return errNoPhoto

@@ -113,7 +113,9 @@ func (v *View) Sealing(id string) (s Sealing, err error) {
 		s.Sealed, err = v.Sealed(id)
 		return s, err
 	}
-	s.Photos = filesOf(r)
+	for _, f := range FilesOf(r.Raw) {
+		s.Photos = append(s.Photos, f.Name)
+	}
 	fields, err := v.standingFields(r)
 	if err != nil {
 		return s, err
@@ -184,17 +186,6 @@ func (v *View) standingFields(r *record.Record) (map[string]json.RawMessage, err
 		}
 	}
 	return fields, nil
-}
-
-// filesOf gives the files beside the book that a record names.
-func filesOf(r *record.Record) []string {
-	names := photosOf(r)
-	if r.Kind == "instrument.calibrated" {
-		if body, err := readCalibrated(r); err == nil && isHash(body.File) {
-			names = append(names, body.File)
-		}
-	}
-	return names
 }
 
 // SealDone is what a sealing came to.

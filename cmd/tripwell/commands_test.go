@@ -64,7 +64,7 @@ func emptyStore(t *testing.T) string {
 
 // Every command says in its help how it is used, with an example that this program understands.
 func TestHelp_HasAnExample(t *testing.T) {
-	for _, command := range [][]string{{"demo"}, {"serve"}, {"import", "register"}, {"import", "readings"}, {"import", "results"}, {"due"}, {"workbook"}, {"labels"}, {"check"}, {"rebuild"}, {"verdict"}, {"forms"}} {
+	for _, command := range [][]string{{"demo"}, {"serve"}, {"import", "register"}, {"import", "readings"}, {"import", "results"}, {"due"}, {"workbook"}, {"labels"}, {"check"}, {"rebuild"}, {"seal"}, {"verdict"}, {"forms"}} {
 		out, _, code := tripwell(t, "", append(command, "--help")...)
 		if code != 0 || !strings.Contains(out, "Example") || !strings.Contains(out, "tripwell "+strings.Join(command, " ")) {
 			t.Errorf("%v --help: exit %d, want an example in\n%s", command, code, out)

@@ -12,6 +12,7 @@ function phone(net, records = []) {
   const state = { me: {}, sites: new Map(), records, offset: 0 };
   const tray = { setMe: async (k, v) => { me[k] = v; }, waiting: async () => records.filter((r) => r.state === "waiting"), records: async () => records.filter((r) => r.state !== "kept"),
     settle: async (i, receipt) => Object.assign(records.find((r) => r.id === i), { state: "sent", receipt }), refuse: async () => {}, forget: async () => {}, waitingPhotos: async () => [], refusedPhotos: async () => [], resendPhotos: async () => 0, forgetPhotos: async () => {}, sawClock: async () => {},
+    forgetSealed: async (ids) => { const gone = records.filter((r) => ids.includes(r.id) && ["sent", "kept"].includes(r.state)); for (const r of gone) records.splice(records.indexOf(r), 1); return gone.length; },
     resend: async (lost) => { const rows = records.filter((r) => ["sent", "kept"].includes(r.state) && lost(r)); for (const r of rows) r.state = "waiting"; return rows.length; },
     become: async (person, name) => { Object.assign(me, { person, name }); }, renew: async (to) => { Object.assign(me, to); },
     cover: async (ids) => ids.forEach((i) => { covered.push(i); records.find((r) => r.id === i).state = "kept"; }) };
@@ -88,6 +89,16 @@ test("taking: a log no longer ours loses its copy, never what waits or was sent"
   p.state.sites.set("s1", copy());
   await p.run();
   assert.deepEqual([p.dropped, p.state.records[0].state], [["s1"], "refused"]);
+});
+
+test("taking: what the server dropped for good is dropped here too, and never sent again by a restore; what waits is not touched", async () => {
+  const at = { store: "S", epoch: 1, pos: 2 };
+  const p = phone(server({ logs: sized(5, 3, { epoch: 2, sealed: ["r1", "r2", "r3"] }), snapshot: async () => ok({ cursor: "n" }), push: () => assert.fail("sent again") }),
+    [{ id: "r1", record: "r1", log: "s1", state: "kept", receipt: at }, { id: "r2", record: "r2", log: "s1", state: "sent", receipt: at }, { id: "r3", record: "r3", log: "s1", state: "refused" }]);
+  p.state.sites.set("s1", copy());
+  p.state.me.server = "S 1";
+  await p.run();
+  assert.deepEqual(p.state.records.map((r) => [r.id, r.state]), [["r3", "refused"]]);
 });
 
 test("taking: a restored server gets again what this phone keeps: another epoch, a shorter log, a cursor it never gave", async () => {

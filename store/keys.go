@@ -5,8 +5,8 @@
 // Buckets and keys (integers big-endian; id = the 16 bytes of a UUID; seq = place in the whole book, from 1; ord = number
 // of a log, given in book order; pos = place in a log, from 1):
 //
-//	book: written once, never changed
-//	  rec    seq 8                      → ord 4 | pos 8 | stamp length 2 | stamp | record
+//	book: written once, changed by sealing alone
+//	  rec    seq 8                      → ord 4 | pos 8 | stamp length 2 | stamp | record, or the stub of a sealed one
 //	  id     id 16                      → seq 8
 //	  log    ord 4 | pos 8              → seq 8 | hashes stored with this leaf, 32 each, level 0 first
 //	  logs   log name                   → ord 4 | size 8 | right edge of the tree, 32 each
@@ -16,7 +16,7 @@
 //	  heads  epoch 4 | seq 8            → a head that was signed when the book held seq records
 //	  former epoch 4 | seq 8            → JSON of FormerHead: signed before a restore, over more than the backup held
 //	  differ id 16 | SHA-256 32         → received ms 8 | the exact bytes that came again under a named id with other values
-//	  meta   store, org, epoch, demo, format, clock, model
+//	  meta   store, org, epoch, demo, format, clock, model, wipe (while something is to be overwritten)
 //	counted from the book, computed anew by Rebuild
 //	  count  installation 16 | ord 4    → runs of n seen: (from 8, to 8)…
 //	  reused installation 16 | ord 4 | n 8 | id 16 → nothing: this record used an n that was taken

@@ -155,7 +155,7 @@ func (s *Store) refresh(log *slog.Logger) error {
 	lacking, written, records := false, uint64(0), uint64(0)
 	err := s.db.View(func(tx *bbolt.Tx) error {
 		written = readKey64(tx.Bucket(bktMeta).Get(metaModel))
-		lacking = tx.Bucket(bktDiffer) == nil || tx.Bucket(bktDigest) == nil || tx.Bucket(bktHeads) == nil || tx.Bucket(bktFormer) == nil
+		lacking = tx.Bucket(bktDiffer) == nil || tx.Bucket(bktDigest) == nil || tx.Bucket(bktHeads) == nil || tx.Bucket(bktSeal) == nil || tx.Bucket(bktFormer) == nil
 		k, _ := tx.Bucket(bktRec).Cursor().Last()
 		records = readKey64(k)
 		return nil

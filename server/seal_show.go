@@ -23,7 +23,7 @@ type sealPage struct {
 
 func (s *Server) sealShow(c echo.Context) error {
 	k := s.ink()
-	view := sealPage{Frame: s.frame(c, k.say("office.seal.title"), "set_up"), Heading: k.say("office.seal.title")}
+	view := sealPage{Frame: s.frame(c, k.say("office.seal.title"), "set-up"), Heading: k.say("office.seal.title")}
 	err := s.store.View(scope(c), func(v *store.View) error {
 		what, err := v.Sealing(c.Param("record"))
 		if err != nil {

@@ -18,8 +18,8 @@ import (
 	"tripwell/store/record"
 )
 
-// secret is what must be gone: no part of it may be found in any file of the store.
-const secret = "Quillfeather lives behind the blue door"
+// tooMuch is what must be gone: no part of it may be found in any file of the store.
+const tooMuch = "Quillfeather lives behind the blue door"
 
 var asOwner = Scope{Role: "owner", All: true}
 
@@ -46,7 +46,7 @@ func (r *rig) holding(text string) (files []string) {
 func (r *rig) told(p *phone, site, device string, photos ...string) (id string, raw []byte) {
 	r.Helper()
 	body := button("yes", "yes")
-	body["note"], body["photos"] = secret, photos
+	body["note"], body["photos"] = tooMuch, photos
 	raw = p.make("entry.made", site, device, body)
 	if got := states(p.push(raw)); got[0] != "stored" {
 		r.Fatal(got)
@@ -109,7 +109,7 @@ func TestSeal_DropsTheBytesAndKeepsTheTree(t *testing.T) {
 	if err != nil || !done.Wiped || done.Before {
 		t.Fatalf("%+v %v", done, err)
 	}
-	if files := r.holding(secret); len(files) > 0 {
+	if files := r.holding(tooMuch); len(files) > 0 {
 		t.Errorf("still found in %v", files)
 	}
 	e := r.entryOf(id)
@@ -140,7 +140,7 @@ func TestSeal_DropsTheBytesAndKeepsTheTree(t *testing.T) {
 	if got := states(p.push(raw)); got[0] != "already" {
 		t.Errorf("the same again: %v", got)
 	}
-	if files := r.holding(secret); len(files) > 0 {
+	if files := r.holding(tooMuch); len(files) > 0 {
 		t.Errorf("sent again, it is in %v", files)
 	}
 	again, err := r.Seal(context.Background(), asOwner, id, "once more")
@@ -184,13 +184,13 @@ func TestWipe_OverwritesFreePages(t *testing.T) {
 	if _, err := r.Seal(context.Background(), asOwner, id, "names a tenant"); !errors.Is(err, cut) {
 		t.Fatal(err)
 	}
-	if files := r.holding(secret); len(files) != 1 {
+	if files := r.holding(tooMuch); len(files) != 1 {
 		t.Fatalf("found in %v: the test shows nothing unless the file still holds it", files)
 	}
 	if done, err := r.Wipe(context.Background()); !done || err != nil {
 		t.Fatal(done, err)
 	}
-	if files := r.holding(secret); len(files) > 0 {
+	if files := r.holding(tooMuch); len(files) > 0 {
 		t.Errorf("wiped, it is in %v", files)
 	}
 	r.reopen()
@@ -203,7 +203,7 @@ func TestWipe_WaitsForReaders(t *testing.T) {
 	reading, read := make(chan bool), make(chan error)
 	ask := func(v *View) error {
 		list, err := v.Entries(device)
-		if err == nil && (len(list) != 1 || list[0].Note != secret) {
+		if err == nil && (len(list) != 1 || list[0].Note != tooMuch) {
 			err = errors.New("the state of the book that this view began with is not there any more")
 		}
 		return err
@@ -223,7 +223,7 @@ func TestWipe_WaitsForReaders(t *testing.T) {
 	if err := <-read; err != nil {
 		t.Error(err)
 	}
-	if files := r.holding(secret); len(files) > 0 {
+	if files := r.holding(tooMuch); len(files) > 0 {
 		t.Errorf("still in %v", files)
 	}
 }
@@ -241,7 +241,7 @@ func TestSeal_CutOffAnywhereIsDoneAtTheNextOpening(t *testing.T) {
 				t.Fatalf("%v, want it to be cut off", err)
 			}
 			r.reopen()
-			if files := r.holding(secret); len(files) > 0 {
+			if files := r.holding(tooMuch); len(files) > 0 {
 				t.Errorf("opened again, it is in %v", files)
 			}
 			if e := r.entryOf(id); e.Sealed == nil || e.Verdict.Result == forms.Pass {
@@ -299,8 +299,8 @@ func TestSeal_RegisterKeepsWhatStands(t *testing.T) {
 	r := newRig(t)
 	site := r.site("ELM")
 	place := newID(r.clock())
-	r.put("place.registered", site, place, map[string]any{"set": map[string]any{"name": "Flat 3", "floor": "2", "whom_to_tell": secret, "room": "kitchen"}})
-	device := r.device(site, map[string]any{"kind": "gfci-receptacle", "place": place, "note": secret})
+	r.put("place.registered", site, place, map[string]any{"set": map[string]any{"name": "Flat 3", "floor": "2", "whom_to_tell": tooMuch, "room": "kitchen"}})
+	device := r.device(site, map[string]any{"kind": "gfci-receptacle", "place": place, "note": tooMuch})
 	r.put("place.set", site, place, map[string]any{"set": map[string]any{"whom_to_tell": "the office"}})
 	var registered, deviceRecord string
 	r.look(all, func(v *View) {
@@ -327,7 +327,7 @@ func TestSeal_RegisterKeepsWhatStands(t *testing.T) {
 			t.Fatal(err)
 		}
 	}
-	if files := r.holding(secret); len(files) > 0 {
+	if files := r.holding(tooMuch); len(files) > 0 {
 		t.Errorf("still in %v", files)
 	}
 	d := r.deviceOn(device, forms.DayOf(r.clock()))
@@ -379,7 +379,7 @@ func TestSeal_RefusedBytes(t *testing.T) {
 	site := r.site("ELM")
 	crew := r.person("crew", false, site)
 	p := r.phone(crew)
-	bad := p.make("plan.set", site, newID(r.clock()), map[string]any{"plan": map[string]any{"plan": "x"}, "reason": secret})
+	bad := p.make("plan.set", site, newID(r.clock()), map[string]any{"plan": map[string]any{"plan": "x"}, "reason": tooMuch})
 	if got := states(p.push(bad)); !strings.HasPrefix(got[0], "refused") {
 		t.Fatal(got)
 	}
@@ -394,13 +394,13 @@ func TestSeal_RefusedBytes(t *testing.T) {
 	if _, err := r.Seal(context.Background(), asOwner, refusal, "names a tenant"); err != nil {
 		t.Fatal(err)
 	}
-	if files := r.holding(secret); len(files) > 0 {
+	if files := r.holding(tooMuch); len(files) > 0 {
 		t.Errorf("still in %v", files)
 	}
 	if got := states(p.push(bad)); !strings.HasPrefix(got[0], "refused") {
 		t.Errorf("sent again: %v", got)
 	}
-	if files := r.holding(secret); len(files) > 0 {
+	if files := r.holding(tooMuch); len(files) > 0 {
 		t.Errorf("sent again, it is in %v", files)
 	}
 }
@@ -413,7 +413,7 @@ func TestSeal_AStubCannotBeSent(t *testing.T) {
 		t.Fatal(f)
 	}
 	stub := record.Stub(rec, [32]byte{1})
-	if bytes.Contains(stub, []byte(secret)) {
+	if bytes.Contains(stub, []byte(tooMuch)) {
 		t.Fatalf("%s", stub)
 	}
 	if _, f := record.Parse(stub); f == nil {

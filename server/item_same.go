@@ -97,7 +97,7 @@ func (s *Server) itemSameDrafts(c echo.Context, first string, d, other store.Dev
 	err = s.store.View(scope(c), func(v *store.View) error {
 		entries, err := v.Entries(other.ID)
 		for _, e := range slices.Backward(entries) {
-			if e.Withdrawn == nil && !e.Sealed {
+			if e.Withdrawn == nil && e.Sealed == nil {
 				drafts = append(drafts, store.Draft{ID: record.NamedID("same item", d.ID, e.ID), Kind: "entry.imported", Log: d.Site, Subject: d.ID, Body: s.handedOn(e)})
 			}
 		}

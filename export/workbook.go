@@ -60,6 +60,8 @@ type DeviceLine struct {
 	Device  store.DeviceRow
 	Fields  map[string]any // of the register; nil where they are not known
 	Circuit map[string]any // fields of its circuit
+	AtSite  string         // code of the site a portable item is at, "" at its depot
+	Source  string         // tag of the device that feeds it, its place where it has none
 	// Imported are the tasks whose last test was brought in and not witnessed.
 	Imported []string
 }

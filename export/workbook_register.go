@@ -22,7 +22,7 @@ var registerColumns = []column{
 	{"own_limit_set", 18, textCell}, {"gauge", 10, textCell}, {"length_m", 10, numberCell},
 	{"no_neutral", 10, textCell}, {"earthing", 10, textCell}, {"distribution", 12, textCell}, {"special_location", 12, textCell}, {"double_insulated", 12, textCell},
 	{"new_construction", 12, textCell}, {"quiet_ground", 10, textCell}, {"supply_edition", 12, textCell}, {"locking", 10, textCell},
-	{"kept_at", 18, textCell}, {"note", 40, textCell},
+	{"kept_at", 18, textCell}, {"note", 40, textCell}, {"now_at", 12, textCell}, {"hangs_on", 26, textCell}, {"usual_place", 14, textCell},
 	{"imported", 30, textCell},
 }
 
@@ -91,6 +91,7 @@ func (b *book) registerFields(s *sheet, line DeviceLine) {
 	field(line.Circuit, "breaker_a", "poles", "voltage_v", "conductor", "supply", "standard")
 	field(line.Fields, "serial", "nominal_v", "delayed", "waveform", "equipment_ground", "faces", "limit_set", "gauge", "length_m",
 		"no_neutral", "earthing", "distribution", "special_location", "double_insulated", "new_construction", "quiet_ground", "supply_edition", "locking", "where", "note")
+	s.text(line.AtSite).text(line.Source).text(p.Usual)
 }
 
 // nextDue is the earliest date of a device; Due is NoDay where there is none.

@@ -1,6 +1,7 @@
 package export
 
 import (
+	"cmp"
 	"errors"
 	"io"
 	"iter"
@@ -192,14 +193,31 @@ func countRefused(refused []store.Refusal, sites []store.Site, all bool) (n int)
 
 func deviceLines(v *store.View, sites []store.Site) iter.Seq2[DeviceLine, error] {
 	return func(yield func(DeviceLine, error) bool) {
+		codes := map[string]string{}
+		every, err := v.Sites()
+		if err != nil {
+			yield(DeviceLine{}, err)
+			return
+		}
+		for _, site := range every {
+			codes[site.ID] = site.Code
+		}
 		for _, site := range sites {
 			fields, circuits, err := registerFields(v, site.ID)
 			if err != nil {
 				yield(DeviceLine{}, err)
 				return
 			}
+			names, err := sourceNames(v, site.ID, fields)
+			if err != nil {
+				yield(DeviceLine{}, err)
+				return
+			}
 			for d, err := range v.Devices(site.ID) {
-				line := DeviceLine{Site: site, Device: d, Fields: fields[d.ID], Circuit: circuits[d.Panel+"\x1f"+d.Circuit]}
+				line := DeviceLine{Site: site, Device: d, Fields: fields[d.ID], Circuit: circuits[d.Panel+"\x1f"+d.Circuit], AtSite: codes[d.AtSite]}
+				if source, _ := fields[d.ID]["fed_by"].(string); source != "" {
+					line.Source = names[source]
+				}
 				if err == nil {
 					line.Imported, err = importedTasks(v, d)
 				}
@@ -209,6 +227,39 @@ func deviceLines(v *store.View, sites []store.Site) iter.Seq2[DeviceLine, error]
 			}
 		}
 	}
+}
+
+// sourceNames names the devices of a site that others hang on as an import finds them again: by tag, else by place, else by id.
+func sourceNames(v *store.View, site string, fields map[string]map[string]any) (map[string]string, error) {
+	names := map[string]string{}
+	for _, f := range fields {
+		if source, _ := f["fed_by"].(string); source != "" {
+			names[source] = source
+		}
+	}
+	if len(names) == 0 {
+		return names, nil
+	}
+	for d, err := range v.Devices(site) {
+		if err != nil {
+			return nil, err
+		}
+		if _, named := names[d.ID]; !named {
+			continue
+		}
+		now := d
+		for range 16 { // what took its place feeds what it fed
+			one, err := v.Device(now.ID, d.Installed)
+			if err != nil || one.With == "" {
+				break
+			}
+			if next, err := v.Device(one.With, d.Installed); err == nil {
+				now = next.DeviceRow
+			}
+		}
+		names[d.ID] = cmp.Or(TagText(now.Tag), PlaceText(now.Place), now.ID)
+	}
+	return names, nil
 }
 
 // importedTasks are the tasks whose last test nobody here witnessed, in the order of tasks.

@@ -10,7 +10,12 @@ import (
 	"tripwell/store"
 )
 
-func (s *Server) certificateAsk(c echo.Context) error {
+func (s *Server) certificateAsk(c echo.Context) error { return s.todayAsk(c, s.certificateForm) }
+
+func (s *Server) provedAsk(c echo.Context) error { return s.todayAsk(c, s.provedForm) }
+
+// todayAsk asks what happened to an instrument, today unless another day is said.
+func (s *Server) todayAsk(c echo.Context, page func(echo.Context, store.Instrument) formPage) error {
 	i, err := s.instrumentOf(c)
 	if err != nil {
 		return err
@@ -19,7 +24,7 @@ func (s *Server) certificateAsk(c echo.Context) error {
 	if err != nil {
 		return err
 	}
-	return s.formBack(c, f, s.certificateForm(c, i))
+	return s.formBack(c, f, page(c, i))
 }
 
 // certificateTake keeps a certificate with its file. One found out of tolerance leads on to what it puts in doubt.
@@ -131,18 +136,6 @@ func (s *Server) certificateForm(c echo.Context, i store.Instrument) formPage {
 			}}, found,
 		},
 	}
-}
-
-func (s *Server) provedAsk(c echo.Context) error {
-	i, err := s.instrumentOf(c)
-	if err != nil {
-		return err
-	}
-	f, err := s.blankForm(map[string]string{"on": forms.DayOf(s.store.Now()).String()})
-	if err != nil {
-		return err
-	}
-	return s.formBack(c, f, s.provedForm(c, i))
 }
 
 // provedTake keeps that an instrument was tried on an outlet whose reading is known.

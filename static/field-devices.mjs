@@ -1,13 +1,15 @@
 // The devices of a site in walking order: what is due, search, the label's code.
 
 import { html, useEffect, useState } from "./vendor/htm-preact.mjs";
-import { circuitOf, dueWords, Foot, Mark, titleOf, Where } from "./field-parts.mjs";
+import { circuitOf, dueWords, Foot, titleOf, Where } from "./field-parts.mjs";
 import { dueIn, dueNow, grouped, matches } from "./list.mjs";
-import { showDay, showMoment } from "./days.mjs";
+import { showMoment } from "./days.mjs";
 import { toDevice } from "./route.mjs";
 import { showTag } from "./tag.mjs";
 import { tagTyped } from "./tag-typed.mjs";
 import { Camera } from "./field-scan.mjs";
+import { openDefects } from "./defect-work.mjs";
+import { DefectMark } from "./field-failed.mjs";
 import { ItemsHere } from "./field-item.mjs";
 import { travels } from "./items.mjs";
 import { RoundRows, walkWords } from "./field-round.mjs";
@@ -66,11 +68,9 @@ function DeviceRow({ app, device, place, today }) {
     <span class="name">${titleOf(app, device, place)}</span>${device.tag ? html`<span class="tag">${showTag(device.tag)}</span>` : html`<span></span>`}
     <span class="quiet">${[say(`kind.${device.kind}`), circuitOf(device), awayAt(app, device)].filter(Boolean).join(" · ")}</span>
     ${due.map((d) => html`<span class=${`due ${d.state}`} key=${d.task}>${dueWords(app, d)}</span>`)}
-    ${failedTasks(device).map((task) => html`<${Mark} verdict="fail" key=${task}>${say("field.last_failed", { task: say(`task.${task}`), day: showDay(app, device.last[task].day) })}<//>`)}
+    ${openDefects(device).map((d) => html`<${DefectMark} app=${app} defect=${d} key=${d.id} />`)}
   </a></li>`;
 }
-
-const failedTasks = (device) => Object.keys(device.last ?? {}).filter((t) => device.last[t].result === "fail");
 
 /** Where an item of this depot is, when it is at another site. */
 function awayAt(app, device) {

@@ -45,6 +45,12 @@ export function Defects({ app, device }) {
   const { say } = app, list = openDefects(device);
   if (list.length === 0) return null;
   return html`<ul class="rows defects">${list.map((d) => html`<li class="row still" key=${d.id}>
-    <${Mark} verdict=${d.severity === "unsafe" && !d.safe ? "fail" : "watch"}>${d.text || (say.has(`reading.${d.cause}.name`) ? say(`reading.${d.cause}.name`) : say("failed.a_test"))}<//>
+    <${DefectMark} app=${app} defect=${d} />
     <span class="quiet">${[d.repaired ? say("failed.waits_test") : d.safe ? say("failed.is_safe", { how: d.safe }) : say("failed.in_use"), d.due ? say("failed.due", { day: showDay(app, d.due) }) : "", d.parts?.length ? say("failed.parts", { parts: d.parts.join(", ") }) : ""].filter(Boolean).join(" · ")}</span></li>`)}</ul>`;
+}
+
+/** A defect in one mark: what is wrong, red while somebody may still be hurt. */
+export function DefectMark({ app, defect }) {
+  const { say } = app, cause = `reading.${defect.cause}.name`;
+  return html`<${Mark} verdict=${defect.severity === "unsafe" && !defect.safe ? "fail" : "watch"}>${defect.text || say(say.has(cause) ? cause : "failed.a_test")}<//>`;
 }

@@ -2,6 +2,7 @@
 
 import { html } from "./vendor/htm-preact.mjs";
 import { PhoneNotices } from "./phone-notices.mjs";
+import { travels } from "./items.mjs";
 import { ageWords, showDay } from "./days.mjs";
 import { showTag } from "./tag.mjs";
 
@@ -65,7 +66,7 @@ export function Foot({ app, children }) {
 /** Context of a device: floor and room, kind, panel and circuit. */
 export function contextOf(app, device, place) {
   const where = [place?.building, place?.floor, place?.room].filter((x) => x && x !== place?.name);
-  return [...where, app.say(`kind.${device.kind}`), circuitOf(device)].filter(Boolean).map(unbroken).join(" · ");
+  return [...where, app.say(`kind.${device.kind}`), travels(device) ? device.fields?.serial : "", circuitOf(device)].filter(Boolean).map(unbroken).join(" · ");
 }
 
 /** A short name is not broken over two lines; a long one may be. */
@@ -73,9 +74,10 @@ const unbroken = (text) => (text.length <= 24 ? text.replaceAll(" ", "\u00a0") :
 
 export const circuitOf = (device) => [device.panel, device.circuit].filter(Boolean).join(" / ");
 
-/** What a device is called on the phone: the spot it sits in, else where it is kept, else its kind. */
+/** What a device is called on the phone: the spot it sits in; an item that travels by its make and model, never by where it is
+ *  just now; else its kind. */
 export function titleOf(app, device, place) {
-  return place?.name || device.fields?.where || app.say(`kind.${device.kind}`);
+  return place?.name || (travels(device) && [device.fields?.make, device.fields?.model].filter(Boolean).join(" ")) || app.say(`kind.${device.kind}`);
 }
 
 /** "Button test: overdue since Mon 30 Nov". */

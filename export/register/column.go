@@ -78,6 +78,9 @@ var Columns = []Column{
 	{Name: "supply_edition", of: "device", synonyms: []string{"supply_voltage_edition"}},
 	{Name: "locking", of: "device", reads: yesNo, synonyms: []string{"locking_outlet", "locking_receptacle", "twist_lock"}},
 	{Name: "kept_at", of: "device", field: "where", synonyms: []string{"kept_in", "stored_in", "depot"}},
+	{Name: "now_at", of: "device", field: "at_site", synonyms: []string{"now_at_site", "lent_to"}},
+	{Name: "hangs_on", of: "device", field: "fed_by", synonyms: []string{"protected_by", "load_side_of", "fed_by_device", "downstream_of"}},
+	{Name: "usual_place", of: "place", field: "usual", synonyms: []string{"kind_of_place", "place_type", "room_type"}},
 	{Name: "note", of: "device", synonyms: []string{"notes", "remark", "remarks", "comment", "comments", "condition_notes", "other", "bemerkung", "observaciones"}},
 }
 

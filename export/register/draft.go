@@ -66,15 +66,21 @@ type planner struct {
 	first map[string]Row
 	made  map[string]bool // codes of sites this import registers
 
+	fed   []fedRow
+	stand map[string][]standing // devices by site, of the store and of the file
+	tagAt map[string]string     // device by site and tag
+
 	circuitSaid map[string]map[string]saidAt // what rows so far said of a circuit, by field
 	out         []store.Draft
 }
 
 func planRows(k *known, by string, rows []Row, ask Ask) Plan {
-	p := &planner{known: k, by: by, ask: ask, plan: Plan{States: map[RowAt]string{}}, lines: map[string]Row{}, order: map[string]int{}, first: siteFacts(rows), made: map[string]bool{}, circuitSaid: map[string]map[string]saidAt{}}
+	p := &planner{known: k, by: by, ask: ask, plan: Plan{States: map[RowAt]string{}}, lines: map[string]Row{}, order: map[string]int{}, first: siteFacts(rows), made: map[string]bool{}, circuitSaid: map[string]map[string]saidAt{}, stand: map[string][]standing{}, tagAt: map[string]string{}}
+	p.noteKnown()
 	for _, row := range rows {
 		p.row(row)
 	}
+	p.wire()
 	return p.plan
 }
 
@@ -130,6 +136,12 @@ func (p *planner) row(row Row) {
 	p.lines[key] = row
 	if isNew {
 		p.sites[row.Site] = site
+	}
+	p.usual(site, &row)
+	p.whereNow(site, d, &row)
+	p.feeds(site, d, &row)
+	if d.was == nil {
+		p.note(site.ID, d.id, row.Tag, fieldText(row.Place, "building"), fieldText(row.Place, "floor"), fieldText(row.Place, "room"), fieldText(row.Place, "name"))
 	}
 	p.place(site, d, &row)
 	p.circuit(site, d, &row)
@@ -245,7 +257,7 @@ func (p *planner) place(site store.Site, d *rowDevice, row *Row) {
 	}
 	if d.was != nil && d.was.Place.ID != "" {
 		w := d.was.Place
-		have := map[string]any{"building": w.Building, "floor": w.Floor, "room": w.Room, "name": w.Name, "order": w.Order, "critical_load": w.CriticalLoad, "whom_to_tell": w.WhomToTell, "test_from": w.TestFrom, "test_until": w.TestUntil}
+		have := map[string]any{"building": w.Building, "floor": w.Floor, "room": w.Room, "name": w.Name, "order": w.Order, "critical_load": w.CriticalLoad, "whom_to_tell": w.WhomToTell, "test_from": w.TestFrom, "test_until": w.TestUntil, "usual": w.Usual}
 		p.change("place.set", site.ID, d.place, row.Place, have)
 		return
 	}

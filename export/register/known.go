@@ -57,11 +57,13 @@ type known struct {
 	sites    map[string]store.Site // by code in capitals
 	devices  map[string]*store.Device
 	byID     map[string]*store.Device
-	retired  map[string]bool         // devices that are no longer in service
-	circuits map[string]knownCircuit // by site, panel and number
-	panels   map[string]string       // by site and panel
-	tags     map[string]string       // subject a tag is bound to
-	org      string                  // begins the key of every imported id: the same file makes the same ids on every server of an organisation
+	retired  map[string]bool               // devices that are no longer in service
+	circuits map[string]knownCircuit       // by site, panel and number
+	panels   map[string]string             // by site and panel
+	tags     map[string]string             // subject a tag is bound to
+	codes    map[string]string             // site by code in capitals, of all that the reader sees
+	usuals   map[string]*forms.UsualPlaces // by site; "" is the organisation's
+	org      string                        // begins the key of every imported id: the same file makes the same ids on every server of an organisation
 }
 
 type knownCircuit struct {
@@ -71,7 +73,7 @@ type knownCircuit struct {
 
 func noneKnown(org string) *known {
 	return &known{org: org, sites: map[string]store.Site{}, devices: map[string]*store.Device{}, byID: map[string]*store.Device{},
-		retired: map[string]bool{}, circuits: map[string]knownCircuit{}, panels: map[string]string{}, tags: map[string]string{}}
+		retired: map[string]bool{}, circuits: map[string]knownCircuit{}, panels: map[string]string{}, tags: map[string]string{}, codes: map[string]string{}, usuals: map[string]*forms.UsualPlaces{}}
 }
 
 func circuitKey(site, panel, no string) string {
@@ -91,6 +93,7 @@ func readKnown(v *store.View, rows []Row, ask Ask) (*known, error) {
 	}
 	for _, s := range sites {
 		code := strings.ToUpper(s.Code)
+		k.codes[code] = s.ID
 		if !named[code] {
 			continue
 		}
@@ -98,6 +101,9 @@ func readKnown(v *store.View, rows []Row, ask Ask) (*known, error) {
 		if err := k.readSite(v, s, forms.DayOf(ask.Now.In(s.Location()))); err != nil {
 			return nil, err
 		}
+	}
+	if k.usuals[""], _, err = v.UsualPlaces("", forms.DayOf(ask.Now)); err != nil {
+		return nil, err
 	}
 	for _, r := range rows {
 		if err := k.readTag(v, r.Tag); err != nil {
@@ -107,7 +113,10 @@ func readKnown(v *store.View, rows []Row, ask Ask) (*known, error) {
 	return k, nil
 }
 
-func (k *known) readSite(v *store.View, s store.Site, today forms.Day) error {
+func (k *known) readSite(v *store.View, s store.Site, today forms.Day) (err error) {
+	if k.usuals[s.ID], _, err = v.UsualPlaces(s.ID, today); err != nil {
+		return err
+	}
 	for row, err := range v.Devices(s.ID) {
 		if err != nil {
 			return err

@@ -128,6 +128,8 @@ func (b *builder) stories() {
 	}
 	b.withdraw()
 	b.ring()
+	b.lend()
+	b.trip()
 }
 
 // ring lets the office say that two counter outlets feed each other: the map leaves the later statement out and shows it.
@@ -146,6 +148,36 @@ func (b *builder) ring() {
 		b.on((b.today - 30).Time().Add(15*time.Hour), func() error {
 			return b.office(s.id, store.Draft{Kind: "device.set", Subject: left.id, Body: set("fed_by", right.id)})
 		})
+	}
+}
+
+// lend lets a portable item of one site be taken to another by the crew that has both.
+func (b *builder) lend() {
+	for _, s := range b.sites {
+		for _, d := range s.devices {
+			if d.kind != "portable-gfci" || s == b.sites[0] {
+				continue
+			}
+			at, p := s.at(lastWorkday(b.today-12), 9, 10), b.phones[phone1]
+			b.on(at, func() error {
+				if _, err := p.keep("", "device.set", s.id, d.id, at, set("at_site", b.sites[0].id, "where", "Workshop")); err != nil {
+					return err
+				}
+				return p.push(b.ctx, b.store, at)
+			})
+			return
+		}
+	}
+}
+
+// trip lets a crew trip a counter outlet and look what goes dark: one that the map has behind it stays live.
+func (b *builder) trip() {
+	for _, d := range b.sites[0].devices {
+		if d.source == "" {
+			continue
+		}
+		b.say(d, lastWorkday(b.today-4), "defect.opened", map[string]any{"cause": "protection-lost", "protector": d.source, "text": "Stayed live while its protector was tripped", "severity": forms.SeverityUnsafe})
+		return
 	}
 }
 

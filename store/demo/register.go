@@ -348,7 +348,7 @@ func (d *device) fields() map[string]any {
 		fields["circuit"] = circuitID(d.site, d.spot)
 	}
 	if d.place == "" {
-		fields["where"] = d.name
+		fields["where"], fields["note"] = "Plant room, shelf", d.name
 	}
 	if d.source != "" {
 		fields["fed_by"] = d.source

@@ -81,9 +81,7 @@ func TestRound_RestIsHandedOverByTheScreen(t *testing.T) {
 	giver.Tap("a.row", "Hand over the rest")
 	giver.Sees("30 outlets to hand over")
 	giver.Until("the code", `document.querySelector("svg.qr path")`)
-	var dark [][]bool
-	must(t, json.Unmarshal([]byte(giver.Value(`(() => { const svg = document.querySelector("svg.qr"), side = svg.viewBox.baseVal.width, rows = Array.from({ length: side }, () => Array(side).fill(false));
-		for (const [, x, y] of svg.querySelector("path").getAttribute("d").matchAll(/M(\d+) (\d+)h1/g)) rows[y][x] = true; return JSON.stringify(rows); })()`)), &dark))
+	dark := giver.code()
 	giver.Tap("button", "They have it")
 	giver.Sees("30 outlets handed over")
 
@@ -105,4 +103,66 @@ func TestRound_RestIsHandedOverByTheScreen(t *testing.T) {
 	taker.Tap("a", "Button test")
 	taker.testNext()
 	taker.Sees("Outlet 2: saved on this phone")
+}
+
+// code is what stands on the screen as a code, row by row.
+func (p *handheld) code() (dark [][]bool) {
+	p.T.Helper()
+	p.Until("the code", `document.querySelector("svg.qr path")`)
+	must(p.T, json.Unmarshal([]byte(p.Value(`(() => { const svg = document.querySelector("svg.qr"), side = svg.viewBox.baseVal.width, rows = Array.from({ length: side }, () => Array(side).fill(false));
+		for (const [, x, y] of svg.querySelector("path").getAttribute("d").matchAll(/M(\d+) (\d+)h1/g)) rows[y][x] = true; return JSON.stringify(rows); })()`)), &dark))
+	return dark
+}
+
+// A round made in the office and given to one person: the rest of it goes to a colleague's phone, who walks it there without a line;
+// both parts count for the round.
+func TestRound_RestOfAMadeRoundIsHandedOver(t *testing.T) {
+	chromium.Need(t)
+	r := newRig(t, 6)
+	round := newID()
+	var stops []any
+	for _, d := range r.devices {
+		stops = append(stops, d+"/button")
+	}
+	r.append(store.Draft{Kind: "round.made", Log: r.site, Subject: round, Body: set{"set": set{"stops": stops, "people": []any{r.crew.ID}}}})
+	w := newWire(t, strings.TrimPrefix(r.url, "http://"))
+	giver := openHandheld(t, "http://"+w.addr)
+	giver.signIn(r, r.crew)
+	giver.ready()
+	giver.Until("the round", `(location.hash = "#/round/KILN-LANE/`+round+`", document.querySelector(".go")?.innerText === "Start this round")`)
+	giver.Tap(".go", "")
+	giver.testNext()
+	giver.sendAll()
+	w.cut()
+	giver.Until("the round", `(location.hash = "#/round/KILN-LANE/`+round+`", document.querySelector('a[href^="#/hand/"]'))`)
+	giver.Tap("a.row", "Hand over the rest")
+	giver.Sees("5 outlets to hand over")
+	dark := giver.code()
+	giver.Tap("button", "They have it")
+	giver.Sees("5 outlets handed over")
+
+	w.mend()
+	taker := openHandheld(t, "http://"+w.addr, chromium.Camera(chromium.Film(t, dark)))
+	taker.signIn(r, r.person("Crew 8", "crew", r.site))
+	taker.ready()
+	w.cut()
+	taker.Until("the round", `(location.hash = "#/round/KILN-LANE", document.querySelector('a[href^="#/take/"]'))`)
+	taker.Tap("a.row", "Take over")
+	taker.Sees("5 outlets taken over")
+	taker.Tap("a", "Begin")
+	taker.Sees("End the round with 5 left")
+	taker.Tap("a.go", "Go on")
+	taker.testNext()
+	taker.Until("the round again", `(location.hash = "#/round/KILN-LANE/`+round+`", document.body.innerText.includes("1 done · 4 left"))`)
+	w.mend()
+	taker.sendAll()
+	giver.Until("the round where it was given", `(location.hash = "#/round/KILN-LANE/`+round+`", document.querySelector(".go")?.innerText === "End the round")`)
+	eventually(t, "both parts in the round", func() (both bool) {
+		must(t, r.store.View(r.manager.Scope(), func(v *store.View) error {
+			got, err := v.Round(round)
+			both = err == nil && got.Counts["done"] == 2
+			return err
+		}))
+		return both
+	})
 }

@@ -3,19 +3,26 @@
 import { html, useEffect, useState } from "./vendor/htm-preact.mjs";
 import { Foot, Where } from "./field-parts.mjs";
 import { Camera } from "./field-scan.mjs";
-import { codesOf, devicesOf, gather, isWhole, readCode } from "./hand-over.mjs";
-import { toSite } from "./route.mjs";
-import { leftOf } from "./walk-round.mjs";
+import { codesOf, devicesOf, gather, isWhole, readCode, roundOf } from "./hand-over.mjs";
+import { toRound } from "./route.mjs";
+import { leftOf, stopsLeft } from "./walk-round.mjs";
 
-const toRound = (site) => `#/round/${encodeURIComponent(site.snapshot.site.code)}`;
+const toDay = (site) => `#/round/${encodeURIComponent(site.snapshot.site.code)}`;
 
-export function HandPage({ app, site }) {
+/** tag: the id of a round made in the office; without one the walk of the day is handed over. */
+export function HandPage({ app, site, tag: id }) {
   const { say } = app;
-  const [ids] = useState(() => leftOf(site, app.skipped(site)).map((d) => d.id)); // what was left when the code was asked for
+  const made = id && app.roundsOf(site).find((r) => r.id === id);
+  // What was left when the code was asked for.
+  const [ids] = useState(() => (made ? [...new Set(stopsLeft(made.stops, app.walking(site)?.id === id ? app.passed(site) : []).map((s) => s.device))] : leftOf(site, app.skipped(site)).map((d) => d.id)));
   const [at, setAt] = useState(0);
-  const texts = codesOf(site.snapshot.site.code, ids);
-  const done = () => { app.giveAway(site, ids); app.go(toRound(site)); };
-  return html`<${Where} app=${app} title=${say("walk.hand_title", { n: ids.length })} context=${site.snapshot.site.name} back=${toRound(site)} />
+  const texts = codesOf(site.snapshot.site.code, ids, made?.id), back = made ? toRound(site.snapshot.site.code, id) : toDay(site);
+  const done = () => {
+    if (made && app.walking(site)?.id !== id) app.startRound(site, id);
+    app.giveAway(site, ids);
+    app.go(back);
+  };
+  return html`<${Where} app=${app} title=${say("walk.hand_title", { n: ids.length })} context=${site.snapshot.site.name} back=${back} />
     <main>${ids.length > 0 && html`<${Code} app=${app} text=${texts[at]} label=${say("walk.hand_code", { n: at + 1, of: texts.length })} />`}
       ${texts.length > 1 && html`<p class="pad" role="status"><b>${say("walk.hand_code", { n: at + 1, of: texts.length })}</b></p><div class="pair pad">
         <button type="button" disabled=${at === 0} onClick=${() => setAt(at - 1)}>${say("walk.code_before")}</button>
@@ -50,13 +57,13 @@ export function TakePage({ app, site }) {
     const now = gather(read, one);
     setRead(now);
     if (!isWhole(now)) return;
-    app.takeOn(site, devicesOf(site.devices, now).ids);
+    app.takeOn(site, devicesOf(site.devices, now).ids, roundOf(site.snapshot.rounds, now)?.id);
   };
-  const whole = isWhole(read), found = whole && devicesOf(site.devices, read);
-  return html`<${Where} app=${app} title=${say("walk.take_title")} context=${site.snapshot.site.name} back=${toRound(site)} />
+  const whole = isWhole(read), found = whole && devicesOf(site.devices, read), made = whole && roundOf(site.snapshot.rounds, read);
+  return html`<${Where} app=${app} title=${say("walk.take_title")} context=${site.snapshot.site.name} back=${toDay(site)} />
     <main>${whole
       ? html`<p class="pad" role="status"><b>${say("walk.took", { n: found.ids.length })}</b></p>${found.unknown > 0 && html`<p class="bad pad">${say("walk.took_unknown", { n: found.unknown })}</p>`}`
       : html`${read && html`<p class="pad" role="status"><b>${say("walk.take_more", { n: Object.keys(read.parts).length, of: read.of })}</b></p>`}
-        <div class="pad"><${Camera} app=${app} key=${Object.keys(read?.parts ?? {}).join()} read=${take} hold="walk.take_hint" onTag=${add} onClose=${() => app.go(toRound(site))} /></div>`}
-    </main><${Foot} app=${app}>${whole && html`<a class="big go" href=${toSite(site.snapshot.site.code)}>${say("walk.take_go")}</a>`}<//>`;
+        <div class="pad"><${Camera} app=${app} key=${Object.keys(read?.parts ?? {}).join()} read=${take} hold="walk.take_hint" onTag=${add} onClose=${() => app.go(toDay(site))} /></div>`}
+    </main><${Foot} app=${app}>${whole && html`<a class="big go" href=${toRound(site.snapshot.site.code, made?.id)}>${say("walk.take_go")}</a>`}<//>`;
 }

@@ -57,7 +57,7 @@ function MadeRound({ app, site, round }) {
   const { say } = app, begun = app.walking(site)?.id === round.id, passed = begun ? app.passed(site) : [];
   const counts = roundCounts(round.stops, passed), next = nextStop(round.stops, undefined, passed), blocked = app.off.length > 0;
   const places = round.stops.map((s) => site.places.get(site.device(s.device)?.place));
-  const other = !begun && app.walking(site);
+  const other = !begun && app.walking(site), given = round.stops.filter((s) => s.state === "given").length;
   const go = () => { app.startRound(site, round.id); if (next) app.go(toTest(next.device, next.task)); };
   const end = async () => { if (!blocked && (await app.closeRound(site, counts))) app.go("#/", { keep: true }); };
   const main = !begun ? html`<button type="button" class="big go" onClick=${go}>${say("walk.start")}</button>`
@@ -71,6 +71,8 @@ function MadeRound({ app, site, round }) {
       ${begun && html`<${Proof} app=${app} site=${site} round=${app.roundOf(site)} end="first" />`}
       ${stopsByRoom(site, round.stops).map((g, i) => html`<section class="room" key=${i}><h2>${g.name || say("field.no_place")}</h2><ul class="rows">${g.stops.map((s) => html`<${StopRow} app=${app} site=${site} stop=${s} reason=${passedBy(passed, s)} key=${s.device + s.task} />`)}</ul></section>`)}
       ${begun && html`<${Proof} app=${app} site=${site} round=${app.roundOf(site)} end="last" />`}
+      ${(counts.left > 0 || given > 0) && html`<section class="room"><h2>${say("walk.share")}</h2>${counts.left > 0 && html`<ul class="rows"><li><a class="row" href=${`#/hand/${encodeURIComponent(site.snapshot.site.code)}/${round.id}`}><span class="name">${say("walk.hand")}</span></a></li></ul>`}
+        <${Given} app=${app} site=${site} n=${given} /></section>`}
       ${blocked && html`<p class="caution" role="alert">${say("walk.still_off", { n: app.off.length })}</p>`}
       ${begun && next && html`<p class="pad"><button type="button" class="link" aria-disabled=${String(blocked)} disabled=${app.state.saving} onClick=${end}>${say("walk.end_with", { n: counts.left })}</button></p>`}
     </main><${Foot} app=${app}>${main}<//>`;
@@ -95,6 +97,7 @@ function stopsByRoom(site, stops) {
 function StopRow({ app, site, stop, reason }) {
   const { say } = app, last = site.device(stop.device)?.last?.[stop.task];
   const state = stop.state === "done" ? html`<${Mark} verdict=${last?.result ?? "pass"}>${say(`verdict.${last?.result ?? "pass"}`)}<//>`
+    : stop.state === "given" ? html`<${Mark} verdict="not-tested">${say("walk.stop_given")}<//>`
     : stop.state === "back" ? html`<${Mark} verdict="watch">${say("walk.stop_back")}<//>`
     : reason ? html`<${Mark} verdict="not-tested">${say(`walk.passed.${reason}`)}<//>` : null;
   return html`<li><a class="row" href=${toTest(stop.device, stop.task)}><span class="name">${titleAt(app, site, stop)}</span><span class="quiet">${say(`task.${stop.task}`)}</span>${state}</a>
@@ -130,12 +133,15 @@ function DayWalk({ app, site }) {
       <section class="room"><h2>${say("walk.share")}</h2><ul class="rows">
         ${counts.left > 0 && html`<li><a class="row" href=${`#/hand/${code}`}><span class="name">${say("walk.hand")}</span></a></li>`}
         <li><a class="row" href=${`#/take/${code}`}><span class="name">${say("walk.take")}</span></a></li></ul>
-        ${given.length > 0 && html`<p class="beside pad"><span>${say("walk.given", { n: given.length })}</span><button type="button" class="link" onClick=${() => app.giveAway(site, [])}>${say("walk.take_back")}</button></p>`}</section>
+        <${Given} app=${app} site=${site} n=${given.length} /></section>
       <${Proof} app=${app} site=${site} round=${round} end="last" />
       ${blocked && html`<p class="caution" role="alert">${say("walk.still_off", { n: off })}</p>`}
       ${!blocked && (!round.proved?.first || !round.proved?.last) && html`<p class="hint pad">${say("walk.unproved")}</p>`}
     </main><${Foot} app=${app}><button type="button" class="big go" aria-disabled=${String(blocked)} disabled=${app.state.saving} onClick=${end}>${say("walk.end")}</button><//>`;
 }
+
+/** What a colleague walks, and the way back. */
+const Given = ({ app, site, n }) => n > 0 && html`<p class="beside pad"><span>${app.say("walk.given", { n })}</span><button type="button" class="link" onClick=${() => app.giveAway(site, [])}>${app.say("walk.take_back")}</button></p>`;
 
 /** A tester is proved on an outlet known to be live, before the first test and after the last. */
 function Proof({ app, site, round, end }) {

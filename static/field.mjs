@@ -20,7 +20,8 @@ import { LANGUAGES, languageOf, speaker } from "./words.mjs";
 
 const root = document.getElementById("field");
 const now = () => Date.now();
-const AFTER_SAVE = 60; // ms: the page says "saved" first
+const AFTER_SAVE = 400; // ms: the page says "saved" first, and a tap in the same breath is not held up by sending
+const LONGEST_HELD = 5_000; // ms: however fast somebody taps, sending begins by then
 
 /** The phone's words in a language; one that is not laid in and cannot be fetched gives way to another that is here. */
 async function wordsOf(wish) {
@@ -58,10 +59,11 @@ async function start() {
     if (location.hash !== hash) history.pushState(null, "", hash); // setting the hash would look for an anchor and tell of it later
     onRoute();
   };
-  let sendTimer;
+  let sendTimer, held = 0;
   const sendSoon = () => {
     clearTimeout(sendTimer);
-    sendTimer = setTimeout(() => { others.tell(); sender.kick(); }, AFTER_SAVE);
+    held ||= now();
+    sendTimer = setTimeout(() => { held = 0; others.tell(); sender.kick(); }, Math.max(0, Math.min(AFTER_SAVE, held + LONGEST_HELD - now())));
   };
   const app = fieldApp({ tray, say, draw, go, now, make: makeRecord, newId: () => newId(now()), judgeVersion: JudgeVersion, soon: (fn, ms) => setTimeout(fn, ms), sendNow: () => sender.kick(), keepSending: sendSoon, takeOver: () => sync.takeOver(), entryOf: (id) => sync.entry(id), leave: (path) => location.assign(path) });
   const sync = syncing({ state: app.state, tray, along, net: exchange({ fetch: (...a) => fetch(...a), now }), now, newId: () => newId(now()), changed: app.changed });

@@ -52,15 +52,23 @@ export function roomMates(site, device) {
 /**
  * Rounds made in the office as they stand on this phone: own tests and own words laid over those of the copy. rows: of the
  * tray, of that site. Those this person ended, or that were given to others, are left out. offset: ms the server's clock is ahead.
+ * walk: what this phone keeps of the one it walks, {id, given, taken}: of a round a colleague handed over only what was taken is walked
+ * here, and what was handed on is not.
  */
-export function roundsHere(rounds, rows, person, offset) {
+export function roundsHere(rounds, rows, person, offset, walk = {}) {
+  const handed = walk.taken?.length > 0 ? walk.id : undefined;
   const ended = new Set(rows.filter((r) => r.fact?.kind === "round.closed" && r.state !== "refused").map((r) => r.fact.subject));
   return (rounds ?? [])
-    .filter((r) => !ended.has(r.id) && !r.closed?.includes(person) && (!r.people?.length || r.people.includes(person)))
-    .map((r) => ({ ...r, stops: stopsNow(r, rows, offset) }));
+    .filter((r) => !ended.has(r.id) && (r.id === handed || (!r.closed?.includes(person) && (!r.people?.length || r.people.includes(person)))))
+    .map((r) => ({ ...r, stops: shared(stopsNow(r, rows, offset), r.id === walk.id ? walk : {}) }));
 }
 
-/** The stops of a round, each {device, task, state}: "" is left, back is to come back to. */
+/** The stops of a round that are walked here. */
+function shared(stops, { taken = [], given = [] }) {
+  return stops.filter((s) => taken.length === 0 || taken.includes(s.device)).map((s) => (s.state === "" && given.includes(s.device) ? { ...s, state: "given" } : s));
+}
+
+/** The stops of a round, each {device, task, state}: "" is left, back is to come back to; given: a colleague walks it. */
 function stopsNow(round, rows, offset) {
   const own = rows.filter((r) => r.summary && !r.summary.corrects && r.state !== "kept" && r.state !== "refused" && r.saved + offset >= round.made);
   return round.stops.map((stop) => {
@@ -85,15 +93,18 @@ export function nextStop(stops, after, passed) {
   const start = after ? stops.findIndex((s) => sameStop(s, after)) : -1;
   for (let i = 1; i <= stops.length; i++) {
     const stop = stops[(start + i) % stops.length];
-    if (!(after && sameStop(stop, after)) && stop.state === "" && !passedBy(passed, stop)) return stop;
+    if (!(after && sameStop(stop, after)) && stopsLeft([stop], passed).length > 0) return stop;
   }
   return undefined;
 }
 
-/** {done, left, skipped, back} of a round's stops. */
+/** The stops a round still leads to. */
+export const stopsLeft = (stops, passed) => stops.filter((s) => s.state === "" && !passedBy(passed, s));
+
+/** {done, left, skipped, back} of a round's stops; what a colleague walks counts as passed over here. */
 export function roundCounts(stops, passed) {
   const out = { done: 0, left: 0, skipped: 0, back: 0 };
-  for (const s of stops) out[s.state === "done" ? "done" : s.state === "back" ? "back" : passedBy(passed, s) ? "skipped" : "left"]++;
+  for (const s of stops) out[s.state === "done" || s.state === "back" ? s.state : s.state === "given" || passedBy(passed, s) ? "skipped" : "left"]++;
   return out;
 }
 

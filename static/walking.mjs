@@ -9,7 +9,10 @@ export function walking(app, { now, siteView }) {
   const { state, say } = app;
 
   /** Rounds made in the office that this person may walk at a site, own tests laid over. */
-  const roundsOf = (site) => site.once(`rounds ${state.me.person}`, () => roundsHere(site.snapshot.rounds, state.records.filter((r) => r.log === site.log), state.me.person, state.offset ?? 0));
+  const roundsOf = (site) => {
+    const walk = state.me.rounds?.[site.log] ?? {};
+    return site.once(`rounds ${state.me.person} ${walk.id} ${walk.given} ${walk.taken}`, () => roundsHere(site.snapshot.rounds, state.records.filter((r) => r.log === site.log), state.me.person, state.offset ?? 0, walk));
+  };
 
   /** What this phone keeps of its walk at a site: of a round made in the office until that is ended, else of the day. */
   function roundOf(site) {
@@ -51,16 +54,21 @@ export function walking(app, { now, siteView }) {
     skipped, taken: (site) => new Set(roundOf(site).taken ?? []),
     /** A colleague walks these from now on; an empty list takes them back. */
     giveAway: (site, ids) => setRound(site, { given: ids.length === 0 ? [] : [...new Set([...(roundOf(site).given ?? []), ...ids])], taken: (roundOf(site).taken ?? []).filter((id) => !ids.includes(id)) }),
-    /** What a colleague handed over is walked here. */
-    takeOn: (site, ids) => setRound(site, { taken: [...new Set([...(roundOf(site).taken ?? []), ...ids])], given: (roundOf(site).given ?? []).filter((id) => !ids.includes(id)), skipped: roundOf(site).skipped.filter((id) => !ids.includes(id)) }),
+    /** What a colleague handed over is walked here; round: of one made in the office. */
+    takeOn(site, ids, round) {
+      const had = roundOf(site).id === round ? roundOf(site).taken ?? [] : [];
+      if (round) return app.remember("rounds", { ...state.me.rounds, [site.log]: { id: round, day: site.today, skipped: [], proved: roundOf(site).proved ?? {}, passed: [], taken: [...new Set([...had, ...ids])] } });
+      return setRound(site, { taken: [...new Set([...(roundOf(site).taken ?? []), ...ids])], given: (roundOf(site).given ?? []).filter((id) => !ids.includes(id)), skipped: roundOf(site).skipped.filter((id) => !ids.includes(id)) });
+    },
     skip: (site, device) => setRound(site, { skipped: [...new Set([...roundOf(site).skipped, device.id])] }),
     unskip: (site) => setRound(site, { skipped: [] }),
     /** works null takes it back. */
     prove: (site, end, works) => setRound(site, { proved: { ...roundOf(site).proved, [end]: works === null ? undefined : { at: now(), works } } }),
+    /** Ends the walk. A part that was taken over is a walk of its own: the round itself is ended by whom it was given to. */
     async closeRound(site, counts) {
       const made = walked(site), over = (made?.stops ?? []).filter((s) => s.state === "" && passedBy(passed(site), s)).map(({ device, task }) => ({ device, task, reason: passedBy(passed(site), { device, task }) }));
       const body = { day: site.today, ...counts, proved: provedOf(roundOf(site)), ...(state.me.instrument ? { instrument: state.me.instrument } : {}), ...(over.length > 0 ? { passed: over } : {}) };
-      if (!(await app.write(site, [{ kind: "round.closed", subject: made?.id ?? app.newId(), body }], { said: say("walk.round_of", { what: site.snapshot.site.name }) }))) return false;
+      if (!(await app.write(site, [{ kind: "round.closed", subject: made && !(roundOf(site).taken?.length > 0) ? made.id : app.newId(), body }], { said: say("walk.round_of", { what: site.snapshot.site.name }) }))) return false;
       const rest = { ...state.me.rounds };
       delete rest[site.log];
       app.remember("rounds", rest);

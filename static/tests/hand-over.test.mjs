@@ -1,6 +1,6 @@
 import test from "node:test";
 import assert from "node:assert/strict";
-import { codesOf, devicesOf, gather, isWhole, readCode } from "../hand-over.mjs";
+import { codesOf, devicesOf, gather, isWhole, readCode, roundOf } from "../hand-over.mjs";
 import { encodeQR } from "../vendor/qr-index.mjs";
 import { decodeQR } from "../vendor/qr-decode.mjs";
 import { newId } from "../record-line.mjs";
@@ -22,6 +22,15 @@ test("hand over: a long round goes in several codes, read in any order, and is t
 
 test("hand over: a code holds a site, places in the list and ends of ids, and no more", () => {
   assert.match(codesOf("NORTH", [devices[0].id])[0], /^TRIPWELL\/ROUND\/1\/NORTH\/1\/1\/[0-9A-F]{10}$/);
+});
+
+test("hand over: a round made in the office is known again on the other phone, and is no walk of the day", () => {
+  const rounds = [{ id: newId(1_800_000_000_000) }, { id: newId(1_800_000_000_000) }], ids = devices.slice(0, 60).map((d) => d.id), codes = codesOf("north-2", ids, rounds[1].id);
+  assert.match(codes[0], /^TRIPWELL\/ROUND\/2\/NORTH-2\/[0-9A-F]{10}\/1\/2\//);
+  const read = codes.map(readCode).reduce(gather, null);
+  assert.deepEqual([isWhole(read), devicesOf(devices, read), roundOf(rounds, read)], [true, { ids, unknown: 0 }, rounds[1]]);
+  assert.equal(roundOf(rounds, readCode(codesOf("NORTH-2", ids)[0])), undefined);
+  assert.deepEqual(Object.keys(gather(read, readCode(codesOf("NORTH-2", ids)[0])).parts), ["1"], "begun anew");
 });
 
 test("hand over: nothing else is taken for one", () => {

@@ -57,3 +57,14 @@ test("round: whom to tell is said once for all places of one answer", () => {
   const list = tellFirst([{ name: "Pantry", ...nurse }, { name: "Hall" }, undefined, { name: "Ward", ...nurse }, { name: "Pit", critical_load: "Sump pump" }]);
   assert.deepEqual(list.map((o) => [o.names, o.who, o.load]), [[["Pantry", "Ward"], "Nurse in charge", undefined], [["Pit"], undefined, "Sump pump"]]);
 });
+
+test("rounds: what was handed over is walked by the colleague alone, and comes to the colleague although the round was given to another", () => {
+  const rounds = [{ id: "r", made: 0, people: ["giver"], stops: ["a", "b", "c"].map((device) => ({ device, task: "button" })) }];
+  const [given] = roundsHere(rounds, [], "giver", 0, { id: "r", given: ["b", "c"] });
+  assert.deepEqual(given.stops.map((s) => s.state), ["", "given", "given"]);
+  assert.deepEqual(roundCounts(given.stops, []), { done: 0, left: 1, skipped: 2, back: 0 });
+  assert.equal(nextStop(given.stops, { device: "a", task: "button" }, []), undefined);
+  assert.deepEqual(roundsHere(rounds, [], "taker", 0), []);
+  const [taken] = roundsHere(rounds, [], "taker", 0, { id: "r", taken: ["b", "c"] });
+  assert.deepEqual(taken.stops.map((s) => s.device), ["b", "c"]);
+});

@@ -126,6 +126,7 @@ func (s *Server) defectStep(v *store.View, step store.DefectStep, zone *time.Loc
 		verdict := k.verdict(e.Verdict.Result)
 		out.Verdict, out.Href, out.Text = &verdict, "/entries/"+e.ID, s.whatFailed(*e)
 		out.Head = k.say("office.defect.step_test", "task", k.named("task", e.Task), "by", s.testedBy(v, *e))
+		out.Photos = s.photosShown(v, *e)
 		return out
 	}
 	_, what, _ := strings.Cut(step.Kind, ".")
@@ -137,6 +138,8 @@ func (s *Server) defectStep(v *store.View, step store.DefectStep, zone *time.Loc
 		p := photoShown{Alt: k.say("office.defect.photo_of", "n", i+1)}
 		if v.HasPhoto(name) {
 			p.Href = "/records/" + step.Record + "/photos/" + name
+		} else if text := v.PhotoRefusal(step.Record, name); text != "" {
+			p.Refused = k.say("photo.refused_there", "text", text)
 		}
 		out.Photos = append(out.Photos, p)
 	}

@@ -3,6 +3,8 @@ package server
 import (
 	"mime"
 	"net/http"
+	"slices"
+	"time"
 
 	"github.com/labstack/echo/v4"
 
@@ -31,8 +33,13 @@ type certificateRow struct {
 
 type proofRow struct {
 	On, Where, By string
+	Href          string // the round it was made on
 	Verdict       mark
+	at            time.Time
 }
+
+// proofsMost is how many proofs the page shows, the newest.
+const proofsMost = 100
 
 func (s *Server) instrumentShow(c echo.Context) error {
 	i, err := s.instrumentOf(c)
@@ -63,14 +70,8 @@ func (s *Server) instrumentShow(c echo.Context) error {
 		for _, one := range past.Certificates {
 			view.Certificates = append(view.Certificates, s.certificateRow(v, i.ID, one))
 		}
-		for _, p := range past.Proofs {
-			verdict := mark{"pass", k.say("office.instrument.proved_works")}
-			if !p.Works {
-				verdict = mark{"fail", k.say("office.instrument.proved_not")}
-			}
-			view.Proofs = append(view.Proofs, proofRow{On: k.day(p.On), Where: joined(k.tag(p.Tag), p.Where), By: s.personName(v, p.By), Verdict: verdict})
-		}
-		return nil
+		view.Proofs, err = s.proofRows(v, i.ID, past.Proofs)
+		return err
 	})
 	if err != nil {
 		return err
@@ -80,6 +81,32 @@ func (s *Server) instrumentShow(c echo.Context) error {
 		view.Actions = []link{{at + "/certificate", k.say("office.instrument.certificate_new"), true}, {at + "/proved", k.say("office.instrument.proved_new"), false}, {at, k.say("office.instrument.edit"), false}}
 	}
 	return s.page(c, http.StatusOK, "instrument.html", view)
+}
+
+// proofRows are the proofs made in the office and those crews made on their rounds, the newest first.
+func (s *Server) proofRows(v *store.View, instrument string, made []store.Proof) (rows []proofRow, err error) {
+	k := s.ink()
+	row := func(p store.Proof) proofRow {
+		out := proofRow{On: k.day(p.On), Where: joined(k.tag(p.Tag), p.Where), By: s.personName(v, p.By), Verdict: mark{"pass", k.say("office.instrument.proved_works")}, at: p.At}
+		if !p.Works {
+			out.Verdict = mark{"fail", k.say("office.instrument.proved_not")}
+		}
+		return out
+	}
+	for _, p := range made {
+		rows = append(rows, row(p))
+	}
+	walks, err := v.RoundProofs(instrument)
+	for _, p := range walks {
+		one, end := row(p.Proof), "office.instrument.proved_first"
+		if p.Last {
+			end = "office.instrument.proved_last"
+		}
+		one.Where, one.Href = joined(p.Site, k.say(end)), "/rounds/"+p.Round
+		rows = append(rows, one)
+	}
+	slices.SortStableFunc(rows, func(a, b proofRow) int { return b.at.Compare(a.at) })
+	return rows[:min(len(rows), proofsMost)], err
 }
 
 func (s *Server) certificateRow(v *store.View, instrument string, c store.Certificate) certificateRow {

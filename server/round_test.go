@@ -74,3 +74,23 @@ func TestRound_OnlyDevicesOfItsSite(t *testing.T) {
 		}
 	}
 }
+
+// The tester tried on a known outlet at both ends of a walk stands with the tester, for whoever looks at it and has the site.
+func TestInstrument_ProofsOfRoundsStandOnItsPage(t *testing.T) {
+	r := newRig(t, 1)
+	tester, walk := newID(), newID()
+	r.append(store.Draft{Kind: "instrument.set", Log: "org", Subject: tester, Body: set{"set": set{"name": "Tester 4"}}},
+		store.Draft{Kind: "instrument.proved", Log: "org", Subject: tester, Body: set{"on": "2026-11-30", "works": true, "where": "Workshop bench"}},
+		store.Draft{Kind: "round.closed", Log: r.site, Subject: walk, By: r.crew.ID, Body: set{"day": "2026-12-01", "done": 1, "instrument": tester,
+			"proved": set{"first": set{"at": "2026-12-01T13:00:00Z", "works": true}, "last": set{"at": "2026-12-01T16:00:00Z", "works": false}}}})
+	page := r.open(r.signIn(r.manager), "/instruments/"+tester+"/past").body
+	for _, want := range []string{"Workshop bench", "/rounds/" + walk, "before the first test of a round", "after the last test of a round", "Crew 1"} {
+		if !strings.Contains(page, want) {
+			t.Errorf("the instrument's page does not say %q", want)
+		}
+	}
+	auditor := r.person("Auditor 2", "auditor", newID())
+	if page := r.open(r.signIn(auditor), "/instruments/"+tester+"/past").body; strings.Contains(page, walk) {
+		t.Error("a proof made at a site is shown to somebody who has not the site")
+	}
+}

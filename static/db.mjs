@@ -78,10 +78,10 @@ export function trayDB() {
     const [result] = await Promise.all([fn(tx.store), tx.done]);
     return result;
   });
-  const change = (id, fields, options) => write("records", async (store) => {
+  const change = (id, fields) => write("records", async (store) => {
     const row = await store.get(id);
     if (row) await store.put({ ...row, ...fields });
-  }, options);
+  });
   return {
     me: (name) => use((db) => db.get("me", name)),
     setMe: (name, value) => write("me", (store) => store.put(value, name)),
@@ -134,14 +134,15 @@ export function trayDB() {
     /** Every row there is, for the file that saves the tray. */
     all: () => use((db) => db.getAll("records")).then((rows) => rows.sort(inOrder)),
     /** Forgotten by a failing battery, it is sent once more and answered "already". */
-    settle: (id, receipt, at) => change(id, { state: "sent", receipt, sent_at: at }, RELAXED),
+    settle: (receipts, at) => write("records", (store) => Promise.all(receipts.map(async (receipt) => {
+      const row = await store.get(receipt.id);
+      if (row) await store.put({ ...row, state: "sent", receipt, sent_at: at });
+    })), RELAXED),
     /** Sent records that the copy of their site holds by now are only kept from here on. */
-    cover: (ids) => write("records", async (store) => {
-      for (const id of ids) {
-        const row = await store.get(id);
-        if (row?.state === "sent") await store.put({ ...row, state: "kept" });
-      }
-    }, RELAXED),
+    cover: (ids) => write("records", (store) => Promise.all(ids.map(async (id) => {
+      const row = await store.get(id);
+      if (row?.state === "sent") await store.put({ ...row, state: "kept" });
+    })), RELAXED),
     refuse: (id, receipt) => change(id, { state: "refused", receipt }),
     /** Drops kept records whose time is over; what waits, was refused or is in no copy yet is never touched. */
     forget: (now, backedUp) => write("records", async (store) => {

@@ -21,6 +21,7 @@ export function DevicePage({ app, site, device, place }) {
     <${Where} app=${app} title=${titleOf(app, device, place)} tag=${device.tag} context=${contextOf(app, device, place)} back=${toSite(site.snapshot.site.code)} />
     <main>
       <${Defects} app=${app} device=${device} />
+      <${LostPhotos} app=${app} device=${device} />
       ${openDefects(device).length > 0 && html`<div class="choose"><a class="big" href=${`#/failed/${device.id}`}><b>${say("failed.link")}</b><span>${say("failed.link_hint")}</span></a></div>`}
       <${WhereItIs} app=${app} site=${site} device=${device} />
       <${CriticalLoads} app=${app} site=${site} device=${device} />
@@ -37,6 +38,13 @@ export function DevicePage({ app, site, device, place }) {
       <p class="facts quiet">${[[device.fields?.make, device.fields?.model].filter(Boolean).join(" "), ...facts, device.fields?.equipment_ground === "none-permitted" ? say("field.fact.no_ground") : "", device.supply === "isolated" ? say("field.fact.isolated") : ""].filter(Boolean).join(" · ")}</p>
       <${Work} app=${app} site=${site} device=${device} forms=${forms} />
     </main><${Foot} app=${app} />`;
+}
+
+/** Photos of this device's tests that the server did not take: a defect without its picture is told here, not only in the tray. */
+function LostPhotos({ app, device }) {
+  const { say, state } = app, tests = new Set(Object.values(device.last ?? {}).map((l) => l.entry));
+  const lost = (state.refusedPhotos ?? []).filter((p) => tests.has(p.entry) || state.records.some((r) => r.id === p.entry && r.summary?.device === device.id));
+  return lost.map((p) => html`<p class="bad pad" key=${p.sha256}>${p.text ? say("photo.refused_there", { text: p.text }) : say("photo.refused_no_text")} <a href="#/tray">${say("photo.refused_look")}</a></p>`);
 }
 
 /** What else may be done at a device. */

@@ -6,6 +6,8 @@ import { showMoment } from "./days.mjs";
 import { doubted } from "./heads.mjs";
 import { isReadable } from "./rescue.mjs";
 
+const SHOWN = 100; // rows of what waits; a month without signal has thousands, and all of them are counted
+
 export function TrayPage({ app }) {
   const { say, state } = app;
   const { waiting, refused, held } = sorted(state.records), shots = state.refusedPhotos ?? [];
@@ -13,7 +15,8 @@ export function TrayPage({ app }) {
     <${Where} app=${app} title=${title(say, waiting, refused.length + shots.length)} context=${say("field.tray")} back="#/" />
     <main>
       ${waiting.length > 0 && html`<p class="hint pad">${say(`field.line.${state.line}`)}</p><p class="hint pad">${say("phone.oldest", { when: showMoment(app, waiting[0].saved) })}</p>
-        <button type="button" class="big more" onClick=${app.sendNow}>${say("field.send_now")}</button><ul class="rows">${waiting.map((r) => html`<${TrayRow} app=${app} row=${r} key=${r.id} />`)}</ul>`}
+        <button type="button" class="big more" onClick=${app.sendNow}>${say("field.send_now")}</button><ul class="rows">${waiting.slice(0, SHOWN).map((r) => html`<${TrayRow} app=${app} row=${r} key=${r.id} />`)}</ul>
+        ${waiting.length > SHOWN && html`<p class="hint pad">${say("phone.and_more", { n: waiting.length - SHOWN })}</p>`}`}
       ${refused.length > 0 && html`<section class="room"><h2>${say("field.refused_title")}</h2><p class="hint pad">${say("phone.refused_ways")}</p>
         <ul class="rows">${refused.map((r) => html`<${TrayRow} app=${app} row=${r} key=${r.id} />`)}</ul></section>`}
       ${shots.length > 0 && html`<section class="room"><h2>${say("photo.refused_title")}</h2><p class="hint pad">${say("photo.refused_hint")}</p>

@@ -75,7 +75,7 @@ export function syncing({ state, tray, along, net, now, newId, changed }) {
 
   const storage = {
     waiting: () => tray.waiting(),
-    settle: (id, receipt) => tray.settle(id, receipt, now()),
+    settle: (receipts) => tray.settle(receipts, now()),
     refuse: (id, receipt) => tray.refuse(id, receipt),
   };
 

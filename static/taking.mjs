@@ -123,7 +123,8 @@ export function taking({ state, tray, along, net, now, remember, withToken, chan
     const ids = state.records.filter((r) => (r.receipt?.state === "held" && r.state === "sent") || (r.state === "refused" && r.receipt?.code !== "id_reused")).map((r) => r.id).slice(0, 1000);
     if (ids.length === 0) return;
     const answer = await withToken((token) => net.ask(token, ids));
-    for (const receipt of answer.ok ? answer.body.receipts ?? [] : []) if (receipt.state === "stored" && ids.includes(receipt.id)) await tray.settle(receipt.id, receipt, now());
+    const there = (answer.ok ? answer.body.receipts ?? [] : []).filter((receipt) => receipt.state === "stored" && ids.includes(receipt.id));
+    if (there.length > 0) await tray.settle(there, now());
   }
 
   async function dropSite(log) {

@@ -80,6 +80,7 @@ type RoundClosing struct {
 	Done, Left, Skipped, Back int
 	ProvedFirst, ProvedLast   *RoundProof // the tester tried on an outlet known to be live
 	Passed                    []RoundPassed
+	Instrument                string // what was tested with; "" where nobody said
 	clock                     uint64
 }
 
@@ -109,6 +110,7 @@ type roundBody struct {
 	Done, Left, Skipped, Back float64
 	Proved                    struct{ First, Last *RoundProof }
 	Passed                    []RoundPassed
+	Instrument                string
 	Note                      string
 }
 
@@ -289,7 +291,7 @@ func (v *View) roundSaid(sv *siteView, n uint32, r *Round) error {
 			day = forms.DayOf(at.In(sv.zone))
 		}
 		r.Closings = append(r.Closings, RoundClosing{Record: rec.ID, By: rec.By, At: at, Day: day, Done: int(body.Done), Left: int(body.Left), Skipped: int(body.Skipped),
-			Back: int(body.Back), ProvedFirst: body.Proved.First, ProvedLast: body.Proved.Last, Passed: body.Passed, clock: rec.Clock})
+			Back: int(body.Back), ProvedFirst: body.Proved.First, ProvedLast: body.Proved.Last, Passed: body.Passed, Instrument: body.Instrument, clock: rec.Clock})
 	}
 	slices.SortFunc(r.Closings, func(a, b RoundClosing) int {
 		return cmp.Or(cmp.Compare(a.clock, b.clock), cmp.Compare(a.Record, b.Record))

@@ -11,7 +11,7 @@ function phone(net, records = []) {
   const me = {}, dropped = [], covered = [], marked = [];
   const state = { me: {}, sites: new Map(), records, offset: 0 };
   const tray = { setMe: async (k, v) => { me[k] = v; }, waiting: async () => records.filter((r) => r.state === "waiting"), records: async () => records.filter((r) => r.state !== "kept"),
-    settle: async (i, receipt) => Object.assign(records.find((r) => r.id === i), { state: "sent", receipt }), refuse: async () => {}, forget: async () => {}, waitingPhotos: async () => [], refusedPhotos: async () => [], resendPhotos: async () => 0, forgetPhotos: async () => {}, sawClock: async () => {},
+    settle: async (receipts) => receipts.forEach((receipt) => Object.assign(records.find((r) => r.id === receipt.id), { state: "sent", receipt })), refuse: async () => {}, forget: async () => {}, waitingPhotos: async () => [], refusedPhotos: async () => [], resendPhotos: async () => 0, forgetPhotos: async () => {}, sawClock: async () => {},
     forgetSealed: async (ids) => { const gone = records.filter((r) => ids.includes(r.id) && ["sent", "kept"].includes(r.state)); for (const r of gone) records.splice(records.indexOf(r), 1); return gone.length; },
     resend: async (lost) => { const rows = records.filter((r) => ["sent", "kept"].includes(r.state) && lost(r)); for (const r of rows) r.state = "waiting"; return rows.length; },
     become: async (person, name) => { Object.assign(me, { person, name }); }, renew: async (to) => { Object.assign(me, to); },

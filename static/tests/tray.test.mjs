@@ -11,7 +11,7 @@ function rig(count, { faults = [], refuse = new Set(), most = Infinity, receipts
   const pushes = [];
   const storage = {
     waiting: async () => rows.filter((r) => r.state === "waiting"),
-    settle: async (id, receipt) => Object.assign(rows.find((r) => r.id === id), { state: "sent", receipt }),
+    settle: async (receipts) => receipts.forEach((receipt) => Object.assign(rows.find((r) => r.id === receipt.id), { state: "sent", receipt })),
     refuse: async (id, receipt) => Object.assign(rows.find((r) => r.id === id), { state: "refused", receipt }),
   };
   const send = async (text) => {

@@ -102,6 +102,26 @@ func (s *Server) sendSheet(c echo.Context, sc store.Scope, by string) error {
 	return s.download(c, pdfKind, "device-"+name+".pdf", func(w io.Writer) error { return paper.PrintSheet(w, sheet, size) })
 }
 
+// noticesTake sends the sheets to leave at rooms of a round. Query: round (id), paper (letter or a4).
+func (s *Server) noticesTake(c echo.Context) error {
+	size, err := paper.SizeNamed(c.QueryParam("paper"))
+	if err != nil {
+		return err
+	}
+	var notices paper.Notices
+	err = s.store.View(scope(c), func(v *store.View) (err error) {
+		notices, err = paper.NoticesOf(v, c.QueryParam("round"), s.store.Demo())
+		return err
+	})
+	if err != nil {
+		return err
+	}
+	if err := s.exportTaken(c.Request().Context(), person(c).ID, "notices", notices.Site.ID, forms.NoDay, forms.NoDay); err != nil {
+		return err
+	}
+	return s.download(c, pdfKind, "notices-"+notices.Site.Code+"-"+notices.Code+".pdf", func(w io.Writer) error { return paper.PrintNotices(w, notices, size) })
+}
+
 // roundTake and sheetTake send what the pages offer, within the reader's own scope.
 func (s *Server) roundTake(c echo.Context) error { return s.sendRound(c, scope(c), person(c).ID) }
 

@@ -300,6 +300,10 @@ func (s *Server) roundActions(r store.Round, view *roundPage) {
 	if !r.Walk() && view.Role != "crew" {
 		view.Actions = append(view.Actions, link{Href: "/round-sheet?round=" + r.ID, Text: k.say("office.round.sheet_pdf")}, link{Href: "/round-sheet?as=xlsx&round=" + r.ID, Text: k.say("office.round.sheet_xlsx")})
 	}
+	toTell := func(stop store.RoundStop) bool { return stop.State == store.StopBack || stop.Result == forms.Fail }
+	if view.Role != "crew" && slices.ContainsFunc(r.Stops, toTell) {
+		view.Actions = append(view.Actions, link{Href: "/notices?round=" + r.ID, Text: k.say("office.round.notices")})
+	}
 	if view.Change && !r.Walk() && r.State != store.RoundAccepted {
 		view.Actions = append([]link{{Href: "/rounds/" + r.ID + "/edit", Text: k.say("office.round.edit")}}, view.Actions...)
 	}

@@ -124,6 +124,7 @@ func publicRoutes() []route {
 		{get, "/table", office, (*Server).tableTake, 0},
 		{get, "/round-sheet", office, (*Server).roundTake, 0},
 		{get, "/device-sheet", office, (*Server).sheetTake, 0},
+		{get, "/notices", office, (*Server).noticesTake, 0},
 
 		// a person's own signing in
 		{get, "/me", signed, (*Server).meShow, 0},

@@ -55,8 +55,13 @@ export const dueIn = (site) => site.once("due", () => site.devices.filter((d) =>
 
 /** How far along: place of a device among those of its list that want the task, from 1. */
 export function placeInRound(devices, id, task, today) {
-  const round = devices.filter((d) => d.id === id || wants(d, task, today));
-  return { n: round.findIndex((d) => d.id === id) + 1, of: round.length };
+  const place = { n: 0, of: 0 };
+  for (const d of devices) {
+    if (d.id !== id && !wants(d, task, today)) continue;
+    place.of++;
+    if (d.id === id) place.n = place.of;
+  }
+  return place;
 }
 
 /** Whether a device answers to what was typed: a tag, words of its place, its panel and circuit, its kind. */

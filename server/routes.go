@@ -127,6 +127,8 @@ func publicRoutes() []route {
 		{get, "/notices", office, (*Server).noticesTake, 0},
 
 		// a person's own signing in
+		{get, "/privacy", signed, (*Server).privacyShow, 0},
+		{get, "/privacy/data.json", signed, (*Server).privacyTake, 0},
 		{get, "/me", signed, (*Server).meShow, 0},
 		{post, "/me/password", signed | alone, (*Server).mePassword, 0},
 		{post, "/me/second", signed | alone, (*Server).meSecondOffer, 0},
@@ -223,6 +225,8 @@ func publicRoutes() []route {
 		{post, "/people", manager, (*Server).personCreate, 0},
 		{get, "/people/:person", manager, (*Server).personEdit, 0},
 		{post, "/people/:person", manager, (*Server).personUpdate, 0},
+		{get, "/people/:person/remove", manager, (*Server).personRemoveAsk, 0},
+		{post, "/people/:person/remove", manager, (*Server).personRemove, 0},
 		{post, "/people/:person/link", manager, (*Server).personLink, 0},
 		{post, "/people/:person/code", manager, (*Server).personCode, 0},
 	}

@@ -116,6 +116,8 @@ func checkPhoto(raw []byte) error {
 		return &Error{Code: "invalid", Field: "photo", Text: "This is no JPEG or PNG picture. Take the photo again."}
 	case len(raw) > PhotoBytes || c.Width*c.Height > photoPixels:
 		return &Error{Code: "too_large", Field: "photo", Text: "This photo is larger than is taken here. Take it again on the entry's page, which makes it smaller."}
+	case tellsMore(raw):
+		return errTraces
 	}
 	return nil
 }

@@ -152,6 +152,8 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 		"results_preview.html": resultsSample(),
 		"people.html": peoplePage{Frame: frameOf("People", "people"), Heading: "3 people may sign in.", People: []peopleRow{
 			{Href: "/people/1", Name: "Manager 1", Role: "Manager", Sites: "All sites", Contact: "ext. 401", Active: true}, {Href: "/people/2", Name: "Crew 1", Role: "Crew", Sites: "Kiln Lane Day Clinic, Ottermoor Swim Hall", Active: true}, {Href: "/people/3", Name: "Auditor 2", Role: "Auditor", Sites: "Kiln Lane Day Clinic"}}},
+		"privacy.html": privacyPage{Frame: frameOf("What is kept about you", "me"), Heading: "What is kept about you", Lead: "Where, and for how long.", Facts: []fact{{Name: "Name", Value: "Crew 1"}, {Name: "Id", Value: "1", Mono: true}},
+			SignIns: []string{"1 Dec 2026, 08:00"}, Kept: []keptShown{{"Names", "Directory", "Until removed"}}},
 		"reminders.html": reminderPage{Frame: frameOf("Calendar and mail", "dates"), Heading: "Calendar and mail", Under: "What falls due.", Feed: "https://tests.example/calendar/secret.ics", Made: "You have an address.", Action: "/reminders/calendar", Submit: "Make a new address", Revoke: &link{Href: "/reminders/calendar/revoke", Text: "Revoke it"},
 			NoMail: "No mail server is set up.", Mail: &link{Href: "/mail", Text: "Mail server"}, Said: []notice{{Shape: "fail", Text: "The digest was not sent."}}, Digest: formPage{Action: "/reminders/digest", Submit: "Save", WrongHead: "1 thing to mend", Wrong: []link{{Href: "#f-to", Text: "Write one mail address."}},
 				Hidden: []hidden{{"record", "1"}}, Groups: []fieldGroup{{Fields: []field{{Name: "to", Label: "To this address", Type: "email"}, {Name: "every", Label: "How often", Options: choices("", "", "Not at all")}}}}}},

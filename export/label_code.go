@@ -71,6 +71,11 @@ func CodePath(address string, x, y, box, pageH float64) (path []byte, side float
 	if err != nil {
 		return nil, 0, err
 	}
+	return runsPath(len(s), module, x, y, pageH, s.runs)
+}
+
+// runsPath draws runs of dark modules of a symbol of so many modules a side as one path.
+func runsPath(modules int, module, x, y, pageH float64, runs func(draw func(col, row, length int))) (path []byte, side float64, err error) {
 	// One transformation lays a grid of modules on the page, its origin at the symbol's top left corner and y downwards,
 	// so that every rectangle is four small whole numbers.
 	inset := module * quietModules
@@ -80,13 +85,13 @@ func CodePath(address string, x, y, box, pageH float64) (path []byte, side float
 		path = append(path, ' ')
 	}
 	path = append(path, "cm\n"...)
-	s.runs(func(col, row, length int) {
+	runs(func(col, row, length int) {
 		for _, v := range [4]int{col, row, length, 1} {
 			path = append(strconv.AppendInt(path, int64(v), 10), ' ')
 		}
 		path = append(path, "re\n"...)
 	})
-	return append(path, "f Q"...), module * float64(len(s)+2*quietModules), nil
+	return append(path, "f Q"...), module * float64(modules+2*quietModules), nil
 }
 
 // runs gives every run of dark modules of a row.

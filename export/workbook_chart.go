@@ -1,11 +1,7 @@
 package export
 
 import (
-	"bytes"
 	"fmt"
-	"image"
-	"image/color"
-	"image/png"
 
 	"github.com/xuri/excelize/v2"
 )
@@ -31,31 +27,4 @@ func (b *book) chart() error {
 		Type: excelize.ColStacked, Series: series, Legend: excelize.ChartLegend{Position: "bottom"},
 		Title: excelize.ChartTitle{Paragraph: []excelize.RichTextRun{{Text: b.say("sheet.chart_title")}}},
 	})
-}
-
-// CodePNG draws a text as a code with its quiet zone, each module so many dots wide.
-func CodePNG(text string, dots int) ([]byte, error) {
-	rows, err := CodeBitmap(text)
-	if err != nil {
-		return nil, err
-	}
-	side := (len(rows) + 2*quietModules) * dots
-	img := image.NewPaletted(image.Rect(0, 0, side, side), color.Palette{color.White, color.Black})
-	for y, row := range rows {
-		for x, dark := range row {
-			if !dark {
-				continue
-			}
-			for i := range dots {
-				for j := range dots {
-					img.SetColorIndex((x+quietModules)*dots+i, (y+quietModules)*dots+j, 1)
-				}
-			}
-		}
-	}
-	var out bytes.Buffer
-	if err := png.Encode(&out, img); err != nil {
-		return nil, fmt.Errorf("code as a picture: %w", err)
-	}
-	return out.Bytes(), nil
 }

@@ -59,9 +59,9 @@ func (b *book) coverCode(name string, row int) error {
 	if head == "" {
 		return nil
 	}
-	code, err := CodePNG(head, 4)
+	code, err := HeadPNG(head, 4)
 	if err != nil {
-		return nil // a head too long for a code is still there in letters
+		return err
 	}
 	at := "B" + strconv.Itoa(row)
 	if err := b.file.SetCellStr(name, "A"+strconv.Itoa(row), b.say("sheet.cover.head_code")); err != nil {

@@ -22,14 +22,16 @@ type downloadsPage struct {
 	Round                      []field // empty where there is no site
 	Workbook                   []field
 	Bundle                     []field
+	Made                       []madeRow // files made for the reader
+	Statement                  []field   // empty where there is no site
 }
 
 func (s *Server) downloadsShow(c echo.Context) error {
-	return s.downloadsPage(c, http.StatusOK, nil, Wrong{})
+	return s.downloadsPage(c, http.StatusOK, madeWorkbook, nil, Wrong{})
 }
 
-// downloadsPage shows the page, with what was typed and is wrong where it comes again.
-func (s *Server) downloadsPage(c echo.Context, status int, typed url.Values, wrong Wrong) error {
+// downloadsPage shows the page, with what was typed in one of its forms and is wrong where it comes again.
+func (s *Server) downloadsPage(c echo.Context, status int, form madeKind, typed url.Values, wrong Wrong) error {
 	sites, err := s.sitesOf(c)
 	if err != nil {
 		return err
@@ -41,15 +43,12 @@ func (s *Server) downloadsPage(c echo.Context, status int, typed url.Values, wro
 	}
 	view := downloadsPage{
 		Frame: s.frame(c, k.say("office.downloads.title"), "downloads"), Heading: k.say("office.downloads.heading"), Under: k.say("office.downloads.under"),
-		Workbook: []field{
-			{Name: "site", Label: k.say("office.downloads.site"), Options: offered},
-			{Name: "from", Label: k.say("office.downloads.from"), Hint: k.say("office.downloads.open_hint"), Type: "date"},
-			{Name: "to", Label: k.say("office.downloads.to"), Hint: k.say("office.downloads.open_hint"), Type: "date"},
-		},
+		Workbook: periodFields(k, "workbook", offered), Bundle: periodFields(k, "bundle", offered), Made: s.madeRows(c),
 		LabelsText: k.say("office.downloads.labels_no_url"),
 	}
-	for i := range view.Workbook {
-		f := &view.Workbook[i]
+	again := map[madeKind][]field{madeWorkbook: view.Workbook, madeBundle: view.Bundle}[form]
+	for i := range again {
+		f := &again[i]
 		f.Value, f.Options = typed.Get(f.Name), chosenOf(f.Options, typed.Get(f.Name))
 		if f.Name == wrong.Field {
 			f.Error = wrong.Text
@@ -59,7 +58,9 @@ func (s *Server) downloadsPage(c echo.Context, status int, typed url.Values, wro
 		view.LabelsText, view.Labels = k.say("paper.labels.under"), true
 	}
 	view.Table = tableFields(k, offered)
-	view.Bundle = []field{{Name: "site", ID: "bundle-site", Label: k.say("office.downloads.site"), Options: offered}}
+	if len(sites) > 0 {
+		view.Statement = append(periodFields(k, "statement", offered[1:]), field{Name: "paper", ID: "statement-paper", Label: k.say("paper.size.label"), Options: paperOptions(k)})
+	}
 	view.Round = s.roundFields(sites)
 	return s.page(c, status, "downloads.html", view)
 }
@@ -84,7 +85,7 @@ func (s *Server) roundFields(sites []store.Site) []field {
 		return nil
 	}
 	k := s.ink()
-	var offered, papers []option
+	var offered []option
 	for _, site := range sites {
 		offered = append(offered, option{Value: site.Code, Text: site.Name})
 	}
@@ -92,14 +93,28 @@ func (s *Server) roundFields(sites []store.Site) []field {
 	for _, task := range forms.Tasks() {
 		tasks = append(tasks, option{Value: task, Text: k.named("task", task)})
 	}
-	for _, name := range paper.SizeNames() {
-		papers = append(papers, option{Value: name, Text: k.say("paper.size." + name)})
-	}
 	return []field{
 		{Name: "site", ID: "round-site", Label: k.say("office.downloads.site"), Options: offered},
 		{Name: "task", Label: k.say("paper.col.task"), Options: tasks},
 		{Name: "until", Label: k.say("paper.round.until_label"), Hint: k.say("paper.round.until_hint"), Type: "date"},
-		{Name: "paper", Label: k.say("paper.size.label"), Options: papers},
+		{Name: "paper", Label: k.say("paper.size.label"), Options: paperOptions(k)},
+	}
+}
+
+// paperOptions are the sizes of paper.
+func paperOptions(k ink) (papers []option) {
+	for _, name := range paper.SizeNames() {
+		papers = append(papers, option{Value: name, Text: k.say("paper.size." + name)})
+	}
+	return papers
+}
+
+// periodFields ask for a site and a period, within a form of its own.
+func periodFields(k ink, form string, sites []option) []field {
+	return []field{
+		{Name: "site", ID: form + "-site", Label: k.say("office.downloads.site"), Options: sites},
+		{Name: "from", ID: form + "-from", Label: k.say("office.downloads.from"), Hint: k.say("office.downloads.open_hint"), Type: "date"},
+		{Name: "to", ID: form + "-to", Label: k.say("office.downloads.to"), Hint: k.say("office.downloads.open_hint"), Type: "date"},
 	}
 }
 
@@ -109,10 +124,5 @@ func tableFields(k ink, sites []option) []field {
 	for _, name := range export.TableNames() {
 		sheets = append(sheets, option{Value: name, Text: k.say("sheet.name." + name)})
 	}
-	return []field{
-		{Name: "sheet", ID: "table-sheet", Label: k.say("paper.table.sheet"), Options: sheets},
-		{Name: "site", ID: "table-site", Label: k.say("office.downloads.site"), Options: sites},
-		{Name: "from", ID: "table-from", Label: k.say("office.downloads.from"), Hint: k.say("office.downloads.open_hint"), Type: "date"},
-		{Name: "to", ID: "table-to", Label: k.say("office.downloads.to"), Hint: k.say("office.downloads.open_hint"), Type: "date"},
-	}
+	return append([]field{{Name: "sheet", ID: "table-sheet", Label: k.say("paper.table.sheet"), Options: sheets}}, periodFields(k, "table", sites)...)
 }

@@ -7,6 +7,7 @@ import (
 	"fmt"
 	"io"
 	"os"
+	"slices"
 	"sync"
 	"time"
 
@@ -14,11 +15,14 @@ import (
 	"tripwell/store"
 )
 
-// makingArea holds the workbooks and bundles that are made for the office pages: one a person, in a temporary file, never a whole one
-// in memory. Few are made at a time; a finished one is kept for makingLife, or until its person wants another.
+// makingArea holds the workbooks and bundles that are made for the office pages: one of each a person, in a temporary file, never a
+// whole one in memory. Few are made at a time; a finished one is kept for makingLife, until its person wants another or no longer wants
+// it, or until the disk is wanted for newer ones.
 type makingArea struct {
 	mu     sync.Mutex
-	of     map[string]*making // by person
+	of     map[makingKey]*making
+	kept   []*making // finished, oldest first
+	room   int64     // bytes that finished ones may take, and one that is being made
 	turn   chan struct{}
 	ctx    context.Context // ends with the server
 	end    context.CancelFunc
@@ -26,9 +30,16 @@ type makingArea struct {
 }
 
 const (
-	makingLife   = time.Hour
+	makingLife   = 24 * time.Hour
 	makingsAtOne = 2
+	makingRoom   = 4 << 30
 )
+
+// makingKey says whose making it is and of what.
+type makingKey struct {
+	person string
+	kind   madeKind
+}
 
 // madeKind is what can be made: where its page stands, how it is sent, and which words speak of it.
 type madeKind struct{ path, mime, words string }
@@ -56,6 +67,7 @@ type making struct {
 	done, total int
 	out         *os.File
 	size        int64
+	until       time.Time // when a finished one is let go of
 	err         error
 	sending     sync.WaitGroup
 }
@@ -64,27 +76,66 @@ var errStopped = errors.New("the file is no longer wanted")
 
 func newMakingArea() *makingArea {
 	ctx, end := context.WithCancel(context.Background())
-	return &makingArea{of: map[string]*making{}, turn: make(chan struct{}, makingsAtOne), ctx: ctx, end: end}
+	return &makingArea{of: map[makingKey]*making{}, room: makingRoom, turn: make(chan struct{}, makingsAtOne), ctx: ctx, end: end}
 }
 
-// begin makes a file in place of the person's earlier one.
+func (m *making) key() makingKey { return makingKey{m.person, m.kind} }
+
+// begin makes a file in place of the person's earlier one of its kind.
 func (a *makingArea) begin(m *making, write maker) {
 	ctx, stop := context.WithCancel(a.ctx)
 	m.id, m.stop, m.ended = rand.Text(), stop, make(chan struct{})
 	a.mu.Lock()
-	former := a.of[m.person]
-	a.of[m.person] = m
+	former := a.of[m.key()]
 	a.mu.Unlock()
 	if former != nil {
-		former.drop()
+		a.forget(former)
 	}
+	a.mu.Lock()
+	a.of[m.key()] = m
+	a.mu.Unlock()
 	a.makers.Go(func() {
 		defer close(m.ended)
-		m.make(ctx, a.turn, write)
+		m.make(ctx, a.turn, a.room, write)
 		if m.err == nil {
 			time.AfterFunc(makingLife, func() { a.forget(m) })
+			a.keep(m)
 		}
 	})
+}
+
+// keep notes a finished file, and lets go of the oldest where they take more room than there is.
+func (a *makingArea) keep(m *making) {
+	a.mu.Lock()
+	a.kept = append(a.kept, m)
+	left := a.room
+	for _, k := range a.kept {
+		left -= k.size
+	}
+	var over []*making
+	for _, k := range a.kept[:len(a.kept)-1] {
+		if left >= 0 {
+			break
+		}
+		left += k.size
+		over = append(over, k)
+	}
+	a.mu.Unlock()
+	for _, k := range over {
+		a.forget(k)
+	}
+}
+
+// ofPerson gives what is made or kept for somebody.
+func (a *makingArea) ofPerson(person string) (list []*making) {
+	a.mu.Lock()
+	defer a.mu.Unlock()
+	for _, kind := range []madeKind{madeWorkbook, madeBundle} {
+		if m := a.of[makingKey{person, kind}]; m != nil {
+			list = append(list, m)
+		}
+	}
+	return list
 }
 
 func (m *making) progress(ctx context.Context, done, total int) error {
@@ -98,7 +149,7 @@ func (m *making) progress(ctx context.Context, done, total int) error {
 }
 
 // make waits for its turn and writes the file. The file has no name: what a stopped program leaves behind is nothing.
-func (m *making) make(ctx context.Context, turn chan struct{}, write maker) {
+func (m *making) make(ctx context.Context, turn chan struct{}, room int64, write maker) {
 	select {
 	case turn <- struct{}{}:
 		defer func() { <-turn }()
@@ -115,15 +166,28 @@ func (m *making) make(ctx context.Context, turn chan struct{}, write maker) {
 		return
 	}
 	_ = os.Remove(out.Name()) // where an open file cannot be removed, shut removes it
-	if err := write(ctx, out, func(done, total int) error { return m.progress(ctx, done, total) }); err != nil {
+	if err := write(ctx, &roomWriter{out, room}, func(done, total int) error { return m.progress(ctx, done, total) }); err != nil {
 		shut(out)
 		m.fail(err)
 		return
 	}
 	size, err := out.Seek(0, io.SeekEnd)
 	m.mu.Lock()
-	m.out, m.size, m.err = out, size, err
+	m.out, m.size, m.err, m.until = out, size, err, time.Now().Add(makingLife)
 	m.mu.Unlock()
+}
+
+// roomWriter refuses what is larger than the room there is.
+type roomWriter struct {
+	to   io.Writer
+	left int64
+}
+
+func (w *roomWriter) Write(b []byte) (int, error) {
+	if w.left -= int64(len(b)); w.left < 0 {
+		return 0, refuse(codeTooLarge, "", "The file is larger than is kept here. Make it of fewer sites, or write it on the server with the command.")
+	}
+	return w.to.Write(b)
 }
 
 func shut(f *os.File) {
@@ -156,10 +220,11 @@ func (m *making) drop() {
 // forget drops a making that is still its person's.
 func (a *makingArea) forget(m *making) {
 	a.mu.Lock()
-	still := a.of[m.person] == m
+	still := a.of[m.key()] == m
 	if still {
-		delete(a.of, m.person)
+		delete(a.of, m.key())
 	}
+	a.kept = slices.DeleteFunc(a.kept, func(k *making) bool { return k == m })
 	a.mu.Unlock()
 	if still {
 		m.drop()
@@ -170,8 +235,10 @@ func (a *makingArea) forget(m *making) {
 func (a *makingArea) get(id, person string) (*making, error) {
 	a.mu.Lock()
 	defer a.mu.Unlock()
-	if m := a.of[person]; m != nil && m.id == id {
-		return m, nil
+	for _, m := range a.of {
+		if m.person == person && m.id == id {
+			return m, nil
+		}
 	}
 	return nil, errNoMaking
 }
@@ -195,8 +262,8 @@ func (a *makingArea) close() {
 	a.makers.Wait()
 	a.mu.Lock()
 	defer a.mu.Unlock()
-	for person, m := range a.of {
-		delete(a.of, person)
+	for key, m := range a.of {
+		delete(a.of, key)
 		m.drop()
 	}
 }

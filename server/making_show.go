@@ -28,7 +28,11 @@ type makingPage struct {
 	What          []string
 	Again         []link // the page itself, while the file is being made
 	File          []link // the file, once it is there
+	Stop          button // ends it, or lets go of it
 }
+
+// button is a form of one button.
+type button struct{ Action, Text string }
 
 // makingSoon is how long a file may take to be there at once, and makingLook after how many seconds the page looks
 // again.
@@ -66,7 +70,7 @@ func (s *Server) makeFor(c echo.Context, kind madeKind, what, ending string, of 
 	sc, by := scope(c), person(c).ID
 	ask, name, err := s.workbookAsked(sc, values.Get)
 	if err != nil {
-		return s.downloadsAgain(c, values, err)
+		return s.downloadsAgain(c, kind, values, err)
 	}
 	if err := s.exportTaken(c.Request().Context(), by, what, ask.Site, ask.From, ask.To); err != nil {
 		return err
@@ -92,13 +96,13 @@ func (s *Server) toMaking(c echo.Context, m *making) error {
 }
 
 // downloadsAgain shows the downloads page with what was typed and what is wrong beside its field.
-func (s *Server) downloadsAgain(c echo.Context, values url.Values, err error) error {
+func (s *Server) downloadsAgain(c echo.Context, kind madeKind, values url.Values, err error) error {
 	var refused *store.Error
 	w, fault := wrongOf(err)
 	if fault || errors.As(err, &refused) && refused.Code == codeNotFound {
 		return err
 	}
-	return s.downloadsPage(c, http.StatusUnprocessableEntity, values, w)
+	return s.downloadsPage(c, http.StatusUnprocessableEntity, kind, values, w)
 }
 
 // makingFor finds the making an address names. Who lost a site since may not have what was read before.
@@ -153,6 +157,10 @@ func (s *Server) makingView(c echo.Context, m *making) makingPage {
 	}
 	m.mu.Lock()
 	defer m.mu.Unlock()
+	view.Stop = button{at + "/stop", k.say("office.downloads.making_stop")}
+	if m.out != nil || m.err != nil {
+		view.Stop.Text = k.say("office.downloads.making_forget")
+	}
 	switch {
 	case m.err != nil:
 		view.Heading, view.Lead = say("failed"), s.told(c, m.err).Text
@@ -177,7 +185,47 @@ func sizeText(n int64) string {
 	return strconv.FormatFloat(float64(n)/1e6, 'f', 1, 64) + " MB"
 }
 
-// workbookMade sends the finished file.
+// makingStop ends a making, or lets go of its file.
+func (s *Server) makingStop(c echo.Context) error {
+	m, err := s.makingFor(c)
+	if err != nil {
+		return err
+	}
+	s.makings.forget(m)
+	return toPage(c, "/downloads")
+}
+
+// madeRow is a file that is made or kept for the reader of the downloads page.
+type madeRow struct {
+	Link  link
+	Under string
+	Stop  button
+}
+
+// madeRows lists them.
+func (s *Server) madeRows(c echo.Context) (rows []madeRow) {
+	k := s.ink()
+	for _, m := range s.makings.ofPerson(person(c).ID) {
+		if !reflect.DeepEqual(m.scope, scope(c)) {
+			continue
+		}
+		m.mu.Lock()
+		row := madeRow{Link: link{Href: m.kind.path + m.id, Text: k.say(m.kind.words+"title") + ", " + m.site}, Stop: button{m.kind.path + m.id + "/stop", k.say("office.downloads.making_forget")}}
+		switch {
+		case m.err != nil:
+			row.Under = k.say(m.kind.words + "failed")
+		case m.out != nil:
+			row.Under = k.say("office.downloads.made_until", "size", sizeText(m.size), "at", k.at(m.until, time.UTC))
+		default:
+			row.Under, row.Stop.Text = k.say(m.kind.words+"making"), k.say("office.downloads.making_stop")
+		}
+		m.mu.Unlock()
+		rows = append(rows, row)
+	}
+	return rows
+}
+
+// makingTake sends the finished file.
 func (s *Server) makingTake(c echo.Context) error {
 	m, err := s.makingFor(c)
 	if err != nil {

@@ -1,6 +1,7 @@
 package server
 
 import (
+	"bytes"
 	"context"
 	"fmt"
 	"io"
@@ -35,7 +36,12 @@ func (r *rig) heldTurns() (free func()) {
 func (r *rig) making(p store.Person) *making {
 	r.server.makings.mu.Lock()
 	defer r.server.makings.mu.Unlock()
-	return r.server.makings.of[p.ID]
+	for key, m := range r.server.makings.of {
+		if key.person == p.ID {
+			return m
+		}
+	}
+	return nil
 }
 
 // temporaryFiles counts the workbooks that have a name in the temp folder.
@@ -120,7 +126,7 @@ func TestWorkbookMake_SaysHowFarItIs(t *testing.T) {
 		t.Errorf("half way:\n%s", page.body)
 	}
 	// What is no longer wanted stops at its next word of progress, and says so nowhere.
-	second := &making{kind: madeBundle, person: r.manager.ID, file: "tripwell-all.xlsx", scope: r.manager.Scope()}
+	second := &making{kind: madeWorkbook, person: r.manager.ID, file: "tripwell-all.xlsx", scope: r.manager.Scope()}
 	r.server.makings.begin(second, func(context.Context, io.Writer, func(done, total int) error) error { return fmt.Errorf("disk full") })
 	close(goOn)
 	<-m.ended
@@ -131,7 +137,7 @@ func TestWorkbookMake_SaysHowFarItIs(t *testing.T) {
 		t.Errorf("the first went on: %v", fault)
 	}
 	<-second.ended
-	if page := r.open(b, "/bundle/"+second.id); !strings.Contains(page.body, "could not be made") || !strings.Contains(page.body, "Reference") || page.header.Get("Refresh") != "" {
+	if page := r.open(b, "/workbook/"+second.id); !strings.Contains(page.body, "could not be made") || !strings.Contains(page.body, "Reference") || page.header.Get("Refresh") != "" {
 		t.Errorf("a fault:\n%s", page.body)
 	}
 }
@@ -191,5 +197,68 @@ func TestWorkbookMake_WrongPeriodComesBack(t *testing.T) {
 	}
 	if res.status != http.StatusUnprocessableEntity {
 		t.Errorf("got %d, want 422", res.status)
+	}
+}
+
+func TestMaking_IsStoppedAndLetGo(t *testing.T) {
+	r := newRig(t, 2)
+	b := r.signIn(r.auditor)
+	free := r.heldTurns()
+	at := r.submit(b, "/bundle", url.Values{"site": {"KILN-LANE"}, "from": {"2026-01-01"}, "to": {"2026-06-30"}}.Encode()).header.Get("Location")
+	m := r.making(r.auditor)
+	if list := r.open(b, "/downloads").body; !strings.Contains(list, "Made for you") || !strings.Contains(list, `href="`+at+`"`) || !strings.Contains(list, "Stop making it") {
+		t.Errorf("the downloads page does not show what is being made:\n%s", list)
+	}
+	if res := r.submit(r.signIn(r.manager), at+"/stop", ""); res.status != http.StatusNotFound {
+		t.Errorf("somebody else stops it: got %d, want 404", res.status)
+	}
+	if res := r.submit(b, at+"/stop", ""); res.status != http.StatusSeeOther || res.header.Get("Location") != "/downloads" {
+		t.Errorf("stopped: got %d to %q", res.status, res.header.Get("Location"))
+	}
+	<-m.ended // it ends while others still have the turn
+	free()
+	if res := r.open(b, at); res.status != http.StatusNotFound {
+		t.Errorf("after it was stopped: got %d, want 404", res.status)
+	}
+	// A workbook and a bundle are kept beside each other; either is let go of by its button.
+	workbook := r.submit(b, "/workbook", "").header.Get("Location")
+	made := r.submit(b, "/bundle", "").header.Get("Location")
+	for _, m := range r.server.makings.ofPerson(r.auditor.ID) {
+		<-m.ended
+	}
+	for _, path := range []string{workbook, made} {
+		if res := r.open(b, path); !strings.Contains(res.body, " is ready.") || !strings.Contains(res.body, "Do not keep it") {
+			t.Errorf("%s: got %s", path, res.body)
+		}
+	}
+	r.submit(b, made+"/stop", "")
+	if list := r.open(b, "/downloads").body; strings.Contains(list, made) || !strings.Contains(list, workbook) {
+		t.Error("the bundle is still offered, or the workbook is not")
+	}
+}
+
+func TestMaking_TakesNoMoreDiskThanThereIs(t *testing.T) {
+	area := newMakingArea()
+	defer area.close()
+	area.room = 1000
+	make := func(person string, size int) *making {
+		m := &making{kind: madeWorkbook, person: person, file: "x"}
+		area.begin(m, func(_ context.Context, w io.Writer, _ func(done, total int) error) error {
+			_, err := w.Write(bytes.Repeat([]byte("x"), size))
+			return err
+		})
+		<-m.ended
+		return m
+	}
+	if m := make("a", 1001); m.err == nil || !strings.Contains(m.err.Error(), "larger than is kept here") {
+		t.Errorf("too large: got %v", m.err)
+	}
+	make("a", 600)
+	make("b", 300)
+	make("c", 500)
+	for person, want := range map[string]int{"a": 0, "b": 1, "c": 1} {
+		if got := len(area.ofPerson(person)); got != want {
+			t.Errorf("%s has %d files, want %d: the oldest makes room", person, got, want)
+		}
 	}
 }

@@ -28,6 +28,7 @@ func ownerRoutes() []route {
 		{get, "/own/label", owner, (*Server).ownLabel, 0},
 		{get, "/own/table", owner, (*Server).ownTable, 0},
 		{get, "/own/round-sheet", owner, (*Server).ownRound, 0},
+		{get, "/own/statement", owner, (*Server).ownStatement, 0},
 		{get, "/own/device-sheet", owner, (*Server).ownSheet, 0},
 		{post, "/own/import/register", owner, (*Server).ownImportRegister, importLimit},
 		{post, "/own/import/tray", owner, (*Server).ownImportTray, trayLimit},

@@ -92,6 +92,9 @@ func (s *Server) sendSheet(c echo.Context, sc store.Scope, by string) error {
 	if err != nil {
 		return err
 	}
+	if sheet.Head, _, _, err = s.headForPaper(); err != nil {
+		return err
+	}
 	if err := s.exportTaken(c.Request().Context(), by, "device-sheet", sheet.Device.Site, forms.NoDay, forms.NoDay); err != nil {
 		return err
 	}

@@ -32,6 +32,7 @@ type cli struct {
 	Version  versionCmd  `cmd:"" help:"Print the program's version."`
 
 	RoundSheet  roundSheetCmd  `cmd:"" name:"round-sheet" help:"Write a round for paper, as PDF or worksheet."`
+	Statement   statementCmd   `cmd:"" help:"Write what was due at a site and what became of it, on two pages as PDF."`
 	DeviceSheet deviceSheetCmd `cmd:"" name:"device-sheet" help:"Write what is filed of one device, as PDF."`
 	Table       tableCmd       `cmd:"" help:"Write one sheet of the workbook as CSV or JSON Lines."`
 }

@@ -21,7 +21,8 @@ import (
 // remake writes the workbook that a bundle's records give. Whoever writes a bundle and whoever checks it goes this one way, so
 // the two workbooks differ only where somebody changed one. A plain one is not packed.
 func remake(ctx context.Context, out io.Writer, doc Doc, head string, people []person, records iter.Seq2[store.Replayed, error], plain bool, progress func(done, total int64)) error {
-	ask := export.WorkbookAsk{Now: doc.AsOf, Organisation: doc.Organisation, Store: doc.Store, Epoch: doc.Epoch, Demo: doc.Demo, AllSites: doc.AllSites, Head: head}
+	ask := export.WorkbookAsk{Now: doc.AsOf, Organisation: doc.Organisation, Store: doc.Store, Epoch: doc.Epoch, Demo: doc.Demo, AllSites: doc.AllSites, Head: head,
+		Progress: func(int, int) error { return ctx.Err() }}
 	var err error
 	if ask.From, err = dayOf(doc.From); err != nil {
 		return err

@@ -203,6 +203,9 @@ func (w *writer) log(l Line) error {
 				if _, err := out.Write(append(line(r), '\n')); err != nil {
 					return err
 				}
+				if r.Pos%1000 == 0 && w.ctx.Err() != nil {
+					return w.ctx.Err()
+				}
 			}
 			return nil
 		})

@@ -21,6 +21,7 @@ type Sheet struct {
 	More    int    // tests left out
 	On      forms.Day
 	Address string // of the label, "" where there is none
+	Head    string // signed over all this and more, "" without one
 	Demo    bool
 }
 
@@ -117,6 +118,7 @@ func PrintSheet(w io.Writer, s Sheet, size Size) error {
 	p.dates()
 	p.history()
 	p.earlier()
+	p.witness()
 	p.feet(p.words.Say("caution.licensed"))
 	if err := p.pdf.Output(w); err != nil {
 		return fmt.Errorf("device sheet: %w", err)
@@ -324,4 +326,23 @@ func (p *devicePrint) earlier() {
 		p.text(left, p.y+3.5, p.room(), "sans", 8, line)
 		p.y += 4.8
 	}
+}
+
+// witness prints the signed head that the page's records stand under.
+func (p *devicePrint) witness() {
+	if p.sheet.Head == "" {
+		return
+	}
+	p.need(headBox + 12)
+	p.y += 2
+	p.heading("paper.head.title")
+	top, room := p.y, p.room()-headBox-4
+	p.headCode(p.sheet.Head, p.size.W-right-headBox, top)
+	for _, line := range p.pen.Lines("sans", 8, room, p.words.Say("paper.head.text")) {
+		p.text(left, p.y+3.2, room, "sans", 8, line)
+		p.y += 3.9
+	}
+	p.y += 1
+	p.headLines(p.sheet.Head, room)
+	p.y = max(p.y, top+headBox) + 1
 }

@@ -97,13 +97,34 @@ func (p *print) box(x, y, w, h, thick float64) {
 	p.pdf.Rect(x, y, w, h, "D")
 }
 
-// code draws the code of an address in a square; an address too long for it is left out: the tag is printed beside it.
+// code draws the code of a text in a square; one too long for it is left out: it is printed beside it.
 func (p *print) code(address string, x, y, box float64) {
 	if address == "" {
 		return
 	}
 	if path, _, err := export.CodePath(address, x, y, box, p.size.H); err == nil {
 		p.pdf.RawWriteStr(string(path))
+	}
+}
+
+// headBox is the side of the square that the code of a signed head is printed in, in mm.
+const headBox = 42.0
+
+// headCode draws a signed head, so that the paper is a witness: whoever keeps it can hold a later bundle against it. A head too long
+// for a code stands in letters beside it.
+func (p *print) headCode(head string, x, y float64) {
+	if path, _, err := export.HeadPath(head, x, y, headBox, p.size.H); err == nil {
+		p.pdf.RawWriteStr(string(path))
+	}
+}
+
+// headLines writes a signed head as it is, in the left of the page.
+func (p *print) headLines(head string, room float64) {
+	for _, line := range strings.Split(strings.TrimSpace(head), "\n") {
+		if line != "" {
+			p.text(left, p.y+2.8, room, "monoB", 6.5, clean(line))
+			p.y += 3.2
+		}
 	}
 }
 

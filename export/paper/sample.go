@@ -193,17 +193,17 @@ func (p *samplePrint) drawnFrom() {
 		p.words.Say("paper.sample.size", "n", len(s.Devices), "lot", s.Lot, "bad", s.Bad, "confidence", percent(s.Ask.Confidence), "share", percent(s.Ask.Share)),
 		p.words.Say("paper.sample.how"),
 	}
+	room, top := p.room()-headBox-4, p.y
+	p.headCode(s.Ask.Head, p.size.W-right-headBox, top)
 	for _, line := range lines {
-		for _, part := range p.pen.Lines("sans", 8.5, p.room(), line) {
-			p.text(left, p.y+3.5, p.room(), "sans", 8.5, part)
+		for _, part := range p.pen.Lines("sans", 8.5, room, line) {
+			p.text(left, p.y+3.5, room, "sans", 8.5, part)
 			p.y += 4.2
 		}
 	}
-	for _, line := range strings.Split(strings.TrimSpace(s.Ask.Head), "\n") {
-		p.text(left, p.y+3.2, p.room(), "monoB", 6.5, clean(line))
-		p.y += 3.4
-	}
-	p.y += 3
+	p.y += 1
+	p.headLines(s.Ask.Head, room)
+	p.y = max(p.y, top+headBox) + 3
 }
 
 func percent(share float64) string { return strconv.FormatFloat(share*100, 'g', 4, 64) }

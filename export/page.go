@@ -1,6 +1,7 @@
 package export
 
 import (
+	"bytes"
 	"strings"
 	"time"
 
@@ -20,9 +21,10 @@ func NewPrint(w, h float64) *fpdf.Fpdf {
 	pdf.SetProducer("Tripwell", true)
 	pdf.SetAutoPageBreak(false, 0)
 	pdf.SetMargins(0, 0, 0)
-	pdf.AddUTF8FontFromBytes("sans", "", sansFont)
-	pdf.AddUTF8FontFromBytes("sans", "B", sansBoldFont)
-	pdf.AddUTF8FontFromBytes("mono", "B", monoBoldFont)
+	// Cutting a font down to what is used writes into its bytes (of glyphs beyond the metrics): each print gets its own.
+	pdf.AddUTF8FontFromBytes("sans", "", bytes.Clone(sansFont))
+	pdf.AddUTF8FontFromBytes("sans", "B", bytes.Clone(sansBoldFont))
+	pdf.AddUTF8FontFromBytes("mono", "B", bytes.Clone(monoBoldFont))
 	return pdf
 }
 

@@ -95,8 +95,9 @@ func SampleOf(v *store.View, on forms.Day, ask SampleAsk, demo bool) (Sample, er
 				continue
 			}
 			one := SampleDevice{Site: site, Device: d, Day: forms.NoDay}
-			for _, last := range d.Last {
-				if one.Day == forms.NoDay || last.Day > one.Day {
+			for _, task := range forms.Tasks() { // of two tests of one day the failed one
+				last, ok := d.Last[task]
+				if ok && (one.Day == forms.NoDay || last.Day > one.Day || last.Day == one.Day && last.Result == forms.Fail) {
 					one.Day, one.Last = last.Day, last.Result
 				}
 			}

@@ -131,6 +131,9 @@ func (s *Server) defectStep(v *store.View, step store.DefectStep, zone *time.Loc
 	}
 	_, what, _ := strings.Cut(step.Kind, ".")
 	out.Head = k.say("office.defect.step", "what", k.named("office.defect.did", what), "by", s.personName(v, step.By))
+	if step.Sealed != nil {
+		out.Text = s.sealedText(v, step.Sealed, zone)
+	}
 	if step.To != "" {
 		out.Head = k.say("office.defect.step_to", "who", s.whoOf(v, step.To), "by", s.personName(v, step.By))
 	}

@@ -40,6 +40,9 @@ func (s *Server) sealShow(c echo.Context) error {
 
 func (s *Server) buildSeal(v *store.View, what store.Sealing, view *sealPage) {
 	k, zone := s.ink(), s.store.Now().Location()
+	if site, err := v.Site(what.Log); err == nil { // the organisation's log has none
+		zone = site.Location()
+	}
 	view.Back = link{Href: "/records/" + what.ID, Text: k.say("office.entry.raw")}
 	if strings.HasPrefix(what.Kind, "entry.") && what.Kind != "entry.corrected" && what.Kind != "entry.withdrawn" {
 		view.Back = link{Href: "/entries/" + what.ID, Text: k.say("office.entry.title")}

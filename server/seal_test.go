@@ -69,3 +69,22 @@ func TestSeal_PagesSayWhyByWhomAndWhen(t *testing.T) {
 		t.Errorf("crew: got %d, want 403", page.status)
 	}
 }
+
+// What somebody said of a defect is sealed too, and its line stays with why.
+func TestSeal_OfADefect(t *testing.T) {
+	r := newRig(t, 1)
+	opened := newID()
+	r.append(store.Draft{ID: opened, Kind: "defect.opened", Log: r.site, Subject: newID(), Body: set{"device": r.devices[0], "text": "Quillfeather keeps a heater on it", "severity": "repair"}})
+	r.seal(opened, "It named a tenant")
+	var id string
+	must(t, r.store.View(ownerScope, func(v *store.View) error {
+		list, err := v.Defects(store.DefectAsk{Device: r.devices[0]})
+		if err == nil && len(list) == 1 {
+			id = list[0].ID
+		}
+		return err
+	}))
+	if page := r.open(r.signIn(r.manager), "/defects/"+id); page.status != http.StatusOK || !strings.Contains(page.body, "It named a tenant") || strings.Contains(page.body, "Quillfeather") {
+		t.Errorf("%d %s", page.status, page.body)
+	}
+}

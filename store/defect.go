@@ -223,6 +223,7 @@ type DefectStep struct {
 	Parts            []string
 	Photos           []string
 	Entry            *Entry // of a test
+	Sealed           *Seal  // its bytes were dropped: it says nothing any more
 }
 
 // DefectHistory reads what happened to a defect, in its order.
@@ -248,6 +249,11 @@ func (v *View) defectStep(id string) (DefectStep, error) {
 		e, err := v.Entry(id)
 		step.Entry = &e
 		return step, err
+	}
+	if r.Sealed != "" {
+		if step.Sealed, err = v.Sealed(id); err != nil {
+			return step, err
+		}
 	}
 	body, err := readDefect(r)
 	if err != nil {

@@ -10,12 +10,12 @@ type Kept struct {
 
 // MonthOf counts the month of a day from year 0.
 func MonthOf(d Day) int32 {
-	y, m, _ := d.Time().Date()
+	y, m, _ := d.Civil()
 	return int32(y*12 + int(m) - 1)
 }
 
 // MonthStart gives the first day of such a month.
-func MonthStart(month int32) Day { return Date(0, 1, 1).AddMonths(int(month)) }
+func MonthStart(month int32) Day { return firstOf(int(month)) }
 
 // Kept gives what is done with as tallies count it.
 func (t *Trace) Kept() []Kept {

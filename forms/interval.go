@@ -40,10 +40,16 @@ func (i Interval) Zero() bool { return i == Interval{} }
 // AddMonths moves by whole months and clamps to the last day of the month reached: 31 January + 1 month is 28 or 29
 // February. The stdlib's AddDate would run over into March, past the limit of a not-to-exceed plan.
 func (d Day) AddMonths(n int) Day {
-	y, m, day := d.Time().Date()
-	first := time.Date(y, m+time.Month(n), 1, 0, 0, 0, 0, time.UTC)
-	last := first.AddDate(0, 1, -1).Day() // the first of a month never overflows
-	return DayOf(first) + Day(min(day, last)-1)
+	y, m, day := d.Civil()
+	month := y*12 + int(m) - 1 + n
+	first := firstOf(month)
+	return first + Day(min(day, int(firstOf(month+1)-first))-1)
+}
+
+// firstOf gives the first day of a month counted from January of year 0.
+func firstOf(month int) Day {
+	of := floorMod(month, 12)
+	return Date((month-of)/12, time.Month(of+1), 1)
 }
 
 // Add moves by an interval, months first.

@@ -63,7 +63,7 @@ func (m *Marks) On(d Day) (p MarkPeriod, ok bool) {
 		return p, false
 	}
 	p.From, p.Until = every.period(d)
-	y, month, _ := p.From.Time().Date()
+	y, month, _ := p.From.Civil()
 	p.Mark = m.List[floorMod((y*12+int(month)-1)/every.Months, len(m.List))]
 	return p, true
 }

@@ -5,7 +5,6 @@ import (
 	"fmt"
 	"maps"
 	"slices"
-	"time"
 )
 
 // Duties of a plan: what its interval promises.
@@ -209,11 +208,10 @@ func (i Interval) period(d Day) (first, last Day) {
 		}
 		return d, d
 	}
-	y, m, _ := d.Time().Date()
+	y, m, _ := d.Civil()
 	index := y*12 + int(m) - 1
 	index -= floorMod(index, i.Months)
-	first = Date(0, time.January, 1).AddMonths(index)
-	return first, first.AddMonths(i.Months) - 1
+	return firstOf(index), firstOf(index+i.Months) - 1
 }
 
 func floorMod(a, n int) int { return ((a % n) + n) % n }

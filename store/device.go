@@ -59,20 +59,21 @@ func (v *View) deviceThing(sv *siteView, id id16) (*deviceThing, error) {
 	}
 	n, ok := v.number(sv, ofDevice, id)
 	var d *deviceThing
-	if row := v.tx.Bucket(bktRegister).Get(registerKey(sv.ord, ofDevice, n)); ok && row != nil {
+	if row := v.bucket(bktRegister).Get(registerKey(sv.ord, ofDevice, n)); ok && row != nil {
 		t, err := unpackThing(row)
 		if err != nil {
 			return nil, err
 		}
 		d = &deviceThing{t, n}
 	}
+	sv.remember()
 	sv.devices[id] = d
 	return d, nil
 }
 
 // deviceNumbered gives the register row of a device by its number within the site.
 func (v *View) deviceNumbered(sv *siteView, n uint32) (*deviceThing, error) {
-	t, err := unpackThing(v.tx.Bucket(bktRegister).Get(registerKey(sv.ord, ofDevice, n)))
+	t, err := unpackThing(v.bucket(bktRegister).Get(registerKey(sv.ord, ofDevice, n)))
 	if err != nil {
 		return nil, err
 	}
@@ -80,6 +81,7 @@ func (v *View) deviceNumbered(sv *siteView, n uint32) (*deviceThing, error) {
 		return d, nil
 	}
 	d := &deviceThing{t, n}
+	sv.remember()
 	sv.devices[t.id] = d
 	return d, nil
 }
@@ -185,7 +187,7 @@ func (v *View) deviceTag(sv *siteView, device, place id16) (string, error) {
 
 // rowAt makes the row of a device by its number; ok is false where the register does not hold it.
 func (v *View) rowAt(sv *siteView, n uint32, on forms.Day) (row DeviceRow, ok bool, err error) {
-	reg := v.tx.Bucket(bktRegister).Get(registerKey(sv.ord, ofDevice, n))
+	reg := v.bucket(bktRegister).Get(registerKey(sv.ord, ofDevice, n))
 	if reg == nil {
 		return DeviceRow{}, false, nil
 	}
@@ -203,7 +205,7 @@ func (v *View) rowAt(sv *siteView, n uint32, on forms.Day) (row DeviceRow, ok bo
 
 // work reads a device's work row, nil where there is none.
 func (v *View) work(sv *siteView, n uint32, entries bool) (*work, error) {
-	row := v.tx.Bucket(bktWork).Get(workKey(sv.ord, n))
+	row := v.bucket(bktWork).Get(workKey(sv.ord, n))
 	if row == nil {
 		return nil, nil
 	}
@@ -247,7 +249,7 @@ func (v *View) devices(site string) ([]DeviceRow, error) {
 
 // eachDevice reads the registered devices of a site with their work rows, both in one pass.
 func (v *View) eachDevice(sv *siteView, fn func(n uint32, t *thing, w *work) error) error {
-	c := v.tx.Bucket(bktWork).Cursor()
+	c := v.bucket(bktWork).Cursor()
 	k, row := c.Seek(workKey(sv.ord, 0))
 	return v.each(sv, ofDevice, func(n uint32, t *thing) error {
 		if t.born == 0 {
@@ -276,7 +278,7 @@ func (v *View) findDevice(device string) (*siteView, *deviceThing, error) {
 	}
 	var found *siteView
 	var thing *deviceThing
-	c := v.tx.Bucket(bktThing).Cursor()
+	c := v.bucket(bktThing).Cursor()
 	for k, _ := c.Seek(id[:]); bytes.HasPrefix(k, id[:]); k, _ = c.Next() {
 		if k[20] != ofDevice {
 			continue
@@ -355,9 +357,9 @@ func (v *View) Device(id string, on forms.Day) (Device, error) {
 func (v *View) placeDevices(sv *siteView, place id16) ([]*deviceThing, error) {
 	var todo []id16
 	prefix := placeKey(sv.ord, place, 0)[:20]
-	c := v.tx.Bucket(bktPlace).Cursor()
+	c := v.bucket(bktPlace).Cursor()
 	for k, _ := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, _ = c.Next() {
-		t, err := unpackThing(v.tx.Bucket(bktRegister).Get(registerKey(sv.ord, ofDevice, read32(k[20:]))))
+		t, err := unpackThing(v.bucket(bktRegister).Get(registerKey(sv.ord, ofDevice, read32(k[20:]))))
 		if err != nil {
 			return nil, err
 		}

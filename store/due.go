@@ -102,7 +102,7 @@ func (v *View) CountDue(ask DueAsk) (overdue, others int, err error) {
 			logs = append(logs, sv.ord)
 		}
 	}
-	c := v.tx.Bucket(bktSum).Cursor()
+	c := v.bucket(bktSum).Cursor()
 	for _, log := range logs {
 		prefix := put32(nil, log)
 		for k, n := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, n = c.Next() {
@@ -171,10 +171,11 @@ func (v *View) dueHeads(site string) (dueHeap, error) {
 	if err != nil {
 		return nil, err
 	}
-	due := v.tx.Bucket(bktDue)
-	heads := make(dueHeap, 0, len(sites))
-	for _, sv := range sites {
-		h := &dueHead{site: sv, c: due.Cursor()}
+	due := v.bucket(bktDue)
+	heads, all := make(dueHeap, 0, len(sites)), make([]dueHead, len(sites))
+	for i, sv := range sites {
+		h := &all[i]
+		h.site, h.c = sv, due.Cursor()
 		prefix := put32(nil, sv.ord)
 		if h.key, _ = h.c.Seek(prefix); len(h.key) > 12 && bytes.HasPrefix(h.key, prefix) {
 			heads = append(heads, h)

@@ -70,6 +70,7 @@ type modelLog struct {
 	things  uint32
 	live    uint64
 	entries uint64
+	self    uint32 // number of the site itself among its things, 0 before it is one
 	dirty   bool
 	zone    *time.Location // set when first asked for
 }
@@ -140,7 +141,7 @@ func (f *fold) log(name string) (*modelLog, error) {
 	b := f.tx.Bucket(bktSiteLog)
 	if v := b.Get(l.id[:]); v != nil {
 		u := unpacker{b: v}
-		l.ord, l.things, l.live, l.entries = uint32(u.uint()), uint32(u.uint()), u.uint(), u.uint()
+		l.ord, l.things, l.live, l.entries, l.self = uint32(u.uint()), uint32(u.uint()), u.uint(), u.uint(), uint32(u.uint())
 		if u.bad {
 			return nil, errPacked
 		}
@@ -164,10 +165,10 @@ func (f *fold) logOf(ord uint32) (*modelLog, error) {
 		return l, nil
 	}
 	v := f.tx.Bucket(bktSite).Get(put32(nil, ord))
-	if len(v) != 16 {
+	if len(v) < 16 {
 		return nil, errPacked
 	}
-	name := id16(v).String()
+	name := id16(v[:16]).String()
 	if name == "" {
 		name = record.Org
 	}
@@ -188,6 +189,9 @@ func (f *fold) thing(l *modelLog, typ byte, id id16) uint32 {
 		l.dirty = true
 		n = l.things
 		f.on(bktThing).put(thingKey(id, l.ord, typ), put32(nil, n))
+		if typ == ofSite && id == l.id {
+			l.self = n
+		}
 	}
 	f.things[key] = n
 	return n
@@ -254,13 +258,17 @@ func (f *fold) packLogs() {
 		if !l.dirty {
 			continue
 		}
-		p := packer{make([]byte, 0, 16)}
+		p := packer{make([]byte, 0, 20)}
 		p.uint(uint64(l.ord))
 		p.uint(uint64(l.things))
 		p.uint(l.live)
 		p.uint(l.entries)
+		p.uint(uint64(l.self))
 		f.on(bktSiteLog).put(l.id[:], p.b)
-		f.on(bktSite).put(put32(nil, ord), l.id[:])
+		site := append(bytes.Clone(l.id[:]), f.on(bktRegister).get(registerKey(ord, ofSite, l.self))...)
+		if key := put32(nil, ord); !bytes.Equal(f.on(bktSite).get(key), site) {
+			f.on(bktSite).put(key, site)
+		}
 		l.dirty = false
 	}
 }

@@ -397,7 +397,7 @@ func (f *fold) tally(site uint32, p past, by int64) {
 	if p.result == 0 {
 		return
 	}
-	y, m, _ := p.day.Time().Date()
+	y, m, _ := p.day.Civil()
 	key := string(tallyKey(site, int32(y*12+int(m)-1), p.task))
 	t := f.tallies[key]
 	if t == nil {

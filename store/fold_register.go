@@ -258,6 +258,9 @@ func (f *fold) packRegisters() {
 				}
 			}
 		case ofSite:
+			if l := f.ords[key.site]; l != nil && l.self == key.n {
+				l.dirty = true // its row is kept with the log too
+			}
 			if is.code != r.was.code {
 				if r.was.code != "" {
 					f.on(bktCode).delete(codeKey(r.was.code, key.site))

@@ -10,8 +10,8 @@ import (
 // met in the book; org is one of them), n the number of a thing within its log, day a forms.Day with its sign bit
 // turned over so that it sorts. Rows are packed (pack.go); nothing here comes from a clock, a setting or a map's order.
 //
-//	m_log    log 16                     → site 4 | things made | devices under test | entries (org is all zero)
-//	m_site   site 4                     → log 16
+//	m_log    log 16                     → site 4 | things made | devices under test | entries | the site's own n, 0 for none (org is all zero)
+//	m_site   site 4                     → log 16 | the register row of the site itself, so that a list of sites is one scan
 //	m_thing  id 16 | site 4 | type 1    → n 4
 //	m_reg    site 4 | type 1 | n 4      → register row: fields with everything that was said of them
 //	m_work   site 4 | n 4               → work row of a device: last tests, dates, its newest entries

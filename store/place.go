@@ -63,6 +63,7 @@ func (v *View) place(sv *siteView, id id16) (*Place, error) {
 	if ok {
 		p = placeOf(sv.ID, &t)
 	}
+	sv.remember()
 	sv.places[id] = p
 	return p, nil
 }
@@ -77,6 +78,7 @@ func (v *View) circuit(sv *siteView, id id16) (circuit, error) {
 		return circuit{}, err
 	}
 	c, err := v.circuitOf(sv, &t)
+	sv.remember()
 	sv.circuits[id] = c
 	return c, err
 }
@@ -98,6 +100,7 @@ func (v *View) circuitOf(sv *siteView, t *thing) (circuit, error) {
 		return c, err
 	}
 	c.panel = p.text("name")
+	sv.remember()
 	sv.panels[panel] = c.panel
 	return c, nil
 }
@@ -108,6 +111,7 @@ func (v *View) loadSite(sv *siteView) error {
 	if sv.whole {
 		return nil
 	}
+	sv.remember()
 	for _, typ := range []byte{ofPlace, ofPanel, ofCircuit} {
 		err := v.each(sv, typ, func(_ uint32, t *thing) error {
 			switch typ {
@@ -131,7 +135,7 @@ func (v *View) loadSite(sv *siteView) error {
 	prefix := put32(nil, sv.ord)
 	var subject id16
 	var best binding
-	c := v.tx.Bucket(bktBind).Cursor()
+	c := v.bucket(bktBind).Cursor()
 	for k, row := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, row = c.Next() {
 		b, err := unpackBinding(row)
 		if err != nil {
@@ -156,7 +160,7 @@ func (v *View) tagOf(sv *siteView, subject id16) (string, error) {
 	var tag string
 	var best binding
 	prefix := bindKey(sv.ord, subject, "")
-	c := v.tx.Bucket(bktBind).Cursor()
+	c := v.bucket(bktBind).Cursor()
 	for k, row := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, row = c.Next() {
 		b, err := unpackBinding(row)
 		if err != nil {
@@ -166,6 +170,7 @@ func (v *View) tagOf(sv *siteView, subject id16) (string, error) {
 			tag, best = string(k[20:]), b
 		}
 	}
+	sv.remember()
 	sv.tags[subject] = tag
 	return tag, nil
 }
@@ -173,7 +178,7 @@ func (v *View) tagOf(sv *siteView, subject id16) (string, error) {
 // each reads the things of one type of a site, in the order they were first met.
 func (v *View) each(sv *siteView, typ byte, fn func(n uint32, t *thing) error) error {
 	prefix := append(put32(nil, sv.ord), typ)
-	c := v.tx.Bucket(bktRegister).Cursor()
+	c := v.bucket(bktRegister).Cursor()
 	for k, row := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, row = c.Next() {
 		t, err := unpackThing(row)
 		if err != nil {

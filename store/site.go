@@ -45,12 +45,23 @@ func (v *View) Sites() ([]Site, error) {
 	if err != nil {
 		return nil, err
 	}
-	var out []Site
-	for _, sv := range every {
+	out := make([]Site, 0, len(every))
+	for _, sv := range byCode(every) {
 		out = append(out, sv.Site)
 	}
-	slices.SortFunc(out, func(a, b Site) int { return cmp.Or(cmp.Compare(a.Code, b.Code), cmp.Compare(a.ID, b.ID)) })
 	return out, nil
+}
+
+// byCode puts sites in the order of their codes.
+func byCode(sites []*siteView) []*siteView {
+	sorted := slices.Clone(sites)
+	slices.SortFunc(sorted, func(a, b *siteView) int {
+		if c := strings.Compare(a.Code, b.Code); c != 0 {
+			return c
+		}
+		return strings.Compare(a.ID, b.ID)
+	})
+	return sorted
 }
 
 // Site finds a site by its id or its code (in any letter case), with the values that lost to concurrent ones. Of two
@@ -79,7 +90,7 @@ func (v *View) siteNamed(idOrCode string) (*siteView, error) {
 	}
 	var found *siteView
 	prefix := append([]byte(code), 0)
-	c := v.tx.Bucket(bktCode).Cursor()
+	c := v.bucket(bktCode).Cursor()
 	for k, _ := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, _ = c.Next() {
 		sv, ok, err := v.openOrd(read32(k[len(prefix):]))
 		if err != nil {
@@ -131,10 +142,8 @@ func (v *View) SitesSums() ([]SiteSums, error) {
 	if err != nil {
 		return nil, err
 	}
-	sites = slices.Clone(sites)
-	slices.SortFunc(sites, func(a, b *siteView) int { return cmp.Or(cmp.Compare(a.Code, b.Code), cmp.Compare(a.ID, b.ID)) })
 	out := make([]SiteSums, 0, len(sites))
-	for _, sv := range sites {
+	for _, sv := range byCode(sites) {
 		sums, err := v.sumSite(sv, sv.today)
 		if err != nil {
 			return nil, err
@@ -160,7 +169,7 @@ func (v *View) sumSite(sv *siteView, on forms.Day) (SiteSums, error) {
 
 // sumDates counts a site's devices and dates, and the months behind it: two short scans, whatever its size.
 func (v *View) sumDates(sv *siteView, on forms.Day, sums *SiteSums) error {
-	u := unpacker{b: v.tx.Bucket(bktSiteLog).Get(sv.id[:])}
+	u := unpacker{b: v.bucket(bktSiteLog).Get(sv.id[:])}
 	u.uint()
 	u.uint()
 	sums.Devices = int(u.uint())
@@ -177,7 +186,7 @@ func (v *View) sumDates(sv *siteView, on forms.Day, sums *SiteSums) error {
 		return &sums.Year[m-first].Count
 	}
 	prefix := put32(nil, sv.ord)
-	c := v.tx.Bucket(bktKeep).Cursor()
+	c := v.bucket(bktKeep).Cursor()
 	for k, row := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, row = c.Next() {
 		if err := eachKept(row, first, func(m int32, kept *monthKept) { kept.count(month(m)) }); err != nil {
 			return err
@@ -185,7 +194,7 @@ func (v *View) sumDates(sv *siteView, on forms.Day, sums *SiteSums) error {
 	}
 	next := nextDate{day: forms.NoDay}
 	ahead := max(on+31, forms.MonthStart(last+1)-1)
-	c = v.tx.Bucket(bktSum).Cursor()
+	c = v.bucket(bktSum).Cursor()
 	for k, n := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, n = c.Next() {
 		d, u := readSum(k), unpacker{b: n}
 		if next.day != forms.NoDay && next.order < 2 && d.Due > max(ahead, next.day) {
@@ -256,7 +265,7 @@ func (v *View) Tallies(site string) ([]MonthTally, error) {
 	}
 	var out []MonthTally
 	prefix := put32(nil, sv.ord)
-	c := v.tx.Bucket(bktTally).Cursor()
+	c := v.bucket(bktTally).Cursor()
 	for k, row := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, row = c.Next() {
 		t, err := unpackTally(row)
 		if err != nil {

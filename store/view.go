@@ -26,6 +26,20 @@ type View struct {
 	counted map[string]*runs      // by installation and log
 	every   []*siteView           // the registered sites of the scope, once they were asked for
 	refused map[numbered]bool
+	buckets map[string]*bbolt.Bucket
+}
+
+// bucket gives a bucket of the file, which the file itself would look up each time.
+func (v *View) bucket(name []byte) *bbolt.Bucket {
+	b := v.buckets[string(name)]
+	if b == nil {
+		b = v.tx.Bucket(name)
+		if v.buckets == nil {
+			v.buckets = map[string]*bbolt.Bucket{}
+		}
+		v.buckets[string(name)] = b
+	}
+	return b
 }
 
 var errNoSite = &Error{Code: "not_found", Field: "site", Text: "There is no such site here, or it is not yours to see. Choose one from the list of sites."}
@@ -61,15 +75,19 @@ func (v *View) open(site string) (*siteView, error) {
 	if sv := v.opened[id]; sv != nil {
 		return sv, nil
 	}
-	row := v.tx.Bucket(bktSiteLog).Get(id[:])
+	row := v.bucket(bktSiteLog).Get(id[:])
 	if row == nil {
 		return nil, errNoSite
 	}
 	u := unpacker{b: row}
-	ord := uint32(u.uint())
-	sv := &siteView{ord: ord, id: id, Site: Site{ID: site}, zone: time.UTC, places: map[id16]*Place{},
-		circuits: map[id16]circuit{}, panels: map[id16]string{}, tags: map[id16]string{}, devices: map[id16]*deviceThing{}}
-	if err := v.readSite(sv); err != nil {
+	sv, _, err := v.openOrd(uint32(u.uint()))
+	return sv, err
+}
+
+// openSite reads a site that was found, from its register row.
+func (v *View) openSite(site string, id id16, ord uint32, row []byte) (*siteView, error) {
+	sv := &siteView{ord: ord, id: id, Site: Site{ID: site}, zone: time.UTC}
+	if err := sv.read(row); err != nil {
 		return nil, err
 	}
 	sv.today = forms.DayOf(v.s.Now().In(sv.zone))
@@ -86,8 +104,8 @@ func (v *View) everySite() ([]*siteView, error) {
 		return v.every, nil
 	}
 	var out []*siteView
-	err := v.scan(bktSite, nil, func(k, _ []byte) error {
-		sv, ok, err := v.openOrd(read32(k))
+	err := v.scan(bktSite, nil, func(k, row []byte) error {
+		sv, ok, err := v.openRow(read32(k), row)
 		if ok && sv.Code != "" {
 			out = append(out, sv)
 		}
@@ -97,14 +115,9 @@ func (v *View) everySite() ([]*siteView, error) {
 	return out, err
 }
 
-// readSite reads what the register says of a site itself.
-func (v *View) readSite(sv *siteView) error {
-	n, ok := v.number(sv, ofSite, sv.id)
-	if !ok {
-		return nil
-	}
-	row := v.tx.Bucket(bktRegister).Get(registerKey(sv.ord, ofSite, n))
-	if row == nil {
+// read takes what the register says of a site itself.
+func (sv *siteView) read(row []byte) error {
+	if len(row) == 0 {
 		return nil
 	}
 	site, known := sitesRead.get(row)
@@ -149,16 +162,32 @@ func (s *siteRows) put(row []byte, site Site) {
 
 // openOrd opens the site of a number; ok is false for the organisation's log and for what the scope leaves out.
 func (v *View) openOrd(ord uint32) (sv *siteView, ok bool, err error) {
-	row := v.tx.Bucket(bktSite).Get(put32(nil, ord))
-	if len(row) != 16 {
+	return v.openRow(ord, v.bucket(bktSite).Get(put32(nil, ord)))
+}
+
+// openRow opens the site of a row of m_site.
+func (v *View) openRow(ord uint32, row []byte) (sv *siteView, ok bool, err error) {
+	if len(row) < 16 {
 		return nil, false, errPacked
 	}
-	site := id16(row).String()
+	id := id16(row[:16])
+	if sv := v.opened[id]; sv != nil {
+		return sv, true, nil
+	}
+	site := id.String()
 	if site == "" || !v.scope.May(site) {
 		return nil, false, nil
 	}
-	sv, err = v.open(site)
+	sv, err = v.openSite(site, id, ord, row[16:])
 	return sv, err == nil, err
+}
+
+// remember makes room for what is looked up of a site; lists of sites need none.
+func (sv *siteView) remember() {
+	if sv.places == nil {
+		sv.places, sv.circuits, sv.panels = map[id16]*Place{}, map[id16]circuit{}, map[id16]string{}
+		sv.tags, sv.devices = map[id16]string{}, map[id16]*deviceThing{}
+	}
 }
 
 // thing reads the winners of a thing's fields; they point into the file. ok is false where nothing was said of it.
@@ -167,7 +196,7 @@ func (v *View) thing(sv *siteView, typ byte, id id16) (t thing, ok bool, err err
 	if !ok {
 		return thing{}, false, nil
 	}
-	row := v.tx.Bucket(bktRegister).Get(registerKey(sv.ord, typ, n))
+	row := v.bucket(bktRegister).Get(registerKey(sv.ord, typ, n))
 	if row == nil {
 		return thing{}, false, nil
 	}
@@ -176,7 +205,7 @@ func (v *View) thing(sv *siteView, typ byte, id id16) (t thing, ok bool, err err
 }
 
 func (v *View) number(sv *siteView, typ byte, id id16) (n uint32, ok bool) {
-	row := v.tx.Bucket(bktThing).Get(thingKey(id, sv.ord, typ))
+	row := v.bucket(bktThing).Get(thingKey(id, sv.ord, typ))
 	if len(row) != 4 {
 		return 0, false
 	}
@@ -186,13 +215,13 @@ func (v *View) number(sv *siteView, typ byte, id id16) (n uint32, ok bool) {
 // rules gives the forms, limit sets and plans as this view sees them.
 func (v *View) rules() *rules {
 	if v.ruled == nil {
-		o := overlay{bucket: v.tx.Bucket(bktRule)}
+		o := overlay{bucket: v.bucket(bktRule)}
 		v.ruled = newRules(o.list)
 		v.ruled.said = func(bucket, prefix []byte) []row {
-			o := overlay{bucket: v.tx.Bucket(bucket)}
+			o := overlay{bucket: v.bucket(bucket)}
 			return o.list(prefix)
 		}
-		if row := v.tx.Bucket(bktSiteLog).Get(make([]byte, 16)); row != nil {
+		if row := v.bucket(bktSiteLog).Get(make([]byte, 16)); row != nil {
 			u := unpacker{b: row}
 			v.org = uint32(u.uint())
 		}
@@ -203,7 +232,7 @@ func (v *View) rules() *rules {
 // whoMay gives what people may do as this view sees it.
 func (v *View) whoMay() *grants {
 	if v.mayDo == nil {
-		o := overlay{bucket: v.tx.Bucket(bktGranted)}
+		o := overlay{bucket: v.bucket(bktGranted)}
 		v.mayDo = newGrants(o.list)
 	}
 	return v.mayDo
@@ -217,7 +246,7 @@ func (v *View) orgLog() uint32 {
 
 // seqOf finds a record's place in the book.
 func (v *View) seqOf(id id16) (seq uint64, ok bool) {
-	row := v.tx.Bucket(bktID).Get(id[:])
+	row := v.bucket(bktID).Get(id[:])
 	return readKey64(row), row != nil
 }
 
@@ -236,7 +265,7 @@ func (v *View) recordAt(id id16) (*record.Record, record.Stamp, kept, uint64, er
 
 // scan reads the rows under a prefix; keys and values point into the file.
 func (v *View) scan(bucket, prefix []byte, fn func(key, row []byte) error) error {
-	c := v.tx.Bucket(bucket).Cursor()
+	c := v.bucket(bucket).Cursor()
 	for k, row := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix); k, row = c.Next() {
 		if err := fn(k, row); err != nil {
 			return err

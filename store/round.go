@@ -20,14 +20,6 @@ const (
 	RoundOff      = "off"      // called off
 )
 
-// States of a stop.
-const (
-	StopLeft   = "left"
-	StopDone   = "done"
-	StopBack   = "back"   // nothing could be tested, or not enough: somebody must come back
-	StopPassed = "passed" // passed over with a reason
-)
-
 // Round is a list of tests in walking order, with how far it is. What counts for it is worked out when it is read: tests
 // of its stops made after it was made, and those that name it.
 type Round struct {
@@ -56,20 +48,6 @@ func (r *Round) Walk() bool { return r.By == "" }
 
 // Seen is the stamp a change of the round says it knew of.
 func (r *Round) Seen() string { return seenText(r.seen) }
-
-// RoundStop is one test of a round.
-type RoundStop struct {
-	Device  string
-	Task    string
-	State   string
-	Entry   string // the newest that counts; "" where there is none
-	Result  string
-	Day     forms.Day
-	By      string
-	Reason  string // why it was passed over
-	Paper   bool   // the entry came from paper or a spreadsheet
-	Retired bool
-}
 
 // RoundClosing is what somebody said on closing a round.
 type RoundClosing struct {
@@ -330,140 +308,4 @@ func (r *Round) stateOf(off bool) string {
 		return RoundWalking
 	}
 	return RoundMade
-}
-
-// stops reads how far the stops of a round are.
-func (v *View) stops(sv *siteView, r *Round, list []string) error {
-	passed := map[string]string{}
-	for _, c := range r.Closings {
-		for _, p := range c.Passed {
-			passed[p.Device+"/"+p.Task] = p.Reason
-		}
-	}
-	last := forms.Day(1<<31 - 1)
-	if r.Accepted != nil {
-		last = r.Accepted.Day
-	}
-	for _, text := range list {
-		if !record.IsStop(text) {
-			continue
-		}
-		stop := RoundStop{Device: text[:36], Task: text[37:], State: StopLeft, Day: forms.NoDay}
-		if err := v.stop(sv, r, &stop, last); err != nil {
-			return err
-		}
-		if why, ok := passed[text]; ok && stop.State == StopLeft {
-			stop.State, stop.Reason = StopPassed, why
-		}
-		r.Stops = append(r.Stops, stop)
-	}
-	return nil
-}
-
-// stop finds the tests that count for a stop: made after the round was, until the day it was accepted, or naming it. An
-// entry that also meets the task (the button, by an instrument test) counts as well.
-func (v *View) stop(sv *siteView, r *Round, stop *RoundStop, last forms.Day) error {
-	d, err := v.deviceThing(sv, parseID(stop.Device))
-	if err != nil || d == nil {
-		return err
-	}
-	stop.Retired = d.value("#retired") != nil
-	tests, err := v.history(sv, d.n)
-	if err != nil {
-		return err
-	}
-	made := forms.DayOf(r.Made.In(sv.zone))
-	var best mark
-	for _, p := range tests {
-		meets := slices.Contains(p.met, stop.Task)
-		if p.result == 0 || p.day > last || p.task != stop.Task && !meets {
-			continue
-		}
-		if p.day < made-roundReach {
-			continue
-		}
-		e, _, _, err := readBook(v.tx, p.seq)
-		if err != nil {
-			return err
-		}
-		var body struct{ Round, Source string }
-		if json.Unmarshal(e.Body, &body) != nil {
-			continue
-		}
-		if body.Round != r.ID && (p.day < made || int64(e.Clock>>16) < r.Made.UnixMilli()) {
-			continue
-		}
-		m := mark{p.day, e.Clock, parseID(e.ID), p.result}
-		done := meets || conclusive(p.result) || resultCodes[p.result] == forms.ConditionalFail
-		switch {
-		case stop.State == StopDone && !done, (stop.State == StopDone) == done && m.before(best):
-			continue
-		case done:
-			stop.State = StopDone
-		default:
-			stop.State = StopBack
-		}
-		best = m
-		stop.Entry, stop.Result, stop.Day, stop.By = e.ID, resultCodes[p.result], p.day, e.By
-		stop.Paper = body.Source == "paper" || body.Source == "spreadsheet"
-	}
-	return nil
-}
-
-// roundReach is how long before a round was made an entry may lie that names it: a sheet filled in by hand carries its own days.
-const roundReach = 400
-
-// SnapshotRound is a round as a phone takes it along. State of a stop is "", done, back or passed.
-type SnapshotRound struct {
-	ID      string         `json:"id"`
-	Code    string         `json:"code"`
-	Made    int64          `json:"made"` // ms since 1970
-	Day     forms.Day      `json:"day,omitempty"`
-	Starts  string         `json:"starts,omitempty"`
-	People  []string       `json:"people,omitempty"`
-	Crew    string         `json:"crew,omitempty"`
-	Note    string         `json:"note,omitempty"`
-	Minutes int            `json:"minutes,omitempty"`
-	Closed  []string       `json:"closed,omitempty"` // who has ended it
-	Stops   []SnapshotStop `json:"stops"`
-}
-
-// SnapshotStop is one stop.
-type SnapshotStop struct {
-	Device string `json:"device"`
-	Task   string `json:"task"`
-	State  string `json:"state,omitempty"`
-}
-
-func (v *View) snapshotRounds(sv *siteView) ([]SnapshotRound, error) {
-	var out []SnapshotRound
-	err := v.each(sv, ofRound, func(n uint32, t *thing) error {
-		if t.born == 0 || string(t.value("off")) == "true" {
-			return nil
-		}
-		r, err := v.round(sv, n, t)
-		if err != nil || r.State == RoundAccepted || r.State == RoundEnded {
-			return err
-		}
-		one := SnapshotRound{ID: r.ID, Code: r.Code, Made: r.Made.UnixMilli(), Day: r.Day, Starts: r.Starts, People: r.People, Crew: r.Crew, Note: r.Note, Minutes: r.Minutes, Stops: []SnapshotStop{}}
-		for _, c := range r.Closings {
-			one.Closed = append(one.Closed, c.By)
-		}
-		for _, s := range r.Stops {
-			if s.Retired {
-				continue
-			}
-			state := s.State
-			if state == StopLeft {
-				state = ""
-			}
-			one.Stops = append(one.Stops, SnapshotStop{s.Device, s.Task, state})
-		}
-		out = append(out, one)
-		return nil
-	})
-	slices.SortFunc(out, func(a, b SnapshotRound) int {
-		return cmp.Or(cmp.Compare(a.Day, b.Day), cmp.Compare(a.Made, b.Made), cmp.Compare(a.ID, b.ID))
-	})
-	return out, err
 }

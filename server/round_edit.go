@@ -53,6 +53,16 @@ func (s *Server) roundUpdate(c echo.Context) error {
 	set := map[string]any{}
 	f.setText(set, "day", "day", f.date("day").String())
 	f.setText(set, "starts", "starts", f.clock("starts"))
+	if set["starts"] != nil {
+		err := s.store.View(scope(c), func(v *store.View) error {
+			warning, err := s.outsideHours(v, r.Site, f.clock("starts"), r.StopTexts())
+			s.warnOfHours(f, warning)
+			return err
+		})
+		if err != nil {
+			return err
+		}
+	}
 	f.setText(set, "crew", "crew", f.line("crew", 80))
 	f.setText(set, "note", "note", f.line("note", 500))
 	if people := f.Values["people"]; !slices.Equal(people, r.People) {
@@ -84,7 +94,7 @@ func (s *Server) roundFormBack(c echo.Context, f *typedForm, r store.Round, site
 		return err
 	}
 	name := s.roundName(r, s.today(site))
-	fields := append([]field{{Name: "day", Label: k.say("office.round.field.day"), Type: "date"}}, s.carryFields()...)
+	fields := append([]field{{Name: "day", Label: k.say("office.round.field.day"), Type: "date"}}, s.carryFields(f)...)
 	if len(people) > 1 {
 		fields = slices.Insert(fields, 2, field{Name: "people", Label: k.say("office.round.field.people"), Type: "checks", Options: people[1:], Hint: k.say("office.round.people_hint")})
 	}

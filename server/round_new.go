@@ -42,6 +42,7 @@ type visitPage struct {
 // visitRound is a round as it is offered.
 type visitRound struct {
 	Name, Under, Stops, Minutes, N string
+	Make                           bool
 	Who                            []option
 	Groups                         []stopGroup
 }
@@ -94,7 +95,7 @@ func (s *Server) roundNew(c echo.Context) error {
 func (s *Server) visitBack(c echo.Context, f *typedForm) error {
 	k := s.ink()
 	view := visitPage{Frame: s.frame(c, k.say("office.visit.title"), "rounds"), Crumbs: []link{{Href: "/rounds", Text: k.say("office.round.title")}}}
-	err := s.store.View(scope(c), func(v *store.View) error { return s.buildVisit(c, v, &view) })
+	err := s.store.View(scope(c), func(v *store.View) error { return s.buildVisit(c, v, f, &view) })
 	if err != nil {
 		return err
 	}
@@ -109,7 +110,7 @@ func (s *Server) visitBack(c echo.Context, f *typedForm) error {
 	return s.page(c, status, "visit.html", view)
 }
 
-func (s *Server) buildVisit(c echo.Context, v *store.View, view *visitPage) error {
+func (s *Server) buildVisit(c echo.Context, v *store.View, f *typedForm, view *visitPage) error {
 	k := s.ink()
 	sites, err := v.Sites()
 	if err != nil {
@@ -140,7 +141,7 @@ func (s *Server) buildVisit(c echo.Context, v *store.View, view *visitPage) erro
 	view.Ready = true
 	view.Buildings = namesOf(ask.Building, k.say("office.visit.all_buildings"), visit.Buildings)
 	view.Floors = namesOf(ask.Floor, k.say("office.visit.all_floors"), visit.Floors)
-	return s.fillVisit(c, v, ask, visit, view)
+	return s.fillVisit(c, v, f, ask, visit, view)
 }
 
 func namesOf(chosen, all string, names []string) []option {
@@ -152,7 +153,7 @@ func namesOf(chosen, all string, names []string) []option {
 }
 
 // fillVisit says what waits, then offers the rounds.
-func (s *Server) fillVisit(c echo.Context, v *store.View, ask store.VisitAsk, visit store.Visit, view *visitPage) error {
+func (s *Server) fillVisit(c echo.Context, v *store.View, f *typedForm, ask store.VisitAsk, visit store.Visit, view *visitPage) error {
 	k, today := s.ink(), s.today(visit.Site)
 	view.Heading = k.say("office.visit.fact", "site", visit.Site.Name, "day", k.longDay(ask.Day), "tests", k.say("office.visit.tests", "n", len(visit.Stops)))
 	view.Under = k.say("office.visit.under", "rounds", k.say("office.visit.rounds", "n", len(visit.Starts)), "hours", cmp.Or(k.minutes(int(visit.Minutes+0.5)), k.say("office.round.min", "n", 0)))
@@ -195,6 +196,7 @@ func (s *Server) fillVisit(c echo.Context, v *store.View, ask store.VisitAsk, vi
 			end = visit.Starts[i+1]
 		}
 		one := s.visitRound(visit.Stops[start:end], i, len(visit.Starts), today)
+		one.Make = !f.Has("stops."+one.N) || f.Get("make."+one.N) == "yes"
 		for _, stop := range visit.Stops[start:end] {
 			tell.add(stop.Device.Place)
 		}
@@ -203,11 +205,14 @@ func (s *Server) fillVisit(c echo.Context, v *store.View, ask store.VisitAsk, vi
 			if one.Who, err = s.walkers(visit.Site.ID); err != nil {
 				return err
 			}
+			for j := range one.Who {
+				one.Who[j].Chosen = one.Who[j].Value == f.Get("who."+one.N)
+			}
 		}
 		view.Rounds = append(view.Rounds, one)
 	}
 	view.Tell = tell.lines(k)
-	s.visitForm(c, ask, view)
+	s.visitForm(c, f, ask, view)
 	return nil
 }
 
@@ -271,24 +276,25 @@ func (s *Server) walkers(site string) ([]option, error) {
 }
 
 // visitForm is what is asked of the rounds before they are made.
-func (s *Server) visitForm(c echo.Context, ask store.VisitAsk, view *visitPage) {
+func (s *Server) visitForm(c echo.Context, f *typedForm, ask store.VisitAsk, view *visitPage) {
 	k := s.ink()
 	if !view.Change {
 		return
 	}
 	view.Action, view.Submit = "/rounds?"+c.QueryParams().Encode(), k.say("office.visit.make", "n", len(view.Rounds))
 	view.Hidden = []hidden{{"site", ask.Site}, {"day", ask.Day.String()}, {"until", ask.Until.String()}}
-	view.Fields = s.carryFields()
+	view.Fields = s.carryFields(f)
 }
 
 // carryFields ask what a round carries beside its list.
-func (s *Server) carryFields() []field {
+func (s *Server) carryFields(f *typedForm) []field {
 	k := s.ink()
-	return []field{
+	return slices.Concat([]field{
 		{Name: "starts", Label: k.say("office.round.field.starts"), Type: "time", Hint: k.say("office.round.starts_hint")},
+	}, s.outsideTick(f), []field{
 		{Name: "crew", Label: k.say("office.round.field.crew"), Type: "text", Hint: k.say("office.round.crew_hint")},
 		{Name: "note", Label: k.say("office.round.field.note"), Type: "text-area", Wide: true, Hint: k.say("office.round.note_hint")},
-	}
+	})
 }
 
 // roundMost is how many tests one round may carry: its record must stay well under its limit.
@@ -314,6 +320,11 @@ func (s *Server) roundCreate(c echo.Context) error {
 			if err := s.checkStops(v, site, stops); err != nil {
 				return err
 			}
+			warning, err := s.outsideHours(v, site, starts, stops)
+			if err != nil {
+				return err
+			}
+			s.warnOfHours(f, warning)
 			set := map[string]any{"stops": stops}
 			for name, value := range map[string]string{"day": day.String(), "until": until.String(), "starts": starts, "crew": crew, "note": note} {
 				if value != "" {

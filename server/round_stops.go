@@ -57,7 +57,7 @@ func (s *Server) stopRows(v *store.View, r store.Round, site store.Site, view *r
 		g.Rows = append(g.Rows, row)
 	}
 	view.Tell = tell.lines(k)
-	return rows, nil
+	return rows, s.tellHours(v, r, view)
 }
 
 // stopMark is the verdict of a stop that was done, else its state.

@@ -63,6 +63,39 @@ func TestRound_MadeFromAVisitWalkedAndAccepted(t *testing.T) {
 	}
 }
 
+// A place that may be tested only at some hours: a round that reaches it at others is made only when somebody says so.
+func TestRound_WarnsOfTheHoursOfItsPlaces(t *testing.T) {
+	r := newRig(t, 3)
+	manager, place := r.signIn(r.manager), r.devicesOf(r.site)[1].Place
+	r.append(store.Draft{Kind: "place.set", Log: r.site, Subject: place.ID, By: r.manager.ID, Body: set{"set": set{"test_from": "05:30", "test_until": "07:00"}}})
+	visit := "/rounds/new?site=KILN-LANE&task=button&until=2099-12-31"
+	form := setAll(r.openForm(manager, visit), "site", r.site, "who.0", r.crew.ID, "note", "Keys at the desk", "starts", "09:00")
+	made := "/rounds" + strings.TrimPrefix(visit, "/rounds/new")
+	res := r.submit(manager, made, form.Encode())
+	for _, want := range []string{place.Name + " is reached at about 09:02 and may be tested only between 05:30 and 07:00.", "A start at 06:55 suits every place.", "Keys at the desk", `name="outside"`, `value="` + r.crew.ID + `" selected`} {
+		if !strings.Contains(res.body, want) {
+			t.Errorf("the page lacks %q", want)
+		}
+	}
+	if res.status != http.StatusUnprocessableEntity || len(r.rounds()) != 0 {
+		t.Fatalf("got %d and %d rounds, want the page back and none", res.status, len(r.rounds()))
+	}
+	form.Set("outside", "yes")
+	at := r.wantTo(manager, made, form)
+	if page := r.open(manager, at).body; !strings.Contains(page, "is reached at about 09:02") {
+		t.Error("the page of the round does not warn")
+	}
+	edit := setAll(r.openForm(manager, at+"/edit"), "starts", "08:30")
+	if res := r.submit(manager, at+"/edit", edit.Encode()); res.status != http.StatusUnprocessableEntity {
+		t.Errorf("moved to another hour outside: got %d, want the page back", res.status)
+	}
+	edit.Set("starts", "06:30")
+	r.wantTo(manager, at+"/edit", edit)
+	if page := r.open(manager, at).body; strings.Contains(page, "is reached at about") {
+		t.Error("the page warns of an hour that suits")
+	}
+}
+
 func TestRound_OnlyDevicesOfItsSite(t *testing.T) {
 	r := newRig(t, 1)
 	manager := r.signIn(r.manager)

@@ -108,5 +108,14 @@ func (v *View) stop(sv *siteView, r *Round, stop *RoundStop, last forms.Day) err
 	return nil
 }
 
+// StopTexts are the stops as a record names them: DEVICE/TASK, in walking order.
+func (r *Round) StopTexts() []string {
+	out := make([]string, len(r.Stops))
+	for i, s := range r.Stops {
+		out[i] = s.Device + "/" + s.Task
+	}
+	return out
+}
+
 // roundReach is how long before a round was made an entry may lie that names it: a sheet filled in by hand carries its own days.
 const roundReach = 400

@@ -293,14 +293,27 @@ func (p *roundPrint) stop(s *Stop, rows [][]item, height float64) {
 		about = append([]string{p.words.Say("task." + s.Task)}, about...)
 	}
 	p.text(x, y+4, p.size.W-right-x, "sans", 8, strings.Join(about, " · "))
-	if w := s.Device.Place.WhomToTell; w != "" || s.Device.Place.CriticalLoad != "" {
-		p.text(rowLeft, y+7.4, room, "sansB", 7, strings.TrimSpace(strings.Join([]string{w, s.Device.Place.CriticalLoad}, "  ")))
-	}
+	p.text(rowLeft, y+7.4, room, "sansB", 7, strings.Join(s.beforeTest(p.words), " "))
 	for i, row := range rows {
 		p.items(row, rowLeft, y+8.4+float64(i)*itemHeight)
 	}
 	p.y += height
 	p.rule(p.y-0.6, 0.1)
+}
+
+// beforeTest says when TEST may be pressed at a stop, whom to tell first, and what may lose power.
+func (s *Stop) beforeTest(words *static.Words) (said []string) {
+	p := s.Device.Place
+	if p.TestFrom != "" {
+		said = append(said, words.Say("office.round.window", "from", p.TestFrom, "until", p.TestUntil))
+	}
+	if p.WhomToTell != "" {
+		said = append(said, words.Say("office.round.tell", "who", p.WhomToTell))
+	}
+	if p.CriticalLoad != "" {
+		said = append(said, words.Say("office.round.load", "load", p.CriticalLoad))
+	}
+	return said
 }
 
 func (p *roundPrint) items(row []item, x, y float64) {

@@ -73,3 +73,24 @@ func (m *Marks) After(p MarkPeriod) MarkPeriod {
 	next, _ := m.On(p.Until + 1)
 	return next
 }
+
+// Marks gives the marks put on after a task's test on a day: those of its plans in force then, of several the first by id.
+func (s Schedule) Marks(task string, on Day) *Marks {
+	for i := range s {
+		if s[i].task != task {
+			continue
+		}
+		for _, chain := range s[i].chains {
+			r := &chain[0]
+			for j := range chain {
+				if chain[j].InForce <= on {
+					r = &chain[j]
+				}
+			}
+			if r.Plan.Marks != nil {
+				return r.Plan.Marks
+			}
+		}
+	}
+	return nil
+}

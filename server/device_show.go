@@ -141,6 +141,11 @@ func (s *Server) buildDevice(v *store.View, site store.Site, d store.Device, vie
 		return err
 	}
 	view.Facts = append(append(append(view.Facts, applies), at...), s.formerFact(v, d, today)...)
+	marks, err := s.markFacts(v, d, entries, today)
+	if err != nil {
+		return err
+	}
+	view.Facts = append(view.Facts, marks...)
 	s.labelOf(d, view)
 	if err := s.defectsOf(v, d, site, view); err != nil {
 		return err

@@ -3,6 +3,7 @@ package server
 import (
 	"net/http"
 	"net/url"
+	"slices"
 
 	"github.com/labstack/echo/v4"
 
@@ -78,4 +79,43 @@ func (s *Server) buildMarks(v *store.View, p *forms.Plan, site string, today for
 		view.Marks = append(view.Marks, row)
 	}
 	return nil
+}
+
+// markFacts says which mark a device carries, and whether it is still good: the mark of the last test's period, where that was
+// answered as put on.
+func (s *Server) markFacts(v *store.View, d store.Device, entries []store.Entry, today forms.Day) ([]fact, error) {
+	k := s.ink()
+	all, err := v.Marks(d.Site, today)
+	var out []fact
+	for _, m := range all {
+		i := slices.IndexFunc(d.Due, func(due store.Due) bool { return due.Task == m.Task })
+		if m.Kind != d.Kind || i < 0 {
+			continue
+		}
+		one, due := fact{Name: k.say("marks.fact")}, d.Due[i]
+		now, _ := m.On(today)
+		switch last, ok := m.On(due.Last); {
+		case due.Last == forms.NoDay || !ok:
+			one.Value = k.say("marks.fact_none", "now", now.Word)
+		case !putOn(entries, m.Task, due.Last):
+			one.Value = k.say("marks.fact_left_off", "word", last.Word, "day", k.day(due.Last))
+		case due.State == forms.Overdue:
+			one.Value = k.say("marks.fact_old", "word", last.Word, "day", k.day(due.Due))
+		default:
+			one.Value = k.say("marks.fact_good", "word", last.Word, "on", k.day(due.Last), "day", k.day(due.Due))
+		}
+		one.Href = planHref(due.Plan, "")
+		out = append(out, one)
+	}
+	return out, err
+}
+
+// putOn says whether the mark was put on after the test of a day: it was, where nobody says otherwise.
+func putOn(entries []store.Entry, task string, day forms.Day) bool {
+	for _, e := range entries {
+		if r, asked := e.Body.Readings["mark"]; asked && e.Task == task && e.Day == day && e.Withdrawn == nil {
+			return r.Value == "yes"
+		}
+	}
+	return true
 }

@@ -6,7 +6,7 @@ import { dueIn, dueNow, grouped, matches } from "./list.mjs";
 import { showMoment } from "./days.mjs";
 import { toDevice } from "./route.mjs";
 import { showTag } from "./tag.mjs";
-import { tagTyped } from "./tag-typed.mjs";
+import { pageRead, tagTyped } from "./tag-typed.mjs";
 import { Camera } from "./field-scan.mjs";
 import { openDefects } from "./defect-work.mjs";
 import { DefectMark } from "./field-failed.mjs";
@@ -40,7 +40,7 @@ export function DevicesPage({ app, site }) {
       <p class="beside pad counts"><span>${walkWords(app, countsOf(site, app.skipped(site)))}</span><a href=${`#/round/${encodeURIComponent(code)}`}>${say("walk.round")}</a></p>
       <${RoundRows} app=${app} rounds=${app.roundsOf(site).map((round) => ({ site, round }))} />
       <div class="filter">
-        ${scan && html`<${Camera} app=${app} onTag=${(tag) => app.go(`#tag=${tag}`)} onClose=${() => setScan(false)} />`}
+        ${scan && html`<${Camera} app=${app} read=${pageRead} onTag=${(page) => app.go(page)} onClose=${() => setScan(false)} />`}
         <div class="beside"><label class="find"><span class="unseen">${say("field.search")}</span><input type="search" value=${typed} placeholder=${say("field.search")} autocomplete="off" aria-invalid=${error ? "true" : null} onInput=${(e) => { setTyped(e.currentTarget.value); setMost(PAGEFUL); }} /></label>
           ${!scan && html`<button type="button" class="big" onClick=${() => setScan(true)}>${say("scan.scan")}</button>`}</div>
         ${error && html`<p class="bad" role="alert">${say(error)}</p>`}

@@ -15,7 +15,7 @@ export function FindPage({ app }) {
   const [typed, setTyped] = useState("");
   const found = typed.trim() === "" ? [] : app.search((d, p) => matches(d, p, typed, say(`kind.${d.kind}`)), MOST + 1);
   return html`<${Where} app=${app} title=${say("scan.title")} back="#/" />
-    <main><div class="filter"><${TagTaker} app=${app} onTag=${(tag) => app.go(`#tag=${tag}`)} />
+    <main><div class="filter"><${TagTaker} app=${app} onTag=${(tag) => app.go(`#tag=${tag}`)} onPage=${(page) => app.go(page)} />
       <label class="find"><span class="unseen">${say("scan.place")}</span><input type="search" value=${typed} placeholder=${say("scan.place")} autocomplete="off" onInput=${(e) => setTyped(e.currentTarget.value)} /></label></div>
       ${typed.trim() !== "" && found.length === 0 && html`<p class="hint pad">${say("field.nothing_found")}</p>`}
       <ul class="rows">${found.slice(0, MOST).map(({ site, device, place }) => html`<${FoundRow} app=${app} key=${device.id} site=${site} device=${device} place=${place} href=${toDevice(device.id)} />`)}</ul>

@@ -3,10 +3,10 @@
 
 import { html, useEffect, useRef, useState } from "./vendor/htm-preact.mjs";
 import { codeReader } from "./scan-reader.mjs";
-import { tagTyped } from "./tag-typed.mjs";
+import { pageRead, tagTyped } from "./tag-typed.mjs";
 
-/** props: app, onTag(tag), label (of the field). */
-export function TagTaker({ app, onTag, label }) {
+/** props: app, onTag(tag), onPage(its page's address) where the code of a round's sheet will do as well, label (of the field). */
+export function TagTaker({ app, onTag, onPage, label }) {
   const { say } = app;
   const [typed, setTyped] = useState("");
   const [looking, setLooking] = useState(false);
@@ -17,7 +17,7 @@ export function TagTaker({ app, onTag, label }) {
     if (tag) { setTyped(""); setLooking(false); onTag(tag); }
   };
   return html`<div class="taker">
-    ${looking && html`<${Camera} app=${app} onTag=${(tag) => { setLooking(false); onTag(tag); }} onClose=${() => setLooking(false)} />`}
+    ${looking && html`<${Camera} app=${app} read=${onPage ? pageRead : labelIn} onTag=${(value) => { setLooking(false); (onPage ?? onTag)(value); }} onClose=${() => setLooking(false)} />`}
     <div class="beside"><label class="find"><span class="unseen">${label ?? say("scan.type")}</span>
       <input value=${typed} placeholder=${label ?? say("scan.type")} autocapitalize="characters" autocomplete="off" spellcheck="false" aria-invalid=${error ? "true" : null} onInput=${(e) => type(e.currentTarget.value)} /></label>
       ${!looking && html`<button type="button" class="big" onClick=${() => setLooking(true)}>${say("scan.scan")}</button>`}</div>

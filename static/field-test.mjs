@@ -120,6 +120,7 @@ function withOne(answers, code, answer) {
 /** A question in the words of the device kind; the trip time is asked "at 6.8 mA", since its limit belongs to that current. */
 function titleAt(app, ask, test) {
   const current = test.walked.readings.test_current_ma?.value;
+  if (ask.reading === "mark" && test.mark) return html`${app.say("field.mark_put_on")} <b class=${`mark ${test.mark.colour ?? ""}`}>${test.mark.word}</b> <span class="quiet">${app.say("field.mark_days", { from: showDay(app, test.mark.from), until: showDay(app, test.mark.until) })}</span>`;
   const own = ask.texts?.[test.device.kind] ?? ask.text;
   if (own) return app.say(own);
   if (ask.reading !== "trip_time_ms" || typeof current !== "number") return undefined;

@@ -25,6 +25,11 @@ export function parseRoute(hash, path = "") {
 }
 
 export const toSite = (code) => `#/site/${encodeURIComponent(code)}`;
+/** The page of a round whose code was read off its sheet, whatever host the code names; null where it is none. */
+export function roundRead(text) {
+  const m = /\/field#\/round\/([A-Z0-9-]{2,12})\/([0-9a-f]{8}(?:-[0-9a-f]{4}){3}-[0-9a-f]{12})$/.exec(text ?? "");
+  return m ? toRound(m[1], m[2]) : null;
+}
 /** The page of a round made in the office; without one, the site's. */
 export const toRound = (code, round) => (round ? `#/round/${encodeURIComponent(code)}/${round}` : toSite(code));
 export const toDevice = (id) => `#/device/${id}`;

@@ -1,7 +1,7 @@
 // What somebody typed or scanned, taken as a label's tag where it is meant as one. Pure.
 
 import { parseTag } from "./tag.mjs";
-import { bareTag } from "./route.mjs";
+import { bareTag, roundRead } from "./route.mjs";
 
 /**
  * {tag} where it is one; {error: words key} where it was meant as one and its check character does not fit; {} where it is
@@ -15,4 +15,10 @@ export function tagTyped(text, { whole = false } = {}) {
   const bare = bareTag(text);
   if (bare.length < 7 || !/\d/.test(text) || /\s\S+\s\S+\s\S+\s/.test(text)) return {};
   return { error: bare.length > 7 ? "scan.too_long" : "scan.check" };
+}
+
+/** The page of what a code names, a label or the sheet of a round: {value: "#tag=K7QM2P3"} or {error}. */
+export function pageRead(text) {
+  const { tag, error } = tagTyped(text, { whole: true }), page = roundRead(text) ?? (tag && `#tag=${tag}`);
+  return page ? { value: page } : { error };
 }

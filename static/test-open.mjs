@@ -27,7 +27,7 @@ export function testOpener(app, now) {
     const judged = { form, limitSet, given };
     const verdict = judgeWalked(judged, walked);
     return {
-      site, device, place, form, draft, instruments, limitSet, given, walked, verdict, today: site.today,
+      site, device, place, form, draft, instruments, limitSet, given, walked, verdict, today: site.today, mark: markFor(site, device, task),
       firstInRoom: site.once(`first ${id}`, () => firstInRoom(site, place)),
       ...app.placeOnWalk(site, { device: id, task }, Boolean(draft.corrects)),
       loads: site.once(`loads ${id}`, () => criticalLoads(site.devices, site.places, device)),
@@ -38,6 +38,11 @@ export function testOpener(app, now) {
       aboutAt: (ask, at) => about(judged, walked, verdict, ask, at),
     };
   };
+}
+
+/** The mark put on today after a test: {word, colour, from, until}; undefined where none is. */
+export function markFor({ snapshot, today }, device, task) {
+  return snapshot.marks?.find((m) => m.kind === device.kind && m.task === task)?.periods.find((p) => p.from <= today && today <= p.until);
 }
 
 /** Optional measurements and long choices no must limit waits for are one line until somebody wants them. */

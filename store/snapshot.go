@@ -23,6 +23,7 @@ type Snapshot struct {
 	LimitSets   []*forms.LimitSet `json:"limit_sets"` // revision in force today of each; the site's own before the organisation's
 	Instruments []Instrument      `json:"instruments"`
 	Rounds      []SnapshotRound   `json:"rounds,omitempty"` // made in the office, neither accepted nor called off
+	Marks       []SnapshotMark    `json:"marks,omitempty"`  // put on what was tested
 }
 
 // SnapshotSite is the site itself.
@@ -131,6 +132,9 @@ func (v *View) Snapshot(site string, on forms.Day) (Snapshot, error) {
 	}
 	s.LimitSets = v.limitSetsOn(sv, on)
 	if s.Rounds, err = v.snapshotRounds(sv); err != nil {
+		return s, err
+	}
+	if s.Marks, err = v.snapshotMarks(sv.ID, on); err != nil {
 		return s, err
 	}
 	all, err := v.Instruments()

@@ -10,6 +10,7 @@ import (
 	"os"
 	"os/exec"
 	"path/filepath"
+	"slices"
 	"strings"
 	"testing"
 	"time"
@@ -21,6 +22,7 @@ import (
 	"tripwell/export/register"
 	"tripwell/forms"
 	"tripwell/store"
+	"tripwell/store/record"
 )
 
 var everything = store.Scope{Role: "owner", All: true}
@@ -277,4 +279,34 @@ func codes(t *testing.T, page image.Image) (texts []string) {
 		texts = append(texts, r.GetText())
 	}
 	return texts
+}
+
+// A round made in the office carries a code that opens it on a phone, and says of each place when TEST may be pressed.
+func TestRoundSheet_OpensItsRoundOnAPhone(t *testing.T) {
+	s := open(t)
+	due := round(t, s, RoundAsk{Task: forms.TaskInstrument})
+	first := due.Stops[0].Device
+	id := record.NamedID("round", "paper")
+	for _, d := range []store.Draft{
+		{Kind: "place.set", Log: first.Site, Subject: first.Place.ID, By: s.ID(), Body: map[string]any{"set": map[string]any{"test_from": "05:30", "test_until": "07:00", "whom_to_tell": "Pool technician"}}},
+		{Kind: "round.made", Log: first.Site, Subject: id, By: s.ID(), Body: map[string]any{"set": map[string]any{"stops": []string{first.ID + "/instrument"}}}},
+	} {
+		if _, err := s.Append(context.Background(), d); err != nil {
+			t.Fatal(err)
+		}
+	}
+	r := round(t, s, RoundAsk{Round: id})
+	var pdf bytes.Buffer
+	if err := Print(&pdf, r, sizes[1]); err != nil {
+		t.Fatal(err)
+	}
+	text, pages := look(t, pdf.Bytes())
+	for _, want := range []string{"only between 05:30 and 07:00.", "Tell first: Pool technician.", store.RoundCode(id), "Opens this round on a phone"} {
+		if !strings.Contains(text, want) {
+			t.Errorf("the sheet does not say %q:\n%s", want, text)
+		}
+	}
+	if got := codes(t, pages[0]); !slices.Contains(got, s.URL()+"/field#/round/"+r.Site.Code+"/"+id) {
+		t.Errorf("codes on the sheet: %v", got)
+	}
 }

@@ -2,6 +2,7 @@ package paper
 
 import (
 	"fmt"
+	"net/url"
 	"slices"
 	"strings"
 
@@ -20,7 +21,9 @@ type Round struct {
 	Task  string    // "" = all tasks
 	Demo  bool
 	Code  string // of a round made in the office, which its rows come back with; "" for a list of what is due
-	Stops []Stop
+	// Address opens that round on a phone; "" where there is none.
+	Address string
+	Stops   []Stop
 }
 
 // Stop is one test of one device.
@@ -100,6 +103,9 @@ func (r *Round) made(v *store.View, ask RoundAsk) error {
 		return err
 	}
 	r.Code, r.Until = round.Code, round.Until
+	if ask.URL != "" {
+		r.Address = strings.TrimSuffix(ask.URL, "/") + "/field#/round/" + url.PathEscape(r.Site.Code) + "/" + round.ID
+	}
 	every := RoundAsk{Until: forms.NoDay, On: ask.On, URL: ask.URL}
 	for _, s := range round.Stops {
 		if s.State == store.StopDone || s.Retired {

@@ -145,6 +145,9 @@ func (p *roundPrint) header() {
 	p.y += 1.5
 }
 
+// roundCodeBox is how large the code is printed that opens a round on a phone, in mm: a whole address needs small modules.
+const roundCodeBox = 26
+
 // cautions prints, once, what the forms say before their steps.
 func (p *roundPrint) cautions() {
 	var keys []string
@@ -158,16 +161,25 @@ func (p *roundPrint) cautions() {
 		}
 	}
 	keys = append(keys, "not_lockout", "licensed")
-	p.text(left, p.y+2.6, p.room(), "sansB", 8, p.words.Say("paper.round.before"))
+	top, room := p.y, p.room()
+	if p.round.Address != "" {
+		room -= roundCodeBox + 3
+		p.code(p.round.Address, p.size.W-right-roundCodeBox, top, roundCodeBox)
+		p.text(p.size.W-right-roundCodeBox, top+roundCodeBox+2.6, roundCodeBox, "sans", 6.5, p.words.Say("paper.round.scan"))
+	}
+	p.text(left, p.y+2.6, room, "sansB", 8, p.words.Say("paper.round.before"))
 	p.y += 4
 	for _, key := range keys {
-		for i, line := range p.pen.Lines("sans", 7.5, p.room()-4, p.words.Say("caution."+key)) {
+		for i, line := range p.pen.Lines("sans", 7.5, room-4, p.words.Say("caution."+key)) {
 			if i == 0 {
 				p.text(left, p.y+2.8, 4, "sansB", 7.5, "–")
 			}
-			p.text(left+3, p.y+2.8, p.room()-3, "sans", 7.5, line)
+			p.text(left+3, p.y+2.8, room-3, "sans", 7.5, line)
 			p.y += 3.4
 		}
+	}
+	if p.round.Address != "" {
+		p.y = max(p.y, top+roundCodeBox+3)
 	}
 	p.y += 2
 }

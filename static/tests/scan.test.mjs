@@ -1,7 +1,7 @@
 import test from "node:test";
 import assert from "node:assert/strict";
 import { codeReader } from "../scan-reader.mjs";
-import { tagTyped } from "../tag-typed.mjs";
+import { pageRead, tagTyped } from "../tag-typed.mjs";
 import { checkCharacter } from "../tag.mjs";
 
 const good = `K7QM2P${checkCharacter("K7QM2P")}`;
@@ -41,4 +41,11 @@ test("code reader: elsewhere a decoder is loaded; a picture without a code is nu
   assert.deepEqual(drawn, [720, 360]);
   decode = (x) => `read ${x}`;
   assert.equal(await read({ videoWidth: 100, videoHeight: 50 }), "read picture");
+});
+
+test("code read: a label opens its device, the sheet of a round its round, whatever host they name", () => {
+  const round = "0197b2c0-0000-7000-8000-00000000000a";
+  assert.deepEqual(pageRead(`HTTPS://ELSEWHERE.INVALID/T/${good}`), { value: `#tag=${good}` });
+  assert.deepEqual(pageRead(`https://elsewhere.invalid/field#/round/KILN-LANE/${round}`), { value: `#/round/KILN-LANE/${round}` });
+  for (const text of [`https://elsewhere.invalid/field#/round/KILN-LANE/${round}/x`, "https://elsewhere.invalid/field#/people", "javascript:alert(1)//field#/round/A/1"]) assert.ok(pageRead(text).error, text);
 });

@@ -28,7 +28,7 @@ func (b *builder) entryOf(d *device, task string, f fate, at time.Time, in *inst
 		if task == forms.TaskInstrument && d.residualMA > 0 {
 			e.Series = d.multiples(r)
 		}
-		if task == forms.TaskReceptacle && f != burnt {
+		if task == forms.TaskReceptacle && f != burnt && hasFaces(d.kind) {
 			e.Series = d.faces(f, r)
 		}
 		known := d.seen(f)
@@ -82,7 +82,7 @@ func (d *device) seen(f fate) map[string]forms.Reading {
 		"condition": forms.Answer("sound"), "found": forms.Answer("on"), "marking_present": forms.Answer("yes"),
 		"button_trips": forms.Answer("yes"), "load_dead_when_tripped": forms.Answer("yes"), "button_resets": forms.Answer("yes"),
 		"restored": forms.Answer("yes"), "loads_disconnected": forms.Answer("yes"),
-		"ground_continuous": forms.Answer("yes"), "ground_at_terminal": forms.Answer("yes"),
+		"ground_continuous": forms.Answer("yes"), "ground_at_terminal": forms.Answer("yes"), "mark": forms.Answer("yes"),
 		"wiring": forms.Answer("correct"), "wiring_method": forms.Answer("lamps"),
 	}
 	if f.fails() {

@@ -92,6 +92,7 @@ func (b *builder) all(progress func(done, total int)) error {
 	}
 	b.stories()
 	b.defects()
+	b.asked()
 	b.madeRounds()
 	for day := b.first - setupDays; day < b.today; day++ {
 		if err := b.ctx.Err(); err != nil {

@@ -46,6 +46,9 @@ func (b *builder) fate(d *device, task string, day forms.Day) fate {
 		}
 		return sound
 	}
+	if d.kind == forms.CordSet {
+		return sound
+	}
 	r := chance("fate", d.id, task, day.String())
 	x := r.Float64()
 	if x < 0.013 && d.room != "" && d.kind != "rcd" && d.kind != "rcbo" {

@@ -248,5 +248,9 @@ func ottermoorSpots() []spot {
 	for _, name := range []string{"North lawn", "South lawn", "Car park, lamp 1", "Car park, lamp 2", "Car park, lamp 3", "Bicycle shed", "Roof, air handler", "Roof, de-icing"} {
 		add(plant, spot{building: "Outdoors", floor: "Ground", room: "Grounds", name: name})
 	}
-	return append(out, spot{name: "Pool vacuum lead", kind: "portable-gfci", breakerA: 15}, spot{name: "Leak-search pump lead", kind: "portable-gfci", breakerA: 15})
+	out = append(out, spot{name: "Pool vacuum lead", kind: "portable-gfci", breakerA: 15}, spot{name: "Leak-search pump lead", kind: "portable-gfci", breakerA: 15})
+	for i := 1; i <= 8; i++ {
+		out = append(out, spot{name: fmt.Sprintf("Workshop lead %d", i), kind: "cord-set", breakerA: 15})
+	}
+	return out
 }

@@ -48,7 +48,7 @@ type instrument struct {
 
 // setUp makes people, phones, instruments, register and what is known from before.
 func (b *builder) setUp() error {
-	for _, step := range []func() error{b.readRules, b.setPeople, b.setInstruments, b.setSites, b.importHistory} {
+	for _, step := range []func() error{b.readRules, b.setPeople, b.setInstruments, b.setSites, b.setMarks, b.importHistory} {
 		if err := step(); err != nil {
 			return err
 		}

@@ -114,6 +114,10 @@ func (b *builder) dueTask(d *device, day forms.Day) string {
 		if soon("receptacle", 365) {
 			return "receptacle"
 		}
+	case "cord-set":
+		if soon("receptacle", 92) {
+			return "receptacle"
+		}
 	case "rcd", "rcbo":
 		if soon("instrument", 365) {
 			return "instrument"

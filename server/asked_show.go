@@ -4,9 +4,11 @@ import (
 	"cmp"
 	"net/http"
 	"net/url"
+	"strings"
 
 	"github.com/labstack/echo/v4"
 
+	"tripwell/forms"
 	"tripwell/store"
 )
 
@@ -50,14 +52,22 @@ func (s *Server) buildAsked(v *store.View, site store.Site, view *askedPage) err
 		return err
 	}
 	for _, o := range occasions {
-		view.Occasions = append(view.Occasions, askedRow{What: s.cause(o.Cause), Days: k.near(o.On, today), Where: s.howMany(o.Devices), Text: o.Text, By: v.PersonName(o.By)})
+		where, err := s.whichDevices(v, o.Devices, today)
+		if err != nil {
+			return err
+		}
+		view.Occasions = append(view.Occasions, askedRow{What: s.cause(o.Cause), Days: k.near(o.On, today), Where: where, Text: o.Text, By: v.PersonName(o.By)})
 	}
 	pauses, err := v.Pauses(site.ID)
 	if err != nil {
 		return err
 	}
 	for _, p := range pauses {
-		row := askedRow{Days: k.say("plans.mark_days", "from", k.day(p.From), "until", k.day(p.Until)), Where: s.howMany(len(p.Devices)), Text: p.Reason, By: v.PersonName(p.By), Now: p.Holds(today)}
+		where, err := s.whichDevices(v, p.Devices, today)
+		if err != nil {
+			return err
+		}
+		row := askedRow{Days: k.say("plans.mark_days", "from", k.day(p.From), "until", k.day(p.Until)), Where: where, Text: p.Reason, By: v.PersonName(p.By), Now: p.Holds(today)}
 		if view.Change {
 			row.Href = siteHref(site) + "/pause?pause=" + url.QueryEscape(p.ID)
 		}
@@ -74,9 +84,28 @@ func (s *Server) cause(cause string) string {
 	return cmp.Or(cause, dash)
 }
 
-func (s *Server) howMany(devices int) string {
-	if devices == 0 {
-		return s.words.Say("asked.whole")
+// devicesNamed is how many devices a list names one by one.
+const devicesNamed = 3
+
+// whichDevices names the devices something was said of, or says how many they are.
+func (s *Server) whichDevices(v *store.View, ids []string, today forms.Day) (string, error) {
+	switch {
+	case len(ids) == 0:
+		return s.words.Say("asked.whole"), nil
+	case len(ids) > devicesNamed:
+		return s.words.Say("asked.devices", "n", len(ids)), nil
 	}
-	return s.words.Say("office.overview.sum_devices", "n", devices)
+	names := make([]string, 0, len(ids))
+	for _, id := range ids {
+		d, err := v.Device(id, today)
+		switch {
+		case err == nil:
+			names = append(names, s.spotIn(d.DeviceRow))
+		case isRefusal(err):
+			names = append(names, s.words.Say("office.round.unknown_device"))
+		default:
+			return "", err
+		}
+	}
+	return strings.Join(names, "; "), nil
 }

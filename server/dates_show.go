@@ -1,6 +1,7 @@
 package server
 
 import (
+	"cmp"
 	"net/http"
 
 	"github.com/labstack/echo/v4"
@@ -153,7 +154,7 @@ func (p *datesPage) add(group dateGroup, row dateRow) {
 func (s *Server) dateRow(row store.DueRow, names map[string]string, ask datesAsk) dateRow {
 	k := s.ink()
 	out := dateRow{
-		Href: "/devices/" + row.Device.ID, Spot: s.spot(row.Device), Tag: k.tag(row.Device.Tag), Where: row.Device.Place.Context(), Task: k.named("task", row.Due.Task),
+		Href: "/devices/" + row.Device.ID, Spot: s.spot(row.Device), Tag: k.tag(row.Device.Tag), Where: cmp.Or(row.Device.Place.Context(), row.Device.Where), Task: k.named("task", row.Due.Task),
 		State: k.named("state", row.State), Last: k.day(row.Due.Last), Late: row.State == "overdue",
 	}
 	out.Where = joined(out.Where, s.whereNow(row.Device, names))

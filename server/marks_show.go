@@ -1,6 +1,7 @@
 package server
 
 import (
+	"cmp"
 	"net/http"
 	"net/url"
 	"slices"
@@ -63,7 +64,7 @@ func (s *Server) buildMarks(v *store.View, p *forms.Plan, site string, today for
 			view.More = k.say("office.dates.more", "n", count(datesShown))
 			continue
 		}
-		old := dateRow{Href: "/devices/" + url.PathEscape(row.Device.ID), Spot: s.spot(row.Device), Tag: k.tag(row.Device.Tag), Where: row.Device.Place.Context(), State: k.named("state", row.State), Last: k.say("marks.no_mark"), Late: row.State == forms.Overdue}
+		old := dateRow{Href: "/devices/" + url.PathEscape(row.Device.ID), Spot: s.spot(row.Device), Tag: k.tag(row.Device.Tag), Where: cmp.Or(row.Device.Place.Context(), row.Device.Where), State: k.named("state", row.State), Last: k.say("marks.no_mark"), Late: row.State == forms.Overdue}
 		if row.Last != forms.NoDay {
 			old.Last = period.Word
 		}
@@ -74,7 +75,11 @@ func (s *Server) buildMarks(v *store.View, p *forms.Plan, site string, today for
 	for _, period := range []forms.MarkPeriod{before, now, p.Marks.After(now)} {
 		row := markRow{Word: period.Word, Colour: period.Colour, Now: period == now, Days: k.say("plans.mark_days", "from", k.day(period.From), "until", k.day(period.Until))}
 		if until, known := last[period.From]; known {
-			row.Days = k.say("marks.good_until", "days", row.Days, "day", k.day(until))
+			key := "marks.good_until"
+			if until < today {
+				key = "marks.old_since"
+			}
+			row.Days = k.say(key, "days", row.Days, "day", k.day(until))
 		}
 		view.Marks = append(view.Marks, row)
 	}

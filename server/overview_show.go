@@ -21,6 +21,7 @@ type overviewPage struct {
 	Doubted        string // phones know another book than this one
 	Sums           []sum
 	Sites          []siteRow
+	Todo           []link // what waits for a manager beside the defects
 	Decide         []decision
 	More           []link
 	None, NewSite  string
@@ -75,7 +76,10 @@ func (s *Server) buildOverview(v *store.View, view *overviewPage) error {
 		if one.Overdue > worst.Overdue {
 			worst = one
 		}
-		view.Sites = append(view.Sites, s.siteRow(one, s.today(one.Site)))
+		view.Sites = append(view.Sites, s.siteRow(one, defects.Devices, s.today(one.Site)))
+	}
+	if err := s.todo(v, sums, view); err != nil {
+		return err
 	}
 	if err := s.decide(v, sites, view); err != nil {
 		return err

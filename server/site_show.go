@@ -58,7 +58,11 @@ func (s *Server) sitesShow(c echo.Context) error {
 	err := s.store.View(scope(c), func(v *store.View) error {
 		sums, err := v.SitesSums()
 		for _, one := range sums {
-			view.Sites = append(view.Sites, s.siteRow(one, s.today(one.Site)))
+			defects, err := v.DefectSums(one.Site.ID)
+			if err != nil {
+				return err
+			}
+			view.Sites = append(view.Sites, s.siteRow(one, defects.Devices, s.today(one.Site)))
 		}
 		return err
 	})
@@ -75,14 +79,15 @@ func (s *Server) sitesShow(c echo.Context) error {
 	return s.page(c, http.StatusOK, "sites.html", view)
 }
 
-func (s *Server) siteRow(sums store.SiteSums, today forms.Day) siteRow {
+// siteRow says how a site stands; failed is how many devices have an open defect.
+func (s *Server) siteRow(sums store.SiteSums, failed int, today forms.Day) siteRow {
 	k := s.ink()
 	row := siteRow{
 		Href: siteHref(sums.Site), Name: sums.Site.Name, Code: sums.Site.Code,
-		Devices: count(sums.Devices), Failed: count(sums.Failed), Overdue: count(sums.Overdue), Next: dash,
+		Devices: count(sums.Devices), Failed: count(failed), Overdue: count(sums.Overdue), Next: dash,
 	}
-	if sums.Failed > 0 {
-		row.FailedHref = row.Href + "?state=failed"
+	if failed > 0 {
+		row.FailedHref = "/defects?site=" + url.QueryEscape(cmp.Or(sums.Site.Code, sums.Site.ID))
 	}
 	if sums.Overdue > 0 {
 		row.OverdueHref = row.Href + "?state=overdue"

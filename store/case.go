@@ -13,7 +13,7 @@ import (
 type OccasionRow struct {
 	ID string
 	forms.Occasion
-	Devices int // 0: the whole site
+	Devices []string // none: the whole site
 	By      string
 	At      time.Time
 	Text    string
@@ -38,7 +38,7 @@ func (v *View) Occasions(site string) ([]OccasionRow, error) {
 	err = v.scan(bktOccasion, put32(nil, sv.ord), func(_, row []byte) error {
 		u := unpacker{b: row}
 		o := u.occasion()
-		one := OccasionRow{ID: o.record.String(), Occasion: o.Occasion, Devices: int(u.uint())}
+		one := OccasionRow{ID: o.record.String(), Occasion: o.Occasion}
 		if u.bad {
 			return errPacked
 		}
@@ -46,9 +46,12 @@ func (v *View) Occasions(site string) ([]OccasionRow, error) {
 		if err != nil {
 			return err
 		}
-		var body struct{ Text string }
+		var body struct {
+			Text    string
+			Devices []string
+		}
 		_ = json.Unmarshal(r.Body, &body) // what is no text was refused
-		one.By, one.At, one.Text = r.By, r.At, body.Text
+		one.By, one.At, one.Text, one.Devices = r.By, r.At, body.Text, body.Devices
 		out = append(out, one)
 		return nil
 	})

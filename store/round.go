@@ -155,6 +155,38 @@ func (v *View) Rounds(site string) ([]Round, error) {
 	return out, nil
 }
 
+// RoundsWaiting names the rounds of the scope, made or walked since a moment, that have ended and wait to be accepted. It counts no
+// stops.
+func (v *View) RoundsWaiting(since time.Time) (ids []string, err error) {
+	sites, err := v.Sites()
+	if err != nil {
+		return nil, err
+	}
+	for _, s := range sites {
+		sv, err := v.open(s.ID)
+		if err != nil {
+			return nil, err
+		}
+		err = v.each(sv, ofRound, func(n uint32, t *thing) error {
+			if t.born != 0 && t.born < since.UnixMilli() {
+				return nil
+			}
+			r := Round{ID: t.id.String(), People: textList(t.value("people")), Counts: map[string]int{}}
+			if err := v.roundSaid(sv, n, &r); err != nil {
+				return err
+			}
+			if len(r.Closings) > 0 && r.Closings[0].At.After(since) && r.stateOf(string(t.value("off")) == "true") == RoundEnded {
+				ids = append(ids, r.ID)
+			}
+			return nil
+		})
+		if err != nil {
+			return nil, err
+		}
+	}
+	return ids, nil
+}
+
 // findRound finds a round within the scope by its id.
 func (v *View) findRound(round string) (*siteView, uint32, *thing, error) {
 	id := parseID(round)

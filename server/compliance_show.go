@@ -20,6 +20,8 @@ type compliancePage struct {
 	Standing                        []standingLine
 	StandingHead                    string
 	Actions                         []link
+	KnownText                       string // what as known now or then leaves in or out
+	Files                           []link
 }
 
 // keptBar is one month as a bar; its figures stand in the table of months.
@@ -42,6 +44,7 @@ type standingLine struct{ Task, Kind, Upcoming, Due, Graced, Overdue, Never, Pau
 type complianceAsk struct {
 	site     string
 	from, to forms.Day
+	today    forms.Day
 	then     bool
 }
 
@@ -51,7 +54,7 @@ const keptDays = 366 * 3
 func (s *Server) complianceShow(c echo.Context) error {
 	k, today := s.ink(), forms.DayOf(s.store.Now())
 	view := compliancePage{Frame: s.frame(c, k.say("kept.title"), "dates"), From: c.QueryParam("from"), To: c.QueryParam("to")}
-	ask := complianceAsk{site: c.QueryParam("site"), from: forms.MonthStart(forms.MonthOf(today) - 11), to: today, then: c.QueryParam("known") == "then"}
+	ask := complianceAsk{today: today, site: c.QueryParam("site"), from: forms.MonthStart(forms.MonthOf(today) - 11), to: forms.MonthStart(forms.MonthOf(today)+1) - 1, then: c.QueryParam("known") == "then"}
 	for _, one := range []struct {
 		typed string
 		day   *forms.Day
@@ -98,6 +101,8 @@ func (s *Server) buildCompliance(v *store.View, ask complianceAsk, view *complia
 		known = "then"
 	}
 	view.Known = choices(known, "now", k.say("kept.known_now"), "then", k.say("kept.known_then"))
+	view.KnownText = k.say("kept.explained_" + known)
+	view.links(k, ask)
 	kept, err := keptOver(v, ask)
 	if err != nil {
 		return err
@@ -116,6 +121,25 @@ func (s *Server) buildCompliance(v *store.View, ask complianceAsk, view *complia
 	}
 	view.Under = k.say("kept.under", "days", days, "due", count(all.Due()), "known", lowerFirst(k.say("kept.known_"+known)))
 	return nil
+}
+
+// links lead to the same span as it was known otherwise, and to its months as files.
+func (p *compliancePage) links(k ink, ask complianceAsk) {
+	query := url.Values{"from": {p.From}, "to": {p.To}}
+	if ask.site != "" {
+		query.Set("site", ask.site)
+	}
+	if p.Role != "crew" {
+		for _, as := range []string{"csv", "jsonl"} {
+			p.Files = append(p.Files, link{Href: "/table?sheet=compliance&as=" + as + "&" + query.Encode(), Text: k.say("kept.file_" + as)})
+		}
+	}
+	other := "then"
+	if ask.then {
+		other = "now"
+	}
+	query.Set("known", other)
+	p.Actions = append(p.Actions, link{Href: "/compliance?" + query.Encode(), Text: k.say("kept.see_" + other)})
 }
 
 // keptOver works the span out; as known then, each month as it was known at its own end.
@@ -204,7 +228,7 @@ func (s *Server) standingLines(rows []store.StandingRow, ask complianceAsk, view
 			sums[name][state] += n
 		}
 	}
-	view.StandingHead = k.say("kept.standing", "day", k.day(ask.to))
+	view.StandingHead = k.say("kept.standing", "day", k.day(min(ask.to, ask.today)))
 	for _, name := range sortedKeys(sums) {
 		n := sums[name]
 		view.Standing = append(view.Standing, standingLine{k.named("task", at[name].task), k.named("kind", at[name].kind), count(n[forms.Upcoming]), count(n[forms.DueNow]),

@@ -23,7 +23,8 @@ type ComplianceRow struct {
 	forms.Count
 }
 
-// StandingRow counts the dates of one task of one kind at one site by how they stood at the end of the last day asked for.
+// StandingRow counts the dates of one task of one kind at one site by how they stood at the end of the last day asked for, or
+// stand today where that lies ahead.
 type StandingRow struct {
 	Site, Task, Kind string
 	States           map[string]int // by state
@@ -123,17 +124,18 @@ func (r *complianceReader) device(n uint32, w *work) error {
 			}
 		}
 	}
-	if w.start > r.ask.To {
+	stand := min(r.ask.To, r.on) // of days ahead nobody knows how dates will stand
+	if w.start > stand {
 		return nil
 	}
-	for _, t := range schedule.Follow(until(c, r.ask.To), never) {
-		takeUntil(&t, all, r.ask.To)
+	for _, t := range schedule.Follow(until(c, stand), never) {
+		takeUntil(&t, all, stand)
 		if d, inUse := t.Next(); inUse {
 			key := standingKey{t.Task(), w.kind}
 			if r.standing[key] == nil {
 				r.standing[key] = map[string]int{}
 			}
-			r.standing[key][d.State(r.ask.To)]++
+			r.standing[key][d.State(stand)]++
 		}
 	}
 	return nil

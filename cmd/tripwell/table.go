@@ -11,7 +11,7 @@ type tableCmd struct {
 	folder
 	author
 	outFile
-	Sheet string `name:"sheet" required:"" placeholder:"SHEET" help:"Sheet of the workbook: register, entries, readings, flags, due or limits."`
+	Sheet string `name:"sheet" required:"" placeholder:"SHEET" help:"Sheet of the workbook, such as register, entries, readings, due, compliance, defects or limits; a wrong name lists all."`
 	As    string `name:"as" placeholder:"FORMAT" help:"csv or jsonl; by the file's name when left out."`
 	Site  string `name:"site" placeholder:"CODE" help:"Only this site; all sites when left out."`
 	period

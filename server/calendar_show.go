@@ -18,6 +18,7 @@ type calendarPage struct {
 	Before, After  link
 	Days           []string // names of the days of a week
 	Weeks          [][]calendarDay
+	Pauses         []string // of the month, with their reasons
 }
 
 // calendarDay says what was done on a day and whose last day it was.
@@ -26,6 +27,7 @@ type calendarDay struct {
 	Today                      bool
 	Done, Late, Missed, Coming string
 	Href                       string
+	Rounds                     []link
 }
 
 func (s *Server) calendarShow(c echo.Context) error {
@@ -49,11 +51,16 @@ func (s *Server) calendarShow(c echo.Context) error {
 	}
 	err = s.store.View(scope(c), func(v *store.View) error {
 		days, err := v.Days(site.ID, forms.MonthStart(month), forms.MonthStart(month+1)-1)
-		if err == nil {
-			s.calendarWeeks(days, site, today, &view)
-			view.Heading = k.say("kept.calendar", "site", site.Name, "month", k.month(month))
+		if err != nil {
+			return err
 		}
-		return err
+		rounds, err := s.calendarRounds(v, site)
+		if err != nil {
+			return err
+		}
+		s.calendarWeeks(days, rounds, site, today, &view)
+		view.Heading = k.say("kept.calendar", "site", site.Name, "month", k.month(month))
+		return s.calendarPauses(v, site, forms.MonthStart(month), forms.MonthStart(month+1)-1, &view)
 	})
 	if err != nil {
 		return err
@@ -66,11 +73,11 @@ func (s *Server) monthLink(site store.Site, month int32) link {
 }
 
 // calendarWeeks lays days out in weeks (ISO 8601: from Monday).
-func (s *Server) calendarWeeks(days []store.DayRow, site store.Site, today forms.Day, view *calendarPage) {
+func (s *Server) calendarWeeks(days []store.DayRow, rounds map[forms.Day][]link, site store.Site, today forms.Day, view *calendarPage) {
 	k, sum := s.ink(), store.DayRow{}
 	week := make([]calendarDay, (int(days[0].Day.Time().Weekday())+6)%7, 7)
 	for _, d := range days {
-		one := calendarDay{Number: strconv.Itoa(d.Day.Time().Day()), Name: k.longDay(d.Day), Today: d.Day == today}
+		one := calendarDay{Number: strconv.Itoa(d.Day.Time().Day()), Name: k.longDay(d.Day), Today: d.Day == today, Rounds: rounds[d.Day]}
 		say := func(n int, key string) string {
 			if n == 0 {
 				return ""
@@ -90,4 +97,36 @@ func (s *Server) calendarWeeks(days []store.DayRow, site store.Site, today forms
 		view.Weeks = append(view.Weeks, append(week, make([]calendarDay, 7-len(week))...))
 	}
 	view.Under = k.say("kept.calendar_under", "done", count(sum.InTime), "late", count(sum.Late), "missed", count(sum.Missed), "open", count(sum.Open))
+}
+
+// calendarRounds gives a site's rounds by the day they are planned for; those called off are left out.
+func (s *Server) calendarRounds(v *store.View, site store.Site) (map[forms.Day][]link, error) {
+	rounds, err := v.Rounds(site.ID)
+	out := map[forms.Day][]link{}
+	for _, r := range rounds {
+		if r.State != store.RoundOff && r.Day != forms.NoDay {
+			out[r.Day] = append(out[r.Day], link{Href: "/rounds/" + r.ID, Text: s.words.Say("kept.cell_round", "done", r.Counts[store.StopDone], "of", total(r.Counts))})
+		}
+	}
+	return out, err
+}
+
+// calendarPauses says which pauses fall into the month, and why.
+func (s *Server) calendarPauses(v *store.View, site store.Site, from, until forms.Day, view *calendarPage) error {
+	k := s.ink()
+	pauses, err := v.Pauses(site.ID)
+	if err != nil {
+		return err
+	}
+	for _, p := range pauses {
+		if p.From > until || p.Until < from {
+			continue
+		}
+		where, err := s.whichDevices(v, p.Devices, s.today(site))
+		if err != nil {
+			return err
+		}
+		view.Pauses = append(view.Pauses, k.say("kept.paused", "from", k.day(p.From), "until", k.day(p.Until), "where", where, "reason", p.Reason))
+	}
+	return nil
 }

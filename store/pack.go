@@ -105,8 +105,6 @@ func (u *unpacker) err() error {
 	return nil
 }
 
-func (p *packer) bool(v bool) { p.byte(bit(v)) }
-
 func bit(v bool) byte {
 	if v {
 		return 1

@@ -26,6 +26,8 @@ type recallRow struct {
 	Now, Then              mark
 	Href, Day, Spot, Where string
 	What, Share            string
+	Again                  mark // the test made again since
+	AgainHref              string
 }
 
 // recallShown is how many entries the page names; the form reaches all of them.
@@ -41,7 +43,11 @@ const (
 	reachAll   = "all"
 )
 
+// reaches tells whether a row is asked for again; what was tested again since is not.
 func reaches(reach string, r *store.RecallRow) bool {
+	if r.Again.Entry != "" {
+		return false
+	}
 	switch reach {
 	case reachFail:
 		return r.Code != "" && r.Margin < 0
@@ -81,8 +87,15 @@ func (s *Server) recallShow(c echo.Context) error {
 	k := s.ink()
 	view := recallPage{Frame: s.frame(c, k.say("office.recall.title"), "set-up"), Crumbs: []link{{Href: "/set-up", Text: k.say("office.setup.title")}, {Href: "/instruments/" + i.ID + "/past", Text: i.Name}}, Errors: s.foundErrors(d.Certificate.Errors)}
 	counts := map[string]int{}
+	again, fails := 0, 0
 	for n := range rows {
 		r := &rows[n]
+		if r.Again.Entry != "" {
+			again++
+		}
+		if r.Code != "" && r.Margin < 0 {
+			fails++
+		}
 		for _, reach := range []string{reachFail, reachClose, reachAll} {
 			if reaches(reach, r) {
 				counts[reach]++
@@ -94,16 +107,19 @@ func (s *Server) recallShow(c echo.Context) error {
 	}
 	view.Heading = k.say("office.recall.none", "name", i.Name)
 	if len(rows) > 0 {
-		view.Heading = k.say("office.recall.heading", "n", len(rows), "fail", count(counts[reachFail]))
+		view.Heading = k.say("office.recall.heading", "n", len(rows), "fail", count(fails))
 	}
 	view.Under = k.say("office.recall.under_first", "name", i.Name, "to", k.day(d.To))
 	if d.From != forms.NoDay {
 		view.Under = k.say("office.recall.under", "name", i.Name, "from", k.day(d.From), "to", k.day(d.To))
 	}
+	if again > 0 {
+		view.Under += " " + k.say("office.recall.again_n", "n", again)
+	}
 	if len(rows) > recallShown {
 		view.More = k.say("office.recall.more", "n", count(recallShown))
 	}
-	if view.Change && len(rows) > 0 {
+	if view.Change && len(rows) > again {
 		f, err := s.blankForm(nil)
 		if err != nil {
 			return err
@@ -119,6 +135,10 @@ func (s *Server) recallShow(c echo.Context) error {
 func (s *Server) recallRow(r *store.RecallRow) recallRow {
 	k := s.ink()
 	row := recallRow{Then: k.verdict(r.Result), Now: mark{"none", k.say("office.recall.not_concerned")}, Href: "/entries/" + r.Entry, Day: k.day(r.Day), Spot: s.spot(r.Device), Where: joined(r.Site.Name, r.Device.Place.Context())}
+	if r.Again.Entry != "" {
+		row.Again, row.AgainHref = k.verdict(r.Again.Result), "/entries/"+r.Again.Entry
+		row.Again.Word = k.say("office.recall.again", "day", k.day(r.Again.Day), "result", lowerFirst(row.Again.Word))
+	}
 	if r.Device.Kind == "" {
 		row.Spot = k.named("task", r.Task)
 	}

@@ -61,6 +61,13 @@ func TestRecall_FromTheCertificateToTheTests(t *testing.T) {
 		t.Error("the test that fails with the true figure is not due, or another one is")
 	}
 	r.submit(b, recall, ask.Encode()) // twice is once
+	// Tested again with another instrument: the page says so, and asks for it no more.
+	h.push(h.entry(r.devices[1], 5).bytes(t))
+	page = r.open(b, recall).body
+	wantIn(t, page, "1 was tested again since.", "tested again ", "the 1 in doubt")
+	if res := r.submit(b, recall, setAll(fieldsOf(t, page), "reach", "fail").Encode()); res.status == http.StatusSeeOther {
+		t.Error("what was tested again is made due once more")
+	}
 	crew := r.signIn(r.crew)
 	if res := r.open(crew, recall); res.status != http.StatusForbidden {
 		t.Errorf("the recall as crew: got %d", res.status)

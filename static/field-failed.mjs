@@ -22,7 +22,7 @@ export function FailedPage({ app, site, device, place }) {
     if (await app.write(site, [saidFact(kind, device, how.trim(), app.newId)], { drafts: [key], said })) app.go(then, { keep: true });
   };
   return html`<${Where} app=${app} title=${title} tag=${device.tag} context=${contextOf(app, device, place)} back=${toDevice(device.id)} />
-    <main><h2 class="task">${say("failed.title")}</h2>
+    <main><h2 class="task">${say(failedTask(device) ? "failed.title" : "failed.title_seen")}</h2>
       <${Defects} app=${app} device=${device} />
       <p class="caution">${say("caution.not_lockout")} ${say("caution.licensed")}</p>
       ${others.length > 0 && html`<p class="caution"><b>${say("failed.also_feeds", { circuit })}</b> ${others.join("; ")}</p>`}

@@ -1,7 +1,7 @@
 // An item that travels, on the phone: where it is now, brought here with one tap, and what is here from elsewhere.
 
 import { html } from "./vendor/htm-preact.mjs";
-import { contextOf, Foot, titleOf, Where } from "./field-parts.mjs";
+import { contextOf, Foot, LostPage, titleOf, Where } from "./field-parts.mjs";
 import { ChoiceField, TextField } from "./field-fields.mjs";
 import { FoundRow } from "./field-find.mjs";
 import { itemsHere, siteOf, travels, whereFacts } from "./items.mjs";
@@ -25,6 +25,7 @@ export function WhereItIs({ app, site, device }) {
 /** Another site, or the spot there in words. */
 export function BringPage({ app, site, device, place }) {
   const { say } = app;
+  if (!travels(device)) return html`<${LostPage} app=${app} text=${say("field.device_not_here")} />`;
   const key = `bring|${device.id}`, typed = app.pageDraft(key) ?? { at: siteOf(site.log, device), where: device.fields?.where ?? "" };
   const title = titleOf(app, device, place), facts = whereFacts({ depot: site.log, device, ...typed });
   const set = (change) => app.setPageDraft(key, site, { ...typed, ...change });

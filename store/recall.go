@@ -15,6 +15,7 @@ type RecallRow struct {
 	Result string // as it stands
 	Site   Site
 	Device DeviceRow
+	Again  LastTest // a later test of the same task that is not in doubt itself; Entry "" while there is none
 	forms.Recall
 }
 
@@ -29,6 +30,16 @@ func (v *View) Recall(ctx context.Context, instrument string, d Doubted) ([]Reca
 	for _, site := range sites {
 		if err := v.recallSite(ctx, site, instrument, d, &out); err != nil {
 			return nil, err
+		}
+	}
+	doubted := map[string]bool{}
+	for i := range out {
+		doubted[out[i].Entry] = true
+	}
+	for i := range out {
+		r := &out[i]
+		if last := r.Device.Last[r.Task]; !doubted[last.Entry] && last.Day >= r.Day && last.Result != "" && last.Result != forms.NotTested && last.Result != forms.Incomplete {
+			r.Again = last
 		}
 	}
 	forms.RankRecalls(out, func(r RecallRow) forms.Recall { return r.Recall })

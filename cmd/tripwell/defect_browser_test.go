@@ -210,10 +210,29 @@ func TestBrowser_CorrectionTakesTheDefectAway(t *testing.T) {
 	x.desk.Picture("corrected")
 }
 
-// A certificate finds an instrument reading too low: the tests it puts in doubt are ranked, and made due in one step.
-func TestBrowser_RecallMakesTestsDue(t *testing.T) {
+// Measured on the phone with an instrument that is found out of tolerance afterwards: the manager sees the test in doubt, makes
+// it due, the phone tests again with another instrument, and the recall says so.
+func TestBrowser_RecallFromThePhoneToTestedAgain(t *testing.T) {
 	chromium.Need(t)
-	x := newPair(t, demoFolder(t))
+	dir := demoFolder(t)
+	d := soundGFCI(t, dir, 1)[0].ID
+	x := newPair(t, dir)
+	measure := func(instrument, current string) {
+		t.Helper()
+		x.at("#/test/" + d + "/instrument")
+		x.phone.Until("the instrument "+instrument, fmt.Sprintf(`((e) => { const o = e && [...e.options].find((o) => o.text.startsWith(%q)); if (!o) return false; e.value = o.value; e.dispatchEvent(new Event("change", { bubbles: true })); return true })(document.querySelector("#instrument"))`, instrument))
+		for code, word := range map[string]string{"condition": "Sound", "found": "On", "wiring": "Correct", "ground_continuous": "Yes", "button_trips": "Yes"} {
+			x.pick(code, word)
+		}
+		x.pick("button_resets", "Yes")
+		x.set("#in-trip_current_ma", current)
+		x.set("#in-test_current_ma", "8")
+		x.set("#in-trip_time_ms", "30 ms")
+		x.phone.Tap(".go", "Save")
+		x.phone.Sees("saved")
+		x.sent()
+	}
+	measure("Instrument A", "5.6")
 	x.desk.Open(x.base + "/set-up")
 	x.desk.Press("main table", "Instrument A")
 	x.desk.Press("main", "Add a certificate")
@@ -221,9 +240,76 @@ func TestBrowser_RecallMakesTestsDue(t *testing.T) {
 	x.desk.JS(`(() => { document.querySelector("#f-out").value = "yes"; document.getElementById("f-percent.trip_current_ma").value = "-15"; return true })()`)
 	x.desk.Press("form.form", "Keep the certificate")
 	x.desk.Until("the recall", `location.pathname.includes("/recall/")`)
+	recall := x.desk.Value(`location.pathname`)
 	x.desk.Sees("tests are in doubt")
-	x.desk.Until("the worst first", `document.querySelector("tbody tr .v.fail")`)
+	x.desk.Until("the worst first", `document.querySelector("tbody tr .v.fail")`) // 5.6 was 5.6 / 0.85 = 6.6 mA
 	x.desk.Picture("recall")
 	x.desk.Press("form.form", "Make them due")
 	x.desk.Until("the dates", `location.pathname === "/dates"`)
+	measure("Instrument B", "5.1")
+	x.desk.Open(x.base + recall)
+	x.desk.Sees("was tested again since")
+	x.desk.Until("this one among them", `[...document.querySelectorAll("tbody tr")].some((r) => r.innerText.includes("tested again") && r.querySelector("a[href^='/entries/']"))`)
+	x.deskSees("/devices/"+d, "5.1")
+	x.desk.Picture("recall-again")
+}
+
+// A defect seen without a test is kept on the phone with its photo's place, made safe there, and closed by the manager after the
+// repair and its test.
+func TestBrowser_DefectOpenedByHandOnThePhone(t *testing.T) {
+	chromium.Need(t)
+	dir := demoFolder(t)
+	d := soundGFCI(t, dir, 1)[0].ID
+	x := newPair(t, dir)
+	x.at("#/device/" + d)
+	x.phone.Tap("a", "Note a defect")
+	x.phone.Tap(".go", "Keep the defect")
+	x.phone.Sees("Say what is wrong first")
+	x.set("#text", "Cover plate cracked")
+	x.set("#parts", "Wall plate, screws")
+	x.phone.Until("a photo is chosen", `(async (input) => { if (!input) return false; const c = Object.assign(document.createElement("canvas"), { width: 40, height: 30 }); c.getContext("2d").fillRect(0, 0, 20, 20); const b = await new Promise((y) => c.toBlob(y, "image/jpeg")); const t = new DataTransfer(); t.items.add(new File([b], "a.jpg", { type: "image/jpeg" })); input.files = t.files; input.dispatchEvent(new Event("change", { bubbles: true })); return true })(document.querySelector("input[type=file]"))`)
+	x.phone.Until("the photo stands on the page", `document.querySelector(".shots img")`)
+	x.phone.Tap(".go", "Keep the defect")
+	x.phone.Sees("Make it safe first")
+	x.phone.Sees("Cover plate cracked")
+	x.phone.Picture("flaw")
+	x.set("#how", "Taped off")
+	x.phone.Tap(".choose .go", "Made safe")
+	x.phone.Sees("made safe")
+	x.sent()
+	x.desk.Open(x.base + "/devices/" + d)
+	x.desk.Press("main", "Cover plate cracked")
+	x.desk.Until("the defect", `location.pathname.startsWith("/defects/")`)
+	defect := x.desk.Value(`location.pathname`)
+	x.desk.Sees("Taped off")
+	x.desk.Sees("Wall plate, screws")
+	x.desk.Until("its photo", `document.querySelector(".photos img")?.naturalWidth > 0`)
+	x.deskSays("Repaired", "New cover plate")
+	x.passes(d)
+	x.desk.Open(x.base + defect)
+	x.desk.Picture("flaw-desk")
+}
+
+// An item that travels is found by its tag, brought to the site the phone works at with one tap, and both sites' pages say so.
+func TestBrowser_ItemIsBroughtToAnotherSite(t *testing.T) {
+	chromium.Need(t)
+	dir := demoFolder(t)
+	x := newPair(t, dir)
+	item := ""
+	x.phone.Until("an item is on the phone", `(location.hash === "#/find" || (location.hash = "#/find", false)) && document.querySelector("input[type=search]")`)
+	x.set("input[type=search]", "Portable GFCI")
+	x.phone.Until("portable items are found", `document.querySelectorAll('ul.rows a.row[href^="#/device/"]').length > 0`)
+	item = strings.TrimPrefix(x.phone.Value(`[...document.querySelectorAll('ul.rows a.row[href^="#/device/"]')].pop().getAttribute("href")`), "#/device/")
+	x.at("#/site/KILN-LANE")
+	x.phone.Sees("Kiln Lane")
+	x.at("#/device/" + item)
+	x.phone.Tap("#bring", "Bring it here")
+	x.phone.Sees("Now at Kiln Lane")
+	x.phone.Picture("item")
+	x.at("#/site/KILN-LANE")
+	x.phone.Sees("here from elsewhere")
+	x.sent()
+	x.deskSees("/sites/KILN-LANE", "here from elsewhere")
+	x.deskSees("/devices/"+item, "Kiln Lane")
+	x.desk.Picture("item-desk")
 }

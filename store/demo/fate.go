@@ -2,6 +2,7 @@ package demo
 
 import (
 	"fmt"
+	"slices"
 	"strings"
 	"time"
 
@@ -175,10 +176,12 @@ func (b *builder) lend() {
 
 // trip lets a crew trip a counter outlet and look what goes dark: one that the map has behind it stays live.
 func (b *builder) trip() {
-	for _, d := range b.sites[0].devices {
-		if d.source == "" {
+	for _, s := range b.sites {
+		i := slices.IndexFunc(s.devices, func(d *device) bool { return d.source != "" })
+		if i < 0 {
 			continue
 		}
+		d := s.devices[i]
 		b.say(d, lastWorkday(b.today-4), "defect.opened", map[string]any{"cause": "protection-lost", "protector": d.source, "text": "Stayed live while its protector was tripped", "severity": forms.SeverityUnsafe})
 		return
 	}

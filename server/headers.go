@@ -14,8 +14,14 @@ import (
 // contentPolicy allows what our own files need and nothing else; nothing inline.
 var contentPolicy = strings.Join([]string{
 	"default-src 'none'", "script-src 'self'", "style-src 'self'", "connect-src 'self'", "img-src 'self' blob: data:", "font-src 'self'",
-	"worker-src 'self'", "manifest-src 'self'", "form-action 'self'", "base-uri 'none'", "frame-ancestors 'none'",
+	"worker-src 'self'", "manifest-src 'self'", "object-src 'none'", "form-action 'self'", "base-uri 'none'", "frame-ancestors 'none'",
+	// No text becomes markup or an address of a script; the field client names its worker through two policies of its own.
+	"require-trusted-types-for 'script'", "trusted-types tripwell-boot tripwell-version",
 }, "; ")
+
+// permissions are what a page may ask of a phone: its camera, for labels and photos. Everything else is off, in frames and in
+// whatever somebody might smuggle into a page.
+const permissions = "camera=(self), accelerometer=(), bluetooth=(), browsing-topics=(), display-capture=(), encrypted-media=(), geolocation=(), gyroscope=(), hid=(), magnetometer=(), microphone=(), midi=(), payment=(), serial=(), usb=(), xr-spatial-tracking=()"
 
 // headers are the same on every answer. The referrer stays within this server: none at all would make browsers send
 // "Origin: null" with our own forms, which then look like another site's.
@@ -25,6 +31,8 @@ func (s *Server) headers(next echo.HandlerFunc) echo.HandlerFunc {
 		h.Set("Content-Security-Policy", contentPolicy)
 		h.Set("X-Content-Type-Options", "nosniff")
 		h.Set("Referrer-Policy", "same-origin")
+		h.Set("Permissions-Policy", permissions)
+		h.Set("X-Frame-Options", "DENY") // for browsers that do not know frame-ancestors
 		h.Set("Cross-Origin-Opener-Policy", "same-origin")
 		h.Set("Cross-Origin-Resource-Policy", "same-origin")
 		return next(c)

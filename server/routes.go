@@ -54,6 +54,9 @@ func publicRoutes() []route {
 		// a person's calendar, by its secret address
 		{get, "/calendar/:token", anyone, (*Server).feedShow, 0},
 
+		// what programs may ask
+		{get, "/api", anyone, (*Server).apiShow, 0},
+
 		// trust in the house's own authority
 		{get, "/trust", anyone, (*Server).trustShow, 0},
 		{get, "/trust/" + certificateName, anyone, (*Server).trustCertificate, 0},

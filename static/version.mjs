@@ -6,6 +6,9 @@ const CALM = 10_000; // a second load sooner than this would be a circle
 const ASK_AGAIN = 1000;
 const ASK_MOST = 30;
 
+// As in boot.mjs, which runs before this and cannot be imported: it waits for the client.
+const worker = globalThis.trustedTypes?.createPolicy("tripwell-version", { createScriptURL: () => "/sw.js" }).createScriptURL("") ?? "/sw.js";
+
 /** Pages on which nothing is being filled in; every other page counts as an open form. */
 const CALM_PAGES = new Set(["sites", "site", "device", "tray", "tag", "along", "find", "hand"]);
 export const isCalm = (state) => CALM_PAGES.has(state.route.page) && !state.saving;
@@ -53,7 +56,7 @@ export function versions({ container, calm, offered, load, session, now, later }
       if (!container) return;
       const had = Boolean(container.controller); // the very first worker takes over a page that is up to date
       container.addEventListener("controllerchange", () => { if (had || taking) loadOnce(); });
-      registration = await container.register("/sw.js", { updateViaCache: "none" }).catch(() => null);
+      registration = await container.register(worker, { updateViaCache: "none" }).catch(() => null);
       if (!registration) return;
       registration.addEventListener("updatefound", () => watch(registration.installing));
       watch(registration.installing);

@@ -34,7 +34,7 @@ def database(out: pathlib.Path) -> None:
     index = {"db": {"modified": newest}, "vulns": vulns, "modules": [{"path": p, "vulns": list(v.values())} for p, v in sorted(modules.items())]}
     for name, content in index.items():
         (out / "index" / f"{name}.json").write_text(json.dumps(content))
-    print(f"{len(vulns)} reports, the newest of {newest[:10]}")
+    print(f"{len(vulns)} reports of {VULNDB}")
 
 
 def findings(db: pathlib.Path) -> dict:

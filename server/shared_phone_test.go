@@ -85,13 +85,7 @@ func TestRound_RestIsHandedOverByTheScreen(t *testing.T) {
 	giver.Tap("button", "They have it")
 	giver.Sees("30 outlets handed over")
 
-	w.mend()
-	taker := openHandheld(t, "http://"+w.addr, chromium.Camera(chromium.Film(t, dark)))
-	taker.signIn(r, r.person("Crew 8", "crew", r.site))
-	taker.ready()
-	w.cut()
-	taker.Until("the round", `(location.hash = "#/round/KILN-LANE", document.querySelector('a[href^="#/take/"]'))`)
-	taker.Tap("a.row", "Take over")
+	taker := r.takerOf(w, dark)
 	taker.Sees("30 outlets taken over")
 	taker.Tap("a", "Begin")
 	taker.Sees("Taken over (30)")
@@ -141,13 +135,7 @@ func TestRound_RestOfAMadeRoundIsHandedOver(t *testing.T) {
 	giver.Tap("button", "They have it")
 	giver.Sees("5 outlets handed over")
 
-	w.mend()
-	taker := openHandheld(t, "http://"+w.addr, chromium.Camera(chromium.Film(t, dark)))
-	taker.signIn(r, r.person("Crew 8", "crew", r.site))
-	taker.ready()
-	w.cut()
-	taker.Until("the round", `(location.hash = "#/round/KILN-LANE", document.querySelector('a[href^="#/take/"]'))`)
-	taker.Tap("a.row", "Take over")
+	taker := r.takerOf(w, dark)
 	taker.Sees("5 outlets taken over")
 	taker.Tap("a", "Begin")
 	taker.Sees("End the round with 5 left")
@@ -165,4 +153,17 @@ func TestRound_RestOfAMadeRoundIsHandedOver(t *testing.T) {
 		}))
 		return both
 	})
+}
+
+// takerOf is a colleague's phone that holds its camera to a code, without a line.
+func (r *rig) takerOf(w *wire, code [][]bool) *handheld {
+	r.t.Helper()
+	w.mend()
+	p := openHandheld(r.t, "http://"+w.addr, chromium.Camera(chromium.Film(r.t, code)))
+	p.signIn(r, r.person("Crew 8", "crew", r.site))
+	p.ready()
+	w.cut()
+	p.Until("the round", `(location.hash = "#/round/KILN-LANE", document.querySelector('a[href^="#/take/"]'))`)
+	p.Tap("a.row", "Take over")
+	return p
 }

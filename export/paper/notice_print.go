@@ -16,7 +16,7 @@ func PrintNotices(w io.Writer, n Notices, size Size) error {
 		one := &n.Rooms[i]
 		p.head = func() {
 			room := p.room() - p.demo(n.Demo)
-			p.text(left, p.y+8, room, "sansB", 24, p.words.Say("paper.notice.title"))
+			p.text(left, p.y+8, room, "sansB", 24, p.words.Say(one.title()))
 			p.text(left, p.y+17, room, "sansB", 15, one.Room)
 			p.text(left, p.y+24, room, "sans", 12, n.Site.Name)
 			p.y += 28
@@ -33,6 +33,14 @@ func PrintNotices(w io.Writer, n Notices, size Size) error {
 	return nil
 }
 
+// title is the key of what is read first from the door.
+func (n *Notice) title() string {
+	if len(n.Back) == 0 {
+		return "paper.notice.title_failed"
+	}
+	return "paper.notice.title"
+}
+
 func (p *print) notice(one *Notice) {
 	p.paragraph("sans", 13, p.words.Say("paper.notice.here", "day", one.On))
 	p.noticeList("paper.notice.back", one.Back)
@@ -44,7 +52,11 @@ func (p *print) notice(one *Notice) {
 		p.paragraph("sans", 13, p.words.Say("paper.notice.arrange"))
 	}
 	p.need(46)
-	for _, key := range []string{"call", "times", "left_by"} {
+	lines := []string{"call", "left_by"}
+	if len(one.Back) > 0 {
+		lines = []string{"call", "times", "left_by"}
+	}
+	for _, key := range lines {
 		p.y += 14
 		w := p.text(left, p.y, p.room(), "sansB", 12, p.words.Say("paper.notice."+key))
 		p.pdf.SetLineWidth(0.3)

@@ -86,7 +86,7 @@ func TestNotices_ASheetForEachRoomThatIsNotDone(t *testing.T) {
 			t.Fatal(err)
 		}
 		text, pages := look(t, pdf.Bytes())
-		for _, want := range []string{"Please let us in", "Ground · Pantry", "We were here on 2026-11-30", "Could not get to it", "Do not use until repaired", "In the board", "Call"} {
+		for _, want := range []string{"Please let us in", "Do not use this", "Ground · Pantry", "We were here on 2026-11-30", "Could not get to it", "Do not use until repaired", "In the board", "Call"} {
 			if !strings.Contains(text, want) {
 				t.Errorf("%s: the sheets do not say %q", name, want)
 			}

@@ -50,7 +50,7 @@ func run(root, list string) error {
 	a := gosec.NewAnalyzer(gosec.NewConfig(), false, true, false, 2, quiet)
 	a.LoadRules(rules.Generate(false).RulesInfo())
 	a.LoadAnalyzers(analyzers.Generate(false).AnalyzersInfo())
-	folders, err := gosec.PackagePaths("./...", nil)
+	folders, err := gosec.PackagePaths("./...", gosec.ExcludedDirsRegExp([]string{`\.ci`}))
 	if err != nil {
 		return err
 	}

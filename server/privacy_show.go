@@ -16,6 +16,7 @@ type privacyPage struct {
 	Facts         []fact
 	SignIns       []string
 	Kept          []keptShown
+	Others        []link // whom the reader may remove
 }
 
 // keptShown is one kind of thing that is kept about people.
@@ -75,7 +76,25 @@ func (s *Server) privacyShow(c echo.Context) error {
 	for _, kind := range keptKinds {
 		view.Kept = append(view.Kept, keptShown{k.say("privacy." + kind + ".what"), k.say("privacy." + kind + ".where"), k.say("privacy." + kind + ".long")})
 	}
+	if view.Others, err = s.removable(c); err != nil {
+		return err
+	}
 	return s.page(c, http.StatusOK, "privacy.html", view)
+}
+
+// removable lists everybody but the reader, for a manager of all sites.
+func (s *Server) removable(c echo.Context) (out []link, err error) {
+	me := person(c)
+	if me.Role != "manager" || !me.All {
+		return nil, nil
+	}
+	people, err := s.store.People()
+	for _, p := range people {
+		if p.ID != me.ID {
+			out = append(out, link{Href: "/people/" + p.ID + "/remove", Text: p.Name})
+		}
+	}
+	return out, err
 }
 
 // privacyTake gives the same as a file of JSON.

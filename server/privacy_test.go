@@ -21,6 +21,9 @@ func TestPrivacy_EverybodySeesTheirOwn(t *testing.T) {
 		if page.status != http.StatusOK || !strings.Contains(page.body, p.Name) || !strings.Contains(page.body, p.ID) || !strings.Contains(page.body, "As long as the store") {
 			t.Errorf("%s: %d %s", p.Name, page.status, page.body)
 		}
+		if has := strings.Contains(page.body, "/remove"); has != (p.Role == "manager") {
+			t.Errorf("%s may remove people: %v", p.Name, has)
+		}
 		var about aboutPerson
 		got := r.open(b, "/privacy/data.json")
 		must(t, json.Unmarshal([]byte(got.body), &about))

@@ -26,7 +26,8 @@ const (
 )
 
 // BenchmarkPush sends 10,000 entries over HTTP on loopback, in batches of 50 from 16 installations, durable, with every
-// read model and every log's tree kept. Two floors run between its rounds on the same bytes, in commits as large as the
+// read model and every log's tree kept. Every second entry has a figure of its own; the others say what entries before them
+// said, as button tests do. Two floors run between its rounds on the same bytes, in commits as large as the
 // mean group the store itself wrote: x-floor puts each record and four scattered index keys straight into bbolt, x-records
 // the record alone under a key that only grows. Both begin with as many records as the store's book holds before the clock
 // starts (its register), so that all three write into files of one age.
@@ -78,7 +79,11 @@ func benchLoad(b *testing.B, r *rig) []benchRound {
 			texts := make([]string, benchBatch)
 			for k := range texts {
 				device := r.devices[(next*benchBatch+k*37)%len(r.devices)]
-				texts[k] = phones[phone].entry(device, 4+float64((next+k)%18)/10).bytes(b)
+				current := 4 + float64((next+k)%18)/10
+				if k%2 == 0 { // a figure that no other entry has: this one is read and judged by itself
+					current = 4 + float64(next*benchBatch+k)/10_000
+				}
+				texts[k] = phones[phone].entry(device, current).bytes(b)
 				load.records = append(load.records, []byte(texts[k]))
 			}
 			load.bodies[phone] = append(load.bodies[phone], pushBody(b, texts...))

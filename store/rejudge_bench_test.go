@@ -26,10 +26,53 @@ func BenchmarkRejudge(b *testing.B) {
 		n = min(n, 20_000)
 	}
 	s, site := benchStore(b, 10, max(n/300, 10), n)
+	benchBeside(b, s, site, n, nextBenchRevision)
+}
+
+// BenchmarkReplan sets the dates of 5,000 devices anew, after a revision of the plan of button tests, while four phones
+// push. It reports what BenchmarkRejudge reports.
+func BenchmarkReplan(b *testing.B) {
+	const sites, devices = 10, 500
+	s, site := benchStore(b, sites, devices, 15_000)
+	benchBeside(b, s, site, sites*devices, nextBenchPlan)
+}
+
+// nextBenchPlan is a revision of the plan of button tests: every second month, monthly, turn about.
+func nextBenchPlan(b *testing.B, s *Store) (draft Draft) {
+	b.Helper()
+	err := s.View(Scope{Role: "owner", All: true}, func(v *View) error {
+		held, err := v.PlanRevisions("", "button-monthly")
+		if err != nil {
+			return err
+		}
+		plan := *held[len(held)-1].Plan
+		if plan.Every = "P2M"; len(held)%2 == 0 {
+			plan.Every = "P1M"
+		}
+		raw, err := encodeBody(&plan)
+		if err != nil {
+			return err
+		}
+		next, _, err := v.Next(RuleDraft{Kind: "plan.set", JSON: raw}, forms.Date(2020, time.January, 1), forms.NoDay)
+		if err != nil {
+			return err
+		}
+		draft, err = next.Draft("", s.ID())
+		return err
+	})
+	if err != nil {
+		b.Fatal(err)
+	}
+	return draft
+}
+
+// benchBeside makes a revision that touches n entries or devices while phones push, and measures their pushes.
+func benchBeside(b *testing.B, s *Store, site string, n int, next func(*testing.B, *Store) Draft) {
+	b.Helper()
 	pusher := newBenchPusher(b, s, site)
 	for b.Loop() {
 		idle := pusher.run(func() bool { return false }, 3*time.Second)
-		revision := nextBenchRevision(b, s)
+		revision := next(b, s)
 		began := time.Now()
 		if _, err := s.Append(context.Background(), revision); err != nil {
 			b.Fatal(err)

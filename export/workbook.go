@@ -16,6 +16,7 @@ import (
 // WorkbookSource is everything that goes into a workbook: values for the cover, sequences for the long sheets. A
 // sequence is read once, row by row, and never held.
 type WorkbookSource struct {
+	Access       string // what the reader's access covers, where it is read-only
 	Organisation string // name of the organisation, "" when none is known
 	Sites        []store.Site
 	AllSites     bool      // the whole organisation, not a choice of sites

@@ -99,6 +99,9 @@ func (b *book) coverLines() []coverLine {
 	add("scope", scope)
 	add("sites", b.siteList())
 	add("period", b.period())
+	if src.Access != "" {
+		add("access", src.Access)
+	}
 	add("as_of", src.AsOf.UTC().Format("2006-01-02 15:04:05")+" UTC")
 	add("rows", b.say("sheet.cover.rows_text", "rows", b.rows))
 	add("store", src.Store)

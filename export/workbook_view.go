@@ -19,6 +19,7 @@ type WorkbookAsk struct {
 	From, To     forms.Day // test days, both included; NoDay: open
 	Now          time.Time // the moment of the workbook; decides what is due
 	Organisation string
+	Access       string // what the reader's access covers, where it covers less than all; "" = nothing to say
 	Store        string // store id
 	Epoch        int
 	Demo         bool
@@ -62,7 +63,7 @@ func WorkbookOf(w io.Writer, s *store.Store, scope store.Scope, ask WorkbookAsk)
 // written before the view ends.
 func FromView(v *store.View, ask WorkbookAsk) (WorkbookSource, error) {
 	src := WorkbookSource{
-		Organisation: ask.Organisation, AllSites: ask.AllSites, From: ask.From, To: ask.To, AsOf: ask.Now, Store: ask.Store, Epoch: ask.Epoch,
+		Organisation: ask.Organisation, Access: ask.Access, AllSites: ask.AllSites, From: ask.From, To: ask.To, AsOf: ask.Now, Store: ask.Store, Epoch: ask.Epoch,
 		Demo: ask.Demo, Head: ask.Head, NoHead: ask.NoHead, PersonName: v.PersonName,
 	}
 	var err error

@@ -209,42 +209,6 @@ func TestTag_LeadsEachRoleToItsOwnPage(t *testing.T) {
 	}
 }
 
-// Every route against every role: who is let in is exactly what the table says.
-func TestRoutes_OnlyWhoTheTableNamesGetsIn(t *testing.T) {
-	r := newRig(t, 1)
-	browsers := map[who]*http.Client{crew: r.signIn(r.crew), manager: r.signIn(r.manager), auditor: r.signIn(r.auditor)}
-	for _, route := range publicRoutes() {
-		if route.who == anyone {
-			continue
-		}
-		path := strings.NewReplacer(":", "", "*", "x").Replace(route.path)
-		for role, b := range browsers {
-			req, err := http.NewRequest(route.method, r.url+path, nil)
-			must(t, err)
-			req.Header.Set("Sec-Fetch-Site", "same-origin")
-			res := r.do(b, req)
-			in := res.status != 401 && res.status != 403
-			if want := route.who&role != 0; in != want {
-				t.Errorf("%s %s as role %d: got %d, want let in %v", route.method, route.path, role, res.status, want)
-			}
-		}
-		req, err := http.NewRequest(route.method, r.url+path, nil)
-		must(t, err)
-		req.Header.Set("Sec-Fetch-Site", "same-origin")
-		if res := r.do(browser(t), req); res.status != 401 {
-			t.Errorf("%s %s signed out: got %d, want 401", route.method, route.path, res.status)
-		}
-	}
-	for _, route := range publicRoutes() {
-		if route.method == post && route.who&auditor != 0 && route.who&alone == 0 {
-			t.Errorf("%s %s: an auditor only reads", route.method, route.path)
-		}
-		if route.who&alone != 0 && (route.method != post || route.who&auditor == 0) {
-			t.Errorf("%s %s: only a POST of an auditor's is said to be its caller's alone", route.method, route.path)
-		}
-	}
-}
-
 // Whoever was not given a site finds none of its things at any address, and changes none.
 func TestRoutes_AnotherSitesThingsLookUnknown(t *testing.T) {
 	r := newRig(t, 1)

@@ -27,6 +27,9 @@ func (s *Server) ownBundle(c echo.Context) error {
 
 // sendBundle sends a bundle: site, from and to as of a workbook.
 func (s *Server) sendBundle(c echo.Context, sc store.Scope, by string) error {
+	if err := wholeLogs(sc); err != nil {
+		return err
+	}
 	ask, name, err := s.workbookAsk(c, sc)
 	if err != nil {
 		return err
@@ -39,4 +42,12 @@ func (s *Server) sendBundle(c echo.Context, sc store.Scope, by string) error {
 		stay := func(done, total int64) { _, _ = w.Write(nil) } // a broken line shows at the next write
 		return bundle.Write(c.Request().Context(), w, s.store, sc, bundle.Ask{Site: ask.Site, From: ask.From, To: ask.To, Organisation: ask.Organisation, Progress: stay})
 	})
+}
+
+// wholeLogs refuses a bundle to whoever sees a period only: it proves nothing about a part of a log.
+func wholeLogs(sc store.Scope) error {
+	if sc.Period != nil {
+		return refuse(codeForbidden, "", "A bundle holds whole logs, and your access is for a period. Ask a manager to make the bundle for you, or take the workbook.")
+	}
+	return nil
 }

@@ -21,9 +21,9 @@ type downloadsPage struct {
 	Table                      []field
 	Round                      []field // empty where there is no site
 	Workbook                   []field
-	Bundle                     []field
 	Made                       []madeRow // files made for the reader
 	Statement                  []field   // empty where there is no site
+	Bundle                     []field   // empty for whoever sees a period only
 }
 
 func (s *Server) downloadsShow(c echo.Context) error {
@@ -60,6 +60,9 @@ func (s *Server) downloadsPage(c echo.Context, status int, form madeKind, typed 
 	view.Table = tableFields(k, offered)
 	if len(sites) > 0 {
 		view.Statement = append(periodFields(k, "statement", offered[1:]), field{Name: "paper", ID: "statement-paper", Label: k.say("paper.size.label"), Options: paperOptions(k)})
+	}
+	if scope(c).Period == nil {
+		view.Bundle = []field{{Name: "site", ID: "bundle-site", Label: k.say("office.downloads.site"), Options: offered}}
 	}
 	view.Round = s.roundFields(sites)
 	return s.page(c, status, "downloads.html", view)

@@ -40,6 +40,20 @@ func (s *Server) workbookAsked(sc store.Scope, get func(string) string) (ask exp
 	if ask.From != forms.NoDay && ask.To != forms.NoDay && ask.To < ask.From {
 		return ask, "", refuse(codeInvalid, "to", "The period ends before it begins. Swap its two days.")
 	}
+	if sc.Period != nil { // what lies outside is not shown; the cover says the period it was read for
+		if ask.From == forms.NoDay || ask.From < sc.Period.From {
+			ask.From = sc.Period.From
+		}
+		if ask.To == forms.NoDay || ask.To > sc.Period.To {
+			ask.To = sc.Period.To
+		}
+		if ask.To < ask.From {
+			return ask, "", refuse(codeInvalid, "from", "Your access is for tests of "+sc.Period.From.String()+" to "+sc.Period.To.String()+". Choose days within.")
+		}
+	}
+	if p, err := s.store.Person(sc.Person); err == nil {
+		ask.Access = s.accessWords(p)
+	}
 	ask.Site, name, err = s.siteAsked(sc, get("site"))
 	return ask, name, err
 }

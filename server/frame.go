@@ -21,6 +21,7 @@ type Frame struct {
 	Here    string // which entry of the masthead is this one: overview, sites, dates, or "" for none
 	Name    string // of the person signed in; "" = nobody
 	Role    string // manager | crew | auditor
+	Only    string // what a read-only person may see, said on every page; "" for everybody else
 	Today   string // of the server, with its weekday; sites have their own
 	Demo    bool   // invented data, said on every page
 	Refresh int    // seconds after which the page reads itself again; 0 = never
@@ -32,7 +33,7 @@ type Frame struct {
 // frame fills the Frame of the request's caller.
 func (s *Server) frame(c echo.Context, title, here string) Frame {
 	p := person(c)
-	f := Frame{Title: title, Here: here, Name: p.Name, Role: p.Role, Today: s.ink().longDay(forms.DayOf(s.store.Now())), Demo: s.store.Demo(), Change: p.Role == "manager"}
+	f := Frame{Title: title, Here: here, Name: p.Name, Role: p.Role, Only: s.accessWords(p), Today: s.ink().longDay(forms.DayOf(s.store.Now())), Demo: s.store.Demo(), Change: p.Role == "manager"}
 	if insecure(c.Request()) {
 		f.Insecure = s.secureElsewhere()
 	}

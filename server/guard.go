@@ -60,7 +60,13 @@ func (s *Server) guard(r route) echo.HandlerFunc {
 		if err := s.permit(c, r.who); err != nil {
 			return err
 		}
-		return r.handle(s, c)
+		if err := r.handle(s, c); err != nil {
+			return err
+		}
+		if err := s.opened(c, r); err != nil {
+			s.log.Warn("what was opened could not be noted", "route", r.path, "error", err)
+		}
+		return nil
 	}
 }
 

@@ -68,6 +68,11 @@ func (s *Server) makeFor(c echo.Context, kind madeKind, what, ending string, of 
 		return err
 	}
 	sc, by := scope(c), person(c).ID
+	if kind == madeBundle {
+		if err := wholeLogs(sc); err != nil {
+			return err
+		}
+	}
 	ask, name, err := s.workbookAsked(sc, values.Get)
 	if err != nil {
 		return s.downloadsAgain(c, kind, values, err)

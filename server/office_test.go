@@ -328,7 +328,7 @@ func TestPersonForm_LinkSignsInOnce(t *testing.T) {
 	if n != 1 {
 		t.Errorf("got %d people after the form was sent twice, want 1", n)
 	}
-	own := setAll(r.openForm(b, "/people/"+r.manager.ID), "role", "auditor")
+	own := setAll(r.openForm(b, "/people/"+r.manager.ID+"/edit"), "role", "auditor")
 	r.wantBack(b, "/people/"+r.manager.ID, own, "role")
 }
 

@@ -168,9 +168,11 @@ func normalPages(t testing.TB, s *Server) map[string]any {
 			Wrong:  []link{{Text: "No round was chosen."}}, Action: "/rounds", Submit: "Make the round", Hidden: []hidden{{"record", "1"}}, Fields: []field{{Name: "note", Label: "Note", Type: "text-area", Wide: true}}, Pace: "Reckoned with button test 1.2 min."},
 		"tray.html": trayPage{Frame: frameOf("Take in a phone's tray", ""), Problem: "Choose the file the phone saved first.", Report: &TrayReport{Records: 3, Stored: 1, Already: 1, Person: "Crew 1", Made: "2026-12-01T08:00:00.000Z",
 			Refused: []store.Receipt{{ID: "0197b2c0-0000-7000-8000-000000000001", State: "refused", Code: "bad_body", Text: "The readings are missing."}}}},
+		"person.html": personPage{Frame: frameOf("Crew 1", "people"), Crumbs: []link{{Href: "/people", Text: "People"}}, Heading: "Crew 1", Under: "Crew", Said: "The phone was taken off.", Facts: []fact{{Name: "Licence", Value: "EL 4411"}}, Edit: "/people/1/edit", Link: "/people/1/link", Code: "/people/1/code", End: "/people/1/end",
+			Sessions: []sessionShown{{ID: "1", Browser: "Firefox on Linux", How: "link", Since: "1 Dec 2026"}}, EndSessions: "/people/1/sessions", Phones: []phoneLink{{phoneShown{Name: "9F0C21", Sent: []string{"up to its number 41 in Kiln Lane"}}, "/people/1/phones/2"}}, Uses: []useShown{{"1 Dec 2026", "Opened: register"}}},
 		"me.html":            meSample(),
 		"signin_second.html": secondPage{Frame: frameOf("Second step", ""), Half: "half", Problem: "This code is not the one of this moment."},
-		"person_link.html":   personLinkPage{Frame: frameOf("People", "people"), Crumbs: []link{{Href: "/people", Text: "People"}}, Heading: "Sign-in link for Crew 1", Under: "It is shown here once.", Link: "https://tripwell.example/in/2JHC0VQ2W4Z8S5N7K3M6P9R1T4", Text: "Send it to Crew 1 only."},
+		"person_link.html":   personLinkPage{Frame: frameOf("People", "people"), Crumbs: []link{{Href: "/people", Text: "People"}}, Back: "/people/1", Heading: "Sign-in link for Crew 1", Under: "It is shown here once.", Link: "https://tripwell.example/in/2JHC0VQ2W4Z8S5N7K3M6P9R1T4", Text: "Send it to Crew 1 only."},
 	}
 }
 
@@ -271,7 +273,7 @@ func revisionSample() revisionPage {
 }
 
 // keptFields hold what is not text of a reader: addresses, shapes, places in a drawing, codes.
-var keptFields = []string{"Href", "FileHref", "RecallHref", "NewHref", "ListHref", "EntryHref", "Stops", "N", "Minutes", "Action", "Cancel", "FailedHref", "OverdueHref", "NewSite", "NewInstrument", "Record", "Sheet", "Shape", "Path", "BandX", "BandW", "Limits", "X", "Anchor", "Before", "Mark", "Pointer", "At", "Y", "Inside", "Back", "Role", "Here", "Type", "Known", "Open", "Certificate", "Profile"}
+var keptFields = []string{"Href", "FileHref", "RecallHref", "NewHref", "ListHref", "EntryHref", "Stops", "N", "Minutes", "Action", "Cancel", "Edit", "Link", "Code", "End", "EndSessions", "FailedHref", "OverdueHref", "NewSite", "NewInstrument", "Record", "Sheet", "Shape", "Path", "BandX", "BandW", "Limits", "X", "Anchor", "Before", "Mark", "Pointer", "At", "Y", "Inside", "Back", "Role", "Here", "Type", "Known", "Open", "Certificate", "Profile"}
 
 // with gives a page with every text of a reader replaced, or with all lists emptied where text is nil.
 func with(page any, text *string) any {

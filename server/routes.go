@@ -229,12 +229,18 @@ func publicRoutes() []route {
 		{get, "/people", manager, (*Server).peopleShow, 0},
 		{get, "/people/new", manager, (*Server).personNew, 0},
 		{post, "/people", manager, (*Server).personCreate, 0},
-		{get, "/people/:person", manager, (*Server).personEdit, 0},
+		{get, "/people/:person", manager, (*Server).personShow, 0},
+		{get, "/people/:person/edit", manager, (*Server).personEdit, 0},
 		{post, "/people/:person", manager, (*Server).personUpdate, 0},
 		{get, "/people/:person/remove", manager, (*Server).personRemoveAsk, 0},
 		{post, "/people/:person/remove", manager, (*Server).personRemove, 0},
 		{post, "/people/:person/link", manager, (*Server).personLink, 0},
 		{post, "/people/:person/code", manager, (*Server).personCode, 0},
+		{post, "/people/:person/sessions", manager, (*Server).personSessions, 0},
+		{get, "/people/:person/end", manager, (*Server).personEndAsk, 0},
+		{post, "/people/:person/end", manager, (*Server).personEnd, 0},
+		{get, "/people/:person/phones/:phone", manager, (*Server).personPhoneAsk, 0},
+		{post, "/people/:person/phones/:phone", manager, (*Server).personPhoneOff, 0},
 	}
 }
 

@@ -51,6 +51,7 @@ type Server struct {
 	pages   map[string]*template.Template
 	cross   *http.CrossOriginProtection
 	wrong   *wrongLinks
+	seen    seenOnce
 	image   atomic.Pointer[store.Image] // the backup that is being taken away
 	drawing sync.Mutex                  // pictures are drawn anew one at a time
 	imports *importArea                 // registers

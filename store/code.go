@@ -73,10 +73,15 @@ func (s *Store) SpendCode(ctx context.Context, typed string, from Arrival) (sess
 
 // dropCodes deletes a person's earlier codes.
 func (g *group) dropCodes(person string) error {
+	return g.dropLinks(person, func(l link) bool { return l.Use != linkTyped })
+}
+
+// dropLinks deletes a person's links and codes but those that stay.
+func (g *group) dropLinks(person string, stays func(l link) bool) error {
 	var old [][]byte
 	err := g.tx.Bucket(bktLink).ForEach(func(k, v []byte) error {
 		var l link
-		if err := json.Unmarshal(v, &l); err == nil && l.Use == linkTyped && l.Person == person {
+		if err := json.Unmarshal(v, &l); err == nil && l.Person == person && (stays == nil || !stays(l)) {
 			old = append(old, append([]byte(nil), k...))
 		}
 		return nil

@@ -43,6 +43,9 @@ func (v *View) Compliance(ask ComplianceAsk) (Compliance, error) {
 	if err != nil {
 		return Compliance{}, err
 	}
+	if ask.From, ask.To = v.scope.within(ask.From, ask.To); ask.From > ask.To {
+		return Compliance{Rows: []ComplianceRow{}, Standing: []StandingRow{}}, nil
+	}
 	sites = slices.Clone(sites)
 	slices.SortFunc(sites, func(a, b *siteView) int { return cmp.Or(cmp.Compare(a.Code, b.Code), cmp.Compare(a.ID, b.ID)) })
 	out := Compliance{Rows: []ComplianceRow{}, Standing: []StandingRow{}}
@@ -347,7 +350,7 @@ func (v *View) Days(site string, from, to forms.Day) ([]DayRow, error) {
 		out[i].Day = from + forms.Day(i)
 	}
 	at := func(d forms.Day) *DayRow {
-		if d < from || d > to {
+		if d < from || d > to || !v.scope.Shows(d) {
 			return new(DayRow)
 		}
 		return &out[d-from]

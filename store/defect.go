@@ -146,7 +146,14 @@ func (v *View) defectsAt(sv *siteView, n uint32, on forms.Day) ([]Defect, error)
 	}
 	out := make([]Defect, 0, len(fl.Defects))
 	for _, d := range fl.Defects {
-		one := Defect{Defect: *d, Site: sv.ID, Device: row}
+		shown, ok, err := v.shownDefect(d)
+		if err != nil {
+			return nil, err
+		}
+		if !ok {
+			continue
+		}
+		one := Defect{Defect: *shown, Site: sv.ID, Device: row}
 		if one.OwnName, err = v.ownCause(d); err != nil {
 			return nil, err
 		}
@@ -160,7 +167,7 @@ func (v *View) ownCause(d *forms.Defect) (string, error) {
 	if !forms.IsOwn(d.Cause) || d.LastFail == "" {
 		return "", nil
 	}
-	e, err := v.Entry(d.LastFail)
+	e, err := v.whole().Entry(d.LastFail)
 	return e.OwnNames[d.Cause], err
 }
 
@@ -175,6 +182,11 @@ func (v *View) DeviceDefects(device string, on forms.Day) (list []Defect, loose 
 		return nil, nil, err
 	}
 	for _, id := range fl.Loose {
+		if is, err := v.showsID(id); err != nil {
+			return nil, nil, err
+		} else if !is {
+			continue
+		}
 		step, err := v.defectStep(id)
 		if err != nil {
 			return nil, nil, err
@@ -281,6 +293,9 @@ func (v *View) DefectSums(site string) (DefectSums, error) {
 	if err != nil {
 		return DefectSums{}, err
 	}
+	if v.scope.Period != nil {
+		return v.defectSumsShown(sv)
+	}
 	sums := DefectSums{Site: sv.Site}
 	devices, inUse := map[uint32]bool{}, map[uint32]bool{}
 	err = v.scan(bktOpen, put32(nil, sv.ord), func(k, row []byte) error {
@@ -311,6 +326,14 @@ func (v *View) OpenDefects(site string) (map[string]int, error) {
 	if err != nil {
 		return nil, err
 	}
+	if v.scope.Period != nil {
+		list, err := v.Defects(DefectAsk{Site: sv.ID, On: sv.today})
+		out := map[string]int{}
+		for i := range list {
+			out[list[i].Device.ID]++
+		}
+		return out, err
+	}
 	numbers, out := map[uint32]int{}, map[string]int{}
 	err = v.scan(bktOpen, put32(nil, sv.ord), func(_, row []byte) error {
 		numbers[read32(row)]++
@@ -327,6 +350,29 @@ func (v *View) OpenDefects(site string) (map[string]int, error) {
 		out[id] = count
 	}
 	return out, err
+}
+
+// defectSumsShown counts what a scope with a period shows, defect by defect.
+func (v *View) defectSumsShown(sv *siteView) (DefectSums, error) {
+	sums := DefectSums{Site: sv.Site}
+	list, err := v.Defects(DefectAsk{Site: sv.ID, On: sv.today})
+	devices, inUse := map[string]bool{}, map[string]bool{}
+	for i := range list {
+		d := &list[i]
+		sums.Open++
+		devices[d.Device.ID] = true
+		if d.Severity == forms.Nuisance {
+			sums.Nuisance++
+		}
+		if d.InUse() {
+			inUse[d.Device.ID] = true
+			if sums.Since.IsZero() || d.OpenedAt().Before(sums.Since) {
+				sums.Since, sums.SinceID = d.OpenedAt(), d.ID
+			}
+		}
+	}
+	sums.Devices, sums.InUse = len(devices), len(inUse)
+	return sums, err
 }
 
 // DefectPast sums up what a site's defects came to.

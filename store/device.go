@@ -26,9 +26,10 @@ type DeviceRow struct {
 
 // LastTest is the newest entry of a task that says something, not-tested included.
 type LastTest struct {
-	Entry  string
+	Entry  string // "" where the scope shows how the device stands and not this test
 	Day    forms.Day
 	Result string
+	id     id16
 }
 
 // Device is everything the device page shows.
@@ -167,7 +168,11 @@ func (v *View) row(sv *siteView, t *thing, w *work, on forms.Day) (DeviceRow, er
 		if row.Last == nil {
 			row.Last = make(map[string]LastTest, len(w.tasks))
 		}
-		row.Last[s.task] = LastTest{s.last.id.String(), s.last.day, resultCodes[s.last.result]}
+		last := LastTest{Entry: s.last.id.String(), Day: s.last.day, Result: resultCodes[s.last.result], id: s.last.id}
+		if !v.scope.Shows(last.Day) {
+			last.Entry = ""
+		}
+		row.Last[s.task] = last
 	}
 	for _, d := range w.dates {
 		row.Due = append(row.Due, stateOn(d, on))

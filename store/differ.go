@@ -71,7 +71,7 @@ func (v *View) Differences() ([]Difference, error) {
 		if err != nil {
 			return err
 		}
-		if !v.scope.mayRead(first.Log) {
+		if !v.scope.mayReadWhole(first.Log) {
 			return nil
 		}
 		later, fault := record.Parse(bytes.Clone(row[8:]))

@@ -99,6 +99,9 @@ func (v *View) Entries(device string) ([]Entry, error) {
 	}
 	all := make([]ordered, 0, len(list))
 	for _, p := range list {
+		if !v.scope.Shows(p.day) {
+			continue
+		}
 		r, st, k, err := readBook(v.tx, p.seq)
 		if err != nil {
 			return nil, err
@@ -154,6 +157,7 @@ func (v *View) siteHistory(site string, from, to forms.Day) (*siteView, []dayOf,
 		return nil, nil, err
 	}
 	var list []dayOf
+	from, to = v.scope.within(from, to)
 	take := func(past []past) {
 		for _, p := range past {
 			if (from == forms.NoDay || p.day >= from) && (to == forms.NoDay || p.day <= to) {
@@ -306,7 +310,8 @@ func (e *Entry) say(v *View, sv *siteView, said []saidRecord, o outcome) (err er
 // Flag is something to look at that is no verdict: code names a word "flag.CODE", Detail fills it in.
 // Codes: clock (device clock off), late (received long after), differs-shown, differs-register, calibration-expired,
 // no-instrument, instrument-unknown (nobody registered it), instrument-out (found out of tolerance later), access-ended (between the test and its arrival), n-reused (two records carry its number), n-gap (the
-// numbers before it never came), correction-idle and withdrawal-idle (by somebody who might not).
+// numbers before it never came), correction-idle and withdrawal-idle (by somebody who might not),
+// not-qualified (by somebody who is stated to do other tests).
 type Flag struct{ Code, Detail string }
 
 const (
@@ -356,7 +361,34 @@ func (v *View) flags(sv *siteView, r *record.Record, st record.Stamp, k kept, bo
 	} else if ended {
 		flag("access-ended", forms.DayOf(time.UnixMilli(at).In(sv.zone)).String())
 	}
+	if err := v.flagQualified(r, st, body, o.task, flag); err != nil {
+		return nil, err
+	}
 	return out, v.differsRegister(sv, r, given, flag)
+}
+
+// flagQualified flags a test by somebody whose grant of that time says what they may do, and not this: a button test needs any
+// of it, everything else an instrument at live parts. Where nobody said, nothing is flagged.
+func (v *View) flagQualified(r *record.Record, st record.Stamp, body *entryBody, task string, flag func(code, detail string)) error {
+	tester := r.By
+	if record.IsID(body.ReadBy) {
+		tester = body.ReadBy
+	}
+	facts, err := v.whoMay().of(tester)
+	if err != nil {
+		return err
+	}
+	at := happened(r, st).UnixMilli()
+	var may []string
+	for _, f := range facts {
+		if f.At <= at {
+			may = f.May
+		}
+	}
+	if len(may) > 0 && task != forms.TaskButton && !slices.Contains(may, MayMeasure) {
+		flag("not-qualified", cmp.Or(v.PersonName(tester), tester))
+	}
+	return nil
 }
 
 // flagNumber flags a number that several records of the installation carry in this log, and numbers missing before it.

@@ -32,8 +32,8 @@ func (v *View) Unwitnessed(d *DeviceRow, task string, day forms.Day) (bool, erro
 		}
 		met = true
 	}
-	if last := d.Last[task]; !met && last.Day == day && last.Entry != "" {
-		r, _, _, _, err := v.recordAt(parseID(last.Entry))
+	if last := d.Last[task]; !met && last.Day == day && last.id != (id16{}) {
+		r, _, _, _, err := v.whole().recordAt(last.id)
 		return err == nil && r.Kind == "entry.imported", err
 	}
 	return met, nil

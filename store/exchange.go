@@ -52,7 +52,7 @@ func (s *Store) Ask(scope Scope, ids []string) ([]Receipt, error) {
 				return fmt.Errorf("ask %s: %w", id, err)
 			}
 			log := string(tx.Bucket(bktNames).Get(key32(k.ord)))
-			if scope.mayRead(log) {
+			if scope.mayReadWhole(log) {
 				receipts = append(receipts, Receipt{ID: id, State: "stored", Store: s.id, Epoch: s.epoch, Log: log, Pos: k.pos})
 			}
 		}
@@ -68,7 +68,7 @@ func (s *Store) Ask(scope Scope, ids []string) ([]Receipt, error) {
 // many as a page holds.
 func (s *Store) Pull(scope Scope, log, after string, limit int) (Pulled, error) {
 	p := Pulled{Records: []PulledRecord{}}
-	if !scope.mayRead(log) {
+	if !scope.mayReadWhole(log) {
 		p.NotYours = true
 		return p, nil
 	}
@@ -208,6 +208,11 @@ func (v *View) Record(id string) (rec, stamp []byte, err error) {
 		return nil, nil, fmt.Errorf("record %s: %w", id, err)
 	}
 	if !v.scope.mayRead(string(v.tx.Bucket(bktNames).Get(key32(k.ord)))) {
+		return nil, nil, missing
+	}
+	if is, err := v.showsID(id); err != nil {
+		return nil, nil, err
+	} else if !is {
 		return nil, nil, missing
 	}
 	return bytes.Clone(k.raw), bytes.Clone(k.stamp), nil

@@ -103,6 +103,9 @@ func (gr *grants) accessEnded(r *record.Record, st record.Stamp) (at int64, ende
 		if may = mayWrite(f, r); had && !may {
 			at, ended = f.At, f.At > from
 		}
+		if end := f.end(); may && end < to {
+			may, at, ended = false, end, end > from
+		}
 	}
 	return at, ended && !may, nil
 }

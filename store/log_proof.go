@@ -61,6 +61,9 @@ func (v *View) readableLog(log string) (uint32, proof.Edge, error) {
 	if row == nil || !v.scope.mayRead(log) {
 		return 0, proof.Edge{}, &Error{Code: "not_found", Field: "log", Text: "There is no such log here, or it is not yours to see."}
 	}
+	if !v.scope.mayReadWhole(log) {
+		return 0, proof.Edge{}, errPartOfLog
+	}
 	ord, edge, err := readLog(row)
 	if err != nil {
 		return 0, edge, fmt.Errorf("log %s: %w", log, err)

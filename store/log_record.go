@@ -17,6 +17,8 @@ type LogRecord struct {
 	Stamp, Record []byte // copies
 }
 
+var errPartOfLog = &Error{Code: "forbidden", Field: "from", Text: "Your access is for a period, and a whole log goes beyond it. Ask a manager to make the bundle for you."}
+
 // LogRecords gives the first size records of a log in order; a log outside the scope is not_found.
 func (v *View) LogRecords(log string, size int64) iter.Seq2[LogRecord, error] {
 	return func(yield func(LogRecord, error) bool) {

@@ -23,7 +23,10 @@ type Person struct {
 	Active         bool
 	Contact        string
 	Period         *Period    `json:",omitempty"` // an auditor's: the test days they may see; nil = all
-	Until          *forms.Day `json:",omitempty"` // an auditor's: the last day of their access; nil = no end
+	Until          *forms.Day `json:",omitempty"` // the last day of their access; nil = no end
+	Licence        string     `json:",omitempty"` // number and kind, as written; kept here only, never in the book
+	LicenceUntil   *forms.Day `json:",omitempty"`
+	May            []string   `json:",omitempty"` // what they are qualified for; none = nobody said
 }
 
 // Scope is what the person may see; nothing once they are no longer active.
@@ -98,20 +101,62 @@ func (v *View) PersonName(id string) string {
 	return p.Name
 }
 
+// What a person may be qualified for.
+const (
+	MayButton  = "button"  // press TEST and RESET
+	MayMeasure = "measure" // test with an instrument, at live parts
+	MayReplace = "replace" // repair and replace
+)
+
+// Qualifications lists them in order.
+func Qualifications() []string { return []string{MayButton, MayMeasure, MayReplace} }
+
+// check holds a person against what each role can have.
+func (p *Person) check() error {
+	switch {
+	case p.Name == "":
+		return &Error{Code: "invalid", Field: "name", Text: "A person needs a name, or at least what they are called on a round, such as Crew 1."}
+	case p.Role != "manager" && p.Role != "crew" && p.Role != "auditor":
+		return &Error{Code: "invalid", Field: "role", Text: "A person is manager, crew or auditor. Choose one of these."}
+	case p.Period != nil && p.Role != "auditor":
+		return &Error{Code: "invalid", Field: "period_from", Text: "Only an auditor's access can be for a period of tests. Leave both days empty, or choose auditor."}
+	case p.Period != nil && p.Period.To < p.Period.From:
+		return &Error{Code: "invalid", Field: "period_to", Text: "The period ends before it begins. Swap its two days."}
+	}
+	for _, site := range p.Sites {
+		if !record.IsID(site) {
+			return &Error{Code: "invalid", Field: "sites", Text: "One of the sites chosen is none of this store's. Choose sites from the list."}
+		}
+	}
+	for _, may := range p.May {
+		if !slices.Contains(Qualifications(), may) {
+			return &Error{Code: "invalid", Field: "may", Text: "Choose what the person may do from the list."}
+		}
+	}
+	return nil
+}
+
+// granted is the body of the grant.set that gives a person what they have.
+func (p *Person) granted() json.RawMessage {
+	body := map[string]any{"role": p.Role, "all": p.All, "sites": append([]string{}, p.Sites...), "active": p.Active}
+	if p.Period != nil {
+		body["from"], body["to"] = p.Period.From.String(), p.Period.To.String()
+	}
+	if p.Until != nil {
+		body["until"] = p.Until.String()
+	}
+	if len(p.May) > 0 {
+		body["may"] = p.May
+	}
+	return mustJSON(body)
+}
+
 // PutPerson keeps a person (empty ID = new) and appends person.set and grant.set by whoever does it: a manager of all
 // sites, or the store's own id for the owner of the folder. What is in force already is not written again.
 func (s *Store) PutPerson(ctx context.Context, by string, p Person) (Person, error) {
 	p.Name = strings.TrimSpace(p.Name)
-	if p.Name == "" {
-		return Person{}, &Error{Code: "invalid", Field: "name", Text: "A person needs a name, or at least what they are called on a round, such as Crew 1."}
-	}
-	if p.Role != "manager" && p.Role != "crew" && p.Role != "auditor" {
-		return Person{}, &Error{Code: "invalid", Field: "role", Text: "A person is manager, crew or auditor. Choose one of these."}
-	}
-	for _, site := range p.Sites {
-		if !record.IsID(site) {
-			return Person{}, &Error{Code: "invalid", Field: "sites", Text: "One of the sites chosen is none of this store's. Choose sites from the list."}
-		}
+	if err := p.check(); err != nil {
+		return Person{}, err
 	}
 	if p.ID == "" {
 		p.ID = newID(s.now())
@@ -125,20 +170,29 @@ func (s *Store) PutPerson(ctx context.Context, by string, p Person) (Person, err
 	err := s.do(ctx, 2, func(g *group) error {
 		old, err := readPerson(g.tx, p.ID)
 		known := err == nil
-		if known && old.Role == p.Role && old.All == p.All && old.Active == p.Active && slices.Equal(old.Sites, p.Sites) {
+		if known && old.Role == p.Role && old.Active == p.Active && string(old.granted()) == string(p.granted()) {
 			return g.putJSON(bktPerson, idKey(p.ID), p)
 		}
-		if known && old.Role == "manager" && old.All && old.Active && (p.Role != "manager" || !p.All || !p.Active) {
+		if known && old.leads() && !p.leads() {
 			if last, err := lastManager(g.tx, p.ID); err != nil || last {
 				return cmp.Or(err, error(&Error{Code: "conflict", Field: "role", Text: "This is the last manager of all sites. Make somebody else one first, so that the store can still be run."}))
 			}
 		}
 		_, err = g.appendDrafts([]Draft{
 			{Kind: "person.set", Log: record.Org, Subject: p.ID, By: by, Body: mustJSON(map[string]any{"role": p.Role, "active": p.Active})},
-			{Kind: "grant.set", Log: record.Office, Subject: p.ID, By: by, Body: mustJSON(map[string]any{"role": p.Role, "all": p.All, "sites": append([]string{}, p.Sites...), "active": p.Active})},
+			{Kind: "grant.set", Log: record.Office, Subject: p.ID, By: by, Body: p.granted()},
 		})
 		if err != nil {
 			return err
+		}
+		// A page that is open shows what its reader had; a new sign-in shows what they have.
+		if err := g.dropSessions(p.ID, nil); err != nil {
+			return err
+		}
+		if known && old.Active && !p.Active {
+			if err := g.leave(by, p.ID); err != nil {
+				return err
+			}
 		}
 		return g.putJSON(bktPerson, idKey(p.ID), p)
 	})
@@ -146,6 +200,27 @@ func (s *Store) PutPerson(ctx context.Context, by string, p Person) (Person, err
 		return Person{}, err
 	}
 	return p, nil
+}
+
+// leads reports whether the person is a manager of all sites, without an end.
+func (p *Person) leads() bool { return p.Active && p.All && p.Role == "manager" && p.Until == nil }
+
+// leave takes from somebody who leaves what signs in and sends: links, password and second step, and their phones. Work that a
+// phone of theirs has not sent is not lost: it is taken in as a file, or sent when the next person signs in on that phone.
+func (g *group) leave(by, person string) error {
+	if err := g.dropLinks(person, nil); err != nil {
+		return err
+	}
+	if err := g.drop(bktSecret, idKey(person)); err != nil {
+		return err
+	}
+	phones, err := readPhones(g.tx, person)
+	for _, p := range phones {
+		if err == nil {
+			err = g.revoke(by, p.Installation)
+		}
+	}
+	return err
 }
 
 // lastManager reports whether nobody but this person is an active manager of all sites.
@@ -156,7 +231,7 @@ func lastManager(tx *bbolt.Tx, id string) (bool, error) {
 		if err := json.Unmarshal(v, &p); err != nil {
 			return fmt.Errorf("person: %w", err)
 		}
-		last = last && (p.ID == id || !p.Active || !p.All || p.Role != "manager")
+		last = last && (p.ID == id || !p.leads())
 		return nil
 	})
 	return last, err

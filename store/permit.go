@@ -5,9 +5,11 @@ import (
 	"encoding/binary"
 	"encoding/json"
 	"fmt"
+	"math"
 	"slices"
 	"time"
 
+	"tripwell/forms"
 	"tripwell/store/record"
 )
 
@@ -18,12 +20,23 @@ type accessFact struct {
 	All          bool     `json:"all,omitempty"`
 	Sites        []string `json:"sites,omitempty"`
 	Active       bool     `json:"active,omitempty"`
+	Until        string   `json:"until,omitempty"`        // the last day of the access, where it was given an end
+	May          []string `json:"may,omitempty"`          // what the person is qualified for; absent = nobody said
 	Installation string   `json:"installation,omitempty"` // enrolled by the person
 	Revoked      string   `json:"revoked,omitempty"`      // installation
 }
 
 func (a accessFact) covers(log string) bool {
 	return a.Active && (a.All || slices.Contains(a.Sites, log))
+}
+
+// end is the moment (ms) after which a grant with an end covers nothing; a day is over when it is over everywhere.
+func (a accessFact) end() int64 {
+	day, err := forms.ParseDay(a.Until)
+	if a.Until == "" || err != nil {
+		return math.MaxInt64
+	}
+	return day.Time().Add(36*time.Hour).UnixMilli() - 1
 }
 
 // facts gives what the book says of a person, oldest first.
@@ -91,7 +104,7 @@ var crewKinds = map[string]bool{
 // storeKinds are made by a store of what happened to it, and taken from nobody else.
 var storeKinds = map[string]bool{
 	"record.refused": true, "record.admitted": true, "record.sealed": true, "person.set": true, "tags.minted": true,
-	"grant.set": true, "signed.in": true, "export.taken": true, "installation.enrolled": true, "installation.revoked": true,
+	"grant.set": true, "signed.in": true, "export.taken": true, "access.used": true, "installation.enrolled": true, "installation.revoked": true,
 	"book.restored": true,
 }
 
@@ -167,7 +180,7 @@ func mayWrite(f accessFact, r *record.Record) bool {
 	switch record.LogClass(r.Log) {
 	case record.Org, record.Office:
 		switch r.Kind {
-		case "signed.in", "installation.enrolled", "installation.revoked", "export.taken":
+		case "signed.in", "installation.enrolled", "installation.revoked", "export.taken", "access.used":
 			return f.Active // everybody signs in, enrols a phone, takes what they may see
 		}
 		return f.Active && f.All && f.Role == "manager"
@@ -191,7 +204,7 @@ func grantsBetween(facts []accessFact, from, to int64, may func(accessFact) bool
 		if f.Role == "" || f.At > to {
 			continue
 		}
-		if may(f) {
+		if may(f) && f.end() >= max(from, f.At) {
 			return true
 		}
 		if f.At <= from {

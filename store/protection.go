@@ -326,7 +326,7 @@ func (w *wiring) row(d *onWire, on forms.Day) (OnMap, error) {
 		return out, err
 	}
 	for _, t := range work.tasks {
-		if len(t.numbers) == 0 {
+		if len(t.numbers) == 0 || !w.v.scope.Shows(t.last.day) {
 			continue
 		}
 		if out.Measured == nil {

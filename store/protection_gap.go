@@ -115,7 +115,7 @@ func (v *View) gapsOf(p *Protection, d OnMap, usual *forms.UsualPlaces, live str
 func (v *View) markingSeen(d OnMap) (bool, error) {
 	var seen, asked Entry
 	for _, last := range d.Last {
-		e, err := v.Entry(last.Entry)
+		e, err := v.whole().Entry(last.id.String())
 		if err != nil {
 			return false, err
 		}

@@ -147,7 +147,14 @@ func (v *View) Refused() ([]Refusal, error) {
 		if err != nil {
 			return nil, err
 		}
-		if v.scope.mayRead(ref.Log) {
+		if !v.scope.mayRead(ref.Log) {
+			continue
+		}
+		is, err := v.showsRefusal(&ref)
+		if err != nil {
+			return nil, err
+		}
+		if is {
 			all = append(all, ref)
 		}
 	}

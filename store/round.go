@@ -111,7 +111,11 @@ func (v *View) Round(id string) (Round, error) {
 	if err != nil {
 		return Round{}, err
 	}
-	return v.round(sv, n, t)
+	r, err := v.round(sv, n, t)
+	if err == nil && !v.showsRound(sv.zone, &r) {
+		return Round{}, errNoRound
+	}
+	return r, err
 }
 
 // Rounds gives the rounds of a site, or of all of the scope where site is "": those that wait for somebody first, then
@@ -141,7 +145,9 @@ func (v *View) Rounds(site string) ([]Round, error) {
 	for _, sv := range sites {
 		err := v.each(sv, ofRound, func(n uint32, t *thing) error {
 			r, err := v.round(sv, n, t)
-			out = append(out, r)
+			if err == nil && v.showsRound(sv.zone, &r) {
+				out = append(out, r)
+			}
 			return err
 		})
 		if err != nil {

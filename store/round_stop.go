@@ -53,6 +53,7 @@ func (v *View) stops(sv *siteView, r *Round, list []string) error {
 		if why, ok := passed[text]; ok && stop.State == StopLeft {
 			stop.State, stop.Reason = StopPassed, why
 		}
+		v.shownStop(&stop)
 		r.Stops = append(r.Stops, stop)
 	}
 	return nil

@@ -263,6 +263,9 @@ func (v *View) Tallies(site string) ([]MonthTally, error) {
 	if err != nil {
 		return nil, err
 	}
+	if v.scope.Period != nil {
+		return v.talliesShown(sv)
+	}
 	var out []MonthTally
 	prefix := put32(nil, sv.ord)
 	c := v.bucket(bktTally).Cursor()
@@ -280,5 +283,35 @@ func (v *View) Tallies(site string) ([]MonthTally, error) {
 		}
 		out = append(out, m)
 	}
+	return out, nil
+}
+
+// talliesShown counts the entries of a scope with a period, which need not end with a month.
+func (v *View) talliesShown(sv *siteView) ([]MonthTally, error) {
+	type monthOf struct {
+		month int32
+		task  string
+	}
+	counts := map[monthOf]map[string]int{}
+	for e, err := range v.SiteEntries(sv.ID, forms.NoDay, forms.NoDay) {
+		if err != nil {
+			return nil, err
+		}
+		if e.Withdrawn != nil {
+			continue
+		}
+		key := monthOf{forms.MonthOf(e.Day), e.Task}
+		if counts[key] == nil {
+			counts[key] = map[string]int{}
+		}
+		counts[key][e.Verdict.Result]++
+	}
+	var out []MonthTally
+	for key, results := range counts {
+		out = append(out, MonthTally{Year: int(key.month) / 12, Month: int(key.month)%12 + 1, Task: key.task, Results: results})
+	}
+	slices.SortFunc(out, func(a, b MonthTally) int {
+		return cmp.Or(cmp.Compare(a.Year, b.Year), cmp.Compare(a.Month, b.Month), cmp.Compare(a.Task, b.Task))
+	})
 	return out, nil
 }

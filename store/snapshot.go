@@ -224,7 +224,7 @@ func (v *View) snapshotDevice(sv *siteView, t *thing, w *work, on forms.Day) (Sn
 		return d, at, nil
 	}
 	for _, s := range w.tasks {
-		if s.last.result == 0 {
+		if s.last.result == 0 || !v.scope.Shows(s.last.day) {
 			continue
 		}
 		last := SnapshotLast{Entry: s.last.id.String(), Day: s.last.day, Result: resultCodes[s.last.result]}

@@ -2,6 +2,7 @@ package store
 
 import (
 	"bytes"
+	"cmp"
 	"sync"
 	"time"
 
@@ -250,7 +251,7 @@ func (v *View) seqOf(id id16) (seq uint64, ok bool) {
 	return readKey64(row), row != nil
 }
 
-// recordAt reads a record by id where the scope allows its log.
+// recordAt reads a record by id where the scope allows its log and its day.
 func (v *View) recordAt(id id16) (*record.Record, record.Stamp, kept, uint64, error) {
 	seq, ok := v.seqOf(id)
 	if !ok {
@@ -259,6 +260,11 @@ func (v *View) recordAt(id id16) (*record.Record, record.Stamp, kept, uint64, er
 	r, st, k, err := readBook(v.tx, seq)
 	if err == nil && !v.scope.mayRead(r.Log) {
 		err = errNoEntry
+	}
+	if err == nil {
+		if is, wrong := v.shows(r, st); wrong != nil || !is {
+			err = cmp.Or(wrong, error(errNoEntry))
+		}
 	}
 	return r, st, k, seq, err
 }

@@ -50,9 +50,10 @@ instrument.calibrated  org       on:day! due:day certificate:text out:bool error
 instrument.proved      org       on:day! tag:tag works:bool where:text
 person.set             org       role:role! active:bool!
 tags.minted            org       tags:tags!
-grant.set              office    role:role! all:bool! sites:ids active:bool!
+grant.set              office    role:role! all:bool! sites:ids active:bool! from:day to:day until:day may:list
 signed.in              office
 export.taken           office    what:text! site:text from:text to:text
+access.used            office    on:day! what:text! site:id
 installation.enrolled  office    installation:id!
 installation.revoked   office    installation:id!
 book.restored          office    epoch:number! logs:list

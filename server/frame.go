@@ -10,6 +10,7 @@ import (
 	"github.com/labstack/echo/v4"
 
 	"tripwell/forms"
+	"tripwell/store"
 )
 
 //go:embed pages/*.html
@@ -20,6 +21,7 @@ type Frame struct {
 	Title   string // of the browser's tab
 	Here    string // which entry of the masthead is this one: overview, sites, dates, or "" for none
 	Name    string // of the person signed in; "" = nobody
+	Who     string // their name and role, as one line
 	Role    string // manager | crew | auditor
 	Only    string // what a read-only person may see, said on every page; "" for everybody else
 	Today   string // of the server, with its weekday; sites have their own
@@ -33,11 +35,23 @@ type Frame struct {
 // frame fills the Frame of the request's caller.
 func (s *Server) frame(c echo.Context, title, here string) Frame {
 	p := person(c)
-	f := Frame{Title: title, Here: here, Name: p.Name, Role: p.Role, Only: s.accessWords(p), Today: s.ink().longDay(forms.DayOf(s.store.Now())), Demo: s.store.Demo(), Change: p.Role == "manager"}
+	f := Frame{Who: s.whoWords(p), Title: title, Here: here, Name: p.Name, Role: p.Role, Only: s.accessWords(p), Today: s.ink().longDay(forms.DayOf(s.store.Now())), Demo: s.store.Demo(), Change: p.Role == "manager"}
 	if insecure(c.Request()) {
 		f.Insecure = s.secureElsewhere()
 	}
 	return f
+}
+
+// whoWords names a person with their role, once where they are called by it.
+func (s *Server) whoWords(p store.Person) string {
+	role := s.words.Say("office.role." + p.Role)
+	switch {
+	case p.Name == "":
+		return ""
+	case strings.HasPrefix(strings.ToLower(p.Name), strings.ToLower(role)):
+		return p.Name
+	}
+	return p.Name + ", " + role
 }
 
 // readPages parses server/pages once. layout.html and files whose names begin with _ are parts of every page; every other

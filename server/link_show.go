@@ -26,7 +26,7 @@ type askPage struct {
 	Problem string
 	Field   string // where a phone that is enrolled goes on without signing in
 
-	Name, PasswordProblem string // the name that was typed with a password, and what is wrong
+	Typed, PasswordProblem string // the name that was typed with a password, and what is wrong
 }
 
 func (s *Server) askPage(c echo.Context, next, problem string) askPage {

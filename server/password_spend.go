@@ -40,7 +40,7 @@ func (s *Server) passwordTyped(c echo.Context) error {
 // passwordAsk is the sign-in page with the name that was typed; a password never goes back to the browser.
 func (s *Server) passwordAsk(c echo.Context, next, name, problem string) askPage {
 	p := s.askPage(c, next, "")
-	p.Name, p.PasswordProblem = name, problem
+	p.Typed, p.PasswordProblem = name, problem
 	return p
 }
 

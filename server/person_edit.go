@@ -19,8 +19,9 @@ const linkValid = 7 * 24 * time.Hour
 // peoplePage lists who may sign in.
 type peoplePage struct {
 	Frame
-	Heading string
-	People  []peopleRow
+	Heading  string
+	People   []peopleRow
+	Contacts bool // somebody has one
 }
 
 type peopleRow struct {
@@ -56,6 +57,7 @@ func (s *Server) peopleShow(c echo.Context) error {
 		if p.Active {
 			active++
 		}
+		view.Contacts = view.Contacts || p.Contact != ""
 		view.People = append(view.People, peopleRow{Href: "/people/" + url.PathEscape(p.ID), Name: p.Name, Role: s.ink().named("office.role", p.Role), Sites: s.siteNames(p, sites), Contact: p.Contact, Active: p.Active, May: s.mayWords(p), Until: s.untilWords(p)})
 	}
 	slices.SortStableFunc(view.People, func(a, b peopleRow) int { return strings.Compare(strings.ToLower(a.Name), strings.ToLower(b.Name)) })

@@ -59,8 +59,19 @@ func (b *builder) setUp() error {
 // setPeople makes the people and their phones; the links to sign in are made when the demo starts.
 func (b *builder) setPeople() error {
 	at := b.clock.Now()
+	today := forms.DayOf(at)
 	put := func(name, role string, all bool, codes ...string) (store.Person, error) {
 		p := store.Person{ID: newID(at, "person", name), Name: name, Role: role, All: all, Active: true}
+		switch name { // papers and limits of an access, so that the pages which tell of them are not empty
+		case "Crew 1":
+			valid := today.AddMonths(30)
+			p.Licence, p.LicenceUntil, p.May = "Journeyman card DEMO-114", &valid, store.Qualifications()
+		case "Crew 2":
+			p.May = []string{store.MayButton, store.MayMeasure}
+		case "Auditor 2":
+			until := today.AddMonths(15)
+			p.Period, p.Until = &store.Period{From: today, To: today.AddMonths(12) - 1}, &until
+		}
 		for _, code := range codes {
 			p.Sites = append(p.Sites, siteID(at, code))
 		}
@@ -81,6 +92,9 @@ func (b *builder) setPeople() error {
 		return err
 	}
 	if _, err = put("Auditor", "auditor", true); err != nil {
+		return err
+	}
+	if _, err = put("Auditor 2", "auditor", false, kilnLane); err != nil {
 		return err
 	}
 	b.phones = map[string]*phone{}

@@ -55,6 +55,10 @@ GET /exchange/logs phone
 GET /exchange/people phone
 GET /exchange/entry phone
 GET /exchange/snapshot phone
+GET /trust open
+GET /* open
+GET /devices/:device/same site
+POST /devices/:device/same site
 GET /exchange/head phone
 POST /exchange/head phone
 GET / org

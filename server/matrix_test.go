@@ -56,7 +56,9 @@ GET /exchange/people phone
 GET /exchange/entry phone
 GET /exchange/snapshot phone
 GET /trust open
-GET /* open
+GET /trust/tripwell-authority.crt open
+GET /trust/tripwell-authority.mobileconfig open
+GET /records/:record/seal day
 GET /devices/:device/same site
 POST /devices/:device/same site
 GET /exchange/head phone

@@ -57,6 +57,9 @@ func (v *View) found(d OnMap, on forms.Day) (f Found, err error) {
 		if f.What != "" && p.day < f.Day {
 			break // what follows is older
 		}
+		if !v.scope.Shows(p.day) {
+			continue
+		}
 		r, st, k, err := readBook(v.tx, p.seq)
 		if err != nil {
 			return f, err
@@ -75,7 +78,7 @@ func (v *View) found(d OnMap, on forms.Day) (f Found, err error) {
 		return f, err
 	}
 	for _, one := range defects {
-		if one.Cause != "protection-lost" || one.Closed != nil || one.OpenedAt().Before(f.At) {
+		if one.Cause != "protection-lost" || one.Closed != nil || one.First == "" || one.OpenedAt().Before(f.At) {
 			continue
 		}
 		step, err := v.defectStep(one.First)

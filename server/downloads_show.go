@@ -61,8 +61,8 @@ func (s *Server) downloadsPage(c echo.Context, status int, form madeKind, typed 
 	if len(sites) > 0 {
 		view.Statement = append(periodFields(k, "statement", offered[1:]), field{Name: "paper", ID: "statement-paper", Label: k.say("paper.size.label"), Options: paperOptions(k)})
 	}
-	if scope(c).Period == nil {
-		view.Bundle = []field{{Name: "site", ID: "bundle-site", Label: k.say("office.downloads.site"), Options: offered}}
+	if scope(c).Period != nil {
+		view.Bundle = nil // a bundle is of whole logs
 	}
 	view.Round = s.roundFields(sites)
 	return s.page(c, status, "downloads.html", view)

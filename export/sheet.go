@@ -61,7 +61,7 @@ func (s *sheet) open() error {
 	if s.flat != nil {
 		return s.flat.head(b, s.cols)
 	}
-	if err := b.pageSetup(s.name); err != nil {
+	if err := b.pageSetup(s.name, s.pagesWide()); err != nil {
 		return fmt.Errorf("sheet %s: %w", s.name, err)
 	}
 	s.head, s.last = 1, 0
@@ -71,6 +71,9 @@ func (s *sheet) open() error {
 	titles := fmt.Sprintf("'%s'!$1:$%d", s.name, s.head)
 	if err := b.file.SetDefinedName(&excelize.DefinedName{Name: "_xlnm.Print_Titles", RefersTo: titles, Scope: s.name}); err != nil {
 		return fmt.Errorf("sheet %s: %w", s.name, err)
+	}
+	if err := s.setMarks(); err != nil {
+		return err
 	}
 	sw, err := b.file.NewStreamWriter(s.name)
 	if err != nil {
@@ -92,6 +95,17 @@ func (s *sheet) open() error {
 		}
 	}
 	return s.headings()
+}
+
+// pageChars is how wide the columns of one printed page are together, in characters: more would be too small to read.
+const pageChars = 320
+
+func (s *sheet) pagesWide() int {
+	chars := 0.0
+	for _, c := range s.cols {
+		chars += c.width
+	}
+	return max(1, int(math.Ceil(chars/pageChars)))
 }
 
 func (s *sheet) headings() error {

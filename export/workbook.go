@@ -213,9 +213,9 @@ func (b *book) docProps() error {
 	})
 }
 
-// pageSetup makes a sheet print on landscape pages, one page wide, with its name, the page number and the DEMO mark.
-func (b *book) pageSetup(name string) error {
-	fit, wide, tall, landscape := true, 1, 0, "landscape"
+// pageSetup makes a sheet print on landscape pages, so many pages wide, with its name, the page number and the DEMO mark.
+func (b *book) pageSetup(name string, wide int) error {
+	fit, tall, landscape := true, 0, "landscape"
 	if err := b.file.SetSheetProps(name, &excelize.SheetPropsOptions{FitToPage: &fit}); err != nil {
 		return err
 	}

@@ -13,7 +13,7 @@ import (
 // written last because it names the limit revisions the entries were judged with.
 func (b *book) cover() error {
 	name := b.say("sheet.name.cover")
-	if err := b.pageSetup(name); err != nil {
+	if err := b.pageSetup(name, 1); err != nil {
 		return err
 	}
 	f := b.file
@@ -47,9 +47,25 @@ func (b *book) cover() error {
 			if err := put("B", line.text, style); err != nil {
 				return err
 			}
+			if n := linesOf(line.text); n > 1 {
+				if err := f.SetRowHeight(name, row, min(409, 15*float64(n))); err != nil { // 409 points is the most there is
+					return err
+				}
+			}
 		}
 	}
 	return b.coverCode(name, row+2)
+}
+
+// coverChars is how many characters of a line surely stand beside each other in the cover's second column.
+const coverChars = 100
+
+// linesOf is how many lines a text takes there: not every program makes a row as high as its text.
+func linesOf(text string) (n int) {
+	for line := range strings.SplitSeq(text, "\n") {
+		n += max(1, (len([]rune(line))+coverChars-1)/coverChars)
+	}
+	return n
 }
 
 // coverCode draws the head as a code, so that a printed cover is a witness: whoever keeps the paper can hold a later bundle

@@ -60,6 +60,7 @@ func (s *Server) downloadsPage(c echo.Context, status int, form madeKind, typed 
 	view.Table = tableFields(k, offered)
 	if len(sites) > 0 {
 		view.Statement = append(periodFields(k, "statement", offered[1:]), field{Name: "paper", ID: "statement-paper", Label: k.say("paper.size.label"), Options: paperOptions(k)})
+		view.Statement[1].Hint = k.say("paper.statement.from_hint")
 	}
 	if scope(c).Period != nil {
 		view.Bundle = nil // a bundle is of whole logs

@@ -174,7 +174,7 @@ func (s *Server) makingView(c echo.Context, m *making) makingPage {
 		view.Lead = say("ready_under", "done", count(m.done), "size", sizeText(m.size))
 	default:
 		view.Heading, view.Again = say("making"), []link{{Href: at, Text: k.say("office.downloads.making_again")}}
-		view.Lead, view.Done, view.Total = say("making_under", "done", count(m.done), "total", count(m.total), "percent", count(100*m.done/max(1, m.total))), m.done, m.total
+		view.Lead, view.Done, view.Total = say("making_under", "done", count(m.done), "total", count(m.total), "percent", count(min(99, 100*m.done/max(1, m.total)))), m.done, m.total
 		if !m.begun {
 			view.Lead = k.say("office.downloads.making_waits")
 		}

@@ -64,6 +64,7 @@ GET /privacy org
 GET /privacy/data.json org
 GET /people/:person/remove all
 POST /people/:person/remove all
+GET /api open
 GET /trust/tripwell-authority.crt open
 GET /trust/tripwell-authority.mobileconfig open
 GET /records/:record/seal day

@@ -6,8 +6,6 @@ import (
 	"context"
 	"encoding/json"
 	"fmt"
-	"slices"
-	"time"
 
 	"tripwell/store/record"
 )
@@ -99,53 +97,4 @@ func (g *group) dropOf(bucket []byte, person string) error {
 		}
 	}
 	return nil
-}
-
-const (
-	signInsMost   = 20     // shown of a person
-	signInsLooked = 20_000 // records of the office log looked at for them
-)
-
-// SignIns gives when a person last signed in, the newest first, as the office log has it. Everybody may ask for their own.
-func (v *View) SignIns(person string) (times []time.Time, err error) {
-	if v.scope.Person != person && !v.scope.mayRead(record.Office) {
-		return nil, errNoEntry
-	}
-	row := v.tx.Bucket(bktLogs).Get([]byte(record.Office))
-	if row == nil {
-		return nil, nil
-	}
-	ord, edge, err := readLog(row)
-	if err != nil {
-		return nil, fmt.Errorf("office log: %w", err)
-	}
-	want := []byte(`"signed.in"`)
-	for pos := edge.Size; pos > max(0, edge.Size-signInsLooked) && len(times) < signInsMost; pos-- {
-		r, ok, err := v.officeRecord(ord, pos, want)
-		if err != nil {
-			return nil, err
-		}
-		if ok && r.Kind == "signed.in" && r.Subject == person {
-			times = append(times, r.At)
-		}
-	}
-	slices.SortFunc(times, func(a, b time.Time) int { return b.Compare(a) })
-	return times, nil
-}
-
-// officeRecord reads a record of a log by its place where its bytes hold a text.
-func (v *View) officeRecord(ord uint32, pos int64, text []byte) (*record.Record, bool, error) {
-	leaf := v.tx.Bucket(bktLog).Get(logKey(ord, pos))
-	if len(leaf) < 8 {
-		return nil, false, fmt.Errorf("office log at %d: its leaf is not there", pos)
-	}
-	k, err := readRec(v.tx.Bucket(bktRec).Get(leaf[:8]))
-	if err != nil || !bytes.Contains(k.raw, text) {
-		return nil, false, err
-	}
-	r, f := record.Reread(k.raw)
-	if f != nil {
-		return nil, false, f
-	}
-	return r, true, nil
 }

@@ -20,7 +20,7 @@ type personPage struct {
 	Said              string
 	Facts             []fact
 	Edit, Link, Code  string // addresses; Link and Code are "" where the person may not sign in
-	End               string
+	End, Remove       string // addresses; Remove once the access has ended
 	Sessions          []sessionShown
 	EndSessions       string
 	Phones            []phoneLink
@@ -55,6 +55,8 @@ func (s *Server) personShow(c echo.Context) error {
 		Under: k.named("office.role", p.Role), Edit: personHref(p.ID) + "/edit", Facts: s.personFacts(p, sites), UsesNone: k.say("office.person.uses_none")}
 	if p.Active {
 		view.Link, view.Code, view.End = personHref(p.ID)+"/link", personHref(p.ID)+"/code", personHref(p.ID)+"/end"
+	} else {
+		view.Remove = personHref(p.ID) + "/remove"
 	}
 	switch said := c.QueryParam("said"); said {
 	case "phone", "sessions", "ended":

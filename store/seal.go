@@ -85,10 +85,10 @@ func (v *View) Sealed(id string) (*Seal, error) {
 func (v *View) SealedIDs() (ids []string, err error) {
 	err = v.scan(bktSeal, nil, func(k, _ []byte) error {
 		row := v.tx.Bucket(bktSite).Get(k[16:])
-		if len(row) != 16 {
+		if len(row) < 16 {
 			return errPacked
 		}
-		if log := id16(row).String(); v.scope.mayRead(cmp.Or(log, record.Org)) {
+		if log := id16(row[:16]).String(); v.scope.mayRead(cmp.Or(log, record.Org)) {
 			ids = append(ids, id16(k).String())
 		}
 		return nil

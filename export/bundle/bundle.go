@@ -133,10 +133,13 @@ type earlier struct {
 
 // person is one of people.json.
 type person struct {
-	ID     string `json:"id"`
-	Name   string `json:"name"`
-	Role   string `json:"role"`
-	Active bool   `json:"active"`
+	ID           string   `json:"id"`
+	Name         string   `json:"name"`
+	Role         string   `json:"role"`
+	Active       bool     `json:"active"`
+	Licence      string   `json:"licence,omitempty"`
+	LicenceUntil string   `json:"licence_until,omitempty"` // day
+	May          []string `json:"may,omitempty"`
 }
 
 // Ask says which part of a store goes into a bundle.
@@ -180,6 +183,19 @@ func hashes(list []string) (out []proof.Hash, err error) {
 	return out, nil
 }
 
+func personOf(p store.Person) person {
+	out := person{ID: p.ID, Name: p.Name, Role: p.Role, Active: p.Active, Licence: p.Licence, May: p.May}
+	if p.LicenceUntil != nil {
+		out.LicenceUntil = p.LicenceUntil.String()
+	}
+	return out
+}
+
+// stored leaves out what is no day: the check then finds the cell that says more.
 func (p person) stored() store.Person {
-	return store.Person{ID: p.ID, Name: p.Name, Role: p.Role, Active: p.Active}
+	out := store.Person{ID: p.ID, Name: p.Name, Role: p.Role, Active: p.Active, Licence: p.Licence, May: p.May}
+	if day, err := dayOf(p.LicenceUntil); err == nil && day != forms.NoDay {
+		out.LicenceUntil = &day
+	}
+	return out
 }

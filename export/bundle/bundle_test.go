@@ -151,6 +151,8 @@ func TestVerify_NamesWhatWasDone(t *testing.T) {
 		}, []string{"is not the one that stands there"}},
 		{"a head that says something else", headFile, func(old []byte) []byte { return bytes.Replace(old, []byte("2026-"), []byte("2025-"), 1) }, []string{"not signed by this key"}},
 		{"a name", peopleFile, func(old []byte) []byte { return bytes.Replace(old, []byte("Crew 1"), []byte("Crew 2"), 1) }, []string{peopleFile, "The workbook says “Crew 1”; the records say “Crew 2”"}},
+		{"a licence", peopleFile, func(old []byte) []byte { return bytes.Replace(old, []byte("EL-2207"), []byte("EL-9999"), 1) }, []string{peopleFile, "The workbook says “EL-2207, journeyman”; the records say “EL-9999, journeyman”"}},
+		{"what somebody may do", peopleFile, func(old []byte) []byte { return bytes.Replace(old, []byte(`"measure"`), []byte(`"nothing known"`), 1) }, []string{peopleFile, "press the TEST button, test with an instrument"}},
 		{"a file missing", peopleFile, func([]byte) []byte { return nil }, []string{"is missing"}},
 		{"the leaf hashes", treeName(h.site.ID), func(old []byte) []byte { return bytes.ToUpper(old)[:65*10] }, []string{"The records themselves are whole"}},
 	}

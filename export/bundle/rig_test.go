@@ -83,7 +83,12 @@ func (h *house) newID(parts ...string) string {
 
 func (h *house) person(name, role string) store.Person {
 	h.t.Helper()
-	p, err := h.PutPerson(context.Background(), "", store.Person{Name: name, Role: role, All: true, Active: true})
+	p := store.Person{Name: name, Role: role, All: true, Active: true}
+	if role == "crew" {
+		until := forms.DayOf(h.now) + 400
+		p.Licence, p.LicenceUntil, p.May = "EL-2207, journeyman", &until, []string{"button", "measure"}
+	}
+	p, err := h.PutPerson(context.Background(), "", p)
 	must(h.t, err)
 	return p
 }

@@ -314,7 +314,7 @@ func (w *writer) stated() []person {
 		p := w.people[id]
 		sees := p.Active && (p.All || slices.ContainsFunc(w.doc.Sites, func(s Site) bool { return slices.Contains(p.Sites, s.ID) }))
 		if w.named[id] || sees {
-			out = append(out, person{p.ID, p.Name, p.Role, p.Active})
+			out = append(out, personOf(p))
 		}
 	}
 	return out

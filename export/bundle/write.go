@@ -145,16 +145,20 @@ func (w *writer) choose(note string, signed proof.Signed) error {
 			logs = append(logs, s.ID)
 		}
 	}
+	lines, err := w.head.Lines()
+	if err != nil {
+		return err
+	}
 	for _, log := range append(logs, record.Org) {
-		l, err := w.head.Line(log)
-		if err != nil {
-			return err
+		l, ok := lines[log]
+		if !ok {
+			return fmt.Errorf("the head covers no log %s", log)
 		}
 		w.doc.Logs = append(w.doc.Logs, lineOf(l))
 		w.total += 3 * l.Size // written, read again, computed
 		w.foldable += l.Size
 	}
-	if l, err := w.head.Line(record.Office); err == nil { // a new store has none yet
+	if l, ok := lines[record.Office]; ok { // a new store has none yet
 		office := lineOf(l)
 		w.doc.Office = &office
 	}

@@ -8,8 +8,19 @@ import (
 	"tripwell/store/proof"
 )
 
-// earlierMost bounds the earlier heads of a bundle; the newest stand.
-const earlierMost = 2000
+// Bounds of earlier.json: so many heads, and of an organisation with many sites so many lines of all heads together, which whoever
+// checks has to hold at once.
+const (
+	earlierMost      = 2000
+	earlierLinesMost = 120_000
+)
+
+// signedEarlier is a head signed before, in the order of the book.
+type signedEarlier struct {
+	epoch int
+	seq   uint64
+	prove func() (earlier, error)
+}
 
 // earlier writes the heads signed before, with what they cover of these logs.
 func (w *writer) earlier() error {
@@ -21,50 +32,60 @@ func (w *writer) earlier() error {
 	if err != nil {
 		return err
 	}
-	type ordered struct {
-		epoch int
-		seq   uint64
-		earlier
+	var list []signedEarlier
+	for _, k := range signed {
+		list = append(list, signedEarlier{k.Epoch, k.Seq, func() (earlier, error) {
+			h, err := w.view.HeadAt(k.Seq)
+			if err != nil {
+				return earlier{}, err
+			}
+			lines, err := w.linesOf(h)
+			return earlier{k.Note, lines}, err
+		}})
 	}
-	var list []ordered
-	for _, k := range signed[max(0, len(signed)-earlierMost):] {
-		h, err := w.view.HeadAt(k.Seq)
-		if err != nil {
-			return err
-		}
-		lines, err := w.linesOf(h)
-		if err != nil {
-			return err
-		}
-		list = append(list, ordered{k.Epoch, k.Seq, earlier{k.Note, lines}})
+	for _, f := range former {
+		list = append(list, signedEarlier{f.Epoch, f.Seq, func() (earlier, error) {
+			lines, err := w.formerLines(f)
+			return earlier{f.Note, lines}, err
+		}})
 	}
-	for _, f := range former[max(0, len(former)-earlierMost):] {
-		lines, err := w.formerLines(f)
-		if err != nil {
-			return err
-		}
-		list = append(list, ordered{f.Epoch, f.Seq, earlier{f.Note, lines}})
-	}
-	slices.SortStableFunc(list, func(a, b ordered) int { return cmp.Or(cmp.Compare(a.epoch, b.epoch), cmp.Compare(a.seq, b.seq)) })
+	slices.SortStableFunc(list, func(a, b signedEarlier) int { return cmp.Or(cmp.Compare(a.epoch, b.epoch), cmp.Compare(a.seq, b.seq)) })
 	out := []earlier{}
-	for _, o := range list[max(0, len(list)-earlierMost):] {
-		out = append(out, o.earlier)
+	for _, o := range thinned(list, min(earlierMost, max(2, earlierLinesMost/len(w.doc.Logs)))) {
+		one, err := o.prove()
+		if err != nil {
+			return err
+		}
+		out = append(out, one)
 	}
 	return w.json(earlierFile, func() any { return out })
+}
+
+// thinned keeps the newest half of what may stay, and of those before evenly as many.
+func thinned[T any](list []T, most int) []T {
+	if len(list) <= most {
+		return list
+	}
+	spread := most / 2
+	older := list[:len(list)-(most-spread)]
+	out := make([]T, 0, most)
+	for i := range spread {
+		out = append(out, older[i*len(older)/spread])
+	}
+	return append(out, list[len(older):]...)
 }
 
 // linesOf proves what a head covers of the logs of the bundle; a log that is younger than the head has no line.
 func (w *writer) linesOf(h proof.Head) ([]Line, error) {
 	out := []Line{}
+	lines, err := h.Lines()
+	if err != nil {
+		return nil, err
+	}
 	for _, l := range w.doc.Logs {
-		if !slices.ContainsFunc(h.Logs, func(r proof.LogRoot) bool { return r.Log == l.Log }) {
-			continue
+		if line, ok := lines[l.Log]; ok {
+			out = append(out, lineOf(line))
 		}
-		line, err := h.Line(l.Log)
-		if err != nil {
-			return nil, err
-		}
-		out = append(out, lineOf(line))
 	}
 	return out, nil
 }

@@ -129,21 +129,34 @@ type Line struct {
 
 // Line gives the proof of one log's line.
 func (h Head) Line(log string) (Line, error) {
-	lines, want := h.lines(), log+" "
-	at := slices.IndexFunc(lines, func(l string) bool { return strings.HasPrefix(l, want) })
-	for i := range h.Logs {
-		if h.Logs[i].Log != log {
-			continue
-		}
-		var stored [][]Hash
-		var e Edge
-		for _, l := range lines {
-			stored = append(stored, e.Append(LeafHash([]byte(l))))
-		}
-		p, err := Inclusion(e.Size, int64(at), func(n int64) ([]Hash, error) { return stored[n], nil })
-		return Line{h.Logs[i], int64(at), p}, err
+	lines, err := h.Lines()
+	if err != nil {
+		return Line{}, err
 	}
-	return Line{}, fmt.Errorf("the head covers no log %s", log)
+	line, ok := lines[log]
+	if !ok {
+		return Line{}, fmt.Errorf("the head covers no log %s", log)
+	}
+	return line, nil
+}
+
+// Lines gives the proofs of all logs' lines, by log.
+func (h Head) Lines() (map[string]Line, error) {
+	sorted := slices.SortedFunc(slices.Values(h.Logs), func(a, b LogRoot) int { return strings.Compare(a.line(), b.line()) })
+	var stored [][]Hash
+	var e Edge
+	for _, l := range sorted {
+		stored = append(stored, e.Append(LeafHash([]byte(l.line()))))
+	}
+	out := make(map[string]Line, len(sorted))
+	for i, l := range sorted {
+		p, err := Inclusion(e.Size, int64(i), func(n int64) ([]Hash, error) { return stored[n], nil })
+		if err != nil {
+			return nil, err
+		}
+		out[l.Log] = Line{l, int64(i), p}
+	}
+	return out, nil
 }
 
 // Covers holds a line against the head's root.

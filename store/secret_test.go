@@ -324,6 +324,6 @@ func TestSession_TheOneABrowserHadEndsAndOthersAreListed(t *testing.T) {
 		t.Error("the other session goes on")
 	}
 	if _, err := r.Session(second); err != nil {
-		t.Error("this session ended too")
+		t.Error("the sign-in that asked to end the others ended too")
 	}
 }
